@@ -1,0 +1,32 @@
+"""The annual cycle of global ocean mass from sea-floor pressure recorders."""
+
+from importlib import import_module
+
+_HOMES = {
+    "Network": "massfit.network",
+    "OceanFunction": "massfit.fingerprint.ocean",
+    "estimate": "massfit.pipeline",
+    "fit_site": "massfit.annual.fit",
+    "love_numbers": "massfit.earth.love",
+    "read_network": "massfit.io.network_file",
+    "sample_posterior": "massfit.posterior.sample",
+    "simulate_network": "massfit.simulate.network",
+    "site_fingerprints": "massfit.fingerprint.admittance",
+    "site_footprints": "massfit.fingerprint.footprint",
+    "solve_sea_level": "massfit.fingerprint.sea_level",
+}
+
+__all__ = sorted(_HOMES)  # noqa: PLE0605 - the table above is the one list of public names
+__version__ = "0.1.0"
+
+
+def __getattr__(name: str) -> object:
+    """Import a public name when it is first used (PEP 562)."""
+    if name in _HOMES:
+        return getattr(import_module(_HOMES[name]), name)
+    raise AttributeError(f"module 'massfit' has no attribute {name!r}")
+
+
+def __dir__() -> list[str]:
+    """Public names."""
+    return [*__all__, "__version__"]

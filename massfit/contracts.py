@@ -1,0 +1,140 @@
+"""What passes between the stages: dimensions, units and attributes, declared once.
+
+A stage calls :func:`require` on every Dataset it receives.
+"""
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+import xarray as xr
+
+from massfit.errors import Fault, InputError
+
+
+@dataclass(frozen=True)
+class Variable:
+    """Dimensions and unit of one variable of a Dataset.
+
+    Parameters
+    ----------
+    dims : tuple of str
+        In order.
+    units : str
+        CF unit; "1" for a pure number.
+    """
+
+    dims: tuple[str, ...]
+    units: str
+
+
+@dataclass(frozen=True)
+class Contract:
+    """A Dataset that is passed from one stage to another.
+
+    Parameters
+    ----------
+    name : str
+        What the Dataset is called in messages.
+    variables : mapping of str to Variable
+        Variables that must be there.
+    attributes : tuple of str
+        Attributes that must be there.
+    optional : mapping of str to Variable
+        Variables that may be there.
+    """
+
+    name: str
+    variables: Mapping[str, Variable]
+    attributes: tuple[str, ...] = ()
+    optional: Mapping[str, Variable] = field(default_factory=dict)
+
+
+FINGERPRINTS = Contract(
+    "fingerprints",
+    # admittance components are the real and imaginary part of F_s
+    {"admittance": Variable(("member", "site", "component"), "1")},
+    attributes=("earth_model", "max_degree", "ocean_area_m2", "sea_water_density_kg_m3"),
+    optional={
+        # G_s of the land air pressure, the same for every member
+        "air_load_response": Variable(("site", "component"), "Pa"),
+        # reference cases shown beside the members ("uniform over land", "uniform ocean")
+        "reference_admittance": Variable(("case", "site", "component"), "1"),
+    },
+)
+
+FOOTPRINTS = Contract(
+    "footprints",
+    {
+        # sea level at the site (m) per load (kg m-2) integrated over area (m2): m kg-1
+        "footprint": Variable(("site", "lat", "lon"), "m kg-1"),
+        "constant": Variable(("site",), "m kg-1"),
+    },
+    attributes=("max_degree",),
+)
+
+CORRECTIONS = Contract(
+    "corrections of one site",
+    # every series was subtracted from the record; time is the middle of the day, UTC
+    {
+        "long_period_tides": Variable(("time",), "Pa"),
+        "pole_tide": Variable(("time",), "Pa"),
+        "ocean_mean_atmosphere": Variable(("time",), "Pa"),
+        # NaN on the days a model does not cover; M may be 0
+        "circulation": Variable(("model", "time"), "Pa"),
+    },
+    optional={"present": Variable(("model",), "1")},
+)
+
+SITE_PHASORS = Contract(
+    "site phasors",
+    {
+        # NaN where a site-model pair is missing; unused parts have weight 0 and repeat part 0
+        "phasor": Variable(("site", "part", "model", "component"), "Pa"),
+        "weight": Variable(("site", "part"), "1"),
+        "covariance": Variable(("site", "part", "component", "component2"), "Pa2"),
+        # D_s: covariance of each model's own weather at the annual line
+        "model_noise": Variable(("site", "component", "component2"), "Pa2"),
+        # standard deviation of the reduced daily record
+        "reduced_sd": Variable(("site",), "Pa"),
+        "days": Variable(("site",), "d"),
+    },
+    attributes=("reference_year",),
+)
+
+
+def require(dataset: xr.Dataset, contract: Contract) -> None:
+    """Check a Dataset against its contract.
+
+    Parameters
+    ----------
+    dataset : xarray.Dataset
+    contract : Contract
+
+    Raises
+    ------
+    InputError
+        One fault for every missing variable or attribute, wrong dimension or unit.
+    """
+    faults = [
+        Fault(contract.name, name, "the attribute is missing", action="Add it")
+        for name in contract.attributes
+        if name not in dataset.attrs
+    ]
+    for name, variable in contract.variables.items():
+        if name not in dataset:
+            faults.append(Fault(contract.name, name, "the variable is missing", f"Dimensions {variable.dims}"))
+    for name, variable in {**contract.variables, **contract.optional}.items():
+        if name in dataset:
+            faults += _variable_faults(contract.name, name, dataset[name], variable)
+    if faults:
+        raise InputError(faults)
+
+
+def _variable_faults(source: str, name: str, data: xr.DataArray, variable: Variable) -> list[Fault]:
+    faults = []
+    if data.dims != variable.dims:
+        faults.append(Fault(source, name, f"dimensions are {data.dims}", f"Must be {variable.dims}"))
+    if data.attrs.get("units") != variable.units:
+        found = data.attrs.get("units")
+        faults.append(Fault(source, name, f"units are {found!r}", f"Must be {variable.units!r}"))
+    return faults

@@ -1,0 +1,77 @@
+"""The errors massfit raises on purpose, each carrying its data."""
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+
+
+class MassfitError(Exception):
+    """Base of every error that massfit raises on purpose."""
+
+
+@dataclass(frozen=True)
+class Fault:
+    """One thing that is wrong with the user's input.
+
+    Parameters
+    ----------
+    source : str
+        File (as the user wrote it) or object that holds the fault.
+    name : str
+        Key, variable, column or site concerned.
+    problem : str
+        What was found, with the value.
+    allowed : str
+        What is allowed.
+    action : str
+        What to do about it.
+    line : int, optional
+        Line in `source`, counted from 1.
+    """
+
+    source: str
+    name: str
+    problem: str
+    allowed: str = ""
+    action: str = ""
+    line: int | None = None
+
+    def __str__(self) -> str:
+        place = self.source if self.line is None else f"{self.source}:{self.line}"
+        sentences = [self.problem, self.allowed, self.action]
+        text = " ".join(s if s.endswith((".", "?", "!")) else s + "." for s in sentences if s)
+        return f"{place}: {self.name}: {text}" if self.name else f"{place}: {text}"
+
+
+class InputError(MassfitError):
+    """The user's input is wrong; holds every fault that was found.
+
+    Parameters
+    ----------
+    faults : Fault or iterable of Fault
+        All faults, in the order a reader meets them.
+    """
+
+    def __init__(self, faults: Fault | Iterable[Fault]) -> None:
+        self.faults: tuple[Fault, ...] = (
+            (faults,) if isinstance(faults, Fault) else tuple(faults)
+        )
+        super().__init__("\n".join(str(fault) for fault in self.faults))
+
+    def __reduce__(self) -> tuple[type["InputError"], tuple[tuple[Fault, ...]]]:
+        return (InputError, (self.faults,))
+
+
+class ConvergenceError(MassfitError):
+    """An iteration did not reach its tolerance.
+
+    Parameters
+    ----------
+    what : str
+        The iteration.
+    reached, tolerance : float
+        Relative change reached and allowed.
+    """
+
+    def __init__(self, what: str, reached: float, tolerance: float) -> None:
+        self.what, self.reached, self.tolerance = what, reached, tolerance
+        super().__init__(f"{what} stopped at a relative change of {reached:.3g}; allowed is {tolerance:.3g}.")

@@ -1,0 +1,116 @@
+"""A pressure record as read, and as reduced to daily means."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+
+@dataclass(frozen=True)
+class Action:
+    """Something that was done to a record.
+
+    Parameters
+    ----------
+    what : str
+        A short verb phrase, for example "spikes rejected".
+    count : int
+        Number of samples (or days) concerned.
+    detail : str
+        Rule and values, for the report.
+    """
+
+    what: str
+    count: int
+    detail: str = ""
+
+
+@dataclass(frozen=True)
+class Record:
+    """One instrument on the bottom, as read.
+
+    Parameters
+    ----------
+    site, deployment : str
+        Site id and a label of the deployment that is unique in the network, "A3/1".
+    time : (n,) array of datetime64[ns]
+        UTC, middle of each sample's interval.
+    pressure : (n,) array of float64
+        Anomaly from `reference`, Pa; NaN is missing.
+    reference : float
+        Pressure that was subtracted, Pa.
+    drift : str
+        "exponential+linear", "linear" or "none".
+    steps : tuple of datetime64
+        Declared changes of level; a new level begins at each.
+    find_steps : bool
+        Whether the analyst asked for steps to be found.
+    source : str
+        File, as the analyst wrote it.
+    actions : tuple of Action
+        What was done so far.
+    """
+
+    site: str
+    deployment: str
+    time: NDArray[np.datetime64]
+    pressure: NDArray[np.float64]
+    reference: float = 0.0
+    drift: str = "exponential+linear"
+    steps: tuple[np.datetime64, ...] = ()
+    find_steps: bool = False
+    source: str = ""
+    actions: tuple[Action, ...] = ()
+
+
+@dataclass(frozen=True)
+class TidalConstant:
+    """Amplitude and phase of one short tide, by the fit that removed it.
+
+    Parameters
+    ----------
+    name : str
+        Darwin name.
+    cycles_per_day : float
+    amplitude : float
+        Pa.
+    phase : float
+        Radians, lag behind the line's phase at 1 January 2000 00:00 UTC.
+    """
+
+    name: str
+    cycles_per_day: float
+    amplitude: float
+    phase: float
+
+
+@dataclass(frozen=True)
+class DailyRecord:
+    """Daily means of one deployment with short tides removed.
+
+    Parameters
+    ----------
+    site, deployment : str
+    time : (n,) array of datetime64[ns]
+        Middle of each day, UTC; strictly increasing, gaps allowed.
+    pressure : (n,) array of float64
+        Pa; no NaN.
+    start : datetime64[ns]
+        First instant of the deployment, the origin of its drift.
+    drift : str
+    steps : tuple of datetime64
+    tides : tuple of TidalConstant
+        Largest first; empty where tides were already removed.
+    actions : tuple of Action
+        Everything done from file to daily mean.
+    """
+
+    site: str
+    deployment: str
+    time: NDArray[np.datetime64]
+    pressure: NDArray[np.float64]
+    start: np.datetime64
+    drift: str = "exponential+linear"
+    steps: tuple[np.datetime64, ...] = ()
+    tides: tuple[TidalConstant, ...] = ()
+    actions: tuple[Action, ...] = ()

@@ -1,0 +1,185 @@
+"""What the analyst may choose, one frozen class a section of the network file.
+
+The classes are the only definition of a setting: the network file is
+validated against them and `run.json` repeats them. Units stand in the names.
+"""
+
+from datetime import date
+from typing import Annotated, Literal
+
+from pydantic import ConfigDict, Field, PositiveFloat
+from pydantic.dataclasses import dataclass
+
+_STRICT = ConfigDict(extra="forbid", allow_inf_nan=False)
+
+NonNegative = Annotated[float, Field(ge=0)]
+DriftForm = Literal["exponential+linear", "linear", "none"]
+
+
+@dataclass(frozen=True, config=_STRICT)
+class Frame:
+    """`[network]`: name, phase origin and the stated period.
+
+    Parameters
+    ----------
+    name : str
+        Name of the network, repeated in every output.
+    reference_year : int
+        Phases count from 1 January 00:00 UTC of this year.
+    start, end : datetime.date, optional
+        First and last day used, inclusive; the records are cut to them.
+    """
+
+    name: Annotated[str, Field(min_length=1)]
+    reference_year: Annotated[int, Field(ge=1900, le=2200)]
+    start: date | None = None
+    end: date | None = None
+
+
+@dataclass(frozen=True, config=_STRICT)
+class Corrections:
+    """`[corrections]`: what is taken off the records, and how.
+
+    Parameters
+    ----------
+    ocean_mean_atmosphere : str, optional
+        File of the ocean-mean air pressure, or ``"already-removed"``. No default:
+        either this or `air_pressure` must be stated.
+    tides : str
+        Short tides: ``"remove"`` or ``"already-removed"``.
+    long_period_tides : str
+        ``"equilibrium"`` (self-consistent over the real ocean),
+        ``"equilibrium-classical"`` or ``"none"``.
+    pole_tide : str
+        ``"observed"`` (self-consistent, from observed polar motion) or ``"none"``.
+    ocean_mean_atmosphere_sd_hpa : float
+        Common error of the ocean-mean air pressure, hPa per phasor component.
+    atmosphere_load : str, optional
+        File with the annual phasor of air pressure on land.
+    ocean_mean_phasor_hpa : tuple of float, optional
+        Annual phasor of the ocean-mean air pressure, hPa; needed with
+        `atmosphere_load` when the series itself is already removed.
+    air_pressure : str, optional
+        File of surface air pressure (time, lat, lon); replaces the series and
+        the load file.
+    """
+
+    ocean_mean_atmosphere: str | None = None
+    tides: Literal["remove", "already-removed"] = "remove"
+    long_period_tides: Literal["equilibrium", "equilibrium-classical", "none"] = "equilibrium"
+    pole_tide: Literal["observed", "none"] = "observed"
+    ocean_mean_atmosphere_sd_hpa: NonNegative = 0.04
+    atmosphere_load: str | None = None
+    ocean_mean_phasor_hpa: tuple[float, float] | None = None
+    air_pressure: str | None = None
+
+
+@dataclass(frozen=True, config=_STRICT)
+class Fingerprint:
+    """`[fingerprint]`: the load ensemble and the sea-level equation.
+
+    Parameters
+    ----------
+    loads : tuple of str
+        Files of load members and ``"builtin:NAME"`` patterns, of equal weight.
+    max_degree : int
+        Highest spherical-harmonic degree of the solve.
+    sea_water_density : float
+        kg m-3.
+    water_vapour_kg : float
+        Half the annual range of the mass of water vapour in the air, kg.
+    water_vapour_peak : str
+        Month and day of its maximum, ``"MM-DD"``.
+    rotational_feedback : bool
+        Whether the solve holds the rotational response.
+    """
+
+    loads: Annotated[tuple[str, ...], Field(min_length=1)] = ("builtin:all",)
+    max_degree: Annotated[int, Field(ge=20, le=1440)] = 180
+    sea_water_density: Annotated[float, Field(ge=1000, le=1060)] = 1025.0
+    water_vapour_kg: NonNegative = 0.65e15
+    water_vapour_peak: Annotated[str, Field(pattern=r"^(0[1-9]|1[0-2])-(0[1-9]|[12]\d|3[01])$")] = "07-15"
+    rotational_feedback: bool = False
+
+
+@dataclass(frozen=True, config=_STRICT)
+class PosteriorSettings:
+    """`[posterior]`: the network model and its sampler.
+
+    Parameters
+    ----------
+    seed : int
+        Seed of every random number of the run.
+    site_scatter : str
+        ``"student-t"`` or ``"normal"``.
+    group_scatter : bool or float
+        Scatter shared by the sites of a group, or a correlation length in km.
+    model_truth : str
+        ``"exchangeable"`` (r = 1) or ``"centred"`` (r = 0).
+    """
+
+    seed: Annotated[int, Field(ge=0, lt=2**32)] = 1
+    site_scatter: Literal["student-t", "normal"] = "student-t"
+    group_scatter: bool | PositiveFloat = True
+    model_truth: Literal["exchangeable", "centred"] = "exchangeable"
+
+
+@dataclass(frozen=True, config=_STRICT)
+class Priors:
+    """`[priors]`: every prior by name, with the project's defaults.
+
+    Parameters
+    ----------
+    annual_sd_hpa : float
+        Normal prior of each component of the network phasor, hPa.
+    site_scatter_hpa, model_local_hpa, model_common_hpa, group_scatter_hpa : float
+        Scales of the half-t priors (4 degrees of freedom) of the network scales, hPa.
+    year_sd_hpa : float
+        Year-to-year standard deviation of the cycle, hPa per component.
+    drift_exponential_sd_hpa, drift_slope_sd_hpa_per_year : float
+        Normal priors of the drift terms.
+    drift_time_min_days : float
+        Shortest drift time constant, days; the longest is the deployment's length.
+    noise_time_scales_days : tuple of float
+        Fixed time scales of the Ornstein-Uhlenbeck terms, days.
+    red_noise_hpa, white_noise_hpa : float
+        Scales of the half-t priors (4 degrees of freedom) of the noise amplitudes, hPa.
+    """
+
+    annual_sd_hpa: PositiveFloat = 5.0
+    site_scatter_hpa: PositiveFloat = 0.3
+    model_local_hpa: PositiveFloat = 0.3
+    model_common_hpa: PositiveFloat = 0.15
+    group_scatter_hpa: PositiveFloat = 0.15
+    year_sd_hpa: PositiveFloat = 0.05
+    drift_exponential_sd_hpa: PositiveFloat = 30.0
+    drift_slope_sd_hpa_per_year: PositiveFloat = 10.0
+    drift_time_min_days: PositiveFloat = 3.0
+    noise_time_scales_days: Annotated[tuple[PositiveFloat, ...], Field(min_length=1, max_length=6)] = (2.0, 20.0, 200.0)
+    red_noise_hpa: PositiveFloat = 0.5
+    white_noise_hpa: PositiveFloat = 0.2
+
+
+@dataclass(frozen=True, config=_STRICT)
+class Settings:
+    """Every choice of one network file.
+
+    Parameters
+    ----------
+    frame : Frame
+        `[network]`.
+    corrections : Corrections
+        `[corrections]`.
+    fingerprint : Fingerprint
+        `[fingerprint]`.
+    posterior : PosteriorSettings
+        `[posterior]`.
+    priors : Priors
+        `[priors]`.
+    """
+
+    frame: Frame
+    corrections: Corrections
+    fingerprint: Fingerprint = Fingerprint()
+    posterior: PosteriorSettings = PosteriorSettings()
+    priors: Priors = Priors()

@@ -1,0 +1,51 @@
+"""A place on the sea floor, and the intervals its analyst left out."""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+
+@dataclass(frozen=True)
+class Interval:
+    """A stretch of time that is not used, both ends included.
+
+    Parameters
+    ----------
+    start, end : numpy.datetime64
+        First and last instant, UTC.
+    reason : str
+        Why; repeated in every output.
+    """
+
+    start: np.datetime64
+    end: np.datetime64
+    reason: str
+
+
+@dataclass(frozen=True)
+class Site:
+    """A place on the sea floor with one or more deployments.
+
+    Parameters
+    ----------
+    id : str
+        Name, unique in the network.
+    latitude_deg, longitude_deg : float
+        Degrees north and degrees east, either convention.
+    depth_m : float, optional
+        Water depth, m.
+    group : str, optional
+        Free label: basin, operator or instrument type.
+    exclude : tuple of Interval
+        Intervals not used.
+    excluded_because : str, optional
+        When given the whole site is left out, for this reason.
+    """
+
+    id: str
+    latitude_deg: float
+    longitude_deg: float
+    depth_m: float | None = None
+    group: str | None = None
+    exclude: tuple[Interval, ...] = ()
+    excluded_because: str | None = None
