@@ -119,6 +119,17 @@ def unwrapped_peak_days(phasors: NDArray[np.complex128]) -> NDArray[np.float64]:
     return np.asarray(days - np.floor(np.median(days) / TROPICAL_YEAR_DAYS) * TROPICAL_YEAR_DAYS)
 
 
+def delay_days(admittance: NDArray[np.complex128] | complex) -> NDArray[np.float64]:
+    """Days by which a complex factor delays the cycle, in (-182.6, 182.6].
+
+    Examples
+    --------
+    >>> float(delay_days(1.0 + 0.0j))
+    0.0
+    """
+    return np.asarray(np.angle(np.asarray(admittance, dtype=complex)) * TROPICAL_YEAR_DAYS / (2.0 * np.pi))
+
+
 def phasor_from_peak(amplitude: float, peak_day: float) -> complex:
     """Phasor of an amplitude and a peak day.
 

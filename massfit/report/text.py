@@ -1,0 +1,182 @@
+"""The summary at the end of a run: plain text that fits 80 columns."""
+
+import textwrap
+from collections.abc import Mapping, Sequence
+from datetime import date
+from typing import Any
+
+from massfit.constants import TROPICAL_YEAR_DAYS
+from massfit.phasor import delay_days, peak_date, peak_days
+
+WIDTH = 80
+
+SHARE_WORDS = {
+    "record": "record noise and drift",
+    "site_scatter": "site scatter",
+    "group": "scatter within groups",
+    "model_local": "models at a site",
+    "model_spread": "model spread (common)",
+    "atmosphere": "air pressure",
+    "year": "year to year",
+    "fingerprint": "fingerprint",
+    "scales": "unknown scales",
+}
+
+
+def summary_text(summary: Mapping[str, Any]) -> str:
+    """Write the answer, what it rests on and what to beware of.
+
+    Parameters
+    ----------
+    summary : mapping
+        The content of `estimate.json`.
+
+    Returns
+    -------
+    str
+        Lines of at most 80 columns.
+    """
+    blocks = [
+        _answer(summary),
+        _shares(summary),
+        _alternatives(summary),
+        _sites(summary),
+        _trust(summary),
+        _warnings(summary),
+    ]
+    return "\n\n".join("\n".join(block) for block in blocks if block)
+
+
+def answer_sentence(summary: Mapping[str, Any]) -> str:
+    """Say the answer in one sentence.
+
+    Parameters
+    ----------
+    summary : mapping
+        The content of `estimate.json`.
+
+    Returns
+    -------
+    str
+    """
+    amplitude, day = summary["amplitude_hpa"], summary["peak_day"]
+    year = summary["reference_year"]
+    return (
+        f"The annual cycle of ocean mass has an amplitude of {amplitude['median']:.2f} hPa "
+        f"(95 %: {_range(amplitude['region95'], '.2f')}) and peaks on {spoken_date(day['median'], year)} "
+        f"(95 %: {date_range(day['region95'], year)})."
+    )
+
+
+def spoken_date(day: float, year: int) -> str:
+    """Day and month of a peak day, "3 October"."""
+    stamp = date.fromisoformat(peak_date(day, year))
+    return f"{stamp.day} {stamp:%B}"
+
+
+def date_range(region: Sequence[float], year: int) -> str:
+    """Spoken range of peak days; a region of a year or more is said to be open."""
+    if region[1] - region[0] > 0.9 * TROPICAL_YEAR_DAYS:
+        return "any day of the year"
+    return f"{spoken_date(region[0], year)} to {spoken_date(region[1], year)}"
+
+
+def _range(region: Sequence[float], form: str) -> str:
+    return f"{region[0]:{form}} to {region[1]:{form}}"
+
+
+def _answer(summary: Mapping[str, Any]) -> list[str]:
+    year = summary["reference_year"]
+    rows = [("amplitude", "amplitude_hpa", "hPa", ".3f"), ("", "water_mm", "mm of fresh water", ".2f")]
+    rows += [("", "sea_water_mm", "mm of sea water", ".2f"), ("", "mass_gt", "Gt", ".0f")]
+    lines = [
+        f"massfit: {summary['network']}"[:WIDTH],
+        "Annual cycle of the mass of the whole ocean, median and 95 % region",
+        "",
+    ]
+    for label, key, unit, form in rows:
+        value = summary[key]
+        lines.append(f"  {label:<10}{value['median']:>9{form}} {unit:<18} {_range(value['region95'], form)}")
+    day = summary["peak_day"]
+    lines.append(f"  {'peak':<10}{spoken_date(day['median'], year):>16}            {date_range(day['region95'], year)}")
+    return lines
+
+
+def _shares(summary: Mapping[str, Any]) -> list[str]:
+    shares = sorted(summary["variance_share"].items(), key=lambda item: -item[1])
+    words = [f"{SHARE_WORDS[name]} {100 * share:.0f} %" for name, share in shares if share >= 0.005]
+    return textwrap.wrap("Where the variance comes from: " + ", ".join(words) + ".", WIDTH, subsequent_indent="  ")
+
+
+def _alternatives(summary: Mapping[str, Any]) -> list[str]:
+    rows = summary["alternatives"]
+    if not rows:
+        return []
+    lines = [f"{'If instead':<48}{'shift / sd':>14}{'width ratio':>14}"]
+    return lines + [f"  {row['name'][:46]:<46}{row['shift_sd']:>14.2f}{row['sd_ratio']:>14.2f}" for row in rows]
+
+
+def _sites(summary: Mapping[str, Any]) -> list[str]:
+    head = f"{'Site':<14}{'hPa':>7}{'peak day':>10}{'ratio':>8}{'delay d':>9}{'residual':>10}{'outlier':>9}"
+    lines = [head]
+    for site in summary["sites"]:
+        phasor, admittance = complex(*site["phasor_hpa"]), complex(*site["admittance"])
+        day, delay = float(peak_days(phasor)), float(delay_days(admittance))
+        mark = " *" if site["warnings"] else ""
+        lines.append(
+            f"{site['id'][:13]:<14}{abs(phasor):>7.2f}{day:>10.1f}{abs(admittance):>8.3f}{delay:>9.1f}"
+            f"{site['standardised_residual']:>10.2f}{site['outlier_probability']:>9.2f}{mark}"
+        )
+    note = (
+        "hPa and peak day: the site's own phasor, mean over models; ratio and delay of its fingerprint; "
+        "residual against the other sites, in sigmas; * has a warning"
+    )
+    return lines + textwrap.wrap(note, WIDTH)
+
+
+def trust_sentence(summary: Mapping[str, Any]) -> str:
+    """Say whether the sampler converged and how far the second route differs.
+
+    Parameters
+    ----------
+    summary : mapping
+        The content of `estimate.json`.
+
+    Returns
+    -------
+    str
+    """
+    state = summary["convergence"]
+    verdict = "Converged" if state["converged"] else "NOT CONVERGED: do not use this number"
+    return (
+        f"{verdict}: R-hat {state['rhat_max']:.3f}, effective draws {state['ess_bulk_min']:.0f} (bulk) "
+        f"and {state['ess_tail_min']:.0f} (tail); the second route differs by "
+        f"{state['second_route_mean_shift_sd']:.3f} sd and a width ratio of {state['second_route_sd_ratio']:.3f}."
+    )
+
+
+def warning_lines(summary: Mapping[str, Any]) -> list[str]:
+    """Collect the warnings of the run and of its sites.
+
+    Parameters
+    ----------
+    summary : mapping
+        The content of `estimate.json`.
+
+    Returns
+    -------
+    list of str
+    """
+    of_sites = [f"{site['id']}: {text}" for site in summary["sites"] for text in site["warnings"]]
+    return [*summary["warnings"], *of_sites]
+
+
+def _trust(summary: Mapping[str, Any]) -> list[str]:
+    return textwrap.wrap(trust_sentence(summary), WIDTH, subsequent_indent="  ")
+
+
+def _warnings(summary: Mapping[str, Any]) -> list[str]:
+    lines = []
+    for text in warning_lines(summary):
+        lines += textwrap.wrap(text, WIDTH, initial_indent="  - ", subsequent_indent="    ")
+    return ["Warnings", *lines] if lines else []

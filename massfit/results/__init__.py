@@ -1,0 +1,1 @@
+"""What a run made: the container handed to files and figures, and what it assumed."""

@@ -1,0 +1,115 @@
+"""The sentences that say what a run assumed, made from the network's own settings."""
+
+from massfit.network import Network
+from massfit.settings import Settings
+
+
+def stated_assumptions(network: Network) -> tuple[str, ...]:
+    """Say what a run of this network assumes, one sentence each.
+
+    Parameters
+    ----------
+    network : Network
+
+    Returns
+    -------
+    tuple of str
+        In the order of the chain; printed in every output.
+    """
+    settings = network.settings
+    return (
+        _period(settings),
+        *_corrections(network),
+        _circulation(network),
+        *_fingerprint(network),
+        _drift_and_noise(network),
+        *_posterior(settings),
+    )
+
+
+def _period(settings: Settings) -> str:
+    frame = settings.frame
+    first = frame.start.isoformat() if frame.start else "the first record"
+    last = frame.end.isoformat() if frame.end else "the last record"
+    return (
+        f"The answer is the mean annual cycle from {first} to {last}; phases count from 1 January "
+        f"{frame.reference_year} 00:00 UTC. It is the water of the whole ocean: the air above it is not in it."
+    )
+
+
+def _corrections(network: Network) -> list[str]:
+    chosen = network.settings.corrections
+    tides = "removed here by harmonic fits" if chosen.tides == "remove" else "taken as already removed"
+    long_period = {
+        "equilibrium": "long-period tides removed as equilibrium tides, self-consistent over the real ocean",
+        "equilibrium-classical": "long-period tides removed as classical equilibrium tides",
+        "none": "long-period tides NOT removed here",
+    }[chosen.long_period_tides]
+    pole = (
+        "pole tide removed from observed polar motion"
+        if chosen.pole_tide == "observed"
+        else "pole tide NOT removed here"
+    )
+    removed = network.ocean_mean_atmosphere is None and network.air_pressure is None
+    air = "taken as already removed" if removed else "removed with the series given"
+    given = network.atmosphere_load is not None or network.air_pressure is not None
+    land = (
+        "The self-attraction of air on land is added as a known term."
+        if given
+        else "No air pressure on land was given, so its self-attraction (tenths of a millimetre a site) is left out."
+    )
+    return [
+        f"Short tides are {tides}; {long_period}; {pole}.",
+        f"The ocean-mean air pressure is {air}, with a common error of "
+        f"{chosen.ocean_mean_atmosphere_sd_hpa:g} hPa per component.",
+        land,
+    ]
+
+
+def _circulation(network: Network) -> str:
+    count = len(network.circulation)
+    if count == 0:
+        return (
+            "No ocean circulation model was given: the circulation is part of the noise, and the spread between "
+            "models is assumed from its prior, not seen."
+        )
+    names = ", ".join(f"{model.name} (air pressure {model.air_pressure})" for model in network.circulation)
+    seen = "" if count > 1 else " With one model their spread is assumed from its prior, not seen."
+    return f"Ocean circulation is removed with {count} model{'s' if count > 1 else ''}: {names}.{seen}"
+
+
+def _fingerprint(network: Network) -> list[str]:
+    chosen = network.settings.fingerprint
+    count = len(network.loads)
+    vapour = (
+        f"water vapour exchanges {chosen.water_vapour_kg:.3g} kg (half range, maximum on {chosen.water_vapour_peak})"
+        if chosen.water_vapour_kg
+        else "the exchange of water vapour is switched off"
+    )
+    members = f"{count} load member{'s' if count > 1 else ''} of equal weight"
+    single = "" if count > 1 else " With one member the uncertainty of the fingerprint is NOT in the result."
+    return [
+        f"The fingerprint is elastic (PREM), to degree {chosen.max_degree}, sea water "
+        f"{chosen.sea_water_density:g} kg m-3, {members}; {vapour}; no rotational feedback.{single}"
+    ]
+
+
+def _drift_and_noise(network: Network) -> str:
+    forms = sorted({record.drift for record in network.records})
+    scales = ", ".join(f"{scale:g}" for scale in network.settings.priors.noise_time_scales_days)
+    return (
+        f"Drift per deployment ({' / '.join(forms)}), annual and semi-annual cycle are fitted together under red noise "
+        f"(time scales {scales} days) and white noise; only declared steps are fitted, none are searched for."
+    )
+
+
+def _posterior(settings: Settings) -> list[str]:
+    truth = (
+        "The truth is taken as exchangeable with the ocean models (r = 1)"
+        if settings.posterior.model_truth == "exchangeable"
+        else "The truth is taken as the centre of the ocean models (r = 0)"
+    )
+    return [
+        f"{truth}. Site scatter is normal and independent between sites; the cycle is taken as the same in every year.",
+        "Results are for research.",
+    ]
