@@ -1,0 +1,190 @@
+"""The elastic sea-level equation for a load, a potential forcing, or both."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from massfit.constants import EARTH_RADIUS
+from massfit.errors import Fault, InputError
+from massfit.fingerprint.operator import SeaLevelOperator
+
+
+@dataclass(frozen=True, eq=False)
+class SeaLevel:
+    """Relative sea level in response to a load or a forcing.
+
+    Made by :func:`solve_sea_level`. Values are complex when an input is.
+
+    Parameters
+    ----------
+    operator : SeaLevelOperator
+    coefficients : (n_part, n_coefficient) array of complex
+        Harmonics of the height (m) in the order of
+        :mod:`massfit.fingerprint.transforms`; one row, or one each for the real and
+        the imaginary part.
+    constant : float or complex
+        The constant c of the equation, m.
+    load_mass : float or complex
+        Mass of the load, kg.
+    water_vapour : float or complex
+        Mass of water vapour taken from the surface, kg.
+    iterations : int
+        Conjugate-gradient steps.
+    """
+
+    operator: SeaLevelOperator
+    coefficients: NDArray[np.complex128]
+    constant: complex
+    load_mass: complex
+    water_vapour: complex
+    iterations: int
+
+    @property
+    def height(self) -> NDArray[np.float64] | NDArray[np.complex128]:
+        """Height on the operator's grid, over land too, (n_lat, n_lon) m."""
+        return _joined(self.operator.grid.synthesise(self.coefficients))
+
+    def at(self, latitude_deg: ArrayLike, longitude_deg: ArrayLike) -> NDArray[np.float64] | NDArray[np.complex128]:
+        """Height at points, the full sum over harmonics.
+
+        Parameters
+        ----------
+        latitude_deg, longitude_deg : array_like
+            Degrees north and east, of shapes that broadcast.
+
+        Returns
+        -------
+        array
+            m.
+        """
+        latitude, longitude = np.broadcast_arrays(latitude_deg, longitude_deg)
+        grid = self.operator.grid
+        values = _joined(grid.synthesise_at(self.coefficients, latitude.ravel(), longitude.ravel()))
+        return values.reshape(latitude.shape)
+
+    @property
+    def ocean_mean(self) -> float | complex:
+        """Mean height over the ocean, m; follows from the masses alone up to rounding."""
+        integral = self.operator.ocean_integral(self.coefficients)
+        mean = _joined(integral) * EARTH_RADIUS**2 / self.operator.ocean_area_m2
+        return mean.item()
+
+    @property
+    def mass_closure(self) -> float:
+        """Mass that ocean, load and water vapour leave over, kg, from a sum over the grid."""
+        operator = self.operator
+        ocean_mass = operator.sea_water_density * np.sum(operator.ocean * self.height * operator.cell_area_m2)
+        return float(abs(ocean_mass + self.load_mass + self.water_vapour))
+
+
+def solve_sea_level(
+    operator: SeaLevelOperator,
+    *,
+    load: NDArray[np.float64] | NDArray[np.complex128] | None = None,
+    forcing: NDArray[np.float64] | NDArray[np.complex128] | None = None,
+    water_vapour: complex = 0.0,
+    tolerance: float = 1e-10,
+) -> SeaLevel:
+    """Solve the elastic sea-level equation with a self-consistent, mass-conserving ocean.
+
+    S = sum_n { K_n [rho_w O S + W]_n + Phi_n } + c, with c from
+    integral (rho_w O S + W) = -M_v (Farrell & Clark 1976; tides: Agnew & Farrell 1978).
+
+    Parameters
+    ----------
+    operator : SeaLevelOperator
+        From :func:`massfit.fingerprint.operator.prepare_operator`.
+    load : (n_lat, n_lon) array, optional
+        W on the operator's grid, kg m-2 of whole-cell area, real or complex; load on
+        ocean cells is used as given, besides the ocean's own response.
+    forcing : (n_lat, n_lon) array, optional
+        Phi on the operator's grid, m: the equilibrium height, solid-Earth response
+        included; its mean drops out.
+    water_vapour : complex
+        M_v, mass of water vapour in the air, kg; positive mass lowers the sea.
+    tolerance : float
+        Residual of the solve relative to its right side.
+
+    Returns
+    -------
+    SeaLevel
+
+    Raises
+    ------
+    InputError
+        Neither load nor forcing nor water vapour, wrong shapes, or values that are not finite.
+    ConvergenceError
+        The tolerance is not reached.
+
+    Examples
+    --------
+    >>> from massfit.earth.love import love_numbers
+    >>> from massfit.fingerprint.operator import prepare_operator
+    >>> from massfit.fingerprint.ocean import OceanFunction
+    >>> operator = prepare_operator(OceanFunction.builtin(), love_numbers(max_degree=20), max_degree=20)
+    >>> sea = solve_sea_level(operator, load=1.0 - operator.ocean)  # 1 mm of water on all land
+    >>> round(1000 * sea.ocean_mean, 4)  # mm of sea water
+    -0.3967
+    """
+    _check(operator, load, forcing, water_vapour)
+    complex_valued = any(np.iscomplexobj(value) for value in (load, forcing, water_vapour) if value is not None)
+    w = _coefficients(operator, load, complex_valued)
+    phi = _coefficients(operator, forcing, complex_valued)
+    vapour = _parts(np.asarray(water_vapour), complex_valued)
+    density, ocean = operator.sea_water_density, operator.ocean_coefficients
+    solid_angle = np.sqrt(4.0 * np.pi)  # coefficient of the constant 1
+    mass = solid_angle * w[:, 0].real * EARTH_RADIUS**2
+    # mean height over the ocean, fixed by the masses
+    mean = -(mass + vapour) / (density * operator.ocean_area_m2)
+    root = operator.root_kernel
+    source = root * (w + density * mean[:, None] * ocean)
+    source[:, 1:] += phi[:, 1:] / root[1:]
+    u, iterations = operator.invert(source, tolerance=tolerance)
+    height = root * u
+    ocean_angle = operator.ocean_area_m2 / EARTH_RADIUS**2
+    constant = mean - operator.ocean_integral(height) / ocean_angle
+    height[:, 0] += solid_angle * constant
+    joined = [_joined(value).item() for value in (constant, mass)]
+    return SeaLevel(operator, height, joined[0], joined[1], water_vapour, iterations)
+
+
+def _check(
+    operator: SeaLevelOperator,
+    load: NDArray[np.float64] | NDArray[np.complex128] | None,
+    forcing: NDArray[np.float64] | NDArray[np.complex128] | None,
+    water_vapour: complex,
+) -> None:
+    place, faults = "sea level", []
+    if load is None and forcing is None and water_vapour == 0.0:
+        faults.append(Fault(place, "load", "nothing forces the sea", action="Give a load or a forcing"))
+    for name, value in {"load": load, "forcing": forcing}.items():
+        if value is None:
+            continue
+        if value.shape != operator.cells.shape:
+            allowed = f"Must be {operator.cells.shape} as the operator's grid"
+            faults.append(Fault(place, name, f"the shape is {value.shape}", allowed, "Use massfit.fingerprint.grid"))
+        elif not np.all(np.isfinite(value)):
+            count = np.count_nonzero(~np.isfinite(value))
+            faults.append(Fault(place, name, f"{count} values are not finite", "Finite numbers", "Fill them with 0"))
+    if faults:
+        raise InputError(faults)
+
+
+def _parts(value: NDArray[np.float64] | NDArray[np.complex128], complex_valued: bool) -> NDArray[np.float64]:
+    """Real part, or real and imaginary part, on a new first axis."""
+    return np.stack([value.real, value.imag]) if complex_valued else np.asarray(value.real, dtype=float)[None]
+
+
+def _joined(parts: NDArray[np.float64]) -> NDArray[np.float64] | NDArray[np.complex128]:
+    return parts[0] if len(parts) == 1 else np.asarray(parts[0] + 1j * parts[1])
+
+
+def _coefficients(
+    operator: SeaLevelOperator,
+    field: NDArray[np.float64] | NDArray[np.complex128] | None,
+    complex_valued: bool,
+) -> NDArray[np.complex128]:
+    if field is None:
+        return np.zeros((2 if complex_valued else 1, operator.grid.degree.size), dtype=complex)
+    return operator.grid.analyse(_parts(field, complex_valued))
