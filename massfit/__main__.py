@@ -1,0 +1,5 @@
+"""`python -m massfit`."""
+
+from massfit.cli.main import main
+
+main()

@@ -1,0 +1,70 @@
+"""The commands; each loads, calls and writes. Heavy imports live inside them, so that --help is quick."""
+
+import sys
+from pathlib import Path
+
+import click
+
+from massfit.cli.progress import shown_progress
+from massfit.cli.refusal import refusing_politely
+
+_FOLDER = click.Path(path_type=Path)
+NOT_TRUSTWORTHY = 3
+
+
+@click.group(context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 80})
+@click.version_option(package_name="massfit")
+def main() -> None:
+    """Measure the annual cycle of global ocean mass with sea-floor pressure.
+
+    A network is a folder with a network.toml. Exit codes: 0 done; 2 the input
+    is wrong, and nothing was written; 3 computed, but not trustworthy.
+    Results are for research; records of hazard-warning stations must not be
+    touched operationally on the strength of this tool.
+    """
+
+
+@main.command()
+@click.argument("network", type=_FOLDER)
+@click.option("--output", type=_FOLDER, help="Results folder  [default: results/ beside the network file]")
+@click.option("--overwrite", is_flag=True, help="Replace finished results.")
+@click.option("--outside", is_flag=True, help="Allow paths outside the network's folder.")
+@click.option("--quiet", is_flag=True, help="Print nothing but errors.")
+def estimate(network: Path, output: Path | None, overwrite: bool, outside: bool, quiet: bool) -> None:
+    """Do the main job: from raw records to the network posterior.
+
+    NETWORK is a network.toml or the folder that holds one. Writes a results
+    folder with estimate.json, NetCDF files, figures and report.html, and prints
+    a summary.
+    """
+    with refusing_politely(), shown_progress(quiet=quiet) as progress:
+        from massfit.pipeline.save import estimate_to_folder, results_folder
+
+        folder = results_folder(network, output)
+        done = estimate_to_folder(network, folder, overwrite=overwrite, outside=outside, progress=progress)
+    if not quiet:
+        click.echo(f"{done.text}\n\nResults: {folder}   Start with {folder / 'report.html'}")
+    sys.exit(0 if done.estimate.summary["convergence"]["converged"] else NOT_TRUSTWORTHY)
+
+
+@main.command()
+@click.argument("folder", type=_FOLDER)
+@click.option("--seed", type=click.IntRange(min=0), default=1, show_default=True, help="Seed of the invention.")
+@click.option("--sites", type=click.IntRange(1, 60), default=18, show_default=True, help="Number of sites.")
+@click.option("--years", type=click.FloatRange(1.0, 12.0), default=5.0, show_default=True, help="Length, years.")
+@click.option("--models", type=click.IntRange(0, 8), default=3, show_default=True, help="Number of ocean models.")
+@click.option("--noise", type=click.FloatRange(0.0, 20.0), default=1.0, show_default=True, help="Scale of the noise.")
+@click.option("--sampling", type=click.Choice(["hourly", "daily"]), default="hourly", show_default=True)
+def simulate(folder: Path, seed: int, sites: int, years: float, models: int, noise: float, sampling: str) -> None:
+    """Invent a network with known truth and write it to FOLDER.
+
+    FOLDER must not exist or be empty. The truth is in truth.json; the rest is
+    what an analyst would have, ready for `massfit estimate FOLDER`.
+    """
+    with refusing_politely():
+        from massfit.pipeline.invent import simulate_to_folder
+
+        simulate_to_folder(
+            folder, seed=seed, sites=sites, years=years, models=models, noise=noise, sampling=sampling
+        )
+    click.echo(f"Wrote an invented network to {folder}. Next: massfit estimate {folder}")
