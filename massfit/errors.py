@@ -1,6 +1,7 @@
 """The errors massfit raises on purpose, each carrying its data."""
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 
 
@@ -59,6 +60,29 @@ class InputError(MassfitError):
 
     def __reduce__(self) -> tuple[type["InputError"], tuple[tuple[Fault, ...]]]:
         return (InputError, (self.faults,))
+
+
+@contextmanager
+def collect(faults: list[Fault]) -> Iterator[None]:
+    """Add the faults of a block to a list instead of raising them.
+
+    Parameters
+    ----------
+    faults : list of Fault
+        Extended in place.
+
+    Examples
+    --------
+    >>> faults = []
+    >>> with collect(faults):
+    ...     raise InputError(Fault("a.nc", "p", "the variable is missing"))
+    >>> len(faults)
+    1
+    """
+    try:
+        yield
+    except InputError as error:
+        faults.extend(error.faults)
 
 
 class ConvergenceError(MassfitError):

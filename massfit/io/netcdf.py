@@ -1,0 +1,157 @@
+"""Open NetCDF files with an explicit engine, refusing damaged ones."""
+
+import struct
+from pathlib import Path
+from typing import BinaryIO
+
+import xarray as xr
+
+from massfit.errors import Fault, InputError
+
+_HDF5_MAGIC = b"\x89HDF\r\n\x1a\n"
+_OFFSET_FORMAT = {1: ">i", 2: ">q"}
+_TYPE_SIZE = {1: 1, 2: 1, 3: 2, 4: 4, 5: 4, 6: 8}
+_STREAMING = -1
+
+
+def is_netcdf(path: Path) -> bool:
+    """Whether a file is NetCDF by its first bytes, whatever its name.
+
+    Parameters
+    ----------
+    path : pathlib.Path
+
+    Returns
+    -------
+    bool
+        True for HDF5 and for every variant of the classic format.
+    """
+    with path.open("rb") as file:
+        start = file.read(8)
+    return start == _HDF5_MAGIC or start[:3] == b"CDF"
+
+
+def open_netcdf(path: Path, *, source: str = "", decode: bool = True) -> xr.Dataset:
+    """Open a NetCDF file lazily.
+
+    Parameters
+    ----------
+    path : pathlib.Path
+    source : str
+        Name of the file in an error; the path when empty.
+    decode : bool
+        Whether fill values, packing and times are decoded.
+
+    Returns
+    -------
+    xarray.Dataset
+        To be closed by the caller (a context manager).
+
+    Raises
+    ------
+    InputError
+        For a file that is not NetCDF, or shorter than its header says: the reader
+        of the classic format would fill in the missing end without a word.
+    """
+    source = source or str(path)
+    with path.open("rb") as file:
+        magic = file.read(4)
+    try:
+        if magic[:3] == b"CDF":
+            require_complete(path, source=source)
+            return xr.open_dataset(
+                path, engine="scipy", mask_and_scale=decode, decode_times=decode, backend_kwargs={"mmap": False}
+            )
+        return xr.open_dataset(path, engine="h5netcdf", mask_and_scale=decode, decode_times=decode)
+    except (OSError, ValueError, KeyError) as error:
+        problem = f"the file cannot be read as NetCDF ({error})"
+        raise InputError(Fault(source, "", problem, "Must be NetCDF-3 or NetCDF-4", "Fetch it again")) from error
+
+
+def require_complete(path: Path, *, source: str = "") -> None:
+    """Refuse a classic NetCDF file that is shorter than its header says.
+
+    Parameters
+    ----------
+    path : pathlib.Path
+    source : str
+        Name of the file in an error; the path when empty.
+
+    Raises
+    ------
+    InputError
+        For a truncated or unreadable header, and for missing data.
+
+    References
+    ----------
+    The NetCDF Classic Format Specification (Unidata; also OGC 10-092r3).
+    """
+    source = source or str(path)
+    with path.open("rb") as file:
+        try:
+            needed = _needed_bytes(file)
+        except (struct.error, KeyError, UnicodeDecodeError) as error:
+            problem = "the header of the classic NetCDF file is cut or of an unknown variant"
+            allowed = "Must be the classic or the 64-bit offset format, or NetCDF-4"
+            raise InputError(Fault(source, "", problem, allowed, "Fetch it again")) from error
+    found = path.stat().st_size
+    if found < needed:
+        problem = f"the file is cut short: it has {found} bytes and its header announces {needed}"
+        raise InputError(Fault(source, "", problem, action="Fetch it again"))
+
+
+def _needed_bytes(file: BinaryIO) -> int:
+    """Bytes up to the last value of the last variable."""
+    version = file.read(4)[3]
+    offset_format = _OFFSET_FORMAT[version]
+    records = _integer(file)
+    lengths = []
+    for _ in range(_list_length(file)):
+        _skip_name(file)
+        lengths.append(_integer(file))
+    _skip_attributes(file)
+    fixed_end, record_start, record_sizes = 0, 0, []
+    for _ in range(_list_length(file)):
+        _skip_name(file)
+        shape = [lengths[_integer(file)] for _ in range(_integer(file))]
+        _skip_attributes(file)
+        size = _TYPE_SIZE[_integer(file)]
+        _integer(file)
+        begin = struct.unpack(offset_format, file.read(struct.calcsize(offset_format)))[0]
+        is_record = bool(shape) and shape[0] == 0
+        for length in shape[is_record:]:
+            size *= length
+        if is_record:
+            record_start = begin if not record_sizes else min(record_start, begin)
+            record_sizes.append(size)
+        else:
+            fixed_end = max(fixed_end, begin + size)
+    if not record_sizes or records in (0, _STREAMING):
+        return max(fixed_end, file.tell())
+    # a single record variable is packed without padding; the last one of several may lack it
+    padding = -record_sizes[-1] % 4
+    stride = record_sizes[0] if len(record_sizes) == 1 else sum(size + -size % 4 for size in record_sizes)
+    last = stride if len(record_sizes) == 1 else stride - padding
+    return int(max(fixed_end, record_start + (records - 1) * stride + last))
+
+
+def _integer(file: BinaryIO) -> int:
+    return int(struct.unpack(">i", file.read(4))[0])
+
+
+def _list_length(file: BinaryIO) -> int:
+    _integer(file)  # the tag; absent lists have length 0
+    return _integer(file)
+
+
+def _skip_name(file: BinaryIO) -> None:
+    length = _integer(file)
+    file.seek(length + -length % 4, 1)
+
+
+def _skip_attributes(file: BinaryIO) -> None:
+    for _ in range(_list_length(file)):
+        _skip_name(file)
+        size = _TYPE_SIZE[_integer(file)]
+        length = size * _integer(file)
+        file.seek(length + -length % 4, 1)

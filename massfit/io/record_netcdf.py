@@ -1,0 +1,265 @@
+"""Pressure records in CF NetCDF: one or more stations in any layout of timeSeries."""
+
+from difflib import get_close_matches
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from massfit.errors import Fault, InputError, collect
+from massfit.io.deployment import DeploymentFile
+from massfit.io.netcdf import open_netcdf
+from massfit.io.samples import Samples
+from massfit.io.units import PRESSURE_UNITS, pascal_per_unit
+from massfit.records.record import Action
+
+# CF standard names, the most exact one first
+_STANDARD_NAMES = (
+    "sea_water_pressure_at_sea_floor",
+    "sea_water_pressure",
+    "sea_water_pressure_due_to_sea_water",
+)
+_STATION_NAMES = ("station", "station_id", "station_name", "site", "timeseries_id")
+_CALENDARS = ("standard", "gregorian", "proleptic_gregorian")
+_COARSE_PA = 1.0
+"""A step of single-precision numbers above this is worth a word, Pa."""
+_UNWRITTEN = 9.0e36
+"""The NetCDF library fills floats that were never written with 9.97e36."""
+
+Indexers = dict[str, Any]
+
+
+def read_netcdf(path: Path, entry: DeploymentFile) -> Samples:
+    """Read one station of a CF timeSeries file.
+
+    Layouts: one series; (station, time) and (time, station); a time axis a
+    station; contiguous and indexed ragged arrays (CF Conventions 1.13, chapter 9
+    and appendix H). Where the time has bounds their middles are used.
+
+    Parameters
+    ----------
+    path : pathlib.Path
+    entry : DeploymentFile
+
+    Returns
+    -------
+    Samples
+
+    Raises
+    ------
+    InputError
+        With every fault of variable, station, unit and time.
+    """
+    with open_netcdf(path, source=entry.file, decode=False) as dataset:
+        variable = _pressure_variable(dataset, entry)
+        time = _time_variable(dataset, variable, entry)
+        faults: list[Fault] = []
+        factor, indexers = np.nan, Indexers()
+        with collect(faults):
+            factor = _pascal_factor(variable, entry)
+        with collect(faults):
+            indexers = _station_indexers(dataset, variable, time, entry)
+        if faults:
+            raise InputError(faults)
+        stored = variable.isel(indexers, missing_dims="ignore").values
+        stamps, centred = _stamps(dataset, time.isel(indexers, missing_dims="ignore"), entry)
+        pressure = _unpacked(stored, variable.attrs) * factor
+    known = ~np.isnat(stamps)
+    actions = _coarse(stored, factor) + _undated(known)
+    return Samples(stamps[known], pressure[known], centred, actions)
+
+
+def _pressure_variable(dataset: xr.Dataset, entry: DeploymentFile) -> xr.DataArray:
+    numeric = {str(name): data for name, data in dataset.variables.items() if data.dtype.kind in "iuf" and data.dims}
+    if entry.variable is not None:
+        if entry.variable not in numeric:
+            raise InputError(_absent(entry.file, "variable", entry.variable, list(numeric)))
+        return dataset[entry.variable]
+    for standard_name in _STANDARD_NAMES:
+        names = [name for name, data in numeric.items() if data.attrs.get("standard_name") == standard_name]
+        if names:
+            return dataset[_only(names, entry)]
+    names = [
+        name
+        for name, data in numeric.items()
+        if data.attrs.get("units") in PRESSURE_UNITS
+        and "standard_name" not in data.attrs
+        and data.attrs.get("axis") != "Z"
+        and (data.attrs["units"] not in ("mm", "cm", "m") or entry.density_kg_m3 is not None)
+    ]
+    if not names:
+        problem = "no variable is recognised as pressure at the sea floor"
+        allowed = f"Recognised by the standard names {', '.join(_STANDARD_NAMES)} or by a unit of pressure"
+        action = f"State `variable`; the file has {', '.join(numeric) or 'none'}"
+        raise InputError(Fault(entry.file, "variable", problem, allowed, action))
+    return dataset[_only(names, entry)]
+
+
+def _only(names: list[str], entry: DeploymentFile) -> str:
+    if len(names) > 1:
+        problem = f"more than one variable can be the pressure: {', '.join(names)}"
+        raise InputError(Fault(entry.file, "variable", problem, "Must be one", "State `variable`"))
+    return names[0]
+
+
+def _absent(source: str, name: str, given: str, known: list[str]) -> Fault:
+    near = get_close_matches(given, known, n=1)
+    action = f"Did you mean {near[0]!r}?" if near else ""
+    return Fault(source, name, f"{given!r} is not in the file", f"Must be one of {', '.join(known) or 'none'}", action)
+
+
+def _time_variable(dataset: xr.Dataset, variable: xr.DataArray, entry: DeploymentFile) -> xr.DataArray:
+    bounds = {data.attrs.get("bounds") for data in dataset.variables.values()}
+    names = [
+        str(name)
+        for name, data in dataset.variables.items()
+        if " since " in str(data.attrs.get("units", ""))
+        and data.dims
+        and set(data.dims) <= set(variable.dims)
+        and name not in bounds
+    ]
+    named = [name for name in names if dataset[name].attrs.get("standard_name") == "time" or name == "time"]
+    names = named or names
+    if len(names) != 1:
+        found = ", ".join(names) or "none"
+        problem = f"time variables along {variable.name!r}: {found}"
+        allowed = "Must be one, with units like 'seconds since 1970-01-01' and the standard name time"
+        raise InputError(Fault(entry.file, "time", problem, allowed))
+    time = dataset[names[0]]
+    calendar = str(time.attrs.get("calendar", "standard"))
+    if calendar not in _CALENDARS:
+        problem = f"the calendar of {names[0]!r} is {calendar!r}"
+        raise InputError(Fault(entry.file, "time", problem, f"Must be one of {', '.join(_CALENDARS)}"))
+    return time
+
+
+def _pascal_factor(variable: xr.DataArray, entry: DeploymentFile) -> float:
+    in_file = variable.attrs.get("units")
+    name = str(variable.name)
+    if in_file is None and entry.units is None:
+        raise InputError(Fault(entry.file, name, "the variable has no units", action="State `units`"))
+    units = str(entry.units if in_file is None else in_file)
+    factor = pascal_per_unit(units, density_kg_m3=entry.density_kg_m3, source=entry.file, name=name)
+    if entry.units is None or in_file is None:
+        return factor
+    stated = pascal_per_unit(entry.units, density_kg_m3=entry.density_kg_m3, source=entry.file, name="units")
+    if stated != factor:
+        problem = f"the units are {in_file!r} in the file and {entry.units!r} in the network file"
+        raise InputError(Fault(entry.file, name, problem, "Must agree", "Correct the wrong one"))
+    return factor
+
+
+def _station_indexers(
+    dataset: xr.Dataset, variable: xr.DataArray, time: xr.DataArray, entry: DeploymentFile
+) -> Indexers:
+    """Indexers that leave one axis, that of the samples of one station."""
+    identity = _station_identity(dataset)
+    sample = variable.dims[0]
+    for other in dataset.variables.values():
+        if other.attrs.get("sample_dimension") == sample:
+            sizes = other.values.astype(int)
+            station = _station_index(identity, sizes.size, entry)
+            stop = int(sizes[: station + 1].sum())
+            return {str(sample): slice(stop - int(sizes[station]), stop)}
+        if "instance_dimension" in other.attrs and other.dims == (sample,):
+            count = dataset.sizes[other.attrs["instance_dimension"]]
+            return {str(sample): np.flatnonzero(other.values == _station_index(identity, count, entry))}
+    along = time.dims if time.ndim == 1 else time.dims[-1:]
+    extra = [str(dim) for dim in variable.dims if dim not in along]
+    if time.ndim > 1 and identity is not None and identity.dims and identity.dims[0] == time.dims[-1]:
+        extra = [str(identity.dims[0])]
+    wide = [dim for dim in extra if dataset.sizes[dim] > 1]
+    if len(wide) > 1:
+        problem = f"{variable.name!r} has the dimensions {variable.dims}"
+        raise InputError(Fault(entry.file, str(variable.name), problem, "Must be time and at most station"))
+    station = _station_index(identity, dataset.sizes[wide[0]] if wide else 1, entry)
+    return {dim: station if dim in wide else 0 for dim in extra}
+
+
+def _station_identity(dataset: xr.Dataset) -> xr.DataArray | None:
+    names = [name for name, data in dataset.variables.items() if data.attrs.get("cf_role") == "timeseries_id"]
+    names += [name for name in _STATION_NAMES if name in dataset.variables]
+    return dataset[names[0]] if names else None
+
+
+def _station_index(identity: xr.DataArray | None, count: int, entry: DeploymentFile) -> int:
+    if entry.station is None:
+        if count == 1:
+            return 0
+        ids = _station_ids(identity)
+        problem = f"the file holds {count} stations and none was chosen"
+        raise InputError(Fault(entry.file, "station", problem, f"Must be one of {', '.join(ids)}", "State `station`"))
+    ids = _station_ids(identity)
+    if entry.station not in ids:
+        raise InputError(_absent(entry.file, "station", entry.station, ids))
+    return ids.index(entry.station)
+
+
+def _station_ids(identity: xr.DataArray | None) -> list[str]:
+    if identity is None:
+        return []
+    values = np.atleast_1d(identity.values).tolist()
+    return [(value.decode() if isinstance(value, bytes) else str(value)).strip(" \0") for value in values]
+
+
+def _stamps(
+    dataset: xr.Dataset, time: xr.DataArray, entry: DeploymentFile
+) -> tuple[NDArray[np.datetime64], bool]:
+    """UTC stamps, and whether they are known to be the middles of intervals."""
+    stamps = _decoded(time.values, time.attrs, entry)
+    name = time.attrs.get("bounds")
+    if name not in dataset.variables:
+        return stamps, False
+    bounds = dataset[name]
+    bounds = bounds.isel({dim: slice(None) for dim in bounds.dims})
+    if bounds.shape != (*time.shape, 2):
+        return stamps, False
+    edges = _decoded(bounds.values, {**time.attrs, **bounds.attrs}, entry)
+    return edges[:, 0] + (edges[:, 1] - edges[:, 0]) // 2, True
+
+
+def _decoded(values: NDArray[Any], attributes: dict[str, Any], entry: DeploymentFile) -> NDArray[np.datetime64]:
+    kept = {key: attributes[key] for key in ("units", "calendar", "_FillValue", "missing_value") if key in attributes}
+    dims = [f"axis_{axis}" for axis in range(values.ndim)]
+    try:
+        decoded = xr.decode_cf(xr.Dataset({"stamps": (dims, values, kept)}))["stamps"].values
+    except ValueError as error:
+        problem = f"the time cannot be decoded ({str(error).splitlines()[0]})"
+        raise InputError(Fault(entry.file, "time", problem, "Must be within the years 1678 to 2262")) from error
+    return np.asarray(decoded, dtype="datetime64[ns]")
+
+
+def _unpacked(stored: NDArray[Any], attributes: dict[str, Any]) -> NDArray[np.float64]:
+    """Packed numbers as float64, with NaN for everything the attributes call invalid."""
+    bad = ~(np.abs(stored.astype(np.float64)) < _UNWRITTEN)
+    for key in ("_FillValue", "missing_value"):
+        if key in attributes:
+            bad |= np.isin(stored, np.asarray(attributes[key], dtype=stored.dtype))
+    low, high = attributes.get("valid_range", (None, None))
+    low, high = attributes.get("valid_min", low), attributes.get("valid_max", high)
+    if low is not None:
+        bad |= stored < low
+    if high is not None:
+        bad |= stored > high
+    scale, offset = attributes.get("scale_factor", 1.0), attributes.get("add_offset", 0.0)
+    values = stored.astype(np.float64) * float(scale) + float(offset)
+    return np.where(bad, np.nan, values)
+
+
+def _coarse(stored: NDArray[Any], factor: float) -> tuple[Action, ...]:
+    if stored.dtype != np.float32 or not np.isfinite(stored).any():
+        return ()
+    # the largest magnitude that is a pressure and no fill value
+    valid = stored[np.abs(stored) < 1.0e9]
+    step = float(np.spacing(np.abs(valid).max(initial=0.0).astype(np.float32))) * factor
+    if step <= _COARSE_PA:
+        return ()
+    detail = f"single-precision numbers of this size resolve {step:.1f} Pa only"
+    return (Action("resolution is limited", int(valid.size), detail),)
+
+
+def _undated(known: NDArray[np.bool_]) -> tuple[Action, ...]:
+    count = int(np.count_nonzero(~known))
+    return (Action("samples without a time left out", count),) if count else ()

@@ -1,0 +1,161 @@
+"""UTC times from text columns: a date in parts, a format, ISO 8601, or counts since a date."""
+
+import re
+from typing import Any
+
+import numpy as np
+import pandas as pd
+from numpy.typing import NDArray
+
+from massfit.errors import Fault, InputError
+
+DATE_PARTS = ("year", "month", "day", "hour", "minute", "second")
+"""Column names of a date in parts; the first three are needed."""
+
+_YEARS = (1900, 2200)
+_CLOCK = {"hour": (0, 23), "minute": (0, 59), "second": (0, 60)}
+_BOUNDS = {"year": _YEARS, "month": (1, 12), "day": (1, 31), **_CLOCK}
+_UNIT_MS = {"seconds": 1e3, "minutes": 60e3, "hours": 3600e3, "days": 86_400e3}
+_SINCE = re.compile(r"(seconds|minutes|hours|days) since (\d{4}-\d{2}-\d{2}(?:[T ]\d{2}:\d{2}(?::\d{2})?)?)")
+
+
+def line_fault(
+    source: str,
+    name: str,
+    values: NDArray[Any],
+    good: NDArray[np.bool_],
+    lines: NDArray[np.int64],
+    allowed: str,
+    action: str = "Correct it",
+) -> Fault:
+    """One fault for all bad values of a column: the first, its line, and how many follow.
+
+    Parameters
+    ----------
+    source, name : str
+        File and column.
+    values : (n,) array
+    good : (n,) array of bool
+        False at the bad values, of which there is at least one.
+    lines : (n,) array of int
+        Line numbers.
+    allowed, action : str
+        What is allowed and what to do.
+
+    Returns
+    -------
+    Fault
+    """
+    bad = np.flatnonzero(~good)
+    value = values[bad[0]]
+    shown = repr(value) if isinstance(value, str) else f"{value:g}"
+    more = f" (and {bad.size - 1} more lines)" if bad.size > 1 else ""
+    return Fault(source, name, f"the value is {shown}{more}", allowed, action, int(lines[bad[0]]))
+
+
+def joined_date(
+    parts: dict[str, NDArray[np.float64]], lines: NDArray[np.int64], *, source: str
+) -> NDArray[np.datetime64]:
+    """UTC times from columns of year, month, day and any of hour, minute, second.
+
+    Parameters
+    ----------
+    parts : dict of str to (n,) array
+        By the names of `DATE_PARTS`; seconds may have decimals.
+    lines : (n,) array of int
+        Line numbers, for the faults.
+    source : str
+        File.
+
+    Returns
+    -------
+    (n,) array of datetime64[ns]
+
+    Raises
+    ------
+    InputError
+        One fault a column that leaves its range, two-digit years among them,
+        and one for days that the month does not have.
+
+    Examples
+    --------
+    >>> parts = {"year": np.array([2011.0]), "month": np.array([3.0]), "day": np.array([11.0])}
+    >>> joined_date(parts, np.array([1]), source="a.txt").astype("datetime64[D]")
+    array(['2011-03-11'], dtype='datetime64[D]')
+    """
+    faults = []
+    for part, values in parts.items():
+        low, high = _BOUNDS[part]
+        whole = part == "second" or values == np.floor(values)
+        good = (values >= low) & (values <= high) & whole
+        if not good.all():
+            action = "Write years with four digits" if part == "year" else "Correct it"
+            faults.append(line_fault(source, part, values, good, lines, f"Must be within [{low}, {high}]", action))
+    if faults:
+        raise InputError(faults)
+    month = ((parts["year"] - 1970) * 12 + parts["month"] - 1).astype("datetime64[M]")
+    date = month.astype("datetime64[D]") + (parts["day"] - 1).astype("timedelta64[D]")
+    good = date.astype("datetime64[M]") == month
+    if not good.all():
+        allowed = "Must be a day of its month"
+        raise InputError(line_fault(source, "day", parts["day"], good, lines, allowed))
+    zero = np.zeros(date.size)
+    seconds = parts.get("hour", zero) * 3600 + parts.get("minute", zero) * 60 + parts.get("second", zero)
+    return date.astype("datetime64[ns]") + np.round(seconds * 1e9).astype("timedelta64[ns]")
+
+
+def parsed_time(
+    texts: "pd.Series[str]", time_format: str, lines: NDArray[np.int64], *, source: str, name: str
+) -> NDArray[np.datetime64]:
+    """UTC times from one column of text.
+
+    Parameters
+    ----------
+    texts : (n,) series of str
+    time_format : str
+        "iso" for ISO 8601 (an offset from UTC is taken off), a strptime format, or
+        a count such as "days since 1950-01-01", rounded to the millisecond.
+    lines : (n,) array of int
+        Line numbers, for the faults.
+    source, name : str
+        File and column.
+
+    Returns
+    -------
+    (n,) array of datetime64[ns]
+
+    Raises
+    ------
+    InputError
+        With the first text that cannot be read, its line, and how many follow.
+    """
+    since = _SINCE.fullmatch(time_format)
+    if since:
+        time = _counted(pd.to_numeric(texts, errors="coerce").to_numpy(dtype=float), since[1], since[2])
+        allowed = f"Must be a number of {time_format}"
+    else:
+        if time_format != "iso" and "%Y" not in time_format and "%y" not in time_format:
+            problem = f"{time_format!r} is not a time format"
+            allowed = "Must be 'iso', a strptime format with a year, or like 'days since 1950-01-01'"
+            raise InputError(Fault(source, "time_format", problem, allowed))
+        pandas_format = "ISO8601" if time_format == "iso" else time_format
+        parsed = pd.to_datetime(texts, format=pandas_format, errors="coerce", utc=True)
+        in_range = parsed.dt.year.between(*_YEARS)
+        time = parsed.where(in_range).dt.tz_localize(None).to_numpy(dtype="datetime64[ns]")
+        allowed = "Must be ISO 8601, UTC" if time_format == "iso" else f"Must be of the form {time_format!r}"
+    good = ~np.isnat(time)
+    if not good.all():
+        values = texts.to_numpy(dtype=object)
+        raise InputError(line_fault(source, name, values, good, lines, allowed, "Correct it or state `time_format`"))
+    return time
+
+
+def _counted(count: NDArray[np.float64], unit: str, origin: str) -> NDArray[np.datetime64]:
+    """Origin plus a count of units; in milliseconds, because 292 years of ns overflow."""
+    known = np.isfinite(count)
+    elapsed = np.round(np.where(known, count, 0.0) * _UNIT_MS[unit]).astype("timedelta64[ms]")
+    time = (np.datetime64(origin, "ms") + elapsed).astype("datetime64[ns]")
+    time[~known] = np.datetime64("NaT")
+    return np.asarray(time)
+
+
