@@ -72,6 +72,17 @@ FOOTPRINTS = Contract(
     attributes=("max_degree",),
 )
 
+EQUILIBRIUM_RESPONSES = Contract(
+    "equilibrium responses",
+    # pressure at the site per height of the degree-2 zonal tide and per wobble parameter
+    {
+        "zonal": Variable(("site",), "Pa m-1"),
+        "wobble_m1": Variable(("site",), "Pa rad-1"),
+        "wobble_m2": Variable(("site",), "Pa rad-1"),
+    },
+    attributes=("long_period_tides", "pole_tide"),
+)
+
 CORRECTIONS = Contract(
     "corrections of one site",
     # every series was subtracted from the record; time is the middle of the day, UTC

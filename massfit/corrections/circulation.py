@@ -1,0 +1,256 @@
+"""Bottom pressure of ocean circulation models at the sites, with their ocean mean removed."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from massfit.constants import PASCAL_PER_HPA, SEA_WATER_DENSITY
+from massfit.contracts import FOOTPRINTS, require
+from massfit.corrections.atmosphere import SHORTEST_FIT_DAYS, annual_phasor, ocean_mean_air_pressure, ocean_weight
+from massfit.corrections.grid_field import NEAREST_WITHIN_KM, GridField, Stencil, grid_field, stencil
+from massfit.corrections.series import interval_edges, resampled
+from massfit.errors import Fault, InputError
+from massfit.fingerprint.grid import regrid
+from massfit.fingerprint.ocean import OceanFunction
+from massfit.fingerprint.transforms import SphereGrid
+from massfit.network import CirculationModel, Series
+from massfit.site import Site
+
+OCEAN_MEAN_LIMIT_HPA = 0.02
+"""Largest annual cycle of the ocean mean that a file may hold which claims that it is removed."""
+
+WHOLE_OCEAN_SHARE = 0.9
+"""Share of the ocean a model must cover for its whole-ocean mean to be judged."""
+
+
+@dataclass(frozen=True, eq=False)
+class CirculationAtSites:
+    """Bottom pressure of one circulation model at the sites.
+
+    Parameters
+    ----------
+    name : str
+    sites : tuple of str
+        Site ids, in the order of the columns.
+    time : (n_time,) array of datetime64[ns]
+        UTC, middle of each interval.
+    pressure : (n_time, n_site) array of float
+        Pa; NaN where the model has no value.
+    distance_km : (n_site,) array of float
+        Distance to the wet cell used where the site's own cells are dry, else 0;
+        the distance to the nearest one where none is near enough; NaN where a table of sites lacks the site.
+    notes : tuple of str
+        What was noticed, for the report.
+    """
+
+    name: str
+    sites: tuple[str, ...]
+    time: NDArray[np.datetime64]
+    pressure: NDArray[np.float64]
+    distance_km: NDArray[np.float64]
+    notes: tuple[str, ...] = ()
+
+    def at(self, site: str) -> NDArray[np.float64]:
+        """Series of one site, (n_time,) Pa."""
+        return self.pressure[:, self.sites.index(site)]
+
+
+def circulation_at_sites(
+    model: CirculationModel,
+    sites: Sequence[Site],
+    *,
+    ocean: OceanFunction,
+    footprints: xr.Dataset | None = None,
+    air_pressure: xr.DataArray | None = None,
+) -> CirculationAtSites:
+    """Bottom pressure of a circulation model at the sites.
+
+    The mean over the whole ocean is not part of it: a gridded model that claims so is checked, a model that
+    comes with its own mean has it subtracted. Where the footprints are given, the answer of the ocean to the
+    attraction and load of a gridded model's pressure field is added.
+
+    Parameters
+    ----------
+    model : massfit.network.CirculationModel
+    sites : sequence of Site
+    ocean : OceanFunction
+        Weighs the ocean mean.
+    footprints : xarray.Dataset, optional
+        contracts.FOOTPRINTS, of these sites at least.
+    air_pressure : xarray.DataArray, optional
+        Surface air pressure, Pa, over (time, lat, lon); needed by a model whose air pressure is "forced-excluded".
+
+    Returns
+    -------
+    CirculationAtSites
+
+    Raises
+    ------
+    InputError
+        A field in another form, an ocean mean that was not removed or does not cover the model, or air pressure
+        that is needed and missing.
+
+    Examples
+    --------
+    >>> time = np.arange("2016-01-01T12", "2016-01-03T12", 24, dtype="datetime64[h]").astype("datetime64[ns]")
+    >>> table = xr.DataArray([[1.0, 2.0], [3.0, 4.0]], dims=("time", "site"), coords={"time": time, "site": ["A", "B"]})
+    >>> model = CirculationModel("invented", table, Series("mean", time, np.array([0.5, 0.5])), "not-forced")
+    >>> circulation_at_sites(model, [Site("B", 0.0, 0.0)], ocean=OceanFunction.builtin()).at("B")
+    array([1.5, 3.5])
+    """
+    if model.air_pressure == "forced-excluded" and air_pressure is None:
+        raise InputError(
+            Fault(
+                model.name,
+                "air_pressure",
+                'the model states "forced-excluded", and there is no air-pressure field',
+                "The local response to air pressure must be added",
+                "Give [corrections] air_pressure",
+            )
+        )
+    tabulated = "site" in model.pressure.dims
+    result = _from_table(model, sites) if tabulated else _from_grid(model, sites, ocean, footprints)
+    pressure = result.pressure
+    if model.ocean_mean is not None:
+        pressure = pressure - _own_mean(model.name, model.ocean_mean, result.time)[:, None]
+    if model.air_pressure == "forced-excluded" and air_pressure is not None:
+        pressure = pressure + _air_anomaly(air_pressure, sites, ocean, result.time)
+    return CirculationAtSites(model.name, result.sites, result.time, pressure, result.distance_km, result.notes)
+
+
+def _from_table(model: CirculationModel, sites: Sequence[Site]) -> CirculationAtSites:
+    data = model.pressure
+    if set(data.dims) != {"time", "site"} or any(dim not in data.coords for dim in data.dims):
+        problem = f"dimensions {tuple(data.dims)} with coordinates {tuple(data.coords)}"
+        allowed = "Must be (time, site) or (time, lat, lon), with their coordinates"
+        raise InputError(Fault(model.name, "pressure", problem, allowed))
+    time = np.asarray(data["time"].values, dtype="datetime64[ns]")
+    if time.size < 2 or not np.all(np.diff(time) > np.timedelta64(0, "ns")):
+        raise InputError(Fault(model.name, "time", "the times do not increase or are fewer than two"))
+    ids = [str(value) for value in data["site"].values]
+    values = np.asarray(data.transpose("time", "site").values, dtype=float)
+    pressure = np.full((time.size, len(sites)), np.nan)
+    for column, site in enumerate(sites):
+        if site.id in ids:
+            pressure[:, column] = values[:, ids.index(site.id)]
+    absent = [site.id for site in sites if site.id not in ids]
+    notes = [f"has no series for {', '.join(absent)}"] if absent else []
+    if model.ocean_mean is None:
+        notes.append("holds sites only: that its ocean mean is removed is taken from its file and was not checked")
+    distance = np.where(np.isin([site.id for site in sites], ids), 0.0, np.nan)
+    return _named(model.name, sites, time, pressure, distance, notes)
+
+
+def _from_grid(
+    model: CirculationModel, sites: Sequence[Site], ocean: OceanFunction, footprints: xr.Dataset | None
+) -> CirculationAtSites:
+    field = grid_field(model.name, model.pressure)
+    wet = field.first_finite()
+    if not wet.any():
+        raise InputError(Fault(model.name, "pressure", "the field holds no value at all", "Must hold bottom pressure"))
+    whole_cells = np.where(wet, field.cells.cell_area_m2.ravel(), 0.0)
+    ocean_part = np.where(wet, ocean_weight(field, ocean), 0.0)
+    nearby = stencil(field, wet, sites)
+    attraction = _attraction_weights(field, sites, footprints)
+    pressure = np.empty((field.time.size, len(sites)))
+    means = np.empty((field.time.size, 2))
+    for when, block in field.blocks():
+        filled = np.where(np.isfinite(block), block, 0.0)
+        means[when] = filled @ np.stack([whole_cells / whole_cells.sum(), ocean_part / max(ocean_part.sum(), 1.0)]).T
+        pressure[when] = nearby.apply(block)
+        if attraction is not None:
+            centred = np.where(np.isfinite(block), block - means[when, :1], 0.0)
+            pressure[when] += centred @ attraction
+    notes = _distance_notes(sites, nearby)
+    notes += _check_mean(model, field, means, ocean_part.sum() / ocean.area_m2)
+    if attraction is None:
+        notes.append("the attraction and load of its pressure field are not added: no footprints were given")
+    return _named(model.name, sites, field.time, pressure, nearby.distance_km, notes)
+
+
+def _attraction_weights(
+    field: GridField, sites: Sequence[Site], footprints: xr.Dataset | None
+) -> NDArray[np.float64] | None:
+    """Pressure at each site per pressure in each cell by its attraction and load, (n_cell, n_site)."""
+    if footprints is None:
+        return None
+    require(footprints, FOOTPRINTS)
+    chosen = footprints["footprint"].sel(site=[site.id for site in sites])
+    source = SphereGrid(int(footprints.attrs["max_degree"])).cells
+    per_area = regrid(np.asarray(chosen.values, dtype=float), source, field.cells)
+    density = float(footprints.attrs.get("sea_water_density_kg_m3", SEA_WATER_DENSITY))
+    # load = pressure / g, and pressure at the site = density g height: g cancels
+    weights = density * per_area * field.cells.cell_area_m2
+    return np.asarray(weights.reshape(len(sites), -1).T)
+
+
+def _check_mean(model: CirculationModel, field: GridField, means: NDArray[np.float64], covered: float) -> list[str]:
+    """Judge a claim that the ocean mean is removed, with whole cells and with their ocean part as weights."""
+    if model.ocean_mean is not None:
+        return []
+    if covered < WHOLE_OCEAN_SHARE:
+        return [
+            f"covers {100 * covered:.0f} % of the ocean: that its mean over the whole ocean is removed was not checked"
+        ]
+    starts, ends = interval_edges(field.time)
+    if (ends[-1] - starts[0]) / np.timedelta64(1, "D") < SHORTEST_FIT_DAYS or field.time.size < 12:
+        return ["is shorter than a year: that its ocean mean is removed was not checked"]
+    year = int(str(field.time[0])[:4])
+    cycles = [abs(annual_phasor(Series(model.name, field.time, mean), year)) / PASCAL_PER_HPA for mean in means.T]
+    if min(cycles) > OCEAN_MEAN_LIMIT_HPA:
+        raise InputError(
+            Fault(
+                model.name,
+                "ocean_mean",
+                f'the file claims "removed", but its ocean mean has an annual cycle of {min(cycles):.3f} hPa',
+                f"Must be below {OCEAN_MEAN_LIMIT_HPA} hPa",
+                "Subtract the area-weighted mean over the whole ocean, or name the file of the model's own ocean mean",
+            )
+        )
+    return []
+
+
+def _own_mean(name: str, mean: Series, time: NDArray[np.datetime64]) -> NDArray[np.float64]:
+    values = resampled(mean.time, mean.pressure, time)
+    if not np.isfinite(values).any():
+        span = f"{str(mean.time[0])[:10]} to {str(mean.time[-1])[:10]}"
+        asked = f"{str(time[0])[:10]} to {str(time[-1])[:10]}"
+        problem = f"the model's own ocean mean covers {span}, and the model {asked}"
+        raise InputError(Fault(name, "ocean_mean", problem, "Must cover the model", "Give the mean of the same years"))
+    return values
+
+
+def _air_anomaly(
+    air_pressure: xr.DataArray, sites: Sequence[Site], ocean: OceanFunction, time: NDArray[np.datetime64]
+) -> NDArray[np.float64]:
+    """Air pressure at the sites less its ocean mean, (n_time, n_site) Pa, at the times of a model."""
+    field = grid_field("air_pressure", air_pressure)
+    everywhere = stencil(field, np.ones(field.latitude_deg.size * field.longitude_deg.size, dtype=bool), sites)
+    mean = ocean_mean_air_pressure(air_pressure, ocean)
+    local = np.concatenate([everywhere.apply(block) for _, block in field.blocks()])
+    return resampled(field.time, local - mean.pressure[:, None], time)
+
+
+def _distance_notes(sites: Sequence[Site], nearby: Stencil) -> list[str]:
+    notes = []
+    for site, distance in zip(sites, nearby.distance_km, strict=True):
+        if distance > NEAREST_WITHIN_KM:
+            notes.append(f"has no wet cell within {NEAREST_WITHIN_KM:.0f} km of {site.id}")
+        elif distance > 0.0:
+            notes.append(f"uses the nearest wet cell, {distance:.0f} km from {site.id}")
+    return notes
+
+
+def _named(
+    name: str,
+    sites: Sequence[Site],
+    time: NDArray[np.datetime64],
+    pressure: NDArray[np.float64],
+    distance_km: NDArray[np.float64],
+    notes: list[str],
+) -> CirculationAtSites:
+    ids = tuple(site.id for site in sites)
+    return CirculationAtSites(name, ids, time, pressure, distance_km, tuple(f"{name}: {note}" for note in notes))
