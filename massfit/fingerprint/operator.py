@@ -131,7 +131,7 @@ class SeaLevelOperator:
         return self.inner(coefficients, self.ocean_coefficients)
 
     def invert(
-        self, right: NDArray[np.complex128], *, tolerance: float = 1e-10
+        self, right: NDArray[np.complex128], *, tolerance: float = 1e-12
     ) -> tuple[NDArray[np.complex128], int]:
         """Solve (1 - rho K^(1/2) B' K^(1/2)) u = right by conjugate gradients.
 

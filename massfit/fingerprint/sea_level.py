@@ -84,7 +84,7 @@ def solve_sea_level(
     load: NDArray[np.float64] | NDArray[np.complex128] | None = None,
     forcing: NDArray[np.float64] | NDArray[np.complex128] | None = None,
     water_vapour: complex = 0.0,
-    tolerance: float = 1e-10,
+    tolerance: float = 1e-12,
 ) -> SeaLevel:
     """Solve the elastic sea-level equation with a self-consistent, mass-conserving ocean.
 

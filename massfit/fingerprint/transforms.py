@@ -184,8 +184,8 @@ def as_cilm(coefficients: NDArray[np.complex128], max_degree: int) -> NDArray[np
     --------
     >>> one = np.zeros(6, dtype=complex)
     >>> one[0] = np.sqrt(4 * np.pi)  # the constant 1
-    >>> float(as_cilm(one, 2)[0, 0, 0])
-    1.0
+    >>> as_cilm(one, 2)[0, 0].round(12)
+    array([1., 0., 0.])
     """
     order, degree = np.triu_indices(max_degree + 1)
     factor = np.where(order == 0, 1.0, np.sqrt(2.0) * (-1.0) ** order) / np.sqrt(4.0 * np.pi)
