@@ -20,7 +20,7 @@ _BARE = re.compile(r"[^,\]}#\n]+")
 
 
 def locate_keys(text: str) -> dict[KeyPath, int]:
-    """Line of every table, key and list element of a TOML document.
+    r"""Find the line of every table, key and list element of a TOML document.
 
     Parameters
     ----------
@@ -35,14 +35,14 @@ def locate_keys(text: str) -> dict[KeyPath, int]:
 
     Examples
     --------
-    >>> locate_keys('[a]\\nb.c = 1\\n[[d]]\\ne = [1,\\n 2]')[("d", 0, "e", 1)]
+    >>> locate_keys('[a]\nb.c = 1\n[[d]]\ne = [1,\n 2]')[("d", 0, "e", 1)]
     5
     """
     return _Scanner(text).document()
 
 
 def nearest_line(lines: Mapping[KeyPath, int], path: KeyPath) -> int | None:
-    """Line of the deepest part of a path that stands in the document.
+    """Find the line of the deepest part of a path that stands in the document.
 
     Examples
     --------

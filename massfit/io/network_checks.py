@@ -1,0 +1,209 @@
+"""Rules that bind several keys of a network file, or a key and the data behind it."""
+
+from collections.abc import Iterable, Sequence
+
+import numpy as np
+
+from massfit.constants import JULIAN_YEAR_DAYS
+from massfit.fingerprint.ocean import OceanFunction
+from massfit.io.locate import KeyPath
+from massfit.io.reading import Reading
+from massfit.io.schema import SiteEntry
+from massfit.io.sections import Sections
+from massfit.records.record import Record
+from massfit.settings import Corrections, Fingerprint, Frame
+from massfit.site import Site
+
+_NO_OCEAN = 0.005  # ocean fraction of a quarter-degree cell below which a site is on land
+_FEWEST_DAYS = 180
+_SHORT_YEARS = 1.5  # below it the drift and the annual cycle of one record hardly part
+_DAY = np.timedelta64(1, "D")
+
+
+def check_choices(reading: Reading, sections: Sections) -> None:
+    """Note every contradiction between keys.
+
+    Parameters
+    ----------
+    reading : Reading
+        Receives the faults.
+    sections : Sections
+    """
+    frame, corrections = sections.settings["network"], sections.settings["corrections"]
+    fingerprint = sections.settings["fingerprint"]
+    if frame is not None:
+        _check_window(reading, frame)
+    if corrections is not None:
+        _check_atmosphere(reading, corrections)
+    if fingerprint is not None:
+        _check_fingerprint(reading, fingerprint, corrections)
+    entries = [(table.path, table.entry) for table in sections.sites if table.entry is not None]
+    _check_unique(reading, [((*path, "id"), entry.id) for path, entry in entries])
+    _check_unique(reading, [((*path, "name"), entry.name) for path, entry in sections.circulation])
+    for path, entry in entries:
+        _check_place(reading, path, entry)
+        _check_exclusions(reading, path, entry)
+    _check_deployments(reading, sections)
+    if corrections is not None and corrections.air_pressure is None:
+        for path, model in sections.circulation:
+            if model.air_pressure == "forced-excluded":
+                problem = 'the value is "forced-excluded" and [corrections] has no air_pressure'
+                allowed = "Such a model needs the air pressure at each site"
+                reading.fault((*path, "air_pressure"), problem, allowed, "Add the file of surface air pressure")
+
+
+def check_loads(reading: Reading, named: Iterable[tuple[KeyPath, str]]) -> None:
+    """Note load members that stand twice in the ensemble, by member name."""
+    _check_unique(reading, named)
+
+
+def check_coverage(
+    reading: Reading, path: KeyPath, site: Site, records: Sequence[Record], frame: Frame
+) -> tuple[tuple[Record, ...], set[int]]:
+    """Count the days with data that the window and the exclusions leave at a site.
+
+    Parameters
+    ----------
+    reading : Reading
+        Receives a fault when there are none; a warning when they are under 1.5 years, and
+        for a record that lies wholly outside.
+    path : tuple
+        Where the site stands in the file.
+    site : Site
+    records : sequence of Record
+        All records of the site.
+    frame : Frame
+        Window.
+
+    Returns
+    -------
+    used : tuple of Record
+        Records with data that are used.
+    days : set of int
+        Days with data, counted from 1970.
+    """
+    found = {record.deployment: _days_with_data(record, site, frame) for record in records}
+    used = tuple(record for record in records if found[record.deployment])
+    days = set().union(*found.values())
+    if not days:
+        action = 'Widen the window, or leave the site out with exclude = "reason"'
+        reading.fault(path, "the window and the exclusions leave no data", "Must be some", action)
+        return used, days
+    for record in records:
+        if not found[record.deployment]:
+            reading.warnings.append(f"{record.deployment} has no data inside the window and is not used.")
+    if len(days) < _SHORT_YEARS * JULIAN_YEAR_DAYS:
+        reading.warnings.append(
+            f"Site {site.id} has {len(days)} days of data ({len(days) / JULIAN_YEAR_DAYS:.2f} years): drift and "
+            f"annual cycle part only beyond about {_SHORT_YEARS} years, so its uncertainty is wide."
+        )
+    return used, days
+
+
+def check_length(reading: Reading, days: int) -> None:
+    """Refuse a network that has data on fewer than 180 days."""
+    if days < _FEWEST_DAYS:
+        problem = f"the network has data on {days} days after window and exclusions"
+        action = "Add records or widen the window"
+        reading.fault(("network",), problem, f"An annual cycle needs at least {_FEWEST_DAYS}", action)
+
+
+def _days_with_data(record: Record, site: Site, frame: Frame) -> set[int]:
+    keep = np.isfinite(record.pressure) & ~np.isnat(record.time)
+    if frame.start is not None:
+        keep &= record.time >= np.datetime64(frame.start, "ns")
+    if frame.end is not None:
+        keep &= record.time < np.datetime64(frame.end, "ns") + _DAY
+    for interval in site.exclude:
+        keep &= (record.time < interval.start) | (record.time > interval.end)
+    return set(np.unique(record.time[keep].astype("datetime64[D]").astype(np.int64)).tolist())
+
+
+def _check_window(reading: Reading, frame: Frame) -> None:
+    if frame.start is not None and frame.end is not None and frame.start > frame.end:
+        problem = f"the window starts on {frame.start} and ends on {frame.end}"
+        reading.fault(("network", "start"), problem, "Must start before it ends", "Exchange the two")
+
+
+def _check_atmosphere(reading: Reading, corrections: Corrections) -> None:
+    path, removed = ("corrections",), corrections.ocean_mean_atmosphere == "already-removed"
+    if corrections.ocean_mean_atmosphere is None and corrections.air_pressure is None:
+        reading.fault(
+            (*path, "ocean_mean_atmosphere"),
+            "nothing is said about the ocean-mean air pressure",
+            'Must be a file or "already-removed" (or air_pressure instead)',
+            "State it: left in, it moves the peak by weeks",
+        )
+    for key in ("ocean_mean_atmosphere", "atmosphere_load"):
+        if corrections.air_pressure is not None and getattr(corrections, key) is not None:
+            problem = f"both air_pressure and {key} are given"
+            reading.fault((*path, key), problem, "air_pressure stands for both of the others", f"Drop {key} or it")
+    if removed and corrections.atmosphere_load is not None and corrections.ocean_mean_phasor_hpa is None:
+        problem = "atmosphere_load is given and the ocean-mean air pressure is already removed"
+        allowed = "The pull of the air needs the annual phasor of its ocean mean"
+        reading.fault(
+            (*path, "atmosphere_load"), problem, allowed, "Add ocean_mean_phasor_hpa = [in phase, quadrature]"
+        )
+    if not removed and corrections.ocean_mean_phasor_hpa is not None:
+        problem = "the phasor of the ocean-mean air pressure is given beside a file of it"
+        allowed = 'Belongs to ocean_mean_atmosphere = "already-removed" only'
+        reading.fault((*path, "ocean_mean_phasor_hpa"), problem, allowed, "Remove it")
+
+
+def _check_fingerprint(reading: Reading, fingerprint: Fingerprint, corrections: Corrections | None) -> None:
+    path: KeyPath = ("fingerprint", "loads")
+    _check_unique(reading, [((*path, position), text) for position, text in enumerate(fingerprint.loads)])
+    if not fingerprint.rotational_feedback:
+        return
+    if corrections is not None and corrections.pole_tide == "observed":
+        problem = 'rotational_feedback is true and pole_tide is "observed"'
+        allowed = "Observed polar motion already holds the response to the mass exchange, so it would count twice"
+    else:
+        problem, allowed = "the value is true", "Rotational feedback is not available in this version"
+    reading.fault(("fingerprint", "rotational_feedback"), problem, allowed, "Set it to false")
+
+
+def _check_unique(reading: Reading, named: Iterable[tuple[KeyPath, str]]) -> None:
+    first: dict[str, KeyPath] = {}
+    for path, name in named:
+        if name in first:
+            line = reading.lines.get(first[name])
+            place = "" if line is None else f" (first on line {line})"
+            reading.fault(path, f'"{name}" stands twice{place}', "Must be unique", "Rename or remove one")
+        first.setdefault(name, path)
+
+
+def _check_place(reading: Reading, path: KeyPath, entry: SiteEntry) -> None:
+    ocean = OceanFunction.builtin()
+    if ocean.fraction_at(entry.latitude, entry.longitude) > _NO_OCEAN:
+        return
+    latitude, longitude, distance_km = ocean.nearest_ocean(entry.latitude, entry.longitude)
+    longitude = longitude % 360.0 if entry.longitude > 180.0 else longitude
+    reading.fault(
+        (*path, "latitude"),
+        f"the site at {entry.latitude:g}, {entry.longitude:g} is on land",
+        "Must be in the ocean",
+        f"The nearest ocean is at {latitude:.3f}, {longitude:.3f}, {distance_km:.0f} km away; check sign and order",
+    )
+
+
+def _check_exclusions(reading: Reading, path: KeyPath, entry: SiteEntry) -> None:
+    for position, interval in enumerate(entry.site().exclude):
+        if interval.start > interval.end:
+            shown = [np.datetime_as_string(instant, unit="s") for instant in (interval.start, interval.end)]
+            problem = f"the interval runs from {shown[0]} to {shown[1]}"
+            reading.fault((*path, "exclude", position), problem, "Must start before it ends", "Exchange the two")
+
+
+def _check_deployments(reading: Reading, sections: Sections) -> None:
+    """One record must not count as two."""
+    first: dict[tuple[str, str | None, str | None], KeyPath] = {}
+    for table in sections.sites:
+        for path, entry in table.deployments:
+            record = (reading.relative(entry.file), entry.station, entry.variable)
+            if record in first:
+                place = reading.lines.get((*first[record], "file"))
+                problem = f'"{entry.file}" is the record of another deployment too (line {place})'
+                action = "Correct the file, or state the station or variable of each"
+                reading.fault((*path, "file"), problem, "Must be used once", action)
+            first.setdefault(record, path)

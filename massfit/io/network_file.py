@@ -1,0 +1,174 @@
+"""Read a network file and every file it names."""
+
+import os
+from dataclasses import fields
+from typing import Any
+
+from massfit.errors import Fault, InputError
+from massfit.fingerprint.loads import builtin_loads
+from massfit.fingerprint.pattern import LoadPattern
+from massfit.io.circulation_file import read_circulation
+from massfit.io.fields import read_air_pressure, read_atmosphere_load, read_loads
+from massfit.io.locate import KeyPath
+from massfit.io.network_checks import check_choices, check_coverage, check_length, check_loads
+from massfit.io.reading import Reading, open_reading
+from massfit.io.record_file import read_record
+from massfit.io.schema import CirculationEntry
+from massfit.io.sections import Sections, SiteTable, parse_sections
+from massfit.io.series_file import read_series
+from massfit.network import CirculationModel, Network, Series
+from massfit.records.record import Record
+from massfit.settings import Corrections, Settings
+
+_BUILTIN = "builtin:"
+
+
+def read_network(path: str | os.PathLike[str], *, outside: bool = False) -> Network:
+    """Read a network file, validate it and read every file it names.
+
+    Parameters
+    ----------
+    path : path
+        A network.toml, or the folder that holds one.
+    outside : bool
+        Whether its paths may leave its folder. No address is ever opened.
+
+    Returns
+    -------
+    Network
+        Records as they are: window and exclusions are applied when they are reduced. The
+        files of a site that is left out as a whole are not opened.
+
+    Raises
+    ------
+    InputError
+        With every fault that was found, in the order of the file; a syntax error is
+        reported alone.
+    """
+    reading = open_reading(path, outside=outside)
+    sections = parse_sections(reading)
+    check_choices(reading, sections)
+    sites = {table.path: table.entry.site() for table in sections.sites if table.entry is not None}
+    records = _records(reading, sections)
+    corrections = sections.settings["corrections"]
+    loads = _loads(reading, sections)
+    circulation = _circulation(reading, sections, {site.id for site in sites.values()})
+    air = _air(reading, corrections) if corrections is not None else {}
+    if reading.faults:
+        raise InputError(_in_order(reading))
+    return Network(
+        settings=_settings(sections),
+        sites=tuple(sites.values()),
+        records=records,
+        loads=loads,
+        circulation=circulation,
+        source=reading.source,
+        inputs=reading.inputs,
+        warnings=tuple(reading.warnings),
+        **air,
+    )
+
+
+def _settings(sections: Sections) -> Settings:
+    own = {"frame" if name == "network" else name: value for name, value in sections.settings.items()}
+    return Settings(**{field.name: own[field.name] for field in fields(Settings)})
+
+
+def _records(reading: Reading, sections: Sections) -> tuple[Record, ...]:
+    """Read the records of the sites that are used; days are counted only where nothing failed to be read."""
+    frame = sections.settings["network"]
+    records: list[Record] = []
+    days: set[int] = set()
+    all_read = frame is not None
+    for table in sections.sites:
+        site = None if table.entry is None else table.entry.site()
+        if site is not None and site.excluded_because is not None:
+            continue
+        own = _site_records(reading, table)
+        if site is None or frame is None or own is None:
+            all_read = False
+            continue
+        used, found = check_coverage(reading, table.path, site, own, frame)
+        records += used
+        days |= found
+    if all_read and sections.sites:
+        check_length(reading, len(days))
+    return tuple(records)
+
+
+def _site_records(reading: Reading, table: SiteTable) -> list[Record] | None:
+    """Every record of a site, or None when one could not be read."""
+    site = "?" if table.entry is None else table.entry.id
+    records: list[Record | None] = []
+    for path, entry in table.deployments:
+        label = f"{site}/{int(path[-1]) + 1}"
+        if reading.find((*path, "file"), entry.file) is None:
+            records.append(None)
+        else:
+            records.append(reading.attempt(read_record, reading.folder, entry, site=site, deployment=label))
+    complete = [record for record in records if record is not None]
+    return complete if table.complete and len(complete) == len(records) else None
+
+
+def _loads(reading: Reading, sections: Sections) -> tuple[LoadPattern, ...]:
+    frame, fingerprint = sections.settings["network"], sections.settings["fingerprint"]
+    if frame is None or fingerprint is None:
+        return ()
+    named: list[tuple[KeyPath, LoadPattern]] = []
+    for position, text in enumerate(fingerprint.loads):
+        path: KeyPath = ("fingerprint", "loads", position)
+        patterns: tuple[LoadPattern, ...] | None = None
+        if text.startswith(_BUILTIN):
+            patterns = _builtin(reading, path, text.removeprefix(_BUILTIN))
+        elif (file := reading.find(path, text)) is not None:
+            patterns = reading.attempt(read_loads, file, reference_year=frame.reference_year, source=text)
+        named += [(path, pattern) for pattern in patterns or ()]
+    check_loads(reading, [(path, pattern.name) for path, pattern in named])
+    return tuple(pattern for _, pattern in named)
+
+
+def _builtin(reading: Reading, path: KeyPath, name: str) -> tuple[LoadPattern, ...] | None:
+    try:
+        return builtin_loads((name,))
+    except InputError as error:
+        for fault in error.faults:
+            reading.fault(path, fault.problem, fault.allowed, fault.action)
+        return None
+
+
+def _circulation(reading: Reading, sections: Sections, sites: set[str]) -> tuple[CirculationModel, ...]:
+    models = [_model(reading, path, entry, sites) for path, entry in sections.circulation]
+    return tuple(model for model in models if model is not None)
+
+
+def _model(reading: Reading, path: KeyPath, entry: CirculationEntry, sites: set[str]) -> CirculationModel | None:
+    mean = None
+    if entry.ocean_mean != "removed":
+        mean = _series(reading, (*path, "ocean_mean"), entry.ocean_mean, f"ocean mean of {entry.name}")
+    file = reading.find((*path, "file"), entry.file)
+    if file is None:
+        return None
+    return reading.attempt(read_circulation, file, entry, ocean_mean=mean, sites=sites, source=entry.file)
+
+
+def _series(reading: Reading, path: KeyPath, text: str, name: str) -> Series | None:
+    file = reading.find(path, text)
+    return None if file is None else reading.attempt(read_series, file, name=name, source=text)
+
+
+def _air(reading: Reading, corrections: Corrections) -> dict[str, Any]:
+    air: dict[str, Any] = {}
+    mean = corrections.ocean_mean_atmosphere
+    if mean not in (None, "already-removed"):
+        path = ("corrections", "ocean_mean_atmosphere")
+        air["ocean_mean_atmosphere"] = _series(reading, path, str(mean), "ocean-mean air pressure")
+    for key, reader in (("atmosphere_load", read_atmosphere_load), ("air_pressure", read_air_pressure)):
+        text = getattr(corrections, key)
+        if text is not None and (file := reading.find(("corrections", key), text)) is not None:
+            air[key] = reading.attempt(reader, file, source=text)
+    return air
+
+
+def _in_order(reading: Reading) -> list[Fault]:
+    """Faults of the network file by line, then those of the files it names."""
+    return sorted(reading.faults, key=lambda fault: (fault.source != reading.source, fault.line or 0))

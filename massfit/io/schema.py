@@ -1,0 +1,140 @@
+"""The tables of the network file that become data, not settings."""
+
+from datetime import date, datetime
+from typing import Annotated, Literal
+
+import numpy as np
+from pydantic import ConfigDict, Field
+from pydantic.dataclasses import dataclass
+
+from massfit.io.deployment import DeploymentFile
+from massfit.settings import Corrections, Fingerprint, Frame, PosteriorSettings, Priors
+from massfit.site import Interval, Site
+
+_STRICT = ConfigDict(extra="forbid", allow_inf_nan=False)
+_LAST_INSTANT = np.timedelta64(86_400 * 10**9 - 1, "ns")  # of a day
+
+Text = Annotated[str, Field(min_length=1)]
+ALREADY_REDUCED = ("phasor_hpa", "phasor_covariance_hpa2", "years", "subtracted")
+"""Keys of a site whose phasor was computed elsewhere."""
+
+
+@dataclass(frozen=True, config=_STRICT)
+class ExcludeEntry:
+    """One interval of `exclude`.
+
+    Parameters
+    ----------
+    start, end : datetime.date or datetime.datetime
+        Keys `from` and `to`, UTC, both included; a date as `to` means its last instant.
+    reason : str
+        Why.
+    """
+
+    start: Annotated[date | datetime, Field(alias="from")]
+    end: Annotated[date | datetime, Field(alias="to")]
+    reason: Text
+
+    def interval(self) -> Interval:
+        """Make the interval as the rest of the package knows it."""
+        last = _LAST_INSTANT if type(self.end) is date else np.timedelta64(0, "ns")
+        return Interval(utc(self.start), utc(self.end) + last, self.reason)
+
+
+@dataclass(frozen=True, config=_STRICT)
+class SiteEntry:
+    """`[[site]]` without its deployments, which are read one by one.
+
+    Parameters
+    ----------
+    id : str
+        Unique in the network.
+    latitude, longitude : float
+        Degrees north and degrees east, either convention.
+    depth_m : float, optional
+        Water depth, m.
+    group : str, optional
+        Free label.
+    exclude : tuple of ExcludeEntry, or str
+        Intervals not used; or the reason why the whole site is left out.
+    """
+
+    id: Text
+    latitude: Annotated[float, Field(ge=-90, le=90)]
+    longitude: Annotated[float, Field(ge=-180, le=360)]
+    depth_m: Annotated[float, Field(ge=0, le=12_000)] | None = None
+    group: Text | None = None
+    exclude: Text | tuple[ExcludeEntry, ...] = ()
+
+    def site(self) -> Site:
+        """Make the site as the rest of the package knows it."""
+        whole = isinstance(self.exclude, str)
+        return Site(
+            self.id,
+            self.latitude,
+            self.longitude,
+            self.depth_m,
+            self.group,
+            exclude=() if whole else tuple(entry.interval() for entry in self.exclude),  # type: ignore[union-attr]
+            excluded_because=str(self.exclude) if whole else None,
+        )
+
+
+@dataclass(frozen=True, config=_STRICT)
+class CirculationEntry:
+    """`[[circulation]]`: one ocean model.
+
+    Parameters
+    ----------
+    name : str
+        Unique in the network.
+    file : str
+        NetCDF of bottom pressure over (time, site) or (time, lat, lon).
+    ocean_mean : str
+        "removed", or the file of the model's own ocean-mean series.
+    air_pressure : str
+        "not-forced", "forced-included" or "forced-excluded".
+    variable : str, optional
+        Which variable of the file; optional where unambiguous.
+    assimilates_satellite_gravity : bool
+        Whether the model has seen what it will be compared with.
+    """
+
+    name: Text
+    file: Text
+    ocean_mean: Text
+    air_pressure: Literal["not-forced", "forced-included", "forced-excluded"]
+    variable: str | None = None
+    assimilates_satellite_gravity: bool = False
+
+
+SETTINGS = {
+    "network": Frame,
+    "corrections": Corrections,
+    "fingerprint": Fingerprint,
+    "posterior": PosteriorSettings,
+    "priors": Priors,
+}
+"""Sections that are settings, by name."""
+
+ENTRIES = {"site": SiteEntry, "circulation": CirculationEntry, "deployment": DeploymentFile}
+"""Arrays of tables; deployments lie inside a site."""
+
+SECTIONS = (*SETTINGS, "site", "circulation", "gravity")
+"""Every name that may stand at the top of a network file."""
+
+
+def utc(moment: date | datetime) -> np.datetime64:
+    """Convert a date or time of the network file to datetime64[ns]; without a zone it is UTC.
+
+    Examples
+    --------
+    >>> from datetime import date
+    >>> str(utc(date(2016, 3, 1)))
+    '2016-03-01T00:00:00.000000000'
+    """
+    if isinstance(moment, datetime) and moment.tzinfo is not None:
+        offset = moment.utcoffset()
+        moment = moment.replace(tzinfo=None)
+        return np.datetime64(moment, "ns") - np.timedelta64(offset, "ns")
+    return np.datetime64(moment, "ns")

@@ -1,0 +1,232 @@
+"""From the parsed network file to entries and settings, with every fault of form."""
+
+import json
+from collections.abc import Iterator
+from dataclasses import dataclass, fields
+from datetime import date, datetime, time
+from typing import Any, TypeVar
+
+from pydantic import TypeAdapter, ValidationError
+from pydantic_core import ErrorDetails
+
+from massfit.io.deployment import DeploymentFile
+from massfit.io.locate import KeyPath
+from massfit.io.reading import Reading, did_you_mean, nearest
+from massfit.io.schema import ALREADY_REDUCED, SECTIONS, SETTINGS, CirculationEntry, SiteEntry
+
+_T = TypeVar("_T")
+
+_ALLOWED = {
+    "string_type": "text in quotes",
+    "string_too_short": "not empty",
+    "int_type": "a whole number",
+    "float_type": "a number",
+    "bool_type": "true or false",
+    "tuple_type": "a list",
+    "dataclass_type": "a table",
+    "date_type": "a date such as 2016-03-01",
+    "date_parsing": "a date such as 2016-03-01",
+    "date_from_datetime_parsing": "a date such as 2016-03-01",
+    "datetime_type": "a UTC time such as 2016-03-01T00:00:00Z",
+    "datetime_parsing": "a UTC time such as 2016-03-01T00:00:00Z",
+    "string_pattern_mismatch": 'a month and a day, "07-15"',
+}
+"""What is allowed, by kind of error, where the validator's own words are not plain."""
+
+_MISSING = {
+    "ocean_mean": (
+        'Must be "removed" or the file of the model\'s own whole-ocean mean',
+        "State it: a mean that is left in holds part of the answer",
+    ),
+    "air_pressure": (
+        'Must be "not-forced", "forced-included" or "forced-excluded"',
+        "State whether air pressure drives the model and its load is in the bottom pressure",
+    ),
+    "reference_year": ("Must be a year", "State the year from whose 1 January phases count"),
+    "reason": ("Must be text", "Say why the interval is left out; every output repeats it"),
+}
+
+
+@dataclass(frozen=True)
+class SiteTable:
+    """One `[[site]]`: where it stands, its entry, its deployments, and whether all of those are well formed."""
+
+    path: KeyPath
+    entry: SiteEntry | None
+    deployments: tuple[tuple[KeyPath, DeploymentFile], ...]
+    complete: bool
+
+
+@dataclass(frozen=True)
+class Sections:
+    """Everything of a network file that is well formed; the rest is among the faults."""
+
+    settings: dict[str, Any]
+    sites: tuple[SiteTable, ...]
+    circulation: tuple[tuple[KeyPath, CirculationEntry], ...]
+
+
+def parse_sections(reading: Reading) -> Sections:
+    """Validate every table on its own, so that one fault does not hide another.
+
+    Parameters
+    ----------
+    reading : Reading
+        Receives the faults.
+
+    Returns
+    -------
+    Sections
+    """
+    for name in reading.document.keys() - set(SECTIONS):
+        _unknown_key(reading, (name,), SECTIONS)
+    settings = {name: _settings(reading, name, kind) for name, kind in SETTINGS.items()}
+    sites = tuple(_site(reading, path, table) for path, table in _tables(reading, reading.document, ("site",)))
+    if not sites and not reading.document.get("site"):
+        reading.fault(("site",), "the network has no site", "Must be at least one", "Add a [[site]]")
+    circulation = [
+        (path, parse_table(reading, CirculationEntry, table, path))
+        for path, table in _tables(reading, reading.document, ("circulation",))
+    ]
+    _gravity(reading)
+    return Sections(settings, sites, tuple((path, entry) for path, entry in circulation if entry is not None))
+
+
+def parse_table(reading: Reading, kind: type[_T], table: dict[str, Any], path: KeyPath) -> _T | None:
+    """Build one entry or section from a table; None when it has faults.
+
+    JSON is the road because the validator's strict mode takes its lists as tuples and
+    its dates as text, and nothing else: a quoted number is not a number.
+    """
+    try:
+        return TypeAdapter(kind).validate_json(json.dumps(table, default=_iso), strict=True)
+    except ValidationError as error:
+        _note_errors(reading, kind, table, path, error.errors(include_url=False))
+        return None
+
+
+def shown(value: object) -> str:
+    """Write a value as the network file would, shortened."""
+    text = json.dumps(value, default=_iso, ensure_ascii=False)
+    return text if len(text) <= 60 else text[:57] + "..."
+
+
+def _settings(reading: Reading, name: str, kind: type[_T]) -> _T | None:
+    table = reading.document.get(name, {})
+    if not isinstance(table, dict):
+        reading.fault((name,), f"the value is {shown(table)}", f"Must be one table, [{name}]")
+        return None
+    return parse_table(reading, kind, table, (name,))
+
+
+def _tables(reading: Reading, parent: dict[str, Any], path: KeyPath) -> Iterator[tuple[KeyPath, dict[str, Any]]]:
+    tables = parent.get(str(path[-1]), [])
+    header = ".".join(part for part in path if isinstance(part, str))
+    if not isinstance(tables, list) or not all(isinstance(table, dict) for table in tables):
+        action = f"Write [[{header}]]" if isinstance(tables, dict) else ""
+        reading.fault(path, f"the value is {shown(tables)}", f"Must be a list of tables, [[{header}]]", action)
+        return
+    for position, table in enumerate(tables):
+        yield (*path, position), table
+
+
+def _site(reading: Reading, path: KeyPath, table: dict[str, Any]) -> SiteTable:
+    own = {key: value for key, value in table.items() if key not in (*ALREADY_REDUCED, "deployment")}
+    entry = parse_table(reading, SiteEntry, own, path)
+    deployments = [
+        (place, parse_table(reading, DeploymentFile, _deployment(fields), place))
+        for place, fields in _tables(reading, table, (*path, "deployment"))
+    ]
+    reduced = [key for key in ALREADY_REDUCED if key in table]
+    if reduced:
+        problem = f"{reduced[0]} says that the site was reduced elsewhere"
+        allowed = "Sites that are already reduced are not read by this version"
+        reading.fault((*path, reduced[0]), problem, allowed, "Give its records as [[site.deployment]]")
+    elif not table.get("deployment"):
+        reading.fault(path, "the site has no deployment", "Must be at least one", "Add a [[site.deployment]]")
+    made = tuple((place, one) for place, one in deployments if one is not None)
+    return SiteTable(path, entry, made, complete=bool(made) and len(made) == len(deployments))
+
+
+def _deployment(table: dict[str, Any]) -> dict[str, Any]:
+    """Write out the shorthands of a deployment: one missing value, dates among the steps."""
+    out = dict(table)
+    missing, steps = out.get("missing"), out.get("steps")
+    if isinstance(missing, int | float) and not isinstance(missing, bool):
+        out["missing"] = [missing]
+    if isinstance(steps, list):
+        out["steps"] = [datetime.combine(step, time()) if type(step) is date else step for step in steps]
+    return out
+
+
+def _gravity(reading: Reading) -> None:
+    table = reading.document.get("gravity")
+    if table is None:
+        return
+    if not isinstance(table, dict):
+        reading.fault(("gravity",), f"the value is {shown(table)}", "Must be one table, [gravity]")
+        return
+    for key, value in table.items():
+        if isinstance(value, dict | list):
+            allowed = "Must be text, a number, a date or a switch"
+            reading.fault(("gravity", key), f"the value is {shown(value)}", allowed)
+    reading.warnings.append("[gravity] is not used by this version: no satellite comparison is made.")
+
+
+def _note_errors(
+    reading: Reading, kind: type, table: dict[str, Any], path: KeyPath, errors: list[ErrorDetails]
+) -> None:
+    by_place: dict[KeyPath, list[ErrorDetails]] = {}
+    for error in errors:
+        by_place.setdefault(_place(table, error), []).append(error)
+    for place, found in by_place.items():
+        # a value that fits no member of a union fails once a member: the deepest failure is the meant one
+        if not any(other != place and other[: len(place)] == place for other in by_place):
+            _note(reading, kind, (*path, *place), found)
+
+
+def _place(table: dict[str, Any], error: ErrorDetails) -> KeyPath:
+    """Path of an error inside the table, without the validator's labels of union members."""
+    value: Any = table
+    place: list[str | int] = []
+    for part in error["loc"]:
+        inside = part in value if isinstance(value, dict) else isinstance(value, list) and isinstance(part, int)
+        if inside:
+            value = value[part]
+            place.append(part)
+    if error["type"] == "missing":
+        place.append(error["loc"][-1])
+    return tuple(place)
+
+
+def _note(reading: Reading, kind: type, path: KeyPath, errors: list[ErrorDetails]) -> None:
+    first, key = errors[0], str(path[-1])
+    if first["type"] == "unexpected_keyword_argument":
+        _unknown_key(reading, path, _known_keys(kind, path))
+    elif first["type"] == "missing":
+        allowed, action = _MISSING.get(key, ("", "Add it"))
+        reading.fault(path, "the key is missing", allowed, action)
+    else:
+        choices = dict.fromkeys(_allowed(error) for error in errors)
+        reading.fault(path, f"the value is {shown(first['input'])}", "Must be " + ", or ".join(choices))
+
+
+def _allowed(error: ErrorDetails) -> str:
+    return _ALLOWED.get(error["type"], error["msg"].removeprefix("Input should be "))
+
+
+def _known_keys(kind: type, path: KeyPath) -> list[str]:
+    if kind is SiteEntry and "exclude" in path:
+        return ["from", "to", "reason"]
+    names = [item.name for item in fields(kind)]
+    return [*names, *ALREADY_REDUCED, "deployment"] if kind is SiteEntry else names
+
+
+def _unknown_key(reading: Reading, path: KeyPath, known: tuple[str, ...] | list[str]) -> None:
+    key = str(path[-1])
+    action = did_you_mean(nearest(key, known), "Remove it")
+    reading.fault(path, f'unknown key "{key}"', "Known keys are " + ", ".join(known), action)
+
+
+def _iso(value: object) -> str:
+    return value.isoformat() if isinstance(value, date | time) else str(value)

@@ -1,0 +1,125 @@
+"""Ocean-mean pressure series from CSV or NetCDF."""
+
+import re
+from pathlib import Path
+
+import numpy as np
+import pandas as pd
+from numpy.typing import NDArray
+
+from massfit.errors import Fault, InputError
+from massfit.io.netcdf import is_netcdf
+from massfit.io.text_time import parsed_time
+from massfit.io.variables import middle_of_intervals, pascal_of_field, read_pressure, require_order
+from massfit.network import Series
+
+_NOTE = re.compile(r"#\s*(units|stamp)\s*:\s*(.*?)\s*$")
+_STAMPS = ("middle", "start")
+
+
+def read_series(path: Path, *, name: str, source: str) -> Series:
+    """Read an ocean-mean series.
+
+    Parameters
+    ----------
+    path : pathlib.Path
+        CSV with the header ``time,value`` and a comment ``# units: hPa`` (optionally
+        ``# stamp: start``), or NetCDF with one variable over time.
+    name : str
+        What the series is called in outputs.
+    source : str
+        File as the analyst wrote it.
+
+    Returns
+    -------
+    Series
+        Pa at the middle of each interval; rows without a value are left out.
+
+    Raises
+    ------
+    InputError
+        Every fault of the file, with lines.
+    """
+    time, values = _read_netcdf(path, source) if is_netcdf(path) else _read_csv(path, source)
+    valid = np.isfinite(values)
+    if valid.sum() < 2:
+        problem = f"the series has {int(valid.sum())} values"
+        raise InputError(Fault(source, "value", problem, "Must be at least two", "Check the file"))
+    return Series(name, time[valid], values[valid])
+
+
+def _read_netcdf(path: Path, source: str) -> tuple[NDArray[np.datetime64], NDArray[np.float64]]:
+    data = read_pressure(path, [("time",)], source=source)
+    return data["time"].to_numpy(), data.to_numpy()
+
+
+def _read_csv(path: Path, source: str) -> tuple[NDArray[np.datetime64], NDArray[np.float64]]:
+    try:
+        lines = path.read_text(encoding="utf-8-sig").splitlines()
+    except UnicodeDecodeError as error:
+        problem = "the file is neither NetCDF nor UTF-8 text"
+        raise InputError(Fault(source, "", problem, "Must be one of them")) from error
+    notes = {match[1]: match[2] for match in map(_NOTE.match, lines) if match}
+    rows = [(number, line) for number, line in enumerate(lines, 1) if line.strip() and not line.startswith("#")]
+    factor = _factor(notes, source)
+    header = [column.strip() for column in rows[0][1].split(",")] if rows else []
+    if header != ["time", "value"]:
+        problem = f"the header is {','.join(header)!r}"
+        raise InputError(Fault(source, "", problem, "Must be time,value", line=rows[0][0] if rows else 1))
+    numbers = np.array([number for number, _ in rows[1:]], dtype=np.int64)
+    time, values = _columns([line for _, line in rows[1:]], numbers, source)
+    if notes.get("stamp") == "start":
+        time = middle_of_intervals(time)
+    return time, values * factor
+
+
+def _factor(notes: dict[str, str], source: str) -> float:
+    if "units" not in notes:
+        action = 'Add the line "# units: hPa" at the top'
+        raise InputError(Fault(source, "units", "no units are stated", "Must be a pressure such as Pa or hPa", action))
+    if notes.get("stamp", "middle") not in _STAMPS:
+        raise InputError(Fault(source, "stamp", f"the stamp is {notes['stamp']!r}", 'Must be "middle" or "start"'))
+    return pascal_of_field(notes["units"], source=source, name="units")
+
+
+def _columns(
+    rows: list[str], numbers: NDArray[np.int64], source: str
+) -> tuple[NDArray[np.datetime64], NDArray[np.float64]]:
+    cells = [row.split(",") for row in rows]
+    wrong = [number for number, row in zip(numbers, cells, strict=True) if len(row) != 2]
+    if wrong:
+        problem = f"{len(wrong)} rows do not have two columns"
+        raise InputError(Fault(source, "", problem, "Must be time,value", "Correct the first of them", int(wrong[0])))
+    if not cells:
+        return np.empty(0, dtype="datetime64[ns]"), np.empty(0)
+    faults: list[Fault] = []
+    values = _numbers([row[1].strip() for row in cells], numbers, source, faults)
+    try:
+        time = parsed_time(pd.Series([row[0].strip() for row in cells]), "iso", numbers, source=source, name="time")
+    except InputError as error:
+        faults.extend(error.faults)
+    if faults:
+        raise InputError(faults)
+    _require_order(time, numbers, source)
+    return time, values
+
+
+def _numbers(texts: list[str], numbers: NDArray[np.int64], source: str, faults: list[Fault]) -> NDArray[np.float64]:
+    values = pd.to_numeric(pd.Series(texts, dtype=object), errors="coerce").to_numpy(dtype=float)
+    empty = np.array([text.casefold() in ("", "nan") for text in texts])
+    wrong = np.flatnonzero(np.isnan(values) & ~empty)
+    if wrong.size:
+        more = f" (and {wrong.size - 1} more lines)" if wrong.size > 1 else ""
+        problem = f"the value is {texts[wrong[0]]!r}{more}"
+        faults.append(Fault(source, "value", problem, "Must be a number, or empty", line=int(numbers[wrong[0]])))
+    return values
+
+
+def _require_order(time: NDArray[np.datetime64], numbers: NDArray[np.int64], source: str) -> None:
+    try:
+        require_order(time, source=source)
+    except InputError as error:
+        (fault,) = error.faults
+        wrong = np.flatnonzero(np.diff(time) <= np.timedelta64(0))
+        line = int(numbers[wrong[0] + 1]) if wrong.size else None
+        raise InputError(Fault(source, "time", fault.problem, fault.allowed, fault.action, line)) from error
