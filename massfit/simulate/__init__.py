@@ -1,1 +1,1 @@
-"""."""
+"""Invented networks with known truth, returned as data."""

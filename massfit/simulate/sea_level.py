@@ -1,0 +1,107 @@
+"""How the sea floor under each invented site feels the world: the true responses.
+
+Solved at a higher degree than an analyst would, from patterns the analyst never sees.
+"""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import lru_cache
+
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from massfit.constants import STANDARD_GRAVITY
+from massfit.corrections.responses import equilibrium_responses
+from massfit.earth.love import love_numbers
+from massfit.fingerprint.footprint import site_footprints
+from massfit.fingerprint.grid import CellGrid, regrid
+from massfit.fingerprint.ocean import OceanFunction
+from massfit.fingerprint.operator import SeaLevelOperator, prepare_operator
+from massfit.fingerprint.pattern import LoadPattern
+from massfit.fingerprint.sea_level import solve_sea_level
+from massfit.simulate.dynamics import Bumps
+from massfit.simulate.world import World
+from massfit.site import Site
+
+TRUTH_DEGREE = 256
+"""Degree of the true solve; the default of the analysis is 180."""
+_BROAD_DEGREE = 48  # the bumps of the circulation have nothing beyond
+
+
+@dataclass(frozen=True, eq=False)
+class Responses:
+    """True responses of the sites.
+
+    Parameters
+    ----------
+    admittance : (n_site,) array of complex
+        F_s of the true load.
+    air_load : (n_site,) array of complex
+        G_s, self-attraction of the air, annual phasor, Pa.
+    tides : xarray.Dataset
+        Per unit of zonal tide and wobble, from :func:`massfit.corrections.responses.equilibrium_responses`.
+    bumps : (n_site, n_bump + 1) array
+        Patterns of the circulation at the sites, self-attraction included.
+    """
+
+    admittance: NDArray[np.complex128]
+    air_load: NDArray[np.complex128]
+    tides: xr.Dataset
+    bumps: NDArray[np.float64]
+
+
+@lru_cache(maxsize=2)
+def true_operator(max_degree: int) -> SeaLevelOperator:
+    """Sea-level operator of the truth, prepared once a process."""
+    return prepare_operator(OceanFunction.builtin(), love_numbers(max_degree=max_degree), max_degree=max_degree)
+
+
+def true_responses(sites: Sequence[Site], world: World, bumps: Bumps) -> Responses:
+    """Solve for everything the sites feel.
+
+    Parameters
+    ----------
+    sites : sequence of Site
+    world : World
+    bumps : Bumps
+    """
+    latitude = np.array([site.latitude_deg for site in sites])
+    longitude = np.array([site.longitude_deg for site in sites])
+    operator = true_operator(TRUTH_DEGREE)
+    pressure_per_metre = operator.sea_water_density * STANDARD_GRAVITY
+    sea = solve_sea_level(operator, load=_on_grid(operator, world.load), water_vapour=world.water_vapour)
+    air = _air_load(operator, world.air_pressure, world.air_annual)
+    return Responses(
+        admittance=np.asarray(sea.at(latitude, longitude) / sea.ocean_mean),
+        air_load=np.asarray(solve_sea_level(operator, load=air).at(latitude, longitude) * pressure_per_metre),
+        tides=equilibrium_responses(operator, sites),
+        bumps=bumps.at(latitude, longitude) + self_attraction(sites, bumps),
+    )
+
+
+def self_attraction(sites: Sequence[Site], bumps: Bumps) -> NDArray[np.float64]:
+    """Pressure at the sites that the water of each pattern calls up elsewhere, (n_site, n_bump + 1)."""
+    operator = true_operator(_BROAD_DEGREE)
+    footprint = site_footprints(operator, sites)["footprint"].to_numpy()
+    latitude, longitude = np.meshgrid(operator.latitude_deg, operator.longitude_deg, indexing="ij")
+    weight = operator.ocean * operator.cell_area_m2
+    # Pa of bottom pressure is a load of 1/g; the answer in metres is a pressure of rho g
+    patterns = bumps.at(latitude.ravel(), longitude.ravel())
+    patterns -= weight.ravel() @ patterns / weight.sum()
+    return np.asarray(operator.sea_water_density * (footprint * weight).reshape(len(sites), -1) @ patterns)
+
+
+def _on_grid(operator: SeaLevelOperator, pattern: LoadPattern) -> NDArray[np.complex128]:
+    cells = CellGrid.from_centres(pattern.latitude_deg, pattern.longitude_deg)
+    return np.asarray(regrid(pattern.values, cells, operator.cells))
+
+
+def _air_load(operator: SeaLevelOperator, pressure: LoadPattern, ocean_mean: complex) -> NDArray[np.complex128]:
+    """Mass of air per area without its global mean: it exchanges no water with the ocean."""
+    ocean = OceanFunction.builtin()
+    cells = CellGrid.from_centres(pressure.latitude_deg, pressure.longitude_deg)
+    land = 1.0 - regrid(ocean.fraction, ocean.cells, cells)
+    load = (land * pressure.values + (1.0 - land) * ocean_mean) / STANDARD_GRAVITY
+    load = load - np.sum(load * cells.cell_area_m2) / np.sum(cells.cell_area_m2)
+    return np.asarray(regrid(load, cells, operator.cells))
