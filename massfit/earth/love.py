@@ -17,8 +17,8 @@ DegreeOneFrame = Literal["CE", "CM", "CF"]
 FRAMES: tuple[DegreeOneFrame, ...] = ("CE", "CM", "CF")
 """Origins of degree one: centre of mass of the solid Earth, of the whole Earth, centre of the surface figure."""
 
-# largest step in n ln r; halving it moves no PREM number by more than 1e-7 of itself
-_STEP = 0.25
+# largest step in (n + 2) ln r; halving it moves no PREM number by more than 1e-7 of itself
+_STEP = 0.5
 
 
 @dataclass(frozen=True, eq=False)

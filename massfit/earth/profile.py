@@ -128,6 +128,12 @@ class EarthProfile:
         """Gravity at the surface, m s-2."""
         return GRAVITATIONAL_CONSTANT * self.mass / self.radius**2
 
+    @cached_property
+    def typical_rigidity(self) -> float:
+        """Geometric mean of the shear modulus over the tops of the solid layers, Pa."""
+        tops = [(index, np.array(layer.top)) for index, layer in enumerate(self.layers) if not layer.is_fluid]
+        return float(np.exp(np.mean([np.log(self.layer_moduli(index, top)[1]) for index, top in tops])))
+
     def density(self, radius: ArrayLike) -> FloatArray:
         """Density at a radius (on a boundary that of the layer beneath), kg m-3.
 

@@ -6,7 +6,7 @@ traction, y5 the potential and y6 = dy5/dr - 4 pi G rho y1 + (n + 1) y5 / r. In 
 y7 = y6 + 4 pi G y2 / g remain (Saito 1974).
 
 The independent variable is ln r, and the unknowns are scaled so that every coefficient is of the
-order of the degree n: with L = sqrt(n (n + 1)), g the surface gravity and M a unit of stress,
+order of the degree n: with L = sqrt(n (n + 1)), g the surface gravity and M the typical rigidity,
 
     z = (y1, r y2 / (L M), L y3, r y4 / M, y5 / g, r y6 / (L g)).
 
@@ -19,19 +19,22 @@ from numpy.typing import NDArray
 
 from massfit.constants import GRAVITATIONAL_CONSTANT
 from massfit.earth.profile import EarthProfile
+from massfit.errors import ConvergenceError
 
 FloatArray = NDArray[np.float64]
 
 _FOUR_PI_G = 4.0 * np.pi * GRAVITATIONAL_CONSTANT
-# the unit of stress M, Pa: near the rigidity of the mantle
-_STRESS = 1.0e11
 # solutions that are singular at the centre fade by exp(-this) between the floor and the surface
 _FADING = 38.0
-# terms of the exponential series; steps are below 1 in n ln r, so that the rest is below 1e-12
-_SERIES_TERMS = 14
+# the exponential series ends where its terms, beside an orthonormal basis, are lost in rounding;
+# some 15 terms in rock, and no number of them for a rock that cannot bear its own weight
+_SERIES_END = 1.0e-16
+_MOST_TERMS = 80
+# the polynomials of a layer are not constant, whatever the degree
+_FEWEST_STEPS = 16
 _STEPS_BETWEEN_ORTHONORMALISATIONS = 6
-# displacement of the two Gauss points from the middle of a step
-_GAUSS = np.sqrt(3.0) / 6.0
+# the three Gauss points, counted from the middle of a step in steps
+_GAUSS_NODES = (-np.sqrt(0.15), 0.0, np.sqrt(0.15))
 
 
 def load_response(profile: EarthProfile, degrees: FloatArray, *, step: float) -> tuple[FloatArray, ...]:
@@ -44,7 +47,7 @@ def load_response(profile: EarthProfile, degrees: FloatArray, *, step: float) ->
     degrees : (n,) array
         Ascending, from 1.
     step : float
-        Largest step in n ln r.
+        Largest step in (n + 2) ln r: solutions go as r^n, and gravity against rigidity as r^2.
 
     Returns
     -------
@@ -56,7 +59,7 @@ def load_response(profile: EarthProfile, degrees: FloatArray, *, step: float) ->
     gravity = profile.surface_gravity
     wanted = np.stack(
         [
-            -(2.0 * degrees + 1.0) * gravity**2 / (_FOUR_PI_G * root * _STRESS),
+            -(2.0 * degrees + 1.0) * gravity**2 / (_FOUR_PI_G * root * profile.typical_rigidity),
             np.zeros_like(degrees),
             (2.0 * degrees + 1.0) / root,
         ],
@@ -89,8 +92,7 @@ def surface_space(profile: EarthProfile, degrees: FloatArray, *, step: float) ->
         if not active.size:
             continue
         carried = len(space)
-        begin = np.full(active.size, -np.inf) if layer.bottom == 0 else np.full(active.size, np.log(layer.bottom))
-        begin = np.maximum(begin, floor[: active.size])
+        begin = np.maximum(floor[: active.size], np.log(layer.bottom) if layer.bottom else -np.inf)
         if carried and layer.is_fluid != profile.layers[index - 1].is_fluid:
             cross = _into_fluid if layer.is_fluid else _into_solid
             space = cross(profile, index, active[:carried], space)
@@ -103,30 +105,46 @@ def surface_space(profile: EarthProfile, degrees: FloatArray, *, step: float) ->
 def _through_layer(
     profile: EarthProfile, index: int, degrees: FloatArray, begin: FloatArray, space: FloatArray, step: float
 ) -> FloatArray:
-    """Step a basis from ln r = `begin` to the top of a layer, by the fourth-order Magnus expansion."""
+    """Step a basis from ln r = `begin` to the top of a layer, by the Magnus expansion of sixth order."""
     matrix = _fluid_matrix if profile.layers[index].is_fluid else _solid_matrix
     span = np.log(profile.layers[index].top) - begin
-    count = max(4, int(np.ceil(np.max((degrees + 1.0) * span) / step)))
+    count = max(_FEWEST_STEPS, int(np.ceil(np.max((degrees + 2.0) * span) / step)))
     width = span / count
-    h = width[:, None, None]
     for number in range(count):
         middle = begin + (number + 0.5) * width
-        lower = h * matrix(profile, index, degrees, np.exp(middle - _GAUSS * width))
-        upper = h * matrix(profile, index, degrees, np.exp(middle + _GAUSS * width))
-        exponent = 0.5 * (lower + upper) + 0.5 * _GAUSS * (upper @ lower - lower @ upper)
-        space = _exponential_times(exponent, space)
-        if number % _STEPS_BETWEEN_ORTHONORMALISATIONS == 0 or number == count - 1:
+        if number % _STEPS_BETWEEN_ORTHONORMALISATIONS == 0:
             space = np.linalg.qr(space)[0]
-    return space
+        at_nodes = [matrix(profile, index, degrees, np.exp(middle + node * width)) for node in _GAUSS_NODES]
+        exponent = _magnus_exponent(width[:, None, None], *at_nodes)
+        space = _exponential_times(exponent, space)
+    return np.linalg.qr(space)[0]
+
+
+def _magnus_exponent(width: FloatArray, lower: FloatArray, middle: FloatArray, upper: FloatArray) -> FloatArray:
+    """Logarithm of the propagator of one step from the matrices at its Gauss points (Blanes, Casas & Ros 2000)."""
+    mean = width * middle
+    slope = np.sqrt(15.0) / 3.0 * width * (upper - lower)
+    bend = 10.0 / 3.0 * width * (upper - 2.0 * middle + lower)
+    first = _commutator(mean, slope)
+    second = -_commutator(mean, 2.0 * bend + first) / 60.0
+    return mean + bend / 12.0 + _commutator(first - 20.0 * mean - bend, slope + second) / 240.0
+
+
+def _commutator(a: FloatArray, b: FloatArray) -> FloatArray:
+    return a @ b - b @ a
 
 
 def _exponential_times(exponent: FloatArray, space: FloatArray) -> FloatArray:
-    """Multiply exp(exponent) by a basis through the exponential series."""
+    """Multiply exp(exponent) by an orthonormal basis through the exponential series."""
     total = term = space
-    for order in range(1, _SERIES_TERMS + 1):
+    size = 1.0
+    for order in range(1, _MOST_TERMS + 1):
         term = exponent @ term / order
         total = total + term
-    return total
+        size = float(np.abs(term).max())
+        if size < _SERIES_END:
+            return total
+    raise ConvergenceError("the exponential series of an Earth layer", size, _SERIES_END)
 
 
 def _solid_matrix(profile: EarthProfile, index: int, n: FloatArray, r: FloatArray) -> FloatArray:
@@ -136,15 +154,15 @@ def _solid_matrix(profile: EarthProfile, index: int, n: FloatArray, r: FloatArra
     longitudinal, shear = profile.layer_moduli(index, r)
     ratio = shear / longitudinal
     side = 1.0 - 2.0 * ratio  # lambda / (lambda + 2 mu)
-    rigidity = shear / _STRESS
+    rigidity = shear / profile.typical_rigidity
     stretch = 2.0 * rigidity * (3.0 - 4.0 * ratio)  # 2 mu (3 lambda + 2 mu) / (lambda + 2 mu)
-    weight = density * profile.layer_gravity(index, r) * r / _STRESS
-    pull = density * profile.surface_gravity * r / _STRESS
+    weight = density * profile.layer_gravity(index, r) * r / profile.typical_rigidity
+    pull = density * profile.surface_gravity * r / profile.typical_rigidity
     attraction = _FOUR_PI_G * density * r / profile.surface_gravity
 
     a = np.zeros((n.size, 6, 6))
     a[:, 0, 0] = -2.0 * side
-    a[:, 0, 1] = root * _STRESS / longitudinal
+    a[:, 0, 1] = root * profile.typical_rigidity / longitudinal
     a[:, 0, 2] = root * side
     a[:, 1, 0] = (2.0 * stretch - 4.0 * weight) / root
     a[:, 1, 1] = 1.0 - 4.0 * ratio
@@ -205,18 +223,18 @@ def _boundary(profile: EarthProfile, index: int, fluid: int) -> tuple[float, flo
 def _into_fluid(profile: EarthProfile, index: int, n: FloatArray, space: FloatArray) -> FloatArray:
     """Keep the solution without tangential traction whose pressure the static fluid can bear (Saito 1974)."""
     radius, gravity, density = _boundary(profile, index, index)
-    load = (radius * density / (np.sqrt(n * (n + 1.0)) * _STRESS))[:, None]
+    load = (radius * density / (np.sqrt(n * (n + 1.0)) * profile.typical_rigidity))[:, None]
     bearing = space[:, 1] - load * (gravity * space[:, 0] - profile.surface_gravity * space[:, 4])
     solution = (space @ np.cross(bearing, space[:, 3])[..., None])[..., 0]
-    flux = solution[:, 5] + _FOUR_PI_G * _STRESS / (gravity * profile.surface_gravity) * solution[:, 1]
+    flux = solution[:, 5] + _FOUR_PI_G * profile.typical_rigidity / (gravity * profile.surface_gravity) * solution[:, 1]
     return np.stack([solution[:, 4], flux], axis=-1)[..., None]
 
 
 def _into_solid(profile: EarthProfile, index: int, n: FloatArray, space: FloatArray) -> FloatArray:
     """Join the fluid's solution, a radial and a tangential shift of the boundary (Saito 1974)."""
     radius, gravity, density = _boundary(profile, index, index - 1)
-    load = radius * density / (np.sqrt(n * (n + 1.0)) * _STRESS)
-    relation = _FOUR_PI_G * _STRESS / (gravity * profile.surface_gravity)
+    load = radius * density / (np.sqrt(n * (n + 1.0)) * profile.typical_rigidity)
+    relation = _FOUR_PI_G * profile.typical_rigidity / (gravity * profile.surface_gravity)
     solid = np.zeros((n.size, 6, 3))
     solid[:, 1, 0] = -load * profile.surface_gravity * space[:, 0, 0]
     solid[:, 4, 0] = space[:, 0, 0]
