@@ -35,13 +35,13 @@ def high() -> LoveNumbers:
 
 @pytest.mark.parametrize("row", published("load_love_k_wahr_1998.csv"), ids=lambda row: row["degree"])
 def test_k_of_wahr_and_others(earth: LoveNumbers, row: dict[str, str]) -> None:
-    # 0.003 covers the table's other Earth model and its three decimals
+    # 0.003 covers the three decimals and what the table does not say of its Earth (period, surface layer)
     assert earth.k[int(row["degree"])] == pytest.approx(float(row["k"]), abs=3e-3)
 
 
 @pytest.mark.parametrize("row", published("load_love_k_iers_2010.csv"), ids=lambda row: row["degree"])
 def test_k_of_the_iers_conventions(earth: LoveNumbers, row: dict[str, str]) -> None:
-    # they belong to another Earth model; the largest difference is at degree 2
+    # another computation, its Earth not stated in detail; the largest difference, 0.0020, is at degree 2
     assert earth.k[int(row["degree"])] == pytest.approx(float(row["k"]), abs=2.5e-3)
 
 
