@@ -1,1 +1,1 @@
-"""."""
+"""Network posterior: likelihood, sampler, quadrature, diagnostics, summary."""

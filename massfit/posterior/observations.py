@@ -1,0 +1,229 @@
+"""What the network model sees of the sites: plain arrays, checked and matched by id."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from massfit.contracts import FINGERPRINTS, SITE_PHASORS, require
+from massfit.errors import Fault, InputError
+from massfit.phasor import as_complex
+
+NO_MODEL = "none"
+"""Name of the column of sites from which no circulation model was subtracted."""
+
+RECORD_FLOOR = 0.1
+"""Least share of the record covariance that is left when the models' own weather is taken out of it."""
+
+
+@dataclass(frozen=True)
+class Observations:
+    """Annual phasors of the sites, less the response to the air over land.
+
+    Parameters
+    ----------
+    sites, models : tuple of str
+        Names, in the order of the axes.
+    weight : (n_site, n_part) array
+        Weights of the parts of each site's mixture.
+    part_phasor : (n_site, n_part, n_model, 2) array
+        Pa; NaN where a site-model pair is missing.
+    part_covariance : (n_site, n_part, 2, 2) array
+        Pa2, of the record.
+    model_noise : (n_site, 2, 2) array
+        Pa2, of each model's own weather.
+    """
+
+    sites: tuple[str, ...]
+    models: tuple[str, ...]
+    weight: NDArray[np.float64]
+    part_phasor: NDArray[np.float64]
+    part_covariance: NDArray[np.float64]
+    model_noise: NDArray[np.float64]
+
+    @property
+    def present(self) -> NDArray[np.bool_]:
+        """(n_site, n_model), whether the pair exists."""
+        return np.asarray(np.isfinite(self.part_phasor).all(axis=(1, 3)))
+
+    @property
+    def model_count(self) -> NDArray[np.int64]:
+        """(n_site,), number of models at each site."""
+        return np.asarray(self.present.sum(axis=1))
+
+    @property
+    def phasor(self) -> NDArray[np.float64]:
+        """(n_site, n_model, 2), Pa, mean over the parts."""
+        return np.asarray(np.einsum("sk,skmc->smc", self.weight, self.part_phasor))
+
+    @property
+    def mean_phasor(self) -> NDArray[np.float64]:
+        """(n_site, 2), Pa, mean over the parts and the models."""
+        return np.asarray(np.nanmean(self.phasor, axis=1))
+
+    @property
+    def covariance(self) -> NDArray[np.float64]:
+        """(n_site, 2, 2), Pa2, of the record, by the moments of the mixture."""
+        shift = np.nanmean(self.part_phasor, axis=2) - self.mean_phasor[:, None]
+        spread = np.einsum("sk,ski,skj->sij", self.weight, shift, shift)
+        return np.asarray(np.einsum("sk,skij->sij", self.weight, self.part_covariance) + spread)
+
+    def select(self, keep: NDArray[np.bool_]) -> "Observations":
+        """Observations of the sites where `keep` (n_site,) is true."""
+        return replace(
+            self,
+            sites=tuple(site for site, kept in zip(self.sites, keep, strict=True) if kept),
+            weight=self.weight[keep],
+            part_phasor=self.part_phasor[keep],
+            part_covariance=self.part_covariance[keep],
+            model_noise=self.model_noise[keep],
+        )
+
+    def without_model(self, name: str) -> "tuple[Observations, NDArray[np.bool_]]":
+        """Observations with one model left out, and which sites are left."""
+        kept = [i for i, model in enumerate(self.models) if model != name]
+        fewer = replace(self, models=tuple(self.models[i] for i in kept), part_phasor=self.part_phasor[:, :, kept])
+        left = fewer.model_count > 0
+        return fewer.select(left), left
+
+
+def read_observations(
+    site_phasors: xr.Dataset, fingerprints: xr.Dataset
+) -> tuple[Observations, NDArray[np.complex128]]:
+    """Match the site phasors with the fingerprints.
+
+    Parameters
+    ----------
+    site_phasors : xarray.Dataset
+        Per `massfit.contracts.SITE_PHASORS`, Pa.
+    fingerprints : xarray.Dataset
+        Per `massfit.contracts.FINGERPRINTS`; sites without a phasor are left unused.
+
+    Returns
+    -------
+    observations : Observations
+    admittance : (n_member, n_site) array of complex
+        F_s, in the order of the observations.
+
+    Raises
+    ------
+    InputError
+        Every fault of the two Datasets.
+    """
+    require(site_phasors, SITE_PHASORS)
+    require(fingerprints, FINGERPRINTS)
+    faults = _axis_faults(site_phasors, fingerprints)
+    if faults:
+        raise InputError(faults)
+    sites = tuple(str(site) for site in site_phasors["site"].values)
+    matched = fingerprints.assign_coords(site=fingerprints["site"].astype(str)).sel(site=list(sites))
+    admittance = as_complex(matched["admittance"].values)
+    phasor = site_phasors["phasor"].values.astype(float)
+    if "air_load_response" in matched:
+        phasor = phasor - matched["air_load_response"].values[:, None, None, :]
+    models = tuple(str(model) for model in site_phasors["model"].values)
+    observations = Observations(
+        sites,
+        models,
+        site_phasors["weight"].values.astype(float),
+        phasor,
+        site_phasors["covariance"].values.astype(float),
+        site_phasors["model_noise"].values.astype(float),
+    )
+    faults = _value_faults(observations, admittance)
+    if faults:
+        raise InputError(faults)
+    return observations, admittance
+
+
+def _axis_faults(site_phasors: xr.Dataset, fingerprints: xr.Dataset) -> list[Fault]:
+    named = (
+        ("site phasors", site_phasors, "site"),
+        ("site phasors", site_phasors, "model"),
+        ("fingerprints", fingerprints, "site"),
+    )
+    faults = [
+        Fault(source, axis, f"the coordinate {axis!r} is missing", "Names are needed to match the sites")
+        for source, data, axis in named
+        if axis not in data.coords
+    ]
+    if faults:
+        return faults
+    for source, data, axis in named:
+        names = [str(value) for value in data[axis].values]
+        faults += [
+            Fault(source, repeated, f"the {axis} appears {names.count(repeated)} times", "Names are unique")
+            for repeated in sorted({value for value in names if names.count(value) > 1})
+        ]
+    if site_phasors.sizes["site"] == 0:
+        faults.append(Fault("site phasors", "site", "there is no site", "At least one is needed"))
+    if fingerprints.sizes["member"] == 0:
+        faults.append(Fault("fingerprints", "member", "there is no load member", "At least one is needed"))
+    known = {str(value) for value in fingerprints["site"].values}
+    return faults + [
+        Fault("fingerprints", str(site), "the site has a phasor and no fingerprint", action="Compute its fingerprint")
+        for site in site_phasors["site"].values
+        if str(site) not in known
+    ]
+
+
+def _value_faults(observations: Observations, admittance: NDArray[np.complex128]) -> list[Fault]:
+    faults = []
+    for s, site in enumerate(observations.sites):
+        problems = list(_site_problems(observations, s))
+        if not np.isfinite(admittance[:, s]).all() or (admittance[:, s] == 0).any():
+            problems.append(("the admittance is zero or not finite", "Must be finite and not zero"))
+        faults += [Fault("site phasors", site, problem, allowed) for problem, allowed in problems]
+    return faults
+
+
+def _site_problems(observations: Observations, s: int) -> Sequence[tuple[str, str]]:
+    problems = []
+    weight, covariance, noise = (
+        observations.weight[s],
+        observations.part_covariance[s],
+        observations.model_noise[s],
+    )
+    present = [model for model, there in zip(observations.models, observations.present[s], strict=True) if there]
+    if not present:
+        problems.append(("no phasor is finite in every part", "At least one model, or the column 'none'"))
+    if NO_MODEL in present and len(present) > 1:
+        problems.append((f"has the column 'none' beside {len(present) - 1} models", "Must be one or the other"))
+    if not (weight >= 0).all() or not abs(weight.sum() - 1) < 1e-6:
+        problems.append((f"the weights sum to {weight.sum():g}", "Must be non-negative and sum to 1"))
+    if not np.isfinite(covariance).all() or not (np.linalg.eigvalsh(covariance) > 0).all():
+        problems.append(("a covariance is not positive definite", "Every part needs a positive definite one"))
+    if not np.isfinite(noise).all() or not (np.linalg.eigvalsh(noise) >= -1e-9 * max(np.trace(noise), 1.0)).all():
+        problems.append(("the model noise is not a covariance", "Must be finite and not negative"))
+    return problems
+
+
+def record_covariance(
+    covariance: NDArray[np.float64], model_noise: NDArray[np.float64], model_count: int
+) -> NDArray[np.float64]:
+    """Covariance of the record error, which every model at the site shares.
+
+    Parameters
+    ----------
+    covariance : (..., 2, 2) array
+        C_s, Pa2, of the record less the mean of its models.
+    model_noise : (2, 2) array
+        D_s, Pa2.
+    model_count : int
+        M_s.
+
+    Returns
+    -------
+    (..., 2, 2) array
+        C_s - D_s / M_s, with its eigenvalues relative to C_s floored at `RECORD_FLOOR`
+        so that it stays a covariance.
+    """
+    root = np.linalg.cholesky(covariance)
+    inverse = np.linalg.inv(root)
+    share = np.eye(2) - inverse @ (model_noise / model_count) @ np.swapaxes(inverse, -1, -2)
+    values, vectors = np.linalg.eigh(share)
+    floored = (vectors * np.maximum(values, RECORD_FLOOR)[..., None, :]) @ np.swapaxes(vectors, -1, -2)
+    return np.asarray(root @ floored @ np.swapaxes(root, -1, -2))
+

@@ -1,0 +1,126 @@
+"""The network posterior as it is handed on."""
+
+from dataclasses import dataclass
+
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from massfit.phasor import COMPONENTS
+from massfit.posterior.convergence import Convergence
+from massfit.posterior.likelihood import SCALES
+from massfit.posterior.quadrature import ScalePosterior
+from massfit.settings import PosteriorSettings, Priors
+
+
+@dataclass(frozen=True)
+class Posterior:
+    """Draws of the annual phasor of ocean mass, and whether they can be trusted.
+
+    Parameters
+    ----------
+    annual : (n_chain, n_draw, 2) array
+        Pa, in phase and quadrature, all load members pooled in equal numbers; the
+        members' means stand apart by their inflated spread.
+    member_of_draw : (n_draw,) array of int
+        Load member of each pooled draw.
+    member_annual : (n_member, n_chain, n_member_draw, 2) array
+        Pa, the members' own draws.
+    scales : (n_member, n_chain, n_member_draw, 3) array
+        Pa: s_site, s_local, s_common.
+    members, sites, models : tuple of str
+        Names of the load members, the sites and the columns of ocean models.
+    convergence : Convergence
+        Worst over the members.
+    member_convergence : tuple of Convergence
+    second_route : tuple of ScalePosterior
+        Quadrature of each member.
+    settings : PosteriorSettings
+    priors : Priors
+    atmosphere_sd_hpa : float
+    warnings : tuple of str
+        What a reader of the answer has to know.
+    method : tuple of str
+        How the answer was computed.
+    """
+
+    annual: NDArray[np.float64]
+    member_of_draw: NDArray[np.int64]
+    member_annual: NDArray[np.float64]
+    scales: NDArray[np.float64]
+    members: tuple[str, ...]
+    sites: tuple[str, ...]
+    models: tuple[str, ...]
+    convergence: Convergence
+    member_convergence: tuple[Convergence, ...]
+    second_route: tuple[ScalePosterior, ...]
+    settings: PosteriorSettings
+    priors: Priors
+    atmosphere_sd_hpa: float
+    warnings: tuple[str, ...]
+    method: tuple[str, ...]
+
+    @property
+    def seed(self) -> int:
+        """Seed of every random number."""
+        return self.settings.seed
+
+    @property
+    def converged(self) -> bool:
+        """Whether every member met every threshold."""
+        return self.convergence.converged
+
+    @property
+    def draws(self) -> NDArray[np.float64]:
+        """(n, 2), Pa, the pooled draws of all chains."""
+        return self.annual.reshape(-1, 2)
+
+    def to_dataset(self) -> xr.Dataset:
+        """Draws and diagnostics as a Dataset.
+
+        Returns
+        -------
+        xarray.Dataset
+            `annual_phasor` (chain, draw, component) and `member_of_draw` (draw,) pooled;
+            `member_annual_phasor` (member, chain, member_draw, component) and `scale`
+            (member, chain, member_draw, scale_name); all in Pa.
+        """
+        per_member = ("member", "chain", "member_draw")
+        return xr.Dataset(
+            {
+                "annual_phasor": (
+                    ("chain", "draw", "component"),
+                    self.annual,
+                    {"units": "Pa", "long_name": "annual phasor of ocean-mean water pressure, load members pooled"},
+                ),
+                "member_of_draw": (("draw",), self.member_of_draw, {"units": "1", "long_name": "load member, from 0"}),
+                "member_annual_phasor": (
+                    (*per_member, "component"),
+                    self.member_annual,
+                    {"units": "Pa", "long_name": "annual phasor of ocean-mean water pressure, one load member"},
+                ),
+                "scale": (
+                    (*per_member, "scale_name"),
+                    self.scales,
+                    {"units": "Pa", "long_name": "standard deviations of the network model"},
+                ),
+            },
+            coords={
+                "component": list(COMPONENTS),
+                "member": list(self.members),
+                "scale_name": list(SCALES),
+                "site": list(self.sites),
+                "model": list(self.models),
+            },
+            attrs={
+                "seed": self.seed,
+                "converged": int(self.converged),
+                "rhat_max": self.convergence.rhat_max,
+                "ess_bulk_min": self.convergence.ess_bulk_min,
+                "ess_tail_min": self.convergence.ess_tail_min,
+                "second_route_mean_shift_sd": self.convergence.second_route_mean_shift_sd,
+                "second_route_sd_ratio": self.convergence.second_route_sd_ratio,
+                "method": "; ".join(self.method),
+                "warnings": "; ".join(self.warnings),
+            },
+        )

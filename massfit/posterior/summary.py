@@ -1,0 +1,195 @@
+"""The answer in the numbers that are printed: amplitude, peak day, mass, and what they rest on."""
+
+from dataclasses import asdict
+
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from massfit.constants import FRESH_WATER_DENSITY, KG_PER_GT, PASCAL_PER_HPA, STANDARD_GRAVITY
+from massfit.phasor import as_complex, as_components, peak_date, unwrapped_peak_days
+from massfit.posterior.alternatives import alternative_answers
+from massfit.posterior.network_model import member_models
+from massfit.posterior.observations import NO_MODEL, Observations, read_observations
+from massfit.posterior.regions import scalar_summary
+from massfit.posterior.result import Posterior
+from massfit.posterior.shares import variance_shares, variance_terms
+from massfit.posterior.sites import MixtureEffect, SiteCheck, leave_one_out, mixture_effects
+
+QUIET_SD = 300.0
+"""Standard deviation of the reduced daily record above which a site is not called quiet, Pa (common practice)."""
+
+MIXTURE_LIMIT = 0.02
+"""Largest effect on the network mean (in standard deviations) and standard deviation of a site's single Gaussian."""
+
+
+def summarise(
+    posterior: Posterior,
+    site_phasors: xr.Dataset,
+    fingerprints: xr.Dataset,
+    *,
+    reference_year: int,
+    ocean_area_m2: float,
+    sea_water_density: float,
+) -> dict[str, object]:
+    """Summarise a posterior as plain numbers, ready for JSON.
+
+    Parameters
+    ----------
+    posterior : Posterior
+    site_phasors, fingerprints : xarray.Dataset
+        What the posterior was drawn from.
+    reference_year : int
+        Year of the printed peak date.
+    ocean_area_m2 : float
+        m2, turns pressure into mass.
+    sea_water_density : float
+        kg m-3, of the sea-water height.
+
+    Returns
+    -------
+    dict
+        `amplitude_hpa`, `peak_day`, `in_phase_hpa`, `quadrature_hpa`, `water_mm`,
+        `sea_water_mm`, `mass_gt`, each with median, mean, sd, region50, region95
+        (equal-tailed); `peak_date`, `variance_share`, `alternatives`, `convergence`,
+        `sites`, `covariance_hpa2`, `warnings`. A site's `phasor_hpa` is as observed: the
+        response to the air over land is not taken off.
+
+    Raises
+    ------
+    InputError
+        Every fault of the two Datasets.
+    """
+    observations, admittance = read_observations(site_phasors, fingerprints)
+    models = member_models(
+        observations,
+        admittance,
+        settings=posterior.settings,
+        priors=posterior.priors,
+        atmosphere_sd_hpa=posterior.atmosphere_sd_hpa,
+    )
+    checks = leave_one_out(models, posterior.second_route, len(observations.sites))
+    effects = _mixture_effects(posterior, observations, admittance)
+    notes = [
+        _site_warnings(observations, s, float(site_phasors["reduced_sd"].values[s]), checks[s], effects[s])
+        for s in range(len(observations.sites))
+    ]
+    return {
+        **_answer(posterior.draws, reference_year, ocean_area_m2, sea_water_density),
+        "covariance_hpa2": (np.cov(posterior.draws.T) / PASCAL_PER_HPA**2).tolist(),
+        "variance_share": variance_shares(variance_terms(models, posterior.second_route, observations)),
+        "alternatives": alternative_answers(
+            observations,
+            fingerprints,
+            posterior.second_route,
+            admittance=admittance,
+            settings=posterior.settings,
+            priors=posterior.priors,
+            atmosphere_sd_hpa=posterior.atmosphere_sd_hpa,
+        ),
+        "convergence": {**asdict(posterior.convergence), "converged": posterior.converged},
+        "sites": _sites(observations, site_phasors, admittance, checks, notes),
+        "warnings": [*posterior.warnings, *_mixture_warnings(observations.sites, effects)],
+    }
+
+
+def _answer(
+    draws: NDArray[np.float64], reference_year: int, ocean_area_m2: float, sea_water_density: float
+) -> dict[str, object]:
+    phasors = as_complex(draws)
+    amplitude = np.abs(phasors)
+    height_mm = 1000.0 * amplitude / STANDARD_GRAVITY  # times the density, which follows
+    days = scalar_summary(unwrapped_peak_days(phasors))
+    return {
+        "amplitude_hpa": scalar_summary(amplitude / PASCAL_PER_HPA),
+        "peak_day": days,
+        "peak_date": peak_date(float(np.asarray(days["median"])), reference_year),
+        "in_phase_hpa": scalar_summary(draws[:, 0] / PASCAL_PER_HPA),
+        "quadrature_hpa": scalar_summary(draws[:, 1] / PASCAL_PER_HPA),
+        "water_mm": scalar_summary(height_mm / FRESH_WATER_DENSITY),
+        "sea_water_mm": scalar_summary(height_mm / sea_water_density),
+        "mass_gt": scalar_summary(amplitude * ocean_area_m2 / STANDARD_GRAVITY / KG_PER_GT),
+    }
+
+
+def _mixture_effects(
+    posterior: Posterior, observations: Observations, admittance: NDArray[np.complex128]
+) -> list[MixtureEffect]:
+    """Effects of the single Gaussians at the mean log scales and the mean admittance of the members."""
+    mean_admittance = admittance.mean(axis=0)
+    model = member_models(
+        observations,
+        mean_admittance[None],
+        settings=posterior.settings,
+        priors=posterior.priors,
+        atmosphere_sd_hpa=posterior.atmosphere_sd_hpa,
+    )[0]
+    log_scales = np.mean([route.weight @ route.log_scales for route in posterior.second_route], axis=0)
+    return mixture_effects(observations, model, mean_admittance, log_scales)
+
+
+def _sites(
+    observations: Observations,
+    site_phasors: xr.Dataset,
+    admittance: NDArray[np.complex128],
+    checks: list[SiteCheck],
+    notes: list[list[str]],
+) -> list[dict[str, object]]:
+    observed = np.einsum("sk,skmc->smc", observations.weight, site_phasors["phasor"].values)
+    phasor = np.nanmean(observed, axis=1) / PASCAL_PER_HPA
+    covariance = observations.covariance / PASCAL_PER_HPA**2
+    factors = as_components(admittance.mean(axis=0))
+    return [
+        {
+            "id": site,
+            "phasor_hpa": phasor[s].tolist(),
+            "phasor_covariance_hpa2": covariance[s].tolist(),
+            "admittance": factors[s].tolist(),
+            "standardised_residual": checks[s].standardised_residual,
+            "outlier_probability": checks[s].outlier_probability,
+            "warnings": notes[s],
+        }
+        for s, site in enumerate(observations.sites)
+    ]
+
+
+def _site_warnings(
+    observations: Observations, s: int, reduced_sd: float, check: SiteCheck, effect: MixtureEffect
+) -> list[str]:
+    present = [model for model, there in zip(observations.models, observations.present[s], strict=True) if there]
+    return [
+        text
+        for applies, text in (
+            (
+                reduced_sd > QUIET_SD,
+                f"Not quiet: the reduced daily record varies by {reduced_sd / PASCAL_PER_HPA:.1f} hPa (1 sd; quiet is "
+                f"below {QUIET_SD / PASCAL_PER_HPA:.0f}), so ocean dynamics that no model removes weigh on its phasor.",
+            ),
+            (present == [NO_MODEL], "No ocean model was subtracted: the circulation is part of the noise."),
+            (
+                check.outlier_probability > 0.5,
+                f"Disagrees with the other sites: {check.standardised_residual:.1f} standard deviations, "
+                f"probability {check.outlier_probability:.2f} of being wrong.",
+            ),
+            (_is_large(effect), _mixture_text(effect)),
+        )
+        if applies
+    ]
+
+
+def _is_large(effect: MixtureEffect) -> bool:
+    return max(abs(effect.shift_sd), abs(effect.sd_ratio - 1.0)) > MIXTURE_LIMIT
+
+
+def _mixture_text(effect: MixtureEffect) -> str:
+    return (
+        f"Its single Gaussian stands for a mixture that would move the network mean by {effect.shift_sd:+.3f} standard "
+        f"deviations and its standard deviation by {effect.sd_ratio - 1.0:+.1%} (allowed are {MIXTURE_LIMIT:.0%})."
+    )
+
+
+def _mixture_warnings(sites: tuple[str, ...], effects: list[MixtureEffect]) -> list[str]:
+    named = [site for site, effect in zip(sites, effects, strict=True) if _is_large(effect)]
+    if not named:
+        return []
+    return [f"A single Gaussian does not describe the records of: {', '.join(named)}; see the sites' warnings."]
