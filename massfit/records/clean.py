@@ -1,0 +1,146 @@
+"""Samples that are not used, and why: gaps, repeats, excluded stretches, spikes."""
+
+from collections.abc import Sequence
+from datetime import date
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.ndimage import median_filter
+
+from massfit.records.record import Action
+from massfit.site import Interval
+
+_WINDOW = 5
+"""Samples of the running median: at most two neighbours can be called a spike."""
+_BLOCK = 96
+"""Samples over which the running scale is taken: a day of 15-minute samples."""
+_THRESHOLD = 8.0
+"""Robust standard deviations; a normal error passes it once in 1e15."""
+_SHARE = 0.01
+"""At most this share of the samples is called spikes; beyond, they are the noise of the record."""
+_SMALLEST_SCALE = 1.0
+"""Pa; smaller differences are the counting step of the instrument."""
+_SD_PER_MEDIAN = 1.4826
+"""Standard deviation of a normal error per median of its magnitude."""
+
+Samples = tuple[NDArray[np.datetime64], NDArray[np.float64], tuple[Action, ...]]
+
+
+def usable_samples(
+    time: NDArray[np.datetime64],
+    pressure: NDArray[np.float64],
+    *,
+    exclude: Sequence[Interval] = (),
+    start: date | None = None,
+    end: date | None = None,
+) -> Samples:
+    """Put samples in order of time, without gaps, repeats and what the analyst left out.
+
+    Parameters
+    ----------
+    time : (n,) array of datetime64
+        UTC, any order.
+    pressure : (n,) array
+        Pa; NaN is missing.
+    exclude : sequence of Interval
+        Both ends are left out too.
+    start, end : datetime.date, optional
+        First and last day used, inclusive.
+
+    Returns
+    -------
+    time : (m,) array of datetime64[ns]
+        Strictly increasing.
+    pressure : (m,) array
+        Pa; the mean where a stamp is repeated.
+    actions : tuple of Action
+        What was left out, and how many samples each time.
+
+    Examples
+    --------
+    >>> time = np.array(["2016-01-02", "2016-01-01", "2016-01-01"], dtype="datetime64[ns]")
+    >>> _, pressure, actions = usable_samples(time, np.array([3.0, 1.0, 2.0]))
+    >>> pressure.tolist(), [action.what for action in actions]
+    ([1.5, 3.0], ['samples put in order of time', 'repeated stamps averaged'])
+    """
+    time = time.astype("datetime64[ns]")
+    valid = np.isfinite(pressure) & ~np.isnat(time)
+    actions = [Action("samples without a value left out", int(np.count_nonzero(~valid)))]
+    for what, inside, detail in _choices(time, exclude, start, end):
+        actions.append(Action(what, int(np.count_nonzero(valid & ~inside)), detail))
+        valid &= inside
+    time, pressure = time[valid], pressure[valid]
+    disorder = int(np.count_nonzero(np.diff(time) < np.timedelta64(0, "ns")))
+    if disorder:
+        order = np.argsort(time, kind="stable")
+        time, pressure = time[order], pressure[order]
+    actions.append(Action("samples put in order of time", disorder))
+    first = np.flatnonzero(np.diff(time, prepend=np.datetime64("NaT")) != np.timedelta64(0, "ns"))
+    actions.append(Action("repeated stamps averaged", time.size - first.size))
+    if first.size < time.size:
+        counts = np.diff(first, append=time.size)
+        time, pressure = time[first], np.add.reduceat(pressure, first) / counts
+    return time, pressure, tuple(action for action in actions if action.count)
+
+
+def _choices(
+    time: NDArray[np.datetime64], exclude: Sequence[Interval], start: date | None, end: date | None
+) -> list[tuple[str, NDArray[np.bool_], str]]:
+    """Name, samples inside and reason of each choice of the analyst."""
+    choices = []
+    if start is not None or end is not None:
+        inside = np.ones(time.size, dtype=bool)
+        if start is not None:
+            inside &= time >= np.datetime64(start)
+        if end is not None:
+            inside &= time < np.datetime64(end) + np.timedelta64(1, "D")
+        choices.append(("samples outside the period left out", inside, f"{start or 'start'} to {end or 'end'}"))
+    for interval in exclude:
+        outside = (time < interval.start) | (time > interval.end)
+        detail = f"{interval.start} to {interval.end}: {interval.reason}"
+        choices.append(("samples in an excluded interval left out", outside, detail))
+    return choices
+
+
+def find_spikes(values: NDArray[np.float64]) -> NDArray[np.bool_]:
+    """Find one or two samples that stand apart from their neighbours.
+
+    Each value is set against the median of the five around it, in units of the
+    running median of such differences. A step, a wave that three samples follow
+    and a stretch of bad data are no spikes: the median goes along with them.
+
+    Parameters
+    ----------
+    values : (n,) array
+        Pa, in order of time, free of tides where the sampling is coarse.
+
+    Returns
+    -------
+    (n,) array of bool
+        True at spikes; at most one sample in a hundred (and one at least).
+
+    References
+    ----------
+    Davies, L. & Gather, U. (1993), J. Am. Stat. Assoc. 88, 782-792.
+
+    Examples
+    --------
+    >>> np.flatnonzero(find_spikes(np.array([0.0, 1, 0, 1, 90, 0, 1, 0, 1]))).tolist()
+    [4]
+    """
+    if values.size < _WINDOW:
+        return np.zeros(values.size, dtype=bool)
+    apart = np.abs(values - median_filter(values, size=_WINDOW, mode="mirror"))
+    ratio = apart / np.maximum(_running_scale(apart), _SMALLEST_SCALE)
+    allowed = max(1, int(_SHARE * values.size))
+    weakest = np.partition(ratio, -allowed)[-allowed] if allowed < ratio.size else 0.0
+    return np.asarray((ratio > _THRESHOLD) & (ratio >= weakest))
+
+
+def _running_scale(apart: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Scale of a block of samples, never below that of the whole record."""
+    blocks = max(1, apart.size // _BLOCK)
+    whole = apart[: blocks * _BLOCK].reshape(blocks, -1)
+    local = np.repeat(np.median(whole, axis=1), whole.shape[1])
+    local = np.concatenate([local, np.full(apart.size - local.size, local[-1])])
+    return np.asarray(_SD_PER_MEDIAN * np.maximum(local, np.median(apart)))

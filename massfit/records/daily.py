@@ -1,0 +1,166 @@
+"""From a record as read to daily means free of short tides."""
+
+from collections.abc import Sequence
+from datetime import date
+from typing import Literal
+
+import numpy as np
+from numpy.typing import NDArray
+
+from massfit.records.clean import find_spikes, usable_samples
+from massfit.records.hourly import DAY_NS, EPOCH, HOUR_NS, Hourly, days_from_epoch, hourly_means
+from massfit.records.record import Action, DailyRecord, Record, TidalConstant
+from massfit.records.tides import fit_short_tides
+from massfit.site import Interval
+
+_DAILY_ABOVE_HOURS = 6.0
+"""Coarser sampling cannot show a tide: such records pass as they are."""
+_LEAST_SHARE = 0.75
+"""Of the hours of a day: 18 of 24."""
+_DIRECT_BELOW_HOURS = 0.5
+"""Below this sampling a tide is a straight line over five samples, and spikes show against the raw pressure."""
+
+
+def reduce_to_daily(
+    record: Record,
+    *,
+    exclude: Sequence[Interval] = (),
+    start: date | None = None,
+    end: date | None = None,
+    tides: Literal["remove", "already-removed"] = "remove",
+) -> DailyRecord:
+    """Reduce a record to daily means with the short tides removed before averaging.
+
+    A plain mean over 24 h leaves 0.27 % of K1 and P1, and both alias to one year.
+    Each hour counts once, a day needs three quarters of its hours, and a mean whose
+    hours are not symmetric about noon is brought to noon along the slope of the
+    neighbouring days. Drift, weather, and the annual and the semi-annual cycle pass
+    unchanged: long-period lines are never fitted.
+
+    Parameters
+    ----------
+    record : Record
+    exclude : sequence of Interval
+        Stretches not used.
+    start, end : datetime.date, optional
+        First and last day used, inclusive.
+    tides : str
+        "remove", or "already-removed".
+
+    Returns
+    -------
+    DailyRecord
+        Of zero length where nothing is left; its actions say why.
+
+    Examples
+    --------
+    >>> time = np.datetime64("2016-01-01", "ns") + np.arange(24 * 90) * np.timedelta64(1, "h")
+    >>> daily = reduce_to_daily(Record("A", "A/1", time, np.arange(24 * 90.0)))
+    >>> daily.time.size, str(daily.time[0])[:13]
+    (90, '2016-01-01T12')
+    """
+    time, pressure, actions = usable_samples(record.time, record.pressure, exclude=exclude, start=start, end=end)
+    spacing = _spacing_hours(time)
+    constants: tuple[TidalConstant, ...] = ()
+    if spacing >= _DAILY_ABOVE_HOURS:
+        time, pressure, done = _as_it_is(time, pressure, tides)
+    else:
+        time, pressure, constants, done = _averaged(time, pressure, record.steps, spacing, tides)
+    return DailyRecord(
+        site=record.site,
+        deployment=record.deployment,
+        time=time,
+        pressure=pressure,
+        start=_first_instant(record),
+        drift=record.drift,
+        steps=record.steps,
+        tides=constants,
+        actions=(*record.actions, *actions, *(action for action in done if action.count)),
+    )
+
+
+def _first_instant(record: Record) -> np.datetime64:
+    """First sample of the deployment, used or not: the origin of its drift."""
+    instants = record.time[np.isfinite(record.pressure) & ~np.isnat(record.time)].astype("datetime64[ns]")
+    return np.datetime64(instants.min()) if instants.size else np.datetime64("NaT", "ns")
+
+
+def _spacing_hours(time: NDArray[np.datetime64]) -> float:
+    return float(np.median(np.diff(time)) / np.timedelta64(HOUR_NS, "ns")) if time.size > 1 else np.inf
+
+
+def _as_it_is(
+    time: NDArray[np.datetime64], pressure: NDArray[np.float64], tides: str
+) -> tuple[NDArray[np.datetime64], NDArray[np.float64], list[Action]]:
+    spikes = find_spikes(pressure)
+    actions = [_spike_action(spikes, "sample")]
+    if tides == "remove" and time.size:
+        detail = "too coarse to show them; plain daily means hold 0.27 % of K1 and P1, which look annual"
+        actions.append(Action("short tides not removed", time.size, detail))
+    return time[~spikes], pressure[~spikes], actions
+
+
+def _spike_action(spikes: NDArray[np.bool_], what: str) -> Action:
+    detail = f"single or paired {what}s more than 8 robust standard deviations from the median of five"
+    return Action(f"{what} spikes rejected", int(np.count_nonzero(spikes)), detail)
+
+
+def _averaged(
+    time: NDArray[np.datetime64],
+    pressure: NDArray[np.float64],
+    steps: Sequence[np.datetime64],
+    spacing: float,
+    tides: str,
+) -> tuple[NDArray[np.datetime64], NDArray[np.float64], tuple[TidalConstant, ...], list[Action]]:
+    actions = []
+    if spacing < _DIRECT_BELOW_HOURS:
+        spikes = find_spikes(pressure)
+        time, pressure = time[~spikes], pressure[~spikes]
+        actions.append(_spike_action(spikes, "sample"))
+    hours = hourly_means(time, pressure)
+    breaks = np.sort(days_from_epoch(np.asarray(steps, dtype="datetime64[ns]")))
+    if tides == "remove":
+        fit = fit_short_tides(hours.days, hours.pressure, spread=hours.spread, breaks=breaks)
+        constants, spikes = fit.constants, fit.spikes
+        hours = Hourly(hours.hour, hours.days, hours.spread, hours.pressure - fit.tide)
+        detail = f"{len(constants)} lines, no long-period ones, in segments: {fit.segments}"
+        actions.append(Action("short tides removed", hours.hour.size, detail))
+        detail = f"too short to part {', '.join(fit.merged)}; daily means suppress what is left"
+        actions.append(Action("tidal lines merged with larger neighbours", len(fit.merged), detail))
+    else:
+        constants, spikes = (), find_spikes(hours.pressure)
+    actions.append(_spike_action(spikes, "hour"))
+    day, mean, sparse = _daily_means(hours.without(spikes), breaks, max(spacing, 1.0))
+    actions.append(Action("days left out", sparse, "less than three quarters of the hours on one level"))
+    noon = EPOCH + day * np.timedelta64(DAY_NS, "ns") + np.timedelta64(DAY_NS // 2, "ns")
+    return noon, mean, constants, actions
+
+
+def _daily_means(
+    hours: Hourly, breaks: NDArray[np.float64], spacing: float
+) -> tuple[NDArray[np.int64], NDArray[np.float64], int]:
+    """Days, their means brought to noon, and how many days were left out.
+
+    A day that holds a step is split there and the longer part may stand for it.
+    """
+    day = hours.hour // 24
+    level = np.searchsorted(breaks, hours.days, side="right")
+    changed = (np.diff(day, prepend=day[:1] - 1) != 0) | (np.diff(level, prepend=level[:1]) != 0)
+    first = np.flatnonzero(changed)
+    counts = np.diff(first, append=day.size)
+    enough = counts * spacing >= _LEAST_SHARE * 24
+    mean = (np.add.reduceat(hours.pressure, first) / counts)[enough]
+    middle = (np.add.reduceat(hours.days, first) / counts)[enough]
+    day, level = day[first][enough], level[first][enough]
+    sparse = np.unique(hours.hour // 24).size - day.size
+    return day, mean + _slopes(middle, mean, level) * (day + 0.5 - middle), sparse
+
+
+def _slopes(days: NDArray[np.float64], values: NDArray[np.float64], level: NDArray[np.int64]) -> NDArray[np.float64]:
+    """Slope at each day along its neighbours on the same level; zero for a day alone."""
+    slopes = np.zeros(days.size)
+    for one in np.unique(level):
+        here = np.flatnonzero(level == one)
+        if here.size > 1:
+            slopes[here] = np.gradient(values[here], days[here])
+    return slopes

@@ -1,0 +1,83 @@
+"""Means over the hours of a record, whatever its sampling."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+HOUR_NS = 3_600_000_000_000
+DAY_NS = 24 * HOUR_NS
+EPOCH = np.datetime64("2000-01-01T00:00:00", "ns")
+"""Origin of times in days and of tidal phases."""
+_JITTER_NS = 1_000_000_000
+"""Stamps up to a second before the full hour belong to it: decimal days round either way."""
+
+
+@dataclass(frozen=True)
+class Hourly:
+    """One value for every hour that has samples.
+
+    Parameters
+    ----------
+    hour : (n,) array of int
+        Hours from `EPOCH`, increasing.
+    days : (n,) array
+        Mean of the sample times, days from `EPOCH`.
+    spread : (n,) array
+        Variance of the sample times, days squared.
+    pressure : (n,) array
+        Mean of the samples, Pa.
+    """
+
+    hour: NDArray[np.int64]
+    days: NDArray[np.float64]
+    spread: NDArray[np.float64]
+    pressure: NDArray[np.float64]
+
+    def without(self, left_out: NDArray[np.bool_]) -> "Hourly":
+        """Leave hours out."""
+        kept = ~left_out
+        return Hourly(self.hour[kept], self.days[kept], self.spread[kept], self.pressure[kept])
+
+
+def days_from_epoch(time: NDArray[np.datetime64] | np.datetime64) -> NDArray[np.float64]:
+    """Days from 1 January 2000 00:00 UTC.
+
+    Examples
+    --------
+    >>> float(days_from_epoch(np.datetime64("2000-01-02T12:00", "ns")))
+    1.5
+    """
+    return np.asarray((time - EPOCH) / np.timedelta64(DAY_NS, "ns"), dtype=float)
+
+
+def hourly_means(time: NDArray[np.datetime64], pressure: NDArray[np.float64]) -> Hourly:
+    """Average the samples of each hour, so that dense stretches do not weigh more.
+
+    Parameters
+    ----------
+    time : (n,) array of datetime64[ns]
+        Increasing.
+    pressure : (n,) array
+        Pa.
+
+    Returns
+    -------
+    Hourly
+
+    Examples
+    --------
+    >>> time = np.array(["2000-01-01T05:10", "2000-01-01T05:20", "2000-01-01T09:00"], dtype="datetime64[ns]")
+    >>> hourly_means(time, np.array([1.0, 3.0, 7.0])).pressure.tolist()
+    [2.0, 7.0]
+    """
+    since = (time - EPOCH).astype(np.int64)
+    hour = (since + _JITTER_NS) // HOUR_NS
+    first = np.flatnonzero(np.diff(hour, prepend=hour[:1] - 1))
+    counts = np.diff(first, append=hour.size)
+    within = (since - hour * HOUR_NS) / DAY_NS
+    offset = np.add.reduceat(within, first) / counts
+    spread = np.maximum(np.add.reduceat(within**2, first) / counts - offset**2, 0.0)
+    return Hourly(
+        hour[first], hour[first] / 24.0 + offset, spread, np.add.reduceat(pressure, first) / counts
+    )

@@ -1,0 +1,156 @@
+"""Short tides by least squares, together with everything slower that a record holds."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from itertools import pairwise
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.linalg import cho_factor, cho_solve
+from scipy.sparse import csr_array
+
+from massfit.records.background import background_design
+from massfit.records.clean import find_spikes
+from massfit.records.record import TidalConstant
+from massfit.records.tidal_lines import SHORT_TIDES, parted_lines
+
+_SEGMENT_HOURS = 8766
+"""Hours of data of a segment, at least: a year, over which the node moves an amplitude by a few per cent."""
+_ROUNDS = 4
+"""Fits of a segment, at most, while spikes are looked for."""
+_RIDGE = 1.0e-6
+"""Keeps splines without data at zero; samples count as 1."""
+
+
+@dataclass(frozen=True)
+class TideFit:
+    """Short tides of one record.
+
+    Parameters
+    ----------
+    tide : (n,) array
+        Pa.
+    spikes : (n,) array of bool
+        Values that were kept out of the fit.
+    constants : tuple of TidalConstant
+        Means over the segments, largest first.
+    merged : tuple of str
+        Lines that some segment is too short to part from a larger neighbour.
+    segments : int
+        How many were fitted.
+    """
+
+    tide: NDArray[np.float64]
+    spikes: NDArray[np.bool_]
+    constants: tuple[TidalConstant, ...]
+    merged: tuple[str, ...]
+    segments: int
+
+
+def fit_short_tides(
+    days: NDArray[np.float64],
+    pressure: NDArray[np.float64],
+    *,
+    spread: NDArray[np.float64] | float = 0.0,
+    breaks: Sequence[float] | NDArray[np.float64] = (),
+) -> TideFit:
+    """Fit the short tides of a record.
+
+    The record is cut into segments of a year of data or somewhat more, so that
+    the 18.6-year modulation is followed. In each the lines that its length parts are
+    fitted together with a spline background, which takes up drift, weather
+    and the annual cycle; spikes against the fit are left out and the fit repeated.
+
+    Parameters
+    ----------
+    days : (n,) array
+        Days from 1 January 2000 00:00 UTC, increasing.
+    pressure : (n,) array
+        Pa; means over an hour or samples.
+    spread : (n,) array or float
+        Variance of the sample times within each mean, days squared; a mean over an
+        interval attenuates a line of rate w by 1 - w^2 spread / 2.
+    breaks : (k,) array
+        Times at which a new level begins, days, increasing.
+
+    Returns
+    -------
+    TideFit
+
+    References
+    ----------
+    Foreman, M. G. G. & Henry, R. F. (1989), Adv. Water Resour. 12, 109-120, for harmonic
+    analysis by least squares and the criterion of Rayleigh.
+
+    Examples
+    --------
+    >>> days = np.arange(24 * 60) / 24
+    >>> fit = fit_short_tides(days, 300 * np.cos(2 * np.pi * SHORT_TIDES["M2"] * days) + 5 * days)
+    >>> fit.constants[0].name, round(fit.constants[0].amplitude, 3)
+    ('M2', 300.0)
+    """
+    spread = np.broadcast_to(np.asarray(spread, dtype=float), days.shape)
+    count = max(1, days.size // _SEGMENT_HOURS)
+    edges = np.linspace(0, days.size, count + 1).astype(int)
+    tide, spikes = np.empty(days.size), np.zeros(days.size, dtype=bool)
+    phasors: dict[str, list[complex]] = {}
+    merged: set[str] = set()
+    for start, stop in pairwise(edges):
+        part = slice(start, stop)
+        names = parted_lines(days[stop - 1] - days[start])
+        merged |= set(SHORT_TIDES) - set(names)
+        tides = _tidal_design(days[part], spread[part], names)
+        background = background_design(days[part], np.asarray(breaks, dtype=float))
+        coefficients, spikes[part] = _robust_fit(background, tides, pressure[part])
+        tide[part] = tides @ coefficients
+        for name, cosine, sine in zip(names, *coefficients.reshape(2, -1), strict=True):
+            phasors.setdefault(name, []).append(complex(cosine, sine))
+    constants = [_constant(name, np.mean(values)) for name, values in phasors.items()]
+    constants.sort(key=lambda constant: -constant.amplitude)
+    return TideFit(tide, spikes, tuple(constants), tuple(name for name in SHORT_TIDES if name in merged), count)
+
+
+def _constant(name: str, phasor: complex) -> TidalConstant:
+    return TidalConstant(name, SHORT_TIDES[name], float(np.abs(phasor)), float(np.angle(phasor)))
+
+
+def _tidal_design(
+    days: NDArray[np.float64], spread: NDArray[np.float64], names: Sequence[str]
+) -> NDArray[np.float64]:
+    """Cosines of all lines, then sines, as means over each interval."""
+    design = np.empty((2 * len(names), days.size))
+    for row, name in enumerate(names):
+        rate = 2.0 * np.pi * SHORT_TIDES[name]
+        attenuation = 1.0 - 0.5 * rate**2 * spread
+        design[row] = attenuation * np.cos(rate * days)
+        design[row + len(names)] = attenuation * np.sin(rate * days)
+    return design.T
+
+
+def _robust_fit(
+    background: csr_array, tides: NDArray[np.float64], pressure: NDArray[np.float64]
+) -> tuple[NDArray[np.float64], NDArray[np.bool_]]:
+    """Coefficients of the tides, and the spikes against the whole fit."""
+    centred = pressure - np.median(pressure)
+    spikes = np.zeros(pressure.size, dtype=bool)
+    for _ in range(_ROUNDS):
+        curve, lines = _least_squares(background, tides, centred, ~spikes)
+        found = find_spikes(centred - background @ curve - tides @ lines)
+        if np.array_equal(found, spikes):
+            break
+        spikes = found
+    return lines, spikes
+
+
+def _least_squares(
+    background: csr_array, tides: NDArray[np.float64], values: NDArray[np.float64], used: NDArray[np.bool_]
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Coefficients of background and tides over the values in use."""
+    if not used.all():
+        background, tides, values = background[used], tides[used], values[used]
+    mixed = background.T @ tides
+    normal = np.block([[(background.T @ background).toarray(), mixed], [mixed.T, tides.T @ tides]])
+    normal[np.diag_indices_from(normal)] += _RIDGE
+    right = np.concatenate([background.T @ values, tides.T @ values])
+    solution = cho_solve(cho_factor(normal, check_finite=False), right, check_finite=False)
+    return solution[: -tides.shape[1]], solution[-tides.shape[1] :]
