@@ -1,0 +1,133 @@
+"""Joint sample of the drift time constants of a site with several exponentials.
+
+The time constants meet in the annual phasor that the deployments share. Gibbs chains
+(Geman & Geman 1984) run over the nodes of the grids at the mode of the noise; their
+conditional masses, averaged over the chains, show where the grids must be finer than
+each in turn would ask for. The evidence is taken to a power below one, so that the
+sample is wide enough to be re-weighted to other noise amplitudes.
+"""
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from massfit.annual.design import Design
+from massfit.annual.evidence import Reduction, conditional_log_evidence, reduce_columns
+from massfit.annual.grid import DriftGrid, grid_of
+from massfit.annual.noise import NoiseCovariance
+
+Floats = NDArray[np.float64]
+Choices = NDArray[np.int64]
+
+CHAINS = 96
+"""Chains run side by side."""
+
+BURN_IN = 16
+"""Sweeps before the sample is kept; the chains start from the masses in turn."""
+
+KEPT_SWEEPS = 48
+
+POWER = 0.7
+"""Power of the evidence that the chains sample."""
+
+REFINEMENTS = 4
+
+REFINEMENT_SWEEPS = 6
+
+
+@dataclass(frozen=True)
+class DriftSample:
+    """Choices of the drift time constants and how they are to be weighed.
+
+    Parameters
+    ----------
+    grid : DriftGrid
+    choices : (R, C, D) array of int
+        R sets of C choices of nodes.
+    log_ratio : (R, C) array
+        Log of prior mass over sampling density: a weight needs the log evidence added.
+    """
+
+    grid: DriftGrid
+    choices: Choices
+    log_ratio: Floats
+
+
+def sample_drift(noise: NoiseCovariance, design: Design, grid: DriftGrid, rng: np.random.Generator) -> DriftSample:
+    """Choices of drift time constants: every node for one exponential, a joint sample for more.
+
+    Parameters
+    ----------
+    noise : NoiseCovariance
+        At the joint mode.
+    design : Design
+    grid : DriftGrid
+        Refined in turn.
+    rng : numpy.random.Generator
+
+    Returns
+    -------
+    DriftSample
+    """
+    if len(grid.logs) < 2:
+        grid = grid.pruned()
+        choices = np.arange(len(grid.logs[0]) if grid.logs else 1)[None, :, None][:, :, : len(grid.logs)]
+        log_ratio = np.log(grid.prior_mass[0]) if grid.logs else np.zeros(1)
+        return DriftSample(grid, choices, log_ratio[None, :])
+    logs = np.column_stack([_draw(np.tile(mass, (CHAINS, 1)), rng) for mass in grid.mass])
+    states = np.column_stack([nodes[column] for nodes, column in zip(grid.logs, logs.T, strict=True)])
+    for _ in range(REFINEMENTS):
+        chains = _Chains(noise, design, grid, states)
+        mass = chains.run(REFINEMENT_SWEEPS, rng)
+        states = chains.states
+        finer = replace(grid, mass=mass).split()
+        if all(len(new) == len(old) for new, old in zip(finer.logs, grid.logs, strict=True)):
+            break
+        grid = grid_of(finer.logs, np.log(grid.mode))
+    grid = replace(grid, mass=_Chains(noise, design, grid, states).run(REFINEMENT_SWEEPS, rng)).pruned()
+    chains = _Chains(noise, design, grid, states)
+    chains.run(BURN_IN, rng)
+    kept, log_evidence = [], []
+    for _ in range(KEPT_SWEEPS):
+        chains.run(1, rng)
+        kept.append(chains.choices.copy())
+        log_evidence.append(chains.log_evidence)
+    return DriftSample(grid, np.array(kept), -POWER * np.array(log_evidence) - np.log(CHAINS))
+
+
+class _Chains:
+    """Gibbs chains over the nodes of one grid."""
+
+    def __init__(self, noise: NoiseCovariance, design: Design, grid: DriftGrid, states: Floats) -> None:
+        self.grid = grid
+        self.reduction: Reduction = reduce_columns(noise, design, design.exponentials(grid.time_constants))
+        self.choices = grid.nearest(states)
+        self.log_evidence = np.zeros(len(states))
+
+    @property
+    def states(self) -> Floats:
+        """Logarithms of the time constants: (C, D)."""
+        return np.column_stack([nodes[own] for nodes, own in zip(self.grid.logs, self.choices.T, strict=True)])
+
+    def run(self, sweeps: int, rng: np.random.Generator) -> tuple[Floats, ...]:
+        """Run some sweeps; returns the conditional masses averaged over chains and sweeps."""
+        masses = [np.zeros(len(nodes)) for nodes in self.grid.logs]
+        first = self.grid.first_columns
+        for _ in range(sweeps):
+            for place, prior in enumerate(self.grid.prior_mass):
+                columns = first[place] + np.arange(len(prior))
+                log_evidence = conditional_log_evidence(self.reduction, self.choices + first, place, columns)
+                density = prior * np.exp(POWER * (log_evidence - log_evidence.max(axis=1, keepdims=True)))
+                density /= density.sum(axis=1, keepdims=True)
+                masses[place] += density.mean(axis=0) / sweeps
+                self.choices[:, place] = _draw(density, rng)
+                self.log_evidence = log_evidence[np.arange(len(log_evidence)), self.choices[:, place]]
+        return tuple(masses)
+
+
+def _draw(mass: Floats, rng: np.random.Generator) -> Choices:
+    """One node for every row of (C, G) masses."""
+    reached = np.cumsum(mass, axis=1)
+    column = np.sum(reached < rng.random((len(mass), 1)) * reached[:, -1:], axis=1)
+    return np.asarray(np.minimum(column, mass.shape[1] - 1), np.int64)

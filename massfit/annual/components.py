@@ -1,0 +1,240 @@
+"""Integration over noise amplitudes and drift times by importance sampling.
+
+The noise scores are proposed from a multivariate t distribution about the mode, then
+from kernel estimates of the posterior made of all draws before (population Monte Carlo:
+Cappe et al. 2004); the drift times from their joint sample at the mode. The weight of a
+component is its exact joint evidence over its proposal, so that the proposal decides on
+efficiency only. Points are quasi-random: multiples of the square roots of primes modulo
+one (Richtmyer 1951) with a random shift (Cranley & Patterson 1976).
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.special import gammaincinv, ndtri
+
+from massfit.annual.chains import DriftSample, sample_drift
+from massfit.annual.design import Design
+from massfit.annual.evidence import (
+    ANNUAL,
+    annual_covariance,
+    compress,
+    fixed_variance,
+    reduce_columns,
+    solve_choices,
+)
+from massfit.annual.mode import Mode
+from massfit.annual.noise import NoisePriors, log_score_prior
+
+Floats = NDArray[np.float64]
+Choices = NDArray[np.int64]
+
+NODES_PER_ROUND = 64
+"""Noise models tried about the mode, and then about the better ones of all before."""
+
+LEAST_ROUNDS, MOST_ROUNDS = 4, 8
+
+EFFECTIVE_NODES = 60.0
+"""Rounds end when so many noise models count."""
+
+PROPOSAL_DEGREES = 5
+"""Degrees of freedom of the proposal: tails heavier than those of the posterior, which falls
+exponentially towards vanishing amplitudes."""
+
+PROPOSAL_WIDENING = 1.3
+"""Factor on the covariance of the proposal."""
+
+PRIMES = (2, 3, 5, 7, 11, 13, 17, 19, 23, 29, 31, 37, 41, 43, 47, 53, 59, 61, 67, 71)
+
+
+@dataclass(frozen=True)
+class Components:
+    """Exact linear solutions at K weighted choices of noise and drift times.
+
+    Parameters
+    ----------
+    weight : (K,) array
+        Sums to 1.
+    node : (K,) array of int
+        Row of `scores`.
+    scores : (S, J + 1) array
+    time_constants : (K, D) array
+        Days.
+    annual : (K, 2, 1 + M) array
+        Annual phasor of the data, and the response of the same operator to each contrast, Pa.
+    annual_covariance : (K, 2, 2) array
+        Pa^2.
+    mean, variance : (K, f) array
+        Fixed coefficients.
+    size, size_variance : (K, D) array
+        Exponentials.
+    """
+
+    weight: Floats
+    node: Choices
+    scores: Floats
+    time_constants: Floats
+    annual: Floats
+    annual_covariance: Floats
+    mean: Floats
+    variance: Floats
+    size: Floats
+    size_variance: Floats
+
+    @property
+    def node_weight(self) -> Floats:
+        """Posterior weight of each noise model: (S,)."""
+        return np.asarray(np.bincount(self.node, self.weight, len(self.scores)), float)
+
+    @property
+    def effective_sample_size(self) -> float:
+        """Of the noise models, the coarser of the two integrations (Kong 1992)."""
+        return float(1.0 / np.sum(self.node_weight**2))
+
+
+def integrate(design: Design, noise: NoisePriors, mode: Mode, rng: np.random.Generator) -> Components:
+    """Weighted components over noise amplitudes and drift times.
+
+    Parameters
+    ----------
+    design : Design
+    noise : NoisePriors
+    mode : Mode
+    rng : numpy.random.Generator
+
+    Returns
+    -------
+    Components
+    """
+    sample = sample_drift(noise.covariance(design.days, mode.scores), design, mode.grid, rng)
+    exponentials = compress(design.exponentials(sample.grid.time_constants), sample.grid.first_columns)
+    start = _Proposal(mode.scores[None, :], np.ones(1), PROPOSAL_WIDENING * mode.spread)
+    proposals, nodes, batches = [start], np.zeros((0, len(mode.scores))), []
+    while True:
+        new = proposals[-1].draw(NODES_PER_ROUND, rng)
+        batches += [_solve(design, noise, sample, exponentials, node, row) for row, node in enumerate(new, len(nodes))]
+        nodes = np.concatenate([nodes, new])
+        # balance heuristic (Veach & Guibas 1995): every node is weighed against the mixture of all proposals
+        log_proposal = np.logaddexp.reduce([proposal.log_density(nodes) for proposal in proposals])
+        log_weight = np.array([batch.log_total for batch in batches]) - log_proposal
+        weight = np.exp(log_weight - log_weight.max())
+        effective = weight.sum() ** 2 / np.sum(weight**2)
+        if len(proposals) >= LEAST_ROUNDS and (effective > EFFECTIVE_NODES or len(proposals) == MOST_ROUNDS):
+            return _collect(nodes, batches, log_proposal)
+        # rare noisy models carry much of the variance: they are visited more often than their weight asks
+        proposals.append(_adapted(nodes, weight * [batch.sigma for batch in batches], start))
+
+
+class _Proposal:
+    """Mixture of multivariate t distributions of one shape."""
+
+    def __init__(self, centres: Floats, weight: Floats, covariance: Floats) -> None:
+        self.centres, self.weight, self.covariance = centres, weight, covariance
+        self.root = np.linalg.cholesky(covariance)
+
+    def draw(self, count: int, rng: np.random.Generator) -> Floats:
+        """Draws of the scores: (count, J + 1)."""
+        points = _points(count, len(self.root) + 2, rng)
+        centres = np.searchsorted(np.cumsum(self.weight), points[:, 0] * self.weight.sum())
+        gamma = gammaincinv(PROPOSAL_DEGREES / 2.0, points[:, 1:2])
+        away = ndtri(points[:, 2:]) / np.sqrt(2.0 * gamma / PROPOSAL_DEGREES)
+        return np.asarray(self.centres[np.minimum(centres, len(self.weight) - 1)] + away @ self.root.T)
+
+    def log_density(self, values: Floats) -> Floats:
+        """Log density without the constant that all proposals share: (S, J + 1) to (S,)."""
+        size, degrees = self.centres.shape[1], PROPOSAL_DEGREES
+        white = np.linalg.solve(self.root, values.T)
+        white_centres = np.linalg.solve(self.root, self.centres.T)
+        distance = np.sum((white[:, :, None] - white_centres[:, None, :]) ** 2, axis=0)
+        kernel = (1.0 + distance / degrees) ** (-0.5 * (degrees + size))
+        return np.asarray(np.log(kernel @ self.weight) - np.log(np.diag(self.root)).sum())
+
+
+def _adapted(nodes: Floats, weight: Floats, start: _Proposal) -> _Proposal:
+    """Kernel estimate of the posterior from the nodes so far: it follows bent ridges."""
+    weight = weight / weight.sum()
+    away = nodes - weight @ nodes
+    found = (weight[:, None] * away).T @ away
+    # few effective nodes say little about a covariance: it is drawn to the curvature at the mode
+    effective, size = 1.0 / np.sum(weight**2), nodes.shape[1]
+    trust = effective / (effective + 2.0 * size)
+    # kernel width after Silverman (1986)
+    width = (4.0 / (effective * (size + 2.0))) ** (2.0 / (size + 4.0))
+    covariance = min(width, 1.0) * (trust * found + (1.0 - trust) * start.covariance)
+    return _Proposal(nodes, weight, covariance)
+
+
+def _points(count: int, dimensions: int, rng: np.random.Generator) -> Floats:
+    steps = np.sqrt(np.array(PRIMES[:dimensions], float))
+    points = (rng.random(dimensions) + np.outer(np.arange(1, count + 1), steps)) % 1.0
+    # the open interval, for the inverse distribution functions
+    return np.clip(points, 1e-12, 1.0 - 1e-12)
+
+
+@dataclass(frozen=True)
+class _Batch:
+    """All drift-time choices of one noise model."""
+
+    log_weight: Floats
+    time_constants: Floats
+    annual: Floats
+    annual_covariance: Floats
+    mean: Floats
+    variance: Floats
+    size: Floats
+    size_variance: Floats
+
+    @property
+    def log_total(self) -> float:
+        return float(np.logaddexp.reduce(self.log_weight))
+
+    @property
+    def sigma(self) -> float:
+        """Typical sigma of the annual phasor, Pa."""
+        weight = np.exp(self.log_weight - self.log_weight.max())
+        variance = np.trace(self.annual_covariance, axis1=1, axis2=2)
+        return float(np.sqrt(weight @ variance / weight.sum()))
+
+
+def _solve(
+    design: Design,
+    noise: NoisePriors,
+    sample: DriftSample,
+    exponentials: tuple[Floats, Floats],
+    scores: Floats,
+    row: int,
+) -> _Batch:
+    """All drift-time choices of one set for one noise model."""
+    choices = sample.choices[row % len(sample.choices)]
+    log_ratio = sample.log_ratio[row % len(sample.choices)]
+    reduction = reduce_columns(noise.covariance(design.days, scores), design, *exponentials)
+    solutions = solve_choices(reduction, choices + sample.grid.first_columns)
+    times = [own[nodes] for own, nodes in zip(sample.grid.time_constants, choices.T, strict=True)]
+    return _Batch(
+        log_weight=solutions.log_evidence + log_ratio + log_score_prior(scores),
+        time_constants=np.array(times).T.reshape(choices.shape),
+        annual=solutions.mean[:, ANNUAL],
+        annual_covariance=annual_covariance(reduction, solutions),
+        mean=solutions.mean[:, :, 0],
+        variance=fixed_variance(reduction, solutions),
+        size=solutions.size[:, :, 0],
+        size_variance=np.diagonal(solutions.size_covariance, axis1=1, axis2=2),
+    )
+
+
+def _collect(nodes: Floats, batches: list[_Batch], log_proposal: Floats) -> Components:
+    log_weight = np.concatenate([batch.log_weight - log for batch, log in zip(batches, log_proposal, strict=True)])
+    weight = np.exp(log_weight - log_weight.max())
+    return Components(
+        weight=weight / weight.sum(),
+        node=np.repeat(np.arange(len(nodes)), [len(batch.log_weight) for batch in batches]),
+        scores=nodes,
+        time_constants=np.concatenate([batch.time_constants for batch in batches]),
+        annual=np.concatenate([batch.annual for batch in batches]),
+        annual_covariance=np.concatenate([batch.annual_covariance for batch in batches]),
+        mean=np.concatenate([batch.mean for batch in batches]),
+        variance=np.concatenate([batch.variance for batch in batches]),
+        size=np.concatenate([batch.size for batch in batches]),
+        size_variance=np.concatenate([batch.size_variance for batch in batches]),
+    )

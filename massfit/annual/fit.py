@@ -1,0 +1,279 @@
+"""Drift, noise and annual phasor of one site, together.
+
+The model of the daily means y of one site, and the priors, are written out in
+docs/theory/annual.md. Everything linear is solved exactly; noise amplitudes and drift
+time constants are integrated, never plugged in.
+"""
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from massfit.annual.components import Components, integrate
+from massfit.annual.design import (
+    SHARED_COLUMNS,
+    Design,
+    DriftColumns,
+    build_design,
+    exponential_columns,
+    mean_circulation,
+)
+from massfit.annual.mode import joint_mode
+from massfit.annual.noise import NoisePriors
+from massfit.annual.operator import model_noise, phasor_operator, year_shares
+from massfit.annual.parts import merge_components
+from massfit.annual.record import ReducedRecord, check_records
+from massfit.settings import Priors
+
+Floats = NDArray[np.float64]
+
+
+@dataclass(frozen=True)
+class Estimate:
+    """Posterior mean and standard deviation of one number.
+
+    Parameters
+    ----------
+    mean, sd : float
+    """
+
+    mean: float
+    sd: float
+
+
+@dataclass(frozen=True)
+class NoiseFit:
+    """Noise of one site.
+
+    Parameters
+    ----------
+    time_scales_days : tuple of float
+        Of the Ornstein-Uhlenbeck terms.
+    red : tuple of Estimate
+        Their standard deviations, Pa.
+    white : Estimate
+        Standard deviation of the white noise of a daily mean, Pa.
+    """
+
+    time_scales_days: tuple[float, ...]
+    red: tuple[Estimate, ...]
+    white: Estimate
+
+
+@dataclass(frozen=True)
+class DriftFit:
+    """Drift of one deployment.
+
+    Parameters
+    ----------
+    deployment : str
+    time : (n,) array of datetime64[ns]
+    drift : (n,) array
+        Posterior mean of level, slope, exponential and steps, Pa.
+    reduced : (n,) array
+        Record minus the mean of the models minus `drift`, Pa; the annual cycle is in it.
+    slope : Estimate or None
+        Pa per Julian year.
+    exponential : Estimate or None
+        Size at the start of the deployment, Pa.
+    time_constant_days : Estimate or None
+    steps : tuple of (datetime64, Estimate)
+        Declared steps that have data on both sides, and their sizes, Pa.
+    """
+
+    deployment: str
+    time: NDArray[np.datetime64]
+    drift: Floats
+    reduced: Floats
+    slope: Estimate | None
+    exponential: Estimate | None
+    time_constant_days: Estimate | None
+    steps: tuple[tuple[np.datetime64, Estimate], ...]
+
+
+@dataclass(frozen=True)
+class SiteFit:
+    """What one site says about its annual phasor, and what else was found.
+
+    Parameters
+    ----------
+    site : str
+    models : tuple of str
+        Circulation models subtracted; may be empty.
+    weight : (K,) array
+        Weights of the Gaussian parts; sum to 1.
+    phasor : (K, max(M, 1), 2) array
+        In phase and quadrature of every part for each model subtracted, Pa.
+    covariance : (K, 2, 2) array
+        Of each part, Pa^2; shared by all models.
+    model_noise : (2, 2) array
+        Covariance of each model's own weather at the annual line (D_s), Pa^2.
+    reduced_sd : float
+        Standard deviation of the daily residuals with drift, steps, mean model, annual and
+        semi-annual cycle taken off, Pa.
+    days : int
+        Distinct days used.
+    effective_sample_size : float
+        Of the noise models behind the parts.
+    noise : NoiseFit
+    drifts : tuple of DriftFit
+        One per deployment.
+    year_share : mapping of int to float
+        Share of each calendar year in the phasor; sums to 1.
+    notes : tuple of str
+        What was left out, and why.
+    """
+
+    site: str
+    models: tuple[str, ...]
+    weight: Floats
+    phasor: Floats
+    covariance: Floats
+    model_noise: Floats
+    reduced_sd: float
+    days: int
+    effective_sample_size: float
+    noise: NoiseFit
+    drifts: tuple[DriftFit, ...]
+    year_share: Mapping[int, float]
+    notes: tuple[str, ...] = ()
+
+    def single_gaussian(self) -> tuple[Floats, Floats]:
+        """Mean (max(M, 1), 2) and covariance (2, 2) of the whole mixture, Pa and Pa^2."""
+        mean = np.einsum("k,kmc->mc", self.weight, self.phasor)
+        away = self.phasor.mean(axis=1) - mean.mean(axis=0)
+        within = np.einsum("k,kij->ij", self.weight, self.covariance)
+        return mean, within + np.einsum("k,ki,kj->ij", self.weight, away, away)
+
+
+def fit_site(
+    records: Sequence[ReducedRecord],
+    *,
+    models: Sequence[str],
+    reference_year: int,
+    rng: np.random.Generator,
+    priors: Priors = Priors(),  # noqa: B008 (frozen)
+    site: str = "",
+) -> SiteFit:
+    """Fit drift, noise and annual phasor of one site together.
+
+    Noise and drift are estimated once, on the record minus the mean of the models; the
+    same linear operator then acts on every single subtraction.
+
+    Parameters
+    ----------
+    records : sequence of ReducedRecord
+        The deployments, in any order; they may overlap.
+    models : sequence of str
+        Names of the circulation models, in the order of each record's `circulation`.
+    reference_year : int
+        Phases count from 1 January 00:00 UTC of this year.
+    rng : numpy.random.Generator
+    priors : Priors
+    site : str
+        Name, for the result and for messages.
+
+    Returns
+    -------
+    SiteFit
+
+    Raises
+    ------
+    InputError
+        Shapes that do not match, missing values, times that do not increase, a start after
+        the first day, an unknown form of drift, repeated labels, or fewer than 90 days.
+
+    Examples
+    --------
+    Two years of an invented record, in Pa, with a 40 Pa cycle that peaks with the year:
+
+    >>> rng = np.random.default_rng(1)
+    >>> days = np.arange(730)
+    >>> pressure = 40 * np.cos(2 * np.pi * days / 365.2422) - 900 * np.exp(-days / 50) + rng.normal(0, 5, 730)
+    >>> time = np.datetime64("2016-01-01", "ns") + days * np.timedelta64(1, "D")
+    >>> record = ReducedRecord("one", time, pressure, np.empty((0, 730)), time[0])
+    >>> fit = fit_site([record], models=[], reference_year=2016, rng=rng)
+    >>> mean, covariance = fit.single_gaussian()
+    >>> bool(abs(mean[0, 0] - 40) < 3 * np.sqrt(covariance[0, 0]))
+    True
+    """
+    check_records(records, models, site)
+    design = build_design(records, reference_year=reference_year, priors=priors)
+    noise = NoisePriors.of(priors)
+    mode = joint_mode(design, noise)
+    components = integrate(design, noise, mode, rng)
+    operator = phasor_operator(noise.covariance(design.days, mode.scores), design, mode.grid.mode)
+    parts = merge_components(components)
+    return SiteFit(
+        site=site,
+        models=tuple(models),
+        weight=parts.weight,
+        # L(y) - L(q_m) = L(y - mean q) - L(q_m - mean q)
+        phasor=parts.phasor[:, :1] - parts.phasor[:, 1:] if len(models) else parts.phasor,
+        covariance=parts.covariance,
+        model_noise=model_noise(design, noise, operator),
+        reduced_sd=_residual_sd(design, components),
+        days=len(np.unique(design.days)),
+        effective_sample_size=components.effective_sample_size,
+        noise=_noise_fit(noise, components),
+        drifts=tuple(
+            _drift_fit(record, design, drift, components) for record, drift in zip(records, design.drifts, strict=True)
+        ),
+        year_share=year_shares(design, operator, reference_year),
+        notes=design.notes,
+    )
+
+
+def _estimate(weight: Floats, mean: Floats, variance: Floats | float = 0.0) -> Estimate:
+    """Moments of a mixture of one number."""
+    centre = float(weight @ mean)
+    return Estimate(centre, float(np.sqrt(weight @ ((mean - centre) ** 2 + variance))))
+
+
+def _noise_fit(noise: NoisePriors, components: Components) -> NoiseFit:
+    amplitudes = noise.amplitudes(components.scores)
+    estimates = [_estimate(components.node_weight, amplitude) for amplitude in amplitudes.T]
+    return NoiseFit(tuple(noise.time_scales.tolist()), tuple(estimates[:-1]), estimates[-1])
+
+
+def _drift_curve(design: Design, drift: DriftColumns, components: Components) -> Floats:
+    """Posterior mean of one deployment's drift on its own days, level as in the centred data: (n,)."""
+    columns = np.array(drift.fixed)
+    curve = design.fixed[np.ix_(drift.rows, columns)] @ (components.weight @ components.mean[:, columns])
+    if drift.exponential is not None:
+        times, place = np.unique(components.time_constants[:, drift.exponential], return_inverse=True)
+        sizes = np.bincount(place, components.weight * components.size[:, drift.exponential])
+        curve = curve + exponential_columns(design.elapsed[drift.rows], times) @ sizes
+    return np.asarray(curve)
+
+
+def _drift_fit(record: ReducedRecord, design: Design, drift: DriftColumns, components: Components) -> DriftFit:
+    def fixed(column: int) -> Estimate:
+        return _estimate(components.weight, components.mean[:, column], components.variance[:, column])
+
+    data = record.pressure - mean_circulation(record)
+    curve = _drift_curve(design, drift, components) + data.mean()
+    exponential = time_constant = None
+    if drift.exponential is not None:
+        place = drift.exponential
+        exponential = _estimate(components.weight, components.size[:, place], components.size_variance[:, place])
+        time_constant = _estimate(components.weight, components.time_constants[:, place])
+    return DriftFit(
+        deployment=record.deployment,
+        time=record.time,
+        drift=curve,
+        reduced=data - curve,
+        slope=None if drift.slope is None else fixed(drift.slope),
+        exponential=exponential,
+        time_constant_days=time_constant,
+        steps=tuple((time, fixed(column)) for time, column in zip(drift.step_times, drift.steps, strict=True)),
+    )
+
+
+def _residual_sd(design: Design, components: Components) -> float:
+    residual = design.data - design.fixed[:, :SHARED_COLUMNS] @ (components.weight @ components.mean)[:SHARED_COLUMNS]
+    for drift in design.drifts:
+        residual[drift.rows] -= _drift_curve(design, drift, components)
+    return float(residual.std())

@@ -1,0 +1,119 @@
+"""The linear operator that turns a site's record into its annual phasor."""
+
+import numpy as np
+from numpy.typing import NDArray
+
+from massfit.annual.design import Design
+from massfit.annual.evidence import ANNUAL, linear_fit
+from massfit.annual.mode import minimise
+from massfit.annual.noise import NoiseCovariance, NoisePriors, log_score_prior
+from massfit.constants import JULIAN_YEAR_DAYS
+from massfit.phasor import annual_basis
+
+Floats = NDArray[np.float64]
+
+
+def phasor_operator(noise: NoiseCovariance, design: Design, time_constants: Floats) -> Floats:
+    """Weights L of the observations: annual phasor = L y.
+
+    Parameters
+    ----------
+    noise : NoiseCovariance
+    design : Design
+    time_constants : (D,) array
+        Of the exponentials, days.
+
+    Returns
+    -------
+    (2, n) array
+        Annual rows of (X' V^-1 X + P)^-1 X' V^-1.
+    """
+    exponentials = design.exponentials([np.array([time]) for time in time_constants])
+    columns = np.column_stack([design.fixed, exponentials])
+    precision = np.append(design.precision, np.full(len(time_constants), design.exponential_sd**-2))
+    weighted = noise.solve(columns)
+    inverse = np.linalg.inv(columns.T @ weighted + np.diag(precision))
+    return np.asarray(inverse[ANNUAL] @ weighted.T)
+
+
+def model_noise(design: Design, noise: NoisePriors, operator: Floats) -> Floats:
+    """Covariance D_s of each model's own weather at the annual line.
+
+    The M models give M - 1 orthonormal contrasts, each with the covariance of one
+    model; the noise of the site's family is fitted to them together (its mode), with a
+    level, a slope and the two harmonics of their own, and passed through the operator.
+
+    Parameters
+    ----------
+    design : Design
+    noise : NoisePriors
+    operator : (2, n) array
+        From :func:`phasor_operator`.
+
+    Returns
+    -------
+    (2, 2) array
+        Pa^2; zero for fewer than two models.
+    """
+    models = design.contrasts.shape[1]
+    if models < 2:
+        return np.zeros((2, 2))
+    days, first, place = np.unique(design.days, return_index=True, return_inverse=True)
+    contrasts = design.contrasts[first] @ orthonormal_contrasts(models)
+    if not contrasts.any():
+        return np.zeros((2, 2))
+    centred = (days - days.mean()) / JULIAN_YEAR_DAYS
+    columns = np.column_stack([np.ones_like(days), centred, annual_basis(days), annual_basis(days, harmonic=2)])
+
+    def negative_log_posterior(scores: Floats) -> float:
+        covariance = noise.covariance(days, scores)
+        fit = linear_fit(covariance.whiten(columns), covariance.whiten(contrasts), np.zeros(columns.shape[1]))
+        determinants = (models - 1) * (covariance.log_determinant + fit.log_determinant)
+        return float(0.5 * (determinants + fit.misfit.sum()) - log_score_prior(scores))
+
+    scores = minimise(negative_log_posterior, np.zeros(len(noise.scales)))
+    merged = np.zeros((2, len(days)))
+    for row, weights in zip(merged, operator, strict=True):
+        np.add.at(row, place, weights)
+    return np.asarray(merged @ noise.covariance(days, scores).multiply(merged.T.copy()))
+
+
+def orthonormal_contrasts(count: int) -> Floats:
+    """Helmert contrasts: (count, count - 1), columns orthonormal and summing to zero.
+
+    Examples
+    --------
+    >>> orthonormal_contrasts(2).round(4)
+    array([[-0.7071],
+           [ 0.7071]])
+    """
+    # contrast i sets model i + 1 against the mean of those before it
+    contrasts = np.triu(np.full((count, count - 1), -1.0))
+    order = np.arange(1, count)
+    contrasts[order, order - 1] = order
+    return np.asarray(contrasts / np.sqrt(order * (order + 1.0)))
+
+
+def year_shares(design: Design, operator: Floats, reference_year: int) -> dict[int, float]:
+    """Share of each calendar year in the annual phasor of a site.
+
+    The operator returns an annual cycle unchanged, so that its responses to the cycle of
+    one year at a time sum to the identity; the share is half their trace. It can be
+    slightly negative for a year of a few days.
+
+    Parameters
+    ----------
+    design : Design
+    operator : (2, n) array
+    reference_year : int
+
+    Returns
+    -------
+    dict of int to float
+        Sums to 1.
+    """
+    dates = np.datetime64(f"{reference_year:04d}-01-01T00:00", "m") + np.round(design.days * 1440).astype("m8[m]")
+    years = dates.astype("datetime64[Y]").astype(int) + 1970
+    cycle = annual_basis(design.days)
+    share = 0.5 * np.einsum("in,ni->n", operator, cycle)
+    return {int(year): float(share[years == year].sum()) for year in np.unique(years)}

@@ -1,0 +1,96 @@
+"""One deployment as the fit of the annual cycle receives it."""
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+from typing import get_args
+
+import numpy as np
+from numpy.typing import NDArray
+
+from massfit.errors import Fault, InputError
+from massfit.settings import DriftForm
+
+LEAST_DAYS = 90
+"""Distinct days a site must have. Recorders serve periods of about a year or less (common practice): with a
+quarter of it, level, drift and two harmonics are still solvable, and the sigma says how badly."""
+
+
+@dataclass(frozen=True)
+class ReducedRecord:
+    """Daily means of one deployment with tides and the common corrections taken off.
+
+    Parameters
+    ----------
+    deployment : str
+        Label, unique at its site.
+    time : (n,) array of datetime64[ns]
+        Middle of each day, UTC; strictly increasing, gaps allowed.
+    pressure : (n,) array
+        Pa; any constant may be added.
+    circulation : (M, n) array
+        Bottom pressure of each circulation model on the same days, Pa, without NaN; M may be 0.
+    start : datetime64
+        First instant of the deployment, the origin of its drift.
+    drift : str
+        "exponential+linear", "linear" or "none".
+    steps : tuple of datetime64
+        Declared changes of level; a new level begins at each.
+    """
+
+    deployment: str
+    time: NDArray[np.datetime64]
+    pressure: NDArray[np.float64]
+    circulation: NDArray[np.float64]
+    start: np.datetime64
+    drift: str = "exponential+linear"
+    steps: tuple[np.datetime64, ...] = ()
+
+
+def check_records(records: Sequence[ReducedRecord], models: Sequence[str], site: str) -> None:
+    """Check the records of one site against each other and the models named.
+
+    Parameters
+    ----------
+    records : sequence of ReducedRecord
+    models : sequence of str
+    site : str
+        Named in the faults.
+
+    Raises
+    ------
+    InputError
+        One fault for everything that is wrong.
+    """
+    source = site or "records"
+    faults = [fault for record in records for fault in _record_faults(source, record, len(models))]
+    names = [record.deployment for record in records]
+    repeated = sorted({name for name in names if names.count(name) > 1})
+    faults += [Fault(source, name, "two deployments have this label", "Labels must differ") for name in repeated]
+    days = len(np.unique(np.concatenate([record.time for record in records]))) if records else 0
+    if days < LEAST_DAYS:
+        problem = f"{days} days cannot tell an annual cycle from drift"
+        faults.append(Fault(source, "time", problem, f"At least {LEAST_DAYS} days are needed", "Leave the site out"))
+    if faults:
+        raise InputError(faults)
+
+
+def _record_faults(source: str, record: ReducedRecord, models: int) -> Iterator[Fault]:
+    count, name = len(record.time), record.deployment
+    if count == 0 or np.shape(record.pressure) != (count,):
+        problem = f"{count} times, pressure of shape {np.shape(record.pressure)}"
+        yield Fault(source, name, problem, "One pressure per time, at least one")
+        return
+    if np.shape(record.circulation) != (models, count):
+        problem = f"circulation has shape {np.shape(record.circulation)} for {models} models and {count} times"
+        yield Fault(source, name, problem, f"Must be {(models, count)}")
+    for label, values in (("pressure", record.pressure), ("circulation", record.circulation)):
+        missing = int(np.sum(~np.isfinite(values)))
+        if missing:
+            yield Fault(source, name, f"{missing} values of {label} are missing", action="Leave those days out")
+    if np.any(np.diff(record.time) <= np.timedelta64(0)):
+        yield Fault(source, name, "times do not increase", "Every time must be later than the one before")
+    if record.start > record.time[0]:
+        problem = f"start {record.start} is after the first time {record.time[0]}"
+        yield Fault(source, name, problem, "The drift begins with the deployment or before")
+    if record.drift not in get_args(DriftForm):
+        yield Fault(source, name, f"drift is {record.drift!r}", f"Must be one of {get_args(DriftForm)}")
