@@ -38,8 +38,8 @@ def check_choices(reading: Reading, sections: Sections) -> None:
     if fingerprint is not None:
         _check_fingerprint(reading, fingerprint, corrections)
     entries = [(table.path, table.entry) for table in sections.sites if table.entry is not None]
-    _check_unique(reading, [((*path, "id"), entry.id) for path, entry in entries])
-    _check_unique(reading, [((*path, "name"), entry.name) for path, entry in sections.circulation])
+    check_unique(reading, [((*path, "id"), entry.id) for path, entry in entries])
+    check_unique(reading, [((*path, "name"), entry.name) for path, entry in sections.circulation])
     for path, entry in entries:
         _check_place(reading, path, entry)
         _check_exclusions(reading, path, entry)
@@ -52,9 +52,15 @@ def check_choices(reading: Reading, sections: Sections) -> None:
                 reading.fault((*path, "air_pressure"), problem, allowed, "Add the file of surface air pressure")
 
 
-def check_loads(reading: Reading, named: Iterable[tuple[KeyPath, str]]) -> None:
-    """Note load members that stand twice in the ensemble, by member name."""
-    _check_unique(reading, named)
+def check_unique(reading: Reading, named: Iterable[tuple[KeyPath, str]]) -> None:
+    """Note every name that stands twice, with the line where it stood first."""
+    first: dict[str, KeyPath] = {}
+    for path, name in named:
+        if name in first:
+            line = reading.lines.get(first[name])
+            place = "" if line is None else f" (first on line {line})"
+            reading.fault(path, f'"{name}" stands twice{place}', "Must be unique", "Rename or remove one")
+        first.setdefault(name, path)
 
 
 def check_coverage(
@@ -152,7 +158,7 @@ def _check_atmosphere(reading: Reading, corrections: Corrections) -> None:
 
 def _check_fingerprint(reading: Reading, fingerprint: Fingerprint, corrections: Corrections | None) -> None:
     path: KeyPath = ("fingerprint", "loads")
-    _check_unique(reading, [((*path, position), text) for position, text in enumerate(fingerprint.loads)])
+    check_unique(reading, [((*path, position), text) for position, text in enumerate(fingerprint.loads)])
     if not fingerprint.rotational_feedback:
         return
     if corrections is not None and corrections.pole_tide == "observed":
@@ -161,16 +167,6 @@ def _check_fingerprint(reading: Reading, fingerprint: Fingerprint, corrections: 
     else:
         problem, allowed = "the value is true", "Rotational feedback is not available in this version"
     reading.fault(("fingerprint", "rotational_feedback"), problem, allowed, "Set it to false")
-
-
-def _check_unique(reading: Reading, named: Iterable[tuple[KeyPath, str]]) -> None:
-    first: dict[str, KeyPath] = {}
-    for path, name in named:
-        if name in first:
-            line = reading.lines.get(first[name])
-            place = "" if line is None else f" (first on line {line})"
-            reading.fault(path, f'"{name}" stands twice{place}', "Must be unique", "Rename or remove one")
-        first.setdefault(name, path)
 
 
 def _check_place(reading: Reading, path: KeyPath, entry: SiteEntry) -> None:

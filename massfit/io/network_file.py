@@ -10,7 +10,7 @@ from massfit.fingerprint.pattern import LoadPattern
 from massfit.io.circulation_file import read_circulation
 from massfit.io.fields import read_air_pressure, read_atmosphere_load, read_loads
 from massfit.io.locate import KeyPath
-from massfit.io.network_checks import check_choices, check_coverage, check_length, check_loads
+from massfit.io.network_checks import check_choices, check_coverage, check_length, check_unique
 from massfit.io.reading import Reading, open_reading
 from massfit.io.record_file import read_record
 from massfit.io.schema import CirculationEntry
@@ -79,6 +79,8 @@ def _records(reading: Reading, sections: Sections) -> tuple[Record, ...]:
     frame = sections.settings["network"]
     records: list[Record] = []
     days: set[int] = set()
+    if frame is not None and frame.start is not None and frame.end is not None and frame.start > frame.end:
+        frame = None  # a fault already; no days can be counted
     all_read = frame is not None
     for table in sections.sites:
         site = None if table.entry is None else table.entry.site()
@@ -115,15 +117,15 @@ def _loads(reading: Reading, sections: Sections) -> tuple[LoadPattern, ...]:
     if frame is None or fingerprint is None:
         return ()
     named: list[tuple[KeyPath, LoadPattern]] = []
-    for position, text in enumerate(fingerprint.loads):
-        path: KeyPath = ("fingerprint", "loads", position)
+    for text in dict.fromkeys(fingerprint.loads):
+        path: KeyPath = ("fingerprint", "loads", fingerprint.loads.index(text))
         patterns: tuple[LoadPattern, ...] | None = None
         if text.startswith(_BUILTIN):
             patterns = _builtin(reading, path, text.removeprefix(_BUILTIN))
         elif (file := reading.find(path, text)) is not None:
             patterns = reading.attempt(read_loads, file, reference_year=frame.reference_year, source=text)
         named += [(path, pattern) for pattern in patterns or ()]
-    check_loads(reading, [(path, pattern.name) for path, pattern in named])
+    check_unique(reading, [(path, pattern.name) for path, pattern in named])
     return tuple(pattern for _, pattern in named)
 
 

@@ -7,7 +7,6 @@ import numpy as np
 from pydantic import ConfigDict, Field
 from pydantic.dataclasses import dataclass
 
-from massfit.io.deployment import DeploymentFile
 from massfit.settings import Corrections, Fingerprint, Frame, PosteriorSettings, Priors
 from massfit.site import Interval, Site
 
@@ -116,9 +115,6 @@ SETTINGS = {
     "priors": Priors,
 }
 """Sections that are settings, by name."""
-
-ENTRIES = {"site": SiteEntry, "circulation": CirculationEntry, "deployment": DeploymentFile}
-"""Arrays of tables; deployments lie inside a site."""
 
 SECTIONS = (*SETTINGS, "site", "circulation", "gravity")
 """Every name that may stand at the top of a network file."""

@@ -23,6 +23,8 @@ _ALLOWED = {
     "float_type": "a number",
     "bool_type": "true or false",
     "tuple_type": "a list",
+    "too_short": "a longer list",
+    "too_long": "a shorter list",
     "dataclass_type": "a table",
     "date_type": "a date such as 2016-03-01",
     "date_parsing": "a date such as 2016-03-01",
@@ -107,7 +109,7 @@ def parse_table(reading: Reading, kind: type[_T], table: dict[str, Any], path: K
 
 def shown(value: object) -> str:
     """Write a value as the network file would, shortened."""
-    text = json.dumps(value, default=_iso, ensure_ascii=False)
+    text = json.dumps(value, default=_iso, ensure_ascii=False).replace("Infinity", "inf")
     return text if len(text) <= 60 else text[:57] + "..."
 
 
@@ -177,8 +179,13 @@ def _note_errors(
     reading: Reading, kind: type, table: dict[str, Any], path: KeyPath, errors: list[ErrorDetails]
 ) -> None:
     by_place: dict[KeyPath, list[ErrorDetails]] = {}
+    unknown = [_place(table, error) for error in errors if error["type"] == "unexpected_keyword_argument"]
     for error in errors:
-        by_place.setdefault(_place(table, error), []).append(error)
+        place = _place(table, error)
+        siblings = [str(other[-1]) for other in unknown if other[:-1] == place[:-1]]
+        # a key that is missing because it is misspelled is one fault, not two
+        if error["type"] != "missing" or nearest(str(place[-1]), siblings) is None:
+            by_place.setdefault(place, []).append(error)
     for place, found in by_place.items():
         # a value that fits no member of a union fails once a member: the deepest failure is the meant one
         if not any(other != place and other[: len(place)] == place for other in by_place):

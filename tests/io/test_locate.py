@@ -7,7 +7,6 @@ import pytest
 
 from massfit.io.locate import KeyPath, locate_keys, nearest_line
 
-
 SCALARS = [
     "1", "-2.5e3", "true", "inf", "2016-03-01", "2016-03-01 12:00:00Z", "12:30:00", '"text"', "'C:\\path'", '""',
     '"[not # a = table]"', '"a \\" b"', '"""one line"""', '""""two" quotes"""""', "'''it's'''", "''''''", '""""""',

@@ -1,0 +1,150 @@
+"""Load patterns: the phasor of monthly means, the part of a cell that a load counts for, and grids."""
+
+from pathlib import Path
+
+import numpy as np
+import pytest
+import xarray as xr
+
+from massfit.constants import ANNUAL_RATE
+from massfit.errors import InputError
+from massfit.fingerprint.ocean import OceanFunction
+from massfit.io.fields import month_phasor, read_air_pressure, read_atmosphere_load, read_loads
+
+LATITUDE, LONGITUDE = np.arange(-85.0, 90.0, 10.0), np.arange(5.0, 360.0, 10.0)
+TRUTH = 30.0 * np.exp(1.3j)
+MASS = {"units": "kg m-2"}
+
+
+def monthly_means(year: int, phasor: complex, semi_annual: complex, offset: float) -> np.ndarray:
+    """Averages over calendar months by brute force, 1000 points a day."""
+    origin = np.datetime64(f"{year}-01-01")
+    means = []
+    for month in range(1, 13):
+        edges = [np.datetime64(f"{year}-{month:02d}") + np.timedelta64(k, "M") for k in (0, 1)]
+        first, last = ((edge.astype("datetime64[D]") - origin).astype(int) for edge in edges)
+        days = first + (np.arange((last - first) * 1000) + 0.5) / 1000
+        wave = phasor * np.exp(-1j * ANNUAL_RATE * days) + semi_annual * np.exp(-2j * ANNUAL_RATE * days)
+        means.append(offset + wave.real.mean())
+    return np.array(means)
+
+
+@pytest.mark.parametrize("year", [2015, 2016])
+def test_the_phasor_of_monthly_means(year: int) -> None:
+    means = monthly_means(year, TRUTH, 9.0 - 4.0j, 50.0)
+    # closed form inverted against brute-force averages; the rest is their midpoint-rule error
+    assert complex(month_phasor(xr.DataArray(means, dims="month"), year)) == pytest.approx(TRUTH, rel=1e-7)
+
+
+def test_the_control_naive_fit_is_attenuated() -> None:
+    # an annual line loses sinc(1/12) = 0.98862 in means over a twelfth of a year: closed form;
+    # unequal months add a part that turns with the phase, which the mean over two phases removes
+    lengths = np.array([31, 28, 31, 30, 31, 30, 31, 31, 30, 31, 30, 31])
+    middles = np.cumsum(lengths) - lengths / 2.0
+    kernel = (2.0 / 12.0) * np.exp(1j * ANNUAL_RATE * middles)
+    naive = [kernel @ monthly_means(2015, turn * TRUTH, 0.0, 0.0) / (turn * TRUTH) for turn in (1.0, 1.0j)]
+    assert np.mean(naive).real == pytest.approx(0.98862, abs=1e-4)
+
+
+def phasor_file(path: Path, **changes: object) -> None:
+    values = np.full((LATITUDE.size, LONGITUDE.size), 2.0)
+    values[3, 4] = np.nan
+    options = {"lat": LATITUDE, "lon": LONGITUDE, "attributes": MASS, "file": {}, "values": values} | changes
+    data = (("latitude", "longitude"), options["values"], options["attributes"])
+    dataset = xr.Dataset(
+        {"load_in_phase": data, "load_quadrature": data},
+        {"latitude": options["lat"], "longitude": options["lon"]},
+        options["file"],
+    )
+    dataset.to_netcdf(path, engine="h5netcdf")
+
+
+def test_missing_values_are_no_load(tmp_path: Path) -> None:
+    phasor_file(tmp_path / "wet.nc", file={"references": "invented"})
+    (pattern,) = read_loads(tmp_path / "wet.nc", reference_year=2016, source="wet.nc")
+    assert (pattern.name, pattern.reference) == ("wet", "invented")
+    assert pattern.values[3, 4] == 0.0
+    assert pattern.values[3, 5] == 2.0 + 2.0j
+
+
+def test_a_load_of_land_parts_counts_for_the_land(tmp_path: Path) -> None:
+    values = np.ones((LATITUDE.size, LONGITUDE.size))
+    phasor_file(tmp_path / "land.nc", file={"load_area": "land"}, values=values)
+    (pattern,) = read_loads(tmp_path / "land.nc", reference_year=2016, source="land.nc")
+    ocean = OceanFunction.builtin()
+    width = np.radians(10.0)
+    edges = np.radians(np.arange(-90.0, 91.0, 10.0))
+    areas = 6_371_000.0**2 * np.diff(np.sin(edges))[:, None] * width * np.ones(LONGITUDE.size)
+    # the integral is the land area itself, whatever the grid
+    land_area = 4.0 * np.pi * 6_371_000.0**2 - ocean.area_m2
+    assert np.sum(areas * pattern.values.real) == pytest.approx(land_area, rel=1e-9)
+
+
+def test_a_climatology_with_members_from_north_to_south(tmp_path: Path) -> None:
+    means = monthly_means(2016, TRUTH, 0.0, 10.0)
+    scale = np.array([1.0, -2.0])[:, None, None, None]
+    north_first, west_first = LATITUDE[::-1], LONGITUDE - 180.0
+    shape = np.cos(np.radians(north_first))[:, None] * np.ones(LONGITUDE.size)
+    data = scale * means[None, :, None, None] * shape
+    order = np.roll(np.arange(12), 5)  # months may stand in any order when they are numbered
+    dataset = xr.Dataset(
+        {"load": (("member", "month", "lat", "lon"), data[:, order], MASS)},
+        {"member": ["one", "two"], "month": order + 1, "lat": north_first, "lon": west_first},
+    )
+    dataset.to_netcdf(tmp_path / "loads.nc", engine="h5netcdf")
+    first, second = read_loads(tmp_path / "loads.nc", reference_year=2016, source="loads.nc")
+    np.testing.assert_allclose(first.values, TRUTH * shape, rtol=1e-6)
+    np.testing.assert_allclose(second.values, -2.0 * first.values, rtol=1e-12)
+    assert (second.name, first.latitude_deg[0], first.longitude_deg[0]) == ("two", 85.0, -175.0)
+
+
+@pytest.mark.parametrize(
+    ("changes", "message"),
+    [
+        ({"attributes": {"units": "cm"}},
+         "w.nc: load_in_phase: the unit is 'cm'. Must be 'kg m-2'. Convert the values."),
+        ({"attributes": MASS | {"load_area": "sea"}}, "w.nc: load_area: the value is 'sea'. Must be 'cell' or 'land'."),
+        ({"lat": np.sort(LATITUDE**3 / 7225.0)}, "w.nc: lat: the cells are not equally spaced. "
+         "Must be a regular grid of cells that covers 180 degrees once. Interpolate onto a regular grid."),
+        ({"lon": LONGITUDE * 0.5}, "w.nc: lon: 36 cells of 5 degrees cover 180 degrees. "
+         "Must be a regular grid of cells that covers 360 degrees once. Pad the grid with NaN."),
+        ({"lon": np.linspace(0.0, 360.0, 36)}, "w.nc: lon: 36 cells of 10.2857 degrees cover 370.286 degrees. "
+         "Must be a regular grid of cells that covers 360 degrees once. Drop a repeated meridian."),
+        ({"values": np.full((18, 36), np.inf)}, "w.nc: load_in_phase: some values are infinite. "
+         "Must be finite, or NaN for no load."),
+    ],
+)  # fmt: skip
+def test_faults(tmp_path: Path, changes: dict[str, object], message: str) -> None:
+    phasor_file(tmp_path / "w.nc", **changes)
+    with pytest.raises(InputError) as raised:
+        read_loads(tmp_path / "w.nc", reference_year=2016, source="w.nc")
+    assert str(raised.value).splitlines()[0] == message
+
+
+def test_rows_from_pole_to_pole_are_read(tmp_path: Path) -> None:
+    latitude = np.linspace(-90.0, 90.0, 19)
+    phasor_file(tmp_path / "w.nc", lat=latitude, values=np.ones((19, 36)))
+    (pattern,) = read_loads(tmp_path / "w.nc", reference_year=2016, source="w.nc")
+    assert pattern.values.shape == (19, 36)
+
+
+def test_a_land_air_load_is_in_pascal(tmp_path: Path) -> None:
+    data = (("lat", "lon"), np.full((LATITUDE.size, LONGITUDE.size), 3.0), {"units": "hPa"})
+    dataset = xr.Dataset(
+        {"pressure_in_phase": data, "pressure_quadrature": data}, {"lat": LATITUDE, "lon": LONGITUDE}
+    )
+    dataset.to_netcdf(tmp_path / "air.nc", engine="h5netcdf")
+    pattern = read_atmosphere_load(tmp_path / "air.nc", source="air.nc")
+    assert pattern.values[0, 0] == 300.0 + 300.0j
+
+
+def test_air_pressure_is_packed_and_in_another_order(tmp_path: Path) -> None:
+    time = np.arange("2015-01-01", "2015-01-05", dtype="datetime64[D]").astype("datetime64[ns]")
+    truth = 1010.0 + np.arange(4.0)[:, None, None] + 0.01 * LATITUDE[:, None] * np.ones(LONGITUDE.size)
+    field = xr.DataArray(truth, {"time": time, "lat": LATITUDE, "lon": LONGITUDE}, ["time", "lat", "lon"])
+    field = field.transpose("lat", "lon", "time").assign_attrs(units="mbar").rename("air")
+    packing = {"dtype": "int16", "scale_factor": 0.01, "add_offset": 1000.0, "_FillValue": -32768}
+    field.to_netcdf(tmp_path / "air.nc", engine="h5netcdf", encoding={"air": packing})
+    read = read_air_pressure(tmp_path / "air.nc", source="air.nc")
+    assert read.dims == ("time", "lat", "lon")
+    np.testing.assert_allclose(read, 100.0 * truth, atol=0.51)  # half a packing step, Pa

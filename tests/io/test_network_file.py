@@ -1,0 +1,126 @@
+"""The network that is read is the one that was written."""
+
+import hashlib
+from collections.abc import Callable
+from datetime import date
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from massfit.errors import InputError
+from massfit.io.network_file import read_network
+
+Change = Callable[[str, str], None]
+
+
+def test_what_was_written_is_read(network_folder: Path) -> None:
+    network = read_network(network_folder)
+    assert [site.id for site in network.sites] == ["A", "B"]
+    assert network.settings.frame.reference_year == 2016
+    assert network.source == str(network_folder / "network.toml")
+    assert [record.deployment for record in network.records] == ["A/1", "B/1"]
+    text, netcdf = network.records
+    # both files hold one cosine of 1 hPa: text in hPa with four decimals, NetCDF in Pa
+    np.testing.assert_allclose(text.pressure + text.reference, netcdf.pressure + netcdf.reference, atol=0.0051)
+    assert np.ptp(netcdf.pressure) == pytest.approx(200.0, rel=1e-3)
+    assert netcdf.drift == "linear"
+    assert network.ocean_mean_atmosphere is not None
+    np.testing.assert_allclose(network.ocean_mean_atmosphere.pressure, netcdf.pressure + netcdf.reference, atol=0.0051)
+    (model,) = network.circulation
+    assert model.pressure.dims == ("time", "site")
+    np.testing.assert_allclose(model.pressure.sel(site="B") / model.pressure.sel(site="A"), 2.0)
+    assert [pattern.name for pattern in network.loads] == ["wet", "dry"]
+    assert network.loads[0].values[3, 4] == 3.0 - 4.0j
+
+
+def test_the_file_itself_may_be_named(network_folder: Path) -> None:
+    assert read_network(str(network_folder / "network.toml")).settings.frame.name == "Two invented sites"
+
+
+def test_every_file_is_fingerprinted(network_folder: Path) -> None:
+    inputs = read_network(network_folder).inputs
+    files = [path for path in network_folder.rglob("*") if path.is_file()]
+    expected = {p.relative_to(network_folder).as_posix(): hashlib.sha256(p.read_bytes()).hexdigest() for p in files}
+    assert inputs == expected
+
+
+def test_exclusions_are_whole_days(network_folder: Path) -> None:
+    (interval,) = read_network(network_folder).sites[0].exclude
+    assert interval.start == np.datetime64("2015-03-01T00:00:00")
+    assert np.datetime64("2015-03-11") - interval.end == np.timedelta64(1, "ns")
+
+
+def test_times_with_a_zone_become_utc(network_folder: Path, change: Change) -> None:
+    change("from = 2015-03-01, to = 2015-03-10", "from = 2015-03-01T02:00:00+02:00, to = 2015-03-10T12:00:00Z")
+    (interval,) = read_network(network_folder).sites[0].exclude
+    assert (interval.start, interval.end) == (np.datetime64("2015-03-01T00"), np.datetime64("2015-03-10T12"))
+
+
+def test_records_keep_their_samples_outside_the_window(network_folder: Path, change: Change) -> None:
+    whole = read_network(network_folder).records[0].time.size
+    change("reference_year = 2016", "reference_year = 2016\nstart = 2014-02-01\nend = 2015-12-31")
+    network = read_network(network_folder)
+    assert network.settings.frame.end == date(2015, 12, 31)
+    assert network.records[0].time.size == whole
+
+
+def test_an_excluded_site_is_kept_and_its_files_are_not_opened(network_folder: Path, change: Change) -> None:
+    change('id = "B"', 'id = "B"\nexclude = "flooded"')
+    (network_folder / "records/b.nc").unlink()
+    network = read_network(network_folder)
+    assert network.sites[1].excluded_because == "flooded"
+    assert [record.site for record in network.records] == ["A"]
+
+
+def test_a_record_outside_the_window_is_dropped_with_a_warning(network_folder: Path, change: Change) -> None:
+    rows = (network_folder / "records/a.csv").read_text().splitlines(keepends=True)
+    (network_folder / "records/a.csv").write_text("".join(rows[:100]))
+    (network_folder / "records/a2.csv").write_text("".join(rows[100:]))
+    text = (network_folder / "network.toml").read_text()
+    deployment = text[text.index("  [[site.deployment]]") : text.index("[[site]]\nid = \"B\"")]
+    change(deployment, deployment + deployment.replace("a.csv", "a2.csv"))
+    change("reference_year = 2016", "reference_year = 2016\nstart = 2014-05-01")
+    network = read_network(network_folder)
+    assert [record.deployment for record in network.records] == ["A/2", "B/1"]
+    assert network.warnings == ("A/1 has no data inside the window and is not used.",)
+
+
+def test_shorthands_of_a_deployment(network_folder: Path, change: Change) -> None:
+    first_value = (network_folder / "records/a.csv").read_text().splitlines()[0].split(",")[1]
+    change('delimiter = ","', f'delimiter = ","\nmissing = {first_value}\nsteps = [2015-01-01, 2015-06-01T12:00:00Z]')
+    record = read_network(network_folder).records[0]
+    assert np.isnan(record.pressure[0])
+    assert record.steps == (np.datetime64("2015-01-01"), np.datetime64("2015-06-01T12"))
+
+
+def test_built_in_loads(network_folder: Path, change: Change) -> None:
+    change('["fields/loads.nc"]', '["builtin:nominal", "fields/loads.nc"]')
+    assert [pattern.name for pattern in read_network(network_folder).loads] == ["nominal", "wet", "dry"]
+
+
+def test_a_model_with_its_own_mean(network_folder: Path, change: Change) -> None:
+    change('ocean_mean = "removed"', 'ocean_mean = "fields/air.csv"')
+    (model,) = read_network(network_folder).circulation
+    assert model.ocean_mean is not None
+    assert model.ocean_mean.name == "ocean mean of Invented model"
+
+
+def test_gravity_is_noted_as_unused(network_folder: Path, change: Change) -> None:
+    change("[fingerprint]", '[gravity]\nfields = "gravity"\nbuffer_km = 300\n\n[fingerprint]')
+    assert read_network(network_folder).warnings == (
+        "[gravity] is not used by this version: no satellite comparison is made.",
+    )
+
+
+def test_the_network_file_is_not_changed_by_reading(network_folder: Path) -> None:
+    before = {path: path.read_bytes() for path in network_folder.rglob("*") if path.is_file()}
+    read_network(network_folder)
+    assert {path: path.read_bytes() for path in network_folder.rglob("*") if path.is_file()} == before
+
+
+def test_a_damaged_model_file_is_a_fault(network_folder: Path) -> None:
+    file = network_folder / "fields/model.nc"
+    file.write_bytes(file.read_bytes()[:-200])
+    with pytest.raises(InputError, match=r"fields/model\.nc: the file cannot be read as NetCDF"):
+        read_network(network_folder)
