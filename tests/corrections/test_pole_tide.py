@@ -51,7 +51,9 @@ def test_background_of_a_published_month() -> None:
 
 
 def test_secular_pole_of_2018() -> None:
-    x, y = (float(value[0]) / RADIAN_PER_ARCSECOND for value in secular_pole(np.array(["2020-01-01"], "datetime64[ns]")))
+    x, y = (
+        float(value[0]) / RADIAN_PER_ARCSECOND for value in secular_pole(np.array(["2020-01-01"], "datetime64[ns]"))
+    )
     assert x == pytest.approx(0.055 + 20 * 0.001677, abs=2e-6)  # a calendar year is not exactly 365.25 days
     assert y == pytest.approx(0.3205 + 20 * 0.003460, abs=4e-6)
 
@@ -93,5 +95,5 @@ def test_ocean_pole_tide_is_the_published_self_consistent_one() -> None:
 def test_classical_pole_tide_misses_the_published_one() -> None:
     forcings = pole_tide_height(operator().latitude_deg[:, None], operator().longitude_deg)
     short = 1.0 - np.diag(ocean_matrix(list(forcings))) / np.diag(published("ocean"))
-    assert 0.12 < short.min()
+    assert short.min() > 0.12
     assert 0.15 < short.max() < 0.2

@@ -1,0 +1,98 @@
+"""The series that are subtracted at one site."""
+
+import numpy as np
+import pytest
+import xarray as xr
+
+from massfit.constants import STANDARD_GRAVITY
+from massfit.contracts import CORRECTIONS, require
+from massfit.corrections.circulation import CirculationAtSites
+from massfit.corrections.long_period_tides import zonal_height
+from massfit.corrections.pole_tide import observed_wobble
+from massfit.corrections.site import site_corrections
+from massfit.errors import InputError
+from massfit.network import Series
+from massfit.site import Site
+
+SITE = Site("A", -11.25, 205.5)
+TIME = np.delete(np.arange("2015-01-01T12", "2016-06-01", 24, dtype="datetime64[h]").astype("datetime64[ns]"), [40, 41])
+RESPONSES = xr.Dataset(
+    {
+        "zonal": ("site", [1.0, -5000.0], {"units": "Pa m-1"}),
+        "wobble_m1": ("site", [1.0, 2e7], {"units": "Pa rad-1"}),
+        "wobble_m2": ("site", [1.0, -3e7], {"units": "Pa rad-1"}),
+    },
+    coords={"site": ["B", "A"]},
+    attrs={"long_period_tides": "equilibrium", "pole_tide": "observed"},
+)
+AIR = Series(
+    "air.csv",
+    np.arange("2014-12-01T12", "2016-07-01", 24, dtype="datetime64[h]").astype("datetime64[ns]"),
+    np.full(578, 40.0),
+)
+
+
+def at_sites(name: str, time: np.ndarray, value: float) -> CirculationAtSites:
+    pressure = np.full((time.size, 2), value)
+    pressure[:, 0] = -999.0
+    return CirculationAtSites(name, ("B", "A"), time, pressure, np.zeros(2))
+
+
+def corrections(time: np.ndarray = TIME, **changes) -> xr.Dataset:
+    inputs = {"responses": RESPONSES, "atmosphere": AIR, "circulation": (at_sites("calm", AIR.time, 7.0),)}
+    return site_corrections(SITE, time, **{**inputs, **changes})
+
+
+def test_each_series_is_the_one_of_the_site() -> None:
+    result = corrections()
+    require(result, CORRECTIONS)
+    m1, m2, _ = observed_wobble(TIME)
+    np.testing.assert_allclose(result["long_period_tides"], -5000.0 * zonal_height(TIME))
+    np.testing.assert_allclose(result["pole_tide"], 2e7 * m1 - 3e7 * m2)
+    np.testing.assert_array_equal(result["ocean_mean_atmosphere"], np.full(TIME.size, 40.0))
+    np.testing.assert_array_equal(result["circulation"], np.full((1, TIME.size), 7.0))
+    assert result["present"].values.tolist() == [1]
+    assert result.attrs["notes"] == ""
+
+
+def test_without_atmosphere_or_models() -> None:
+    result = corrections(atmosphere=None, circulation=())
+    assert not result["ocean_mean_atmosphere"].any()
+    assert result["circulation"].shape == (0, TIME.size)
+
+
+@pytest.mark.parametrize(("covered", "present"), [(0.96, 1), (0.94, 0)])
+def test_a_model_below_95_percent_of_the_days_is_missing(covered: float, present: int) -> None:
+    short = at_sites("short", TIME[: int(covered * TIME.size)], 3.0)
+    result = corrections(circulation=(at_sites("calm", AIR.time, 7.0), short))
+    assert result["present"].values.tolist() == [1, present]
+    share = float(np.isfinite(result["circulation"][1]).mean())
+    assert share == pytest.approx(covered if present else 0.0, abs=0.01)
+    assert ("short: covers 94 % of the days of A" in result.attrs["notes"]) is not bool(present)
+
+
+def test_a_site_without_any_model_is_noted() -> None:
+    result = corrections(circulation=(at_sites("calm", AIR.time + np.timedelta64(3650, "D"), 7.0),))
+    assert "no circulation model covers A" in result.attrs["notes"]
+
+
+def test_every_series_that_does_not_cover_the_record_is_named() -> None:
+    ahead = TIME + np.timedelta64(100 * 365, "D")
+    with pytest.raises(InputError) as caught:
+        corrections(ahead)
+    assert [fault.name for fault in caught.value.faults] == ["polar motion", "ocean_mean_atmosphere"]
+    assert "It runs from 2014-12-01 to 2016-06-30" in str(caught.value)
+    assert f"does not cover {TIME.size} days of the record of A, first 2114-12-08" in str(caught.value)
+
+
+def test_no_polar_motion_is_asked_for_without_pole_tide() -> None:
+    none = RESPONSES.assign_attrs(pole_tide="none")
+    result = corrections(TIME + np.timedelta64(100 * 365, "D"), responses=none, atmosphere=None, circulation=())
+    assert not result["pole_tide"].any()
+
+
+def test_tides_of_a_month_stay_within_their_known_size() -> None:
+    # the sum of nine heights bounds them: 0.437 * 21.8 cm * 1/2 at the equator
+    bound = 5000.0 * 0.437 * 0.2184
+    assert 0.4 * bound < np.abs(corrections()["long_period_tides"]).max() < bound
+    assert bound / STANDARD_GRAVITY == pytest.approx(48.7, abs=0.2)  # mm of fresh water
