@@ -19,7 +19,7 @@ _THRESHOLD = 8.0
 _SHARE = 0.01
 """At most this share of the samples is called spikes; beyond, they are the noise of the record."""
 _SMALLEST_SCALE = 1.0
-"""Pa; smaller differences are the counting step of the instrument."""
+"""Pa; smaller differences are below the resolution of the instruments."""
 _SD_PER_MEDIAN = 1.4826
 """Standard deviation of a normal error per median of its magnitude."""
 
@@ -132,15 +132,21 @@ def find_spikes(values: NDArray[np.float64]) -> NDArray[np.bool_]:
         return np.zeros(values.size, dtype=bool)
     apart = np.abs(values - median_filter(values, size=_WINDOW, mode="mirror"))
     ratio = apart / np.maximum(_running_scale(apart), _SMALLEST_SCALE)
-    allowed = max(1, int(_SHARE * values.size))
-    weakest = np.partition(ratio, -allowed)[-allowed] if allowed < ratio.size else 0.0
-    return np.asarray((ratio > _THRESHOLD) & (ratio >= weakest))
+    spared = max(1, int(_SHARE * values.size)) + 1
+    return np.asarray(ratio > max(_THRESHOLD, np.partition(ratio, -spared)[-spared]))
 
 
 def _running_scale(apart: NDArray[np.float64]) -> NDArray[np.float64]:
     """Scale of a block of samples, never below that of the whole record."""
     blocks = max(1, apart.size // _BLOCK)
-    whole = apart[: blocks * _BLOCK].reshape(blocks, -1)
-    local = np.repeat(np.median(whole, axis=1), whole.shape[1])
-    local = np.concatenate([local, np.full(apart.size - local.size, local[-1])])
-    return np.asarray(_SD_PER_MEDIAN * np.maximum(local, np.median(apart)))
+    local = _median_above_zero(apart[: blocks * _BLOCK].reshape(blocks, -1))
+    place = np.minimum(np.arange(apart.size) // _BLOCK, blocks - 1)
+    return np.asarray(_SD_PER_MEDIAN * np.maximum(local, _median_above_zero(apart[None]))[place])
+
+
+def _median_above_zero(apart: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Median of each row without its zeros: coarse counting steps make many of them."""
+    ordered = np.sort(apart, axis=1)
+    zeros = np.count_nonzero(ordered == 0.0, axis=1)
+    middle = np.minimum(zeros + (apart.shape[1] - zeros) // 2, apart.shape[1] - 1)
+    return np.asarray(ordered[np.arange(apart.shape[0]), middle])
