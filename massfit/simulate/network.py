@@ -151,7 +151,8 @@ def _modelled(world: World, responses: Responses, circulation: Circulation, cloc
     pressure += np.outer(tides["zonal"], zonal_height(clock.time))
     pressure += np.outer(tides["wobble_m1"], m1) + np.outer(tides["wobble_m2"], m2)
     water = [world.water(admittance, days) for admittance in responses.admittance]
-    return np.asarray(pressure + np.array(water))
+    total: NDArray[np.float64] = pressure + np.array(water)
+    return total
 
 
 def _noise(

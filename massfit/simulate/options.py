@@ -38,11 +38,11 @@ class SimulationOptions:
     Examples
     --------
     >>> SimulationOptions(sites=5, sampling="daily").years
-    4.0
+    5.0
     """
 
     sites: Annotated[int, Field(ge=1, le=60)] = 18
-    years: Annotated[float, Field(ge=1.0, le=12.0)] = 4.0
+    years: Annotated[float, Field(ge=1.0, le=12.0)] = 5.0
     models: Annotated[int, Field(ge=0, le=12)] = 3
     load_members: Annotated[int, Field(ge=1, le=20)] = 5
     noise: Annotated[float, Field(ge=0.0, le=20.0)] = 1.0
