@@ -1,5 +1,6 @@
 """A small network on disk that the readers accept; tests break one thing at a time."""
 
+import os
 from collections.abc import Callable
 from pathlib import Path
 
@@ -83,6 +84,17 @@ def small_network(folder: Path) -> None:
         {"member": ["wet", "dry"], "lat": latitude, "lon": longitude},
     )
     loads.to_netcdf(folder / "fields/loads.nc", engine="h5netcdf")
+
+
+@pytest.fixture(scope="session")
+def open_data() -> Path:
+    """Folder of real measurements made by others, which are not part of the project."""
+    name = os.environ.get("MASSFIT_OPEN_DATA")
+    if name is None:
+        pytest.skip("MASSFIT_OPEN_DATA does not name the folder of the open data")
+    folder = Path(name)
+    assert folder.is_dir(), "MASSFIT_OPEN_DATA names no folder"
+    return folder
 
 
 @pytest.fixture

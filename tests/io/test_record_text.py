@@ -1,4 +1,3 @@
-import os
 from pathlib import Path
 from typing import Any
 
@@ -162,14 +161,6 @@ def test_stamps_move_by_half_of_their_own_interval() -> None:
     start = np.array(["2016-01-02T00:15", "2016-01-02T00:00", "2016-01-01T02:00", "2016-01-01T01:00"], "datetime64[ns]")
     middle = np.datetime_as_string(centred(start), "s").tolist()
     assert middle == ["2016-01-02T00:22:30", "2016-01-02T00:07:30", "2016-01-01T02:30:00", "2016-01-01T01:30:00"]
-
-
-@pytest.fixture(scope="session")
-def open_data() -> Path:
-    folder = Path(os.environ.get("MASSFIT_OPEN_DATA", "absent"))
-    if not folder.is_dir():
-        pytest.skip("the open data are not here; name their folder in MASSFIT_OPEN_DATA")
-    return folder
 
 
 def deep_recorder(folder: Path, name: str, **entry: Any) -> Record:
