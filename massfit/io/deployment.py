@@ -53,8 +53,8 @@ class DeploymentFile:
     columns: tuple[str, ...] | None = None
     time_column: str | None = None
     time_format: str | None = None
-    comment: str = "#"
-    delimiter: str | None = None
+    comment: Annotated[str, Field(min_length=1)] = "#"
+    delimiter: Annotated[str, Field(min_length=1)] | None = None
     missing: tuple[float, ...] = ()
     keep_kinds: tuple[str, ...] | None = None
     stamp: Literal["middle", "start"] = "middle"

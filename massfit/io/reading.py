@@ -79,7 +79,12 @@ class Reading:
         if _URL.match(text):
             self.fault(path, f'"{text}" is an address', "Must be a file", "Download it and give its path")
             return None
-        found, home = (self.folder / text).resolve(), self.folder.resolve()
+        try:
+            found, home = (self.folder / text).resolve(), self.folder.resolve()
+            is_file, is_folder = found.is_file(), found.is_dir()
+        except (OSError, ValueError, RuntimeError) as error:  # too long, a null character, links in a circle
+            self.fault(path, f"{text!r} is not a path ({error})", "Must be a file", "Correct it")
+            return None
         if not self.outside and not found.is_relative_to(home):
             self.fault(
                 path,
@@ -87,9 +92,9 @@ class Reading:
                 "Must lie inside it",
                 "Move the file, or allow paths outside (--outside; outside=True)",
             )
-        elif found.is_dir():
+        elif is_folder:
             self.fault(path, f'"{text}" is a folder', "Must be a file")
-        elif not found.is_file():
+        elif not is_file:
             self.fault(path, f'no file "{text}"', "Paths start at the network file's folder", self._suggest(text))
         else:
             return found

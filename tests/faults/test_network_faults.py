@@ -51,6 +51,21 @@ FAULTS = {
         '"/air.csv"',
         [f'N:32: corrections.ocean_mean_atmosphere: "/air.csv" lies outside the folder of the network file. {OUTSIDE}'],
     ),
+    "null character in a path": (
+        '"records/a.csv"',
+        '"records/a\\u0000.csv"',
+        ["N:14: site[A].deployment[1].file: 'records/a\\x00.csv' is not a path (embedded null byte). Must be a file. "
+         "Correct it."],
+    ),
+    "pull of the air without its ocean mean": (
+        'tides = "already-removed"\nocean_mean_atmosphere = "fields/air.csv"',
+        'ocean_mean_atmosphere = "already-removed"\natmosphere_load = "fields/land_air.nc"',
+        ["N:32: corrections.atmosphere_load: atmosphere_load is given and the ocean-mean air pressure is already "
+         "removed. The pull of the air needs the annual phasor of its ocean mean. "
+         "Add ocean_mean_phasor_hpa = [in phase, quadrature].",
+         'N:32: corrections.atmosphere_load: no file "fields/land_air.nc". Paths start at the network file\'s folder. '
+         'Did you mean "fields/loads.nc"?'],
+    ),
     "address": (
         '"records/a.csv"',
         '"https://example.org/a.csv"',
