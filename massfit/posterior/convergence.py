@@ -63,7 +63,7 @@ class Convergence:
             (self.rhat_max <= RHAT_MAX, f"R-hat is {self.rhat_max:.3f}; allowed is {RHAT_MAX}"),
             (
                 min(self.ess_bulk_min, self.ess_tail_min) >= ESS_MIN,
-                f"there are {self.ess_bulk_min:.0f} effective draws of the bulk and {self.ess_tail_min:.0f} of the tails; "
+                f"{self.ess_bulk_min:.0f} effective draws of the bulk and {self.ess_tail_min:.0f} of the tails; "
                 f"needed are {ESS_MIN:.0f}",
             ),
             (

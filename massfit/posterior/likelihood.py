@@ -214,7 +214,7 @@ def _posterior_precision(
 
 
 def log_likelihood(model: LinearModel, log_scales: NDArray[np.float64]) -> NDArray[np.float64]:
-    """Log marginal likelihood of the scales; A, a and c are integrated out.
+    """Log density of the rows' values given the scales; A, a and c are integrated out.
 
     Parameters
     ----------

@@ -2,6 +2,7 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from functools import cached_property
 
 import numpy as np
 import xarray as xr
@@ -43,27 +44,27 @@ class Observations:
     part_covariance: NDArray[np.float64]
     model_noise: NDArray[np.float64]
 
-    @property
+    @cached_property
     def present(self) -> NDArray[np.bool_]:
         """(n_site, n_model), whether the pair exists."""
         return np.asarray(np.isfinite(self.part_phasor).all(axis=(1, 3)))
 
-    @property
+    @cached_property
     def model_count(self) -> NDArray[np.int64]:
         """(n_site,), number of models at each site."""
         return np.asarray(self.present.sum(axis=1))
 
-    @property
+    @cached_property
     def phasor(self) -> NDArray[np.float64]:
         """(n_site, n_model, 2), Pa, mean over the parts."""
         return np.asarray(np.einsum("sk,skmc->smc", self.weight, self.part_phasor))
 
-    @property
+    @cached_property
     def mean_phasor(self) -> NDArray[np.float64]:
         """(n_site, 2), Pa, mean over the parts and the models."""
         return np.asarray(np.nanmean(self.phasor, axis=1))
 
-    @property
+    @cached_property
     def covariance(self) -> NDArray[np.float64]:
         """(n_site, 2, 2), Pa2, of the record, by the moments of the mixture."""
         shift = np.nanmean(self.part_phasor, axis=2) - self.mean_phasor[:, None]
