@@ -5,7 +5,7 @@ from importlib import import_module
 _HOMES = {
     "Network": "massfit.network",
     "OceanFunction": "massfit.fingerprint.ocean",
-    "estimate": "massfit.pipeline",
+    "estimate": "massfit.pipeline.estimate",
     "fit_site": "massfit.annual.fit",
     "love_numbers": "massfit.earth.love",
     "read_network": "massfit.io.network_file",

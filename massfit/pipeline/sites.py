@@ -1,0 +1,198 @@
+"""The sites of a run: daily means, corrections, and the fit of each."""
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from typing import Literal
+from zlib import crc32
+
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from massfit.annual.fit import fit_site
+from massfit.annual.record import ReducedRecord
+from massfit.corrections.circulation import CirculationAtSites
+from massfit.corrections.site import site_corrections
+from massfit.errors import Fault, InputError
+from massfit.network import Network, Series
+from massfit.pipeline.progress import Progress
+from massfit.pipeline.workers import mapped
+from massfit.records.daily import reduce_to_daily
+from massfit.records.record import DailyRecord, Record
+from massfit.results.estimate import SiteReduction
+from massfit.settings import Frame, Settings
+from massfit.site import Interval, Site
+
+LEAST_DAYS = 180
+"""Least number of days with data, over the whole network."""
+
+LEAST_SITE_DAYS = 90
+"""A site with fewer days cannot part an annual cycle from its own drift at all, and is left out."""
+
+
+@dataclass(frozen=True)
+class SiteTask:
+    """All that the reduction of one site needs; it travels to a worker process whole.
+
+    Parameters
+    ----------
+    site : Site
+    daily : tuple of DailyRecord
+    responses : xarray.Dataset
+        contracts.EQUILIBRIUM_RESPONSES.
+    ocean_mean_air : Series or None
+    circulation : tuple of CirculationAtSites
+    settings : Settings
+    """
+
+    site: Site
+    daily: tuple[DailyRecord, ...]
+    responses: xr.Dataset
+    ocean_mean_air: Series | None
+    circulation: tuple[CirculationAtSites, ...]
+    settings: Settings
+
+
+def daily_records(network: Network, progress: Progress, *, workers: int) -> dict[str, tuple[DailyRecord, ...]]:
+    """Reduce every record of the sites that are used to daily means.
+
+    Parameters
+    ----------
+    network : Network
+    progress : callable
+    workers : int
+        Processes.
+
+    Returns
+    -------
+    dict of str to tuple of DailyRecord
+        By site id; deployments without a single day are left out.
+    """
+    sites = {site.id: site for site in network.sites if site.excluded_because is None}
+    jobs = [
+        _Daily(record, sites[record.site].exclude, network.settings.frame, network.settings.corrections.tides)
+        for record in network.records
+        if record.site in sites
+    ]
+    done = mapped(_Daily.run, jobs, stage="daily means", progress=progress, workers=workers)
+    return {name: tuple(daily for daily in done if daily.site == name and len(daily.time)) for name in sites}
+
+
+@dataclass(frozen=True)
+class _Daily:
+    record: Record
+    exclude: tuple[Interval, ...]
+    frame: Frame
+    tides: str
+
+    def run(self) -> DailyRecord:
+        tides: Literal["remove", "already-removed"] = "remove" if self.tides == "remove" else "already-removed"
+        return reduce_to_daily(
+            self.record, exclude=self.exclude, start=self.frame.start, end=self.frame.end, tides=tides
+        )
+
+
+def usable_sites(network: Network, records: Mapping[str, Sequence[DailyRecord]]) -> tuple[Site, ...]:
+    """Sites with enough days to be fitted.
+
+    Parameters
+    ----------
+    network : Network
+    records : mapping of str to sequence of DailyRecord
+
+    Returns
+    -------
+    tuple of Site
+
+    Raises
+    ------
+    InputError
+        No site is left, or the network has fewer than 180 days of data in all.
+    """
+    days = {name: len(_days(own)) for name, own in records.items()}
+    total = sum(days.values())
+    sites = tuple(site for site in network.sites if days.get(site.id, 0) >= LEAST_SITE_DAYS)
+    if total < LEAST_DAYS or not sites:
+        raise InputError(
+            Fault(
+                network.source or "network",
+                "records",
+                f"{total} days of data are left after the window and the exclusions, on {len(sites)} usable sites",
+                f"At least {LEAST_DAYS} days in all, and one site with {LEAST_SITE_DAYS}",
+                "Widen the window or add records",
+            )
+        )
+    return sites
+
+
+def reduce_sites(tasks: Sequence[SiteTask], *, progress: Progress, workers: int) -> list[SiteReduction]:
+    """Correct and fit every site, in the order given.
+
+    Parameters
+    ----------
+    tasks : sequence of SiteTask
+    progress : callable
+    workers : int
+        Processes; the numbers do not depend on it.
+
+    Returns
+    -------
+    list of SiteReduction
+    """
+    return mapped(reduce_site, tasks, stage="site phasors", progress=progress, workers=workers)
+
+
+def reduce_site(task: SiteTask) -> SiteReduction:
+    """Take the corrections off one site's daily means and fit drift, noise and phasor.
+
+    Parameters
+    ----------
+    task : SiteTask
+
+    Returns
+    -------
+    SiteReduction
+    """
+    corrections = site_corrections(
+        task.site,
+        _days(task.daily),
+        responses=task.responses,
+        atmosphere=task.ocean_mean_air,
+        circulation=task.circulation,
+    )
+    present = corrections["present"].values == 1
+    used = np.isfinite(corrections["circulation"].values[present]).all(axis=0)
+    fit = fit_site(
+        [record for record in (_reduced(daily, corrections, used) for daily in task.daily) if len(record.time)],
+        models=[str(name) for name in corrections["model"].values[present]],
+        reference_year=task.settings.frame.reference_year,
+        # a stream of its own, so that a site's numbers do not depend on which other sites there are
+        rng=np.random.default_rng([task.settings.posterior.seed, crc32(task.site.id.encode())]),
+        priors=task.settings.priors,
+        site=task.site.id,
+    )
+    return SiteReduction(task.site, task.daily, corrections, used, fit)
+
+
+def _days(records: Sequence[DailyRecord]) -> NDArray[np.datetime64]:
+    return np.unique(np.concatenate([record.time for record in records])) if records else np.array([], "datetime64[ns]")
+
+
+def _reduced(daily: DailyRecord, corrections: xr.Dataset, used: NDArray[np.bool_]) -> ReducedRecord:
+    """Take the corrections off one deployment, on the days that all present models share."""
+    place = np.searchsorted(corrections["time"].values, daily.time)
+    kept = used[place]
+    place = place[kept]
+    common = sum(
+        corrections[name].values[place] for name in ("long_period_tides", "pole_tide", "ocean_mean_atmosphere")
+    )
+    present = corrections["present"].values == 1
+    return ReducedRecord(
+        deployment=daily.deployment,
+        time=daily.time[kept],
+        pressure=daily.pressure[kept] - common,
+        circulation=corrections["circulation"].values[present][:, place],
+        start=daily.start,
+        drift=daily.drift,
+        steps=daily.steps,
+    )
