@@ -1,6 +1,6 @@
 """Footprints: the sea level at a site per unit of load anywhere on Earth."""
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Sequence
 
 import numpy as np
 import xarray as xr
@@ -10,13 +10,9 @@ from massfit.constants import EARTH_RADIUS
 from massfit.fingerprint.operator import SeaLevelOperator
 from massfit.site import Site
 
-_BATCH_NODES = 2**24  # grid nodes held at once: 128 MB an array
 
-
-def site_footprints(
-    operator: SeaLevelOperator, sites: Sequence[Site], *, tolerance: float = 1e-12
-) -> xr.Dataset:
-    """Footprint of every site by one adjoint solve each, in batches.
+def site_footprints(operator: SeaLevelOperator, sites: Sequence[Site], *, tolerance: float = 1e-12) -> xr.Dataset:
+    """Footprint of every site by one adjoint solve each.
 
     The sea level at site s under any load W (kg m-2) and mass of water vapour M_v
     (kg, positive in the air, so that it lowers the sea: c_s is negative) is
@@ -56,16 +52,12 @@ def site_footprints(
     >>> round(1000 * float((prints.footprint[0] * land).sum()), 3)  # mm
     -0.468
     """
-    prints, constants = [], []
-    for batch in _batches(operator, sites):
-        footprint, constant = _solve(operator, batch, tolerance)
-        prints.append(footprint)
-        constants.append(constant)
+    solved = [_solve(operator, site, tolerance) for site in sites]
     units = {"units": "m kg-1"}
     return xr.Dataset(
         {
-            "footprint": (("site", "lat", "lon"), np.concatenate(prints), units),
-            "constant": (("site",), np.concatenate(constants), units),
+            "footprint": (("site", "lat", "lon"), np.stack([footprint for footprint, _ in solved]), units),
+            "constant": (("site",), [constant for _, constant in solved], units),
         },
         coords={
             "site": [site.id for site in sites],
@@ -76,22 +68,13 @@ def site_footprints(
     )
 
 
-def _batches(operator: SeaLevelOperator, sites: Sequence[Site]) -> Iterator[Sequence[Site]]:
-    size = max(1, _BATCH_NODES // operator.ocean.size)
-    for start in range(0, len(sites), size):
-        yield sites[start : start + size]
-
-
-def _solve(
-    operator: SeaLevelOperator, sites: Sequence[Site], tolerance: float
-) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    latitudes, longitudes = [s.latitude_deg for s in sites], [s.longitude_deg for s in sites]
-    value_at_site = operator.grid.harmonics_at(latitudes, longitudes)
+def _solve(operator: SeaLevelOperator, site: Site, tolerance: float) -> tuple[NDArray[np.float64], float]:
+    value_at_site = operator.grid.harmonics_at(site.latitude_deg, site.longitude_deg)
     ocean_angle = operator.ocean_area_m2 / EARTH_RADIUS**2
-    # the constant follows from the rest: S_s is the value at the site less the ocean mean, plus the mean
+    # S_s is the value at the site less the mean over the ocean, plus that mean, which the masses fix
     source = operator.root_kernel * (value_at_site - operator.ocean_coefficients / ocean_angle)
     u, _ = operator.invert(source, tolerance=tolerance)
     varying = operator.root_kernel * u
-    level = (operator.ocean_integral(varying) + 1.0 / operator.sea_water_density) / operator.ocean_area_m2
-    footprint = operator.grid.synthesise(varying) / EARTH_RADIUS**2 - level[:, None, None]
-    return footprint, -level
+    level = (operator.ocean_integral(varying)[0] + 1.0 / operator.sea_water_density) / operator.ocean_area_m2
+    footprint = operator.grid.synthesise(varying)[0] / EARTH_RADIUS**2 - level
+    return footprint, -float(level)

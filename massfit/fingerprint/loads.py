@@ -139,9 +139,7 @@ def builtin_loads(names: Sequence[str] = ("all",)) -> tuple[LoadPattern, ...]:
     )
 
 
-def _total(
-    variant: _Variant, latitude: NDArray[np.float64], longitude: NDArray[np.float64]
-) -> NDArray[np.complex128]:
+def _total(variant: _Variant, latitude: NDArray[np.float64], longitude: NDArray[np.float64]) -> NDArray[np.complex128]:
     total = np.zeros((latitude.size, longitude.size), dtype=complex)
     for region in _REGIONS:
         amplitude = region.amplitude * variant.factor.get(region.kind, 1.0) / variant.widen**2

@@ -130,9 +130,7 @@ class SeaLevelOperator:
         """Integral of fields over the ocean of the unit sphere."""
         return self.inner(coefficients, self.ocean_coefficients)
 
-    def invert(
-        self, right: NDArray[np.complex128], *, tolerance: float = 1e-12
-    ) -> tuple[NDArray[np.complex128], int]:
+    def invert(self, right: NDArray[np.complex128], *, tolerance: float = 1e-12) -> tuple[NDArray[np.complex128], int]:
         """Solve (1 - rho K^(1/2) B' K^(1/2)) u = right by conjugate gradients.
 
         Parameters
@@ -156,9 +154,9 @@ class SeaLevelOperator:
         solution = right.copy()  # the operator is close to one
         residual = right - self._symmetric(solution)
         direction = residual.copy()
-        size, goal = self.inner(residual, residual), tolerance**2 * self.inner(right, right)
+        size, whole = self.inner(residual, residual), self.inner(right, right)
         for step in range(_MAX_STEPS):
-            if np.all(size <= goal):
+            if np.all(size <= tolerance**2 * whole):
                 return solution, step
             image = self._symmetric(direction)
             length = _ratio(size, self.inner(direction, image))
@@ -166,7 +164,7 @@ class SeaLevelOperator:
             residual -= length * image
             previous, size = size, self.inner(residual, residual)
             direction = residual + _ratio(size, previous) * direction
-        reached = np.sqrt(np.max(_ratio(size, goal))) * tolerance
+        reached = np.sqrt(np.max(_ratio(size, whole)))
         raise ConvergenceError("Sea-level equation", float(reached), tolerance)
 
     def _symmetric(self, coefficients: NDArray[np.complex128]) -> NDArray[np.complex128]:
