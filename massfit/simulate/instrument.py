@@ -1,6 +1,6 @@
 """Invented recorders: when they lay on the bottom, how they drift, and what befell them."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Any
 
@@ -11,10 +11,12 @@ from massfit.constants import JULIAN_YEAR_DAYS
 from massfit.records.record import Record
 from massfit.simulate.clock import Clock
 from massfit.simulate.options import SimulationOptions
+from massfit.site import Interval
 
 _WHITE_DAILY_SD = 8.0  # Pa on a daily mean
 _SPIKE_EVERY_DAYS = 60.0
 _LOST_EVERY_DAYS = 40.0
+_LIFTED, _SWAYING = 9000.0, 1500.0  # Pa: mean and standard deviation while off the bottom
 
 
 @dataclass(frozen=True)
@@ -35,6 +37,8 @@ class Deployment:
         Day of the clock at whose first instant the recorder moved.
     step : float
         Pa.
+    disturbed : tuple of int, optional
+        First and last day of the clock on which the recorder did not rest on the bottom.
     """
 
     first_day: int
@@ -46,6 +50,7 @@ class Deployment:
     white_sd: float
     step_day: int | None = None
     step: float = 0.0
+    disturbed: tuple[int, int] | None = None
 
     def drift(self, days: NDArray[np.float64]) -> NDArray[np.float64]:
         """Drift at days of the clock, Pa, counted from the first instant on the bottom."""
@@ -75,11 +80,13 @@ def draw_deployments(rng: np.random.Generator, n_days: int, role: str) -> tuple[
         Length of the network's period.
     role : str
         "overlap": the second was laid about ten months before the first was taken up; "short": a single one
-        for little more than a year; "step": the first was moved; anything else: the usual chain.
+        for little more than a year; "step": the first was moved; "disturbed": the first was lifted for some days;
+        anything else: the usual chain.
     """
+    intervals = _intervals(rng, n_days, role)
     return tuple(
-        _draw_deployment(rng, first, last, stepped=role == "step" and number == 0)
-        for number, (first, last) in enumerate(_intervals(rng, n_days, role))
+        _draw_deployment(rng, first, last, role if number == 0 else "")
+        for number, (first, last) in enumerate(intervals)
     )
 
 
@@ -101,7 +108,9 @@ def _intervals(rng: np.random.Generator, n_days: int, role: str) -> list[tuple[i
     return [(int(first), int(last)) for first, last in zip(firsts, lasts, strict=True)]
 
 
-def _draw_deployment(rng: np.random.Generator, first: int, last: int, *, stepped: bool) -> Deployment:
+def _draw_deployment(rng: np.random.Generator, first: int, last: int, role: str) -> Deployment:
+    stepped = role == "step"
+    middle = first + round(rng.uniform(0.35, 0.65) * (last - first))
     return Deployment(
         first_day=first,
         last_day=last,
@@ -110,8 +119,29 @@ def _draw_deployment(rng: np.random.Generator, first: int, last: int, *, stepped
         exponential=float(rng.choice([-1.0, 1.0]) * 1800.0 * np.exp(rng.normal(0.0, 0.5))),
         time_constant_days=float(np.exp(rng.uniform(np.log(10.0), np.log(200.0)))),
         white_sd=float(_WHITE_DAILY_SD * np.exp(rng.normal(0.0, 0.3))),
-        step_day=first + round(rng.uniform(0.35, 0.65) * (last - first)) if stepped else None,
+        step_day=middle if stepped else None,
         step=float(rng.choice([-1.0, 1.0]) * rng.uniform(250.0, 600.0)) if stepped else 0.0,
+        disturbed=(middle, middle + 11) if role == "disturbed" else None,
+    )
+
+
+def exclusions(deployments: Sequence[Deployment], clock: Clock) -> tuple[Interval, ...]:
+    """Intervals that the analyst leaves out, by the deck log.
+
+    Parameters
+    ----------
+    deployments : sequence of Deployment
+        Of one site.
+    clock : Clock
+    """
+    return tuple(
+        Interval(
+            (clock.first_day + deployment.disturbed[0]).astype("datetime64[ns]"),
+            (clock.first_day + deployment.disturbed[1] + 1).astype("datetime64[ns]") - np.timedelta64(1, "ns"),
+            "lifted by a drifting mooring line",
+        )
+        for deployment in deployments
+        if deployment.disturbed is not None
     )
 
 
@@ -153,6 +183,9 @@ def observe(
     if deployment.step_day is not None:
         pressure[days > deployment.step_day] += deployment.step
         steps = ((clock.first_day + deployment.step_day).astype("datetime64[ns]"),)
+    if deployment.disturbed is not None:
+        aloft = (days > deployment.disturbed[0]) & (days < deployment.disturbed[1] + 1)
+        pressure[aloft] += rng.normal(-_LIFTED, _SWAYING, np.count_nonzero(aloft))
     pressure = np.round(pressure)
     if options.incidents:
         if per_day > 1:

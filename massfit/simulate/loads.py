@@ -14,6 +14,8 @@ from massfit.fingerprint.ocean import OceanFunction
 from massfit.fingerprint.pattern import LoadPattern
 from massfit.phasor import phasor_from_peak
 
+_REFERENCE = "drawn for this invented network"
+
 # latitude, longitude, radius north-south and east-west (degrees), amplitude (kg m-2), peak (day of year)
 _WATER = np.array(
     [
@@ -92,7 +94,7 @@ def draw_water_load(
     values = _sum_of_regions(regions, cells) * (1.0 - regrid(ocean.fraction, ocean.cells, cells))
     if texture > 0.0:
         values *= 1.0 + texture * _smooth_field(rng, cells.shape, 1.0 / cell_deg)
-    return _pattern(name, cells, values, "drawn for this invented network")
+    return _pattern(name, cells, values, _REFERENCE)
 
 
 def with_total(pattern: LoadPattern, total_kg: complex) -> LoadPattern:
@@ -134,7 +136,7 @@ def draw_air_pressure(
     Returns
     -------
     LoadPattern
-        Pa, on land and sea; over the ocean it is the ocean mean (inverted barometer).
+        Pa; smooth across the coasts, to be used over land only.
     """
     regions = _AIR.copy()
     regions[:, 4] *= np.exp(rng.normal(0.0, 0.1, len(regions)))
@@ -144,8 +146,7 @@ def draw_air_pressure(
     area = cells.cell_area_m2
     highs = _sum_of_regions(regions, cells)
     missing = STANDARD_GRAVITY * water_vapour - ocean_mean * ocean.area_m2 - np.sum(highs * land * area)
-    values = np.where(land > 0.0, highs + missing / np.sum(land * area), ocean_mean)
-    return _pattern("air pressure", cells, values, "drawn for this invented network")
+    return _pattern("air pressure", cells, highs + missing / np.sum(land * area), _REFERENCE)
 
 
 def coarsened(pattern: LoadPattern, cell_deg: float) -> LoadPattern:

@@ -1,7 +1,7 @@
 """Invent a network of which everything is known."""
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -24,7 +24,7 @@ from massfit.simulate.dynamics import (
     ocean_bumps,
     phasor_series,
 )
-from massfit.simulate.instrument import draw_deployments, observe
+from massfit.simulate.instrument import Deployment, draw_deployments, exclusions, observe
 from massfit.simulate.loads import coarsened
 from massfit.simulate.models import common_errors, draw_models
 from massfit.simulate.noise import flicker, ornstein_uhlenbeck
@@ -44,7 +44,7 @@ _DEPTH_TO_PRESSURE = 10_080.0  # Pa a metre, mean over a deep water column
 
 # one stream of random numbers a subject: more models do not move the sites; new subjects go last
 _SUBJECTS = ("sites", "world", "members", "air", "circulation", "models", "recorders", "noise", "tides", "roles")
-_INCIDENTS = ("overlap", "step", "short", "missing", "text")
+_INCIDENTS = ("overlap", "step", "short", "disturbed", "missing", "text")
 
 
 @dataclass(frozen=True, eq=False)
@@ -112,11 +112,14 @@ def simulate_network(options: SimulationOptions | None = None, *, seed: int) -> 
     unmodelled = complex_normal(rng["noise"], _UNMODELLED_SD * options.model_error, options.sites)
     pressure = _modelled(world, responses, circulation, clock)
     pressure += phasor_series(unmodelled, clock.days) + _noise(rng["noise"], options, roles, clock)
-    records, recorders = _records(rng, options, sites, roles, pressure, clock)
+    recorders = [draw_deployments(rng["recorders"], clock.n_days, role) for role in roles]
+    records = _records(rng, options, sites, roles, recorders, pressure, clock)
     air, air_error = air_as_given(rng["air"], world, clock)
     network = Network(
         settings=settings(options, clock),
-        sites=sites,
+        sites=tuple(
+            replace(site, exclude=exclusions(laid, clock)) for site, laid in zip(sites, recorders, strict=True)
+        ),
         records=records,
         loads=members(rng["members"], ocean, options.load_members),
         circulation=models,
@@ -150,9 +153,8 @@ def _modelled(world: World, responses: Responses, circulation: Circulation, cloc
     pressure += phasor_series(responses.air_load, days) + world.air_series
     pressure += np.outer(tides["zonal"], zonal_height(clock.time))
     pressure += np.outer(tides["wobble_m1"], m1) + np.outer(tides["wobble_m2"], m2)
-    water = [world.water(admittance, days) for admittance in responses.admittance]
-    total: NDArray[np.float64] = pressure + np.array(water)
-    return total
+    pressure += np.array([world.water(admittance, days) for admittance in responses.admittance])
+    return np.asarray(pressure, dtype=float)
 
 
 def _noise(
@@ -161,7 +163,7 @@ def _noise(
     """Ocean noise of each site that no model holds, (n_site, n_time) Pa."""
     n, step = clock.n_days * clock.samples_per_day, clock.step_days
     sizes = options.noise * _FLICKER_SD * np.exp(rng.normal(0.0, 0.25, len(roles)))
-    noise = sizes[:, None] * np.array([flicker(rng, n, step_days=step) for _ in roles])
+    noise: NDArray[np.float64] = sizes[:, None] * np.array([flicker(rng, n, step_days=step) for _ in roles])
     if "eddies" in roles:
         eddies = _EDDY_SD * ornstein_uhlenbeck(rng, (n,), step_days=step, time_scale_days=25.0)
         season = phasor_series(complex_normal(rng, _EDDY_SEASON_SD, 1), clock.days)[0]
@@ -174,22 +176,19 @@ def _records(
     options: SimulationOptions,
     sites: Sequence[Site],
     roles: Sequence[str],
+    recorders: Sequence[Sequence[Deployment]],
     pressure: NDArray[np.float64],
     clock: Clock,
-) -> tuple[tuple[Record, ...], list[list[Mapping[str, Any]]]]:
-    """Observe all sites: the records, and the truth about the recorders of each."""
+) -> tuple[Record, ...]:
+    """Observe all sites."""
     records: list[Record] = []
-    recorders: list[list[Mapping[str, Any]]] = []
-    for site, role, row in zip(sites, roles, pressure, strict=True):
+    for site, role, deployments, row in zip(sites, roles, recorders, pressure, strict=True):
         at_site = row + short_tides(rng["tides"], clock.time) if options.sampling == "hourly" else row
-        recorders.append([])
-        deployments = draw_deployments(rng["recorders"], clock.n_days, role)
         for number, deployment in enumerate(deployments, 1):
             last_as_text = role == "text" and number == len(deployments)
             blank = _blank_record(site, number, "txt" if last_as_text else "nc")
             records.append(observe(rng["recorders"], deployment, clock, at_site, blank=blank, options=options))
-            recorders[-1].append(deployment.summary(blank.deployment))
-    return tuple(records), recorders
+    return tuple(records)
 
 
 def _blank_record(site: Site, number: int, suffix: str) -> Record:
@@ -221,7 +220,7 @@ def _site_truth(
     roles: Sequence[str],
     responses: Responses,
     unmodelled: NDArray[np.complex128],
-    recorders: Sequence[Sequence[Mapping[str, Any]]],
+    recorders: Sequence[Sequence[Deployment]],
 ) -> list[Mapping[str, Any]]:
     return [
         {
@@ -230,7 +229,7 @@ def _site_truth(
             "admittance": [float(responses.admittance[s].real), float(responses.admittance[s].imag)],
             "air_load_response_hpa": _hpa(complex(responses.air_load[s])),
             "unmodelled_annual_hpa": _hpa(complex(unmodelled[s])),
-            "deployments": list(recorders[s]),
+            "deployments": [each.summary(f"{site.id}/{number}") for number, each in enumerate(recorders[s], 1)],
         }
         for s, site in enumerate(sites)
     ]

@@ -44,8 +44,8 @@ massfit estimate {folder}
 - The uncertainty should hold the truth, not hug it: of twenty networks like this one, the truth of one is expected to
   lie outside its 95 % region.
 
-When you have your answer, compare it with `amplitude_hpa` and `peak_day` in `truth.json` (days after 1 January 00:00 UTC
-of the reference year).
+When you have your answer, compare it with `amplitude_hpa` and `peak_day` in `truth.json` (days after 1 January
+00:00 UTC of the reference year).
 
 ## How it was made
 
@@ -57,10 +57,11 @@ The same command gives the same network again (another processor may round singl
 """
 
 _ROLES = {
-    "eddies": "{site} lies under a field of eddies, someone says; no model has them.",
+    "eddies": "{site} lies under a field of eddies that no model has.",
     "overlap": "At {site} the second recorder was laid months before the first was taken up.",
     "step": "The first recorder at {site} was hit by a trawl; the time is in the network file.",
     "short": "{site} has a single recorder, for little more than a year.",
+    "disturbed": "The first recorder at {site} was off the bottom for some days; the network file leaves them out.",
     "missing": "{site} is not among the points that the model {model} delivers.",
     "text": "The last recorder at {site} came as a text file, in dbar.",
 }
