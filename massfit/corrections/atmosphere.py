@@ -127,13 +127,24 @@ def annual_phasor(series: Series, reference_year: int) -> complex:
     return complex(in_phase, quadrature)
 
 
+def allows_annual_phasor(time: NDArray[np.datetime64]) -> bool:
+    """Whether values at these times, middles of their intervals, span a year and number 12 or more."""
+    return time.size >= 12 and _span_days(time) >= SHORTEST_FIT_DAYS
+
+
+def _span_days(time: NDArray[np.datetime64]) -> float:
+    if time.size < 2:
+        return 0.0
+    starts, ends = interval_edges(time)
+    return float((ends[-1] - starts[0]) / np.timedelta64(1, "D"))
+
+
 def _phasor_estimator(name: str, time: NDArray[np.datetime64], reference_year: int) -> NDArray[np.float64]:
     """Rows that turn values at `time` into the annual in-phase and quadrature parts, (2, n)."""
-    starts, ends = interval_edges(time) if time.size > 1 else (time, time)
-    span = float((ends[-1] - starts[0]) / np.timedelta64(1, "D")) if time.size else 0.0
-    if span < SHORTEST_FIT_DAYS or time.size < 12:
-        problem = f"the annual phasor cannot be fitted to {time.size} values over {span:.0f} days"
+    if not allows_annual_phasor(time):
+        problem = f"the annual phasor cannot be fitted to {time.size} values over {_span_days(time):.0f} days"
         raise InputError(Fault(name, "time", problem, "Must be 12 values or more over a year or more"))
+    starts, ends = interval_edges(time)
     days = days_since(starts + (ends - starts) / 2, reference_year)
     width = (ends - starts) / np.timedelta64(1, "D")
     columns = [np.ones_like(days), (days - days.mean()) / JULIAN_YEAR_DAYS]

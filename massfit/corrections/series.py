@@ -148,17 +148,17 @@ def means_between(time: Times, values: Values, starts: Times, ends: Times) -> Va
     Returns
     -------
     (n,) or (n, k) array of float
-        NaN where the interval leaves the span by more than half a step, or meets a missing value or a gap.
+        NaN where the interval leaves the span by more than a step, or meets a missing value or a gap.
     """
     days = _days(time, time[0])
-    half = 0.5 * step_days(time) + 1e-6  # a tenth of a second for rounding
+    step = step_days(time)
     lower, upper = _days(starts, time[0]), _days(ends, time[0])
     pieces = 0.5 * (values[1:] + values[:-1]).T * np.diff(days)
-    broken = ~np.isfinite(pieces) | (np.diff(days) > LONGEST_BRIDGE_DAYS)
+    broken = ~np.isfinite(pieces) | (np.diff(days) > max(LONGEST_BRIDGE_DAYS, 1.5 * step))
     integral = _running(np.where(broken, 0.0, pieces))
     faults = _running(broken.astype(float))
-    # the curve is continued level by half a step, the rest of the first and of the last interval
-    inside = (lower >= days[0] - half) & (upper <= days[-1] + half)
+    # the curve is continued level by a step: a six-hourly series of instants ends at 18 h of its last day
+    inside = (lower >= days[0] - 1.0001 * step) & (upper <= days[-1] + 1.0001 * step)
     total = _integral_to(days, values, integral, upper) - _integral_to(days, values, integral, lower)
     first = np.clip(np.searchsorted(days, lower, side="right") - 1, 0, len(days) - 1)
     last = np.clip(np.searchsorted(days, upper, side="left"), 0, len(days) - 1)

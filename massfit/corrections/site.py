@@ -105,6 +105,6 @@ def _uncovered(site: Site, atmosphere: Series, time: NDArray[np.datetime64], air
         "ocean_mean_atmosphere",
         f"the series does not cover {missing.size} days of the record of {site.id}, "
         f"first {str(missing[0])[:10]}, last {str(missing[-1])[:10]}",
-        f"It runs from {str(atmosphere.time[0])[:10]} to {str(atmosphere.time[-1])[:10]}",
+        f"It runs from {str(atmosphere.time[0])[:16]} to {str(atmosphere.time[-1])[:16]}, middle of its intervals",
         "Give a series that covers the record without gaps, or shorten the window",
     )

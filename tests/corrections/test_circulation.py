@@ -122,6 +122,30 @@ def test_own_mean_is_subtracted() -> None:
     np.testing.assert_allclose(finer.pressure, plain.pressure, atol=0.08)
 
 
+def test_an_own_mean_that_is_not_the_mean_of_the_field_is_noted() -> None:
+    shift = xr.DataArray(own_mean(80.0).pressure, dims="time", coords={"time": TIME})
+    right = circulation_at_sites(model(gyre() + shift, own_mean(80.0)), SITES, ocean=OCEAN)
+    wrong = circulation_at_sites(model(gyre() + shift, own_mean(70.0)), SITES, ocean=OCEAN)
+    assert not any("keeps one" in note for note in right.notes)
+    assert any("keeps one with an annual cycle of 0.1" in note for note in wrong.notes)
+
+
+def test_days_without_values_and_ice_do_not_disturb_the_mean_that_is_judged() -> None:
+    broken = gyre().copy(deep=True)
+    broken[::9] = np.nan
+    broken[1:30, 20:, 0] = np.nan  # a cell that comes and goes moves the mean by its own share only
+    result = circulation_at_sites(model(broken), SITES, ocean=OCEAN, footprints=footprints())
+    np.testing.assert_array_equal(
+        np.isnan(result.pressure), np.broadcast_to((np.arange(147) % 9 == 0)[:, None], (147, 3))
+    )
+
+
+def test_less_than_a_year_is_not_judged() -> None:
+    short = gyre().isel(time=slice(0, 60)) + 500.0
+    result = circulation_at_sites(model(short), SITES, ocean=OCEAN)
+    assert any("shorter than a year" in note for note in result.notes)
+
+
 def test_own_mean_of_other_years_is_refused() -> None:
     days = np.arange("2010-01-01T12", "2012-01-01", 24, dtype="datetime64[h]").astype("datetime64[ns]")
     with pytest.raises(InputError, match="covers 2010-01-01 to 2011-12-31, and the model 2015-01-01 to"):

@@ -184,6 +184,20 @@ def test_resampled_averages_to_a_coarser_clock_and_interpolates_to_a_finer() -> 
     )
 
 
+def test_resampled_averages_coarse_values_to_still_coarser_ones() -> None:
+    tens = clock("2013-12-02", "2018-02-01", 240)
+    ours = resampled(tens, np.cos(RATE * in_days(tens)), MIDDLES)
+    # closed form: chords of ten days sag by (10 RATE)^2 / 12 of the curve on average
+    np.testing.assert_allclose(ours, monthly_means(0.0), atol=(10.0 * RATE) ** 2 / 12.0)
+
+
+def test_instants_at_six_hours_serve_their_last_day() -> None:
+    time = clock("2014-01-01", "2014-01-11", 6)  # ends at 18 h on 10 January
+    days = clock("2014-01-01T12:00", "2014-01-12", 24)
+    means = daily_values_at(time, np.ones(len(time)), days)
+    np.testing.assert_array_equal(means, [1.0] * 10 + [np.nan])
+
+
 @pytest.mark.parametrize("time", [NOONS[:1], NOONS[[1, 0]], NOONS[[0, 0]]])
 def test_a_series_out_of_order_is_refused(time: np.ndarray) -> None:
     with pytest.raises(InputError, match="two or more, strictly increasing"):

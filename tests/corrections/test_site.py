@@ -81,7 +81,7 @@ def test_every_series_that_does_not_cover_the_record_is_named() -> None:
     with pytest.raises(InputError) as caught:
         corrections(ahead)
     assert [fault.name for fault in caught.value.faults] == ["polar motion", "ocean_mean_atmosphere"]
-    assert "It runs from 2014-12-01 to 2016-06-30" in str(caught.value)
+    assert "It runs from 2014-12-01T12:00 to 2016-06-30T12:00" in str(caught.value)
     assert f"does not cover {TIME.size} days of the record of A, first 2114-12-08" in str(caught.value)
 
 
