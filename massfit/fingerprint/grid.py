@@ -135,8 +135,11 @@ def _bounds(name: str, centres: NDArray[np.float64]) -> NDArray[np.float64]:
         problem = "the cell centres are not equally spaced"
         raise InputError(Fault("grid", name, problem, "Must be a regular grid", "Interpolate onto a regular grid"))
     step = steps.mean()
-    middle = centres.mean() + step * (np.arange(centres.size + 1) - centres.size / 2.0)
-    return np.asarray(middle, dtype=float)
+    turn = 360.0 / centres.size
+    if abs(abs(step) - turn) * centres.size < _EVEN * turn:  # all around: leave no gap and no overlap
+        step = np.copysign(turn, step)
+    bounds = centres.mean() + step * (np.arange(centres.size + 1) - centres.size / 2.0)
+    return np.asarray(bounds, dtype=float)
 
 
 def _overlap(source: NDArray[np.float64], target: NDArray[np.float64], turn: float | None) -> csr_array:

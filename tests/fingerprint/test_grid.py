@@ -77,10 +77,12 @@ def test_leading_axes_are_kept(rng: np.random.Generator) -> None:
     np.testing.assert_array_equal(together[1, 2], regrid(values[1, 2], GRIDS["descending"], GRIDS["odd"]))
 
 
-def test_single_precision_coordinates_are_regular() -> None:
-    centres = np.arange(0.125, 360.0, 0.25).astype(np.float32)
-    cells = CellGrid.from_centres(np.arange(-89.875, 90.0, 0.25, dtype=np.float32), centres)
-    np.testing.assert_allclose(cells.longitude_bounds_deg[[0, -1]], [0.0, 360.0], atol=1e-4)
+@pytest.mark.parametrize("step", [0.25, 1 / 3, 0.1])
+def test_single_precision_coordinates_are_regular_and_close_the_circle(step: float) -> None:
+    centres = (np.arange(round(360 / step)) + 0.5) * step
+    cells = CellGrid.from_centres(np.arange(-88.0, 90.0, 4.0), centres.astype(np.float32))
+    assert np.ptp(cells.longitude_bounds_deg) == pytest.approx(360.0, abs=1e-10)
+    np.testing.assert_allclose(regrid(np.ones(cells.shape), cells, GRIDS["odd"]), 1.0, rtol=0, atol=1e-12)
 
 
 @pytest.mark.parametrize(
