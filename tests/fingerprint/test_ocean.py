@@ -25,6 +25,10 @@ def test_both_longitude_conventions_and_the_edges() -> None:
     np.testing.assert_array_equal(east[2:4], [1.0, 0.0])
 
 
+def test_the_outer_bounds_belong_to_cells(all_ocean: OceanFunction) -> None:
+    np.testing.assert_array_equal(all_ocean.fraction_at([-90.0, 90.0, 0.0, 0.0], [0.0, 10.0, 0.0, 360.0]), 1.0)
+
+
 def test_cell_lookup_agrees_with_the_array_in_either_direction(rng: np.random.Generator) -> None:
     fraction = rng.uniform(size=(6, 8))
     up = OceanFunction(CellGrid(np.linspace(-90, 90, 7), np.linspace(0, 360, 9)), fraction)
