@@ -18,7 +18,8 @@ _DAILY_ABOVE_HOURS = 6.0
 _LEAST_SHARE = 0.75
 """Of the hours of a day: 18 of 24."""
 _DIRECT_BELOW_HOURS = 0.5
-"""Below this sampling a tide is a straight line over five samples, and spikes show against the raw pressure."""
+"""Below this sampling a tide is a straight line over five samples, spikes show against the raw pressure, and an hour
+that stands apart holds an event that many samples saw."""
 
 
 def reduce_to_daily(
@@ -129,8 +130,10 @@ def _averaged(
         actions.append(Action("tidal lines merged with larger neighbours", len(fit.merged), detail))
     else:
         constants, spikes = (), find_spikes(hours.pressure)
-    actions.append(_spike_action(spikes, "hour"))
-    day, mean, sparse = _daily_means(hours.without(spikes), breaks, max(spacing, 1.0))
+    if spacing >= _DIRECT_BELOW_HOURS:
+        hours = hours.without(spikes)
+        actions.append(_spike_action(spikes, "hour"))
+    day, mean, sparse = _daily_means(hours, breaks, max(spacing, 1.0))
     actions.append(Action("days left out", sparse, "less than three quarters of the hours on one level"))
     noon = EPOCH + day * np.timedelta64(DAY_NS, "ns") + np.timedelta64(DAY_NS // 2, "ns")
     return noon, mean, constants, actions

@@ -133,8 +133,12 @@ def _robust_fit(
     """Coefficients of the tides, and the spikes against the whole fit."""
     centred = pressure - np.median(pressure)
     spikes = np.zeros(pressure.size, dtype=bool)
+    whole, whole_right = _normal_equations(background, tides, centred)
+    whole[np.diag_indices_from(whole)] += _RIDGE
     for _ in range(_ROUNDS):
-        curve, lines = _least_squares(background, tides, centred, ~spikes)
+        spike, spike_right = _normal_equations(background[spikes], tides[spikes], centred[spikes])
+        solution = cho_solve(cho_factor(whole - spike, check_finite=False), whole_right - spike_right)
+        curve, lines = solution[: -tides.shape[1]], solution[-tides.shape[1] :]
         found = find_spikes(centred - background @ curve - tides @ lines)
         if np.array_equal(found, spikes):
             break
@@ -142,15 +146,9 @@ def _robust_fit(
     return lines, spikes
 
 
-def _least_squares(
-    background: csr_array, tides: NDArray[np.float64], values: NDArray[np.float64], used: NDArray[np.bool_]
+def _normal_equations(
+    background: csr_array, tides: NDArray[np.float64], values: NDArray[np.float64]
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Coefficients of background and tides over the values in use."""
-    if not used.all():
-        background, tides, values = background[used], tides[used], values[used]
     mixed = background.T @ tides
     normal = np.block([[(background.T @ background).toarray(), mixed], [mixed.T, tides.T @ tides]])
-    normal[np.diag_indices_from(normal)] += _RIDGE
-    right = np.concatenate([background.T @ values, tides.T @ values])
-    solution = cho_solve(cho_factor(normal, check_finite=False), right, check_finite=False)
-    return solution[: -tides.shape[1]], solution[-tides.shape[1] :]
+    return normal, np.concatenate([background.T @ values, tides.T @ values])
