@@ -18,6 +18,7 @@ from massfit.pipeline.fingerprints import network_fingerprints
 from massfit.pipeline.progress import Progress, ignore
 from massfit.pipeline.provenance import provenance
 from massfit.pipeline.sites import SiteTask, daily_records, reduce_sites, usable_sites
+from massfit.pipeline.workers import Workers
 from massfit.posterior.sample import sample_posterior
 from massfit.posterior.summary import summarise
 from massfit.results.estimate import Estimate
@@ -55,8 +56,13 @@ def estimate(network: Network, *, progress: Progress = ignore, workers: int = 1)
     >>> 0.3 < result.summary["amplitude_hpa"]["median"] < 1.7
     True
     """
+    with Workers(workers) as pool:
+        return _estimate(network, progress, pool)
+
+
+def _estimate(network: Network, progress: Progress, pool: Workers) -> Estimate:
     settings = network.settings
-    records = daily_records(network, progress, workers=workers)
+    records = daily_records(network, progress, pool)
     sites = usable_sites(network, records)
     progress("sea-level equation", 0, 1)
     ocean = OceanFunction.builtin()
@@ -81,7 +87,7 @@ def estimate(network: Network, *, progress: Progress = ignore, workers: int = 1)
         for model in network.circulation
     )
     tasks = [SiteTask(site, records[site.id], responses, air.ocean_mean, circulation, settings) for site in sites]
-    reductions = reduce_sites(tasks, progress=progress, workers=workers)
+    reductions = reduce_sites(tasks, progress, pool)
     phasors = site_phasors(
         [reduction.fit for reduction in reductions],
         models=[model.name for model in network.circulation],

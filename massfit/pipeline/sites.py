@@ -16,7 +16,7 @@ from massfit.corrections.site import site_corrections
 from massfit.errors import Fault, InputError
 from massfit.network import Network, Series
 from massfit.pipeline.progress import Progress
-from massfit.pipeline.workers import mapped
+from massfit.pipeline.workers import Workers
 from massfit.records.daily import reduce_to_daily
 from massfit.records.record import DailyRecord, Record
 from massfit.results.estimate import SiteReduction
@@ -53,15 +53,14 @@ class SiteTask:
     settings: Settings
 
 
-def daily_records(network: Network, progress: Progress, *, workers: int) -> dict[str, tuple[DailyRecord, ...]]:
+def daily_records(network: Network, progress: Progress, pool: Workers) -> dict[str, tuple[DailyRecord, ...]]:
     """Reduce every record of the sites that are used to daily means.
 
     Parameters
     ----------
     network : Network
     progress : callable
-    workers : int
-        Processes.
+    pool : Workers
 
     Returns
     -------
@@ -74,7 +73,7 @@ def daily_records(network: Network, progress: Progress, *, workers: int) -> dict
         for record in network.records
         if record.site in sites
     ]
-    done = mapped(_Daily.run, jobs, stage="daily means", progress=progress, workers=workers)
+    done = pool.map(_Daily.run, jobs, stage="daily means", progress=progress)
     return {name: tuple(daily for daily in done if daily.site == name and len(daily.time)) for name in sites}
 
 
@@ -125,21 +124,20 @@ def usable_sites(network: Network, records: Mapping[str, Sequence[DailyRecord]])
     return sites
 
 
-def reduce_sites(tasks: Sequence[SiteTask], *, progress: Progress, workers: int) -> list[SiteReduction]:
+def reduce_sites(tasks: Sequence[SiteTask], progress: Progress, pool: Workers) -> list[SiteReduction]:
     """Correct and fit every site, in the order given.
 
     Parameters
     ----------
     tasks : sequence of SiteTask
     progress : callable
-    workers : int
-        Processes; the numbers do not depend on it.
+    pool : Workers
 
     Returns
     -------
     list of SiteReduction
     """
-    return mapped(reduce_site, tasks, stage="site phasors", progress=progress, workers=workers)
+    return pool.map(reduce_site, tasks, stage="site phasors", progress=progress)
 
 
 def reduce_site(task: SiteTask) -> SiteReduction:

@@ -12,6 +12,8 @@ from massfit.report.style import LAND, REFERENCE, house_style
 
 def network_map(
     ocean_fraction: NDArray[np.float64],
+    cell_latitude_deg: NDArray[np.float64],
+    cell_longitude_deg: NDArray[np.float64],
     site_ids: Sequence[str],
     latitude_deg: NDArray[np.float64],
     longitude_deg: NDArray[np.float64],
@@ -24,7 +26,10 @@ def network_map(
     Parameters
     ----------
     ocean_fraction : (n_lat, n_lon) array
-        Ocean fraction, rows from south to north, columns from 0 to 360 degrees east.
+        Ocean fraction of cells.
+    cell_latitude_deg : (n_lat,) array
+    cell_longitude_deg : (n_lon,) array
+        Centres of the cells, degrees, in any order.
     site_ids : sequence of str
     latitude_deg, longitude_deg : (n_site,) array
         Degrees; longitude in either convention.
@@ -45,12 +50,13 @@ def network_map(
         figure = Figure(figsize=(9.6, 5.0), layout="constrained")
         axes = figure.subplots()
         land = np.ma.masked_greater(np.asarray(ocean_fraction), 0.5)
-        axes.pcolormesh(
-            np.linspace(0, 360, land.shape[1] + 1),
-            np.linspace(-90, 90, land.shape[0] + 1),
-            land,
+        rows, columns = np.argsort(cell_latitude_deg), np.argsort(np.mod(cell_longitude_deg, 360.0))
+        axes.imshow(
+            land[np.ix_(rows, columns)],
             cmap=ListedColormap([LAND]),
-            rasterized=True,
+            extent=(0, 360, -90, 90),
+            origin="lower",
+            interpolation="none",
         )
         for marker, chosen in (("o", ~doubt), ("s", doubt)):
             points = axes.scatter(

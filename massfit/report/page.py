@@ -18,7 +18,7 @@ PICTURES = {
     "corner": "Posterior of the answer and of the scales of the model; contours enclose 50 and 95 %, dashed lines mark "
     "the median and the central 95 %.",
     "records": "Every site: daily record with fitted drift; the series subtracted from it; what remains, with the "
-    "fitted annual and semi-annual cycle.",
+    "fitted annual cycle.",
 }
 """Name of each figure and what it shows."""
 

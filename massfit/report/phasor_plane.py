@@ -48,31 +48,43 @@ def phasor_plane(
         The whole plane on the left, the region of the answer enlarged on the right.
     """
     with house_style():
-        figure = Figure(figsize=(9.6, 5.0), layout="constrained")
+        figure = Figure(figsize=(9.6, 5.2), layout="constrained")
         whole, near = figure.subplots(1, 2)
-        reach = 1.12 * max(_reach(draws_hpa), min(_reach(site_phasors_hpa), 3.0 * _reach(draws_hpa)))
+        reach = 1.25 * max(_reach(draws_hpa, 1.0), _reach(site_phasors_hpa, 0.85))
         for axes in (whole, near):
             _sites(axes, site_phasors_hpa, site_covariances_hpa2)
             _answer(axes, draws_hpa, contours)
             zero_lines(axes)
             axes.set_aspect("equal")
             axes.set_xlabel("in phase / hPa")
-        whole.set_ylabel("quadrature / hPa")
+            axes.set_ylabel("quadrature / hPa")
         whole.set(xlim=(-reach, reach), ylim=(-reach, reach))
         _month_marks(whole, reach, reference_year)
+        _far_sites(whole, site_ids, site_phasors_hpa, reach)
         _enlarge(near, draws_hpa)
-        for axes in (whole, near):
-            _site_labels(axes, site_ids, site_phasors_hpa)
-        outside = int(np.sum(np.any(np.abs(site_phasors_hpa) > reach, axis=1)))
-        note = f"; {outside} site{'s' if outside > 1 else ''} beyond the frame" if outside else ""
-        whole.set_title(f"Network and sites{note}")
+        _site_labels(near, site_ids, site_phasors_hpa)
+        whole.set_title("Network and sites")
         near.set_title("The answer enlarged: 50 and 95 % regions")
-        whole.legend(loc="lower left", bbox_to_anchor=(0.0, 1.06), ncols=2, borderaxespad=0.0)
+        handles, labels = whole.get_legend_handles_labels()
+        figure.legend(handles, labels, loc="outside lower center", ncols=2)
     return figure
 
 
-def _reach(points: NDArray[np.float64]) -> float:
-    return float(np.max(np.hypot(points[:, 0], points[:, 1]))) if len(points) else 1.0
+def _reach(points: NDArray[np.float64], share: float) -> float:
+    """Radius that holds a share of the points."""
+    return float(np.quantile(np.hypot(points[:, 0], points[:, 1]), share))
+
+
+def _far_sites(axes: Axes, ids: Sequence[str], phasors: NDArray[np.float64], reach: float) -> None:
+    """Mark sites beyond the frame on its edge, in their direction."""
+    for name, point in zip(ids, phasors, strict=True):
+        largest = float(np.max(np.abs(point)))
+        if largest > reach:
+            x, y = 0.985 * reach * point / largest
+            axes.plot(x, y, marker="D", markersize=5, color=SITE, markeredgecolor="black", clip_on=False, zorder=6)
+            side = "right" if x > 0 else "left"
+            text = f"{name}: {np.hypot(*point):.1f} hPa"
+            axes.annotate(text, (x, y), xytext=(0, 7), textcoords="offset points", fontsize=7.5, ha=side)
 
 
 def _answer(
@@ -141,5 +153,5 @@ def _month_marks(axes: Axes, reach: float, year: int) -> None:
 
 def _enlarge(axes: Axes, draws: NDArray[np.float64]) -> None:
     centre = draws.mean(axis=0)
-    half = 4.0 * float(np.max(draws.std(axis=0)))
+    half = 4.2 * float(np.max(draws.std(axis=0)))
     axes.set(xlim=(centre[0] - half, centre[0] + half), ylim=(centre[1] - half, centre[1] + half))

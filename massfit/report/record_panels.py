@@ -9,13 +9,14 @@ from matplotlib.dates import AutoDateLocator, ConciseDateFormatter
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
-from massfit.report.style import ANSWER, LAND, REFERENCE, SITE, house_style
+from massfit.report.style import ANSWER, LAND, SITE, house_style
 
-_CORRECTION_COLOURS = {
-    "circulation (model mean)": "#56B4E9",
+# drawn in this order: the fast tides lie behind the rest
+CORRECTIONS = {
+    "long-period tides": "#C8C8C8",
+    "circulation (model mean)": "#0072B2",
     "ocean-mean air pressure": "#E69F00",
-    "long-period tides": "#000000",
-    "pole tide": "#CC79A7",
+    "pole tide": "#000000",
 }
 
 
@@ -30,12 +31,12 @@ class RecordRow:
         Daily pressure and fitted drift with steps, each about its own mean, hPa; one entry a deployment.
     correction_time : (n,) array of datetime64
     corrections : mapping of str to (n,) array
-        Series that were subtracted, hPa.
+        Series that were subtracted, hPa, by the names of `CORRECTIONS`.
     reduced_time : (m,) array of datetime64
     reduced : (m,) array
         Record less corrections, drift and steps, hPa.
     annual : (m,) array
-        Fitted annual and semi-annual cycle on `reduced_time`, hPa.
+        Fitted annual cycle on `reduced_time`, hPa.
     note : str
         Printed in the title when the site carries a warning.
     """
@@ -87,23 +88,13 @@ def _draw_record(axes: Axes, row: RecordRow) -> None:
 
 
 def _draw_corrections(axes: Axes, row: RecordRow) -> None:
-    for label, series in row.corrections.items():
-        axes.plot(
-            row.correction_time, series, color=_CORRECTION_COLOURS.get(label, REFERENCE), linewidth=0.7, label=label
-        )
+    for label, colour in CORRECTIONS.items():
+        if label in row.corrections:
+            axes.plot(row.correction_time, row.corrections[label], color=colour, linewidth=0.7, label=label)
 
 
 def _draw_reduced(axes: Axes, row: RecordRow) -> None:
-    axes.plot(
-        row.reduced_time,
-        row.reduced,
-        color=LAND,
-        linewidth=0.0,
-        marker=".",
-        markersize=1.2,
-        markerfacecolor="#8C8C8C",
-        markeredgecolor="none",
-    )
+    axes.plot(row.reduced_time, row.reduced, ".", markersize=2.0, color="#8C8C8C", markeredgecolor="none")
     axes.plot(row.reduced_time, row.annual, color=ANSWER, linewidth=1.2)
     low, high = np.quantile(row.reduced, [0.002, 0.998]) if len(row.reduced) else (-1.0, 1.0)
     margin = 0.15 * max(float(high - low), 0.1)
@@ -114,7 +105,7 @@ def _headings(grid: NDArray[np.object_]) -> None:
     titles = (
         "daily record, deployments alternate; drift dashed",
         "subtracted series",
-        "reduced record and fitted cycle",
+        "reduced record and fitted annual cycle",
     )
     for axes, title in zip(grid[0], titles, strict=True):
         axes.annotate(
