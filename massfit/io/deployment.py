@@ -31,7 +31,8 @@ class DeploymentFile:
         Names of the columns of a text file without a header; "year", "month", "day", "hour", "minute",
         "second" and "kind" have a meaning, and one is the pressure.
     time_column, time_format : str, optional
-        Text: column that holds the whole time and its strptime format ("iso" for ISO 8601).
+        Text: column that holds the whole time (or several, "date clock", which are joined by a space) and its
+        strptime format; "iso" for ISO 8601, or a count like "days since 1950-01-01".
     comment, delimiter : str, optional
         Text: comment prefix (default "#") and column delimiter (default white space).
     missing : tuple of float

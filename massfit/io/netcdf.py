@@ -4,6 +4,7 @@ import struct
 from pathlib import Path
 from typing import BinaryIO
 
+import h5py
 import xarray as xr
 
 from massfit.errors import Fault, InputError
@@ -62,8 +63,10 @@ def open_netcdf(path: Path, *, source: str = "", decode: bool = True) -> xr.Data
             return xr.open_dataset(
                 path, engine="scipy", mask_and_scale=decode, decode_times=decode, backend_kwargs={"mmap": False}
             )
+        # h5netcdf leaves a half-made object behind when the file is damaged; h5py says so cleanly
+        h5py.File(path, "r").close()
         return xr.open_dataset(path, engine="h5netcdf", mask_and_scale=decode, decode_times=decode)
-    except (OSError, ValueError, KeyError) as error:
+    except (OSError, ValueError, KeyError, RuntimeError) as error:
         problem = f"the file cannot be read as NetCDF ({error})"
         raise InputError(Fault(source, "", problem, "Must be NetCDF-3 or NetCDF-4", "Fetch it again")) from error
 
@@ -90,7 +93,7 @@ def require_complete(path: Path, *, source: str = "") -> None:
     with path.open("rb") as file:
         try:
             needed = _needed_bytes(file)
-        except (struct.error, KeyError, UnicodeDecodeError) as error:
+        except (struct.error, LookupError, OSError) as error:
             problem = "the header of the classic NetCDF file is cut or of an unknown variant"
             allowed = "Must be the classic or the 64-bit offset format, or NetCDF-4"
             raise InputError(Fault(source, "", problem, allowed, "Fetch it again")) from error

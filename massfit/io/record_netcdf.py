@@ -63,8 +63,12 @@ def read_netcdf(path: Path, entry: DeploymentFile) -> Samples:
             indexers = _station_indexers(dataset, variable, time, entry)
         if faults:
             raise InputError(faults)
-        stored = variable.isel(indexers, missing_dims="ignore").values
-        stamps, centred = _stamps(dataset, time.isel(indexers, missing_dims="ignore"), entry)
+        try:
+            stored = variable.isel(indexers, missing_dims="ignore").values
+            stamps, centred = _stamps(dataset, time.isel(indexers, missing_dims="ignore"), entry)
+        except (OSError, RuntimeError) as error:
+            problem = f"the data cannot be read ({error})"
+            raise InputError(Fault(entry.file, str(variable.name), problem, action="Fetch the file again")) from error
         pressure = _unpacked(stored, variable.attrs) * factor
     known = ~np.isnat(stamps)
     actions = _coarse(stored, factor) + _undated(known)
@@ -225,7 +229,7 @@ def _decoded(values: NDArray[Any], attributes: dict[str, Any], entry: Deployment
     dims = [f"axis_{axis}" for axis in range(values.ndim)]
     try:
         decoded = xr.decode_cf(xr.Dataset({"stamps": (dims, values, kept)}))["stamps"].values
-    except ValueError as error:
+    except (ValueError, ImportError) as error:
         problem = f"the time cannot be decoded ({str(error).splitlines()[0]})"
         raise InputError(Fault(entry.file, "time", problem, "Must be within the years 1678 to 2262")) from error
     return np.asarray(decoded, dtype="datetime64[ns]")

@@ -1,6 +1,7 @@
 """Pressure records in text: columns of numbers and a time in one column or in parts."""
 
 from collections.abc import Iterator
+from csv import QUOTE_NONE
 from dataclasses import dataclass
 from difflib import get_close_matches
 from io import StringIO
@@ -34,8 +35,9 @@ class _Layout:
         Every column, in order.
     pressure : str
     date : tuple of str
-        Parts of the date that have a column; empty where `time` is used.
-    time : str or None
+        Parts of the date that have a column; empty where `time` is not.
+    time : tuple of str
+        Columns of the time, joined by a space.
     header_line : int
         Line of the header, counted from 1; 0 where there is none.
     """
@@ -43,12 +45,12 @@ class _Layout:
     names: tuple[str, ...]
     pressure: str
     date: tuple[str, ...]
-    time: str | None
+    time: tuple[str, ...]
     header_line: int
 
     @property
     def used(self) -> list[str]:
-        wanted = {self.pressure, *self.date, self.time, _KIND}
+        wanted = {self.pressure, *self.date, *self.time, _KIND}
         return [name for name in self.names if name in wanted]
 
 
@@ -126,12 +128,12 @@ def _layout(file: TextIO, entry: DeploymentFile) -> _Layout:
     if faults:
         raise InputError(faults)
     date = tuple(part for part in DATE_PARTS if part in names) if entry.time_column is None else ()
-    time = entry.time_column or (None if date else "time")
+    time = () if date else _time_columns(names, entry)
     pressure = entry.variable or _sole_pressure(names, time)
-    wanted = [("time_column", time), ("variable", pressure)]
+    wanted = [*(("time_column", name) for name in time), ("variable", pressure)]
     wanted += [("keep_kinds", _KIND)] if entry.keep_kinds is not None else []
     wanted += [("columns", part) for part in DATE_PARTS[:3] if date]
-    faults = [_no_column(entry.file, key, name, names) for key, name in wanted if name and name not in names]
+    faults = [_no_column(entry.file, key, name, names) for key, name in wanted if name not in names]
     if faults:
         raise InputError(faults)
     return _Layout(names, pressure, date, time, header_line)
@@ -174,9 +176,16 @@ def _name_faults(names: tuple[str, ...], fields: list[str], line: int, entry: De
     return faults
 
 
-def _sole_pressure(names: tuple[str, ...], time: str | None) -> str:
+def _time_columns(names: tuple[str, ...], entry: DeploymentFile) -> tuple[str, ...]:
+    """Columns of the time: one, or several whose names `time_column` lists with spaces between."""
+    column = entry.time_column or "time"
+    parts = tuple(column.split())
+    return parts if column not in names and len(parts) > 1 else (column,)
+
+
+def _sole_pressure(names: tuple[str, ...], time: tuple[str, ...]) -> str:
     """Name the column called pressure, or the only one without another meaning."""
-    others = [name for name in names if name not in (*DATE_PARTS, _KIND, time)]
+    others = [name for name in names if name not in (*DATE_PARTS, _KIND, *time)]
     return others[0] if len(others) == 1 and _PRESSURE not in names else _PRESSURE
 
 
@@ -196,7 +205,7 @@ def _table(file: TextIO, layout: _Layout, entry: DeploymentFile) -> tuple[pd.Dat
         ragged += zip(numbers[~good].tolist(), counts[~good].tolist(), strict=True)
         fitting = lines if good.all() else [line for line, fits in zip(lines, good, strict=True) if fits]
         if fitting:
-            parts.append(_parsed(fitting, numbers[good], layout, entry.delimiter))
+            parts.append(_parsed(fitting, numbers[good], layout, entry))
     faults = []
     if ragged:
         lines, counts = np.array(ragged).T
@@ -221,22 +230,32 @@ def _field_counts(lines: list[str], delimiter: str | None) -> NDArray[np.int64]:
     return np.fromiter((line.count(delimiter) + 1 for line in lines), dtype=np.int64, count=len(lines))
 
 
-def _parsed(lines: list[str], numbers: NDArray[np.int64], layout: _Layout, delimiter: str | None) -> pd.DataFrame:
+def _parsed(
+    lines: list[str], numbers: NDArray[np.int64], layout: _Layout, entry: DeploymentFile
+) -> pd.DataFrame:
     # names may repeat among the columns that are not used
     positions = [layout.names.index(name) for name in layout.used]
-    texts = [position for position in positions if layout.names[position] in (_KIND, layout.time)]
-    table = pd.read_csv(
-        StringIO("".join(line if line.endswith("\n") else line + "\n" for line in lines)),
-        sep=r"\s+" if delimiter is None else delimiter,
-        header=None,
-        usecols=positions,
-        dtype=dict.fromkeys(texts, str),
-        skipinitialspace=True,
-        low_memory=False,
-        engine="c",
-    )
-    table.columns = pd.Index(layout.used)
-    return table.set_index(pd.Index(numbers))
+    texts = [position for position in positions if layout.names[position] in (_KIND, *layout.time)]
+    # a quote that is never closed would swallow lines
+    text = "".join(line if line.endswith("\n") else line + "\n" for line in lines).replace('"', "")
+    try:
+        table = pd.read_csv(
+            StringIO(text),
+            sep=r"\s+" if entry.delimiter is None else entry.delimiter,
+            header=None,
+            usecols=positions,
+            dtype=dict.fromkeys(texts, str),
+            skipinitialspace=True,
+            skip_blank_lines=False,
+            quoting=QUOTE_NONE,
+            low_memory=False,
+            engine="c",
+        )
+        table.columns = pd.Index(layout.used)
+        return table.set_index(pd.Index(numbers))
+    except ValueError as error:
+        problem = f"the rows cannot be parsed ({str(error).splitlines()[0]})"
+        raise InputError(Fault(entry.file, "", problem, "Must be plain text", line=int(numbers[0]))) from error
 
 
 def _numbers(column: "pd.Series[float]", source: str) -> NDArray[np.float64]:
@@ -251,9 +270,11 @@ def _numbers(column: "pd.Series[float]", source: str) -> NDArray[np.float64]:
 
 def _time(table: pd.DataFrame, layout: _Layout, entry: DeploymentFile) -> NDArray[np.datetime64]:
     lines = table.index.to_numpy()
-    if layout.time is not None:
-        texts = table[layout.time]
-        return parsed_time(texts, entry.time_format or "iso", lines, source=entry.file, name=layout.time)
+    if layout.time:
+        texts = table[layout.time[0]]
+        for name in layout.time[1:]:
+            texts = texts + " " + table[name]
+        return parsed_time(texts, entry.time_format or "iso", lines, source=entry.file, name=" ".join(layout.time))
     faults: list[Fault] = []
     parts: dict[str, NDArray[np.float64]] = {}
     for part in layout.date:

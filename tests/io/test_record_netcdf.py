@@ -1,6 +1,8 @@
+import gc
 from pathlib import Path
 from typing import Any
 
+import h5py
 import numpy as np
 import pytest
 import xarray as xr
@@ -201,10 +203,23 @@ def test_single_precision_absolute_pressure_is_noted(tmp_path: Path) -> None:
 def test_cut_file_is_refused(tmp_path: Path, engine: Any) -> None:
     single().to_netcdf(tmp_path / "a.nc", engine=engine, encoding=ENCODING, unlimited_dims=["time"])
     whole = (tmp_path / "a.nc").read_bytes()
-    for kept in (len(whole) - 16, len(whole) * 2 // 3, 40):
+    for kept in (len(whole) - 16, len(whole) * 2 // 3, 400, 40, 8):
         (tmp_path / "a.nc").write_bytes(whole[:kept])
+        gc.collect()  # a half-opened file that complains when it is collected would be an error here
         with pytest.raises(InputError, match="Fetch it again"):
             read_record(tmp_path, DeploymentFile("a.nc"), site="A", deployment="A/1")
+
+
+def test_a_damaged_value_is_refused(tmp_path: Path) -> None:
+    encoding = {**ENCODING, "p": {"zlib": True, "fletcher32": True}}
+    single().to_netcdf(tmp_path / "a.nc", engine="h5netcdf", encoding=encoding)
+    with h5py.File(tmp_path / "a.nc") as file:
+        place = file["p"].id.get_chunk_info(0).byte_offset
+    damaged = bytearray((tmp_path / "a.nc").read_bytes())
+    damaged[place + 5] ^= 255
+    (tmp_path / "a.nc").write_bytes(damaged)
+    with pytest.raises(InputError, match="the data cannot be read"):
+        read_record(tmp_path, DeploymentFile("a.nc"), site="A", deployment="A/1")
 
 
 def test_absent_file(tmp_path: Path) -> None:

@@ -64,6 +64,21 @@ def test_time_formats(tmp_path: Path) -> None:
     assert record.time[0] == np.datetime64("2016-02-03T14:30")
 
 
+def test_date_and_clock_in_two_columns(tmp_path: Path) -> None:
+    record = read(tmp_path, "date clock pressure\n2016-02-03 12:30:15 1\n", time_column="date clock")
+    assert record.time[0] == np.datetime64("2016-02-03T12:30:15")
+
+
+def test_a_stray_quote_does_not_swallow_lines(tmp_path: Path) -> None:
+    text = 'time,pressure\n2016-01-01,6\n2016-01-02,"7\n2016-01-03,8\n'
+    assert absolute_hpa(read(tmp_path, text, delimiter=",")) == [6.0, 7.0, 8.0]
+
+
+def test_a_stray_control_byte_is_a_fault_of_its_line(tmp_path: Path) -> None:
+    (fault,) = faults_of(tmp_path, "time pressure\n2016-01-01 6\n2016-01-02 7\x018\n")
+    assert fault.startswith("a.txt:3: pressure")
+
+
 def test_a_count_of_days_from_long_ago_keeps_its_millisecond(tmp_path: Path) -> None:
     # 310 years in ns overflow 64 bits; day 113225 after 1700-01-01 is 2010-01-01 (proleptic Gregorian)
     record = read(tmp_path, "113225.5 1\n", columns=("t", "p"), time_column="t", time_format="days since 1700-01-01")
