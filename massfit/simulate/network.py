@@ -148,11 +148,10 @@ def _modelled(world: World, responses: Responses, circulation: Circulation, cloc
     """All that is no noise, no short tide and no recorder's doing, (n_site, n_time) Pa."""
     days = clock.days
     m1, m2, _ = observed_wobble(clock.time)
-    tides = responses.tides
     pressure = responses.bumps @ circulation.series(days)
     pressure += phasor_series(responses.air_load, days) + world.air_series
-    pressure += np.outer(tides["zonal"], zonal_height(clock.time))
-    pressure += np.outer(tides["wobble_m1"], m1) + np.outer(tides["wobble_m2"], m2)
+    pressure += np.outer(responses.zonal_tide, zonal_height(clock.time))
+    pressure += np.outer(responses.wobble.real, m1) + np.outer(responses.wobble.imag, m2)
     pressure += np.array([world.water(admittance, days) for admittance in responses.admittance])
     return np.asarray(pressure, dtype=float)
 

@@ -8,18 +8,18 @@ from dataclasses import dataclass
 from functools import lru_cache
 
 import numpy as np
-import xarray as xr
 from numpy.typing import NDArray
 
 from massfit.constants import STANDARD_GRAVITY
-from massfit.corrections.responses import equilibrium_responses
+from massfit.corrections.long_period_tides import zonal_function
+from massfit.corrections.pole_tide import pole_tide_height
 from massfit.earth.love import love_numbers
 from massfit.fingerprint.footprint import site_footprints
 from massfit.fingerprint.grid import CellGrid, regrid
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.fingerprint.operator import SeaLevelOperator, prepare_operator
 from massfit.fingerprint.pattern import LoadPattern
-from massfit.fingerprint.sea_level import solve_sea_level
+from massfit.fingerprint.sea_level import SeaLevel, solve_sea_level
 from massfit.simulate.dynamics import Bumps
 from massfit.simulate.world import World
 from massfit.site import Site
@@ -39,15 +39,18 @@ class Responses:
         F_s of the true load.
     air_load : (n_site,) array of complex
         G_s, self-attraction of the air, annual phasor, Pa.
-    tides : xarray.Dataset
-        Per unit of zonal tide and wobble, from :func:`massfit.corrections.responses.equilibrium_responses`.
+    zonal_tide : (n_site,) array
+        Pressure per height of the zonal tide, Pa per m.
+    wobble : (n_site,) array of complex
+        Pressure per wobble, Pa per rad: m1 as the real part, m2 as the imaginary part.
     bumps : (n_site, n_bump + 1) array
         Patterns of the circulation at the sites, self-attraction included.
     """
 
     admittance: NDArray[np.complex128]
     air_load: NDArray[np.complex128]
-    tides: xr.Dataset
+    zonal_tide: NDArray[np.float64]
+    wobble: NDArray[np.complex128]
     bumps: NDArray[np.float64]
 
 
@@ -55,6 +58,16 @@ class Responses:
 def true_operator(max_degree: int) -> SeaLevelOperator:
     """Sea-level operator of the truth, prepared once a process."""
     return prepare_operator(OceanFunction.builtin(), love_numbers(max_degree=max_degree), max_degree=max_degree)
+
+
+@lru_cache(maxsize=2)
+def true_tides(max_degree: int) -> tuple[SeaLevel, SeaLevel]:
+    """Sea level of the zonal tide and of the wobble (m1 real, m2 imaginary), solved once a process."""
+    operator = true_operator(max_degree)
+    latitude, longitude = np.meshgrid(operator.latitude_deg, operator.longitude_deg, indexing="ij")
+    per_m1, per_m2 = pole_tide_height(latitude, longitude)
+    zonal = solve_sea_level(operator, forcing=zonal_function(latitude))
+    return zonal, solve_sea_level(operator, forcing=per_m1 + 1j * per_m2)
 
 
 def true_responses(sites: Sequence[Site], world: World, bumps: Bumps) -> Responses:
@@ -71,11 +84,13 @@ def true_responses(sites: Sequence[Site], world: World, bumps: Bumps) -> Respons
     operator = true_operator(TRUTH_DEGREE)
     pressure_per_metre = operator.sea_water_density * STANDARD_GRAVITY
     sea = solve_sea_level(operator, load=_on_grid(operator, world.load), water_vapour=world.water_vapour)
+    zonal, wobble = true_tides(TRUTH_DEGREE)
     air = _air_load(operator, world.air_pressure, world.air_annual)
     return Responses(
         admittance=np.asarray(sea.at(latitude, longitude) / sea.ocean_mean),
-        air_load=np.asarray(solve_sea_level(operator, load=air).at(latitude, longitude) * pressure_per_metre),
-        tides=equilibrium_responses(operator, sites),
+        air_load=np.asarray(pressure_per_metre * solve_sea_level(operator, load=air).at(latitude, longitude)),
+        zonal_tide=np.asarray(pressure_per_metre * zonal.at(latitude, longitude), dtype=float),
+        wobble=np.asarray(pressure_per_metre * wobble.at(latitude, longitude)),
         bumps=bumps.at(latitude, longitude) + self_attraction(sites, bumps),
     )
 
