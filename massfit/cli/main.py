@@ -1,5 +1,6 @@
 """The commands; each loads, calls and writes. Heavy imports live inside them, so that --help is quick."""
 
+import os
 import sys
 from pathlib import Path
 
@@ -41,18 +42,22 @@ def estimate(network: Path, output: Path | None, overwrite: bool, outside: bool,
         from massfit.pipeline.save import estimate_to_folder, results_folder
 
         folder = results_folder(network, output)
-        done = estimate_to_folder(network, folder, overwrite=overwrite, outside=outside, progress=progress)
+        result = estimate_to_folder(
+            network, folder, overwrite=overwrite, outside=outside, progress=progress, workers=os.cpu_count() or 1
+        )
     if not quiet:
-        click.echo(f"{done.text}\n\nResults: {folder}   Start with {folder / 'report.html'}")
-    sys.exit(0 if done.estimate.summary["convergence"]["converged"] else NOT_TRUSTWORTHY)
+        from massfit.report.text import summary_text
+
+        click.echo(f"{summary_text(result.summary)}\n\nResults in {folder}: start with report.html")
+    sys.exit(0 if result.summary["convergence"]["converged"] else NOT_TRUSTWORTHY)
 
 
 @main.command()
 @click.argument("folder", type=_FOLDER)
 @click.option("--seed", type=click.IntRange(min=0), default=1, show_default=True, help="Seed of the invention.")
 @click.option("--sites", type=click.IntRange(1, 60), default=18, show_default=True, help="Number of sites.")
-@click.option("--years", type=click.FloatRange(1.0, 12.0), default=5.0, show_default=True, help="Length, years.")
-@click.option("--models", type=click.IntRange(0, 8), default=3, show_default=True, help="Number of ocean models.")
+@click.option("--years", type=click.FloatRange(1.0, 12.0), default=4.0, show_default=True, help="Length, years.")
+@click.option("--models", type=click.IntRange(0, 12), default=3, show_default=True, help="Number of ocean models.")
 @click.option("--noise", type=click.FloatRange(0.0, 20.0), default=1.0, show_default=True, help="Scale of the noise.")
 @click.option("--sampling", type=click.Choice(["hourly", "daily"]), default="hourly", show_default=True)
 def simulate(folder: Path, seed: int, sites: int, years: float, models: int, noise: float, sampling: str) -> None:
@@ -64,7 +69,5 @@ def simulate(folder: Path, seed: int, sites: int, years: float, models: int, noi
     with refusing_politely():
         from massfit.pipeline.invent import simulate_to_folder
 
-        simulate_to_folder(
-            folder, seed=seed, sites=sites, years=years, models=models, noise=noise, sampling=sampling
-        )
+        simulate_to_folder(folder, seed, sites=sites, years=years, models=models, noise=noise, sampling=sampling)
     click.echo(f"Wrote an invented network to {folder}. Next: massfit estimate {folder}")

@@ -62,7 +62,7 @@ def estimate(network: Network, *, progress: Progress = ignore, workers: int = 1)
 
 def _estimate(network: Network, progress: Progress, pool: Workers) -> Estimate:
     settings = network.settings
-    records = daily_records(network, progress, pool)
+    records = daily_records(network, progress)
     sites = usable_sites(network, records)
     progress("sea-level equation", 0, 1)
     ocean = OceanFunction.builtin()

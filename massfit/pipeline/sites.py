@@ -2,7 +2,6 @@
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
-from typing import Literal
 from zlib import crc32
 
 import numpy as np
@@ -18,10 +17,10 @@ from massfit.network import Network, Series
 from massfit.pipeline.progress import Progress
 from massfit.pipeline.workers import Workers
 from massfit.records.daily import reduce_to_daily
-from massfit.records.record import DailyRecord, Record
+from massfit.records.record import DailyRecord
 from massfit.results.estimate import SiteReduction
-from massfit.settings import Frame, Settings
-from massfit.site import Interval, Site
+from massfit.settings import Settings
+from massfit.site import Site
 
 LEAST_DAYS = 180
 """Least number of days with data, over the whole network."""
@@ -53,14 +52,13 @@ class SiteTask:
     settings: Settings
 
 
-def daily_records(network: Network, progress: Progress, pool: Workers) -> dict[str, tuple[DailyRecord, ...]]:
+def daily_records(network: Network, progress: Progress) -> dict[str, tuple[DailyRecord, ...]]:
     """Reduce every record of the sites that are used to daily means.
 
     Parameters
     ----------
     network : Network
     progress : callable
-    pool : Workers
 
     Returns
     -------
@@ -68,27 +66,16 @@ def daily_records(network: Network, progress: Progress, pool: Workers) -> dict[s
         By site id; deployments without a single day are left out.
     """
     sites = {site.id: site for site in network.sites if site.excluded_because is None}
-    jobs = [
-        _Daily(record, sites[record.site].exclude, network.settings.frame, network.settings.corrections.tides)
-        for record in network.records
-        if record.site in sites
-    ]
-    done = pool.map(_Daily.run, jobs, stage="daily means", progress=progress)
-    return {name: tuple(daily for daily in done if daily.site == name and len(daily.time)) for name in sites}
-
-
-@dataclass(frozen=True)
-class _Daily:
-    record: Record
-    exclude: tuple[Interval, ...]
-    frame: Frame
-    tides: str
-
-    def run(self) -> DailyRecord:
-        tides: Literal["remove", "already-removed"] = "remove" if self.tides == "remove" else "already-removed"
-        return reduce_to_daily(
-            self.record, exclude=self.exclude, start=self.frame.start, end=self.frame.end, tides=tides
-        )
+    frame, tides = network.settings.frame, network.settings.corrections.tides
+    found: dict[str, tuple[DailyRecord, ...]] = dict.fromkeys(sites, ())
+    for done, record in enumerate(network.records):
+        progress("daily means", done, len(network.records))
+        if record.site in sites:
+            exclude = sites[record.site].exclude
+            daily = reduce_to_daily(record, exclude=exclude, start=frame.start, end=frame.end, tides=tides)
+            found[record.site] += (daily,) if len(daily.time) else ()
+    progress("daily means", len(network.records), len(network.records))
+    return found
 
 
 def usable_sites(network: Network, records: Mapping[str, Sequence[DailyRecord]]) -> tuple[Site, ...]:

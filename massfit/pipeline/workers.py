@@ -32,6 +32,10 @@ class Workers:
             ProcessPoolExecutor(count, mp_context=get_context("spawn"), initializer=_one_thread) if count > 1 else None
         )
         self._limit = threadpool_limits(1)
+        if self._pool is not None:
+            # each submission starts a process, whose imports then run beside the first stages here
+            for _ in range(count):
+                self._pool.submit(_one_thread)
 
     def __enter__(self) -> "Workers":
         return self

@@ -144,7 +144,7 @@ def _month_marks(axes: Axes, reach: float, year: int) -> None:
         day = (date(year, month, 1) - date(year, 1, 1)).days
         direction = as_components(phasor_from_peak(1.0, day))
         axes.plot(*np.outer(direction, [0.97 * ring, ring]), color=REFERENCE, linewidth=0.8)
-        x, y = direction * (ring * 1.04)
+        x, y = direction * (ring * 0.91)
         axes.annotate(month_abbr[month], (float(x), float(y)), ha="center", va="center", fontsize=7.5, color=REFERENCE)
     turn = np.linspace(0.0, 2.0 * np.pi, 200)
     axes.plot(ring * np.cos(turn), ring * np.sin(turn), color=REFERENCE, linewidth=0.4)

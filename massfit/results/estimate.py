@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from massfit.annual.fit import SiteFit
 from massfit.network import Network
-from massfit.posterior.sample import Posterior
+from massfit.posterior.result import Posterior
 from massfit.records.record import DailyRecord
 from massfit.site import Site
 

@@ -1,0 +1,29 @@
+"""An invented network, written in the network-file format."""
+
+from pathlib import Path
+from typing import Any
+
+from massfit.io.write_network import check_empty, write_network
+from massfit.simulate.network import simulate_network
+from massfit.simulate.options import SimulationOptions
+
+
+def simulate_to_folder(folder: Path, seed: int, **options: Any) -> None:
+    """Invent a network with known truth and write it.
+
+    Parameters
+    ----------
+    folder : Path
+        Must not exist or be empty.
+    seed : int
+    **options
+        Of :class:`massfit.simulate.options.SimulationOptions`.
+
+    Raises
+    ------
+    InputError
+        The folder is not empty.
+    """
+    check_empty(folder)
+    invented = simulate_network(SimulationOptions(**options), seed=seed)
+    write_network(invented.network, folder, truth=invented.truth)

@@ -1,0 +1,147 @@
+"""A finished run as Datasets, ready for NetCDF files."""
+
+from collections.abc import Callable
+from datetime import UTC, datetime
+
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from massfit.results.estimate import Estimate, SiteReduction
+
+CONVENTIONS = "CF-1.13, ACDD-1.3"
+
+_ONE = "1"
+
+
+def result_datasets(estimate: Estimate) -> dict[str, xr.Dataset]:
+    """Every Dataset of a run by the name of its file.
+
+    Parameters
+    ----------
+    estimate : Estimate
+
+    Returns
+    -------
+    dict of str to xarray.Dataset
+    """
+    described = {
+        "posterior.nc": (estimate.posterior.to_dataset(), "draws of the annual phasor of ocean mass"),
+        "site_phasors.nc": (estimate.site_phasors, "annual phasor of each site"),
+        "fingerprints.nc": (estimate.fingerprints, "complex admittance of each site"),
+        "reduced_records.nc": (reduced_records(estimate), "daily records, every series subtracted, and what remains"),
+    }
+    return {name: _described(dataset, title, estimate) for name, (dataset, title) in described.items()}
+
+
+def reduced_records(estimate: Estimate) -> xr.Dataset:
+    """Daily records of all deployments end to end, with every correction, drift and remainder.
+
+    Parameters
+    ----------
+    estimate : Estimate
+
+    Returns
+    -------
+    xarray.Dataset
+        A CF contiguous ragged array over `obs`; `row_size` counts the days of each deployment.
+        ``pressure`` = the common corrections + the mean of the models present + ``drift`` + ``reduced``
+        on the days that were used, up to a constant for each deployment; ``drift`` and
+        ``reduced`` are NaN on the others.
+    """
+    rows = [(reduction, index) for reduction in estimate.reductions for index in range(len(reduction.daily))]
+    daily = [reduction.daily[index] for reduction, index in rows]
+
+    def joined(values: Callable[[SiteReduction, int], NDArray[np.float64]]) -> NDArray[np.float64]:
+        return np.concatenate([values(reduction, index) for reduction, index in rows], axis=-1)
+
+    variables: dict[str, tuple[tuple[str, ...], NDArray[np.float64], dict[str, str]]] = {
+        "pressure": (("obs",), joined(lambda r, i: r.daily[i].pressure), _pascal("daily mean, short tides removed"))
+    }
+    for name in ("long_period_tides", "pole_tide", "ocean_mean_atmosphere"):
+        text = f"{name.replace('_', ' ')}, subtracted"
+        variables[name] = (("obs",), joined(lambda r, i, name=name: _correction(r, i, name)), _pascal(text))  # type: ignore[misc]
+    variables["circulation"] = (
+        ("model", "obs"),
+        joined(lambda r, i: _correction(r, i, "circulation")),
+        _pascal("bottom pressure of the circulation model, subtracted"),
+    )
+    variables["drift"] = (
+        ("obs",),
+        joined(lambda r, i: _fitted(r, i, "drift")),
+        _pascal("fitted drift, steps and level"),
+    )
+    variables["reduced"] = (
+        ("obs",),
+        joined(lambda r, i: _fitted(r, i, "reduced")),
+        _pascal("what remains; the annual cycle is in it"),
+    )
+    return xr.Dataset(
+        {
+            **variables,
+            "row_size": (
+                ("deployment",),
+                np.array([len(record.time) for record in daily], dtype=np.int32),
+                {"long_name": "number of days of each deployment", "sample_dimension": "obs", "units": _ONE},
+            ),
+        },
+        coords={
+            "time": (
+                ("obs",),
+                np.concatenate([record.time for record in daily]),
+                {"long_name": "middle of the day, UTC"},
+            ),
+            "deployment": (
+                ("deployment",),
+                np.array([record.deployment for record in daily], dtype=object),
+                {"cf_role": "timeseries_id"},
+            ),
+            "site": (("deployment",), np.array([record.site for record in daily], dtype=object)),
+            "latitude": _place(rows, "latitude_deg", "degrees_north"),
+            "longitude": _place(rows, "longitude_deg", "degrees_east"),
+            "model": estimate.reductions[0].corrections["model"].values,
+        },
+        attrs={"featureType": "timeSeries"},
+    )
+
+
+def _pascal(text: str) -> dict[str, str]:
+    return {"units": "Pa", "long_name": text}
+
+
+def _place(
+    rows: list[tuple[SiteReduction, int]], name: str, units: str
+) -> tuple[tuple[str], NDArray[np.float64], dict[str, str]]:
+    values = np.array([getattr(reduction.site, name) for reduction, _ in rows], dtype=float)
+    return ("deployment",), values, {"units": units, "standard_name": name.removesuffix("_deg")}
+
+
+def _correction(reduction: SiteReduction, index: int, name: str) -> NDArray[np.float64]:
+    place = np.searchsorted(reduction.corrections["time"].values, reduction.daily[index].time)
+    return np.asarray(reduction.corrections[name].values[..., place])
+
+
+def _fitted(reduction: SiteReduction, index: int, name: str) -> NDArray[np.float64]:
+    """Fitted series of a deployment on all its days, NaN where a day was not used."""
+    record = reduction.daily[index]
+    values = np.full(len(record.time), np.nan)
+    for drift in reduction.fit.drifts:
+        if drift.deployment == record.deployment:
+            values[np.searchsorted(record.time, drift.time)] = getattr(drift, name)
+    return values
+
+
+def _described(dataset: xr.Dataset, title: str, estimate: Estimate) -> xr.Dataset:
+    """Add the attributes by which a stranger finds out what a file is."""
+    network = estimate.summary["network"]
+    attributes = {
+        "Conventions": CONVENTIONS,
+        "title": f"{network}: {title}",
+        "summary": " ".join(estimate.summary["assumptions"]),
+        "source": f"massfit {estimate.provenance['massfit']}",
+        "date_created": datetime.now(UTC).isoformat(timespec="seconds"),
+        "phase_reference": f"1 January {estimate.summary['reference_year']} 00:00 UTC",
+        "comment": "; ".join(estimate.summary["warnings"]),
+        "converged": int(estimate.summary["convergence"]["converged"]),
+    }
+    return dataset.assign_attrs({**dataset.attrs, **attributes})
