@@ -29,6 +29,22 @@ from massfit.settings import Settings
 _SUFFIXES = (".nc", ".txt")
 
 
+def check_empty(folder: Path) -> None:
+    """Refuse a folder that holds anything.
+
+    Parameters
+    ----------
+    folder : pathlib.Path
+
+    Raises
+    ------
+    InputError
+        It exists and is not an empty folder.
+    """
+    if folder.exists() and (not folder.is_dir() or any(folder.iterdir())):
+        raise InputError(Fault(str(folder), "", "the folder is not empty", "", "Choose a new or an empty folder"))
+
+
 def write_network(
     network: Network, folder: Path, *, truth: Mapping[str, Any] | None = None, readme: str | None = None
 ) -> None:
@@ -54,8 +70,7 @@ def write_network(
     InputError
         The folder is not empty.
     """
-    if folder.exists() and (not folder.is_dir() or any(folder.iterdir())):
-        raise InputError(Fault(str(folder), "", "the folder is not empty", "", "Choose a new or an empty folder"))
+    check_empty(folder)
     folder.parent.mkdir(parents=True, exist_ok=True)
     partial = Path(tempfile.mkdtemp(prefix=f".{folder.name}-partial-", dir=folder.parent))
     try:
