@@ -1,6 +1,7 @@
 """From a record as read to daily means free of short tides."""
 
 from collections.abc import Sequence
+from dataclasses import dataclass
 from datetime import date
 from typing import Literal
 
@@ -8,9 +9,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from massfit.records.clean import find_spikes, usable_samples
-from massfit.records.hourly import DAY_NS, EPOCH, HOUR_NS, Hourly, days_from_epoch, hourly_means
+from massfit.records.hourly import HOUR_NS, Hourly, days_from_epoch, hourly_means, instants
 from massfit.records.record import Action, DailyRecord, Record, TidalConstant
-from massfit.records.tides import fit_short_tides
+from massfit.records.steps import NO_STEPS, FoundSteps, find_steps
+from massfit.records.tides import TideFit, fit_short_tides
 from massfit.site import Interval
 
 _DAILY_ABOVE_HOURS = 6.0
@@ -36,7 +38,8 @@ def reduce_to_daily(
     Each hour counts once, a day needs three quarters of its hours, and a mean whose
     hours are not symmetric about noon is brought to noon along the slope of the
     neighbouring days. Drift, weather, and the annual and the semi-annual cycle pass
-    unchanged: long-period lines are never fitted.
+    unchanged: long-period lines are never fitted. Where `record.find_steps` says so
+    sharp changes of level are looked for in the tide-free hours and added to the steps.
 
     Parameters
     ----------
@@ -61,23 +64,32 @@ def reduce_to_daily(
     (90, '2016-01-01T12')
     """
     time, pressure, actions = usable_samples(record.time, record.pressure, exclude=exclude, start=start, end=end)
-    spacing = _spacing_hours(time)
-    constants: tuple[TidalConstant, ...] = ()
-    if spacing >= _DAILY_ABOVE_HOURS:
-        time, pressure, done = _as_it_is(time, pressure, tides)
+    declared = np.sort(days_from_epoch(np.asarray(record.steps, dtype="datetime64[ns]")))
+    if _spacing_hours(time) >= _DAILY_ABOVE_HOURS:
+        reduced = _as_it_is(time, pressure, declared, tides, record.find_steps)
     else:
-        time, pressure, constants, done = _averaged(time, pressure, record.steps, spacing, tides)
+        reduced = _averaged(time, pressure, declared, tides, record.find_steps)
+    found = reduced.steps.sizes.size
     return DailyRecord(
         site=record.site,
         deployment=record.deployment,
-        time=time,
-        pressure=pressure,
+        time=reduced.time,
+        pressure=reduced.pressure,
         start=_first_instant(record),
         drift=record.drift,
-        steps=record.steps,
-        tides=constants,
-        actions=(*record.actions, *actions, *(action for action in done if action.count)),
+        steps=tuple(np.sort([*record.steps, *instants(reduced.steps.days)])) if found else record.steps,
+        tides=reduced.tides,
+        actions=(*record.actions, *actions, *(action for action in reduced.actions if action.count)),
     )
+
+
+@dataclass(frozen=True)
+class _Reduced:
+    time: NDArray[np.datetime64]
+    pressure: NDArray[np.float64]
+    steps: FoundSteps
+    tides: tuple[TidalConstant, ...]
+    actions: list[Action]
 
 
 def _first_instant(record: Record) -> np.datetime64:
@@ -91,14 +103,25 @@ def _spacing_hours(time: NDArray[np.datetime64]) -> float:
 
 
 def _as_it_is(
-    time: NDArray[np.datetime64], pressure: NDArray[np.float64], tides: str
-) -> tuple[NDArray[np.datetime64], NDArray[np.float64], list[Action]]:
+    time: NDArray[np.datetime64], pressure: NDArray[np.float64], declared: NDArray[np.float64], tides: str, search: bool
+) -> _Reduced:
     spikes = find_spikes(pressure)
     actions = [_spike_action(spikes, "sample")]
+    time, pressure = time[~spikes], pressure[~spikes]
     if tides == "remove" and time.size:
         detail = "too coarse to show them; plain daily means hold 0.27 % of K1 and P1, which look annual"
         actions.append(Action("short tides not removed", time.size, detail))
-    return time[~spikes], pressure[~spikes], actions
+    steps = find_steps(days_from_epoch(time), pressure, known=declared) if search else NO_STEPS
+    return _Reduced(time, pressure, steps, (), [*actions, _step_action(steps)])
+
+
+def _step_action(steps: FoundSteps) -> Action:
+    each = (
+        f"{time} {size / 100.0:+.1f} hPa"
+        for time, size in zip(instants(steps.days).astype("datetime64[m]"), steps.sizes, strict=True)
+    )
+    detail = f"{', '.join(each)}; found where sharp and above {steps.threshold / 100.0:.1f} hPa"
+    return Action("steps found", steps.sizes.size, detail)
 
 
 def _spike_action(spikes: NDArray[np.bool_], what: str) -> Action:
@@ -107,36 +130,49 @@ def _spike_action(spikes: NDArray[np.bool_], what: str) -> Action:
 
 
 def _averaged(
-    time: NDArray[np.datetime64],
-    pressure: NDArray[np.float64],
-    steps: Sequence[np.datetime64],
-    spacing: float,
-    tides: str,
-) -> tuple[NDArray[np.datetime64], NDArray[np.float64], tuple[TidalConstant, ...], list[Action]]:
+    time: NDArray[np.datetime64], pressure: NDArray[np.float64], declared: NDArray[np.float64], tides: str, search: bool
+) -> _Reduced:
     actions = []
+    spacing = _spacing_hours(time)
     if spacing < _DIRECT_BELOW_HOURS:
         spikes = find_spikes(pressure)
         time, pressure = time[~spikes], pressure[~spikes]
         actions.append(_spike_action(spikes, "sample"))
     hours = hourly_means(time, pressure)
-    breaks = np.sort(days_from_epoch(np.asarray(steps, dtype="datetime64[ns]")))
-    if tides == "remove":
-        fit = fit_short_tides(hours.days, hours.pressure, spread=hours.spread, breaks=breaks)
-        constants, spikes = fit.constants, fit.spikes
-        hours = Hourly(hours.hour, hours.days, hours.spread, hours.pressure - fit.tide)
-        detail = f"{len(constants)} lines, no long-period ones, in segments: {fit.segments}"
-        actions.append(Action("short tides removed", hours.hour.size, detail))
-        detail = f"too short to part {', '.join(fit.merged)}; daily means suppress what is left"
-        actions.append(Action("tidal lines merged with larger neighbours", len(fit.merged), detail))
-    else:
-        constants, spikes = (), find_spikes(hours.pressure)
+    breaks, steps = declared, NO_STEPS
+    fit = _short_tides(hours, breaks, tides)
+    if search:
+        tide_free = (hours.pressure - fit.tide)[~fit.spikes]
+        steps = find_steps(hours.days[~fit.spikes], tide_free, known=declared)
+        breaks = np.sort(np.concatenate([declared, steps.days]))
+        actions.append(_step_action(steps))
+    if steps.days.size:
+        fit = _short_tides(hours, breaks, tides)
+    actions += _tide_actions(fit)
+    hours = Hourly(hours.hour, hours.days, hours.spread, hours.pressure - fit.tide)
     if spacing >= _DIRECT_BELOW_HOURS:
-        hours = hours.without(spikes)
-        actions.append(_spike_action(spikes, "hour"))
+        hours = hours.without(fit.spikes)
+        actions.append(_spike_action(fit.spikes, "hour"))
     day, mean, sparse = _daily_means(hours, breaks, max(spacing, 1.0))
     actions.append(Action("days left out", sparse, "less than three quarters of the hours on one level"))
-    noon = EPOCH + day * np.timedelta64(DAY_NS, "ns") + np.timedelta64(DAY_NS // 2, "ns")
-    return noon, mean, constants, actions
+    return _Reduced(instants(day + 0.5), mean, steps, fit.constants, actions)
+
+
+def _short_tides(hours: Hourly, breaks: NDArray[np.float64], tides: str) -> TideFit:
+    if tides == "remove":
+        return fit_short_tides(hours.days, hours.pressure, spread=hours.spread, breaks=breaks)
+    return TideFit(np.zeros(hours.days.size), find_spikes(hours.pressure), (), (), 0)
+
+
+def _tide_actions(fit: TideFit) -> list[Action]:
+    if not fit.segments:
+        return []
+    detail = f"{len(fit.constants)} lines, no long-period ones, in segments: {fit.segments}"
+    merged = f"too short to part {', '.join(fit.merged)}; daily means suppress what is left"
+    return [
+        Action("short tides removed", fit.tide.size, detail),
+        Action("tidal lines merged with larger neighbours", len(fit.merged), merged),
+    ]
 
 
 def _daily_means(

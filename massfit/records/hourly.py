@@ -1,6 +1,7 @@
 """Means over the hours of a record, whatever its sampling."""
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -49,6 +50,17 @@ def days_from_epoch(time: NDArray[np.datetime64] | np.datetime64) -> NDArray[np.
     1.5
     """
     return np.asarray((time - EPOCH) / np.timedelta64(DAY_NS, "ns"), dtype=float)
+
+
+def instants(days: NDArray[np.floating[Any]]) -> NDArray[np.datetime64]:
+    """Turn days from 1 January 2000 00:00 UTC into times, to the second.
+
+    Examples
+    --------
+    >>> str(instants(np.array([1.5]))[0])
+    '2000-01-02T12:00:00.000000000'
+    """
+    return np.asarray(EPOCH + np.round(days * 86_400).astype("timedelta64[s]"))
 
 
 def hourly_means(time: NDArray[np.datetime64], pressure: NDArray[np.float64]) -> Hourly:

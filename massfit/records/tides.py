@@ -105,7 +105,7 @@ def fit_short_tides(
         tide[part] = tides @ coefficients
         for name, cosine, sine in zip(names, *coefficients.reshape(2, -1), strict=True):
             phasors.setdefault(name, []).append(complex(cosine, sine))
-    constants = [_constant(name, np.mean(values)) for name, values in phasors.items()]
+    constants = [_constant(name, complex(np.mean(values))) for name, values in phasors.items()]
     constants.sort(key=lambda constant: -constant.amplitude)
     return TideFit(tide, spikes, tuple(constants), tuple(name for name in SHORT_TIDES if name in merged), count)
 

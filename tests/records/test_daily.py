@@ -144,6 +144,23 @@ def test_a_declared_step_parts_the_day(hour: int, before: float | None, after: f
     assert daily.time.size == (39 if before is None else 40)
 
 
+def test_an_undeclared_step_is_found_and_reported(rng: np.random.Generator) -> None:
+    time = stamps(24 * 200)
+    level = np.where(time >= START + 90 * DAY + 5 * HOUR, 1200.0, 0.0)
+    pressure = level + 4000 * wave(time, 1 / SHORT_TIDES["M2"]) + rng.normal(scale=20.0, size=time.size)
+    daily = reduce_to_daily(record(time, pressure, find_steps=True))
+    (step,) = daily.steps
+    assert abs(step - (START + 90 * DAY + 5 * HOUR)) <= HOUR
+    (action,) = [action for action in daily.actions if action.what == "steps found"]
+    # hPa; a first estimate, while the tides still lean on the step
+    assert float(action.detail.split()[1]) == pytest.approx(12.0, rel=0.1)
+    # 20 Pa of white noise leave 4 Pa in a mean of 24 hours
+    expected = np.where(daily.time >= step, 1200.0, 0.0)
+    np.testing.assert_allclose(daily.pressure, expected, rtol=0, atol=5 * 20 / np.sqrt(18))
+    # without the search nothing is done about it
+    assert reduce_to_daily(record(time, pressure)).steps == ()
+
+
 def test_mixed_sampling_weighs_hours_and_not_samples() -> None:
     # one hour of each day at 15 s and a quarter of a metre higher
     dense = [START + day * DAY + 6 * HOUR + np.arange(240) * np.timedelta64(15, "s") for day in range(10)]
@@ -279,7 +296,7 @@ def test_gaps_and_the_fall_of_a_daily_series(open_data: Path, column: int) -> No
     rows = (open_data / "axial_botpt_mj03e_mj03f_daily_2015_2026.csv").read_text().splitlines()[1:]
     day = np.array([row.split(",")[0] for row in rows], dtype="datetime64[ns]") + 12 * HOUR
     depth = np.array([float(row.split(",")[column] or "nan") for row in rows])
-    daily = reduce_to_daily(record(day, PASCAL_PER_M * depth), tides="already-removed")
+    daily = reduce_to_daily(record(day, PASCAL_PER_M * depth, find_steps=True), tides="already-removed")
     missing = int(np.count_nonzero(np.isnan(depth)))
     rejected = actions_of(daily).get("sample spikes rejected", 0)
     assert actions_of(daily)["samples without a value left out"] == missing
@@ -288,6 +305,8 @@ def test_gaps_and_the_fall_of_a_daily_series(open_data: Path, column: int) -> No
     # the sea floor fell by 1 to 2.4 m over a few days of April 2015: not a spike
     fall = (day >= np.datetime64("2015-04-22")) & (day < np.datetime64("2015-05-02")) & np.isfinite(depth)
     assert np.isin(day[fall], daily.time).all()
+    # and the one step of eleven years, although the floor moves all the time
+    assert [step.astype("datetime64[M]") for step in daily.steps] == [np.datetime64("2015-04")]
 
 
 def test_a_change_of_level_of_a_sampled_record(open_data: Path) -> None:
