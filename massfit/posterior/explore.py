@@ -16,7 +16,7 @@ ENSEMBLES = 4
 WALKERS = 48
 """Walkers of each ensemble."""
 
-STEPS, MAX_STEPS = 280, 2240
+STEPS, MAX_STEPS = 240, 1920
 """Steps kept of each ensemble, a third as many before them being thrown away; and the cap of a run that is extended."""
 
 _FREEDOM = 5.0  # of the Student proposal: heavier tails than the target's
@@ -37,7 +37,8 @@ class ComplementMove(emcee.moves.RedBlueMove):  # type: ignore[misc]
         others = np.concatenate(complement)
         count, size = sample.shape
         centre = others.mean(axis=0)
-        root = np.linalg.cholesky(np.cov(others.T) + 1e-12 * np.eye(size))
+        shift = others - centre
+        root = np.linalg.cholesky(shift.T @ shift / len(others) + 1e-12 * np.eye(size))
         stretch = np.sqrt(_FREEDOM / random.chisquare(_FREEDOM, size=(count, 1)))
         proposal = centre + (stretch * random.standard_normal((count, size))) @ root.T
         both = np.linalg.solve(root, (np.concatenate([sample, proposal]) - centre).T)
@@ -86,7 +87,7 @@ class ScaleExplorer:
     def __init__(self, model: LinearModel, prior_scales: NDArray[np.float64], rng: np.random.Generator) -> None:
         self._model, self._prior_scales = model, prior_scales
         self._to_log_scales = scale_axes(model.has_contrasts)
-        moves = [(ComplementMove(), 0.7), (emcee.moves.DEMove(), 0.3)]
+        moves = [(ComplementMove(), 0.9), (emcee.moves.DEMove(), 0.1)]
         self._samplers = [
             emcee.EnsembleSampler(WALKERS, 3, self._log_posterior, moves=moves, vectorize=True)
             for _ in range(ENSEMBLES)
@@ -96,7 +97,9 @@ class ScaleExplorer:
     def _log_posterior(self, coordinates: NDArray[np.float64]) -> NDArray[np.float64]:
         log_scales = self._to_log_scales(coordinates)
         density = log_scale_prior(log_scales, self._prior_scales)
-        inside = np.abs(log_scales).max(axis=1) < 100.0  # beyond, squares of scales leave the range of numbers
+        ratio = log_scales - np.log(self._prior_scales)
+        # no mass lies beyond (the prior leaves 1e-13 above), but the solves lose their digits there
+        inside = (ratio.max(axis=1) < 8.0) & (ratio.min(axis=1) > -30.0)
         density[inside] += log_likelihood(self._model, log_scales[inside])
         return np.where(inside, density, -np.inf)
 

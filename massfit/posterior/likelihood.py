@@ -15,6 +15,7 @@ chapters 5 and 14, for the model; the algebra is that of linear regression).
 """
 
 from dataclasses import dataclass, fields, replace
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -50,10 +51,15 @@ class Rows:
     value: NDArray[np.float64]
     variance: NDArray[np.float64]
 
-    @property
+    @cached_property
     def is_mean(self) -> NDArray[np.bool_]:
         """(n_row,), whether the row is a mean over models."""
         return np.asarray(self.model_weight.sum(axis=1) > 0.5)
+
+    @cached_property
+    def local_factor(self) -> NDArray[np.float64]:
+        """(n_row,), what s_local^2 is multiplied with: 1 / M_s for a mean, 1 for a contrast."""
+        return np.asarray((self.model_weight**2).sum(axis=1))
 
 
 def observation_rows(observations: Observations) -> Rows:
@@ -176,7 +182,7 @@ def row_variance(rows: Rows, log_scales: NDArray[np.float64]) -> NDArray[np.floa
         Pa2.
     """
     site, local = np.exp(2.0 * log_scales[:, :1]), np.exp(2.0 * log_scales[:, 1:2])
-    return np.asarray(rows.variance + site * rows.is_mean + local * (rows.model_weight**2).sum(axis=1))
+    return np.asarray(rows.variance + site * rows.is_mean + local * rows.local_factor)
 
 
 def information(

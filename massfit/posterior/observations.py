@@ -124,12 +124,12 @@ def read_observations(
     phasor = site_phasors["phasor"].values.astype(float)
     if "air_load_response" in matched:
         phasor = phasor - matched["air_load_response"].values[:, None, None, :]
-    models = tuple(str(model) for model in site_phasors["model"].values)
+    used = np.isfinite(phasor).any(axis=(0, 1, 3))  # a model without any site would be a column of nothing
     observations = Observations(
         sites,
-        models,
+        tuple(str(model) for model in site_phasors["model"].values[used]),
         site_phasors["weight"].values.astype(float),
-        phasor,
+        phasor[:, :, used],
         site_phasors["covariance"].values.astype(float),
         site_phasors["model_noise"].values.astype(float),
     )

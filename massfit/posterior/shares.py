@@ -80,7 +80,7 @@ def _member_terms(model: LinearModel, posterior: ScalePosterior, observations: O
         "record": average(((linear @ record) * linear).sum(axis=(1, 2))),
         "site_scatter": average(site * (squares @ rows.is_mean)),
         "model_local": average(
-            ((linear @ noise) * linear).sum(axis=(1, 2)) + local * (squares @ (rows.model_weight**2).sum(axis=1))
+            ((linear @ noise) * linear).sum(axis=(1, 2)) + local * (squares @ rows.local_factor)
         ),
         "model_spread": average(common * (answer[:, :, 4:] ** 2).sum(axis=(1, 2))),
         "atmosphere": average((answer[:, :, 2:4] ** 2).sum(axis=(1, 2))),

@@ -7,6 +7,7 @@ import numpy as np
 import pytest
 import xarray as xr
 
+from massfit.posterior.likelihood import LinearModel, linear_model, observation_rows
 from massfit.posterior.observations import Observations
 
 
@@ -169,3 +170,21 @@ def invent() -> Callable[..., Invented]:
 @pytest.fixture(scope="session")
 def dense_twin() -> type[DenseTwin]:
     return DenseTwin
+
+
+@pytest.fixture(scope="session")
+def regression() -> Callable[..., LinearModel]:
+    def build(
+        network: Invented,
+        *,
+        annual_sd: float = 500.0,
+        atmosphere_sd: float = 4.0,
+        truth: float = 1.0,
+        member: int = 0,
+    ) -> LinearModel:
+        rows = observation_rows(network.observations)
+        return linear_model(
+            rows, network.admittance[member], annual_sd=annual_sd, atmosphere_sd=atmosphere_sd, truth=truth
+        )
+
+    return build

@@ -9,10 +9,8 @@ from massfit.posterior.likelihood import (
     annual_given_scales,
     estimator,
     joined,
-    linear_model,
     log_likelihood,
     log_scale_prior,
-    observation_rows,
     without_site,
 )
 
@@ -29,15 +27,8 @@ NETWORKS = {
 }
 
 
-def regression(network, *, annual_sd=500.0, atmosphere_sd=4.0, truth=1.0, member=0):
-    rows = observation_rows(network.observations)
-    return linear_model(
-        rows, network.admittance[member], annual_sd=annual_sd, atmosphere_sd=atmosphere_sd, truth=truth
-    )
-
-
 @pytest.mark.parametrize(("name", "truth"), list(product(NETWORKS, [1.0, 0.0])))
-def test_rows_give_what_the_dense_covariance_gives(invent, dense_twin, name, truth):
+def test_rows_give_what_the_dense_covariance_gives(invent, regression, dense_twin, name, truth):
     network = invent(**NETWORKS[name])
     model, twin = regression(network, truth=truth), dense_twin(network, truth=truth)
     mean, covariance = annual_given_scales(model, LOG_SCALES)
@@ -48,20 +39,20 @@ def test_rows_give_what_the_dense_covariance_gives(invent, dense_twin, name, tru
     np.testing.assert_allclose(covariance, dense_covariance, rtol=1e-8, atol=1e-6)
 
 
-def test_a_wrong_admittance_is_seen_by_the_dense_covariance(invent, dense_twin):
+def test_a_wrong_admittance_is_seen_by_the_dense_covariance(invent, regression, dense_twin):
     network = invent(members=2)
     wrong = log_likelihood(regression(network, member=1), LOG_SCALES)
     assert np.abs(wrong - dense_twin(network).log_likelihood(LOG_SCALES)).min() > 1e-3
 
 
-def test_no_atmosphere_error_and_vanishing_scales_need_no_special_case(invent, dense_twin):
+def test_no_atmosphere_error_and_vanishing_scales_need_no_special_case(invent, regression, dense_twin):
     network = invent(missing=0.3)
     none = np.array([[-40.0, -40.0, -40.0]])
     model, twin = regression(network, atmosphere_sd=0.0), dense_twin(network, atmosphere_sd=0.0)
     np.testing.assert_allclose(log_likelihood(model, none), twin.log_likelihood(none), rtol=1e-9)
 
 
-def test_one_phasor_has_the_closed_form_of_a_shrunk_measurement(invent):
+def test_one_phasor_has_the_closed_form_of_a_shrunk_measurement(invent, regression):
     # one site, one model, F known: A ~ N(0, p), z = F A + error of variance C + s^2 (all terms) per component
     network = invent(sites=1, models=1)
     seen = network.observations
@@ -75,13 +66,13 @@ def test_one_phasor_has_the_closed_form_of_a_shrunk_measurement(invent):
     np.testing.assert_allclose(covariance[0], np.linalg.inv(precision), rtol=1e-10, atol=1e-8)
 
 
-def test_the_estimator_is_the_linear_map_to_the_mean(invent):
+def test_the_estimator_is_the_linear_map_to_the_mean(invent, regression):
     model = regression(invent(missing=0.3))
     mean, _ = annual_given_scales(model, LOG_SCALES)
     np.testing.assert_allclose(estimator(model, LOG_SCALES) @ model.rows.value, mean, rtol=1e-9)
 
 
-def test_the_common_error_of_the_models_does_not_average_down(invent):
+def test_the_common_error_of_the_models_does_not_average_down(invent, regression):
     # equal F at very many sites: Var = s^2 (1 + 1/M) / |F|^2 for r = 1 and s^2 / M / |F|^2 for r = 0
     network = invent(sites=1500, scales=(1.0, 1.0, 30.0))
     equal = replace(network, admittance=np.full((1, 1500), 1.2 + 0.1j))
@@ -92,7 +83,7 @@ def test_the_common_error_of_the_models_does_not_average_down(invent):
         assert np.diag(covariance[0]) == pytest.approx(limit / abs(1.2 + 0.1j) ** 2, rel=0.005)
 
 
-def test_leaving_a_site_out_and_joining_it_again_changes_nothing(invent):
+def test_leaving_a_site_out_and_joining_it_again_changes_nothing(invent, regression):
     model = regression(invent(missing=0.3))
     alone = model
     for s in range(8):
