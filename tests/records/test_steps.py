@@ -20,7 +20,7 @@ def weather(rng: np.random.Generator, scale: float = 120.0, hours: float = 60.0)
 
 def test_planted_steps_are_found_where_they_are(rng: np.random.Generator) -> None:
     planted, sizes = [50.3, 200.7, 310.1], np.array([900.0, -700.0, 1500.0])
-    values = weather(rng) + sizes @ (DAYS >= np.array(planted)[:, None])
+    values = weather(rng) + sizes @ (np.array(planted)[:, None] <= DAYS)
     found = find_steps(DAYS, values)
     assert found.threshold < 700.0
     # within two hours of white noise and weather
