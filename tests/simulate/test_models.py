@@ -28,9 +28,7 @@ def models(truth: Circulation) -> tuple[CirculationModel, ...]:
     at_sites = xr.DataArray(PATTERNS, {"site": [s.id for s in SITES]}, ("site", "pattern"))
     rng = np.random.default_rng(3)
     common = common_errors(rng, 3, error=1.0)
-    return draw_models(
-        rng, truth, CLOCK, bumps=BUMPS, at_sites=at_sites, common=common, error=1.0, missing=SITES[2].id
-    )
+    return draw_models(rng, truth, CLOCK, bumps=BUMPS, at_sites=at_sites, common=common, error=1.0, missing=SITES[2].id)
 
 
 def test_one_by_site_one_on_a_grid_one_with_its_own_mean(models: tuple[CirculationModel, ...]) -> None:

@@ -13,9 +13,7 @@ def test_sites_lie_on_open_ocean_far_from_each_other(seed: int) -> None:
     around = np.deg2rad(np.arange(0, 360, 15))
     for site in sites:
         # three degrees around every site there is nothing but ocean
-        ring = ocean.fraction_at(
-            site.latitude_deg + 3.0 * np.sin(around), site.longitude_deg + 3.0 * np.cos(around)
-        )
+        ring = ocean.fraction_at(site.latitude_deg + 3.0 * np.sin(around), site.longitude_deg + 3.0 * np.cos(around))
         assert np.all(ring == 1.0)
         assert site.depth_m is not None
         assert site.depth_m > 3800.0
