@@ -23,8 +23,6 @@ _SMALLEST_SCALE = 1.0
 _SD_PER_MEDIAN = 1.4826
 """Standard deviation of a normal error per median of its magnitude."""
 
-Samples = tuple[NDArray[np.datetime64], NDArray[np.float64], tuple[Action, ...]]
-
 
 def usable_samples(
     time: NDArray[np.datetime64],
@@ -33,7 +31,7 @@ def usable_samples(
     exclude: Sequence[Interval] = (),
     start: date | None = None,
     end: date | None = None,
-) -> Samples:
+) -> tuple[NDArray[np.datetime64], NDArray[np.float64], tuple[Action, ...]]:
     """Put samples in order of time, without gaps, repeats and what the analyst left out.
 
     Parameters

@@ -57,6 +57,28 @@ def test_a_metre_of_tide_leaves_less_than_a_tenth_of_a_millimetre(name: str) -> 
     assert np.abs(daily.pressure).max() < 0.1 * PASCAL_PER_MM
 
 
+@pytest.mark.parametrize("name", ["M2", "K1"])
+def test_quarter_hours_are_as_good(name: str) -> None:
+    time = stamps(96 * 365, minutes=0, step=np.timedelta64(15, "m"))
+    daily = reduce_to_daily(record(time, PASCAL_PER_M * wave(time, 1 / SHORT_TIDES[name])))
+    assert np.abs(daily.pressure).max() < 0.1 * PASCAL_PER_MM
+    # four samples an hour hold 0.990 of M2, which the fit takes into account
+    assert daily.tides[0].amplitude == pytest.approx(PASCAL_PER_M, rel=1e-4)
+
+
+def test_two_months_leave_a_millimetre_and_say_so() -> None:
+    # metres of an ocean with all the neighbours that two months do not part
+    sizes = {"M2": 0.5, "S2": 0.2, "N2": 0.1, "K2": 0.054, "K1": 0.3, "P1": 0.1, "O1": 0.2, "Q1": 0.04}
+    time = stamps(24 * 60)
+    tide = PASCAL_PER_M * sum(size * wave(time, 1 / SHORT_TIDES[name], size) for name, size in sizes.items())
+    daily = reduce_to_daily(record(time, tide))
+    assert np.abs(daily.pressure).max() < 1.5 * PASCAL_PER_MM
+    (action,) = [action for action in daily.actions if action.what == "tidal lines merged with larger neighbours"]
+    assert "P1, K2" in action.detail
+    # control: plain means
+    assert np.abs(reduce_to_daily(record(time, tide), tides="already-removed").pressure).max() > 20 * PASCAL_PER_MM
+
+
 @pytest.mark.parametrize("name", ["K1", "P1"])
 def test_plain_means_would_leave_an_annual_line(name: str) -> None:
     # control: without the fit 0.27 % of the line stays, of 1 / (2 (1/f - 1)) days: a year
