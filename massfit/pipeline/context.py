@@ -4,6 +4,7 @@ from collections.abc import Mapping, Sequence
 from typing import Any
 
 from massfit.network import Network
+from massfit.posterior.summary import QUIET_SD
 from massfit.results.assumptions import stated_assumptions
 from massfit.results.estimate import SiteReduction
 
@@ -40,7 +41,7 @@ def in_context(
         "sites": [_site(entry, reduction) for entry, reduction in zip(summary["sites"], reductions, strict=True)],
         "left_out": _left_out(network, reductions),
         "assumptions": list(stated_assumptions(network)),
-        "warnings": [*network.warnings, *summary["warnings"]],
+        "warnings": [*_no_quiet_site(reductions), *network.warnings, *summary["warnings"]],
         "actions": {
             daily.deployment: [
                 {"what": action.what, "count": action.count, "detail": action.detail} for action in daily.actions
@@ -63,6 +64,15 @@ def _site(entry: Mapping[str, Any], reduction: SiteReduction) -> dict[str, Any]:
         "models": list(fit.models),
         "warnings": [*entry["warnings"], *notes, *fit.notes],
     }
+
+
+def _no_quiet_site(reductions: Sequence[SiteReduction]) -> list[str]:
+    if any(reduction.fit.reduced_sd <= QUIET_SD for reduction in reductions):
+        return []
+    return [
+        "No site of this network is quiet: what the records hold at the annual line may be dynamics or the recorder, so "
+        "do not read the answer as the cycle of ocean mass."
+    ]
 
 
 def _left_out(network: Network, reductions: Sequence[SiteReduction]) -> dict[str, str]:

@@ -1,0 +1,70 @@
+"""The main job on real measurements that are not quiet: it must end well and claim little."""
+
+import json
+import shutil
+from collections.abc import Mapping
+from pathlib import Path
+from typing import Any
+
+import pytest
+
+from massfit.constants import STANDARD_GRAVITY
+from massfit.io.network_file import read_network
+from massfit.pipeline.estimate import estimate
+from massfit.pipeline.save import save_results
+from massfit.report.text import summary_text
+from massfit.results.estimate import Estimate
+
+HERE = Path(__file__).parent
+
+
+@pytest.fixture(scope="module")
+def folder(tmp_path_factory: pytest.TempPathFactory, open_data: Path) -> Path:
+    folder = tmp_path_factory.mktemp("volcano")
+    shutil.copy(HERE / "network.toml", folder)
+    (folder / "open_data").symlink_to(open_data)
+    return folder
+
+
+@pytest.fixture(scope="module")
+def result(folder: Path) -> Estimate:
+    return estimate(read_network(folder, outside=True))
+
+
+@pytest.fixture(scope="module")
+def summary(result: Estimate) -> Mapping[str, Any]:
+    return result.summary
+
+
+def test_it_converges_and_is_written(result, summary, folder):
+    assert summary["convergence"]["converged"]
+    save_results(result, folder / "results")
+    assert json.loads((folder / "results/estimate.json").read_text()) == summary
+    assert (folder / "results/report.html").exists()
+
+
+def test_the_answer_is_very_wide(summary):
+    # a network of quiet sites states a few hundredths to two tenths of a hPa; two recorders on a volcano, with no model
+    # subtracted, must not come near that
+    assert summary["amplitude_hpa"]["sd"] > 0.5
+    low, high = summary["amplitude_hpa"]["region95"]
+    assert high - low > 2.0
+
+
+def test_both_sites_are_flagged_as_not_quiet(summary):
+    for site in summary["sites"]:
+        assert site["reduced_sd_hpa"] > 3.0
+        assert any("Not quiet" in warning for warning in site["warnings"]), site["id"]
+
+
+def test_the_reader_is_told_that_no_site_is_quiet(summary):
+    assert any("No site of this network is quiet" in warning for warning in summary["warnings"])
+    assert "No site of this network is quiet" in " ".join(summary_text(summary).split())
+
+
+@pytest.mark.parametrize(("site", "fall_m"), [(0, (0.90, 1.00)), (1, (2.30, 2.40))])
+def test_the_declared_fall_of_the_sea_floor_is_fitted(result, site, fall_m):
+    # 0.95 m at the first recorder, 2.3 to 2.4 m at the second, by the provenance of the open data
+    ((_, step),) = result.reductions[site].fit.drifts[0].steps
+    metres = step.mean / (1035.0 * STANDARD_GRAVITY)
+    assert fall_m[0] - 2 * step.sd / 1e4 < metres < fall_m[1] + 2 * step.sd / 1e4
