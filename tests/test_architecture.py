@@ -79,7 +79,7 @@ def test_modules_stay_short(path: Path) -> None:
 
 
 def test_only_io_and_tables_open_files() -> None:
-    openers = {"open", "open_dataset", "read_text", "read_bytes", "write_text", "savefig", "to_netcdf"}
+    openers = {"open", "open_dataset", "read_text", "read_bytes", "write_text", "to_netcdf"}
     found = []
     for path in MODULES:
         if room_of(path) in {"io", "tables"}:

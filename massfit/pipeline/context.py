@@ -70,8 +70,8 @@ def _no_quiet_site(reductions: Sequence[SiteReduction]) -> list[str]:
     if any(reduction.fit.reduced_sd <= QUIET_SD for reduction in reductions):
         return []
     return [
-        "No site of this network is quiet: what the records hold at the annual line may be dynamics or the recorder, so "
-        "do not read the answer as the cycle of ocean mass."
+        "No site of this network is quiet: what the records hold at the annual line may be dynamics or the recorder, "
+        "so do not read the answer as the cycle of ocean mass."
     ]
 
 

@@ -6,6 +6,7 @@ from typing import Any
 from massfit.io.write_network import check_empty, write_network
 from massfit.simulate.network import simulate_network
 from massfit.simulate.options import SimulationOptions
+from massfit.simulate.story import tell_story
 
 
 def simulate_to_folder(folder: Path, seed: int, **options: Any) -> None:
@@ -25,5 +26,7 @@ def simulate_to_folder(folder: Path, seed: int, **options: Any) -> None:
         The folder is not empty.
     """
     check_empty(folder)
-    invented = simulate_network(SimulationOptions(**options), seed=seed)
-    write_network(invented.network, folder, truth=invented.truth)
+    chosen = SimulationOptions(**options)
+    invented = simulate_network(chosen, seed=seed)
+    story = tell_story(invented, chosen, folder=folder.name)
+    write_network(invented.network, folder, truth=invented.truth, readme=story)

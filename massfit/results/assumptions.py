@@ -97,9 +97,11 @@ def _fingerprint(network: Network) -> list[str]:
 def _drift_and_noise(network: Network) -> str:
     forms = sorted({record.drift for record in network.records})
     scales = ", ".join(f"{scale:g}" for scale in network.settings.priors.noise_time_scales_days)
+    found = any(record.find_steps for record in network.records)
+    steps = "sharp changes of level are searched for, fitted and listed" if found else "only declared steps are fitted"
     return (
         f"Drift per deployment ({' / '.join(forms)}), annual and semi-annual cycle are fitted together under red noise "
-        f"(time scales {scales} days) and white noise; only declared steps are fitted, none are searched for."
+        f"(time scales {scales} days) and white noise; {steps}."
     )
 
 
