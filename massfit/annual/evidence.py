@@ -20,7 +20,7 @@ Floats = NDArray[np.float64]
 ANNUAL = np.array([0, 1])
 """Fixed columns that hold the annual phasor."""
 
-COMPRESSION = 1e-10
+COMPRESSION = 1e-12
 """Singular values kept, relative to the largest: a drift of 30 hPa is kept to 1e-6 Pa."""
 
 
@@ -127,11 +127,13 @@ def compress(exponentials: Floats, first_columns: NDArray[np.int64]) -> tuple[Fl
     """
     if not len(first_columns):
         return exponentials, np.zeros((0, 0))
-    # deployments own different rows, so that all directions are orthonormal
     bases = []
     for block in np.split(exponentials, first_columns[1:], axis=1):
-        left, values, _ = np.linalg.svd(block, full_matrices=False)
-        bases.append(left[:, values > COMPRESSION * values[0]])
+        # deployments own different rows; decomposed alone, their directions are orthonormal to rounding
+        rows = block.any(axis=1)
+        left, values, _ = np.linalg.svd(block[rows], full_matrices=False)
+        bases.append(np.zeros((len(block), int(np.sum(values > COMPRESSION * values[0])))))
+        bases[-1][rows] = left[:, : bases[-1].shape[1]]
     basis = np.column_stack(bases)
     return basis, basis.T @ exponentials
 
