@@ -1,0 +1,120 @@
+"""Evidence, coefficients and their covariance against dense matrices (slow independent twin)."""
+
+from dataclasses import replace
+
+import numpy as np
+import pytest
+from scipy import stats
+
+from massfit.annual.design import build_design
+from massfit.annual.evidence import (
+    annual_covariance,
+    compress,
+    conditional_log_evidence,
+    fixed_variance,
+    reduce_columns,
+    solve_choices,
+)
+from massfit.annual.noise import NoisePriors
+from massfit.settings import Priors
+
+PRIORS = Priors()
+SCORES = np.array([-0.5, 0.2, -1.0, 0.3])
+GRIDS = (np.array([10.0, 40.0, 90.0]), np.array([30.0, 60.0]))
+
+
+@pytest.fixture
+def design(make_record):
+    rng = np.random.default_rng(2)
+    models = rng.normal(size=(2, 130))
+    # the two deployments overlap by 30 days
+    records = [
+        make_record(rng, count=130, size=900.0, circulation=models),
+        make_record(rng, count=130, first=100.5, size=-500.0, label="2", circulation=models),
+    ]
+    return build_design(records, reference_year=2016, priors=PRIORS)
+
+
+@pytest.fixture
+def reduction(design):
+    noise = NoisePriors.of(PRIORS).covariance(design.days, SCORES)
+    return reduce_columns(noise, design, design.exponentials(GRIDS))
+
+
+def dense_covariance(design):
+    noise = NoisePriors.of(PRIORS)
+    amplitudes = noise.amplitudes(SCORES)
+    lags = np.abs(design.days[:, None] - design.days)
+    red = sum(s**2 * np.exp(-lags / tau) for s, tau in zip(amplitudes[:-1], noise.time_scales, strict=True))
+    return red + amplitudes[-1] ** 2 * np.eye(len(lags))
+
+
+def dense_solution(design, times):
+    exponentials = design.exponentials([np.array([time]) for time in times])
+    columns = np.column_stack([design.fixed, exponentials])
+    precision = np.append(design.precision, np.full(2, design.exponential_sd**-2.0))
+    inverse = np.linalg.inv(dense_covariance(design))
+    normal = columns.T @ inverse @ columns + np.diag(precision)
+    mean = np.linalg.solve(normal, columns.T @ inverse @ np.column_stack([design.data, design.contrasts]))
+    return columns, normal, mean, np.linalg.inv(normal)
+
+
+CHOICES = np.array([[0, 3], [2, 4], [1, 3], [1, 4]])
+
+
+def test_solutions_match_dense_generalised_least_squares(design, reduction):
+    solutions = solve_choices(reduction, CHOICES)
+    variances, annual = fixed_variance(reduction, solutions), annual_covariance(reduction, solutions)
+    fixed = design.fixed.shape[1]
+    for row, (first, second) in enumerate(CHOICES):
+        _, _, mean, covariance = dense_solution(design, (GRIDS[0][first], GRIDS[1][second - 3]))
+        np.testing.assert_allclose(solutions.mean[row], mean[:fixed], rtol=1e-9, atol=1e-9 * np.abs(mean).max())
+        np.testing.assert_allclose(solutions.size[row], mean[fixed:], rtol=1e-9, atol=1e-9)
+        np.testing.assert_allclose(variances[row], np.diag(covariance)[:fixed], rtol=1e-9)
+        np.testing.assert_allclose(annual[row], covariance[:2, :2], rtol=1e-9)
+        np.testing.assert_allclose(solutions.size_covariance[row], covariance[fixed:, fixed:], rtol=1e-9)
+
+
+def test_evidence_is_the_marginal_density_when_every_prior_is_proper(design):
+    # closed form: y is normal with covariance V + X P^-1 X'
+    proper = replace(design, precision=np.where(design.precision == 0, 1e-4, design.precision))
+    noise = NoisePriors.of(PRIORS).covariance(proper.days, SCORES)
+    found = solve_choices(reduce_columns(noise, proper, proper.exponentials(GRIDS)), CHOICES).log_evidence
+    expected = []
+    for first, second in CHOICES:
+        exponentials = proper.exponentials([GRIDS[0][[first]], GRIDS[1][[second - 3]]])
+        prior = (proper.fixed / proper.precision) @ proper.fixed.T
+        prior += proper.exponential_sd**2 * exponentials @ exponentials.T
+        total = stats.multivariate_normal(np.zeros(len(prior)), dense_covariance(proper) + prior)
+        expected.append(total.logpdf(proper.data))
+    constant = 0.5 * (np.log(proper.precision).sum() - len(proper.data) * np.log(2 * np.pi))
+    np.testing.assert_allclose(found + constant, expected, rtol=1e-8)
+
+
+def test_conditional_evidence_is_that_of_the_full_choice(reduction):
+    conditional = conditional_log_evidence(reduction, CHOICES, 0, np.arange(3))
+    for row, choice in enumerate(CHOICES):
+        full = solve_choices(reduction, np.array([[node, choice[1]] for node in range(3)]))
+        np.testing.assert_allclose(conditional[row], full.log_evidence, rtol=1e-11)
+
+
+def test_compressed_exponentials_give_the_same_sums(design):
+    grids = (np.geomspace(3, 130, 40), np.geomspace(20, 60, 30))
+    exponentials = design.exponentials(grids)
+    basis, combination = compress(exponentials, np.array([0, 40]))
+    assert basis.shape[1] < 32
+    np.testing.assert_allclose(basis @ combination, exponentials, atol=1e-8)
+    noise = NoisePriors.of(PRIORS).covariance(design.days, SCORES)
+    choices = np.array([[3, 45], [20, 69]])
+    full = solve_choices(reduce_columns(noise, design, exponentials), choices)
+    short = solve_choices(reduce_columns(noise, design, basis, combination), choices)
+    np.testing.assert_allclose(short.log_evidence, full.log_evidence, rtol=1e-9)
+    np.testing.assert_allclose(short.mean[:, :2], full.mean[:, :2], rtol=1e-6)
+
+
+def test_without_exponentials_there_is_one_choice(design):
+    noise = NoisePriors.of(PRIORS).covariance(design.days, SCORES)
+    reduction = reduce_columns(noise, design, np.zeros((len(design.days), 0)))
+    solutions = solve_choices(reduction, np.zeros((1, 0), np.int64))
+    assert solutions.log_evidence == pytest.approx([reduction.log_evidence])
+    np.testing.assert_allclose(solutions.mean[0], reduction.mean)
