@@ -173,10 +173,9 @@ def _axis_faults(site_phasors: xr.Dataset, fingerprints: xr.Dataset) -> list[Fau
 def _value_faults(observations: Observations, admittance: NDArray[np.complex128]) -> list[Fault]:
     faults = []
     for s, site in enumerate(observations.sites):
-        problems = list(_site_problems(observations, s))
+        faults += [Fault("site phasors", site, problem, allowed) for problem, allowed in _site_problems(observations, s)]
         if not np.isfinite(admittance[:, s]).all() or (admittance[:, s] == 0).any():
-            problems.append(("the admittance is zero or not finite", "Must be finite and not zero"))
-        faults += [Fault("site phasors", site, problem, allowed) for problem, allowed in problems]
+            faults.append(Fault("fingerprints", site, "the admittance is zero or not finite", "Must be neither"))
     return faults
 
 
