@@ -2,6 +2,7 @@
 
 from collections.abc import Callable, Iterator, Sequence
 from concurrent.futures import ProcessPoolExecutor
+from importlib import import_module
 from multiprocessing import get_context
 from types import TracebackType
 from typing import TypeVar
@@ -79,4 +80,8 @@ class Workers:
 
 
 def _one_thread() -> None:
+    """Load what the stages load, then hold it to one thread: a limit acts on loaded libraries only."""
+    for name in ("massfit.pipeline.sites", "massfit.posterior.sample"):
+        import_module(name)
+
     threadpool_limits(1)

@@ -16,7 +16,8 @@ p.answer { font-size: 1.2rem; } p.small, figcaption, td.small { font-size: .85re
 p.stop { border: 2px solid #1c1c1c; padding: .6rem .8rem; font-weight: bold; }
 figure { margin: 1rem 0; } img { max-width: 100%; height: auto; }
 table { border-collapse: collapse; font: .85rem/1.35 Arial, Helvetica, sans-serif; }
-.wide { overflow-x: auto; } th, td { padding: .18rem .6rem; border-bottom: 1px solid #ddd; }
+.wide { overflow-x: auto; } th, td { padding: .18rem .6rem; border-bottom: 1px solid #ddd; } td { white-space: nowrap; }
+td.words { white-space: normal; }
 th { text-align: right; border-bottom: 1px solid #1c1c1c; vertical-align: bottom; } td { text-align: right; }
 th:first-child, td:first-child, td.words { text-align: left; }
 code { font-size: .8rem; overflow-wrap: anywhere; }

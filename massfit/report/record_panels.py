@@ -7,6 +7,7 @@ import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.dates import AutoDateLocator, ConciseDateFormatter
 from matplotlib.figure import Figure
+from matplotlib.ticker import MaxNLocator
 from numpy.typing import NDArray
 
 from massfit.report.style import ANSWER, LAND, SITE, house_style
@@ -66,7 +67,7 @@ def record_panels(rows: Sequence[RecordRow]) -> Figure:
     with house_style():
         height = 1.25 * len(rows) + 1.0
         figure = Figure(figsize=(11.0, height))
-        grid = np.atleast_2d(figure.subplots(len(rows), 3, sharex="col", squeeze=False))
+        grid = figure.subplots(len(rows), 3, squeeze=False)
         figure.subplots_adjust(
             left=0.06, right=0.995, top=1.0 - 0.62 / height, bottom=0.45 / height, hspace=0.42, wspace=0.13
         )
@@ -75,6 +76,7 @@ def record_panels(rows: Sequence[RecordRow]) -> Figure:
             _draw_corrections(correction, row)
             _draw_reduced(reduced, row)
         _headings(grid)
+        _share_dates(grid)
     return figure
 
 
@@ -132,7 +134,17 @@ def _headings(grid: NDArray[np.object_]) -> None:
     )
     for axes in grid.ravel():
         axes.tick_params(labelsize=7.0)
+        axes.yaxis.set_major_locator(MaxNLocator(4))
         axes.grid(axis="y", color=LAND, linewidth=0.5)
+
+
+def _share_dates(grid: NDArray[np.object_]) -> None:
+    """Give all panels one span of time and only the lowest a date axis; ticks are what drawing costs."""
+    spans = [axes.get_xlim() for axes in grid.ravel()]
+    for axes in grid.ravel():
+        axes.set_xlim(min(low for low, _ in spans), max(high for _, high in spans))
+    for axes in grid[:-1].ravel():
+        axes.xaxis.set_visible(False)
     for axes in grid[-1]:
         locator = AutoDateLocator(minticks=3, maxticks=8)  # type: ignore[no-untyped-call]
         axes.xaxis.set_major_locator(locator)

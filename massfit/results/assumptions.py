@@ -1,5 +1,6 @@
 """The sentences that say what a run assumed, made from the network's own settings."""
 
+from massfit.constants import KG_PER_GT
 from massfit.network import Network
 from massfit.settings import Settings
 
@@ -82,7 +83,7 @@ def _fingerprint(network: Network) -> list[str]:
     chosen = network.settings.fingerprint
     count = len(network.loads)
     vapour = (
-        f"water vapour exchanges {chosen.water_vapour_kg:.3g} kg (half range, maximum on {chosen.water_vapour_peak})"
+        f"water vapour exchanges {chosen.water_vapour_kg / KG_PER_GT:.0f} Gt (half range, maximum on {chosen.water_vapour_peak})"
         if chosen.water_vapour_kg
         else "the exchange of water vapour is switched off"
     )
