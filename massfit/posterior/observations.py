@@ -173,7 +173,8 @@ def _axis_faults(site_phasors: xr.Dataset, fingerprints: xr.Dataset) -> list[Fau
 def _value_faults(observations: Observations, admittance: NDArray[np.complex128]) -> list[Fault]:
     faults = []
     for s, site in enumerate(observations.sites):
-        faults += [Fault("site phasors", site, problem, allowed) for problem, allowed in _site_problems(observations, s)]
+        problems = _site_problems(observations, s)
+        faults += [Fault("site phasors", site, problem, allowed) for problem, allowed in problems]
         if not np.isfinite(admittance[:, s]).all() or (admittance[:, s] == 0).any():
             faults.append(Fault("fingerprints", site, "the admittance is zero or not finite", "Must be neither"))
     return faults

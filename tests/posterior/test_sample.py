@@ -69,10 +69,10 @@ def test_a_run_converges_and_says_so(posterior):
 
 
 def test_a_run_that_is_too_short_is_extended(invent, monkeypatch):
-    monkeypatch.setattr(convergence, "LENGTH_MIN", 95.0)
+    monkeypatch.setattr("massfit.posterior.sample.STEPS", 30)  # of some 4 autocorrelation steps each
     extended = run(invent())
     assert extended.converged
-    assert extended.convergence.length_min >= 95.0
+    assert extended.convergence.length_min >= 50.0
 
 
 def test_a_run_that_reaches_the_cap_is_not_called_converged(invent, monkeypatch):

@@ -100,7 +100,6 @@ def test_alternatives_are_those_of_a_direct_refit(summary, case):
     refit("truth at the models' centre (r = 0)", phasors, fingerprints, settings=replace(PLAIN, model_truth="centred"))
     refit("without model model 2", phasors.isel(model=[0, 2]), fingerprints)
     refit("double the prior scale of s_common", phasors, fingerprints, priors=replace(Priors(), model_common_hpa=0.3))
-    refit("load member pattern 2 alone", phasors, fingerprints.isel(member=[1]))
 
 
 def test_every_choice_is_shown(summary):
