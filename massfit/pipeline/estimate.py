@@ -93,14 +93,15 @@ def _estimate(network: Network, progress: Progress, pool: Workers) -> Estimate:
         models=[model.name for model in network.circulation],
         reference_year=settings.frame.reference_year,
     )
-    members = fingerprints.sizes["member"]
+    progress("network posterior", 0, fingerprints.sizes["member"])
     posterior = sample_posterior(
         phasors,
         fingerprints,
         settings=settings.posterior,
         priors=settings.priors,
         atmosphere_sd_hpa=settings.corrections.ocean_mean_atmosphere_sd_hpa,
-        progress=lambda share, _: progress("network posterior", round(share * members), members),
+        progress=lambda done, total: progress("network posterior", done, total),
+        mapped=pool.results,
     )
     summary = summarise(
         posterior,

@@ -68,12 +68,23 @@ class Workers:
         """
         progress(stage, 0, len(parts))
         results = []
-        for done, result in enumerate(self._results(function, parts), start=1):
+        for done, result in enumerate(self.results(function, parts), start=1):
             results.append(result)
             progress(stage, done, len(parts))
         return results
 
-    def _results(self, function: Callable[[Part], Result], parts: Sequence[Part]) -> Iterator[Result]:
+    def results(self, function: Callable[[Part], Result], parts: Sequence[Part]) -> Iterator[Result]:
+        """Apply a function to every part and give the results as they come, in order.
+
+        Parameters
+        ----------
+        function : callable
+        parts : sequence
+
+        Returns
+        -------
+        iterator
+        """
         if self._pool is None or len(parts) < 2:
             return map(function, parts)
         return self._pool.map(function, parts)

@@ -1,6 +1,7 @@
 """Draws from the network posterior: the scales by emcee, the phasor exactly given the scales."""
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterable, Sequence
+from typing import Any, NamedTuple
 
 import numpy as np
 import xarray as xr
@@ -32,7 +33,8 @@ def sample_posterior(
     settings: PosteriorSettings,
     priors: Priors,
     atmosphere_sd_hpa: float = 0.04,
-    progress: Callable[[float, str], None] | None = None,
+    progress: Callable[[int, int], None] | None = None,
+    mapped: Callable[[Callable[[Any], Any], Sequence[Any]], Iterable[Any]] = map,
 ) -> Posterior:
     """Draw from the posterior of the annual phasor of ocean mass.
 
@@ -49,7 +51,10 @@ def sample_posterior(
     atmosphere_sd_hpa : float
         Standard deviation of the error of the ocean-mean air pressure, hPa per component.
     progress : callable, optional
-        Called with the fraction done and a word on what is being done.
+        Called with the number of load members done and of all.
+    mapped : callable, optional
+        Applies a function to each of a sequence, in order; one that shares the load members among
+        processes gives the same numbers.
 
     Returns
     -------
@@ -101,17 +106,15 @@ def sample_posterior(
     )
     members = _member_names(fingerprints)
     streams = np.random.default_rng(settings.seed).spawn(len(models))
+    tasks = [_MemberTask(model, scale_priors(priors), rng) for model, rng in zip(models, streams, strict=True)]
     draws, scales, diagnostics, seconds = [], [], [], []
-    for k, (model, rng) in enumerate(zip(models, streams, strict=True)):
-        if progress is not None:
-            progress(k / len(models), f"network posterior, load member {members[k]}")
-        annual, scale, diagnostic, second = _sample_member(model, scale_priors(priors), rng)
+    for annual, scale, diagnostic, second in mapped(_sample_member, tasks):
         draws.append(annual)
         scales.append(scale)
         diagnostics.append(diagnostic)
         seconds.append(second)
-    if progress is not None:
-        progress(1.0, "network posterior")
+        if progress is not None:
+            progress(len(draws), len(tasks))
     member_annual = np.stack(draws)
     annual, member_of_draw = pool_members(member_annual)
     convergence = worst(diagnostics)
@@ -140,10 +143,17 @@ def _member_names(fingerprints: xr.Dataset) -> tuple[str, ...]:
     return tuple(f"member {k + 1}" for k in range(fingerprints.sizes["member"]))
 
 
+class _MemberTask(NamedTuple):
+    model: LinearModel
+    prior_scales: NDArray[np.float64]
+    rng: np.random.Generator
+
+
 def _sample_member(
-    model: LinearModel, prior_scales: NDArray[np.float64], rng: np.random.Generator
+    task: _MemberTask,
 ) -> tuple[NDArray[np.float64], NDArray[np.float64], Convergence, ScalePosterior]:
     """Draws (chain, draw, 2) and scales (chain, draw, 3) of one member, extended until they converge."""
+    model, prior_scales, rng = task
     second_route = integrate_scales(model, prior_scales)
     explorer = ScaleExplorer(model, prior_scales, rng)
     steps = STEPS
@@ -159,9 +169,7 @@ def _sample_member(
     return annual.reshape(*shape, 2), np.exp(kept.log_scales).reshape(*shape, 3), diagnostic, second_route
 
 
-def _draw_annual(
-    model: LinearModel, log_scales: NDArray[np.float64], rng: np.random.Generator
-) -> NDArray[np.float64]:
+def _draw_annual(model: LinearModel, log_scales: NDArray[np.float64], rng: np.random.Generator) -> NDArray[np.float64]:
     """One exact draw of the network phasor at each set of scales, (..., 2), Pa."""
     mean, covariance = annual_given_scales(model, log_scales.reshape(-1, 3))
     noise = rng.standard_normal(mean.shape)

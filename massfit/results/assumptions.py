@@ -83,7 +83,8 @@ def _fingerprint(network: Network) -> list[str]:
     chosen = network.settings.fingerprint
     count = len(network.loads)
     vapour = (
-        f"water vapour exchanges {chosen.water_vapour_kg / KG_PER_GT:.0f} Gt (half range, maximum on {chosen.water_vapour_peak})"
+        f"water vapour exchanges {chosen.water_vapour_kg / KG_PER_GT:.0f} Gt (half range, maximum on "
+        f"{chosen.water_vapour_peak})"
         if chosen.water_vapour_kg
         else "the exchange of water vapour is switched off"
     )
