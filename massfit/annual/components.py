@@ -33,7 +33,7 @@ Choices = NDArray[np.int64]
 NODES_PER_ROUND = 64
 """Noise models tried about the mode, and then about the better ones of all before."""
 
-LEAST_ROUNDS, MOST_ROUNDS = 4, 8
+LEAST_ROUNDS, MOST_ROUNDS = 3, 8
 
 EFFECTIVE_NODES = 60.0
 """Rounds end when so many noise models count."""

@@ -258,6 +258,8 @@ def conditional_log_evidence(
     right = reduction.exponential_right[:, 0]
     solved = np.linalg.inv(normal) @ cross
     own = np.diag(reduction.exponential)[columns] - np.sum(cross * solved, axis=1)
+    # no less than the prior precision, which rounding can hide where two recorders agree to their resolution
+    own = np.maximum(own, np.exp(-2.0 * reduction.log_exponential_sd))
     own_right = right[columns] - np.sum(right[others][:, :, None] * solved, axis=1)
     alone = solve_choices(reduction, others).log_evidence
     return np.asarray(alone[:, None] + 0.5 * (own_right**2 / own - np.log(own)) - reduction.log_exponential_sd)

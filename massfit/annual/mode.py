@@ -10,7 +10,7 @@ from scipy.optimize import minimize
 from massfit.annual.design import Design
 from massfit.annual.evidence import reduce_columns, solve_choices
 from massfit.annual.grid import DriftGrid, refine_grid
-from massfit.annual.noise import NoisePriors, log_score_prior
+from massfit.annual.noise import RESOLUTION, NoisePriors, log_score_prior
 
 Floats = NDArray[np.float64]
 
@@ -18,6 +18,9 @@ MODE_TOLERANCE = 0.02
 """The alternation ends when the log posterior gains less than this in a round."""
 
 MAX_ALTERNATIONS = 8
+
+GRADIENT_TOLERANCE = 0.1
+"""Of the log posterior per unit of score, whose posterior sigma is below one: a proposal needs no more."""
 
 HESSIAN_STEP = 0.1
 """Step of the second differences in score: wide enough to see past rounding and small kinks."""
@@ -53,7 +56,7 @@ def joint_mode(design: Design, noise: NoisePriors) -> Mode:
     -------
     Mode
     """
-    current = np.zeros(len(noise.scales))
+    current = _start(design, noise)
     grid = refine_grid(noise.covariance(design.days, current), design)
     reached = np.inf
     for _ in range(MAX_ALTERNATIONS):
@@ -67,9 +70,23 @@ def joint_mode(design: Design, noise: NoisePriors) -> Mode:
     return Mode(current, _spread(objective, current), grid)
 
 
+def _start(design: Design, noise: NoisePriors) -> Floats:
+    """Scores that share what a rough fit leaves."""
+    decays = [np.geomspace(low, high, 4) for low, high in design.time_ranges]
+    columns = np.column_stack([design.fixed, design.exponentials(decays)])
+    residual = design.data - columns @ np.linalg.lstsq(columns, design.data, rcond=1e-8)[0]
+    return equal_shares(float(residual.std()), noise)
+
+
+def equal_shares(sd: float, noise: NoisePriors) -> Floats:
+    """Scores at which all terms have the same share of a variance: a start at the right level."""
+    share = np.hypot(sd / np.sqrt(len(noise.scales)), RESOLUTION)
+    return noise.scores(np.full(len(noise.scales), share))
+
+
 def minimise(objective: Callable[[Floats], float], start: Floats) -> Floats:
     """Minimum of a smooth function of a few scores (quasi-Newton, BFGS)."""
-    return np.asarray(minimize(objective, start, method="BFGS", options={"gtol": 1e-2}).x)
+    return np.asarray(minimize(objective, start, method="BFGS", options={"gtol": GRADIENT_TOLERANCE}).x)
 
 
 def _objective(design: Design, noise: NoisePriors, time_constants: Floats) -> Callable[[Floats], float]:

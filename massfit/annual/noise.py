@@ -13,12 +13,16 @@ from functools import cached_property
 import numpy as np
 from celerite2 import driver
 from numpy.typing import NDArray
-from scipy.special import ndtr
+from scipy.special import ndtr, ndtri
 
 from massfit.constants import PASCAL_PER_HPA
 from massfit.settings import Priors
 
 Floats = NDArray[np.float64]
+
+RESOLUTION = 0.1
+"""White noise that every daily mean has besides, Pa: a hundredth of a millimetre of water, below any instrument
+(common practice). Without it a record free of noise has no finite likelihood."""
 
 WHITE_FLOOR = 1e-3
 """Least white amplitude as a fraction of the largest amplitude: keeps the covariance of instruments that
@@ -130,9 +134,16 @@ class NoisePriors:
         sine = 2.0 * np.sin(np.arcsin(ndtr(np.minimum(scores, 7.0))) / 3.0)
         return np.asarray(self.scales * 2.0 * sine / np.sqrt(1.0 - sine**2))
 
+    def scores(self, amplitudes: Floats) -> Floats:
+        """Scores of (..., J + 1) amplitudes in Pa: the inverse of `amplitudes`."""
+        sine = amplitudes / np.hypot(amplitudes, 2.0 * self.scales)
+        return np.asarray(ndtri(0.5 * (3.0 * sine - sine**3)))
+
     def covariance(self, days: Floats, scores: Floats) -> NoiseCovariance:
         """Covariance on given days at (J + 1,) scores."""
-        return NoiseCovariance(days, self.time_scales, self.amplitudes(scores))
+        amplitudes = self.amplitudes(scores)
+        amplitudes[-1] = np.hypot(amplitudes[-1], RESOLUTION)
+        return NoiseCovariance(days, self.time_scales, amplitudes)
 
 
 def log_score_prior(scores: Floats) -> float:

@@ -5,7 +5,7 @@ from numpy.typing import NDArray
 
 from massfit.annual.design import Design
 from massfit.annual.evidence import ANNUAL, linear_fit
-from massfit.annual.mode import minimise
+from massfit.annual.mode import equal_shares, minimise
 from massfit.annual.noise import NoiseCovariance, NoisePriors, log_score_prior
 from massfit.constants import JULIAN_YEAR_DAYS
 from massfit.phasor import annual_basis
@@ -71,7 +71,7 @@ def model_noise(design: Design, noise: NoisePriors, operator: Floats) -> Floats:
         determinants = (models - 1) * (covariance.log_determinant + fit.log_determinant)
         return float(0.5 * (determinants + fit.misfit.sum()) - log_score_prior(scores))
 
-    scores = minimise(negative_log_posterior, np.zeros(len(noise.scales)))
+    scores = minimise(negative_log_posterior, equal_shares(float(contrasts.std()), noise))
     merged = np.zeros((2, len(days)))
     for row, weights in zip(merged, operator, strict=True):
         np.add.at(row, place, weights)

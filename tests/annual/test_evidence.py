@@ -46,7 +46,8 @@ def dense_covariance(design):
     amplitudes = noise.amplitudes(SCORES)
     lags = np.abs(design.days[:, None] - design.days)
     red = sum(s**2 * np.exp(-lags / tau) for s, tau in zip(amplitudes[:-1], noise.time_scales, strict=True))
-    return red + amplitudes[-1] ** 2 * np.eye(len(lags))
+    # white noise, and the resolution of 0.1 Pa that every daily mean has besides
+    return red + (amplitudes[-1] ** 2 + 0.1**2) * np.eye(len(lags))
 
 
 def dense_solution(design, times):

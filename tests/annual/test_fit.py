@@ -232,3 +232,27 @@ def test_too_short_a_site_is_refused(make_record):
         fit([make_record(np.random.default_rng(1), count=LEAST_DAYS - 1)])
     with pytest.raises(InputError):
         fit([])
+
+
+@pytest.mark.parametrize("red", [1.0, 30.0, 3000.0])
+def test_noise_of_any_size_is_found(make_record, make_red, red):
+    # closed form: 2 sd sqrt(tau / (1 + (w tau)^2) / n) per component for an annual line in Ornstein-Uhlenbeck noise
+    rng = np.random.default_rng(13)
+    days, scale = 1461, 20.0
+    ocean = make_red(rng, days, red, scale)
+    result = fit([make_record(rng, count=days, ocean=ocean, white=0.1 * red, drift="none", slope=0.0)])
+    expected = 2 * red * np.sqrt(scale / (1 + (2 * np.pi * scale / YEAR) ** 2) / days)
+    sigma = np.sqrt(np.diag(result.single_gaussian()[1]))
+    # the wide prior at 200 days and the estimate of the spectrum from four years allow this much
+    assert np.all(sigma > 0.6 * expected)
+    assert np.all(sigma < 1.8 * expected)
+
+
+def test_a_record_without_noise_and_a_copy_are_no_trouble(make_record):
+    rng = np.random.default_rng(14)
+    silent = make_record(rng, count=500, white=0.0, size=300.0)
+    np.testing.assert_allclose(fit([silent]).single_gaussian()[0], [TRUTH], atol=0.1)
+    noisy = make_record(rng, count=500, size=300.0)
+    twice = fit([noisy, replace(noisy, deployment="copy")])
+    assert np.isfinite(twice.phasor).all()
+    assert sigmas(twice) < 3.5
