@@ -20,7 +20,7 @@ from massfit.annual.noise import NoiseCovariance
 Floats = NDArray[np.float64]
 Choices = NDArray[np.int64]
 
-CHAINS = 96
+CHAINS = 64
 """Chains run side by side."""
 
 BURN_IN = 16

@@ -76,7 +76,8 @@ class NoiseCovariance:
         pivots, weights = self._factor
         columns = np.ascontiguousarray(columns)
         solved = driver.solve_lower(self._days, self._rates, self._left, weights, columns, np.empty_like(columns))
-        return np.asarray(solved / np.sqrt(pivots)[:, None])
+        solved /= np.sqrt(pivots)[:, None]
+        return np.asarray(solved)
 
     def solve(self, columns: Floats) -> Floats:
         """V^-1 times (n, k) columns."""
