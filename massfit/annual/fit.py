@@ -141,7 +141,10 @@ class SiteFit:
     notes: tuple[str, ...] = ()
 
     def single_gaussian(self) -> tuple[Floats, Floats]:
-        """Mean (max(M, 1), 2) and covariance (2, 2) of the whole mixture, Pa and Pa^2."""
+        """Mean (max(M, 1), 2) and covariance (2, 2) of the whole mixture, Pa and Pa^2.
+
+        The covariance is that of the mean over the models.
+        """
         mean = np.einsum("k,kmc->mc", self.weight, self.phasor)
         away = self.phasor.mean(axis=1) - mean.mean(axis=0)
         within = np.einsum("k,kij->ij", self.weight, self.covariance)

@@ -89,8 +89,9 @@ def _record_faults(source: str, record: ReducedRecord, models: int) -> Iterator[
             yield Fault(source, name, f"{missing} values of {label} are missing", action="Leave those days out")
     if np.any(np.diff(record.time) <= np.timedelta64(0)):
         yield Fault(source, name, "times do not increase", "Every time must be later than the one before")
-    if record.start > record.time[0]:
-        problem = f"start {record.start} is after the first time {record.time[0]}"
+    # a deployment may begin within its first day, whose middle is its time
+    if record.start > record.time[0] + np.timedelta64(12, "h"):
+        problem = f"start {record.start} is after the first day, {record.time[0]}"
         yield Fault(source, name, problem, "The drift begins with the deployment or before")
     if record.drift not in get_args(DriftForm):
         yield Fault(source, name, f"drift is {record.drift!r}", f"Must be one of {get_args(DriftForm)}")
