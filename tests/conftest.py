@@ -8,6 +8,8 @@ import numpy as np
 import pytest
 import xarray as xr
 
+import massfit
+
 NETWORK = """\
 [network]
 name = "Two invented sites"
@@ -117,3 +119,23 @@ def change(network_folder: Path) -> Callable[[str, str], None]:
         file.write_text(text.replace(old, new))
 
     return replace
+
+
+@pytest.fixture(scope="session")
+def invented():
+    """Three sites, two years of daily means, three models, two load members; nothing in it can be written to."""
+    from massfit.simulate.options import SimulationOptions
+
+    options = SimulationOptions(sites=3, years=2, load_members=2, sampling="daily", incidents=False, bad_site=False)
+    network = massfit.simulate_network(options, seed=11).network
+    for record in network.records:
+        record.time.flags.writeable = record.pressure.flags.writeable = False
+    for model in network.circulation:
+        model.pressure.values.flags.writeable = False
+    return network
+
+
+@pytest.fixture(scope="session")
+def run(invented):
+    """The main job on the invented network; tests do not change it."""
+    return massfit.estimate(invented)

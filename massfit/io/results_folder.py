@@ -105,7 +105,7 @@ def write_dataset(path: Path, dataset: xr.Dataset) -> None:
     """
     encoding: dict[Any, dict[str, Any]] = {}
     for name, variable in dataset.variables.items():
-        if variable.ndim and variable.dtype.kind in "fiu":
+        if variable.ndim and variable.dtype.kind in "fiuM":
             encoding[name] = {"zlib": True, "complevel": 4, "shuffle": True, "fletcher32": True}
             if variable.dtype.kind == "f" and name not in dataset.coords:
                 encoding[name]["_FillValue"] = np.nan

@@ -28,6 +28,9 @@ LEAST_DAYS = 180
 LEAST_SITE_DAYS = 90
 """A site with fewer days cannot part an annual cycle from its own drift at all, and is left out."""
 
+# the last bits of a product of matrices depend on how many sites it holds, and would steer the integration of the fit
+_DECIMALS = 6  # of a pascal
+
 
 @dataclass(frozen=True)
 class SiteTask:
@@ -175,8 +178,8 @@ def _reduced(daily: DailyRecord, corrections: xr.Dataset, used: NDArray[np.bool_
     return ReducedRecord(
         deployment=daily.deployment,
         time=daily.time[kept],
-        pressure=daily.pressure[kept] - common,
-        circulation=corrections["circulation"].values[present][:, place],
+        pressure=np.round(daily.pressure[kept] - common, _DECIMALS),
+        circulation=np.round(corrections["circulation"].values[present][:, place], _DECIMALS),
         start=daily.start,
         drift=daily.drift,
         steps=daily.steps,
