@@ -28,9 +28,6 @@ LEAST_DAYS = 180
 LEAST_SITE_DAYS = 90
 """A site with fewer days cannot part an annual cycle from its own drift at all, and is left out."""
 
-# the last bits of a product of matrices depend on how many sites it holds, and would steer the integration of the fit
-_DECIMALS = 6  # of a pascal
-
 
 @dataclass(frozen=True)
 class SiteTask:
@@ -178,9 +175,18 @@ def _reduced(daily: DailyRecord, corrections: xr.Dataset, used: NDArray[np.bool_
     return ReducedRecord(
         deployment=daily.deployment,
         time=daily.time[kept],
-        pressure=np.round(daily.pressure[kept] - common, _DECIMALS),
-        circulation=np.round(corrections["circulation"].values[present][:, place], _DECIMALS),
+        pressure=_rounded(daily.pressure[kept] - common),
+        circulation=_rounded(corrections["circulation"].values[present][:, place]),
         start=daily.start,
         drift=daily.drift,
         steps=daily.steps,
     )
+
+
+def _rounded(pressure: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Round to a micropascal.
+
+    The last bits of a product of matrices depend on how many sites it holds, and would steer the integration of the
+    fit: a site's numbers shall not depend on which other sites there are.
+    """
+    return np.asarray(np.round(pressure, 6))
