@@ -113,7 +113,8 @@ def _needed_bytes(file: BinaryIO) -> int:
         _skip_name(file)
         lengths.append(_integer(file))
     _skip_attributes(file)
-    fixed_end, record_start, record_sizes = 0, 0, []
+    fixed_end, record_start = 0, 0
+    record_sizes: list[int] = []
     for _ in range(_list_length(file)):
         _skip_name(file)
         shape = [lengths[_integer(file)] for _ in range(_integer(file))]

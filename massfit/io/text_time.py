@@ -101,7 +101,7 @@ def joined_date(
         raise InputError(line_fault(source, "day", parts["day"], good, lines, allowed))
     zero = np.zeros(date.size)
     seconds = parts.get("hour", zero) * 3600 + parts.get("minute", zero) * 60 + parts.get("second", zero)
-    return date.astype("datetime64[ns]") + np.round(seconds * 1e9).astype("timedelta64[ns]")
+    return np.asarray(date.astype("datetime64[ns]") + np.round(seconds * 1e9).astype("timedelta64[ns]"))
 
 
 def parsed_time(
