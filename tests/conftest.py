@@ -1,7 +1,7 @@
 """A small network on disk that the readers accept; tests break one thing at a time."""
 
 import os
-from collections.abc import Callable
+from collections.abc import Callable, Generator
 from pathlib import Path
 
 import numpy as np
@@ -86,6 +86,16 @@ def small_network(folder: Path) -> None:
         {"member": ["wet", "dry"], "lat": latitude, "lon": longitude},
     )
     loads.to_netcdf(folder / "fields/loads.nc", engine="h5netcdf")
+
+
+@pytest.hookimpl(wrapper=True)
+def pytest_runtest_makereport() -> Generator[None, pytest.TestReport, pytest.TestReport]:
+    """Count a skip as a failure where the open data are at hand: nothing may be left out there."""
+    report = yield
+    if report.skipped and "MASSFIT_OPEN_DATA" in os.environ and not hasattr(report, "wasxfail"):
+        report.outcome = "failed"
+        report.longrepr = f"skipped where nothing may be: {report.longrepr}"
+    return report
 
 
 @pytest.fixture(scope="session")

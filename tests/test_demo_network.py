@@ -10,6 +10,8 @@ import xarray as xr
 
 from massfit.io.network_file import read_network
 from massfit.network import Network
+from massfit.pipeline.estimate import estimate
+from massfit.results.estimate import Estimate
 from massfit.simulate.network import SimulatedNetwork, simulate_network
 from massfit.simulate.options import SimulationOptions
 from massfit.simulate.story import tell_story
@@ -89,3 +91,28 @@ def test_it_is_small() -> None:
     sizes = [path.stat().st_size for path in DEMO.rglob("*") if path.is_file() and "results" not in path.parts]
     assert sum(sizes) < 8e6
     assert max(sizes) < 1.5e6
+
+
+@pytest.fixture(scope="module")
+def answer(demo: Network) -> Estimate:
+    return estimate(demo)
+
+
+def test_the_region_of_the_answer_holds_the_truth(answer: Estimate) -> None:
+    truth = json.loads((DEMO / "truth.json").read_text())
+    assert answer.summary["convergence"]["converged"]
+    for name in ("amplitude_hpa", "peak_day"):
+        low, high = answer.summary[name]["region95"]
+        assert low < truth[name] < high, name
+    # and it says something: the region is well away from no cycle at all
+    assert answer.summary["amplitude_hpa"]["region95"][0] > 0.2
+
+
+def test_the_restless_and_the_short_site_are_named(answer: Estimate) -> None:
+    truth = json.loads((DEMO / "truth.json").read_text())
+    warned = {site["id"]: " ".join(site["warnings"]) for site in answer.summary["sites"]}
+    roles = {site["id"]: site.get("role") for site in truth["sites"]}
+    (restless,) = [name for name, role in roles.items() if role == "eddies"]
+    assert "Not quiet" in warned[restless]
+    assert sum("Not quiet" in text for text in warned.values()) == 1
+    assert any("1.5 years" in text for text in answer.summary["warnings"])
