@@ -12,7 +12,6 @@ from typing import Any
 import numpy as np
 import pytest
 import xarray as xr
-from numpy.typing import NDArray
 
 from massfit.errors import InputError
 from massfit.fingerprint.ocean import OceanFunction
@@ -85,14 +84,10 @@ def only_third(invented: Network, stages: dict[str, list[tuple[int, int]]]) -> E
     """The first site excluded, the second cut to sixty days, the third untouched."""
     first, second, third = invented.sites
     early = min(record.time[0] for record in invented.records) + np.timedelta64(60, "D")
-
-    def cut(keep: NDArray[np.bool_], values: NDArray[Any]) -> NDArray[Any]:
-        return values[keep]
-
     records = []
     for record in invented.records:
         keep = (record.time < early) | (record.site != second.id)
-        records.append(replace(record, time=cut(keep, record.time), pressure=cut(keep, record.pressure)))
+        records.append(replace(record, time=record.time[keep], pressure=record.pressure[keep]))
     sites = (replace(first, excluded_because="lies on a mud volcano"), second, third)
     network = replace(with_one_member(invented), sites=sites, records=tuple(records))
     return estimate(network, progress=lambda stage, *parts: stages.setdefault(stage, []).append(parts))
