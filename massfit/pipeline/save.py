@@ -1,8 +1,6 @@
 """A run from a network file to a results folder, whole or not at all."""
 
-import dataclasses
 from pathlib import Path
-from typing import Any
 
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.io.network_file import read_network
@@ -11,8 +9,8 @@ from massfit.pipeline.estimate import estimate
 from massfit.pipeline.progress import Progress, ignore
 from massfit.report.draw import draw_figures, png
 from massfit.report.page import report_page
-from massfit.results.datasets import result_datasets
 from massfit.results.estimate import Estimate
+from massfit.results.finished import finished_run
 
 
 def results_folder(network: Path, output: Path | None) -> Path:
@@ -94,31 +92,14 @@ def save_results(result: Estimate, folder: Path, *, network: str = "", overwrite
         The folder cannot or must not be written.
     """
     check_output(folder, overwrite=overwrite)
-    pictures = {name: png(figure) for name, figure in draw_figures(result, OceanFunction.builtin()).items()}
     command = f"massfit estimate {network}" if network else "massfit.estimate(network) in Python"
+    run = finished_run(result, command=command)
+    pictures = {name: png(figure) for name, figure in draw_figures(run, OceanFunction.builtin()).items()}
     write_results(
         folder,
-        summary=result.summary,
-        run=_run(result, command),
-        datasets=result_datasets(result),
+        summary=run.summary,
+        run=run.provenance,
+        datasets=run.datasets,
         pictures={f"{name}.png": picture for name, picture in pictures.items()},
-        page=report_page(result, pictures, command=command),
+        page=report_page(run, pictures),
     )
-
-
-def _run(result: Estimate, command: str) -> dict[str, Any]:
-    return {
-        "command": command,
-        **result.provenance,
-        "settings": _plain(dataclasses.asdict(result.network.settings)),
-        "inputs": dict(result.network.inputs),
-    }
-
-
-def _plain(value: Any) -> Any:
-    """Turn settings into what JSON knows."""
-    if isinstance(value, dict):
-        return {key: _plain(item) for key, item in value.items()}
-    if isinstance(value, tuple):
-        return [_plain(item) for item in value]
-    return value if isinstance(value, str | int | float | bool | None) else str(value)

@@ -1,7 +1,8 @@
 """The figures of a finished run: picks what each shows and hands it to the drawing functions."""
 
 import io
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
+from typing import Any
 
 import numpy as np
 import xarray as xr
@@ -9,7 +10,6 @@ from contourpy import contour_generator
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
-from massfit.annual.fit import DriftFit
 from massfit.constants import PASCAL_PER_HPA
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.phasor import admittance_matrix, annual_basis, as_complex, days_since, unwrapped_peak_days
@@ -19,15 +19,15 @@ from massfit.report.corner_figure import corner_figure
 from massfit.report.network_map import network_map
 from massfit.report.phasor_plane import phasor_plane
 from massfit.report.record_panels import RecordRow, record_panels
-from massfit.results.estimate import Estimate, SiteReduction
+from massfit.results.finished import FinishedRun
 
 
-def draw_figures(estimate: Estimate, ocean: OceanFunction) -> dict[str, Figure]:
+def draw_figures(run: FinishedRun, ocean: OceanFunction) -> dict[str, Figure]:
     """Draw every figure of a run.
 
     Parameters
     ----------
-    estimate : Estimate
+    run : FinishedRun
     ocean : OceanFunction
         Gives the land of the map.
 
@@ -37,12 +37,10 @@ def draw_figures(estimate: Estimate, ocean: OceanFunction) -> dict[str, Figure]:
         Under the names of `page.PICTURES`.
     """
     return {
-        "phasor_plane": _plane(estimate),
-        "network_map": _map(estimate, ocean),
-        "corner": _corner(estimate),
-        "records": record_panels(
-            [_record_row(reduction, estimate.summary["reference_year"]) for reduction in estimate.reductions]
-        ),
+        "phasor_plane": _plane(run),
+        "network_map": _map(run, ocean),
+        "corner": _corner(run.datasets["posterior.nc"]),
+        "records": record_panels(_record_rows(run)),
     }
 
 
@@ -53,18 +51,18 @@ def png(figure: Figure) -> bytes:
     return picture.getvalue()
 
 
-def _plane(estimate: Estimate) -> Figure:
-    draws = estimate.posterior.draws / PASCAL_PER_HPA
-    sites = estimate.summary["sites"]
+def _plane(run: FinishedRun) -> Figure:
+    draws = run.datasets["posterior.nc"]["annual_phasor"].values.reshape(-1, 2) / PASCAL_PER_HPA
+    sites = run.summary["sites"]
     inverse = np.linalg.inv(admittance_matrix(_admittances(sites)))
-    phasors = np.array([site["phasor_hpa"] for site in sites]) - _known_response(estimate)
+    phasors = np.array([site["phasor_hpa"] for site in sites]) - _known_response(run)
     covariances = np.array([site["phasor_covariance_hpa2"] for site in sites])
     return phasor_plane(
         draws,
         [site["id"] for site in sites],
         np.einsum("sij,sj->si", inverse, phasors),
         np.einsum("sij,sjk,slk->sil", inverse, covariances, inverse),
-        reference_year=estimate.summary["reference_year"],
+        reference_year=run.summary["reference_year"],
         contours=_contours(density_regions(draws)),
     )
 
@@ -75,20 +73,20 @@ def _contours(regions: DensityRegions) -> list[tuple[float, list[NDArray[np.floa
     return sorted(lines.items(), reverse=True)
 
 
-def _known_response(estimate: Estimate) -> NDArray[np.float64]:
+def _known_response(run: FinishedRun) -> NDArray[np.float64]:
     """G_s of every site, (n_site, 2) hPa; zero where air pressure on land was not given."""
-    ids = [site["id"] for site in estimate.summary["sites"]]
-    if "air_load_response" not in estimate.fingerprints:
+    ids, fingerprints = [site["id"] for site in run.summary["sites"]], run.datasets["fingerprints.nc"]
+    if "air_load_response" not in fingerprints:
         return np.zeros((len(ids), 2))
-    return np.asarray(estimate.fingerprints["air_load_response"].sel(site=ids).values / PASCAL_PER_HPA)
+    return np.asarray(fingerprints["air_load_response"].sel(site=ids).values / PASCAL_PER_HPA)
 
 
 def _admittances(sites: Sequence[dict[str, list[float]]]) -> NDArray[np.complex128]:
     return np.asarray(as_complex(np.array([site["admittance"] for site in sites])))
 
 
-def _map(estimate: Estimate, ocean: OceanFunction) -> Figure:
-    sites = estimate.summary["sites"]
+def _map(run: FinishedRun, ocean: OceanFunction) -> Figure:
+    sites = run.summary["sites"]
     return network_map(
         ocean.fraction,
         _centres(ocean.cells.latitude_bounds_deg),
@@ -105,10 +103,9 @@ def _centres(bounds: NDArray[np.float64]) -> NDArray[np.float64]:
     return np.asarray(0.5 * (bounds[1:] + bounds[:-1]))
 
 
-def _corner(estimate: Estimate) -> Figure:
-    posterior = estimate.posterior
-    phasors = as_complex(posterior.member_annual.reshape(-1, 2) / PASCAL_PER_HPA)
-    scales = posterior.scales.reshape(-1, posterior.scales.shape[-1]) / PASCAL_PER_HPA
+def _corner(posterior: xr.Dataset) -> Figure:
+    phasors = as_complex(posterior["member_annual_phasor"].values.reshape(-1, 2) / PASCAL_PER_HPA)
+    scales = posterior["scale"].values.reshape(-1, posterior.sizes["scale_name"]) / PASCAL_PER_HPA
     every = max(1, len(phasors) // 20_000)  # enough for smooth contours
     labels = ("site scatter / hPa", "models at a site / hPa", "model spread / hPa")
     quantities = {"amplitude / hPa": np.abs(phasors)[::every], "peak day": unwrapped_peak_days(phasors)[::every]}
@@ -116,43 +113,58 @@ def _corner(estimate: Estimate) -> Figure:
     return corner_figure(quantities)
 
 
-def _record_row(reduction: SiteReduction, reference_year: int) -> RecordRow:
-    corrections, drifts = reduction.corrections, reduction.fit.drifts
-    time = np.concatenate([drift.time for drift in drifts])
+def _record_rows(run: FinishedRun) -> list[RecordRow]:
+    """One row a site that has records."""
+    records, year = run.datasets["reduced_records.nc"], run.summary["reference_year"]
+    ends = np.cumsum(records["row_size"].values)
+    parts: dict[str, list[xr.Dataset]] = {}
+    for index, (end, size) in enumerate(zip(ends, records["row_size"].values, strict=True)):
+        part = records.isel(deployment=index, obs=slice(end - size, end))
+        parts.setdefault(str(part["site"].values), []).append(part)
+    return [_record_row(site, parts[site["id"]], year) for site in run.summary["sites"] if site["id"] in parts]
+
+
+def _record_row(site: Mapping[str, Any], deployments: Sequence[xr.Dataset], reference_year: int) -> RecordRow:
+    used = [part.isel(obs=np.isfinite(part["reduced"].values)) for part in deployments]
+    time = np.concatenate([part["time"].values for part in used])
     order = np.argsort(time, kind="stable")
-    mean, _ = reduction.fit.single_gaussian()
-    annual = annual_basis(days_since(time, reference_year)) @ mean.mean(axis=0)
-    reduced = np.concatenate([drift.reduced for drift in drifts])
+    annual = annual_basis(days_since(time, reference_year)) @ np.array(site["phasor_hpa"])
+    reduced = np.concatenate([part["reduced"].values for part in used])
+    days, first = np.unique(np.concatenate([part["time"].values for part in deployments]), return_index=True)
     return RecordRow(
-        site=reduction.site.id,
-        deployments=[(drift.time, *_record_and_drift(reduction, drift)) for drift in drifts],
-        correction_time=corrections["time"].values,
-        corrections={name: _about_zero(series) for name, series in _subtracted(corrections).items()},
+        site=site["id"],
+        deployments=[_record_and_drift(part) for part in used if part.sizes["obs"]],
+        correction_time=days,
+        corrections={name: _about_zero(series[first]) for name, series in _subtracted(deployments).items()},
         reduced_time=time[order],
         reduced=reduced[order] / PASCAL_PER_HPA,
-        annual=annual[order] / PASCAL_PER_HPA,
-        note="not quiet" if reduction.fit.reduced_sd > QUIET_SD else "",
+        annual=annual[order],
+        note="not quiet" if site["reduced_sd_hpa"] * PASCAL_PER_HPA > QUIET_SD else "",
     )
 
 
-def _record_and_drift(reduction: SiteReduction, drift: DriftFit) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Daily pressure of a deployment on the days used and its drift, both less the mean pressure, hPa."""
-    daily = next(record for record in reduction.daily if record.deployment == drift.deployment)
-    pressure = daily.pressure[np.searchsorted(daily.time, drift.time)]
-    level = pressure.mean()
-    return (pressure - level) / PASCAL_PER_HPA, (drift.drift - drift.drift.mean()) / PASCAL_PER_HPA
+def _record_and_drift(
+    used: xr.Dataset,
+) -> tuple[NDArray[np.datetime64], NDArray[np.float64], NDArray[np.float64]]:
+    """Time, daily pressure and drift of a deployment, both less their own mean, hPa."""
+    return used["time"].values, _about_zero(used["pressure"].values), _about_zero(used["drift"].values)
 
 
-def _subtracted(corrections: xr.Dataset) -> dict[str, NDArray[np.float64]]:
-    present = corrections["present"].values == 1
-    models = corrections["circulation"].values[present]
+def _subtracted(deployments: Sequence[xr.Dataset]) -> dict[str, NDArray[np.float64]]:
+    """Series that were taken off a site, its deployments end to end; those that are zero are left out."""
+    present = deployments[0]["model_present"].values == 1
     series = {
-        "long-period tides": corrections["long_period_tides"].values,
-        "circulation (model mean)": models.mean(axis=0) if present.any() else np.zeros(0),
-        "ocean-mean air pressure": corrections["ocean_mean_atmosphere"].values,
-        "pole tide": corrections["pole_tide"].values,
+        "long-period tides": _joined(deployments, "long_period_tides"),
+        "ocean-mean air pressure": _joined(deployments, "ocean_mean_atmosphere"),
+        "pole tide": _joined(deployments, "pole_tide"),
     }
+    if present.any():
+        series["circulation (model mean)"] = _joined(deployments, "circulation")[present].mean(axis=0)
     return {name: values for name, values in series.items() if np.any(values)}
+
+
+def _joined(deployments: Sequence[xr.Dataset], name: str) -> NDArray[np.float64]:
+    return np.concatenate([part[name].values for part in deployments], axis=-1)
 
 
 def _about_zero(series: NDArray[np.float64]) -> NDArray[np.float64]:

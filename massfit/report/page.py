@@ -4,12 +4,20 @@ import base64
 from collections.abc import Mapping
 from typing import Any
 
+import xarray as xr
 from jinja2 import Environment, StrictUndefined
 
 from massfit.phasor import delay_days, peak_days
 from massfit.report.page_template import TEMPLATE
-from massfit.report.text import SHARE_WORDS, answer_sentence, spoken_date, trust_sentence, warning_lines
-from massfit.results.estimate import Estimate, SiteReduction
+from massfit.report.text import (
+    ALTERNATIVES_NOTE,
+    SHARE_WORDS,
+    answer_sentence,
+    spoken_date,
+    trust_sentence,
+    warning_lines,
+)
+from massfit.results.finished import FinishedRun
 
 PICTURES = {
     "phasor_plane": "The network's answer (blue: 50 and 95 % regions) and what each site alone says of it (orange: the "
@@ -33,28 +41,26 @@ _QUANTITIES = (
 )
 
 
-def report_page(estimate: Estimate, pictures: Mapping[str, bytes], *, command: str) -> str:
+def report_page(run: FinishedRun, pictures: Mapping[str, bytes]) -> str:
     """Fill the report.
 
     Parameters
     ----------
-    estimate : Estimate
+    run : FinishedRun
     pictures : mapping of str to bytes
         PNG images under the names of `PICTURES`.
-    command : str
-        The command that repeats the run.
 
     Returns
     -------
     str
         HTML with everything inside it.
     """
-    summary = estimate.summary
+    summary, provenance = run.summary, run.provenance
     template = Environment(autoescape=True, undefined=StrictUndefined).from_string(TEMPLATE)
     return template.render(
         summary=summary,
-        version=estimate.provenance["massfit"],
-        seed=estimate.network.settings.posterior.seed,
+        version=provenance["massfit"],
+        seed=provenance["seed"],
         sentence=answer_sentence(summary),
         images={name: "data:image/png;base64," + base64.b64encode(data).decode() for name, data in pictures.items()},
         alt=PICTURES,
@@ -62,12 +68,13 @@ def report_page(estimate: Estimate, pictures: Mapping[str, bytes], *, command: s
         warnings=warning_lines(summary),
         shares=[(SHARE_WORDS[name], f"{100 * share:.1f} %") for name, share in summary["variance_share"].items()],
         alternatives=[_alternative(row, summary["reference_year"]) for row in summary["alternatives"]],
+        alternatives_note=f"{ALTERNATIVES_NOTE[0].upper()}{ALTERNATIVES_NOTE[1:]}.",
         trust=trust_sentence(summary),
-        sites=_sites(estimate),
-        actions=[row for reduction in estimate.reductions for row in _actions(reduction)],
-        command=command,
-        versions=", ".join(f"{name} {value}" for name, value in estimate.provenance["versions"].items()),
-        inputs=sorted(estimate.network.inputs.items()),
+        sites=[_site(entry, summary["reference_year"]) for entry in summary["sites"]],
+        actions=_actions(summary, run.datasets["reduced_records.nc"]),
+        command=provenance["command"],
+        versions=", ".join(f"{name} {value}" for name, value in provenance["versions"].items()),
+        inputs=sorted(provenance["inputs"].items()),
     )
 
 
@@ -88,35 +95,29 @@ def _alternative(row: Mapping[str, Any], year: int) -> list[str]:
     ]
 
 
-def _sites(estimate: Estimate) -> list[list[str]]:
-    year = estimate.summary["reference_year"]
-    by_id = {reduction.site.id: reduction for reduction in estimate.reductions}
-    rows = []
-    for entry in estimate.summary["sites"]:
-        reduction = by_id[entry["id"]]
-        phasor, admittance = complex(*entry["phasor_hpa"]), complex(*entry["admittance"])
-        rows.append(
-            [
-                entry["id"] + (" *" if entry["warnings"] else ""),
-                f"{reduction.site.latitude_deg:.2f}",
-                f"{reduction.site.longitude_deg:.2f}",
-                str(int(reduction.used.sum())),
-                f"{abs(phasor):.2f}",
-                spoken_date(float(peak_days(phasor)), year),
-                f"{reduction.fit.reduced_sd / 100.0:.2f}",
-                f"{abs(admittance):.3f}",
-                f"{float(delay_days(admittance)):.1f}",
-                f"{entry['standardised_residual']:.2f}",
-                f"{entry['outlier_probability']:.2f}",
-            ]
-        )
-    return rows
+def _site(entry: Mapping[str, Any], year: int) -> list[str]:
+    phasor, admittance = complex(*entry["phasor_hpa"]), complex(*entry["admittance"])
+    return [
+        entry["id"] + (" *" if entry["warnings"] else ""),
+        f"{entry['latitude']:.2f}",
+        f"{entry['longitude']:.2f}",
+        str(entry["days"]),
+        f"{abs(phasor):.2f}",
+        spoken_date(float(peak_days(phasor)), year),
+        f"{entry['reduced_sd_hpa']:.2f}",
+        f"{abs(admittance):.3f}",
+        f"{float(delay_days(admittance)):.1f}",
+        f"{entry['standardised_residual']:.2f}",
+        f"{entry['outlier_probability']:.2f}",
+    ]
 
 
-def _actions(reduction: SiteReduction) -> list[list[str]]:
+def _actions(summary: Mapping[str, Any], records: xr.Dataset) -> list[list[str]]:
+    """Every deployment, its number of daily means and what was done to it."""
+    days = dict(zip(records["deployment"].values.tolist(), records["row_size"].values.tolist(), strict=True))
     rows = []
-    for daily in reduction.daily:
-        said = [(action, f" ({action.detail})" if action.detail else "") for action in daily.actions]
-        done = "; ".join(f"{action.what}: {action.count}{detail}" for action, detail in said)
-        rows.append([daily.deployment, str(len(daily.time)), done])
+    for deployment, actions in summary["actions"].items():
+        said = [(action, f" ({action['detail']})" if action["detail"] else "") for action in actions]
+        done = "; ".join(f"{action['what']}: {action['count']}{detail}" for action, detail in said)
+        rows.append([deployment, str(days[deployment]), done])
     return rows

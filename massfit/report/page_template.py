@@ -53,6 +53,7 @@ code { font-size: .8rem; overflow-wrap: anywhere; }
 <tr><th>instead</th><th>shift / sd</th><th>width ratio</th><th>amplitude / hPa</th><th>peak</th></tr>
 {% for row in alternatives %}<tr><td>{{ row[0] }}</td>{% for cell in row[1:] %}<td>{{ cell }}</td>{% endfor %}</tr>
 {% endfor %}</table></div>
+<p class="small">{{ alternatives_note }}</p>
 
 <h2>Does it hold</h2>
 <p>{{ trust }}</p>

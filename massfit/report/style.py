@@ -16,6 +16,7 @@ LAND = "#D9D9D9"
 
 _SETTINGS: dict[Any, Any] = {
     "font.size": 9.0,
+    "text.parse_math": False,  # a name may hold a dollar sign
     "axes.titlesize": 10.0,
     "axes.titlelocation": "left",
     "axes.spines.top": False,

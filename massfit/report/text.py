@@ -10,6 +10,12 @@ from massfit.phasor import delay_days, peak_date, peak_days
 
 WIDTH = 80
 
+ALTERNATIVES_NOTE = (
+    "shift: of the mean phasor, in standard deviations of the answer; width ratio: sd over that of the answer; each of "
+    "the component, in phase or quadrature, that moves more. s_common: the error a model makes at every site"
+)
+"""What the two numbers beside another choice are."""
+
 SHARE_WORDS = {
     "record": "record noise and drift",
     "site_scatter": "site scatter",
@@ -113,7 +119,8 @@ def _alternatives(summary: Mapping[str, Any]) -> list[str]:
     if not rows:
         return []
     lines = [f"{'If instead':<48}{'shift / sd':>14}{'width ratio':>14}"]
-    return lines + [f"  {row['name'][:46]:<46}{row['shift_sd']:>14.2f}{row['sd_ratio']:>14.2f}" for row in rows]
+    lines += [f"  {row['name'][:46]:<46}{row['shift_sd']:>14.2f}{row['sd_ratio']:>14.2f}" for row in rows]
+    return lines + textwrap.wrap(ALTERNATIVES_NOTE, WIDTH)
 
 
 def _sites(summary: Mapping[str, Any]) -> list[str]:

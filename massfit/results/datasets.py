@@ -79,6 +79,11 @@ def reduced_records(estimate: Estimate) -> xr.Dataset:
     return xr.Dataset(
         {
             **variables,
+            "model_present": (
+                ("deployment", "model"),
+                np.array([reduction.corrections["present"].values for reduction, _ in rows], dtype=np.int8),
+                {"long_name": "1 where the model was subtracted from the site", "units": _ONE},
+            ),
             "row_size": (
                 ("deployment",),
                 np.array([len(record.time) for record in daily], dtype=np.int32),

@@ -9,13 +9,19 @@ import pytest
 from massfit.report.page import PICTURES, report_page
 from massfit.report.text import SHARE_WORDS
 from massfit.results.estimate import Estimate
+from massfit.results.finished import FinishedRun, finished_run
 
 PNG = dict.fromkeys(PICTURES, b"\x89PNG")
 
 
 @pytest.fixture(scope="module")
-def page(run: Estimate) -> str:
-    return report_page(run, PNG, command="massfit estimate here")
+def finished(run: Estimate) -> FinishedRun:
+    return finished_run(run, command="massfit estimate here")
+
+
+@pytest.fixture(scope="module")
+def page(finished: FinishedRun) -> str:
+    return report_page(finished, PNG)
 
 
 class Tags(HTMLParser):
@@ -68,22 +74,20 @@ def test_it_says_the_answer_and_what_it_rests_on(page: str, run: Estimate) -> No
     assert "did not converge" not in page
 
 
-def test_markup_in_a_name_stays_text(run: Estimate) -> None:
+def test_markup_in_a_name_stays_text(finished: FinishedRun) -> None:
     evil = '<script>alert("A1")</script>'
-    first, *rest = run.reductions
-    site = replace(first.site, id=evil)
-    entries = [{**run.summary["sites"][0], "id": evil}, *run.summary["sites"][1:]]
-    summary = {**run.summary, "network": f"<b>{evil}", "sites": entries, "warnings": [evil]}
-    changed = replace(run, reductions=(replace(first, site=site), *rest), summary=summary)
-    page = report_page(changed, PNG, command=f"massfit estimate '{evil}'")
+    entries = [{**finished.summary["sites"][0], "id": evil}, *finished.summary["sites"][1:]]
+    summary = {**finished.summary, "network": f"<b>{evil}", "sites": entries, "warnings": [evil]}
+    provenance = {**finished.provenance, "command": f"massfit estimate '{evil}'"}
+    page = report_page(replace(finished, summary=summary, provenance=provenance), PNG)
     assert "<script" not in page
     # title, heading, site table, warning and command
     assert page.count("&lt;script&gt;") == 5
     assert not {"script", "b"} & {tag for tag, _ in tags(page)}
 
 
-def test_a_run_that_did_not_converge_says_so_at_the_top(run: Estimate) -> None:
-    convergence = {**run.summary["convergence"], "converged": False}
-    page = report_page(replace(run, summary={**run.summary, "convergence": convergence}), PNG, command="")
+def test_a_run_that_did_not_converge_says_so_at_the_top(finished: FinishedRun) -> None:
+    convergence = {**finished.summary["convergence"], "converged": False}
+    page = report_page(replace(finished, summary={**finished.summary, "convergence": convergence}), PNG)
     assert "did not converge: this result is not trustworthy" in page
     assert page.index("did not converge") < page.index('class="answer"')
