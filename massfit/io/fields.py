@@ -223,8 +223,12 @@ def _patterns(dataset: xr.Dataset, phasor: xr.DataArray, stem: str, source: str)
     members = phasor if "member" in phasor.dims else phasor.expand_dims("member")
     for position in range(members.sizes["member"]):
         values = members.isel(member=position).to_numpy()
+        values = np.where(np.isnan(values), 0.0, values)
         name = _member_name(phasor, position, stem)
-        yield LoadPattern(name, latitude, longitude, np.where(np.isnan(values), 0.0, values), reference)
+        if not values.any():
+            allowed = "Must hold an annual pattern"
+            raise InputError(Fault(source, name, "every value is zero or missing", allowed, "Check the file"))
+        yield LoadPattern(name, latitude, longitude, values, reference)
 
 
 def _member_name(phasor: xr.DataArray, position: int, stem: str) -> str:

@@ -3,11 +3,13 @@
 from collections.abc import Iterable, Sequence
 
 import numpy as np
+from numpy.typing import NDArray
 
 from massfit.constants import JULIAN_YEAR_DAYS
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.io.locate import KeyPath
 from massfit.io.reading import Reading
+from massfit.io.record_checks import check_values
 from massfit.io.schema import SiteEntry
 from massfit.io.sections import Sections
 from massfit.records.record import Record
@@ -71,8 +73,8 @@ def check_coverage(
     Parameters
     ----------
     reading : Reading
-        Receives a fault when there are none; a warning when they are under 1.5 years, and
-        for a record that lies wholly outside.
+        Receives a fault when there are none, and for values that cannot be; a warning when they
+        are under 1.5 years, and for a record that lies wholly outside.
     path : tuple
         Where the site stands in the file.
     site : Site
@@ -88,7 +90,8 @@ def check_coverage(
     days : set of int
         Days with data, counted from 1970.
     """
-    found = {record.deployment: _days_with_data(record, site, frame) for record in records}
+    inside = {record.deployment: _inside(record, site, frame) for record in records}
+    found = {record.deployment: _days(record, inside[record.deployment]) for record in records}
     used = tuple(record for record in records if found[record.deployment])
     days = set().union(*found.values())
     if not days:
@@ -96,7 +99,10 @@ def check_coverage(
         reading.fault(path, "the window and the exclusions leave no data", "Must be some", action)
         return used, days
     for record in records:
-        if not found[record.deployment]:
+        if found[record.deployment]:
+            number = int(record.deployment.rpartition("/")[2])
+            check_values(reading, (*path, "deployment", number - 1), site, record, inside[record.deployment])
+        else:
             reading.warnings.append(f"{record.deployment} has no data inside the window and is not used.")
     if len(days) < _SHORT_YEARS * JULIAN_YEAR_DAYS:
         reading.warnings.append(
@@ -114,7 +120,8 @@ def check_length(reading: Reading, days: int) -> None:
         reading.fault(("network",), problem, f"An annual cycle needs at least {_FEWEST_DAYS}", action)
 
 
-def _days_with_data(record: Record, site: Site, frame: Frame) -> set[int]:
+def _inside(record: Record, site: Site, frame: Frame) -> NDArray[np.bool_]:
+    """Find the valid samples in the window and outside the exclusions."""
     keep = np.isfinite(record.pressure) & ~np.isnat(record.time)
     if frame.start is not None:
         keep &= record.time >= np.datetime64(frame.start, "ns")
@@ -122,7 +129,11 @@ def _days_with_data(record: Record, site: Site, frame: Frame) -> set[int]:
         keep &= record.time < np.datetime64(frame.end, "ns") + _DAY
     for interval in site.exclude:
         keep &= (record.time < interval.start) | (record.time > interval.end)
-    return set(np.unique(record.time[keep].astype("datetime64[D]").astype(np.int64)).tolist())
+    return keep
+
+
+def _days(record: Record, used: NDArray[np.bool_]) -> set[int]:
+    return set(np.unique(record.time[used].astype("datetime64[D]").astype(np.int64)).tolist())
 
 
 def _check_window(reading: Reading, frame: Frame) -> None:

@@ -140,7 +140,22 @@ def _builtin(reading: Reading, path: KeyPath, name: str) -> tuple[LoadPattern, .
 
 def _circulation(reading: Reading, sections: Sections, sites: set[str]) -> tuple[CirculationModel, ...]:
     models = [_model(reading, path, entry, sites) for path, entry in sections.circulation]
+    _check_distinct(reading, sections)
     return tuple(model for model in models if model is not None)
+
+
+def _check_distinct(reading: Reading, sections: Sections) -> None:
+    """One model under two names would be counted as two that agree."""
+    first: dict[tuple[str, str | None], str] = {}
+    for path, entry in sections.circulation:
+        content = reading.inputs.get(reading.relative(entry.file))
+        if content is None:
+            continue
+        key = (content, entry.variable)
+        if key in first:
+            problem = f'"{entry.file}" has the same content as the file of "{first[key]}"'
+            reading.fault((*path, "file"), problem, "Must be another model", "Correct the file, or drop one of the two")
+        first.setdefault(key, entry.name)
 
 
 def _model(reading: Reading, path: KeyPath, entry: CirculationEntry, sites: set[str]) -> CirculationModel | None:

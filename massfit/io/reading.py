@@ -119,6 +119,8 @@ def open_reading(path: str | os.PathLike[str], *, outside: bool) -> Reading:
     if file.is_dir():
         file = file / "network.toml"
     source = str(file)
+    if file.is_dir():
+        raise InputError(Fault(source, "", "it is a folder", "Must be a network file", "Rename the folder"))
     if not file.is_file():
         others = [str(found) for found in sorted(file.parent.glob("*.toml"))]
         action = did_you_mean(nearest(source, others) or next(iter(others), None), "Check the path")

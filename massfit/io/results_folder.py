@@ -3,7 +3,6 @@
 import csv
 import io
 import json
-import os
 import shutil
 import tempfile
 from collections.abc import Mapping
@@ -38,7 +37,7 @@ def check_output(folder: Path, *, overwrite: bool) -> None:
     """
     here = str(folder)
     if folder.exists() and not folder.is_dir():
-        raise InputError(Fault(here, "", "the output is a file", "A folder", "Choose another with --output"))
+        raise InputError(Fault(here, "", "the output is a file", "Must be a folder", "Choose another with --output"))
     if folder.exists() and any(folder.iterdir()):
         if not (folder / "run.json").exists():
             problem = "the folder is not empty and holds no results of massfit, so it is left alone"
@@ -47,8 +46,11 @@ def check_output(folder: Path, *, overwrite: bool) -> None:
             problem = "the folder holds finished results"
             raise InputError(Fault(here, "", problem, "", "Give --overwrite to replace them, or --output to keep both"))
     parent = next(path for path in folder.absolute().parents if path.exists())
-    if not os.access(parent, os.W_OK):
-        raise InputError(Fault(str(parent), "", "the folder cannot be written", "", "Choose another with --output"))
+    try:  # trying is the only sure way: some file systems refuse what the permissions allow
+        Path(tempfile.mkdtemp(prefix=".massfit-", dir=parent)).rmdir()
+    except OSError as error:
+        problem = f"the folder cannot be written ({error.strerror})"
+        raise InputError(Fault(str(parent), "", problem, "", "Choose another with --output")) from error
 
 
 def write_results(

@@ -41,7 +41,9 @@ def check_empty(folder: Path) -> None:
     InputError
         It exists and is not an empty folder.
     """
-    if folder.exists() and (not folder.is_dir() or any(folder.iterdir())):
+    if folder.exists() and not folder.is_dir():
+        raise InputError(Fault(str(folder), "", "it is a file", "Must be a folder", "Choose a new or an empty folder"))
+    if folder.exists() and any(folder.iterdir()):
         raise InputError(Fault(str(folder), "", "the folder is not empty", "", "Choose a new or an empty folder"))
 
 

@@ -95,7 +95,8 @@ def _choices(
         choices.append(("samples outside the period left out", inside, f"{start or 'start'} to {end or 'end'}"))
     for interval in exclude:
         outside = (time < interval.start) | (time > interval.end)
-        detail = f"{interval.start} to {interval.end}: {interval.reason}"
+        first, last = (np.datetime_as_string(instant, unit="s") for instant in (interval.start, interval.end))
+        detail = f"{first} to {last}: {interval.reason}"
         choices.append(("samples in an excluded interval left out", outside, detail))
     return choices
 

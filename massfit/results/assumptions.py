@@ -51,8 +51,12 @@ def _corrections(network: Network) -> list[str]:
         if chosen.pole_tide == "observed"
         else "pole tide NOT removed here"
     )
-    removed = network.ocean_mean_atmosphere is None and network.air_pressure is None
-    air = "taken as already removed" if removed else "removed with the series given"
+    if network.air_pressure is not None:
+        air = "removed with the mean of the air-pressure field given"
+    elif network.ocean_mean_atmosphere is not None:
+        air = "removed with the series given"
+    else:
+        air = "taken as already removed"
     given = network.atmosphere_load is not None or network.air_pressure is not None
     land = (
         "The self-attraction of air on land is added as a known term."

@@ -148,3 +148,10 @@ def test_air_pressure_is_packed_and_in_another_order(tmp_path: Path) -> None:
     read = read_air_pressure(tmp_path / "air.nc", source="air.nc")
     assert read.dims == ("time", "lat", "lon")
     np.testing.assert_allclose(read, 100.0 * truth, atol=0.51)  # half a packing step, Pa
+
+
+@pytest.mark.parametrize("value", [0.0, np.nan])
+def test_a_load_without_any_value_is_refused(tmp_path: Path, value: float) -> None:
+    phasor_file(tmp_path / "nothing.nc", values=np.full((LATITUDE.size, LONGITUDE.size), value))
+    with pytest.raises(InputError, match="every value is zero or missing"):
+        read_loads(tmp_path / "nothing.nc", reference_year=2016, source="nothing.nc")

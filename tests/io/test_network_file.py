@@ -124,3 +124,17 @@ def test_a_damaged_model_file_is_a_fault(network_folder: Path) -> None:
     file.write_bytes(file.read_bytes()[:-200])
     with pytest.raises(InputError, match=r"fields/model\.nc: the file cannot be read as NetCDF"):
         read_network(network_folder)
+
+
+def test_one_model_under_two_names_is_refused(network_folder: Path, change: Change) -> None:
+    (network_folder / "fields/copy.nc").write_bytes((network_folder / "fields/model.nc").read_bytes())
+    second = '[[circulation]]\nname = "Other"\nfile = "fields/copy.nc"\nocean_mean = "removed"\n'
+    change("[fingerprint]", f'{second}air_pressure = "not-forced"\n\n[fingerprint]')
+    with pytest.raises(InputError, match='same content as the file of "Invented model"'):
+        read_network(network_folder)
+
+
+def test_a_folder_in_place_of_the_network_file_is_named(tmp_path: Path) -> None:
+    (tmp_path / "network.toml").mkdir()
+    with pytest.raises(InputError, match="it is a folder"):
+        read_network(tmp_path)

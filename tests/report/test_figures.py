@@ -126,3 +126,11 @@ def test_record_panels_bear_a_single_site_without_corrections() -> None:
     row = record_row("Alone")
     bare = RecordRow("Alone", row.deployments, row.correction_time, {}, row.reduced_time, row.reduced, row.annual)
     assert len(record_panels([bare]).axes) == 3
+
+
+def test_a_name_with_dollar_signs_is_no_formula() -> None:
+    name = r"East $\frac$ & <West>"
+    assert len(png(record_panels([record_row(name)]))) > 10_000
+    plane = phasor_plane(DRAWS, [name], PHASORS[:1], COVARIANCES[:1], reference_year=2016)
+    assert name in words(plane)
+    assert len(png(plane)) > 10_000
