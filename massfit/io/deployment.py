@@ -8,6 +8,8 @@ from pydantic.dataclasses import dataclass
 
 from massfit.settings import DriftForm
 
+Text = Annotated[str, Field(min_length=1)]
+
 
 @dataclass(frozen=True, config=ConfigDict(extra="forbid", allow_inf_nan=False))
 class DeploymentFile:
@@ -45,17 +47,17 @@ class DeploymentFile:
         Density of the water column, needed when the unit is a height of water.
     """
 
-    file: Annotated[str, Field(min_length=1)]
-    units: str | None = None
-    station: str | None = None
-    variable: str | None = None
+    file: Text
+    units: Text | None = None
+    station: Text | None = None
+    variable: Text | None = None
     drift: DriftForm = "exponential+linear"
     steps: Literal["find", "none"] | tuple[datetime, ...] = "find"
     columns: tuple[str, ...] | None = None
-    time_column: str | None = None
-    time_format: str | None = None
-    comment: Annotated[str, Field(min_length=1)] = "#"
-    delimiter: Annotated[str, Field(min_length=1)] | None = None
+    time_column: Text | None = None
+    time_format: Text | None = None
+    comment: Text = "#"
+    delimiter: Text | None = None
     missing: tuple[float, ...] = ()
     keep_kinds: tuple[str, ...] | None = None
     stamp: Literal["middle", "start"] = "middle"

@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 from massfit.errors import Fault, InputError, collect
 from massfit.io.deployment import DeploymentFile
 from massfit.io.samples import Samples
-from massfit.io.text_time import DATE_PARTS, joined_date, line_fault, parsed_time
+from massfit.io.text_time import DATE_PARTS, joined_date, line_fault, needed_parts, parsed_time
 from massfit.io.units import pascal_per_unit
 from massfit.records.record import Action
 
@@ -39,7 +39,7 @@ class _Layout:
     time : tuple of str
         Columns of the time, joined by a space.
     header_line : int
-        Line of the header, counted from 1; 0 where there is none.
+        Last line of the header, counted from 1; 0 where there is none.
     """
 
     names: tuple[str, ...]
@@ -115,10 +115,16 @@ def _prepared(file: TextIO, entry: DeploymentFile) -> tuple[_Layout, float]:
 
 
 def _layout(file: TextIO, entry: DeploymentFile) -> _Layout:
-    number, fields = _first_row(file, entry)
+    rows = _rows(file, entry)
+    number, fields = _first_row(rows, entry)
     header_line = 0
     names = entry.columns
-    if names is None:
+    if names is not None:
+        # a row without any number above the first that has one names columns and units, or holds no value
+        while not any(_is_number(field) for field in fields):
+            header_line = number
+            number, fields = _first_row(rows, entry)
+    else:
         if any(_is_number(field) for field in fields):
             problem = f"no header line: the first row is {fields}"
             action = 'State `columns`, for example columns = ["time", "pressure"]'
@@ -132,17 +138,23 @@ def _layout(file: TextIO, entry: DeploymentFile) -> _Layout:
     pressure = entry.variable or _sole_pressure(names, time)
     wanted = [*(("time_column", name) for name in time), ("variable", pressure)]
     wanted += [("keep_kinds", _KIND)] if entry.keep_kinds is not None else []
-    wanted += [("columns", part) for part in DATE_PARTS[:3] if date]
+    wanted += [("columns", part) for part in needed_parts(names) if date]
     faults = [_no_column(entry.file, key, name, names) for key, name in wanted if name not in names]
     if faults:
         raise InputError(faults)
     return _Layout(names, pressure, date, time, header_line)
 
 
-def _first_row(file: TextIO, entry: DeploymentFile) -> tuple[int, list[str]]:
+def _rows(file: TextIO, entry: DeploymentFile) -> Iterator[tuple[int, list[str]]]:
+    """Line numbers and fields of the rows that are no comments."""
     for number, line in enumerate(file, start=1):
         if _is_data(line, entry.comment):
-            return number, [field.strip().strip('"') for field in line.rstrip("\r\n").split(entry.delimiter)]
+            yield number, [field.strip().strip('"') for field in line.rstrip("\r\n").split(entry.delimiter)]
+
+
+def _first_row(rows: Iterator[tuple[int, list[str]]], entry: DeploymentFile) -> tuple[int, list[str]]:
+    for row in rows:
+        return row
     raise InputError(Fault(entry.file, "", "the file has no row of data"))
 
 
@@ -220,7 +232,7 @@ def _chunks(file: TextIO, layout: _Layout, entry: DeploymentFile) -> Iterator[tu
     """Numbers and texts of the rows of data, a bounded number of lines at a time."""
     numbered = enumerate(file, start=1)
     while block := list(islice(numbered, _CHUNK_LINES)):
-        rows = [row for row in block if row[0] != layout.header_line and _is_data(row[1], entry.comment)]
+        rows = [row for row in block if row[0] > layout.header_line and _is_data(row[1], entry.comment)]
         yield np.array([number for number, _ in rows], dtype=np.int64), [line for _, line in rows]
 
 

@@ -1,6 +1,7 @@
 """UTC times from text columns: a date in parts, a format, ISO 8601, or counts since a date."""
 
 import re
+from collections.abc import Collection
 from typing import Any
 
 import numpy as np
@@ -9,14 +10,26 @@ from numpy.typing import NDArray
 
 from massfit.errors import Fault, InputError
 
-DATE_PARTS = ("year", "month", "day", "hour", "minute", "second")
-"""Column names of a date in parts; the first three are needed."""
+DATE_PARTS = ("year", "month", "day", "hour", "minute", "second", "day_of_year")
+"""Column names of a date in parts."""
 
 _YEARS = (1900, 2200)
 _CLOCK = {"hour": (0, 23), "minute": (0, 59), "second": (0, 60)}
-_BOUNDS = {"year": _YEARS, "month": (1, 12), "day": (1, 31), **_CLOCK}
+_BOUNDS = {"year": _YEARS, "month": (1, 12), "day": (1, 31), "day_of_year": (1, 367), **_CLOCK}
+_MAY_HAVE_DECIMALS = ("second", "day_of_year")
 _UNIT_MS = {"seconds": 1e3, "minutes": 60e3, "hours": 3600e3, "days": 86_400e3}
 _SINCE = re.compile(r"(seconds|minutes|hours|days) since (\d{4}-\d{2}-\d{2}(?:[T ]\d{2}:\d{2}(?::\d{2})?)?)")
+
+
+def needed_parts(names: Collection[str]) -> tuple[str, ...]:
+    """Name the parts that a date needs: year, month and day, or year and day of the year.
+
+    Examples
+    --------
+    >>> needed_parts(["year", "day_of_year", "pressure"])
+    ('year', 'day_of_year')
+    """
+    return ("year", "day_of_year") if "day_of_year" in names else DATE_PARTS[:3]
 
 
 def line_fault(
@@ -56,12 +69,13 @@ def line_fault(
 def joined_date(
     parts: dict[str, NDArray[np.float64]], lines: NDArray[np.int64], *, source: str
 ) -> NDArray[np.datetime64]:
-    """UTC times from columns of year, month, day and any of hour, minute, second.
+    """UTC times from columns of year, month, day (or day of the year) and any of hour, minute, second.
 
     Parameters
     ----------
     parts : dict of str to (n,) array
-        By the names of `DATE_PARTS`; seconds may have decimals.
+        By the names of `DATE_PARTS`; seconds may have decimals, and so may the day of the year, which is 1 at the
+        first instant of 1 January.
     lines : (n,) array of int
         Line numbers, for the faults.
     source : str
@@ -86,21 +100,27 @@ def joined_date(
     faults = []
     for part, values in parts.items():
         low, high = _BOUNDS[part]
-        whole = part == "second" or values == np.floor(values)
-        good = (values >= low) & (values <= high) & whole
+        whole = part in _MAY_HAVE_DECIMALS or values == np.floor(values)
+        good = (values >= low) & ((values < high) if part == "day_of_year" else (values <= high)) & whole
         if not good.all():
             action = "Write years with four digits" if part == "year" else "Correct it"
             faults.append(line_fault(source, part, values, good, lines, f"Must be within [{low}, {high}]", action))
     if faults:
         raise InputError(faults)
-    month = ((parts["year"] - 1970) * 12 + parts["month"] - 1).astype("datetime64[M]")
-    date = month.astype("datetime64[D]") + (parts["day"] - 1).astype("timedelta64[D]")
-    good = date.astype("datetime64[M]") == month
+    year = (parts["year"] - 1970).astype("datetime64[Y]")
+    if "day_of_year" in parts:
+        day, unit, name = parts["day_of_year"], year, "day_of_year"
+    else:
+        day, unit, name = parts["day"], year.astype("datetime64[M]") + (parts["month"] - 1).astype(int), "day"
+    date = unit.astype("datetime64[D]") + (np.floor(day) - 1).astype("timedelta64[D]")
+    good = date.astype(unit.dtype) == unit
     if not good.all():
-        allowed = "Must be a day of its month"
-        raise InputError(line_fault(source, "day", parts["day"], good, lines, allowed))
+        allowed = f"Must be a day of its {'year' if unit is year else 'month'}"
+        raise InputError(line_fault(source, name, day, good, lines, allowed))
     zero = np.zeros(date.size)
     seconds = parts.get("hour", zero) * 3600 + parts.get("minute", zero) * 60 + parts.get("second", zero)
+    # a microsecond is what decimals of a day resolve
+    seconds = seconds + np.round((day - np.floor(day)) * 86_400, 6)
     return np.asarray(date.astype("datetime64[ns]") + np.round(seconds * 1e9).astype("timedelta64[ns]"))
 
 

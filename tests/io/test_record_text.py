@@ -215,3 +215,27 @@ def test_daily_table_by_column_name(open_data: Path, column: str) -> None:
     depth = (record.pressure + record.reference) / (1025.0 * 9.80665)
     np.testing.assert_allclose(depth, expected, rtol=0, atol=1e-9)
     assert record.time[0] == np.datetime64("2015-01-01T12:00")
+
+
+# headers over stated columns, and days of the year
+
+
+def test_header_and_units_rows_over_stated_columns_are_no_data(tmp_path: Path) -> None:
+    columns = ("year", "month", "day", "pressure")
+    record = read(tmp_path, "YYYY MO DY P\n- - - dbar\n2016 1 1 5.0\n2016 1 2 6.0\n", columns=columns)
+    assert absolute_hpa(record) == [5.0, 6.0]
+    # a row with a number is a row of data, wherever it stands
+    (fault,) = faults_of(tmp_path, "YYYY MO DY 2\n2016 1 1 5.0\n", columns=(*columns[:3], "x", "pressure"))[:1]
+    assert "the row has 4 fields and `columns` names 5" in fault
+    assert "no row of data" in faults_of(tmp_path, "YYYY MO DY P\n", columns=columns)[0]
+
+
+def test_day_of_the_year(tmp_path: Path) -> None:
+    columns = ("year", "day_of_year", "hour", "pressure")
+    record = read(tmp_path, "2016 60 6 1.0\n2016 366 0 2.0\n2015 1.25 0 3.0\n", columns=columns)
+    expected = ["2016-02-29T06:00", "2016-12-31T00:00", "2015-01-01T06:00"]
+    assert np.datetime_as_string(record.time, "m").tolist() == expected
+    (fault,) = faults_of(tmp_path, "2015 366 0 1.0\n", columns=columns)
+    assert "a.txt:1: day_of_year: the value is 366. Must be a day of its year" in fault
+    assert "Must be within [1, 367]" in faults_of(tmp_path, "2015 367 0 1.0\n", columns=columns)[0]
+    assert "there is no column 'year'" in faults_of(tmp_path, "366 1.0\n", columns=("day_of_year", "pressure"))[0]
