@@ -105,11 +105,13 @@ SITE_PHASORS = Contract(
         "covariance": Variable(("site", "part", "component", "component2"), "Pa2"),
         # D_s: covariance of each model's own weather at the annual line
         "model_noise": Variable(("site", "component", "component2"), "Pa2"),
-        # standard deviation of the reduced daily record
+        # standard deviation of the reduced daily record, and its days; NaN where the site was reduced elsewhere
         "reduced_sd": Variable(("site",), "Pa"),
         "days": Variable(("site",), "d"),
     },
     attributes=("reference_year",),
+    # 1 where only the mean over the site's models is known: all its models then hold that mean
+    optional={"mean_only": Variable(("site",), "1")},
 )
 
 

@@ -1,21 +1,43 @@
 """Site phasors as one Dataset, as the network stage receives them."""
 
 from collections.abc import Sequence
+from typing import NamedTuple
 
 import numpy as np
 import xarray as xr
+from numpy.typing import NDArray
 
 from massfit.annual.fit import SiteFit
 from massfit.contracts import SITE_PHASORS
 from massfit.errors import Fault, InputError
+from massfit.network import ReducedSite, reduced_faults
 from massfit.phasor import COMPONENTS
+
+Floats = NDArray[np.float64]
 
 NO_MODEL = "none"
 """Name on the model axis of a phasor from which no model was subtracted."""
 
 
-def site_phasors(fits: Sequence[SiteFit], *, models: Sequence[str], reference_year: int) -> xr.Dataset:
-    """Join the fits of all sites.
+class _Row(NamedTuple):
+    """One site of the Dataset, from whichever side it comes."""
+
+    site: str
+    models: tuple[str, ...]
+    weight: Floats
+    phasor: Floats
+    covariance: Floats
+    model_noise: Floats
+    reduced_sd: float
+    days: float
+    effective_sample_size: float
+    mean_only: bool
+
+
+def site_phasors(
+    fits: Sequence[SiteFit], *, models: Sequence[str], reference_year: int, reduced: Sequence[ReducedSite] = ()
+) -> xr.Dataset:
+    """Join the fits of all sites, and the phasors that were made elsewhere.
 
     Parameters
     ----------
@@ -24,6 +46,8 @@ def site_phasors(fits: Sequence[SiteFit], *, models: Sequence[str], reference_ye
         All circulation models of the network. "none" is appended when some site has no
         model subtracted.
     reference_year : int
+    reduced : sequence of ReducedSite
+        Sites that were reduced elsewhere, one Gaussian each; they stand behind the fits.
 
     Returns
     -------
@@ -33,39 +57,41 @@ def site_phasors(fits: Sequence[SiteFit], *, models: Sequence[str], reference_ye
     Raises
     ------
     InputError
-        Repeated sites, or a fit with a model that the network does not have.
+        Repeated sites, a model that the network does not have, or a phasor made elsewhere that is
+        not well formed.
     """
-    _check(fits, models)
-    axis = [*models, NO_MODEL] if any(not fit.models for fit in fits) else list(models)
-    shape = (len(fits), max((len(fit.weight) for fit in fits), default=1))
+    _check(fits, models, reduced)
+    rows = [_fit_row(fit) for fit in fits] + [_reduced_row(site) for site in reduced]
+    axis = [*models, NO_MODEL] if any(not row.models for row in rows) else list(models)
+    shape = (len(rows), max((len(row.weight) for row in rows), default=1))
     phasor = np.full((*shape, len(axis), 2), np.nan)
     weight = np.zeros(shape)
     covariance = np.zeros((*shape, 2, 2))
-    for row, fit in enumerate(fits):
-        used = len(fit.weight)
+    for place, row in enumerate(rows):
+        used = len(row.weight)
         # parts that a site does not need repeat its first with no weight
         source = np.where(np.arange(shape[1]) < used, np.arange(shape[1]), 0)
-        columns = [axis.index(name) for name in fit.models or (NO_MODEL,)]
-        phasor[row][:, columns] = fit.phasor[source]
-        covariance[row] = fit.covariance[source]
-        weight[row, :used] = fit.weight
+        columns = [axis.index(name) for name in row.models or (NO_MODEL,)]
+        phasor[place][:, columns] = row.phasor[source]
+        covariance[place] = row.covariance[source]
+        weight[place, :used] = row.weight
     values = {
         "phasor": phasor,
         "weight": weight,
         "covariance": covariance,
-        "model_noise": np.array([fit.model_noise for fit in fits]).reshape(-1, 2, 2),
-        "reduced_sd": np.array([fit.reduced_sd for fit in fits]),
-        "days": np.array([fit.days for fit in fits], float),
+        "model_noise": np.array([row.model_noise for row in rows]).reshape(-1, 2, 2),
+        "reduced_sd": np.array([row.reduced_sd for row in rows]),
+        "days": np.array([row.days for row in rows], float),
     }
-    variables = {
-        name: (SITE_PHASORS.variables[name].dims, array, {"units": SITE_PHASORS.variables[name].units})
-        for name, array in values.items()
-    }
-    sizes = np.array([fit.effective_sample_size for fit in fits])
+    declared = {**SITE_PHASORS.variables, **SITE_PHASORS.optional}
+    if any(row.mean_only for row in rows):
+        values["mean_only"] = np.array([row.mean_only for row in rows], np.int8)
+    variables = {name: (declared[name].dims, array, {"units": declared[name].units}) for name, array in values.items()}
+    sizes = np.array([row.effective_sample_size for row in rows])
     return xr.Dataset(
         {**variables, "effective_sample_size": (("site",), sizes, {"units": "1"})},
         coords={
-            "site": [fit.site for fit in fits],
+            "site": [row.site for row in rows],
             "model": axis,
             "component": list(COMPONENTS),
             "component2": list(COMPONENTS),
@@ -74,10 +100,40 @@ def site_phasors(fits: Sequence[SiteFit], *, models: Sequence[str], reference_ye
     )
 
 
-def _check(fits: Sequence[SiteFit], models: Sequence[str]) -> None:
-    names = [fit.site for fit in fits]
+def _fit_row(fit: SiteFit) -> _Row:
+    return _Row(
+        site=fit.site,
+        models=fit.models,
+        weight=fit.weight,
+        phasor=fit.phasor,
+        covariance=fit.covariance,
+        model_noise=fit.model_noise,
+        reduced_sd=fit.reduced_sd,
+        days=fit.days,
+        effective_sample_size=fit.effective_sample_size,
+        mean_only=False,
+    )
+
+
+def _reduced_row(site: ReducedSite) -> _Row:
+    return _Row(
+        site=site.site,
+        models=site.models,
+        weight=np.ones(1),
+        phasor=site.model_phasors[None],
+        covariance=site.covariance[None],
+        model_noise=site.model_noise,
+        reduced_sd=np.nan,
+        days=np.nan,
+        effective_sample_size=np.nan,
+        mean_only=site.mean_only,
+    )
+
+
+def _check(fits: Sequence[SiteFit], models: Sequence[str], reduced: Sequence[ReducedSite]) -> None:
+    names = [fit.site for fit in fits] + [site.site for site in reduced]
     faults = [
-        Fault(name, "site", "two fits are of this site", "One fit per site")
+        Fault(name, "site", "two phasors are of this site", "One fit, or one phasor made elsewhere")
         for name in sorted({name for name in names if names.count(name) > 1})
     ]
     faults += [
@@ -86,6 +142,7 @@ def _check(fits: Sequence[SiteFit], models: Sequence[str]) -> None:
         for model in fit.models
         if model not in models
     ]
+    faults += [fault for site in reduced for fault in reduced_faults(site, models)]
     if NO_MODEL in models:
         faults.append(Fault("models", NO_MODEL, "this name is kept for sites without a model", action="Rename it"))
     if faults:

@@ -13,7 +13,7 @@ from massfit.annual.record import ReducedRecord
 from massfit.corrections.circulation import CirculationAtSites
 from massfit.corrections.site import site_corrections
 from massfit.errors import Fault, InputError
-from massfit.network import Network, Series
+from massfit.network import Network, Series, reduced_faults
 from massfit.pipeline.progress import Progress
 from massfit.pipeline.workers import Workers
 from massfit.records.daily import reduce_to_daily
@@ -79,7 +79,7 @@ def daily_records(network: Network, progress: Progress) -> dict[str, tuple[Daily
 
 
 def usable_sites(network: Network, records: Mapping[str, Sequence[DailyRecord]]) -> tuple[Site, ...]:
-    """Sites with enough days to be fitted.
+    """Sites with enough days to be fitted, and those that were reduced elsewhere.
 
     Parameters
     ----------
@@ -93,12 +93,18 @@ def usable_sites(network: Network, records: Mapping[str, Sequence[DailyRecord]])
     Raises
     ------
     InputError
-        No site is left, or the network has fewer than 180 days of data in all.
+        No site is left, or a network of records only has fewer than 180 days of data in all; a site
+        that was reduced elsewhere is unknown, has records too, or is not well formed.
     """
+    reduced = _reduced_elsewhere(network)
     days = {name: len(_days(own)) for name, own in records.items()}
     total = sum(days.values())
-    sites = tuple(site for site in network.sites if days.get(site.id, 0) >= LEAST_SITE_DAYS)
-    if total < LEAST_DAYS or not sites:
+    sites = tuple(
+        site
+        for site in network.sites
+        if days.get(site.id, 0) >= LEAST_SITE_DAYS or (site.id in reduced and site.excluded_because is None)
+    )
+    if (total < LEAST_DAYS and not reduced) or not sites:
         raise InputError(
             Fault(
                 network.source or "network",
@@ -109,6 +115,27 @@ def usable_sites(network: Network, records: Mapping[str, Sequence[DailyRecord]])
             )
         )
     return sites
+
+
+def _reduced_elsewhere(network: Network) -> set[str]:
+    """Sites of the network that were reduced elsewhere."""
+    known, recorded = {site.id for site in network.sites}, {record.site for record in network.records}
+    source = network.source or "network"
+    faults = [
+        Fault(source, each.site, "the site was reduced elsewhere and is not in the network", action="Add the site")
+        for each in network.reduced
+        if each.site not in known
+    ]
+    faults += [
+        Fault(source, each.site, "the site has records and a phasor made elsewhere", "Must be one of the two")
+        for each in network.reduced
+        if each.site in recorded
+    ]
+    models = [model.name for model in network.circulation]
+    faults += [fault for each in network.reduced for fault in reduced_faults(each, models)]
+    if faults:
+        raise InputError(faults)
+    return {each.site for each in network.reduced}
 
 
 def reduce_sites(tasks: Sequence[SiteTask], progress: Progress, pool: Workers) -> list[SiteReduction]:

@@ -8,7 +8,8 @@ each turns onto the axes on which its covariance is diagonal whatever the scales
     mean      variance = lambda + s_site^2 + s_local^2 / M_s
     contrast  variance = delta + s_local^2
 
-so that the information of any scales is one product of row weights with one table.
+so that the information of any scales is one product of row weights with one table. A site
+of which only the mean over its models is known has no contrasts: its mean row is the same.
 With A, a and c in units of their prior standard deviations the prior is the identity
 and vanishing scales need no special case (Gelman et al. 2013, Bayesian Data Analysis,
 chapters 5 and 14, for the model; the algebra is that of linear regression).
@@ -72,7 +73,7 @@ def observation_rows(observations: Observations) -> Rows:
     Returns
     -------
     Rows
-        Two rows for every site-model pair.
+        Two rows for every site-model pair; two in all for a site of which only the mean is known.
     """
     parts = [_site_rows(observations, s) for s in range(len(observations.sites))]
     site = np.repeat(np.arange(len(parts)), [len(part[2]) for part in parts])
@@ -83,13 +84,14 @@ def observation_rows(observations: Observations) -> Rows:
 def _site_rows(observations: Observations, s: int) -> tuple[NDArray[np.float64], ...]:
     present = np.flatnonzero(observations.present[s])
     count = len(present)
-    weights = np.zeros((count, len(observations.models)))
+    known = count if observations.has_contrasts[s] else 1
+    weights = np.zeros((known, len(observations.models)))
     weights[0, present] = 1.0 / count
-    weights[1:, present] = _contrasts(count)
+    weights[1:, present] = _contrasts(count)[: known - 1]
     noise = observations.model_noise[s]
     mean = record_covariance(observations.covariance[s], noise, count) + noise / count
     phasor = np.nan_to_num(observations.phasor[s])
-    blocks = [np.linalg.eigh(mean)] + [np.linalg.eigh(noise)] * (count - 1)
+    blocks = [np.linalg.eigh(mean)] + [np.linalg.eigh(noise)] * (known - 1)
     direction = np.concatenate([vectors.T for _, vectors in blocks])
     variance = np.concatenate([np.maximum(values, 0.0) for values, _ in blocks])
     weight = np.repeat(weights, 2, axis=0)

@@ -35,6 +35,8 @@ class Observations:
         Pa2, of the record.
     model_noise : (n_site, 2, 2) array
         Pa2, of each model's own weather.
+    mean_only : frozenset of str
+        Sites of which only the mean over their models is known.
     """
 
     sites: tuple[str, ...]
@@ -43,6 +45,7 @@ class Observations:
     part_phasor: NDArray[np.float64]
     part_covariance: NDArray[np.float64]
     model_noise: NDArray[np.float64]
+    mean_only: frozenset[str] = frozenset()
 
     @cached_property
     def present(self) -> NDArray[np.bool_]:
@@ -53,6 +56,15 @@ class Observations:
     def model_count(self) -> NDArray[np.int64]:
         """(n_site,), number of models at each site."""
         return np.asarray(self.present.sum(axis=1))
+
+    @cached_property
+    def has_contrasts(self) -> NDArray[np.bool_]:
+        """(n_site,), whether the site says how its models differ."""
+        return (self.model_count > 1) & ~self._in_mean_only
+
+    @property
+    def _in_mean_only(self) -> NDArray[np.bool_]:
+        return np.array([site in self.mean_only for site in self.sites], dtype=bool)
 
     @cached_property
     def phasor(self) -> NDArray[np.float64]:
@@ -83,10 +95,10 @@ class Observations:
         )
 
     def without_model(self, name: str) -> "tuple[Observations, NDArray[np.bool_]]":
-        """Observations with one model left out, and which sites are left."""
+        """Observations with one model left out, and which sites are left: a mean cannot be taken apart."""
         kept = [i for i, model in enumerate(self.models) if model != name]
         fewer = replace(self, models=tuple(self.models[i] for i in kept), part_phasor=self.part_phasor[:, :, kept])
-        left = fewer.model_count > 0
+        left = (fewer.model_count > 0) & ~(self._in_mean_only & (fewer.model_count < self.model_count))
         return fewer.select(left), left
 
 
@@ -132,11 +144,18 @@ def read_observations(
         phasor[:, :, used],
         site_phasors["covariance"].values.astype(float),
         site_phasors["model_noise"].values.astype(float),
+        _mean_only(site_phasors),
     )
     faults = _value_faults(observations, admittance)
     if faults:
         raise InputError(faults)
     return observations, admittance
+
+
+def _mean_only(site_phasors: xr.Dataset) -> frozenset[str]:
+    if "mean_only" not in site_phasors:
+        return frozenset()
+    return frozenset(str(site) for site in site_phasors["site"].values[site_phasors["mean_only"].values == 1])
 
 
 def _axis_faults(site_phasors: xr.Dataset, fingerprints: xr.Dataset) -> list[Fault]:

@@ -219,8 +219,8 @@ def _warnings(
                 "prior, not seen.",
             ),
             (
-                len(real) > 1 and observations.model_count.max() < 2,
-                "No site carries two ocean models: their local spread is assumed from its prior, not seen.",
+                len(real) > 1 and not observations.has_contrasts.any(),
+                "No site says how two ocean models differ: their local spread is assumed from its prior, not seen.",
             ),
             (len(observations.sites) == 1, "One site: its scatter is assumed from its prior, not seen."),
             (bool(without), f"No ocean model was subtracted at: {', '.join(without)}."),

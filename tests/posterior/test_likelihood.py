@@ -39,6 +39,38 @@ def test_rows_give_what_the_dense_covariance_gives(invent, regression, dense_twi
     np.testing.assert_allclose(covariance, dense_covariance, rtol=1e-8, atol=1e-6)
 
 
+def averaged(twin, observations):
+    """Take the dense twin's phasors of the sites in `mean_only` together: one mean each, in the vector itself."""
+    kept, turn = [], []
+    for s, site in enumerate(observations.sites):
+        own = [i for i, (t, _) in enumerate(twin.pairs) if t == s]
+        means = [own] if site in observations.mean_only else [[i] for i in own]
+        turn += [np.isin(np.arange(len(twin.pairs)), mean) / len(mean) for mean in means]
+        kept.append(1 if site in observations.mean_only else len(own))
+    whole = np.kron(np.array(turn), np.eye(2))
+    twin.value, twin.annual, twin.counts = whole @ twin.value, whole @ twin.annual, np.array(kept)
+    twin.terms = {name: whole @ term @ whole.T for name, term in twin.terms.items()}
+    return twin
+
+
+@pytest.mark.parametrize("truth", [1.0, 0.0])
+@pytest.mark.parametrize("means", [{"site 2", "site 5"}, {f"site {s}" for s in range(1, 9)}])
+def test_a_mean_over_models_alone_gives_what_the_dense_covariance_gives(invent, regression, dense_twin, means, truth):
+    network = invent(missing=0.3)
+    network = replace(network, observations=replace(network.observations, mean_only=frozenset(means)))
+    model = regression(network, truth=truth)
+    whole = regression(replace(network, observations=replace(network.observations, mean_only=frozenset())), truth=truth)
+    twin = averaged(dense_twin(network, truth=truth), network.observations)
+    mean, covariance = annual_given_scales(model, LOG_SCALES)
+    dense_mean, dense_covariance = twin.moments(LOG_SCALES)
+    # round-off as above
+    np.testing.assert_allclose(log_likelihood(model, LOG_SCALES), twin.log_likelihood(LOG_SCALES), rtol=1e-9)
+    np.testing.assert_allclose(mean, dense_mean, rtol=1e-8, atol=1e-7)
+    np.testing.assert_allclose(covariance, dense_covariance, rtol=1e-8, atol=1e-6)
+    # control: the contrasts would have said more
+    assert np.abs(log_likelihood(whole, LOG_SCALES) - twin.log_likelihood(LOG_SCALES)).min() > 1.0
+
+
 def test_a_wrong_admittance_is_seen_by_the_dense_covariance(invent, regression, dense_twin):
     network = invent(members=2)
     wrong = log_likelihood(regression(network, member=1), LOG_SCALES)

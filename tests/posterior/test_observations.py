@@ -59,6 +59,20 @@ def test_a_site_has_models_or_none(invent):
         read_observations(phasors, fingerprints)
 
 
+def test_a_mean_over_models_is_read_and_goes_with_any_of_its_models(invent):
+    phasors, fingerprints = invent().datasets()
+    phasors["mean_only"] = (("site",), np.arange(8) == 2, {"units": "1"})
+    observations, _ = read_observations(phasors, fingerprints)
+    assert observations.mean_only == {"site 3"}
+    np.testing.assert_array_equal(observations.has_contrasts, np.arange(8) != 2)
+    # what the mean would be without one of its models is not known
+    fewer, left = observations.without_model("model 1")
+    np.testing.assert_array_equal(left, np.arange(8) != 2)
+    assert fewer.models == ("model 2", "model 3")
+    _, left = observations.without_model("no such model")
+    assert left.all()
+
+
 def test_a_mixture_hands_on_its_moments(invent):
     seen = invent(sites=1, models=2).observations
     parts = np.array([[[0.0, 0.0], [10.0, 0.0]], [[4.0, 2.0], [14.0, 2.0]]])

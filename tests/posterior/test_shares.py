@@ -1,3 +1,5 @@
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
@@ -21,6 +23,15 @@ def test_the_terms_add_up_to_the_posterior_variance(invent, regression, shape):
     assert tuple(shares) == SOURCES
     assert sum(shares.values()) == pytest.approx(1.0, abs=1e-12)
     assert min(shares.values()) >= 0.0
+
+
+def test_the_terms_add_up_where_only_means_over_models_are_known(invent, regression):
+    network = invent()
+    network = replace(network, observations=replace(network.observations, mean_only=frozenset({"site 1", "site 4"})))
+    model = regression(network)
+    route = integrate_scales(model, PRIOR)
+    terms = variance_terms([model], [route], network.observations)
+    assert sum(terms.values()) == pytest.approx(np.trace(route.covariance), rel=1e-8)
 
 
 def test_each_term_is_that_of_the_dense_propagation(invent, dense_twin, regression):
