@@ -58,6 +58,10 @@ class CirculationAtSites:
         return self.pressure[:, self.sites.index(site)]
 
 
+_LARGEST_SD = 1e4
+"""Pa, over time at the median site; ten times what the most lively shelves have."""
+
+
 def circulation_at_sites(
     model: CirculationModel,
     sites: Sequence[Site],
@@ -90,7 +94,7 @@ def circulation_at_sites(
     Raises
     ------
     InputError
-        A field in another form, an ocean mean that was not removed or does not cover the model, or air pressure
+        A field in another form or of impossible size, an ocean mean that was not removed or does not cover the model, or air pressure
         that is needed and missing.
 
     Examples
@@ -114,11 +118,21 @@ def circulation_at_sites(
     tabulated = "site" in model.pressure.dims
     result = _from_table(model, sites) if tabulated else _from_grid(model, sites, ocean, footprints)
     pressure = result.pressure
+    _check_size(model, pressure)
     if model.ocean_mean is not None:
         pressure = pressure - _own_mean(model.name, model.ocean_mean, result.time)[:, None]
     if model.air_pressure == "forced-excluded" and air_pressure is not None:
         pressure = pressure + _air_anomaly(air_pressure, sites, ocean, result.time)
     return CirculationAtSites(model.name, result.sites, result.time, pressure, result.distance_km, result.notes)
+
+
+def _check_size(model: CirculationModel, pressure: NDArray[np.float64]) -> None:
+    """Refuse a model in the wrong units: the weather of the deep ocean is a few hPa."""
+    spreads = [float(np.std(own[np.isfinite(own)])) for own in pressure.T if np.isfinite(own).any()]
+    if spreads and np.median(spreads) > _LARGEST_SD:
+        problem = f"its bottom pressure varies by {np.median(spreads) / PASCAL_PER_HPA:.3g} hPa (1 sd) at the sites"
+        allowed = "A deep ocean varies by a few hPa"
+        raise InputError(Fault(model.name, "pressure", problem, allowed, "Correct the units in its file"))
 
 
 def _from_table(model: CirculationModel, sites: Sequence[Site]) -> CirculationAtSites:

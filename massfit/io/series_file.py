@@ -7,6 +7,7 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
+from massfit.constants import PASCAL_PER_HPA
 from massfit.errors import Fault, InputError
 from massfit.io.netcdf import is_netcdf
 from massfit.io.text_time import parsed_time
@@ -15,6 +16,10 @@ from massfit.network import Series
 
 _NOTE = re.compile(r"#\s*(units|stamp)\s*:\s*(.*?)\s*$")
 _STAMPS = ("middle", "start")
+
+
+_LARGEST_SD = 2e3
+"""Pa; ten times and more what an ocean mean with any trend has."""
 
 
 def read_series(path: Path, *, name: str, source: str) -> Series:
@@ -45,6 +50,10 @@ def read_series(path: Path, *, name: str, source: str) -> Series:
     if valid.sum() < 2:
         problem = f"the series has {int(valid.sum())} values"
         raise InputError(Fault(source, "value", problem, "Must be at least two", "Check the file"))
+    if (sd := float(np.std(values[valid]))) > _LARGEST_SD:
+        problem = f"the series varies by {sd / PASCAL_PER_HPA:.3g} hPa (1 sd)"
+        allowed = "A mean over the whole ocean varies by about 1 hPa"
+        raise InputError(Fault(source, "value", problem, allowed, "Correct the units"))
     return Series(name, time[valid], values[valid])
 
 

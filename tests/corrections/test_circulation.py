@@ -225,3 +225,16 @@ def test_a_lazy_file_is_read_in_blocks(tmp_path, monkeypatch: pytest.MonkeyPatch
         lazy = circulation_at_sites(model(data["pressure"]), SITES, ocean=OCEAN)
         assert not data["pressure"].variable._in_memory  # the whole field was never loaded
     np.testing.assert_allclose(lazy.pressure, circulation_at_sites(model(gyre()), SITES, ocean=OCEAN).pressure)
+
+
+@pytest.mark.parametrize(("sd_pa", "refused"), [(500.0, False), (5e6, True)])
+def test_a_model_in_the_wrong_units_is_refused(rng: np.random.Generator, sd_pa: float, refused: bool) -> None:
+    # an absolute level of 5000 dbar is no matter; only what varies is judged
+    values = 5e7 + sd_pa * rng.standard_normal((TIME.size, 1))
+    table = xr.DataArray(values, dims=("time", "site"), coords={"time": TIME, "site": ["A"]})
+    model = CirculationModel("invented", table, None, "not-forced")
+    if refused:
+        with pytest.raises(InputError, match="Correct the units"):
+            circulation_at_sites(model, SITES, ocean=OCEAN)
+    else:
+        assert np.isfinite(circulation_at_sites(model, SITES, ocean=OCEAN).at("A")).all()

@@ -81,3 +81,10 @@ def test_another_calendar_is_refused(tmp_path: Path) -> None:
     series.to_netcdf(tmp_path / "mean.nc", engine="h5netcdf")
     with pytest.raises(InputError, match="Must be CF"):
         read_series(tmp_path / "mean.nc", name="mean", source="mean.nc")
+
+
+def test_a_mean_in_the_wrong_units_is_refused_and_its_level_is_no_matter(tmp_path: Path) -> None:
+    rows = "time,value\n2016-01-01,1011.0\n2016-07-01,1012.3\n"
+    assert read(tmp_path, HEAD + rows).pressure[0] == pytest.approx(101100.0)
+    with pytest.raises(InputError, match="varies by 65 hPa"):
+        read(tmp_path, "# units: kPa\n" + "time,value\n2016-01-01,0\n2016-07-01,13\n")
