@@ -94,8 +94,8 @@ def circulation_at_sites(
     Raises
     ------
     InputError
-        A field in another form or of impossible size, an ocean mean that was not removed or does not cover the model, or air pressure
-        that is needed and missing.
+        A field in another form or of impossible size, an ocean mean that was not removed or does not cover the
+        model, or air pressure that is needed and missing.
 
     Examples
     --------

@@ -228,9 +228,9 @@ def test_a_lazy_file_is_read_in_blocks(tmp_path, monkeypatch: pytest.MonkeyPatch
 
 
 @pytest.mark.parametrize(("sd_pa", "refused"), [(500.0, False), (5e6, True)])
-def test_a_model_in_the_wrong_units_is_refused(rng: np.random.Generator, sd_pa: float, refused: bool) -> None:
+def test_a_model_in_the_wrong_units_is_refused(sd_pa: float, refused: bool) -> None:
     # an absolute level of 5000 dbar is no matter; only what varies is judged
-    values = 5e7 + sd_pa * rng.standard_normal((TIME.size, 1))
+    values = 5e7 + sd_pa * np.random.default_rng(1).standard_normal((TIME.size, 1))
     table = xr.DataArray(values, dims=("time", "site"), coords={"time": TIME, "site": ["A"]})
     model = CirculationModel("invented", table, None, "not-forced")
     if refused:
