@@ -1,12 +1,15 @@
 """The summary in its context: what was assumed, what was done, and every warning."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from typing import Any
 
-from massfit.network import Network
+from massfit.constants import PASCAL_PER_HPA
+from massfit.network import Network, ReducedSite
 from massfit.posterior.summary import QUIET_SD
 from massfit.results.assumptions import stated_assumptions
 from massfit.results.estimate import SiteReduction
+from massfit.settings import Frame
+from massfit.site import Site
 
 
 def in_context(
@@ -29,8 +32,13 @@ def in_context(
         The content of `estimate.json`.
     """
     frame = network.settings.frame
-    first = min(str(reduction.corrections["time"].values[0])[:10] for reduction in reductions)
-    last = max(str(reduction.corrections["time"].values[-1])[:10] for reduction in reductions)
+    places = {site.id: site for site in network.sites}
+    elsewhere = [each for each in network.reduced if places[each.site].excluded_because is None]
+    known = {
+        **{reduction.site.id: _recorded(reduction) for reduction in reductions},
+        **{each.site: _elsewhere(each, frame) for each in elsewhere},
+    }
+    first, last = _span(reductions, elsewhere)
     return {
         "network": frame.name,
         "reference_year": frame.reference_year,
@@ -38,10 +46,10 @@ def in_context(
         "records_span": [first, last],
         "ocean_area_m2": fingerprints_area_m2,
         **summary,
-        "sites": [_site(entry, reduction) for entry, reduction in zip(summary["sites"], reductions, strict=True)],
-        "left_out": _left_out(network, reductions),
+        "sites": [_site(entry, places[entry["id"]], *known[entry["id"]]) for entry in summary["sites"]],
+        "left_out": _left_out(network, known),
         "assumptions": list(stated_assumptions(network)),
-        "warnings": [*_no_quiet_site(reductions), *network.warnings, *summary["warnings"]],
+        "warnings": [*([] if elsewhere else _no_quiet_site(reductions)), *network.warnings, *summary["warnings"]],
         "actions": {
             daily.deployment: [
                 {"what": action.what, "count": action.count, "detail": action.detail} for action in daily.actions
@@ -52,18 +60,34 @@ def in_context(
     }
 
 
-def _site(entry: Mapping[str, Any], reduction: SiteReduction) -> dict[str, Any]:
-    site, fit = reduction.site, reduction.fit
+def _span(reductions: Sequence[SiteReduction], elsewhere: Sequence[ReducedSite]) -> tuple[str, str]:
+    """First and last day of what the sites hold, ISO; a site that was reduced elsewhere gives whole years."""
+    spans = [[str(day)[:10] for day in each.corrections["time"].values[[0, -1]]] for each in reductions]
+    spans += [[f"{each.years[0]:04d}-01-01", f"{each.years[1]:04d}-12-31"] for each in elsewhere]
+    return min(first for first, _ in spans), max(last for _, last in spans)
+
+
+def _site(entry: Mapping[str, Any], site: Site, known: Mapping[str, Any], notes: Sequence[str]) -> dict[str, Any]:
+    place = {"latitude": site.latitude_deg, "longitude": site.longitude_deg}
+    return {**entry, **place, **known, "warnings": [*entry["warnings"], *notes]}
+
+
+def _recorded(reduction: SiteReduction) -> tuple[dict[str, Any], list[str]]:
+    """Say what the run found of a site's record, and its notes."""
+    fit = reduction.fit
     notes = [note for note in str(reduction.corrections.attrs["notes"]).split("\n") if note]
-    return {
-        **entry,
-        "latitude": site.latitude_deg,
-        "longitude": site.longitude_deg,
-        "days": fit.days,
-        "reduced_sd_hpa": fit.reduced_sd / 100.0,
-        "models": list(fit.models),
-        "warnings": [*entry["warnings"], *notes, *fit.notes],
-    }
+    known = {"days": fit.days, "reduced_sd_hpa": fit.reduced_sd / PASCAL_PER_HPA, "models": list(fit.models)}
+    return known, [*notes, *fit.notes]
+
+
+def _elsewhere(reduced: ReducedSite, frame: Frame) -> tuple[dict[str, Any], list[str]]:
+    """Say the same of a site that was reduced elsewhere: neither its days nor how quiet it is are known."""
+    first, last = reduced.years
+    early = frame.start is not None and first < frame.start.year
+    late = frame.end is not None and last > frame.end.year
+    notes = [f"Its phasor is of {first} to {last}, beyond the stated period."] if early or late else []
+    known = {"days": None, "reduced_sd_hpa": None, "models": list(reduced.models), "years": [first, last]}
+    return known, notes
 
 
 def _no_quiet_site(reductions: Sequence[SiteReduction]) -> list[str]:
@@ -75,8 +99,7 @@ def _no_quiet_site(reductions: Sequence[SiteReduction]) -> list[str]:
     ]
 
 
-def _left_out(network: Network, reductions: Sequence[SiteReduction]) -> dict[str, str]:
-    used = {reduction.site.id for reduction in reductions}
+def _left_out(network: Network, used: Collection[str]) -> dict[str, str]:
     return {
         site.id: site.excluded_because or "too few days of data are left"
         for site in network.sites

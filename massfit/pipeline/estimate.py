@@ -86,12 +86,17 @@ def _estimate(network: Network, progress: Progress, pool: Workers) -> Estimate:
         circulation_at_sites(model, sites, ocean=ocean, footprints=footprints, air_pressure=network.air_pressure)
         for model in network.circulation
     )
-    tasks = [SiteTask(site, records[site.id], responses, air.ocean_mean, circulation, settings) for site in sites]
+    tasks = [
+        SiteTask(site, records[site.id], responses, air.ocean_mean, circulation, settings)
+        for site in sites
+        if records[site.id]
+    ]
     reductions = reduce_sites(tasks, progress, pool)
     phasors = site_phasors(
         [reduction.fit for reduction in reductions],
         models=[model.name for model in network.circulation],
         reference_year=settings.frame.reference_year,
+        reduced=[each for each in network.reduced if each.site in {site.id for site in sites}],
     )
     progress("network posterior", 0, fingerprints.sizes["member"])
     posterior = sample_posterior(

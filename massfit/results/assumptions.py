@@ -1,7 +1,7 @@
 """The sentences that say what a run assumed, made from the network's own settings."""
 
 from massfit.constants import KG_PER_GT
-from massfit.network import Network
+from massfit.network import Network, ReducedSite
 from massfit.settings import Settings
 
 
@@ -22,8 +22,9 @@ def stated_assumptions(network: Network) -> tuple[str, ...]:
         _period(settings),
         *_corrections(network),
         _circulation(network),
+        *_reduced_elsewhere(network),
         *_fingerprint(network),
-        _drift_and_noise(network),
+        *_drift_and_noise(network),
         *_posterior(settings),
     )
 
@@ -51,7 +52,9 @@ def _corrections(network: Network) -> list[str]:
         if chosen.pole_tide == "observed"
         else "pole tide NOT removed here"
     )
-    if network.air_pressure is not None:
+    if not network.records:
+        air = "taken as already removed"
+    elif network.air_pressure is not None:
         air = "removed with the mean of the air-pressure field given"
     elif network.ocean_mean_atmosphere is not None:
         air = "removed with the series given"
@@ -64,7 +67,7 @@ def _corrections(network: Network) -> list[str]:
         else "No air pressure on land was given, so its self-attraction (tenths of a millimetre a site) is left out."
     )
     return [
-        f"Short tides are {tides}; {long_period}; {pole}.",
+        *([f"Short tides are {tides}; {long_period}; {pole}."] if network.records else []),
         f"The ocean-mean air pressure is {air}, with a common error of "
         f"{chosen.ocean_mean_atmosphere_sd_hpa:g} hPa per component.",
         land,
@@ -81,6 +84,30 @@ def _circulation(network: Network) -> str:
     names = ", ".join(f"{model.name} (air pressure {model.air_pressure})" for model in network.circulation)
     seen = "" if count > 1 else " With one model their spread is assumed from its prior, not seen."
     return f"Ocean circulation is removed with {count} model{'s' if count > 1 else ''}: {names}.{seen}"
+
+
+def _reduced_elsewhere(network: Network) -> list[str]:
+    left_out = {site.id for site in network.sites if site.excluded_because is not None}
+    sites = [site for site in network.reduced if site.site not in left_out]
+    if not sites:
+        return []
+    named = "; ".join(f"{each.site} ({_years(each)}, {_subtracted(each)})" for each in sites)
+    return [
+        "Sites reduced elsewhere, their phasors and covariances taken as given, with tides, pole tide, ocean-mean air "
+        f"pressure and drift off and the response to the air over land still in: {named}."
+    ]
+
+
+def _years(reduced: ReducedSite) -> str:
+    first, last = reduced.years
+    return f"{first}" if first == last else f"{first} to {last}"
+
+
+def _subtracted(reduced: ReducedSite) -> str:
+    if not reduced.models:
+        return "no model subtracted"
+    each = f"{'less the mean of' if reduced.mean_only else 'less'} {', '.join(reduced.models)}"
+    return each if reduced.mean_only or len(reduced.models) == 1 else f"{each} one by one"
 
 
 def _fingerprint(network: Network) -> list[str]:
@@ -100,15 +127,17 @@ def _fingerprint(network: Network) -> list[str]:
     ]
 
 
-def _drift_and_noise(network: Network) -> str:
+def _drift_and_noise(network: Network) -> list[str]:
+    if not network.records:
+        return []
     forms = sorted({record.drift for record in network.records})
     scales = ", ".join(f"{scale:g}" for scale in network.settings.priors.noise_time_scales_days)
     found = any(record.find_steps for record in network.records)
     steps = "sharp changes of level are searched for, fitted and listed" if found else "only declared steps are fitted"
-    return (
+    return [
         f"Drift per deployment ({' / '.join(forms)}), annual and semi-annual cycle are fitted together under red noise "
         f"(time scales {scales} days) and white noise; {steps}."
-    )
+    ]
 
 
 def _posterior(settings: Settings) -> list[str]:

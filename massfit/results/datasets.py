@@ -29,8 +29,10 @@ def result_datasets(estimate: Estimate) -> dict[str, xr.Dataset]:
         "posterior.nc": (estimate.posterior.to_dataset(), "draws of the annual phasor of ocean mass"),
         "site_phasors.nc": (estimate.site_phasors, "annual phasor of each site"),
         "fingerprints.nc": (estimate.fingerprints, "complex admittance of each site"),
-        "reduced_records.nc": (reduced_records(estimate), "daily records, every series subtracted, and what remains"),
     }
+    if estimate.reductions:  # there are no records where every site was reduced elsewhere
+        title = "daily records, every series subtracted, and what remains"
+        described["reduced_records.nc"] = reduced_records(estimate), title
     return {name: _described(dataset, title, estimate) for name, (dataset, title) in described.items()}
 
 
