@@ -36,12 +36,14 @@ def draw_figures(run: FinishedRun, ocean: OceanFunction) -> dict[str, Figure]:
     dict of str to matplotlib.figure.Figure
         Under the names of `page.PICTURES`.
     """
-    return {
+    figures = {
         "phasor_plane": _plane(run),
         "network_map": _map(run, ocean),
         "corner": _corner(run.datasets["posterior.nc"]),
-        "records": record_panels(_record_rows(run)),
     }
+    if "reduced_records.nc" in run.datasets:  # not where every site was reduced elsewhere
+        figures["records"] = record_panels(_record_rows(run))
+    return figures
 
 
 def png(figure: Figure) -> bytes:

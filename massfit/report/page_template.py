@@ -69,12 +69,12 @@ code { font-size: .8rem; overflow-wrap: anywhere; }
 {% for row in sites %}<tr><td>{{ row[0] }}</td>{% for cell in row[1:] %}<td>{{ cell }}</td>{% endfor %}</tr>
 {% endfor %}</table></div>
 
-<h2>The records and what was taken off them</h2>
+{% if actions %}<h2>The records and what was taken off them</h2>
 <figure><img alt="{{ alt.records }}" src="{{ images.records }}"><figcaption>{{ alt.records }}</figcaption></figure>
 <div class="wide"><table>
 <tr><th>deployment</th><th>daily means</th><th>what was done</th></tr>
 {% for row in actions %}<tr><td>{{ row[0] }}</td><td>{{ row[1] }}</td><td class="words small">{{ row[2] }}</td></tr>
-{% endfor %}</table></div>
+{% endfor %}</table></div>{% endif %}
 
 <h2>How to repeat it</h2>
 <p><code>{{ command }}</code></p>

@@ -9,9 +9,13 @@ import pytest
 
 from massfit.annual.fit import SiteFit
 from massfit.errors import InputError
+from massfit.fingerprint.ocean import OceanFunction
 from massfit.network import Network, ReducedSite
 from massfit.pipeline.estimate import estimate
+from massfit.report.draw import draw_figures
+from massfit.report.page import report_page
 from massfit.results.estimate import Estimate
+from massfit.results.finished import finished_run
 
 YEARS = (2014, 2015)
 
@@ -102,6 +106,16 @@ def test_a_network_may_have_no_record_at_all(run: Estimate, all_of_three: Estima
     whole = run.posterior.draws
     shift = all_of_three.posterior.draws.mean(axis=0) - whole.mean(axis=0)
     assert np.all(np.abs(shift) < 0.3 * whole.std(axis=0))
+
+
+def test_the_page_stands_without_records(all_of_three: Estimate) -> None:
+    finished = finished_run(all_of_three, command="massfit estimate here")
+    assert "reduced_records.nc" not in finished.datasets
+    figures = draw_figures(finished, OceanFunction.builtin())
+    assert "records" not in figures
+    page = report_page(finished, dict.fromkeys(figures, b"png"))
+    assert page.count("<td>unknown</td>") == 2 * len(all_of_three.network.sites)
+    assert "The records and what was taken off them" not in page
 
 
 def test_a_site_that_is_left_out_stays_out(invented: Network, run: Estimate) -> None:
