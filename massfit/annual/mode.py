@@ -11,6 +11,7 @@ from massfit.annual.design import Design
 from massfit.annual.evidence import reduce_columns, solve_choices
 from massfit.annual.grid import DriftGrid, refine_grid
 from massfit.annual.noise import RESOLUTION, NoisePriors, log_score_prior
+from massfit.errors import ConvergenceError
 
 Floats = NDArray[np.float64]
 
@@ -112,5 +113,7 @@ def _spread(objective: Callable[[Floats], float], mode: Floats) -> Floats:
             signs = ((1, 1), (1, -1), (-1, 1), (-1, -1))
             values = [objective(mode + a * steps[i] + b * steps[j]) for a, b in signs]
             hessian[i, j] = hessian[j, i] = (values[0] - values[1] - values[2] + values[3]) / (4 * HESSIAN_STEP**2)
+    if not np.isfinite(hessian).all():
+        raise ConvergenceError("the fit of the noise of a site", float("nan"), MODE_TOLERANCE)
     curvature, directions = np.linalg.eigh(hessian)
     return np.asarray((directions / np.maximum(curvature, 1.0)) @ directions.T)

@@ -3,6 +3,7 @@
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property
+from itertools import combinations
 
 import numpy as np
 import xarray as xr
@@ -17,6 +18,9 @@ NO_MODEL = "none"
 
 RECORD_FLOOR = 0.1
 """Least share of the record covariance that is left when the models' own weather is taken out of it."""
+
+LEAST_APART = 0.01
+"""Models whose phasors lie closer than this everywhere are copies, Pa; far below the skill of any ocean model."""
 
 
 @dataclass(frozen=True)
@@ -196,6 +200,19 @@ def _value_faults(observations: Observations, admittance: NDArray[np.complex128]
         faults += [Fault("site phasors", site, problem, allowed) for problem, allowed in problems]
         if not np.isfinite(admittance[:, s]).all() or (admittance[:, s] == 0).any():
             faults.append(Fault("fingerprints", site, "the admittance is zero or not finite", "Must be neither"))
+    return faults + _copy_faults(observations)
+
+
+def _copy_faults(observations: Observations) -> list[Fault]:
+    """Refuse models that agree at every site they share: the spread between models cannot be learned from copies."""
+    faults = []
+    for first, second in combinations(range(len(observations.models)), 2):
+        shared = observations.present[:, first] & observations.present[:, second] & observations.has_contrasts
+        apart = observations.phasor[shared, first] - observations.phasor[shared, second]
+        if shared.any() and np.abs(apart).max() < LEAST_APART:
+            names = f"{observations.models[first]}, {observations.models[second]}"
+            problem = f"the two models give the same phasor at all {shared.sum()} sites they share"
+            faults.append(Fault("circulation", names, problem, "Models that are not copies", "Leave one of them out"))
     return faults
 
 

@@ -59,6 +59,15 @@ def test_a_site_has_models_or_none(invent):
         read_observations(phasors, fingerprints)
 
 
+def test_copies_of_a_model_are_a_fault(invent):
+    phasors, fingerprints = invent().datasets()
+    phasors["phasor"].values[:, :, 2] = phasors["phasor"].values[:, :, 0] + 0.005
+    with pytest.raises(InputError, match="model 1, model 3: the two models give the same phasor at all 8 sites"):
+        read_observations(phasors, fingerprints)
+    phasors["phasor"].values[3, :, 2] += 0.1  # one site apart is enough to be a model of its own
+    read_observations(phasors, fingerprints)
+
+
 def test_a_mean_over_models_is_read_and_goes_with_any_of_its_models(invent):
     phasors, fingerprints = invent().datasets()
     phasors["mean_only"] = (("site",), np.arange(8) == 2, {"units": "1"})
