@@ -71,3 +71,22 @@ def simulate(folder: Path, seed: int, sites: int, years: float, models: int, noi
 
         simulate_to_folder(folder, seed, sites=sites, years=years, models=models, noise=noise, sampling=sampling)
     click.echo(f"Wrote an invented network to {folder}. Next: massfit estimate {folder}")
+
+
+@main.command()
+@click.argument("folder", type=_FOLDER)
+def starter(folder: Path) -> None:
+    """Begin a network file from a folder of records.
+
+    Looks at the NetCDF and text files in FOLDER and in the folders inside it, and
+    writes FOLDER/network.toml to be completed: what was told from the files is
+    marked "# guess:" with its evidence, what could not be told is left empty and
+    marked "# fill in:". A network file that is there is never overwritten.
+    """
+    with refusing_politely():
+        from massfit.pipeline.starter import begin_network_file
+
+        made = begin_network_file(folder)
+    click.echo(f"Wrote {folder / 'network.toml'}: {made.sites} sites, {made.deployments} deployments.")
+    click.echo(f"Read the {made.guesses} guesses, fill in the {made.to_fill_in} open values, then run:")
+    click.echo(f"  massfit check {folder}")

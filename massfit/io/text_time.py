@@ -75,7 +75,7 @@ def joined_date(
     ----------
     parts : dict of str to (n,) array
         By the names of `DATE_PARTS`; seconds may have decimals, and so may the day of the year, which is 1 at the
-        first instant of 1 January.
+        first instant of 1 January and is rounded to the millisecond.
     lines : (n,) array of int
         Line numbers, for the faults.
     source : str
@@ -119,8 +119,7 @@ def joined_date(
         raise InputError(line_fault(source, name, day, good, lines, allowed))
     zero = np.zeros(date.size)
     seconds = parts.get("hour", zero) * 3600 + parts.get("minute", zero) * 60 + parts.get("second", zero)
-    # a microsecond is what decimals of a day resolve
-    seconds = seconds + np.round((day - np.floor(day)) * 86_400, 6)
+    seconds = seconds + np.round((day - np.floor(day)) * 86_400, 3)
     return np.asarray(date.astype("datetime64[ns]") + np.round(seconds * 1e9).astype("timedelta64[ns]"))
 
 
