@@ -127,7 +127,7 @@ def open_reading(path: str | os.PathLike[str], *, outside: bool) -> Reading:
         raise InputError(Fault(source, "", "there is no such file", "Must be a network file or its folder", action))
     content = file.read_bytes()
     try:
-        text = content.decode("utf-8")
+        text = content.decode("utf-8-sig")
         document = tomllib.loads(text)
     except UnicodeDecodeError as error:
         line = content.count(b"\n", 0, error.start) + 1

@@ -1,11 +1,13 @@
 """The summary in its context: what was assumed, what was done, and every warning."""
 
 from collections.abc import Collection, Mapping, Sequence
+from dataclasses import replace
 from typing import Any
 
 from massfit.constants import PASCAL_PER_HPA
 from massfit.network import Network, ReducedSite
 from massfit.posterior.summary import QUIET_SD
+from massfit.records.daily import TIDES_LEFT
 from massfit.results.assumptions import stated_assumptions
 from massfit.results.estimate import SiteReduction
 from massfit.settings import Frame
@@ -39,6 +41,13 @@ def in_context(
         **{each.site: _elsewhere(each, frame) for each in elsewhere},
     }
     first, last = _span(reductions, elsewhere)
+    of_sites = {name for facts, _ in known.values() for name in facts["models"]}
+    used = tuple(model for model in network.circulation if model.name in of_sites)
+    unused = [
+        f"The ocean model {model.name} covers no site and was not used. Give a file that covers the records."
+        for model in network.circulation
+        if model.name not in of_sites
+    ]
     return {
         "network": frame.name,
         "reference_year": frame.reference_year,
@@ -48,8 +57,13 @@ def in_context(
         **summary,
         "sites": [_site(entry, places[entry["id"]], *known[entry["id"]]) for entry in summary["sites"]],
         "left_out": _left_out(network, known),
-        "assumptions": list(stated_assumptions(network)),
-        "warnings": [*([] if elsewhere else _no_quiet_site(reductions)), *network.warnings, *summary["warnings"]],
+        "assumptions": list(stated_assumptions(replace(network, circulation=used))),
+        "warnings": [
+            *unused,
+            *([] if elsewhere else _no_quiet_site(reductions)),
+            *network.warnings,
+            *summary["warnings"],
+        ],
         "actions": {
             daily.deployment: [
                 {"what": action.what, "count": action.count, "detail": action.detail} for action in daily.actions
@@ -76,6 +90,12 @@ def _recorded(reduction: SiteReduction) -> tuple[dict[str, Any], list[str]]:
     """Say what the run found of a site's record, and its notes."""
     fit = reduction.fit
     notes = [note for note in str(reduction.corrections.attrs["notes"]).split("\n") if note]
+    notes += [
+        f"{daily.deployment} holds daily means: their short tides cannot be removed, and what a daily mean leaves of "
+        "K1 and P1 (0.27 %) looks annual. Give finer data, or state that the tides are already removed."
+        for daily in reduction.daily
+        if any(action.what == TIDES_LEFT for action in daily.actions)
+    ]
     known = {"days": fit.days, "reduced_sd_hpa": fit.reduced_sd / PASCAL_PER_HPA, "models": list(fit.models)}
     return known, [*notes, *fit.notes]
 

@@ -210,8 +210,16 @@ def _warnings(
     return [
         text
         for applies, text in (
-            (settings.site_scatter == "student-t", "Student site scatter was asked for; it is computed as normal."),
-            (settings.group_scatter is not False, "Group scatter was asked for; sites are taken as independent."),
+            (
+                settings.site_scatter == "student-t",
+                'site_scatter = "student-t" (the default) is computed as "normal" in this version: one bad site weighs '
+                "more than it should.",
+            ),
+            (
+                settings.group_scatter is not False,
+                "group_scatter (on by default) is not computed in this version: sites are taken as independent, which "
+                "is too sure where they are neighbours.",
+            ),
             (len(members) == 1, "One load member: the uncertainty of the fingerprint is taken as zero."),
             (
                 len(real) < 2,

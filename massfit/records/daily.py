@@ -23,6 +23,9 @@ _DIRECT_BELOW_HOURS = 0.5
 """Below this sampling a tide is a straight line over five samples, spikes show against the raw pressure, and an hour
 that stands apart holds an event that many samples saw."""
 
+TIDES_LEFT = "short tides not removed"
+"""What is said of a record that is too coarse for its tides to be removed although that was asked for."""
+
 
 def reduce_to_daily(
     record: Record,
@@ -110,7 +113,7 @@ def _as_it_is(
     time, pressure = time[~spikes], pressure[~spikes]
     if tides == "remove" and time.size:
         detail = "too coarse to show them; plain daily means hold 0.27 % of K1 and P1, which look annual"
-        actions.append(Action("short tides not removed", time.size, detail))
+        actions.append(Action(TIDES_LEFT, time.size, detail))
     steps = find_steps(days_from_epoch(time), pressure, known=declared) if search else NO_STEPS
     return _Reduced(time, pressure, steps, (), [*actions, _step_action(steps)])
 

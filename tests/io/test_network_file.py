@@ -138,3 +138,9 @@ def test_a_folder_in_place_of_the_network_file_is_named(tmp_path: Path) -> None:
     (tmp_path / "network.toml").mkdir()
     with pytest.raises(InputError, match="it is a folder"):
         read_network(tmp_path)
+
+
+def test_a_byte_order_mark_is_no_fault(network_folder):
+    file = network_folder / "network.toml"
+    file.write_bytes(b"\xef\xbb\xbf" + file.read_bytes())
+    assert read_network(network_folder).settings.frame.name == "Two invented sites"

@@ -295,3 +295,16 @@ def test_the_units_of_the_summary_agree(run: Estimate) -> None:
 
 def test_every_action_on_every_deployment_is_listed(invented: Network, run: Estimate) -> None:
     assert set(run.summary["actions"]) == {record.deployment for record in invented.records}
+
+
+def test_daily_means_with_their_tides_and_an_idle_model_are_named(invented: Network) -> None:
+    idle = invented.circulation[0]
+    idle = replace(idle, name="Idle", pressure=idle.pressure.isel(time=slice(0, 20)))
+    settings = replace(invented.settings, corrections=replace(invented.settings.corrections, tides="remove"))
+    network = with_first_site(with_one_member(replace(invented, settings=settings)))
+    summary = estimate(replace(network, circulation=(*network.circulation, idle))).summary
+    assert any("Idle covers no site and was not used" in text for text in summary["warnings"])
+    assert not any("Idle" in text for text in summary["assumptions"])
+    assert any(
+        "holds daily means: their short tides cannot be removed" in text for text in summary["sites"][0]["warnings"]
+    )
