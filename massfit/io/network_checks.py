@@ -144,7 +144,7 @@ def _check_window(reading: Reading, frame: Frame) -> None:
 
 def _check_atmosphere(reading: Reading, corrections: Corrections) -> None:
     path, removed = ("corrections",), corrections.ocean_mean_atmosphere == "already-removed"
-    if corrections.ocean_mean_atmosphere is None and corrections.air_pressure is None:
+    if not corrections.ocean_mean_atmosphere and corrections.air_pressure is None:
         reading.fault(
             (*path, "ocean_mean_atmosphere"),
             "nothing is said about the ocean-mean air pressure",

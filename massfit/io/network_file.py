@@ -176,7 +176,7 @@ def _series(reading: Reading, path: KeyPath, text: str, name: str) -> Series | N
 def _air(reading: Reading, corrections: Corrections) -> dict[str, Any]:
     air: dict[str, Any] = {}
     mean = corrections.ocean_mean_atmosphere
-    if mean not in (None, "already-removed"):
+    if mean not in (None, "", "already-removed"):
         path = ("corrections", "ocean_mean_atmosphere")
         air["ocean_mean_atmosphere"] = _series(reading, path, str(mean), "ocean-mean air pressure")
     for key, reader in (("atmosphere_load", read_atmosphere_load), ("air_pressure", read_air_pressure)):

@@ -147,7 +147,7 @@ def _interval(interval: Interval) -> str:
     after = interval.end + np.timedelta64(1, "ns")
     whole_day = after == after.astype("datetime64[D]")
     end = str(interval.end.astype("datetime64[D]")) if whole_day else _instant(interval.end)
-    return f"{{ from = {_instant(interval.start)}, to = {end}, reason = {_toml(interval.reason)} }}"
+    return f"{{ from = {_instant(interval.start)}, to = {end}, reason = {toml_value(interval.reason)} }}"
 
 
 def _instant(instant: np.datetime64) -> str:
@@ -157,21 +157,21 @@ def _instant(instant: np.datetime64) -> str:
 
 def _table(header: str, values: Mapping[str, Any], *, indent: str = "") -> str:
     notes = _COMMENTS.get(header, {})
-    lines = {key: f"{key} = {_toml(value)}" for key, value in values.items()}
+    lines = {key: f"{key} = {toml_value(value)}" for key, value in values.items()}
     width = max((len(line) for key, line in lines.items() if key in notes), default=0)
     noted = [f"{line:<{width}}  # {notes[key]}" if key in notes else line for key, line in lines.items()]
     return "\n".join(indent + line for line in [header, *noted]) + "\n"
 
 
-def _toml(value: Any) -> str:
-    """Write a value as TOML; a JSON string is a TOML basic string."""
+def toml_value(value: Any) -> str:
+    """Write a value as TOML; a JSON string is a TOML basic string but for the delete character."""
     if isinstance(value, _Raw):
         return str(value)
     if isinstance(value, list | tuple):
-        return "[" + ", ".join(_toml(item) for item in value) + "]"
+        return "[" + ", ".join(toml_value(item) for item in value) + "]"
     if isinstance(value, date):
         return value.isoformat()
     if isinstance(value, float):
         short = f"{value:g}"
         return short if float(short) == value else repr(value)
-    return json.dumps(value, ensure_ascii=False)
+    return json.dumps(value, ensure_ascii=False).replace("\x7f", "\\u007f")
