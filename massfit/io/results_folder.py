@@ -1,11 +1,11 @@
 """The results folder: written aside and moved into place, so that it is whole or not there."""
 
 import csv
+import hashlib
 import io
 import json
 import shutil
-import tempfile
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from pathlib import Path
 from typing import Any
 
@@ -13,6 +13,13 @@ import numpy as np
 import xarray as xr
 
 from massfit.errors import Fault, InputError
+from massfit.io.partial_folder import PartialFolder
+from massfit.results.finished import FinishedRun
+
+BLANK = "0" * 64
+"""Stands for the digest of run.json inside run.json while that digest is taken."""
+
+RUN_FILE = "run.json"
 
 _CSV_COLUMNS = (
     "id", "in_phase_hpa", "quadrature_hpa", "variance_in_phase_hpa2", "covariance_hpa2", "variance_quadrature_hpa2",
@@ -39,62 +46,80 @@ def check_output(folder: Path, *, overwrite: bool) -> None:
     if folder.exists() and not folder.is_dir():
         raise InputError(Fault(here, "", "the output is a file", "Must be a folder", "Choose another with --output"))
     if folder.exists() and any(folder.iterdir()):
-        if not (folder / "run.json").exists():
+        if not (folder / RUN_FILE).exists():
             problem = "the folder is not empty and holds no results of massfit, so it is left alone"
             raise InputError(Fault(here, "", problem, "", "Choose another with --output"))
         if not overwrite:
             problem = "the folder holds finished results"
             raise InputError(Fault(here, "", problem, "", "Give --overwrite to replace them, or --output to keep both"))
-    parent = next(path for path in folder.absolute().parents if path.exists())
-    try:  # trying is the only sure way: some file systems refuse what the permissions allow
-        Path(tempfile.mkdtemp(prefix=".massfit-", dir=parent)).rmdir()
-    except OSError as error:
-        problem = f"the folder cannot be written ({error.strerror})"
-        raise InputError(Fault(str(parent), "", problem, "", "Choose another with --output")) from error
 
 
-def write_results(
-    folder: Path,
-    *,
-    summary: Mapping[str, Any],
-    run: Mapping[str, Any],
-    datasets: Mapping[str, xr.Dataset],
-    pictures: Mapping[str, bytes],
-    page: str,
-) -> None:
+def write_results(partial: PartialFolder, run: FinishedRun, *, pictures: Mapping[str, bytes], page: str) -> None:
     """Write a results folder aside and move it into place.
 
     Parameters
     ----------
-    folder : Path
-        Where it shall be; an existing one is replaced only at the last moment.
-    summary : mapping
-        `estimate.json`.
-    run : mapping
-        `run.json`.
-    datasets : mapping of str to xarray.Dataset
-        By file name.
+    partial : PartialFolder
+        Of the results folder; finished results are replaced only at the last moment.
+    run : FinishedRun
+        Its provenance is completed by the SHA-256 of every file, `outputs`.
     pictures : mapping of str to bytes
-        PNG images by file name, for `figures/`.
+        PNG images by name, for `figures/`.
     page : str
         `report.html`.
+
+    Raises
+    ------
+    InputError
+        The folder cannot be written; results that were there before are untouched.
     """
-    folder.parent.mkdir(parents=True, exist_ok=True)
-    partial = Path(tempfile.mkdtemp(prefix=f".{folder.name}-partial-", dir=folder.parent))
-    try:
-        _write_json(partial / "estimate.json", summary)
-        _write_site_table(partial / "sites.csv", summary["sites"])
-        for name, dataset in datasets.items():
-            write_dataset(partial / name, dataset)
-        (partial / "figures").mkdir()
-        for name, picture in pictures.items():
-            (partial / "figures" / name).write_bytes(picture)
-        (partial / "report.html").write_text(page, encoding="utf-8")
-        _write_json(partial / "run.json", run)
-        partial.chmod(0o755)
-        _move_into_place(partial, folder)
-    finally:
-        shutil.rmtree(partial, ignore_errors=True)
+    with partial.whole() as aside:
+        _write_json(aside / "estimate.json", run.summary)
+        _write_site_table(aside / "sites.csv", run.summary["sites"])
+        for name, dataset in run.datasets.items():
+            write_dataset(aside / name, dataset)
+        _write_drawn(aside, pictures, page)
+        _write_run(aside, run.provenance, {path.relative_to(aside).as_posix() for path in aside.rglob("*.*")})
+    partial.clear()
+
+
+def redraw_results(partial: PartialFolder, run: FinishedRun, *, pictures: Mapping[str, bytes], page: str) -> None:
+    """Replace the figures and the page of finished results; every other file is kept as it is.
+
+    Parameters
+    ----------
+    partial : PartialFolder
+    run : FinishedRun
+        As read from the results folder.
+    pictures : mapping of str to bytes
+    page : str
+
+    Raises
+    ------
+    InputError
+        The folder cannot be written; it is untouched then.
+    """
+    with partial.whole() as aside:
+        shutil.copytree(partial.results, aside, symlinks=True, dirs_exist_ok=True)
+        _write_drawn(aside, pictures, page)
+        drawn = {"report.html", *(f"figures/{name}.png" for name in pictures)}
+        # a file that someone laid beside the results is none of ours
+        _write_run(aside, run.provenance, drawn | set(run.provenance["outputs"]))
+
+
+def _write_drawn(aside: Path, pictures: Mapping[str, bytes], page: str) -> None:
+    (aside / "figures").mkdir(exist_ok=True)
+    for name, picture in pictures.items():
+        (aside / "figures" / f"{name}.png").write_bytes(picture)
+    (aside / "report.html").write_text(page, encoding="utf-8")
+
+
+def _write_run(aside: Path, provenance: Mapping[str, Any], names: Iterable[str]) -> None:
+    """Write run.json with the digest of every file; its own is of its text with blanks in that place."""
+    outputs = {name: file_digest(aside / name) for name in sorted({*names} - {RUN_FILE}) if (aside / name).is_file()}
+    content = {**provenance, "outputs": {**outputs, RUN_FILE: BLANK}}
+    content["outputs"][RUN_FILE] = hashlib.sha256(_json(content).encode()).hexdigest()
+    _write_json(aside / RUN_FILE, content)
 
 
 def write_dataset(path: Path, dataset: xr.Dataset) -> None:
@@ -114,18 +139,28 @@ def write_dataset(path: Path, dataset: xr.Dataset) -> None:
     dataset.to_netcdf(path, engine="h5netcdf", encoding=encoding)
 
 
-def _move_into_place(partial: Path, folder: Path) -> None:
-    if folder.exists():
-        old = Path(tempfile.mkdtemp(prefix=f".{folder.name}-old-", dir=folder.parent))
-        folder.rename(old / "replaced")
-        partial.rename(folder)
-        shutil.rmtree(old)
-    else:
-        partial.rename(folder)
+def file_digest(path: Path) -> str:
+    """SHA-256 of a file's content.
+
+    Parameters
+    ----------
+    path : Path
+
+    Returns
+    -------
+    str
+        64 hexadecimal digits.
+    """
+    with path.open("rb") as file:
+        return hashlib.file_digest(file, "sha256").hexdigest()
 
 
 def _write_json(path: Path, content: Mapping[str, Any]) -> None:
-    path.write_text(json.dumps(content, indent=2, allow_nan=False, ensure_ascii=False) + "\n", encoding="utf-8")
+    path.write_text(_json(content), encoding="utf-8")
+
+
+def _json(content: Mapping[str, Any]) -> str:
+    return json.dumps(content, indent=2, allow_nan=False, ensure_ascii=False) + "\n"
 
 
 def _write_site_table(path: Path, sites: list[Mapping[str, Any]]) -> None:

@@ -15,7 +15,8 @@ from massfit.network import Network
 from massfit.pipeline.air import network_air
 from massfit.pipeline.context import in_context
 from massfit.pipeline.fingerprints import network_fingerprints
-from massfit.pipeline.progress import Progress, ignore
+from massfit.pipeline.parts import Mapped, Store, kept
+from massfit.pipeline.progress import Progress, StageTimes, ignore
 from massfit.pipeline.provenance import provenance
 from massfit.pipeline.sites import SiteTask, daily_records, reduce_sites, usable_sites
 from massfit.pipeline.workers import Workers
@@ -24,7 +25,9 @@ from massfit.posterior.summary import summarise
 from massfit.results.estimate import Estimate
 
 
-def estimate(network: Network, *, progress: Progress = ignore, workers: int = 1) -> Estimate:
+def estimate(
+    network: Network, *, progress: Progress = ignore, workers: int = 1, store: Store | None = None
+) -> Estimate:
     """Do the main job: from raw records to the posterior of the annual cycle of ocean mass.
 
     Parameters
@@ -36,6 +39,9 @@ def estimate(network: Network, *, progress: Progress = ignore, workers: int = 1)
     workers : int
         Processes that share the sites. The numbers do not depend on it; a script that asks for more than one keeps
         its own work under ``if __name__ == "__main__"``.
+    store : Store, optional
+        Keeps finished parts and gives them back, so that an interrupted run need not compute them again; it must
+        keep the parts of different versions of the program apart. Nothing is kept by default.
 
     Returns
     -------
@@ -57,10 +63,10 @@ def estimate(network: Network, *, progress: Progress = ignore, workers: int = 1)
     True
     """
     with Workers(workers) as pool:
-        return _estimate(network, progress, pool)
+        return _estimate(network, StageTimes(progress), pool, kept(pool.results, store))
 
 
-def _estimate(network: Network, progress: Progress, pool: Workers) -> Estimate:
+def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Mapped) -> Estimate:
     settings = network.settings
     records = daily_records(network, progress)
     sites = usable_sites(network, records)
@@ -91,7 +97,7 @@ def _estimate(network: Network, progress: Progress, pool: Workers) -> Estimate:
         for site in sites
         if records[site.id]
     ]
-    reductions = reduce_sites(tasks, progress, pool)
+    reductions = reduce_sites(tasks, progress, mapped)
     phasors = site_phasors(
         [reduction.fit for reduction in reductions],
         models=[model.name for model in network.circulation],
@@ -106,7 +112,7 @@ def _estimate(network: Network, progress: Progress, pool: Workers) -> Estimate:
         priors=settings.priors,
         atmosphere_sd_hpa=settings.corrections.ocean_mean_atmosphere_sd_hpa,
         progress=lambda done, total: progress("network posterior", done, total),
-        mapped=pool.results,
+        mapped=mapped,
     )
     summary = summarise(
         posterior,
@@ -123,5 +129,5 @@ def _estimate(network: Network, progress: Progress, pool: Workers) -> Estimate:
         site_phasors=phasors,
         posterior=posterior,
         summary=in_context(summary, network, reductions, float(fingerprints.attrs["ocean_area_m2"])),
-        provenance=provenance(network),
+        provenance={**provenance(network, processes=pool.count), "elapsed_s": progress.seconds()},
     )

@@ -4,20 +4,24 @@ import platform
 from importlib import metadata
 from typing import Any
 
+from threadpoolctl import threadpool_info
+
 from massfit.network import Network
 
 _LIBRARIES = (
     "numpy", "scipy", "xarray", "h5netcdf", "pyshtools", "ducc0", "celerite2", "emcee", "arviz-stats",
-    "astropy-iers-data",
+    "astropy-iers-data", "matplotlib",
 )  # fmt: skip
 
 
-def provenance(network: Network) -> dict[str, Any]:
-    """Versions, transform backend and seed of a run.
+def provenance(network: Network, *, processes: int) -> dict[str, Any]:
+    """Versions, transform backend, seed, processes and threads of a run.
 
     Parameters
     ----------
     network : Network
+    processes : int
+        That shared the work.
 
     Returns
     -------
@@ -32,4 +36,9 @@ def provenance(network: Network) -> dict[str, Any]:
         "transform_backend": f"ducc0 {versions['ducc0']}",
         "polar_motion": f"astropy-iers-data {versions['astropy-iers-data']}",
         "seed": network.settings.posterior.seed,
+        "processes": processes,
+        "threads": [
+            {"library": pool["internal_api"], "version": str(pool["version"]), "threads": pool["num_threads"]}
+            for pool in threadpool_info()
+        ],
     }

@@ -14,8 +14,8 @@ from massfit.corrections.circulation import CirculationAtSites
 from massfit.corrections.site import site_corrections
 from massfit.errors import Fault, InputError
 from massfit.network import Network, Series, reduced_faults
+from massfit.pipeline.parts import Mapped
 from massfit.pipeline.progress import Progress
-from massfit.pipeline.workers import Workers
 from massfit.records.daily import reduce_to_daily
 from massfit.records.record import DailyRecord
 from massfit.results.estimate import SiteReduction
@@ -138,20 +138,26 @@ def _reduced_elsewhere(network: Network) -> set[str]:
     return {each.site for each in network.reduced}
 
 
-def reduce_sites(tasks: Sequence[SiteTask], progress: Progress, pool: Workers) -> list[SiteReduction]:
+def reduce_sites(tasks: Sequence[SiteTask], progress: Progress, mapped: Mapped) -> list[SiteReduction]:
     """Correct and fit every site, in the order given.
 
     Parameters
     ----------
     tasks : sequence of SiteTask
     progress : callable
-    pool : Workers
+    mapped : callable
+        Applies a function to each of a sequence and gives the results in order.
 
     Returns
     -------
     list of SiteReduction
     """
-    return pool.map(reduce_site, tasks, stage="site phasors", progress=progress)
+    progress("site phasors", 0, len(tasks))
+    reductions = []
+    for reduction in mapped(reduce_site, tasks):
+        reductions.append(reduction)
+        progress("site phasors", len(reductions), len(tasks))
+    return reductions
 
 
 def reduce_site(task: SiteTask) -> SiteReduction:

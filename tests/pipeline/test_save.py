@@ -23,7 +23,7 @@ PICTURES = ("phasor_plane.png", "network_map.png", "corner.png", "records.png")
 @pytest.fixture(scope="module")
 def folder(run: Estimate, tmp_path_factory: pytest.TempPathFactory) -> Path:
     place = tmp_path_factory.mktemp("saved") / "deep" / "results"
-    save_results(run, place, network="invented/network.toml")
+    save_results(run, place)
     return place
 
 
@@ -53,7 +53,10 @@ def test_the_site_table_holds_the_sites(folder: Path, run: Estimate) -> None:
 
 def test_run_json_says_how_to_repeat_it(folder: Path, run: Estimate) -> None:
     said = json.loads((folder / "run.json").read_text("utf-8"))
-    assert said["command"] == "massfit estimate invented/network.toml"
+    assert said["command"] == "massfit.estimate(network) in Python"
+    assert said["processes"] == 1
+    assert {pool["threads"] for pool in said["threads"]} == {1}
+    assert set(said["elapsed_s"]) >= {"daily means", "site phasors", "network posterior"}
     assert said["seed"] == run.network.settings.posterior.seed
     assert said["settings"]["priors"]["model_common_hpa"] == 0.15
     assert said["settings"]["frame"]["start"] == "2014-01-01"
@@ -188,7 +191,7 @@ def full_disk(monkeypatch: pytest.MonkeyPatch) -> Callable[[], None]:
 @pytest.mark.usefixtures("undrawn")
 def test_no_half_results_are_left(run: Estimate, tmp_path: Path, full_disk: Callable[[], None]) -> None:
     full_disk()
-    with pytest.raises(OSError, match="No space"):
+    with pytest.raises(InputError, match="cannot be written .No space"):
         save_results(run, tmp_path / "results")
     assert list(tmp_path.iterdir()) == []
 
@@ -199,7 +202,7 @@ def test_old_results_outlive_a_failed_replacement(run: Estimate, tmp_path: Path,
     save_results(run, place)
     before = content(place)
     full_disk()
-    with pytest.raises(OSError, match="No space"):
+    with pytest.raises(InputError, match="cannot be written .No space"):
         save_results(run, place, overwrite=True)
     assert content(place) == before
     assert [path.name for path in tmp_path.iterdir()] == ["results"]
