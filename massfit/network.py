@@ -131,8 +131,8 @@ def reduced_faults(reduced: ReducedSite, models: Collection[str]) -> list[Fault]
     ]
     known = f"Must be one of {', '.join(models)}" if models else "The network has no circulation model"
     faults += [Fault(reduced.site, "models", f'the network has no model "{model}"', known) for model in unknown]
-    if reduced.phasor.shape not in {(2,), (len(reduced.models), 2)} or not np.isfinite(reduced.phasor).all():
-        shape = f"Must be two finite numbers, or two for each of {len(reduced.models)} models"
+    if reduced.phasor.shape not in {(2,), (max(len(reduced.models), 1), 2)} or not np.isfinite(reduced.phasor).all():
+        shape = "Must be two finite numbers, or two for each model"
         faults.append(Fault(reduced.site, "phasor", f"the value is {reduced.phasor.tolist()}", shape))
     if not _is_covariance(reduced.covariance, least=1e-9):
         allowed = "Must be [[a, c], [c, b]], positive definite"

@@ -8,10 +8,11 @@ from numpy.typing import NDArray
 from massfit.constants import JULIAN_YEAR_DAYS
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.io.locate import KeyPath
-from massfit.io.reading import Reading
+from massfit.io.reading import Reading, did_you_mean, nearest
 from massfit.io.record_checks import check_values
 from massfit.io.schema import SiteEntry
-from massfit.io.sections import Sections
+from massfit.io.sections import Sections, shown
+from massfit.network import ReducedSite, reduced_faults
 from massfit.records.record import Record
 from massfit.settings import Corrections, Fingerprint, Frame
 from massfit.site import Site
@@ -46,6 +47,7 @@ def check_choices(reading: Reading, sections: Sections) -> None:
         _check_place(reading, path, entry)
         _check_exclusions(reading, path, entry)
     _check_deployments(reading, sections)
+    _check_reduced(reading, sections)
     if corrections is not None and corrections.air_pressure is None:
         for path, model in sections.circulation:
             if model.air_pressure == "forced-excluded":
@@ -214,3 +216,47 @@ def _check_deployments(reading: Reading, sections: Sections) -> None:
                 action = "Correct the file, or state the station or variable of each"
                 reading.fault((*path, "file"), problem, "Must be used once", action)
             first.setdefault(record, path)
+
+
+def _check_reduced(reading: Reading, sections: Sections) -> None:
+    """Note what cannot be in the sites that were reduced elsewhere."""
+    tables = reading.document.get("circulation", [])
+    # where a model's own table has a fault its name may be wrong there, not at the site
+    named = isinstance(tables, list) and len(tables) == len(sections.circulation)
+    for table in sections.sites:
+        reduced = None if table.entry is None else table.entry.reduced()
+        if table.entry is not None and reduced is not None:
+            _check_phasor(reading, table.path, table.entry, reduced)
+            if named:
+                path = (*table.path, _keys(table.entry)["models"])
+                _check_known(reading, path, reduced.models, [entry.name for _, entry in sections.circulation])
+
+
+def _check_known(reading: Reading, path: KeyPath, models: Sequence[str], known: Sequence[str]) -> None:
+    for model in dict.fromkeys(models):
+        if model not in known:
+            action = did_you_mean(nearest(model, known), "")
+            problem = f'the network has no model "{model}"'
+            reading.fault(path, problem, "Must be the name of a [[circulation]]", action)
+
+
+def _check_phasor(reading: Reading, path: KeyPath, entry: SiteEntry, reduced: ReducedSite) -> None:
+    by_name = isinstance(entry.phasor_hpa, dict)
+    if by_name and entry.subtracted is not None and set(entry.subtracted) != set(reduced.models):
+        problem = f"the models are {shown(entry.subtracted)}, those of phasor_hpa {shown(reduced.models)}"
+        reading.fault((*path, "subtracted"), problem, "Must be the same", "Remove it")
+    for fault in reduced_faults(reduced, reduced.models):
+        key = _keys(entry)[fault.name]
+        problem = fault.problem if fault.name == "models" else f"the value is {shown(getattr(entry, key))}"
+        reading.fault((*path, key), problem, fault.allowed, fault.action)
+
+
+def _keys(entry: SiteEntry) -> dict[str, str]:
+    """Keys of the network file behind the fields of a site that was reduced elsewhere."""
+    return {
+        "phasor": "phasor_hpa",
+        "covariance": "phasor_covariance_hpa2",
+        "model_noise": "model_noise_hpa2",
+        "years": "years",
+        "models": "phasor_hpa" if isinstance(entry.phasor_hpa, dict) else "subtracted",
+    }

@@ -16,7 +16,7 @@ from massfit.io.record_file import read_record
 from massfit.io.schema import CirculationEntry
 from massfit.io.sections import Sections, SiteTable, parse_sections
 from massfit.io.series_file import read_series
-from massfit.network import CirculationModel, Network, Series
+from massfit.network import CirculationModel, Network, ReducedSite, Series
 from massfit.records.record import Record
 from massfit.settings import Corrections, Settings
 
@@ -62,6 +62,7 @@ def read_network(path: str | os.PathLike[str], *, outside: bool = False) -> Netw
         records=records,
         loads=loads,
         circulation=circulation,
+        reduced=_reduced(sections),
         source=reading.source,
         inputs=reading.inputs,
         warnings=tuple(reading.warnings),
@@ -84,7 +85,7 @@ def _records(reading: Reading, sections: Sections) -> tuple[Record, ...]:
     all_read = frame is not None
     for table in sections.sites:
         site = None if table.entry is None else table.entry.site()
-        if site is not None and site.excluded_because is not None:
+        if table.reduced_elsewhere or (site is not None and site.excluded_because is not None):
             continue
         own = _site_records(reading, table)
         if site is None or frame is None or own is None:
@@ -93,9 +94,14 @@ def _records(reading: Reading, sections: Sections) -> tuple[Record, ...]:
         used, found = check_coverage(reading, table.path, site, own, frame)
         records += used
         days |= found
-    if all_read and sections.sites:
+    if all_read and sections.sites and not any(table.reduced_elsewhere for table in sections.sites):
         check_length(reading, len(days))
     return tuple(records)
+
+
+def _reduced(sections: Sections) -> tuple[ReducedSite, ...]:
+    entries = [table.entry for table in sections.sites if table.entry is not None]
+    return tuple(reduced for reduced in (entry.reduced() for entry in entries) if reduced is not None)
 
 
 def _site_records(reading: Reading, table: SiteTable) -> list[Record] | None:

@@ -7,8 +7,10 @@ from datetime import date
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
-from massfit.network import CirculationModel
+from massfit.constants import PASCAL_PER_HPA
+from massfit.network import CirculationModel, ReducedSite
 from massfit.records.record import Record
 from massfit.settings import Priors, Settings
 from massfit.site import Interval, Site
@@ -56,6 +58,7 @@ def network_text(
     settings: Settings,
     sites: Sequence[tuple[Site, Sequence[Mapping[str, Any]]]],
     circulation: Sequence[Mapping[str, Any]],
+    reduced: Sequence[ReducedSite] = (),
 ) -> str:
     """Text of a network file.
 
@@ -67,6 +70,8 @@ def network_text(
         Deployment tables as :func:`deployment_table` makes them.
     circulation : sequence of mapping
         As :func:`circulation_table` makes them.
+    reduced : sequence of ReducedSite
+        Sites that were reduced elsewhere.
 
     Returns
     -------
@@ -83,8 +88,9 @@ def network_text(
         _table("[posterior]", _values(settings.posterior)),
         *([_table("[priors]", priors)] if priors else []),
     ]
+    elsewhere = {each.site: _reduced_table(each) for each in reduced}
     for site, deployments in sites:
-        parts.append(_table("[[site]]", _site_table(site)))
+        parts.append(_table("[[site]]", _site_table(site) | elsewhere.get(site.id, {})))
         parts += [_table("[[site.deployment]]", entry, indent="  ") for entry in deployments]
     return "\n".join(parts)
 
@@ -141,6 +147,25 @@ def _site_table(site: Site) -> dict[str, Any]:
     if site.excluded_because is not None:
         return table | {"exclude": site.excluded_because}
     return table | ({"exclude": [_Raw(_interval(each)) for each in site.exclude]} if site.exclude else {})
+
+
+def _reduced_table(reduced: ReducedSite) -> dict[str, Any]:
+    phasor, covariance = (reduced.phasor / PASCAL_PER_HPA).tolist(), _hpa2(reduced.covariance)
+    table: dict[str, Any] = {"phasor_hpa": phasor, "phasor_covariance_hpa2": covariance, "years": reduced.years}
+    if np.any(reduced.model_noise):
+        table["model_noise_hpa2"] = _hpa2(reduced.model_noise)
+    if reduced.phasor.ndim == 1:
+        return table | {"subtracted": reduced.models}
+    if not reduced.models:
+        return table | {"phasor_hpa": phasor[0], "subtracted": ()}
+    named = zip(reduced.models, phasor, strict=True)
+    values = ", ".join(f"{toml_value(model)} = {toml_value(value)}" for model, value in named)
+    return table | {"phasor_hpa": _Raw(f"{{ {values} }}")}
+
+
+def _hpa2(covariance: NDArray[np.float64]) -> list[list[float]]:
+    values: list[list[float]] = (covariance / PASCAL_PER_HPA**2).tolist()
+    return values
 
 
 def _interval(interval: Interval) -> str:

@@ -7,6 +7,8 @@ import numpy as np
 from pydantic import ConfigDict, Field
 from pydantic.dataclasses import dataclass
 
+from massfit.constants import PASCAL_PER_HPA
+from massfit.network import ReducedSite
 from massfit.settings import Corrections, Fingerprint, Frame, PosteriorSettings, Priors
 from massfit.site import Interval, Site
 
@@ -14,8 +16,12 @@ _STRICT = ConfigDict(extra="forbid", allow_inf_nan=False)
 _LAST_INSTANT = np.timedelta64(86_400 * 10**9 - 1, "ns")  # of a day
 
 Text = Annotated[str, Field(min_length=1)]
-ALREADY_REDUCED = ("phasor_hpa", "phasor_covariance_hpa2", "years", "subtracted")
-"""Keys of a site whose phasor was computed elsewhere."""
+Year = Annotated[int, Field(ge=1900, le=2200)]
+Pair = tuple[float, float]
+Matrix = tuple[Pair, Pair]
+
+ALREADY_REDUCED = ("phasor_hpa", "phasor_covariance_hpa2", "model_noise_hpa2", "years", "subtracted")
+"""Keys of a site that was reduced elsewhere."""
 
 
 @dataclass(frozen=True, config=_STRICT)
@@ -56,6 +62,15 @@ class SiteEntry:
         Free label.
     exclude : tuple of ExcludeEntry, or str
         Intervals not used; or the reason why the whole site is left out.
+    phasor_hpa : tuple of float, or dict of str to tuple of float, optional
+        Of a site that was reduced elsewhere: its annual phasor with the mean of the models subtracted,
+        or one for each model, by name.
+    phasor_covariance_hpa2, model_noise_hpa2 : tuple of tuple of float, optional
+        Covariance of the record less the mean of the models, and of each model's own weather.
+    years : tuple of int, optional
+        First and last year of the record.
+    subtracted : tuple of str, optional
+        The models, where `phasor_hpa` does not name them.
     """
 
     id: Text
@@ -64,6 +79,11 @@ class SiteEntry:
     depth_m: Annotated[float, Field(ge=0, le=12_000)] | None = None
     group: Text | None = None
     exclude: Text | tuple[ExcludeEntry, ...] = ()
+    phasor_hpa: Pair | dict[Text, Pair] | None = None
+    phasor_covariance_hpa2: Matrix | None = None
+    model_noise_hpa2: Matrix = ((0.0, 0.0), (0.0, 0.0))
+    years: tuple[Year, Year] | None = None
+    subtracted: tuple[Text, ...] | None = None
 
     def site(self) -> Site:
         """Make the site as the rest of the package knows it."""
@@ -76,6 +96,26 @@ class SiteEntry:
             self.group,
             exclude=() if whole else tuple(entry.interval() for entry in self.exclude),  # type: ignore[union-attr]
             excluded_because=str(self.exclude) if whole else None,
+        )
+
+    def reduced(self) -> ReducedSite | None:
+        """Make the phasor of a site that was reduced elsewhere, where nothing of it is missing."""
+        phasor, covariance = self.phasor_hpa, self.phasor_covariance_hpa2
+        if phasor is None or covariance is None or self.years is None:
+            return None
+        if isinstance(phasor, dict):
+            models, values = tuple(phasor), np.array(list(phasor.values()))
+        elif self.subtracted is not None:
+            models, values = self.subtracted, np.array(phasor)
+        else:
+            return None
+        return ReducedSite(
+            site=self.id,
+            phasor=PASCAL_PER_HPA * values,
+            covariance=PASCAL_PER_HPA**2 * np.array(covariance),
+            years=self.years,
+            models=models,
+            model_noise=PASCAL_PER_HPA**2 * np.array(self.model_noise_hpa2),
         )
 
 

@@ -23,6 +23,7 @@ _ALLOWED = {
     "float_type": "a number",
     "bool_type": "true or false",
     "tuple_type": "a list",
+    "dict_type": "a table",
     "too_short": "a longer list",
     "too_long": "a shorter list",
     "dataclass_type": "a table",
@@ -48,15 +49,27 @@ _MISSING = {
     "reason": ("Must be text", "Say why the interval is left out; every output repeats it"),
 }
 
+_OF_REDUCED = {
+    "phasor_hpa": ("Must be [in phase, quadrature], or a table of them by model", "Add it"),
+    "phasor_covariance_hpa2": ("Must be [[a, c], [c, b]]", "Add it"),
+    "years": ("Must be the first and the last year of the record", "Add it"),
+    "subtracted": ("Must be the names of the models whose mean was subtracted", "Add it; [] where none was"),
+}
+"""What is allowed, and what to do, where a site that was reduced elsewhere lacks a key."""
+
 
 @dataclass(frozen=True)
 class SiteTable:
-    """One `[[site]]`: where it stands, its entry, its deployments, and whether all of those are well formed."""
+    """One `[[site]]`: where it stands, its entry, its deployments, whether all of those are well formed.
+
+    A site that was reduced elsewhere has none.
+    """
 
     path: KeyPath
     entry: SiteEntry | None
     deployments: tuple[tuple[KeyPath, DeploymentFile], ...]
     complete: bool
+    reduced_elsewhere: bool
 
 
 @dataclass(frozen=True)
@@ -133,7 +146,7 @@ def _tables(reading: Reading, parent: dict[str, Any], path: KeyPath) -> Iterator
 
 
 def _site(reading: Reading, path: KeyPath, table: dict[str, Any]) -> SiteTable:
-    own = {key: value for key, value in table.items() if key not in (*ALREADY_REDUCED, "deployment")}
+    own = {key: value for key, value in table.items() if key != "deployment"}
     entry = parse_table(reading, SiteEntry, own, path)
     deployments = [
         (place, parse_table(reading, DeploymentFile, _deployment(fields), place))
@@ -141,13 +154,29 @@ def _site(reading: Reading, path: KeyPath, table: dict[str, Any]) -> SiteTable:
     ]
     reduced = [key for key in ALREADY_REDUCED if key in table]
     if reduced:
-        problem = f"{reduced[0]} says that the site was reduced elsewhere"
-        allowed = "Sites that are already reduced are not read by this version"
-        reading.fault((*path, reduced[0]), problem, allowed, "Give its records as [[site.deployment]]")
+        _reduced_elsewhere(reading, path, table, reduced[0])
     elif not table.get("deployment"):
         reading.fault(path, "the site has no deployment", "Must be at least one", "Add a [[site.deployment]]")
     made = tuple((place, one) for place, one in deployments if one is not None)
-    return SiteTable(path, entry, made, complete=bool(made) and len(made) == len(deployments))
+    complete = bool(made) and len(made) == len(deployments)
+    return SiteTable(path, entry, made, complete, reduced_elsewhere=bool(reduced))
+
+
+def _reduced_elsewhere(reading: Reading, path: KeyPath, table: dict[str, Any], first: str) -> None:
+    """Note what a site that was reduced elsewhere lacks, and what it has too much."""
+    needed = ["phasor_hpa", "phasor_covariance_hpa2", "years"]
+    if not isinstance(table.get("phasor_hpa"), dict):
+        needed.append("subtracted")
+    for key in needed:
+        if key not in table:
+            problem = f"the key is missing beside {first}"
+            reading.fault((*path, key), problem, *_OF_REDUCED[key])
+    if table.get("deployment"):
+        problem = f"the site has a deployment and {first}, of a site that was reduced elsewhere"
+        reading.fault((*path, first), problem, "Must be one of the two", "Remove one")
+    if isinstance(table.get("exclude"), list):
+        problem = "intervals are left out of a site that was reduced elsewhere"
+        reading.fault((*path, "exclude"), problem, "Must be a reason, for the whole site", "Remove it")
 
 
 def _deployment(table: dict[str, Any]) -> dict[str, Any]:
@@ -226,7 +255,7 @@ def _known_keys(kind: type, path: KeyPath) -> list[str]:
     if kind is SiteEntry and "exclude" in path:
         return ["from", "to", "reason"]
     names = [item.name for item in fields(kind)]
-    return [*names, *ALREADY_REDUCED, "deployment"] if kind is SiteEntry else names
+    return [*names, "deployment"] if kind is SiteEntry else names
 
 
 def _unknown_key(reading: Reading, path: KeyPath, known: tuple[str, ...] | list[str]) -> None:

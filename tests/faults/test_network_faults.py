@@ -15,7 +15,7 @@ LOADS = 'loads = ["fields/loads.nc"]'
 YEAR = "reference_year = 2016"
 KNOWN = (
     "Known keys are id, latitude, longitude, depth_m, group, exclude, "
-    "phasor_hpa, phasor_covariance_hpa2, years, subtracted, deployment."
+    "phasor_hpa, phasor_covariance_hpa2, model_noise_hpa2, years, subtracted, deployment."
 )
 OUTSIDE = "Must lie inside it. Move the file, or allow paths outside (--outside; outside=True)."
 WINDOW = 'Must be some. Widen the window, or leave the site out with exclude = "reason".'
@@ -284,12 +284,6 @@ FAULTS = {
         '  [[site.deployment]]\n  file = "records/b.nc"\n  drift = "linear"\n',
         "",
         ["N:21: site[B]: the site has no deployment. Must be at least one. Add a [[site.deployment]]."],
-    ),
-    "site already reduced": (
-        'group = "north"',
-        "phasor_hpa = [0.1, 0.8]",
-        ["N:10: site[A].phasor_hpa: phasor_hpa says that the site was reduced elsewhere. "
-         "Sites that are already reduced are not read by this version. Give its records as [[site.deployment]]."],
     ),
     "series of another shape": (
         '"fields/air.csv"',
