@@ -9,14 +9,8 @@ from jinja2 import Environment, StrictUndefined
 
 from massfit.phasor import delay_days, peak_days
 from massfit.report.page_template import TEMPLATE
-from massfit.report.text import (
-    ALTERNATIVES_NOTE,
-    SHARE_WORDS,
-    answer_sentence,
-    spoken_date,
-    trust_sentence,
-    warning_lines,
-)
+from massfit.report.text import ALTERNATIVES_NOTE, SHARE_WORDS, trust_sentence, warning_lines
+from massfit.results.answer import answer_sentence, spoken_date
 from massfit.results.finished import FinishedRun
 
 PICTURES = {

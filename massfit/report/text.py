@@ -1,12 +1,11 @@
 """The summary at the end of a run: plain text that fits 80 columns."""
 
 import textwrap
-from collections.abc import Mapping, Sequence
-from datetime import date
+from collections.abc import Mapping
 from typing import Any
 
-from massfit.constants import TROPICAL_YEAR_DAYS
-from massfit.phasor import delay_days, peak_date, peak_days
+from massfit.phasor import delay_days, peak_days
+from massfit.results.answer import date_range, spoken_date, spoken_range
 
 WIDTH = 80
 
@@ -53,44 +52,6 @@ def summary_text(summary: Mapping[str, Any]) -> str:
     return "\n\n".join("\n".join(block) for block in blocks if block)
 
 
-def answer_sentence(summary: Mapping[str, Any]) -> str:
-    """Say the answer in one sentence.
-
-    Parameters
-    ----------
-    summary : mapping
-        The content of `estimate.json`.
-
-    Returns
-    -------
-    str
-    """
-    amplitude, day = summary["amplitude_hpa"], summary["peak_day"]
-    year = summary["reference_year"]
-    return (
-        f"The annual cycle of ocean mass has an amplitude of {amplitude['median']:.2f} hPa "
-        f"(95 %: {_range(amplitude['region95'], '.2f')}) and peaks on {spoken_date(day['median'], year)} "
-        f"(95 %: {date_range(day['region95'], year)})."
-    )
-
-
-def spoken_date(day: float, year: int) -> str:
-    """Day and month of a peak day, "3 October"."""
-    stamp = date.fromisoformat(peak_date(day, year))
-    return f"{stamp.day} {stamp:%B}"
-
-
-def date_range(region: Sequence[float], year: int) -> str:
-    """Spoken range of peak days; a region of a year or more is said to be open."""
-    if region[1] - region[0] > 0.9 * TROPICAL_YEAR_DAYS:
-        return "any day of the year"
-    return f"{spoken_date(region[0], year)} to {spoken_date(region[1], year)}"
-
-
-def _range(region: Sequence[float], form: str) -> str:
-    return f"{region[0]:{form}} to {region[1]:{form}}"
-
-
 def _answer(summary: Mapping[str, Any]) -> list[str]:
     year = summary["reference_year"]
     rows = [("amplitude", "amplitude_hpa", "hPa", ".3f"), ("", "water_mm", "mm of fresh water", ".2f")]
@@ -102,7 +63,7 @@ def _answer(summary: Mapping[str, Any]) -> list[str]:
     ]
     for label, key, unit, form in rows:
         value = summary[key]
-        lines.append(f"  {label:<10}{value['median']:>9{form}} {unit:<18} {_range(value['region95'], form)}")
+        lines.append(f"  {label:<10}{value['median']:>9{form}} {unit:<18} {spoken_range(value['region95'], form)}")
     day = summary["peak_day"]
     lines.append(f"  {'peak':<10}{spoken_date(day['median'], year):>16}            {date_range(day['region95'], year)}")
     return lines

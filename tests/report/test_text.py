@@ -5,7 +5,8 @@ from typing import Any
 
 import pytest
 
-from massfit.report.text import date_range, spoken_date, summary_text, trust_sentence
+from massfit.report.text import summary_text, trust_sentence
+from massfit.results.answer import date_range, spoken_date
 from massfit.results.estimate import Estimate
 
 
