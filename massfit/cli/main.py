@@ -87,6 +87,25 @@ def starter(folder: Path) -> None:
         from massfit.pipeline.starter import begin_network_file
 
         made = begin_network_file(folder)
-    click.echo(f"Wrote {folder / 'network.toml'}: {made.sites} sites, {made.deployments} deployments.")
-    click.echo(f"Read the {made.guesses} guesses, fill in the {made.to_fill_in} open values, then run:")
-    click.echo(f"  massfit check {folder}")
+    click.echo(f"Wrote {folder / 'network.toml'}: {made.counted}.\nThen run: massfit check {folder}")
+
+
+@main.command()
+@click.argument("network", type=_FOLDER)
+@click.option("--outside", is_flag=True, help="Allow paths outside the network's folder.")
+@click.option("--json", "as_json", is_flag=True, help="Print JSON instead of text.")
+def check(network: Path, outside: bool, as_json: bool) -> None:
+    """Validate a network and show what would be used, without computing.
+
+    NETWORK is a network.toml or the folder that holds one. Prints for each site
+    a calendar of its months, its deployments and models, then what will be
+    assumed and every warning. All faults are listed at once, with exit code 2.
+    """
+    with refusing_politely():
+        from massfit.pipeline.check import check_network, refuse
+        from massfit.report.check_text import check_text, in_json
+
+        looked_at = check_network(network, outside=outside)
+        plain = "utf" not in (sys.stdout.encoding or "").casefold()
+        click.echo(in_json(looked_at.found) if as_json else check_text(looked_at.found, plain=plain))
+        refuse(looked_at)

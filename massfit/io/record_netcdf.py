@@ -72,7 +72,7 @@ def read_netcdf(path: Path, entry: DeploymentFile) -> Samples:
         pressure = _unpacked(stored, variable.attrs) * factor
     known = ~np.isnat(stamps)
     actions = _coarse(stored, factor) + _undated(known)
-    return Samples(stamps[known], pressure[known], centred, actions)
+    return Samples(stamps[known], pressure[known], centred, actions, str(variable.attrs.get("units", entry.units)))
 
 
 def _pressure_variable(dataset: xr.Dataset, entry: DeploymentFile) -> xr.DataArray:
