@@ -63,17 +63,3 @@ def fill_in(wanted: str) -> Guess:
         What is wanted, and what is known about it.
     """
     return Guess(None, wanted)
-
-
-def spoken_interval(seconds: float) -> str:
-    """Name an interval of time in the unit it is spoken of.
-
-    Examples
-    --------
-    >>> spoken_interval(900.0), spoken_interval(86400.0), spoken_interval(3600.0)
-    ('15 min', '1 d', '1 h')
-    """
-    for unit, length in (("d", 86_400.0), ("h", 3_600.0), ("min", 60.0)):
-        if seconds >= length and (seconds % length == 0.0 or seconds >= 10 * length):
-            return f"{seconds / length:.4g} {unit}"
-    return f"{seconds:.4g} s"

@@ -62,6 +62,7 @@ def read_record(folder: Path, entry: DeploymentFile, *, site: str, deployment: s
         find_steps=entry.steps == "find",
         source=entry.file,
         actions=actions,
+        units=samples.units,
     )
 
 

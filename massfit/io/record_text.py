@@ -91,7 +91,7 @@ def read_text_record(path: Path, entry: DeploymentFile) -> Samples:
     if faults:
         raise InputError(faults)
     pressure[np.isin(pressure, entry.missing)] = np.nan
-    return Samples(time, pressure * factor, actions=actions)
+    return Samples(time, pressure * factor, actions=actions, units=entry.units or "")
 
 
 def _other_kinds(kept: NDArray[np.bool_], kinds: tuple[str, ...]) -> Action:

@@ -22,9 +22,12 @@ class Samples:
         Whether the stamps are known to be the middles of the intervals.
     actions : tuple of Action
         What was done while reading.
+    units : str
+        Unit in which the file was read.
     """
 
     time: NDArray[np.datetime64]
     pressure: NDArray[np.float64]
     centred: bool = False
     actions: tuple[Action, ...] = ()
+    units: str = ""

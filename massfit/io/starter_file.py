@@ -9,13 +9,14 @@ from pathlib import Path
 import numpy as np
 
 from massfit.errors import Fault, InputError
-from massfit.io.guess import Guess, RecordGuess, fill_in, spoken_interval
+from massfit.io.guess import Guess, RecordGuess, fill_in
 from massfit.io.guess_netcdf import NO_RECORD, guess_netcdf_records
 from massfit.io.guess_sites import SiteGuess, guess_sites
 from massfit.io.guess_text_record import guess_text_records
 from massfit.io.heads import files_of
 from massfit.io.netcdf import is_netcdf
 from massfit.io.network_text import toml_value
+from massfit.records.interval import spoken_interval
 
 FILE = "network.toml"
 _DAY_S = 86_400.0
@@ -56,6 +57,17 @@ class Starter:
     deployments: int
     guesses: int
     to_fill_in: int
+
+    @property
+    def counted(self) -> str:
+        """What was found and what is to be done, in words."""
+        sites, deployments = _count(self.sites, "site"), _count(self.deployments, "deployment")
+        todo = f"read {_count(self.guesses, 'guess', 'guesses')}, fill in {_count(self.to_fill_in, 'open value')}"
+        return f"{sites}, {deployments}.\nNow edit it: {todo}"
+
+
+def _count(number: int, one: str, many: str = "") -> str:
+    return f"{number} {one if number == 1 else many or one + 's'}"
 
 
 def write_starter(folder: Path) -> Starter:

@@ -49,6 +49,8 @@ class Record:
         File, as the analyst wrote it.
     actions : tuple of Action
         What was done so far.
+    units : str
+        Unit in which the file was read; empty when built in memory.
     """
 
     site: str
@@ -61,6 +63,7 @@ class Record:
     find_steps: bool = False
     source: str = ""
     actions: tuple[Action, ...] = ()
+    units: str = ""
 
 
 @dataclass(frozen=True)
