@@ -4,6 +4,30 @@ from collections.abc import Iterable, Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
 
+_STEERING = {*range(0x20), *range(0x7F, 0xA0), 0x2028, 0x2029, *range(0x202A, 0x202F), *range(0x2066, 0x206A)}
+_ESCAPES = {code: f"\\x{code:02x}" if code < 0x100 else f"\\u{code:04x}" for code in _STEERING}
+
+
+def printable(text: str) -> str:
+    r"""Write out the characters that would steer a terminal or turn the direction of text.
+
+    Parameters
+    ----------
+    text : str
+        For example a name from a file.
+
+    Returns
+    -------
+    str
+        With control characters and marks of direction (Unicode Standard Annex 9) as escapes.
+
+    Examples
+    --------
+    >>> print(printable("site\x1b[2J"))
+    site\x1b[2J
+    """
+    return text.translate(_ESCAPES)
+
 
 class MassfitError(Exception):
     """Base of every error that massfit raises on purpose."""
@@ -40,7 +64,7 @@ class Fault:
         place = self.source if self.line is None else f"{self.source}:{self.line}"
         sentences = [self.problem, self.allowed, self.action]
         text = " ".join(s if s.endswith((".", "?", "!")) else s + "." for s in sentences if s)
-        return f"{place}: {self.name}: {text}" if self.name else f"{place}: {text}"
+        return printable(f"{place}: {self.name}: {text}" if self.name else f"{place}: {text}")
 
 
 class InputError(MassfitError):

@@ -7,6 +7,7 @@ import numpy as np
 import xarray as xr
 
 from massfit.errors import Fault, InputError
+from massfit.io.netcdf import as_text
 from massfit.io.reading import did_you_mean, nearest
 from massfit.io.schema import CirculationEntry
 from massfit.io.variables import read_pressure
@@ -49,7 +50,7 @@ def read_circulation(
 
 
 def _by_site(data: xr.DataArray, sites: Collection[str], source: str) -> xr.DataArray:
-    ids = [value.decode() if isinstance(value, bytes) else str(value) for value in data["site"].to_numpy()]
+    ids = [as_text(value) for value in data["site"].to_numpy()]
     repeated = sorted({site for site in ids if ids.count(site) > 1})
     if repeated:
         raise InputError(Fault(source, "site", f"sites stand twice: {', '.join(repeated)}", "Must be unique"))

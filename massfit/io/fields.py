@@ -14,7 +14,7 @@ from massfit.errors import Fault, InputError
 from massfit.fingerprint.grid import CellGrid, regrid
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.fingerprint.pattern import LoadPattern
-from massfit.io.netcdf import open_netcdf
+from massfit.io.netcdf import as_text, damage_as_fault, open_netcdf
 from massfit.io.variables import canonical, decoded, load, pascal_of_field, read_pressure
 
 _LOAD_UNITS = ("kg m-2", "kg m^-2", "kg/m2", "kg/m^2", "kg m**-2")
@@ -46,7 +46,7 @@ def read_loads(path: Path, *, reference_year: int, source: str) -> tuple[LoadPat
     InputError
         Variables missing, of another unit, on a grid that is not regular and global.
     """
-    with open_netcdf(path, source=source, decode=False) as raw:
+    with open_netcdf(path, source=source, decode=False) as raw, damage_as_fault(source):
         dataset = canonical(raw)
         if "load" in dataset:
             phasor = month_phasor(_months(dataset, source), reference_year)
@@ -80,7 +80,7 @@ def read_atmosphere_load(path: Path, *, source: str) -> LoadPattern:
         Variables missing, of an unknown unit, on a grid that is not regular and global.
     """
     names = ("pressure_in_phase", "pressure_quadrature")
-    with open_netcdf(path, source=source, decode=False) as raw:
+    with open_netcdf(path, source=source, decode=False) as raw, damage_as_fault(source):
         dataset = canonical(raw)
         phasor = _joined(dataset, *names, source)
         units = {dataset[name].attrs.get("units") for name in names}
@@ -218,7 +218,7 @@ def _load_area(dataset: xr.Dataset, name: str, source: str) -> str:
 
 
 def _patterns(dataset: xr.Dataset, phasor: xr.DataArray, stem: str, source: str) -> Iterator[LoadPattern]:
-    reference = str(dataset.attrs.get("references") or dataset.attrs.get("title") or source)
+    reference = as_text(dataset.attrs.get("references") or dataset.attrs.get("title") or source)
     latitude, longitude = (phasor[dim].to_numpy().astype(float) for dim in ("lat", "lon"))
     members = phasor if "member" in phasor.dims else phasor.expand_dims("member")
     for position in range(members.sizes["member"]):
@@ -236,8 +236,7 @@ def _member_name(phasor: xr.DataArray, position: int, stem: str) -> str:
         return stem
     if "member" not in phasor.coords:
         return f"{stem} {position + 1}"
-    label = phasor["member"].to_numpy()[position]
-    return label.decode() if isinstance(label, bytes) else str(label)
+    return as_text(phasor["member"].to_numpy()[position])
 
 
 def _on_whole_cells(patterns: tuple[LoadPattern, ...], area: str) -> tuple[LoadPattern, ...]:

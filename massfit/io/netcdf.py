@@ -1,13 +1,15 @@
 """Open NetCDF files with an explicit engine, refusing damaged ones."""
 
 import struct
+from collections.abc import Iterator
+from contextlib import contextmanager
 from pathlib import Path
 from typing import BinaryIO
 
-import h5py
 import xarray as xr
 
-from massfit.errors import Fault, InputError
+from massfit.errors import Fault, InputError, printable
+from massfit.io.guard import examined_problem
 
 _HDF5_MAGIC = b"\x89HDF\r\n\x1a\n"
 _OFFSET_FORMAT = {1: ">i", 2: ">q"}
@@ -51,24 +53,71 @@ def open_netcdf(path: Path, *, source: str = "", decode: bool = True) -> xr.Data
     Raises
     ------
     InputError
-        For a file that is not NetCDF, or shorter than its header says: the reader
-        of the classic format would fill in the missing end without a word.
+        For a file that is not NetCDF, is damaged, links to another file or declares much
+        more than it holds; or is shorter than its header says: the reader of the classic
+        format would fill in the missing end without a word.
     """
     source = source or str(path)
     with path.open("rb") as file:
-        magic = file.read(4)
+        magic = file.read(8)
+    allowed, action = "Must be NetCDF-3 or NetCDF-4", "Fetch it again"
+    if magic[:3] == b"CDF":
+        require_complete(path, source=source)
+    elif magic != _HDF5_MAGIC:
+        problem = f"the file cannot be read as NetCDF (it starts with {magic!r})"
+        raise InputError(Fault(source, "", problem, allowed, action))
+    elif problem := examined_problem(path):
+        problem = f"the file cannot be read as NetCDF ({problem})"
+        raise InputError(Fault(source, "", problem, allowed, action))
+    engine, options = ("scipy", {"mmap": False}) if magic[:3] == b"CDF" else ("h5netcdf", {})
+    with damage_as_fault(source):
+        return xr.open_dataset(path, engine=engine, mask_and_scale=decode, decode_times=decode, backend_kwargs=options)
+
+
+def as_text(value: object) -> str:
+    """Text of a label in a file, bytes or not, fit for a terminal.
+
+    Parameters
+    ----------
+    value : object
+
+    Returns
+    -------
+    str
+
+    Examples
+    --------
+    >>> as_text(b"north")
+    'north'
+    """
+    return printable((value.decode("utf-8", "replace") if isinstance(value, bytes) else str(value)).strip(" \0"))
+
+
+@contextmanager
+def damage_as_fault(source: str, name: str = "") -> Iterator[None]:
+    """Say of whatever a library raises on a file that the file cannot be read.
+
+    The libraries meet numbers and attributes in damaged files that they never expected, and
+    raise what happens to come: no list of exceptions would be complete.
+
+    Parameters
+    ----------
+    source, name : str
+        File and variable.
+
+    Raises
+    ------
+    InputError
+        Those of the block as they are, any other exception as a fault.
+    """
     try:
-        if magic[:3] == b"CDF":
-            require_complete(path, source=source)
-            return xr.open_dataset(
-                path, engine="scipy", mask_and_scale=decode, decode_times=decode, backend_kwargs={"mmap": False}
-            )
-        # h5netcdf leaves a half-made object behind when the file is damaged; h5py says so cleanly
-        h5py.File(path, "r").close()
-        return xr.open_dataset(path, engine="h5netcdf", mask_and_scale=decode, decode_times=decode)
-    except (OSError, ValueError, KeyError, RuntimeError) as error:
-        problem = f"the file cannot be read as NetCDF ({error})"
-        raise InputError(Fault(source, "", problem, "Must be NetCDF-3 or NetCDF-4", "Fetch it again")) from error
+        yield
+    except InputError:
+        raise
+    except Exception as error:
+        shown = (str(error).splitlines() or [""])[0][:200]
+        problem = f"the file cannot be read as NetCDF ({type(error).__name__}: {shown})"
+        raise InputError(Fault(source, name, problem, "Must be NetCDF-3 or NetCDF-4", "Fetch it again")) from error
 
 
 def require_complete(path: Path, *, source: str = "") -> None:

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from massfit.errors import Fault, InputError, collect
 from massfit.io.deployment import DeploymentFile
-from massfit.io.netcdf import open_netcdf
+from massfit.io.netcdf import as_text, damage_as_fault, open_netcdf
 from massfit.io.samples import Samples
 from massfit.io.units import PRESSURE_UNITS, pascal_per_unit
 from massfit.records.record import Action
@@ -52,7 +52,7 @@ def read_netcdf(path: Path, entry: DeploymentFile) -> Samples:
     InputError
         With every fault of variable, station, unit and time.
     """
-    with open_netcdf(path, source=entry.file, decode=False) as dataset:
+    with open_netcdf(path, source=entry.file, decode=False) as dataset, damage_as_fault(entry.file):
         variable = _pressure_variable(dataset, entry)
         time = _time_variable(dataset, variable, entry)
         faults: list[Fault] = []
@@ -63,12 +63,9 @@ def read_netcdf(path: Path, entry: DeploymentFile) -> Samples:
             indexers = _station_indexers(dataset, variable, time, entry)
         if faults:
             raise InputError(faults)
-        try:
+        with damage_as_fault(entry.file, str(variable.name)):
             stored = variable.isel(indexers, missing_dims="ignore").values
             stamps, centred = _stamps(dataset, time.isel(indexers, missing_dims="ignore"), entry)
-        except (OSError, RuntimeError) as error:
-            problem = f"the data cannot be read ({error})"
-            raise InputError(Fault(entry.file, str(variable.name), problem, action="Fetch the file again")) from error
         pressure = _unpacked(stored, variable.attrs) * factor
     known = ~np.isnat(stamps)
     actions = _coarse(stored, factor) + _undated(known)
@@ -205,7 +202,7 @@ def _station_ids(identity: xr.DataArray | None) -> list[str]:
     if identity is None:
         return []
     values = np.atleast_1d(identity.values).tolist()
-    return [(value.decode() if isinstance(value, bytes) else str(value)).strip(" \0") for value in values]
+    return [as_text(value) for value in values]
 
 
 def _stamps(

@@ -9,13 +9,14 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from massfit.errors import Fault, InputError
-from massfit.io.netcdf import open_netcdf
+from massfit.io.netcdf import damage_as_fault, open_netcdf
 from massfit.io.reading import did_you_mean, nearest
 from massfit.io.units import pascal_per_unit
 
 _HEIGHTS = ("mm", "cm", "m")
 _NAMES = {"latitude": "lat", "longitude": "lon"}
 _EAGER_BYTES = 64_000_000  # smaller variables are read at once, so that their file can be closed
+_MOST_VALUES = 2**26  # brought into memory at once
 
 
 def read_pressure(
@@ -49,14 +50,15 @@ def read_pressure(
         missing; times that are not UTC instants in order.
     """
     raw = open_netcdf(path, source=source, decode=False)
-    dataset = canonical(raw)
-    name = pick(dataset, shapes, source=source, variable=variable)
-    (dims,) = [shape for shape in shapes if set(shape) == set(dataset[name].dims)]
-    data = _in_pascal(dataset, name, source=source).transpose(*dims)
-    if data.nbytes <= _EAGER_BYTES:
-        data = load(data, source=source).astype(np.float64)
-        raw.close()
-    return data.assign_attrs(units="Pa").rename(name)
+    with damage_as_fault(source):
+        dataset = canonical(raw)
+        name = pick(dataset, shapes, source=source, variable=variable)
+        (dims,) = [shape for shape in shapes if set(shape) == set(dataset[name].dims)]
+        data = _in_pascal(dataset, name, source=source).transpose(*dims)
+        if data.nbytes <= _EAGER_BYTES:
+            data = load(data, source=source).astype(np.float64)
+            raw.close()
+        return data.assign_attrs(units="Pa").rename(name)
 
 
 def load(data: xr.DataArray, *, source: str) -> xr.DataArray:
@@ -66,11 +68,11 @@ def load(data: xr.DataArray, *, source: str) -> xr.DataArray:
     ------
     InputError
     """
-    try:
+    if data.size > _MOST_VALUES:
+        problem = f"the variable has {data.size} values"
+        raise InputError(Fault(source, str(data.name), problem, f"Must be at most {_MOST_VALUES}", "Thin it out"))
+    with damage_as_fault(source, str(data.name)):
         return data.load()
-    except (OSError, ValueError) as error:
-        problem = f"the values cannot be read ({error})"
-        raise InputError(Fault(source, str(data.name), problem, action="Fetch the file again")) from error
 
 
 def canonical(dataset: xr.Dataset) -> xr.Dataset:

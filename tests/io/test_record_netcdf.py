@@ -218,7 +218,7 @@ def test_a_damaged_value_is_refused(tmp_path: Path) -> None:
     damaged = bytearray((tmp_path / "a.nc").read_bytes())
     damaged[place + 5] ^= 255
     (tmp_path / "a.nc").write_bytes(damaged)
-    with pytest.raises(InputError, match="the data cannot be read"):
+    with pytest.raises(InputError, match="the values of 'p' are damaged"):
         read_record(tmp_path, DeploymentFile("a.nc"), site="A", deployment="A/1")
 
 
