@@ -95,11 +95,12 @@ def starter(folder: Path) -> None:
 @click.option("--outside", is_flag=True, help="Allow paths outside the network's folder.")
 @click.option("--json", "as_json", is_flag=True, help="Print JSON instead of text.")
 def check(network: Path, outside: bool, as_json: bool) -> None:
-    """Validate a network and show what would be used, without computing.
+    """Validate a network and show what would be used.
 
-    NETWORK is a network.toml or the folder that holds one. Prints for each site
-    a calendar of its months, its deployments and models, then what will be
-    assumed and every warning. All faults are listed at once, with exit code 2.
+    NETWORK is a network.toml or the folder that holds one. Nothing is computed
+    or written. Prints for each site a calendar of its months, its deployments
+    and models, then what will be assumed and every warning. All faults are
+    listed at once, with exit code 2.
     """
     with refusing_politely():
         from massfit.pipeline.check import check_network, refuse
