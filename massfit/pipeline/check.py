@@ -20,6 +20,7 @@ from massfit.network import Network, ReducedSite, Series
 from massfit.pipeline.air import network_air
 from massfit.pipeline.sites import LEAST_SITE_DAYS
 from massfit.records.clean import usable_samples
+from massfit.records.interval import spoken_interval
 from massfit.records.record import Record
 from massfit.results.assumptions import stated_assumptions
 from massfit.site import Site
@@ -30,6 +31,7 @@ LONG_ENOUGH_YEARS = 1.5
 _COARSE = np.timedelta64(6, "h")  # such samples pass as they are; finer ones become daily means
 _LEAST_SHARE = 0.75  # of a day
 _DAY = np.timedelta64(1, "D")
+_SECOND = np.timedelta64(1, "s")
 _NOON = np.timedelta64(12, "h")
 _NOTHING = np.array([], "datetime64[ns]")
 _NO_FOOTPRINTS = "no footprints were given"
@@ -137,12 +139,12 @@ def _site(
     left_out = site.excluded_because is not None
     days = np.unique(np.concatenate([_NOTHING, *(_days(network, site, record) for record in records)]))
     present: dict[str, bool] = {}
-    notes: list[str] = []
+    notes = _tides_left(network, records)
     if days.size and not left_out:
         with collect(faults):
             corrections = _corrections(network, site, days, air, models)
             present = dict(zip(corrections["model"].values.tolist(), corrections["present"].values == 1, strict=True))
-            notes = [note for note in str(corrections.attrs["notes"]).split("\n") if note]
+            notes += [note for note in str(corrections.attrs["notes"]).split("\n") if note]
     reduced = next((each for each in network.reduced if each.site == site.id), None)
     return {
         "id": site.id,
@@ -166,7 +168,24 @@ def _site(
 def _too_short(days: NDArray[np.datetime64], reduced: ReducedSite | None) -> str | None:
     if reduced is not None or days.size >= LEAST_SITE_DAYS:
         return None
-    return f"{days.size} days of data; a site needs {LEAST_SITE_DAYS}"
+    return f"{days.size} days that are well covered; a site needs {LEAST_SITE_DAYS}"
+
+
+def _tides_left(network: Network, records: Sequence[Record]) -> list[str]:
+    if network.settings.corrections.tides != "remove":
+        return []
+    spaced = ((record.deployment, _spacing(record.time)) for record in records)
+    return [
+        f"{name}: its samples are {spoken_interval(spacing / _SECOND)} apart, so short tides cannot be taken off here: "
+        "they must be out of it already"
+        for name, spacing in spaced
+        if spacing >= _COARSE
+    ]
+
+
+def _spacing(time: NDArray[np.datetime64]) -> np.timedelta64:
+    stamps = np.unique(time[~np.isnat(time)])
+    return np.timedelta64(np.median(np.diff(stamps))) if stamps.size > 1 else np.timedelta64(0, "ns")
 
 
 def _reduced(reduced: ReducedSite) -> dict[str, Any]:
@@ -179,7 +198,7 @@ def _days(network: Network, site: Site, record: Record) -> NDArray[np.datetime64
     time, _, _ = usable_samples(record.time, record.pressure, exclude=site.exclude, start=frame.start, end=frame.end)
     if time.size < 2:
         return time
-    spacing = np.median(np.diff(time))
+    spacing = _spacing(time)
     if spacing >= _COARSE:
         return time
     days, counts = np.unique(time.astype("datetime64[D]"), return_counts=True)
@@ -223,14 +242,14 @@ def _months(days: NDArray[np.datetime64], records: Sequence[Record]) -> dict[str
 
 def _deployment(record: Record) -> dict[str, Any]:
     valid = np.isfinite(record.pressure) & ~np.isnat(record.time)
-    time = np.unique(record.time[valid])
+    time, spacing = np.unique(record.time[valid]), _spacing(record.time[valid])
     return {
         "label": record.deployment,
         "file": record.source,
         "units": record.units,
         "start": _shown(time[0]) if time.size else None,
         "end": _shown(time[-1]) if time.size else None,
-        "sampling_s": float(np.median(np.diff(time)) / np.timedelta64(1, "s")) if time.size > 1 else None,
+        "sampling_s": float(spacing / _SECOND) if time.size > 1 else None,
         "samples": int(valid.size),
         "missing": int(np.count_nonzero(~valid)),
         "median_hpa": round(record.reference / 100.0, 3),

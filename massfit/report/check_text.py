@@ -113,7 +113,7 @@ def _length(site: Mapping[str, Any]) -> list[str]:
         models = ", ".join(site["reduced_elsewhere"]["subtracted"]) or "no model"
         return _wrapped(f"reduced elsewhere, {first} to {last}, with {models} subtracted")
     verdict = "" if site["long_enough"] else "; SHORT: drift and annual cycle part only beyond 1.5 years"
-    return _wrapped(f"{site['days']} days with data, {site['years']:.2f} years{verdict}")
+    return _wrapped(f"{site['days']} days well covered, {site['years']:.2f} years{verdict}")
 
 
 def _calendar(months: Mapping[str, Sequence[float | None]], marks: Sequence[str]) -> list[str]:

@@ -45,7 +45,7 @@ def test_starter_then_check(tmp_path: Path) -> None:
     checked = call("check", tmp_path)
     assert checked.exit_code == 0, checked.stderr
     assert "Rystad: 22.51 S 0.12 E, 5267 m deep, 100 % ocean" in checked.stdout
-    assert "498 days with data" in checked.stdout
+    assert "498 days well covered" in checked.stdout
     assert "What will be assumed" in checked.stdout
 
 

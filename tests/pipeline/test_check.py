@@ -112,7 +112,7 @@ def test_short_and_left_out_sites(invented) -> None:
     found = look_at(replace(invented, sites=sites, records=tuple(cut))).found["sites"]
     assert found[0]["left_out"] == "anchor lost"
     assert found[0]["models"] == []
-    assert found[1]["left_out"] == f"{found[1]['days']} days of data; a site needs 90"
+    assert found[1]["left_out"] == f"{found[1]['days']} days that are well covered; a site needs 90"
     assert found[1]["long_enough"] is False
     assert found[2]["depth_m"] is None
 
