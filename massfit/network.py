@@ -11,7 +11,8 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
-from massfit.errors import Fault
+from massfit.display import Described, Description
+from massfit.errors import Fault, InputError
 from massfit.fingerprint.pattern import LoadPattern
 from massfit.records.record import Record
 from massfit.settings import Settings
@@ -155,8 +156,8 @@ def _is_covariance(matrix: NDArray[np.float64], *, least: float) -> bool:
     return bool(skew <= 1e-6 * scale and np.linalg.eigvalsh(0.5 * (matrix + matrix.T)).min() >= least * scale)
 
 
-@dataclass(frozen=True)
-class Network:
+@dataclass(frozen=True, repr=False)
+class Network(Described):
     """Everything a run needs.
 
     Parameters
@@ -197,3 +198,97 @@ class Network:
     source: str = ""
     inputs: Mapping[str, str] = field(default_factory=dict)
     warnings: tuple[str, ...] = ()
+
+    def describe(self) -> Description:
+        """Say what the network holds."""
+        frame = self.settings.frame
+        left_out = sum(site.excluded_because is not None for site in self.sites)
+        valid = [times for times in (each.time[~np.isnat(each.time)] for each in self.records) if times.size]
+        ends = [str(day)[:10] for times in valid for day in (times.min(), times.max())]
+        span = f", {min(ends)} to {max(ends)}" if ends else ""
+        models, loads = (", ".join(each.name for each in group) or "none" for group in (self.circulation, self.loads))
+        return f"Network: {frame.name}", {
+            "phases from": f"1 January {frame.reference_year} 00:00 UTC",
+            "sites": f"{len(self.sites)}, {left_out} left out, {len(self.reduced)} reduced elsewhere",
+            "records": f"{len(self.records)}{span}",
+            "models": models,
+            "load members": loads,
+            "warnings": f"{len(self.warnings)}",
+        }
+
+
+def check_network(network: Network) -> None:
+    """Refuse a network whose parts do not fit together.
+
+    Parameters
+    ----------
+    network : Network
+
+    Raises
+    ------
+    InputError
+        Names that stand twice, data of a site that is not there or has both records and a phasor, arrays that
+        do not match, a phasor made elsewhere that is not well formed, or nothing said about the
+        ocean-mean air pressure.
+
+    Examples
+    --------
+    >>> from massfit.settings import make_settings
+    >>> settings = make_settings(network={"name": "Invented", "reference_year": 2016}, corrections={})
+    >>> check_network(Network(settings, sites=(), records=(), loads=()))
+    Traceback (most recent call last):
+        ...
+    massfit.errors.InputError: network: corrections.ocean_mean_atmosphere: nothing is said about ...
+    """
+    source = network.source or "network"
+    models = [model.name for model in network.circulation]
+    names = {
+        "sites": [site.id for site in network.sites],
+        "records": [record.deployment for record in network.records],
+        "circulation": models,
+        "reduced": [each.site for each in network.reduced],
+    }
+    faults = [
+        Fault(source, kind, f'"{name}" stands twice', "Must be unique", "Rename or remove one")
+        for kind, own in names.items()
+        for name in sorted({name for name in own if own.count(name) > 1})
+    ]
+    faults += [fault for record in network.records for fault in _record_faults(record, names["sites"], source)]
+    faults += [fault for each in network.reduced for fault in _reduced_faults(each, network, source)]
+    faults += [fault for each in network.reduced for fault in reduced_faults(each, models)]
+    faults += _atmosphere_faults(network, source)
+    if faults:
+        raise InputError(faults)
+
+
+def _record_faults(record: Record, sites: Collection[str], source: str) -> list[Fault]:
+    faults = []
+    if record.site not in sites:
+        problem = f'its site "{record.site}" is not in the network'
+        faults.append(Fault(source, record.deployment, problem, f"Must be one of {', '.join(sites)}"))
+    if record.time.dtype.kind != "M" or record.time.ndim != 1 or record.time.shape != record.pressure.shape:
+        problem = f"time is {record.time.dtype} {record.time.shape}, pressure {record.pressure.shape}"
+        faults.append(Fault(source, record.deployment, problem, "Must be datetime64 and numbers, one a sample"))
+    return faults
+
+
+def _reduced_faults(reduced: ReducedSite, network: Network, source: str) -> list[Fault]:
+    if reduced.site not in {site.id for site in network.sites}:
+        problem = "the site was reduced elsewhere and is not in the network"
+        return [Fault(source, reduced.site, problem, action="Add the site")]
+    if reduced.site in {record.site for record in network.records}:
+        problem = "the site has records and a phasor made elsewhere"
+        return [Fault(source, reduced.site, problem, "Must be one of the two")]
+    return []
+
+
+def _atmosphere_faults(network: Network, source: str) -> list[Fault]:
+    name, removed = "corrections.ocean_mean_atmosphere", "already-removed"
+    given = network.ocean_mean_atmosphere is not None or network.air_pressure is not None
+    if given == (network.settings.corrections.ocean_mean_atmosphere != removed):
+        return []
+    if given:
+        return [Fault(source, name, f'the value is "{removed}", and a series is given', "Must be one of the two")]
+    problem = "nothing is said about the ocean-mean air pressure"
+    allowed = f'Must be a series (or air_pressure), or "{removed}" in the settings'
+    return [Fault(source, name, problem, allowed, "State it: left in, it moves the peak by weeks")]

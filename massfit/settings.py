@@ -4,11 +4,15 @@ The classes are the only definition of a setting: the network file is
 validated against them and `run.json` repeats them. Units stand in the names.
 """
 
+from collections.abc import Mapping
+from dataclasses import fields
 from datetime import date
-from typing import Annotated, Literal
+from typing import Annotated, Any, Literal
 
-from pydantic import ConfigDict, Field, PositiveFloat
+from pydantic import ConfigDict, Field, PositiveFloat, TypeAdapter, ValidationError
 from pydantic.dataclasses import dataclass
+
+from massfit.errors import Fault, InputError
 
 _STRICT = ConfigDict(extra="forbid", allow_inf_nan=False)
 
@@ -162,7 +166,7 @@ class Priors:
 
 @dataclass(frozen=True, config=_STRICT)
 class Settings:
-    """Every choice of one network file.
+    """Every choice of one network file; :func:`make_settings` makes it from plain mappings.
 
     Parameters
     ----------
@@ -176,6 +180,13 @@ class Settings:
         `[posterior]`.
     priors : Priors
         `[priors]`.
+
+    Examples
+    --------
+    >>> corrections = Corrections(ocean_mean_atmosphere="already-removed")
+    >>> settings = Settings(Frame("Invented", reference_year=2016), corrections, priors=Priors(year_sd_hpa=0.1))
+    >>> settings.posterior.seed
+    1
     """
 
     frame: Frame
@@ -183,3 +194,65 @@ class Settings:
     fingerprint: Fingerprint = Fingerprint()
     posterior: PosteriorSettings = PosteriorSettings()
     priors: Priors = Priors()
+
+
+def make_settings(
+    *,
+    network: Mapping[str, object],
+    corrections: Mapping[str, object],
+    fingerprint: Mapping[str, object] | None = None,
+    posterior: Mapping[str, object] | None = None,
+    priors: Mapping[str, object] | None = None,
+) -> Settings:
+    """Make settings from the sections of a network file, each a mapping of its keys.
+
+    Parameters
+    ----------
+    network, corrections : mapping
+        Keys of :class:`Frame` and :class:`Corrections`. Files that these would name are given to
+        :class:`massfit.Network` as data, and need not be named.
+    fingerprint, posterior, priors : mapping, optional
+        Keys of :class:`Fingerprint`, :class:`PosteriorSettings` and :class:`Priors`; all have defaults.
+
+    Returns
+    -------
+    Settings
+
+    Raises
+    ------
+    InputError
+        Every key that is missing, unknown or out of range.
+
+    Examples
+    --------
+    >>> settings = make_settings(
+    ...     network={"name": "Invented", "reference_year": 2016},
+    ...     corrections={"ocean_mean_atmosphere": "already-removed", "tides": "already-removed"},
+    ...     posterior={"seed": 7},
+    ... )
+    >>> settings.frame.reference_year, settings.posterior.seed, settings.priors.annual_sd_hpa
+    (2016, 7, 5.0)
+    """
+    given = {"frame": network, "corrections": corrections, "fingerprint": fingerprint}
+    given |= {"posterior": posterior, "priors": priors}
+    document = {name: dict(section) for name, section in given.items() if section is not None}
+    try:
+        return TypeAdapter(Settings).validate_python(document)
+    except ValidationError as error:
+        raise InputError([_fault(found) for found in error.errors(include_url=False)]) from None
+
+
+def _fault(error: Any) -> Fault:
+    place = ["network" if part == "frame" else str(part) for part in error["loc"]]
+    name = ".".join(place[:2])
+    if error["type"] == "missing":
+        return Fault("settings", name, "the key is missing", action="Add it")
+    if error["type"] == "unexpected_keyword_argument":
+        section = next(field.type for field in fields(Settings) if field.name == error["loc"][0])
+        known = ", ".join(field.name for field in fields(section))  # type: ignore[arg-type]
+        return Fault("settings", name, "unknown key", f"Known keys are {known}", "Correct or remove it")
+    return Fault("settings", name, f"the value is {error['input']!r}", f"Must be {_allowed(error['msg'])}")
+
+
+def _allowed(message: str) -> str:
+    return message.removeprefix("Input should be ")

@@ -21,7 +21,7 @@ LAYERS = [
     {"earth"},
     {"settings", "site", "phasor", "contracts"},
     {"tables"},
-    {"constants", "errors"},
+    {"constants", "errors", "display"},
 ]
 LEVEL = {room: level for level, rooms in enumerate(LAYERS) for room in rooms}
 ROOT = Path(massfit.__file__).parent

@@ -25,6 +25,8 @@ from massfit.annual.noise import NoisePriors
 from massfit.annual.operator import model_noise, phasor_operator, year_shares
 from massfit.annual.parts import merge_components
 from massfit.annual.record import ReducedRecord, check_records
+from massfit.constants import PASCAL_PER_HPA
+from massfit.display import Described, Description, counted
 from massfit.settings import Priors
 
 Floats = NDArray[np.float64]
@@ -93,8 +95,8 @@ class DriftFit:
     steps: tuple[tuple[np.datetime64, Estimate], ...]
 
 
-@dataclass(frozen=True)
-class SiteFit:
+@dataclass(frozen=True, repr=False)
+class SiteFit(Described):
     """What one site says about its annual phasor, and what else was found.
 
     Parameters
@@ -139,6 +141,19 @@ class SiteFit:
     drifts: tuple[DriftFit, ...]
     year_share: Mapping[int, float]
     notes: tuple[str, ...] = ()
+
+    def describe(self) -> Description:
+        """Phasor, and how well it is known."""
+        mean, covariance = self.single_gaussian()
+        parts = zip(mean.mean(axis=0) / PASCAL_PER_HPA, np.sqrt(np.diag(covariance)) / PASCAL_PER_HPA, strict=True)
+        in_phase, quadrature = (f"{value:.3f} (sd {sd:.3f}) hPa" for value, sd in parts)
+        return f"Fit of site {self.site}".rstrip(), {
+            "in phase": in_phase,
+            "quadrature": quadrature,
+            "subtracted": f"mean of {', '.join(self.models)}" if self.models else "no model",
+            "record": f"{counted(self.days, 'day')}, {counted(len(self.drifts), 'deployment')}",
+            "residual": f"sd {self.reduced_sd / PASCAL_PER_HPA:.2f} hPa",
+        }
 
     def single_gaussian(self) -> tuple[Floats, Floats]:
         """Mean (max(M, 1), 2) and covariance (2, 2) of the whole mixture, Pa and Pa^2.

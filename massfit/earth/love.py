@@ -7,6 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from massfit.constants import GRAVITATIONAL_CONSTANT
+from massfit.display import Described, Description
 from massfit.earth.profile import EarthProfile, prem
 from massfit.earth.propagate import load_response
 from massfit.errors import Fault, InputError
@@ -21,8 +22,8 @@ FRAMES: tuple[DegreeOneFrame, ...] = ("CE", "CM", "CF")
 _STEP = 0.5
 
 
-@dataclass(frozen=True, eq=False)
-class LoveNumbers:
+@dataclass(frozen=True, eq=False, repr=False)
+class LoveNumbers(Described):
     """Load Love numbers h', l', k' by degree.
 
     Under a load whose own potential at the surface is phi in degree n, the surface rises by
@@ -63,6 +64,16 @@ class LoveNumbers:
     def max_degree(self) -> int:
         """Highest degree."""
         return len(self.h) - 1
+
+    def describe(self) -> Description:
+        """Profile, frame, and some of the numbers."""
+        degrees = [degree for degree in (1, 2, 3, 10, 100) if degree <= self.max_degree]
+        some = {f"degree {n}": f"h' {self.h[n]:.4f}, l' {self.l[n]:.4f}, k' {self.k[n]:.4f}" for n in degrees}
+        return f"Load Love numbers to degree {self.max_degree}", {
+            "profile": self.profile,
+            "degree one": f"in {self.frame}",
+            **some,
+        }
 
     def in_frame(self, frame: DegreeOneFrame) -> "LoveNumbers":
         """Move the origin of degree one.

@@ -7,13 +7,14 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from massfit.constants import EARTH_RADIUS
+from massfit.display import Described, Description
 from massfit.errors import Fault, InputError
 from massfit.fingerprint.grid import CellGrid
 from massfit.tables.ocean_fraction import REFERENCE, read_ocean_fraction
 
 
-@dataclass(frozen=True, eq=False)
-class OceanFunction:
+@dataclass(frozen=True, eq=False, repr=False)
+class OceanFunction(Described):
     """Area fraction of ocean on a regular global grid of cells.
 
     Parameters
@@ -55,6 +56,16 @@ class OceanFunction:
         '3.6263e+14'
         """
         return _builtin()
+
+    def describe(self) -> Description:
+        """Cells and area."""
+        area = self.area_m2
+        rows, columns = self.cells.shape
+        return "Ocean function", {
+            "cells": f"{rows} x {columns} (latitude, longitude)",
+            "ocean area": f"{area:.4e} m2, {area / (4.0 * np.pi * EARTH_RADIUS**2):.1%} of the sphere",
+            "reference": self.reference,
+        }
 
     @property
     def area_m2(self) -> float:

@@ -5,13 +5,14 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from massfit.constants import EARTH_RADIUS
+from massfit.constants import EARTH_RADIUS, KG_PER_GT
+from massfit.display import Described, Description, counted, shown_number
 from massfit.errors import Fault, InputError
 from massfit.fingerprint.operator import SeaLevelOperator
 
 
-@dataclass(frozen=True, eq=False)
-class SeaLevel:
+@dataclass(frozen=True, eq=False, repr=False)
+class SeaLevel(Described):
     """Relative sea level in response to a load or a forcing.
 
     Made by :func:`solve_sea_level`. Values are complex when an input is.
@@ -39,6 +40,15 @@ class SeaLevel:
     load_mass: complex
     water_vapour: complex
     iterations: int
+
+    def describe(self) -> Description:
+        """Ocean mean and masses."""
+        return "Relative sea level", {
+            "ocean mean": f"{shown_number(1000.0 * self.ocean_mean)} mm of sea water",
+            "load": f"{shown_number(self.load_mass / KG_PER_GT, '.4g')} Gt",
+            "water vapour": f"{shown_number(self.water_vapour / KG_PER_GT, '.4g')} Gt",
+            "solved": f"to degree {self.operator.max_degree} in {counted(self.iterations, 'step')}",
+        }
 
     @property
     def height(self) -> NDArray[np.float64] | NDArray[np.complex128]:

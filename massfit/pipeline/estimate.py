@@ -11,7 +11,7 @@ from massfit.earth.love import love_numbers
 from massfit.fingerprint.footprint import site_footprints
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.fingerprint.operator import prepare_operator
-from massfit.network import Network
+from massfit.network import Network, check_network
 from massfit.pipeline.air import network_air
 from massfit.pipeline.context import in_context
 from massfit.pipeline.fingerprints import network_fingerprints
@@ -67,6 +67,7 @@ def estimate(
 
 
 def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Mapped) -> Estimate:
+    check_network(network)
     settings = network.settings
     records = daily_records(network, progress)
     sites = usable_sites(network, records)

@@ -13,7 +13,7 @@ from massfit.annual.record import ReducedRecord
 from massfit.corrections.circulation import CirculationAtSites
 from massfit.corrections.site import site_corrections
 from massfit.errors import Fault, InputError
-from massfit.network import Network, Series, reduced_faults
+from massfit.network import Network, Series
 from massfit.pipeline.parts import Mapped
 from massfit.pipeline.progress import Progress
 from massfit.records.daily import reduce_to_daily
@@ -93,10 +93,9 @@ def usable_sites(network: Network, records: Mapping[str, Sequence[DailyRecord]])
     Raises
     ------
     InputError
-        No site is left, or a network of records only has fewer than 180 days of data in all; a site
-        that was reduced elsewhere is unknown, has records too, or is not well formed.
+        No site is left, or a network of records only has fewer than 180 days of data in all.
     """
-    reduced = _reduced_elsewhere(network)
+    reduced = {each.site for each in network.reduced}
     days = {name: len(_days(own)) for name, own in records.items()}
     total = sum(days.values())
     sites = tuple(
@@ -115,27 +114,6 @@ def usable_sites(network: Network, records: Mapping[str, Sequence[DailyRecord]])
             )
         )
     return sites
-
-
-def _reduced_elsewhere(network: Network) -> set[str]:
-    """Sites of the network that were reduced elsewhere."""
-    known, recorded = {site.id for site in network.sites}, {record.site for record in network.records}
-    source = network.source or "network"
-    faults = [
-        Fault(source, each.site, "the site was reduced elsewhere and is not in the network", action="Add the site")
-        for each in network.reduced
-        if each.site not in known
-    ]
-    faults += [
-        Fault(source, each.site, "the site has records and a phasor made elsewhere", "Must be one of the two")
-        for each in network.reduced
-        if each.site in recorded
-    ]
-    models = [model.name for model in network.circulation]
-    faults += [fault for each in network.reduced for fault in reduced_faults(each, models)]
-    if faults:
-        raise InputError(faults)
-    return {each.site for each in network.reduced}
 
 
 def reduce_sites(tasks: Sequence[SiteTask], progress: Progress, mapped: Mapped) -> list[SiteReduction]:

@@ -6,6 +6,8 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
+from massfit.constants import PASCAL_PER_HPA
+from massfit.display import Described, Description, counted
 from massfit.phasor import COMPONENTS
 from massfit.posterior.convergence import Convergence
 from massfit.posterior.likelihood import SCALES
@@ -13,8 +15,8 @@ from massfit.posterior.quadrature import ScalePosterior
 from massfit.settings import PosteriorSettings, Priors
 
 
-@dataclass(frozen=True)
-class Posterior:
+@dataclass(frozen=True, repr=False)
+class Posterior(Described):
     """Draws of the annual phasor of ocean mass, and whether they can be trusted.
 
     Parameters
@@ -59,6 +61,21 @@ class Posterior:
     atmosphere_sd_hpa: float
     warnings: tuple[str, ...]
     method: tuple[str, ...]
+
+    def describe(self) -> Description:
+        """Phasor with its width, and whether the draws can be trusted."""
+        draws = self.draws / PASCAL_PER_HPA
+        low, median, high = np.quantile(np.hypot(draws[:, 0], draws[:, 1]), [0.025, 0.5, 0.975])
+        parts = zip(draws.mean(axis=0), draws.std(axis=0), strict=True)
+        in_phase, quadrature = (f"{value:.3f} (sd {sd:.3f}) hPa" for value, sd in parts)
+        network = (counted(len(self.sites), "site"), counted(len(self.models), "model column"))
+        return "Posterior of the annual phasor of ocean mass", {
+            "amplitude": f"{median:.3f} hPa (95 %: {low:.3f} to {high:.3f})",
+            "in phase": in_phase,
+            "quadrature": quadrature,
+            "from": ", ".join([*network, counted(len(self.members), "load member")]),
+            "draws": f"{len(draws)}, {'converged' if self.converged else 'NOT CONVERGED: do not use'}",
+        }
 
     @property
     def seed(self) -> int:

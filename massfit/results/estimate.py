@@ -9,9 +9,11 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from massfit.annual.fit import SiteFit
+from massfit.display import Described, Description
 from massfit.network import Network
 from massfit.posterior.result import Posterior
 from massfit.records.record import DailyRecord
+from massfit.results.answer import answer_sentence, spoken_range
 from massfit.site import Site
 
 
@@ -39,8 +41,8 @@ class SiteReduction:
     fit: SiteFit
 
 
-@dataclass(frozen=True)
-class Estimate:
+@dataclass(frozen=True, repr=False)
+class Estimate(Described):
     """Everything a run made: the answer, and each step towards it.
 
     Parameters
@@ -65,3 +67,17 @@ class Estimate:
     posterior: Posterior
     summary: Mapping[str, Any]
     provenance: Mapping[str, Any]
+
+    def describe(self) -> Description:
+        """Answer, and what to know before it is quoted."""
+        summary = self.summary
+        mass = summary["mass_gt"]
+        doubtful = sum(bool(site["warnings"]) for site in summary["sites"])
+        state = "yes" if summary["convergence"]["converged"] else "NO: do not use this number"
+        return f"Estimate: {summary['network']}", {
+            "answer": answer_sentence(summary),
+            "mass": f"{mass['median']:.0f} Gt (95 %: {spoken_range(mass['region95'], '.0f')})",
+            "sites": f"{len(summary['sites'])}, {doubtful} with a warning",
+            "converged": state,
+            "warnings": f"{len(summary['warnings'])} of the network, in .summary['warnings']",
+        }

