@@ -13,13 +13,25 @@ from numpy.typing import NDArray
 from massfit.constants import PASCAL_PER_HPA
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.phasor import admittance_matrix, annual_basis, as_complex, days_since, unwrapped_peak_days
-from massfit.posterior.regions import DensityRegions, density_regions
+from massfit.posterior.regions import density_regions
 from massfit.posterior.summary import QUIET_SD
 from massfit.report.corner_figure import corner_figure
+from massfit.report.fingerprint_members import fingerprint_members
 from massfit.report.network_map import network_map
 from massfit.report.phasor_plane import phasor_plane
-from massfit.report.record_panels import RecordRow, record_panels
+from massfit.report.record_panels import ROWS_OF_A_PAGE, RecordRow, record_panels
+from massfit.report.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM
 from massfit.results.finished import FinishedRun
+
+SCALE_WORDS = {"s_site": "site scatter", "s_local": "models at a site", "s_common": "model spread"}
+"""What the scales of the posterior are called in figures."""
+
+SMOOTHING_SD = 0.4
+"""Kernel of the regions that are drawn, in standard deviations: their edges are the draws' and not their noise."""
+
+Contour = tuple[float, Sequence[NDArray[np.float64]]]
+
+_COMPARED = "uniform over land"
 
 
 def draw_figures(run: FinishedRun, ocean: OceanFunction) -> dict[str, Figure]:
@@ -34,26 +46,33 @@ def draw_figures(run: FinishedRun, ocean: OceanFunction) -> dict[str, Figure]:
     Returns
     -------
     dict of str to matplotlib.figure.Figure
-        Under the names of `page.PICTURES`.
+        Over the width of a page, under the names of `page.PICTURES`; further pages of records end in ``_2``, ``_3``
+        and so on. The same for a single column, but for the records, end in ``_column``.
     """
-    figures = {
-        "phasor_plane": _plane(run),
-        "network_map": _map(run, ocean),
-        "corner": _corner(run.datasets["posterior.nc"]),
-    }
-    if "reduced_records.nc" in run.datasets:  # not where every site was reduced elsewhere
-        figures["records"] = record_panels(_record_rows(run))
+    figures: dict[str, Figure] = {}
+    contours = _contours(run)
+    for ending, width in (("", PAGE_WIDTH_MM), ("_column", COLUMN_WIDTH_MM)):
+        figures[f"phasor_plane{ending}"] = _plane(run, contours, width)
+        figures[f"network_map{ending}"] = _map(run, ocean, width)
+        figures[f"fingerprint{ending}"] = _members(run, width)
+        figures[f"corner{ending}"] = _corner(run.datasets["posterior.nc"], width)
+    # there are none where every site was reduced elsewhere
+    rows = _record_rows(run) if "reduced_records.nc" in run.datasets else []
+    for page, first in enumerate(range(0, len(rows), ROWS_OF_A_PAGE), 1):
+        name = "records" if page == 1 else f"records_{page}"
+        figures[name] = record_panels(rows[first : first + ROWS_OF_A_PAGE])
     return figures
 
 
 def png(figure: Figure) -> bytes:
-    """Render a figure as PNG."""
+    """Render a figure as PNG, finer where it is to be a column wide."""
     picture = io.BytesIO()
-    figure.savefig(picture, format="png", dpi=130)
+    narrow = figure.get_size_inches()[0] * 25.4 < 0.5 * (COLUMN_WIDTH_MM + PAGE_WIDTH_MM)
+    figure.savefig(picture, format="png", dpi=300 if narrow else 200)
     return picture.getvalue()
 
 
-def _plane(run: FinishedRun) -> Figure:
+def _plane(run: FinishedRun, contours: Sequence[Contour], width_mm: float) -> Figure:
     draws = run.datasets["posterior.nc"]["annual_phasor"].values.reshape(-1, 2) / PASCAL_PER_HPA
     sites = run.summary["sites"]
     inverse = np.linalg.inv(admittance_matrix(_admittances(sites)))
@@ -65,11 +84,15 @@ def _plane(run: FinishedRun) -> Figure:
         np.einsum("sij,sj->si", inverse, phasors),
         np.einsum("sij,sjk,slk->sil", inverse, covariances, inverse),
         reference_year=run.summary["reference_year"],
-        contours=_contours(density_regions(draws)),
+        contours=contours,
+        width_mm=width_mm,
     )
 
 
-def _contours(regions: DensityRegions) -> list[tuple[float, list[NDArray[np.float64]]]]:
+def _contours(run: FinishedRun) -> list[Contour]:
+    """Edges of the regions of the answer, the largest first, hPa."""
+    draws = run.datasets["posterior.nc"]["annual_phasor"].values.reshape(-1, 2) / PASCAL_PER_HPA
+    regions = density_regions(draws, bandwidth=SMOOTHING_SD)
     generator = contour_generator(regions.in_phase, regions.quadrature, regions.density)
     lines = {level: [np.asarray(line) for line in generator.lines(value)] for level, value in regions.levels.items()}
     return sorted(lines.items(), reverse=True)
@@ -87,7 +110,7 @@ def _admittances(sites: Sequence[dict[str, list[float]]]) -> NDArray[np.complex1
     return np.asarray(as_complex(np.array([site["admittance"] for site in sites])))
 
 
-def _map(run: FinishedRun, ocean: OceanFunction) -> Figure:
+def _map(run: FinishedRun, ocean: OceanFunction, width_mm: float) -> Figure:
     sites = run.summary["sites"]
     return network_map(
         ocean.fraction,
@@ -98,6 +121,7 @@ def _map(run: FinishedRun, ocean: OceanFunction) -> Figure:
         np.array([site["longitude"] for site in sites]),
         _admittances(sites),
         doubtful=[bool(site["warnings"]) for site in sites],
+        width_mm=width_mm,
     )
 
 
@@ -105,14 +129,33 @@ def _centres(bounds: NDArray[np.float64]) -> NDArray[np.float64]:
     return np.asarray(0.5 * (bounds[1:] + bounds[:-1]))
 
 
-def _corner(posterior: xr.Dataset) -> Figure:
+def _members(run: FinishedRun, width_mm: float) -> Figure:
+    ids, fingerprints = [site["id"] for site in run.summary["sites"]], run.datasets["fingerprints.nc"]
+    compared = None
+    if "reference_admittance" in fingerprints and _COMPARED in fingerprints["case"].values:
+        compared = as_complex(fingerprints["reference_admittance"].sel(site=ids, case=_COMPARED).values)
+    return fingerprint_members(
+        ids,
+        [str(name) for name in fingerprints["member"].values],
+        as_complex(fingerprints["admittance"].sel(site=ids).values),
+        compared=compared,
+        compared_name=_COMPARED,
+        width_mm=width_mm,
+    )
+
+
+def _corner(posterior: xr.Dataset, width_mm: float) -> Figure:
+    """Answer and scales; in a single column only the scale that weighs most."""
     phasors = as_complex(posterior["member_annual_phasor"].values.reshape(-1, 2) / PASCAL_PER_HPA)
-    scales = posterior["scale"].values.reshape(-1, posterior.sizes["scale_name"]) / PASCAL_PER_HPA
+    names = [str(name) for name in posterior["scale_name"].values]
+    scales = posterior["scale"].values.reshape(-1, len(names)) / PASCAL_PER_HPA
     every = max(1, len(phasors) // 20_000)  # enough for smooth contours
-    labels = ("site scatter / hPa", "models at a site / hPa", "model spread / hPa")
-    quantities = {"amplitude / hPa": np.abs(phasors)[::every], "peak day": unwrapped_peak_days(phasors)[::every]}
-    quantities.update({label: column[::every] for label, column in zip(labels, scales.T, strict=True)})
-    return corner_figure(quantities)
+    quantities = {"amplitude / hPa": np.abs(phasors)[::every], "peak / day": unwrapped_peak_days(phasors)[::every]}
+    shown = names if width_mm > COLUMN_WIDTH_MM else ["s_common"]
+    quantities.update(
+        {f"{SCALE_WORDS.get(name, name)} / hPa": scales[::every, names.index(name)] for name in shown if name in names}
+    )
+    return corner_figure(quantities, width_mm=width_mm)
 
 
 def _record_rows(run: FinishedRun) -> list[RecordRow]:

@@ -3,11 +3,19 @@
 from collections.abc import Sequence
 
 import numpy as np
-from matplotlib.colors import ListedColormap
+from matplotlib.cm import ScalarMappable
+from matplotlib.colors import ListedColormap, Normalize
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
-from massfit.report.style import LAND, REFERENCE, house_style
+from massfit.report.labels import place_labels
+from massfit.report.style import COLUMN_WIDTH_MM, LAND, PAGE_WIDTH_MM, REFERENCE, house_style, placed_axes, sheet
+
+WEST_EDGE_DEG = 20.0
+"""The map is cut at 20 degrees east, through Africa and Europe, so that every ocean stays whole."""
+
+_NORTH, _SOUTH = 84.0, -80.0
+_FINEST = 720  # columns of the land picture; more cost time and cannot be seen
 
 
 def network_map(
@@ -20,6 +28,7 @@ def network_map(
     admittance: NDArray[np.complex128],
     *,
     doubtful: Sequence[bool] = (),
+    width_mm: float = PAGE_WIDTH_MM,
 ) -> Figure:
     """Draw the sites on a world map, coloured by the amplitude of their fingerprint.
 
@@ -37,39 +46,66 @@ def network_map(
         Mean site admittance.
     doubtful : sequence of bool
         Sites that carry a warning get a square instead of a circle.
+    width_mm : float
+        Width of the figure.
 
     Returns
     -------
     matplotlib.figure.Figure
     """
     doubt = np.asarray(doubtful if len(doubtful) else np.zeros(len(site_ids)), dtype=bool)
-    east = np.mod(np.asarray(longitude_deg, dtype=float), 360.0)
+    east = _on_the_map(np.asarray(longitude_deg, dtype=float))
     ratio = np.abs(admittance)
     spread = max(0.02, float(np.max(np.abs(ratio - 1.0)))) if len(ratio) else 0.1
+    shades = Normalize(1.0 - spread, 1.0 + spread)
+    across = width_mm - 15.0
+    up = across * (_NORTH - _SOUTH) / 360.0
     with house_style():
-        figure = Figure(figsize=(9.6, 5.0), layout="constrained")
-        axes = figure.subplots()
-        land = np.ma.masked_greater(np.asarray(ocean_fraction), 0.5)
-        rows, columns = np.argsort(cell_latitude_deg), np.argsort(np.mod(cell_longitude_deg, 360.0))
+        figure = sheet(width_mm, up + 30.0)
+        axes = placed_axes(figure, 12.0, 23.0, across, up)
+        rows, columns = np.argsort(cell_latitude_deg), np.argsort(_on_the_map(np.asarray(cell_longitude_deg)))
+        step = max(1, len(columns) // _FINEST)
         axes.imshow(
-            land[np.ix_(rows, columns)],
-            cmap=ListedColormap([LAND]),
-            extent=(0, 360, -90, 90),
-            origin="lower",
-            interpolation="none",
-        )
-        for marker, chosen in (("o", ~doubt), ("s", doubt)):
-            points = axes.scatter(
-                east[chosen], np.asarray(latitude_deg)[chosen], c=ratio[chosen], cmap="cividis",
-                vmin=1.0 - spread, vmax=1.0 + spread, marker=marker, s=46, edgecolor="black", linewidth=0.7, zorder=3,
-            )  # fmt: skip
-        for name, x, y in zip(site_ids, east, latitude_deg, strict=True):
-            axes.annotate(name, (x, y), xytext=(5, 4), textcoords="offset points", fontsize=7.5)
-        axes.set(xlim=(0, 360), ylim=(-90, 90), xticks=range(0, 361, 60), yticks=range(-90, 91, 30))
-        axes.set_xlabel("longitude / degrees east")
-        axes.set_ylabel("latitude / degrees north")
-        axes.set_aspect("equal")
-        axes.set_title("The network" + (" (squares: sites with a warning)" if doubt.any() else ""))
-        figure.colorbar(points, ax=axes, shrink=0.75, label="amplitude at the site / ocean mean")
+            np.ma.masked_greater(np.asarray(ocean_fraction), 0.5)[np.ix_(rows[::step], columns[::step])],
+            cmap=ListedColormap([LAND]), extent=(WEST_EDGE_DEG, WEST_EDGE_DEG + 360.0, -90, 90), origin="lower",
+            interpolation="none", aspect="auto",
+        )  # fmt: skip
         axes.grid(color=REFERENCE, linewidth=0.2, alpha=0.5)
+        for marker, chosen in (("o", ~doubt), ("s", doubt)):
+            axes.scatter(
+                east[chosen], np.asarray(latitude_deg)[chosen], c=ratio[chosen], cmap="cividis", norm=shades,
+                marker=marker, s=20, edgecolor="black", linewidth=0.6, zorder=5,
+            )  # fmt: skip
+        _degrees(figure, width_mm)
+        points = np.column_stack([east, np.asarray(latitude_deg, dtype=float)])
+        missing = place_labels(axes, site_ids, points, font_size=6.0, marker_radius=2.6)
+        axes.set_title(_title(bool(doubt.any()), missing, narrow=width_mm <= COLUMN_WIDTH_MM))
+        figure.colorbar(
+            ScalarMappable(shades, "cividis"),
+            cax=placed_axes(figure, 12.0 + 0.2 * across, 9.0, 0.6 * across, 2.2),
+            orientation="horizontal",
+            label="amplitude at the site / ocean mean",
+        )
     return figure
+
+
+def _on_the_map(longitude: NDArray[np.float64]) -> NDArray[np.float64]:
+    return np.asarray(np.mod(longitude - WEST_EDGE_DEG, 360.0) + WEST_EDGE_DEG)
+
+
+def _degrees(figure: Figure, width_mm: float) -> None:
+    (axes,) = figure.axes
+    every = 60 if width_mm > COLUMN_WIDTH_MM else 90
+    east = [value for value in range(0, 421, every) if WEST_EDGE_DEG <= value <= WEST_EDGE_DEG + 360.0]
+    axes.set(xlim=(WEST_EDGE_DEG, WEST_EDGE_DEG + 360.0), ylim=(_SOUTH, _NORTH), yticks=range(-60, 61, 30))
+    axes.set_xticks(east, [str(value % 360) for value in east])
+    axes.set_xlabel("longitude / degrees east")
+    axes.set_ylabel("latitude / degrees north")
+
+
+def _title(doubtful: bool, missing: int, *, narrow: bool) -> str:
+    notes = ["squares: with a warning"] if doubtful else []
+    notes += [f"{missing} without a name"] if missing else []
+    if not notes:
+        return "The network"
+    return "; ".join(notes).capitalize() if narrow else "The network; " + "; ".join(notes)

@@ -1,6 +1,58 @@
 """The template of the one-page report; it is filled by `page.report_page`."""
 
-TEMPLATE = """<!DOCTYPE html>
+_STYLE = """
+:root { color-scheme: light dark; --ink: #1c1c1c; --paper: #fff; --faint: #555; --line: #ccc; --card: #fff; }
+@media (prefers-color-scheme: dark) { :root { --ink: #e6e6e6; --paper: #17191c; --faint: #aaa; --line: #444; } }
+body { font: 16px/1.5 Georgia, 'Times New Roman', serif; color: var(--ink); background: var(--paper);
+ margin: 2rem auto; max-width: 66rem; padding: 0 1rem; overflow-wrap: break-word; }
+h1 { font-size: 1.5rem; margin: 0 0 .2rem; } h2 { font-size: 1.2rem; margin: 2.6rem 0 .5rem; }
+h3 { font-size: 1rem; margin: 1.6rem 0 .4rem; } p { max-width: 46rem; } li { max-width: 44rem; }
+p.answer { font-size: 1.2rem; } p.small, figcaption { font-size: .85rem; color: var(--faint); }
+figcaption { max-width: 46rem; } nav ul { list-style: none; padding: 0; font-size: .9rem; }
+nav li { display: inline-block; margin-right: 1rem; } a { color: inherit; }
+p.stop { border: 2px solid currentColor; padding: .6rem .8rem; font-weight: bold; }
+figure { margin: 1rem 0; } img { display: block; max-width: 100%; height: auto; background: var(--card);
+ padding: 8px; box-sizing: border-box; border: 1px solid var(--line); }
+.wide { overflow-x: auto; margin: .6rem 0; } .wide:focus-visible { outline: 2px solid currentColor; }
+table { border-collapse: collapse; font: .85rem/1.35 Arial, Helvetica, sans-serif; }
+th, td { padding: .18rem .6rem; border-bottom: 1px solid var(--line); text-align: right; white-space: nowrap; }
+thead th { border-bottom: 1px solid var(--ink); vertical-align: bottom; white-space: normal; min-width: 3.6rem; }
+th:first-child { text-align: left; padding-left: 0; } tbody th { font-weight: normal; }
+.wordy th:last-child, .wordy td:last-child { text-align: left; white-space: normal; overflow-wrap: anywhere; }
+dl { display: grid; grid-template-columns: max-content 1fr; gap: .1rem 1rem; font-size: .9rem; }
+dt { color: var(--faint); } dd { margin: 0; overflow-wrap: anywhere; }
+@media (max-width: 640px) { dl { grid-template-columns: 1fr; } dt { margin-top: .4rem; } }
+@page { size: A4; margin: 15mm; }
+@media print { :root { --ink: #000; --paper: #fff; --faint: #333; --line: #bbb; }
+ body { margin: 0; max-width: none; padding: 0; font-size: 10.5pt; } nav { display: none; }
+ .wide { overflow: visible; } table { font-size: 7.2pt; } th, td { padding: .1rem .25rem; }
+ thead th { min-width: 0; }
+ .many { font-size: 5.6pt; } .many th, .many td { padding: .1rem .12rem; white-space: normal; }
+ figure, tr { break-inside: avoid; } h2, h3 { break-after: avoid; } img { border: 0; padding: 0; } }
+"""
+
+TEMPLATE = (
+    """{% macro figure(name) %}
+<figure><picture>
+{% if name + '_column' in images %}
+<source media="screen and (max-width: 640px)" srcset="{{ images[name + '_column'] }}">
+{% endif %}
+<img alt="{{ alternatives_text[name.split('_')[0] if name.startswith('records') else name] }}"
+ src="{{ images[name] }}"></picture>
+<figcaption>{{ captions[name] }}</figcaption></figure>
+{% endmacro %}
+{% macro table(name) %}
+{% set it = tables[name] %}
+<div class="wide" tabindex="0" role="region" aria-label="{{ it.title }}">
+<table class="{{ 'wordy' if it.wordy }}{{ ' many' if it.head | length > 8 }}">
+<thead><tr>{% for cell in it.head %}<th scope="col">{{ cell }}</th>{% endfor %}</tr></thead>
+<tbody>
+{% for row in it.rows %}
+<tr><th scope="row">{{ row[0] }}</th>{% for cell in row[1:] %}<td>{{ cell }}</td>{% endfor %}</tr>
+{% endfor %}
+</tbody></table></div>
+{% endmacro %}
+<!DOCTYPE html>
 <html lang="en">
 <head>
 <meta charset="utf-8">
@@ -8,80 +60,90 @@ TEMPLATE = """<!DOCTYPE html>
  content="default-src 'none'; img-src data:; style-src 'unsafe-inline'">
 <meta name="viewport" content="width=device-width, initial-scale=1">
 <title>{{ summary.network }}: annual cycle of ocean mass</title>
-<style>
-body { font: 16px/1.5 Georgia, 'Times New Roman', serif; color: #1c1c1c; background: #fff; margin: 2rem auto;
- max-width: 60rem; padding: 0 1rem; }
-h1 { font-size: 1.5rem; margin: 0 0 .2rem; } h2 { font-size: 1.15rem; margin: 2.2rem 0 .5rem; }
-p.answer { font-size: 1.2rem; } p.small, figcaption, td.small { font-size: .85rem; color: #444; }
-p.stop { border: 2px solid #1c1c1c; padding: .6rem .8rem; font-weight: bold; }
-figure { margin: 1rem 0; } img { max-width: 100%; height: auto; }
-table { border-collapse: collapse; font: .85rem/1.35 Arial, Helvetica, sans-serif; }
-.wide { overflow-x: auto; } th, td { padding: .18rem .6rem; border-bottom: 1px solid #ddd; } td { white-space: nowrap; }
-td.words { white-space: normal; }
-th { text-align: right; border-bottom: 1px solid #1c1c1c; vertical-align: bottom; } td { text-align: right; }
-th:first-child, td:first-child, td.words { text-align: left; }
-code { font-size: .8rem; overflow-wrap: anywhere; }
-@media print { body { margin: 0; max-width: none; font-size: 11pt; } figure, tr { break-inside: avoid; } }
-</style>
+<style>"""
+    + _STYLE
+    + """</style>
 </head>
 <body>
+<header>
 <h1>{{ summary.network }}</h1>
-<p class="small">Annual cycle of the mass of the whole ocean, from sea-floor pressure. massfit {{ version }}, seed
-{{ seed }}. Results are for research.</p>
+<p class="small">Annual cycle of the mass of the whole ocean, from sea-floor pressure. massfit {{ version }}. Results
+are for research.</p>
 {% if not summary.convergence.converged %}
-<p class="stop">The sampler did not converge: this result is not trustworthy and must not be quoted.</p>
+<p class="stop" role="alert">The sampler did not converge: this result is not trustworthy and must not be quoted.</p>
 {% endif %}
+</header>
+<main>
 <p class="answer">{{ sentence }}</p>
-<figure><img alt="{{ alt.phasor_plane }}" src="{{ images.phasor_plane }}">
-<figcaption>{{ alt.phasor_plane }}</figcaption></figure>
-<div class="wide"><table>
-<tr><th></th><th>median</th><th>mean</th><th>sd</th><th>50 % region</th><th>95 % region</th></tr>
-{% for row in quantities %}<tr><td>{{ row[0] }}</td>{% for cell in row[1:] %}<td>{{ cell }}</td>{% endfor %}</tr>
-{% endfor %}</table></div>
+{{ figure('phasor_plane') }}
+{{ table('quantities') }}
+<nav aria-label="Contents"><ul>
+{% if warnings %}<li><a href="#beware">Beware</a></li>{% endif %}
+<li><a href="#assumed">What was assumed</a></li>
+<li><a href="#holds">Does it hold</a></li>
+<li><a href="#network">The network</a></li>
+{% if tables.corrections or record_pictures %}<li><a href="#corrections">The corrections</a></li>{% endif %}
+<li><a href="#fingerprint">The fingerprint</a></li>
+{% if tables.actions %}<li><a href="#records">The records</a></li>{% endif %}
+<li><a href="#provenance">Where it comes from</a></li>
+</ul></nav>
+{% if warnings %}
 
-{% if warnings %}<h2>Beware</h2><ul>{% for text in warnings %}<li>{{ text }}</li>{% endfor %}</ul>{% endif %}
+<h2 id="beware">Beware</h2>
+<ul>{% for text in warnings %}<li>{{ text }}</li>{% endfor %}</ul>
+{% endif %}
 
-<h2>What was assumed</h2>
+<h2 id="assumed">What was assumed</h2>
 <ul>{% for text in summary.assumptions %}<li>{{ text }}</li>{% endfor %}</ul>
 
-<h2>Where the uncertainty comes from</h2>
-<div class="wide"><table><tr><th>source</th><th>share of the variance</th></tr>
-{% for name, share in shares %}<tr><td>{{ name }}</td><td>{{ share }}</td></tr>{% endfor %}</table></div>
-
-<h2>What if</h2>
-<div class="wide"><table>
-<tr><th>instead</th><th>shift / sd</th><th>width ratio</th><th>amplitude / hPa</th><th>peak</th></tr>
-{% for row in alternatives %}<tr><td>{{ row[0] }}</td>{% for cell in row[1:] %}<td>{{ cell }}</td>{% endfor %}</tr>
-{% endfor %}</table></div>
-<p class="small">{{ alternatives_note }}</p>
-
-<h2>Does it hold</h2>
+<h2 id="holds">Does it hold</h2>
 <p>{{ trust }}</p>
-<figure><img alt="{{ alt.corner }}" src="{{ images.corner }}"><figcaption>{{ alt.corner }}</figcaption></figure>
+<h3>Where the uncertainty comes from</h3>
+{{ table('shares') }}
+{% if tables.alternatives %}
+<h3>What if</h3>
+{{ table('alternatives') }}
+<p class="small">{{ alternatives_note }}</p>
+{% endif %}
+<h3>The posterior</h3>
+{{ figure('corner') }}
 
-<h2>The network</h2>
-<figure><img alt="{{ alt.network_map }}" src="{{ images.network_map }}">
-<figcaption>{{ alt.network_map }}</figcaption></figure>
-<div class="wide"><table>
-<tr><th>site</th><th>latitude</th><th>longitude</th><th>days</th><th>amplitude / hPa</th><th>peak</th>
-<th>record sd / hPa</th><th>fingerprint ratio</th><th>delay / d</th><th>residual / sigma</th>
-<th>outlier probability</th></tr>
-{% for row in sites %}<tr><td>{{ row[0] }}</td>{% for cell in row[1:] %}<td>{{ cell }}</td>{% endfor %}</tr>
-{% endfor %}</table></div>
+<h2 id="network">The network</h2>
+{{ figure('network_map') }}
+{{ table('sites') }}
+<p class="small">Days: those that the fit used; coverage: their share of the days from the first to the last. Amplitude
+and peak: the site's own phasor, mean over models. Record sd: of what remains of the daily record. Residual: against the
+prediction from the other sites. * has a warning.</p>
+{% if tables.left_out %}{{ table('left_out') }}{% endif %}
+{% if tables.corrections or record_pictures %}
 
-{% if actions %}<h2>The records and what was taken off them</h2>
-<figure><img alt="{{ alt.records }}" src="{{ images.records }}"><figcaption>{{ alt.records }}</figcaption></figure>
-<div class="wide"><table>
-<tr><th>deployment</th><th>daily means</th><th>what was done</th></tr>
-{% for row in actions %}<tr><td>{{ row[0] }}</td><td>{{ row[1] }}</td><td class="words small">{{ row[2] }}</td></tr>
-{% endfor %}</table></div>{% endif %}
+<h2 id="corrections">The corrections and what each did</h2>
+{% endif %}
+{% if tables.corrections %}
+<p>Annual cycle of every series that was subtracted: amplitude and peak. A series that is zero throughout is not
+listed.</p>
+{{ table('corrections') }}
+<p class="small">By least squares beside a level, a slope and a semi-annual cycle, on the days that the fit used.</p>
+{% endif %}
+{% for name in record_pictures %}{{ figure(name) }}{% endfor %}
 
-<h2>How to repeat it</h2>
-<p><code>{{ command }}</code></p>
-<p class="small">{{ versions }}</p>
-<div class="wide"><table><tr><th>input</th><th>SHA-256</th></tr>
-{% for name, digest in inputs %}<tr><td>{{ name }}</td><td class="words"><code>{{ digest }}</code></td></tr>
-{% endfor %}</table></div>
+<h2 id="fingerprint">The fingerprint</h2>
+{{ figure('fingerprint') }}
+{{ table('fingerprint') }}
+<p class="small">Ratio: amplitude at the site over that of the ocean mean, of the mean over the load members; delay:
+days by which the site peaks later. Spread: standard deviation of the complex ratio over the members.</p>
+{% if tables.actions %}
+
+<h2 id="records">Everything done to each record</h2>
+{{ table('actions') }}
+{% endif %}
+
+<h2 id="provenance">Where it comes from, and how to repeat it</h2>
+<dl>{% for name, value in made_with %}<dt>{{ name }}</dt><dd>{{ value }}</dd>{% endfor %}</dl>
+<p class="small">Every setting is in run.json beside this page.</p>
+{% if tables.inputs %}{{ table('inputs') }}{% endif %}
+</main>
 </body>
 </html>
 """
+)

@@ -6,12 +6,25 @@ from datetime import date
 
 import numpy as np
 from matplotlib.axes import Axes
+from matplotlib.collections import PatchCollection
 from matplotlib.figure import Figure
 from matplotlib.patches import Ellipse
 from numpy.typing import NDArray
 
 from massfit.phasor import as_components, phasor_from_peak
-from massfit.report.style import ANSWER, REFERENCE, SITE, house_style, zero_lines
+from massfit.report.labels import LONGEST_NAME, place_labels
+from massfit.report.names import fitted
+from massfit.report.style import (
+    ANSWER,
+    COLUMN_WIDTH_MM,
+    PAGE_WIDTH_MM,
+    REFERENCE,
+    SITE,
+    house_style,
+    placed_axes,
+    sheet,
+    zero_lines,
+)
 
 # radius of the 50 % and 95 % ellipses of a two-dimensional normal, sqrt(-2 ln(1 - p))
 RADIUS_50, RADIUS_95 = 1.17741, 2.44775
@@ -25,6 +38,7 @@ def phasor_plane(
     *,
     reference_year: int,
     contours: Sequence[tuple[float, Sequence[NDArray[np.float64]]]] = (),
+    width_mm: float = PAGE_WIDTH_MM,
 ) -> Figure:
     """Draw the posterior's regions and each site's estimate in the plane of (in phase, quadrature).
 
@@ -41,33 +55,44 @@ def phasor_plane(
         Year whose months are marked.
     contours : sequence of (level, lines)
         Highest-density regions: probability and boundary lines, each (k, 2), hPa.
+    width_mm : float
+        Width of the figure.
 
     Returns
     -------
     matplotlib.figure.Figure
-        The whole plane on the left, the region of the answer enlarged on the right.
+        The whole plane, and the region of the answer enlarged: side by side, or one above the other in a column.
     """
     with house_style():
-        figure = Figure(figsize=(9.6, 5.2), layout="constrained")
-        whole, near = figure.subplots(1, 2)
+        figure, whole, near = _panels(width_mm)
         reach = 1.25 * max(_reach(draws_hpa, 1.0), _reach(site_phasors_hpa, 0.85))
         for axes in (whole, near):
             _sites(axes, site_phasors_hpa, site_covariances_hpa2)
             _answer(axes, draws_hpa, contours)
             zero_lines(axes)
-            axes.set_aspect("equal")
-            axes.set_xlabel("in phase / hPa")
             axes.set_ylabel("quadrature / hPa")
+            axes.set_xlabel("in phase / hPa")
         whole.set(xlim=(-reach, reach), ylim=(-reach, reach))
+        whole.set_title("Network and sites")
         _month_marks(whole, reach, reference_year)
         _far_sites(whole, site_ids, site_phasors_hpa, reach)
         _enlarge(near, draws_hpa)
-        _site_labels(near, site_ids, site_phasors_hpa)
-        whole.set_title("Network and sites")
-        near.set_title("The answer enlarged: 50 and 95 % regions")
+        missing = _site_labels(near, site_ids, site_phasors_hpa, draws_hpa.mean(axis=0))
+        near.set_title("The answer enlarged" + (f" ({missing} without a name)" if missing else ""))
         handles, labels = whole.get_legend_handles_labels()
-        figure.legend(handles, labels, loc="outside lower center", ncols=2)
+        columns = 2 if width_mm > COLUMN_WIDTH_MM else 1
+        figure.legend(handles, labels, loc="lower center", ncols=columns, borderaxespad=0.3)
     return figure
+
+
+def _panels(width_mm: float) -> tuple[Figure, Axes, Axes]:
+    if width_mm > COLUMN_WIDTH_MM:
+        side = 0.5 * (width_mm - 33.0)
+        figure = sheet(width_mm, side + 22.0)
+        return figure, placed_axes(figure, 14, 16, side, side), placed_axes(figure, 30 + side, 16, side, side)
+    side = width_mm - 18.0
+    figure = sheet(width_mm, 2.0 * side + 44.0)
+    return figure, placed_axes(figure, 15, 37 + side, side, side), placed_axes(figure, 15, 20, side, side)
 
 
 def _reach(points: NDArray[np.float64], share: float) -> float:
@@ -77,14 +102,15 @@ def _reach(points: NDArray[np.float64], share: float) -> float:
 
 def _far_sites(axes: Axes, ids: Sequence[str], phasors: NDArray[np.float64], reach: float) -> None:
     """Mark sites beyond the frame on its edge, in their direction."""
+    marks, names = [], []
     for name, point in zip(ids, phasors, strict=True):
         largest = float(np.max(np.abs(point)))
         if largest > reach:
-            x, y = 0.985 * reach * point / largest
-            axes.plot(x, y, marker="D", markersize=5, color=SITE, markeredgecolor="black", clip_on=False, zorder=6)
-            side = "right" if x > 0 else "left"
-            text = f"{name}: {np.hypot(*point):.1f} hPa"
-            axes.annotate(text, (x, y), xytext=(0, 7), textcoords="offset points", fontsize=7.5, ha=side)
+            marks.append(0.985 * reach * point / largest)
+            names.append(f"{fitted(name, LONGEST_NAME - 10)}: {np.hypot(*point):.1f} hPa")
+    for x, y in marks:
+        axes.plot(x, y, marker="D", markersize=4, color=SITE, markeredgecolor="black", clip_on=False, zorder=6)
+    place_labels(axes, names, np.array(marks).reshape(-1, 2), font_size=6.5, marker_radius=3.0)
 
 
 def _answer(
@@ -92,50 +118,34 @@ def _answer(
 ) -> None:
     for level, lines in contours:
         for line in lines:
-            axes.fill(line[:, 0], line[:, 1], facecolor=ANSWER, alpha=0.28, edgecolor="none", zorder=3)
-            width = 1.5 if level < 0.9 else 1.0
+            axes.fill(line[:, 0], line[:, 1], facecolor=ANSWER, alpha=0.25, edgecolor="none", zorder=3)
+            width = 1.3 if level < 0.9 else 0.9
             axes.plot(line[:, 0], line[:, 1], color=ANSWER, linewidth=width, zorder=4)
-    centre = draws.mean(axis=0)
-    axes.plot(
-        *centre, marker="+", markersize=9, color=ANSWER, zorder=5, linestyle="none", label="network: mean and regions"
-    )
+    label = "network: mean, 50 and 95 % regions"
+    axes.plot(*draws.mean(axis=0), marker="+", markersize=8, color=ANSWER, zorder=5, linestyle="none", label=label)
 
 
 def _sites(axes: Axes, phasors: NDArray[np.float64], covariances: NDArray[np.float64]) -> None:
+    ellipses = []
     for phasor, covariance in zip(phasors, covariances, strict=True):
         values, vectors = np.linalg.eigh(covariance)
         width, height = 2.0 * RADIUS_50 * np.sqrt(np.maximum(values[::-1], 0.0))
         angle = np.degrees(np.arctan2(vectors[1, 1], vectors[0, 1]))
-        axes.add_patch(
-            Ellipse((phasor[0], phasor[1]), width, height, angle=angle, facecolor="none", edgecolor=SITE, linewidth=0.8)
-        )
+        ellipses.append(Ellipse((phasor[0], phasor[1]), width, height, angle=angle))
+    # many sites are drawn paler, so that the answer stays the strongest mark
+    alpha = float(np.clip(12.0 / max(len(ellipses), 1), 0.25, 0.8))
+    axes.add_collection(PatchCollection(ellipses, facecolor="none", edgecolor=SITE, linewidth=0.6, alpha=alpha))
     axes.plot(
-        phasors[:, 0],
-        phasors[:, 1],
-        linestyle="none",
-        marker="o",
-        markersize=3.5,
-        color=SITE,
-        label="site / fingerprint, 50 % record error",
-    )
+        phasors[:, 0], phasors[:, 1], linestyle="none", marker="o", markersize=3.0, color=SITE,
+        markeredgecolor="black", markeredgewidth=0.3, zorder=5, label="site / fingerprint, 50 % record error",
+    )  # fmt: skip
 
 
-def _site_labels(axes: Axes, ids: Sequence[str], phasors: NDArray[np.float64]) -> None:
-    (left, right), (low, high) = sorted(axes.get_xlim()), sorted(axes.get_ylim())
-    inside = [
-        (name, point)
-        for name, point in zip(ids, phasors, strict=True)
-        if left < point[0] < right and low < point[1] < high
-    ]
-    for name, point in inside:
-        axes.annotate(
-            name,
-            (float(point[0]), float(point[1])),
-            xytext=(4, 3),
-            textcoords="offset points",
-            fontsize=6.5,
-            color=REFERENCE,
-        )
+def _site_labels(axes: Axes, ids: Sequence[str], phasors: NDArray[np.float64], centre: NDArray[np.float64]) -> int:
+    low, high = np.transpose([axes.get_xlim(), axes.get_ylim()])
+    inside = ((low < phasors) & (phasors < high)).all(axis=1)
+    names = [name for name, shown in zip(ids, inside, strict=True) if shown]
+    return place_labels(axes, names, phasors[inside], keep_clear=centre[None])
 
 
 def _month_marks(axes: Axes, reach: float, year: int) -> None:
@@ -144,11 +154,12 @@ def _month_marks(axes: Axes, reach: float, year: int) -> None:
         day = (date(year, month, 1) - date(year, 1, 1)).days
         direction = as_components(phasor_from_peak(1.0, day))
         axes.plot(*np.outer(direction, [0.97 * ring, ring]), color=REFERENCE, linewidth=0.8)
-        x, y = direction * (ring * 0.91)
-        axes.annotate(month_abbr[month], (float(x), float(y)), ha="center", va="center", fontsize=7.5, color=REFERENCE)
+        x, y = direction * (ring * 0.9)
+        axes.annotate(month_abbr[month], (float(x), float(y)), ha="center", va="center", fontsize=6.5, color=REFERENCE,
+                      bbox={"facecolor": "white", "pad": 0.4, "lw": 0.0}, zorder=1)  # fmt: skip
     turn = np.linspace(0.0, 2.0 * np.pi, 200)
     axes.plot(ring * np.cos(turn), ring * np.sin(turn), color=REFERENCE, linewidth=0.4)
-    axes.annotate("peak on the 1st of", (0.02, 0.02), xycoords="axes fraction", fontsize=7.5, color=REFERENCE)
+    axes.annotate("peak on the 1st of", (0.01, 0.01), xycoords="axes fraction", fontsize=6.5, color=REFERENCE)
 
 
 def _enlarge(axes: Axes, draws: NDArray[np.float64]) -> None:

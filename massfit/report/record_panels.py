@@ -1,6 +1,6 @@
 """One row a site: the daily record and its drift, what was taken off, and what remains."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -10,7 +10,21 @@ from matplotlib.figure import Figure
 from matplotlib.ticker import MaxNLocator
 from numpy.typing import NDArray
 
-from massfit.report.style import ANSWER, LAND, SITE, house_style
+from massfit.report.names import fitted
+from massfit.report.style import (
+    ANSWER,
+    COLUMN_WIDTH_MM,
+    LAND,
+    PAGE_WIDTH_MM,
+    REFERENCE,
+    SITE,
+    house_style,
+    placed_axes,
+    sheet,
+)
+
+ROWS_OF_A_PAGE = 18
+"""Sites in one picture."""
 
 # drawn in this order: the fast tides lie behind the rest
 CORRECTIONS = {
@@ -19,6 +33,12 @@ CORRECTIONS = {
     "ocean-mean air pressure": "#E69F00",
     "pole tide": "#000000",
 }
+
+_TITLES = ("daily record; drift dashed / hPa", "subtracted / hPa", "what remains; fitted cycle / hPa")
+_ROW_MM = 12.5
+_BAND = 0.86  # share of a row's height that its lines may fill
+
+Height = Callable[[NDArray[np.float64]], NDArray[np.float64]]
 
 
 @dataclass(frozen=True)
@@ -39,7 +59,7 @@ class RecordRow:
     annual : (m,) array
         Fitted annual cycle on `reduced_time`, hPa.
     note : str
-        Printed in the title when the site carries a warning.
+        Printed beside the name when the site carries a warning.
     """
 
     site: str
@@ -52,100 +72,109 @@ class RecordRow:
     note: str = ""
 
 
-def record_panels(rows: Sequence[RecordRow]) -> Figure:
-    """Draw every site's record, corrections and reduced record.
+def record_panels(rows: Sequence[RecordRow], *, width_mm: float = PAGE_WIDTH_MM) -> Figure:
+    """Draw the record, corrections and reduced record of up to a page of sites.
 
     Parameters
     ----------
     rows : sequence of RecordRow
+    width_mm : float
+        Width of the figure; in a single column only what remains is drawn.
 
     Returns
     -------
     matplotlib.figure.Figure
-        Three columns: daily record with drift; corrections; reduced record with the fitted cycle.
+        Three columns: daily record with drift; corrections; reduced record with the fitted cycle. Each row of a
+        column has its own scale.
     """
+    drawn = (_draw_record, _draw_corrections, _draw_reduced)
+    first = 0 if width_mm > COLUMN_WIDTH_MM else 2
+    up, gap = _ROW_MM * len(rows), 11.0
+    side = (width_mm - 2.0) / (3 - first) - gap
     with house_style():
-        height = 1.25 * len(rows) + 1.0
-        figure = Figure(figsize=(11.0, height))
-        grid = figure.subplots(len(rows), 3, squeeze=False)
-        figure.subplots_adjust(
-            left=0.06, right=0.995, top=1.0 - 0.62 / height, bottom=0.45 / height, hspace=0.42, wspace=0.13
-        )
-        for row, (record, correction, reduced) in zip(rows, grid, strict=True):
-            _draw_record(record, row)
-            _draw_corrections(correction, row)
-            _draw_reduced(reduced, row)
-        _headings(grid)
-        _share_dates(grid)
+        figure = sheet(width_mm, up + 17.0)
+        panels = [placed_axes(figure, gap + k * (side + gap), 6.0, side, up) for k in range(3 - first)]
+        for axes, draw, title in zip(panels, drawn[first:], _TITLES[first:], strict=True):
+            for place, row in enumerate(rows):
+                draw(axes, row, place)
+            _frame(axes, len(rows), title)
+        for place, row in enumerate(rows):
+            note = f"  ({row.note})" if row.note else ""
+            panels[0].text(
+                0.015, place + 0.02, fitted(row.site, 26) + note, transform=panels[0].get_yaxis_transform(),
+                fontsize=6.5, va="top", zorder=5, bbox={"facecolor": "white", "alpha": 0.8, "pad": 0.6, "lw": 0.0},
+            )  # fmt: skip
+        _share_dates(panels)
+        entries = {
+            label: line for axes in panels for line, label in zip(*axes.get_legend_handles_labels(), strict=True)
+        }
+        ordered = [label for label in CORRECTIONS if label in entries]
+        figure.legend([entries[label] for label in ordered], ordered, loc="upper center", ncols=4, borderaxespad=0.2)
     return figure
 
 
-def _draw_record(axes: Axes, row: RecordRow) -> None:
+def _draw_record(axes: Axes, row: RecordRow, place: int) -> None:
+    height = _scaled(axes, [each for _, *pair in row.deployments for each in pair], place)
     for shade, (time, pressure, drift) in enumerate(row.deployments):
-        colour = (ANSWER, SITE)[shade % 2]
-        axes.plot(time, pressure, color=colour, linewidth=0.6)
-        axes.plot(time, drift, color="black", linewidth=0.9, linestyle="--")
-    axes.set_title(f"{row.site}{'  (' + row.note + ')' if row.note else ''}", fontsize=8.5, pad=2.0)
-    axes.set_ylabel("hPa", fontsize=8, labelpad=1.0)
+        axes.plot(time, height(pressure), color=(ANSWER, SITE)[shade % 2], linewidth=0.5)
+        axes.plot(time, height(drift), color="black", linewidth=0.7, linestyle="--")
 
 
-def _draw_corrections(axes: Axes, row: RecordRow) -> None:
+def _draw_corrections(axes: Axes, row: RecordRow, place: int) -> None:
+    height = _scaled(axes, list(row.corrections.values()), place)
     for label, colour in CORRECTIONS.items():
         if label in row.corrections:
-            axes.plot(row.correction_time, row.corrections[label], color=colour, linewidth=0.7, label=label)
+            axes.plot(row.correction_time, height(row.corrections[label]), color=colour, linewidth=0.5, label=label)
 
 
-def _draw_reduced(axes: Axes, row: RecordRow) -> None:
-    axes.plot(row.reduced_time, row.reduced, ".", markersize=2.0, color="#8C8C8C", markeredgecolor="none")
-    axes.plot(row.reduced_time, row.annual, color=ANSWER, linewidth=1.2)
-    low, high = np.quantile(row.reduced, [0.002, 0.998]) if len(row.reduced) else (-1.0, 1.0)
-    margin = 0.15 * max(float(high - low), 0.1)
-    axes.set_ylim(float(low) - margin, float(high) + margin)
+def _draw_reduced(axes: Axes, row: RecordRow, place: int) -> None:
+    # a few wild days do not set the scale; they are left out of sight
+    shown = row.reduced[_within(row.reduced)]
+    height = _scaled(axes, [shown, row.annual], place)
+    axes.plot(row.reduced_time[_within(row.reduced)], height(shown), ".", markersize=1.4, color="#8C8C8C", mew=0.0)
+    axes.plot(row.reduced_time, height(row.annual), color=ANSWER, linewidth=1.0)
 
 
-def _headings(grid: NDArray[np.object_]) -> None:
-    titles = (
-        "daily record, deployments alternate; drift dashed",
-        "subtracted series",
-        "reduced record and fitted annual cycle",
-    )
-    for axes, title in zip(grid[0], titles, strict=True):
-        axes.annotate(
-            title,
-            (0.5, 1.0),
-            xytext=(0, 17),
-            xycoords="axes fraction",
-            textcoords="offset points",
-            ha="center",
-            fontsize=9.5,
-        )
-    entries = {
-        label: line for axes in grid[:, 1] for line, label in zip(*axes.get_legend_handles_labels(), strict=True)
-    }
-    grid[0, 1].legend(
-        entries.values(),
-        entries.keys(),
-        loc="lower center",
-        bbox_to_anchor=(0.5, 0.97),
-        ncols=4,
-        fontsize=6.5,
-        handlelength=1.2,
-        columnspacing=0.9,
-    )
-    for axes in grid.ravel():
-        axes.tick_params(labelsize=7.0)
-        axes.yaxis.set_major_locator(MaxNLocator(4))
-        axes.grid(axis="y", color=LAND, linewidth=0.5)
+def _within(values: NDArray[np.float64]) -> NDArray[np.bool_]:
+    if not len(values):
+        return np.zeros(0, dtype=bool)
+    low, high = np.quantile(values, [0.002, 0.998])
+    return np.asarray((low <= values) & (values <= high))
 
 
-def _share_dates(grid: NDArray[np.object_]) -> None:
-    """Give all panels one span of time and only the lowest a date axis; ticks are what drawing costs."""
-    spans = [axes.get_xlim() for axes in grid.ravel()]
-    for axes in grid.ravel():
-        axes.set_xlim(min(low for low, _ in spans), max(high for _, high in spans))
-    for axes in grid[:-1].ravel():
-        axes.xaxis.set_visible(False)
-    for axes in grid[-1]:
-        locator = AutoDateLocator(minticks=3, maxticks=8)  # type: ignore[no-untyped-call]
+def _scaled(axes: Axes, series: Sequence[NDArray[np.float64]], place: int) -> Height:
+    """Fit a row's values into its band of the panel, write its scale, and give the map from hPa to height."""
+    joined = np.concatenate([*series, np.zeros(1)])
+    finite = joined[np.isfinite(joined)]
+    low, high = float(finite.min()), float(finite.max())
+    span = max(high - low, 0.02)
+    middle = 0.5 * (low + high)
+
+    def height(values: NDArray[np.float64]) -> NDArray[np.float64]:
+        return np.asarray(place + 0.5 - _BAND * (values - middle) / span)
+
+    ticks = [value for value in MaxNLocator(3).tick_values(low, high) if low <= value <= high]
+    edge = axes.get_yaxis_transform()
+    axes.hlines(height(np.array(ticks)), 0.0, 1.0, transform=edge, color=LAND, linewidth=0.4, zorder=0)
+    for value, y in zip(ticks, height(np.array(ticks)), strict=True):
+        axes.text(-0.012, float(y), f"{value:g}", transform=edge, ha="right", va="center", fontsize=5.5)
+    return height
+
+
+def _frame(axes: Axes, count: int, title: str) -> None:
+    axes.set_ylim(count, 0)
+    axes.set_yticks([])
+    axes.set_title(title, fontsize=7.5)
+    edge = axes.get_yaxis_transform()
+    axes.hlines(range(1, count), 0.0, 1.0, transform=edge, color=REFERENCE, linewidth=0.3, zorder=0)
+
+
+def _share_dates(panels: Sequence[Axes]) -> None:
+    """Give all panels one span of time."""
+    spans = [axes.get_xlim() for axes in panels if axes.lines]
+    for axes in panels:
+        if spans:
+            axes.set_xlim(min(low for low, _ in spans), max(high for _, high in spans))
+        locator = AutoDateLocator(minticks=3, maxticks=6)  # type: ignore[no-untyped-call]
         axes.xaxis.set_major_locator(locator)
-        axes.xaxis.set_major_formatter(ConciseDateFormatter(locator))  # type: ignore[no-untyped-call]
+        axes.xaxis.set_major_formatter(ConciseDateFormatter(locator, show_offset=False))  # type: ignore[no-untyped-call]

@@ -17,7 +17,8 @@ from massfit.pipeline.save import save_results
 from massfit.results.estimate import Estimate
 
 DATASETS = ("posterior.nc", "site_phasors.nc", "fingerprints.nc", "reduced_records.nc")
-PICTURES = ("phasor_plane.png", "network_map.png", "corner.png", "records.png")
+BOTH_WIDTHS = ("phasor_plane", "network_map", "fingerprint", "corner")
+PICTURES = ("records.png", *(f"{name}{width}.png" for name in BOTH_WIDTHS for width in ("", "_column")))
 
 
 @pytest.fixture(scope="module")

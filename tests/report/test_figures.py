@@ -1,17 +1,23 @@
 """The drawing functions on small arrays: each returns a Figure that shows its data and leaves matplotlib alone."""
 
+from collections.abc import Sequence
+
 import matplotlib as mpl
 import numpy as np
 import pytest
 from matplotlib import pyplot as plt
+from matplotlib.axes import Axes
 from matplotlib.figure import Figure
-from matplotlib.patches import Ellipse
 
 from massfit.report.corner_figure import corner_figure
 from massfit.report.draw import png
+from massfit.report.fingerprint_members import fingerprint_members
+from massfit.report.labels import place_labels
+from massfit.report.names import fitted
 from massfit.report.network_map import network_map
 from massfit.report.phasor_plane import phasor_plane
 from massfit.report.record_panels import RecordRow, record_panels
+from massfit.report.style import placed_axes, sheet
 
 RNG = np.random.default_rng(1)
 DRAWS = np.array([0.1, -0.85]) + 0.05 * RNG.standard_normal((500, 2))
@@ -37,11 +43,12 @@ def words(figure: Figure) -> str:
 def test_phasor_plane_draws_sites_answer_and_those_beyond_the_frame() -> None:
     figure = phasor_plane(DRAWS, SITES, PHASORS, COVARIANCES, reference_year=2016)
     whole, near = figure.axes
-    ellipse = next(patch for patch in whole.patches if isinstance(patch, Ellipse))
+    (ellipses,) = whole.collections
+    box = ellipses.get_paths()[0].get_extents()
     # axes of the 50 % ellipse: 2 sd sqrt(2 ln 2)
-    assert ellipse.width == pytest.approx(2 * 0.2 * np.sqrt(2 * np.log(2)), rel=1e-5)
-    assert ellipse.height == pytest.approx(2 * 0.1 * np.sqrt(2 * np.log(2)), rel=1e-5)
-    assert tuple(ellipse.center) == pytest.approx((0.15, -0.8))
+    assert box.width == pytest.approx(2 * 0.2 * np.sqrt(2 * np.log(2)), rel=1e-5)
+    assert box.height == pytest.approx(2 * 0.1 * np.sqrt(2 * np.log(2)), rel=1e-5)
+    assert (box.min + box.max) / 2 == pytest.approx((0.15, -0.8))
     assert "Off the map: 7.2 hPa" in words(figure)
     assert "Oct" in words(figure)
     assert near.get_xlim()[0] < 0.1 < near.get_xlim()[1]
@@ -66,7 +73,7 @@ def test_months_stand_where_a_cycle_that_peaks_then_points() -> None:
 
 def test_network_map_puts_sites_in_place_in_either_convention() -> None:
     fraction = np.zeros((18, 36))
-    fraction[:, :20] = 1.0
+    fraction[:, :22] = 1.0
     figure = network_map(
         fraction,
         np.arange(85.0, -90.0, -10.0),
@@ -84,12 +91,13 @@ def test_network_map_puts_sites_in_place_in_either_convention() -> None:
     assert sorted(shades) == pytest.approx([0.9, np.hypot(1.0, 0.1), 1.1])
     assert "squares" in axes.get_title(loc="left")
     assert all(site in words(figure) for site in SITES[:3])
-    # land and ocean change sides at 25 degrees east; longitude runs from 0, latitude upwards
+    # the map begins at 20 degrees east; the land reaches from 40 to 180; latitude runs upwards
     (picture,) = axes.images
+    assert picture.get_extent() == [20.0, 380.0, -90.0, 90.0]
     land = ~np.ma.getmaskarray(picture.get_array())
-    assert land[:, 3:18].all()
     assert not land[:, :2].any()
-    assert not land[:, 19:].any()
+    assert land[:, 2:16].all()
+    assert not land[:, 16:].any()
 
 
 def test_corner_figure_has_a_panel_for_each_pair() -> None:
@@ -113,19 +121,46 @@ def record_row(site: str, note: str = "") -> RecordRow:
 
 def test_record_panels_have_a_row_a_site() -> None:
     figure = record_panels([record_row("North"), record_row("South", "not quiet")])
-    assert len(figure.axes) == 6
-    record, corrections, reduced = figure.axes[3:]
-    assert record.get_title(loc="left") == "South  (not quiet)"
-    assert len(record.lines) == 4
-    assert [line.get_label() for line in corrections.lines] == ["pole tide"]
-    assert len(reduced.lines) == 2
+    record, corrections, reduced = figure.axes
+    assert [text.get_text() for text in record.texts if "South" in text.get_text()] == ["South  (not quiet)"]
+    assert len(record.lines) == 8
+    assert {line.get_label() for line in corrections.lines} == {"pole tide"}
+    assert len(reduced.lines) == 4
+    # rows run downwards; each line keeps to its own row
+    assert record.get_ylim() == (2, 0)
+    for axes in figure.axes:
+        for line in axes.lines:
+            heights = np.asarray(line.get_ydata(), dtype=float)
+            assert np.floor(heights.min()) == np.floor(heights.max()) in {0.0, 1.0}
     assert len(png(figure)) > 10_000
+
+
+def test_the_scale_beside_a_row_is_that_of_its_lines() -> None:
+    figure = record_panels([record_row("North"), record_row("South")])
+    reduced = figure.axes[2]
+    annual = 0.9 * np.sin(np.arange(400) / 58.0)
+    heights = np.asarray(reduced.lines[3].get_ydata(), dtype=float)
+    ticks = [(float(text.get_text()), text.get_position()[1]) for text in reduced.texts]
+    for value, height in ticks:
+        if height > 1.0:
+            assert np.interp(value, annual[:80], heights[:80]) == pytest.approx(height, abs=1e-3) or value < 0
+    assert sum(height > 1.0 for _, height in ticks) >= 2
 
 
 def test_record_panels_bear_a_single_site_without_corrections() -> None:
     row = record_row("Alone")
     bare = RecordRow("Alone", row.deployments, row.correction_time, {}, row.reduced_time, row.reduced, row.annual)
     assert len(record_panels([bare]).axes) == 3
+    assert len(png(record_panels([bare]))) > 5_000
+
+
+def test_record_panels_bear_a_site_of_which_no_day_was_used() -> None:
+    none, nothing = np.array([], "datetime64[ns]"), np.array([])
+    assert len(png(record_panels([RecordRow("Bare", [], none, {}, none, nothing, nothing)]))) > 1_000
+
+
+def test_in_a_column_only_what_remains_is_drawn() -> None:
+    assert len(record_panels([record_row("North")], width_mm=85.0).axes) == 1
 
 
 def test_a_name_with_dollar_signs_is_no_formula() -> None:
@@ -134,3 +169,113 @@ def test_a_name_with_dollar_signs_is_no_formula() -> None:
     plane = phasor_plane(DRAWS, [name], PHASORS[:1], COVARIANCES[:1], reference_year=2016)
     assert name in words(plane)
     assert len(png(plane)) > 10_000
+
+
+# names beside points
+
+
+def boxes(axes: Axes, names: Sequence[str]) -> np.ndarray:
+    found = [text.get_window_extent().extents for text in axes.texts if text.get_text() in names]
+    return np.array(found).reshape(-1, 4)
+
+
+def overlaps(found: np.ndarray) -> int:
+    first, second = found[:, None], found[None]
+    both = (first[..., :2] < second[..., 2:]).all(-1) & (second[..., :2] < first[..., 2:]).all(-1)
+    return int((both.sum() - len(found)) // 2)
+
+
+def crowd(count: int) -> tuple[Axes, list[str], np.ndarray]:
+    axes = placed_axes(sheet(100.0, 100.0), 10.0, 10.0, 80.0, 80.0)
+    return axes, [f"Station {k}" for k in range(count)], np.random.default_rng(5).uniform(0.2, 0.8, (count, 2))
+
+
+def test_names_in_a_crowd_do_not_overlap_each_other_or_the_points() -> None:
+    axes, names, points = crowd(40)
+    missing = place_labels(axes, names, points)
+    found = boxes(axes, names)
+    assert len(found) == 40 - missing
+    assert missing <= 4
+    assert overlaps(found) == 0
+    spots = axes.transData.transform(points)
+    inside = (found[:, None, :2] < spots[None]).all(-1) & (spots[None] < found[:, None, 2:]).all(-1)
+    assert not inside.any()
+    # the control: names simply put beside their points do overlap
+    plain, names, points = crowd(40)
+    for name, point in zip(names, points, strict=True):
+        plain.annotate(name, point, xytext=(4, 3), textcoords="offset points", fontsize=6.0)
+    assert overlaps(boxes(plain, names)) > 10
+
+
+def test_names_without_room_are_counted_not_piled_up() -> None:
+    axes, names, points = crowd(60)
+    missing = place_labels(axes, names, 0.5 + 0.02 * (points - 0.5))
+    assert missing > 20
+    assert overlaps(boxes(axes, names)) == 0
+
+
+def test_a_lone_name_stands_by_its_point_and_a_long_one_is_shortened() -> None:
+    axes, _, _ = crowd(0)
+    name = "The-station-with-the-longest-name-of-all"
+    assert place_labels(axes, [name], np.array([[0.5, 0.5]])) == 0
+    (text,) = axes.texts
+    assert text.get_text() == fitted(name, 22)
+    # points from the marker: to the right and up
+    assert 0.0 < text.xyann[0] < 6.0
+    assert 0.0 < text.xyann[1] < 6.0
+    assert place_labels(axes, [], np.empty((0, 2))) == 0
+
+
+# fingerprints
+
+
+def test_members_are_drawn_by_ratio_and_delay() -> None:
+    members = np.array([[1.1 + 0.0j, 0.9j], [1.2 + 0.0j, 1.0 + 0.0j]])
+    figure = fingerprint_members(
+        ["A", "B"], ["wet", "dry"], members, compared=np.array([1.0, 1.0]), compared_name="flat"
+    )
+    ratio, delay = figure.axes
+    assert [label.get_text() for label in ratio.get_yticklabels()] == ["A", "B"]
+    drawn = {line.get_label(): line.get_xdata() for line in ratio.lines}
+    assert drawn["wet"] == pytest.approx([1.1, 0.9])
+    assert drawn["flat"] == pytest.approx([1.0, 1.0])
+    # a quarter turn is a quarter of the tropical year
+    assert {line.get_label(): line.get_xdata() for line in delay.lines}["wet"] == pytest.approx([0.0, 91.31055])
+    assert ratio.get_xlabel() == "amplitude / ocean mean"
+    assert delay.get_xlabel() == "delay / days"
+
+
+def test_many_members_share_one_mark() -> None:
+    members = np.ones((40, 3)) + 0.1 * RNG.standard_normal((40, 3))
+    figure = fingerprint_members(["A", "B", "C"], [f"m{k}" for k in range(40)], members.astype(complex))
+    assert [text.get_text() for text in figure.legends[0].get_texts()] == ["40 load members"]
+
+
+# both widths, from one site to many
+
+
+@pytest.mark.parametrize("width_mm", [180.0, 85.0])
+@pytest.mark.parametrize("count", [1, 60])
+def test_figures_have_their_width_and_keep_all_text_on_the_sheet(count: int, width_mm: float) -> None:
+    rng = np.random.default_rng(count)
+    names = [f"Observatory number {k}" for k in range(count)]
+    phasors = np.array([0.1, -0.85]) + 0.15 * rng.standard_normal((count, 2))
+    covariances = np.broadcast_to(0.02 * np.eye(2), (count, 2, 2))
+    admittance = 1.0 + 0.1 * (rng.standard_normal((5, count)) + 1j * rng.standard_normal((5, count)))
+    places = rng.uniform(-60, 60, count), rng.uniform(0, 360, count)
+    fraction, cells = np.zeros((18, 36)), (np.arange(-85.0, 90.0, 10.0), np.arange(5.0, 360.0, 10.0))
+    figures = [
+        phasor_plane(DRAWS, names, phasors, covariances, reference_year=2016, width_mm=width_mm),
+        network_map(fraction, *cells, names, *places, admittance.mean(axis=0), width_mm=width_mm),
+        fingerprint_members(names, ["m1", "m2", "m3", "m4", "m5"], admittance, width_mm=width_mm),
+        record_panels([record_row(name) for name in names[:18]], width_mm=width_mm),
+        corner_figure({"one / hPa": DRAWS[:, 0], "two / hPa": DRAWS[:, 1]}, width_mm=width_mm),
+    ]
+    for figure in figures:
+        width, height = figure.get_size_inches()
+        assert width * 25.4 == pytest.approx(width_mm)
+        assert height * 25.4 < 297.0
+        # what is drawn, in inches; half a pixel of rounding
+        drawn, slack = figure.get_tightbbox(), 0.5 / figure.dpi
+        assert -slack <= drawn.x0 <= drawn.x1 <= width + slack
+        assert -slack <= drawn.y0 <= drawn.y1 <= height + slack
