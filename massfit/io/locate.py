@@ -2,6 +2,7 @@
 
 import re
 import tomllib
+from bisect import bisect_left
 from collections.abc import Mapping
 
 KeyPath = tuple[str | int, ...]
@@ -61,6 +62,7 @@ class _Scanner:
     def __init__(self, text: str) -> None:
         self.text, self.at = text, 0
         self.lines: dict[KeyPath, int] = {}
+        self.ends = [match.start() for match in re.finditer("\n", text)]
         self.counts: dict[KeyPath, int] = {}  # elements so far of each array of tables
 
     def document(self) -> dict[KeyPath, int]:
@@ -82,7 +84,7 @@ class _Scanner:
         return match.group()
 
     def mark(self, path: KeyPath, position: int) -> None:
-        self.lines.setdefault(path, self.text.count("\n", 0, position) + 1)
+        self.lines.setdefault(path, bisect_left(self.ends, position) + 1)
 
     def dotted_key(self) -> list[str]:
         parts = []

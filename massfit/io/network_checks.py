@@ -18,6 +18,7 @@ from massfit.settings import Corrections, Fingerprint, Frame
 from massfit.site import Site
 
 _NO_OCEAN = 0.005  # ocean fraction of a quarter-degree cell below which a site is on land
+_MOST_SEARCHES = 50  # faults after which no nearest ocean is looked up, which takes its time
 _FEWEST_DAYS = 180
 _SHORT_YEARS = 1.5  # below it the drift and the annual cycle of one record hardly part
 _DAY = np.timedelta64(1, "D")
@@ -186,14 +187,14 @@ def _check_place(reading: Reading, path: KeyPath, entry: SiteEntry) -> None:
     ocean = OceanFunction.builtin()
     if ocean.fraction_at(entry.latitude, entry.longitude) > _NO_OCEAN:
         return
-    latitude, longitude, distance_km = ocean.nearest_ocean(entry.latitude, entry.longitude)
-    longitude = longitude % 360.0 if entry.longitude > 180.0 else longitude
-    reading.fault(
-        (*path, "latitude"),
-        f"the site at {entry.latitude:g}, {entry.longitude:g} is on land",
-        "Must be in the ocean",
-        f"The nearest ocean is at {latitude:.3f}, {longitude:.3f}, {distance_km:.0f} km away; check sign and order",
-    )
+    action = "Check sign and order"
+    if len(reading.faults) < _MOST_SEARCHES:
+        latitude, longitude, distance_km = ocean.nearest_ocean(entry.latitude, entry.longitude)
+        longitude = longitude % 360.0 if entry.longitude > 180.0 else longitude
+        place = f"{latitude:.3f}, {longitude:.3f}, {distance_km:.0f} km away"
+        action = f"The nearest ocean is at {place}; check sign and order"
+    problem = f"the site at {entry.latitude:g}, {entry.longitude:g} is on land"
+    reading.fault((*path, "latitude"), problem, "Must be in the ocean", action)
 
 
 def _check_exclusions(reading: Reading, path: KeyPath, entry: SiteEntry) -> None:

@@ -12,11 +12,13 @@ from typing import Any, TypeVar
 
 from massfit.errors import Fault, InputError
 from massfit.io.locate import KeyPath, locate_keys, nearest_line
+from massfit.io.network_limits import MOST_BYTES, check_document, check_keys, check_size, too_deep, unfit_texts
 
 _T = TypeVar("_T")
 _URL = re.compile(r"^[A-Za-z][A-Za-z0-9+.-]*://")
 _SYNTAX = re.compile(r"^(?P<what>.*) \(at (?:line (?P<line>\d+), column (?P<column>\d+)|end of document)\)$", re.DOTALL)
 _MANY_FILES = 5_000  # names looked through for a suggestion
+_MOST_SUGGESTIONS = 20  # after so many faults the search, which takes its time, helps nobody
 
 
 @dataclass
@@ -94,6 +96,8 @@ class Reading:
             )
         elif is_folder:
             self.fault(path, f'"{text}" is a folder', "Must be a file")
+        elif not is_file and found.exists():
+            self.fault(path, f'"{text}" is a pipe or a device', "Must be a file", "Give the file itself")
         elif not is_file:
             self.fault(path, f'no file "{text}"', "Paths start at the network file's folder", self._suggest(text))
         else:
@@ -101,6 +105,8 @@ class Reading:
         return None
 
     def _suggest(self, text: str) -> str:
+        if len(self.faults) > _MOST_SUGGESTIONS:
+            return "Check the name"
         files = _names_below(self.folder)
         same_name = [name for name in files if Path(name).name == Path(text).name]
         near = nearest(self.relative(text), files) or next(iter(same_name), None)
@@ -122,12 +128,16 @@ def open_reading(path: str | os.PathLike[str], *, outside: bool) -> Reading:
     if file.is_dir():
         raise InputError(Fault(source, "", "it is a folder", "Must be a network file", "Rename the folder"))
     if not file.is_file():
-        others = [str(found) for found in sorted(file.parent.glob("*.toml"))]
+        others = [str(found) for found in sorted(file.parent.glob("*.toml")) if found != file]
         action = did_you_mean(nearest(source, others) or next(iter(others), None), "Check the path")
-        raise InputError(Fault(source, "", "there is no such file", "Must be a network file or its folder", action))
-    content = file.read_bytes()
+        problem = "this is not a regular file" if file.exists() else "there is no such file"
+        raise InputError(Fault(source, "", problem, "Must be a network file or its folder", action))
+    with file.open("rb") as stream:
+        content = stream.read(MOST_BYTES + 1)
+    check_size(source, content)
     try:
         text = content.decode("utf-8-sig")
+        check_keys(source, text)
         document = tomllib.loads(text)
     except UnicodeDecodeError as error:
         line = content.count(b"\n", 0, error.start) + 1
@@ -135,7 +145,15 @@ def open_reading(path: str | os.PathLike[str], *, outside: bool) -> Reading:
         raise InputError(Fault(source, "", problem, "A network file is UTF-8 text", line=line)) from error
     except tomllib.TOMLDecodeError as error:
         raise InputError(_syntax_fault(source, text, str(error))) from error
+    except RecursionError as error:
+        raise too_deep(source) from error
+    except ValueError as error:  # a whole number of thousands of digits
+        problem = "a number has too many digits"
+        raise InputError(Fault(source, "", problem, "Must be within 64 bits", "Shorten it")) from error
+    check_document(source, document)
     reading = Reading(source, file.parent, outside, document, locate_keys(text))
+    for path_of_text, problem, allowed, action in unfit_texts(document):
+        reading.fault(path_of_text, problem, allowed, action)
     reading.inputs[file.name] = hashlib.sha256(content).hexdigest()
     return reading
 
