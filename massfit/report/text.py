@@ -1,10 +1,10 @@
 """The summary at the end of a run: plain text that fits 80 columns."""
 
-import textwrap
 from collections.abc import Mapping
 from typing import Any
 
 from massfit.phasor import delay_days, peak_days
+from massfit.report.names import fitted, padded, wrapped
 from massfit.results.answer import date_range, spoken_date, spoken_range
 
 WIDTH = 80
@@ -57,7 +57,7 @@ def _answer(summary: Mapping[str, Any]) -> list[str]:
     rows = [("amplitude", "amplitude_hpa", "hPa", ".3f"), ("", "water_mm", "mm of fresh water", ".2f")]
     rows += [("", "sea_water_mm", "mm of sea water", ".2f"), ("", "mass_gt", "Gt", ".0f")]
     lines = [
-        f"massfit: {summary['network']}"[:WIDTH],
+        fitted(f"massfit: {summary['network']}", WIDTH),
         "Annual cycle of the mass of the whole ocean, median and 95 % region",
         "",
     ]
@@ -71,8 +71,8 @@ def _answer(summary: Mapping[str, Any]) -> list[str]:
 
 def _shares(summary: Mapping[str, Any]) -> list[str]:
     shares = sorted(summary["variance_share"].items(), key=lambda item: -item[1])
-    words = [f"{SHARE_WORDS[name]} {100 * share:.0f} %" for name, share in shares if share >= 0.005]
-    return textwrap.wrap("Where the variance comes from: " + ", ".join(words) + ".", WIDTH, subsequent_indent="  ")
+    words = [f"{SHARE_WORDS.get(name, name)} {100 * share:.0f} %" for name, share in shares if share >= 0.005]
+    return wrapped("Where the variance comes from: " + ", ".join(words) + ".", WIDTH, rest="  ")
 
 
 def _alternatives(summary: Mapping[str, Any]) -> list[str]:
@@ -80,8 +80,8 @@ def _alternatives(summary: Mapping[str, Any]) -> list[str]:
     if not rows:
         return []
     lines = [f"{'If instead':<48}{'shift / sd':>14}{'width ratio':>14}"]
-    lines += [f"  {row['name'][:46]:<46}{row['shift_sd']:>14.2f}{row['sd_ratio']:>14.2f}" for row in rows]
-    return lines + textwrap.wrap(ALTERNATIVES_NOTE, WIDTH)
+    lines += [f"  {padded(row['name'], 46)}{row['shift_sd']:>14.2f}{row['sd_ratio']:>14.2f}" for row in rows]
+    return lines + wrapped(ALTERNATIVES_NOTE, WIDTH)
 
 
 def _sites(summary: Mapping[str, Any]) -> list[str]:
@@ -92,14 +92,14 @@ def _sites(summary: Mapping[str, Any]) -> list[str]:
         day, delay = float(peak_days(phasor)), float(delay_days(admittance))
         mark = " *" if site["warnings"] else ""
         lines.append(
-            f"{site['id'][:13]:<14}{abs(phasor):>7.2f}{day:>10.1f}{abs(admittance):>8.3f}{delay:>9.1f}"
+            f"{padded(site['id'], 13)} {abs(phasor):>7.2f}{day:>10.1f}{abs(admittance):>8.3f}{delay:>9.1f}"
             f"{site['standardised_residual']:>10.2f}{site['outlier_probability']:>9.2f}{mark}"
         )
     note = (
         "hPa and peak day: the site's own phasor, mean over models; ratio and delay of its fingerprint; "
         "residual against the other sites, in sigmas; * has a warning"
     )
-    return lines + textwrap.wrap(note, WIDTH)
+    return lines + wrapped(note, WIDTH)
 
 
 def trust_sentence(summary: Mapping[str, Any]) -> str:
@@ -140,11 +140,11 @@ def warning_lines(summary: Mapping[str, Any]) -> list[str]:
 
 
 def _trust(summary: Mapping[str, Any]) -> list[str]:
-    return textwrap.wrap(trust_sentence(summary), WIDTH, subsequent_indent="  ")
+    return wrapped(trust_sentence(summary), WIDTH, rest="  ")
 
 
 def _warnings(summary: Mapping[str, Any]) -> list[str]:
     lines = []
     for text in warning_lines(summary):
-        lines += textwrap.wrap(text, WIDTH, initial_indent="  - ", subsequent_indent="    ")
+        lines += wrapped(text, WIDTH, first="  - ", rest="    ")
     return ["Warnings", *lines] if lines else []

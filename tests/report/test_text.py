@@ -5,6 +5,7 @@ from typing import Any
 
 import pytest
 
+from massfit.report.names import columns
 from massfit.report.text import summary_text, trust_sentence
 from massfit.results.answer import date_range, spoken_date
 from massfit.results.estimate import Estimate
@@ -47,6 +48,24 @@ def test_long_names_huge_numbers_and_many_warnings_fit_too(summary: dict[str, An
     text = summary_text(summary)
     assert max(map(len, text.splitlines())) <= 80
     assert text.count("Warning ") == 40
+
+
+def test_wide_letters_are_counted_by_the_columns_they_take(summary: dict[str, Any]) -> None:
+    summary["network"] = "深海の圧力計" * 12
+    summary["warnings"] = ["記録" * 60]
+    for site in summary["sites"]:
+        site["id"] = "北太平洋観測点第三号"
+    lines = summary_text(summary).splitlines()
+    assert max(map(columns, lines)) <= 80
+    # len() would not have seen it
+    assert any(columns(line) > len(line) for line in lines)
+
+
+def test_long_names_that_begin_alike_stay_apart(summary: dict[str, Any]) -> None:
+    for number, site in enumerate(summary["sites"]):
+        site["id"] = f"Southern-Array-Station-{number}"
+    text = summary_text(summary)
+    assert all(f"-{number} " in text for number in range(len(summary["sites"])))
 
 
 def test_a_run_that_did_not_converge_says_so(summary: dict[str, Any]) -> None:
