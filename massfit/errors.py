@@ -74,6 +74,12 @@ class InputError(MassfitError):
     ----------
     faults : Fault or iterable of Fault
         All faults, in the order a reader meets them.
+
+    Examples
+    --------
+    >>> error = InputError([Fault("network.toml", "site[A3].latitude", "the value is 95", "Must be within [-90, 90]")])
+    >>> [fault.name for fault in error.faults]
+    ['site[A3].latitude']
     """
 
     def __init__(self, faults: Fault | Iterable[Fault]) -> None:

@@ -30,6 +30,13 @@ class Series:
         Middle of each value's interval, UTC, strictly increasing.
     pressure : (n,) array of float64
         Pa; no NaN.
+
+    Examples
+    --------
+    >>> time = np.datetime64("2016-01-01T12", "ns") + np.arange(366) * np.timedelta64(1, "D")
+    >>> air = Series("ocean-mean air pressure", time, 63.0 * np.cos(2 * np.pi * (np.arange(366) - 200) / 365.2422))
+    >>> float(abs(air.pressure).max().round(1))
+    63.0
     """
 
     name: str
@@ -53,6 +60,14 @@ class CirculationModel:
     air_pressure : str
         "not-forced", "forced-included" or "forced-excluded".
     assimilates_satellite_gravity : bool
+
+    Examples
+    --------
+    >>> time = np.datetime64("2016-01-01T12", "ns") + np.arange(366) * np.timedelta64(1, "D")
+    >>> table = xr.DataArray(np.zeros((366, 2)), dims=("time", "site"), coords={"time": time, "site": ["A3", "B1"]})
+    >>> model = CirculationModel("Invented model", table, ocean_mean=None, air_pressure="not-forced")
+    >>> model.pressure.dims
+    ('time', 'site')
     """
 
     name: str
@@ -84,6 +99,11 @@ class ReducedSite:
         Circulation models that were subtracted; may be empty.
     model_noise : (2, 2) array
         Covariance of each model's own weather at the annual line, Pa2; zero where it is not known.
+
+    Examples
+    --------
+    >>> ReducedSite("A3", np.array([12.0, 81.0]), 100.0 * np.eye(2), (2014, 2018), ("Model A", "Model B")).mean_only
+    True
     """
 
     site: str
@@ -184,6 +204,23 @@ class Network(Described):
         SHA-256 of every file read, by path relative to the network file.
     warnings : tuple of str
         What the reader noticed.
+
+    Examples
+    --------
+    >>> from massfit.settings import make_settings
+    >>> settings = make_settings(
+    ...     network={"name": "One site", "reference_year": 2016},
+    ...     corrections={"ocean_mean_atmosphere": "already-removed"},
+    ... )
+    >>> phasor = ReducedSite("A3", np.array([12.0, 81.0]), 100.0 * np.eye(2), (2014, 2018))
+    >>> Network(settings, (Site("A3", -11.25, 205.5),), records=(), loads=(), reduced=(phasor,))
+    Network: One site
+      phases from   1 January 2016 00:00 UTC
+      sites         1, 0 left out, 1 reduced elsewhere
+      records       0
+      models        none
+      load members  none
+      warnings      0
     """
 
     settings: Settings

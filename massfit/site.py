@@ -40,6 +40,13 @@ class Site:
         Intervals not used.
     excluded_because : str, optional
         When given the whole site is left out, for this reason.
+
+    Examples
+    --------
+    >>> storm = Interval(np.datetime64("2016-03-01"), np.datetime64("2016-03-20"), "dragged by a trawl")
+    >>> site = Site("A3", latitude_deg=-11.25, longitude_deg=205.5, depth_m=4870.0, exclude=(storm,))
+    >>> site.exclude[0].reason
+    'dragged by a trawl'
     """
 
     id: str

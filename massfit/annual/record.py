@@ -35,6 +35,15 @@ class ReducedRecord:
         "exponential+linear", "linear" or "none".
     steps : tuple of datetime64
         Declared changes of level; a new level begins at each.
+
+    Examples
+    --------
+    A year of an invented record without a circulation model:
+
+    >>> time = np.datetime64("2016-01-01T12", "ns") + np.arange(365) * np.timedelta64(1, "D")
+    >>> record = ReducedRecord("A3/1", time, np.zeros(365), np.empty((0, 365)), start=time[0])
+    >>> record.circulation.shape
+    (0, 365)
     """
 
     deployment: str

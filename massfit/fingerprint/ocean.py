@@ -30,6 +30,19 @@ class OceanFunction(Described):
     ------
     InputError
         Fractions outside [0, 1], without any ocean, or of another shape.
+
+    Examples
+    --------
+    An ocean planet with one polar cap of land:
+
+    >>> cells = CellGrid(np.linspace(90.0, -90.0, 19), np.linspace(0.0, 360.0, 37))
+    >>> fraction = np.ones(cells.shape)
+    >>> fraction[0] = 0.0
+    >>> OceanFunction(cells, fraction, reference="invented")
+    Ocean function
+      cells       18 x 36 (latitude, longitude)
+      ocean area  5.0619e+14 m2, 99.2% of the sphere
+      reference   invented
     """
 
     cells: CellGrid

@@ -22,6 +22,16 @@ class LoadPattern:
         Phasor, kg m-2 of whole-cell area (Pa for an air-pressure pattern); no NaN.
     reference : str
         Where the pattern comes from.
+
+    Examples
+    --------
+    Water on a belt of the northern mid-latitudes, most at the end of March:
+
+    >>> latitude, longitude = np.arange(-87.5, 90.0, 5.0), np.arange(2.5, 360.0, 5.0)
+    >>> belt = np.where(abs(latitude - 55.0) < 15.0, 60.0 * np.exp(2j * np.pi * 88 / 365.2422), 0.0)
+    >>> pattern = LoadPattern("belt", latitude, longitude, np.repeat(belt[:, None], longitude.size, axis=1))
+    >>> pattern.values.shape
+    (36, 72)
     """
 
     name: str

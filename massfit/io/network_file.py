@@ -44,6 +44,29 @@ def read_network(path: str | os.PathLike[str], *, outside: bool = False) -> Netw
     InputError
         With every fault that was found, in the order of the file; a syntax error is
         reported alone.
+
+    Examples
+    --------
+    A network of one site, whose phasor was made elsewhere:
+
+    >>> import pathlib, tempfile
+    >>> text = '''
+    ... network = { name = "One site", reference_year = 2016 }
+    ... corrections = { ocean_mean_atmosphere = "already-removed" }
+    ... [[site]]
+    ... id = "A3"
+    ... latitude = -11.25
+    ... longitude = 205.5
+    ... phasor_hpa = [0.12, 0.81]
+    ... phasor_covariance_hpa2 = [[0.01, 0.0], [0.0, 0.01]]
+    ... years = [2014, 2018]
+    ... subtracted = []
+    ... '''
+    >>> with tempfile.TemporaryDirectory() as folder:
+    ...     _ = pathlib.Path(folder, "network.toml").write_text(text)
+    ...     network = read_network(folder)
+    >>> network.sites[0].id, (network.reduced[0].phasor / 100.0).round(2).tolist()
+    ('A3', [0.12, 0.81])
     """
     reading = open_reading(path, outside=outside)
     sections = parse_sections(reading)

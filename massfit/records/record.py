@@ -51,6 +51,16 @@ class Record:
         What was done so far.
     units : str
         Unit in which the file was read; empty when built in memory.
+
+    Examples
+    --------
+    A year of hours, in Pa, from a recorder that settles by 20 hPa:
+
+    >>> hours = np.arange(366 * 24)
+    >>> time = np.datetime64("2016-01-01T00:30", "ns") + hours * np.timedelta64(1, "h")
+    >>> record = Record("A3", "A3/1", time, 2000.0 * np.exp(-hours / 1000.0), reference=4.9e7)
+    >>> record.drift, float(record.pressure[0])
+    ('exponential+linear', 2000.0)
     """
 
     site: str
