@@ -3,6 +3,7 @@
 import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from pathlib import PurePosixPath
 
 from massfit.io.guess import Guess, RecordGuess, fill_in
 
@@ -101,7 +102,7 @@ def _site(name: str, records: Sequence[RecordGuess]) -> SiteGuess:
     stated = next((record.place["id"] for record in ordered if "id" in record.place), None)
     files = ", ".join(dict.fromkeys(record.file for record in ordered))
     place = {"id": stated or Guess(name, f"from the name{'s' if len(records) > 1 else ''} {_shortened(files)}")}
-    if stated is None and len(records) == 1 and records[0].name == name and "variable" in records[0].keys:
+    if stated is None and len(records) == 1 and records[0].name != PurePosixPath(records[0].file).stem:
         place["id"] = Guess(name, f"from the column {records[0].keys['variable'].value}")
     for key, wanted in (("latitude", "degrees north"), ("longitude", "degrees east, either convention")):
         found = next((record.place[key] for record in ordered if key in record.place), None)

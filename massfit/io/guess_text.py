@@ -1,5 +1,6 @@
 """Guess how a text file of records is laid out: comments, delimiter, header and columns."""
 
+import re
 from collections import Counter
 from collections.abc import Sequence
 from dataclasses import dataclass
@@ -7,11 +8,12 @@ from dataclasses import dataclass
 from massfit.io.guess_words import meanings, unit_of_word
 
 _COMMENTS = ("#", "%", "!", "//", "*", ">", "$")
-_DELIMITERS = (",", ";", "\t", None)
+_DELIMITERS = (";", "\t", ",", None)
 _SAME_WIDTH = 0.9  # share of the rows that must have the same number of fields
 _LEAST_ROWS = 3
 _KNOWN_ROWS = 500  # rows by which columns are told
 
+DECIMAL_COMMA = re.compile(r"[-+]?\d+,\d+")
 DATE_ORDER = ("year", "month", "day", "hour", "minute", "second")
 _RANGES = {
     "year": (1900.0, 2200.0), "month": (1, 12), "day": (1, 31), "hour": (0, 23), "minute": (0, 59),
@@ -41,8 +43,8 @@ class TextLayout:
         Header lines that are not names of columns.
     header : str
         The line of the names as it stands in the file; empty where there is none.
-    commented : bool
-        Whether that line has the prefix of a comment.
+    first : bool
+        Whether that line is the only one above the data that is no comment, as the reader wants it.
     """
 
     comment: str
@@ -53,7 +55,7 @@ class TextLayout:
     rows: tuple[tuple[str, ...], ...]
     prose: tuple[str, ...]
     header: str
-    commented: bool
+    first: bool
 
     def column(self, position: int) -> list[str]:
         """Texts of one column."""
@@ -86,7 +88,7 @@ def guess_layout(lines: Sequence[str]) -> TextLayout | None:
     if width < 2:
         return None
     fields = [split(line, delimiter) for line in below]
-    start = next((k for k, row in enumerate(fields) if len(row) == width and any(map(is_number, row))), len(fields))
+    start = next((k for k, row in enumerate(fields) if len(row) == width and any(map(_has_value, row))), len(fields))
     rows = tuple(row for row in fields[start:] if len(row) == width)
     if len(rows) < _LEAST_ROWS:
         return None
@@ -102,7 +104,7 @@ def guess_layout(lines: Sequence[str]) -> TextLayout | None:
         rows=rows,
         prose=tuple(_bare(line, comment) for line in (*above, *below[:start]) if _bare(line, comment) != header),
         header=header,
-        commented=commented and bool(header),
+        first=start == 1 and bool(header),
     )
 
 
@@ -118,6 +120,10 @@ def is_number(text: str) -> bool:
     except ValueError:
         return False
     return True
+
+
+def _has_value(text: str) -> bool:
+    return is_number(text) or DECIMAL_COMMA.fullmatch(text) is not None
 
 
 def _bare(line: str, comment: str) -> str:

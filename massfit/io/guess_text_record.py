@@ -8,12 +8,12 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from massfit.errors import InputError
+from massfit.errors import Fault, InputError
 from massfit.io.deployment import DeploymentFile
 from massfit.io.guess import Guess, RecordGuess, fill_in
-from massfit.io.guess_text import TextLayout, guess_layout, is_number
+from massfit.io.guess_text import DECIMAL_COMMA, TextLayout, guess_layout, is_number
 from massfit.io.guess_time import TimeGuess, guess_time
-from massfit.io.guess_words import own_name, place_of_prose, unit_of_name, unit_of_prose
+from massfit.io.guess_words import own_name, place_of_prose, unit_of_name, unit_of_prose, words_of
 from massfit.io.heads import text_lines
 from massfit.io.record_text import read_text_record
 from massfit.io.samples import Samples
@@ -21,6 +21,7 @@ from massfit.io.units import PRESSURE_UNITS
 
 _HEIGHTS = ("mm", "cm", "m")
 _NINES = re.compile(r"-?9{2,}(\.9+|\.0*)?")
+_STATIONS = ("station", "station_id", "site", "site_id", "mooring", "platform")
 _FAR = 20.0  # robust standard deviations
 _CLEAR = 2.0  # the commonest kind is the routine one where it covers this many times the days of the next
 _DAY_S = 86_400.0
@@ -40,11 +41,17 @@ def guess_text_records(folder: Path, file: str) -> list[RecordGuess]:
     -------
     list of RecordGuess
         One for each column of pressure; empty where the file is no table of numbers.
+
+    Raises
+    ------
+    InputError
+        A table that the reader has no way for: decimal commas, or rows of several stations.
     """
     lines = text_lines(folder / file)
     layout = guess_layout(lines) if lines else None
     if layout is None:
         return []
+    _refuse_what_cannot_be_read(file, layout)
     time = guess_time(layout)
     columns, left_out = _pressure_columns(layout, time)
     named = all(layout.meanings[column] == "pressure" for column in columns)
@@ -57,13 +64,25 @@ def guess_text_records(folder: Path, file: str) -> list[RecordGuess]:
     return [_record(folder, file, layout, time, [column], left_out, alone=len(columns) == 1) for column in columns]
 
 
+def _refuse_what_cannot_be_read(file: str, layout: TextLayout) -> None:
+    known = layout.rows[:500]
+    commas = next((field for row in known for field in row if DECIMAL_COMMA.fullmatch(field)), None)
+    if commas is not None and layout.delimiter != ",":
+        raise InputError(Fault(file, "", f"its numbers have decimal commas, {commas!r}", "Must be decimal points"))
+    for position, name in enumerate(layout.names):
+        stations = sorted({row[position] for row in known})
+        if "_".join(words_of(name)) in _STATIONS and len(stations) > 1:
+            problem = f"it mixes the rows of several stations, {', '.join(stations[:4])}"
+            raise InputError(Fault(file, name, problem, "A text record holds one", "Split the file"))
+
+
 def _pressure_columns(layout: TextLayout, time: TimeGuess) -> tuple[list[int], list[str]]:
     """Columns of pressure: those named so, else every other column of numbers; and what the rest is called."""
     others = [k for k, meaning in enumerate(layout.meanings) if k not in time.used and meaning not in ("kind", "flag")]
     numbers = [k for k in others if any(is_number(row[k]) for row in layout.rows[:500])]
     named = [k for k in numbers if layout.meanings[k] == "pressure"]
     chosen = named or numbers
-    return chosen, [layout.names[k] for k in others if k not in chosen]
+    return chosen, [layout.names[k] for k in others if k not in chosen and layout.names[k]]
 
 
 def _record(
@@ -87,6 +106,7 @@ def _record(
     notes = [f"columns not used: {', '.join(left_out)}"] if left_out else []
     samples = _probe(folder, file, keys, notes)
     span, sampling = None, None
+    keys["stamp"] = Guess("middle", "the record could not be looked at")
     if samples is not None:
         keys |= _missing_key(samples.pressure)
         span, sampling = span_and_sampling(samples.time)
@@ -111,7 +131,7 @@ def _layout_keys(layout: TextLayout, time: TimeGuess, columns: Sequence[int]) ->
         if meaning in ("kind", "flag"):
             names[position] = "kind"
             renamed = True
-    if not layout.header or layout.commented or renamed or any(layout.units):
+    if not layout.first or renamed:
         if len(columns) == 1:
             names[columns[0]] = "pressure"
         evidence = f'header "{layout.header}"' if layout.header else f"no header; {time.evidence}"

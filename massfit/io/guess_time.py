@@ -13,7 +13,10 @@ _ISO = re.compile(r"\d{4}-\d{2}-\d{2}([T ]\d{2}:\d{2}(:\d{2}(\.\d+)?)?)?\s*(Z|[+
 _DATES = (
     "%Y/%m/%d", "%d/%m/%Y", "%m/%d/%Y", "%d.%m.%Y", "%d-%m-%Y", "%d-%b-%Y", "%d %b %Y", "%Y%m%d", "%Y %j", "%Y-%j",
 )  # fmt: skip
-_CLOCKS = ("", " %H:%M:%S", " %H:%M", "T%H:%M:%S", "T%H:%M", " %H%M", "%H", "%H%M", "%H%M%S", " %H:%M:%S.%f")
+_CLOCKS = (
+    "", " %H:%M:%S", " %H:%M", "T%H:%M:%S", "T%H:%M", " %H%M", "%H", "%H%M", "%H%M%S", " %H:%M:%S.%f",
+    "T%H%M%S", "T%H%M", " %I:%M %p", " %I:%M:%S %p",
+)  # fmt: skip
 _FORMATS = tuple(date + clock for date in _DATES for clock in _CLOCKS)
 _TEXTS = 400  # different texts by which a format is told
 _MODIFIED_JULIAN = (33_000.0, 88_000.0)  # 1949 to 2099
@@ -154,6 +157,8 @@ def _count_of(ends: Sequence[float]) -> Guess:
         return Guess("seconds since 1970-01-01", f"values {shown} are seconds of this age")
     if all(_MODIFIED_JULIAN[0] < value < _MODIFIED_JULIAN[1] for value in ends):
         return fill_in(f'the origin of {shown}: "{_MJD}" if these are modified Julian days')
+    if all(1_900.0 < value < 2_100.0 for value in ends):
+        return fill_in(f"years with decimals, {shown}, are not read: write dates into the file")
     return fill_in(f'unit and origin of {shown}, like "days since 1950-01-01"')
 
 

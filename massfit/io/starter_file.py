@@ -174,7 +174,7 @@ def _corrections(records: Sequence[RecordGuess]) -> str:
     steps = sorted({record.sampling_s for record in records if record.sampling_s})
     wanted = 'mean air pressure over the ocean, a file of time,value; or "already-removed" from the records'
     keys = {"ocean_mean_atmosphere": fill_in(wanted)}
-    shown = ", ".join(map(spoken_interval, steps))
+    shown = ", ".join(dict.fromkeys(map(spoken_interval, steps)))
     if steps and steps[0] >= _COARSE_S:
         evidence = f"samples are {shown} apart, too coarse to show tides"
         keys["tides"] = Guess("already-removed", evidence)

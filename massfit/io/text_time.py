@@ -170,11 +170,12 @@ def parsed_time(
 
 
 def _counted(count: NDArray[np.float64], unit: str, origin: str) -> NDArray[np.datetime64]:
-    """Origin plus a count of units; in milliseconds, because 292 years of ns overflow."""
-    known = np.isfinite(count)
-    elapsed = np.round(np.where(known, count, 0.0) * _UNIT_MS[unit]).astype("timedelta64[ms]")
-    time = (np.datetime64(origin, "ms") + elapsed).astype("datetime64[ns]")
-    time[~known] = np.datetime64("NaT")
-    return np.asarray(time)
+    """Origin plus a count of units; in milliseconds, because 292 years of ns overflow. NaT outside the years read."""
+    first, end = (np.datetime64(f"{year}-01-01", "ms") for year in (_YEARS[0], _YEARS[1] + 1))
+    since = (np.array([first, end]) - np.datetime64(origin, "ms")).astype(float)
+    elapsed = np.round(count * _UNIT_MS[unit])
+    known = (elapsed >= since[0]) & (elapsed < since[1])
+    time = np.datetime64(origin, "ms") + np.where(known, elapsed, since[0]).astype("timedelta64[ms]")
+    return np.where(known, time.astype("datetime64[ns]"), np.datetime64("NaT"))
 
 

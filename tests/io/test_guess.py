@@ -1,10 +1,12 @@
 """Guesses are held against the files themselves: what the reader reads with them must be what was written."""
 
+import tomllib
 from pathlib import Path
 
 import numpy as np
 import pytest
 
+from massfit.errors import InputError
 from massfit.io.deployment import DeploymentFile
 from massfit.io.guess import RecordGuess
 from massfit.io.guess_sites import guess_sites, site_names
@@ -14,6 +16,7 @@ from massfit.io.guess_time import guess_time
 from massfit.io.guess_words import meanings, place_of_prose, unit_of_prose
 from massfit.io.record_text import read_text_record
 from massfit.io.samples import Samples
+from massfit.io.starter_file import begin_network
 
 HOURS = np.arange("2015-12-20", "2016-03-05", dtype="datetime64[h]").astype("datetime64[ns]")
 VALUES = 5500.0 + np.round(np.cos(np.arange(HOURS.size) / 2.0), 4)
@@ -32,7 +35,8 @@ def written(form: str) -> list[str]:
         stamp = instant.astype("datetime64[s]").item()
         clock = {"y": y, "mo": mo, "d": d, "h": h, "mi": mi, "doy": doy, "days": doy + h / 24.0}
         unix = int(instant.astype("datetime64[s]").astype(np.int64))
-        rows.append(stamp.strftime(form).format(v=f"{value:.4f}", unix=unix, **clock))
+        # 40587 is 1 January 1970
+        rows.append(stamp.strftime(form).format(v=f"{value:.4f}", unix=unix, mjd=40587 + unix / 86400, **clock))
     return rows
 
 
@@ -57,6 +61,11 @@ LAYOUTS = {
     "slashes": (["time,pressure_dbar"], "%d/%m/%Y %H:%M,{v}"),
     "compact": (["% pressure in dbar"], "%Y%m%d%H {v}"),
     "two digits": (["YY MM DD hh press_dbar"], "%y %m %d %H {v}"),
+    "title": (["Mooring D4", "Date Time Pressure(dbar)"], "%m/%d/%Y %H:%M {v}"),
+    "noon and midnight": (["time;pressure_dbar"], "%m/%d/%Y %I:%M %p;{v}"),
+    "compact with T": (["time pressure_dbar"], "%Y%m%dT%H%M%S {v}"),
+    "trailing delimiter": (["time,pressure_dbar,"], "%Y-%m-%d %H:%M,{v},"),
+    "modified Julian days": (["mjd pressure_dbar"], "{mjd:.9f} {v}"),
     "seconds": (["timestamp,pressure_dbar"], "{unix},{v}"),
 }
 
@@ -140,6 +149,31 @@ def test_several_columns_of_pressure(tmp_path: Path) -> None:
 def test_prose_is_no_record(text: str, tmp_path: Path) -> None:
     (tmp_path / "a.txt").write_text(text)
     assert guess_text_records(tmp_path, "a.txt") == []
+
+
+@pytest.mark.parametrize(
+    ("header", "form", "problem"),
+    [
+        ("time;pressure_dbar", "%d.%m.%Y %H:%M;5500,{h}", "its numbers have decimal commas, '5500,0'"),
+        ("station,time,pressure_dbar", "K{h},%Y-%m-%d %H:%M,{v}", "it mixes the rows of several stations, K0, K1"),
+    ],
+)
+def test_tables_that_cannot_be_read_are_refused(header: str, form: str, problem: str, tmp_path: Path) -> None:
+    (tmp_path / "a.csv").write_text("\n".join([header, *written(form)]))
+    with pytest.raises(InputError, match=problem):
+        guess_text_records(tmp_path, "a.csv")
+
+
+def test_damaged_text_never_ends_in_a_traceback(tmp_path: Path) -> None:
+    rng = np.random.default_rng(5)
+    texts = ["\n".join([*header, *written(form)[:60]]) for header, form in LAYOUTS.values()]
+    alphabet = list("0123456789.,;:-#% \t\"'TNaE\0\n\x1b\N{DEGREE SIGN}")
+    for case in range(400):
+        text = list(texts[case % len(texts)])
+        for place in rng.integers(0, len(text), size=rng.integers(1, 40)):
+            text[place] = str(rng.choice(alphabet))
+        (tmp_path / "a.txt").write_text("".join(text))
+        tomllib.loads(begin_network(tmp_path).text)
 
 
 def test_a_fault_of_the_reader_is_told(tmp_path: Path) -> None:

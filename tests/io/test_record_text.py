@@ -230,6 +230,13 @@ def test_header_and_units_rows_over_stated_columns_are_no_data(tmp_path: Path) -
     assert "no row of data" in faults_of(tmp_path, "YYYY MO DY P\n", columns=columns)[0]
 
 
+@pytest.mark.parametrize("count", ["1e300", "-1e9", "nan", "500000"])
+def test_counts_of_days_outside_the_years_that_are_read(count: str, tmp_path: Path) -> None:
+    settings = {"columns": ("time", "pressure"), "time_format": "days since 1950-01-01"}
+    (fault,) = faults_of(tmp_path, f"24106 1.0\n{count} 2.0\n", **settings)
+    assert "Must be a number of days since 1950-01-01" in fault
+
+
 def test_day_of_the_year(tmp_path: Path) -> None:
     columns = ("year", "day_of_year", "hour", "pressure")
     record = read(tmp_path, "2016 60 6 1.0\n2016 366 0 2.0\n2015 1.25 0 3.0\n", columns=columns)
