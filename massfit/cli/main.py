@@ -1,5 +1,6 @@
 """The commands; each loads, calls and writes. Heavy imports live inside them, so that --help is quick."""
 
+import json
 import os
 import sys
 from pathlib import Path
@@ -19,7 +20,8 @@ def main() -> None:
     """Measure the annual cycle of global ocean mass with sea-floor pressure.
 
     A network is a folder with a network.toml. Exit codes: 0 done; 2 the input
-    is wrong, and nothing was written; 3 computed, but not trustworthy.
+    is wrong, and nothing was written; 3 computed, but not trustworthy; 130
+    interrupted, the same command goes on with what was finished.
     Results are for research; records of hazard-warning stations must not be
     touched operationally on the strength of this tool.
     """
@@ -88,6 +90,40 @@ def starter(folder: Path) -> None:
 
         made = begin_network_file(folder)
     click.echo(f"Wrote {folder / 'network.toml'}: {made.counted}.\nThen run: massfit check {folder}")
+
+
+@main.command()
+@click.argument("results", type=_FOLDER)
+def report(results: Path) -> None:
+    """Draw page and figures anew from the files in RESULTS alone.
+
+    Every file is first held against its checksum in run.json; one that was
+    changed is named, and nothing is written.
+    """
+    with refusing_politely():
+        from massfit.pipeline.save import report_to_folder
+
+        report_to_folder(results)
+    click.echo(f"Drew {results / 'report.html'} and the figures anew.")
+
+
+@main.command()
+@click.argument("first", type=_FOLDER)
+@click.argument("second", type=_FOLDER)
+@click.option("--json", "as_json", is_flag=True, help="Print JSON.")
+def contrast(first: Path, second: Path, as_json: bool) -> None:
+    """Say what differs between two results folders.
+
+    Inputs, settings, versions, sites, answer and warnings; SECOND less FIRST.
+    """
+    with refusing_politely():
+        from massfit.pipeline.contrast import contrast_folders
+
+        differences = contrast_folders(first, second)
+    from massfit.report.contrast_text import contrast_text
+
+    text = json.dumps(differences, indent=2) if as_json else contrast_text(differences, str(first), str(second))
+    click.echo(text)
 
 
 @main.command()

@@ -1,4 +1,4 @@
-"""How wrong input is refused: every fault at once, exit code 2, no traceback."""
+"""How wrong input is refused and Ctrl-C answered: in words, with an exit code, no traceback."""
 
 import sys
 from collections.abc import Iterator
@@ -7,11 +7,12 @@ from contextlib import contextmanager
 import click
 
 WRONG_INPUT = 2
+INTERRUPTED = 130
 
 
 @contextmanager
 def refusing_politely() -> Iterator[None]:
-    """Turn an InputError into one message with all its faults and exit code 2."""
+    """Turn an InputError into one message with all its faults and exit code 2, and Ctrl-C into exit code 130."""
     from massfit.errors import InputError
 
     try:
@@ -22,3 +23,7 @@ def refusing_politely() -> Iterator[None]:
         for fault in error.faults:
             click.echo(f"  - {fault}", err=True)
         sys.exit(WRONG_INPUT)
+    except KeyboardInterrupt:
+        text = "massfit: interrupted. What estimate had finished is kept: the same command goes on from there."
+        click.echo(text, err=True)
+        sys.exit(INTERRUPTED)
