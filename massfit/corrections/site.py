@@ -64,7 +64,9 @@ def site_corrections(
         raise InputError(faults)
     models, present, notes = _circulation(site, time, circulation)
     if predicted:
-        notes.append(f"pole tide: polar motion is predicted, not observed, on {predicted} days")
+        notes.append(
+            f"pole tide: polar motion is predicted, not observed, on {predicted} days; update astropy-iers-data later"
+        )
     result = xr.Dataset(
         {
             "long_period_tides": ("time", long_period_tide_at(responses, site.id, time), {"units": "Pa"}),
@@ -92,9 +94,12 @@ def _circulation(
         if covered >= LEAST_COVERED:
             values[index], present[index] = series, 1
         else:
-            notes.append(f"{model.name}: covers {100 * covered:.0f} % of the days of {site.id} and is left out there")
+            notes.append(
+                f"{model.name}: covers {100 * covered:.0f} % of the days of {site.id} and is left out there; to use "
+                f"it, give the rest of it, or a window that it covers to {100 * LEAST_COVERED:.0f} %"
+            )
     if circulation and not present.any():
-        notes.append(f"no circulation model covers {site.id}: circulation is part of its noise")
+        notes.append(f"no circulation model covers {site.id}: circulation is part of its noise; give one that does")
     return values, present, notes
 
 

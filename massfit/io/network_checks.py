@@ -110,7 +110,8 @@ def check_coverage(
     if len(days) < _SHORT_YEARS * JULIAN_YEAR_DAYS:
         reading.warnings.append(
             f"Site {site.id} has {len(days)} days of data ({len(days) / JULIAN_YEAR_DAYS:.2f} years): drift and "
-            f"annual cycle part only beyond about {_SHORT_YEARS} years, so its uncertainty is wide."
+            f"annual cycle part only beyond about {_SHORT_YEARS} years, so its uncertainty is wide. "
+            "A longer record narrows it."
         )
     return used, days
 

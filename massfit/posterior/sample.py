@@ -220,11 +220,15 @@ def _warnings(
                 "group_scatter (on by default) is not computed in this version: sites are taken as independent, which "
                 "is too sure where they are neighbours.",
             ),
-            (len(members) == 1, "One load member: the uncertainty of the fingerprint is taken as zero."),
+            (
+                len(members) == 1,
+                "One load member: the uncertainty of the fingerprint is taken as zero. Give more "
+                "patterns in [fingerprint] loads.",
+            ),
             (
                 len(real) < 2,
                 f"{'One ocean model' if real else 'No ocean model'}: the spread between models is assumed from its "
-                "prior, not seen.",
+                "prior, not seen. Give two or more.",
             ),
             (
                 len(real) > 1 and not observations.has_contrasts.any(),
@@ -234,7 +238,8 @@ def _warnings(
             (bool(without), f"No ocean model was subtracted at: {', '.join(without)}."),
             (
                 "air_load_response" not in fingerprints,
-                "The gravitational effect of the air over land was not taken off (no atmosphere load was given).",
+                "The gravitational effect of the air over land was not taken off (no atmosphere load was given). "
+                "Give [corrections] atmosphere_load or air_pressure.",
             ),
         )
         if applies
@@ -242,4 +247,7 @@ def _warnings(
 
 
 def _doubts(convergence: Convergence) -> list[str]:
-    return [f"Not converged: {text}." for text in convergence.failures()]
+    return [
+        f"Not converged: {text}. Try another seed; if it stays, look for a site that disagrees."
+        for text in convergence.failures()
+    ]

@@ -163,13 +163,18 @@ def _site_warnings(
             (
                 reduced_sd > QUIET_SD,
                 f"Not quiet: the reduced daily record varies by {reduced_sd / PASCAL_PER_HPA:.1f} hPa (1 sd; quiet is "
-                f"below {QUIET_SD / PASCAL_PER_HPA:.0f}), so ocean dynamics that no model removes weigh on its phasor.",
+                f"below {QUIET_SD / PASCAL_PER_HPA:.0f}), so ocean dynamics that no model removes weigh on its phasor. "
+                "Give a model that holds them, or see what the answer is without the site (exclude it).",
             ),
-            (present == [NO_MODEL], "No ocean model was subtracted: the circulation is part of the noise."),
+            (
+                present == [NO_MODEL],
+                "No ocean model was subtracted: the circulation is part of the noise. Give one that covers the site.",
+            ),
             (
                 check.outlier_probability > 0.5,
                 f"Disagrees with the other sites: {check.standardised_residual:.1f} standard deviations, "
-                f"probability {check.outlier_probability:.2f} of being wrong.",
+                f"probability {check.outlier_probability:.2f} of being wrong. Look at its record and its levels; where "
+                "something is wrong with it, exclude it and say why.",
             ),
             (_is_large(effect), _mixture_text(effect)),
         )
@@ -184,7 +189,8 @@ def _is_large(effect: MixtureEffect) -> bool:
 def _mixture_text(effect: MixtureEffect) -> str:
     return (
         f"Its single Gaussian stands for a mixture that would move the network mean by {effect.shift_sd:+.3f} standard "
-        f"deviations and its standard deviation by {effect.sd_ratio - 1.0:+.1%} (allowed are {MIXTURE_LIMIT:.0%})."
+        f"deviations and its standard deviation by {effect.sd_ratio - 1.0:+.1%} (allowed are {MIXTURE_LIMIT:.0%}). "
+        "Exclude the site and see whether the answer moves."
     )
 
 

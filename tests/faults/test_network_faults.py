@@ -382,6 +382,6 @@ def test_the_short_network_is_whole_at_180_days(network_folder: Path, change: Ch
     warnings = read_network(network_folder).warnings
     assert warnings[0] == (
         "Site A has 180 days of data (0.49 years): drift and annual cycle part only beyond about 1.5 years, "
-        "so its uncertainty is wide."
+        "so its uncertainty is wide. A longer record narrows it."
     )
     assert len(warnings) == 2

@@ -132,8 +132,8 @@ def test_thin_networks_are_allowed_and_warned_about(invent, shape, warning):
 @pytest.mark.usefixtures("short_runs")
 def test_what_is_not_in_the_model_is_said(invent):
     posterior = run(invent(), settings=PosteriorSettings(seed=5))
-    assert [text for text in posterior.warnings if "Student" in text]
-    assert [text for text in posterior.warnings if "Group" in text]
+    assert [text for text in posterior.warnings if "student-t" in text]
+    assert [text for text in posterior.warnings if "group_scatter" in text]
 
 
 def test_the_dataset_holds_everything(posterior):
