@@ -68,6 +68,34 @@ def read_network(path: str | os.PathLike[str], *, outside: bool = False) -> Netw
     >>> network.sites[0].id, (network.reduced[0].phasor / 100.0).round(2).tolist()
     ('A3', [0.12, 0.81])
     """
+    network, faults = read_what_can_be(path, outside=outside)
+    if faults or network is None:
+        raise InputError(faults)
+    return network
+
+
+def read_what_can_be(
+    path: str | os.PathLike[str], *, outside: bool = False
+) -> tuple[Network | None, tuple[Fault, ...]]:
+    """Read as much of a network as has no fault, to be shown beside the faults and not to be used.
+
+    Parameters
+    ----------
+    path, outside
+        As for :func:`read_network`.
+
+    Returns
+    -------
+    network : Network or None
+        Without the records, models and fields that have a fault; None where a section has one.
+    faults : tuple of Fault
+        All of them; the network is whole where there is none.
+
+    Raises
+    ------
+    InputError
+        The file is not there, or its syntax is wrong.
+    """
     reading = open_reading(path, outside=outside)
     sections = parse_sections(reading)
     check_choices(reading, sections)
@@ -77,9 +105,10 @@ def read_network(path: str | os.PathLike[str], *, outside: bool = False) -> Netw
     loads = _loads(reading, sections)
     circulation = _circulation(reading, sections, {site.id for site in sites.values()})
     air = _air(reading, corrections) if corrections is not None else {}
-    if reading.faults:
-        raise InputError(_in_order(reading))
-    return Network(
+    faults = tuple(_in_order(reading))
+    if any(section is None for section in sections.settings.values()):
+        return None, faults
+    network = Network(
         settings=_settings(sections),
         sites=tuple(sites.values()),
         records=records,
@@ -91,6 +120,7 @@ def read_network(path: str | os.PathLike[str], *, outside: bool = False) -> Netw
         warnings=tuple(reading.warnings),
         **air,
     )
+    return network, faults
 
 
 def _settings(sections: Sections) -> Settings:
