@@ -15,7 +15,7 @@ from massfit.corrections.series import daily_values_at
 from massfit.corrections.site import site_corrections
 from massfit.errors import Fault, InputError, collect
 from massfit.fingerprint.ocean import OceanFunction
-from massfit.io.network_file import read_network
+from massfit.io.network_file import read_what_can_be
 from massfit.network import Network, ReducedSite, Series
 from massfit.pipeline.air import network_air
 from massfit.pipeline.sites import LEAST_SITE_DAYS
@@ -34,6 +34,7 @@ _DAY = np.timedelta64(1, "D")
 _SECOND = np.timedelta64(1, "s")
 _NOON = np.timedelta64(12, "h")
 _NOTHING = np.array([], "datetime64[ns]")
+_UNREAD = "no record of it was read: see the faults"
 _NO_FOOTPRINTS = "no footprints were given"
 
 
@@ -44,8 +45,8 @@ class Check:
     Parameters
     ----------
     found : mapping
-        As JSON knows it: network, sites, assumptions, warnings and faults; no sites where the network could not be
-        read.
+        As JSON knows it: network, sites, assumptions, warnings and faults. With faults it holds what could be read,
+        without assumptions; without a network nothing could.
     faults : tuple of Fault
         Everything that stops a run.
     """
@@ -69,10 +70,21 @@ def check_network(path: Path, *, outside: bool = False) -> Check:
     Check
     """
     try:
-        network = read_network(path, outside=outside)
+        network, faults = read_what_can_be(path, outside=outside)
     except InputError as error:
-        return Check({"source": str(path), "sites": [], "faults": _plain(error.faults)}, error.faults)
-    return look_at(network)
+        network, faults = None, error.faults
+    if network is None:
+        return Check({"source": str(path), "sites": [], "faults": _plain(faults)}, faults)
+    whole = look_at(network)
+    return _in_part(whole, faults) if faults else whole
+
+
+def _in_part(check: Check, faults: tuple[Fault, ...]) -> Check:
+    """Show what could be read beside the faults of reading; what will be assumed is not known yet."""
+    told = [fault.name for fault in faults]
+    further = (fault for fault in check.faults if not any(name.endswith(fault.name) for name in told))
+    faults = (*faults, *further)
+    return Check({**check.found, "assumptions": [], "faults": _plain(faults)}, faults)
 
 
 def look_at(network: Network) -> Check:
@@ -102,7 +114,7 @@ def look_at(network: Network) -> Check:
         air = network_air(network, ocean).ocean_mean
     used = [site for site in network.sites if site.excluded_because is None]
     models: list[CirculationAtSites] = []
-    for model in network.circulation:
+    for model in network.circulation if used else ():
         with collect(faults):
             models.append(circulation_at_sites(model, used, ocean=ocean, air_pressure=network.air_pressure))
     sites = [_site(network, site, ocean, air, models, faults) for site in network.sites]
@@ -153,7 +165,7 @@ def _site(
         "depth_m": site.depth_m,
         "group": site.group,
         "ocean_fraction": float(ocean.fraction_at(site.latitude_deg, site.longitude_deg)),
-        "left_out": site.excluded_because or _too_short(days, reduced),
+        "left_out": site.excluded_because or _unusable(days, records, reduced),
         "reduced_elsewhere": None if reduced is None else _reduced(reduced),
         "days": int(days.size),
         "years": round(days.size / JULIAN_YEAR_DAYS, 2),
@@ -165,9 +177,11 @@ def _site(
     }
 
 
-def _too_short(days: NDArray[np.datetime64], reduced: ReducedSite | None) -> str | None:
+def _unusable(days: NDArray[np.datetime64], records: Sequence[Record], reduced: ReducedSite | None) -> str | None:
     if reduced is not None or days.size >= LEAST_SITE_DAYS:
         return None
+    if not records:
+        return _UNREAD
     return f"{days.size} days that are well covered; a site needs {LEAST_SITE_DAYS}"
 
 

@@ -33,16 +33,18 @@ def check_text(found: Mapping[str, Any], *, plain: bool = False) -> str:
     Examples
     --------
     >>> print(check_text({"network": "N", "reference_year": 2016, "window": [None, None], "sites": [], "loads": [],
-    ...     "assumptions": ["Nothing."], "warnings": []}))
+    ...     "assumptions": ["Nothing."], "warnings": [], "faults": []}))
     N: 0 sites; phases count from 1 January 2016; window: all records
     <BLANKLINE>
     What will be assumed
       - Nothing.
     """
-    if "network" not in found:
+    if found["faults"] and not found["sites"]:
         return textwrap.fill(f"{found['source']} cannot be used as it is.", WIDTH)
     marks = LETTERS if plain else BLOCKS
     head = [_head(found)]
+    if found["faults"]:
+        head = textwrap.wrap(f"{found['source']} cannot be used as it is. This could be read of it:", WIDTH) + head
     if any(site["months"] for site in found["sites"]):
         head += textwrap.wrap(_legend(marks), WIDTH)
     blocks = [head, *(_site(site, marks) for site in found["sites"])]

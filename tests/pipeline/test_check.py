@@ -74,10 +74,39 @@ def test_every_fault_of_reading_is_found_at_once(network_folder: Path, change: C
     change('drift = "linear"', 'drift = "cubic"')
     check = check_network(network_folder)
     assert [fault["line"] for fault in check.found["faults"]] == [7, 28]
-    assert check.found["sites"] == []
+    # B could not be read for its drift, and A is nowhere
+    (b,) = check.found["sites"]
+    assert (b["id"], b["left_out"]) == ("B", "no record of it was read: see the faults")
+    assert check.found["assumptions"] == []
     with pytest.raises(InputError) as caught:
         refuse(check)
     assert caught.value.faults == check.faults
+
+
+def test_what_can_be_read_is_shown_beside_the_faults(
+    network_folder: Path, change: Callable[[str, str], None]
+) -> None:
+    whole = check_network(network_folder).found["sites"]
+    change('drift = "linear"', 'drift = "cubic"')
+    change('air_pressure = "not-forced"', 'air_pressure = "forced-excluded"')
+    header, *rows = (network_folder / "fields/air.csv").read_text().splitlines(keepends=True)[1:]
+    (network_folder / "fields/air.csv").write_text("".join([header, *rows[:300]]))
+    check = check_network(network_folder)
+    a, b = check.found["sites"]
+    assert {**a, "models": whole[0]["models"], "notes": []} == whole[0]
+    assert b["left_out"].startswith("no record of it was read")
+    # those of the file, then what a run would meet; the model's is told once
+    assert [fault["name"] for fault in check.found["faults"]] == [
+        "site[B].deployment[1].drift", "circulation[Invented model].air_pressure", "ocean_mean_atmosphere",
+    ]  # fmt: skip
+
+
+def test_a_wrong_section_leaves_nothing_to_show(network_folder: Path, change: Callable[[str, str], None]) -> None:
+    change("reference_year = 2016", "reference_year = 16")
+    check = check_network(network_folder)
+    assert check.found["sites"] == []
+    assert "network" not in check.found
+    assert len(check.faults) == 1
 
 
 def test_faults_that_a_run_would_meet_later_are_found_together(invented) -> None:

@@ -53,5 +53,9 @@ def test_json_is_json(found) -> None:
     assert json.loads(in_json(found)) == json.loads(json.dumps(found))
 
 
-def test_a_network_that_was_not_read() -> None:
-    assert check_text({"source": "a.toml", "sites": [], "faults": []}) == "a.toml cannot be used as it is."
+def test_a_network_with_faults(found) -> None:
+    assert check_text({"source": "a.toml", "sites": [], "faults": [{}]}) == "a.toml cannot be used as it is."
+    text = check_text({**found, "source": "a.toml", "assumptions": [], "faults": [{}]})
+    assert text.startswith("a.toml cannot be used as it is. This could be read of it:\n")
+    assert found["sites"][0]["id"] in text
+    assert "What will be assumed" not in text
