@@ -2,7 +2,7 @@
 
 import hashlib
 import json
-from pathlib import Path
+from pathlib import Path, PurePosixPath
 from typing import Any
 
 import xarray as xr
@@ -47,12 +47,19 @@ def _read_run(folder: Path) -> dict[str, Any]:
         content = json.loads(path.read_text(encoding="utf-8"))
         outputs = content["outputs"]
         outputs[RUN_FILE], outputs["estimate.json"]
+        if not all(_inside(name) for name in outputs):
+            raise ValueError("a name leads out of the folder")
     except OSError as error:
         problem = f"it is no results folder of massfit: {RUN_FILE} cannot be read ({error.strerror})"
         raise InputError(Fault(str(folder), "", problem, "", "Name the folder that massfit estimate wrote")) from error
     except (ValueError, LookupError, TypeError) as error:
         raise InputError(_damaged(folder, RUN_FILE, "the file is damaged or of another version")) from error
     return dict(content)
+
+
+def _inside(name: str) -> bool:
+    path = PurePosixPath(name)
+    return not path.is_absolute() and ".." not in path.parts
 
 
 def _faults(folder: Path, name: str, expected: str) -> list[Fault]:
