@@ -198,6 +198,8 @@ class Network(Described):
         Surface air pressure (time, lat, lon), Pa; replaces the two above.
     reduced : tuple of ReducedSite
         Phasors of sites that were reduced elsewhere; such a site has no records.
+    models_elsewhere : tuple of str
+        Models besides `circulation` that only such sites have subtracted.
     source : str
         Network file, as the analyst wrote it; empty when built in memory.
     inputs : mapping of str to str
@@ -232,9 +234,15 @@ class Network(Described):
     atmosphere_load: LoadPattern | None = None
     air_pressure: xr.DataArray | None = None
     reduced: tuple[ReducedSite, ...] = ()
+    models_elsewhere: tuple[str, ...] = ()
     source: str = ""
     inputs: Mapping[str, str] = field(default_factory=dict)
     warnings: tuple[str, ...] = ()
+
+    @property
+    def model_names(self) -> tuple[str, ...]:
+        """Every model that some site may have subtracted."""
+        return (*(model.name for model in self.circulation), *self.models_elsewhere)
 
     def describe(self) -> Description:
         """Say what the network holds."""
@@ -243,7 +251,9 @@ class Network(Described):
         valid = [times for times in (each.time[~np.isnat(each.time)] for each in self.records) if times.size]
         ends = [str(day)[:10] for times in valid for day in (times.min(), times.max())]
         span = f", {min(ends)} to {max(ends)}" if ends else ""
-        models, loads = (", ".join(each.name for each in group) or "none" for group in (self.circulation, self.loads))
+        models, loads = (
+            ", ".join(names) or "none" for names in (self.model_names, [pattern.name for pattern in self.loads])
+        )
         return f"Network: {frame.name}", {
             "phases from": f"1 January {frame.reference_year} 00:00 UTC",
             "sites": f"{len(self.sites)}, {left_out} left out, {len(self.reduced)} reduced elsewhere",
@@ -278,11 +288,11 @@ def check_network(network: Network) -> None:
     massfit.errors.InputError: network: corrections.ocean_mean_atmosphere: nothing is said about ...
     """
     source = network.source or "network"
-    models = [model.name for model in network.circulation]
+    models = network.model_names
     names = {
         "sites": [site.id for site in network.sites],
         "records": [record.deployment for record in network.records],
-        "circulation": models,
+        "circulation": list(models),
         "reduced": [each.site for each in network.reduced],
     }
     faults = [

@@ -15,7 +15,7 @@ from massfit.io.sections import Sections, shown
 from massfit.network import ReducedSite, reduced_faults
 from massfit.records.record import Record
 from massfit.settings import Corrections, Fingerprint, Frame
-from massfit.site import Site
+from massfit.site import LEAST_SITE_DAYS, Site
 
 _NO_OCEAN = 0.005  # ocean fraction of a quarter-degree cell below which a site is on land
 _MOST_SEARCHES = 50  # faults after which no nearest ocean is looked up, which takes its time
@@ -43,7 +43,7 @@ def check_choices(reading: Reading, sections: Sections) -> None:
         _check_fingerprint(reading, fingerprint, corrections)
     entries = [(table.path, table.entry) for table in sections.sites if table.entry is not None]
     check_unique(reading, [((*path, "id"), entry.id) for path, entry in entries])
-    check_unique(reading, [((*path, "name"), entry.name) for path, entry in sections.circulation])
+    check_unique(reading, _model_names(sections))
     for path, entry in entries:
         _check_place(reading, path, entry)
         _check_exclusions(reading, path, entry)
@@ -107,7 +107,12 @@ def check_coverage(
             check_values(reading, (*path, "deployment", number - 1), site, record, inside[record.deployment])
         else:
             reading.warnings.append(f"{record.deployment} has no data inside the window and is not used.")
-    if len(days) < _SHORT_YEARS * JULIAN_YEAR_DAYS:
+    if len(days) < LEAST_SITE_DAYS:
+        reading.warnings.append(
+            f"Site {site.id} has {len(days)} days of data and is left out: a site needs {LEAST_SITE_DAYS}. "
+            "Add records of it."
+        )
+    elif len(days) < _SHORT_YEARS * JULIAN_YEAR_DAYS:
         reading.warnings.append(
             f"Site {site.id} has {len(days)} days of data ({len(days) / JULIAN_YEAR_DAYS:.2f} years): drift and "
             f"annual cycle part only beyond about {_SHORT_YEARS} years, so its uncertainty is wide. "
@@ -224,14 +229,22 @@ def _check_reduced(reading: Reading, sections: Sections) -> None:
     """Note what cannot be in the sites that were reduced elsewhere."""
     tables = reading.document.get("circulation", [])
     # where a model's own table has a fault its name may be wrong there, not at the site
-    named = isinstance(tables, list) and len(tables) == len(sections.circulation)
+    models = [name for _, name in _model_names(sections)]
+    named = isinstance(tables, list) and len(tables) == len(models)
     for table in sections.sites:
         reduced = None if table.entry is None else table.entry.reduced()
         if table.entry is not None and reduced is not None:
             _check_phasor(reading, table.path, table.entry, reduced)
             if named:
                 path = (*table.path, _keys(table.entry)["models"])
-                _check_known(reading, path, reduced.models, [entry.name for _, entry in sections.circulation])
+                _check_known(reading, path, reduced.models, models)
+
+
+def _model_names(sections: Sections) -> list[tuple[KeyPath, str]]:
+    """Every model with its place, in the order of the file."""
+    names: list[tuple[KeyPath, str]] = [((*path, "name"), entry.name) for path, entry in sections.circulation]
+    names += [((*path, "name"), entry.name) for path, entry in sections.named_models]
+    return sorted(names)
 
 
 def _check_known(reading: Reading, path: KeyPath, models: Sequence[str], known: Sequence[str]) -> None:

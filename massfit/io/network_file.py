@@ -115,6 +115,7 @@ def read_what_can_be(
         loads=loads,
         circulation=circulation,
         reduced=_reduced(sections),
+        models_elsewhere=tuple(entry.name for _, entry in sections.named_models),
         source=reading.source,
         inputs=reading.inputs,
         warnings=tuple(reading.warnings),

@@ -59,6 +59,7 @@ def network_text(
     sites: Sequence[tuple[Site, Sequence[Mapping[str, Any]]]],
     circulation: Sequence[Mapping[str, Any]],
     reduced: Sequence[ReducedSite] = (),
+    models_elsewhere: Sequence[str] = (),
 ) -> str:
     """Text of a network file.
 
@@ -72,6 +73,8 @@ def network_text(
         As :func:`circulation_table` makes them.
     reduced : sequence of ReducedSite
         Sites that were reduced elsewhere.
+    models_elsewhere : sequence of str
+        Models that only those have subtracted.
 
     Returns
     -------
@@ -84,6 +87,7 @@ def network_text(
         _table("[network]", _values(settings.frame)),
         _table("[corrections]", _values(settings.corrections)),
         *(_table("[[circulation]]", entry) for entry in circulation),
+        *(_table("[[circulation]]", {"name": name, "subtracted_elsewhere": True}) for name in models_elsewhere),
         _table("[fingerprint]", _values(settings.fingerprint)),
         _table("[posterior]", _values(settings.posterior)),
         *([_table("[priors]", priors)] if priors else []),

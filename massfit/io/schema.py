@@ -147,6 +147,22 @@ class CirculationEntry:
     assimilates_satellite_gravity: bool = False
 
 
+@dataclass(frozen=True, config=_STRICT)
+class NamedModelEntry:
+    """`[[circulation]]` of a model that only sites reduced elsewhere have subtracted: its name and no file.
+
+    Parameters
+    ----------
+    name : str
+        Unique in the network.
+    subtracted_elsewhere : bool
+        True.
+    """
+
+    name: Text
+    subtracted_elsewhere: Literal[True]
+
+
 SETTINGS = {
     "network": Frame,
     "corrections": Corrections,

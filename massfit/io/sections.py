@@ -12,7 +12,7 @@ from pydantic_core import ErrorDetails
 from massfit.io.deployment import DeploymentFile
 from massfit.io.locate import KeyPath
 from massfit.io.reading import Reading, did_you_mean, nearest
-from massfit.io.schema import ALREADY_REDUCED, SECTIONS, SETTINGS, CirculationEntry, SiteEntry
+from massfit.io.schema import ALREADY_REDUCED, SECTIONS, SETTINGS, CirculationEntry, NamedModelEntry, SiteEntry
 
 _T = TypeVar("_T")
 
@@ -79,6 +79,7 @@ class Sections:
     settings: dict[str, Any]
     sites: tuple[SiteTable, ...]
     circulation: tuple[tuple[KeyPath, CirculationEntry], ...]
+    named_models: tuple[tuple[KeyPath, NamedModelEntry], ...]
 
 
 def parse_sections(reading: Reading) -> Sections:
@@ -99,12 +100,20 @@ def parse_sections(reading: Reading) -> Sections:
     sites = tuple(_site(reading, path, table) for path, table in _tables(reading, reading.document, ("site",)))
     if not sites and not reading.document.get("site"):
         reading.fault(("site",), "the network has no site", "Must be at least one", "Add a [[site]]")
-    circulation = [
-        (path, parse_table(reading, CirculationEntry, table, path))
-        for path, table in _tables(reading, reading.document, ("circulation",))
-    ]
+    circulation: list[tuple[KeyPath, CirculationEntry]] = []
+    named_models: list[tuple[KeyPath, NamedModelEntry]] = []
+    for path, table in _tables(reading, reading.document, ("circulation",)):
+        if "subtracted_elsewhere" in table:
+            _append(named_models, path, parse_table(reading, NamedModelEntry, table, path))
+        else:
+            _append(circulation, path, parse_table(reading, CirculationEntry, table, path))
     _gravity(reading)
-    return Sections(settings, sites, tuple((path, entry) for path, entry in circulation if entry is not None))
+    return Sections(settings, sites, tuple(circulation), tuple(named_models))
+
+
+def _append(entries: list[tuple[KeyPath, _T]], path: KeyPath, entry: _T | None) -> None:
+    if entry is not None:
+        entries.append((path, entry))
 
 
 def parse_table(reading: Reading, kind: type[_T], table: dict[str, Any], path: KeyPath) -> _T | None:
@@ -255,6 +264,8 @@ def _known_keys(kind: type, path: KeyPath) -> list[str]:
     if kind is SiteEntry and "exclude" in path:
         return ["from", "to", "reason"]
     names = [item.name for item in fields(kind)]
+    if kind is CirculationEntry:
+        return [*names, "subtracted_elsewhere"]
     return [*names, "deployment"] if kind is SiteEntry else names
 
 

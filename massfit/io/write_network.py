@@ -79,7 +79,8 @@ def write_network(
         for name in ("records", "fields"):
             (partial / name).mkdir()
         settings, models = _write_fields(network, partial), _write_models(network, partial)
-        text = network_text(settings, _write_records(network, partial), models, network.reduced)
+        sites = _write_records(network, partial)
+        text = network_text(settings, sites, models, network.reduced, network.models_elsewhere)
         (partial / "network.toml").write_text(text, encoding="utf-8")
         if truth is not None:
             (partial / "truth.json").write_text(json.dumps(truth, indent=2) + "\n", encoding="utf-8")

@@ -101,7 +101,7 @@ def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Map
     reductions = reduce_sites(tasks, progress, mapped)
     phasors = site_phasors(
         [reduction.fit for reduction in reductions],
-        models=[model.name for model in network.circulation],
+        models=network.model_names,
         reference_year=settings.frame.reference_year,
         reduced=[each for each in network.reduced if each.site in {site.id for site in sites}],
     )

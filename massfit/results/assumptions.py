@@ -21,7 +21,7 @@ def stated_assumptions(network: Network) -> tuple[str, ...]:
     return (
         _period(settings),
         *_corrections(network),
-        _circulation(network),
+        *_circulation(network),
         *_reduced_elsewhere(network),
         *_fingerprint(network),
         *_drift_and_noise(network),
@@ -74,16 +74,18 @@ def _corrections(network: Network) -> list[str]:
     ]
 
 
-def _circulation(network: Network) -> str:
+def _circulation(network: Network) -> list[str]:
     count = len(network.circulation)
+    if count == 0 and network.models_elsewhere and not network.records:
+        return []
     if count == 0:
-        return (
+        return [
             "No ocean circulation model was given: the circulation is part of the noise, and the spread between "
             "models is assumed from its prior, not seen."
-        )
+        ]
     names = ", ".join(f"{model.name} (air pressure {model.air_pressure})" for model in network.circulation)
     seen = "" if count > 1 else " With one model their spread is assumed from its prior, not seen."
-    return f"Ocean circulation is removed with {count} model{'s' if count > 1 else ''}: {names}.{seen}"
+    return [f"Ocean circulation is removed with {count} model{'s' if count > 1 else ''}: {names}.{seen}"]
 
 
 def _reduced_elsewhere(network: Network) -> list[str]:

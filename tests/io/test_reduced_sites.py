@@ -101,6 +101,30 @@ FAULTS = {
 }  # fmt: skip
 
 
+def test_a_model_may_have_a_name_only(network_folder: Path, change: Change, tmp_path: Path) -> None:
+    named = '[[circulation]]\nname = "Printed model"\nsubtracted_elsewhere = true\n\n'
+    change(DEPLOYMENT, MEAN.replace('["Invented model"]', '["Invented model", "Printed model"]') + "\n" + named)
+    network = read_network(network_folder)
+    assert network.model_names == ("Invented model", "Printed model")
+    assert network.reduced[0].mean_only
+    write_network(network, tmp_path / "out")
+    assert read_network(tmp_path / "out").models_elsewhere == ("Printed model",)
+
+
+@pytest.mark.parametrize(
+    ("table", "message"),
+    [
+        ('name = "Invented model"\nsubtracted_elsewhere = true\n', '"Invented model" stands twice'),
+        ('name = "X"\nsubtracted_elsewhere = false\n', "the value is false. Must be True"),
+        ('name = "X"\nsubtracted_elsewhere = true\nfile = "a.nc"\n', 'unknown key "file"'),
+    ],
+)
+def test_a_model_of_a_name_only_has_its_faults(network_folder: Path, change: Change, table: str, message: str) -> None:
+    change(DEPLOYMENT, f"{MEAN}\n[[circulation]]\n{table}\n")
+    with pytest.raises(InputError, match=message):
+        read_network(network_folder)
+
+
 @pytest.mark.parametrize("name", FAULTS)
 def test_every_fault_has_its_message(network_folder: Path, change: Change, name: str) -> None:
     text, messages = FAULTS[name]

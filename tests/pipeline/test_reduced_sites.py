@@ -118,6 +118,14 @@ def test_the_page_stands_without_records(all_of_three: Estimate) -> None:
     assert "The records and what was taken off them" not in page
 
 
+def test_a_model_that_only_such_sites_have_needs_no_field(all_of_three: Estimate) -> None:
+    network = all_of_three.network
+    models = tuple(model.name for model in network.circulation)
+    result = estimate(replace(network, circulation=(), models_elsewhere=models))
+    np.testing.assert_array_equal(result.posterior.annual, all_of_three.posterior.annual)
+    assert not any("No ocean circulation model" in text for text in result.summary["assumptions"])
+
+
 def test_a_site_that_is_left_out_stays_out(invented: Network, run: Estimate) -> None:
     first, second, _ = (reduction.fit for reduction in run.reductions)
     sites = tuple(replace(s, excluded_because="doubtful") if s.id == first.site else s for s in invented.sites)
