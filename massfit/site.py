@@ -4,6 +4,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+LEAST_SITE_DAYS = 90
+"""A site with fewer days cannot part an annual cycle from its own drift at all, and is left out."""
+
 
 @dataclass(frozen=True)
 class Interval:

@@ -18,12 +18,11 @@ from massfit.fingerprint.ocean import OceanFunction
 from massfit.io.network_file import read_what_can_be
 from massfit.network import Network, ReducedSite, Series
 from massfit.pipeline.air import network_air
-from massfit.pipeline.sites import LEAST_SITE_DAYS
 from massfit.records.clean import usable_samples
 from massfit.records.interval import spoken_interval
 from massfit.records.record import Record
 from massfit.results.assumptions import stated_assumptions
-from massfit.site import Site
+from massfit.site import LEAST_SITE_DAYS, Site
 
 LONG_ENOUGH_YEARS = 1.5
 """Below it the drift and the annual cycle of one record hardly part."""

@@ -20,13 +20,10 @@ from massfit.records.daily import reduce_to_daily
 from massfit.records.record import DailyRecord
 from massfit.results.estimate import SiteReduction
 from massfit.settings import Settings
-from massfit.site import Site
+from massfit.site import LEAST_SITE_DAYS, Site
 
 LEAST_DAYS = 180
 """Least number of days with data, over the whole network."""
-
-LEAST_SITE_DAYS = 90
-"""A site with fewer days cannot part an annual cycle from its own drift at all, and is left out."""
 
 
 @dataclass(frozen=True)

@@ -5,6 +5,7 @@ import textwrap
 from collections.abc import Mapping, Sequence
 from typing import Any
 
+from massfit.errors import printable
 from massfit.records.interval import spoken_interval
 
 WIDTH = 80
@@ -42,14 +43,14 @@ def check_text(found: Mapping[str, Any], *, plain: bool = False) -> str:
     if found["faults"] and not found["sites"]:
         return textwrap.fill(f"{found['source']} cannot be used as it is.", WIDTH)
     marks = LETTERS if plain else BLOCKS
-    head = [_head(found)]
+    head = _head(found)
     if found["faults"]:
         head = textwrap.wrap(f"{found['source']} cannot be used as it is. This could be read of it:", WIDTH) + head
     if any(site["months"] for site in found["sites"]):
         head += textwrap.wrap(_legend(marks), WIDTH)
     blocks = [head, *(_site(site, marks) for site in found["sites"])]
     blocks += [_list("What will be assumed", found["assumptions"]), _list("Warnings", found["warnings"])]
-    return "\n\n".join("\n".join(block) for block in blocks if block)
+    return "\n\n".join("\n".join(map(printable, block)) for block in blocks if block)
 
 
 def in_json(found: Mapping[str, Any]) -> str:
@@ -67,12 +68,12 @@ def in_json(found: Mapping[str, Any]) -> str:
     return json.dumps(found, indent=2, allow_nan=False)
 
 
-def _head(found: Mapping[str, Any]) -> str:
+def _head(found: Mapping[str, Any]) -> list[str]:
     first, last = found["window"]
     window = f"{first or 'first record'} to {last or 'last record'}" if first or last else "all records"
     count = len(found["sites"])
     rest = f"phases count from 1 January {found['reference_year']}; window: {window}"
-    return textwrap.fill(f"{found['network']}: {count} site{'s' if count != 1 else ''}; {rest}", WIDTH)
+    return textwrap.wrap(f"{found['network']}: {count} site{'s' if count != 1 else ''}; {rest}", WIDTH)
 
 
 def _legend(marks: Sequence[str]) -> str:

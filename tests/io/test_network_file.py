@@ -144,3 +144,12 @@ def test_a_byte_order_mark_is_no_fault(network_folder):
     file = network_folder / "network.toml"
     file.write_bytes(b"\xef\xbb\xbf" + file.read_bytes())
     assert read_network(network_folder).settings.frame.name == "Two invented sites"
+
+
+def test_a_site_too_short_to_be_used_is_announced(network_folder: Path) -> None:
+    path = network_folder / "records/a.csv"
+    rows = path.read_text().splitlines(keepends=True)
+    path.write_text("".join(rows[:60]))
+    assert read_network(network_folder).warnings == (
+        "Site A has 60 days of data and is left out: a site needs 90. Add records of it.",
+    )

@@ -49,6 +49,15 @@ def test_short_left_out_and_missing_are_said(found) -> None:
         assert sentence.replace("- ", "-") in text.replace("- ", "-")
 
 
+def test_control_characters_do_not_reach_the_terminal(found) -> None:
+    odd = deepcopy(found)
+    odd["sites"][0]["group"] = "\x1b[2Jnorth\u202e"
+    text = check_text(odd)
+    assert "north" in text
+    assert "\x1b" not in text
+    assert "\u202e" not in text
+
+
 def test_json_is_json(found) -> None:
     assert json.loads(in_json(found)) == json.loads(json.dumps(found))
 
