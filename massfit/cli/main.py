@@ -33,7 +33,8 @@ def main() -> None:
 @click.option("--overwrite", is_flag=True, help="Replace finished results.")
 @click.option("--outside", is_flag=True, help="Allow paths outside the network's folder.")
 @click.option("--quiet", is_flag=True, help="Print nothing but errors.")
-def estimate(network: Path, output: Path | None, overwrite: bool, outside: bool, quiet: bool) -> None:
+@click.option("--json", "as_json", is_flag=True, help="Print estimate.json instead of the summary.")
+def estimate(network: Path, output: Path | None, overwrite: bool, outside: bool, quiet: bool, as_json: bool) -> None:
     """Do the main job: from raw records to the network posterior.
 
     NETWORK is a network.toml or the folder that holds one. Writes a results
@@ -47,9 +48,11 @@ def estimate(network: Path, output: Path | None, overwrite: bool, outside: bool,
         result = estimate_to_folder(
             network, folder, overwrite=overwrite, outside=outside, progress=progress, workers=os.cpu_count() or 1
         )
-    if not quiet:
-        from massfit.report.text import summary_text
+    from massfit.report.text import summary_text
 
+    if as_json:
+        click.echo(json.dumps(result.summary, indent=2))
+    elif not quiet:
         click.echo(f"{summary_text(result.summary)}\n\nResults in {folder}: start with report.html")
     sys.exit(0 if result.summary["convergence"]["converged"] else NOT_TRUSTWORTHY)
 

@@ -1,5 +1,6 @@
 """Progress of the stages: a live line on a terminal, plain lines elsewhere."""
 
+import os
 import sys
 import time
 from collections.abc import Callable, Iterator
@@ -26,7 +27,7 @@ def shown_progress(*, quiet: bool) -> Iterator[Progress]:
     """
     if quiet:
         yield _ignore
-    elif sys.stderr.isatty():
+    elif sys.stderr.isatty() and os.environ.get("TERM") != "dumb":
         with _live() as tick:
             yield tick
     else:
@@ -54,12 +55,20 @@ class _PlainLines:
 
 @contextmanager
 def _live() -> Iterator[Progress]:
+    """Show one line a stage: its name, how far it is, the time it took and the time it still needs."""
     from rich.console import Console
-    from rich.progress import BarColumn, MofNCompleteColumn, TextColumn, TimeElapsedColumn
+    from rich.progress import BarColumn, MofNCompleteColumn, TextColumn, TimeElapsedColumn, TimeRemainingColumn
     from rich.progress import Progress as Bars
 
-    columns = (TextColumn("{task.description}"), BarColumn(bar_width=24), MofNCompleteColumn(), TimeElapsedColumn())
-    with Bars(*columns, console=Console(stderr=True)) as bars:
+    columns = (
+        TextColumn("{task.description:<18}", markup=False),
+        BarColumn(bar_width=16),
+        MofNCompleteColumn(),
+        TimeElapsedColumn(),
+        TimeRemainingColumn(elapsed_when_finished=False),
+        TextColumn("left", style="progress.remaining"),
+    )
+    with Bars(*columns, console=Console(stderr=True), refresh_per_second=4) as bars:
         known: dict[str, int] = {}
 
         def tick(stage: str, done: int, total: int) -> None:

@@ -21,9 +21,20 @@ def refusing_politely() -> Iterator[None]:
         count = len(error.faults)
         click.echo(f"massfit: {count} fault{'s' if count != 1 else ''} in the input; nothing was written.", err=True)
         for fault in error.faults:
-            click.echo(f"  - {fault}", err=True)
+            click.echo(_listed(str(fault)), err=True)
         sys.exit(WRONG_INPUT)
     except KeyboardInterrupt:
         text = "massfit: interrupted. What estimate had finished is kept: the same command goes on from there."
         click.echo(text, err=True)
         sys.exit(INTERRUPTED)
+
+
+def _listed(fault: str) -> str:
+    """Break a fault into lines on a terminal, but never a path or name within; elsewhere it stays one line."""
+    if not sys.stderr.isatty():
+        return f"  - {fault}"
+    import textwrap
+
+    return textwrap.fill(
+        fault, 80, initial_indent="  - ", subsequent_indent="    ", break_long_words=False, break_on_hyphens=False
+    )

@@ -175,6 +175,6 @@ def _share_dates(panels: Sequence[Axes]) -> None:
     for axes in panels:
         if spans:
             axes.set_xlim(min(low for low, _ in spans), max(high for _, high in spans))
-        locator = AutoDateLocator(minticks=3, maxticks=6)  # type: ignore[no-untyped-call]
+        locator = AutoDateLocator(minticks=3, maxticks=8)  # type: ignore[no-untyped-call]
         axes.xaxis.set_major_locator(locator)
         axes.xaxis.set_major_formatter(ConciseDateFormatter(locator, show_offset=False))  # type: ignore[no-untyped-call]

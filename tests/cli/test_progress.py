@@ -1,9 +1,8 @@
 """Progress goes to standard error: plain lines where there is no terminal, a live line where there is one."""
 
-import os
-import pty
-import subprocess
+import re
 import sys
+from collections.abc import Callable
 
 import pytest
 
@@ -12,10 +11,14 @@ from massfit.cli.progress import shown_progress
 _SCRIPT = """
 from massfit.cli.progress import shown_progress
 with shown_progress(quiet=False) as progress:
+    progress("sea-level equation", 0, 1)
+    progress("sea-level equation", 1, 1)
     for done in range(4):
         progress("site phasors", done, 3)
 print("the answer")
 """
+COMMAND = (sys.executable, "-c", _SCRIPT)
+STEERING = re.compile(r"\x1b\[[0-9;?]*[A-Za-z]")
 
 
 def test_plain_lines_name_each_stage_once(capsys: pytest.CaptureFixture[str]) -> None:
@@ -36,24 +39,31 @@ def test_quiet_shows_nothing(capsys: pytest.CaptureFixture[str]) -> None:
 
 
 @pytest.mark.parametrize(("variable", "coloured"), [({}, True), ({"NO_COLOR": "1"}, False)])
-def test_a_terminal_gets_a_live_line_and_no_colour_when_asked(variable: dict[str, str], coloured: bool) -> None:
-    ours, theirs = pty.openpty()
-    clean = {name: value for name, value in os.environ.items() if name not in {"NO_COLOR", "FORCE_COLOR"}}
-    environment = {**clean, "TERM": "xterm-256color", **variable}
-    command = [sys.executable, "-c", _SCRIPT]
-    with subprocess.Popen(command, stdout=subprocess.PIPE, stderr=theirs, env=environment) as process:
-        os.close(theirs)
-        assert process.stdout is not None
-        assert process.stdout.read() == b"the answer\n"
-    shown = b""
-    try:
-        while block := os.read(ours, 4096):
-            shown += block
-    except OSError:  # the other end of a closed terminal
-        pass
-    os.close(ours)
-    text = shown.decode()
-    assert "site phasors" in text
-    assert "3/3" in text
+def test_a_terminal_gets_a_live_line_and_no_colour_when_asked(
+    variable: dict[str, str], coloured: bool, on_terminal: Callable[..., tuple[str, str, int]]
+) -> None:
+    output, shown, _ = on_terminal(COMMAND, **variable)
+    assert output == "the answer\n"
+    # name, bar, parts, time taken and time left
+    assert re.search(r"site phasors .*3/3 .*\d:\d\d:\d\d.* \d:\d\d:\d\d.* left", STEERING.sub("", shown))
     # SGR sequences that set a colour (ECMA-48: 30-37, 38, 90-97)
-    assert ("\x1b[38;" in text or "\x1b[3" in text or "\x1b[9" in text) is coloured
+    assert ("\x1b[38;" in shown or "\x1b[3" in shown or "\x1b[9" in shown) is coloured
+
+
+@pytest.mark.parametrize("columns", [40, 80, 200])
+def test_a_live_line_fits_the_terminal_and_eighty_columns(
+    columns: int, on_terminal: Callable[..., tuple[str, str, int]]
+) -> None:
+    _, shown, _ = on_terminal(COMMAND, columns=columns)
+    lines = re.split(r"[\r\n]+", STEERING.sub("", shown))
+    assert any("sea-level equation" in line for line in lines)
+    assert max(map(len, lines)) <= min(columns, 80)
+
+
+def test_a_terminal_that_cannot_move_its_cursor_gets_plain_lines(
+    on_terminal: Callable[..., tuple[str, str, int]],
+) -> None:
+    output, shown, _ = on_terminal(COMMAND, TERM="dumb")
+    assert output == "the answer\n"
+    assert "\x1b" not in shown
+    assert shown.count("site phasors (3)") == 1

@@ -279,3 +279,14 @@ def test_figures_have_their_width_and_keep_all_text_on_the_sheet(count: int, wid
         drawn, slack = figure.get_tightbbox(), 0.5 / figure.dpi
         assert -slack <= drawn.x0 <= drawn.x1 <= width + slack
         assert -slack <= drawn.y0 <= drawn.y1 <= height + slack
+
+
+@pytest.mark.parametrize("days", [1, 3, 20, 100, 400, 700, 850, 930, 1000, 1090, 1300, 2000, 4000, 9000])
+def test_dates_of_records_of_any_length_have_ticks_without_overlap(days: int) -> None:
+    time = np.datetime64("2014-01-01T12", "ns") + np.arange(days) * np.timedelta64(1, "D")
+    wave = np.sin(np.arange(days) / 58.0)
+    figure = record_panels([RecordRow("A", [(time, wave, wave)], time, {}, time, wave, wave)])
+    figure.draw_without_rendering()
+    found = [label.get_window_extent().extents for label in figure.axes[0].get_xticklabels() if label.get_text()]
+    assert len(found) >= 2 or days == 1
+    assert overlaps(np.array(found).reshape(-1, 4)) == 0
