@@ -27,6 +27,11 @@ _COARSE_PA = 1.0
 """A step of single-precision numbers above this is worth a word, Pa."""
 _UNWRITTEN = 9.0e36
 """The NetCDF library fills floats that were never written with 9.97e36."""
+_NUMBER_ATTRIBUTES = {
+    "_FillValue": None, "missing_value": None, "valid_range": 2, "valid_min": 1, "valid_max": 1,
+    "scale_factor": 1, "add_offset": 1,
+}  # fmt: skip
+"""Attributes that must be numbers, and how many; any number where None."""
 
 Indexers = dict[str, Any]
 
@@ -66,6 +71,7 @@ def read_netcdf(path: Path, entry: DeploymentFile) -> Samples:
         with damage_as_fault(entry.file, str(variable.name)):
             stored = variable.isel(indexers, missing_dims="ignore").values
             stamps, centred = _stamps(dataset, time.isel(indexers, missing_dims="ignore"), entry)
+        _require_numbers(variable, entry)
         pressure = _unpacked(stored, variable.attrs) * factor
     known = ~np.isnat(stamps)
     actions = _coarse(stored, factor) + _undated(known)
@@ -107,7 +113,7 @@ def _only(names: list[str], entry: DeploymentFile) -> str:
 
 def _absent(source: str, name: str, given: str, known: list[str]) -> Fault:
     near = get_close_matches(given, known, n=1)
-    action = f"Did you mean {near[0]!r}?" if near else ""
+    action = f"Did you mean {near[0]!r}?" if near else f"Correct or remove `{name}`"
     return Fault(source, name, f"{given!r} is not in the file", f"Must be one of {', '.join(known) or 'none'}", action)
 
 
@@ -127,12 +133,12 @@ def _time_variable(dataset: xr.Dataset, variable: xr.DataArray, entry: Deploymen
         found = ", ".join(names) or "none"
         problem = f"time variables along {variable.name!r}: {found}"
         allowed = "Must be one, with units like 'seconds since 1970-01-01' and the standard name time"
-        raise InputError(Fault(entry.file, "time", problem, allowed))
+        raise InputError(Fault(entry.file, "time", problem, allowed, "Add or correct these attributes"))
     time = dataset[names[0]]
     calendar = str(time.attrs.get("calendar", "standard"))
     if calendar not in _CALENDARS:
         problem = f"the calendar of {names[0]!r} is {calendar!r}"
-        raise InputError(Fault(entry.file, "time", problem, f"Must be one of {', '.join(_CALENDARS)}"))
+        raise InputError(Fault(entry.file, "time", problem, f"Must be one of {', '.join(_CALENDARS)}", "Convert them"))
     return time
 
 
@@ -174,7 +180,8 @@ def _station_indexers(
     wide = [dim for dim in extra if dataset.sizes[dim] > 1]
     if len(wide) > 1:
         problem = f"{variable.name!r} has the dimensions {variable.dims}"
-        raise InputError(Fault(entry.file, str(variable.name), problem, "Must be time and at most station"))
+        allowed, action = "Must be time and at most station", "Write one series to a file of its own"
+        raise InputError(Fault(entry.file, str(variable.name), problem, allowed, action))
     station = _station_index(identity, dataset.sizes[wide[0]] if wide else 1, entry)
     return {dim: station if dim in wide else 0 for dim in extra}
 
@@ -205,9 +212,7 @@ def _station_ids(identity: xr.DataArray | None) -> list[str]:
     return [as_text(value) for value in values]
 
 
-def _stamps(
-    dataset: xr.Dataset, time: xr.DataArray, entry: DeploymentFile
-) -> tuple[NDArray[np.datetime64], bool]:
+def _stamps(dataset: xr.Dataset, time: xr.DataArray, entry: DeploymentFile) -> tuple[NDArray[np.datetime64], bool]:
     """UTC stamps, and whether they are known to be the middles of intervals."""
     stamps = _decoded(time.values, time.attrs, entry)
     name = time.attrs.get("bounds")
@@ -226,10 +231,23 @@ def _decoded(values: NDArray[Any], attributes: dict[str, Any], entry: Deployment
     dims = [f"axis_{axis}" for axis in range(values.ndim)]
     try:
         decoded = xr.decode_cf(xr.Dataset({"stamps": (dims, values, kept)}))["stamps"].values
-    except (ValueError, ImportError) as error:
-        problem = f"the time cannot be decoded ({str(error).splitlines()[0]})"
-        raise InputError(Fault(entry.file, "time", problem, "Must be within the years 1678 to 2262")) from error
+    except (ValueError, ImportError, OverflowError) as error:
+        problem = f"the times in {str(attributes['units'])!r} cannot be decoded"
+        allowed = "Must be like 'seconds since 1970-01-01', in the years 1678 to 2262"
+        raise InputError(Fault(entry.file, "time", problem, allowed, "Correct the units of the time")) from error
     return np.asarray(decoded, dtype="datetime64[ns]")
+
+
+def _require_numbers(variable: xr.DataArray, entry: DeploymentFile) -> None:
+    faults = []
+    for key, size in _NUMBER_ATTRIBUTES.items():
+        value = np.asarray(variable.attrs.get(key, np.zeros(size or 1)))
+        if value.dtype.kind not in "iufb" or (size is not None and value.size != size):
+            problem, allowed = f"{key} is {value.tolist()!r}", "Must be a number"
+            allowed = "Must be two numbers" if size == 2 else allowed
+            faults.append(Fault(entry.file, str(variable.name), problem, allowed, "Correct the attribute"))
+    if faults:
+        raise InputError(faults)
 
 
 def _unpacked(stored: NDArray[Any], attributes: dict[str, Any]) -> NDArray[np.float64]:

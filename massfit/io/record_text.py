@@ -21,6 +21,7 @@ from massfit.io.units import pascal_per_unit
 from massfit.records.record import Action
 
 _CHUNK_LINES = 500_000
+_LONGEST_LINE = 100_000  # characters; a file without ends of lines must not fill the memory
 _KIND = "kind"
 _PRESSURE = "pressure"
 
@@ -147,7 +148,7 @@ def _layout(file: TextIO, entry: DeploymentFile) -> _Layout:
 
 def _rows(file: TextIO, entry: DeploymentFile) -> Iterator[tuple[int, list[str]]]:
     """Line numbers and fields of the rows that are no comments."""
-    for number, line in enumerate(file, start=1):
+    for number, line in enumerate(_lines(file, entry.file), start=1):
         if _is_data(line, entry.comment):
             yield number, [field.strip().strip('"') for field in line.rstrip("\r\n").split(entry.delimiter)]
 
@@ -155,7 +156,21 @@ def _rows(file: TextIO, entry: DeploymentFile) -> Iterator[tuple[int, list[str]]
 def _first_row(rows: Iterator[tuple[int, list[str]]], entry: DeploymentFile) -> tuple[int, list[str]]:
     for row in rows:
         return row
-    raise InputError(Fault(entry.file, "", "the file has no row of data"))
+    raise InputError(_no_row(entry))
+
+
+def _lines(file: TextIO, source: str) -> Iterator[str]:
+    number = 0
+    while line := file.readline(_LONGEST_LINE):
+        number += 1
+        if len(line) == _LONGEST_LINE and not line.endswith("\n"):
+            problem = f"the line has {_LONGEST_LINE} characters or more"
+            raise InputError(Fault(source, "", problem, "Must be rows of a few numbers", "Check the file", number))
+        yield line
+
+
+def _no_row(entry: DeploymentFile) -> Fault:
+    return Fault(entry.file, "", "the file has no row of data", action="Check the file and `comment`")
 
 
 def _is_data(line: str, comment: str) -> bool:
@@ -203,7 +218,8 @@ def _sole_pressure(names: tuple[str, ...], time: tuple[str, ...]) -> str:
 
 def _no_column(source: str, key: str, name: str, names: tuple[str, ...]) -> Fault:
     near = get_close_matches(name, names, n=1)
-    action = f"Did you mean {near[0]!r}?" if near else f"State `{key}` or `columns`"
+    keys = " or ".join(f"`{each}`" for each in dict.fromkeys((key, "columns")))
+    action = f"Did you mean {near[0]!r}?" if near else f"State {keys}"
     return Fault(source, key, f"there is no column {name!r}", f"The columns are {', '.join(names)}", action)
 
 
@@ -224,13 +240,13 @@ def _table(file: TextIO, layout: _Layout, entry: DeploymentFile) -> tuple[pd.Dat
         bad = np.zeros(lines.size, dtype=bool)
         faults.append(line_fault(entry.file, "fields in the row", counts, bad, lines, f"Must be {len(layout.names)}"))
     if not parts:
-        raise InputError([*faults, Fault(entry.file, "", "the file has no row of data")])
+        raise InputError([*faults, _no_row(entry)])
     return pd.concat(parts), faults
 
 
 def _chunks(file: TextIO, layout: _Layout, entry: DeploymentFile) -> Iterator[tuple[NDArray[np.int64], list[str]]]:
     """Numbers and texts of the rows of data, a bounded number of lines at a time."""
-    numbered = enumerate(file, start=1)
+    numbered = enumerate(_lines(file, entry.file), start=1)
     while block := list(islice(numbered, _CHUNK_LINES)):
         rows = [row for row in block if row[0] > layout.header_line and _is_data(row[1], entry.comment)]
         yield np.array([number for number, _ in rows], dtype=np.int64), [line for _, line in rows]
@@ -242,9 +258,7 @@ def _field_counts(lines: list[str], delimiter: str | None) -> NDArray[np.int64]:
     return np.fromiter((line.count(delimiter) + 1 for line in lines), dtype=np.int64, count=len(lines))
 
 
-def _parsed(
-    lines: list[str], numbers: NDArray[np.int64], layout: _Layout, entry: DeploymentFile
-) -> pd.DataFrame:
+def _parsed(lines: list[str], numbers: NDArray[np.int64], layout: _Layout, entry: DeploymentFile) -> pd.DataFrame:
     # names may repeat among the columns that are not used
     positions = [layout.names.index(name) for name in layout.used]
     texts = [position for position in positions if layout.names[position] in (_KIND, *layout.time)]

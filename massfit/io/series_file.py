@@ -16,6 +16,7 @@ from massfit.network import Series
 
 _NOTE = re.compile(r"#\s*(units|stamp)\s*:\s*(.*?)\s*$")
 _STAMPS = ("middle", "start")
+_MOST_BYTES = 2**26  # two years of minutes
 
 
 _LARGEST_SD = 2e3
@@ -63,6 +64,9 @@ def _read_netcdf(path: Path, source: str) -> tuple[NDArray[np.datetime64], NDArr
 
 
 def _read_csv(path: Path, source: str) -> tuple[NDArray[np.datetime64], NDArray[np.float64]]:
+    if path.stat().st_size > _MOST_BYTES:
+        problem, allowed = f"the file has {path.stat().st_size} bytes", f"Must be at most {_MOST_BYTES} as text"
+        raise InputError(Fault(source, "", problem, allowed, "Check the path, or write NetCDF"))
     try:
         lines = path.read_text(encoding="utf-8-sig").splitlines()
     except UnicodeDecodeError as error:

@@ -150,6 +150,7 @@ def parsed_time(
     """
     since = _SINCE.fullmatch(time_format)
     if since:
+        _require_date(since[2], time_format, source)
         time = _counted(pd.to_numeric(texts, errors="coerce").to_numpy(dtype=float), since[1], since[2])
         allowed = f"Must be a number of {time_format}"
     else:
@@ -158,7 +159,11 @@ def parsed_time(
             allowed = "Must be 'iso', a strptime format with a year, or like 'days since 1950-01-01'"
             raise InputError(Fault(source, "time_format", problem, allowed))
         pandas_format = "ISO8601" if time_format == "iso" else time_format
-        parsed = pd.to_datetime(texts, format=pandas_format, errors="coerce", utc=True)
+        try:
+            parsed = pd.to_datetime(texts, format=pandas_format, errors="coerce", utc=True)
+        except ValueError as error:
+            problem = f"{time_format!r} is not a time format ({error})"
+            raise InputError(Fault(source, "time_format", problem, action="Use the directives of strptime")) from error
         in_range = parsed.dt.year.between(*_YEARS)
         time = parsed.where(in_range).dt.tz_localize(None).to_numpy(dtype="datetime64[ns]")
         allowed = "Must be ISO 8601, UTC" if time_format == "iso" else f"Must be of the form {time_format!r}"
@@ -169,6 +174,14 @@ def parsed_time(
     return time
 
 
+def _require_date(text: str, time_format: str, source: str) -> None:
+    try:
+        np.datetime64(text, "ms")
+    except ValueError as error:
+        problem = f"{time_format!r} counts from no date ({error})"
+        raise InputError(Fault(source, "time_format", problem, "Must be like 'days since 1950-01-01'")) from error
+
+
 def _counted(count: NDArray[np.float64], unit: str, origin: str) -> NDArray[np.datetime64]:
     """Origin plus a count of units; in milliseconds, because 292 years of ns overflow. NaT outside the years read."""
     first, end = (np.datetime64(f"{year}-01-01", "ms") for year in (_YEARS[0], _YEARS[1] + 1))
@@ -177,5 +190,3 @@ def _counted(count: NDArray[np.float64], unit: str, origin: str) -> NDArray[np.d
     known = (elapsed >= since[0]) & (elapsed < since[1])
     time = np.datetime64(origin, "ms") + np.where(known, elapsed, since[0]).astype("timedelta64[ms]")
     return np.where(known, time.astype("datetime64[ns]"), np.datetime64("NaT"))
-
-

@@ -80,12 +80,12 @@ ocean_mean_atmosphere_sd_hpa = 0.04
 
 [[circulation]]
 name = "Invented model"
-file = "model.nc"
+file = "model.3.nc"
 ocean_mean = "removed"
 air_pressure = "not-forced"
 
 [fingerprint]
-loads = ["loads.nc", "builtin:nominal"]
+loads = ["loads.3.nc"]
 water_vapour_peak = "07-15"
 
 [posterior]
@@ -121,9 +121,13 @@ NASTY = [
     "\x00", "\x1b[2J", "\u202e", "\ufeff", '"', "'", '"""', "[", "]", "[[", "{", "}", "=", ".", "#", ",", ";",
     "\n", "\r", "\r\n", "\t", "-", "nan", "inf", "-inf", "1e999", "9" * 30, "9" * 5000, "-0", "0x7f", "1_0", "true",
     "null", "[" * 200, "0001-01-01", "9999-12-31T23:59:59-12:00", "2014-02-30", "1677-09-21", "2262-04-12T00:00:00Z",
-    "24:00:00", "\\u0000", "../", "/dev/zero", "http://", "é", "\udce9", "%Y", "%", "A", "9223372036854775808", "1e-320", "a" * 300,
+    "24:00:00", "\\u0000", "../", "/dev/zero", "http://", "é", "\udce9", "%Y", "%", "A", "9223372036854775808",
+    "1e-320", "a" * 300,
 ]  # fmt: skip
 WORDS = [0, 1, 0x7F, 0xFF, 0x7FFF, 0x7FFFFFFF, 0x80000000, 0xFFFFFFFF, 2**28, 2**30, 2**62, 2**63 - 1, 2**64 - 1]
+
+
+KINDS = ("record", "stations", "model", "field", "series", "loads", "months", "land")
 
 
 def time_and_wave(days: int) -> tuple[np.ndarray, np.ndarray]:
@@ -289,7 +293,7 @@ def text_case(folder: Path, dice: random.Random) -> object:
 
 
 def netcdf_case(folder: Path, dice: random.Random) -> object:
-    kind = dice.choice(list(base_datasets()))
+    kind = dice.choice(KINDS)
     original = folder / f"{kind}{dice.choice(['', '.3'])}.nc"
     (folder / "damaged.nc").write_bytes(damaged_bytes(original.read_bytes(), dice))
     return read_data(folder, kind, "damaged.nc")
@@ -335,7 +339,7 @@ def main() -> None:
     with tempfile.TemporaryDirectory() as name:
         folder = Path(name)
         write_base(folder)
-        for check in base_datasets():
+        for check in KINDS:
             read_data(folder, check, f"{check}.nc")
             read_data(folder, check, f"{check}.3.nc")
         read_network(folder)
