@@ -76,9 +76,9 @@ class PartialFolder:
             The folder cannot be written.
         """
         content = encode(value)
+        aside = self.place / "new"
         with writing(self.results):
             self._parts.mkdir(exist_ok=True)
-            aside = self._parts / f"{key}.new"
             aside.write_bytes(_checksum(key, content) + content)
             aside.replace(self._parts / key)
         return decode(content)

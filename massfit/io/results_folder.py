@@ -136,7 +136,8 @@ def write_dataset(path: Path, dataset: xr.Dataset) -> None:
             encoding[name] = {"zlib": True, "complevel": 4, "shuffle": True, "fletcher32": True}
             if variable.dtype.kind == "f" and name not in dataset.coords:
                 encoding[name]["_FillValue"] = np.nan
-    dataset.to_netcdf(path, engine="h5netcdf", encoding=encoding)
+    # made in memory: the library for HDF5 does not tell reliably when a disk is full
+    path.write_bytes(dataset.to_netcdf(engine="h5netcdf", encoding=encoding))
 
 
 def file_digest(path: Path) -> str:

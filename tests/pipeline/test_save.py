@@ -2,6 +2,7 @@
 
 import csv
 import json
+import resource
 from collections.abc import Callable
 from pathlib import Path
 
@@ -12,9 +13,12 @@ import xarray as xr
 
 from massfit.errors import InputError
 from massfit.io import results_folder
+from massfit.io.partial_folder import claimed
+from massfit.io.results_folder import write_results
 from massfit.pipeline import save
 from massfit.pipeline.save import save_results
 from massfit.results.estimate import Estimate
+from massfit.results.finished import finished_run
 
 DATASETS = ("posterior.nc", "site_phasors.nc", "fingerprints.nc", "reduced_records.nc")
 BOTH_WIDTHS = ("phasor_plane", "network_map", "fingerprint", "corner")
@@ -207,3 +211,19 @@ def test_old_results_outlive_a_failed_replacement(run: Estimate, tmp_path: Path,
         save_results(run, place, overwrite=True)
     assert content(place) == before
     assert [path.name for path in tmp_path.iterdir()] == ["results"]
+
+
+def test_no_file_may_grow_too_large_for_the_disk_unnoticed(run: Estimate, tmp_path: Path) -> None:
+    finished = finished_run(run, command="")
+    largest = max(len(dataset.to_netcdf(engine="h5netcdf")) for dataset in finished.datasets.values())
+    soft, hard = resource.getrlimit(resource.RLIMIT_FSIZE)
+    for limit in (200, 20_000, largest // 4, largest // 2):
+        with claimed(tmp_path / "results") as partial:
+            # the kernel refuses to let a file grow beyond this, as it refuses when a disk is full
+            resource.setrlimit(resource.RLIMIT_FSIZE, (limit, hard))
+            try:
+                with pytest.raises(InputError, match=r"cannot be written \(File too large\)"):
+                    write_results(partial, finished, pictures={}, page="")
+            finally:
+                resource.setrlimit(resource.RLIMIT_FSIZE, (soft, hard))
+        assert list(tmp_path.iterdir()) == []
