@@ -20,7 +20,7 @@ from massfit.report.fingerprint_members import fingerprint_members
 from massfit.report.network_map import network_map
 from massfit.report.phasor_plane import phasor_plane
 from massfit.report.record_panels import ROWS_OF_A_PAGE, RecordRow, record_panels
-from massfit.report.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM
+from massfit.report.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM, house_style
 from massfit.results.finished import FinishedRun
 
 SCALE_WORDS = {"s_site": "site scatter", "s_local": "models at a site", "s_common": "model spread"}
@@ -68,7 +68,9 @@ def png(figure: Figure) -> bytes:
     """Render a figure as PNG, finer where it is to be a column wide."""
     picture = io.BytesIO()
     narrow = figure.get_size_inches()[0] * 25.4 < 0.5 * (COLUMN_WIDTH_MM + PAGE_WIDTH_MM)
-    figure.savefig(picture, format="png", dpi=300 if narrow else 200)
+    with house_style():
+        # packed a little looser than the default: a twentieth larger, and a fifth of the time saved
+        figure.savefig(picture, format="png", dpi=300 if narrow else 200, pil_kwargs={"compress_level": 3})
     return picture.getvalue()
 
 

@@ -1,5 +1,6 @@
 """One look for every figure: plain, colour-blind safe, readable in grey, at the width of a page or of a column."""
 
+import warnings
 from collections.abc import Iterator
 from contextlib import contextmanager
 from typing import Any
@@ -51,7 +52,9 @@ _SETTINGS: dict[Any, Any] = {
 @contextmanager
 def house_style() -> Iterator[None]:
     """Draw what is inside in the house style, leaving the user's own settings alone."""
-    with mpl.rc_context(_SETTINGS):
+    with mpl.rc_context(_SETTINGS), warnings.catch_warnings():
+        # a script that the font does not hold is drawn as boxes; the page beside it has the name
+        warnings.filterwarnings("ignore", message="Glyph .* missing from font")
         yield
 
 

@@ -171,6 +171,17 @@ def test_a_name_with_dollar_signs_is_no_formula() -> None:
     assert len(png(plane)) > 10_000
 
 
+@pytest.mark.filterwarnings("error")
+def test_a_name_in_a_script_that_the_font_lacks_does_not_disturb() -> None:
+    name = "深海観測点"
+    figures = [
+        record_panels([record_row(name)]),
+        phasor_plane(DRAWS, [name], PHASORS[:1], COVARIANCES[:1], reference_year=2016),
+        fingerprint_members([name], [name], np.ones((1, 1), dtype=complex)),
+    ]
+    assert all(len(png(figure)) > 1_000 for figure in figures)
+
+
 # names beside points
 
 
