@@ -8,6 +8,7 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from massfit.constants import PASCAL_PER_HPA
+from massfit.display import counted
 from massfit.phasor import as_complex
 from massfit.posterior.convergence import worse
 from massfit.posterior.network_model import pooled_moments, second_routes
@@ -100,8 +101,10 @@ def _other_models(choice: _Choice) -> Iterator[tuple[str, list[ScalePosterior]]]
     for model in real if len(real) > 1 else []:
         fewer, left = choice.observations.without_model(model)
         if left.any():
+            # sites that say nothing without it: it is their only model, or only the mean over several is known
+            lost = int((~left).sum())
             yield (
-                f"without model {model}",
+                f"without model {model}" + (f" and {counted(lost, 'site')}" if lost else ""),
                 replace(choice, observations=fewer, admittance=choice.admittance[:, left]).routes(),
             )
     for word, factor in (("half", 0.5), ("double", 2.0)):

@@ -94,6 +94,9 @@ def test_the_summary_says_what_is_not_known(run: Estimate, two_of_three: Estimat
     assert f"{second.site} (2014 to 2015, less the mean of {models})" in text
     assert f"{first.site} (2014 to 2015, less {models} one by one)" in text
     assert two_of_three.summary["left_out"] == {}
+    # the site of which only the mean is known cannot stay when one of its models goes
+    names = {alternative["name"] for alternative in two_of_three.summary["alternatives"]}
+    assert {f"without model {model} and 1 site" for model in first.models} <= names
     json.dumps(dict(two_of_three.summary), allow_nan=False)
 
 
