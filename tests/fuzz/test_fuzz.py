@@ -13,7 +13,7 @@ from pathlib import Path
 import pytest
 
 CHILD = Path(__file__).with_name("child.py")
-LOT = 500  # seeds given to a child at once
+LOT = 2000  # seeds given to a child at once
 
 
 def answers(kind: str, seeds: range) -> Iterator[tuple[int, str]]:
