@@ -53,7 +53,9 @@ def _by_site(data: xr.DataArray, sites: Collection[str], source: str) -> xr.Data
     ids = [as_text(value) for value in data["site"].to_numpy()]
     repeated = sorted({site for site in ids if ids.count(site) > 1})
     if repeated:
-        raise InputError(Fault(source, "site", f"sites stand twice: {', '.join(repeated)}", "Must be unique"))
+        raise InputError(
+            Fault(source, "site", f"sites stand twice: {', '.join(repeated)}", "Must be unique", "Keep one of each")
+        )
     if not set(ids) & set(sites):
         problem = f"none of its {len(ids)} sites ({', '.join(ids[:3])}, ...) is in the network"
         action = did_you_mean(nearest(ids[0], sites) if ids else None, "Use the ids of the network file")
@@ -65,5 +67,7 @@ def _by_cell(data: xr.DataArray, source: str) -> xr.DataArray:
     for name in ("lat", "lon"):
         steps = np.diff(data[name].to_numpy().astype(float))
         if not (steps > 0).all() and not (steps < 0).all():
-            raise InputError(Fault(source, name, "the coordinate is not monotonic", "Must rise or fall throughout"))
+            raise InputError(
+                Fault(source, name, "the coordinate is not monotonic", "Must rise or fall throughout", "Sort it")
+            )
     return data

@@ -170,11 +170,13 @@ def _variable(dataset: xr.Dataset, name: str, dims: tuple[str, ...], source: str
         raise InputError(Fault(source, name, "the variable is missing", allowed, "Add it"))
     if set(dataset[name].dims) - {"member"} != set(dims):
         found = ", ".join(str(dim) for dim in dataset[name].dims)
-        raise InputError(Fault(source, name, f"the dimensions are ({found})", allowed))
+        raise InputError(Fault(source, name, f"the dimensions are ({found})", allowed, "Drop the others"))
     data = load(decoded(dataset, name, source=source), source=source).astype(np.float64)
     require_global_grid(data["lat"].to_numpy(), data["lon"].to_numpy(), source=source)
     if np.isinf(data.to_numpy()).any():
-        raise InputError(Fault(source, name, "some values are infinite", "Must be finite, or NaN for no load"))
+        raise InputError(
+            Fault(source, name, "some values are infinite", "Must be finite, or NaN for no load", "Correct them")
+        )
     return data.transpose(..., *dims)
 
 
@@ -190,11 +192,13 @@ def _months(dataset: xr.Dataset, source: str) -> xr.DataArray:
     data = _variable(dataset, "load", ("month", "lat", "lon"), source)
     if data.sizes["month"] != 12:
         problem = f"there are {data.sizes['month']} months"
-        raise InputError(Fault(source, "load", problem, "Must be the twelve months of a climatology"))
+        raise InputError(
+            Fault(source, "load", problem, "Must be the twelve months of a climatology", "Average the years")
+        )
     if "month" in data.coords and data["month"].dtype.kind in "iuf":
         if sorted(data["month"].to_numpy().tolist()) != list(range(1, 13)):
             problem = f"the months are {data['month'].to_numpy().tolist()}"
-            raise InputError(Fault(source, "month", problem, "Must be 1 to 12"))
+            raise InputError(Fault(source, "month", problem, "Must be 1 to 12", "Renumber them"))
         data = data.sortby("month")
     return data
 
@@ -213,7 +217,9 @@ def _require_load_units(dataset: xr.Dataset, source: str) -> None:
 def _load_area(dataset: xr.Dataset, name: str, source: str) -> str:
     area = dataset[name].attrs.get("load_area", dataset.attrs.get("load_area", "cell"))
     if area not in ("cell", "land"):
-        raise InputError(Fault(source, "load_area", f"the value is {area!r}", "Must be 'cell' or 'land'"))
+        raise InputError(
+            Fault(source, "load_area", f"the value is {area!r}", "Must be 'cell' or 'land'", "Correct the attribute")
+        )
     return str(area)
 
 

@@ -71,14 +71,18 @@ def _read_csv(path: Path, source: str) -> tuple[NDArray[np.datetime64], NDArray[
         lines = path.read_text(encoding="utf-8-sig").splitlines()
     except UnicodeDecodeError as error:
         problem = "the file is neither NetCDF nor UTF-8 text"
-        raise InputError(Fault(source, "", problem, "Must be one of them")) from error
+        raise InputError(
+            Fault(source, "", problem, "Must be one of them", "Check the path, or save it as UTF-8")
+        ) from error
     notes = {match[1]: match[2] for match in map(_NOTE.match, lines) if match}
     rows = [(number, line) for number, line in enumerate(lines, 1) if line.strip() and not line.startswith("#")]
     factor = _factor(notes, source)
     header = [column.strip() for column in rows[0][1].split(",")] if rows else []
     if header != ["time", "value"]:
         problem = f"the header is {','.join(header)!r}"
-        raise InputError(Fault(source, "", problem, "Must be time,value", line=rows[0][0] if rows else 1))
+        raise InputError(
+            Fault(source, "", problem, "Must be time,value", "Name the columns", rows[0][0] if rows else 1)
+        )
     numbers = np.array([number for number, _ in rows[1:]], dtype=np.int64)
     time, values = _columns([line for _, line in rows[1:]], numbers, source)
     if notes.get("stamp") == "start":
@@ -91,7 +95,9 @@ def _factor(notes: dict[str, str], source: str) -> float:
         action = 'Add the line "# units: hPa" at the top'
         raise InputError(Fault(source, "units", "no units are stated", "Must be a pressure such as Pa or hPa", action))
     if notes.get("stamp", "middle") not in _STAMPS:
-        raise InputError(Fault(source, "stamp", f"the stamp is {notes['stamp']!r}", 'Must be "middle" or "start"'))
+        raise InputError(
+            Fault(source, "stamp", f"the stamp is {notes['stamp']!r}", 'Must be "middle" or "start"', "Correct it")
+        )
     return pascal_of_field(notes["units"], source=source, name="units")
 
 
@@ -124,7 +130,9 @@ def _numbers(texts: list[str], numbers: NDArray[np.int64], source: str, faults: 
     if wrong.size:
         more = f" (and {wrong.size - 1} more lines)" if wrong.size > 1 else ""
         problem = f"the value is {texts[wrong[0]]!r}{more}"
-        faults.append(Fault(source, "value", problem, "Must be a number, or empty", line=int(numbers[wrong[0]])))
+        faults.append(
+            Fault(source, "value", problem, "Must be a number, or empty", "Correct it", int(numbers[wrong[0]]))
+        )
     return values
 
 

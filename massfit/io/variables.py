@@ -134,7 +134,9 @@ def pick(dataset: xr.Dataset, shapes: Sequence[tuple[str, ...]], *, source: str,
         if variable not in known:
             action = did_you_mean(nearest(variable, known), "Variables are " + ", ".join(known))
             raise InputError(Fault(source, variable, f'no variable "{variable}"', wanted, action))
-        raise InputError(Fault(source, variable, f"the dimensions are {_dims(dataset[variable])}", wanted))
+        raise InputError(
+            Fault(source, variable, f"the dimensions are {_dims(dataset[variable])}", wanted, "Choose another")
+        )
     if len(fitting) > 1:
         with_units = [name for name in fitting if "units" in dataset[name].attrs and not _is_bounds(dataset, name)]
         fitting = with_units if len(with_units) == 1 else fitting
@@ -178,7 +180,11 @@ def decoded(dataset: xr.Dataset, name: str, *, source: str) -> xr.DataArray:
     try:
         clear = xr.decode_cf(dataset[wanted])
     except (ValueError, TypeError, ImportError, OverflowError) as error:
-        raise InputError(Fault(source, "time", f"the times cannot be read ({error})", "Must be CF, UTC")) from error
+        told = {key: dataset["time"].attrs.get(key) for key in ("units", "calendar")}
+        shown = ", ".join(f"{key} {value!r}" for key, value in told.items() if value is not None)
+        problem = f"the times cannot be read ({shown})"
+        allowed = "Must be like 'days since 2014-01-01', UTC, standard calendar"
+        raise InputError(Fault(source, "time", problem, allowed, "Convert them")) from error
     stamps = clear[bounds].to_numpy() if len(wanted) > 1 else clear["time"].to_numpy()
     stamps = _instants(stamps, source=source)
     if stamps.ndim == 2:  # CF bounds: first and last instant of each interval

@@ -83,13 +83,14 @@ def test_the_variable_is_stated_where_two_could_be_meant(tmp_path: Path) -> None
          "Must be a pressure such as Pa or hPa. Convert the values."),
         (field(time=TIME[::-1]), "m.nc: time: 2015-01-09T00:00:00 follows 2015-01-10T00:00:00. Times must increase. "
          "Sort them and drop repeats."),
-        (field(lat=np.abs(LATITUDE)), "m.nc: lat: the coordinate is not monotonic. Must rise or fall throughout."),
+        (field(lat=np.abs(LATITUDE)), "m.nc: lat: the coordinate is not monotonic. Must rise or fall "
+         "throughout. Sort it."),
         (field().drop_vars("lon"), "m.nc: lon: the dimension has no coordinate variable. Add it."),
         (xr.Dataset({"p": (("time", "site"), np.zeros((10, 2)), {"units": "Pa"})}, {"time": TIME, "site": ["A1", "C"]}),
          "m.nc: site: none of its 2 sites (A1, C, ...) is in the network. Must be site ids of the network. "
          'Did you mean "A"?'),
         (xr.Dataset({"p": (("time", "site"), np.zeros((10, 2)), {"units": "Pa"})}, {"time": TIME, "site": ["A", "A"]}),
-         "m.nc: site: sites stand twice: A. Must be unique."),
+         "m.nc: site: sites stand twice: A. Must be unique. Keep one of each."),
     ],
 )  # fmt: skip
 def test_faults(tmp_path: Path, dataset: xr.Dataset, message: str) -> None:

@@ -103,7 +103,8 @@ def test_a_climatology_with_members_from_north_to_south(tmp_path: Path) -> None:
     [
         ({"attributes": {"units": "cm"}},
          "w.nc: load_in_phase: the unit is 'cm'. Must be 'kg m-2'. Convert the values."),
-        ({"attributes": MASS | {"load_area": "sea"}}, "w.nc: load_area: the value is 'sea'. Must be 'cell' or 'land'."),
+        ({"attributes": MASS | {"load_area": "sea"}}, "w.nc: load_area: the value is 'sea'. Must be 'cell' or 'land'. "
+         "Correct the attribute."),
         ({"lat": np.sort(LATITUDE**3 / 7225.0)}, "w.nc: lat: the cells are not equally spaced. "
          "Must be a regular grid of cells that covers 180 degrees once. Interpolate onto a regular grid."),
         ({"lon": LONGITUDE * 0.5}, "w.nc: lon: 36 cells of 5 degrees cover 180 degrees. "
@@ -111,7 +112,7 @@ def test_a_climatology_with_members_from_north_to_south(tmp_path: Path) -> None:
         ({"lon": np.linspace(0.0, 360.0, 36)}, "w.nc: lon: 36 cells of 10.2857 degrees cover 370.286 degrees. "
          "Must be a regular grid of cells that covers 360 degrees once. Drop a repeated meridian."),
         ({"values": np.full((18, 36), np.inf)}, "w.nc: load_in_phase: some values are infinite. "
-         "Must be finite, or NaN for no load."),
+         "Must be finite, or NaN for no load. Correct them."),
     ],
 )  # fmt: skip
 def test_faults(tmp_path: Path, changes: dict[str, object], message: str) -> None:
