@@ -90,7 +90,7 @@ def record_panels(rows: Sequence[RecordRow], *, width_mm: float = PAGE_WIDTH_MM)
     drawn = (_draw_record, _draw_corrections, _draw_reduced)
     first = 0 if width_mm > COLUMN_WIDTH_MM else 2
     up, gap = _ROW_MM * len(rows), 11.0
-    side = (width_mm - 2.0) / (3 - first) - gap
+    side = (width_mm - 4.0) / (3 - first) - gap
     with house_style():
         figure = sheet(width_mm, up + 17.0)
         panels = [placed_axes(figure, gap + k * (side + gap), 6.0, side, up) for k in range(3 - first)]

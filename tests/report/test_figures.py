@@ -301,3 +301,10 @@ def test_dates_of_records_of_any_length_have_ticks_without_overlap(days: int) ->
     found = [label.get_window_extent().extents for label in figure.axes[0].get_xticklabels() if label.get_text()]
     assert len(found) >= 2 or days == 1
     assert overlaps(np.array(found).reshape(-1, 4)) == 0
+
+
+def test_a_date_at_the_very_end_stays_on_the_sheet() -> None:
+    time = np.datetime64("2014-01-01", "ns") + np.arange(731) * np.timedelta64(1, "D")
+    wave = np.sin(np.arange(731) / 58.0)
+    figure = record_panels([RecordRow("A", [(time, wave, wave)], time, {}, time, wave, wave)])
+    assert figure.get_tightbbox().x1 <= figure.get_size_inches()[0]
