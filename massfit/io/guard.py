@@ -6,6 +6,7 @@ file would cost more than reading does. It holds no state that could change an a
 """
 
 import atexit
+import contextlib
 import json
 import os
 import subprocess
@@ -42,14 +43,14 @@ class Guard:
             if answer:
                 return str(json.loads(answer))
             # the helper died of this file
-            code = self._process.wait()
+            code = _ended(self._process)
             self._process = None
         return "it is damaged: reading it " + ("never ends" if code == 1 else f"ends the process (code {code})")
 
     def close(self) -> None:
         """End the helper process."""
         if self._process is not None and self._owner == os.getpid():
-            self._process.communicate()
+            _ended(self._process)
             self._process = None
 
 
@@ -60,8 +61,20 @@ def _started() -> "subprocess.Popen[str]":
         stdin=subprocess.PIPE, stdout=subprocess.PIPE, stderr=subprocess.DEVNULL, text=True,
     )  # fmt: skip
     if process.stdout is None or process.stdout.readline() != "ready\n":
+        _ended(process)
         raise RuntimeError(f"the process that examines HDF5 files does not start ({sys.executable} {_EXAMINER})")
     return process
+
+
+def _ended(process: "subprocess.Popen[str]") -> int:
+    """Close the pipes of a process, wait for its end and give its exit code."""
+    with contextlib.suppress(BrokenPipeError):
+        process.communicate()
+    for pipe in (process.stdin, process.stdout):
+        if pipe is not None:
+            with contextlib.suppress(BrokenPipeError):
+                pipe.close()
+    return process.wait()
 
 
 def _asked(process: "subprocess.Popen[str]", question: str) -> str:
