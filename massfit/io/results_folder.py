@@ -28,7 +28,7 @@ _CSV_COLUMNS = (
 
 
 def check_output(folder: Path, *, overwrite: bool) -> None:
-    """Refuse an output folder that cannot or must not be written, before anything is computed.
+    """Refuse an output folder that must not be written, before anything is computed.
 
     Parameters
     ----------
@@ -40,7 +40,7 @@ def check_output(folder: Path, *, overwrite: bool) -> None:
     Raises
     ------
     InputError
-        The folder exists and may not be replaced, is not a results folder, or its parent cannot be written.
+        The folder exists and may not be replaced, or is not a results folder.
     """
     here = str(folder)
     if folder.exists() and not folder.is_dir():
