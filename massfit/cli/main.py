@@ -8,10 +8,9 @@ from pathlib import Path
 import click
 
 from massfit.cli.progress import shown_progress
-from massfit.cli.refusal import refusing_politely
+from massfit.cli.refusal import NOT_TRUSTWORTHY, refusing_politely
 
 _FOLDER = click.Path(path_type=Path)
-NOT_TRUSTWORTHY = 3
 
 
 @click.group(context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 80})

@@ -7,13 +7,14 @@ from contextlib import contextmanager
 import click
 
 WRONG_INPUT = 2
+NOT_TRUSTWORTHY = 3
 INTERRUPTED = 130
 
 
 @contextmanager
 def refusing_politely() -> Iterator[None]:
-    """Turn an InputError into one message with all its faults and exit code 2, and Ctrl-C into exit code 130."""
-    from massfit.errors import InputError
+    """Turn faults into one message and exit code 2, a failed iteration into 3, and Ctrl-C into 130."""
+    from massfit.errors import ConvergenceError, InputError
 
     try:
         yield
@@ -23,6 +24,9 @@ def refusing_politely() -> Iterator[None]:
         for fault in error.faults:
             click.echo(_listed(str(fault)), err=True)
         sys.exit(WRONG_INPUT)
+    except ConvergenceError as error:
+        click.echo(f"massfit: {error} There is no answer; nothing was written.", err=True)
+        sys.exit(NOT_TRUSTWORTHY)
     except KeyboardInterrupt:
         text = "massfit: interrupted. What estimate had finished is kept: the same command goes on from there."
         click.echo(text, err=True)

@@ -66,7 +66,8 @@ def _quantity(label: str, value: Mapping[str, Any], form: str) -> list[str]:
 def shares_table(summary: Mapping[str, Any]) -> Table:
     """Tabulate the shares of the variance, the largest first."""
     shares = sorted(summary["variance_share"].items(), key=lambda item: -item[1])
-    rows = [[SHARE_WORDS.get(name, name), f"{100 * share:.1f} %"] for name, share in shares]
+    said = {name: f"{100 * share:.1f} %" if share else "not in the model" for name, share in shares}
+    rows = [[SHARE_WORDS.get(name, name), text] for name, text in said.items()]
     return Table("Shares of the variance", ("source", "share of the variance"), rows)
 
 

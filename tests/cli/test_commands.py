@@ -191,3 +191,18 @@ def test_a_run_that_does_not_converge_says_so_everywhere(network_folder: Path, m
         with xr.open_dataset(path, engine="h5netcdf") as data:
             assert data.attrs["converged"] == 0
             assert "Not converged" in data.attrs["comment"]
+
+
+def test_an_iteration_that_fails_is_no_traceback(network_folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    from massfit.errors import ConvergenceError
+    from massfit.pipeline import save
+
+    def fails(*_: object, **__: object) -> None:
+        raise ConvergenceError("the fit", 0.5, 0.1)
+
+    monkeypatch.setattr(save, "estimate", fails)
+    done = call("estimate", network_folder)
+    assert done.exit_code == 3
+    assert "the fit stopped" in done.output
+    assert "nothing was written" in done.output
+    assert not (network_folder / "results").exists()
