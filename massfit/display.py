@@ -1,5 +1,6 @@
 """Short text and HTML of an object, for a prompt and a notebook."""
 
+from abc import ABC, abstractmethod
 from collections.abc import Mapping
 from html import escape
 
@@ -7,7 +8,7 @@ Description = tuple[str, Mapping[str, str]]
 """A title, and what is said about the object by name."""
 
 
-class Described:
+class Described(ABC):
     """Shows an object by what :meth:`describe` says of it.
 
     Examples
@@ -22,9 +23,9 @@ class Described:
     True
     """
 
+    @abstractmethod
     def describe(self) -> Description:
         """Say in a few words what the object is; units stand with the numbers."""
-        raise NotImplementedError
 
     def __repr__(self) -> str:
         title, rows = self.describe()
