@@ -4,8 +4,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
+LEAST_NETWORK_DAYS = 180
+"""Least number of days with data that a network needs in all."""
+
 LEAST_SITE_DAYS = 90
-"""A site with fewer days cannot part an annual cycle from its own drift at all, and is left out."""
+"""Distinct days a site must have. Recorders serve periods of about a year or less (common practice): with a
+quarter of it, level, drift and two harmonics are still solvable, and the sigma says how badly."""
 
 
 @dataclass(frozen=True)

@@ -9,10 +9,7 @@ from numpy.typing import NDArray
 
 from massfit.errors import Fault, InputError
 from massfit.settings import DriftForm
-
-LEAST_DAYS = 90
-"""Distinct days a site must have. Recorders serve periods of about a year or less (common practice): with a
-quarter of it, level, drift and two harmonics are still solvable, and the sigma says how badly."""
+from massfit.site import LEAST_SITE_DAYS
 
 
 @dataclass(frozen=True)
@@ -76,9 +73,10 @@ def check_records(records: Sequence[ReducedRecord], models: Sequence[str], site:
     repeated = sorted({name for name in names if names.count(name) > 1})
     faults += [Fault(source, name, "two deployments have this label", "Labels must differ") for name in repeated]
     days = len(np.unique(np.concatenate([record.time for record in records]))) if records else 0
-    if days < LEAST_DAYS:
+    if days < LEAST_SITE_DAYS:
         problem = f"{days} days cannot tell an annual cycle from drift"
-        faults.append(Fault(source, "time", problem, f"At least {LEAST_DAYS} days are needed", "Leave the site out"))
+        allowed = f"At least {LEAST_SITE_DAYS} days are needed"
+        faults.append(Fault(source, "time", problem, allowed, "Leave the site out"))
     if faults:
         raise InputError(faults)
 

@@ -15,11 +15,10 @@ from massfit.io.sections import Sections, shown
 from massfit.network import ReducedSite, reduced_faults
 from massfit.records.record import Record
 from massfit.settings import Corrections, Fingerprint, Frame
-from massfit.site import LEAST_SITE_DAYS, Site
+from massfit.site import LEAST_NETWORK_DAYS, LEAST_SITE_DAYS, Site
 
 _NO_OCEAN = 0.005  # ocean fraction of a quarter-degree cell below which a site is on land
 _MOST_SEARCHES = 50  # faults after which no nearest ocean is looked up, which takes its time
-_FEWEST_DAYS = 180
 _SHORT_YEARS = 1.5  # below it the drift and the annual cycle of one record hardly part
 _DAY = np.timedelta64(1, "D")
 
@@ -123,10 +122,10 @@ def check_coverage(
 
 def check_length(reading: Reading, days: int) -> None:
     """Refuse a network that has data on fewer than 180 days."""
-    if days < _FEWEST_DAYS:
+    if days < LEAST_NETWORK_DAYS:
         problem = f"the network has data on {days} days after window and exclusions"
         action = "Add records or widen the window"
-        reading.fault(("network",), problem, f"An annual cycle needs at least {_FEWEST_DAYS}", action)
+        reading.fault(("network",), problem, f"An annual cycle needs at least {LEAST_NETWORK_DAYS}", action)
 
 
 def _inside(record: Record, site: Site, frame: Frame) -> NDArray[np.bool_]:

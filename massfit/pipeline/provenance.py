@@ -6,6 +6,7 @@ from typing import Any
 
 from threadpoolctl import threadpool_info
 
+from massfit.fingerprint.transforms import TRANSFORM_BACKEND
 from massfit.network import Network
 
 _LIBRARIES = (
@@ -33,7 +34,7 @@ def provenance(network: Network, *, processes: int) -> dict[str, Any]:
         "python": platform.python_version(),
         "machine": f"{platform.system()} {platform.machine()}",
         "versions": versions,
-        "transform_backend": f"ducc0 {versions['ducc0']}",
+        "transform_backend": TRANSFORM_BACKEND,
         "polar_motion": f"astropy-iers-data {versions['astropy-iers-data']}",
         "seed": network.settings.posterior.seed,
         "processes": processes,

@@ -20,10 +20,7 @@ from massfit.records.daily import reduce_to_daily
 from massfit.records.record import DailyRecord
 from massfit.results.estimate import SiteReduction
 from massfit.settings import Settings
-from massfit.site import LEAST_SITE_DAYS, Site
-
-LEAST_DAYS = 180
-"""Least number of days with data, over the whole network."""
+from massfit.site import LEAST_NETWORK_DAYS, LEAST_SITE_DAYS, Site
 
 
 @dataclass(frozen=True)
@@ -100,13 +97,13 @@ def usable_sites(network: Network, records: Mapping[str, Sequence[DailyRecord]])
         for site in network.sites
         if days.get(site.id, 0) >= LEAST_SITE_DAYS or (site.id in reduced and site.excluded_because is None)
     )
-    if (total < LEAST_DAYS and not reduced) or not sites:
+    if (total < LEAST_NETWORK_DAYS and not reduced) or not sites:
         raise InputError(
             Fault(
                 network.source or "network",
                 "records",
                 f"{total} days of data are left after the window and the exclusions, on {len(sites)} usable sites",
-                f"At least {LEAST_DAYS} days in all, and one site with {LEAST_SITE_DAYS}",
+                f"At least {LEAST_NETWORK_DAYS} days in all, and one site with {LEAST_SITE_DAYS}",
                 "Widen the window or add records",
             )
         )

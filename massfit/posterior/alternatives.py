@@ -7,12 +7,13 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
+from massfit.annual.dataset import NO_MODEL
 from massfit.constants import PASCAL_PER_HPA
 from massfit.display import counted
 from massfit.phasor import as_complex
 from massfit.posterior.convergence import worse
 from massfit.posterior.network_model import pooled_moments, second_routes
-from massfit.posterior.observations import NO_MODEL, Observations
+from massfit.posterior.observations import Observations
 from massfit.posterior.quadrature import ScalePosterior
 from massfit.settings import PosteriorSettings, Priors
 

@@ -9,12 +9,10 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
+from massfit.annual.dataset import NO_MODEL
 from massfit.contracts import FINGERPRINTS, SITE_PHASORS, require
 from massfit.errors import Fault, InputError
 from massfit.phasor import as_complex
-
-NO_MODEL = "none"
-"""Name of the column of sites from which no circulation model was subtracted."""
 
 RECORD_FLOOR = 0.1
 """Least share of the record covariance that is left when the models' own weather is taken out of it."""

@@ -7,11 +7,12 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
+from massfit.annual.dataset import NO_MODEL
 from massfit.posterior.convergence import Convergence, diagnose, worst
 from massfit.posterior.explore import ENSEMBLES, MAX_STEPS, STEPS, WALKERS, ScaleExplorer
 from massfit.posterior.likelihood import LinearModel, annual_given_scales
 from massfit.posterior.network_model import inflation, member_models, scale_priors
-from massfit.posterior.observations import NO_MODEL, Observations, read_observations
+from massfit.posterior.observations import Observations, read_observations
 from massfit.posterior.quadrature import ScalePosterior, integrate_scales
 from massfit.posterior.result import Posterior
 from massfit.settings import PosteriorSettings, Priors

@@ -6,11 +6,12 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
+from massfit.annual.dataset import NO_MODEL
 from massfit.constants import FRESH_WATER_DENSITY, KG_PER_GT, PASCAL_PER_HPA, STANDARD_GRAVITY
 from massfit.phasor import as_complex, as_components, peak_date, unwrapped_peak_days
 from massfit.posterior.alternatives import alternative_answers
 from massfit.posterior.network_model import member_models
-from massfit.posterior.observations import NO_MODEL, Observations, read_observations
+from massfit.posterior.observations import Observations, read_observations
 from massfit.posterior.regions import scalar_summary
 from massfit.posterior.result import Posterior
 from massfit.posterior.shares import variance_shares, variance_terms

@@ -26,8 +26,8 @@ from massfit.report.style import (
     zero_lines,
 )
 
-# radius of the 50 % and 95 % ellipses of a two-dimensional normal, sqrt(-2 ln(1 - p))
-RADIUS_50, RADIUS_95 = 1.17741, 2.44775
+# radius of the 50 % ellipse of a two-dimensional normal, sqrt(-2 ln(1 - p))
+RADIUS_50 = 1.17741
 
 
 def phasor_plane(

@@ -12,7 +12,6 @@ from matplotlib.figure import Figure
 # colours of Okabe & Ito (2008), by role
 ANSWER = "#0072B2"
 SITE = "#E69F00"
-MODEL = "#56B4E9"
 REFERENCE = "#4D4D4D"
 LAND = "#D9D9D9"
 

@@ -10,9 +10,9 @@ from massfit.annual.design import build_design
 from massfit.annual.evidence import reduce_columns, solve_choices
 from massfit.annual.fit import fit_site
 from massfit.annual.noise import NoisePriors
-from massfit.annual.record import LEAST_DAYS
 from massfit.errors import InputError
 from massfit.settings import Priors
+from massfit.site import LEAST_SITE_DAYS
 
 TRUTH = np.array([60.0, 50.0])
 YEAR = 365.2422
@@ -228,8 +228,8 @@ def test_every_fault_is_reported(make_record):
 
 
 def test_too_short_a_site_is_refused(make_record):
-    with pytest.raises(InputError, match=f"At least {LEAST_DAYS}"):
-        fit([make_record(np.random.default_rng(1), count=LEAST_DAYS - 1)])
+    with pytest.raises(InputError, match=f"At least {LEAST_SITE_DAYS}"):
+        fit([make_record(np.random.default_rng(1), count=LEAST_SITE_DAYS - 1)])
     with pytest.raises(InputError):
         fit([])
 
