@@ -61,8 +61,8 @@ class Components:
     scores : (S, J + 1) array
     time_constants : (K, D) array
         Days.
-    annual : (K, 2, 1 + M) array
-        Annual phasor of the data, and the response of the same operator to each contrast, Pa.
+    annual : (K, 2, 1 + M + C) array
+        Annual phasor of the data, and the response of the same operator to each contrast and companion, Pa.
     annual_covariance : (K, 2, 2) array
         Pa^2.
     mean, variance : (K, f) array
@@ -208,7 +208,7 @@ def _solve(
     """All drift-time choices of one set for one noise model."""
     choices = sample.choices[row % len(sample.choices)]
     log_ratio = sample.log_ratio[row % len(sample.choices)]
-    reduction = reduce_columns(noise.covariance(design.days, scores), design, *exponentials)
+    reduction = reduce_columns(noise.covariance(design.days, scores), design, *exponentials, with_companions=True)
     solutions = solve_choices(reduction, choices + sample.grid.first_columns)
     times = [own[nodes] for own, nodes in zip(sample.grid.time_constants, choices.T, strict=True)]
     return _Batch(

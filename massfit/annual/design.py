@@ -66,6 +66,8 @@ class Design:
         Record minus the mean of the models, mean per deployment removed, Pa.
     contrasts : (n, M) array
         Each model minus the mean of the models, Pa.
+    companions : (n, C) array
+        Further series the operator is applied to, Pa.
     fixed : (n, f) array
         Annual, semi-annual, then level, slope (per year) and steps of each deployment.
     precision : (f,) array
@@ -84,6 +86,7 @@ class Design:
     elapsed: Floats
     data: Floats
     contrasts: Floats
+    companions: Floats
     fixed: Floats
     precision: Floats
     drifts: tuple[DriftColumns, ...]
@@ -157,6 +160,7 @@ def build_design(records: Sequence[ReducedRecord], *, reference_year: int, prior
         elapsed=np.concatenate([_elapsed(record) for record in records])[order],
         data=np.concatenate(data)[order],
         contrasts=np.concatenate(contrasts)[order],
+        companions=np.concatenate([_companions(record) for record in records])[order],
         fixed=np.column_stack(columns),
         precision=np.array(precision),
         drifts=tuple(drifts),
@@ -183,6 +187,14 @@ def _data_and_contrasts(record: ReducedRecord) -> tuple[Floats, Floats]:
     data = np.asarray(record.pressure, float) - mean
     # a level is fitted anyway: taking the mean off first only keeps the digits of the sums
     return data - data.mean(), (models - mean).T
+
+
+def _companions(record: ReducedRecord) -> Floats:
+    """Companions of a record less their means, which the level would take: (n, C)."""
+    if record.companions is None:
+        return np.zeros((len(record.time), 0))
+    values = np.asarray(record.companions, float)
+    return np.asarray((values - values.mean(axis=1, keepdims=True)).T)
 
 
 def _drift_columns(

@@ -84,15 +84,15 @@ class Reduction:
     ----------
     log_evidence : float
         Log evidence of the fixed columns alone.
-    mean : (f, 1 + M) array
-        Their coefficients, for data and contrasts.
+    mean : (f, 1 + M + C) array
+        Their coefficients, for data, contrasts and companions.
     covariance : (f, f) array
         Of the fixed coefficients, Pa^2.
     leak : (f, E) array
         Response of the fixed coefficients to each exponential.
     exponential : (E, E) array
         Normal matrix of the exponentials, prior included.
-    exponential_right : (E, 1 + M) array
+    exponential_right : (E, 1 + M + C) array
         Their right-hand sides.
     log_exponential_sd : float
         Logarithm of the prior standard deviation of an exponential's size.
@@ -139,7 +139,12 @@ def compress(exponentials: Floats, first_columns: NDArray[np.int64]) -> tuple[Fl
 
 
 def reduce_columns(
-    noise: NoiseCovariance, design: Design, exponentials: Floats, combination: Floats | None = None
+    noise: NoiseCovariance,
+    design: Design,
+    exponentials: Floats,
+    combination: Floats | None = None,
+    *,
+    with_companions: bool = False,
 ) -> Reduction:
     """Whiten all columns and eliminate the fixed ones.
 
@@ -151,13 +156,16 @@ def reduce_columns(
         Exponentials of every drift time of every deployment, or what spans them.
     combination : (B, E) array, optional
         How they are made of the columns given.
+    with_companions : bool
+        Whether the companions are right-hand sides too; the search of the mode has no use for them.
 
     Returns
     -------
     Reduction
     """
     count, width = design.fixed.shape[1], exponentials.shape[1]
-    stacked = np.column_stack([design.fixed, exponentials, design.data, design.contrasts])
+    companions = [design.companions] if with_companions else []
+    stacked = np.column_stack([design.fixed, exponentials, design.data, design.contrasts, *companions])
     white = noise.whiten(stacked)
     sums = white.T @ white
     normal = sums[:count, :count] + np.diag(design.precision)
@@ -186,12 +194,12 @@ class Solutions:
     Parameters
     ----------
     log_evidence : (C,) array
-    size : (C, D, 1 + M) array
-        Sizes of the exponentials, for data and contrasts, Pa.
+    size : (C, D, 1 + M + ...) array
+        Sizes of the exponentials, for data, contrasts and companions, Pa.
     size_covariance : (C, D, D) array
         Pa^2.
-    mean : (C, f, 1 + M) array
-        Fixed coefficients, for data and contrasts.
+    mean : (C, f, 1 + M + ...) array
+        Fixed coefficients, for data, contrasts and companions.
     leak : (C, f, D) array
         Response of the fixed coefficients to the exponentials chosen.
     """

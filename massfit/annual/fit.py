@@ -126,6 +126,9 @@ class SiteFit(Described):
         Share of each calendar year in the phasor; sums to 1.
     notes : tuple of str
         What was left out, and why.
+    companions : (C, 2) array, optional
+        Annual phasors of the companions of the records, by the operators of the fit averaged over its parts, Pa: what
+        each adds to the phasor when it is left in the record. None without companions.
     """
 
     site: str
@@ -141,6 +144,7 @@ class SiteFit(Described):
     drifts: tuple[DriftFit, ...]
     year_share: Mapping[int, float]
     notes: tuple[str, ...] = ()
+    companions: Floats | None = None
 
     def describe(self) -> Description:
         """Phasor, and how well it is known."""
@@ -224,12 +228,13 @@ def fit_site(
     components = integrate(design, noise, mode, rng)
     operator = phasor_operator(noise.covariance(design.days, mode.scores), design, mode.grid.mode)
     parts = merge_components(components)
+    first = 1 + len(models)
     return SiteFit(
         site=site,
         models=tuple(models),
         weight=parts.weight,
         # L(y) - L(q_m) = L(y - mean q) - L(q_m - mean q)
-        phasor=parts.phasor[:, :1] - parts.phasor[:, 1:] if len(models) else parts.phasor,
+        phasor=parts.phasor[:, :1] - parts.phasor[:, 1:first] if len(models) else parts.phasor[:, :1],
         covariance=parts.covariance,
         model_noise=model_noise(design, noise, operator),
         reduced_sd=_residual_sd(design, components),
@@ -241,6 +246,7 @@ def fit_site(
         ),
         year_share=year_shares(design, operator, reference_year),
         notes=design.notes,
+        companions=np.einsum("k,kcj->cj", parts.weight, parts.phasor[:, first:]) if design.companions.size else None,
     )
 
 

@@ -25,8 +25,8 @@ class Parts:
     ----------
     weight : (K,) array
         Sums to 1.
-    phasor : (K, 1 + M, 2) array
-        Of the data, and of the response to each contrast, Pa.
+    phasor : (K, 1 + M + C, 2) array
+        Of the data, and of the response to each contrast and companion, Pa.
     covariance : (K, 2, 2) array
         Pa^2.
     """
@@ -83,7 +83,7 @@ def _spread(features: Floats, weight: Floats) -> Floats:
 
 
 def _moments(components: Components, members: NDArray[np.int64]) -> tuple[float, Floats, Floats]:
-    """Weight, mean (1 + M, 2) and covariance (2, 2) of a set of components."""
+    """Weight, mean (1 + M + C, 2) and covariance (2, 2) of a set of components."""
     weight = components.weight[members]
     total = float(weight.sum())
     share = weight / total

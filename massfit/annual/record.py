@@ -32,6 +32,9 @@ class ReducedRecord:
         "exponential+linear", "linear" or "none".
     steps : tuple of datetime64
         Declared changes of level; a new level begins at each.
+    companions : (C, n) array, optional
+        Further series on the same days, Pa, without NaN; they do not enter the fit, but their annual phasors by its
+        linear operator are given beside it. None without any.
 
     Examples
     --------
@@ -50,6 +53,7 @@ class ReducedRecord:
     start: np.datetime64
     drift: str = "exponential+linear"
     steps: tuple[np.datetime64, ...] = ()
+    companions: NDArray[np.float64] | None = None
 
 
 def check_records(records: Sequence[ReducedRecord], models: Sequence[str], site: str) -> None:
@@ -72,6 +76,10 @@ def check_records(records: Sequence[ReducedRecord], models: Sequence[str], site:
     names = [record.deployment for record in records]
     repeated = sorted({name for name in names if names.count(name) > 1})
     faults += [Fault(source, name, "two deployments have this label", "Labels must differ") for name in repeated]
+    followed = {0 if record.companions is None else len(record.companions) for record in records}
+    if len(followed) > 1:
+        problem = f"the deployments have {sorted(followed)} companions"
+        faults.append(Fault(source, "companions", problem, "Must be the same series for each"))
     days = len(np.unique(np.concatenate([record.time for record in records]))) if records else 0
     if days < LEAST_SITE_DAYS:
         problem = f"{days} days cannot tell an annual cycle from drift"
@@ -90,7 +98,13 @@ def _record_faults(source: str, record: ReducedRecord, models: int) -> Iterator[
     if np.shape(record.circulation) != (models, count):
         problem = f"circulation has shape {np.shape(record.circulation)} for {models} models and {count} times"
         yield Fault(source, name, problem, f"Must be {(models, count)}")
-    for label, values in (("pressure", record.pressure), ("circulation", record.circulation)):
+    series = {"pressure": record.pressure, "circulation": record.circulation}
+    if record.companions is not None:
+        series["companions"] = record.companions
+        if np.ndim(record.companions) != 2 or np.shape(record.companions)[1] != count:
+            problem = f"companions have shape {np.shape(record.companions)} for {count} times"
+            yield Fault(source, name, problem, f"Must be (C, {count})")
+    for label, values in series.items():
         missing = int(np.sum(~np.isfinite(values)))
         if missing:
             yield Fault(source, name, f"{missing} values of {label} are missing", action="Leave those days out")
