@@ -126,6 +126,32 @@ class SphereGrid:
         fields = ducc0.sht.synthesis(alm=coefficients[:, None], spin=0, **self._points(latitude_deg, longitude_deg))
         return np.asarray(fields)[:, 0]
 
+    def synthesise_regular(
+        self,
+        coefficients: NDArray[np.complex128],
+        latitude_deg: NDArray[np.float64],
+        longitude_deg: NDArray[np.float64],
+    ) -> NDArray[np.float64]:
+        """Evaluate fields on a regular grid of another spacing, by the sum over all harmonics.
+
+        Parameters
+        ----------
+        coefficients : (n_field, n_coefficient) array of complex
+        latitude_deg : (n_lat,) array
+            Any latitudes, degrees north.
+        longitude_deg : (n_lon,) array
+            Once around eastward, equally spaced, degrees east.
+
+        Returns
+        -------
+        (n_field, n_lat, n_lon) array
+        """
+        size = longitude_deg.size
+        start = np.full(latitude_deg.size, np.radians(longitude_deg[0]))
+        rings = self._layout(np.radians(90.0 - latitude_deg), start, size)
+        fields = ducc0.sht.synthesis(alm=coefficients[:, None], spin=0, **rings)
+        return np.asarray(fields).reshape(-1, latitude_deg.size, size)
+
     def harmonics_at(self, latitude_deg: ArrayLike, longitude_deg: ArrayLike) -> NDArray[np.complex128]:
         """Coefficients of the unit masses at points: the harmonics there, conjugated.
 

@@ -124,6 +124,45 @@ def read_what_can_be(
     return network, faults
 
 
+def read_sites_and_loads(path: str | os.PathLike[str], *, outside: bool = False) -> Network:
+    """Read what the fingerprint of a network needs: settings, sites and loads, no record and no ocean model.
+
+    Parameters
+    ----------
+    path, outside
+        As for :func:`read_network`.
+
+    Returns
+    -------
+    Network
+        Without records and models, which need not be there. Air pressure on land is read where its files are
+        there; a warning says so where they are not.
+
+    Raises
+    ------
+    InputError
+        With every fault of the network file and of the files of loads and air pressure.
+    """
+    reading = open_reading(path, outside=outside)
+    sections = parse_sections(reading, records=False)
+    check_choices(reading, sections)
+    corrections = sections.settings["corrections"]
+    loads = _loads(reading, sections)
+    air = _air_over_land(reading, corrections) if corrections is not None else {}
+    if reading.faults:
+        raise InputError(_in_order(reading))
+    return Network(
+        settings=_settings(sections),
+        sites=tuple(table.entry.site() for table in sections.sites if table.entry is not None),
+        records=(),
+        loads=loads,
+        source=reading.source,
+        inputs=reading.inputs,
+        warnings=tuple(reading.warnings),
+        **air,
+    )
+
+
 def _settings(sections: Sections) -> Settings:
     own = {"frame" if name == "network" else name: value for name, value in sections.settings.items()}
     return Settings(**{field.name: own[field.name] for field in fields(Settings)})
@@ -244,6 +283,19 @@ def _air(reading: Reading, corrections: Corrections) -> dict[str, Any]:
         if text is not None and (file := reading.find(("corrections", key), text)) is not None:
             air[key] = reading.attempt(reader, file, source=text)
     return air
+
+
+def _air_over_land(reading: Reading, corrections: Corrections) -> dict[str, Any]:
+    """Read the air pressure where its load on land is asked for and the files are there."""
+    if corrections.atmosphere_load is None and corrections.air_pressure is None:
+        return {}
+    keys = ("ocean_mean_atmosphere", "atmosphere_load", "air_pressure")
+    named = [text for text in (getattr(corrections, key) for key in keys) if text not in (None, "already-removed")]
+    missing = [text for text in named if not reading.is_there(text)]
+    if not missing:
+        return _air(reading, corrections)
+    reading.warnings.append(f"Air pressure on land is left out: there is no {', no '.join(missing)}.")
+    return {}
 
 
 def _in_order(reading: Reading) -> list[Fault]:

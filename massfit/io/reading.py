@@ -73,6 +73,10 @@ class Reading:
                 self.inputs[self.relative(text)] = hashlib.file_digest(stream, "sha256").hexdigest()
         return found
 
+    def is_there(self, text: str) -> bool:
+        """Whether something stands where a path of the network file points, or it is an address, to be refused."""
+        return _URL.match(text) is not None or os.path.lexists(self.folder / text)
+
     def relative(self, text: str) -> str:
         """Give a path of the network file one spelling."""
         return Path(os.path.relpath(self.folder / text, self.folder)).as_posix()

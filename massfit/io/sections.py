@@ -82,13 +82,15 @@ class Sections:
     named_models: tuple[tuple[KeyPath, NamedModelEntry], ...]
 
 
-def parse_sections(reading: Reading) -> Sections:
+def parse_sections(reading: Reading, *, records: bool = True) -> Sections:
     """Validate every table on its own, so that one fault does not hide another.
 
     Parameters
     ----------
     reading : Reading
         Receives the faults.
+    records : bool
+        Whether a site needs a deployment or a phasor.
 
     Returns
     -------
@@ -97,7 +99,7 @@ def parse_sections(reading: Reading) -> Sections:
     for name in reading.document.keys() - set(SECTIONS):
         _unknown_key(reading, (name,), SECTIONS)
     settings = {name: _settings(reading, name, kind) for name, kind in SETTINGS.items()}
-    sites = tuple(_site(reading, path, table) for path, table in _tables(reading, reading.document, ("site",)))
+    sites = tuple(_site(reading, path, table, records) for path, table in _tables(reading, reading.document, ("site",)))
     if not sites and not reading.document.get("site"):
         reading.fault(("site",), "the network has no site", "Must be at least one", "Add a [[site]]")
     circulation: list[tuple[KeyPath, CirculationEntry]] = []
@@ -154,7 +156,7 @@ def _tables(reading: Reading, parent: dict[str, Any], path: KeyPath) -> Iterator
         yield (*path, position), table
 
 
-def _site(reading: Reading, path: KeyPath, table: dict[str, Any]) -> SiteTable:
+def _site(reading: Reading, path: KeyPath, table: dict[str, Any], records: bool) -> SiteTable:
     own = {key: value for key, value in table.items() if key != "deployment"}
     entry = parse_table(reading, SiteEntry, own, path)
     deployments = [
@@ -164,7 +166,7 @@ def _site(reading: Reading, path: KeyPath, table: dict[str, Any]) -> SiteTable:
     reduced = [key for key in ALREADY_REDUCED if key in table]
     if reduced:
         _reduced_elsewhere(reading, path, table, reduced[0])
-    elif not table.get("deployment"):
+    elif records and not table.get("deployment"):
         reading.fault(path, "the site has no deployment", "Must be at least one", "Add a [[site.deployment]]")
     made = tuple((place, one) for place, one in deployments if one is not None)
     complete = bool(made) and len(made) == len(deployments)

@@ -7,14 +7,12 @@ order, the way a method section would.
 from massfit.annual.dataset import site_phasors
 from massfit.corrections.circulation import circulation_at_sites
 from massfit.corrections.responses import equilibrium_responses
-from massfit.earth.love import love_numbers
 from massfit.fingerprint.footprint import site_footprints
 from massfit.fingerprint.ocean import OceanFunction
-from massfit.fingerprint.operator import prepare_operator
 from massfit.network import Network, check_network
 from massfit.pipeline.air import network_air
 from massfit.pipeline.context import in_context
-from massfit.pipeline.fingerprints import network_fingerprints
+from massfit.pipeline.fingerprints import network_fingerprints, network_operator
 from massfit.pipeline.parts import Mapped, Store, kept
 from massfit.pipeline.progress import Progress, StageTimes, ignore
 from massfit.pipeline.provenance import provenance
@@ -73,12 +71,7 @@ def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Map
     sites = usable_sites(network, records)
     progress("sea-level equation", 0, 1)
     ocean = OceanFunction.builtin()
-    operator = prepare_operator(
-        ocean,
-        love_numbers(max_degree=settings.fingerprint.max_degree),
-        max_degree=settings.fingerprint.max_degree,
-        sea_water_density=settings.fingerprint.sea_water_density,
-    )
+    operator = network_operator(network, ocean)
     footprints = site_footprints(operator, sites)
     air = network_air(network, ocean)
     fingerprints = network_fingerprints(network, operator, sites, footprints, air)

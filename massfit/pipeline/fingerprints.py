@@ -4,11 +4,50 @@ from collections.abc import Sequence
 
 import xarray as xr
 
+from massfit.earth.love import love_numbers
 from massfit.fingerprint.admittance import site_fingerprints, water_vapour_phasor
-from massfit.fingerprint.operator import SeaLevelOperator
+from massfit.fingerprint.ocean import OceanFunction
+from massfit.fingerprint.operator import SeaLevelOperator, prepare_operator
 from massfit.network import Network
 from massfit.pipeline.air import AirPressure
 from massfit.site import Site
+
+
+def network_operator(
+    network: Network, ocean: OceanFunction, *, max_degree: int | None = None, threads: int = 1
+) -> SeaLevelOperator:
+    """Sea-level equation of the network's settings.
+
+    Parameters
+    ----------
+    network : Network
+    ocean : OceanFunction
+    max_degree : int, optional
+        Instead of that of the settings.
+    threads : int
+        Threads of the transforms; the numbers do not depend on it.
+
+    Returns
+    -------
+    SeaLevelOperator
+    """
+    chosen = network.settings.fingerprint
+    degree = chosen.max_degree if max_degree is None else max_degree
+    return prepare_operator(
+        ocean,
+        love_numbers(max_degree=degree),
+        max_degree=degree,
+        sea_water_density=chosen.sea_water_density,
+        threads=threads,
+    )
+
+
+def network_vapour(network: Network) -> complex:
+    """Annual phasor of the mass of water vapour in the air, kg, in the network's phase convention."""
+    chosen = network.settings.fingerprint
+    return water_vapour_phasor(
+        chosen.water_vapour_kg, chosen.water_vapour_peak, network.settings.frame.reference_year
+    )
 
 
 def network_fingerprints(
@@ -29,15 +68,11 @@ def network_fingerprints(
     xarray.Dataset
         contracts.FINGERPRINTS.
     """
-    chosen = network.settings.fingerprint
-    vapour = water_vapour_phasor(
-        chosen.water_vapour_kg, chosen.water_vapour_peak, network.settings.frame.reference_year
-    )
     return site_fingerprints(
         operator,
         sites,
         network.loads,
-        water_vapour=vapour,
+        water_vapour=network_vapour(network),
         air_load=air.land,
         ocean_mean_air=air.mean_phasor,
         footprints=footprints,

@@ -31,8 +31,13 @@ def half_t(rng: np.random.Generator, scale: float) -> float:
     return scale * abs(rng.standard_t(4))
 
 
-def draw_network(rng: np.random.Generator, *, scales_from_prior: bool, missing: float = 0.2) -> Case:
-    """Phasors of a network whose truth and models are exchangeable, and whose load is one more member."""
+def draw_network(
+    rng: np.random.Generator, *, scales_from_prior: bool, missing: float = 0.2, common_spread: float = 0.0
+) -> Case:
+    """Phasors of a network whose truth and models are exchangeable, and whose load is one more member.
+
+    `common_spread` is the standard deviation, per component, of what a member does to all sites alike.
+    """
     prior = Priors()
     limits = (prior.site_scatter_hpa, prior.model_local_hpa, prior.model_common_hpa)
     scales = [100.0 * half_t(rng, limit) for limit in limits] if scales_from_prior else TRUE_SCALES
@@ -41,6 +46,8 @@ def draw_network(rng: np.random.Generator, *, scales_from_prior: bool, missing: 
     patterns = rng.standard_normal((3, SITES)) + 0.5j * rng.standard_normal((3, SITES))
     common_pattern = 1.08 + 0.04 * rng.standard_normal(SITES) + 0.02j * rng.standard_normal(SITES)
     admittance = common_pattern + 0.015 * rng.standard_normal((MEMBERS + 1, 3)) @ patterns
+    alike = rng.standard_normal((2, MEMBERS + 1, 1)) if common_spread else np.zeros((2, 1, 1))
+    admittance = admittance * (1.0 + common_spread * (alike[0] + 1j * alike[1]))
     truth = np.array([5.0, 85.0]) + 20.0 * rng.standard_normal(2)
     root = rng.standard_normal((SITES, 2, 3))
     size = rng.uniform(8.0, 30.0, SITES)[:, None, None] ** 2
@@ -84,6 +91,11 @@ def as_replicates(case: Case) -> Case:
     )
 
 
+def with_one_member(case: Case) -> Case:
+    """The first load member alone, as if the fingerprint were known: it is not the one the truth was made with."""
+    return replace(case, admittance=case.admittance[:1])
+
+
 def squared_distance_rank(
     case: Case, settings: PosteriorSettings, priors: Priors, rng: np.random.Generator, draws: int = 2000
 ) -> float:
@@ -107,13 +119,17 @@ def squared_distance_rank(
     return float((distance(sample) < distance(case.truth[None])[0]).mean())
 
 
-def coverage(count: int, kind: str, *, seed: int = 1, scales_from_prior: bool = False) -> float:
+def coverage(
+    count: int, kind: str, *, seed: int = 1, scales_from_prior: bool = False, common_spread: float = 0.0
+) -> float:
     """Share of networks whose truth lies in the 95 % region."""
     rng = np.random.default_rng(seed)
     priors = Priors()
     ranks = []
     for _ in range(count):
-        case = draw_network(rng, scales_from_prior=scales_from_prior)
+        case = draw_network(rng, scales_from_prior=scales_from_prior, common_spread=common_spread)
+        if kind == "one wrong member":
+            case = with_one_member(case)
         if kind == "no common error":
             priors = replace(Priors(), model_common_hpa=1e-6)
         if kind == "models as replicates":
