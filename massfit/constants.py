@@ -13,6 +13,9 @@ STANDARD_GRAVITY = 9.80665
 GRAVITATIONAL_CONSTANT = 6.67430e-11
 """Newtonian constant of gravitation, m3 kg-1 s-2 (CODATA 2018)."""
 
+EARTH_MASS = 3.986004418e14 / GRAVITATIONAL_CONSTANT
+"""Mass of the Earth, kg, from the geocentric gravitational constant (IERS Conventions 2010, table 1.1)."""
+
 EARTH_ROTATION_RATE = 7.292115e-5
 """Nominal rotation rate of the Earth, rad s-1 (IERS Conventions 2010, table 1.1)."""
 

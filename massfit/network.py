@@ -12,10 +12,11 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from massfit.display import Described, Description
+from massfit.earth.profile import EarthProfile
 from massfit.errors import Fault, InputError
 from massfit.fingerprint.pattern import LoadPattern
 from massfit.records.record import Record
-from massfit.settings import Settings
+from massfit.settings import PREM, Settings
 from massfit.site import Site
 
 
@@ -198,6 +199,8 @@ class Network(Described):
         Surface air pressure (time, lat, lon), Pa; replaces the two above.
     reduced : tuple of ReducedSite
         Phasors of sites that were reduced elsewhere; such a site has no records.
+    earth : EarthProfile, optional
+        PREM where none is given.
     models_elsewhere : tuple of str
         Models besides `circulation` that only such sites have subtracted.
     source : str
@@ -234,6 +237,7 @@ class Network(Described):
     atmosphere_load: LoadPattern | None = None
     air_pressure: xr.DataArray | None = None
     reduced: tuple[ReducedSite, ...] = ()
+    earth: EarthProfile | None = None
     models_elsewhere: tuple[str, ...] = ()
     source: str = ""
     inputs: Mapping[str, str] = field(default_factory=dict)
@@ -275,8 +279,8 @@ def check_network(network: Network) -> None:
     ------
     InputError
         Names that stand twice, data of a site that is not there or has both records and a phasor, arrays that
-        do not match, a phasor made elsewhere that is not well formed, or nothing said about the
-        ocean-mean air pressure.
+        do not match, a phasor made elsewhere that is not well formed, nothing said about the ocean-mean
+        air pressure, or an Earth model that is named and not given.
 
     Examples
     --------
@@ -304,6 +308,7 @@ def check_network(network: Network) -> None:
     faults += [fault for each in network.reduced for fault in _reduced_faults(each, network, source)]
     faults += [fault for each in network.reduced for fault in reduced_faults(each, models)]
     faults += _atmosphere_faults(network, source)
+    faults += _earth_faults(network, source)
     if faults:
         raise InputError(faults)
 
@@ -339,3 +344,11 @@ def _atmosphere_faults(network: Network, source: str) -> list[Fault]:
     problem = "nothing is said about the ocean-mean air pressure"
     allowed = f'Must be a series (or air_pressure), or "{removed}" in the settings'
     return [Fault(source, name, problem, allowed, "State it: left in, it moves the peak by weeks")]
+
+
+def _earth_faults(network: Network, source: str) -> list[Fault]:
+    model = network.settings.fingerprint.earth_model
+    if network.earth is None and model != PREM:
+        problem = f"the value is {model!r}, and no Earth profile is given"
+        return [Fault(source, "fingerprint.earth_model", problem, f'Must be "{PREM}", or give the profile')]
+    return []

@@ -17,6 +17,9 @@ from massfit.errors import Fault, InputError
 _STRICT = ConfigDict(extra="forbid", allow_inf_nan=False)
 
 NonNegative = Annotated[float, Field(ge=0)]
+PREM = "prem"
+"""The Earth model that ships with the package."""
+
 DriftForm = Literal["exponential+linear", "linear", "none"]
 
 
@@ -96,6 +99,8 @@ class Fingerprint:
         Month and day of its maximum, ``"MM-DD"``.
     rotational_feedback : bool
         Whether the solve holds the rotational response.
+    earth_model : str
+        ``"prem"``, or the file of an Earth profile.
     """
 
     loads: Annotated[tuple[str, ...], Field(min_length=1)] = ("builtin:all",)
@@ -104,6 +109,7 @@ class Fingerprint:
     water_vapour_kg: NonNegative = 0.65e15
     water_vapour_peak: Annotated[str, Field(pattern=r"^(0[1-9]|1[0-2])-(0[1-9]|[12]\d|3[01])$")] = "07-15"
     rotational_feedback: bool = False
+    earth_model: Annotated[str, Field(min_length=1)] = PREM
 
 
 @dataclass(frozen=True, config=_STRICT)

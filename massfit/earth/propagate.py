@@ -30,7 +30,8 @@ _FADING = 38.0
 # some 15 terms in rock, and no number of them for a rock that cannot bear its own weight
 _SERIES_END = 1.0e-16
 _MOST_TERMS = 80
-# the polynomials of a layer are not constant, whatever the degree
+# the polynomials of a layer are not constant, whatever the degree: at most this step in ln r, and 16 steps
+_LONGEST_STEP = 0.0025
 _FEWEST_STEPS = 16
 _STEPS_BETWEEN_ORTHONORMALISATIONS = 6
 # the three Gauss points, counted from the middle of a step in steps
@@ -108,7 +109,8 @@ def _through_layer(
     """Step a basis from ln r = `begin` to the top of a layer, by the Magnus expansion of sixth order."""
     matrix = _fluid_matrix if profile.layers[index].is_fluid else _solid_matrix
     span = np.log(profile.layers[index].top) - begin
-    count = max(_FEWEST_STEPS, int(np.ceil(np.max((degrees + 2.0) * span) / step)))
+    fewest = min(_FEWEST_STEPS, int(np.ceil(np.max(span) / _LONGEST_STEP)))
+    count = max(fewest, int(np.ceil(np.max((degrees + 2.0) * span) / step)))
     width = span / count
     for number in range(count):
         middle = begin + (number + 0.5) * width

@@ -4,10 +4,12 @@ import os
 from dataclasses import fields
 from typing import Any
 
+from massfit.earth.profile import EarthProfile
 from massfit.errors import Fault, InputError
 from massfit.fingerprint.loads import builtin_loads
 from massfit.fingerprint.pattern import LoadPattern
 from massfit.io.circulation_file import read_circulation
+from massfit.io.earth_file import read_earth_profile
 from massfit.io.fields import read_air_pressure, read_atmosphere_load, read_loads
 from massfit.io.locate import KeyPath
 from massfit.io.network_checks import check_choices, check_coverage, check_length, check_unique
@@ -18,7 +20,7 @@ from massfit.io.sections import Sections, SiteTable, parse_sections
 from massfit.io.series_file import read_series
 from massfit.network import CirculationModel, Network, ReducedSite, Series
 from massfit.records.record import Record
-from massfit.settings import Corrections, Settings
+from massfit.settings import PREM, Corrections, Fingerprint, Settings
 
 _BUILTIN = "builtin:"
 
@@ -103,6 +105,7 @@ def read_what_can_be(
     records = _records(reading, sections)
     corrections = sections.settings["corrections"]
     loads = _loads(reading, sections)
+    earth = _earth(reading, sections.settings["fingerprint"])
     circulation = _circulation(reading, sections, {site.id for site in sites.values()})
     air = _air(reading, corrections) if corrections is not None else {}
     faults = tuple(_in_order(reading))
@@ -115,6 +118,7 @@ def read_what_can_be(
         loads=loads,
         circulation=circulation,
         reduced=_reduced(sections),
+        earth=earth,
         models_elsewhere=tuple(entry.name for _, entry in sections.named_models),
         source=reading.source,
         inputs=reading.inputs,
@@ -235,6 +239,13 @@ def _builtin(reading: Reading, path: KeyPath, name: str) -> tuple[LoadPattern, .
         for fault in error.faults:
             reading.fault(path, fault.problem, fault.allowed, fault.action)
         return None
+
+
+def _earth(reading: Reading, fingerprint: Fingerprint | None) -> EarthProfile | None:
+    if fingerprint is None or fingerprint.earth_model == PREM:
+        return None
+    file = reading.find(("fingerprint", "earth_model"), fingerprint.earth_model)
+    return None if file is None else reading.attempt(read_earth_profile, file, source=fingerprint.earth_model)
 
 
 def _circulation(reading: Reading, sections: Sections, sites: set[str]) -> tuple[CirculationModel, ...]:

@@ -45,6 +45,7 @@ _COMMENTS: dict[str, dict[str, str]] = {
         "sea_water_density": "kg m-3",
         "water_vapour_kg": "half the annual range of the water vapour in the air",
         "water_vapour_peak": "month-day of its maximum",
+        "earth_model": '"prem", or the CSV file of an Earth profile',
     },
     "[posterior]": {
         "site_scatter": '"student-t" or "normal"',

@@ -11,6 +11,7 @@ from typing import Any
 
 from massfit.errors import Fault, InputError
 from massfit.fingerprint.pattern import LoadPattern
+from massfit.io.earth_file import write_earth_profile
 from massfit.io.network_text import circulation_table, deployment_table, network_text
 from massfit.io.write_fields import (
     TEXT_MISSING,
@@ -24,7 +25,7 @@ from massfit.io.write_fields import (
 )
 from massfit.network import Network
 from massfit.records.record import Record
-from massfit.settings import Settings
+from massfit.settings import PREM, Settings
 
 _SUFFIXES = (".nc", ".txt")
 
@@ -139,7 +140,7 @@ def _write_models(network: Network, folder: Path) -> list[Mapping[str, Any]]:
 
 
 def _write_fields(network: Network, folder: Path) -> Settings:
-    """Write loads and air, and name their files in the settings."""
+    """Write loads, air and Earth profile, and name their files in the settings."""
     air: dict[str, str] = {}
     if network.ocean_mean_atmosphere is not None:
         air["ocean_mean_atmosphere"] = "fields/ocean_mean_atmosphere.csv"
@@ -154,10 +155,13 @@ def _write_fields(network: Network, folder: Path) -> Settings:
     for members in _by_grid(network.loads):
         loads.append(_unlike("fields/loads.nc", loads))
         write_loads(folder / loads[-1], members)
+    earth_model = PREM if network.earth is None else "fields/earth.csv"
+    if network.earth is not None:
+        write_earth_profile(folder / earth_model, network.earth)
     return replace(
         network.settings,
         corrections=replace(network.settings.corrections, **air),  # type: ignore[arg-type]
-        fingerprint=replace(network.settings.fingerprint, loads=tuple(loads)),
+        fingerprint=replace(network.settings.fingerprint, loads=tuple(loads), earth_model=earth_model),
     )
 
 

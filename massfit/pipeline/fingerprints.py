@@ -35,7 +35,7 @@ def network_operator(
     degree = chosen.max_degree if max_degree is None else max_degree
     return prepare_operator(
         ocean,
-        love_numbers(max_degree=degree),
+        love_numbers(network.earth, max_degree=degree),
         max_degree=degree,
         sea_water_density=chosen.sea_water_density,
         threads=threads,

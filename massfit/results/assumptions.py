@@ -122,9 +122,10 @@ def _fingerprint(network: Network) -> list[str]:
         else "the exchange of water vapour is switched off"
     )
     members = f"{count} load member{'s' if count > 1 else ''} of equal weight"
+    earth = "PREM" if network.earth is None else f"the Earth profile {network.earth.name}"
     single = "" if count > 1 else " With one member the uncertainty of the fingerprint is NOT in the result."
     return [
-        f"The fingerprint is elastic (PREM), to degree {chosen.max_degree}, sea water "
+        f"The fingerprint is elastic ({earth}), to degree {chosen.max_degree}, sea water "
         f"{chosen.sea_water_density:g} kg m-3, {members}; {vapour}; no rotational feedback.{single}"
     ]
 
