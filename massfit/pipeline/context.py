@@ -23,7 +23,7 @@ def in_context(
     Parameters
     ----------
     summary : mapping
-        From `posterior.summary.summarise`.
+        From `posterior.summary.summarise`, and the `predictive_check`.
     network : Network
     reductions : sequence of SiteReduction
     fingerprints_area_m2 : float
@@ -64,6 +64,7 @@ def in_context(
             *([] if elsewhere else _no_quiet_site(reductions)),
             *network.warnings,
             *summary["warnings"],
+            *([] if summary["predictive_check"]["agrees"] else summary["predictive_check"]["sentences"]),
         ],
         "actions": {
             daily.deployment: [

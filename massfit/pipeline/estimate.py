@@ -18,6 +18,7 @@ from massfit.pipeline.progress import Progress, StageTimes, ignore
 from massfit.pipeline.provenance import provenance
 from massfit.pipeline.sites import SiteTask, daily_records, reduce_sites, usable_sites
 from massfit.pipeline.workers import Workers
+from massfit.posterior.predictive import predictive_check
 from massfit.posterior.sample import sample_posterior
 from massfit.posterior.summary import summarise
 from massfit.results.estimate import Estimate
@@ -116,6 +117,7 @@ def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Map
         ocean_area_m2=float(fingerprints.attrs["ocean_area_m2"]),
         sea_water_density=settings.fingerprint.sea_water_density,
     )
+    summary["predictive_check"] = predictive_check(posterior, phasors, fingerprints)
     return Estimate(
         network=network,
         fingerprints=fingerprints,

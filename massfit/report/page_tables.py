@@ -8,7 +8,7 @@ import xarray as xr
 
 from massfit.phasor import delay_days, peak_days
 from massfit.report.text import SHARE_WORDS
-from massfit.results.answer import spoken_date
+from massfit.results.answer import spoken_date, spoken_range
 from massfit.results.site_facts import member_table
 
 
@@ -87,6 +87,16 @@ def _alternative(row: Mapping[str, Any], year: int) -> list[str]:
         f"{abs(phasor):.3f}",
         spoken_date(float(peak_days(phasor)), year),
     ]
+
+
+def predictive_table(summary: Mapping[str, Any]) -> Table | None:
+    """Tabulate the scatter observed beside what the fitted model expects."""
+    rows = [
+        [row["meaning"], f"{row['observed']:.2f}", spoken_range(row["expected"], ".2f"), f"{row['p']:.3f}"]
+        for row in summary["predictive_check"]["checks"]
+    ]
+    head = ("scatter of the site phasors", "observed", "expected, 95 %", "p")
+    return Table("Scatter observed and expected", head, rows) if rows else None
 
 
 def site_table(summary: Mapping[str, Any]) -> Table:

@@ -105,6 +105,15 @@ are for research.</p>
 {{ table('alternatives') }}
 <p class="small">{{ alternatives_note }}</p>
 {% endif %}
+<h3>Does the model fit the sites</h3>
+<p>{{ summary.predictive_check.sentences | join(' ') }}</p>
+{% if tables.predictive %}
+{{ table('predictive') }}
+<p class="small">Each row: the scatter of the site phasors, and that of networks drawn from the fitted model, in units
+of what the model expects (the farthest site: over the root mean square of the others). p is the share of drawn networks
+that scatter at least as much; below 0.01 or above 0.99 is called out. The scales were fitted to the same sites, so p
+keeps to the middle: a value that fits says little, one at the edge says much.</p>
+{% endif %}
 <h3>The posterior</h3>
 {{ figure('corner') }}
 

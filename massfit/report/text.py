@@ -47,6 +47,7 @@ def summary_text(summary: Mapping[str, Any]) -> str:
         _alternatives(summary),
         _sites(summary),
         _trust(summary),
+        _predictive(summary),
         _warnings(summary),
     ]
     return "\n\n".join("\n".join(block) for block in blocks if block)
@@ -141,6 +142,11 @@ def warning_lines(summary: Mapping[str, Any]) -> list[str]:
 
 def _trust(summary: Mapping[str, Any]) -> list[str]:
     return wrapped(trust_sentence(summary), WIDTH, rest="  ")
+
+
+def _predictive(summary: Mapping[str, Any]) -> list[str]:
+    check = summary["predictive_check"]
+    return wrapped(" ".join(check["sentences"]), WIDTH, rest="  ") if check["agrees"] else []
 
 
 def _warnings(summary: Mapping[str, Any]) -> list[str]:
