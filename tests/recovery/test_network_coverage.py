@@ -5,7 +5,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 import pytest
 
-from massfit.posterior.network_model import inflation, member_models, scale_priors, second_routes
+from massfit.posterior.network_model import inflation, member_models, member_spread, scale_priors, second_routes
 from massfit.posterior.observations import Observations
 from massfit.posterior.quadrature import integrate_scales
 from massfit.posterior.sites import leave_one_out
@@ -146,6 +146,29 @@ def test_the_region_covers_and_the_controls_do_not():
     assert coverage(12, "models as replicates") <= 0.6
 
 
+def test_one_wrong_member_covers_too_little_and_the_mixture_does_not():
+    # what the members do to all sites alike has a standard deviation of 20 % here, so that 30 networks show it:
+    # the single member covers .69 of 320 networks, 26 or more of 30 happens to it once in a hundred studies
+    assert coverage(30, "one wrong member", common_spread=0.2) <= 25 / 30
+    # .95 has a standard error of .04
+    assert coverage(15, "full", common_spread=0.1) >= 13 / 15
+
+
+def test_the_spread_between_members_is_the_error_of_one_more():
+    # members that differ by 10 % per component at all sites alike move |A| = 0.85 hPa by 8.5 Pa per component; the
+    # inflated spread of K of them expects (K + 1) / K of that variance, both components together
+    rng = np.random.default_rng(5)
+    choices = {"settings": PLAIN, "priors": Priors(), "atmosphere_sd_hpa": 0.04}
+    spreads, sizes = [], []
+    for _ in range(6):
+        case = draw_network(rng, scales_from_prior=False, common_spread=0.1)
+        spreads.append(np.trace(member_spread(second_routes(case.observations, case.admittance, **choices))))
+        sizes.append(np.sum(case.truth**2))
+    expected = 2.0 * 0.1**2 * (MEMBERS + 1) / MEMBERS * np.mean(sizes)
+    # each is about chi-square with 2 (K - 1) degrees of freedom; three standard errors
+    assert abs(np.mean(spreads) / expected - 1.0) < 3.0 / np.sqrt(6 * (MEMBERS - 1))
+
+
 def test_sites_predicted_from_the_others_have_residuals_of_unit_size():
     rng = np.random.default_rng(3)
     squares = []
@@ -175,4 +198,25 @@ def test_sites_predicted_from_the_others_have_residuals_of_unit_size():
 def test_coverage_over_320_networks(kind, scales_from_prior, low, high):
     covered = coverage(320, kind, scales_from_prior=scales_from_prior)
     print(f"{kind}, scales {'from the prior' if scales_from_prior else 'fixed'}: {covered:.3f}")
+    assert low <= covered <= high
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize(
+    ("kind", "common_spread", "low", "high"),
+    [
+        # two-sided 99 % binomial limits over 320 networks: of .95, and of .865, which a member's error of 8.5 Pa beside
+        # the truth's own of 8.5 Pa leaves of a region made for 17 Pa per component (2-D normal, closed form)
+        ("full", 0.1, 0.919, 0.981),
+        ("one wrong member", 0.1, 0.816, 0.914),
+        # where the members hardly differ, one is as good as all
+        ("one wrong member", 0.0, 0.919, 0.981),
+        # the larger part of the variance: five members leave the tails short, one is far off (closed form .69)
+        ("full", 0.2, 0.876, 0.981),
+        ("one wrong member", 0.2, 0.62, 0.76),
+    ],
+)
+def test_coverage_of_the_fingerprint_over_320_networks(kind, common_spread, low, high):
+    covered = coverage(320, kind, common_spread=common_spread)
+    print(f"{kind}, members differ by {100 * common_spread:.0f} % at all sites alike: {covered:.3f}")
     assert low <= covered <= high
