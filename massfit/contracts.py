@@ -110,8 +110,17 @@ SITE_PHASORS = Contract(
         "days": Variable(("site",), "d"),
     },
     attributes=("reference_year",),
-    # 1 where only the mean over the site's models is known: all its models then hold that mean
-    optional={"mean_only": Variable(("site",), "1")},
+    optional={
+        # 1 where only the mean over the site's models is known: all its models then hold that mean
+        "mean_only": Variable(("site",), "1"),
+        # share of each calendar year in a site's phasor, and in the stated period; both sum to 1 over the years.
+        # The coordinate `year` names them
+        "year_share": Variable(("site", "year"), "1"),
+        "period_share": Variable(("year",), "1"),
+        # where the sites are; the coordinate `group` (site) holds their labels, empty where there is none
+        "latitude": Variable(("site",), "degrees_north"),
+        "longitude": Variable(("site",), "degrees_east"),
+    },
 )
 
 

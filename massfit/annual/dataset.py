@@ -1,6 +1,7 @@
 """Site phasors as one Dataset, as the network stage receives them."""
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
+from datetime import date, timedelta
 from typing import NamedTuple
 
 import numpy as np
@@ -12,6 +13,7 @@ from massfit.contracts import SITE_PHASORS
 from massfit.errors import Fault, InputError
 from massfit.network import ReducedSite, reduced_faults
 from massfit.phasor import COMPONENTS
+from massfit.site import Site
 
 Floats = NDArray[np.float64]
 
@@ -32,10 +34,17 @@ class _Row(NamedTuple):
     days: float
     effective_sample_size: float
     mean_only: bool
+    year_share: Mapping[int, float]
 
 
 def site_phasors(
-    fits: Sequence[SiteFit], *, models: Sequence[str], reference_year: int, reduced: Sequence[ReducedSite] = ()
+    fits: Sequence[SiteFit],
+    *,
+    models: Sequence[str],
+    reference_year: int,
+    reduced: Sequence[ReducedSite] = (),
+    sites: Sequence[Site] = (),
+    period: tuple[date, date] | None = None,
 ) -> xr.Dataset:
     """Join the fits of all sites, and the phasors that were made elsewhere.
 
@@ -48,6 +57,12 @@ def site_phasors(
     reference_year : int
     reduced : sequence of ReducedSite
         Sites that were reduced elsewhere, one Gaussian each; they stand behind the fits.
+        Each calendar year of theirs has the same share.
+    sites : sequence of Site
+        Where the sites are, and their groups; not stated where any is missing.
+    period : (datetime.date, datetime.date), optional
+        First and last day of the period that the answer is the mean of; by default the whole
+        calendar years of the records.
 
     Returns
     -------
@@ -83,6 +98,14 @@ def site_phasors(
         "reduced_sd": np.array([row.reduced_sd for row in rows]),
         "days": np.array([row.days for row in rows], float),
     }
+    years, values["year_share"], values["period_share"] = _year_shares([row.year_share for row in rows], period)
+    places = {site.id: site for site in sites}
+    placed = [places[row.site] for row in rows if row.site in places]
+    groups = {}
+    if len(placed) == len(rows):
+        values["latitude"] = np.array([site.latitude_deg for site in placed])
+        values["longitude"] = np.array([site.longitude_deg for site in placed])
+        groups = {"group": (("site",), np.array([site.group or "" for site in placed], dtype=object))}
     declared = {**SITE_PHASORS.variables, **SITE_PHASORS.optional}
     if any(row.mean_only for row in rows):
         values["mean_only"] = np.array([row.mean_only for row in rows], np.int8)
@@ -95,9 +118,31 @@ def site_phasors(
             "model": axis,
             "component": list(COMPONENTS),
             "component2": list(COMPONENTS),
+            "year": years,
+            **groups,
         },
         attrs={"reference_year": reference_year},
     )
+
+
+def _year_shares(
+    shares: Sequence[Mapping[int, float]], period: tuple[date, date] | None
+) -> tuple[list[int], Floats, Floats]:
+    """Years, their share in each site (n_site, n_year) and in the period (n_year,), as parts of its days."""
+    of_sites = {year for share in shares for year in share}
+    first, last = period or (date(min(of_sites), 1, 1), date(max(of_sites), 12, 31))
+    years = sorted(of_sites | set(range(first.year, last.year + 1)))
+    end = last + timedelta(days=1)
+    days = [
+        max((min(end, date(year + 1, 1, 1)) - max(first, date(year, 1, 1))).days, 0) for year in years
+    ]
+    table = np.array([[share.get(year, 0.0) for year in years] for share in shares])
+    return years, table, np.array(days) / sum(days)
+
+
+def _uniform_years(years: tuple[int, int]) -> dict[int, float]:
+    first, last = years
+    return dict.fromkeys(range(first, last + 1), 1.0 / (last - first + 1))
 
 
 def _fit_row(fit: SiteFit) -> _Row:
@@ -112,6 +157,7 @@ def _fit_row(fit: SiteFit) -> _Row:
         days=fit.days,
         effective_sample_size=fit.effective_sample_size,
         mean_only=False,
+        year_share=fit.year_share,
     )
 
 
@@ -127,6 +173,7 @@ def _reduced_row(site: ReducedSite) -> _Row:
         days=np.nan,
         effective_sample_size=np.nan,
         mean_only=site.mean_only,
+        year_share=_uniform_years(site.years),
     )
 
 

@@ -2,6 +2,7 @@
 
 from collections.abc import Collection, Mapping, Sequence
 from dataclasses import replace
+from datetime import date
 from typing import Any
 
 from massfit.constants import PASCAL_PER_HPA
@@ -41,7 +42,8 @@ def in_context(
         **{reduction.site.id: _recorded(reduction, frame.reference_year) for reduction in reductions},
         **{each.site: _elsewhere(each, frame) for each in elsewhere},
     }
-    first, last = _span(reductions, elsewhere)
+    first, last = records_span(reductions, elsewhere)
+    start, end = stated_period(frame, first, last)
     of_sites = {name for facts, _ in known.values() for name in facts["models"]}
     used = tuple(model for model in network.circulation if model.name in of_sites)
     unused = [
@@ -52,8 +54,8 @@ def in_context(
     return {
         "network": frame.name,
         "reference_year": frame.reference_year,
-        "period": [str(frame.start or first), str(frame.end or last)],
-        "records_span": [first, last],
+        "period": [str(start), str(end)],
+        "records_span": [str(first), str(last)],
         "ocean_area_m2": fingerprints_area_m2,
         **summary,
         "sites": [_site(entry, places[entry["id"]], *known[entry["id"]]) for entry in summary["sites"]],
@@ -76,11 +78,37 @@ def in_context(
     }
 
 
-def _span(reductions: Sequence[SiteReduction], elsewhere: Sequence[ReducedSite]) -> tuple[str, str]:
-    """First and last day of what the sites hold, ISO; a site that was reduced elsewhere gives whole years."""
-    spans = [[str(day)[:10] for day in each.corrections["time"].values[[0, -1]]] for each in reductions]
-    spans += [[f"{each.years[0]:04d}-01-01", f"{each.years[1]:04d}-12-31"] for each in elsewhere]
+def records_span(reductions: Sequence[SiteReduction], elsewhere: Sequence[ReducedSite]) -> tuple[date, date]:
+    """First and last day of what the sites hold; a site that was reduced elsewhere gives whole years.
+
+    Parameters
+    ----------
+    reductions : sequence of SiteReduction
+    elsewhere : sequence of ReducedSite
+
+    Returns
+    -------
+    (datetime.date, datetime.date)
+    """
+    spans = [each.corrections["time"].values[[0, -1]].astype("datetime64[D]").tolist() for each in reductions]
+    spans += [[date(each.years[0], 1, 1), date(each.years[1], 12, 31)] for each in elsewhere]
     return min(first for first, _ in spans), max(last for _, last in spans)
+
+
+def stated_period(frame: Frame, first: date, last: date) -> tuple[date, date]:
+    """First and last day of the period that the answer is the mean of: as stated, or that of the records.
+
+    Parameters
+    ----------
+    frame : Frame
+    first, last : datetime.date
+        Of the records.
+
+    Returns
+    -------
+    (datetime.date, datetime.date)
+    """
+    return frame.start or first, frame.end or last
 
 
 def _site(entry: Mapping[str, Any], site: Site, known: Mapping[str, Any], notes: Sequence[str]) -> dict[str, Any]:

@@ -11,7 +11,7 @@ from massfit.fingerprint.footprint import site_footprints
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.network import Network, check_network
 from massfit.pipeline.air import network_air
-from massfit.pipeline.context import in_context
+from massfit.pipeline.context import in_context, records_span, stated_period
 from massfit.pipeline.fingerprints import network_fingerprints, network_operator
 from massfit.pipeline.parts import Mapped, Store, kept
 from massfit.pipeline.progress import Progress, StageTimes, ignore
@@ -93,11 +93,14 @@ def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Map
         if records[site.id]
     ]
     reductions = reduce_sites(tasks, progress, mapped)
+    elsewhere = [each for each in network.reduced if each.site in {site.id for site in sites}]
     phasors = site_phasors(
         [reduction.fit for reduction in reductions],
         models=network.model_names,
         reference_year=settings.frame.reference_year,
-        reduced=[each for each in network.reduced if each.site in {site.id for site in sites}],
+        reduced=elsewhere,
+        sites=sites,
+        period=stated_period(settings.frame, *records_span(reductions, elsewhere)),
     )
     progress("network posterior", 0, fingerprints.sizes["member"])
     posterior = sample_posterior(

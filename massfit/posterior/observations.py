@@ -1,7 +1,7 @@
 """What the network model sees of the sites: plain arrays, checked and matched by id."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 from itertools import combinations
 
@@ -39,6 +39,16 @@ class Observations:
         Pa2, of each model's own weather.
     mean_only : frozenset of str
         Sites of which only the mean over their models is known.
+    years : tuple of int
+        Calendar years of the records and the period; empty where they are not known.
+    year_share : (n_site, n_year) array
+        Share of each year in a site's phasor.
+    period_share : (n_year,) array
+        Share of each year in the period that the answer is the mean of.
+    position : (n_site, 2) array, optional
+        Latitude and longitude, radians.
+    group : tuple of str
+        Label of each site's group, empty where it has none.
     """
 
     sites: tuple[str, ...]
@@ -48,6 +58,11 @@ class Observations:
     part_covariance: NDArray[np.float64]
     model_noise: NDArray[np.float64]
     mean_only: frozenset[str] = frozenset()
+    years: tuple[int, ...] = ()
+    year_share: NDArray[np.float64] = field(default_factory=lambda: np.zeros((0, 0)))
+    period_share: NDArray[np.float64] = field(default_factory=lambda: np.zeros(0))
+    position: NDArray[np.float64] | None = None
+    group: tuple[str, ...] = ()
 
     @cached_property
     def present(self) -> NDArray[np.bool_]:
@@ -87,13 +102,17 @@ class Observations:
 
     def select(self, keep: NDArray[np.bool_]) -> "Observations":
         """Observations of the sites where `keep` (n_site,) is true."""
+        chosen = np.flatnonzero(keep)
         return replace(
             self,
-            sites=tuple(site for site, kept in zip(self.sites, keep, strict=True) if kept),
+            sites=tuple(self.sites[s] for s in chosen),
             weight=self.weight[keep],
             part_phasor=self.part_phasor[keep],
             part_covariance=self.part_covariance[keep],
             model_noise=self.model_noise[keep],
+            year_share=self.year_share[keep] if self.years else self.year_share,
+            position=None if self.position is None else self.position[keep],
+            group=tuple(self.group[s] for s in chosen) if self.group else (),
         )
 
     def without_model(self, name: str) -> "tuple[Observations, NDArray[np.bool_]]":
@@ -119,6 +138,7 @@ def read_observations(
     Returns
     -------
     observations : Observations
+        Sites and models in the order of their names: the numbers do not depend on the order they come in.
     admittance : (n_member, n_site) array of complex
         F_s, in the order of the observations.
 
@@ -132,6 +152,7 @@ def read_observations(
     faults = _axis_faults(site_phasors, fingerprints)
     if faults:
         raise InputError(faults)
+    site_phasors = _ordered(site_phasors)
     sites = tuple(str(site) for site in site_phasors["site"].values)
     matched = fingerprints.assign_coords(site=fingerprints["site"].astype(str)).sel(site=list(sites))
     admittance = as_complex(matched["admittance"].values)
@@ -147,11 +168,37 @@ def read_observations(
         site_phasors["covariance"].values.astype(float),
         site_phasors["model_noise"].values.astype(float),
         _mean_only(site_phasors),
+        *_years(site_phasors),
+        _position(site_phasors),
+        tuple(str(label) for label in site_phasors["group"].values) if "group" in site_phasors.coords else (),
     )
     faults = _value_faults(observations, admittance)
     if faults:
         raise InputError(faults)
     return observations, admittance
+
+
+def _ordered(site_phasors: xr.Dataset) -> xr.Dataset:
+    """Sites and models by name, the column without a model last."""
+    sites, models = ([str(value) for value in site_phasors[axis].values] for axis in ("site", "model"))
+    return site_phasors.isel(
+        site=sorted(range(len(sites)), key=sites.__getitem__),
+        model=sorted(range(len(models)), key=lambda m: (models[m] == NO_MODEL, models[m])),
+    )
+
+
+def _years(site_phasors: xr.Dataset) -> tuple[tuple[int, ...], NDArray[np.float64], NDArray[np.float64]]:
+    if "year_share" not in site_phasors or "period_share" not in site_phasors:
+        return (), np.zeros((0, 0)), np.zeros(0)
+    years = tuple(int(year) for year in site_phasors["year"].values)
+    return years, site_phasors["year_share"].values.astype(float), site_phasors["period_share"].values.astype(float)
+
+
+def _position(site_phasors: xr.Dataset) -> NDArray[np.float64] | None:
+    if "latitude" not in site_phasors or "longitude" not in site_phasors:
+        return None
+    degrees = [site_phasors[name].values.astype(float) for name in ("latitude", "longitude")]
+    return np.asarray(np.radians(np.column_stack(degrees)))
 
 
 def _mean_only(site_phasors: xr.Dataset) -> frozenset[str]:
@@ -179,6 +226,8 @@ def _axis_faults(site_phasors: xr.Dataset, fingerprints: xr.Dataset) -> list[Fau
             Fault(source, repeated, f"the {axis} appears {names.count(repeated)} times", "Names are unique")
             for repeated in sorted({value for value in names if names.count(value) > 1})
         ]
+    if "year_share" in site_phasors and "year" not in site_phasors.coords:
+        faults.append(Fault("site phasors", "year", "the coordinate 'year' is missing", "It names the years"))
     if site_phasors.sizes["site"] == 0:
         faults.append(Fault("site phasors", "site", "there is no site", "At least one is needed"))
     if fingerprints.sizes["member"] == 0:
@@ -198,7 +247,14 @@ def _value_faults(observations: Observations, admittance: NDArray[np.complex128]
         faults += [Fault("site phasors", site, problem, allowed) for problem, allowed in problems]
         if not np.isfinite(admittance[:, s]).all() or (admittance[:, s] == 0).any():
             faults.append(Fault("fingerprints", site, "the admittance is zero or not finite", "Must be neither"))
+    if observations.years and not _are_shares(observations.period_share):
+        problem = f"the shares of the years are {observations.period_share.round(3).tolist()}"
+        faults.append(Fault("site phasors", "period_share", problem, "Must be non-negative and sum to 1"))
     return faults + _copy_faults(observations)
+
+
+def _are_shares(shares: NDArray[np.float64]) -> bool:
+    return bool(np.isfinite(shares).all() and (shares >= 0).all() and abs(shares.sum() - 1) < 1e-6)
 
 
 def _copy_faults(observations: Observations) -> list[Fault]:
@@ -226,8 +282,12 @@ def _site_problems(observations: Observations, s: int) -> Sequence[tuple[str, st
         problems.append(("no phasor is finite in every part", "At least one model, or the column 'none'"))
     if NO_MODEL in present and len(present) > 1:
         problems.append((f"has the column 'none' beside {len(present) - 1} models", "Must be one or the other"))
-    if not (weight >= 0).all() or not abs(weight.sum() - 1) < 1e-6:
+    if not _are_shares(weight):
         problems.append((f"the weights sum to {weight.sum():g}", "Must be non-negative and sum to 1"))
+    if observations.years and not abs(observations.year_share[s].sum() - 1) < 1e-6:
+        problems.append((f"the shares of the years sum to {observations.year_share[s].sum():g}", "Must sum to 1"))
+    if observations.position is not None and not np.isfinite(observations.position[s]).all():
+        problems.append(("its latitude or longitude is not finite", "Must be degrees north and east"))
     if not np.isfinite(covariance).all() or not (np.linalg.eigvalsh(covariance) > 0).all():
         problems.append(("a covariance is not positive definite", "Every part needs a positive definite one"))
     if not np.isfinite(noise).all() or not (np.linalg.eigvalsh(noise) >= -1e-9 * max(np.trace(noise), 1.0)).all():

@@ -71,9 +71,11 @@ def summarise(
     )
     checks = leave_one_out(models, posterior.second_route, len(observations.sites))
     effects = _mixture_effects(posterior, observations, admittance)
+    names = [str(site) for site in site_phasors["site"].values]
+    reduced_sd = dict(zip(names, site_phasors["reduced_sd"].values.astype(float).tolist(), strict=True))
     notes = [
-        _site_warnings(observations, s, float(site_phasors["reduced_sd"].values[s]), checks[s], effects[s])
-        for s in range(len(observations.sites))
+        _site_warnings(observations, s, reduced_sd[site], checks[s], effects[s])
+        for s, site in enumerate(observations.sites)
     ]
     return {
         **_answer(posterior.draws, reference_year, ocean_area_m2, sea_water_density),
@@ -136,21 +138,23 @@ def _sites(
     checks: list[SiteCheck],
     notes: list[list[str]],
 ) -> list[dict[str, object]]:
-    observed = np.einsum("sk,skmc->smc", observations.weight, site_phasors["phasor"].values)
+    given = [str(site) for site in site_phasors["site"].values]
+    observed = np.einsum("sk,skmc->smc", site_phasors["weight"].values, site_phasors["phasor"].values)
     phasor = np.nanmean(observed, axis=1) / PASCAL_PER_HPA
     covariance = observations.covariance / PASCAL_PER_HPA**2
     factors = as_components(admittance.mean(axis=0))
     return [
         {
             "id": site,
-            "phasor_hpa": phasor[s].tolist(),
+            "phasor_hpa": phasor[place].tolist(),
             "phasor_covariance_hpa2": covariance[s].tolist(),
             "admittance": factors[s].tolist(),
             "standardised_residual": checks[s].standardised_residual,
             "outlier_probability": checks[s].outlier_probability,
             "warnings": notes[s],
         }
-        for s, site in enumerate(observations.sites)
+        for place, site in enumerate(given)
+        for s in (observations.sites.index(site),)
     ]
 
 
