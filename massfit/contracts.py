@@ -93,7 +93,15 @@ CORRECTIONS = Contract(
         # NaN on the days a model does not cover; M may be 0
         "circulation": Variable(("model", "time"), "Pa"),
     },
-    optional={"present": Variable(("model",), "1")},
+    optional={
+        "present": Variable(("model",), "1"),
+        # to the wet cell used where the site's own are dry, else 0; NaN where a table of sites lacks the site
+        "distance": Variable(("model",), "m"),
+        # parts of `circulation`, each with its sign; NaN where a model lacks one
+        "own_ocean_mean": Variable(("model", "time"), "Pa"),
+        "self_attraction": Variable(("model", "time"), "Pa"),
+        "local_air_pressure": Variable(("model", "time"), "Pa"),
+    },
 )
 
 SITE_PHASORS = Contract(
@@ -120,6 +128,9 @@ SITE_PHASORS = Contract(
         # where the sites are; the coordinate `group` (site) holds their labels, empty where there is none
         "latitude": Variable(("site",), "degrees_north"),
         "longitude": Variable(("site",), "degrees_east"),
+        # what each series of a site holds at the annual line by the operator of its fit; NaN where it has none
+        "correction_phasor": Variable(("site", "correction", "component"), "Pa"),
+        "summand": Variable(("correction",), "1"),
     },
 )
 

@@ -61,6 +61,9 @@ class CirculationModel:
     air_pressure : str
         "not-forced", "forced-included" or "forced-excluded".
     assimilates_satellite_gravity : bool
+    partial : str
+        What happens at a site of which the model covers a part of the days only: "missing", the model is left out
+        there, or "cut", the record is cut to the days that it covers.
 
     Examples
     --------
@@ -76,6 +79,7 @@ class CirculationModel:
     ocean_mean: Series | None
     air_pressure: str
     assimilates_satellite_gravity: bool = False
+    partial: str = "missing"
 
 
 @dataclass(frozen=True)

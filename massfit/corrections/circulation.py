@@ -1,7 +1,7 @@
 """Bottom pressure of ocean circulation models at the sites, with their ocean mean removed."""
 
-from collections.abc import Sequence
-from dataclasses import dataclass
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 import xarray as xr
@@ -21,6 +21,10 @@ from massfit.site import Site
 
 OCEAN_MEAN_LIMIT_HPA = 0.02
 """Largest annual cycle of the ocean mean that a file may hold which claims that it is removed."""
+
+PARTS = ("own_ocean_mean", "self_attraction", "local_air_pressure")
+"""What is added to a model's pressure at the sites: less its own whole-ocean mean, where it comes with one; the answer
+of the ocean to the attraction and load of its pressure field; the air pressure there less its mean over the ocean."""
 
 WHOLE_OCEAN_SHARE = 0.9
 """Share of the ocean a model must cover for its whole-ocean mean to be judged."""
@@ -44,6 +48,11 @@ class CirculationAtSites:
         the distance to the nearest one where none is near enough; NaN where a table of sites lacks the site.
     notes : tuple of str
         What was noticed, for the report.
+    parts : mapping of str to (n_time, n_site) array
+        What `pressure` holds besides the model's own pressure at the site, Pa, by the names of `PARTS`: they were
+        added, each with its sign.
+    partial : str
+        "missing" or "cut": see :class:`massfit.network.CirculationModel`.
     """
 
     name: str
@@ -52,6 +61,15 @@ class CirculationAtSites:
     pressure: NDArray[np.float64]
     distance_km: NDArray[np.float64]
     notes: tuple[str, ...] = ()
+    parts: Mapping[str, NDArray[np.float64]] = field(default_factory=dict)
+    partial: str = "missing"
+
+    def only(self, site: str) -> "CirculationAtSites":
+        """Take one site alone."""
+        column = [self.sites.index(site)]
+        parts = {name: values[:, column] for name, values in self.parts.items()}
+        alone = {"sites": (site,), "pressure": self.pressure[:, column], "distance_km": self.distance_km[column]}
+        return replace(self, **alone, parts=parts)  # type: ignore[arg-type]
 
     def at(self, site: str) -> NDArray[np.float64]:
         """Series of one site, (n_time,) Pa."""
@@ -117,13 +135,15 @@ def circulation_at_sites(
         )
     tabulated = "site" in model.pressure.dims
     result = _from_table(model, sites) if tabulated else _from_grid(model, sites, ocean, footprints)
-    pressure = result.pressure
-    _check_size(model, pressure)
+    _check_size(model, result.pressure)
+    parts = dict(result.parts)
     if model.ocean_mean is not None:
-        pressure = pressure - _own_mean(model.name, model.ocean_mean, result.time)[:, None]
+        own = _own_mean(model.name, model.ocean_mean, result.time)
+        parts["own_ocean_mean"] = np.repeat(-own[:, None], len(sites), axis=1)
     if model.air_pressure == "forced-excluded" and air_pressure is not None:
-        pressure = pressure + _air_anomaly(air_pressure, sites, ocean, result.time)
-    return CirculationAtSites(model.name, result.sites, result.time, pressure, result.distance_km, result.notes)
+        parts["local_air_pressure"] = _air_anomaly(air_pressure, sites, ocean, result.time)
+    added = [parts[name] for name in ("own_ocean_mean", "local_air_pressure") if name in parts]
+    return replace(result, pressure=sum(added, start=result.pressure), parts=parts, partial=model.partial)
 
 
 def _check_size(model: CirculationModel, pressure: NDArray[np.float64]) -> None:
@@ -170,7 +190,7 @@ def _from_grid(
     nearby = stencil(field, wet, sites)
     attraction = _attraction_weights(field, sites, footprints)
     weights = np.stack([whole_cells, ocean_part], axis=1)
-    pressure = np.empty((field.time.size, len(sites)))
+    pressure, added = np.empty((2, field.time.size, len(sites)))
     means = np.empty((field.time.size, 2))
     for when, block in field.blocks():
         finite = np.isfinite(block)
@@ -179,12 +199,14 @@ def _from_grid(
         pressure[when] = nearby.apply(block)
         if attraction is not None:
             # the load less its own mean: no water comes or goes
-            pressure[when] += filled @ attraction - means[when, :1] * (finite @ attraction)
+            added[when] = filled @ attraction - means[when, :1] * (finite @ attraction)
     notes = _distance_notes(sites, nearby)
     notes += _check_mean(model, field.time, means, covered=ocean_part.sum() / ocean.area_m2)
     if attraction is None:
         notes.append("the attraction and load of its pressure field are not added: no footprints were given")
-    return _named(model.name, sites, field.time, pressure, nearby.distance_km, notes)
+        return _named(model.name, sites, field.time, pressure, nearby.distance_km, notes)
+    result = _named(model.name, sites, field.time, pressure + added, nearby.distance_km, notes)
+    return replace(result, parts={"self_attraction": added})
 
 
 def _quotient(above: NDArray[np.float64], below: NDArray[np.float64]) -> NDArray[np.float64]:

@@ -46,7 +46,9 @@ def read_circulation(
     """
     data = read_pressure(path, _SHAPES, source=source, variable=entry.variable)
     data = _by_site(data, sites, source) if "site" in data.dims else _by_cell(data, source)
-    return CirculationModel(entry.name, data, ocean_mean, entry.air_pressure, entry.assimilates_satellite_gravity)
+    return CirculationModel(
+        entry.name, data, ocean_mean, entry.air_pressure, entry.assimilates_satellite_gravity, entry.partial
+    )
 
 
 def _by_site(data: xr.DataArray, sites: Collection[str], source: str) -> xr.DataArray:

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 from massfit.annual.fit import DriftFit, NoiseFit, SiteFit
 from massfit.annual.fit import Estimate as NumberEstimate
+from massfit.corrections.phasors import CorrectionPhasor
 from massfit.posterior.convergence import Convergence
 from massfit.posterior.quadrature import ScalePosterior
 from massfit.records.record import Action, DailyRecord, TidalConstant
@@ -21,8 +22,8 @@ from massfit.site import Interval, Site
 CLASSES: dict[str, type] = {
     f"{kind.__module__}.{kind.__qualname__}": kind
     for kind in (
-        Action, Convergence, DailyRecord, DriftFit, Interval, NoiseFit, NumberEstimate, ScalePosterior, Site,
-        SiteFit, SiteReduction, TidalConstant,
+        Action, Convergence, CorrectionPhasor, DailyRecord, DriftFit, Interval, NoiseFit, NumberEstimate,
+        ScalePosterior, Site, SiteFit, SiteReduction, TidalConstant,
     )
 }  # fmt: skip
 """The only classes that are written and read."""

@@ -126,12 +126,14 @@ def circulation_table(model: CirculationModel, file: str, ocean_mean: str) -> Ma
     file, ocean_mean : str
         Files, relative to the network file; `ocean_mean` may be "removed".
     """
+    partial = {"partial": model.partial} if model.partial != "missing" else {}
     return {
         "name": model.name,
         "file": file,
         "ocean_mean": ocean_mean,
         "air_pressure": model.air_pressure,
         "assimilates_satellite_gravity": model.assimilates_satellite_gravity,
+        **partial,
     }
 
 

@@ -5,7 +5,7 @@ import hashlib
 import io
 import json
 import shutil
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
@@ -14,6 +14,7 @@ import xarray as xr
 
 from massfit.errors import Fault, InputError
 from massfit.io.partial_folder import PartialFolder
+from massfit.phasor import COMPONENTS
 from massfit.results.finished import FinishedRun
 
 BLANK = "0" * 64
@@ -25,6 +26,9 @@ _CSV_COLUMNS = (
     "id", "in_phase_hpa", "quadrature_hpa", "variance_in_phase_hpa2", "covariance_hpa2", "variance_quadrature_hpa2",
     "admittance_real", "admittance_imaginary", "standardised_residual", "outlier_probability", "warnings",
 )  # fmt: skip
+
+_CSV_SERIES = ("record", "long_period_tides", "pole_tide", "ocean_mean_atmosphere", "circulation")
+"""Series whose phasors stand in the table too: the site's phasor and the last four make up the first."""
 
 
 def check_output(folder: Path, *, overwrite: bool) -> None:
@@ -167,10 +171,19 @@ def _json(content: Mapping[str, Any]) -> str:
 def _write_site_table(path: Path, sites: list[Mapping[str, Any]]) -> None:
     text = io.StringIO()
     table = csv.writer(text, lineterminator="\n")
-    table.writerow(_CSV_COLUMNS)
+    table.writerow([*_CSV_COLUMNS, *(f"{name}_{part}_hpa" for name in _CSV_SERIES for part in COMPONENTS)])
     for site in sites:
         (variance_a, covariance), (_, variance_b) = site["phasor_covariance_hpa2"]
         numbers = [*site["phasor_hpa"], variance_a, covariance, variance_b, *site["admittance"]]
         numbers += [site["standardised_residual"], site["outlier_probability"]]
-        table.writerow([site["id"], *(f"{number:.6g}" for number in numbers), " | ".join(site["warnings"])])
+        texts = [site["id"], *(f"{number:.6g}" for number in numbers), " | ".join(site["warnings"])]
+        table.writerow([*texts, *_series_phasors(site.get("corrections", []))])
     path.write_text(text.getvalue(), encoding="utf-8")
+
+
+def _series_phasors(rows: Sequence[Mapping[str, Any]]) -> list[str]:
+    """Spell the phasors of the record and of what was taken off it; empty where there is no record."""
+    known = {row["series"]: row["phasor_hpa"] for row in rows if row["summand"] or row["series"] == "record"}
+    nothing = [0.0, 0.0] if known else [None, None]
+    values = [value for name in _CSV_SERIES for value in known.get(name, nothing)]
+    return ["" if value is None else f"{value:.6g}" for value in values]

@@ -137,6 +137,8 @@ class CirculationEntry:
         Which variable of the file; optional where unambiguous.
     assimilates_satellite_gravity : bool
         Whether the model has seen what it will be compared with.
+    partial : str
+        Where the model covers a part of a record only: "missing" leaves it out there, "cut" cuts the record.
     """
 
     name: Text
@@ -145,6 +147,7 @@ class CirculationEntry:
     air_pressure: Literal["not-forced", "forced-included", "forced-excluded"]
     variable: str | None = None
     assimilates_satellite_gravity: bool = False
+    partial: Literal["missing", "cut"] = "missing"
 
 
 @dataclass(frozen=True, config=_STRICT)

@@ -10,8 +10,9 @@ from massfit.network import Network, ReducedSite
 from massfit.posterior.summary import QUIET_SD
 from massfit.records.daily import TIDES_LEFT
 from massfit.results.assumptions import stated_assumptions
+from massfit.results.correction_tables import correction_table
 from massfit.results.estimate import SiteReduction
-from massfit.results.site_facts import coverage, subtracted_phasors
+from massfit.results.site_facts import coverage
 from massfit.settings import Frame
 from massfit.site import Site
 
@@ -39,7 +40,7 @@ def in_context(
     places = {site.id: site for site in network.sites}
     elsewhere = [each for each in network.reduced if places[each.site].excluded_because is None]
     known = {
-        **{reduction.site.id: _recorded(reduction, frame.reference_year) for reduction in reductions},
+        **{reduction.site.id: _recorded(reduction) for reduction in reductions},
         **{each.site: _elsewhere(each, frame) for each in elsewhere},
     }
     first, last = records_span(reductions, elsewhere)
@@ -116,7 +117,7 @@ def _site(entry: Mapping[str, Any], site: Site, known: Mapping[str, Any], notes:
     return {**entry, **place, **known, "warnings": [*entry["warnings"], *notes]}
 
 
-def _recorded(reduction: SiteReduction, reference_year: int) -> tuple[dict[str, Any], list[str]]:
+def _recorded(reduction: SiteReduction) -> tuple[dict[str, Any], list[str]]:
     """Say what the run found of a site's record, and its notes."""
     fit = reduction.fit
     notes = [note for note in str(reduction.corrections.attrs["notes"]).split("\n") if note]
@@ -131,7 +132,7 @@ def _recorded(reduction: SiteReduction, reference_year: int) -> tuple[dict[str, 
         **coverage(reduction.corrections["time"].values, reduction.used),
         "reduced_sd_hpa": fit.reduced_sd / PASCAL_PER_HPA,
         "models": list(fit.models),
-        "corrections": subtracted_phasors(reduction.corrections, reduction.used, reference_year=reference_year),
+        "corrections": correction_table(reduction.phasors),
     }
     return known, [*notes, *fit.notes]
 

@@ -21,6 +21,7 @@ from massfit.pipeline.workers import Workers
 from massfit.posterior.predictive import predictive_check
 from massfit.posterior.sample import sample_posterior
 from massfit.posterior.summary import summarise
+from massfit.results.correction_tables import with_corrections
 from massfit.results.estimate import Estimate
 
 
@@ -88,7 +89,14 @@ def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Map
         for model in network.circulation
     )
     tasks = [
-        SiteTask(site, records[site.id], responses, air.ocean_mean, circulation, settings)
+        SiteTask(
+            site,
+            records[site.id],
+            responses.sel(site=[site.id]),
+            air.ocean_mean,
+            tuple(model.only(site.id) for model in circulation),
+            settings,
+        )
         for site in sites
         if records[site.id]
     ]
@@ -102,6 +110,7 @@ def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Map
         sites=sites,
         period=stated_period(settings.frame, *records_span(reductions, elsewhere)),
     )
+    phasors = with_corrections(phasors, reductions)
     progress("network posterior", 0, fingerprints.sizes["member"])
     posterior = sample_posterior(
         phasors,

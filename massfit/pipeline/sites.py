@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from massfit.annual.fit import fit_site
 from massfit.annual.record import ReducedRecord
 from massfit.corrections.circulation import CirculationAtSites
+from massfit.corrections.phasors import companion_series, correction_phasors
 from massfit.corrections.site import site_corrections
 from massfit.errors import Fault, InputError
 from massfit.network import Network, Series
@@ -35,6 +36,7 @@ class SiteTask:
         contracts.EQUILIBRIUM_RESPONSES.
     ocean_mean_air : Series or None
     circulation : tuple of CirculationAtSites
+        Of this site alone.
     settings : Settings
     """
 
@@ -152,16 +154,19 @@ def reduce_site(task: SiteTask) -> SiteReduction:
     )
     present = corrections["present"].values == 1
     used = np.isfinite(corrections["circulation"].values[present]).all(axis=0)
+    models = [str(name) for name in corrections["model"].values[present]]
     fit = fit_site(
         [record for record in (_reduced(daily, corrections, used) for daily in task.daily) if len(record.time)],
-        models=[str(name) for name in corrections["model"].values[present]],
+        models=models,
         reference_year=task.settings.frame.reference_year,
         # a stream of its own, so that a site's numbers do not depend on which other sites there are
         rng=np.random.default_rng([task.settings.posterior.seed, crc32(task.site.id.encode())]),
         priors=task.settings.priors,
         site=task.site.id,
     )
-    return SiteReduction(task.site, task.daily, corrections, used, fit)
+    companions = np.zeros((0, 2)) if fit.companions is None else fit.companions
+    phasors = correction_phasors(corrections, companions, fit.single_gaussian()[0])
+    return SiteReduction(task.site, task.daily, corrections, used, fit, phasors)
 
 
 def _days(records: Sequence[DailyRecord]) -> NDArray[np.datetime64]:
@@ -185,6 +190,7 @@ def _reduced(daily: DailyRecord, corrections: xr.Dataset, used: NDArray[np.bool_
         start=daily.start,
         drift=daily.drift,
         steps=daily.steps,
+        companions=companion_series(corrections, daily.pressure[kept], place),
     )
 
 

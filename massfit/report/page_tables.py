@@ -44,10 +44,14 @@ _QUANTITIES = (
 )
 
 _SERIES_WORDS = {
+    "record": "daily record",
     "long_period_tides": "long-period tides",
     "pole_tide": "pole tide",
     "ocean_mean_atmosphere": "ocean-mean air pressure",
     "circulation": "circulation",
+    "own_ocean_mean": "own ocean mean taken off",
+    "self_attraction": "self-attraction added",
+    "local_air_pressure": "local air pressure added",
 }
 
 
@@ -145,23 +149,29 @@ def left_out_table(summary: Mapping[str, Any]) -> Table | None:
 
 
 def corrections_table(summary: Mapping[str, Any]) -> Table | None:
-    """Tabulate the annual cycle of every series that was subtracted, by site."""
-    own = {site["id"]: _own_corrections(site, summary["reference_year"]) for site in summary["sites"]}
+    """Tabulate the annual cycle of the record, of every series that was subtracted and of what is left, by site."""
+    own = {site["id"]: _own_corrections(site) for site in summary["sites"]}
     series = list(dict.fromkeys(name for cells in own.values() for name in cells))
     if not series:
         return None
     # the tides first and the models last, in the order they have where none is missing
     series.sort(key=lambda name: max(list(cells).index(name) for cells in own.values() if name in cells))
-    rows = [[name, *(cells.get(label, "") for label in series)] for name, cells in own.items() if cells]
-    return Table("Annual cycle of each subtracted series", ("site", *(f"{name} / hPa" for name in series)), rows)
+    left = {site["id"]: _components(site["phasor_hpa"]) for site in summary["sites"]}
+    rows = [[name, left[name], *(cells.get(label, "") for label in series)] for name, cells in own.items() if cells]
+    head = ("site", "phasor of the site", *series)
+    return Table("Annual cycle of record and subtracted series, in phase and quadrature, hPa", head, rows)
 
 
-def _own_corrections(site: Mapping[str, Any], year: int) -> dict[str, str]:
+def _own_corrections(site: Mapping[str, Any]) -> dict[str, str]:
     cells = {}
     for row in site.get("corrections", []):
         model = {None: "", "mean": " (mean of models)"}.get(row["model"], f": {row['model']}")
-        cells[_SERIES_WORDS[row["series"]] + model] = ", ".join(_amplitude_and_peak(row["phasor_hpa"], year))
+        cells[_SERIES_WORDS[row["series"]] + model] = _components(row["phasor_hpa"])
     return cells
+
+
+def _components(phasor_hpa: Sequence[float]) -> str:
+    return " ".join(f"{value:+.3f}" for value in phasor_hpa).replace("-", "\N{MINUS SIGN}")
 
 
 def fingerprint_table(summary: Mapping[str, Any], fingerprints: xr.Dataset) -> Table:

@@ -129,10 +129,12 @@ prediction from the other sites. * has a warning.</p>
 <h2 id="corrections">The corrections and what each did</h2>
 {% endif %}
 {% if tables.corrections %}
-<p>Annual cycle of every series that was subtracted: amplitude and peak. A series that is zero throughout is not
-listed.</p>
+<p>Annual cycle, in phase and quadrature, hPa, of the daily record and of every series that was taken off it. The
+phasor of the site, the tides, the air pressure and the mean of the models add up to the record. A series that is zero
+throughout is not listed.</p>
 {{ table('corrections') }}
-<p class="small">By least squares beside a level, a slope and a semi-annual cycle, on the days that the fit used.</p>
+<p class="small">By the linear operator of the site's own fit, drift and noise included: what the phasor of the site
+would hold besides, had the series been left on.</p>
 {% endif %}
 {% for name in record_pictures %}{{ figure(name) }}{% endfor %}
 

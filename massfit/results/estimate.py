@@ -9,6 +9,7 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from massfit.annual.fit import SiteFit
+from massfit.corrections.phasors import CorrectionPhasor
 from massfit.display import Described, Description
 from massfit.network import Network
 from massfit.posterior.result import Posterior
@@ -32,6 +33,8 @@ class SiteReduction:
         Days of `corrections` on which every model present has a value; the fit used these.
     fit : SiteFit
         Drift, noise and phasor.
+    phasors : tuple of CorrectionPhasor
+        What each correction did to the phasor.
     """
 
     site: Site
@@ -39,6 +42,7 @@ class SiteReduction:
     corrections: xr.Dataset
     used: NDArray[np.bool_]
     fit: SiteFit
+    phasors: tuple[CorrectionPhasor, ...] = ()
 
 
 @dataclass(frozen=True, repr=False)

@@ -166,6 +166,27 @@ def test_attraction_equals_a_forward_solve() -> None:
     assert 0.02 < np.abs(added).max() / 200.0 < 1.3 * 1025.0 / 5514.0
 
 
+def test_what_was_added_to_a_model_is_kept_apart() -> None:
+    mean = own_mean(80.0)
+    everything = circulation_at_sites(
+        model(gyre(), mean, "forced-excluded"), SITES, ocean=OCEAN, footprints=footprints(), air_pressure=air_field()
+    )
+    assert set(everything.parts) == {"own_ocean_mean", "self_attraction", "local_air_pressure"}
+    plain = circulation_at_sites(model(gyre()), SITES, ocean=OCEAN)
+    np.testing.assert_allclose(everything.pressure - sum(everything.parts.values()), plain.pressure, atol=1e-9)
+    np.testing.assert_allclose(everything.parts["own_ocean_mean"], -np.repeat(mean.pressure[:, None], 3, axis=1))
+    assert not plain.parts
+
+
+def test_one_site_alone() -> None:
+    whole = circulation_at_sites(model(gyre(), own_mean(80.0)), SITES, ocean=OCEAN, footprints=footprints())
+    alone = whole.only("B")
+    assert alone.sites == ("B",)
+    np.testing.assert_array_equal(alone.at("B"), whole.at("B"))
+    for name, part in alone.parts.items():
+        np.testing.assert_array_equal(part[:, 0], whole.parts[name][:, 1])
+
+
 def test_a_uniform_rise_has_no_attraction() -> None:
     # its mean is removed before: nothing is left to attract
     mean = Series("mean", TIME, np.full(TIME.size, 70.0))

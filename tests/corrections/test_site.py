@@ -1,5 +1,7 @@
 """The series that are subtracted at one site."""
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 import xarray as xr
@@ -96,3 +98,42 @@ def test_tides_of_a_month_stay_within_their_known_size() -> None:
     bound = 5000.0 * 0.437 * 0.2184
     assert 0.4 * bound < np.abs(corrections()["long_period_tides"]).max() < bound
     assert bound / STANDARD_GRAVITY == pytest.approx(48.7, abs=0.2)  # mm of fresh water
+
+
+def cut(name: str, days: slice, value: float) -> CirculationAtSites:
+    return replace(at_sites(name, TIME[days], value), partial="cut")
+
+
+def test_a_record_is_cut_to_the_days_of_a_model_where_that_is_asked_for() -> None:
+    calm, short = at_sites("calm", AIR.time, 7.0), cut("short", slice(0, 200), 3.0)
+    result = corrections(circulation=(calm, short))
+    assert result["present"].values.tolist() == [1, 1]
+    np.testing.assert_array_equal(np.isfinite(result["circulation"]).sum("time"), [TIME.size, 200])
+    assert f"the record is cut to 200 of {TIME.size} days, as asked" in result.attrs["notes"]
+    # the control: the same model without the choice is missing
+    missing = corrections(circulation=(calm, replace(short, partial="missing")))
+    assert missing["present"].values.tolist() == [1, 0]
+
+
+def test_a_record_is_not_cut_below_what_a_site_needs_and_the_order_does_not_matter() -> None:
+    # the two share 60 days: only the fuller one is taken
+    early, late = cut("early", slice(0, 250), 3.0), cut("late", slice(190, 450), 4.0)
+    for models in ((early, late), (late, early)):
+        result = corrections(circulation=models)
+        taken = dict(zip(result["model"].values, result["present"].values, strict=True))
+        assert taken == {"early": 0, "late": 1}
+        assert "the record of A is not cut for it, since 60 days would be left" in result.attrs["notes"]
+
+
+def test_parts_of_a_model_are_kept_on_the_days_of_the_record() -> None:
+    field = replace(at_sites("field", AIR.time, 7.0), parts={"self_attraction": np.full((AIR.time.size, 2), 0.5)})
+    result = corrections(circulation=(at_sites("calm", AIR.time, 7.0), field))
+    require(result, CORRECTIONS)
+    assert np.isnan(result["self_attraction"].sel(model="calm")).all()
+    np.testing.assert_array_equal(result["self_attraction"].sel(model="field"), np.full(TIME.size, 0.5))
+    assert "own_ocean_mean" not in result
+
+
+def test_the_distance_to_a_wet_cell_is_handed_on() -> None:
+    away = replace(at_sites("away", AIR.time, 7.0), distance_km=np.array([0.0, 123.0]))
+    assert corrections(circulation=(away,))["distance"].values.tolist() == [123e3]

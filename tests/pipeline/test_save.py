@@ -54,6 +54,11 @@ def test_the_site_table_holds_the_sites(folder: Path, run: Estimate) -> None:
         assert row["id"] == site["id"]
         assert float(row["quadrature_hpa"]) == pytest.approx(site["phasor_hpa"][1], rel=1e-5)
         assert float(row["covariance_hpa2"]) == pytest.approx(site["phasor_covariance_hpa2"][0][1], rel=1e-5)
+        # the corrections and the phasor of the site add up to the record, to the digits printed
+        taken = ("long_period_tides", "pole_tide", "ocean_mean_atmosphere", "circulation")
+        for part in ("in_phase", "quadrature"):
+            summed = float(row[f"{part}_hpa"]) + sum(float(row[f"{name}_{part}_hpa"]) for name in taken)
+            assert summed == pytest.approx(float(row[f"record_{part}_hpa"]), abs=1e-4)
 
 
 def test_run_json_says_how_to_repeat_it(folder: Path, run: Estimate) -> None:
