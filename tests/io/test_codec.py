@@ -56,7 +56,11 @@ class Unlisted:
     pass
 
 
-@pytest.mark.parametrize("value", [Unlisted(), Unlisted, len, {1, 2}, b"x", 1j, np.array([Unlisted()])], ids=lambda value: type(value).__name__)
+@pytest.mark.parametrize(
+    "value",
+    [Unlisted(), Unlisted, len, {1, 2}, b"x", 1j, np.array([Unlisted()])],
+    ids=lambda value: type(value).__name__,
+)
 def test_nothing_else_is_stored(value: object) -> None:
     with pytest.raises(TypeError, match=r"not stored|not among the classes"):
         encode(value)
