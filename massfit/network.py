@@ -19,6 +19,12 @@ from massfit.records.record import Record
 from massfit.settings import PREM, Settings
 from massfit.site import Site
 
+TWICE = (
+    "Observed polar motion already holds the response to the mass exchange, so it would count twice",
+    "Set it to false",
+)
+"""Why the pole tide is not both taken off with observations and fed back, and what to do."""
+
 
 @dataclass(frozen=True)
 class Series:
@@ -284,7 +290,8 @@ def check_network(network: Network) -> None:
     InputError
         Names that stand twice, data of a site that is not there or has both records and a phasor, arrays that
         do not match, a phasor made elsewhere that is not well formed, nothing said about the ocean-mean
-        air pressure, or an Earth model that is named and not given.
+        air pressure, an Earth model that is named and not given, or a pole tide that is both taken off and fed
+        back.
 
     Examples
     --------
@@ -313,6 +320,11 @@ def check_network(network: Network) -> None:
     faults += [fault for each in network.reduced for fault in reduced_faults(each, models)]
     faults += _atmosphere_faults(network, source)
     faults += _earth_faults(network, source)
+    if network.settings.fingerprint.rotational_feedback and (
+        network.settings.corrections.pole_tide == "observed" or network.reduced
+    ):
+        problem = "the value is true, and the pole tide is taken off with observed polar motion"
+        faults.append(Fault(source, "fingerprint.rotational_feedback", problem, *TWICE))
     if faults:
         raise InputError(faults)
 

@@ -61,3 +61,22 @@ def test_the_main_job_checks_before_it_works(invented: Network) -> None:
 
     with pytest.raises(InputError):
         estimate(replace(invented, ocean_mean_atmosphere=None), progress=stop)
+
+
+def with_choices(network: Network, **choices: object) -> Network:
+    settings = network.settings
+    return replace(network, settings=replace(settings, fingerprint=replace(settings.fingerprint, **choices)))
+
+
+def test_the_wobble_is_not_counted_twice(invented: Network) -> None:
+    asked = with_choices(invented, rotational_feedback=True)
+    problem = "the value is true, and the pole tide is taken off with observed polar motion"
+    assert problems(asked) == [("fingerprint.rotational_feedback", problem)]
+    kept = replace(asked.settings, corrections=replace(asked.settings.corrections, pole_tide="none"))
+    check_network(replace(asked, settings=kept))
+
+
+def test_an_earth_that_is_named_must_be_given(invented: Network) -> None:
+    assert problems(with_choices(invented, earth_model="mine.csv")) == [
+        ("fingerprint.earth_model", "the value is 'mine.csv', and no Earth profile is given")
+    ]

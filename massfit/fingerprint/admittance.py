@@ -14,6 +14,7 @@ from massfit.fingerprint.footprint import site_footprints
 from massfit.fingerprint.grid import CellGrid, regrid
 from massfit.fingerprint.operator import SeaLevelOperator
 from massfit.fingerprint.pattern import LoadPattern
+from massfit.fingerprint.rotation import RotationalFeedback, with_rotation
 from massfit.phasor import COMPONENTS, as_components, days_since, phasor_from_peak
 from massfit.site import Site
 
@@ -33,6 +34,7 @@ def site_fingerprints(
     air_load: LoadPattern | None = None,
     ocean_mean_air: complex | None = None,
     footprints: xr.Dataset | None = None,
+    rotation: RotationalFeedback | None = None,
 ) -> xr.Dataset:
     """Complex admittance F_s = S(site) / (mean of S over the ocean) of every member.
 
@@ -56,6 +58,8 @@ def site_fingerprints(
     footprints : xarray.Dataset, optional
         From :func:`massfit.fingerprint.footprint.site_footprints` for the same sites
         and operator, when they are at hand.
+    rotation : RotationalFeedback, optional
+        Of this operator; the annual wobble that loads and air cause is then fed back.
 
     Returns
     -------
@@ -83,6 +87,8 @@ def site_fingerprints(
     _check(sites, loads, air_load, ocean_mean_air, footprints)
     if footprints is None:
         footprints = site_footprints(operator, sites)
+    if rotation is not None:
+        footprints = with_rotation(footprints, operator, sites, rotation)
     uniform = (1.0 - operator.ocean).astype(complex)
     fields = np.stack([*(regrid(load.values, _cells(load), operator.cells) for load in loads), uniform])
     vapour = np.append(np.full(len(loads), water_vapour, dtype=complex), 0.0)
@@ -111,6 +117,7 @@ def site_fingerprints(
             "max_degree": operator.max_degree,
             "ocean_area_m2": operator.ocean_area_m2,
             "sea_water_density_kg_m3": operator.sea_water_density,
+            "rotational_feedback": "none" if rotation is None else "annual",
         },
     )
 

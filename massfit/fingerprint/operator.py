@@ -24,6 +24,7 @@ from massfit.fingerprint.ocean import OceanFunction
 from massfit.fingerprint.transforms import SphereGrid
 
 _MAX_STEPS = 100
+_CONSTANT_ONE = np.sqrt(4.0 * np.pi)  # degree 0 of the field that is 1 everywhere
 
 
 class ElasticResponse(Protocol):
@@ -129,6 +130,60 @@ class SeaLevelOperator:
     def ocean_integral(self, coefficients: NDArray[np.complex128]) -> NDArray[np.float64]:
         """Integral of fields over the ocean of the unit sphere."""
         return self.inner(coefficients, self.ocean_coefficients)
+
+    def solve(
+        self,
+        load: NDArray[np.complex128],
+        forcing: NDArray[np.complex128],
+        vapour: NDArray[np.float64],
+        *,
+        tolerance: float = 1e-12,
+    ) -> tuple[NDArray[np.complex128], NDArray[np.float64], int]:
+        """Solve the sea-level equation for real fields given by their harmonics.
+
+        Parameters
+        ----------
+        load, forcing : (n_field, n_coefficient) array of complex
+            W, kg m-2, and Phi, m, whose degree 0 drops out.
+        vapour : (n_field,) array
+            M_v, kg.
+        tolerance : float
+            Residual relative to the right side.
+
+        Returns
+        -------
+        height : (n_field, n_coefficient) array of complex
+            Of the sea, m.
+        constant : (n_field,) array
+            The constant c of the equation, m.
+        steps : int
+            Conjugate-gradient steps.
+
+        Raises
+        ------
+        ConvergenceError
+            The tolerance is not reached.
+        """
+        # mean height over the ocean, fixed by the masses
+        mean = -(self.mass(load) + vapour) / (self.sea_water_density * self.ocean_area_m2)
+        root = self.root_kernel
+        source = root * (load + self.sea_water_density * mean[:, None] * self.ocean_coefficients)
+        source[:, 1:] += forcing[:, 1:] / root[1:]
+        u, steps = self.invert(source, tolerance=tolerance)
+        height = root * u
+        constant = mean - self.ocean_integral(height) * EARTH_RADIUS**2 / self.ocean_area_m2
+        height[:, 0] += _CONSTANT_ONE * constant
+        return height, constant, steps
+
+    def mass(self, load: NDArray[np.complex128]) -> NDArray[np.float64]:
+        """Integral of loads over the Earth, kg.
+
+        Parameters
+        ----------
+        load : (n_field, n_coefficient) array of complex
+            kg m-2.
+        """
+        return np.asarray(_CONSTANT_ONE * load[:, 0].real * EARTH_RADIUS**2)
 
     def invert(self, right: NDArray[np.complex128], *, tolerance: float = 1e-12) -> tuple[NDArray[np.complex128], int]:
         """Solve (1 - rho K^(1/2) B' K^(1/2)) u = right by conjugate gradients.

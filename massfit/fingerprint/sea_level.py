@@ -9,6 +9,7 @@ from massfit.constants import EARTH_RADIUS, KG_PER_GT
 from massfit.display import Described, Description, counted, shown_number
 from massfit.errors import Fault, InputError
 from massfit.fingerprint.operator import SeaLevelOperator
+from massfit.fingerprint.rotation import RotationalFeedback
 
 
 @dataclass(frozen=True, eq=False, repr=False)
@@ -94,6 +95,7 @@ def solve_sea_level(
     load: NDArray[np.float64] | NDArray[np.complex128] | None = None,
     forcing: NDArray[np.float64] | NDArray[np.complex128] | None = None,
     water_vapour: complex = 0.0,
+    rotation: RotationalFeedback | None = None,
     tolerance: float = 1e-12,
 ) -> SeaLevel:
     """Solve the elastic sea-level equation with a self-consistent, mass-conserving ocean.
@@ -113,6 +115,9 @@ def solve_sea_level(
         included; its mean drops out.
     water_vapour : complex
         M_v, mass of water vapour in the air, kg; positive mass lowers the sea.
+    rotation : RotationalFeedback, optional
+        Of this operator: the inputs are then annual phasors, and the wobble that they cause is fed back. None by
+        default, as where the pole tide is taken off with observed polar motion.
     tolerance : float
         Residual of the solve relative to its right side.
 
@@ -138,25 +143,18 @@ def solve_sea_level(
     -0.3967
     """
     _check(operator, load, forcing, water_vapour)
-    complex_valued = any(np.iscomplexobj(value) for value in (load, forcing, water_vapour) if value is not None)
+    given = [value for value in (load, forcing, water_vapour) if value is not None]
+    complex_valued = rotation is not None or any(np.iscomplexobj(value) for value in given)
     w = _coefficients(operator, load, complex_valued)
     phi = _coefficients(operator, forcing, complex_valued)
     vapour = _parts(np.asarray(water_vapour), complex_valued)
-    density, ocean = operator.sea_water_density, operator.ocean_coefficients
-    solid_angle = np.sqrt(4.0 * np.pi)  # coefficient of the constant 1
-    mass = solid_angle * w[:, 0].real * EARTH_RADIUS**2
-    # mean height over the ocean, fixed by the masses
-    mean = -(mass + vapour) / (density * operator.ocean_area_m2)
-    root = operator.root_kernel
-    source = root * (w + density * mean[:, None] * ocean)
-    source[:, 1:] += phi[:, 1:] / root[1:]
-    u, iterations = operator.invert(source, tolerance=tolerance)
-    height = root * u
-    ocean_angle = operator.ocean_area_m2 / EARTH_RADIUS**2
-    constant = mean - operator.ocean_integral(height) / ocean_angle
-    height[:, 0] += solid_angle * constant
-    joined = [_joined(value).item() for value in (constant, mass)]
-    return SeaLevel(operator, height, joined[0], joined[1], water_vapour, iterations)
+    height, constant, steps = operator.solve(w, phi, vapour, tolerance=tolerance)
+    if rotation is not None:
+        whole = w + operator.sea_water_density * operator.on_ocean(height)
+        turned = _parts(rotation.wobble(operator, whole), True)  # in-phase and quadrature parts of m_1 and m_2
+        height, constant = height + turned @ rotation.response, constant + turned @ rotation.constant
+    joined = [_joined(value).item() for value in (constant, operator.mass(w))]
+    return SeaLevel(operator, height, joined[0], joined[1], water_vapour, steps)
 
 
 def _check(

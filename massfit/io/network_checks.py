@@ -12,7 +12,7 @@ from massfit.io.reading import Reading, did_you_mean, nearest
 from massfit.io.record_checks import check_values
 from massfit.io.schema import SiteEntry
 from massfit.io.sections import Sections, shown
-from massfit.network import ReducedSite, reduced_faults
+from massfit.network import TWICE, ReducedSite, reduced_faults
 from massfit.records.record import Record
 from massfit.settings import Corrections, Fingerprint, Frame
 from massfit.site import LEAST_NETWORK_DAYS, LEAST_SITE_DAYS, Site
@@ -39,7 +39,7 @@ def check_choices(reading: Reading, sections: Sections) -> None:
     if corrections is not None:
         _check_atmosphere(reading, corrections)
     if fingerprint is not None:
-        _check_fingerprint(reading, fingerprint, corrections)
+        _check_fingerprint(reading, sections, fingerprint, corrections)
     entries = [(table.path, table.entry) for table in sections.sites if table.entry is not None]
     check_unique(reading, [((*path, "id"), entry.id) for path, entry in entries])
     check_unique(reading, _model_names(sections))
@@ -175,17 +175,19 @@ def _check_atmosphere(reading: Reading, corrections: Corrections) -> None:
         reading.fault((*path, "ocean_mean_phasor_hpa"), problem, allowed, "Remove it")
 
 
-def _check_fingerprint(reading: Reading, fingerprint: Fingerprint, corrections: Corrections | None) -> None:
+def _check_fingerprint(
+    reading: Reading, sections: Sections, fingerprint: Fingerprint, corrections: Corrections | None
+) -> None:
     path: KeyPath = ("fingerprint", "loads")
     check_unique(reading, [((*path, position), text) for position, text in enumerate(fingerprint.loads)])
     if not fingerprint.rotational_feedback:
         return
     if corrections is not None and corrections.pole_tide == "observed":
-        problem = 'rotational_feedback is true and pole_tide is "observed"'
-        allowed = "Observed polar motion already holds the response to the mass exchange, so it would count twice"
-    else:
-        problem, allowed = "the value is true", "Rotational feedback is not available in this version"
-    reading.fault(("fingerprint", "rotational_feedback"), problem, allowed, "Set it to false")
+        reading.fault(("fingerprint", "rotational_feedback"), 'the value is true and pole_tide is "observed"', *TWICE)
+    reduced = [table.entry.id for table in sections.sites if table.reduced_elsewhere and table.entry is not None]
+    if reduced:
+        problem = f"the value is true and site {reduced[0]} was reduced elsewhere, with the pole tide taken off"
+        reading.fault(("fingerprint", "rotational_feedback"), problem, *TWICE)
 
 
 def _check_place(reading: Reading, path: KeyPath, entry: SiteEntry) -> None:

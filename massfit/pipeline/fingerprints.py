@@ -8,6 +8,7 @@ from massfit.earth.love import love_numbers
 from massfit.fingerprint.admittance import site_fingerprints, water_vapour_phasor
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.fingerprint.operator import SeaLevelOperator, prepare_operator
+from massfit.fingerprint.rotation import RotationalFeedback, prepare_rotation
 from massfit.network import Network
 from massfit.pipeline.air import AirPressure
 from massfit.site import Site
@@ -40,6 +41,23 @@ def network_operator(
         sea_water_density=chosen.sea_water_density,
         threads=threads,
     )
+
+
+def network_rotation(network: Network, operator: SeaLevelOperator) -> RotationalFeedback | None:
+    """Rotational feedback of the annual loads, where the network asks for it.
+
+    Parameters
+    ----------
+    network : Network
+    operator : SeaLevelOperator
+
+    Returns
+    -------
+    RotationalFeedback or None
+    """
+    if not network.settings.fingerprint.rotational_feedback:
+        return None
+    return prepare_rotation(operator, love_numbers(network.earth, max_degree=2))
 
 
 def network_vapour(network: Network) -> complex:
@@ -76,4 +94,5 @@ def network_fingerprints(
         air_load=air.land,
         ocean_mean_air=air.mean_phasor,
         footprints=footprints,
+        rotation=network_rotation(network, operator),
     )

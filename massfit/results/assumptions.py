@@ -122,11 +122,16 @@ def _fingerprint(network: Network) -> list[str]:
         else "the exchange of water vapour is switched off"
     )
     members = f"{count} load member{'s' if count > 1 else ''} of equal weight"
+    rotation = (
+        "the annual wobble that loads and air cause is fed back (rotational feedback), that of the circulation is not"
+        if chosen.rotational_feedback
+        else "no rotational feedback"
+    )
     earth = "PREM" if network.earth is None else f"the Earth profile {network.earth.name}"
     single = "" if count > 1 else " With one member the uncertainty of the fingerprint is NOT in the result."
     return [
         f"The fingerprint is elastic ({earth}), to degree {chosen.max_degree}, sea water "
-        f"{chosen.sea_water_density:g} kg m-3, {members}; {vapour}; no rotational feedback.{single}"
+        f"{chosen.sea_water_density:g} kg m-3, {members}; {vapour}; {rotation}.{single}"
     ]
 
 

@@ -242,16 +242,19 @@ FAULTS = {
     "pole motion counted twice": (
         LOADS,
         "rotational_feedback = true",
-        ['N:41: fingerprint.rotational_feedback: rotational_feedback is true and pole_tide is "observed". '
+        ['N:41: fingerprint.rotational_feedback: the value is true and pole_tide is "observed". '
          "Observed polar motion already holds the response to the mass exchange, so it would count twice. "
          "Set it to false."],
     ),
-    "rotation not available": (
+    "pole motion counted twice at a site reduced elsewhere": (
         f'[[circulation]]\nname = "Invented model"\nfile = "fields/model.nc"\nocean_mean = "removed"\n'
         f'air_pressure = "not-forced"\n\n[fingerprint]\n{LOADS}',
-        'pole_tide = "none"\n[fingerprint]\nrotational_feedback = true',
-        ["N:36: fingerprint.rotational_feedback: the value is true. "
-         "Rotational feedback is not available in this version. Set it to false."],
+        'pole_tide = "none"\n[[site]]\nid = "C"\nlatitude = 0.0\nlongitude = 200.0\nphasor_hpa = [0.1, 0.8]\n'
+        'phasor_covariance_hpa2 = [[0.01, 0.0], [0.0, 0.01]]\nyears = [2014, 2016]\nsubtracted = []\n'
+        "[fingerprint]\nrotational_feedback = true",
+        ["N:44: fingerprint.rotational_feedback: the value is true and site C was reduced elsewhere, with the pole "
+         "tide taken off. Observed polar motion already holds the response to the mass exchange, so it would count "
+         "twice. Set it to false."],
     ),
     "unknown built-in load": (
         LOADS,

@@ -5,6 +5,7 @@ from dataclasses import replace
 import numpy as np
 import xarray as xr
 
+from massfit.earth.profile import prem
 from massfit.network import Network
 from massfit.results.assumptions import stated_assumptions
 
@@ -17,3 +18,14 @@ def test_the_source_of_the_ocean_mean_air_pressure_is_named(invented: Network) -
         stated_assumptions(replace(none, air_pressure=field))
     )
     assert "taken as already removed" in " ".join(stated_assumptions(none))
+
+
+def test_rotation_and_earth_are_those_of_the_run(invented: Network) -> None:
+    settings = invented.settings
+    turning = replace(settings, fingerprint=replace(settings.fingerprint, rotational_feedback=True))
+    assert "elastic (PREM)" in " ".join(stated_assumptions(invented))
+    assert "no rotational feedback" in " ".join(stated_assumptions(invented))
+    told = " ".join(stated_assumptions(replace(invented, settings=turning, earth=replace(prem(), name="Mine"))))
+    assert "elastic (the Earth profile Mine)" in told
+    assert "the annual wobble that loads and air cause is fed back" in told
+    assert "no rotational feedback" not in told
