@@ -17,10 +17,11 @@ from massfit.errors import Fault, InputError
 _STRICT = ConfigDict(extra="forbid", allow_inf_nan=False)
 
 NonNegative = Annotated[float, Field(ge=0)]
+NoiseForm = Literal["white", "exponential", "smooth", "power-law", "sum"]
+DriftForm = Literal["exponential+linear", "linear", "none"]
+
 PREM = "prem"
 """The Earth model that ships with the package."""
-
-DriftForm = Literal["exponential+linear", "linear", "none"]
 
 
 @dataclass(frozen=True, config=_STRICT)
@@ -150,8 +151,11 @@ class Priors:
         Normal priors of the drift terms.
     drift_time_min_days : float
         Shortest drift time constant, days; the longest is the deployment's length.
+    noise_forms : tuple of str
+        Forms of the noise of a site that are weighed by their evidence, equally likely before: ``"white"``,
+        ``"exponential"``, ``"smooth"``, ``"power-law"``, ``"sum"``.
     noise_time_scales_days : tuple of float
-        Fixed time scales of the Ornstein-Uhlenbeck terms, days.
+        Time scales of the red noise, days: of the terms of ``"sum"``; the least and the largest of all others.
     red_noise_hpa, white_noise_hpa : float
         Scales of the half-t priors (4 degrees of freedom) of the noise amplitudes, hPa.
     """
@@ -165,6 +169,7 @@ class Priors:
     drift_exponential_sd_hpa: PositiveFloat = 30.0
     drift_slope_sd_hpa_per_year: PositiveFloat = 10.0
     drift_time_min_days: PositiveFloat = 3.0
+    noise_forms: Annotated[tuple[NoiseForm, ...], Field(min_length=1)] = ("white", "exponential", "smooth", "power-law")
     noise_time_scales_days: Annotated[tuple[PositiveFloat, ...], Field(min_length=1, max_length=6)] = (2.0, 20.0, 200.0)
     red_noise_hpa: PositiveFloat = 0.5
     white_noise_hpa: PositiveFloat = 0.2

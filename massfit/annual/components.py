@@ -1,18 +1,20 @@
-"""Integration over noise amplitudes and drift times by importance sampling.
+"""Integration over forms of noise, their parameters and drift times by importance sampling.
 
-The noise scores are proposed from a multivariate t distribution about the mode, then
-from kernel estimates of the posterior made of all draws before (population Monte Carlo:
+For every form the noise scores are proposed from a multivariate t distribution about the mode,
+then from kernel estimates of the posterior made of all draws before (population Monte Carlo:
 Cappe et al. 2004); the drift times from their joint sample at the mode. The weight of a
 component is its exact joint evidence over its proposal, so that the proposal decides on
-efficiency only. Points are quasi-random: multiples of the square roots of primes modulo
-one (Richtmyer 1951) with a random shift (Cranley & Patterson 1976).
+efficiency only; the sum of the weights of a form is its evidence. Points are quasi-random:
+multiples of the square roots of primes modulo one (Richtmyer 1951) with a random shift
+(Cranley & Patterson 1976).
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from itertools import count
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.special import gammaincinv, ndtri
+from scipy.special import gammaincinv, gammaln, ndtri
 
 from massfit.annual.chains import DriftSample, sample_drift
 from massfit.annual.design import Design
@@ -24,19 +26,20 @@ from massfit.annual.evidence import (
     reduce_columns,
     solve_choices,
 )
-from massfit.annual.mode import Mode
-from massfit.annual.noise import NoisePriors, log_score_prior
+from massfit.annual.families import log_score_prior
+from massfit.annual.mode import FamilyMode, Mode
+from massfit.annual.noise import NoiseModel
 
 Floats = NDArray[np.float64]
 Choices = NDArray[np.int64]
 
-NODES_PER_ROUND = 64
-"""Noise models tried about the mode, and then about the better ones of all before."""
+LEAST_NODES, NODES_PER_ROUND = 12, 36
+"""Noise models tried in a round: the first for every form, and the second shared by weight."""
 
-LEAST_ROUNDS, MOST_ROUNDS = 3, 8
+LEAST_ROUNDS, MOST_ROUNDS = 2, 8
 
-EFFECTIVE_NODES = 60.0
-"""Rounds end when so many noise models count."""
+EFFECTIVE_NODES = 50.0
+"""Rounds end when so many noise models count, shared by weight."""
 
 PROPOSAL_DEGREES = 5
 """Degrees of freedom of the proposal: tails heavier than those of the posterior, which falls
@@ -57,8 +60,11 @@ class Components:
     weight : (K,) array
         Sums to 1.
     node : (K,) array of int
-        Row of `scores`.
-    scores : (S, J + 1) array
+        Which of `models`.
+    forms : tuple of str
+        Form of each of S noise models.
+    models : tuple of NoiseModel
+        S of them.
     time_constants : (K, D) array
         Days.
     annual : (K, 2, 1 + M + C) array
@@ -73,7 +79,8 @@ class Components:
 
     weight: Floats
     node: Choices
-    scores: Floats
+    forms: tuple[str, ...]
+    models: tuple[NoiseModel, ...]
     time_constants: Floats
     annual: Floats
     annual_covariance: Floats
@@ -85,7 +92,7 @@ class Components:
     @property
     def node_weight(self) -> Floats:
         """Posterior weight of each noise model: (S,)."""
-        return np.asarray(np.bincount(self.node, self.weight, len(self.scores)), float)
+        return np.asarray(np.bincount(self.node, self.weight, len(self.models)), float)
 
     @property
     def effective_sample_size(self) -> float:
@@ -93,13 +100,12 @@ class Components:
         return float(1.0 / np.sum(self.node_weight**2))
 
 
-def integrate(design: Design, noise: NoisePriors, mode: Mode, rng: np.random.Generator) -> Components:
-    """Weighted components over noise amplitudes and drift times.
+def integrate(design: Design, mode: Mode, rng: np.random.Generator) -> Components:
+    """Weighted components over forms of noise, their parameters and drift times.
 
     Parameters
     ----------
     design : Design
-    noise : NoisePriors
     mode : Mode
     rng : numpy.random.Generator
 
@@ -107,21 +113,37 @@ def integrate(design: Design, noise: NoisePriors, mode: Mode, rng: np.random.Gen
     -------
     Components
     """
-    sample = sample_drift(noise.covariance(design.days, mode.scores), design, mode.grid, rng)
+    sample = sample_drift(design.covariance(mode.noise), design, mode.grid, rng)
     exponentials = compress(design.exponentials(sample.grid.time_constants), sample.grid.first_columns)
+    solver = _Solver(design, sample, exponentials)
+    log_evidence = np.array([each.log_evidence for each in mode.families])
+    share = np.exp(log_evidence - np.logaddexp.reduce(log_evidence))
+    batches = [
+        batch
+        for each, part in zip(mode.families, share, strict=True)
+        for batch in _explore(solver, each, mode.white_ratio, float(part), rng)
+    ]
+    return _collect(batches)
+
+
+def _explore(
+    solver: "_Solver", mode: FamilyMode, white_ratio: Floats, share: float, rng: np.random.Generator
+) -> "list[_Batch]":
+    """Weighted noise models of one form; their weights sum to its evidence."""
+    size = LEAST_NODES + round(NODES_PER_ROUND * share)
     start = _Proposal(mode.scores[None, :], np.ones(1), PROPOSAL_WIDENING * mode.spread)
     proposals, nodes, batches = [start], np.zeros((0, len(mode.scores))), []
     while True:
-        new = proposals[-1].draw(NODES_PER_ROUND, rng)
-        batches += [_solve(design, noise, sample, exponentials, node, row) for row, node in enumerate(new, len(nodes))]
+        new = proposals[-1].draw(size, rng)
+        batches += [solver.solve(mode, scores, white_ratio) for scores in new]
         nodes = np.concatenate([nodes, new])
         # balance heuristic (Veach & Guibas 1995): every node is weighed against the mixture of all proposals
-        log_proposal = np.logaddexp.reduce([proposal.log_density(nodes) for proposal in proposals])
+        log_proposal = np.logaddexp.reduce([proposal.log_density(nodes) for proposal in proposals]) + np.log(size)
         log_weight = np.array([batch.log_total for batch in batches]) - log_proposal
         weight = np.exp(log_weight - log_weight.max())
         effective = weight.sum() ** 2 / np.sum(weight**2)
-        if len(proposals) >= LEAST_ROUNDS and (effective > EFFECTIVE_NODES or len(proposals) == MOST_ROUNDS):
-            return _collect(nodes, batches, log_proposal)
+        if len(proposals) >= LEAST_ROUNDS and (effective > EFFECTIVE_NODES * share or len(proposals) == MOST_ROUNDS):
+            return [batch.weighed(log) for batch, log in zip(batches, log_proposal, strict=True)]
         # rare noisy models carry much of the variance: they are visited more often than their weight asks
         proposals.append(_adapted(nodes, weight * [batch.sigma for batch in batches], start))
 
@@ -134,7 +156,7 @@ class _Proposal:
         self.root = np.linalg.cholesky(covariance)
 
     def draw(self, count: int, rng: np.random.Generator) -> Floats:
-        """Draws of the scores: (count, J + 1)."""
+        """Draws of the scores: (count, k)."""
         points = _points(count, len(self.root) + 2, rng)
         centres = np.searchsorted(np.cumsum(self.weight), points[:, 0] * self.weight.sum())
         gamma = gammaincinv(PROPOSAL_DEGREES / 2.0, points[:, 1:2])
@@ -142,13 +164,15 @@ class _Proposal:
         return np.asarray(self.centres[np.minimum(centres, len(self.weight) - 1)] + away @ self.root.T)
 
     def log_density(self, values: Floats) -> Floats:
-        """Log density without the constant that all proposals share: (S, J + 1) to (S,)."""
+        """Log density: (S, k) to (S,)."""
         size, degrees = self.centres.shape[1], PROPOSAL_DEGREES
         white = np.linalg.solve(self.root, values.T)
         white_centres = np.linalg.solve(self.root, self.centres.T)
         distance = np.sum((white[:, :, None] - white_centres[:, None, :]) ** 2, axis=0)
         kernel = (1.0 + distance / degrees) ** (-0.5 * (degrees + size))
-        return np.asarray(np.log(kernel @ self.weight) - np.log(np.diag(self.root)).sum())
+        constant = gammaln(0.5 * (degrees + size)) - gammaln(0.5 * degrees) - 0.5 * size * np.log(degrees * np.pi)
+        shares = kernel @ (self.weight / self.weight.sum())
+        return np.asarray(constant + np.log(shares) - np.log(np.diag(self.root)).sum())
 
 
 def _adapted(nodes: Floats, weight: Floats, start: _Proposal) -> _Proposal:
@@ -176,6 +200,8 @@ def _points(count: int, dimensions: int, rng: np.random.Generator) -> Floats:
 class _Batch:
     """All drift-time choices of one noise model."""
 
+    form: str
+    model: NoiseModel
     log_weight: Floats
     time_constants: Floats
     annual: Floats
@@ -196,40 +222,47 @@ class _Batch:
         variance = np.trace(self.annual_covariance, axis1=1, axis2=2)
         return float(np.sqrt(weight @ variance / weight.sum()))
 
-
-def _solve(
-    design: Design,
-    noise: NoisePriors,
-    sample: DriftSample,
-    exponentials: tuple[Floats, Floats],
-    scores: Floats,
-    row: int,
-) -> _Batch:
-    """All drift-time choices of one set for one noise model."""
-    choices = sample.choices[row % len(sample.choices)]
-    log_ratio = sample.log_ratio[row % len(sample.choices)]
-    reduction = reduce_columns(noise.covariance(design.days, scores), design, *exponentials, with_companions=True)
-    solutions = solve_choices(reduction, choices + sample.grid.first_columns)
-    times = [own[nodes] for own, nodes in zip(sample.grid.time_constants, choices.T, strict=True)]
-    return _Batch(
-        log_weight=solutions.log_evidence + log_ratio + log_score_prior(scores),
-        time_constants=np.array(times).T.reshape(choices.shape),
-        annual=solutions.mean[:, ANNUAL],
-        annual_covariance=annual_covariance(reduction, solutions),
-        mean=solutions.mean[:, :, 0],
-        variance=fixed_variance(reduction, solutions),
-        size=solutions.size[:, :, 0],
-        size_variance=np.diagonal(solutions.size_covariance, axis1=1, axis2=2),
-    )
+    def weighed(self, log_proposal: float) -> "_Batch":
+        return replace(self, log_weight=self.log_weight - log_proposal)
 
 
-def _collect(nodes: Floats, batches: list[_Batch], log_proposal: Floats) -> Components:
-    log_weight = np.concatenate([batch.log_weight - log for batch, log in zip(batches, log_proposal, strict=True)])
+class _Solver:
+    """Solves all drift-time choices of one set for one noise model; the sets take turns."""
+
+    def __init__(self, design: Design, sample: DriftSample, exponentials: tuple[Floats, Floats]) -> None:
+        self.design, self.sample, self.exponentials = design, sample, exponentials
+        self._turns = count()
+
+    def solve(self, mode: FamilyMode, scores: Floats, white_ratio: Floats) -> _Batch:
+        """All choices of the next set under one noise model."""
+        model, grid = mode.family.model(scores, white_ratio), self.sample.grid
+        row = next(self._turns) % len(self.sample.choices)
+        choices = self.sample.choices[row]
+        reduction = reduce_columns(self.design.covariance(model), self.design, *self.exponentials, with_companions=True)
+        solutions = solve_choices(reduction, choices + grid.first_columns)
+        times = [own[nodes] for own, nodes in zip(grid.time_constants, choices.T, strict=True)]
+        return _Batch(
+            form=mode.family.form,
+            model=model,
+            log_weight=solutions.log_evidence + self.sample.log_ratio[row] + log_score_prior(scores),
+            time_constants=np.array(times).T.reshape(choices.shape),
+            annual=solutions.mean[:, ANNUAL],
+            annual_covariance=annual_covariance(reduction, solutions),
+            mean=solutions.mean[:, :, 0],
+            variance=fixed_variance(reduction, solutions),
+            size=solutions.size[:, :, 0],
+            size_variance=np.diagonal(solutions.size_covariance, axis1=1, axis2=2),
+        )
+
+
+def _collect(batches: list[_Batch]) -> Components:
+    log_weight = np.concatenate([batch.log_weight for batch in batches])
     weight = np.exp(log_weight - log_weight.max())
     return Components(
         weight=weight / weight.sum(),
-        node=np.repeat(np.arange(len(nodes)), [len(batch.log_weight) for batch in batches]),
-        scores=nodes,
+        node=np.repeat(np.arange(len(batches)), [len(batch.log_weight) for batch in batches]),
+        forms=tuple(batch.form for batch in batches),
+        models=tuple(batch.model for batch in batches),
         time_constants=np.concatenate([batch.time_constants for batch in batches]),
         annual=np.concatenate([batch.annual for batch in batches]),
         annual_covariance=np.concatenate([batch.annual_covariance for batch in batches]),

@@ -7,6 +7,7 @@ from itertools import pairwise
 import numpy as np
 from numpy.typing import NDArray
 
+from massfit.annual.noise import NoiseCovariance, NoiseModel
 from massfit.annual.record import ReducedRecord
 from massfit.constants import JULIAN_YEAR_DAYS, PASCAL_PER_HPA
 from massfit.phasor import annual_basis, days_since
@@ -60,6 +61,8 @@ class Design:
     ----------
     days : (n,) array
         Days from the phase origin, sorted; two instruments may share a day.
+    instrument : (n,) array of int
+        Deployment of each day.
     elapsed : (n,) array
         Days since the start of the day's own deployment.
     data : (n,) array
@@ -83,6 +86,7 @@ class Design:
     """
 
     days: Floats
+    instrument: NDArray[np.int64]
     elapsed: Floats
     data: Floats
     contrasts: Floats
@@ -93,6 +97,10 @@ class Design:
     time_ranges: Floats
     exponential_sd: float
     notes: tuple[str, ...]
+
+    def covariance(self, model: NoiseModel) -> NoiseCovariance:
+        """Covariance of the noise on the days of the site."""
+        return NoiseCovariance(self.days, self.instrument, model)
 
     def exponentials(self, time_constants: Sequence[Floats]) -> Floats:
         """Columns exp(-t / T) of every deployment with an exponential.
@@ -157,6 +165,7 @@ def build_design(records: Sequence[ReducedRecord], *, reference_year: int, prior
     data, contrasts = zip(*(_data_and_contrasts(record) for record in records), strict=True)
     return Design(
         days=days,
+        instrument=np.repeat(np.arange(len(records)), np.diff(sizes))[order],
         elapsed=np.concatenate([_elapsed(record) for record in records])[order],
         data=np.concatenate(data)[order],
         contrasts=np.concatenate(contrasts)[order],

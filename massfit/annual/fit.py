@@ -20,8 +20,9 @@ from massfit.annual.design import (
     exponential_columns,
     mean_circulation,
 )
-from massfit.annual.mode import joint_mode
-from massfit.annual.noise import NoisePriors
+from massfit.annual.families import noise_families
+from massfit.annual.mode import Mode, joint_mode
+from massfit.annual.noise import NoiseModel
 from massfit.annual.operator import model_noise, phasor_operator, year_shares
 from massfit.annual.parts import merge_components
 from massfit.annual.record import ReducedRecord, check_records
@@ -51,17 +52,23 @@ class NoiseFit:
 
     Parameters
     ----------
-    time_scales_days : tuple of float
-        Of the Ornstein-Uhlenbeck terms.
-    red : tuple of Estimate
-        Their standard deviations, Pa.
-    white : Estimate
-        Standard deviation of the white noise of a daily mean, Pa.
+    form_weight : mapping of str to float
+        Posterior weight of each form of noise that counts; sums to 1.
+    red : Estimate
+        Standard deviation of the red noise, Pa.
+    memory_days : Estimate
+        Integral of its correlation over positive lags.
+    white : tuple of Estimate
+        Standard deviation of the white noise of a daily mean of each deployment, Pa.
+    typical : NoiseModel
+        At the joint mode.
     """
 
-    time_scales_days: tuple[float, ...]
-    red: tuple[Estimate, ...]
-    white: Estimate
+    form_weight: Mapping[str, float]
+    red: Estimate
+    memory_days: Estimate
+    white: tuple[Estimate, ...]
+    typical: NoiseModel
 
 
 @dataclass(frozen=True)
@@ -223,10 +230,9 @@ def fit_site(
     """
     check_records(records, models, site)
     design = build_design(records, reference_year=reference_year, priors=priors)
-    noise = NoisePriors.of(priors)
-    mode = joint_mode(design, noise)
-    components = integrate(design, noise, mode, rng)
-    operator = phasor_operator(noise.covariance(design.days, mode.scores), design, mode.grid.mode)
+    mode = joint_mode(design, noise_families(priors))
+    components = integrate(design, mode, rng)
+    operator = phasor_operator(design.covariance(mode.noise), design, mode.grid.mode)
     parts = merge_components(components)
     first = 1 + len(models)
     return SiteFit(
@@ -236,11 +242,11 @@ def fit_site(
         # L(y) - L(q_m) = L(y - mean q) - L(q_m - mean q)
         phasor=parts.phasor[:, :1] - parts.phasor[:, 1:first] if len(models) else parts.phasor[:, :1],
         covariance=parts.covariance,
-        model_noise=model_noise(design, noise, operator),
+        model_noise=model_noise(design, priors, operator),
         reduced_sd=_residual_sd(design, components),
         days=len(np.unique(design.days)),
         effective_sample_size=components.effective_sample_size,
-        noise=_noise_fit(noise, components),
+        noise=_noise_fit(mode, components),
         drifts=tuple(
             _drift_fit(record, design, drift, components) for record, drift in zip(records, design.drifts, strict=True)
         ),
@@ -256,10 +262,16 @@ def _estimate(weight: Floats, mean: Floats, variance: Floats | float = 0.0) -> E
     return Estimate(centre, float(np.sqrt(weight @ ((mean - centre) ** 2 + variance))))
 
 
-def _noise_fit(noise: NoisePriors, components: Components) -> NoiseFit:
-    amplitudes = noise.amplitudes(components.scores)
-    estimates = [_estimate(components.node_weight, amplitude) for amplitude in amplitudes.T]
-    return NoiseFit(tuple(noise.time_scales.tolist()), tuple(estimates[:-1]), estimates[-1])
+def _noise_fit(mode: Mode, components: Components) -> NoiseFit:
+    weight = components.node_weight
+    forms = {form: float(weight[np.array(components.forms) == form].sum()) for form in dict.fromkeys(components.forms)}
+    return NoiseFit(
+        form_weight=forms,
+        red=_estimate(weight, np.array([model.red_sd for model in components.models])),
+        memory_days=_estimate(weight, np.array([model.memory_days for model in components.models])),
+        white=tuple(_estimate(weight, white) for white in np.array([model.white for model in components.models]).T),
+        typical=mode.noise,
+    )
 
 
 def _drift_curve(design: Design, drift: DriftColumns, components: Components) -> Floats:

@@ -1,10 +1,8 @@
-"""Red noise of one site: Ornstein-Uhlenbeck terms at fixed time scales, plus white.
+"""Noise of one site with every number fixed: red noise of the place, white noise of each recorder.
 
-The covariance of two days a time t apart is
-``sum_j s_j^2 exp(-|t| / tau_j)``, and s_w^2 more for a day with itself. Sums of
-exponentials are semiseparable, so that factor and solve cost O(n) and gaps cost
-nothing (Foreman-Mackey et al. 2017). A few log-spaced time scales stand in for
-flicker noise and its relatives.
+The covariance of two days a time t apart is ``sum_j v_j exp(-r_j |t|)``, and w_d^2 more for
+a day of recorder d with itself. Sums of exponentials are semiseparable, so that factor and
+solve cost O(n) and gaps cost nothing (Foreman-Mackey et al. 2017).
 """
 
 from dataclasses import dataclass
@@ -13,10 +11,6 @@ from functools import cached_property
 import numpy as np
 from celerite2 import driver
 from numpy.typing import NDArray
-from scipy.special import ndtr, ndtri
-
-from massfit.constants import PASCAL_PER_HPA
-from massfit.settings import Priors
 
 Floats = NDArray[np.float64]
 
@@ -25,8 +19,63 @@ RESOLUTION = 0.1
 (common practice). Without it a record free of noise has no finite likelihood."""
 
 WHITE_FLOOR = 1e-3
-"""Least white amplitude as a fraction of the largest amplitude: keeps the covariance of instruments that
-share a day positive definite in double precision; far below the resolution of a daily mean."""
+"""Least white noise as a fraction of the red: keeps the covariance of instruments that share a day positive
+definite in double precision; far below the resolution of a daily mean."""
+
+
+@dataclass(frozen=True)
+class NoiseModel:
+    """Noise of one site, every number fixed.
+
+    Parameters
+    ----------
+    rates : (J,) array
+        Decay rates r_j of the red terms, per day.
+    variances : (J,) array
+        v_j, Pa^2; a negative one belongs to a pair whose sum is a covariance.
+    white : (D,) array
+        Standard deviation of the white noise of a daily mean of each deployment, Pa.
+
+    Examples
+    --------
+    >>> model = NoiseModel(np.array([0.05]), np.array([900.0]), np.array([10.0]))
+    >>> model.red_sd
+    30.0
+    """
+
+    rates: Floats
+    variances: Floats
+    white: Floats
+
+    @property
+    def red_sd(self) -> float:
+        """Standard deviation of the red noise, Pa."""
+        return float(np.sqrt(max(self.variances.sum(), 0.0)))
+
+    @property
+    def memory_days(self) -> float:
+        """Integral of the correlation of the red noise over positive lags, days; 0 without red noise."""
+        total = self.variances.sum()
+        return float(np.sum(self.variances / self.rates) / total) if total > 0.0 else 0.0
+
+    def spectrum(self, cycles_per_day: Floats) -> Floats:
+        """One-sided power density of daily means of red and mean white noise: (F,), Pa^2 day.
+
+        The density of every term is that of its daily samples, aliases included, so that it
+        integrates to the variance between 0 and half a cycle a day.
+
+        Parameters
+        ----------
+        cycles_per_day : (F,) array
+
+        Returns
+        -------
+        (F,) array
+        """
+        keep = np.exp(-self.rates)
+        cosine = np.cos(2.0 * np.pi * np.asarray(cycles_per_day))[:, None]
+        red = 2.0 * self.variances * (1.0 - keep**2) / (1.0 - 2.0 * keep * cosine + keep**2)
+        return np.asarray(red.sum(axis=1) + 2.0 * np.mean(self.white**2))
 
 
 class NoiseCovariance:
@@ -36,27 +85,29 @@ class NoiseCovariance:
     ----------
     days : (n,) array
         Sorted, days; equal values are two instruments on one day.
-    time_scales : (J,) array
-        tau_j, days.
-    amplitudes : (J + 1,) array
-        s_j of the Ornstein-Uhlenbeck terms, then s_w, in the unit of the data.
+    instrument : (n,) array of int
+        Deployment of each day.
+    model : NoiseModel
 
     Examples
     --------
-    >>> noise = NoiseCovariance(np.array([0.0, 1.0]), np.array([2.0]), np.array([1.0, 0.5]))
+    >>> model = NoiseModel(np.array([0.5]), np.array([1.0]), np.array([0.5, 2.0]))
+    >>> noise = NoiseCovariance(np.array([0.0, 1.0]), np.array([0, 1]), model)
     >>> noise.multiply(np.eye(2)).round(4)
-    array([[1.25  , 0.6065],
-           [0.6065, 1.25  ]])
+    array([[1.26  , 0.6065],
+           [0.6065, 5.01  ]])
     """
 
-    def __init__(self, days: Floats, time_scales: Floats, amplitudes: Floats) -> None:
-        white = max(amplitudes[-1], WHITE_FLOOR * amplitudes.max())
-        variances = amplitudes[:-1] ** 2
+    def __init__(self, days: Floats, instrument: NDArray[np.int64], model: NoiseModel) -> None:
+        # the factorisation wants a term: without red noise one of no size
+        present = len(model.rates) > 0
+        variances = model.variances if present else np.zeros(1)
+        least = RESOLUTION**2 + WHITE_FLOOR**2 * max(variances.sum(), 0.0)
         self._days = np.ascontiguousarray(days, dtype=float)
-        self._rates = 1.0 / np.asarray(time_scales, dtype=float)
+        self._rates = np.ascontiguousarray(model.rates if present else np.ones(1), dtype=float)
         self._left = np.tile(variances, (len(days), 1))
         self._right = np.ones_like(self._left)
-        self._diagonal = np.full(len(days), variances.sum() + white**2)
+        self._diagonal = variances.sum() + (model.white**2 + least)[instrument]
 
     @cached_property
     def _factor(self) -> tuple[Floats, Floats]:
@@ -93,60 +144,3 @@ class NoiseCovariance:
         lower = driver.matmul_lower(*arguments, np.zeros_like(columns))
         upper = driver.matmul_upper(*arguments, np.zeros_like(columns))
         return np.asarray(self._diagonal[:, None] * columns + lower + upper)
-
-
-@dataclass(frozen=True)
-class NoisePriors:
-    """Time scales of the noise terms and half-t priors of their amplitudes (Gelman 2006).
-
-    Amplitudes are handled through their *scores* v, whose prior is standard normal:
-    s = scale * Q((1 + Phi(v)) / 2), with Q the quantiles of Student's t with 4 degrees of
-    freedom and Phi the normal distribution. A density in v is that in s times ds/dv by
-    construction, and a term that is not needed falls off like a normal tail.
-
-    Parameters
-    ----------
-    time_scales : (J,) array
-        Days.
-    scales : (J + 1,) array
-        Scales of the half-t priors, Pa; white last.
-
-    Examples
-    --------
-    >>> noise = NoisePriors(np.array([20.0]), np.array([50.0, 20.0]))
-    >>> noise.amplitudes(np.zeros(2)).round(2)  # medians of the priors
-    array([37.03, 14.81])
-    """
-
-    time_scales: Floats
-    scales: Floats
-
-    @classmethod
-    def of(cls, priors: Priors) -> "NoisePriors":
-        """Noise part of the settings."""
-        red = [priors.red_noise_hpa] * len(priors.noise_time_scales_days)
-        scales = np.array([*red, priors.white_noise_hpa]) * PASCAL_PER_HPA
-        return cls(np.array(priors.noise_time_scales_days), scales)
-
-    def amplitudes(self, scores: Floats) -> Floats:
-        """Amplitudes, Pa, of (..., J + 1) scores."""
-        # P(|t_4| < s) = (3 x - x^3) / 2 with x = s / sqrt(4 + s^2); a cubic with a root in sines.
-        # Beyond seven sigma the normal distribution runs out of digits
-        sine = 2.0 * np.sin(np.arcsin(ndtr(np.minimum(scores, 7.0))) / 3.0)
-        return np.asarray(self.scales * 2.0 * sine / np.sqrt(1.0 - sine**2))
-
-    def scores(self, amplitudes: Floats) -> Floats:
-        """Scores of (..., J + 1) amplitudes in Pa: the inverse of `amplitudes`."""
-        sine = amplitudes / np.hypot(amplitudes, 2.0 * self.scales)
-        return np.asarray(ndtri(0.5 * (3.0 * sine - sine**3)))
-
-    def covariance(self, days: Floats, scores: Floats) -> NoiseCovariance:
-        """Covariance on given days at (J + 1,) scores."""
-        amplitudes = self.amplitudes(scores)
-        amplitudes[-1] = np.hypot(amplitudes[-1], RESOLUTION)
-        return NoiseCovariance(days, self.time_scales, amplitudes)
-
-
-def log_score_prior(scores: Floats) -> float:
-    """Log prior density of scores, without its constant."""
-    return float(-0.5 * np.sum(scores**2))

@@ -1,14 +1,18 @@
 """The linear operator that turns a site's record into its annual phasor."""
 
+from dataclasses import replace
+
 import numpy as np
 from numpy.typing import NDArray
 
 from massfit.annual.design import Design
 from massfit.annual.evidence import ANNUAL, linear_fit
-from massfit.annual.mode import equal_shares, minimise
-from massfit.annual.noise import NoiseCovariance, NoisePriors, log_score_prior
+from massfit.annual.families import log_score_prior, noise_families
+from massfit.annual.mode import minimise
+from massfit.annual.noise import NoiseCovariance
 from massfit.constants import JULIAN_YEAR_DAYS
 from massfit.phasor import annual_basis
+from massfit.settings import Priors
 
 Floats = NDArray[np.float64]
 
@@ -36,17 +40,18 @@ def phasor_operator(noise: NoiseCovariance, design: Design, time_constants: Floa
     return np.asarray(inverse[ANNUAL] @ weighted.T)
 
 
-def model_noise(design: Design, noise: NoisePriors, operator: Floats) -> Floats:
+def model_noise(design: Design, priors: Priors, operator: Floats) -> Floats:
     """Covariance D_s of each model's own weather at the annual line.
 
     The M models give M - 1 orthonormal contrasts, each with the covariance of one
-    model; the noise of the site's family is fitted to them together (its mode), with a
-    level, a slope and the two harmonics of their own, and passed through the operator.
+    model; a sum of Ornstein-Uhlenbeck terms, which follows any spectrum, is fitted to them
+    together (its mode), with a level, a slope and the two harmonics of their own, and passed
+    through the operator.
 
     Parameters
     ----------
     design : Design
-    noise : NoisePriors
+    priors : Priors
     operator : (2, n) array
         From :func:`phasor_operator`.
 
@@ -65,17 +70,22 @@ def model_noise(design: Design, noise: NoisePriors, operator: Floats) -> Floats:
     centred = (days - days.mean()) / JULIAN_YEAR_DAYS
     columns = np.column_stack([np.ones_like(days), centred, annual_basis(days), annual_basis(days, harmonic=2)])
 
+    (family,) = noise_families(replace(priors, noise_forms=("sum",)))
+
+    def covariance_at(scores: Floats) -> NoiseCovariance:
+        return NoiseCovariance(days, np.zeros(len(days), np.int64), family.model(scores, np.ones(1)))
+
     def negative_log_posterior(scores: Floats) -> float:
-        covariance = noise.covariance(days, scores)
+        covariance = covariance_at(scores)
         fit = linear_fit(covariance.whiten(columns), covariance.whiten(contrasts), np.zeros(columns.shape[1]))
         determinants = (models - 1) * (covariance.log_determinant + fit.log_determinant)
         return float(0.5 * (determinants + fit.misfit.sum()) - log_score_prior(scores))
 
-    scores = minimise(negative_log_posterior, equal_shares(float(contrasts.std()), noise))
+    scores = minimise(negative_log_posterior, family.start(float(contrasts.std())))
     merged = np.zeros((2, len(days)))
     for row, weights in zip(merged, operator, strict=True):
         np.add.at(row, place, weights)
-    return np.asarray(merged @ noise.covariance(days, scores).multiply(merged.T.copy()))
+    return np.asarray(merged @ covariance_at(scores).multiply(merged.T.copy()))
 
 
 def orthonormal_contrasts(count: int) -> Floats:
@@ -112,8 +122,19 @@ def year_shares(design: Design, operator: Floats, reference_year: int) -> dict[i
     dict of int to float
         Sums to 1.
     """
-    dates = np.datetime64(f"{reference_year:04d}-01-01T00:00", "m") + np.round(design.days * 1440).astype("m8[m]")
-    years = dates.astype("datetime64[Y]").astype(int) + 1970
+    years = calendar_years(design.days, reference_year)
     cycle = annual_basis(design.days)
     share = 0.5 * np.einsum("in,ni->n", operator, cycle)
     return {int(year): float(share[years == year].sum()) for year in np.unique(years)}
+
+
+def calendar_years(days: Floats, reference_year: int) -> NDArray[np.int64]:
+    """Calendar year of days counted from 1 January of the reference year.
+
+    Examples
+    --------
+    >>> calendar_years(np.array([-0.5, 0.5, 366.5]), 2016)
+    array([2015, 2016, 2017])
+    """
+    dates = np.datetime64(f"{reference_year:04d}-01-01T00:00", "m") + np.round(days * 1440).astype("m8[m]")
+    return dates.astype("datetime64[Y]").astype(np.int64) + 1970

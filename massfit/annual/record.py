@@ -2,6 +2,7 @@
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from itertools import combinations
 from typing import get_args
 
 import numpy as np
@@ -56,6 +57,10 @@ class ReducedRecord:
     companions: NDArray[np.float64] | None = None
 
 
+SAME_DAYS, SAME_PRESSURE = 30, 0.01
+"""Two deployments that differ by a constant within so many Pa on so many shared days are one."""
+
+
 def check_records(records: Sequence[ReducedRecord], models: Sequence[str], site: str) -> None:
     """Check the records of one site against each other and the models named.
 
@@ -80,6 +85,8 @@ def check_records(records: Sequence[ReducedRecord], models: Sequence[str], site:
     if len(followed) > 1:
         problem = f"the deployments have {sorted(followed)} companions"
         faults.append(Fault(source, "companions", problem, "Must be the same series for each"))
+    if not faults:
+        faults += [fault for pair in combinations(records, 2) for fault in _copy_faults(source, *pair)]
     days = len(np.unique(np.concatenate([record.time for record in records]))) if records else 0
     if days < LEAST_SITE_DAYS:
         problem = f"{days} days cannot tell an annual cycle from drift"
@@ -116,3 +123,12 @@ def _record_faults(source: str, record: ReducedRecord, models: int) -> Iterator[
         yield Fault(source, name, problem, "The drift begins with the deployment or before")
     if record.drift not in get_args(DriftForm):
         yield Fault(source, name, f"drift is {record.drift!r}", f"Must be one of {get_args(DriftForm)}")
+
+
+def _copy_faults(source: str, first: ReducedRecord, second: ReducedRecord) -> Iterator[Fault]:
+    _, own, other = np.intersect1d(first.time, second.time, return_indices=True)
+    difference = first.pressure[own] - second.pressure[other]
+    if len(own) >= SAME_DAYS and np.ptp(difference) < SAME_PRESSURE:
+        problem = f"it holds the same pressure as {first.deployment} on all {len(own)} days that both have"
+        action = "Remove one: a copy is no second measurement"
+        yield Fault(source, second.deployment, problem, "One deployment for each instrument", action)

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 from massfit.annual.fit import DriftFit, NoiseFit, SiteFit
 from massfit.annual.fit import Estimate as NumberEstimate
+from massfit.annual.noise import NoiseModel
 from massfit.corrections.phasors import CorrectionPhasor
 from massfit.posterior.convergence import Convergence
 from massfit.posterior.quadrature import ScalePosterior
@@ -22,7 +23,7 @@ from massfit.site import Interval, Site
 CLASSES: dict[str, type] = {
     f"{kind.__module__}.{kind.__qualname__}": kind
     for kind in (
-        Action, Convergence, CorrectionPhasor, DailyRecord, DriftFit, Interval, NoiseFit, NumberEstimate,
+        Action, Convergence, CorrectionPhasor, DailyRecord, DriftFit, Interval, NoiseFit, NoiseModel, NumberEstimate,
         ScalePosterior, Site, SiteFit, SiteReduction, TidalConstant,
     )
 }  # fmt: skip

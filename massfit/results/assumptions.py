@@ -139,12 +139,14 @@ def _drift_and_noise(network: Network) -> list[str]:
     if not network.records:
         return []
     forms = sorted({record.drift for record in network.records})
-    scales = ", ".join(f"{scale:g}" for scale in network.settings.priors.noise_time_scales_days)
+    priors = network.settings.priors
+    scales = f"{min(priors.noise_time_scales_days):g} to {max(priors.noise_time_scales_days):g}"
     found = any(record.find_steps for record in network.records)
     steps = "sharp changes of level are searched for, fitted and listed" if found else "only declared steps are fitted"
+    noise = f"weighed by evidence ({' / '.join(priors.noise_forms)}; time scales {scales} days)"
     return [
-        f"Drift per deployment ({' / '.join(forms)}), annual and semi-annual cycle are fitted together under red noise "
-        f"(time scales {scales} days) and white noise; {steps}."
+        f"Drift per deployment ({' / '.join(forms)}), annual and semi-annual cycle are fitted together under noise "
+        f"whose form is {noise}; {steps}."
     ]
 
 

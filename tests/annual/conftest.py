@@ -53,11 +53,11 @@ def ornstein_uhlenbeck(rng: np.random.Generator, count: int, sd: float, time_sca
     return values
 
 
-@pytest.fixture
+@pytest.fixture(scope="session")
 def make_record() -> Callable[..., ReducedRecord]:
     return invent
 
 
-@pytest.fixture
+@pytest.fixture(scope="session")
 def make_red() -> Callable[..., np.ndarray]:
     return ornstein_uhlenbeck

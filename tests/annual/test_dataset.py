@@ -7,9 +7,12 @@ import pytest
 
 from massfit.annual.dataset import site_phasors
 from massfit.annual.fit import Estimate, NoiseFit, SiteFit
+from massfit.annual.noise import NoiseModel
 from massfit.contracts import SITE_PHASORS, require
 from massfit.errors import InputError
 from massfit.network import ReducedSite
+
+NOISE = NoiseModel(np.zeros(0), np.zeros(0), np.ones(1))
 
 
 def invented_fit(site, models, parts):
@@ -19,7 +22,8 @@ def invented_fit(site, models, parts):
     return SiteFit(
         site=site, models=models, weight=np.full(parts, 1 / parts), phasor=phasor,
         covariance=np.tile(np.eye(2), (parts, 1, 1)), model_noise=np.zeros((2, 2)), reduced_sd=1.0, days=100,
-        effective_sample_size=50.0, noise=NoiseFit((), (), nothing), drifts=(), year_share={2016: 1.0},
+        effective_sample_size=50.0, noise=NoiseFit({}, nothing, nothing, (nothing,), NOISE), drifts=(),
+        year_share={2016: 1.0},
     )  # fmt: skip
 
 

@@ -15,11 +15,13 @@ from massfit.annual.evidence import (
     reduce_columns,
     solve_choices,
 )
-from massfit.annual.noise import NoisePriors
+from massfit.annual.families import noise_families
 from massfit.settings import Priors
 
-PRIORS = Priors()
+PRIORS = Priors(noise_forms=("sum",))
+(FAMILY,) = noise_families(PRIORS)
 SCORES = np.array([-0.5, 0.2, -1.0, 0.3])
+MODEL = FAMILY.model(SCORES, np.array([1.0, 1.5]))
 GRIDS = (np.array([10.0, 40.0, 90.0]), np.array([30.0, 60.0]))
 
 
@@ -37,17 +39,16 @@ def design(make_record):
 
 @pytest.fixture
 def reduction(design):
-    noise = NoisePriors.of(PRIORS).covariance(design.days, SCORES)
+    noise = design.covariance(MODEL)
     return reduce_columns(noise, design, design.exponentials(GRIDS))
 
 
 def dense_covariance(design):
-    noise = NoisePriors.of(PRIORS)
-    amplitudes = noise.amplitudes(SCORES)
     lags = np.abs(design.days[:, None] - design.days)
-    red = sum(s**2 * np.exp(-lags / tau) for s, tau in zip(amplitudes[:-1], noise.time_scales, strict=True))
-    # white noise, and the resolution of 0.1 Pa that every daily mean has besides
-    return red + (amplitudes[-1] ** 2 + 0.1**2) * np.eye(len(lags))
+    red = sum(v * np.exp(-lags / tau) for v, tau in zip(MODEL.variances, (2.0, 20.0, 200.0), strict=True))
+    # white noise of each recorder, the resolution of 0.1 Pa that every daily mean has besides, and a floor
+    white = MODEL.white[[0 if row in design.drifts[0].rows else 1 for row in range(len(lags))]]
+    return red + np.diag(white**2 + 0.1**2 + 1e-6 * MODEL.variances.sum())
 
 
 def dense_solution(design, times):
@@ -79,7 +80,7 @@ def test_solutions_match_dense_generalised_least_squares(design, reduction):
 def test_evidence_is_the_marginal_density_when_every_prior_is_proper(design):
     # closed form: y is normal with covariance V + X P^-1 X'
     proper = replace(design, precision=np.where(design.precision == 0, 1e-4, design.precision))
-    noise = NoisePriors.of(PRIORS).covariance(proper.days, SCORES)
+    noise = proper.covariance(MODEL)
     found = solve_choices(reduce_columns(noise, proper, proper.exponentials(GRIDS)), CHOICES).log_evidence
     expected = []
     for first, second in CHOICES:
@@ -105,7 +106,7 @@ def test_compressed_exponentials_give_the_same_sums(design):
     basis, combination = compress(exponentials, np.array([0, 40]))
     assert basis.shape[1] < 32
     np.testing.assert_allclose(basis @ combination, exponentials, atol=1e-8)
-    noise = NoisePriors.of(PRIORS).covariance(design.days, SCORES)
+    noise = design.covariance(MODEL)
     choices = np.array([[3, 45], [20, 69]])
     full = solve_choices(reduce_columns(noise, design, exponentials), choices)
     short = solve_choices(reduce_columns(noise, design, basis, combination), choices)
@@ -114,7 +115,7 @@ def test_compressed_exponentials_give_the_same_sums(design):
 
 
 def test_without_exponentials_there_is_one_choice(design):
-    noise = NoisePriors.of(PRIORS).covariance(design.days, SCORES)
+    noise = design.covariance(MODEL)
     reduction = reduce_columns(noise, design, np.zeros((len(design.days), 0)))
     solutions = solve_choices(reduction, np.zeros((1, 0), np.int64))
     assert solutions.log_evidence == pytest.approx([reduction.log_evidence])

@@ -8,8 +8,8 @@ from scipy.optimize import least_squares
 
 from massfit.annual.design import build_design
 from massfit.annual.evidence import reduce_columns, solve_choices
+from massfit.annual.families import noise_families
 from massfit.annual.fit import fit_site
-from massfit.annual.noise import NoisePriors
 from massfit.errors import InputError
 from massfit.settings import Priors
 from massfit.site import LEAST_SITE_DAYS
@@ -59,9 +59,10 @@ def test_phasor_drift_and_noise_are_recovered(make_record, make_red):
     drift = result.drifts[0]
     for estimate, truth in ((drift.slope, 200.0), (drift.exponential, -1500.0), (drift.time_constant_days, 80.0)):
         assert abs(estimate.mean - truth) < 3.5 * estimate.sd
-    assert abs(result.noise.white.mean - 10.0) < 3.5 * result.noise.white.sd
-    total = np.sqrt(sum(term.mean**2 for term in result.noise.red))
-    assert total == pytest.approx(30.0, rel=0.5)
+    (white,) = result.noise.white
+    for estimate, truth in ((white, 10.0), (result.noise.red, 30.0), (result.noise.memory_days, 20.0)):
+        assert abs(estimate.mean - truth) < 3.5 * estimate.sd
+    assert sum(result.noise.form_weight.values()) == pytest.approx(1.0)
     # residuals: ocean and white noise, less what the drift terms take
     assert result.reduced_sd == pytest.approx(np.hypot(30.0, 10.0), rel=0.25)
     assert result.days == 1100
@@ -168,11 +169,12 @@ def test_one_exponential_across_a_redeployment_is_wrong(make_record, make_red):
 
 def weight_beyond(record, days, exponential_sd_hpa):
     """Posterior mass of time constants beyond `days` on a grid that reaches 1e5 days."""
-    priors = Priors(drift_exponential_sd_hpa=exponential_sd_hpa)
+    priors = Priors(drift_exponential_sd_hpa=exponential_sd_hpa, noise_forms=("sum",))
     design = build_design([record], reference_year=2016, priors=priors)
     flat_slope = np.zeros_like(design.precision) if exponential_sd_hpa > 1e4 else design.precision
     grid = np.geomspace(3.0, 1e5, 200)
-    noise = NoisePriors.of(priors).covariance(design.days, np.array([-3.0, -0.5, -3.0, -0.5]))
+    (family,) = noise_families(priors)
+    noise = design.covariance(family.model(np.array([-3.0, -0.5, -3.0, -0.5]), np.ones(1)))
     reduction = reduce_columns(noise, replace(design, precision=flat_slope), design.exponentials([grid]))
     log = solve_choices(reduction, np.arange(200)[:, None]).log_evidence
     mass = np.exp(log - log.max())
@@ -248,11 +250,17 @@ def test_noise_of_any_size_is_found(make_record, make_red, red):
     assert np.all(sigma < 1.8 * expected)
 
 
-def test_a_record_without_noise_and_a_copy_are_no_trouble(make_record):
+def test_a_record_without_noise_is_no_trouble(make_record):
     rng = np.random.default_rng(14)
     silent = make_record(rng, count=500, white=0.0, size=300.0)
     np.testing.assert_allclose(fit([silent]).single_gaussian()[0], [TRUTH], atol=0.1)
-    noisy = make_record(rng, count=500, size=300.0)
-    twice = fit([noisy, replace(noisy, deployment="copy")])
-    assert np.isfinite(twice.phasor).all()
-    assert sigmas(twice) < 3.5
+
+
+def test_the_same_record_twice_is_refused(make_record):
+    rng = np.random.default_rng(14)
+    record = make_record(rng, count=500, size=300.0)
+    with pytest.raises(InputError, match="same pressure"):
+        fit([record, replace(record, deployment="copy", pressure=record.pressure + 7e5)])
+    # a second instrument of its own is no copy
+    other = replace(record, deployment="other", pressure=record.pressure + rng.normal(size=500))
+    assert sigmas(fit([record, other], priors=Priors(noise_forms=("white",)))) < 3.5

@@ -14,13 +14,13 @@ from massfit.annual.chains import sample_drift
 from massfit.annual.components import integrate
 from massfit.annual.design import build_design
 from massfit.annual.evidence import reduce_columns, solve_choices
+from massfit.annual.families import noise_families
 from massfit.annual.fit import fit_site
 from massfit.annual.mode import joint_mode
-from massfit.annual.noise import NoisePriors
 from massfit.annual.parts import MOST_PARTS, merge_components
 from massfit.settings import Priors
 
-PRIORS = Priors(noise_time_scales_days=(20.0,))
+PRIORS = Priors(noise_forms=("sum",), noise_time_scales_days=(20.0,))
 YEAR = 365.2422
 
 
@@ -117,8 +117,7 @@ def components(make_record, make_red):
     models = rng.normal(size=(3, 400)) * 5
     record = make_record(rng, count=400, size=700.0, ocean=make_red(rng, 400, 40.0, 20.0), circulation=models)
     design = build_design([record], reference_year=2016, priors=Priors())
-    noise = NoisePriors.of(Priors())
-    return integrate(design, noise, joint_mode(design, noise), rng)
+    return integrate(design, joint_mode(design, noise_families(Priors())), rng)
 
 
 def test_merging_keeps_mean_and_covariance(components):
@@ -171,9 +170,8 @@ def test_gibbs_sample_is_the_product_grid(make_record):
         make_record(rng, count=200, first=200.5, size=80.0, label="2"),
     ]
     design = build_design(records, reference_year=2016, priors=PRIORS)
-    noise = NoisePriors.of(PRIORS)
-    mode = joint_mode(design, noise)
-    covariance = noise.covariance(design.days, mode.scores)
+    mode = joint_mode(design, noise_families(PRIORS))
+    covariance = design.covariance(mode.noise)
     sample = sample_drift(covariance, design, mode.grid, rng)
     reduction = reduce_columns(covariance, design, design.exponentials(sample.grid.time_constants))
     counts = [len(nodes) for nodes in sample.grid.logs]

@@ -1,19 +1,24 @@
-"""Red noise in O(n) against dense matrices (slow independent twin), and the priors against their closed form."""
+"""Red noise in O(n) against dense matrices (slow independent twin), and its spectrum."""
 
 import numpy as np
 import pytest
-from scipy import stats
 
-from massfit.annual.noise import WHITE_FLOOR, NoiseCovariance, NoisePriors
+from massfit.annual.noise import RESOLUTION, WHITE_FLOOR, NoiseCovariance, NoiseModel
 
-SCALES = np.array([2.0, 20.0, 200.0])
-AMPLITUDES = np.array([0.5, 1.2, 0.7, 0.3])
+WHITE = np.array([0.3, 0.8])
+MODELS = {
+    "sum": NoiseModel(1.0 / np.array([2.0, 20.0, 200.0]), np.array([0.25, 1.44, 0.49]), WHITE),
+    # one Ornstein-Uhlenbeck process driven by another
+    "smooth": NoiseModel(np.array([0.1, 0.12]), np.array([0.12, -0.1]) / 0.02, WHITE),
+    "white": NoiseModel(np.zeros(0), np.zeros(0), WHITE),
+}
 
 
-def dense(days, amplitudes):
+def dense(days, instrument, model):
     lags = np.abs(days[:, None] - days)
-    red = sum(s**2 * np.exp(-lags / tau) for s, tau in zip(amplitudes[:-1], SCALES, strict=True))
-    return red + amplitudes[-1] ** 2 * np.eye(len(days))
+    red = sum((v * np.exp(-r * lags) for r, v in zip(model.rates, model.variances, strict=True)), np.zeros_like(lags))
+    least = RESOLUTION**2 + WHITE_FLOOR**2 * model.variances.sum()
+    return red + np.diag(model.white[instrument] ** 2 + least)
 
 
 @pytest.fixture
@@ -24,8 +29,15 @@ def days():
     return np.sort(np.append(irregular, irregular[40:90]))
 
 
-def test_operations_match_dense_matrices(days):
-    covariance, noise = dense(days, AMPLITUDES), NoiseCovariance(days, SCALES, AMPLITUDES)
+@pytest.fixture
+def instrument(days):
+    return np.append(0, np.diff(days) == 0).astype(np.int64)
+
+
+@pytest.mark.parametrize("form", MODELS)
+def test_operations_match_dense_matrices(days, instrument, form):
+    covariance = dense(days, instrument, MODELS[form])
+    noise = NoiseCovariance(days, instrument, MODELS[form])
     columns = np.random.default_rng(1).normal(size=(len(days), 3))
     inverse = np.linalg.inv(covariance)
     assert noise.log_determinant == pytest.approx(np.linalg.slogdet(covariance)[1], rel=1e-9)
@@ -35,23 +47,26 @@ def test_operations_match_dense_matrices(days):
     np.testing.assert_allclose(white.T @ white, columns.T @ inverse @ columns, rtol=1e-9)
 
 
-def test_vanishing_white_noise_keeps_shared_days_definite(days):
-    noise = NoiseCovariance(days, SCALES, np.array([0.5, 1.2, 0.7, 0.0]))
-    expected = np.linalg.slogdet(dense(days, np.array([0.5, 1.2, 0.7, 1.2 * WHITE_FLOOR])))[1]
+def test_vanishing_white_noise_keeps_shared_days_definite(days, instrument):
+    model = NoiseModel(np.array([0.05]), np.array([1e6]), np.zeros(2))
+    noise = NoiseCovariance(days, instrument, model)
+    expected = np.linalg.slogdet(dense(days, instrument, model))[1]
     assert noise.log_determinant == pytest.approx(expected, rel=1e-6)
 
 
-@pytest.mark.parametrize("score", [-6.0, -3.0, -1.0, 0.0, 1.0, 3.0, 5.0])
-def test_amplitudes_are_quantiles_of_half_t(score):
-    noise = NoisePriors(SCALES[:1], np.array([50.0, 20.0]))
-    amplitudes = noise.amplitudes(np.array([score, score]))
-    # the probability beyond keeps its digits on either side
-    inside = stats.t(4).cdf(amplitudes / [50.0, 20.0]) - 0.5
-    np.testing.assert_allclose(2 * inside, stats.norm.cdf(score), rtol=1e-7)
+@pytest.mark.parametrize("form", MODELS)
+def test_spectrum_is_the_transform_of_the_covariance(form):
+    # closed form: density = 2 sum over daily lags of covariance times cosine
+    model, frequencies = MODELS[form], np.array([1e-4, 1 / 365.0, 0.02, 0.2, 0.5])
+    lags = np.arange(1, 8000)
+    covariance = np.exp(-np.outer(lags, model.rates)) @ model.variances
+    expected = 2 * (model.variances.sum() + np.mean(WHITE**2))
+    expected = expected + 4 * np.cos(2 * np.pi * np.outer(frequencies, lags)) @ covariance
+    np.testing.assert_allclose(model.spectrum(frequencies), expected, rtol=1e-9)
 
 
-def test_scores_of_any_size_give_finite_amplitudes():
-    noise = NoisePriors(SCALES[:1], np.array([50.0, 20.0]))
-    extreme = noise.amplitudes(np.array([[-40.0, 40.0], [8.0, -9.0]]))
-    assert np.isfinite(extreme).all()
-    assert (extreme >= 0).all()
+def test_memory_is_the_integral_of_the_correlation():
+    # closed form: an Ornstein-Uhlenbeck term has its own time scale, one driven by another the sum of both
+    assert NoiseModel(np.array([0.05]), np.array([3.0]), WHITE).memory_days == pytest.approx(20.0)
+    assert MODELS["smooth"].memory_days == pytest.approx(10.0 + 1 / 0.12)
+    assert MODELS["white"].memory_days == 0.0

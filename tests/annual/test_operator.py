@@ -4,13 +4,14 @@ import numpy as np
 import pytest
 
 from massfit.annual.design import build_design
+from massfit.annual.families import noise_families
 from massfit.annual.fit import fit_site
-from massfit.annual.noise import NoisePriors
 from massfit.annual.operator import model_noise, orthonormal_contrasts, phasor_operator, year_shares
 from massfit.settings import Priors
 
 SCORES = np.array([-1.0, 0.0, -1.0, 0.0])
-NOISE = NoisePriors.of(Priors())
+(FAMILY,) = noise_families(Priors(noise_forms=("sum",)))
+MODEL = FAMILY.model(SCORES, np.ones(2))
 
 
 @pytest.fixture
@@ -29,7 +30,7 @@ def test_operator_returns_an_annual_cycle_and_ignores_level_and_semi_annual(two_
     design = build_design(
         two_deployments(np.random.default_rng(1), np.zeros((0, 750))), reference_year=2016, priors=Priors()
     )
-    operator = phasor_operator(NOISE.covariance(design.days, SCORES), design, np.array([40.0, 80.0]))
+    operator = phasor_operator(design.covariance(MODEL), design, np.array([40.0, 80.0]))
     response = operator @ design.fixed
     np.testing.assert_allclose(response[:, :2], np.eye(2), atol=1e-8)
     flat = [2, 3, *(drift.offset for drift in design.drifts)]
@@ -40,7 +41,7 @@ def test_year_shares_sum_to_one_and_follow_the_days(two_deployments):
     design = build_design(
         two_deployments(np.random.default_rng(1), np.zeros((0, 750))), reference_year=2016, priors=Priors()
     )
-    operator = phasor_operator(NOISE.covariance(design.days, SCORES), design, np.array([40.0, 80.0]))
+    operator = phasor_operator(design.covariance(MODEL), design, np.array([40.0, 80.0]))
     shares = year_shares(design, operator, 2016)
     assert list(shares) == [2016, 2017, 2018]
     assert sum(shares.values()) == pytest.approx(1.0, abs=1e-9)
@@ -54,8 +55,8 @@ def test_model_noise_is_what_the_models_scatter(two_deployments, make_red):
         rng = np.random.default_rng(seed)
         circulation = np.array([make_red(rng, 750, 20.0, 20.0) for _ in range(4)])
         design = build_design(two_deployments(rng, circulation), reference_year=2016, priors=Priors())
-        operator = phasor_operator(NOISE.covariance(design.days, SCORES), design, np.array([40.0, 80.0]))
-        predicted.append(np.trace(model_noise(design, NOISE, operator)))
+        operator = phasor_operator(design.covariance(MODEL), design, np.array([40.0, 80.0]))
+        predicted.append(np.trace(model_noise(design, Priors(), operator)))
         # unbiased variance of one model from four
         scatter.append(np.sum((operator @ design.contrasts) ** 2) / 3)
     # 10 draws of two components with 3 degrees of freedom each: the scatter has a standard error near 26 %,
@@ -66,7 +67,7 @@ def test_model_noise_is_what_the_models_scatter(two_deployments, make_red):
 def test_fewer_than_two_models_have_no_contrasts(two_deployments):
     design = build_design(two_deployments(np.random.default_rng(1), np.ones((1, 750))), reference_year=2016,
                           priors=Priors())  # fmt: skip
-    assert not model_noise(design, NOISE, np.ones((2, 800))).any()
+    assert not model_noise(design, Priors(), np.ones((2, 800))).any()
 
 
 @pytest.mark.parametrize("count", [2, 3, 5])
