@@ -89,7 +89,8 @@ class Fingerprint:
     Parameters
     ----------
     loads : tuple of str
-        Files of load members and ``"builtin:NAME"`` patterns, of equal weight.
+        Files of load members, ``"builtin:NAME"`` patterns and ``"perturbed:N"``, N variants of the others, of equal
+        weight.
     max_degree : int
         Highest spherical-harmonic degree of the solve.
     sea_water_density : float
@@ -102,6 +103,10 @@ class Fingerprint:
         Whether the solve holds the rotational response.
     earth_model : str
         ``"prem"``, or the file of an Earth profile.
+    perturbed_amplitude_sd, perturbed_delay_sd_days : float
+        Spreads of the regions of perturbed members: of the logarithm of the amplitude, and of the timing in days.
+    perturbed_seed : int
+        Their seed.
     """
 
     loads: Annotated[tuple[str, ...], Field(min_length=1)] = ("builtin:all",)
@@ -111,6 +116,9 @@ class Fingerprint:
     water_vapour_peak: Annotated[str, Field(pattern=r"^(0[1-9]|1[0-2])-(0[1-9]|[12]\d|3[01])$")] = "07-15"
     rotational_feedback: bool = False
     earth_model: Annotated[str, Field(min_length=1)] = PREM
+    perturbed_amplitude_sd: Annotated[float, Field(ge=0, le=1)] = 0.2
+    perturbed_delay_sd_days: Annotated[float, Field(ge=0, le=60)] = 10.0
+    perturbed_seed: Annotated[int, Field(ge=0, lt=2**32)] = 1
 
 
 @dataclass(frozen=True, config=_STRICT)

@@ -11,9 +11,9 @@ import massfit
 
 NAMES = [
     "CirculationModel", "InputError", "LoadPattern", "Network", "OceanFunction", "Record", "ReducedRecord",
-    "ReducedSite", "Series", "Settings", "SimulationOptions", "Site", "builtin_loads", "estimate", "fit_site",
-    "love_numbers", "make_settings", "prepare_operator", "read_network", "sample_posterior", "simulate_network",
-    "site_fingerprints", "site_footprints", "solve_sea_level",
+    "ReducedSite", "Series", "Settings", "SimulationOptions", "Site", "builtin_loads", "draw_admittances", "estimate",
+    "fit_site", "love_numbers", "make_settings", "prepare_operator", "read_network", "regional_responses",
+    "sample_posterior", "simulate_network", "site_fingerprints", "site_footprints", "solve_sea_level",
 ]  # fmt: skip
 
 

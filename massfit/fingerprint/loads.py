@@ -26,7 +26,7 @@ Kind = Literal["snow", "rain", "monsoon", "ice"]
 _REFERENCE = "built-in; rounded after Tapley et al. 2004, Schmidt et al. 2006, Syed et al. 2008, Luthcke et al. 2013"
 
 
-class _Region(NamedTuple):
+class Region(NamedTuple):
     """A region: place, half widths (deg), amplitude (mm of water) and day of the maximum."""
 
     name: str
@@ -39,43 +39,44 @@ class _Region(NamedTuple):
     day: float
 
 
-_REGIONS = (
-    _Region("Alaska and Yukon", "snow", 62, -146, 4, 9, 110, 88),
-    _Region("Mackenzie and northern Canada", "snow", 61, -110, 6, 13, 55, 88),
-    _Region("Rocky Mountains and Columbia", "snow", 48, -118, 6, 6, 110, 78),
-    _Region("Quebec and Labrador", "snow", 53, -72, 6, 10, 90, 83),
-    _Region("Mississippi and eastern United States", "snow", 38, -87, 6, 9, 60, 78),
-    _Region("western and central Europe", "snow", 48, 12, 5.5, 12, 65, 60),
-    _Region("Scandinavia and north-west Russia", "snow", 62, 30, 6, 14, 80, 73),
-    _Region("Volga and Dnieper", "snow", 54, 43, 6, 12, 85, 73),
-    _Region("Anatolia and the Zagros", "snow", 37, 43, 4, 8, 70, 73),
-    _Region("Pamir and Tien Shan", "snow", 39, 71, 4, 7, 55, 88),
-    _Region("Ob", "snow", 59, 70, 7, 10, 75, 88),
-    _Region("Yenisey", "snow", 61, 92, 8, 9, 65, 93),
-    _Region("Lena", "snow", 62, 122, 7, 13, 40, 98),
-    _Region("Kamchatka and Kolyma", "snow", 63, 158, 5, 11, 65, 98),
-    _Region("Eurasian plains and forests", "snow", 54, 75, 7, 32, 35, 80),
-    _Region("plains of North America", "snow", 47, -98, 6, 10, 45, 80),
-    _Region("Patagonia", "snow", -46, -73, 6, 2, 90, 250),
-    _Region("Amazon", "rain", -5, -61, 5.5, 7.5, 220, 110),
-    _Region("Tocantins and eastern Brazil", "rain", -11, -48, 5, 5, 150, 90),
-    _Region("Orinoco", "rain", 6, -67, 3, 4, 140, 245),
-    _Region("Parana", "rain", -21, -53, 5, 5, 70, 95),
-    _Region("Zambezi and southern Congo", "rain", -13, 25, 5, 9, 140, 85),
-    _Region("northern Congo and Chari", "rain", 8, 20, 4, 7, 90, 280),
-    _Region("Madagascar", "rain", -18, 46, 4, 2, 110, 75),
-    _Region("Sahel and Niger", "monsoon", 11, -4, 3.5, 9, 95, 270),
-    _Region("Ethiopia and Blue Nile", "monsoon", 10, 37, 3.5, 4, 100, 260),
-    _Region("Ganges and Brahmaputra", "monsoon", 25, 87, 3.5, 7, 150, 255),
-    _Region("southern India", "monsoon", 18, 79, 5, 4, 110, 265),
-    _Region("Indochina", "monsoon", 17, 102, 5, 5, 160, 265),
-    _Region("southern China", "monsoon", 28, 111, 4, 7, 35, 200),
-    _Region("northern Australia", "monsoon", -15, 133, 3.5, 8, 120, 80),
-    _Region("southern Greenland", "ice", 67, -42, 6, 7, 80, 130),
-    _Region("northern Greenland", "ice", 77, -42, 4, 14, 30, 130),
-    _Region("West Antarctica", "ice", -75, -100, 4, 22, 40, 270),
-    _Region("coast of East Antarctica", "ice", -69, 90, 3, 45, 25, 270),
+REGIONS = (
+    Region("Alaska and Yukon", "snow", 62, -146, 4, 9, 110, 88),
+    Region("Mackenzie and northern Canada", "snow", 61, -110, 6, 13, 55, 88),
+    Region("Rocky Mountains and Columbia", "snow", 48, -118, 6, 6, 110, 78),
+    Region("Quebec and Labrador", "snow", 53, -72, 6, 10, 90, 83),
+    Region("Mississippi and eastern United States", "snow", 38, -87, 6, 9, 60, 78),
+    Region("western and central Europe", "snow", 48, 12, 5.5, 12, 65, 60),
+    Region("Scandinavia and north-west Russia", "snow", 62, 30, 6, 14, 80, 73),
+    Region("Volga and Dnieper", "snow", 54, 43, 6, 12, 85, 73),
+    Region("Anatolia and the Zagros", "snow", 37, 43, 4, 8, 70, 73),
+    Region("Pamir and Tien Shan", "snow", 39, 71, 4, 7, 55, 88),
+    Region("Ob", "snow", 59, 70, 7, 10, 75, 88),
+    Region("Yenisey", "snow", 61, 92, 8, 9, 65, 93),
+    Region("Lena", "snow", 62, 122, 7, 13, 40, 98),
+    Region("Kamchatka and Kolyma", "snow", 63, 158, 5, 11, 65, 98),
+    Region("Eurasian plains and forests", "snow", 54, 75, 7, 32, 35, 80),
+    Region("plains of North America", "snow", 47, -98, 6, 10, 45, 80),
+    Region("Patagonia", "snow", -46, -73, 6, 2, 90, 250),
+    Region("Amazon", "rain", -5, -61, 5.5, 7.5, 220, 110),
+    Region("Tocantins and eastern Brazil", "rain", -11, -48, 5, 5, 150, 90),
+    Region("Orinoco", "rain", 6, -67, 3, 4, 140, 245),
+    Region("Parana", "rain", -21, -53, 5, 5, 70, 95),
+    Region("Zambezi and southern Congo", "rain", -13, 25, 5, 9, 140, 85),
+    Region("northern Congo and Chari", "rain", 8, 20, 4, 7, 90, 280),
+    Region("Madagascar", "rain", -18, 46, 4, 2, 110, 75),
+    Region("Sahel and Niger", "monsoon", 11, -4, 3.5, 9, 95, 270),
+    Region("Ethiopia and Blue Nile", "monsoon", 10, 37, 3.5, 4, 100, 260),
+    Region("Ganges and Brahmaputra", "monsoon", 25, 87, 3.5, 7, 150, 255),
+    Region("southern India", "monsoon", 18, 79, 5, 4, 110, 265),
+    Region("Indochina", "monsoon", 17, 102, 5, 5, 160, 265),
+    Region("southern China", "monsoon", 28, 111, 4, 7, 35, 200),
+    Region("northern Australia", "monsoon", -15, 133, 3.5, 8, 120, 80),
+    Region("southern Greenland", "ice", 67, -42, 6, 7, 80, 130),
+    Region("northern Greenland", "ice", 77, -42, 4, 14, 30, 130),
+    Region("West Antarctica", "ice", -75, -100, 4, 22, 40, 270),
+    Region("coast of East Antarctica", "ice", -69, 90, 3, 45, 25, 270),
 )
+"""Regions of the built-in patterns."""
 
 
 @dataclass(frozen=True)
@@ -141,7 +142,7 @@ def builtin_loads(names: Sequence[str] = ("all",)) -> tuple[LoadPattern, ...]:
 
 def _total(variant: _Variant, latitude: NDArray[np.float64], longitude: NDArray[np.float64]) -> NDArray[np.complex128]:
     total = np.zeros((latitude.size, longitude.size), dtype=complex)
-    for region in _REGIONS:
+    for region in REGIONS:
         amplitude = region.amplitude * variant.factor.get(region.kind, 1.0) / variant.widen**2
         phasor = phasor_from_peak(amplitude, region.day + variant.delay.get(region.kind, 0.0))
         north = (latitude - region.latitude) / (variant.widen * region.half_height)

@@ -1,6 +1,7 @@
 """Read a network file and every file it names."""
 
 import os
+from collections.abc import Sequence
 from dataclasses import fields
 from typing import Any
 
@@ -8,6 +9,7 @@ from massfit.earth.profile import EarthProfile
 from massfit.errors import Fault, InputError
 from massfit.fingerprint.loads import builtin_loads
 from massfit.fingerprint.pattern import LoadPattern
+from massfit.fingerprint.regions import MOST_MEMBERS, perturbed_loads
 from massfit.io.circulation_file import read_circulation
 from massfit.io.earth_file import read_earth_profile
 from massfit.io.fields import read_air_pressure, read_atmosphere_load, read_loads
@@ -23,6 +25,7 @@ from massfit.records.record import Record
 from massfit.settings import PREM, Corrections, Fingerprint, Settings
 
 _BUILTIN = "builtin:"
+_PERTURBED = "perturbed:"
 
 
 def read_network(path: str | os.PathLike[str], *, outside: bool = False) -> Network:
@@ -220,11 +223,15 @@ def _loads(reading: Reading, sections: Sections) -> tuple[LoadPattern, ...]:
     if frame is None or fingerprint is None:
         return ()
     named: list[tuple[KeyPath, LoadPattern]] = []
-    for text in dict.fromkeys(fingerprint.loads):
+    texts = dict.fromkeys(fingerprint.loads)
+    for text in sorted(texts, key=lambda text: text.startswith(_PERTURBED)):  # these are made from all others
         path: KeyPath = ("fingerprint", "loads", fingerprint.loads.index(text))
         patterns: tuple[LoadPattern, ...] | None = None
         if text.startswith(_BUILTIN):
             patterns = _builtin(reading, path, text.removeprefix(_BUILTIN))
+        elif text.startswith(_PERTURBED):
+            bases = [pattern for _, pattern in named] or builtin_loads(("nominal",))
+            patterns = _perturbed(reading, path, text.removeprefix(_PERTURBED), bases, fingerprint)
         elif (file := reading.find(path, text)) is not None:
             patterns = reading.attempt(read_loads, file, reference_year=frame.reference_year, source=text)
         named += [(path, pattern) for pattern in patterns or ()]
@@ -239,6 +246,22 @@ def _builtin(reading: Reading, path: KeyPath, name: str) -> tuple[LoadPattern, .
         for fault in error.faults:
             reading.fault(path, fault.problem, fault.allowed, fault.action)
         return None
+
+
+def _perturbed(
+    reading: Reading, path: KeyPath, count: str, bases: Sequence[LoadPattern], fingerprint: Fingerprint
+) -> tuple[LoadPattern, ...] | None:
+    if not (count.isascii() and count.isdigit() and 1 <= int(count[:9]) <= MOST_MEMBERS):
+        allowed = f"Must be a number of members from 1 to {MOST_MEMBERS}"
+        reading.fault(path, f'the value is "{_PERTURBED}{count}"', allowed, f'Write "{_PERTURBED}16"')
+        return None
+    return perturbed_loads(
+        bases,
+        int(count),
+        amplitude_sd=fingerprint.perturbed_amplitude_sd,
+        delay_sd_days=fingerprint.perturbed_delay_sd_days,
+        seed=fingerprint.perturbed_seed,
+    )
 
 
 def _earth(reading: Reading, fingerprint: Fingerprint | None) -> EarthProfile | None:

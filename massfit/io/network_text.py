@@ -45,6 +45,8 @@ _COMMENTS: dict[str, dict[str, str]] = {
         "sea_water_density": "kg m-3",
         "water_vapour_kg": "half the annual range of the water vapour in the air",
         "water_vapour_peak": "month-day of its maximum",
+        "perturbed_amplitude_sd": 'of "perturbed:N" members: spread of the logarithm of each region\'s amplitude',
+        "perturbed_delay_sd_days": "and of its timing",
         "earth_model": '"prem", or the CSV file of an Earth profile',
     },
     "[posterior]": {

@@ -122,6 +122,11 @@ def _fingerprint(network: Network) -> list[str]:
         else "the exchange of water vapour is switched off"
     )
     members = f"{count} load member{'s' if count > 1 else ''} of equal weight"
+    if any(load.name.startswith("perturbed ") for load in network.loads):
+        members += (
+            f" (amplitudes of the regions of perturbed ones spread by {chosen.perturbed_amplitude_sd:.0%}, "
+            f"their timing by {chosen.perturbed_delay_sd_days:g} days)"
+        )
     rotation = (
         "the annual wobble that loads and air cause is fed back (rotational feedback), that of the circulation is not"
         if chosen.rotational_feedback

@@ -256,6 +256,14 @@ FAULTS = {
          "tide taken off. Observed polar motion already holds the response to the mass exchange, so it would count "
          "twice. Set it to false."],
     ),
+    "no number of perturbed loads": (
+        LOADS,
+        'loads = ["fields/loads.nc", "perturbed:0", "perturbed:many"]',
+        ['N:41: fingerprint.loads[2]: the value is "perturbed:0". Must be a number of members from 1 to 100. '
+         'Write "perturbed:16".',
+         'N:41: fingerprint.loads[3]: the value is "perturbed:many". Must be a number of members from 1 to 100. '
+         'Write "perturbed:16".'],
+    ),
     "unknown built-in load": (
         LOADS,
         'loads = ["builtin:al"]',

@@ -10,6 +10,7 @@ import pytest
 
 from massfit.errors import InputError
 from massfit.io.network_file import read_network
+from massfit.results.assumptions import stated_assumptions
 
 Change = Callable[[str, str], None]
 
@@ -153,3 +154,16 @@ def test_a_site_too_short_to_be_used_is_announced(network_folder: Path) -> None:
     assert read_network(network_folder).warnings == (
         "Site A has 60 days of data and is left out: a site needs 90. Add records of it.",
     )
+
+
+def test_perturbed_loads_are_made_from_all_others(network_folder: Path, change: Change) -> None:
+    change('loads = ["fields/loads.nc"]', 'loads = ["perturbed:3", "fields/loads.nc"]\nperturbed_seed = 4')
+    names = [load.name for load in read_network(network_folder).loads]
+    assert names == ["wet", "dry", "perturbed 1 of wet", "perturbed 2 of dry", "perturbed 3 of wet"]
+    assert "spread by 20%, their timing by 10 days" in " ".join(stated_assumptions(read_network(network_folder)))
+
+
+def test_perturbed_loads_alone_are_made_from_the_nominal_one(network_folder: Path, change: Change) -> None:
+    change('loads = ["fields/loads.nc"]', 'loads = ["perturbed:2"]')
+    names = [load.name for load in read_network(network_folder).loads]
+    assert names == ["perturbed 1 of nominal", "perturbed 2 of nominal"]
