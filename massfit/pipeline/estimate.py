@@ -4,24 +4,17 @@ Each step is a pure function of a room below; this module only puts them in
 order, the way a method section would.
 """
 
-from massfit.annual.dataset import site_phasors
-from massfit.corrections.circulation import circulation_at_sites
-from massfit.corrections.responses import equilibrium_responses
-from massfit.fingerprint.footprint import site_footprints
-from massfit.fingerprint.ocean import OceanFunction
-from massfit.network import Network, check_network
-from massfit.pipeline.air import network_air
-from massfit.pipeline.context import in_context, records_span, stated_period
-from massfit.pipeline.fingerprints import network_fingerprints, network_operator
+from massfit.network import Network
+from massfit.pipeline.context import in_context
+from massfit.pipeline.fingerprints import network_fingerprints
 from massfit.pipeline.parts import Mapped, Store, kept
 from massfit.pipeline.progress import Progress, StageTimes, ignore
 from massfit.pipeline.provenance import provenance
-from massfit.pipeline.sites import SiteTask, daily_records, reduce_sites, usable_sites
+from massfit.pipeline.site_stage import site_stage
 from massfit.pipeline.workers import Workers
 from massfit.posterior.predictive import predictive_check
 from massfit.posterior.sample import sample_posterior
 from massfit.posterior.summary import summarise
-from massfit.results.correction_tables import with_corrections
 from massfit.results.estimate import Estimate
 
 
@@ -67,50 +60,10 @@ def estimate(
 
 
 def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Mapped) -> Estimate:
-    check_network(network)
     settings = network.settings
-    records = daily_records(network, progress)
-    sites = usable_sites(network, records)
-    progress("sea-level equation", 0, 1)
-    ocean = OceanFunction.builtin()
-    operator = network_operator(network, ocean)
-    footprints = site_footprints(operator, sites)
-    air = network_air(network, ocean)
-    fingerprints = network_fingerprints(network, operator, sites, footprints, air)
-    responses = equilibrium_responses(
-        operator,
-        sites,
-        long_period_tides=settings.corrections.long_period_tides,
-        pole_tide=settings.corrections.pole_tide,
-    )
-    progress("sea-level equation", 1, 1)
-    circulation = tuple(
-        circulation_at_sites(model, sites, ocean=ocean, footprints=footprints, air_pressure=network.air_pressure)
-        for model in network.circulation
-    )
-    tasks = [
-        SiteTask(
-            site,
-            records[site.id],
-            responses.sel(site=[site.id]),
-            air.ocean_mean,
-            tuple(model.only(site.id) for model in circulation),
-            settings,
-        )
-        for site in sites
-        if records[site.id]
-    ]
-    reductions = reduce_sites(tasks, progress, mapped)
-    elsewhere = [each for each in network.reduced if each.site in {site.id for site in sites}]
-    phasors = site_phasors(
-        [reduction.fit for reduction in reductions],
-        models=network.model_names,
-        reference_year=settings.frame.reference_year,
-        reduced=elsewhere,
-        sites=sites,
-        period=stated_period(settings.frame, *records_span(reductions, elsewhere)),
-    )
-    phasors = with_corrections(phasors, reductions)
+    stage = site_stage(network, progress, mapped)
+    fingerprints = network_fingerprints(network, stage.operator, stage.sites, stage.footprints, stage.air)
+    phasors = stage.phasors
     progress("network posterior", 0, fingerprints.sizes["member"])
     posterior = sample_posterior(
         phasors,
@@ -133,9 +86,9 @@ def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Map
     return Estimate(
         network=network,
         fingerprints=fingerprints,
-        reductions=tuple(reductions),
+        reductions=stage.reductions,
         site_phasors=phasors,
         posterior=posterior,
-        summary=in_context(summary, network, reductions, float(fingerprints.attrs["ocean_area_m2"])),
+        summary=in_context(summary, network, stage.reductions, float(fingerprints.attrs["ocean_area_m2"])),
         provenance={**provenance(network, processes=pool.count), "elapsed_s": progress.seconds()},
     )
