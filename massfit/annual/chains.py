@@ -23,17 +23,17 @@ Choices = NDArray[np.int64]
 CHAINS = 64
 """Chains run side by side."""
 
-BURN_IN = 16
+BURN_IN = 8
 """Sweeps before the sample is kept; the chains start from the masses in turn."""
 
-KEPT_SWEEPS = 48
+KEPT_SWEEPS = 32
 
 POWER = 0.7
 """Power of the evidence that the chains sample."""
 
 REFINEMENTS = 4
 
-REFINEMENT_SWEEPS = 6
+REFINEMENT_SWEEPS = 4
 
 
 @dataclass(frozen=True)

@@ -20,8 +20,8 @@ Floats = NDArray[np.float64]
 ANNUAL = np.array([0, 1])
 """Fixed columns that hold the annual phasor."""
 
-COMPRESSION = 1e-12
-"""Singular values kept, relative to the largest: a drift of 30 hPa is kept to 1e-6 Pa."""
+COMPRESSION = 1e-9
+"""Singular values kept, relative to the largest: a drift of 30 hPa is kept to 1e-4 Pa over a thousand days."""
 
 
 @dataclass(frozen=True)

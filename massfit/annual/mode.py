@@ -2,10 +2,10 @@
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from itertools import combinations
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.optimize import minimize
 
 from massfit.annual.design import Design
 from massfit.annual.evidence import reduce_columns, solve_choices
@@ -21,16 +21,21 @@ MODE_TOLERANCE = 0.02
 
 MAX_ALTERNATIONS = 8
 
-GRADIENT_TOLERANCE = 0.1
-"""Of the log posterior per unit of score, whose posterior sigma is below one: a proposal needs no more."""
+NEWTON_TOLERANCE = 0.01
+"""Gain of the log posterior that a further Newton step promises at which they end: a proposal needs no more."""
 
-HESSIAN_STEP = 0.1
-"""Step of the second differences in score: wide enough to see past rounding and small kinks."""
+MAX_NEWTON_STEPS = 20
+
+LONGEST_STEP = 1.5
+"""Of a score in one Newton step."""
+
+DIFFERENCE_STEP = 0.1
+"""Step of the differences in score: wide enough to see past rounding and small kinks."""
 
 WHITE_RATIO_SD = 0.5
 """Prior standard deviation of the logarithm of a recorder's white noise over that of its site."""
 
-RATIO_STEP, RATIO_SWEEPS = 0.2, 3
+RATIO_STEP, RATIO_SWEEPS = 0.2, 2
 
 NEGLIGIBLE_FORM = 3e-3
 """Forms of noise of less weight than this part of the best, by Laplace's approximation, are left out."""
@@ -99,22 +104,77 @@ def joint_mode(design: Design, families: Sequence[NoiseFamily]) -> Mode:
     leader = max(families, key=lambda family: family.size)
     scores, ratio = leader.start(_rough_sd(design)), np.ones(len(design.drifts))
     grid = refine_grid(design.covariance(leader.model(scores, ratio)), design)
-    scores, grid = _alternate(design, leader, ratio, scores, grid)
-    ratio = _white_ratio(design, leader, scores, grid.mode)
+    found, grid = _alternate(design, leader, ratio, scores, grid)
+    ratio = _white_ratio(design, leader, found.scores, grid.mode)
     modes = [
-        _family_mode(design, family, ratio, grid.mode, scores if family == leader else _start(family, scores))
+        _family_mode(
+            family, minimise(_objective(design, family, ratio, grid.mode), _start(family, leader, found.scores))
+        )
         for family in families
     ]
     best = max(modes, key=lambda mode: mode.log_evidence)
     if best.family != leader:
-        scores, grid = _alternate(design, best.family, ratio, best.scores, grid)
+        grid = refine_grid(design.covariance(best.family.model(best.scores, ratio)), design, grid.mode)
     kept = [mode for mode in modes if mode.log_evidence > best.log_evidence + np.log(NEGLIGIBLE_FORM)]
     return Mode(tuple(sorted(kept, key=lambda mode: -mode.log_evidence)), ratio, grid)
 
 
-def minimise(objective: Callable[[Floats], float], start: Floats) -> Floats:
-    """Minimum of a smooth function of a few scores (quasi-Newton, BFGS)."""
-    return np.asarray(minimize(objective, start, method="BFGS", options={"gtol": GRADIENT_TOLERANCE}).x)
+@dataclass(frozen=True)
+class Minimum:
+    """Minimum of a smooth function of a few scores.
+
+    Parameters
+    ----------
+    scores : (k,) array
+    value : float
+    spread : (k, k) array
+        Inverse of the curvature.
+    """
+
+    scores: Floats
+    value: float
+    spread: Floats
+
+
+def minimise(objective: Callable[[Floats], float], start: Floats) -> Minimum:
+    """Minimise a negative log posterior of scores by Newton steps with differences.
+
+    Examples
+    --------
+    >>> found = minimise(lambda x: float(2 * (x[0] - 1) ** 2 + x[1] ** 2 / 2), np.zeros(2))
+    >>> found.scores.round(6), found.spread.diagonal().round(6)
+    (array([1., 0.]), array([0.25, 1.  ]))
+    """
+    scores, value = start, objective(start)
+    for _ in range(MAX_NEWTON_STEPS):
+        gradient, spread = _local_shape(objective, scores, value)
+        step = -spread @ gradient
+        if -gradient @ step < 2.0 * NEWTON_TOLERANCE:
+            break
+        step *= min(1.0, LONGEST_STEP / np.abs(step).max())
+        trial = objective(scores + step)
+        while not trial < value and np.abs(step).max() > 1e-3:
+            step = 0.4 * step
+            trial = objective(scores + step)
+        if not trial < value:
+            break
+        scores, value = scores + step, trial
+    return Minimum(scores, value, spread)
+
+
+def _local_shape(objective: Callable[[Floats], float], scores: Floats, value: float) -> tuple[Floats, Floats]:
+    """Gradient and inverse Hessian by differences; directions of no curvature get a wide unit spread."""
+    steps = DIFFERENCE_STEP * np.eye(len(scores))
+    low, high = (np.array([objective(scores + sign * step) for step in steps]) for sign in (-1, 1))
+    hessian = np.diag(high + low - 2.0 * value)
+    for i, j in combinations(range(len(scores)), 2):
+        both = objective(scores + steps[i] + steps[j]) + objective(scores - steps[i] - steps[j])
+        hessian[i, j] = hessian[j, i] = 0.5 * (both + 2.0 * value - high[i] - low[i] - high[j] - low[j])
+    if not np.isfinite(hessian).all():
+        raise ConvergenceError("the fit of the noise of a site", float("nan"), NEWTON_TOLERANCE)
+    curvature, directions = np.linalg.eigh(hessian / DIFFERENCE_STEP**2)
+    spread = (directions / np.maximum(curvature, 1.0)) @ directions.T
+    return (high - low) / (2.0 * DIFFERENCE_STEP), np.asarray(spread)
 
 
 def _rough_sd(design: Design) -> float:
@@ -124,27 +184,27 @@ def _rough_sd(design: Design) -> float:
     return float((design.data - columns @ np.linalg.lstsq(columns, design.data, rcond=1e-8)[0]).std())
 
 
-def _start(family: NoiseFamily, leader: Floats) -> Floats:
-    """Scores with the amplitudes of another form's mode."""
+def _start(family: NoiseFamily, leader: NoiseFamily, found: Floats) -> Floats:
+    """Scores with the amplitudes of the mode of another form."""
+    if family == leader:
+        return found
     scores = np.zeros(family.size)
-    scores[: family.size - 1 if family.form == "sum" else min(1, family.size - 1)] = leader[0]
-    scores[-1] = leader[-1]
+    scores[: family.size - 1 if family.form == "sum" else min(1, family.size - 1)] = found[0]
+    scores[-1] = found[-1]
     return scores
 
 
 def _alternate(
     design: Design, family: NoiseFamily, ratio: Floats, scores: Floats, grid: DriftGrid
-) -> tuple[Floats, DriftGrid]:
+) -> tuple[Minimum, DriftGrid]:
     reached = np.inf
     for _ in range(MAX_ALTERNATIONS):
-        objective = _objective(design, family, ratio, grid.mode)
-        scores = minimise(objective, scores)
-        value = objective(scores)
-        if reached - value < MODE_TOLERANCE:
+        found = minimise(_objective(design, family, ratio, grid.mode), scores)
+        if reached - found.value < MODE_TOLERANCE:
             break
-        reached = value
+        reached, scores = found.value, found.scores
         grid = refine_grid(design.covariance(family.model(scores, ratio)), design, grid.mode)
-    return scores, grid
+    return found, grid
 
 
 def _objective(design: Design, family: NoiseFamily, ratio: Floats, time_constants: Floats) -> Callable[[Floats], float]:
@@ -187,27 +247,6 @@ def _white_ratio(design: Design, family: NoiseFamily, scores: Floats, time_const
     return np.exp(logs)
 
 
-def _family_mode(
-    design: Design, family: NoiseFamily, ratio: Floats, time_constants: Floats, start: Floats
-) -> FamilyMode:
-    objective = _objective(design, family, ratio, time_constants)
-    scores = minimise(objective, start)
-    spread = _spread(objective, scores)
-    volume = 0.5 * (np.linalg.slogdet(spread)[1] + len(scores) * np.log(2.0 * np.pi))
-    return FamilyMode(family, scores, spread, float(volume - objective(scores)))
-
-
-def _spread(objective: Callable[[Floats], float], mode: Floats) -> Floats:
-    """Inverse Hessian by second differences; directions with no curvature get a wide unit spread."""
-    count = len(mode)
-    steps = HESSIAN_STEP * np.eye(count)
-    hessian = np.empty((count, count))
-    for i in range(count):
-        for j in range(i + 1):
-            signs = ((1, 1), (1, -1), (-1, 1), (-1, -1))
-            values = [objective(mode + a * steps[i] + b * steps[j]) for a, b in signs]
-            hessian[i, j] = hessian[j, i] = (values[0] - values[1] - values[2] + values[3]) / (4 * HESSIAN_STEP**2)
-    if not np.isfinite(hessian).all():
-        raise ConvergenceError("the fit of the noise of a site", float("nan"), MODE_TOLERANCE)
-    curvature, directions = np.linalg.eigh(hessian)
-    return np.asarray((directions / np.maximum(curvature, 1.0)) @ directions.T)
+def _family_mode(family: NoiseFamily, found: Minimum) -> FamilyMode:
+    volume = 0.5 * (np.linalg.slogdet(found.spread)[1] + len(found.scores) * np.log(2.0 * np.pi))
+    return FamilyMode(family, found.scores, found.spread, float(volume - found.value))

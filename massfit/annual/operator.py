@@ -81,7 +81,7 @@ def model_noise(design: Design, priors: Priors, operator: Floats) -> Floats:
         determinants = (models - 1) * (covariance.log_determinant + fit.log_determinant)
         return float(0.5 * (determinants + fit.misfit.sum()) - log_score_prior(scores))
 
-    scores = minimise(negative_log_posterior, family.start(float(contrasts.std())))
+    scores = minimise(negative_log_posterior, family.start(float(contrasts.std()))).scores
     merged = np.zeros((2, len(days)))
     for row, weights in zip(merged, operator, strict=True):
         np.add.at(row, place, weights)
