@@ -198,9 +198,10 @@ class Study:
             for label, (low, high) in LENGTHS.items()
             if (own := (self.years >= low) & (self.years < high)).any()
         ]
+        held = np.mean(2 * self.control < 5.991)
         return (
             f"{name}: {self.error.mean():.2f} +- {standard_error:.2f}, inside {self.inside.mean():.3f} "
-            f"({'; '.join(parts)}); least squares {self.control.mean():.1f}, inside {np.mean(2 * self.control < 5.991):.2f}"
+            f"({'; '.join(parts)}); least squares {self.control.mean():.1f}, inside {held:.2f}"
         )
 
 
