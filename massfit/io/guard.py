@@ -1,6 +1,6 @@
-"""Have HDF5 files examined by another process before this one opens them.
+"""Have HDF5 and MATLAB files examined by another process before this one opens them.
 
-The HDF5 library can crash or run in circles on a damaged file, and then no exception tells. The
+Their libraries can crash or run in circles on a damaged file, and then no exception tells. The
 helper process is started with the first file and lives as long as this one: starting it for every
 file would cost more than reading does. It holds no state that could change an answer.
 """
@@ -14,7 +14,7 @@ import sys
 from pathlib import Path
 from threading import Lock
 
-_EXAMINER = Path(__file__).with_name("hdf5_examiner.py")
+_EXAMINER = Path(__file__).with_name("file_examiner.py")
 
 
 class Guard:
@@ -26,7 +26,7 @@ class Guard:
         self._process: subprocess.Popen[str] | None = None
 
     def problem_of(self, path: Path) -> str:
-        """Say what is wrong with an HDF5 file; nothing when nothing is.
+        """Say what is wrong with a file; nothing when nothing is.
 
         Parameters
         ----------
@@ -62,7 +62,7 @@ def _started() -> "subprocess.Popen[str]":
     )  # fmt: skip
     if process.stdout is None or process.stdout.readline() != "ready\n":
         _ended(process)
-        raise RuntimeError(f"the process that examines HDF5 files does not start ({sys.executable} {_EXAMINER})")
+        raise RuntimeError(f"the process that examines files does not start ({sys.executable} {_EXAMINER})")
     return process
 
 
@@ -91,4 +91,4 @@ def _asked(process: "subprocess.Popen[str]", question: str) -> str:
 _GUARD = Guard()
 atexit.register(_GUARD.close)
 examined_problem = _GUARD.problem_of
-"""Problem of an HDF5 file, from the helper process of this one."""
+"""Problem of an HDF5 or MATLAB file, from the helper process of this one."""

@@ -94,7 +94,7 @@ def as_text(value: object) -> str:
 
 
 @contextmanager
-def damage_as_fault(source: str, name: str = "") -> Iterator[None]:
+def damage_as_fault(source: str, name: str = "", kind: str = "NetCDF") -> Iterator[None]:
     """Say of whatever a library raises on a file that the file cannot be read.
 
     The libraries meet numbers and attributes in damaged files that they never expected, and
@@ -104,6 +104,8 @@ def damage_as_fault(source: str, name: str = "") -> Iterator[None]:
     ----------
     source, name : str
         File and variable.
+    kind : str
+        "NetCDF" or "MATLAB".
 
     Raises
     ------
@@ -116,8 +118,9 @@ def damage_as_fault(source: str, name: str = "") -> Iterator[None]:
         raise
     except Exception as error:
         shown = (str(error).splitlines() or [""])[0][:200]
-        problem = f"the file cannot be read as NetCDF ({type(error).__name__}: {shown})"
-        raise InputError(Fault(source, name, problem, "Must be NetCDF-3 or NetCDF-4", "Fetch it again")) from error
+        problem = f"the file cannot be read as {kind} ({type(error).__name__}: {shown})"
+        allowed = "Must be NetCDF-3 or NetCDF-4" if kind == "NetCDF" else f"Must be a whole {kind} file"
+        raise InputError(Fault(source, name, problem, allowed, "Fetch it again")) from error
 
 
 def require_complete(path: Path, *, source: str = "") -> None:

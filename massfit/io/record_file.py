@@ -1,23 +1,43 @@
 """One record file, whatever its format, as a Record."""
 
-from datetime import UTC, datetime
+from collections.abc import Callable
+from dataclasses import fields
 from pathlib import Path
 
 import numpy as np
 from numpy.typing import NDArray
 
 from massfit.errors import Fault, InputError
+from massfit.io.clock import clock_notes, corrected_clock
+from massfit.io.content import Format, format_of
 from massfit.io.deployment import DeploymentFile
-from massfit.io.netcdf import is_netcdf
+from massfit.io.flags import without_flagged
+from massfit.io.record_matlab import read_matlab
 from massfit.io.record_netcdf import read_netcdf
 from massfit.io.record_text import read_text_record
+from massfit.io.samples import Samples
+from massfit.io.schema import utc
 from massfit.records.record import Action, Record
+
+_READERS: dict[Format, Callable[[Path, DeploymentFile], Samples]] = {
+    "NetCDF": read_netcdf,
+    "MATLAB": read_matlab,
+    "text": read_text_record,
+}
+_FORMATS: dict[str, tuple[Format, ...]] = {
+    **dict.fromkeys(("columns", "time_column", "comment", "delimiter", "keep_kinds"), ("text",)),
+    **dict.fromkeys(("start_time", "interval_s", "time_format"), ("text", "MATLAB")),
+    "time_variable": ("NetCDF", "MATLAB"),
+    "station": ("NetCDF",),
+}
+"""Formats that a key belongs to; keys that are not here belong to all."""
 
 
 def read_record(folder: Path, entry: DeploymentFile, *, site: str, deployment: str) -> Record:
     """Read the record of one deployment.
 
-    The format is told by the content: NetCDF by its first bytes, text otherwise.
+    The format is told by the content: NetCDF and MATLAB by their first bytes, text otherwise. Samples whose quality
+    flags say so are left out, and the clock is corrected.
 
     Parameters
     ----------
@@ -40,14 +60,13 @@ def read_record(folder: Path, entry: DeploymentFile, *, site: str, deployment: s
     path = folder / entry.file
     if not path.is_file():
         raise InputError(Fault(entry.file, "file", "there is no such file", action="Correct `file`"))
-    samples = read_netcdf(path, entry) if is_netcdf(path) else read_text_record(path, entry)
-    valid = np.isfinite(samples.pressure)
-    if not valid.any():
-        problem = f"none of the {valid.size} samples is valid"
-        name = entry.variable or "pressure"
-        raise InputError(Fault(entry.file, name, problem, action="Check `missing` and the file"))
-    reference = float(np.median(samples.pressure[valid]))
-    time, actions = samples.time, samples.actions
+    if entry.scale_factor == 0.0:
+        raise InputError(Fault(entry.file, "scale_factor", "the value is 0", "Must not be 0", "Correct it"))
+    form = format_of(path, source=entry.file)
+    samples = without_flagged(_READERS[form](path, entry), entry)
+    reference = _median(samples.pressure, entry)
+    time, clock = corrected_clock(samples.time, entry)
+    actions = samples.actions + clock + clock_notes(time, samples.pressure) + _without_use(form, entry)
     if entry.stamp == "start" and not samples.centred:
         time = centred(time)
         actions += (Action("stamps moved to the middle", time.size, "by half the sampling interval"),)
@@ -58,7 +77,7 @@ def read_record(folder: Path, entry: DeploymentFile, *, site: str, deployment: s
         pressure=samples.pressure - reference,
         reference=reference,
         drift=entry.drift,
-        steps=() if isinstance(entry.steps, str) else tuple(_utc(step) for step in entry.steps),
+        steps=() if isinstance(entry.steps, str) else tuple(utc(step) for step in entry.steps),
         find_steps=entry.steps == "find",
         source=entry.file,
         actions=actions,
@@ -94,8 +113,17 @@ def centred(start: NDArray[np.datetime64]) -> NDArray[np.datetime64]:
     return np.asarray(start + interval[place] // 2)
 
 
-def _utc(instant: datetime) -> np.datetime64:
-    """UTC instant; one without a zone is UTC already."""
-    if instant.tzinfo is not None:
-        instant = instant.astimezone(UTC).replace(tzinfo=None)
-    return np.datetime64(instant, "ns")
+def _median(pressure: NDArray[np.float64], entry: DeploymentFile) -> float:
+    valid = np.isfinite(pressure)
+    if not valid.any():
+        problem = f"none of the {valid.size} samples is valid"
+        name = entry.variable or "pressure"
+        raise InputError(Fault(entry.file, name, problem, action="Check `missing` and the file"))
+    return float(np.median(pressure if valid.all() else pressure[valid]))
+
+
+def _without_use(form: Format, entry: DeploymentFile) -> tuple[Action, ...]:
+    """Say which keys were given that such a file has no use for."""
+    given = [each.name for each in fields(entry) if getattr(entry, each.name) != each.default]
+    idle = [name for name in given if form not in _FORMATS.get(name, (form,))]
+    return (Action("keys without use", len(idle), f"{', '.join(idle)}: the file is {form}"),) if idle else ()

@@ -1,5 +1,6 @@
 """Pressure records in CF NetCDF: one or more stations in any layout of timeSeries."""
 
+from dataclasses import replace
 from difflib import get_close_matches
 from pathlib import Path
 from typing import Any
@@ -11,8 +12,10 @@ from numpy.typing import NDArray
 from massfit.errors import Fault, InputError, collect
 from massfit.io.deployment import DeploymentFile
 from massfit.io.netcdf import as_text, damage_as_fault, open_netcdf
-from massfit.io.samples import Samples
+from massfit.io.netcdf_flags import FlagNames, flag_names, flags_of
+from massfit.io.samples import Samples, coarse, in_pascal
 from massfit.io.units import PRESSURE_UNITS, pascal_per_unit
+from massfit.io.zones import require_utc, zone_of_text
 from massfit.records.record import Action
 
 # CF standard names, the most exact one first
@@ -22,9 +25,8 @@ _STANDARD_NAMES = (
     "sea_water_pressure_due_to_sea_water",
 )
 _STATION_NAMES = ("station", "station_id", "station_name", "site", "timeseries_id")
+_ZONE_NAMES = ("time_zone", "timezone", "time_zone_name")
 _CALENDARS = ("standard", "gregorian", "proleptic_gregorian")
-_COARSE_PA = 1.0
-"""A step of single-precision numbers above this is worth a word, Pa."""
 _UNWRITTEN = 9.0e36
 """The NetCDF library fills floats that were never written with 9.97e36."""
 _NUMBER_ATTRIBUTES = {
@@ -61,21 +63,40 @@ def read_netcdf(path: Path, entry: DeploymentFile) -> Samples:
         variable = _pressure_variable(dataset, entry)
         time = _time_variable(dataset, variable, entry)
         faults: list[Fault] = []
-        factor, indexers = np.nan, Indexers()
+        factor, indexers, flagging = np.nan, Indexers(), FlagNames()
         with collect(faults):
             factor = _pascal_factor(variable, entry)
         with collect(faults):
             indexers = _station_indexers(dataset, variable, time, entry)
+        with collect(faults):
+            flagging = flag_names(dataset, variable, entry)
+        with collect(faults):
+            require_utc(_zones(dataset, time), entry)
         if faults:
             raise InputError(faults)
         with damage_as_fault(entry.file, str(variable.name)):
             stored = variable.isel(indexers, missing_dims="ignore").values
             stamps, centred = _stamps(dataset, time.isel(indexers, missing_dims="ignore"), entry)
+            flags = [flags_of(dataset[name].isel(indexers, missing_dims="ignore"), entry) for name in flagging.used]
         _require_numbers(variable, entry)
-        pressure = _unpacked(stored, variable.attrs) * factor
+        actions = coarse(stored, factor * entry.scale_factor)
+        units = str(variable.attrs.get("units", entry.units))
+        pressure = _unpacked(stored, variable.attrs, entry, factor)
+        del stored
     known = ~np.isnat(stamps)
-    actions = _coarse(stored, factor) + _undated(known)
-    return Samples(stamps[known], pressure[known], centred, actions, str(variable.attrs.get("units", entry.units)))
+    actions += flagging.actions
+    if not known.all():
+        actions += (Action("samples without a time left out", int(np.count_nonzero(~known))),)
+        stamps, pressure = stamps[known], pressure[known]
+        flags = [replace(each, values=each.values[known]) for each in flags]
+    return Samples(stamps, pressure, centred, actions, units, tuple(flags))
+
+
+def _zones(dataset: xr.Dataset, time: xr.DataArray) -> list[tuple[str, int | None]]:
+    """Zones that the attributes name; the units of the time, which hold an offset of their own, are not among them."""
+    stated = [attributes.get(name) for attributes in (time.attrs, dataset.attrs) for name in _ZONE_NAMES]
+    said = [zone_of_text(str(time.attrs.get(name, ""))) for name in ("long_name", "comment")]
+    return [(str(zone), None) for zone in (*stated, *said) if zone]
 
 
 def _pressure_variable(dataset: xr.Dataset, entry: DeploymentFile) -> xr.DataArray:
@@ -127,6 +148,10 @@ def _time_variable(dataset: xr.Dataset, variable: xr.DataArray, entry: Deploymen
         and set(data.dims) <= set(variable.dims)
         and name not in bounds
     ]
+    if entry.time_variable is not None:
+        if entry.time_variable not in names:
+            raise InputError(_absent(entry.file, "time_variable", entry.time_variable, names))
+        names = [entry.time_variable]
     named = [name for name in names if dataset[name].attrs.get("standard_name") == "time" or name == "time"]
     names = named or names
     if len(names) != 1:
@@ -164,15 +189,11 @@ def _station_indexers(
     """Indexers that leave one axis, that of the samples of one station."""
     identity = _station_identity(dataset)
     sample = variable.dims[0]
-    for other in dataset.variables.values():
+    for name, other in dataset.variables.items():
         if other.attrs.get("sample_dimension") == sample:
-            sizes = other.values.astype(int)
-            station = _station_index(identity, sizes.size, entry)
-            stop = int(sizes[: station + 1].sum())
-            return {str(sample): slice(stop - int(sizes[station]), stop)}
+            return {str(sample): _contiguous(str(name), other, dataset.sizes[sample], identity, entry)}
         if "instance_dimension" in other.attrs and other.dims == (sample,):
-            count = dataset.sizes[other.attrs["instance_dimension"]]
-            return {str(sample): np.flatnonzero(other.values == _station_index(identity, count, entry))}
+            return {str(sample): _indexed(str(name), other, dataset, identity, entry)}
     along = time.dims if time.ndim == 1 else time.dims[-1:]
     extra = [str(dim) for dim in variable.dims if dim not in along]
     if time.ndim > 1 and identity is not None and identity.dims and identity.dims[0] == time.dims[-1]:
@@ -184,6 +205,36 @@ def _station_indexers(
         raise InputError(Fault(entry.file, str(variable.name), problem, allowed, action))
     station = _station_index(identity, dataset.sizes[wide[0]] if wide else 1, entry)
     return {dim: station if dim in wide else 0 for dim in extra}
+
+
+def _contiguous(
+    name: str, sizes: xr.Variable, samples: int, identity: xr.DataArray | None, entry: DeploymentFile
+) -> slice:
+    """Find the samples of one station of a contiguous ragged array."""
+    counts = sizes.values.astype(np.int64)
+    if counts.min(initial=0) < 0 or counts.sum() != samples:
+        problem = f"the stations have {', '.join(map(str, counts[:5].tolist()))}... samples, {counts.sum()} in all"
+        allowed = f"Must be none below 0, and {samples} in all, the length of {sizes.attrs['sample_dimension']!r}"
+        raise InputError(Fault(entry.file, name, problem, allowed, "Fetch it again, or write one file a station"))
+    station = _station_index(identity, counts.size, entry)
+    stop = int(counts[: station + 1].sum())
+    return slice(stop - int(counts[station]), stop)
+
+
+def _indexed(
+    name: str, index: xr.Variable, dataset: xr.Dataset, identity: xr.DataArray | None, entry: DeploymentFile
+) -> NDArray[np.int64]:
+    """Find the samples of one station of an indexed ragged array."""
+    stations = index.attrs["instance_dimension"]
+    if stations not in dataset.sizes:
+        problem = f"its instance_dimension {stations!r} is no dimension of the file"
+        raise InputError(Fault(entry.file, name, problem, "Must be that of the stations", "Correct the attribute"))
+    count, values = dataset.sizes[stations], index.values
+    strange = ~((values >= 0) & (values < count))
+    if strange.any():
+        problem = f"{np.count_nonzero(strange)} samples are of no station, the first of {values[strange][0]}"
+        raise InputError(Fault(entry.file, name, problem, f"Must be within [0, {count - 1}]", "Fetch it again"))
+    return np.flatnonzero(values == _station_index(identity, count, entry))
 
 
 def _station_identity(dataset: xr.Dataset) -> xr.DataArray | None:
@@ -250,9 +301,11 @@ def _require_numbers(variable: xr.DataArray, entry: DeploymentFile) -> None:
         raise InputError(faults)
 
 
-def _unpacked(stored: NDArray[Any], attributes: dict[str, Any]) -> NDArray[np.float64]:
-    """Packed numbers as float64, with NaN for everything the attributes call invalid."""
-    bad = ~(np.abs(stored.astype(np.float64)) < _UNWRITTEN)
+def _unpacked(
+    stored: NDArray[Any], attributes: dict[str, Any], entry: DeploymentFile, factor: float
+) -> NDArray[np.float64]:
+    """Packed numbers as Pa, with NaN for everything the attributes call invalid."""
+    bad = ~(np.abs(stored) < _UNWRITTEN) if stored.dtype.kind == "f" else np.zeros(stored.shape, dtype=bool)
     for key in ("_FillValue", "missing_value"):
         if key in attributes:
             bad |= np.isin(stored, np.asarray(attributes[key], dtype=stored.dtype))
@@ -262,23 +315,8 @@ def _unpacked(stored: NDArray[Any], attributes: dict[str, Any]) -> NDArray[np.fl
         bad |= stored < low
     if high is not None:
         bad |= stored > high
-    scale, offset = attributes.get("scale_factor", 1.0), attributes.get("add_offset", 0.0)
-    values = stored.astype(np.float64) * float(scale) + float(offset)
-    return np.where(bad, np.nan, values)
-
-
-def _coarse(stored: NDArray[Any], factor: float) -> tuple[Action, ...]:
-    if stored.dtype != np.float32 or not np.isfinite(stored).any():
-        return ()
-    # the largest magnitude that is a pressure and no fill value
-    valid = stored[np.abs(stored) < 1.0e9]
-    step = float(np.spacing(np.abs(valid).max(initial=0.0).astype(np.float32))) * factor
-    if step <= _COARSE_PA:
-        return ()
-    detail = f"single-precision numbers of this size resolve {step:.1f} Pa only"
-    return (Action("resolution is limited", int(valid.size), detail),)
-
-
-def _undated(known: NDArray[np.bool_]) -> tuple[Action, ...]:
-    count = int(np.count_nonzero(~known))
-    return (Action("samples without a time left out", count),) if count else ()
+    scale, offset = float(attributes.get("scale_factor", 1.0)), float(attributes.get("add_offset", 0.0))
+    unpacked = stored if (scale, offset) == (1.0, 0.0) else stored.astype(np.float64) * scale + offset
+    values = in_pascal(unpacked, entry, factor)
+    values[bad] = np.nan
+    return values

@@ -1,13 +1,11 @@
 """Pressure records in text: columns of numbers and a time in one column or in parts."""
 
-from collections.abc import Iterator
+from collections import Counter
 from csv import QUOTE_NONE
-from dataclasses import dataclass
-from difflib import get_close_matches
-from io import StringIO
-from itertools import islice
+from dataclasses import dataclass, field
+from io import BytesIO
 from pathlib import Path
-from typing import TextIO
+from typing import TypeVar
 
 import numpy as np
 import pandas as pd
@@ -15,48 +13,49 @@ from numpy.typing import NDArray
 
 from massfit.errors import Fault, InputError, collect
 from massfit.io.deployment import DeploymentFile
-from massfit.io.samples import Samples
-from massfit.io.text_time import DATE_PARTS, joined_date, line_fault, needed_parts, parsed_time
+from massfit.io.samples import Flags, Samples, in_pascal
+from massfit.io.stated_time import stated_time
+from massfit.io.text_blocks import Block, text_blocks
+from massfit.io.text_layout import KIND, TextLayout, no_row_fault, text_layout
+from massfit.io.text_stamps import Stamps, fixed_iso, stamps_of
+from massfit.io.text_time import joined_date, line_fault, merged_faults
 from massfit.io.units import pascal_per_unit
 from massfit.records.record import Action
 
-_CHUNK_LINES = 500_000
-_LONGEST_LINE = 100_000  # characters; a file without ends of lines must not fill the memory
-_KIND = "kind"
-_PRESSURE = "pressure"
+_T = TypeVar("_T", bound=np.generic)
+
+_SIXTIES = "seconds of 60 read as the next minute"
+_SHIFTED = "times with an offset from UTC brought to UTC"
 
 
-@dataclass(frozen=True)
-class _Layout:
-    """Which column means what.
+@dataclass
+class _Found:
+    """What the blocks of a file gave so far.
 
     Parameters
     ----------
-    names : tuple of str
-        Every column, in order.
-    pressure : str
-    date : tuple of str
-        Parts of the date that have a column; empty where `time` is not.
-    time : tuple of str
-        Columns of the time, joined by a space.
-    header_line : int
-        Last line of the header, counted from 1; 0 where there is none.
+    time, pressure, flags, rows : list of array
+        One array a block; rows is counted from the first row of data.
+    faults : list of Fault
+    counts : Counter of str
+        Rows concerned, by action.
+    seen : int
+        Rows of the right number of fields.
     """
 
-    names: tuple[str, ...]
-    pressure: str
-    date: tuple[str, ...]
-    time: tuple[str, ...]
-    header_line: int
-
-    @property
-    def used(self) -> list[str]:
-        wanted = {self.pressure, *self.date, *self.time, _KIND}
-        return [name for name in self.names if name in wanted]
+    time: list[NDArray[np.datetime64]] = field(default_factory=list)
+    pressure: list[NDArray[np.float64]] = field(default_factory=list)
+    flags: list[NDArray[np.float64]] = field(default_factory=list)
+    rows: list[NDArray[np.int64]] = field(default_factory=list)
+    faults: list[Fault] = field(default_factory=list)
+    counts: Counter[str] = field(default_factory=Counter)
+    seen: int = 0
 
 
 def read_text_record(path: Path, entry: DeploymentFile) -> Samples:
     """Read a text file of one record.
+
+    The file is read block by block, so that a long one takes little more memory than its numbers.
 
     Parameters
     ----------
@@ -75,31 +74,28 @@ def read_text_record(path: Path, entry: DeploymentFile) -> Samples:
         With every fault: of the settings first, then one a kind of damaged line,
         with the first line number and how many follow.
     """
-    with path.open(encoding="utf-8-sig", errors="replace") as file:
-        layout, factor = _prepared(file, entry)
-        file.seek(0)
-        table, faults = _table(file, layout, entry)
-    lines = table.index.to_numpy()
-    actions: tuple[Action, ...] = ()
-    if entry.keep_kinds is not None:
-        kept = table[_KIND].str.strip().isin(entry.keep_kinds).to_numpy()
-        table, lines = table[kept], lines[kept]
-        actions = (_other_kinds(kept, entry.keep_kinds),)
-    with collect(faults):
-        pressure = _numbers(table[layout.pressure], entry.file)
-    with collect(faults):
-        time = _time(table, layout, entry)
-    if faults:
-        raise InputError(faults)
-    pressure[np.isin(pressure, entry.missing)] = np.nan
-    return Samples(time, pressure * factor, actions=actions, units=entry.units or "")
+    layout, factor = _prepared(path, entry)
+    found = _Found()
+    blocks = text_blocks(
+        path, width=len(layout.names), delimiter=entry.delimiter, comment=entry.comment,
+        header_line=layout.header_line, source=entry.file,
+    )  # fmt: skip
+    for block in blocks:
+        _take(found, block, layout, entry, factor)
+    if found.faults or not found.seen:
+        raise InputError(merged_faults([*found.faults, *([] if found.seen else [no_row_fault(entry)])]))
+    pressure = _joined(found.pressure, np.dtype(np.float64))
+    flags = (Flags(layout.flag, _joined(found.flags, np.dtype(np.float64))),) if layout.flag else ()
+    if entry.start_time is not None:
+        time = stated_time(found.seen, entry)
+        rows = _joined(found.rows, np.dtype(np.int64))
+        time = time if rows.size == found.seen else time[rows]
+    else:
+        time = _joined(found.time, np.dtype("datetime64[ns]"))
+    return Samples(time, pressure, actions=_actions(found, entry), units=entry.units or "", flags=flags)
 
 
-def _other_kinds(kept: NDArray[np.bool_], kinds: tuple[str, ...]) -> Action:
-    return Action("rows of other kinds left out", int(np.count_nonzero(~kept)), f"kept: {', '.join(kinds)}")
-
-
-def _prepared(file: TextIO, entry: DeploymentFile) -> tuple[_Layout, float]:
+def _prepared(path: Path, entry: DeploymentFile) -> tuple[TextLayout, float]:
     faults: list[Fault] = []
     factor = np.nan
     if entry.units is None:
@@ -108,180 +104,99 @@ def _prepared(file: TextIO, entry: DeploymentFile) -> tuple[_Layout, float]:
     else:
         with collect(faults):
             factor = pascal_per_unit(entry.units, density_kg_m3=entry.density_kg_m3, source=entry.file)
-    with collect(faults):
-        layout = _layout(file, entry)
+    with collect(faults), path.open(encoding="utf-8-sig", errors="replace") as file:
+        layout = text_layout(file, entry)
     if faults:
         raise InputError(faults)
     return layout, factor
 
 
-def _layout(file: TextIO, entry: DeploymentFile) -> _Layout:
-    rows = _rows(file, entry)
-    number, fields = _first_row(rows, entry)
-    header_line = 0
-    names = entry.columns
-    if names is not None:
-        # a row without any number above the first that has one names columns and units, or holds no value
-        while not any(_is_number(field) for field in fields):
-            header_line = number
-            number, fields = _first_row(rows, entry)
-    else:
-        if any(_is_number(field) for field in fields):
-            problem = f"no header line: the first row is {fields}"
-            action = 'State `columns`, for example columns = ["time", "pressure"]'
-            raise InputError(Fault(entry.file, "columns", problem, action=action, line=number))
-        names, header_line = tuple(fields), number
-    faults = _name_faults(names, fields, number, entry)
-    if faults:
-        raise InputError(faults)
-    date = tuple(part for part in DATE_PARTS if part in names) if entry.time_column is None else ()
-    time = () if date else _time_columns(names, entry)
-    pressure = entry.variable or _sole_pressure(names, time)
-    wanted = [*(("time_column", name) for name in time), ("variable", pressure)]
-    wanted += [("keep_kinds", _KIND)] if entry.keep_kinds is not None else []
-    wanted += [("columns", part) for part in needed_parts(names) if date]
-    faults = [_no_column(entry.file, key, name, names) for key, name in wanted if name not in names]
-    if faults:
-        raise InputError(faults)
-    return _Layout(names, pressure, date, time, header_line)
+def _actions(found: _Found, entry: DeploymentFile) -> tuple[Action, ...]:
+    details = {_SIXTIES: "a leap second, or rounding", _SHIFTED: "as each of them says"}
+    actions = [Action(what, count, details[what]) for what, count in found.counts.items() if what in details and count]
+    if entry.keep_kinds is not None:
+        kept = f"kept: {', '.join(entry.keep_kinds)}"
+        actions.insert(0, Action("rows of other kinds left out", found.counts["other kinds"], kept))
+    return tuple(actions)
 
 
-def _rows(file: TextIO, entry: DeploymentFile) -> Iterator[tuple[int, list[str]]]:
-    """Line numbers and fields of the rows that are no comments."""
-    for number, line in enumerate(_lines(file, entry.file), start=1):
-        if _is_data(line, entry.comment):
-            yield number, [field.strip().strip('"') for field in line.rstrip("\r\n").split(entry.delimiter)]
+def _joined(parts: list[NDArray[_T]], dtype: "np.dtype[_T]") -> NDArray[_T]:
+    """Join arrays and let go of them."""
+    whole = np.concatenate(parts) if parts else np.empty(0, dtype=dtype)
+    parts.clear()
+    return whole
 
 
-def _first_row(rows: Iterator[tuple[int, list[str]]], entry: DeploymentFile) -> tuple[int, list[str]]:
-    for row in rows:
-        return row
-    raise InputError(_no_row(entry))
+def _take(found: _Found, block: Block, layout: TextLayout, entry: DeploymentFile, factor: float) -> None:
+    """Add what a block of rows holds."""
+    if block.ragged.size:
+        bad = np.zeros(block.ragged.size, dtype=bool)
+        allowed = f"Must be {len(layout.names)}"
+        found.faults.append(line_fault(entry.file, "fields in the row", block.counts, bad, block.ragged, allowed))
+    if not block.lines.size:
+        return
+    time = _fixed_times(block, layout, entry)
+    table = _parsed(block, [name for name in layout.used if time is None or name not in layout.time], layout, entry)
+    rows, found.seen = np.arange(found.seen, found.seen + block.lines.size), found.seen + block.lines.size
+    if entry.keep_kinds is not None:
+        kept = _of_kinds(table[KIND], entry.keep_kinds)
+        found.counts["other kinds"] += int(np.count_nonzero(~kept))
+        table, rows, time = table[kept], rows[kept], None if time is None else time[kept]
+    with collect(found.faults):
+        found.pressure.append(in_pascal(_numbers(table[layout.pressure], entry.file), entry, factor))
+    if layout.flag:
+        with collect(found.faults):
+            found.flags.append(_whole_numbers(table[layout.flag], entry.file))
+    if entry.start_time is not None:
+        found.rows.append(rows)
+        return
+    with collect(found.faults):
+        stamps = Stamps(time) if time is not None else _time(table, layout, entry)
+        found.time.append(stamps.time)
+        found.counts.update({_SHIFTED: stamps.shifted, _SIXTIES: stamps.sixties})
 
 
-def _lines(file: TextIO, source: str) -> Iterator[str]:
-    number = 0
-    while line := file.readline(_LONGEST_LINE):
-        number += 1
-        if len(line) == _LONGEST_LINE and not line.endswith("\n"):
-            problem = f"the line has {_LONGEST_LINE} characters or more"
-            raise InputError(Fault(source, "", problem, "Must be rows of a few numbers", "Check the file", number))
-        yield line
+def _fixed_times(block: Block, layout: TextLayout, entry: DeploymentFile) -> NDArray[np.datetime64] | None:
+    """Read times in one column of one plain form without making text of each; None where it takes more than that."""
+    if block.starts is None or block.ends is None or len(layout.time) != 1 or entry.time_format not in (None, "iso"):
+        return None
+    column = layout.names.index(layout.time[0])
+    starts, lengths = block.starts[:, column], (block.ends - block.starts)[:, column]
+    if lengths.min() != lengths.max():
+        return None
+    return fixed_iso(np.frombuffer(block.text, dtype=np.uint8), starts, int(lengths[0]))
 
 
-def _no_row(entry: DeploymentFile) -> Fault:
-    return Fault(entry.file, "", "the file has no row of data", action="Check the file and `comment`")
-
-
-def _is_data(line: str, comment: str) -> bool:
-    text = line.strip()
-    return bool(text) and not (comment and text.startswith(comment))
-
-
-def _is_number(field: str) -> bool:
-    try:
-        float(field)
-    except ValueError:
-        return False
-    return True
-
-
-def _name_faults(names: tuple[str, ...], fields: list[str], line: int, entry: DeploymentFile) -> list[Fault]:
-    used = [name for name in names if names.count(name) > 1 and name in (*DATE_PARTS, _KIND, _PRESSURE)]
-    faults = [
-        Fault(entry.file, "columns", f"{name!r} stands for more than one column", "Must be unique", "Rename one")
-        for name in dict.fromkeys(used)
-    ]
-    marks = [mark for mark in (",", ";", "\t") if mark in " ".join(fields)]
-    if entry.delimiter is None and marks and len(fields) <= len(names):
-        action = f"State `delimiter`, for example delimiter = {marks[0]!r}"
-        problem = f"columns are split at white space, but the row holds {marks[0]!r}"
-        return [*faults, Fault(entry.file, "delimiter", problem, action=action, line=line)]
-    if len(fields) != len(names):
-        problem = f"the row has {len(fields)} fields and `columns` names {len(names)}"
-        faults.append(Fault(entry.file, "columns", problem, "Must agree", "Name every column in order", line))
-    return faults
-
-
-def _time_columns(names: tuple[str, ...], entry: DeploymentFile) -> tuple[str, ...]:
-    """Columns of the time: one, or several whose names `time_column` lists with spaces between."""
-    column = entry.time_column or "time"
-    parts = tuple(column.split())
-    return parts if column not in names and len(parts) > 1 else (column,)
-
-
-def _sole_pressure(names: tuple[str, ...], time: tuple[str, ...]) -> str:
-    """Name the column called pressure, or the only one without another meaning."""
-    others = [name for name in names if name not in (*DATE_PARTS, _KIND, *time)]
-    return others[0] if len(others) == 1 and _PRESSURE not in names else _PRESSURE
-
-
-def _no_column(source: str, key: str, name: str, names: tuple[str, ...]) -> Fault:
-    near = get_close_matches(name, names, n=1)
-    keys = " or ".join(f"`{each}`" for each in dict.fromkeys((key, "columns")))
-    action = f"Did you mean {near[0]!r}?" if near else f"State {keys}"
-    return Fault(source, key, f"there is no column {name!r}", f"The columns are {', '.join(names)}", action)
-
-
-def _table(file: TextIO, layout: _Layout, entry: DeploymentFile) -> tuple[pd.DataFrame, list[Fault]]:
-    """Columns that are used, indexed by line number, and the faults of ragged lines."""
-    parts: list[pd.DataFrame] = []
-    ragged: list[tuple[int, int]] = []
-    for numbers, lines in _chunks(file, layout, entry):
-        counts = _field_counts(lines, entry.delimiter)
-        good = counts == len(layout.names)
-        ragged += zip(numbers[~good].tolist(), counts[~good].tolist(), strict=True)
-        fitting = lines if good.all() else [line for line, fits in zip(lines, good, strict=True) if fits]
-        if fitting:
-            parts.append(_parsed(fitting, numbers[good], layout, entry))
-    faults = []
-    if ragged:
-        lines, counts = np.array(ragged).T
-        bad = np.zeros(lines.size, dtype=bool)
-        faults.append(line_fault(entry.file, "fields in the row", counts, bad, lines, f"Must be {len(layout.names)}"))
-    if not parts:
-        raise InputError([*faults, _no_row(entry)])
-    return pd.concat(parts), faults
-
-
-def _chunks(file: TextIO, layout: _Layout, entry: DeploymentFile) -> Iterator[tuple[NDArray[np.int64], list[str]]]:
-    """Numbers and texts of the rows of data, a bounded number of lines at a time."""
-    numbered = enumerate(_lines(file, entry.file), start=1)
-    while block := list(islice(numbered, _CHUNK_LINES)):
-        rows = [row for row in block if row[0] > layout.header_line and _is_data(row[1], entry.comment)]
-        yield np.array([number for number, _ in rows], dtype=np.int64), [line for _, line in rows]
-
-
-def _field_counts(lines: list[str], delimiter: str | None) -> NDArray[np.int64]:
-    if delimiter is None:
-        return np.fromiter((len(line.split()) for line in lines), dtype=np.int64, count=len(lines))
-    return np.fromiter((line.count(delimiter) + 1 for line in lines), dtype=np.int64, count=len(lines))
-
-
-def _parsed(lines: list[str], numbers: NDArray[np.int64], layout: _Layout, entry: DeploymentFile) -> pd.DataFrame:
+def _parsed(block: Block, used: list[str], layout: TextLayout, entry: DeploymentFile) -> pd.DataFrame:
     # names may repeat among the columns that are not used
-    positions = [layout.names.index(name) for name in layout.used]
-    texts = [position for position in positions if layout.names[position] in (_KIND, *layout.time)]
-    # a quote that is never closed would swallow lines
-    text = "".join(line if line.endswith("\n") else line + "\n" for line in lines).replace('"', "")
+    positions = [layout.names.index(name) for name in used]
+    texts = [position for position in positions if layout.names[position] in layout.time]
+    kinds = [position for position in positions if layout.names[position] == KIND]
+    types: dict[int, str] = dict.fromkeys(texts, "str") | dict.fromkeys(kinds, "category")
     try:
-        table = pd.read_csv(
-            StringIO(text),
+        table: pd.DataFrame = pd.read_csv(
+            BytesIO(block.text),
             sep=r"\s+" if entry.delimiter is None else entry.delimiter,
             header=None,
             usecols=positions,
-            dtype=dict.fromkeys(texts, str),
+            dtype=types,
             skipinitialspace=True,
             skip_blank_lines=False,
             quoting=QUOTE_NONE,
             low_memory=False,
             engine="c",
         )
-        table.columns = pd.Index(layout.used)
-        return table.set_index(pd.Index(numbers))
+        table.columns = pd.Index([layout.names[position] for position in sorted(positions)])
+        return table.set_index(pd.Index(block.lines))
     except ValueError as error:
         problem = f"the rows cannot be parsed ({str(error).splitlines()[0]})"
-        raise InputError(Fault(entry.file, "", problem, "Must be plain text", line=int(numbers[0]))) from error
+        raise InputError(Fault(entry.file, "", problem, "Must be plain text", line=int(block.lines[0]))) from error
+
+
+def _of_kinds(kinds: "pd.Series[str]", kept: tuple[str, ...]) -> NDArray[np.bool_]:
+    wanted = [str(kind).strip() in kept for kind in kinds.cat.categories]
+    codes = kinds.cat.codes.to_numpy()
+    return np.asarray(np.append(wanted, False)[codes])  # -1, a kind that is missing, is the last
 
 
 def _numbers(column: "pd.Series[float]", source: str) -> NDArray[np.float64]:
@@ -294,13 +209,23 @@ def _numbers(column: "pd.Series[float]", source: str) -> NDArray[np.float64]:
     return values
 
 
-def _time(table: pd.DataFrame, layout: _Layout, entry: DeploymentFile) -> NDArray[np.datetime64]:
+def _whole_numbers(column: "pd.Series[float]", source: str) -> NDArray[np.float64]:
+    """Turn a column of flags into float64: whole numbers, or empty."""
+    values = _numbers(column, source)
+    good = np.isnan(values) | (values == np.floor(values))
+    if not good.all():
+        lines = column.index.to_numpy()
+        raise InputError(line_fault(source, str(column.name), values, good, lines, "Must be a whole number, or empty"))
+    return values
+
+
+def _time(table: pd.DataFrame, layout: TextLayout, entry: DeploymentFile) -> Stamps:
     lines = table.index.to_numpy()
     if layout.time:
         texts = table[layout.time[0]]
         for name in layout.time[1:]:
             texts = texts + " " + table[name]
-        return parsed_time(texts, entry.time_format or "iso", lines, source=entry.file, name=" ".join(layout.time))
+        return stamps_of(texts, lines, entry, name=" ".join(layout.time))
     faults: list[Fault] = []
     parts: dict[str, NDArray[np.float64]] = {}
     for part in layout.date:
@@ -308,4 +233,5 @@ def _time(table: pd.DataFrame, layout: _Layout, entry: DeploymentFile) -> NDArra
             parts[part] = _numbers(table[part], entry.file)
     if faults:
         raise InputError(faults)
-    return joined_date(parts, lines, source=entry.file)
+    sixties = int(np.count_nonzero(parts["second"] >= 60.0)) if "second" in parts else 0
+    return Stamps(joined_date(parts, lines, source=entry.file), sixties=sixties)

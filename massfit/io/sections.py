@@ -191,14 +191,21 @@ def _reduced_elsewhere(reading: Reading, path: KeyPath, table: dict[str, Any], f
 
 
 def _deployment(table: dict[str, Any]) -> dict[str, Any]:
-    """Write out the shorthands of a deployment: one missing value, dates among the steps."""
+    """Write out the shorthands of a deployment: one missing value, dates for instants."""
     out = dict(table)
     missing, steps = out.get("missing"), out.get("steps")
     if isinstance(missing, int | float) and not isinstance(missing, bool):
         out["missing"] = [missing]
     if isinstance(steps, list):
-        out["steps"] = [datetime.combine(step, time()) if type(step) is date else step for step in steps]
+        out["steps"] = [_instant(step) for step in steps]
+    if "start_time" in out:
+        out["start_time"] = _instant(out["start_time"])
     return out
+
+
+def _instant(value: Any) -> Any:
+    """Write out a date as its first instant."""
+    return datetime.combine(value, time()) if type(value) is date else value
 
 
 def _gravity(reading: Reading) -> None:

@@ -1,7 +1,8 @@
 """UTC times from text columns: a date in parts, a format, ISO 8601, or counts since a date."""
 
 import re
-from collections.abc import Collection
+from collections.abc import Collection, Iterable
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -13,6 +14,10 @@ from massfit.errors import Fault, InputError
 DATE_PARTS = ("year", "month", "day", "hour", "minute", "second", "day_of_year")
 """Column names of a date in parts."""
 
+DATENUM = "datenum"
+"""MATLAB's count of days; the number of 1 January 1970 is 719529 (MATLAB documentation of datenum)."""
+
+_DATENUM_1970 = 719_529.0
 _YEARS = (1900, 2200)
 _CLOCK = {"hour": (0, 23), "minute": (0, 59), "second": (0, 60)}
 _BOUNDS = {"year": _YEARS, "month": (1, 12), "day": (1, 31), "day_of_year": (1, 367), **_CLOCK}
@@ -32,6 +37,27 @@ def needed_parts(names: Collection[str]) -> tuple[str, ...]:
     return ("year", "day_of_year") if "day_of_year" in names else DATE_PARTS[:3]
 
 
+@dataclass(frozen=True)
+class LineFault(Fault):
+    """One fault for all bad values of a column: the first, its line, and how many follow.
+
+    Parameters
+    ----------
+    value : str
+        The first, as it is shown.
+    count : int
+        How many there are.
+    """
+
+    value: str = ""
+    count: int = 1
+
+    def and_more(self, count: int) -> "LineFault":
+        """Tell the same of more lines."""
+        count += self.count
+        return replace(self, count=count, problem=f"the value is {self.value} (and {count - 1} more lines)")
+
+
 def line_fault(
     source: str,
     name: str,
@@ -40,8 +66,8 @@ def line_fault(
     lines: NDArray[np.int64],
     allowed: str,
     action: str = "Correct it",
-) -> Fault:
-    """One fault for all bad values of a column: the first, its line, and how many follow.
+) -> LineFault:
+    """One fault for all bad values of a column.
 
     Parameters
     ----------
@@ -57,13 +83,36 @@ def line_fault(
 
     Returns
     -------
-    Fault
+    LineFault
     """
     bad = np.flatnonzero(~good)
     value = values[bad[0]]
     shown = repr(value) if isinstance(value, str) else f"{value:g}"
-    more = f" (and {bad.size - 1} more lines)" if bad.size > 1 else ""
-    return Fault(source, name, f"the value is {shown}{more}", allowed, action, int(lines[bad[0]]))
+    fault = LineFault(source, name, f"the value is {shown}", allowed, action, int(lines[bad[0]]), shown)
+    return fault.and_more(bad.size - 1) if bad.size > 1 else fault
+
+
+def merged_faults(faults: Iterable[Fault]) -> list[Fault]:
+    """Join the faults of one kind that were found in several blocks of lines.
+
+    Parameters
+    ----------
+    faults : iterable of Fault
+        In the order of the file.
+
+    Returns
+    -------
+    list of Fault
+    """
+    kinds: dict[tuple[str, str, str], Fault] = {}
+    for fault in faults:
+        kind = (fault.name, fault.allowed, fault.action)
+        first = kinds.get(kind)
+        if isinstance(first, LineFault) and isinstance(fault, LineFault):
+            kinds[kind] = first.and_more(fault.count)
+        else:
+            kinds.setdefault(kind, fault)
+    return list(kinds.values())
 
 
 def joined_date(
@@ -148,10 +197,8 @@ def parsed_time(
     InputError
         With the first text that cannot be read, its line, and how many follow.
     """
-    since = _SINCE.fullmatch(time_format)
-    if since:
-        _require_date(since[2], time_format, source)
-        time = _counted(pd.to_numeric(texts, errors="coerce").to_numpy(dtype=float), since[1], since[2])
+    if is_count(time_format):
+        time = counted_time(pd.to_numeric(texts, errors="coerce").to_numpy(dtype=float), time_format, source=source)
         allowed = f"Must be a number of {time_format}"
     else:
         if time_format != "iso" and "%Y" not in time_format and "%y" not in time_format:
@@ -174,12 +221,54 @@ def parsed_time(
     return time
 
 
-def _require_date(text: str, time_format: str, source: str) -> None:
+def is_count(time_format: str) -> bool:
+    """Whether a format is a count of time, such as "days since 1950-01-01".
+
+    Examples
+    --------
+    >>> is_count("hours since 2000-01-01 00:00"), is_count("datenum"), is_count("iso")
+    (True, True, False)
+    """
+    return time_format == DATENUM or _SINCE.fullmatch(time_format) is not None
+
+
+def counted_time(count: NDArray[np.float64], time_format: str, *, source: str) -> NDArray[np.datetime64]:
+    """UTC times from counts of time, rounded to the millisecond.
+
+    Parameters
+    ----------
+    count : (n,) array
+    time_format : str
+        Like "days since 1950-01-01"; or "datenum", MATLAB's count of days, in which 719529 is 1 January 1970.
+    source : str
+        File, for the fault.
+
+    Returns
+    -------
+    (n,) array of datetime64[ns]
+        NaT outside the years that are read, 1900 to 2200.
+
+    Raises
+    ------
+    InputError
+        The format counts from no date.
+
+    Examples
+    --------
+    >>> str(counted_time(np.array([719529.5]), "datenum", source="a.mat")[0])[:13]
+    '1970-01-01T12'
+    """
+    if time_format == DATENUM:
+        return _counted(count - _DATENUM_1970, "days", "1970-01-01")
+    since = _SINCE.fullmatch(time_format)
     try:
-        np.datetime64(text, "ms")
+        if since is None:
+            raise ValueError(f'"{time_format}" names no unit and date')
+        np.datetime64(since[2], "ms")
     except ValueError as error:
         problem = f"{time_format!r} counts from no date ({error})"
         raise InputError(Fault(source, "time_format", problem, "Must be like 'days since 1950-01-01'")) from error
+    return _counted(count, since[1], since[2])
 
 
 def _counted(count: NDArray[np.float64], unit: str, origin: str) -> NDArray[np.datetime64]:

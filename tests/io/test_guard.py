@@ -8,7 +8,7 @@ from pathlib import Path
 import h5py
 import pytest
 
-from massfit.io import guard, hdf5_examiner
+from massfit.io import file_examiner, guard
 from massfit.io.guard import Guard
 
 # answers like the examiner, but a file may be named after what it does to a library
@@ -55,9 +55,9 @@ def test_the_examiner_sets_a_watchdog_for_every_file(
     h5py.File(tmp_path / "a.nc", "w").close()
     seconds: list[float] = []
     monkeypatch.setattr(faulthandler, "dump_traceback_later", lambda wait, **_: seconds.append(wait))
-    monkeypatch.setattr(hdf5_examiner, "_bound_memory", lambda: None)
+    monkeypatch.setattr(file_examiner, "_bound_memory", lambda: None)
     monkeypatch.setattr("sys.stdin", io.StringIO(2 * (json.dumps(str(tmp_path / "a.nc")) + "\n")))
-    hdf5_examiner.main()
+    file_examiner.main()
     assert capsys.readouterr().out == 'ready\n""\n""\n'
     assert len(seconds) == 2
-    assert min(seconds) > hdf5_examiner.SECONDS
+    assert min(seconds) > file_examiner.SECONDS

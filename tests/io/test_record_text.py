@@ -162,15 +162,6 @@ def test_faults_say_what_to_do(tmp_path: Path, text: str, entry: dict[str, Any],
     assert expected in fault
 
 
-def test_chunks_join_without_a_seam(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    text = "time pressure\n" + "".join(f"2016-01-01T00:{minute:02d} {minute}\n" for minute in range(60))
-    whole = read(tmp_path, text)
-    monkeypatch.setattr("massfit.io.record_text._CHUNK_LINES", 7)
-    parts = read(tmp_path, text)
-    np.testing.assert_array_equal(parts.time, whole.time)
-    np.testing.assert_array_equal(parts.pressure, whole.pressure)
-
-
 def test_stamps_move_by_half_of_their_own_interval() -> None:
     # hourly, then 15 min, with a gap and in falling order
     start = np.array(["2016-01-02T00:15", "2016-01-02T00:00", "2016-01-01T02:00", "2016-01-01T01:00"], "datetime64[ns]")

@@ -1,4 +1,4 @@
-"""Examine HDF5 files in a process of its own, which damaged ones may crash, stall or fill.
+"""Examine HDF5 and MATLAB files in a process of its own, which damaged ones may crash, stall or fill.
 
 Run as a script by `guard.py`: it imports nothing of the package, says "ready", takes a path on each
 line of its input (as JSON) and answers each with one line: "" or what is wrong, as JSON.
@@ -14,6 +14,10 @@ from typing import Any
 
 import h5netcdf
 import h5py
+
+MATLAB_START = b"MATLAB "
+MATLAB_NUMBERS = ("int8", "uint8", "int16", "uint16", "int32", "uint32", "int64", "uint64", "single", "double")
+HDF5_START, HDF5_PLACE_IN_MATLAB = b"\x89HDF", 512
 
 MOST_VALUES = 2**26
 """Most values along one axis; two years of samples, one a second."""
@@ -42,20 +46,43 @@ def problem_of(path: str) -> str:
         What is wrong with it; empty when nothing is.
     """
     try:
-        with h5py.File(path, "r") as file:
-            found: list[str] = []
-            file.visititems_links(lambda name, link: _note(found, name, link))
-            file.visititems(lambda name, item: _note(found, name, item))
-            list(file.attrs.items())
-            if found:
-                return found[0]
-        # what the reader does when it opens the file
-        with h5netcdf.File(path, "r") as file:
-            for variable in file.variables.values():
-                _ = variable.dimensions, variable.shape, variable.dtype
-                list(variable.attrs.items())
+        with open(path, "rb") as stream:
+            start = stream.read(HDF5_PLACE_IN_MATLAB + 4)
+        matlab = start.startswith(MATLAB_START)
+        if matlab and not start.endswith(HDF5_START):
+            return _matlab_problem(path)
+        return _hdf5_problem(path) or ("" if matlab else _netcdf_problem(path))
     except Exception as error:
         return f"it is damaged: {_short(error)}"
+
+
+def _hdf5_problem(path: str) -> str:
+    with h5py.File(path, "r") as file:
+        found: list[str] = []
+        file.visititems_links(lambda name, link: _note(found, name, link))
+        file.visititems(lambda name, item: _note(found, name, item))
+        list(file.attrs.items())
+        return found[0] if found else ""
+
+
+def _netcdf_problem(path: str) -> str:
+    """Do what the reader does when it opens the file."""
+    with h5netcdf.File(path, "r") as file:
+        for variable in file.variables.values():
+            _ = variable.dimensions, variable.shape, variable.dtype
+            list(variable.attrs.items())
+    return ""
+
+
+def _matlab_problem(path: str) -> str:
+    """Read the numbers of a file of MATLAB 5 to 7."""
+    from scipy.io import loadmat, whosmat  # takes a while, and most networks have no such file
+
+    listed = whosmat(path)
+    for name, shape, _ in listed:
+        if prod(shape) > MOST_VALUES:
+            return f"{name!r} has {prod(shape)} values; at most {MOST_VALUES} are read"
+    loadmat(path, variable_names=[name for name, _, kind in listed if kind in MATLAB_NUMBERS])
     return ""
 
 
