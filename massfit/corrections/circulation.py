@@ -287,8 +287,6 @@ def _distance_notes(sites: Sequence[Site], nearby: Stencil) -> list[str]:
     for site, distance in zip(sites, nearby.distance_km, strict=True):
         if distance > NEAREST_WITHIN_KM:
             notes.append(f"has no wet cell within {NEAREST_WITHIN_KM:.0f} km of {site.id}")
-        elif distance > 0.0:
-            notes.append(f"uses the nearest wet cell, {distance:.0f} km from {site.id}")
     return notes
 
 

@@ -104,6 +104,11 @@ def _circulation(
                 f"{model.name}: covers {100 * covered[index]:.0f} % of the days of {site.id} and is left out there; to "
                 f"use it, give the rest of it, or a window that it covers to {100 * LEAST_COVERED:.0f} %"
             )
+    notes += [
+        f"{model.name}: uses the nearest wet cell, {distance / 1000.0:.0f} km from {site.id}"
+        for model, there, distance in zip(circulation, present, _distances(site, circulation), strict=True)
+        if there and distance > 0.0
+    ]
     if circulation and not present.any():
         notes.append(f"no circulation model covers {site.id}: circulation is part of its noise; give one that does")
     return values, present, notes

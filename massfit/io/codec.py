@@ -10,6 +10,7 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
+from massfit.annual.diagnostics import DriftCurve, ResidualSpectrum, SiteDiagnostics, Whiteness, YearPhasor
 from massfit.annual.fit import DriftFit, NoiseFit, SiteFit
 from massfit.annual.fit import Estimate as NumberEstimate
 from massfit.annual.noise import NoiseModel
@@ -23,8 +24,9 @@ from massfit.site import Interval, Site
 CLASSES: dict[str, type] = {
     f"{kind.__module__}.{kind.__qualname__}": kind
     for kind in (
-        Action, Convergence, CorrectionPhasor, DailyRecord, DriftFit, Interval, NoiseFit, NoiseModel, NumberEstimate,
-        ScalePosterior, Site, SiteFit, SiteReduction, TidalConstant,
+        Action, Convergence, CorrectionPhasor, DailyRecord, DriftCurve, DriftFit, Interval, NoiseFit, NoiseModel,
+        NumberEstimate, ResidualSpectrum, ScalePosterior, Site, SiteDiagnostics, SiteFit, SiteReduction, TidalConstant,
+        Whiteness, YearPhasor,
     )
 }  # fmt: skip
 """The only classes that are written and read."""

@@ -5,9 +5,9 @@ from dataclasses import replace
 from datetime import date
 from typing import Any
 
+from massfit.annual.cautions import QUIET_SD
 from massfit.constants import PASCAL_PER_HPA
 from massfit.network import Network, ReducedSite
-from massfit.posterior.summary import QUIET_SD
 from massfit.records.daily import TIDES_LEFT
 from massfit.results.assumptions import stated_assumptions
 from massfit.results.correction_tables import correction_table

@@ -54,7 +54,7 @@ class SiteStage:
     phasors: xr.Dataset
 
 
-def site_stage(network: Network, progress: Progress, mapped: Mapped) -> SiteStage:
+def site_stage(network: Network, progress: Progress, mapped: Mapped, *, judge: bool = False) -> SiteStage:
     """Reduce, correct and fit every site of a network.
 
     Parameters
@@ -63,6 +63,8 @@ def site_stage(network: Network, progress: Progress, mapped: Mapped) -> SiteStag
     progress : callable
     mapped : callable
         Applies a function to each of a sequence and gives the results in order.
+    judge : bool
+        Whether the fit of every site is judged: spectrum, whiteness, year by year.
 
     Returns
     -------
@@ -101,6 +103,7 @@ def site_stage(network: Network, progress: Progress, mapped: Mapped) -> SiteStag
             air.ocean_mean,
             tuple(model.only(site.id) for model in circulation),
             settings,
+            judge,
         )
         for site in sites
         if records[site.id]

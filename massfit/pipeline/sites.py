@@ -8,6 +8,7 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
+from massfit.annual.diagnostics import diagnose_site
 from massfit.annual.fit import fit_site
 from massfit.annual.record import ReducedRecord
 from massfit.corrections.circulation import CirculationAtSites
@@ -38,6 +39,8 @@ class SiteTask:
     circulation : tuple of CirculationAtSites
         Of this site alone.
     settings : Settings
+    judge : bool
+        Whether the fit is judged too.
     """
 
     site: Site
@@ -46,6 +49,7 @@ class SiteTask:
     ocean_mean_air: Series | None
     circulation: tuple[CirculationAtSites, ...]
     settings: Settings
+    judge: bool = False
 
 
 def daily_records(network: Network, progress: Progress) -> dict[str, tuple[DailyRecord, ...]]:
@@ -155,18 +159,24 @@ def reduce_site(task: SiteTask) -> SiteReduction:
     present = corrections["present"].values == 1
     used = np.isfinite(corrections["circulation"].values[present]).all(axis=0)
     models = [str(name) for name in corrections["model"].values[present]]
+    records = [record for record in (_reduced(daily, corrections, used) for daily in task.daily) if len(record.time)]
+    year = task.settings.frame.reference_year
+    # a stream of its own, so that a site's numbers do not depend on which other sites there are
+    rng = np.random.default_rng([task.settings.posterior.seed, crc32(task.site.id.encode())])
     fit = fit_site(
-        [record for record in (_reduced(daily, corrections, used) for daily in task.daily) if len(record.time)],
+        records,
         models=models,
-        reference_year=task.settings.frame.reference_year,
-        # a stream of its own, so that a site's numbers do not depend on which other sites there are
-        rng=np.random.default_rng([task.settings.posterior.seed, crc32(task.site.id.encode())]),
+        reference_year=year,
+        rng=rng,
         priors=task.settings.priors,
         site=task.site.id,
     )
     companions = np.zeros((0, 2)) if fit.companions is None else fit.companions
     phasors = correction_phasors(corrections, companions, fit.single_gaussian()[0])
-    return SiteReduction(task.site, task.daily, corrections, used, fit, phasors)
+    judged = None
+    if task.judge:
+        judged = diagnose_site(records, fit, reference_year=year, rng=rng, priors=task.settings.priors)
+    return SiteReduction(task.site, task.daily, corrections, used, fit, phasors, judged)
 
 
 def _days(records: Sequence[DailyRecord]) -> NDArray[np.datetime64]:

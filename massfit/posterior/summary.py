@@ -6,6 +6,7 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
+from massfit.annual.cautions import site_cautions
 from massfit.annual.dataset import NO_MODEL
 from massfit.constants import FRESH_WATER_DENSITY, KG_PER_GT, PASCAL_PER_HPA, STANDARD_GRAVITY
 from massfit.phasor import as_complex, as_components, peak_date, unwrapped_peak_days
@@ -16,9 +17,6 @@ from massfit.posterior.regions import scalar_summary
 from massfit.posterior.result import Posterior
 from massfit.posterior.shares import variance_shares, variance_terms
 from massfit.posterior.sites import MixtureEffect, SiteCheck, leave_one_out, mixture_effects
-
-QUIET_SD = 300.0
-"""Standard deviation of the reduced daily record above which a site is not called quiet, Pa (common practice)."""
 
 MIXTURE_LIMIT = 0.02
 """Largest effect on the network mean (in standard deviations) and standard deviation of a site's single Gaussian."""
@@ -162,19 +160,9 @@ def _site_warnings(
     observations: Observations, s: int, reduced_sd: float, check: SiteCheck, effect: MixtureEffect
 ) -> list[str]:
     present = [model for model, there in zip(observations.models, observations.present[s], strict=True) if there]
-    return [
+    own = [
         text
         for applies, text in (
-            (
-                reduced_sd > QUIET_SD,
-                f"Not quiet: the reduced daily record varies by {reduced_sd / PASCAL_PER_HPA:.1f} hPa (1 sd; quiet is "
-                f"below {QUIET_SD / PASCAL_PER_HPA:.0f}), so ocean dynamics that no model removes weigh on its phasor. "
-                "Give a model that holds them, or see what the answer is without the site (exclude it).",
-            ),
-            (
-                present == [NO_MODEL],
-                "No ocean model was subtracted: the circulation is part of the noise. Give one that covers the site.",
-            ),
             (
                 check.outlier_probability > 0.5,
                 f"Disagrees with the other sites: {check.standardised_residual:.1f} standard deviations, "
@@ -185,6 +173,7 @@ def _site_warnings(
         )
         if applies
     ]
+    return [*site_cautions(reduced_sd, [model for model in present if model != NO_MODEL]), *own]
 
 
 def _is_large(effect: MixtureEffect) -> bool:

@@ -10,11 +10,11 @@ from contourpy import contour_generator
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
+from massfit.annual.cautions import QUIET_SD
 from massfit.constants import PASCAL_PER_HPA
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.phasor import admittance_matrix, annual_basis, as_complex, days_since, unwrapped_peak_days
 from massfit.posterior.regions import density_regions
-from massfit.posterior.summary import QUIET_SD
 from massfit.report.corner_figure import corner_figure
 from massfit.report.fingerprint_members import fingerprint_members
 from massfit.report.network_map import network_map

@@ -8,6 +8,7 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
+from massfit.annual.diagnostics import SiteDiagnostics
 from massfit.annual.fit import SiteFit
 from massfit.corrections.phasors import CorrectionPhasor
 from massfit.display import Described, Description
@@ -35,6 +36,8 @@ class SiteReduction:
         Drift, noise and phasor.
     phasors : tuple of CorrectionPhasor
         What each correction did to the phasor.
+    diagnostics : SiteDiagnostics or None
+        What the fit is judged by, where that was asked for.
     """
 
     site: Site
@@ -43,6 +46,7 @@ class SiteReduction:
     used: NDArray[np.bool_]
     fit: SiteFit
     phasors: tuple[CorrectionPhasor, ...] = ()
+    diagnostics: SiteDiagnostics | None = None
 
 
 @dataclass(frozen=True, repr=False)

@@ -136,4 +136,6 @@ def test_parts_of_a_model_are_kept_on_the_days_of_the_record() -> None:
 
 def test_the_distance_to_a_wet_cell_is_handed_on() -> None:
     away = replace(at_sites("away", AIR.time, 7.0), distance_km=np.array([0.0, 123.0]))
-    assert corrections(circulation=(away,))["distance"].values.tolist() == [123e3]
+    result = corrections(circulation=(away,))
+    assert result["distance"].values.tolist() == [123e3]
+    assert result.attrs["notes"] == "away: uses the nearest wet cell, 123 km from A"
