@@ -80,8 +80,8 @@ def _circulation(network: Network) -> list[str]:
         return []
     if count == 0:
         return [
-            "No ocean circulation model was given: the circulation is part of the noise, and the spread between "
-            "models is assumed from its prior, not seen."
+            "No ocean circulation model was given: its weather is part of the noise, its annual cycle stays in the "
+            "phasors of the sites, and the spread between models is assumed from its prior, not seen."
         ]
     names = ", ".join(f"{model.name} (air pressure {model.air_pressure})" for model in network.circulation)
     seen = "" if count > 1 else " With one model their spread is assumed from its prior, not seen."
