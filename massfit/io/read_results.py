@@ -37,7 +37,8 @@ def read_results(folder: Path) -> FinishedRun:
     if faults:
         raise InputError(faults)
     summary = json.loads((folder / "estimate.json").read_text(encoding="utf-8"))
-    datasets = {name: _read_dataset(folder / name) for name in outputs if name.endswith(".nc")}
+    files = {name: _read_groups(folder / name) for name in outputs if name.endswith(".nc")}
+    datasets = {name + group: dataset for name, groups in files.items() for group, dataset in groups.items()}
     return FinishedRun(summary, provenance, datasets)
 
 
@@ -85,6 +86,9 @@ def _damaged(folder: Path, name: str, problem: str) -> Fault:
     return Fault(str(folder / name), "", problem, "", action)
 
 
-def _read_dataset(path: Path) -> xr.Dataset:
-    with xr.open_dataset(path, engine="h5netcdf") as dataset:
-        return dataset.load()
+def _read_groups(path: Path) -> dict[str, xr.Dataset]:
+    """Every Dataset of a file, under "/" and the name of its group; a file without groups has one, under ""."""
+    with xr.open_datatree(path, engine="h5netcdf") as tree:
+        if not tree.children:
+            return {"": tree.to_dataset().load()}
+        return {f"/{name}": node.to_dataset(inherit=False).load() for name, node in tree.children.items()}

@@ -80,8 +80,10 @@ def write_results(partial: PartialFolder, run: FinishedRun, *, pictures: Mapping
     with partial.whole() as aside:
         _write_json(aside / "estimate.json", run.summary)
         _write_site_table(aside / "sites.csv", run.summary["sites"])
-        for name, dataset in run.datasets.items():
-            write_dataset(aside / name, dataset)
+        if "what_if" in run.summary:
+            _write_rows(aside / "what_if.csv", run.summary["what_if"])
+        for name, groups in _by_file(run.datasets).items():
+            write_groups(aside / name, groups) if "" not in groups else write_dataset(aside / name, groups[""])
         _write_drawn(aside, pictures, page)
         _write_run(aside, run.provenance, {path.relative_to(aside).as_posix() for path in aside.rglob("*.*")})
     partial.clear()
@@ -134,14 +136,42 @@ def write_dataset(path: Path, dataset: xr.Dataset) -> None:
     path : Path
     dataset : xarray.Dataset
     """
+    # made in memory: the library for HDF5 does not tell reliably when a disk is full
+    path.write_bytes(dataset.to_netcdf(engine="h5netcdf", encoding=_encoding(dataset)))
+
+
+def write_groups(path: Path, groups: Mapping[str, xr.Dataset]) -> None:
+    """Write Datasets as the groups of one compressed, checksummed NetCDF-4 file.
+
+    Parameters
+    ----------
+    path : Path
+    groups : mapping of str to xarray.Dataset
+        The attributes of the first stand at the head of the file too.
+    """
+    head = xr.Dataset(attrs=next(iter(groups.values())).attrs)
+    tree = xr.DataTree.from_dict({"/": head, **{f"/{name}": group for name, group in groups.items()}})
+    encoding = {f"/{name}": _encoding(group) for name, group in groups.items()}
+    path.write_bytes(tree.to_netcdf(None, engine="h5netcdf", encoding=encoding))
+
+
+def _by_file(datasets: Mapping[str, xr.Dataset]) -> dict[str, dict[str, xr.Dataset]]:
+    """Datasets by file and group; the group of a file without any is empty text."""
+    files: dict[str, dict[str, xr.Dataset]] = {}
+    for name, dataset in datasets.items():
+        file, _, group = name.partition("/")
+        files.setdefault(file, {})[group] = dataset
+    return files
+
+
+def _encoding(dataset: xr.Dataset) -> dict[Any, dict[str, Any]]:
     encoding: dict[Any, dict[str, Any]] = {}
     for name, variable in dataset.variables.items():
         if variable.ndim and variable.dtype.kind in "fiuM":
             encoding[name] = {"zlib": True, "complevel": 4, "shuffle": True, "fletcher32": True}
             if variable.dtype.kind == "f" and name not in dataset.coords:
                 encoding[name]["_FillValue"] = np.nan
-    # made in memory: the library for HDF5 does not tell reliably when a disk is full
-    path.write_bytes(dataset.to_netcdf(engine="h5netcdf", encoding=encoding))
+    return encoding
 
 
 def file_digest(path: Path) -> str:
@@ -187,3 +217,13 @@ def _series_phasors(rows: Sequence[Mapping[str, Any]]) -> list[str]:
     nothing = [0.0, 0.0] if known else [None, None]
     values = [value for name in _CSV_SERIES for value in known.get(name, nothing)]
     return ["" if value is None else f"{value:.6g}" for value in values]
+
+
+def _write_rows(path: Path, rows: Sequence[Mapping[str, Any]]) -> None:
+    """Write rows that all have the same keys."""
+    text = io.StringIO()
+    table = csv.DictWriter(text, list(rows[0]), lineterminator="\n")
+    table.writeheader()
+    for row in rows:
+        table.writerow({key: f"{item:.6g}" if isinstance(item, float) else item for key, item in row.items()})
+    path.write_text(text.getvalue(), encoding="utf-8")

@@ -11,6 +11,7 @@ from massfit.pipeline.parts import Mapped, Store, kept
 from massfit.pipeline.progress import Progress, StageTimes, ignore
 from massfit.pipeline.provenance import provenance
 from massfit.pipeline.site_stage import site_stage
+from massfit.pipeline.what_if import other_answers
 from massfit.pipeline.workers import Workers
 from massfit.posterior.predictive import predictive_check
 from massfit.posterior.sample import sample_posterior
@@ -19,7 +20,12 @@ from massfit.results.estimate import Estimate
 
 
 def estimate(
-    network: Network, *, progress: Progress = ignore, workers: int = 1, store: Store | None = None
+    network: Network,
+    *,
+    progress: Progress = ignore,
+    workers: int = 1,
+    store: Store | None = None,
+    what_if: bool = False,
 ) -> Estimate:
     """Do the main job: from raw records to the posterior of the annual cycle of ocean mass.
 
@@ -35,6 +41,9 @@ def estimate(
     store : Store, optional
         Keeps finished parts and gives them back, so that an interrupted run need not compute them again; it must
         keep the parts of different versions of the program apart. Nothing is kept by default.
+    what_if : bool
+        Answer the network under every other choice too, sites fitted anew where it takes that: some ten times the
+        work. The rows are `summary["what_if"]`.
 
     Returns
     -------
@@ -56,10 +65,10 @@ def estimate(
     True
     """
     with Workers(workers) as pool:
-        return _estimate(network, StageTimes(progress), pool, kept(pool.results, store))
+        return _estimate(network, StageTimes(progress), pool, kept(pool.results, store), what_if)
 
 
-def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Mapped) -> Estimate:
+def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Mapped, what_if: bool) -> Estimate:
     settings = network.settings
     stage = site_stage(network, progress, mapped)
     fingerprints = network_fingerprints(network, stage.operator, stage.sites, stage.footprints, stage.air)
@@ -83,6 +92,10 @@ def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Map
         sea_water_density=settings.fingerprint.sea_water_density,
     )
     summary["predictive_check"] = predictive_check(posterior, phasors, fingerprints)
+    if what_if:
+        summary["what_if"] = other_answers(
+            stage.tasks, stage.joined, phasors, fingerprints, posterior, progress=progress, mapped=mapped
+        )
     return Estimate(
         network=network,
         fingerprints=fingerprints,

@@ -40,6 +40,7 @@ def estimate_to_folder(
     outside: bool = False,
     progress: Progress = ignore,
     workers: int = 1,
+    what_if: bool = False,
 ) -> Estimate:
     """Read a network, do the main job and write the results folder.
 
@@ -59,6 +60,8 @@ def estimate_to_folder(
     progress : callable
     workers : int
         Processes that share the work.
+    what_if : bool
+        Answer the network under every other choice too.
 
     Returns
     -------
@@ -76,7 +79,7 @@ def estimate_to_folder(
         times("reading", 0, 1)
         inputs = read_network(network, outside=outside)
         times("reading", 1, 1)
-        result = estimate(inputs, progress=times, workers=workers, store=partial)
+        result = estimate(inputs, progress=times, workers=workers, store=partial, what_if=what_if)
         times("report", 0, 1)
         _save(result, partial, command=f"massfit estimate {network}", times=times)
         times("report", 1, 1)

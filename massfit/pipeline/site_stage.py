@@ -2,10 +2,12 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from datetime import date
 
 import xarray as xr
 
 from massfit.annual.dataset import site_phasors
+from massfit.annual.fit import SiteFit
 from massfit.corrections.circulation import CirculationAtSites, circulation_at_sites
 from massfit.corrections.responses import equilibrium_responses
 from massfit.fingerprint.footprint import site_footprints
@@ -29,6 +31,7 @@ class SiteStage:
 
     Parameters
     ----------
+    network : Network
     sites : tuple of Site
         Those that are used.
     operator : SeaLevelOperator
@@ -38,20 +41,35 @@ class SiteStage:
     responses : xarray.Dataset
         contracts.EQUILIBRIUM_RESPONSES.
     circulation : tuple of CirculationAtSites
-    reductions : tuple of SiteReduction
+    tasks : tuple of SiteTask
         Of the sites that have records.
+    reductions : tuple of SiteReduction
+        Of the same.
+    elsewhere : tuple of ReducedSite
+        The others.
+    period : (datetime.date, datetime.date)
+        First and last day of the period that the answer is the mean of.
     phasors : xarray.Dataset
         contracts.SITE_PHASORS.
     """
 
+    network: Network
     sites: tuple[Site, ...]
     operator: SeaLevelOperator
     footprints: xr.Dataset
     air: AirPressure
     responses: xr.Dataset
     circulation: tuple[CirculationAtSites, ...]
+    tasks: tuple[SiteTask, ...]
     reductions: tuple[SiteReduction, ...]
+    elsewhere: tuple[ReducedSite, ...]
+    period: tuple[date, date]
     phasors: xr.Dataset
+
+    def joined(self, fits: Sequence[SiteFit], elsewhere: Sequence[ReducedSite] | None = None) -> xr.Dataset:
+        """Join other fits of the sites, and other phasors of those reduced elsewhere, to contracts.SITE_PHASORS."""
+        others = self.elsewhere if elsewhere is None else elsewhere
+        return _joined(self.network, self.sites, self.period, fits, others)
 
 
 def site_stage(network: Network, progress: Progress, mapped: Mapped, *, judge: bool = False) -> SiteStage:
@@ -109,21 +127,37 @@ def site_stage(network: Network, progress: Progress, mapped: Mapped, *, judge: b
         if records[site.id]
     ]
     reductions = tuple(reduce_sites(tasks, progress, mapped))
-    elsewhere = [each for each in network.reduced if each.site in {site.id for site in sites}]
-    phasors = _phasors(network, sites, reductions, elsewhere)
-    return SiteStage(sites, operator, footprints, air, responses, circulation, reductions, phasors)
+    elsewhere = tuple(each for each in network.reduced if each.site in {site.id for site in sites})
+    period = stated_period(settings.frame, *records_span(reductions, elsewhere))
+    phasors = _joined(network, sites, period, [reduction.fit for reduction in reductions], elsewhere)
+    return SiteStage(
+        network,
+        sites,
+        operator,
+        footprints,
+        air,
+        responses,
+        circulation,
+        tuple(tasks),
+        reductions,
+        elsewhere,
+        period,
+        with_corrections(phasors, reductions),
+    )
 
 
-def _phasors(
-    network: Network, sites: Sequence[Site], reductions: Sequence[SiteReduction], elsewhere: Sequence[ReducedSite]
+def _joined(
+    network: Network,
+    sites: Sequence[Site],
+    period: tuple[date, date],
+    fits: Sequence[SiteFit],
+    elsewhere: Sequence[ReducedSite],
 ) -> xr.Dataset:
-    frame = network.settings.frame
-    phasors = site_phasors(
-        [reduction.fit for reduction in reductions],
+    return site_phasors(
+        fits,
         models=network.model_names,
-        reference_year=frame.reference_year,
+        reference_year=network.settings.frame.reference_year,
         reduced=elsewhere,
         sites=sites,
-        period=stated_period(frame, *records_span(reductions, elsewhere)),
+        period=period,
     )
-    return with_corrections(phasors, reductions)

@@ -22,6 +22,7 @@ from massfit.report.phasor_plane import phasor_plane
 from massfit.report.record_panels import ROWS_OF_A_PAGE, RecordRow, record_panels
 from massfit.report.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM, house_style
 from massfit.results.finished import FinishedRun
+from massfit.results.posterior_groups import POSTERIOR
 
 SCALE_WORDS = {"s_site": "site scatter", "s_local": "models at a site", "s_common": "model spread"}
 """What the scales of the posterior are called in figures."""
@@ -55,7 +56,7 @@ def draw_figures(run: FinishedRun, ocean: OceanFunction) -> dict[str, Figure]:
         figures[f"phasor_plane{ending}"] = _plane(run, contours, width)
         figures[f"network_map{ending}"] = _map(run, ocean, width)
         figures[f"fingerprint{ending}"] = _members(run, width)
-        figures[f"corner{ending}"] = _corner(run.datasets["posterior.nc"], width)
+        figures[f"corner{ending}"] = _corner(run.datasets[POSTERIOR], width)
     # there are none where every site was reduced elsewhere
     rows = _record_rows(run) if "reduced_records.nc" in run.datasets else []
     for page, first in enumerate(range(0, len(rows), ROWS_OF_A_PAGE), 1):
@@ -75,7 +76,7 @@ def png(figure: Figure) -> bytes:
 
 
 def _plane(run: FinishedRun, contours: Sequence[Contour], width_mm: float) -> Figure:
-    draws = run.datasets["posterior.nc"]["annual_phasor"].values.reshape(-1, 2) / PASCAL_PER_HPA
+    draws = run.datasets[POSTERIOR]["annual_phasor"].values.reshape(-1, 2) / PASCAL_PER_HPA
     sites = run.summary["sites"]
     inverse = np.linalg.inv(admittance_matrix(_admittances(sites)))
     phasors = np.array([site["phasor_hpa"] for site in sites]) - _known_response(run)
@@ -93,7 +94,7 @@ def _plane(run: FinishedRun, contours: Sequence[Contour], width_mm: float) -> Fi
 
 def _contours(run: FinishedRun) -> list[Contour]:
     """Edges of the regions of the answer, the largest first, hPa."""
-    draws = run.datasets["posterior.nc"]["annual_phasor"].values.reshape(-1, 2) / PASCAL_PER_HPA
+    draws = run.datasets[POSTERIOR]["annual_phasor"].values.reshape(-1, 2) / PASCAL_PER_HPA
     regions = density_regions(draws, bandwidth=SMOOTHING_SD)
     generator = contour_generator(regions.in_phase, regions.quadrature, regions.density)
     lines = {level: [np.asarray(line) for line in generator.lines(value)] for level, value in regions.levels.items()}
@@ -149,13 +150,16 @@ def _members(run: FinishedRun, width_mm: float) -> Figure:
 def _corner(posterior: xr.Dataset, width_mm: float) -> Figure:
     """Answer and scales; in a single column only the scale that weighs most."""
     phasors = as_complex(posterior["member_annual_phasor"].values.reshape(-1, 2) / PASCAL_PER_HPA)
-    names = [str(name) for name in posterior["scale_name"].values]
-    scales = posterior["scale"].values.reshape(-1, len(names)) / PASCAL_PER_HPA
+    names = [str(name) for name in posterior.data_vars if str(name).startswith("s_")]
     every = max(1, len(phasors) // 20_000)  # enough for smooth contours
     quantities = {"amplitude / hPa": np.abs(phasors)[::every], "peak / day": unwrapped_peak_days(phasors)[::every]}
     shown = names if width_mm > COLUMN_WIDTH_MM else ["s_common"]
     quantities.update(
-        {f"{SCALE_WORDS.get(name, name)} / hPa": scales[::every, names.index(name)] for name in shown if name in names}
+        {
+            f"{SCALE_WORDS.get(name, name)} / hPa": posterior[name].values.ravel()[::every] / PASCAL_PER_HPA
+            for name in shown
+            if name in names
+        }
     )
     return corner_figure(quantities, width_mm=width_mm)
 

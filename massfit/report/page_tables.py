@@ -77,9 +77,33 @@ def shares_table(summary: Mapping[str, Any]) -> Table:
 
 def alternatives_table(summary: Mapping[str, Any]) -> Table | None:
     """Tabulate the answer under other choices."""
+    if "what_if" in summary:
+        return _what_if_table(summary)
     head = ("instead", "shift / sd", "width ratio", "amplitude / hPa", "peak")
     rows = [_alternative(row, summary["reference_year"]) for row in summary["alternatives"]]
     return Table("Other choices", head, rows) if rows else None
+
+
+def _what_if_table(summary: Mapping[str, Any]) -> Table:
+    """Tabulate every other choice, drawn anew."""
+    rows = [
+        [
+            f"{row['kind']}: {row['name']}" + ("" if row["converged"] else " (did not converge)"),
+            f"{row['shift_sd']:.2f}",
+            f"{row['sd_ratio']:.2f}",
+            f"{row['in_phase_hpa']:.3f}",
+            f"{row['quadrature_hpa']:.3f}",
+            f"{row['amplitude_hpa']:.3f}",
+            spoken_date(row["peak_day"], summary["reference_year"]),
+            str(row["sites"]),
+        ]
+        for row in summary["what_if"]
+    ]
+    head = (
+        "instead", "shift / sd", "width ratio", "in phase / hPa", "quadrature / hPa", "amplitude / hPa",
+        "peak", "sites",
+    )  # fmt: skip
+    return Table("Other choices", head, rows)
 
 
 def _alternative(row: Mapping[str, Any], year: int) -> list[str]:

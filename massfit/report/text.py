@@ -77,12 +77,31 @@ def _shares(summary: Mapping[str, Any]) -> list[str]:
 
 
 def _alternatives(summary: Mapping[str, Any]) -> list[str]:
+    if "what_if" in summary:
+        return _what_if(summary)
     rows = summary["alternatives"]
     if not rows:
         return []
     lines = [f"{'If instead':<48}{'shift / sd':>14}{'width ratio':>14}"]
     lines += [f"  {padded(row['name'], 46)}{row['shift_sd']:>14.2f}{row['sd_ratio']:>14.2f}" for row in rows]
     return lines + wrapped(ALTERNATIVES_NOTE, WIDTH)
+
+
+def _what_if(summary: Mapping[str, Any]) -> list[str]:
+    """List every other choice, drawn anew, under the heading of its kind."""
+    lines = [f"{'If instead':<43}{'shift / sd':>10}{'width':>7}{'hPa':>8}{'peak day':>10}"]
+    kind = None
+    for row in summary["what_if"]:
+        if row["kind"] != kind:
+            lines.append(f"  {row['kind']}")
+            kind = row["kind"]
+        mark = "" if row["converged"] else "!"
+        lines.append(
+            f"    {padded(row['name'], 39)}{row['shift_sd']:>10.2f}{row['sd_ratio']:>7.2f}"
+            f"{row['amplitude_hpa']:>8.3f}{row['peak_day']:>10.1f}{mark}"
+        )
+    unsure = [] if all(row["converged"] for row in summary["what_if"]) else wrapped("! did not converge", WIDTH)
+    return lines + wrapped(ALTERNATIVES_NOTE, WIDTH) + unsure
 
 
 def _sites(summary: Mapping[str, Any]) -> list[str]:

@@ -8,14 +8,22 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from massfit.results.estimate import Estimate, SiteReduction
+from massfit.results.posterior_groups import posterior_groups
 
 CONVENTIONS = "CF-1.13, ACDD-1.3"
 
 _ONE = "1"
 
+_GROUP_TITLES = {
+    "posterior": "draws of the annual phasor of ocean mass and of the scales of the model",
+    "sample_stats": "what each draw was made with",
+    "observed_data": "annual phasor of each site",
+    "constant_data": "what is taken as known of the sites",
+}
+
 
 def result_datasets(estimate: Estimate) -> dict[str, xr.Dataset]:
-    """Every Dataset of a run by the name of its file.
+    """Every Dataset of a run by the name of its file, and of its group where the file has groups.
 
     Parameters
     ----------
@@ -24,9 +32,11 @@ def result_datasets(estimate: Estimate) -> dict[str, xr.Dataset]:
     Returns
     -------
     dict of str to xarray.Dataset
+        The group stands behind the file, "posterior.nc/posterior".
     """
+    groups = posterior_groups(estimate.posterior, estimate.site_phasors, estimate.fingerprints)
     described = {
-        "posterior.nc": (estimate.posterior.to_dataset(), "draws of the annual phasor of ocean mass"),
+        **{f"posterior.nc/{name}": (group, _GROUP_TITLES[name]) for name, group in groups.items()},
         "site_phasors.nc": (estimate.site_phasors, "annual phasor of each site"),
         "fingerprints.nc": (estimate.fingerprints, "complex admittance of each site"),
     }

@@ -21,7 +21,8 @@ class FinishedRun:
     provenance : mapping
         The content of `run.json`: command, settings, versions, inputs.
     datasets : mapping of str to xarray.Dataset
-        By file name: posterior.nc, site_phasors.nc, fingerprints.nc, reduced_records.nc.
+        By file name: site_phasors.nc, fingerprints.nc, reduced_records.nc; with the group behind it where the file has
+        groups: posterior.nc/posterior.
     """
 
     summary: Mapping[str, Any]

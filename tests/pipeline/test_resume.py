@@ -76,8 +76,8 @@ def assert_same_numbers(folder: Path, expected: Path) -> None:
     assert (folder / "estimate.json").read_bytes() == (expected / "estimate.json").read_bytes()
     for name in NUMBERS:
         with (
-            xr.open_dataset(folder / name, engine="h5netcdf") as found,
-            xr.open_dataset(expected / name, engine="h5netcdf") as wanted,
+            xr.open_datatree(folder / name, engine="h5netcdf") as found,
+            xr.open_datatree(expected / name, engine="h5netcdf") as wanted,
         ):
             xr.testing.assert_equal(found, wanted)
 

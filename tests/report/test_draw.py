@@ -69,8 +69,7 @@ def test_records_of_many_sites_go_on_further_pages(finished: FinishedRun, monkey
 
 
 def test_a_scale_that_is_new_is_drawn_under_its_own_name(finished: FinishedRun) -> None:
-    posterior = finished.datasets["posterior.nc"]
-    more = posterior.assign_coords(scale_name=["s_site", "s_local", "s_other"])
+    more = finished.datasets["posterior.nc/posterior"].rename(s_common="s_other")
     figure = draw._corner(more, 180.0)
     labels = {axes.get_xlabel() for axes in figure.axes}
     assert {"amplitude / hPa", "peak / day", "site scatter / hPa", "s_other / hPa"} <= labels
