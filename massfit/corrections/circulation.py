@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from massfit.constants import PASCAL_PER_HPA, SEA_WATER_DENSITY
 from massfit.contracts import FOOTPRINTS, require
 from massfit.corrections.atmosphere import allows_annual_phasor, annual_phasor, ocean_mean_air_pressure, ocean_weight
-from massfit.corrections.grid_field import NEAREST_WITHIN_KM, GridField, Stencil, grid_field, stencil
+from massfit.corrections.grid_field import GridField, grid_field, stencil
 from massfit.corrections.series import resampled
 from massfit.errors import Fault, InputError
 from massfit.fingerprint.grid import regrid
@@ -47,7 +47,7 @@ class CirculationAtSites:
         Distance to the wet cell used where the site's own cells are dry, else 0;
         the distance to the nearest one where none is near enough; NaN where a table of sites lacks the site.
     notes : tuple of str
-        What was noticed, for the report.
+        What was noticed of the model, for the report; what concerns single sites is in `distance_km`.
     parts : mapping of str to (n_time, n_site) array
         What `pressure` holds besides the model's own pressure at the site, Pa, by the names of `PARTS`: they were
         added, each with its sign.
@@ -170,8 +170,7 @@ def _from_table(model: CirculationModel, sites: Sequence[Site]) -> CirculationAt
     for column, site in enumerate(sites):
         if site.id in ids:
             pressure[:, column] = values[:, ids.index(site.id)]
-    absent = [site.id for site in sites if site.id not in ids]
-    notes = [f"has no series for {', '.join(absent)}"] if absent else []
+    notes = []
     if model.ocean_mean is None:
         notes.append("holds sites only: that its ocean mean is removed is taken from its file and was not checked")
     distance = np.where(np.isin([site.id for site in sites], ids), 0.0, np.nan)
@@ -200,8 +199,7 @@ def _from_grid(
         if attraction is not None:
             # the load less its own mean: no water comes or goes
             added[when] = filled @ attraction - means[when, :1] * (finite @ attraction)
-    notes = _distance_notes(sites, nearby)
-    notes += _check_mean(model, field.time, means, covered=ocean_part.sum() / ocean.area_m2)
+    notes = _check_mean(model, field.time, means, covered=ocean_part.sum() / ocean.area_m2)
     if attraction is None:
         notes.append("the attraction and load of its pressure field are not added: no footprints were given")
         return _named(model.name, sites, field.time, pressure, nearby.distance_km, notes)
@@ -280,14 +278,6 @@ def _air_anomaly(
     mean = ocean_mean_air_pressure(air_pressure, ocean)
     local = np.concatenate([everywhere.apply(block) for _, block in field.blocks()])
     return resampled(field.time, local - mean.pressure[:, None], time)
-
-
-def _distance_notes(sites: Sequence[Site], nearby: Stencil) -> list[str]:
-    notes = []
-    for site, distance in zip(sites, nearby.distance_km, strict=True):
-        if distance > NEAREST_WITHIN_KM:
-            notes.append(f"has no wet cell within {NEAREST_WITHIN_KM:.0f} km of {site.id}")
-    return notes
 
 
 def _named(

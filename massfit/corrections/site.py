@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 
 from massfit.contracts import CORRECTIONS, require
 from massfit.corrections.circulation import PARTS, CirculationAtSites
+from massfit.corrections.grid_field import NEAREST_WITHIN_KM
 from massfit.corrections.responses import long_period_tide_at, pole_tide_at
 from massfit.corrections.series import daily_series_at, daily_values_at
 from massfit.errors import Fault, InputError
@@ -93,20 +94,17 @@ def _circulation(
     values = np.full((len(circulation), len(time)), np.nan)
     for index, model in enumerate(circulation):
         values[index] = daily_values_at(model.time, model.at(site.id), time)
-    known = np.isfinite(values)
+    known, distances = np.isfinite(values), _distances(site, circulation)
     covered = known.mean(axis=1) if len(time) else np.zeros(len(circulation))
     present = np.asarray(covered >= LEAST_COVERED, dtype=np.int8)
     notes = _cut(site, known, covered, present, circulation)
     for index, model in enumerate(circulation):
         if not present[index]:
             values[index] = np.nan
-            notes.append(
-                f"{model.name}: covers {100 * covered[index]:.0f} % of the days of {site.id} and is left out there; to "
-                f"use it, give the rest of it, or a window that it covers to {100 * LEAST_COVERED:.0f} %"
-            )
+            notes.append(f"{model.name}: {_why_missing(site, distances[index], covered[index])}")
     notes += [
         f"{model.name}: uses the nearest wet cell, {distance / 1000.0:.0f} km from {site.id}"
-        for model, there, distance in zip(circulation, present, _distances(site, circulation), strict=True)
+        for model, there, distance in zip(circulation, present, distances, strict=True)
         if there and distance > 0.0
     ]
     if circulation and not present.any():
@@ -140,6 +138,18 @@ def _cut(
                 f"{LEAST_SITE_DAYS} are needed"
             )
     return notes
+
+
+def _why_missing(site: Site, distance: float, covered: float) -> str:
+    if np.isnan(distance):
+        return f"has no series for {site.id} and is left out there; give one to use it"
+    if distance > 1000.0 * NEAREST_WITHIN_KM:
+        nearest = f"the nearest is {distance / 1000.0:.0f} km away" if np.isfinite(distance) else "there is none at all"
+        return f"has no wet cell within {NEAREST_WITHIN_KM:.0f} km of {site.id} ({nearest}) and is left out there"
+    return (
+        f"covers {100 * covered:.0f} % of the days of {site.id} and is left out there; to use it, give the rest of it, "
+        f"or a window that it covers to {100 * LEAST_COVERED:.0f} %"
+    )
 
 
 def _part(

@@ -1,12 +1,13 @@
 """The summary in its context: what was assumed, what was done, and every warning."""
 
 from collections.abc import Collection, Mapping, Sequence
-from dataclasses import replace
+from dataclasses import dataclass, replace
 from datetime import date
 from typing import Any
 
 from massfit.annual.cautions import QUIET_SD
 from massfit.constants import PASCAL_PER_HPA
+from massfit.corrections.circulation import CirculationAtSites
 from massfit.network import Network, ReducedSite
 from massfit.records.daily import TIDES_LEFT
 from massfit.results.assumptions import stated_assumptions
@@ -17,24 +18,50 @@ from massfit.settings import Frame
 from massfit.site import Site
 
 
-def in_context(
-    summary: Mapping[str, Any], network: Network, reductions: Sequence[SiteReduction], fingerprints_area_m2: float
-) -> dict[str, Any]:
-    """Put the numbers of the posterior beside what they rest on.
+@dataclass(frozen=True)
+class SitesInContext:
+    """The sites of a run beside what they rest on.
 
     Parameters
     ----------
-    summary : mapping
-        From `posterior.summary.summarise`, and the `predictive_check`.
+    head : mapping
+        `network`, `reference_year`, `period`, `records_span`.
+    facts : mapping of str to mapping
+        Place of each site and what is known of its record.
+    notes : mapping of str to list of str
+        What was noticed at each site.
+    left_out : mapping of str to str
+        Sites that were left out, and why.
+    warnings : list of str
+    used : Network
+        With those circulation models alone that some site has subtracted.
+    actions : mapping of str to list of mapping
+        Everything that was done to each deployment.
+    """
+
+    head: Mapping[str, Any]
+    facts: Mapping[str, Mapping[str, Any]]
+    notes: Mapping[str, list[str]]
+    left_out: Mapping[str, str]
+    warnings: list[str]
+    used: Network
+    actions: Mapping[str, list[dict[str, Any]]]
+
+
+def sites_in_context(
+    network: Network, reductions: Sequence[SiteReduction], circulation: Sequence[CirculationAtSites]
+) -> SitesInContext:
+    """Gather what the phasors of the sites rest on.
+
+    Parameters
+    ----------
     network : Network
     reductions : sequence of SiteReduction
-    fingerprints_area_m2 : float
-        Area of the ocean, m2.
+    circulation : sequence of CirculationAtSites
 
     Returns
     -------
-    dict
-        The content of `estimate.json`.
+    SitesInContext
     """
     frame = network.settings.frame
     places = {site.id: site for site in network.sites}
@@ -46,36 +73,70 @@ def in_context(
     first, last = records_span(reductions, elsewhere)
     start, end = stated_period(frame, first, last)
     of_sites = {name for facts, _ in known.values() for name in facts["models"]}
-    used = tuple(model for model in network.circulation if model.name in of_sites)
     unused = [
         f"The ocean model {model.name} covers no site and was not used. Give a file that covers the records."
         for model in network.circulation
         if model.name not in of_sites
     ]
-    return {
-        "network": frame.name,
-        "reference_year": frame.reference_year,
-        "period": [str(start), str(end)],
-        "records_span": [str(first), str(last)],
-        "ocean_area_m2": fingerprints_area_m2,
-        **summary,
-        "sites": [_site(entry, places[entry["id"]], *known[entry["id"]]) for entry in summary["sites"]],
-        "left_out": _left_out(network, known),
-        "assumptions": list(stated_assumptions(replace(network, circulation=used))),
-        "warnings": [
-            *unused,
-            *([] if elsewhere else _no_quiet_site(reductions)),
-            *network.warnings,
-            *summary["warnings"],
-            *([] if summary["predictive_check"]["agrees"] else summary["predictive_check"]["sentences"]),
-        ],
-        "actions": {
+    noticed = [note for model in circulation if model.name in of_sites for note in model.notes]
+    return SitesInContext(
+        head={
+            "network": frame.name,
+            "reference_year": frame.reference_year,
+            "period": [str(start), str(end)],
+            "records_span": [str(first), str(last)],
+        },
+        facts={name: {**_place(places[name]), **facts} for name, (facts, _) in known.items()},
+        notes={name: notes for name, (_, notes) in known.items()},
+        left_out=_left_out(network, known),
+        warnings=[*unused, *([] if elsewhere else _no_quiet_site(reductions)), *network.warnings, *noticed],
+        used=replace(network, circulation=tuple(model for model in network.circulation if model.name in of_sites)),
+        actions={
             daily.deployment: [
                 {"what": action.what, "count": action.count, "detail": action.detail} for action in daily.actions
             ]
             for reduction in reductions
             for daily in reduction.daily
         },
+    )
+
+
+def in_context(summary: Mapping[str, Any], sites: SitesInContext, ocean_area_m2: float) -> dict[str, Any]:
+    """Put the numbers of the posterior beside what they rest on.
+
+    Parameters
+    ----------
+    summary : mapping
+        From `posterior.summary.summarise`, and the `predictive_check`.
+    sites : SitesInContext
+    ocean_area_m2 : float
+        Area of the ocean, m2.
+
+    Returns
+    -------
+    dict
+        The content of `estimate.json`.
+    """
+    return {
+        **sites.head,
+        "ocean_area_m2": ocean_area_m2,
+        **summary,
+        "sites": [
+            {
+                **entry,
+                **sites.facts[entry["id"]],
+                "warnings": [*entry["warnings"], *sites.notes[entry["id"]]],
+            }
+            for entry in summary["sites"]
+        ],
+        "left_out": sites.left_out,
+        "assumptions": list(stated_assumptions(sites.used)),
+        "warnings": [
+            *sites.warnings,
+            *summary["warnings"],
+            *([] if summary["predictive_check"]["agrees"] else summary["predictive_check"]["sentences"]),
+        ],
+        "actions": sites.actions,
     }
 
 
@@ -112,9 +173,8 @@ def stated_period(frame: Frame, first: date, last: date) -> tuple[date, date]:
     return frame.start or first, frame.end or last
 
 
-def _site(entry: Mapping[str, Any], site: Site, known: Mapping[str, Any], notes: Sequence[str]) -> dict[str, Any]:
-    place = {"latitude": site.latitude_deg, "longitude": site.longitude_deg}
-    return {**entry, **place, **known, "warnings": [*entry["warnings"], *notes]}
+def _place(site: Site) -> dict[str, Any]:
+    return {"latitude": site.latitude_deg, "longitude": site.longitude_deg}
 
 
 def _recorded(reduction: SiteReduction) -> tuple[dict[str, Any], list[str]]:
@@ -132,9 +192,16 @@ def _recorded(reduction: SiteReduction) -> tuple[dict[str, Any], list[str]]:
         **coverage(reduction.corrections["time"].values, reduction.used),
         "reduced_sd_hpa": fit.reduced_sd / PASCAL_PER_HPA,
         "models": list(fit.models),
+        "model_distance_km": _distances_km(reduction),
         "corrections": correction_table(reduction.phasors),
     }
     return known, [*notes, *fit.notes]
+
+
+def _distances_km(reduction: SiteReduction) -> dict[str, float]:
+    """Distance of the wet cell taken of each model on a grid whose cells at the site are dry; 0 elsewhere."""
+    distances = reduction.corrections["distance"]
+    return {model: round(float(distances.sel(model=model)) / 1000.0, 1) for model in reduction.fit.models}
 
 
 def _elsewhere(reduced: ReducedSite, frame: Frame) -> tuple[dict[str, Any], list[str]]:

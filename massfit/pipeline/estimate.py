@@ -5,7 +5,7 @@ order, the way a method section would.
 """
 
 from massfit.network import Network
-from massfit.pipeline.context import in_context
+from massfit.pipeline.context import in_context, sites_in_context
 from massfit.pipeline.fingerprints import network_fingerprints
 from massfit.pipeline.parts import Mapped, Store, kept
 from massfit.pipeline.progress import Progress, StageTimes, ignore
@@ -102,6 +102,10 @@ def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Map
         reductions=stage.reductions,
         site_phasors=phasors,
         posterior=posterior,
-        summary=in_context(summary, network, stage.reductions, float(fingerprints.attrs["ocean_area_m2"])),
+        summary=in_context(
+            summary,
+            sites_in_context(network, stage.reductions, stage.circulation),
+            float(fingerprints.attrs["ocean_area_m2"]),
+        ),
         provenance={**provenance(network, processes=pool.count), "elapsed_s": progress.seconds()},
     )

@@ -139,3 +139,20 @@ def test_the_distance_to_a_wet_cell_is_handed_on() -> None:
     result = corrections(circulation=(away,))
     assert result["distance"].values.tolist() == [123e3]
     assert result.attrs["notes"] == "away: uses the nearest wet cell, 123 km from A"
+
+
+@pytest.mark.parametrize(
+    ("distance_km", "reason"),
+    [
+        (np.nan, "lost: has no series for A and is left out there"),
+        (412.4, "lost: has no wet cell within 300 km of A (the nearest is 412 km away)"),
+        (np.inf, "lost: has no wet cell within 300 km of A (there is none at all)"),
+        (0.0, "lost: covers 0 % of the days of A and is left out there"),
+    ],
+    ids=["table", "far", "dry", "other years"],
+)
+def test_why_a_model_is_missing_is_said(distance_km: float, reason: str) -> None:
+    lost = replace(at_sites("lost", AIR.time, np.nan), distance_km=np.array([0.0, distance_km]))
+    result = corrections(circulation=(at_sites("calm", AIR.time, 7.0), lost))
+    assert result["present"].values.tolist() == [1, 0]
+    assert reason in result.attrs["notes"]
