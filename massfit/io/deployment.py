@@ -1,17 +1,39 @@
 """`[[site.deployment]]`: how one record file is to be read."""
 
-from datetime import datetime
+from datetime import date, datetime
 from typing import Annotated, Literal
 
+import numpy as np
 from pydantic import ConfigDict, Field, PositiveFloat
 from pydantic.dataclasses import dataclass
 
+from massfit.io.schema import utc, utc_end
 from massfit.settings import DriftForm
 
 Text = Annotated[str, Field(min_length=1)]
+_STRICT = ConfigDict(extra="forbid", allow_inf_nan=False)
 
 
-@dataclass(frozen=True, config=ConfigDict(extra="forbid", allow_inf_nan=False))
+@dataclass(frozen=True, config=_STRICT)
+class RampEntry:
+    """One interval of `ramps`.
+
+    Parameters
+    ----------
+    start, end : datetime.date or datetime.datetime
+        Keys `from` and `to`, UTC: when the level began to change, and when it was at rest again. A date as `to`
+        means its last instant.
+    """
+
+    start: Annotated[date | datetime, Field(alias="from")]
+    end: Annotated[date | datetime, Field(alias="to")]
+
+    def span(self) -> tuple[np.datetime64, np.datetime64]:
+        """Give its first and its last instant."""
+        return utc(self.start), utc_end(self.end)
+
+
+@dataclass(frozen=True, config=_STRICT)
 class DeploymentFile:
     """One instrument on the bottom and the file that holds its record.
 
@@ -29,6 +51,10 @@ class DeploymentFile:
         "exponential+linear", "linear" or "none".
     steps : str or tuple of datetime
         "find", "none", or the UTC times of declared changes of level.
+    ramps : tuple of RampEntry
+        Declared changes of level that took time; the days they touch are left out, one step is fitted across each.
+    settling : str or float
+        "model", "trim", or how many days are left out after the first sample.
     columns : tuple of str, optional
         Names of the columns of a text file without a header; "year", "month", "day", "hour", "minute",
         "second", "kind" and "flag" have a meaning, and one is the pressure.
@@ -72,6 +98,8 @@ class DeploymentFile:
     variable: Text | None = None
     drift: DriftForm = "exponential+linear"
     steps: Literal["find", "none"] | tuple[datetime, ...] = "find"
+    ramps: tuple[RampEntry, ...] = ()
+    settling: Literal["model", "trim"] | Annotated[float, Field(ge=0, le=365)] = "model"
     columns: tuple[str, ...] | None = None
     time_column: Text | None = None
     time_format: Text | None = None

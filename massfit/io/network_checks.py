@@ -7,6 +7,7 @@ from numpy.typing import NDArray
 
 from massfit.constants import JULIAN_YEAR_DAYS
 from massfit.fingerprint.ocean import OceanFunction
+from massfit.io.deployment import DeploymentFile
 from massfit.io.locate import KeyPath
 from massfit.io.reading import Reading, did_you_mean, nearest
 from massfit.io.record_checks import check_values
@@ -224,6 +225,16 @@ def _check_deployments(reading: Reading, sections: Sections) -> None:
                 action = "Correct the file, or state the station or variable of each"
                 reading.fault((*path, "file"), problem, "Must be used once", action)
             first.setdefault(record, path)
+            _check_ramps(reading, path, entry)
+
+
+def _check_ramps(reading: Reading, path: KeyPath, entry: DeploymentFile) -> None:
+    for position, (start, end) in enumerate(ramp.span() for ramp in entry.ramps):
+        if start >= end:
+            shown = [np.datetime_as_string(instant, unit="s") for instant in (start, end)]
+            problem = f"the ramp runs from {shown[0]} to {shown[1]}"
+            action = "Exchange the two, or declare a step with `steps`"
+            reading.fault((*path, "ramps", position), problem, "Must start before it ends", action)
 
 
 def _check_reduced(reading: Reading, sections: Sections) -> None:

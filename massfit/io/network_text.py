@@ -116,7 +116,10 @@ def deployment_table(record: Record, file: str, *, text: Mapping[str, Any]) -> M
     steps: Any = [_Raw(_instant(step)) for step in record.steps]
     if not steps:
         steps = "find" if record.find_steps else "none"
-    return {"file": file, **text, "drift": record.drift, "steps": steps}
+    table = {"file": file, **text, "drift": record.drift, "steps": steps}
+    if record.ramps:
+        table["ramps"] = [_Raw(f"{{ from = {_instant(start)}, to = {_instant(end)} }}") for start, end in record.ramps]
+    return table | ({"settling": record.settling} if record.settling != "model" else {})
 
 
 def circulation_table(model: CirculationModel, file: str, ocean_mean: str) -> Mapping[str, Any]:

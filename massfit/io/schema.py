@@ -42,8 +42,7 @@ class ExcludeEntry:
 
     def interval(self) -> Interval:
         """Make the interval as the rest of the package knows it."""
-        last = _LAST_INSTANT if type(self.end) is date else np.timedelta64(0, "ns")
-        return Interval(utc(self.start), utc(self.end) + last, self.reason)
+        return Interval(utc(self.start), utc_end(self.end), self.reason)
 
 
 @dataclass(frozen=True, config=_STRICT)
@@ -193,3 +192,15 @@ def utc(moment: date | datetime) -> np.datetime64:
         moment = moment.replace(tzinfo=None)
         return np.datetime64(moment, "ns") - np.timedelta64(offset, "ns")
     return np.datetime64(moment, "ns")
+
+
+def utc_end(moment: date | datetime) -> np.datetime64:
+    """Convert the end of an interval: a date means its last instant.
+
+    Examples
+    --------
+    >>> from datetime import date
+    >>> str(utc_end(date(2016, 3, 1)))
+    '2016-03-01T23:59:59.999999999'
+    """
+    return utc(moment) + (_LAST_INSTANT if type(moment) is date else np.timedelta64(0, "ns"))

@@ -272,6 +272,8 @@ def _allowed(error: ErrorDetails) -> str:
 def _known_keys(kind: type, path: KeyPath) -> list[str]:
     if kind is SiteEntry and "exclude" in path:
         return ["from", "to", "reason"]
+    if kind is DeploymentFile and "ramps" in path:
+        return ["from", "to"]
     names = [item.name for item in fields(kind)]
     if kind is CirculationEntry:
         return [*names, "subtracted_elsewhere"]

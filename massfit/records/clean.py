@@ -130,13 +130,24 @@ def find_spikes(values: NDArray[np.float64]) -> NDArray[np.bool_]:
     if values.size < _WINDOW:
         return np.zeros(values.size, dtype=bool)
     apart = np.abs(values - median_filter(values, size=_WINDOW, mode="mirror"))
-    ratio = apart / np.maximum(_running_scale(apart), _SMALLEST_SCALE)
+    ratio = apart / np.maximum(running_scale(apart), _SMALLEST_SCALE)
     spared = max(1, int(_SHARE * values.size)) + 1
     return np.asarray(ratio > max(_THRESHOLD, np.partition(ratio, -spared)[-spared]))
 
 
-def _running_scale(apart: NDArray[np.float64]) -> NDArray[np.float64]:
-    """Scale of a block of samples, never below that of the whole record."""
+def running_scale(apart: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Robust scale of each block of 96 samples, never below that of the whole record.
+
+    Parameters
+    ----------
+    apart : (n,) array
+        Magnitudes of deviations, zeros of coarse counting among them.
+
+    Returns
+    -------
+    (n,) array
+        Standard deviation of normal deviations of the same median.
+    """
     blocks = max(1, apart.size // _BLOCK)
     local = _median_above_zero(apart[: blocks * _BLOCK].reshape(blocks, -1))
     place = np.minimum(np.arange(apart.size) // _BLOCK, blocks - 1)

@@ -8,20 +8,34 @@ from typing import Literal
 import numpy as np
 from numpy.typing import NDArray
 
+from massfit.records import disturbed as disturbed_rule
+from massfit.records import settling as settling_rule
+from massfit.records import stuck as stuck_rule
 from massfit.records.clean import find_spikes, usable_samples
+from massfit.records.disturbed import find_disturbed
 from massfit.records.hourly import HOUR_NS, Hourly, days_from_epoch, hourly_means, instants
-from massfit.records.record import Action, DailyRecord, Record, TidalConstant
-from massfit.records.steps import NO_STEPS, FoundSteps, find_steps
+from massfit.records.level_changes import (
+    between_levels,
+    declared_changes,
+    find_level_changes,
+    flattened,
+    in_order,
+    level_breaks,
+)
+from massfit.records.means import daily_means
+from massfit.records.record import Action, DailyRecord, LevelChange, Record, Settling, TidalConstant
+from massfit.records.settling import settled_after
+from massfit.records.stuck import find_stuck
 from massfit.records.tides import TideFit, fit_short_tides
 from massfit.site import Interval
 
 _DAILY_ABOVE_HOURS = 6.0
 """Coarser sampling cannot show a tide: such records pass as they are."""
-_LEAST_SHARE = 0.75
-"""Of the hours of a day: 18 of 24."""
 _DIRECT_BELOW_HOURS = 0.5
 """Below this sampling a tide is a straight line over five samples, spikes show against the raw pressure, and an hour
 that stands apart holds an event that many samples saw."""
+_DAY = np.timedelta64(1, "D")
+_ACROSS = "one step is fitted across each, whatever its shape"
 
 TIDES_LEFT = "short tides not removed"
 """What is said of a record that is too coarse for its tides to be removed although that was asked for."""
@@ -41,8 +55,9 @@ def reduce_to_daily(
     Each hour counts once, a day needs three quarters of its hours, and a mean whose
     hours are not symmetric about noon is brought to noon along the slope of the
     neighbouring days. Drift, weather, and the annual and the semi-annual cycle pass
-    unchanged: long-period lines are never fitted. Where `record.find_steps` says so
-    sharp changes of level are looked for in the tide-free hours and added to the steps.
+    unchanged: long-period lines are never fitted. Values that repeat, spikes and disturbed hours
+    are left out. Where `record.find_steps` says so changes of level are looked for: steps are
+    added to the steps; the days of a ramp are left out and one step is fitted across them. All is listed.
 
     Parameters
     ----------
@@ -67,22 +82,31 @@ def reduce_to_daily(
     (90, '2016-01-01T12')
     """
     time, pressure, actions = usable_samples(record.time, record.pressure, exclude=exclude, start=start, end=end)
-    declared = np.sort(days_from_epoch(np.asarray(record.steps, dtype="datetime64[ns]")))
-    if _spacing_hours(time) >= _DAILY_ABOVE_HOURS:
-        reduced = _as_it_is(time, pressure, declared, tides, record.find_steps)
-    else:
-        reduced = _averaged(time, pressure, declared, tides, record.find_steps)
-    found = reduced.steps.sizes.size
+    first = _first_instant(record)
+    stuck = find_stuck(time, pressure)
+    settling = _settling_samples(time, first, record.settling)
+    time, pressure = time[~(stuck | settling)], pressure[~(stuck | settling)]
+    declared = declared_changes(record)
+    reduce = _as_it_is if _spacing_hours(time) >= _DAILY_ABOVE_HOURS else _averaged
+    reduced = reduce(time, pressure, declared, tides, record.find_steps)
+    settled = _settled(reduced, first, record.settling)
+    before = [
+        _counted("samples that repeat one value left out", stuck, stuck_rule.RULE),
+        _counted("samples of the first days left out", settling, f"settling = {record.settling}"),
+    ]
+    after = [Action("days of settling left out", settled, settling_rule.RULE), _gap_action(reduced.time[settled:])]
+    said = [action for action in (*before, *reduced.actions, *after) if action.count]
     return DailyRecord(
         site=record.site,
         deployment=record.deployment,
-        time=reduced.time,
-        pressure=reduced.pressure,
-        start=_first_instant(record),
+        time=reduced.time[settled:],
+        pressure=reduced.pressure[settled:],
+        start=first,
         drift=record.drift,
-        steps=tuple(np.sort([*record.steps, *instants(reduced.steps.days)])) if found else record.steps,
+        steps=tuple(np.sort([change.end for change in reduced.changes])) if reduced.changes else (),
         tides=reduced.tides,
-        actions=(*record.actions, *actions, *(action for action in reduced.actions if action.count)),
+        actions=(*record.actions, *actions, *said),
+        changes=reduced.changes,
     )
 
 
@@ -90,7 +114,7 @@ def reduce_to_daily(
 class _Reduced:
     time: NDArray[np.datetime64]
     pressure: NDArray[np.float64]
-    steps: FoundSteps
+    changes: tuple[LevelChange, ...]
     tides: tuple[TidalConstant, ...]
     actions: list[Action]
 
@@ -105,36 +129,66 @@ def _spacing_hours(time: NDArray[np.datetime64]) -> float:
     return float(np.median(np.diff(time)) / np.timedelta64(HOUR_NS, "ns")) if time.size > 1 else np.inf
 
 
+def _settling_samples(
+    time: NDArray[np.datetime64], start: np.datetime64, settling: Settling
+) -> NDArray[np.bool_]:
+    """Mark the samples of the first days, where the analyst said how many."""
+    if isinstance(settling, str):
+        return np.zeros(time.size, dtype=bool)
+    return np.asarray(days_from_epoch(time) < days_from_epoch(start) + settling)
+
+
+def _settled(reduced: _Reduced, start: np.datetime64, settling: Settling) -> int:
+    """Daily means to be left out before the recorder has come to rest, where the analyst asked for that."""
+    if settling != "trim" or not reduced.time.size:
+        return 0
+    days = days_from_epoch(reduced.time)
+    level = flattened(days, reduced.pressure, level_breaks(reduced.changes))
+    return settled_after(np.floor(days).astype(np.int64), level, float(days_from_epoch(start)))
+
+
+def _gap_action(time: NDArray[np.datetime64]) -> Action:
+    step = np.diff(time.astype("datetime64[D]")).astype(int)
+    if not step.size or step.max() < 2 or np.median(step) > 1:
+        return Action("days without a mean", 0)
+    longest = int(np.argmax(step))
+    first, last = (str(day)[:10] for day in (time[longest] + _DAY, time[longest + 1] - _DAY))
+    detail = f"gaps: {np.count_nonzero(step > 1)}, the longest from {first} to {last}"
+    return Action("days without a mean", int((step - 1).sum()), detail)
+
+
 def _as_it_is(
-    time: NDArray[np.datetime64], pressure: NDArray[np.float64], declared: NDArray[np.float64], tides: str, search: bool
+    time: NDArray[np.datetime64],
+    pressure: NDArray[np.float64],
+    declared: tuple[LevelChange, ...],
+    tides: str,
+    search: bool,
 ) -> _Reduced:
+    """Take samples that are too coarse to show tides as they are."""
     spikes = find_spikes(pressure)
     actions = [_spike_action(spikes, "sample")]
     time, pressure = time[~spikes], pressure[~spikes]
     if tides == "remove" and time.size:
         detail = "too coarse to show them; plain daily means hold 0.27 % of K1 and P1, which look annual"
         actions.append(Action(TIDES_LEFT, time.size, detail))
-    steps = find_steps(days_from_epoch(time), pressure, known=declared) if search else NO_STEPS
-    return _Reduced(time, pressure, steps, (), [*actions, _step_action(steps)])
-
-
-def _step_action(steps: FoundSteps) -> Action:
-    each = (
-        f"{time} {size / 100.0:+.1f} hPa"
-        for time, size in zip(instants(steps.days).astype("datetime64[m]"), steps.sizes, strict=True)
-    )
-    detail = f"{', '.join(each)}; found where sharp and above {steps.threshold / 100.0:.1f} hPa"
-    return Action("steps found", steps.sizes.size, detail)
-
-
-def _spike_action(spikes: NDArray[np.bool_], what: str) -> Action:
-    detail = f"single or paired {what}s more than 8 robust standard deviations from the median of five"
-    return Action(f"{what} spikes rejected", int(np.count_nonzero(spikes)), detail)
+    changes = declared
+    if search:
+        found, action = find_level_changes(days_from_epoch(time), pressure, declared, coarse=True)
+        changes = in_order([*declared, *found])
+        actions.append(action)
+    inside = between_levels(days_from_epoch(time), changes)
+    actions.append(_counted("samples on ramps left out", inside, _ACROSS))
+    return _Reduced(time[~inside], pressure[~inside], changes, (), actions)
 
 
 def _averaged(
-    time: NDArray[np.datetime64], pressure: NDArray[np.float64], declared: NDArray[np.float64], tides: str, search: bool
+    time: NDArray[np.datetime64],
+    pressure: NDArray[np.float64],
+    declared: tuple[LevelChange, ...],
+    tides: str,
+    search: bool,
 ) -> _Reduced:
+    """Remove the tides from hourly means and average these."""
     actions = []
     spacing = _spacing_hours(time)
     if spacing < _DIRECT_BELOW_HOURS:
@@ -142,28 +196,50 @@ def _averaged(
         time, pressure = time[~spikes], pressure[~spikes]
         actions.append(_spike_action(spikes, "sample"))
     hours = hourly_means(time, pressure)
-    breaks, steps = declared, NO_STEPS
-    fit = _short_tides(hours, breaks, tides)
+    inside = between_levels(hours.days, declared)
+    hours, on_ramps, changes = hours.without(inside), np.count_nonzero(inside), declared
+    fit = _short_tides(hours, changes, tides)
+    tide_free = hours.pressure - fit.tide
     if search:
-        tide_free = (hours.pressure - fit.tide)[~fit.spikes]
-        steps = find_steps(hours.days[~fit.spikes], tide_free, known=declared)
-        breaks = np.sort(np.concatenate([declared, steps.days]))
-        actions.append(_step_action(steps))
-    if steps.days.size:
-        fit = _short_tides(hours, breaks, tides)
-    actions += _tide_actions(fit)
+        sound = ~fit.spikes
+        found, action = find_level_changes(hours.days[sound], tide_free[sound], declared, coarse=False)
+        actions.append(action)
+        changes = in_order([*declared, *found])
+    left_out = between_levels(hours.days, changes)
+    disturbed = np.zeros(left_out.size, dtype=bool)
+    quiet = flattened(hours.days[~left_out], tide_free[~left_out], level_breaks(changes))
+    disturbed[~left_out] = find_disturbed(quiet)
+    if spacing >= _DIRECT_BELOW_HOURS:
+        disturbed &= ~fit.spikes
+    if left_out.any() or disturbed.any() or len(changes) > len(declared):
+        hours = hours.without(left_out | disturbed)
+        fit = _short_tides(hours, changes, tides)
+    actions += [
+        *_tide_actions(fit),
+        Action("hours on ramps left out", int(on_ramps + np.count_nonzero(left_out)), _ACROSS),
+        _counted("disturbed hours left out", disturbed, disturbed_rule.RULE),
+    ]
     hours = Hourly(hours.hour, hours.days, hours.spread, hours.pressure - fit.tide)
     if spacing >= _DIRECT_BELOW_HOURS:
         hours = hours.without(fit.spikes)
         actions.append(_spike_action(fit.spikes, "hour"))
-    day, mean, sparse = _daily_means(hours, breaks, max(spacing, 1.0))
-    actions.append(Action("days left out", sparse, "less than three quarters of the hours on one level"))
-    return _Reduced(instants(day + 0.5), mean, steps, fit.constants, actions)
+    days = daily_means(hours, level_breaks(changes))
+    actions.append(Action("days left out", days.left_out, "less than three quarters of the day on one level"))
+    return _Reduced(instants(days.day + 0.5), days.pressure, changes, fit.constants, actions)
 
 
-def _short_tides(hours: Hourly, breaks: NDArray[np.float64], tides: str) -> TideFit:
+def _counted(what: str, which: NDArray[np.bool_], detail: str) -> Action:
+    return Action(what, int(np.count_nonzero(which)), detail)
+
+
+def _spike_action(spikes: NDArray[np.bool_], what: str) -> Action:
+    detail = f"single or paired {what}s more than 8 robust standard deviations from the median of five"
+    return _counted(f"{what} spikes rejected", spikes, detail)
+
+
+def _short_tides(hours: Hourly, changes: tuple[LevelChange, ...], tides: str) -> TideFit:
     if tides == "remove":
-        return fit_short_tides(hours.days, hours.pressure, spread=hours.spread, breaks=breaks)
+        return fit_short_tides(hours.days, hours.pressure, spread=hours.spread, breaks=level_breaks(changes))
     return TideFit(np.zeros(hours.days.size), find_spikes(hours.pressure), (), (), 0)
 
 
@@ -176,33 +252,3 @@ def _tide_actions(fit: TideFit) -> list[Action]:
         Action("short tides removed", fit.tide.size, detail),
         Action("tidal lines merged with larger neighbours", len(fit.merged), merged),
     ]
-
-
-def _daily_means(
-    hours: Hourly, breaks: NDArray[np.float64], spacing: float
-) -> tuple[NDArray[np.int64], NDArray[np.float64], int]:
-    """Days, their means brought to noon, and how many days were left out.
-
-    A day that holds a step is split there and the longer part may stand for it.
-    """
-    day = hours.hour // 24
-    level = np.searchsorted(breaks, hours.days, side="right")
-    changed = (np.diff(day, prepend=day[:1] - 1) != 0) | (np.diff(level, prepend=level[:1]) != 0)
-    first = np.flatnonzero(changed)
-    counts = np.diff(first, append=day.size)
-    enough = counts * spacing >= _LEAST_SHARE * 24
-    mean = (np.add.reduceat(hours.pressure, first) / counts)[enough]
-    middle = (np.add.reduceat(hours.days, first) / counts)[enough]
-    day, level = day[first][enough], level[first][enough]
-    sparse = np.unique(hours.hour // 24).size - day.size
-    return day, mean + _slopes(middle, mean, level) * (day + 0.5 - middle), sparse
-
-
-def _slopes(days: NDArray[np.float64], values: NDArray[np.float64], level: NDArray[np.int64]) -> NDArray[np.float64]:
-    """Slope at each day along its neighbours on the same level; zero for a day alone."""
-    slopes = np.zeros(days.size)
-    for one in np.unique(level):
-        here = np.flatnonzero(level == one)
-        if here.size > 1:
-            slopes[here] = np.gradient(values[here], days[here])
-    return slopes

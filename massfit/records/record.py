@@ -1,9 +1,13 @@
 """A pressure record as read, and as reduced to daily means."""
 
 from dataclasses import dataclass
+from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
+
+Settling = Literal["model", "trim"] | float
+"""What is done about the first days on the bottom; a number is days that are left out."""
 
 
 @dataclass(frozen=True)
@@ -26,6 +30,42 @@ class Action:
 
 
 @dataclass(frozen=True)
+class LevelChange:
+    """A change of level within a deployment, across which one step is fitted.
+
+    Parameters
+    ----------
+    start, end : numpy.datetime64
+        The same instant for a step. The days a ramp touches are left out.
+    found : bool
+        Whether it was found in the record; otherwise the analyst declared it.
+    size : float or None
+        Level after less level before, Pa, as found; None where declared. The fit of the site has a better one.
+    in_gap : bool
+        Whether the record has nothing between start and end, so that it may have been a step.
+
+    Examples
+    --------
+    >>> fall = LevelChange(np.datetime64("2016-03-01"), np.datetime64("2016-03-04"), found=True, size=9500.0)
+    >>> fall.kind
+    'ramp'
+    """
+
+    start: np.datetime64
+    end: np.datetime64
+    found: bool
+    size: float | None = None
+    in_gap: bool = False
+
+    @property
+    def kind(self) -> str:
+        """Say what it is: "step", "ramp" or "change across a gap"."""
+        if self.start == self.end:
+            return "step"
+        return "change across a gap" if self.in_gap else "ramp"
+
+
+@dataclass(frozen=True)
 class Record:
     """One instrument on the bottom, as read.
 
@@ -43,8 +83,13 @@ class Record:
         "exponential+linear", "linear" or "none".
     steps : tuple of datetime64
         Declared changes of level; a new level begins at each.
+    ramps : tuple of (datetime64, datetime64)
+        First and last instant of declared changes of level that took time.
     find_steps : bool
-        Whether the analyst asked for steps to be found.
+        Whether the analyst asked for changes of level to be found.
+    settling : str or float
+        "model": the drift of the fit takes it up; "trim": the first days are left out until the record has come to
+        rest; or how many days are left out.
     source : str
         File, as the analyst wrote it.
     actions : tuple of Action
@@ -70,7 +115,9 @@ class Record:
     reference: float = 0.0
     drift: str = "exponential+linear"
     steps: tuple[np.datetime64, ...] = ()
+    ramps: tuple[tuple[np.datetime64, np.datetime64], ...] = ()
     find_steps: bool = False
+    settling: Settling = "model"
     source: str = ""
     actions: tuple[Action, ...] = ()
     units: str = ""
@@ -112,10 +159,13 @@ class DailyRecord:
         First instant of the deployment, the origin of its drift.
     drift : str
     steps : tuple of datetime64
+        Where the fit begins a new level: the instants of steps, the ends of ramps.
     tides : tuple of TidalConstant
         Largest first; empty where tides were already removed.
     actions : tuple of Action
         Everything done from file to daily mean.
+    changes : tuple of LevelChange
+        Steps and ramps, declared and found, in order of time.
     """
 
     site: str
@@ -127,3 +177,4 @@ class DailyRecord:
     steps: tuple[np.datetime64, ...] = ()
     tides: tuple[TidalConstant, ...] = ()
     actions: tuple[Action, ...] = ()
+    changes: tuple[LevelChange, ...] = ()

@@ -161,6 +161,17 @@ FAULTS = {
         ['N:28: site[B].deployment[1].steps[1]: the value is "yesterday". '
          "Must be a UTC time such as 2016-03-01T00:00:00Z."],
     ),
+    "ramp that ends before it starts": (
+        'drift = "linear"',
+        "ramps = [{ from = 2015-05-03, to = 2015-05-01 }]",
+        ["N:28: site[B].deployment[1].ramps[1]: the ramp runs from 2015-05-03T00:00:00 to 2015-05-01T23:59:59. "
+         "Must start before it ends. Exchange the two, or declare a step with `steps`."],
+    ),
+    "unknown settling": (
+        'drift = "linear"',
+        'settling = "cut"',
+        ['N:28: site[B].deployment[1].settling: the value is "cut". Must be \'model\' or \'trim\', or a number.'],
+    ),
     "union of types": (
         EXCLUDE,
         "exclude = true",

@@ -95,6 +95,17 @@ def test_shorthands_of_a_deployment(network_folder: Path, change: Change) -> Non
     assert record.steps == (np.datetime64("2015-01-01"), np.datetime64("2015-06-01T12"))
 
 
+def test_ramps_and_settling_of_a_deployment(network_folder: Path, change: Change) -> None:
+    ramps = "[{ from = 2015-04-24, to = 2015-04-26 }, { from = 2015-06-01T06:00:00Z, to = 2015-06-02T18:00:00Z }]"
+    change('delimiter = ","', f'delimiter = ","\nramps = {ramps}\nsettling = 14')
+    record = read_network(network_folder).records[0]
+    # a date as `to` means its last instant
+    whole, hours = record.ramps
+    assert whole == (np.datetime64("2015-04-24"), np.datetime64("2015-04-26T23:59:59.999999999"))
+    assert hours == (np.datetime64("2015-06-01T06"), np.datetime64("2015-06-02T18"))
+    assert (record.settling, record.find_steps) == (14.0, True)
+
+
 def test_built_in_loads(network_folder: Path, change: Change) -> None:
     change('["fields/loads.nc"]', '["builtin:nominal", "fields/loads.nc"]')
     assert [pattern.name for pattern in read_network(network_folder).loads] == ["nominal", "wet", "dry"]

@@ -55,6 +55,15 @@ def test_records_come_back(network: Network, read_back: Network) -> None:
         assert np.allclose(read.pressure + read.reference, absolute, rtol=0.0, atol=1e-6, equal_nan=True)
 
 
+def test_ramps_and_settling_come_back(network: Network, tmp_path: Path) -> None:
+    first, *others = network.records
+    ramp = (np.datetime64("2015-04-24T06:00:00", "ns"), np.datetime64("2015-04-26T12:30:00", "ns"))
+    records = (replace(first, ramps=(ramp,), settling="trim"), *others)
+    read = changed(network, tmp_path, records=records).records
+    assert (read[0].ramps, read[0].settling) == ((ramp,), "trim")
+    assert (read[1].ramps, read[1].settling) == ((), "model")
+
+
 def test_fields_come_back(network: Network, read_back: Network) -> None:
     for written, read in zip(network.circulation, read_back.circulation, strict=True):
         assert (read.name, read.air_pressure) == (written.name, written.air_pressure)
