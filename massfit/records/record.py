@@ -125,7 +125,7 @@ class Record:
 
 @dataclass(frozen=True)
 class TidalConstant:
-    """Amplitude and phase of one short tide, by the fit that removed it.
+    """Amplitude and lag of one short tide over a record, by the fit that removed it.
 
     Parameters
     ----------
@@ -133,15 +133,35 @@ class TidalConstant:
         Darwin name.
     cycles_per_day : float
     amplitude : float
-        Pa.
-    phase : float
-        Radians, lag behind the line's phase at 1 January 2000 00:00 UTC.
+        As seen over the record, Pa; divided by `nodal_factor` it is that of 18.6 years.
+    greenwich_lag : float
+        Lag behind the equilibrium tide at Greenwich, radians in [0, 2 pi); `nodal_angle` is to be added for 18.6 years.
+    amplitude_sd : float
+        Standard error of the amplitude from what the record holds beside the line, Pa. That of the lag is this over the
+        amplitude.
+    nodal_factor, nodal_angle : float or None
+        Modulation by the node of the Moon's orbit in the middle of the record; 1 and 0 (radians) for solar lines, None
+        where it follows no simple rule.
+
+    Examples
+    --------
+    >>> constant = TidalConstant("M2", 1.9322736, 3000.0, 1.2, 15.0)
+    >>> round(np.degrees(constant.lag_sd), 2)
+    0.29
     """
 
     name: str
     cycles_per_day: float
     amplitude: float
-    phase: float
+    greenwich_lag: float
+    amplitude_sd: float
+    nodal_factor: float | None = None
+    nodal_angle: float | None = None
+
+    @property
+    def lag_sd(self) -> float:
+        """Standard error of the lag, radians; half a turn where the line is not seen at all."""
+        return min(self.amplitude_sd / self.amplitude, np.pi) if self.amplitude > 0.0 else np.pi
 
 
 @dataclass(frozen=True)

@@ -5,6 +5,7 @@ semi-annual cycle themselves.
 """
 
 import numpy as np
+from numpy.typing import NDArray
 
 _RAYLEIGH = 0.95
 """Cycles; a little below 1, so that 365 days of hourly samples part K1 and S1."""
@@ -16,6 +17,8 @@ _MEAN_RATES = (
 )
 # tau, the lunar hour angle of the mean Moon, turns with the Earth less s plus h
 _ARGUMENT_RATES = np.concatenate([[360.0 - _MEAN_RATES[0] + _MEAN_RATES[1]], _MEAN_RATES])
+# the same mean longitudes in degrees at 1 January 2000 12:00 (ibid.; N' is counted backwards)
+_MEAN_LONGITUDES = np.array([218.316_447_7, 280.466_46, 83.353_246_5, -125.044_52, 282.937_35])
 
 # Doodson numbers (Doodson 1921) of the lines of the developed potential (Cartwright & Tayler 1971; Cartwright &
 # Edden 1973) and of the common shallow-water compounds, under their Darwin names. The order is that of claim: of two
@@ -70,6 +73,16 @@ _DOODSON_NUMBERS = {
 }
 
 
+# quarters of a turn that a line is ahead of the sum of its longitudes, so that its equilibrium amplitude is positive
+# north of the equator (Doodson 1921; Schureman 1958, table 2); zero where not given. Compounds take their parents'.
+_QUARTER_TURNS = {
+    **dict.fromkeys(("K1", "S1", "NO1", "J1", "OO1", "phi1", "chi1", "theta1", "psi1", "tau1", "ups1"), 1),
+    **dict.fromkeys(("MK3", "SK3", "SO1"), 1),
+    **dict.fromkeys(("L2", "lambda2", "H1", "R2", "M3"), 2),
+    **dict.fromkeys(("O1", "P1", "Q1", "rho1", "sigma1", "2Q1", "pi1", "MO3"), 3),
+}
+
+
 def cycles_per_day(doodson_number: str) -> float:
     """Frequency of a tidal line from its Doodson number.
 
@@ -93,9 +106,41 @@ def cycles_per_day(doodson_number: str) -> float:
     >>> round(cycles_per_day("255.555") * 15, 6)  # M2, degrees per hour
     28.984104
     """
+    return float(_multiples(doodson_number) @ _ARGUMENT_RATES) / 360.0
+
+
+def _multiples(doodson_number: str) -> NDArray[np.int64]:
+    """Multiples of lunar time, s, h, p, N' and p1."""
     digits = np.array([int(digit) for digit in doodson_number if digit != "."])
-    multiples = digits - np.array([0, 5, 5, 5, 5, 5])
-    return float(multiples @ _ARGUMENT_RATES) / 360.0
+    return np.asarray(digits - np.array([0, 5, 5, 5, 5, 5]))
+
+
+def _longitudes_at_epoch() -> NDArray[np.float64]:
+    """Lunar time, s, h, p, N' and p1 at 1 January 2000 00:00 UTC, degrees."""
+    midnight = _MEAN_LONGITUDES - 0.5 * _MEAN_RATES
+    return np.concatenate([[midnight[1] - midnight[0]], midnight])
+
+
+def greenwich_argument(name: str) -> float:
+    """Phase of a line of the equilibrium tide at Greenwich at 1 January 2000 00:00 UTC.
+
+    Parameters
+    ----------
+    name : str
+        Darwin name.
+
+    Returns
+    -------
+    float
+        Radians, in [0, 2 pi); without the 18.6-year modulation.
+
+    Examples
+    --------
+    >>> greenwich_argument("S2")  # twice the mean Sun, at midnight
+    0.0
+    """
+    degrees = _multiples(_DOODSON_NUMBERS[name]) @ _longitudes_at_epoch() + 90.0 * _QUARTER_TURNS.get(name, 0)
+    return float(np.radians(round(float(degrees), 9) % 360.0))
 
 
 SHORT_TIDES = {name: cycles_per_day(number) for name, number in _DOODSON_NUMBERS.items()}

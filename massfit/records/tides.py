@@ -11,13 +11,17 @@ from scipy.sparse import csr_array
 
 from massfit.records.background import background_design
 from massfit.records.clean import find_spikes
+from massfit.records.nodal import nodal_modulation
 from massfit.records.record import TidalConstant
-from massfit.records.tidal_lines import SHORT_TIDES, parted_lines
+from massfit.records.tidal_lines import SHORT_TIDES, greenwich_argument, parted_lines
 
 _SEGMENT_HOURS = 8766
 """Hours of data of a segment, at least: a year, over which the node moves an amplitude by a few per cent."""
 _ROUNDS = 4
 """Fits of a segment, at most, while spikes are looked for."""
+_NEAR_CYCLES_PER_DAY = 0.1
+"""What the record holds so close to a line is taken for its noise: the tides of a species lie within twice that."""
+_LEAST_BINS = 8
 _RIDGE = 1.0e-6
 """Keeps splines without data at zero; samples count as 1."""
 
@@ -94,6 +98,7 @@ def fit_short_tides(
     edges = np.linspace(0, days.size, count + 1).astype(int)
     tide, spikes = np.empty(days.size), np.zeros(days.size, dtype=bool)
     phasors: dict[str, list[complex]] = {}
+    variances: dict[str, list[float]] = {}
     merged: set[str] = set()
     for start, stop in pairwise(edges):
         part = slice(start, stop)
@@ -101,17 +106,51 @@ def fit_short_tides(
         merged |= set(SHORT_TIDES) - set(names)
         tides = _tidal_design(days[part], spread[part], names)
         background = background_design(days[part], np.asarray(breaks, dtype=float))
-        coefficients, spikes[part] = _robust_fit(background, tides, pressure[part])
+        coefficients, residual, spikes[part] = _robust_fit(background, tides, pressure[part])
         tide[part] = tides @ coefficients
-        for name, cosine, sine in zip(names, *coefficients.reshape(2, -1), strict=True):
+        noise = _amplitude_variances(days[part], np.where(spikes[part], 0.0, residual), names)
+        for name, cosine, sine, variance in zip(names, *coefficients.reshape(2, -1), noise, strict=True):
             phasors.setdefault(name, []).append(complex(cosine, sine))
-    constants = [_constant(name, complex(np.mean(values))) for name, values in phasors.items()]
+            variances.setdefault(name, []).append(float(variance))
+    middle = 0.5 * float(days[0] + days[-1]) if days.size else 0.0
+    constants = [_constant(name, phasors[name], variances[name], middle) for name in phasors]
     constants.sort(key=lambda constant: -constant.amplitude)
     return TideFit(tide, spikes, tuple(constants), tuple(name for name in SHORT_TIDES if name in merged), count)
 
 
-def _constant(name: str, phasor: complex) -> TidalConstant:
-    return TidalConstant(name, SHORT_TIDES[name], float(np.abs(phasor)), float(np.angle(phasor)))
+def _constant(name: str, phasors: list[complex], variances: list[float], middle: float) -> TidalConstant:
+    phasor = complex(np.mean(phasors))
+    factor, angle = nodal_modulation(name, middle) or (None, None)
+    return TidalConstant(
+        name=name,
+        cycles_per_day=SHORT_TIDES[name],
+        amplitude=abs(phasor),
+        greenwich_lag=float((np.angle(phasor) + greenwich_argument(name)) % (2.0 * np.pi)),
+        amplitude_sd=float(np.sqrt(np.sum(variances))) / len(variances),
+        nodal_factor=factor,
+        nodal_angle=angle,
+    )
+
+
+def _amplitude_variances(
+    days: NDArray[np.float64], residual: NDArray[np.float64], names: Sequence[str]
+) -> NDArray[np.float64]:
+    """Variance of each amplitude from the spectrum of what is left around its line: (len(names),), Pa2.
+
+    A level of power S (the variance, for white noise) gives an amplitude the variance 2 S / n. The lines
+    that were fitted took their own bins, so that the mean over the others counts.
+    """
+    hour = np.round((days - days[0]) * 24.0).astype(np.int64)
+    power = np.abs(np.fft.rfft(np.bincount(hour, residual))) ** 2 / days.size
+    frequency = np.arange(power.size) * 24.0 / (hour[-1] + 1)
+    lines = np.array([SHORT_TIDES[name] for name in names])
+    width = max(_NEAR_CYCLES_PER_DAY, 0.5 * _LEAST_BINS * 24.0 / (hour[-1] + 1))
+    level = np.empty(lines.size)
+    for place, line in enumerate(lines):
+        near = np.abs(frequency - line) <= width
+        fitted = np.count_nonzero(np.abs(lines - line) <= width)
+        level[place] = power[near].sum() / max(np.count_nonzero(near) - fitted, 1)
+    return np.asarray(2.0 * level / days.size)
 
 
 def _tidal_design(
@@ -129,8 +168,8 @@ def _tidal_design(
 
 def _robust_fit(
     background: csr_array, tides: NDArray[np.float64], pressure: NDArray[np.float64]
-) -> tuple[NDArray[np.float64], NDArray[np.bool_]]:
-    """Coefficients of the tides, and the spikes against the whole fit."""
+) -> tuple[NDArray[np.float64], NDArray[np.float64], NDArray[np.bool_]]:
+    """Coefficients of the tides, what the whole fit leaves, and the spikes against it."""
     centred = pressure - np.median(pressure)
     spikes = np.zeros(pressure.size, dtype=bool)
     whole, whole_right = _normal_equations(background, tides, centred)
@@ -139,11 +178,12 @@ def _robust_fit(
         spike, spike_right = _normal_equations(background[spikes], tides[spikes], centred[spikes])
         solution = cho_solve(cho_factor(whole - spike, check_finite=False), whole_right - spike_right)
         curve, lines = solution[: -tides.shape[1]], solution[-tides.shape[1] :]
-        found = find_spikes(centred - background @ curve - tides @ lines)
+        residual = centred - background @ curve - tides @ lines
+        found = find_spikes(residual)
         if np.array_equal(found, spikes):
             break
         spikes = found
-    return lines, spikes
+    return lines, residual, spikes
 
 
 def _normal_equations(

@@ -1,9 +1,11 @@
 import csv
 from pathlib import Path
 
+import numpy as np
 import pytest
 
-from massfit.records.tidal_lines import SHORT_TIDES, parted_lines
+from massfit.records.nodal import nodal_modulation
+from massfit.records.tidal_lines import SHORT_TIDES, greenwich_argument, parted_lines
 
 REFERENCE = Path(__file__).parents[1] / "reference" / "tidal_speeds_schureman.csv"
 
@@ -27,6 +29,48 @@ def test_every_speed_agrees_with_a_general_tide_library() -> None:
     for name, frequency in SHORT_TIDES.items():
         # cycles per day; 1e-8 turns by a thousandth of a degree in a year
         assert frequency == pytest.approx(theirs[spelling.get(name, name.casefold())], abs=1e-8)
+
+
+DAYS = [0.0, 2000.5, 4500.25, 6000.0, 9000.75]
+
+
+def arguments_of_a_general_library(days: float) -> dict[str, tuple[float, float, float]]:
+    """Nodal factor, nodal turn and argument (turns) of every line, by Darwin name."""
+    harmonics = pytest.importorskip("utide.harmonics")
+    names = [name.strip().casefold() for name in harmonics.ut_constants.const.name]
+    spelling = {"sigma1": "sig1", "lambda2": "lda2", "theta1": "the1"}
+    lines = np.array([names.index(spelling.get(name, name.casefold())) for name in SHORT_TIDES])
+    # days of the proleptic calendar; no latitude enters, since the ratios of the node's own side lines do not need it
+    time = np.array([float(np.datetime64("2000-01-01").astype(int) + 719_163) + days])
+    factor, turn, argument = harmonics.FUV(time, time[0], lines, 21.0, [0, 0, 0, 0])
+    rows = zip(factor[0].tolist(), turn[0].tolist(), argument[0].tolist(), strict=True)
+    return dict(zip(SHORT_TIDES, rows, strict=True))
+
+
+@pytest.mark.parametrize("days", DAYS)
+def test_greenwich_arguments_are_those_of_a_general_tide_library(days: float) -> None:
+    for name, (_, _, theirs) in arguments_of_a_general_library(days).items():
+        turns = greenwich_argument(name) / (2 * np.pi) + SHORT_TIDES[name] * days - theirs
+        # linear mean longitudes against theirs with squares of time
+        assert abs((turns + 0.5) % 1.0 - 0.5) * 360.0 < 0.01, name
+
+
+@pytest.mark.parametrize("days", DAYS)
+def test_modulation_by_the_node_is_that_of_a_general_tide_library(days: float) -> None:
+    for name, (factor, turn, _) in arguments_of_a_general_library(days).items():
+        ours = nodal_modulation(name, days)
+        if ours is not None and name != "S1":  # S1 is theirs with the side lines of its gravity, not of the air
+            # the node alone against every side line
+            assert ours[0] == pytest.approx(factor, abs=0.035), name
+            assert abs(np.degrees(ours[1]) - 360.0 * turn) < 2.5, name
+
+
+def test_published_modulation_at_the_extremes() -> None:
+    # Pugh (1987), section 4.2.2: M2 by 3.7 % either way, K2 by 28.6 %, O1 by 18.7 %, over 18.6 years
+    span = np.arange(0.0, 18.7 * 365.25, 10.0)
+    for name, swing in {"M2": 0.037, "K2": 0.286, "O1": 0.187, "K1": 0.115}.items():
+        factors = [nodal_modulation(name, day)[0] for day in span]
+        assert 0.5 * np.ptp(factors) == pytest.approx(swing, abs=0.001)
 
 
 def test_no_line_is_slower_than_diurnal() -> None:
