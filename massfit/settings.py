@@ -18,7 +18,7 @@ _STRICT = ConfigDict(extra="forbid", allow_inf_nan=False)
 
 NonNegative = Annotated[float, Field(ge=0)]
 NoiseForm = Literal["white", "exponential", "smooth", "power-law", "sum"]
-DriftForm = Literal["exponential+linear", "linear", "none"]
+DriftForm = Literal["exponential+linear", "logarithm+linear", "linear", "none", "compare"]
 
 PREM = "prem"
 """The Earth model that ships with the package."""

@@ -1,6 +1,6 @@
-"""Joint sample of the drift time constants of a site with several exponentials.
+"""Joint sample of the drift terms of a site that has several.
 
-The time constants meet in the annual phasor that the deployments share. Gibbs chains
+Terms meet in the annual phasor that the deployments share. Gibbs chains
 (Geman & Geman 1984) run over the nodes of the grids at the mode of the noise; their
 conditional masses, averaged over the chains, show where the grids must be finer than
 each in turn would ask for. The evidence is taken to a power below one, so that the
@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 
 from massfit.annual.design import Design
 from massfit.annual.evidence import Reduction, conditional_log_evidence, reduce_columns
-from massfit.annual.grid import DriftGrid, grid_of
+from massfit.annual.grid import DriftGrid
 from massfit.annual.noise import NoiseCovariance
 
 Floats = NDArray[np.float64]
@@ -38,7 +38,7 @@ REFINEMENT_SWEEPS = 4
 
 @dataclass(frozen=True)
 class DriftSample:
-    """Choices of the drift time constants and how they are to be weighed.
+    """Choices of the drift terms and how they are to be weighed.
 
     Parameters
     ----------
@@ -55,7 +55,7 @@ class DriftSample:
 
 
 def sample_drift(noise: NoiseCovariance, design: Design, grid: DriftGrid, rng: np.random.Generator) -> DriftSample:
-    """Choices of drift time constants: every node for one exponential, a joint sample for more.
+    """Choices of the drift terms: every node for one, a joint sample for more.
 
     Parameters
     ----------
@@ -70,23 +70,23 @@ def sample_drift(noise: NoiseCovariance, design: Design, grid: DriftGrid, rng: n
     -------
     DriftSample
     """
-    if len(grid.logs) < 2:
+    if len(grid.nodes) < 2:
         grid = grid.pruned()
-        choices = np.arange(len(grid.logs[0]) if grid.logs else 1)[None, :, None][:, :, : len(grid.logs)]
-        log_ratio = np.log(grid.prior_mass[0]) if grid.logs else np.zeros(1)
+        choices = np.arange(len(grid.nodes[0]) if grid.nodes else 1)[None, :, None][:, :, : len(grid.nodes)]
+        log_ratio = np.log(grid.nodes[0].prior) if grid.nodes else np.zeros(1)
         return DriftSample(grid, choices, log_ratio[None, :])
-    logs = np.column_stack([_draw(np.tile(mass, (CHAINS, 1)), rng) for mass in grid.mass])
-    states = np.column_stack([nodes[column] for nodes, column in zip(grid.logs, logs.T, strict=True)])
+    choices = np.column_stack([_draw(np.tile(mass, (CHAINS, 1)), rng) for mass in grid.mass])
     for _ in range(REFINEMENTS):
-        chains = _Chains(noise, design, grid, states)
-        mass = chains.run(REFINEMENT_SWEEPS, rng)
-        states = chains.states
-        finer = replace(grid, mass=mass).split()
-        if all(len(new) == len(old) for new, old in zip(finer.logs, grid.logs, strict=True)):
+        chains = _Chains(noise, design, grid, choices)
+        finer = replace(grid, mass=chains.run(REFINEMENT_SWEEPS, rng)).split()
+        choices = _moved(chains.choices, grid, finer)
+        if all(len(new) == len(old) for new, old in zip(finer.nodes, grid.nodes, strict=True)):
             break
-        grid = grid_of(finer.logs, np.log(grid.mode))
-    grid = replace(grid, mass=_Chains(noise, design, grid, states).run(REFINEMENT_SWEEPS, rng)).pruned()
-    chains = _Chains(noise, design, grid, states)
+        grid = finer
+    chains = _Chains(noise, design, grid, choices)
+    final = replace(grid, mass=chains.run(REFINEMENT_SWEEPS, rng)).pruned()
+    choices, grid = _moved(chains.choices, grid, final), final
+    chains = _Chains(noise, design, grid, choices)
     chains.run(BURN_IN, rng)
     kept, log_evidence = [], []
     for _ in range(KEPT_SWEEPS):
@@ -99,23 +99,18 @@ def sample_drift(noise: NoiseCovariance, design: Design, grid: DriftGrid, rng: n
 class _Chains:
     """Gibbs chains over the nodes of one grid."""
 
-    def __init__(self, noise: NoiseCovariance, design: Design, grid: DriftGrid, states: Floats) -> None:
+    def __init__(self, noise: NoiseCovariance, design: Design, grid: DriftGrid, choices: Choices) -> None:
         self.grid = grid
-        self.reduction: Reduction = reduce_columns(noise, design, design.exponentials(grid.time_constants))
-        self.choices = grid.nearest(states)
-        self.log_evidence = np.zeros(len(states))
-
-    @property
-    def states(self) -> Floats:
-        """Logarithms of the time constants: (C, D)."""
-        return np.column_stack([nodes[own] for nodes, own in zip(self.grid.logs, self.choices.T, strict=True)])
+        self.reduction: Reduction = reduce_columns(noise, design, design.drift_columns(grid.nodes))
+        self.choices = choices.copy()
+        self.log_evidence = np.zeros(len(choices))
 
     def run(self, sweeps: int, rng: np.random.Generator) -> tuple[Floats, ...]:
         """Run some sweeps; returns the conditional masses averaged over chains and sweeps."""
-        masses = [np.zeros(len(nodes)) for nodes in self.grid.logs]
+        masses = [np.zeros(len(nodes)) for nodes in self.grid.nodes]
         first = self.grid.first_columns
         for _ in range(sweeps):
-            for place, prior in enumerate(self.grid.prior_mass):
+            for place, prior in enumerate(nodes.prior for nodes in self.grid.nodes):
                 columns = first[place] + np.arange(len(prior))
                 log_evidence = conditional_log_evidence(self.reduction, self.choices + first, place, columns)
                 density = prior * np.exp(POWER * (log_evidence - log_evidence.max(axis=1, keepdims=True)))
@@ -124,6 +119,15 @@ class _Chains:
                 self.choices[:, place] = _draw(density, rng)
                 self.log_evidence = log_evidence[np.arange(len(log_evidence)), self.choices[:, place]]
         return tuple(masses)
+
+
+def _moved(choices: Choices, old: DriftGrid, new: DriftGrid) -> Choices:
+    """Places on a new grid of (C, D) choices on an old one."""
+    columns = [
+        after.nearest(before.form[own], before.log_time[own])
+        for before, after, own in zip(old.nodes, new.nodes, choices.T, strict=True)
+    ]
+    return np.column_stack(columns)
 
 
 def _draw(mass: Floats, rng: np.random.Generator) -> Choices:

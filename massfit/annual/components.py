@@ -28,6 +28,7 @@ from massfit.annual.evidence import (
 )
 from massfit.annual.families import log_score_prior
 from massfit.annual.mode import FamilyMode, Mode
+from massfit.annual.nodes import Nodes
 from massfit.annual.noise import NoiseModel
 
 Floats = NDArray[np.float64]
@@ -65,8 +66,10 @@ class Components:
         Form of each of S noise models.
     models : tuple of NoiseModel
         S of them.
-    time_constants : (K, D) array
-        Days.
+    choice : (K, D) array of int
+        Node of each drift term.
+    nodes : tuple of Nodes
+        D of them.
     annual : (K, 2, 1 + M + C) array
         Annual phasor of the data, and the response of the same operator to each contrast and companion, Pa.
     annual_covariance : (K, 2, 2) array
@@ -74,14 +77,15 @@ class Components:
     mean, variance : (K, f) array
         Fixed coefficients.
     size, size_variance : (K, D) array
-        Exponentials.
+        Drift terms.
     """
 
     weight: Floats
     node: Choices
     forms: tuple[str, ...]
     models: tuple[NoiseModel, ...]
-    time_constants: Floats
+    choice: Choices
+    nodes: tuple[Nodes, ...]
     annual: Floats
     annual_covariance: Floats
     mean: Floats
@@ -114,8 +118,8 @@ def integrate(design: Design, mode: Mode, rng: np.random.Generator) -> Component
     Components
     """
     sample = sample_drift(design.covariance(mode.noise), design, mode.grid, rng)
-    exponentials = compress(design.exponentials(sample.grid.time_constants), sample.grid.first_columns)
-    solver = _Solver(design, sample, exponentials)
+    columns = compress(design.drift_columns(sample.grid.nodes), sample.grid.first_columns)
+    solver = _Solver(design, sample, columns)
     log_evidence = np.array([each.log_evidence for each in mode.families])
     share = np.exp(log_evidence - np.logaddexp.reduce(log_evidence))
     batches = [
@@ -123,7 +127,7 @@ def integrate(design: Design, mode: Mode, rng: np.random.Generator) -> Component
         for each, part in zip(mode.families, share, strict=True)
         for batch in _explore(solver, each, mode.white_ratio, float(part), rng)
     ]
-    return _collect(batches)
+    return _collect(batches, sample.grid.nodes)
 
 
 def _explore(
@@ -203,7 +207,7 @@ class _Batch:
     form: str
     model: NoiseModel
     log_weight: Floats
-    time_constants: Floats
+    choice: Choices
     annual: Floats
     annual_covariance: Floats
     mean: Floats
@@ -229,8 +233,8 @@ class _Batch:
 class _Solver:
     """Solves all drift-time choices of one set for one noise model; the sets take turns."""
 
-    def __init__(self, design: Design, sample: DriftSample, exponentials: tuple[Floats, Floats]) -> None:
-        self.design, self.sample, self.exponentials = design, sample, exponentials
+    def __init__(self, design: Design, sample: DriftSample, columns: tuple[Floats, Floats]) -> None:
+        self.design, self.sample, self.columns = design, sample, columns
         self._turns = count()
 
     def solve(self, mode: FamilyMode, scores: Floats, white_ratio: Floats) -> _Batch:
@@ -238,14 +242,13 @@ class _Solver:
         model, grid = mode.family.model(scores, white_ratio), self.sample.grid
         row = next(self._turns) % len(self.sample.choices)
         choices = self.sample.choices[row]
-        reduction = reduce_columns(self.design.covariance(model), self.design, *self.exponentials, with_companions=True)
+        reduction = reduce_columns(self.design.covariance(model), self.design, *self.columns, with_companions=True)
         solutions = solve_choices(reduction, choices + grid.first_columns)
-        times = [own[nodes] for own, nodes in zip(grid.time_constants, choices.T, strict=True)]
         return _Batch(
             form=mode.family.form,
             model=model,
             log_weight=solutions.log_evidence + self.sample.log_ratio[row] + log_score_prior(scores),
-            time_constants=np.array(times).T.reshape(choices.shape),
+            choice=choices,
             annual=solutions.mean[:, ANNUAL],
             annual_covariance=annual_covariance(reduction, solutions),
             mean=solutions.mean[:, :, 0],
@@ -255,7 +258,7 @@ class _Solver:
         )
 
 
-def _collect(batches: list[_Batch]) -> Components:
+def _collect(batches: list[_Batch], nodes: tuple[Nodes, ...]) -> Components:
     log_weight = np.concatenate([batch.log_weight for batch in batches])
     weight = np.exp(log_weight - log_weight.max())
     return Components(
@@ -263,7 +266,8 @@ def _collect(batches: list[_Batch]) -> Components:
         node=np.repeat(np.arange(len(batches)), [len(batch.log_weight) for batch in batches]),
         forms=tuple(batch.form for batch in batches),
         models=tuple(batch.model for batch in batches),
-        time_constants=np.concatenate([batch.time_constants for batch in batches]),
+        choice=np.concatenate([batch.choice for batch in batches]),
+        nodes=nodes,
         annual=np.concatenate([batch.annual for batch in batches]),
         annual_covariance=np.concatenate([batch.annual_covariance for batch in batches]),
         mean=np.concatenate([batch.mean for batch in batches]),

@@ -24,11 +24,11 @@ from massfit.annual.evidence import (
 )
 from massfit.annual.fit import SiteFit
 from massfit.annual.grid import DriftGrid, refine_grid
+from massfit.annual.nodes import Nodes
 from massfit.annual.noise import NoiseModel
 from massfit.annual.operator import calendar_years
 from massfit.annual.record import ReducedRecord
 from massfit.constants import JULIAN_YEAR_DAYS, PASCAL_PER_HPA
-from massfit.phasor import annual_basis
 from massfit.settings import Priors
 
 Floats = NDArray[np.float64]
@@ -206,7 +206,7 @@ def diagnose_site(
     noise = design.covariance(model)
     grid = refine_grid(noise, design)
     sample = sample_drift(noise, design, grid, rng)
-    columns = design.exponentials(sample.grid.time_constants)
+    columns = design.drift_columns(sample.grid.nodes)
     reduction = reduce_columns(noise, design, columns)
     choices = sample.choices.reshape(sample.log_ratio.size, -1)
     solutions = solve_choices(reduction, choices + sample.grid.first_columns)
@@ -229,12 +229,11 @@ def diagnose_site(
 class _Residual:
     """The plug-in fit of one site: what is left, whitened or not, and how the fit acts on any column."""
 
-    def __init__(self, design: Design, model: NoiseModel, time_constants: Floats) -> None:
+    def __init__(self, design: Design, model: NoiseModel, terms: Sequence[Nodes]) -> None:
         self.design, self.model = design, model
         self.noise = design.covariance(model)
-        exponentials = design.exponentials([np.array([time]) for time in time_constants])
-        self.columns = np.column_stack([design.fixed, exponentials])
-        self.precision = np.append(design.precision, np.full(len(time_constants), design.exponential_sd**-2))
+        self.columns = np.column_stack([design.fixed, design.drift_columns(terms)])
+        self.precision = np.append(design.precision, np.full(len(terms), design.exponential_sd**-2))
         self.white_columns = self.noise.whiten(self.columns)
         fit = linear_fit(self.white_columns, self.noise.whiten(design.data[:, None]), self.precision)
         self.covariance = fit.covariance
@@ -249,18 +248,19 @@ class _Residual:
 
 
 def _spectrum(residual: _Residual) -> ResidualSpectrum:
-    days, count = residual.design.days, len(residual.design.days)
+    observed = residual.design.observed
+    days, count = residual.design.days[observed], int(observed.sum())
     span = days[-1] - days[0] + 1.0
     frequencies = np.arange(1, int(span / 2)) / span
-    density = 2.0 * lombscargle(days, residual.left, 2.0 * np.pi * frequencies)
+    density = 2.0 * lombscargle(days, residual.left[observed], 2.0 * np.pi * frequencies)
     edges = np.geomspace(frequencies[0], frequencies[-1], SPECTRUM_BINS + 1)[1:-1]
     bins = np.split(np.arange(len(frequencies)), np.searchsorted(frequencies, edges))
     bins = [members for members in bins if len(members)]
     expected = []
     for members in bins:
         picked = members[np.linspace(0, len(members) - 1, min(len(members), EXPECTED_PER_BIN)).astype(int)]
-        angle = 2.0 * np.pi * frequencies[picked] * days[:, None]
-        waves = residual.variance(np.column_stack([np.cos(angle), np.sin(angle)]))
+        angle = 2.0 * np.pi * frequencies[picked] * residual.design.days[:, None]
+        waves = residual.variance(np.column_stack([np.cos(angle), np.sin(angle)]) * observed[:, None])
         expected.append(2.0 * waves.sum() / (count * len(picked)))
     centres = np.array([frequencies[members].mean() for members in bins])
     return ResidualSpectrum(
@@ -273,7 +273,7 @@ def _spectrum(residual: _Residual) -> ResidualSpectrum:
 
 
 def _whiteness(residual: _Residual) -> Whiteness:
-    white = residual.noise.whiten(residual.left[:, None])[:, 0]
+    white = residual.noise.whiten(residual.left[:, None])[residual.design.observed, 0]
     count, fitted = len(white), residual.columns.shape[1]
     lags = min(LAGS, count // 4)
     away = white - white.mean()
@@ -288,9 +288,11 @@ def _whiteness(residual: _Residual) -> Whiteness:
 def _year_phasors(residual: _Residual, reference_year: int) -> tuple[YearPhasor, ...]:
     design = residual.design
     year_of = calendar_years(design.days, reference_year)
-    distinct = {int(year): len(np.unique(design.days[year_of == year])) for year in np.unique(year_of)}
+    distinct = {
+        int(year): len(np.unique(design.days[design.observed & (year_of == year)])) for year in np.unique(year_of)
+    }
     kept = [year for year, days in distinct.items() if days >= LEAST_YEAR_DAYS]
-    cycle = annual_basis(design.days)
+    cycle = design.fixed[:, ANNUAL]
     # years of few days share what the others leave
     blocks = [cycle * (year_of == year)[:, None] for year in kept]
     rest = ~np.isin(year_of, kept)
@@ -335,13 +337,13 @@ def _drift_curve(
     fixed = design.fixed[np.ix_(rows, drift.fixed)]
     own = fixed @ reduction.covariance[np.ix_(drift.fixed, drift.fixed)]
     constant = np.sum(own * fixed, axis=1)
+    columns = {place: design.term_columns(design.terms[place], grid.nodes[place], rows) for place in drift.terms}
     means, variances = [], []
     for choice in drawn:
         # curve = fixed terms without exponentials + (own exponential less what fixed terms give up) times sizes
         gain = -fixed @ solutions.leak[choice][list(drift.fixed)]
-        if drift.exponential is not None:
-            time = grid.time_constants[drift.exponential][choices[choice, drift.exponential]]
-            gain[:, drift.exponential] += np.exp(-design.elapsed[rows] / time)
+        for place in drift.terms:
+            gain[:, place] += columns[place][:, choices[choice, place]]
         means.append(fixed @ reduction.mean[list(drift.fixed), 0] + gain @ solutions.size[choice, :, 0])
         variances.append(constant + np.sum((gain @ solutions.size_covariance[choice]) * gain, axis=1))
     mean = np.mean(means, axis=0)

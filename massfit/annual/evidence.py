@@ -11,6 +11,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.linalg import block_diag
 
 from massfit.annual.design import Design
 from massfit.annual.noise import NoiseCovariance
@@ -127,15 +128,15 @@ def compress(exponentials: Floats, first_columns: NDArray[np.int64]) -> tuple[Fl
     """
     if not len(first_columns):
         return exponentials, np.zeros((0, 0))
-    bases = []
+    bases, combinations = [], []
     for block in np.split(exponentials, first_columns[1:], axis=1):
-        # deployments own different rows; decomposed alone, their directions are orthonormal to rounding
         rows = block.any(axis=1)
-        left, values, _ = np.linalg.svd(block[rows], full_matrices=False)
-        bases.append(np.zeros((len(block), int(np.sum(values > COMPRESSION * values[0])))))
-        bases[-1][rows] = left[:, : bases[-1].shape[1]]
-    basis = np.column_stack(bases)
-    return basis, basis.T @ exponentials
+        left, values, right = np.linalg.svd(block[rows], full_matrices=False)
+        kept = int(np.sum(values > COMPRESSION * values.max(initial=0.0)))
+        bases.append(np.zeros((len(block), kept)))
+        bases[-1][rows] = left[:, :kept]
+        combinations.append(values[:kept, None] * right[:kept])
+    return np.column_stack(bases), block_diag(*combinations)
 
 
 def reduce_columns(

@@ -17,11 +17,11 @@ from massfit.annual.design import (
     Design,
     DriftColumns,
     build_design,
-    exponential_columns,
     mean_circulation,
 )
 from massfit.annual.families import noise_families
 from massfit.annual.mode import Mode, joint_mode
+from massfit.annual.nodes import EXPONENTIAL, LINE, LOGARITHM, NOTHING, TIMED
 from massfit.annual.noise import NoiseModel
 from massfit.annual.operator import model_noise, phasor_operator, year_shares
 from massfit.annual.parts import merge_components
@@ -80,14 +80,18 @@ class DriftFit:
     deployment : str
     time : (n,) array of datetime64[ns]
     drift : (n,) array
-        Posterior mean of level, slope, exponential and steps, Pa.
+        Posterior mean of level, slope, exponential or logarithm, and steps, Pa.
     reduced : (n,) array
         Record minus the mean of the models minus `drift`, Pa; the annual cycle is in it.
+    form_weight : mapping of str to float
+        Posterior weight of each form of drift, such as "exponential+linear"; sums to 1.
     slope : Estimate or None
-        Pa per Julian year.
-    exponential : Estimate or None
-        Size at the start of the deployment, Pa.
+        Pa per Julian year; no slope counts as one of zero where it is weighed.
+    exponential, logarithm : Estimate or None
+        Size of the exponential at the start of the deployment, change by the logarithm from start to
+        end, Pa; each as if that form were true.
     time_constant_days : Estimate or None
+        Of the more likely of the two.
     steps : tuple of (datetime64, Estimate)
         Declared steps that have data on both sides, and their sizes, Pa.
     """
@@ -96,8 +100,10 @@ class DriftFit:
     time: NDArray[np.datetime64]
     drift: Floats
     reduced: Floats
+    form_weight: Mapping[str, float]
     slope: Estimate | None
     exponential: Estimate | None
+    logarithm: Estimate | None
     time_constant_days: Estimate | None
     steps: tuple[tuple[np.datetime64, Estimate], ...]
 
@@ -244,7 +250,7 @@ def fit_site(
         covariance=parts.covariance,
         model_noise=model_noise(design, priors, operator),
         reduced_sd=_residual_sd(design, components),
-        days=len(np.unique(design.days)),
+        days=len(np.unique(design.days[design.observed])),
         effective_sample_size=components.effective_sample_size,
         noise=_noise_fit(mode, components),
         drifts=tuple(
@@ -276,12 +282,12 @@ def _noise_fit(mode: Mode, components: Components) -> NoiseFit:
 
 def _drift_curve(design: Design, drift: DriftColumns, components: Components) -> Floats:
     """Posterior mean of one deployment's drift on its own days, level as in the centred data: (n,)."""
-    columns = np.array(drift.fixed)
-    curve = design.fixed[np.ix_(drift.rows, columns)] @ (components.weight @ components.mean[:, columns])
-    if drift.exponential is not None:
-        times, place = np.unique(components.time_constants[:, drift.exponential], return_inverse=True)
-        sizes = np.bincount(place, components.weight * components.size[:, drift.exponential])
-        curve = curve + exponential_columns(design.elapsed[drift.rows], times) @ sizes
+    fixed = np.array(drift.fixed)
+    curve = design.fixed[np.ix_(drift.rows, fixed)] @ (components.weight @ components.mean[:, fixed])
+    for place in drift.terms:
+        nodes = components.nodes[place]
+        sizes = np.bincount(components.choice[:, place], components.weight * components.size[:, place], len(nodes))
+        curve = curve + design.term_columns(design.terms[place], nodes, drift.rows) @ sizes
     return np.asarray(curve)
 
 
@@ -291,25 +297,71 @@ def _drift_fit(record: ReducedRecord, design: Design, drift: DriftColumns, compo
 
     data = record.pressure - mean_circulation(record)
     curve = _drift_curve(design, drift, components) + data.mean()
-    exponential = time_constant = None
-    if drift.exponential is not None:
-        place = drift.exponential
-        exponential = _estimate(components.weight, components.size[:, place], components.size_variance[:, place])
-        time_constant = _estimate(components.weight, components.time_constants[:, place])
+    slope = None if drift.slope is None else fixed(drift.slope)
+    if drift.line is not None:
+        scale = design.line_scale * components.size[:, drift.line]
+        lies = _form(components, drift.line) == LINE
+        variance = design.line_scale**2 * components.size_variance[:, drift.line]
+        slope = _estimate(components.weight, np.where(lies, scale, 0.0), np.where(lies, variance, 0.0))
+    sizes = {form: _size(components, drift.decay, form) for form in TIMED}
     return DriftFit(
         deployment=record.deployment,
         time=record.time,
         drift=curve,
         reduced=data - curve,
-        slope=None if drift.slope is None else fixed(drift.slope),
-        exponential=exponential,
-        time_constant_days=time_constant,
+        form_weight=_form_weight(drift, components),
+        slope=slope,
+        exponential=sizes[EXPONENTIAL],
+        logarithm=sizes[LOGARITHM],
+        time_constant_days=_time_constant(components, drift.decay),
         steps=tuple((time, fixed(column)) for time, column in zip(drift.step_times, drift.steps, strict=True)),
     )
+
+
+def _form(components: Components, place: int) -> NDArray[np.int64]:
+    """Form of one drift term in every component."""
+    return components.nodes[place].form[components.choice[:, place]]
+
+
+def _size(components: Components, place: int | None, form: int) -> Estimate | None:
+    """Size of a term where it has a form."""
+    if place is None:
+        return None
+    weight = components.weight * (_form(components, place) == form)
+    if not weight.any():
+        return None
+    return _estimate(weight / weight.sum(), components.size[:, place], components.size_variance[:, place])
+
+
+def _time_constant(components: Components, place: int | None) -> Estimate | None:
+    if place is None:
+        return None
+    form = _form(components, place)
+    weights = [components.weight * (form == each) for each in TIMED]
+    weight = max(weights, key=np.sum)
+    if not weight.any():
+        return None
+    times = np.exp(components.nodes[place].log_time[components.choice[:, place]])
+    return _estimate(weight / weight.sum(), times)
+
+
+def _form_weight(drift: DriftColumns, components: Components) -> dict[str, float]:
+    count = len(components.weight)
+    decay = np.full(count, NOTHING) if drift.decay is None else _form(components, drift.decay)
+    line = np.full(count, NOTHING if drift.slope is None else LINE)
+    if drift.line is not None:
+        line = _form(components, drift.line)
+    found = {}
+    for form, name in ((EXPONENTIAL, "exponential"), (LOGARITHM, "logarithm"), (NOTHING, "")):
+        for sloping, word in ((LINE, "linear"), (NOTHING, "")):
+            weight = float(components.weight[(decay == form) & (line == sloping)].sum())
+            if weight > 0.0:
+                found["+".join(part for part in (name, word) if part) or "none"] = weight
+    return found
 
 
 def _residual_sd(design: Design, components: Components) -> float:
     residual = design.data - design.fixed[:, :SHARED_COLUMNS] @ (components.weight @ components.mean)[:SHARED_COLUMNS]
     for drift in design.drifts:
         residual[drift.rows] -= _drift_curve(design, drift, components)
-    return float(residual.std())
+    return float(residual[design.observed].std())

@@ -11,6 +11,7 @@ from massfit.annual.design import Design
 from massfit.annual.evidence import reduce_columns, solve_choices
 from massfit.annual.families import NoiseFamily, log_score_prior
 from massfit.annual.grid import DriftGrid, refine_grid
+from massfit.annual.nodes import Nodes, exponential_nodes
 from massfit.annual.noise import NoiseModel
 from massfit.errors import ConvergenceError
 
@@ -72,7 +73,7 @@ class Mode:
     white_ratio : (D,) array
         White noise of each deployment over that of the site.
     grid : DriftGrid
-        Drift time constants, in turn about the mode of the best form of noise.
+        Drift terms, in turn about the mode of the best form of noise.
     """
 
     families: tuple[FamilyMode, ...]
@@ -87,7 +88,7 @@ class Mode:
 
 
 def joint_mode(design: Design, families: Sequence[NoiseFamily]) -> Mode:
-    """Find the mode by turns: noise at fixed drift times, drift times at fixed noise.
+    """Find the mode by turns: noise at fixed drift terms, drift terms at fixed noise.
 
     The white noise of each deployment over that of the site is found once, at the mode, and
     held from there: days are many enough to tell it within a few parts in a hundred.
@@ -179,9 +180,10 @@ def _local_shape(objective: Callable[[Floats], float], scores: Floats, value: fl
 
 def _rough_sd(design: Design) -> float:
     """Give the standard deviation that a rough fit leaves, Pa."""
-    decays = [np.geomspace(low, high, 4) for low, high in design.time_ranges]
-    columns = np.column_stack([design.fixed, design.exponentials(decays)])
-    return float((design.data - columns @ np.linalg.lstsq(columns, design.data, rcond=1e-8)[0]).std())
+    decays = [exponential_nodes(np.geomspace(term.low, term.high, 4)) for term in design.terms]
+    columns = np.column_stack([design.fixed, design.drift_columns(decays)])
+    left = design.data - columns @ np.linalg.lstsq(columns, design.data, rcond=1e-8)[0]
+    return float(left[design.observed].std())
 
 
 def _start(family: NoiseFamily, leader: NoiseFamily, found: Floats) -> Floats:
@@ -207,9 +209,9 @@ def _alternate(
     return found, grid
 
 
-def _objective(design: Design, family: NoiseFamily, ratio: Floats, time_constants: Floats) -> Callable[[Floats], float]:
-    """Negative log posterior of the scores at fixed drift times."""
-    evidence = _log_evidence(design, time_constants)
+def _objective(design: Design, family: NoiseFamily, ratio: Floats, terms: Sequence[Nodes]) -> Callable[[Floats], float]:
+    """Negative log posterior of the scores at fixed drift terms."""
+    evidence = _log_evidence(design, terms)
 
     def negative_log_posterior(scores: Floats) -> float:
         return -evidence(family.model(scores, ratio)) - log_score_prior(scores)
@@ -217,23 +219,23 @@ def _objective(design: Design, family: NoiseFamily, ratio: Floats, time_constant
     return negative_log_posterior
 
 
-def _log_evidence(design: Design, time_constants: Floats) -> Callable[[NoiseModel], float]:
-    exponentials = design.exponentials([np.array([time]) for time in time_constants])
-    choice = np.arange(len(time_constants))[None, :]
+def _log_evidence(design: Design, terms: Sequence[Nodes]) -> Callable[[NoiseModel], float]:
+    columns = design.drift_columns(terms)
+    choice = np.arange(len(terms))[None, :]
 
     def log_evidence(model: NoiseModel) -> float:
-        reduction = reduce_columns(design.covariance(model), design, exponentials)
+        reduction = reduce_columns(design.covariance(model), design, columns)
         return float(solve_choices(reduction, choice).log_evidence[0])
 
     return log_evidence
 
 
-def _white_ratio(design: Design, family: NoiseFamily, scores: Floats, time_constants: Floats) -> Floats:
+def _white_ratio(design: Design, family: NoiseFamily, scores: Floats, terms: Sequence[Nodes]) -> Floats:
     """White noise of each deployment over that of the site, each in turn by Newton steps in the logarithm."""
     logs = np.zeros(len(design.drifts))
     if len(logs) < 2:
         return np.ones(1)
-    evidence = _log_evidence(design, time_constants)
+    evidence = _log_evidence(design, terms)
 
     def objective(values: Floats) -> float:
         penalty = 0.5 * np.sum(values**2) / WHITE_RATIO_SD**2

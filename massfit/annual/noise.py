@@ -88,6 +88,8 @@ class NoiseCovariance:
     instrument : (n,) array of int
         Deployment of each day.
     model : NoiseModel
+    apart : (n,) array, optional
+        Standard deviation of an observation that shares no noise with any other, Pa; NaN elsewhere.
 
     Examples
     --------
@@ -98,7 +100,9 @@ class NoiseCovariance:
            [0.6065, 5.01  ]])
     """
 
-    def __init__(self, days: Floats, instrument: NDArray[np.int64], model: NoiseModel) -> None:
+    def __init__(
+        self, days: Floats, instrument: NDArray[np.int64], model: NoiseModel, apart: Floats | None = None
+    ) -> None:
         # the factorisation wants a term: without red noise one of no size
         present = len(model.rates) > 0
         variances = model.variances if present else np.zeros(1)
@@ -108,6 +112,10 @@ class NoiseCovariance:
         self._left = np.tile(variances, (len(days), 1))
         self._right = np.ones_like(self._left)
         self._diagonal = variances.sum() + (model.white**2 + least)[instrument]
+        if apart is not None and not np.isnan(apart).all():
+            alone = ~np.isnan(apart)
+            self._left[alone], self._right[alone] = 0.0, 0.0
+            self._diagonal[alone] = apart[alone] ** 2
 
     @cached_property
     def _factor(self) -> tuple[Floats, Floats]:

@@ -1,5 +1,6 @@
 """The linear operator that turns a site's record into its annual phasor."""
 
+from collections.abc import Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -9,6 +10,7 @@ from massfit.annual.design import Design
 from massfit.annual.evidence import ANNUAL, linear_fit
 from massfit.annual.families import log_score_prior, noise_families
 from massfit.annual.mode import minimise
+from massfit.annual.nodes import Nodes
 from massfit.annual.noise import NoiseCovariance
 from massfit.constants import JULIAN_YEAR_DAYS
 from massfit.phasor import annual_basis
@@ -17,24 +19,23 @@ from massfit.settings import Priors
 Floats = NDArray[np.float64]
 
 
-def phasor_operator(noise: NoiseCovariance, design: Design, time_constants: Floats) -> Floats:
+def phasor_operator(noise: NoiseCovariance, design: Design, terms: Sequence[Nodes]) -> Floats:
     """Weights L of the observations: annual phasor = L y.
 
     Parameters
     ----------
     noise : NoiseCovariance
     design : Design
-    time_constants : (D,) array
-        Of the exponentials, days.
+    terms : sequence of Nodes
+        The one choice of each drift term.
 
     Returns
     -------
     (2, n) array
         Annual rows of (X' V^-1 X + P)^-1 X' V^-1.
     """
-    exponentials = design.exponentials([np.array([time]) for time in time_constants])
-    columns = np.column_stack([design.fixed, exponentials])
-    precision = np.append(design.precision, np.full(len(time_constants), design.exponential_sd**-2))
+    columns = np.column_stack([design.fixed, design.drift_columns(terms)])
+    precision = np.append(design.precision, np.full(len(terms), design.exponential_sd**-2))
     weighted = noise.solve(columns)
     inverse = np.linalg.inv(columns.T @ weighted + np.diag(precision))
     return np.asarray(inverse[ANNUAL] @ weighted.T)
@@ -63,8 +64,8 @@ def model_noise(design: Design, priors: Priors, operator: Floats) -> Floats:
     models = design.contrasts.shape[1]
     if models < 2:
         return np.zeros((2, 2))
-    days, first, place = np.unique(design.days, return_index=True, return_inverse=True)
-    contrasts = design.contrasts[first] @ orthonormal_contrasts(models)
+    days, first, place = np.unique(design.days[design.observed], return_index=True, return_inverse=True)
+    contrasts = design.contrasts[design.observed][first] @ orthonormal_contrasts(models)
     if not contrasts.any():
         return np.zeros((2, 2))
     centred = (days - days.mean()) / JULIAN_YEAR_DAYS
@@ -83,7 +84,7 @@ def model_noise(design: Design, priors: Priors, operator: Floats) -> Floats:
 
     scores = minimise(negative_log_posterior, family.start(float(contrasts.std()))).scores
     merged = np.zeros((2, len(days)))
-    for row, weights in zip(merged, operator, strict=True):
+    for row, weights in zip(merged, operator[:, design.observed], strict=True):
         np.add.at(row, place, weights)
     return np.asarray(merged @ covariance_at(scores).multiply(merged.T.copy()))
 
@@ -123,9 +124,8 @@ def year_shares(design: Design, operator: Floats, reference_year: int) -> dict[i
         Sums to 1.
     """
     years = calendar_years(design.days, reference_year)
-    cycle = annual_basis(design.days)
-    share = 0.5 * np.einsum("in,ni->n", operator, cycle)
-    return {int(year): float(share[years == year].sum()) for year in np.unique(years)}
+    share = 0.5 * np.einsum("in,ni->n", operator, design.fixed[:, ANNUAL])
+    return {int(year): float(share[years == year].sum()) for year in np.unique(years[design.observed])}
 
 
 def calendar_years(days: Floats, reference_year: int) -> NDArray[np.int64]:

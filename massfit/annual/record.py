@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from massfit.errors import Fault, InputError
+from massfit.records.record import Calibrations
 from massfit.settings import DriftForm
 from massfit.site import LEAST_SITE_DAYS
 
@@ -30,12 +31,14 @@ class ReducedRecord:
     start : datetime64
         First instant of the deployment, the origin of its drift.
     drift : str
-        "exponential+linear", "linear" or "none".
+        "exponential+linear", "logarithm+linear", "linear", "none" or "compare".
     steps : tuple of datetime64
         Declared changes of level; a new level begins at each.
     companions : (C, n) array, optional
         Further series on the same days, Pa, without NaN; they do not enter the fit, but their annual phasors by its
         linear operator are given beside it. None without any.
+    calibrations : Calibrations, optional
+        Readings of the recorder at a known pressure, from its deployment on.
 
     Examples
     --------
@@ -55,6 +58,7 @@ class ReducedRecord:
     drift: str = "exponential+linear"
     steps: tuple[np.datetime64, ...] = ()
     companions: NDArray[np.float64] | None = None
+    calibrations: Calibrations | None = None
 
 
 SAME_DAYS, SAME_PRESSURE = 30, 0.01
@@ -123,6 +127,22 @@ def _record_faults(source: str, record: ReducedRecord, models: int) -> Iterator[
         yield Fault(source, name, problem, "The drift begins with the deployment or before")
     if record.drift not in get_args(DriftForm):
         yield Fault(source, name, f"drift is {record.drift!r}", f"Must be one of {get_args(DriftForm)}")
+    if record.calibrations is not None:
+        yield from _calibration_faults(source, record, record.calibrations)
+
+
+def _calibration_faults(source: str, record: ReducedRecord, given: Calibrations) -> Iterator[Fault]:
+    name = f"{record.deployment}: calibrations"
+    if not len(given.time) == len(given.pressure) == len(given.sd):
+        shapes = f"{len(given.time)} times, {len(given.pressure)} readings, {len(given.sd)} standard deviations"
+        yield Fault(source, name, shapes, "Must be as many of each")
+        return
+    if not (np.isfinite(given.pressure).all() and np.isfinite(given.sd).all() and (given.sd > 0).all()):
+        yield Fault(source, name, "a reading or its standard deviation is no number", "Readings finite, sd above 0")
+    early = int(np.sum(given.time < record.start))
+    if early:
+        problem = f"{early} are before the deployment of {record.start}"
+        yield Fault(source, name, problem, "The drift begins with the deployment", "Leave them out")
 
 
 def _copy_faults(source: str, first: ReducedRecord, second: ReducedRecord) -> Iterator[Fault]:

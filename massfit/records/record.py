@@ -66,6 +66,30 @@ class LevelChange:
 
 
 @dataclass(frozen=True)
+class Calibrations:
+    """Readings of a pressure recorder on the bottom at a known pressure, such as that of air inside it.
+
+    They show the drift of the recorder and nothing of the ocean. Only their changes matter.
+
+    Parameters
+    ----------
+    time : (m,) array of datetime64[ns]
+        UTC.
+    pressure : (m,) array of float64
+        Reading less the known pressure, Pa; any constant may be added.
+    sd : (m,) array of float64
+        Standard deviation of each, Pa.
+    """
+
+    time: NDArray[np.datetime64]
+    pressure: NDArray[np.float64]
+    sd: NDArray[np.float64]
+
+
+NO_CALIBRATIONS = Calibrations(np.array([], "datetime64[ns]"), np.zeros(0), np.zeros(0))
+
+
+@dataclass(frozen=True)
 class Record:
     """One instrument on the bottom, as read.
 
@@ -80,7 +104,7 @@ class Record:
     reference : float
         Pressure that was subtracted, Pa.
     drift : str
-        "exponential+linear", "linear" or "none".
+        "exponential+linear", "logarithm+linear", "linear", "none" or "compare".
     steps : tuple of datetime64
         Declared changes of level; a new level begins at each.
     ramps : tuple of (datetime64, datetime64)

@@ -45,7 +45,7 @@ def test_forms_of_drift(make_record):
     ]
     design = build_design(records, reference_year=2016, priors=Priors())
     assert [drift.slope is None for drift in design.drifts] == [True, False, False, False]
-    assert [drift.exponential for drift in design.drifts] == [None, None, 0, None]
+    assert [drift.decay for drift in design.drifts] == [None, None, 0, None]
     assert "d" in design.notes[0]
     # priors of the settings: slope 10 hPa per year, all else flat
     assert set(design.precision) == {0.0, 1000.0**-2}

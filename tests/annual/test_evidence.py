@@ -16,6 +16,7 @@ from massfit.annual.evidence import (
     solve_choices,
 )
 from massfit.annual.families import noise_families
+from massfit.annual.nodes import exponential_nodes
 from massfit.settings import Priors
 
 PRIORS = Priors(noise_forms=("sum",))
@@ -23,6 +24,7 @@ PRIORS = Priors(noise_forms=("sum",))
 SCORES = np.array([-0.5, 0.2, -1.0, 0.3])
 MODEL = FAMILY.model(SCORES, np.array([1.0, 1.5]))
 GRIDS = (np.array([10.0, 40.0, 90.0]), np.array([30.0, 60.0]))
+NODES = tuple(exponential_nodes(times) for times in GRIDS)
 
 
 @pytest.fixture
@@ -40,7 +42,7 @@ def design(make_record):
 @pytest.fixture
 def reduction(design):
     noise = design.covariance(MODEL)
-    return reduce_columns(noise, design, design.exponentials(GRIDS))
+    return reduce_columns(noise, design, design.drift_columns(NODES))
 
 
 def dense_covariance(design):
@@ -52,7 +54,7 @@ def dense_covariance(design):
 
 
 def dense_solution(design, times):
-    exponentials = design.exponentials([np.array([time]) for time in times])
+    exponentials = design.drift_columns([exponential_nodes([time]) for time in times])
     columns = np.column_stack([design.fixed, exponentials])
     precision = np.append(design.precision, np.full(2, design.exponential_sd**-2.0))
     inverse = np.linalg.inv(dense_covariance(design))
@@ -81,10 +83,10 @@ def test_evidence_is_the_marginal_density_when_every_prior_is_proper(design):
     # closed form: y is normal with covariance V + X P^-1 X'
     proper = replace(design, precision=np.where(design.precision == 0, 1e-4, design.precision))
     noise = proper.covariance(MODEL)
-    found = solve_choices(reduce_columns(noise, proper, proper.exponentials(GRIDS)), CHOICES).log_evidence
+    found = solve_choices(reduce_columns(noise, proper, proper.drift_columns(NODES)), CHOICES).log_evidence
     expected = []
     for first, second in CHOICES:
-        exponentials = proper.exponentials([GRIDS[0][[first]], GRIDS[1][[second - 3]]])
+        exponentials = proper.drift_columns([NODES[0].take([first]), NODES[1].take([second - 3])])
         prior = (proper.fixed / proper.precision) @ proper.fixed.T
         prior += proper.exponential_sd**2 * exponentials @ exponentials.T
         total = stats.multivariate_normal(np.zeros(len(prior)), dense_covariance(proper) + prior)
@@ -102,7 +104,7 @@ def test_conditional_evidence_is_that_of_the_full_choice(reduction):
 
 def test_compressed_exponentials_give_the_same_sums(design):
     grids = (np.geomspace(3, 130, 40), np.geomspace(20, 60, 30))
-    exponentials = design.exponentials(grids)
+    exponentials = design.drift_columns([exponential_nodes(times) for times in grids])
     basis, combination = compress(exponentials, np.array([0, 40]))
     assert basis.shape[1] < 32
     np.testing.assert_allclose(basis @ combination, exponentials, atol=1e-8)

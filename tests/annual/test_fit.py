@@ -10,6 +10,7 @@ from massfit.annual.design import build_design
 from massfit.annual.evidence import reduce_columns, solve_choices
 from massfit.annual.families import noise_families
 from massfit.annual.fit import fit_site
+from massfit.annual.nodes import exponential_nodes
 from massfit.errors import InputError
 from massfit.settings import Priors
 from massfit.site import LEAST_SITE_DAYS
@@ -175,7 +176,8 @@ def weight_beyond(record, days, exponential_sd_hpa):
     grid = np.geomspace(3.0, 1e5, 200)
     (family,) = noise_families(priors)
     noise = design.covariance(family.model(np.array([-3.0, -0.5, -3.0, -0.5]), np.ones(1)))
-    reduction = reduce_columns(noise, replace(design, precision=flat_slope), design.exponentials([grid]))
+    columns = design.drift_columns([exponential_nodes(grid)])
+    reduction = reduce_columns(noise, replace(design, precision=flat_slope), columns)
     log = solve_choices(reduction, np.arange(200)[:, None]).log_evidence
     mass = np.exp(log - log.max())
     return mass[grid > days].sum() / mass.sum()

@@ -173,13 +173,13 @@ def test_gibbs_sample_is_the_product_grid(make_record):
     mode = joint_mode(design, noise_families(PRIORS))
     covariance = design.covariance(mode.noise)
     sample = sample_drift(covariance, design, mode.grid, rng)
-    reduction = reduce_columns(covariance, design, design.exponentials(sample.grid.time_constants))
-    counts = [len(nodes) for nodes in sample.grid.logs]
+    reduction = reduce_columns(covariance, design, design.drift_columns(sample.grid.nodes))
+    counts = [len(nodes) for nodes in sample.grid.nodes]
     choices = np.array(list(product(*map(range, counts))))
     log = solve_choices(reduction, choices + sample.grid.first_columns).log_evidence
-    log += sum(np.log(mass)[nodes] for mass, nodes in zip(sample.grid.prior_mass, choices.T, strict=True))
+    log += sum(np.log(nodes.prior)[own] for nodes, own in zip(sample.grid.nodes, choices.T, strict=True))
     exact = np.exp(log - log.max())
-    logs = sample.grid.logs[0]
+    logs = sample.grid.nodes[0].log_time
     expected = exact @ logs[choices[:, 0]] / exact.sum()
     drawn = sample.choices.reshape(-1, 2)
     found_log = solve_choices(reduction, drawn + sample.grid.first_columns).log_evidence + sample.log_ratio.ravel()

@@ -6,8 +6,8 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from massfit.annual.design import exponential_columns
 from massfit.annual.evidence import linear_fit
+from massfit.annual.nodes import exponential_columns
 
 TABLES = json.loads((Path(__file__).parents[1] / "reference" / "nist_strd.json").read_text())
 # certified values have 11 digits, linear parameters at rounded non-linear ones lose a few

@@ -6,11 +6,13 @@ import pytest
 from massfit.annual.design import build_design
 from massfit.annual.families import noise_families
 from massfit.annual.fit import fit_site
+from massfit.annual.nodes import exponential_nodes
 from massfit.annual.operator import model_noise, orthonormal_contrasts, phasor_operator, year_shares
 from massfit.settings import Priors
 
 SCORES = np.array([-1.0, 0.0, -1.0, 0.0])
 (FAMILY,) = noise_families(Priors(noise_forms=("sum",)))
+TERMS = (exponential_nodes([40.0]), exponential_nodes([80.0]))
 MODEL = FAMILY.model(SCORES, np.ones(2))
 
 
@@ -30,7 +32,7 @@ def test_operator_returns_an_annual_cycle_and_ignores_level_and_semi_annual(two_
     design = build_design(
         two_deployments(np.random.default_rng(1), np.zeros((0, 750))), reference_year=2016, priors=Priors()
     )
-    operator = phasor_operator(design.covariance(MODEL), design, np.array([40.0, 80.0]))
+    operator = phasor_operator(design.covariance(MODEL), design, TERMS)
     response = operator @ design.fixed
     np.testing.assert_allclose(response[:, :2], np.eye(2), atol=1e-8)
     flat = [2, 3, *(drift.offset for drift in design.drifts)]
@@ -41,7 +43,7 @@ def test_year_shares_sum_to_one_and_follow_the_days(two_deployments):
     design = build_design(
         two_deployments(np.random.default_rng(1), np.zeros((0, 750))), reference_year=2016, priors=Priors()
     )
-    operator = phasor_operator(design.covariance(MODEL), design, np.array([40.0, 80.0]))
+    operator = phasor_operator(design.covariance(MODEL), design, TERMS)
     shares = year_shares(design, operator, 2016)
     assert list(shares) == [2016, 2017, 2018]
     assert sum(shares.values()) == pytest.approx(1.0, abs=1e-9)
@@ -55,7 +57,7 @@ def test_model_noise_is_what_the_models_scatter(two_deployments, make_red):
         rng = np.random.default_rng(seed)
         circulation = np.array([make_red(rng, 750, 20.0, 20.0) for _ in range(4)])
         design = build_design(two_deployments(rng, circulation), reference_year=2016, priors=Priors())
-        operator = phasor_operator(design.covariance(MODEL), design, np.array([40.0, 80.0]))
+        operator = phasor_operator(design.covariance(MODEL), design, TERMS)
         predicted.append(np.trace(model_noise(design, Priors(), operator)))
         # unbiased variance of one model from four
         scatter.append(np.sum((operator @ design.contrasts) ** 2) / 3)
