@@ -82,6 +82,8 @@ def write_results(partial: PartialFolder, run: FinishedRun, *, pictures: Mapping
         _write_site_table(aside / "sites.csv", run.summary["sites"])
         if "what_if" in run.summary:
             _write_rows(aside / "what_if.csv", run.summary["what_if"])
+        for name, rows in run.tables.items():
+            _write_rows(aside / name, rows)
         for name, groups in _by_file(run.datasets).items():
             write_groups(aside / name, groups) if "" not in groups else write_dataset(aside / name, groups[""])
         _write_drawn(aside, pictures, page)

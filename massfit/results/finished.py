@@ -1,13 +1,14 @@
 """A finished run as its results folder holds it: what figures and page are drawn from."""
 
 import dataclasses
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 import xarray as xr
 
 from massfit.results.datasets import result_datasets
 from massfit.results.estimate import Estimate
+from massfit.results.tidal_table import tidal_table
 
 
 @dataclasses.dataclass(frozen=True)
@@ -23,11 +24,14 @@ class FinishedRun:
     datasets : mapping of str to xarray.Dataset
         By file name: site_phasors.nc, fingerprints.nc, reduced_records.nc; with the group behind it where the file has
         groups: posterior.nc/posterior.
+    tables : mapping of str to list of dict
+        By file name, for people and spreadsheets only: they are not read back.
     """
 
     summary: Mapping[str, Any]
     provenance: Mapping[str, Any]
     datasets: Mapping[str, xr.Dataset]
+    tables: Mapping[str, Sequence[Mapping[str, Any]]] = dataclasses.field(default_factory=dict)
 
 
 def finished_run(estimate: Estimate, *, command: str) -> FinishedRun:
@@ -49,7 +53,9 @@ def finished_run(estimate: Estimate, *, command: str) -> FinishedRun:
         "settings": _plain(dataclasses.asdict(estimate.network.settings)),
         "inputs": dict(estimate.network.inputs),
     }
-    return FinishedRun(estimate.summary, provenance, result_datasets(estimate))
+    tides = tidal_table([record for reduction in estimate.reductions for record in reduction.daily])
+    tables = {"tides.csv": tides} if tides else {}
+    return FinishedRun(estimate.summary, provenance, result_datasets(estimate), tables)
 
 
 def _plain(value: Any) -> Any:
