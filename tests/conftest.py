@@ -76,12 +76,12 @@ def small_network(folder: Path) -> None:
     )
     sites.to_netcdf(folder / "fields/model.nc", engine="h5netcdf")
     latitude, longitude = np.arange(-87.5, 90.0, 5.0), np.arange(2.5, 360.0, 5.0)
-    shape = (2, latitude.size, longitude.size)
     dims = ("member", "lat", "lon")
+    inland = (np.abs(latitude[:, None] - 52.5) < 8.0) & (np.abs(longitude - 80.0) < 18.0)  # dry ground of Asia
     loads = xr.Dataset(
         {
-            "load_in_phase": (dims, np.full(shape, 3.0), {"units": "kg m-2"}),
-            "load_quadrature": (dims, np.full(shape, -4.0), {"units": "kg m-2"}),
+            "load_in_phase": (dims, np.stack(2 * [np.where(inland, 3.0, np.nan)]), {"units": "kg m-2"}),
+            "load_quadrature": (dims, np.stack(2 * [np.where(inland, -4.0, np.nan)]), {"units": "kg m-2"}),
         },
         {"member": ["wet", "dry"], "lat": latitude, "lon": longitude},
     )

@@ -14,6 +14,7 @@ from massfit.errors import Fault, InputError
 from massfit.fingerprint.grid import CellGrid, regrid
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.fingerprint.pattern import LoadPattern
+from massfit.io.load_checks import land_load
 from massfit.io.netcdf import as_text, damage_as_fault, open_netcdf
 from massfit.io.variables import canonical, decoded, load, pascal_of_field, read_pressure
 
@@ -21,7 +22,9 @@ _LOAD_UNITS = ("kg m-2", "kg m^-2", "kg/m2", "kg/m^2", "kg m**-2")
 _EVEN = 1e-3  # of a cell: coordinates stored as float32 are uneven by less
 
 
-def read_loads(path: Path, *, reference_year: int, source: str) -> tuple[LoadPattern, ...]:
+def read_loads(
+    path: Path, *, reference_year: int, source: str, water_vapour: complex = 0j
+) -> tuple[LoadPattern, ...]:
     """Read the load members of one file.
 
     Parameters
@@ -35,16 +38,20 @@ def read_loads(path: Path, *, reference_year: int, source: str) -> tuple[LoadPat
         Year whose calendar months a climatology is laid on.
     source : str
         File as the analyst wrote it.
+    water_vapour : complex
+        Annual phasor of the mass of water vapour in the air, kg: what a file that covers the ocean must leave over.
 
     Returns
     -------
     tuple of LoadPattern
-        kg m-2 of whole-cell area, in the file's order.
+        kg m-2 of whole-cell area, in the file's order; without the ocean's own part, see
+        :func:`massfit.io.load_checks.land_load`.
 
     Raises
     ------
     InputError
-        Variables missing, of another unit, on a grid that is not regular and global.
+        Variables missing, of another unit, on a grid that is not regular and global; more load in a
+        cell than there can be, or a water budget that does not close.
     """
     with open_netcdf(path, source=source, decode=False) as raw, damage_as_fault(source):
         dataset = canonical(raw)
@@ -56,7 +63,8 @@ def read_loads(path: Path, *, reference_year: int, source: str) -> tuple[LoadPat
             first = "load_in_phase"
         _require_load_units(dataset, source)
         patterns = tuple(_patterns(dataset, phasor, path.stem, source))
-        return _on_whole_cells(patterns, _load_area(dataset, first, source))
+        whole = _on_whole_cells(patterns, _load_area(dataset, first, source))
+    return tuple(land_load(pattern, water_vapour=water_vapour, source=source) for pattern in whole)
 
 
 def read_atmosphere_load(path: Path, *, source: str) -> LoadPattern:
@@ -171,13 +179,23 @@ def _variable(dataset: xr.Dataset, name: str, dims: tuple[str, ...], source: str
     if set(dataset[name].dims) - {"member"} != set(dims):
         found = ", ".join(str(dim) for dim in dataset[name].dims)
         raise InputError(Fault(source, name, f"the dimensions are ({found})", allowed, "Drop the others"))
-    data = load(decoded(dataset, name, source=source), source=source).astype(np.float64)
+    data = _around(load(decoded(dataset, name, source=source), source=source).astype(np.float64))
     require_global_grid(data["lat"].to_numpy(), data["lon"].to_numpy(), source=source)
     if np.isinf(data.to_numpy()).any():
         raise InputError(
             Fault(source, name, "some values are infinite", "Must be finite, or NaN for no load", "Correct them")
         )
     return data.transpose(..., *dims)
+
+
+def _around(data: xr.DataArray) -> xr.DataArray:
+    """Begin a row of longitudes that jumps from 180 to -180 (or from 360 to 0) after its jump."""
+    longitude = data["lon"].to_numpy().astype(float)
+    steps = np.diff(longitude)
+    if steps.size < 2:
+        return data
+    jumps = np.flatnonzero(np.sign(steps) != np.sign(np.median(steps)))
+    return data.roll(lon=-int(jumps[0]) - 1, roll_coords=True) if jumps.size == 1 else data
 
 
 def _joined(dataset: xr.Dataset, in_phase: str, quadrature: str, source: str) -> xr.DataArray:

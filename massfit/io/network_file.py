@@ -7,6 +7,7 @@ from typing import Any
 
 from massfit.earth.profile import EarthProfile
 from massfit.errors import Fault, InputError
+from massfit.fingerprint.admittance import water_vapour_phasor
 from massfit.fingerprint.loads import builtin_loads
 from massfit.fingerprint.pattern import LoadPattern
 from massfit.fingerprint.regions import MOST_MEMBERS, perturbed_loads
@@ -22,7 +23,7 @@ from massfit.io.sections import Sections, SiteTable, parse_sections
 from massfit.io.series_file import read_series
 from massfit.network import CirculationModel, Network, ReducedSite, Series
 from massfit.records.record import Record
-from massfit.settings import PREM, Corrections, Fingerprint, Settings
+from massfit.settings import PREM, Corrections, Fingerprint, Frame, Settings
 
 _BUILTIN = "builtin:"
 _PERTURBED = "perturbed:"
@@ -220,7 +221,7 @@ def _site_records(reading: Reading, table: SiteTable) -> list[Record] | None:
 
 def _loads(reading: Reading, sections: Sections) -> tuple[LoadPattern, ...]:
     frame, fingerprint = sections.settings["network"], sections.settings["fingerprint"]
-    if frame is None or fingerprint is None:
+    if frame is None or fingerprint is None or (vapour := _vapour(reading, fingerprint, frame)) is None:
         return ()
     named: list[tuple[KeyPath, LoadPattern]] = []
     texts = dict.fromkeys(fingerprint.loads)
@@ -233,7 +234,9 @@ def _loads(reading: Reading, sections: Sections) -> tuple[LoadPattern, ...]:
             bases = [pattern for _, pattern in named] or builtin_loads(("nominal",))
             patterns = _perturbed(reading, path, text.removeprefix(_PERTURBED), bases, fingerprint)
         elif (file := reading.find(path, text)) is not None:
-            patterns = reading.attempt(read_loads, file, reference_year=frame.reference_year, source=text)
+            patterns = reading.attempt(
+                read_loads, file, reference_year=frame.reference_year, source=text, water_vapour=vapour
+            )
         named += [(path, pattern) for pattern in patterns or ()]
     check_unique(reading, [(path, pattern.name) for path, pattern in named])
     return tuple(pattern for _, pattern in named)
@@ -245,6 +248,15 @@ def _builtin(reading: Reading, path: KeyPath, name: str) -> tuple[LoadPattern, .
     except InputError as error:
         for fault in error.faults:
             reading.fault(path, fault.problem, fault.allowed, fault.action)
+        return None
+
+
+def _vapour(reading: Reading, fingerprint: Fingerprint, frame: Frame) -> complex | None:
+    try:
+        return water_vapour_phasor(fingerprint.water_vapour_kg, fingerprint.water_vapour_peak, frame.reference_year)
+    except InputError as error:
+        for fault in error.faults:
+            reading.fault(("fingerprint", fault.name), fault.problem, fault.allowed, fault.action)
         return None
 
 

@@ -193,7 +193,9 @@ def base_datasets() -> dict[str, xr.Dataset]:
             {"load_area": "land"},
         ),
         "months": xr.Dataset(
-            {"load": (("month", "lat", "lon"), np.repeat(grid, 6, axis=0), mass)}, {"month": np.arange(1, 13), **places}
+            {"load": (("month", "lat", "lon"), np.repeat(grid, 6, axis=0), mass)},
+            {"month": np.arange(1, 13), **places},
+            {"load_area": "land"},
         ),
         "land": xr.Dataset(
             {f"pressure_{part}": (("lat", "lon"), land, {"units": "Pa"}) for part in ("in_phase", "quadrature")}, places

@@ -8,12 +8,19 @@ import xarray as xr
 
 from massfit.constants import ANNUAL_RATE
 from massfit.errors import InputError
+from massfit.fingerprint.grid import CellGrid, regrid
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.io.fields import month_phasor, read_air_pressure, read_atmosphere_load, read_loads
 
 LATITUDE, LONGITUDE = np.arange(-85.0, 90.0, 10.0), np.arange(5.0, 360.0, 10.0)
 TRUTH = 30.0 * np.exp(1.3j)
 MASS = {"units": "kg m-2"}
+
+
+def inland(latitude: np.ndarray, longitude: np.ndarray) -> np.ndarray:
+    """1 in the dry middle of Asia, NaN elsewhere."""
+    inside = (np.abs(latitude[:, None] - 50.0) < 13.0) & (np.abs(np.mod(longitude, 360.0) - 85.0) < 16.0)
+    return np.where(inside, 1.0, np.nan)
 
 
 def monthly_means(year: int, phasor: complex, semi_annual: complex, offset: float) -> np.ndarray:
@@ -47,8 +54,8 @@ def test_the_control_naive_fit_is_attenuated() -> None:
 
 
 def phasor_file(path: Path, **changes: object) -> None:
-    values = np.full((LATITUDE.size, LONGITUDE.size), 2.0)
-    values[3, 4] = np.nan
+    values = 2.0 * inland(LATITUDE, LONGITUDE)
+    values[13, 8] = np.nan
     options = {"lat": LATITUDE, "lon": LONGITUDE, "attributes": MASS, "file": {}, "values": values} | changes
     data = (("latitude", "longitude"), options["values"], options["attributes"])
     dataset = xr.Dataset(
@@ -63,8 +70,9 @@ def test_missing_values_are_no_load(tmp_path: Path) -> None:
     phasor_file(tmp_path / "wet.nc", file={"references": "invented"})
     (pattern,) = read_loads(tmp_path / "wet.nc", reference_year=2016, source="wet.nc")
     assert (pattern.name, pattern.reference) == ("wet", "invented")
-    assert pattern.values[3, 4] == 0.0
-    assert pattern.values[3, 5] == 2.0 + 2.0j
+    assert pattern.values[13, 8] == 0.0
+    assert pattern.values[13, 9] == 2.0 + 2.0j
+    assert pattern.values[3, 5] == 0.0
 
 
 def test_a_load_of_land_parts_counts_for_the_land(tmp_path: Path) -> None:
@@ -84,7 +92,7 @@ def test_a_climatology_with_members_from_north_to_south(tmp_path: Path) -> None:
     means = monthly_means(2016, TRUTH, 0.0, 10.0)
     scale = np.array([1.0, -2.0])[:, None, None, None]
     north_first, west_first = LATITUDE[::-1], LONGITUDE - 180.0
-    shape = np.cos(np.radians(north_first))[:, None] * np.ones(LONGITUDE.size)
+    shape = np.cos(np.radians(north_first))[:, None] * inland(north_first, west_first)
     data = scale * means[None, :, None, None] * shape
     order = np.roll(np.arange(12), 5)  # months may stand in any order when they are numbered
     dataset = xr.Dataset(
@@ -93,7 +101,7 @@ def test_a_climatology_with_members_from_north_to_south(tmp_path: Path) -> None:
     )
     dataset.to_netcdf(tmp_path / "loads.nc", engine="h5netcdf")
     first, second = read_loads(tmp_path / "loads.nc", reference_year=2016, source="loads.nc")
-    np.testing.assert_allclose(first.values, TRUTH * shape, rtol=1e-6)
+    np.testing.assert_allclose(first.values, TRUTH * np.nan_to_num(shape), rtol=1e-6)
     np.testing.assert_allclose(second.values, -2.0 * first.values, rtol=1e-12)
     assert (second.name, first.latitude_deg[0], first.longitude_deg[0]) == ("two", 85.0, -175.0)
 
@@ -124,7 +132,7 @@ def test_faults(tmp_path: Path, changes: dict[str, object], message: str) -> Non
 
 def test_rows_from_pole_to_pole_are_read(tmp_path: Path) -> None:
     latitude = np.linspace(-90.0, 90.0, 19)
-    phasor_file(tmp_path / "w.nc", lat=latitude, values=np.ones((19, 36)))
+    phasor_file(tmp_path / "w.nc", lat=latitude, values=inland(latitude, LONGITUDE))
     (pattern,) = read_loads(tmp_path / "w.nc", reference_year=2016, source="w.nc")
     assert pattern.values.shape == (19, 36)
 
@@ -156,3 +164,73 @@ def test_a_load_without_any_value_is_refused(tmp_path: Path, value: float) -> No
     phasor_file(tmp_path / "nothing.nc", values=np.full((LATITUDE.size, LONGITUDE.size), value))
     with pytest.raises(InputError, match="every value is zero or missing"):
         read_loads(tmp_path / "nothing.nc", reference_year=2016, source="nothing.nc")
+
+
+# any order of the longitudes, and a budget that closes
+
+
+def test_longitudes_may_jump_from_180_to_minus_180(tmp_path: Path) -> None:
+    jumping = np.where(LONGITUDE < 180.0, LONGITUDE, LONGITUDE - 360.0)
+    for name, longitude in {"even": LONGITUDE, "jumping": jumping}.items():
+        phasor_file(tmp_path / f"{name}.nc", lon=longitude)
+    (even,), (turned,) = (
+        read_loads(tmp_path / f"{name}.nc", reference_year=2016, source=name) for name in ("even", "jumping")
+    )
+    assert (turned.longitude_deg[0], turned.longitude_deg[-1]) == (-175.0, 175.0)
+    np.testing.assert_array_equal(np.roll(turned.values, 18, axis=1), even.values)
+
+
+def world(vapour: float, error: float = 0.0) -> tuple[np.ndarray, np.ndarray]:
+    """Water on land at 2 degrees, and all water: an even sea takes up what land and air give, but for an error."""
+    latitude, longitude = np.arange(-89.0, 90.0, 2.0), np.arange(1.0, 360.0, 2.0)
+    ocean = OceanFunction.builtin()
+    cells = CellGrid.from_centres(latitude, longitude)
+    fraction = regrid(ocean.fraction, ocean.cells, cells)
+    land = (1.0 - fraction) * 40.0 * np.cos(np.radians(latitude - 40.0))[:, None] ** 8
+    taken = -(np.sum(land * cells.cell_area_m2) + vapour) * (1.0 + error) / ocean.area_m2
+    return land, land + fraction * taken
+
+
+def test_a_closed_budget_gives_its_land(tmp_path: Path) -> None:
+    vapour = 4e14
+    land, whole = world(vapour)
+    places = {"lat": np.arange(-89.0, 90.0, 2.0), "lon": np.arange(1.0, 360.0, 2.0)}
+    phasor_file(tmp_path / "w.nc", values=whole, **places)
+    (read,) = read_loads(tmp_path / "w.nc", reference_year=2016, source="w.nc", water_vapour=vapour * (1 + 1j))
+    # the sea of this file is even (10 kg m-2), so coast cells lose their ocean part; cells with up to a thousandth of
+    # land count as open ocean, and the mean over them errs by as much
+    np.testing.assert_allclose(read.values, land * (1 + 1j) * (np.abs(read.values) > 0), atol=2e-2)
+    cells = CellGrid.from_centres(places["lat"], places["lon"])
+    assert np.sum(read.values.real * cells.cell_area_m2) == pytest.approx(np.sum(land * cells.cell_area_m2), rel=1e-3)
+
+
+def test_a_budget_that_does_not_close_says_by_how_much(tmp_path: Path) -> None:
+    _, whole = world(4e14, error=0.2)
+    places = {"lat": np.arange(-89.0, 90.0, 2.0), "lon": np.arange(1.0, 360.0, 2.0)}
+    phasor_file(tmp_path / "w.nc", values=whole, **places)
+    with pytest.raises(InputError) as raised:
+        read_loads(tmp_path / "w.nc", reference_year=2016, source="w.nc", water_vapour=4e14 * (1 + 1j))
+    total = np.sum(whole * CellGrid.from_centres(places["lat"], places["lon"]).cell_area_m2) / 1e12
+    text = str(raised.value)
+    assert f"global integral is ({total:.0f}, {total:.0f}) Gt" in text
+    assert "where minus the water vapour is (-400, -400) Gt" in text
+    assert f"{np.hypot(total + 400, total + 400):.0f} Gt are left over" in text
+    # without a stated vapour even a closed file leaves it over
+    phasor_file(tmp_path / "v.nc", values=world(4e14)[1], **places)
+    with pytest.raises(InputError, match="566 Gt are left over"):
+        read_loads(tmp_path / "v.nc", reference_year=2016, source="v.nc")
+
+
+def test_a_little_on_the_ocean_is_another_land_mask(tmp_path: Path) -> None:
+    values = 2.0 * np.nan_to_num(inland(LATITUDE, LONGITUDE))
+    values[8, 20] = 0.05  # an island that only the file knows
+    phasor_file(tmp_path / "w.nc", values=values)
+    (pattern,) = read_loads(tmp_path / "w.nc", reference_year=2016, source="w.nc")
+    assert pattern.values[8, 20] == 0.05 + 0.05j
+
+
+def test_millimetres_that_are_called_metres_are_refused(tmp_path: Path) -> None:
+    phasor_file(tmp_path / "w.nc", values=6e4 * inland(LATITUDE, LONGITUDE))
+    message = "w.nc: w: the load reaches 8.49e\\+04 kg m-2, 84.9 m of water. Must be at most 5000. Check the units."
+    with pytest.raises(InputError, match=message):
+        read_loads(tmp_path / "w.nc", reference_year=2016, source="w.nc")
