@@ -8,11 +8,13 @@ import xarray as xr
 
 from massfit.errors import Fault, InputError
 from massfit.io.deployment import DeploymentFile
+from massfit.io.flags import without_flagged
 from massfit.io.guess import Guess, RecordGuess, fill_in
 from massfit.io.guess_text_record import span_and_sampling, stamp_guess
 from massfit.io.netcdf import open_netcdf
 from massfit.io.record_netcdf import read_netcdf
 from massfit.io.units import PRESSURE_UNITS
+from massfit.records.record import Action
 
 NO_RECORD = "a field, or a model at sites: name it in [corrections] or a [[circulation]] where it belongs"
 """What a file is in which no record was found."""
@@ -114,7 +116,7 @@ def _record(folder: Path, file: str, station: str | None, place: dict[str, Guess
     name = PurePosixPath(file).stem if alone else str(station)
     entry: dict[str, Any] = {"file": file, "station": station}
     try:
-        samples = read_netcdf(folder / file, DeploymentFile(**entry))
+        samples = without_flagged(read_netcdf(folder / file, DeploymentFile(**entry)), DeploymentFile(**entry))
     except InputError as error:
         notes: list[str] = []
         for fault in error.faults:
@@ -123,7 +125,11 @@ def _record(folder: Path, file: str, station: str | None, place: dict[str, Guess
     span, sampling = span_and_sampling(samples.time)
     if not samples.centred:
         keys["stamp"] = stamp_guess(samples.time, sampling)
-    return RecordGuess(file, name, keys, place, span, sampling, tuple(action.detail for action in samples.actions))
+    return RecordGuess(file, name, keys, place, span, sampling, tuple(map(_noted, samples.actions)))
+
+
+def _noted(action: Action) -> str:
+    return f"{action.what}: {action.count}" + (f" ({action.detail})" if action.detail else "")
 
 
 def _asked(fault: Fault, keys: dict[str, Guess], notes: list[str]) -> None:
@@ -132,6 +138,10 @@ def _asked(fault: Fault, keys: dict[str, Guess], notes: list[str]) -> None:
         keys["variable"] = fill_in(f"{fault.problem}. {fault.action}")
     elif "no units" in fault.problem:
         keys["units"] = fill_in(f"one of {', '.join(PRESSURE_UNITS)}; the variable {fault.name} has none")
+    elif "such samples are good" in fault.problem or "its flags are bits" in fault.problem:
+        keys["keep_flags"] = fill_in(f"a list of the flags of good samples: {fault.name}: {fault.problem}")
+    elif "its times are in" in fault.problem:
+        keys["utc_offset_hours"] = fill_in(f"{fault.problem}. {fault.action}")
     elif "height of water" in fault.problem:
         keys["density_kg_m3"] = fill_in(f"density of the water column, kg m-3, for {fault.name}")
     else:

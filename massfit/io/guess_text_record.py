@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 
 from massfit.errors import Fault, InputError
 from massfit.io.deployment import DeploymentFile
+from massfit.io.flags import QARTOD
 from massfit.io.guess import Guess, RecordGuess, fill_in
 from massfit.io.guess_text import DECIMAL_COMMA, TextLayout, guess_layout, is_number
 from massfit.io.guess_time import TimeGuess, guess_time
@@ -17,6 +18,7 @@ from massfit.io.guess_words import own_name, place_of_prose, unit_of_name, unit_
 from massfit.io.heads import text_lines
 from massfit.io.record_text import read_text_record
 from massfit.io.samples import Samples
+from massfit.io.text_layout import FLAG
 from massfit.io.units import PRESSURE_UNITS
 
 _HEIGHTS = ("mm", "cm", "m")
@@ -25,7 +27,7 @@ _STATIONS = ("station", "station_id", "site", "site_id", "mooring", "platform")
 _FAR = 20.0  # robust standard deviations
 _CLEAR = 2.0  # the commonest kind is the routine one where it covers this many times the days of the next
 _DAY_S = 86_400.0
-_DENSITY = "of the water column, by which the height was made from pressure; a deep column has about 1040"
+DENSITY = "of the water column, by which the height was made from pressure; a deep column has about 1040"
 
 
 def guess_text_records(folder: Path, file: str) -> list[RecordGuess]:
@@ -100,15 +102,16 @@ def _record(
     keys |= _variable_key(layout, time, columns, keys, alone=alone)
     keys["units"] = _units(layout, columns)
     if keys["units"].value in _HEIGHTS:
-        keys["density_kg_m3"] = fill_in(_DENSITY)
+        keys["density_kg_m3"] = fill_in(DENSITY)
     keys |= kinds
+    keys |= _flags(layout, keys["columns"].value if "columns" in keys else time.names, time)
     place = {key: Guess(value, f'"{line}"') for key, (value, line) in place_of_prose(layout.prose).items()}
     notes = [f"columns not used: {', '.join(left_out)}"] if left_out else []
     samples = _probe(folder, file, keys, notes)
     span, sampling = None, None
     keys["stamp"] = Guess("middle", "the record could not be looked at")
     if samples is not None:
-        keys |= _missing_key(samples.pressure)
+        keys |= missing_key(samples.pressure)
         span, sampling = span_and_sampling(samples.time)
         keys["stamp"] = stamp_guess(samples.time, sampling)
         if keys["units"].value is None:
@@ -127,8 +130,8 @@ def _layout_keys(layout: TextLayout, time: TimeGuess, columns: Sequence[int]) ->
         keys["comment"] = Guess(layout.comment, "lines begin with it")
     names = list(time.names)
     renamed = names != list(layout.names)
-    for position, meaning in enumerate(layout.meanings):
-        if meaning in ("kind", "flag"):
+    for position in range(len(names)):
+        if position == _kind_column(layout):
             names[position] = "kind"
             renamed = True
     if not layout.first or renamed:
@@ -165,21 +168,54 @@ def _units(layout: TextLayout, columns: Sequence[int]) -> Guess:
 
 def _kinds(layout: TextLayout, time: TimeGuess) -> dict[str, Guess]:
     """Which kinds of rows are routine: those found on most days."""
-    position = next((k for k, meaning in enumerate(layout.meanings) if meaning in ("kind", "flag")), None)
+    position = _kind_column(layout)
     if position is None:
         return {}
+    ranked, days, shown = _by_days(layout, position, time)
+    if len(ranked) == 1:
+        return {}
+    if layout.meanings[position] == "flag":
+        return {"keep_kinds": fill_in(f"a list of the flags of good rows; {layout.names[position]} is {shown}")}
+    if days[0] >= _CLEAR * days[1]:
+        return {"keep_kinds": Guess([ranked[0]], f"the routine rows: kind {shown}")}
+    return {"keep_kinds": fill_in(f"a list of the kinds of rows to use; kind {shown}")}
+
+
+def _kind_column(layout: TextLayout) -> int | None:
+    """Column of kinds of rows; flags in letters are kinds."""
+    kinds = [k for k, meaning in enumerate(layout.meanings) if meaning == "kind"]
+    letters = [k for k, meaning in enumerate(layout.meanings) if meaning == "flag" and k != _flag_column(layout)]
+    return next(iter([*kinds, *letters]), None)
+
+
+def _flag_column(layout: TextLayout) -> int | None:
+    """Column of flags that are whole numbers."""
+    flags = (k for k, meaning in enumerate(layout.meanings) if meaning == "flag")
+    return next((k for k in flags if all(text.isdigit() for text in layout.column(k))), None)
+
+
+def _flags(layout: TextLayout, names: Sequence[str], time: TimeGuess) -> dict[str, Guess]:
+    """Which flags are good: those of QARTOD, where no other number occurs."""
+    position = _flag_column(layout)
+    if position is None:
+        return {}
+    name = names[position]
+    keys = {} if name == FLAG else {"flag_variable": Guess(name, "its name")}
+    flags, _, shown = _by_days(layout, position, time)
+    if {int(flag) for flag in flags} <= set(QARTOD):
+        good = "good and not evaluated, if these are numbers of QARTOD"
+        return keys | {"keep_flags": Guess([1, 2], f"{good}; {name} is {shown}")}
+    return keys | {"keep_flags": fill_in(f"a list of the flags of good rows; {name} is {shown}")}
+
+
+def _by_days(layout: TextLayout, position: int, time: TimeGuess) -> tuple[list[str], list[int], str]:
+    """Texts of a column by the number of days on which they stand, those numbers, and both in words."""
     days: dict[str, set[tuple[str, ...]]] = {}
     for row in layout.rows:
         days.setdefault(row[position], set()).add(tuple(row[k][:10] for k in time.used[:3]))
     ranked = sorted(days, key=lambda kind: -len(days[kind]))
     shown = ", ".join(f"{kind} on {len(days[kind])} days" for kind in ranked)
-    if len(ranked) == 1:
-        return {}
-    if layout.meanings[position] == "flag":
-        return {"keep_kinds": fill_in(f"a list of the flags of good rows; {layout.names[position]} is {shown}")}
-    if len(days[ranked[0]]) >= _CLEAR * len(days[ranked[1]]):
-        return {"keep_kinds": Guess([ranked[0]], f"the routine rows: kind {shown}")}
-    return {"keep_kinds": fill_in(f"a list of the kinds of rows to use; kind {shown}")}
+    return ranked, [len(days[kind]) for kind in ranked], shown
 
 
 def _probe(folder: Path, file: str, keys: Mapping[str, Guess], notes: list[str]) -> Samples | None:
@@ -198,8 +234,13 @@ def _probe(folder: Path, file: str, keys: Mapping[str, Guess], notes: list[str])
         return None
 
 
-def _missing_key(values: NDArray[np.float64]) -> dict[str, Guess]:
-    """Values of nines, or zero, that stand far from all others."""
+def missing_key(values: NDArray[np.float64]) -> dict[str, Guess]:
+    """Guess what means missing: values of nines, or zero, that stand far from all others.
+
+    Parameters
+    ----------
+    values : (n,) array of float64
+    """
     finite = values[np.isfinite(values)]
     if not finite.size:
         return {}

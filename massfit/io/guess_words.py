@@ -3,7 +3,7 @@
 import re
 from collections.abc import Sequence
 
-from massfit.io.units import PRESSURE_UNITS
+from massfit.io.units import PRESSURE_UNITS, SPOKEN_UNITS
 
 _WORDS = {
     "year": "year years yyyy yy yr",
@@ -26,10 +26,7 @@ _PRESSURE = {
 _NO_PRESSURE = {"differential", "difference", "diff", "temperature", "temp", "sd", "std", "error", "sigma", "residual"}
 """Words of columns that are not the pressure itself, even where one of its words stands beside them."""
 _QUANTITY = _PRESSURE | {"sea", "floor", "water", "absolute", "abs", "anomaly", "daily", "hourly", "mean"}
-_FOLDED_UNITS = {unit.casefold(): unit for unit in PRESSURE_UNITS} | {
-    "decibar": "dbar", "decibars": "dbar", "db": "dbar", "millibar": "mbar", "mb": "mbar", "meter": "m",
-    "meters": "m", "metres": "m", "metre": "m", "hectopascal": "hPa", "pascal": "Pa", "mh2o": "m",
-}  # fmt: skip
+_FOLDED_UNITS = SPOKEN_UNITS | {unit.casefold(): unit for unit in PRESSURE_UNITS} | {"decibar": "dbar"}
 _PROSE_UNIT = re.compile(r"\b(?:in|units?)\b\s*(?:are|is|of|[:=])?\s*[\[(]?([A-Za-z0-9]+)", re.IGNORECASE)
 _NUMBER = r"([-+]?\d+(?:\.\d+)?)"
 _DEGREES = rf"[^\d+-]{{0,12}}{_NUMBER}(?:[ °]+(\d+(?:\.\d+)?)')?[ °]*"

@@ -5,6 +5,7 @@ from dataclasses import dataclass
 from pathlib import Path
 
 NETCDF_SUFFIXES = (".nc", ".nc4", ".cdf", ".netcdf")
+MATLAB_SUFFIX = ".mat"
 TEXT_SUFFIXES = (".txt", ".csv", ".tsv", ".dat", ".asc", ".tab", ".prn")
 HEAD_LINES = 20_000
 _TAIL_BYTES = 8_192
@@ -42,7 +43,7 @@ def files_of(folder: Path) -> list[FoundFile]:
     Returns
     -------
     list of FoundFile
-        Only regular files inside the folder whose ending is that of NetCDF or text may be opened.
+        Only regular files inside the folder whose ending is that of NetCDF, MATLAB or text may be opened.
     """
     return [FoundFile(path, path.relative_to(folder).as_posix(), _skipped(path, folder)) for path in _walk(folder)]
 
@@ -65,8 +66,8 @@ def _skipped(path: Path, folder: Path) -> str:
         return "it is a link that leads out of the folder"
     if not path.is_file():
         return "it is not a regular file"
-    if path.suffix.casefold() not in (*NETCDF_SUFFIXES, *TEXT_SUFFIXES):
-        return f"records end with {', '.join((*NETCDF_SUFFIXES[:1], *TEXT_SUFFIXES))}"
+    if path.suffix.casefold() not in (*NETCDF_SUFFIXES, MATLAB_SUFFIX, *TEXT_SUFFIXES):
+        return f"records end with {', '.join((*NETCDF_SUFFIXES[:1], MATLAB_SUFFIX, *TEXT_SUFFIXES))}"
     return "the file is empty" if path.stat().st_size == 0 else ""
 
 

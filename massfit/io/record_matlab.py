@@ -105,6 +105,30 @@ def read_matlab(path: Path, entry: DeploymentFile) -> Samples:
     return _samples(vectors, name, factor, entry)
 
 
+def read_vector(path: Path, name: str, *, source: str) -> NDArray[Any]:
+    """Read one array of numbers of a file that was looked at by :func:`matlab_shapes`.
+
+    Parameters
+    ----------
+    path : pathlib.Path
+    name : str
+    source : str
+        File as the analyst wrote it.
+
+    Returns
+    -------
+    (n,) array
+        As it is stored.
+
+    Raises
+    ------
+    InputError
+        For a damaged file.
+    """
+    with damage_as_fault(source, name, kind="MATLAB"):
+        return _loaded(path, [name])[name]
+
+
 def _samples(vectors: Vectors, name: str, factor: float, entry: DeploymentFile) -> Samples:
     stored, actions = vectors[name], coarse(vectors[name], factor * entry.scale_factor)
     pressure = in_pascal(stored, entry, factor)

@@ -9,16 +9,24 @@ from pathlib import Path
 import numpy as np
 
 from massfit.errors import Fault, InputError
+from massfit.io.content import format_of
 from massfit.io.guess import Guess, RecordGuess, fill_in
+from massfit.io.guess_matlab import guess_matlab_records
 from massfit.io.guess_netcdf import NO_RECORD, guess_netcdf_records
 from massfit.io.guess_sites import SiteGuess, guess_sites
 from massfit.io.guess_text_record import guess_text_records
 from massfit.io.heads import files_of
-from massfit.io.netcdf import is_netcdf
 from massfit.io.network_text import toml_value
 from massfit.records.interval import spoken_interval
 
 FILE = "network.toml"
+_GUESSERS = {"NetCDF": guess_netcdf_records, "MATLAB": guess_matlab_records, "text": guess_text_records}
+_NONE = {
+    "NetCDF": NO_RECORD,
+    "MATLAB": "a file without a vector of numbers",
+    "text": "no table of a time and a pressure",
+}
+"""What a file is in which no record was found."""
 _DAY_S = 86_400.0
 _COARSE_S = 6 * 3600.0  # coarser sampling cannot show a tide
 
@@ -95,7 +103,7 @@ def write_starter(folder: Path) -> Starter:
         raise InputError(Fault(str(target), "", "it is there already", "Is never overwritten", action))
     starter = begin_network(folder)
     if not starter.deployments:
-        allowed = "Records are NetCDF, or text with a time and a pressure in columns"
+        allowed = "Records are NetCDF, MATLAB, or text with a time and a pressure in columns"
         raise InputError(Fault(str(folder), "", "no record was found", allowed, "Check the folder"))
     try:
         with target.open("x", encoding="utf-8") as file:
@@ -123,15 +131,14 @@ def begin_network(folder: Path) -> Starter:
             aside.append((found.name, found.skipped))
             continue
         try:
-            binary = is_netcdf(found.path)
-            own = guess_netcdf_records(folder, found.name) if binary else guess_text_records(folder, found.name)
+            form = format_of(found.path, source=found.name)
+            own = _GUESSERS[form](folder, found.name)
         except (InputError, OSError) as error:
             aside.append((found.name, f"it cannot be read: {str(error).splitlines()[0]}"))
             continue
         records += own
         if not own:
-            kind = NO_RECORD if binary else "no table of a time and a pressure"
-            aside.append((found.name, f"it is {kind}"))
+            aside.append((found.name, f"it is {_NONE[form]}"))
     sites = guess_sites(records)
     parts = [_HEAD, _network(folder, records), _corrections(records), _REST, *map(_site, sites), _aside(aside)]
     text = "\n".join(part for part in parts if part)

@@ -26,6 +26,16 @@ _PASCAL = {
 }
 _WATER_HEIGHT_M = {"mm": 1.0e-3, "cm": 1.0e-2, "m": 1.0}
 
+SPOKEN_UNITS = {
+    "pascal": "Pa", "pascals": "Pa", "n/m2": "Pa", "n m-2": "Pa", "hectopascal": "hPa", "hectopascals": "hPa",
+    "kilopascal": "kPa", "kilopascals": "kPa", "millibar": "mbar", "millibars": "mbar", "mb": "mbar", "db": "dbar",
+    "decibars": "dbar", "bars": "bar", "psig": "psi", "lbf/in2": "psi", "pounds per square inch": "psi",
+    "mm h2o": "mm", "mmh2o": "mm", "cm h2o": "cm", "cmh2o": "cm", "m h2o": "m", "mh2o": "m", "centimeter": "cm",
+    "centimeters": "cm", "centimetre": "cm", "centimetres": "cm", "millimeter": "mm", "millimeters": "mm",
+    "millimetre": "mm", "millimetres": "mm", "meter": "m", "meters": "m", "metre": "m", "metres": "m",
+}  # fmt: skip
+"""Other words for the same, in small letters: not read, since each has been used for something else, but suggested."""
+
 PRESSURE_UNITS = (*_PASCAL, *_WATER_HEIGHT_M)
 """Every spelling that is read; the last three are heights of water."""
 
@@ -79,6 +89,7 @@ def _allowed() -> str:
 
 
 def _suggestion(spelling: str) -> str:
-    folded = {unit.casefold(): unit for unit in PRESSURE_UNITS}
-    near = get_close_matches(spelling.casefold(), folded, n=1, cutoff=0.5)
+    folded = SPOKEN_UNITS | {unit.casefold(): unit for unit in PRESSURE_UNITS}
+    word = " ".join(spelling.casefold().split())
+    near = [word] if word in folded else get_close_matches(word, folded, n=1, cutoff=0.75)
     return f"Did you mean {folded[near[0]]!r}?" if near else "Convert the data to one of these"

@@ -9,6 +9,7 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from massfit.errors import Fault, InputError
+from massfit.io.guarded import guarded
 from massfit.io.netcdf import damage_as_fault, open_netcdf
 from massfit.io.reading import did_you_mean, nearest
 from massfit.io.units import pascal_per_unit
@@ -58,6 +59,8 @@ def read_pressure(
         if data.nbytes <= _EAGER_BYTES:
             data = load(data, source=source).astype(np.float64)
             raw.close()
+        else:
+            data = guarded(data, source=source)
         return data.assign_attrs(units="Pa").rename(name)
 
 

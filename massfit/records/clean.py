@@ -73,12 +73,32 @@ def usable_samples(
         order = np.argsort(time, kind="stable")
         time, pressure = time[order], pressure[order]
     actions.append(Action("samples put in order of time", disorder))
+    time, pressure, repeats = _without_repeats(time, pressure)
+    return time, pressure, tuple(action for action in (*actions, *repeats) if action.count)
+
+
+def _without_repeats(
+    time: NDArray[np.datetime64], pressure: NDArray[np.float64]
+) -> tuple[NDArray[np.datetime64], NDArray[np.float64], tuple[Action, ...]]:
+    """Leave one sample of each stamp: the one that is repeated, or the mean of those that differ."""
     first = np.flatnonzero(np.diff(time, prepend=np.datetime64("NaT")) != np.timedelta64(0, "ns"))
-    actions.append(Action("repeated stamps averaged", time.size - first.size))
-    if first.size < time.size:
-        counts = np.diff(first, append=time.size)
-        time, pressure = time[first], np.add.reduceat(pressure, first) / counts
-    return time, pressure, tuple(action for action in actions if action.count)
+    if first.size == time.size:
+        return time, pressure, ()
+    counts = np.diff(first, append=time.size)
+    low, high = np.minimum.reduceat(pressure, first), np.maximum.reduceat(pressure, first)
+    alike = (counts > 1) & (low == high)
+    differ = (counts > 1) & ~alike
+    apart = float((high - low)[differ].max(initial=0.0)) / 100.0
+    mean = np.where(differ, np.add.reduceat(pressure, first) / counts, low)
+    repeats = (
+        Action("repeated samples left out", int((counts - 1)[alike].sum()), "the same stamp and the same value"),
+        Action(
+            "repeated stamps averaged",
+            int((counts - 1)[differ].sum()),
+            f"the same stamp and other values, up to {apart:.3g} hPa apart",
+        ),
+    )
+    return time[first], mean, repeats
 
 
 def _choices(

@@ -154,7 +154,7 @@ def test_a_clock_that_starts_again_and_repeats_are_left_to_the_cleaning(rows: st
     time, _, actions = usable_samples(record.time, record.pressure)
     assert record.time.size == 56
     assert time.size == 28
-    assert ("repeated stamps averaged", 28) in [(action.what, action.count) for action in actions]
+    assert ("repeated samples left out", 28) in [(action.what, action.count) for action in actions]
 
 
 def small() -> xr.Dataset:

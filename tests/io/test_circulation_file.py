@@ -2,15 +2,19 @@
 
 from pathlib import Path
 
+import h5py
 import numpy as np
 import pytest
 import xarray as xr
 
+from massfit.corrections.circulation import circulation_at_sites
 from massfit.errors import InputError
-from massfit.io import variables
+from massfit.fingerprint.ocean import OceanFunction
+from massfit.io import netcdf, variables
 from massfit.io.circulation_file import read_circulation
 from massfit.io.schema import CirculationEntry
 from massfit.network import CirculationModel
+from massfit.site import Site
 
 TIME = np.arange("2015-01-01", "2015-01-11", dtype="datetime64[D]").astype("datetime64[ns]")
 LATITUDE, LONGITUDE = np.arange(-60.0, 61.0, 10.0), np.arange(-175.0, 180.0, 10.0)
@@ -52,6 +56,26 @@ def test_a_big_field_stays_on_disk(tmp_path: Path, monkeypatch: pytest.MonkeyPat
     assert not pressure.variable._in_memory
     np.testing.assert_allclose(pressure.isel(time=3), 1e4 * FIELD[3], rtol=1e-12)
     pressure.close()
+
+
+def test_damage_in_the_middle_of_a_big_field_is_told_when_it_is_met(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    # of a field above 64 MB the first look reads both ends only
+    monkeypatch.setattr(variables, "_EAGER_BYTES", 100)
+    monkeypatch.setattr(netcdf, "examined_problem", lambda _: "")
+    chunked = {"bottom": {"fletcher32": True, "chunksizes": (1, LATITUDE.size, LONGITUDE.size)}}
+    field().to_netcdf(tmp_path / "m.nc", engine="h5netcdf", encoding=chunked)
+    with h5py.File(tmp_path / "m.nc") as file:
+        place = file["bottom"].id.get_chunk_info(5).byte_offset
+    content = bytearray((tmp_path / "m.nc").read_bytes())
+    content[place + 9] ^= 255
+    (tmp_path / "m.nc").write_bytes(content)
+    model = read(tmp_path / "m.nc")
+    np.testing.assert_allclose(model.pressure.isel(time=4), 1e4 * FIELD[4], rtol=1e-12)
+    sites = [Site("A", -11.0, 205.0)]
+    with pytest.raises(InputError, match=r"m\.nc: bottom: the file cannot be read as NetCDF \(OSError"):
+        circulation_at_sites(model, sites, ocean=OceanFunction.builtin())
 
 
 def test_sites_by_id(tmp_path: Path) -> None:

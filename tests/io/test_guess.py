@@ -127,8 +127,20 @@ def test_kinds_routine_rows_and_flags(tmp_path: Path) -> None:
     flags = written("{y} {mo} {d} {h} 0 {v}")
     (tmp_path / "b.txt").write_text("\n".join(["year month day hour qc pressure_dbar", *flags, *events]))
     (guess,) = guess_text_records(tmp_path, "b.txt")
-    assert guess.keys["keep_kinds"].value is None
-    assert "qc is 0 on 76 days, 3 on 1 days" in guess.keys["keep_kinds"].evidence
+    # 0 is no number of QARTOD: which rows are good is asked
+    assert guess.keys["flag_variable"].value == "qc"
+    assert guess.keys["keep_flags"].value is None
+    assert "qc is 0 on 76 days, 3 on 1 days" in guess.keys["keep_flags"].evidence
+    (tmp_path / "b.txt").write_text("\n".join(["year month day hour qc pressure_dbar", *rows, *events]))
+    (guess,) = guess_text_records(tmp_path, "b.txt")
+    assert guess.keys["keep_flags"].value == [1, 2]
+    # letters are kinds of rows
+    letters = written("{y} {mo} {d} {h} G {v}")
+    lines = ["year month day hour qc pressure_dbar", *letters, "2016 3 4 1 B 5500.0"]
+    (tmp_path / "b.txt").write_text("\n".join(lines))
+    (guess,) = guess_text_records(tmp_path, "b.txt")
+    assert "keep_flags" not in guess.keys
+    assert "qc is G on 76 days, B on 1 days" in guess.keys["keep_kinds"].evidence
 
 
 def test_several_columns_of_pressure(tmp_path: Path) -> None:

@@ -91,6 +91,61 @@ def test_depth_and_pressure_are_compared(
     assert any("check the units" in text for text in read_network(network_folder).warnings) is warned
 
 
+@pytest.mark.parametrize(
+    ("factor", "depth_m", "expected"),
+    [
+        (100.0, None, "Correct `units`, in the file or here: "),
+        (1e4, 4900, 'Correct `units`, in the file or here: "Pa" would give 4902 m.'),
+        (100.0, 4900, 'Correct `units`, in the file or here: "hPa" would give 4902 m.'),
+    ],
+)
+def test_a_unit_that_would_fit_is_named(
+    network_folder: Path, put: Callable[..., None], change: Change, factor: float, depth_m: float | None, expected: str
+) -> None:
+    path = network_folder / "records/b.nc"
+    put(_samples(network_folder))
+    with xr.open_dataset(path, engine="h5netcdf") as file:
+        dataset = file.load()
+    dataset["pressure"].attrs["units"] = {1e4: "dbar", 100.0: "dbar"}[factor]
+    dataset["pressure"].values[:] /= 1e4 / factor
+    dataset.to_netcdf(path, engine="h5netcdf")
+    if depth_m:
+        change('id = "B"', f'id = "B"\ndepth_m = {depth_m}')
+    fault = _fault(network_folder)
+    assert "No ocean is that deep" in fault
+    assert expected in fault
+
+
+def test_a_unit_that_does_not_belong_to_the_depth_is_warned_about_with_the_one_that_would(
+    network_folder: Path, put: Callable[..., None], change: Change
+) -> None:
+    # 5000 dbar, called kPa
+    put(_samples(network_folder) / 10.0)
+    change('id = "B"', 'id = "B"\ndepth_m = 4900')
+    (warning,) = [text for text in read_network(network_folder).warnings if "check the units" in text]
+    assert "does not belong to a depth of 4900 m" in warning
+    assert warning.endswith('check the units: "mm" would give 5000 m.')  # no unit of pressure here is ten pascals
+
+
+def test_a_record_that_hardly_varies_is_warned_about(network_folder: Path, put: Callable[..., None]) -> None:
+    wave = (_samples(network_folder) - 5e7) / 1e4
+    put(wave)
+    (warning,) = [text for text in read_network(network_folder).warnings if "varies by" in text]
+    assert warning == (
+        "B/1: the pressure varies by 6.97e-05 hPa (1 sd), and tides and weather on the sea floor by about 1 to 100: "
+        'check the units: "dbar" would make it 0.697 hPa.'
+    )
+
+
+def test_coarse_numbers_are_warned_about(network_folder: Path, put: Callable[..., None]) -> None:
+    put(_samples(network_folder))
+    path = network_folder / "records/b.nc"
+    with xr.open_dataset(path, engine="h5netcdf") as file:
+        dataset = file.load()
+    dataset.to_netcdf(path, engine="h5netcdf", encoding={"pressure": {"dtype": "float32"}})
+    assert any("resolve 4.0 Pa only" in text for text in read_network(network_folder).warnings)
+
+
 def test_an_output_that_is_a_file_is_refused_first(tmp_path: Path) -> None:
     # that the folder above can be written is tried when its partial folder is made: tests/faults/test_output_faults.py
     (tmp_path / "file").write_text("")

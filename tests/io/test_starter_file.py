@@ -122,7 +122,7 @@ def test_only_records_are_opened(tmp_path: Path, monkeypatch: pytest.MonkeyPatch
     assert made.sites == 2
     assert "#   run.exe: records end with" in made.text
     assert "#   odd.nc: it cannot be read: " in made.text
-    assert "#   bad name.txt: it is no table" in made.text
+    assert "#   bad name.txt: it cannot be read: " in made.text
     assert "#   away.csv: it is a link that leads out of the folder" in made.text
     assert "#   pipe.csv: it is not a regular file" in made.text
     tomllib.loads(made.text)

@@ -33,7 +33,9 @@ def test_height_of_water_needs_its_density(units: str) -> None:
 
 
 @pytest.mark.parametrize(
-    ("given", "meant"), [("db", "dbar"), ("DBAR", "dbar"), ("hpa", "hPa"), ("millibar", "mbar"), ("PSI", "psi")]
+    ("given", "meant"), [("db", "dbar"), ("DBAR", "dbar"), ("hpa", "hPa"), ("millibar", "mbar"), ("PSI", "psi"),
+     ("Pascal", "Pa"), ("pascals", "Pa"), ("Decibars", "dbar"), ("kilopascal", "kPa"), ("m  H2O", "m"), ("Meters", "m"),
+     ("hectopascal", "hPa"), ("N/m2", "Pa"), ("decibarr", "decibar")]
 )
 def test_near_spelling_is_suggested_and_not_guessed(given: str, meant: str) -> None:
     with pytest.raises(InputError) as caught:
@@ -44,6 +46,7 @@ def test_near_spelling_is_suggested_and_not_guessed(given: str, meant: str) -> N
     assert all(unit in fault.allowed for unit in PRESSURE_UNITS)
 
 
-def test_foreign_unit_gets_no_suggestion() -> None:
+@pytest.mark.parametrize("given", ["furlong", "degC", "counts", "atm", "1", "kelvin"])
+def test_foreign_unit_gets_no_suggestion(given: str) -> None:
     with pytest.raises(InputError, match="Convert the data"):
-        pascal_per_unit("furlong")
+        pascal_per_unit(given)

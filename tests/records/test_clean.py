@@ -95,3 +95,16 @@ def test_a_coarse_counting_step_is_no_spike() -> None:
 
 def test_short_stretches_are_left_alone() -> None:
     assert not find_spikes(np.array([0.0, 1e9, 0.0, 0.0])).any()
+
+
+def test_repeats_of_a_sample_are_dropped_and_those_that_differ_averaged() -> None:
+    time = np.datetime64("2016-01-01", "ns") + np.array([0, 1, 1, 2, 2, 2, 3, 4, 4]) * np.timedelta64(1, "h")
+    pressure = np.array([1.0, 5.0, 5.0, 7.0, 9.0, 11.0, 2.0, 0.1, 0.1])
+    kept, values, actions = usable_samples(time, pressure)
+    assert kept.size == 5
+    # 0.1 stays what it is: the mean of two equal numbers is not taken
+    assert values.tolist() == [1.0, 5.0, 9.0, 2.0, 0.1]
+    assert [(action.what, action.count, action.detail) for action in actions] == [
+        ("repeated samples left out", 2, "the same stamp and the same value"),
+        ("repeated stamps averaged", 2, "the same stamp and other values, up to 0.04 hPa apart"),
+    ]
