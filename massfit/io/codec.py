@@ -17,16 +17,16 @@ from massfit.annual.noise import NoiseModel
 from massfit.corrections.phasors import CorrectionPhasor
 from massfit.posterior.convergence import Convergence
 from massfit.posterior.quadrature import ScalePosterior
-from massfit.records.record import Action, DailyRecord, LevelChange, TidalConstant
+from massfit.records.record import Action, Calibrations, DailyRecord, LevelChange, TidalConstant
 from massfit.results.estimate import SiteReduction
 from massfit.site import Interval, Site
 
 CLASSES: dict[str, type] = {
     f"{kind.__module__}.{kind.__qualname__}": kind
     for kind in (
-        Action, Convergence, CorrectionPhasor, DailyRecord, DriftCurve, DriftFit, Interval, LevelChange, NoiseFit,
-        NoiseModel, NumberEstimate, ResidualSpectrum, ScalePosterior, Site, SiteDiagnostics, SiteFit, SiteReduction,
-        TidalConstant, Whiteness, YearPhasor,
+        Action, Calibrations, Convergence, CorrectionPhasor, DailyRecord, DriftCurve, DriftFit, Interval, LevelChange,
+        NoiseFit, NoiseModel, NumberEstimate, ResidualSpectrum, ScalePosterior, Site, SiteDiagnostics, SiteFit,
+        SiteReduction, TidalConstant, Whiteness, YearPhasor,
     )
 }  # fmt: skip
 """The only classes that are written and read."""

@@ -48,7 +48,9 @@ class DeploymentFile:
     variable : str, optional
         NetCDF or MATLAB variable or text column; optional where unambiguous.
     drift : str
-        "exponential+linear", "linear" or "none".
+        "exponential+linear", "logarithm+linear", "linear", "none" or "compare".
+    calibrations : str, optional
+        CSV file of readings at a known pressure, relative to the network file.
     steps : str or tuple of datetime
         "find", "none", or the UTC times of declared changes of level.
     ramps : tuple of RampEntry
@@ -97,6 +99,7 @@ class DeploymentFile:
     station: Text | None = None
     variable: Text | None = None
     drift: DriftForm = "exponential+linear"
+    calibrations: Text | None = None
     steps: Literal["find", "none"] | tuple[datetime, ...] = "find"
     ramps: tuple[RampEntry, ...] = ()
     settling: Literal["model", "trim"] | Annotated[float, Field(ge=0, le=365)] = "model"

@@ -211,7 +211,10 @@ def _site_records(reading: Reading, table: SiteTable) -> list[Record] | None:
     records: list[Record | None] = []
     for path, entry in table.deployments:
         label = f"{site}/{int(path[-1]) + 1}"
-        if reading.find((*path, "file"), entry.file) is None:
+        found = [reading.find((*path, "file"), entry.file)]
+        if entry.calibrations is not None:
+            found.append(reading.find((*path, "calibrations"), entry.calibrations))
+        if None in found:
             records.append(None)
         else:
             records.append(reading.attempt(read_record, reading.folder, entry, site=site, deployment=label))

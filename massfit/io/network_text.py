@@ -117,9 +117,16 @@ def deployment_table(record: Record, file: str, *, text: Mapping[str, Any]) -> M
     if not steps:
         steps = "find" if record.find_steps else "none"
     table = {"file": file, **text, "drift": record.drift, "steps": steps}
+    if record.calibrations is not None:
+        table["calibrations"] = calibration_file(file)
     if record.ramps:
         table["ramps"] = [_Raw(f"{{ from = {_instant(start)}, to = {_instant(end)} }}") for start, end in record.ramps]
     return table | ({"settling": record.settling} if record.settling != "model" else {})
+
+
+def calibration_file(file: str) -> str:
+    """Give the name of the file of calibrations that goes with the file of a record."""
+    return f"{file.rpartition('.')[0]}_calibrations.csv"
 
 
 def circulation_table(model: CirculationModel, file: str, ocean_mean: str) -> Mapping[str, Any]:

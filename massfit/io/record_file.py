@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from massfit.errors import Fault, InputError
+from massfit.io.calibration_file import read_calibrations
 from massfit.io.clock import clock_notes, corrected_clock
 from massfit.io.content import Format, format_of
 from massfit.io.deployment import DeploymentFile
@@ -17,7 +18,7 @@ from massfit.io.record_netcdf import read_netcdf
 from massfit.io.record_text import read_text_record
 from massfit.io.samples import Samples
 from massfit.io.schema import utc
-from massfit.records.record import Action, Record
+from massfit.records.record import Action, Calibrations, Record
 
 _READERS: dict[Format, Callable[[Path, DeploymentFile], Samples]] = {
     "NetCDF": read_netcdf,
@@ -84,7 +85,14 @@ def read_record(folder: Path, entry: DeploymentFile, *, site: str, deployment: s
         source=entry.file,
         actions=actions,
         units=samples.units,
+        calibrations=None if entry.calibrations is None else _calibrations(folder, entry.calibrations),
     )
+
+
+def _calibrations(folder: Path, file: str) -> Calibrations:
+    if not (folder / file).is_file():
+        raise InputError(Fault(file, "calibrations", "there is no such file", action="Correct `calibrations`"))
+    return read_calibrations(folder / file, source=file)
 
 
 def centred(start: NDArray[np.datetime64]) -> NDArray[np.datetime64]:

@@ -8,9 +8,10 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
+from massfit.constants import PASCAL_PER_HPA
 from massfit.fingerprint.pattern import LoadPattern
 from massfit.network import CirculationModel, Series
-from massfit.records.record import Record
+from massfit.records.record import Calibrations, Record
 from massfit.site import Site
 
 TEXT_MISSING = -9999.0
@@ -59,6 +60,21 @@ def write_series(path: Path, series: Series) -> None:
     stamps = np.datetime_as_string(series.time, unit="s")
     rows = [f"{stamp}Z,{value:.4f}" for stamp, value in zip(stamps, series.pressure / 100.0, strict=True)]
     head = [f"# {series.name}; times are UTC, the middle of each interval", "# units: hPa", "time,value"]
+    path.write_text("\n".join([*head, *rows, ""]), encoding="utf-8")
+
+
+def write_calibrations(path: Path, calibrations: Calibrations) -> None:
+    """Write readings at a known pressure as CSV in hPa.
+
+    Parameters
+    ----------
+    path : pathlib.Path
+    calibrations : Calibrations
+    """
+    stamps = np.datetime_as_string(calibrations.time, unit="s")
+    columns = zip(stamps, calibrations.pressure / PASCAL_PER_HPA, calibrations.sd / PASCAL_PER_HPA, strict=True)
+    rows = [f"{stamp}Z,{value:.4f},{sd:.4g}" for stamp, value, sd in columns]
+    head = ["# readings less the known pressure; times are UTC", "# units: hPa", "time,value,sd"]
     path.write_text("\n".join([*head, *rows, ""]), encoding="utf-8")
 
 

@@ -12,12 +12,13 @@ from typing import Any
 from massfit.errors import Fault, InputError
 from massfit.fingerprint.pattern import LoadPattern
 from massfit.io.earth_file import write_earth_profile
-from massfit.io.network_text import circulation_table, deployment_table, network_text
+from massfit.io.network_text import calibration_file, circulation_table, deployment_table, network_text
 from massfit.io.write_fields import (
     TEXT_MISSING,
     text_columns,
     write_air_pressure,
     write_atmosphere_load,
+    write_calibrations,
     write_circulation,
     write_loads,
     write_record,
@@ -103,6 +104,8 @@ def _write_records(network: Network, folder: Path) -> list[tuple[Any, list[Mappi
                 continue
             (folder / file).parent.mkdir(parents=True, exist_ok=True)
             write_record(folder / file, record, site, title=network.settings.frame.name)
+            if record.calibrations is not None:
+                write_calibrations(folder / calibration_file(file), record.calibrations)
             tables.append(deployment_table(record, file, text=_text_keys(record, file)))
         sites.append((site, tables))
     return sites

@@ -200,6 +200,7 @@ def _reduced(daily: DailyRecord, corrections: xr.Dataset, used: NDArray[np.bool_
         start=daily.start,
         drift=daily.drift,
         steps=daily.steps,
+        calibrations=daily.calibrations,
         companions=companion_series(corrections, daily.pressure[kept], place),
     )
 

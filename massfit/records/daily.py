@@ -23,7 +23,7 @@ from massfit.records.level_changes import (
     level_breaks,
 )
 from massfit.records.means import daily_means
-from massfit.records.record import Action, DailyRecord, LevelChange, Record, Settling, TidalConstant
+from massfit.records.record import Action, Calibrations, DailyRecord, LevelChange, Record, Settling, TidalConstant
 from massfit.records.settling import settled_after
 from massfit.records.stuck import find_stuck
 from massfit.records.tides import TideFit, fit_short_tides
@@ -95,6 +95,9 @@ def reduce_to_daily(
         _counted("samples of the first days left out", settling, f"settling = {record.settling}"),
     ]
     after = [Action("days of settling left out", settled, settling_rule.RULE), _gap_action(reduced.time[settled:])]
+    calibrations = _since(record.calibrations, first)
+    early = len(record.calibrations.time) - len(calibrations.time) if record.calibrations and calibrations else 0
+    after.append(Action("calibrations before the record left out", early, "the drift begins with the record"))
     said = [action for action in (*before, *reduced.actions, *after) if action.count]
     return DailyRecord(
         site=record.site,
@@ -107,6 +110,7 @@ def reduce_to_daily(
         tides=reduced.tides,
         actions=(*record.actions, *actions, *said),
         changes=reduced.changes,
+        calibrations=calibrations,
     )
 
 
@@ -145,6 +149,13 @@ def _settled(reduced: _Reduced, start: np.datetime64, settling: Settling) -> int
     days = days_from_epoch(reduced.time)
     level = flattened(days, reduced.pressure, level_breaks(reduced.changes))
     return settled_after(np.floor(days).astype(np.int64), level, float(days_from_epoch(start)))
+
+
+def _since(calibrations: Calibrations | None, start: np.datetime64) -> Calibrations | None:
+    if calibrations is None:
+        return None
+    kept = calibrations.time >= start
+    return Calibrations(calibrations.time[kept], calibrations.pressure[kept], calibrations.sd[kept])
 
 
 def _gap_action(time: NDArray[np.datetime64]) -> Action:

@@ -120,6 +120,8 @@ class Record:
         What was done so far.
     units : str
         Unit in which the file was read; empty when built in memory.
+    calibrations : Calibrations, optional
+        Readings at a known pressure.
 
     Examples
     --------
@@ -145,6 +147,7 @@ class Record:
     source: str = ""
     actions: tuple[Action, ...] = ()
     units: str = ""
+    calibrations: Calibrations | None = None
 
 
 @dataclass(frozen=True)
@@ -210,6 +213,8 @@ class DailyRecord:
         Everything done from file to daily mean.
     changes : tuple of LevelChange
         Steps and ramps, declared and found, in order of time.
+    calibrations : Calibrations, optional
+        Readings at a known pressure from the start on.
     """
 
     site: str
@@ -222,3 +227,4 @@ class DailyRecord:
     tides: tuple[TidalConstant, ...] = ()
     actions: tuple[Action, ...] = ()
     changes: tuple[LevelChange, ...] = ()
+    calibrations: Calibrations | None = None
