@@ -4,6 +4,7 @@ import json
 import os
 import sys
 from pathlib import Path
+from typing import Literal
 
 import click
 
@@ -152,3 +153,24 @@ def check(network: Path, outside: bool, as_json: bool) -> None:
         plain = "utf" not in (sys.stdout.encoding or "").casefold()
         click.echo(in_json(looked_at.found) if as_json else check_text(looked_at.found, plain=plain))
         refuse(looked_at)
+
+
+@main.command("love-numbers")
+@click.option("--output", type=_FOLDER, required=True, help="CSV file to write.")
+@click.option("--earth", type=_FOLDER, help="CSV of an Earth profile  [default: PREM]")
+@click.option("--max-degree", type=click.IntRange(1, 100_000), default=400, show_default=True, help="Highest degree.")
+@click.option("--frame", type=click.Choice(["CE", "CM", "CF"]), default="CF", show_default=True, help="Of degree one.")
+@click.option("--overwrite", is_flag=True, help="Replace a file that is there.")
+def love_numbers(
+    output: Path, earth: Path | None, max_degree: int, frame: Literal["CE", "CM", "CF"], overwrite: bool
+) -> None:
+    """Write the load Love numbers of an Earth profile.
+
+    The CSV has degree, h, l and k below comment lines that say which profile,
+    frame and method they come from.
+    """
+    with refusing_politely():
+        from massfit.pipeline.love import love_numbers_to_file
+
+        love = love_numbers_to_file(output, earth=earth, max_degree=max_degree, frame=frame, overwrite=overwrite)
+    click.echo(f"Wrote degrees 0 to {love.max_degree} of {love.profile} to {output}.")
