@@ -72,6 +72,34 @@ FOOTPRINTS = Contract(
     attributes=("max_degree",),
 )
 
+FINGERPRINT_STUDY = Contract(
+    "fingerprint study",
+    # what `massfit fingerprint` writes: sites, maps on cells of one degree, footprints, and the way to convergence
+    {
+        "admittance": Variable(("member", "site", "component"), "1"),
+        "reference_admittance": Variable(("case", "site", "component"), "1"),
+        "amplitude_ratio": Variable(("site",), "1"),
+        "delay": Variable(("site",), "d"),
+        "admittance_by_degree": Variable(("degree", "site", "component"), "1"),
+        "map_admittance": Variable(("member", "lat", "lon", "component"), "1"),
+        "map_amplitude_ratio": Variable(("lat", "lon"), "1"),
+        "map_delay": Variable(("lat", "lon"), "d"),
+        "map_difference": Variable(("site",), "1"),
+        "ocean_fraction": Variable(("lat", "lon"), "1"),
+        "footprint": Variable(("site", "lat", "lon"), "m kg-1"),
+        "footprint_ratio": Variable(("site", "lat", "lon"), "1"),
+        "constant": Variable(("site",), "m kg-1"),
+    },
+    attributes=("earth_model", "max_degree", "ocean_area_m2", "sea_water_density_kg_m3"),
+    optional={
+        "air_load_response": Variable(("site", "component"), "Pa"),
+        # standard deviations over the members; not there for a single one
+        "amplitude_ratio_spread": Variable(("site",), "1"),
+        "delay_spread": Variable(("site",), "d"),
+        "map_spread": Variable(("lat", "lon"), "1"),
+    },
+)
+
 EQUILIBRIUM_RESPONSES = Contract(
     "equilibrium responses",
     # pressure at the site per height of the degree-2 zonal tide and per wobble parameter

@@ -62,6 +62,34 @@ def estimate(
 
 
 @main.command()
+@click.argument("network", type=_FOLDER)
+@click.option("--output", type=_FOLDER, help="Folder  [default: fingerprint/ beside the network file]")
+@click.option("--finest", type=click.IntRange(45, 1440), default=360, show_default=True, help="Degree compared with.")
+@click.option("--overwrite", is_flag=True, help="Replace an earlier fingerprint.")
+@click.option("--outside", is_flag=True, help="Allow paths outside the network's folder.")
+@click.option("--quiet", is_flag=True, help="Print nothing but errors.")
+def fingerprint(network: Path, output: Path | None, finest: int, overwrite: bool, outside: bool, quiet: bool) -> None:
+    """Show how each site sees the cycle of ocean mass.
+
+    Reads places and loads of NETWORK; records and ocean models need not be
+    there. Writes maps, footprints, a table, a NetCDF file and fingerprint.html,
+    and prints the table.
+    """
+    with refusing_politely(), shown_progress(quiet=quiet) as progress:
+        from massfit.pipeline.fingerprint_study import fingerprint_folder, fingerprint_to_folder
+
+        folder, switches = fingerprint_folder(network, output), {"overwrite": overwrite, "outside": outside}
+        threads = os.cpu_count() or 1
+        study = fingerprint_to_folder(
+            network, folder, finest_degree=finest, progress=progress, threads=threads, **switches
+        )
+    from massfit.report.fingerprint_text import fingerprint_text
+
+    if not quiet:
+        click.echo(f"{fingerprint_text(study)}\n\nResults in {folder}: start with fingerprint.html")
+
+
+@main.command()
 @click.argument("folder", type=_FOLDER)
 @click.option("--seed", type=click.IntRange(min=0), default=1, show_default=True, help="Seed of the invention.")
 @click.option("--sites", type=click.IntRange(1, 60), default=18, show_default=True, help="Number of sites.")

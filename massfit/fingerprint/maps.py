@@ -10,6 +10,7 @@ from massfit.errors import Fault, InputError
 from massfit.fingerprint.grid import CellGrid, regrid
 from massfit.fingerprint.operator import SeaLevelOperator
 from massfit.fingerprint.pattern import LoadPattern
+from massfit.fingerprint.rotation import RotationalFeedback
 from massfit.fingerprint.sea_level import SeaLevel, solve_sea_level
 from massfit.phasor import COMPONENTS, as_components
 from massfit.site import Site
@@ -20,9 +21,15 @@ MAP_LATITUDE_DEG = np.arange(-89.5, 90.0)
 MAP_LONGITUDE_DEG = np.arange(0.5, 360.0)
 """Longitudes of these cells, degrees east."""
 
+_SMOOTHING = 4.0  # the kernel is e^-8 at the highest degree
+
 
 def admittance_maps(
-    operator: SeaLevelOperator, loads: Sequence[LoadPattern], *, water_vapour: complex = 0j
+    operator: SeaLevelOperator,
+    loads: Sequence[LoadPattern],
+    *,
+    water_vapour: complex = 0j,
+    rotation: RotationalFeedback | None = None,
 ) -> xr.Dataset:
     """Complex admittance of every place under every load member: the site admittance, everywhere.
 
@@ -36,6 +43,8 @@ def admittance_maps(
         Members of the ensemble, kg m-2.
     water_vapour : complex
         Annual phasor of the mass of water vapour in the air, kg.
+    rotation : RotationalFeedback, optional
+        Of this operator.
 
     Returns
     -------
@@ -60,7 +69,7 @@ def admittance_maps(
     True
     """
     _require_members(loads)
-    maps = np.stack([_map(_solve(operator, [load], water_vapour)) for load in loads])
+    maps = np.stack([_map(_solve(operator, rotation, [load], water_vapour)) for load in loads])
     cells = CellGrid.from_centres(MAP_LATITUDE_DEG, MAP_LONGITUDE_DEG)
     fraction = regrid(operator.ocean, operator.cells, cells)
     return xr.Dataset(
@@ -73,33 +82,45 @@ def admittance_maps(
 
 
 def footprint_maps(operator: SeaLevelOperator, footprints: xr.Dataset) -> xr.Dataset:
-    """Footprints as means over the cells of the maps.
+    """Footprints as means over the cells of the maps, and smooth, as an amplitude ratio, for the eye.
 
-    Sums of load times cell area times these values are those over the operator's own grid exactly, for loads
-    that are even within the cells.
+    Sums of load times cell area times the footprints are those over the operator's own grid exactly, for loads
+    that are even within the cells. A footprint to a highest degree has ripples of that degree, which no load of
+    some size sees; `footprint_ratio` is without them.
 
     Parameters
     ----------
     operator : SeaLevelOperator
     footprints : xarray.Dataset
-        contracts.FOOTPRINTS, of the same operator.
+        contracts.FOOTPRINTS, of the same operator; real, so without rotational feedback.
 
     Returns
     -------
     xarray.Dataset
-        contracts.FOOTPRINTS.
+        contracts.FOOTPRINTS, with `footprint_ratio` (site, lat, lon): amplitude at the site over that of the ocean
+        mean if all the water came from the place, -rho_w A T_s, smoothed by the heat kernel
+        exp(-n (n + 1) s^2 / 2) of s = 4 / max_degree rad (1.3 degrees at degree 180).
     """
     cells = CellGrid.from_centres(MAP_LATITUDE_DEG, MAP_LONGITUDE_DEG)
     means = np.stack([regrid(field, operator.cells, cells) for field in footprints["footprint"].to_numpy()])
+    degree = operator.grid.degree
+    smooth = np.exp(-degree * (degree + 1.0) * (_SMOOTHING / operator.max_degree) ** 2 / 2.0)
+    coefficients = smooth * operator.grid.analyse(footprints["footprint"].to_numpy())
+    ratio = -operator.sea_water_density * operator.ocean_area_m2 * _on_cells(operator, coefficients)
+    field = ("site", "lat", "lon")
     return xr.Dataset(
-        {"footprint": (("site", "lat", "lon"), means, {"units": "m kg-1"}), "constant": footprints["constant"]},
+        {
+            "footprint": (field, means, {"units": "m kg-1"}),
+            "footprint_ratio": (field, ratio, {"units": "1"}),
+            "constant": footprints["constant"],
+        },
         coords={"site": footprints["site"], **map_axes()},
         attrs=footprints.attrs,
     )
 
 
 def admittance_by_degree(
-    operators: Iterable[SeaLevelOperator],
+    operators: Iterable[tuple[SeaLevelOperator, RotationalFeedback | None]],
     sites: Sequence[Site],
     loads: Sequence[LoadPattern],
     *,
@@ -112,7 +133,7 @@ def admittance_by_degree(
 
     Parameters
     ----------
-    operators : iterable of SeaLevelOperator
+    operators : iterable of (SeaLevelOperator, RotationalFeedback or None)
         One a degree; each is let go before the next is taken.
     sites : sequence of Site
     loads : sequence of LoadPattern
@@ -131,8 +152,8 @@ def admittance_by_degree(
     _require_members(loads)
     latitude, longitude = [site.latitude_deg for site in sites], [site.longitude_deg for site in sites]
     degrees, values = [], []
-    for operator in operators:
-        values.append(_solve(operator, loads, water_vapour).at(latitude, longitude))
+    for operator, rotation in operators:
+        values.append(_solve(operator, rotation, loads, water_vapour).at(latitude, longitude))
         degrees.append(operator.max_degree)
     return xr.DataArray(
         as_components(np.array(values)),
@@ -184,14 +205,19 @@ def map_axes() -> dict[str, tuple[str, NDArray[np.float64], dict[str, str]]]:
     }
 
 
-def _solve(operator: SeaLevelOperator, loads: Sequence[LoadPattern], water_vapour: complex) -> SeaLevel:
+def _solve(
+    operator: SeaLevelOperator,
+    rotation: RotationalFeedback | None,
+    loads: Sequence[LoadPattern],
+    water_vapour: complex,
+) -> SeaLevel:
     """Sea level under the mean of the loads, each scaled so that it raises the ocean mean by 1 m."""
     total = np.zeros(operator.ocean.shape, dtype=complex)
     vapour = 0j
     for field, mean in _fields_and_means(operator, loads, water_vapour):
         total += field / (mean * len(loads))
         vapour += water_vapour / (mean * len(loads))
-    return solve_sea_level(operator, load=total, water_vapour=vapour)
+    return solve_sea_level(operator, load=total, water_vapour=vapour, rotation=rotation)
 
 
 def _fields_and_means(
@@ -207,8 +233,12 @@ def _fields_and_means(
 
 
 def _map(sea: SeaLevel) -> NDArray[np.complex128]:
-    real, imaginary = sea.operator.grid.synthesise_regular(sea.coefficients, MAP_LATITUDE_DEG, MAP_LONGITUDE_DEG)
+    real, imaginary = _on_cells(sea.operator, sea.coefficients)
     return np.asarray(real + 1j * imaginary)
+
+
+def _on_cells(operator: SeaLevelOperator, coefficients: NDArray[np.complex128]) -> NDArray[np.float64]:
+    return operator.grid.synthesise_regular(coefficients, MAP_LATITUDE_DEG, MAP_LONGITUDE_DEG)
 
 
 def _require_members(loads: Sequence[LoadPattern]) -> None:

@@ -156,6 +156,7 @@ def read_sites_and_loads(path: str | os.PathLike[str], *, outside: bool = False)
     check_choices(reading, sections)
     corrections = sections.settings["corrections"]
     loads = _loads(reading, sections)
+    earth = _earth(reading, sections.settings["fingerprint"])
     air = _air_over_land(reading, corrections) if corrections is not None else {}
     if reading.faults:
         raise InputError(_in_order(reading))
@@ -164,6 +165,7 @@ def read_sites_and_loads(path: str | os.PathLike[str], *, outside: bool = False)
         sites=tuple(table.entry.site() for table in sections.sites if table.entry is not None),
         records=(),
         loads=loads,
+        earth=earth,
         source=reading.source,
         inputs=reading.inputs,
         warnings=tuple(reading.warnings),

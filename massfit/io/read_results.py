@@ -8,7 +8,8 @@ from typing import Any
 import xarray as xr
 
 from massfit.errors import Fault, InputError
-from massfit.io.results_folder import BLANK, RUN_FILE, file_digest
+from massfit.io.fingerprint_folder import FINGERPRINT_TABLE
+from massfit.io.results_folder import BLANK, ESTIMATE_FILE, RUN_FILE, file_digest
 from massfit.results.finished import FinishedRun
 
 _REDRAWN = (".html", ".png")
@@ -47,7 +48,9 @@ def _read_run(folder: Path) -> dict[str, Any]:
     try:
         content = json.loads(path.read_text(encoding="utf-8"))
         outputs = content["outputs"]
-        outputs[RUN_FILE], outputs["estimate.json"]
+        if FINGERPRINT_TABLE in outputs:
+            raise InputError(_another_command(folder))
+        outputs[RUN_FILE], outputs[ESTIMATE_FILE]
         if not all(_inside(name) for name in outputs):
             raise ValueError("a name leads out of the folder")
     except OSError as error:
@@ -56,6 +59,11 @@ def _read_run(folder: Path) -> dict[str, Any]:
     except (ValueError, LookupError, TypeError) as error:
         raise InputError(_damaged(folder, RUN_FILE, "the file is damaged or of another version")) from error
     return dict(content)
+
+
+def _another_command(folder: Path) -> Fault:
+    problem = "it holds what massfit fingerprint wrote, without an answer"
+    return Fault(str(folder), "", problem, "", "Name the folder that massfit estimate wrote")
 
 
 def _inside(name: str) -> bool:

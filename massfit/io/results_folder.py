@@ -22,6 +22,8 @@ BLANK = "0" * 64
 
 RUN_FILE = "run.json"
 
+ESTIMATE_FILE = "estimate.json"
+
 _CSV_COLUMNS = (
     "id", "in_phase_hpa", "quadrature_hpa", "variance_in_phase_hpa2", "covariance_hpa2", "variance_quadrature_hpa2",
     "admittance_real", "admittance_imaginary", "standardised_residual", "outlier_probability", "warnings",
@@ -31,7 +33,7 @@ _CSV_SERIES = ("record", "long_period_tides", "pole_tide", "ocean_mean_atmospher
 """Series whose phasors stand in the table too: the site's phasor and the last four make up the first."""
 
 
-def check_output(folder: Path, *, overwrite: bool) -> None:
+def check_output(folder: Path, *, overwrite: bool, holds: str = ESTIMATE_FILE) -> None:
     """Refuse an output folder that must not be written, before anything is computed.
 
     Parameters
@@ -40,6 +42,8 @@ def check_output(folder: Path, *, overwrite: bool) -> None:
         The results folder to be made.
     overwrite : bool
         Whether a finished one may be replaced.
+    holds : str
+        File by which results of the same kind are known: those of another command are left alone.
 
     Raises
     ------
@@ -52,6 +56,9 @@ def check_output(folder: Path, *, overwrite: bool) -> None:
     if folder.exists() and any(folder.iterdir()):
         if not (folder / RUN_FILE).exists():
             problem = "the folder is not empty and holds no results of massfit, so it is left alone"
+            raise InputError(Fault(here, "", problem, "", "Choose another with --output"))
+        if not (folder / holds).exists():
+            problem = f"the folder holds results of another command (there is no {holds}), so it is left alone"
             raise InputError(Fault(here, "", problem, "", "Choose another with --output"))
         if not overwrite:
             problem = "the folder holds finished results"
@@ -78,7 +85,7 @@ def write_results(partial: PartialFolder, run: FinishedRun, *, pictures: Mapping
         The folder cannot be written; results that were there before are untouched.
     """
     with partial.whole() as aside:
-        _write_json(aside / "estimate.json", run.summary)
+        _write_json(aside / ESTIMATE_FILE, run.summary)
         _write_site_table(aside / "sites.csv", run.summary["sites"])
         if "what_if" in run.summary:
             _write_rows(aside / "what_if.csv", run.summary["what_if"])
@@ -86,8 +93,8 @@ def write_results(partial: PartialFolder, run: FinishedRun, *, pictures: Mapping
             _write_rows(aside / name, rows)
         for name, groups in _by_file(run.datasets).items():
             write_groups(aside / name, groups) if "" not in groups else write_dataset(aside / name, groups[""])
-        _write_drawn(aside, pictures, page)
-        _write_run(aside, run.provenance, {path.relative_to(aside).as_posix() for path in aside.rglob("*.*")})
+        write_drawn(aside, pictures, page)
+        write_run(aside, run.provenance, {path.relative_to(aside).as_posix() for path in aside.rglob("*.*")})
     partial.clear()
 
 
@@ -109,21 +116,39 @@ def redraw_results(partial: PartialFolder, run: FinishedRun, *, pictures: Mappin
     """
     with partial.whole() as aside:
         shutil.copytree(partial.results, aside, symlinks=True, dirs_exist_ok=True)
-        _write_drawn(aside, pictures, page)
+        write_drawn(aside, pictures, page)
         drawn = {"report.html", *(f"figures/{name}.png" for name in pictures)}
         # a file that someone laid beside the results is none of ours
-        _write_run(aside, run.provenance, drawn | set(run.provenance["outputs"]))
+        write_run(aside, run.provenance, drawn | set(run.provenance["outputs"]))
 
 
-def _write_drawn(aside: Path, pictures: Mapping[str, bytes], page: str) -> None:
+def write_drawn(aside: Path, pictures: Mapping[str, bytes], page: str, *, name: str = "report.html") -> None:
+    """Write figures and page.
+
+    Parameters
+    ----------
+    aside : Path
+    pictures : mapping of str to bytes
+    page : str
+    name : str
+        File of the page.
+    """
     (aside / "figures").mkdir(exist_ok=True)
-    for name, picture in pictures.items():
-        (aside / "figures" / f"{name}.png").write_bytes(picture)
-    (aside / "report.html").write_text(page, encoding="utf-8")
+    for picture, data in pictures.items():
+        (aside / "figures" / f"{picture}.png").write_bytes(data)
+    (aside / name).write_text(page, encoding="utf-8")
 
 
-def _write_run(aside: Path, provenance: Mapping[str, Any], names: Iterable[str]) -> None:
-    """Write run.json with the digest of every file; its own is of its text with blanks in that place."""
+def write_run(aside: Path, provenance: Mapping[str, Any], names: Iterable[str]) -> None:
+    """Write run.json with the digest of every file; its own is of its text with blanks in that place.
+
+    Parameters
+    ----------
+    aside : Path
+    provenance : mapping
+    names : iterable of str
+        Files of the folder, of which those that are there are listed.
+    """
     outputs = {name: file_digest(aside / name) for name in sorted({*names} - {RUN_FILE}) if (aside / name).is_file()}
     content = {**provenance, "outputs": {**outputs, RUN_FILE: BLANK}}
     content["outputs"][RUN_FILE] = hashlib.sha256(_json(content).encode()).hexdigest()

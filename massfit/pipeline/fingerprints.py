@@ -4,7 +4,7 @@ from collections.abc import Sequence
 
 import xarray as xr
 
-from massfit.earth.love import love_numbers
+from massfit.earth.love import LoveNumbers, love_numbers
 from massfit.fingerprint.admittance import site_fingerprints, water_vapour_phasor
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.fingerprint.operator import SeaLevelOperator, prepare_operator
@@ -15,7 +15,12 @@ from massfit.site import Site
 
 
 def network_operator(
-    network: Network, ocean: OceanFunction, *, max_degree: int | None = None, threads: int = 1
+    network: Network,
+    ocean: OceanFunction,
+    *,
+    max_degree: int | None = None,
+    love: LoveNumbers | None = None,
+    threads: int = 1,
 ) -> SeaLevelOperator:
     """Sea-level equation of the network's settings.
 
@@ -25,6 +30,8 @@ def network_operator(
     ocean : OceanFunction
     max_degree : int, optional
         Instead of that of the settings.
+    love : LoveNumbers, optional
+        Of the network's Earth, to this degree at least, when they are at hand.
     threads : int
         Threads of the transforms; the numbers do not depend on it.
 
@@ -36,7 +43,7 @@ def network_operator(
     degree = chosen.max_degree if max_degree is None else max_degree
     return prepare_operator(
         ocean,
-        love_numbers(network.earth, max_degree=degree),
+        love_numbers(network.earth, max_degree=degree) if love is None else love,
         max_degree=degree,
         sea_water_density=chosen.sea_water_density,
         threads=threads,

@@ -4,18 +4,13 @@ from collections.abc import Sequence
 
 import numpy as np
 from matplotlib.cm import ScalarMappable
-from matplotlib.colors import ListedColormap, Normalize
+from matplotlib.colors import Normalize
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
 from massfit.report.labels import place_labels
-from massfit.report.style import COLUMN_WIDTH_MM, LAND, PAGE_WIDTH_MM, REFERENCE, house_style, placed_axes, sheet
-
-WEST_EDGE_DEG = 20.0
-"""The map is cut at 20 degrees east, through Africa and Europe, so that every ocean stays whole."""
-
-_NORTH, _SOUTH = 84.0, -80.0
-_FINEST = 720  # columns of the land picture; more cost time and cannot be seen
+from massfit.report.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM, house_style, placed_axes, sheet
+from massfit.report.world import draw_land, frame_map, latitude_range, on_the_map
 
 
 def network_map(
@@ -54,29 +49,23 @@ def network_map(
     matplotlib.figure.Figure
     """
     doubt = np.asarray(doubtful if len(doubtful) else np.zeros(len(site_ids)), dtype=bool)
-    east = _on_the_map(np.asarray(longitude_deg, dtype=float))
+    east = on_the_map(np.asarray(longitude_deg, dtype=float))
     ratio = np.abs(admittance)
     spread = max(0.02, float(np.max(np.abs(ratio - 1.0)))) if len(ratio) else 0.1
     shades = Normalize(1.0 - spread, 1.0 + spread)
     across = width_mm - 15.0
-    up = across * (_NORTH - _SOUTH) / 360.0
+    south, north = latitude_range(np.asarray(latitude_deg, dtype=float))
+    up = across * (north - south) / 360.0
     with house_style():
         figure = sheet(width_mm, up + 30.0)
         axes = placed_axes(figure, 12.0, 23.0, across, up)
-        rows, columns = np.argsort(cell_latitude_deg), np.argsort(_on_the_map(np.asarray(cell_longitude_deg)))
-        step = max(1, len(columns) // _FINEST)
-        axes.imshow(
-            np.ma.masked_greater(np.asarray(ocean_fraction), 0.5)[np.ix_(rows[::step], columns[::step])],
-            cmap=ListedColormap([LAND]), extent=(WEST_EDGE_DEG, WEST_EDGE_DEG + 360.0, -90, 90), origin="lower",
-            interpolation="none", aspect="auto",
-        )  # fmt: skip
-        axes.grid(color=REFERENCE, linewidth=0.2, alpha=0.5)
+        draw_land(axes, ocean_fraction, cell_latitude_deg, cell_longitude_deg)
+        frame_map(axes, south, north, every_deg=60 if width_mm > COLUMN_WIDTH_MM else 90)
         for marker, chosen in (("o", ~doubt), ("s", doubt)):
             axes.scatter(
                 east[chosen], np.asarray(latitude_deg)[chosen], c=ratio[chosen], cmap="cividis", norm=shades,
                 marker=marker, s=20, edgecolor="black", linewidth=0.6, zorder=5,
             )  # fmt: skip
-        _degrees(figure, width_mm)
         points = np.column_stack([east, np.asarray(latitude_deg, dtype=float)])
         missing = place_labels(axes, site_ids, points, font_size=6.0, marker_radius=2.6)
         axes.set_title(_title(bool(doubt.any()), missing, narrow=width_mm <= COLUMN_WIDTH_MM))
@@ -87,20 +76,6 @@ def network_map(
             label="amplitude at the site / ocean mean",
         )
     return figure
-
-
-def _on_the_map(longitude: NDArray[np.float64]) -> NDArray[np.float64]:
-    return np.asarray(np.mod(longitude - WEST_EDGE_DEG, 360.0) + WEST_EDGE_DEG)
-
-
-def _degrees(figure: Figure, width_mm: float) -> None:
-    (axes,) = figure.axes
-    every = 60 if width_mm > COLUMN_WIDTH_MM else 90
-    east = [value for value in range(0, 421, every) if WEST_EDGE_DEG <= value <= WEST_EDGE_DEG + 360.0]
-    axes.set(xlim=(WEST_EDGE_DEG, WEST_EDGE_DEG + 360.0), ylim=(_SOUTH, _NORTH), yticks=range(-60, 61, 30))
-    axes.set_xticks(east, [str(value % 360) for value in east])
-    axes.set_xlabel("longitude / degrees east")
-    axes.set_ylabel("latitude / degrees north")
 
 
 def _title(doubtful: bool, missing: int, *, narrow: bool) -> str:

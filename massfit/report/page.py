@@ -1,11 +1,11 @@
 """The one-page report: self-contained, no scripts, no network."""
 
-import base64
 from collections.abc import Mapping
 from typing import Any
 
 from jinja2 import Environment, StrictUndefined
 
+from massfit.report.page_parts import as_data, made_with
 from massfit.report.page_tables import (
     Table,
     actions_table,
@@ -60,7 +60,7 @@ def report_page(run: FinishedRun, pictures: Mapping[str, bytes]) -> str:
         summary=summary,
         version=provenance["massfit"],
         sentence=answer_sentence(summary),
-        images={name: "data:image/png;base64," + base64.b64encode(data).decode() for name, data in pictures.items()},
+        images=as_data(pictures),
         captions={name: PICTURES[_stem(name)] for name in pictures if not name.endswith("_column")},
         alternatives_text=_alternative_texts(summary),
         record_pictures=[name for name in pictures if _stem(name) == "records"],
@@ -68,7 +68,7 @@ def report_page(run: FinishedRun, pictures: Mapping[str, bytes]) -> str:
         trust=trust_sentence(summary),
         alternatives_note=f"{ALTERNATIVES_NOTE[0].upper()}{ALTERNATIVES_NOTE[1:]}.",
         tables=_tables(run),
-        made_with=_made_with(provenance),
+        made_with=made_with(provenance),
     )
 
 
@@ -107,19 +107,3 @@ def _alternative_texts(summary: Mapping[str, Any]) -> dict[str, str]:
         + answer_sentence(summary).removeprefix("The annual cycle of ocean mass has an "),
         "records": "Daily records, corrections and remainders over time; what was done to each is in the tables below.",
     }
-
-
-def _made_with(provenance: Mapping[str, Any]) -> list[tuple[str, str]]:
-    versions = ", ".join(f"{name} {value}" for name, value in provenance["versions"].items())
-    facts = {
-        "command": provenance["command"],
-        "massfit": provenance["massfit"],
-        "seed": provenance["seed"],
-        "Python": provenance.get("python"),
-        "machine": provenance.get("machine"),
-        "processes": provenance.get("processes"),
-        "spherical-harmonic transforms": provenance.get("transform_backend"),
-        "polar motion": provenance.get("polar_motion"),
-        "libraries": versions,
-    }
-    return [(name, str(value)) for name, value in facts.items() if value is not None]

@@ -1,4 +1,8 @@
-"""What every page is made of: its look, and how it shows a figure and a table."""
+"""What every page is made of: its look, how it shows a figure and a table, and what it was made with."""
+
+import base64
+from collections.abc import Mapping
+from typing import Any
 
 STYLE = """
 :root { color-scheme: light dark; --ink: #1c1c1c; --paper: #fff; --faint: #555; --line: #ccc; --card: #fff; }
@@ -52,3 +56,45 @@ MACROS = """{% macro figure(name) %}
 </tbody></table></div>
 {% endmacro %}
 """
+
+
+def as_data(pictures: Mapping[str, bytes]) -> dict[str, str]:
+    """Write pictures as addresses that hold them.
+
+    Parameters
+    ----------
+    pictures : mapping of str to bytes
+        PNG images.
+
+    Returns
+    -------
+    dict of str to str
+    """
+    return {name: "data:image/png;base64," + base64.b64encode(data).decode() for name, data in pictures.items()}
+
+
+def made_with(provenance: Mapping[str, Any]) -> list[tuple[str, str]]:
+    """Name what a run was made with.
+
+    Parameters
+    ----------
+    provenance : mapping
+        The content of `run.json`.
+
+    Returns
+    -------
+    list of (str, str)
+    """
+    versions = ", ".join(f"{name} {value}" for name, value in provenance["versions"].items())
+    facts = {
+        "command": provenance["command"],
+        "massfit": provenance["massfit"],
+        "seed": provenance["seed"],
+        "Python": provenance.get("python"),
+        "machine": provenance.get("machine"),
+        "processes": provenance.get("processes"),
+        "spherical-harmonic transforms": provenance.get("transform_backend"),
+        "polar motion": provenance.get("polar_motion"),
+        "libraries": versions,
+    }
+    return [(name, str(value)) for name, value in facts.items() if value is not None]

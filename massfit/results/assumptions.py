@@ -29,6 +29,31 @@ def stated_assumptions(network: Network) -> tuple[str, ...]:
     )
 
 
+def fingerprint_assumptions(network: Network) -> tuple[str, ...]:
+    """Say what the fingerprint of this network assumes, one sentence each.
+
+    Parameters
+    ----------
+    network : Network
+
+    Returns
+    -------
+    tuple of str
+    """
+    members = "; ".join(f"{load.name} ({load.reference})" if load.reference else load.name for load in network.loads)
+    given = network.atmosphere_load is not None or network.air_pressure is not None
+    air = "its own self-attraction is given apart, as the response to air over land" if given else "none was given"
+    return (
+        *_fingerprint(network),
+        f"The members: {members}. The recorders do not choose among them.",
+        "An admittance is a property of place, load and Earth: no record and no ocean model was read. Phases count "
+        f"from 1 January {network.settings.frame.reference_year} 00:00 UTC.",
+        f"The pressure of air on land exchanges no mass with the ocean's water, so it is no load here; {air}.",
+        "Land is where the ocean function says so, in cells of a quarter of a degree: marginal ice shelves are ocean, "
+        "lakes are land.",
+    )
+
+
 def _period(settings: Settings) -> str:
     frame = settings.frame
     first = frame.start.isoformat() if frame.start else "the first record"

@@ -9,6 +9,7 @@ import xarray as xr
 from massfit.results.datasets import result_datasets
 from massfit.results.estimate import Estimate
 from massfit.results.tidal_table import tidal_table
+from massfit.settings import Settings
 
 
 @dataclasses.dataclass(frozen=True)
@@ -50,12 +51,17 @@ def finished_run(estimate: Estimate, *, command: str) -> FinishedRun:
     provenance = {
         "command": command,
         **estimate.provenance,
-        "settings": _plain(dataclasses.asdict(estimate.network.settings)),
+        "settings": plain_settings(estimate.network.settings),
         "inputs": dict(estimate.network.inputs),
     }
     tides = tidal_table([record for reduction in estimate.reductions for record in reduction.daily])
     tables = {"tides.csv": tides} if tides else {}
     return FinishedRun(estimate.summary, provenance, result_datasets(estimate), tables)
+
+
+def plain_settings(settings: Settings) -> dict[str, Any]:
+    """Turn settings into what JSON knows."""
+    return dict(_plain(dataclasses.asdict(settings)))
 
 
 def _plain(value: Any) -> Any:

@@ -21,6 +21,7 @@ from massfit.fingerprint.maps import (
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.fingerprint.operator import SeaLevelOperator, prepare_operator
 from massfit.fingerprint.pattern import LoadPattern
+from massfit.fingerprint.rotation import prepare_rotation
 from massfit.fingerprint.sea_level import solve_sea_level
 from massfit.phasor import as_complex, delay_days, phasor_from_peak
 from massfit.site import Site
@@ -118,7 +119,7 @@ def test_the_maps_say_where_the_ocean_is(coarse: SeaLevelOperator) -> None:
 
 def test_mean_over_the_members_at_every_degree(coarse: SeaLevelOperator, love) -> None:
     finer = prepare_operator(OceanFunction.builtin(), love, max_degree=60)
-    found = admittance_by_degree(iter([coarse, finer]), DEEP, LOADS, water_vapour=VAPOUR)
+    found = admittance_by_degree(iter([(coarse, None), (finer, None)]), DEEP, LOADS, water_vapour=VAPOUR)
     assert found.degree.to_numpy().tolist() == [40, 60]
     for operator, row in zip((coarse, finer), as_complex(found.to_numpy()), strict=True):
         members = site_fingerprints(operator, DEEP, LOADS, water_vapour=VAPOUR).admittance.to_numpy()
@@ -137,6 +138,35 @@ def test_footprints_on_the_cells_of_the_maps_give_the_same_admittance(coarse: Se
     mean = -(np.sum(turned * area) + VAPOUR) / (coarse.sea_water_density * coarse.ocean_area_m2)
     expected = as_complex(site_fingerprints(coarse, DEEP, LOADS[1:], water_vapour=VAPOUR).admittance.to_numpy())[0]
     np.testing.assert_allclose(height / mean, expected, rtol=1e-9)
+
+
+def test_rotational_feedback_is_in_maps_and_degrees(coarse: SeaLevelOperator, love) -> None:
+    rotation = prepare_rotation(coarse, love)
+    sites = [Site("cell", 42.5, 268.5)]
+    turned = as_complex(site_fingerprints(coarse, sites, LOADS, rotation=rotation).admittance.to_numpy())
+    maps = as_complex(admittance_maps(coarse, LOADS, rotation=rotation).map_admittance.to_numpy())
+    np.testing.assert_allclose(at(maps, 42.5, 268.5), turned[:, 0], rtol=0, atol=1e-10)
+    mean = as_complex(admittance_by_degree([(coarse, rotation)], sites, LOADS).to_numpy())[0]
+    np.testing.assert_allclose(mean, turned.mean(axis=0), rtol=0, atol=1e-10)
+    # control: it does something there
+    still = as_complex(site_fingerprints(coarse, sites, LOADS).admittance.to_numpy())
+    assert np.abs(turned - still).min() > 1e-3
+
+
+def test_smooth_footprints_are_amplitude_ratios_without_ripples(operator: SeaLevelOperator) -> None:
+    prints = site_footprints(operator, DEEP[:1])
+    maps = footprint_maps(operator, prints)
+    sharp = -operator.sea_water_density * operator.ocean_area_m2 * maps.footprint[0]
+    smooth = maps.footprint_ratio[0]
+    far = {"lat": slice(20.0, 60.0), "lon": slice(0.0, 60.0)}
+    # far from the site both are the same but for the ripples of the truncated sum
+    assert float(abs(sharp - smooth).sel(far).max()) < 0.1
+    steps = [float(abs(field.sel(far).diff("lat", 2)).max()) for field in (sharp, smooth)]
+    assert steps[1] < 0.05 * steps[0]  # what is left is the bend of the field itself
+    # the kernel keeps the mean over the sphere
+    area = np.cos(np.radians(maps.lat))
+    means = [float((field * area).mean() / area.mean()) for field in (sharp, smooth)]
+    assert means[1] == pytest.approx(means[0], abs=1e-3)
 
 
 def test_any_regular_grid_holds_the_values_at_its_points(coarse: SeaLevelOperator, rng: np.random.Generator) -> None:
@@ -162,4 +192,4 @@ def test_what_moves_no_water_is_refused(coarse: SeaLevelOperator) -> None:
         admittance_maps(coarse, [])
     nothing = LoadPattern("dry", MAP_LATITUDE_DEG, MAP_LONGITUDE_DEG, np.zeros((180, 360), dtype=complex))
     with pytest.raises(InputError, match="dry: it leaves the ocean mean as it is"):
-        admittance_by_degree([coarse], DEEP, [nothing])
+        admittance_by_degree([(coarse, None)], DEEP, [nothing])
