@@ -12,6 +12,7 @@ gradients gain a digit a step.
 """
 
 from dataclasses import dataclass, field
+from functools import cached_property
 from typing import Protocol
 
 import numpy as np
@@ -103,7 +104,7 @@ class SeaLevelOperator:
         """Area of a cell in each row, (n_lat, 1) m2, to be broadcast along the row."""
         return EARTH_RADIUS**2 * self.grid.solid_angle[:, None]
 
-    @property
+    @cached_property
     def ocean_area_m2(self) -> float:
         """Area of the ocean, m2."""
         return float(np.sum(self.ocean * self.cell_area_m2))
@@ -115,7 +116,9 @@ class SeaLevelOperator:
         ----------
         coefficients : (n_field, n_coefficient) array of complex
         """
-        return self.grid.analyse(self.ocean * self.grid.synthesise(coefficients))
+        field = self.grid.synthesise(coefficients)
+        field *= self.ocean  # in place: a field is the largest array there is
+        return self.grid.analyse(field)
 
     def inner(self, left: NDArray[np.complex128], right: NDArray[np.complex128]) -> NDArray[np.float64]:
         """Integral over the unit sphere of the product of two real fields.
@@ -125,7 +128,8 @@ class SeaLevelOperator:
         left, right : (..., n_coefficient) array of complex
         """
         weighted = self.grid.multiplicity * right
-        return np.asarray(np.sum(left.real * weighted.real + left.imag * weighted.imag, axis=-1))
+        parts = ((left.real, weighted.real), (left.imag, weighted.imag))
+        return np.asarray(sum(np.einsum("...i,...i->...", one, other) for one, other in parts))
 
     def ocean_integral(self, coefficients: NDArray[np.complex128]) -> NDArray[np.float64]:
         """Integral of fields over the ocean of the unit sphere."""
