@@ -138,6 +138,13 @@ class NoiseCovariance:
         solved /= np.sqrt(pivots)[:, None]
         return np.asarray(solved)
 
+    def color(self, columns: Floats) -> Floats:
+        """Give (n, k) columns the covariance: V^1/2 times them, the inverse of `whiten`."""
+        pivots, weights = self._factor
+        scaled = np.ascontiguousarray(columns * np.sqrt(pivots)[:, None])
+        lower = driver.matmul_lower(self._days, self._rates, self._left, weights, scaled, np.zeros_like(scaled))
+        return np.asarray(scaled + lower)
+
     def solve(self, columns: Floats) -> Floats:
         """V^-1 times (n, k) columns."""
         pivots, weights = self._factor

@@ -33,11 +33,13 @@ def main() -> None:
 @click.option("--overwrite", is_flag=True, help="Replace finished results.")
 @click.option("--outside", is_flag=True, help="Allow paths outside the network's folder.")
 @click.option("--what-if", is_flag=True, help="Also answer under every other choice (minutes).")
+@click.option("--calibrate", type=click.IntRange(1, 10_000), metavar="N", help="Also analyse N surrogates (try 20).")
 @click.option("--quiet", is_flag=True, help="Print nothing but errors.")
 @click.option("--json", "as_json", is_flag=True, help="Print estimate.json instead of the summary.")
 def estimate(
-    network: Path, output: Path | None, overwrite: bool, outside: bool, what_if: bool, quiet: bool, as_json: bool
-) -> None:
+    network: Path, output: Path | None, *, overwrite: bool, outside: bool, what_if: bool, calibrate: int | None,
+    quiet: bool, as_json: bool,
+) -> None:  # fmt: skip
     """Do the main job: from raw records to the network posterior.
 
     NETWORK is a network.toml or the folder that holds one. Writes a results
@@ -50,7 +52,7 @@ def estimate(
         folder = results_folder(network, output)
         result = estimate_to_folder(
             network, folder, overwrite=overwrite, outside=outside, what_if=what_if,
-            progress=progress, workers=os.cpu_count() or 1,
+            surrogates=calibrate or 0, progress=progress, workers=os.cpu_count() or 1,
         )  # fmt: skip
     from massfit.report.text import summary_text
 

@@ -107,7 +107,7 @@ def in_context(summary: Mapping[str, Any], sites: SitesInContext, ocean_area_m2:
     Parameters
     ----------
     summary : mapping
-        From `posterior.summary.summarise`, and the `predictive_check`.
+        From `posterior.summary.summarise`, the `predictive_check`, and the `calibration` where there is one.
     sites : SitesInContext
     ocean_area_m2 : float
         Area of the ocean, m2.
@@ -135,6 +135,7 @@ def in_context(summary: Mapping[str, Any], sites: SitesInContext, ocean_area_m2:
             *sites.warnings,
             *summary["warnings"],
             *([] if summary["predictive_check"]["agrees"] else summary["predictive_check"]["sentences"]),
+            *([] if summary.get("calibration", {"holds": True})["holds"] else [summary["calibration"]["sentence"]]),
         ],
         "actions": sites.actions,
     }

@@ -5,17 +5,20 @@ order, the way a method section would.
 """
 
 from massfit.network import Network
+from massfit.pipeline.calibrate import calibrate
 from massfit.pipeline.context import in_context, sites_in_context
 from massfit.pipeline.fingerprints import network_fingerprints
 from massfit.pipeline.parts import Mapped, Store, kept
 from massfit.pipeline.progress import Progress, StageTimes, ignore
 from massfit.pipeline.provenance import provenance
 from massfit.pipeline.site_stage import site_stage
+from massfit.pipeline.surrogate import surrogate_base
 from massfit.pipeline.what_if import other_answers
 from massfit.pipeline.workers import Workers
 from massfit.posterior.predictive import predictive_check
 from massfit.posterior.sample import sample_posterior
 from massfit.posterior.summary import summarise
+from massfit.results.calibration import calibration_summary
 from massfit.results.estimate import Estimate
 
 
@@ -26,6 +29,7 @@ def estimate(
     workers: int = 1,
     store: Store | None = None,
     what_if: bool = False,
+    surrogates: int = 0,
 ) -> Estimate:
     """Do the main job: from raw records to the posterior of the annual cycle of ocean mass.
 
@@ -44,6 +48,10 @@ def estimate(
     what_if : bool
         Answer the network under every other choice too, sites fitted anew where it takes that: some ten times the
         work. The rows are `summary["what_if"]`.
+    surrogates : int
+        Number of surrogates of this network, with a known cycle, that are analysed like the records to see whether
+        the regions hold it; each takes the time of a run. What was found is `calibration` and
+        `summary["calibration"]`.
 
     Returns
     -------
@@ -65,10 +73,12 @@ def estimate(
     True
     """
     with Workers(workers) as pool:
-        return _estimate(network, StageTimes(progress), pool, kept(pool.results, store), what_if)
+        return _estimate(network, StageTimes(progress), pool, kept(pool.results, store), what_if, surrogates)
 
 
-def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Mapped, what_if: bool) -> Estimate:
+def _estimate(
+    network: Network, progress: StageTimes, pool: Workers, mapped: Mapped, what_if: bool, surrogates: int
+) -> Estimate:
     settings = network.settings
     stage = site_stage(network, progress, mapped)
     fingerprints = network_fingerprints(network, stage.operator, stage.sites, stage.footprints, stage.air)
@@ -94,8 +104,15 @@ def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Map
     summary["predictive_check"] = predictive_check(posterior, phasors, fingerprints)
     if what_if:
         summary["what_if"] = other_answers(
-            stage.tasks, stage.joined, phasors, fingerprints, posterior, progress=progress, mapped=mapped
+            stage.tasks, stage.table.of, phasors, fingerprints, posterior, progress=progress, mapped=mapped
         )
+    calibration = None
+    if surrogates:
+        base = surrogate_base(stage.tasks, stage.reductions, stage.table, phasors, fingerprints, posterior)
+        times = progress.seconds()
+        one_s = times["site phasors"] + times["network posterior"]
+        calibration = calibrate(base, surrogates, progress=progress, mapped=mapped, expected_s=surrogates * one_s)
+        summary["calibration"] = calibration_summary(calibration)
     return Estimate(
         network=network,
         fingerprints=fingerprints,
@@ -108,4 +125,5 @@ def _estimate(network: Network, progress: StageTimes, pool: Workers, mapped: Map
             float(fingerprints.attrs["ocean_area_m2"]),
         ),
         provenance={**provenance(network, processes=pool.count), "elapsed_s": progress.seconds()},
+        calibration=calibration,
     )

@@ -41,6 +41,7 @@ def estimate_to_folder(
     progress: Progress = ignore,
     workers: int = 1,
     what_if: bool = False,
+    surrogates: int = 0,
 ) -> Estimate:
     """Read a network, do the main job and write the results folder.
 
@@ -62,6 +63,8 @@ def estimate_to_folder(
         Processes that share the work.
     what_if : bool
         Answer the network under every other choice too.
+    surrogates : int
+        Number of surrogates of the network, with a known cycle, to be analysed too.
 
     Returns
     -------
@@ -79,7 +82,9 @@ def estimate_to_folder(
         times("reading", 0, 1)
         inputs = read_network(network, outside=outside)
         times("reading", 1, 1)
-        result = estimate(inputs, progress=times, workers=workers, store=partial, what_if=what_if)
+        result = estimate(
+            inputs, progress=times, workers=workers, store=partial, what_if=what_if, surrogates=surrogates
+        )
         times("report", 0, 1)
         _save(result, partial, command=f"massfit estimate {network}", times=times)
         times("report", 1, 1)

@@ -26,12 +26,45 @@ from massfit.site import Site
 
 
 @dataclass(frozen=True)
+class PhasorTable:
+    """What turns fits of the sites into one Dataset.
+
+    Parameters
+    ----------
+    models : tuple of str
+        Of the network.
+    reference_year : int
+    sites : tuple of Site
+    elsewhere : tuple of ReducedSite
+        Sites that were reduced elsewhere.
+    period : (datetime.date, datetime.date)
+        First and last day of the period that the answer is the mean of.
+    """
+
+    models: tuple[str, ...]
+    reference_year: int
+    sites: tuple[Site, ...]
+    elsewhere: tuple[ReducedSite, ...]
+    period: tuple[date, date]
+
+    def of(self, fits: Sequence[SiteFit], elsewhere: Sequence[ReducedSite] | None = None) -> xr.Dataset:
+        """Join fits, and other phasors of the sites reduced elsewhere where given, to contracts.SITE_PHASORS."""
+        return site_phasors(
+            fits,
+            models=self.models,
+            reference_year=self.reference_year,
+            reduced=self.elsewhere if elsewhere is None else elsewhere,
+            sites=self.sites,
+            period=self.period,
+        )
+
+
+@dataclass(frozen=True)
 class SiteStage:
     """What is known of every site before the network is looked at as a whole.
 
     Parameters
     ----------
-    network : Network
     sites : tuple of Site
         Those that are used.
     operator : SeaLevelOperator
@@ -45,15 +78,12 @@ class SiteStage:
         Of the sites that have records.
     reductions : tuple of SiteReduction
         Of the same.
-    elsewhere : tuple of ReducedSite
-        The others.
-    period : (datetime.date, datetime.date)
-        First and last day of the period that the answer is the mean of.
+    table : PhasorTable
+        Joins fits of the sites.
     phasors : xarray.Dataset
         contracts.SITE_PHASORS.
     """
 
-    network: Network
     sites: tuple[Site, ...]
     operator: SeaLevelOperator
     footprints: xr.Dataset
@@ -62,14 +92,8 @@ class SiteStage:
     circulation: tuple[CirculationAtSites, ...]
     tasks: tuple[SiteTask, ...]
     reductions: tuple[SiteReduction, ...]
-    elsewhere: tuple[ReducedSite, ...]
-    period: tuple[date, date]
+    table: PhasorTable
     phasors: xr.Dataset
-
-    def joined(self, fits: Sequence[SiteFit], elsewhere: Sequence[ReducedSite] | None = None) -> xr.Dataset:
-        """Join other fits of the sites, and other phasors of those reduced elsewhere, to contracts.SITE_PHASORS."""
-        others = self.elsewhere if elsewhere is None else elsewhere
-        return _joined(self.network, self.sites, self.period, fits, others)
 
 
 def site_stage(network: Network, progress: Progress, mapped: Mapped, *, judge: bool = False) -> SiteStage:
@@ -129,9 +153,8 @@ def site_stage(network: Network, progress: Progress, mapped: Mapped, *, judge: b
     reductions = tuple(reduce_sites(tasks, progress, mapped))
     elsewhere = tuple(each for each in network.reduced if each.site in {site.id for site in sites})
     period = stated_period(settings.frame, *records_span(reductions, elsewhere))
-    phasors = _joined(network, sites, period, [reduction.fit for reduction in reductions], elsewhere)
+    table = PhasorTable(network.model_names, settings.frame.reference_year, sites, elsewhere, period)
     return SiteStage(
-        network,
         sites,
         operator,
         footprints,
@@ -140,24 +163,6 @@ def site_stage(network: Network, progress: Progress, mapped: Mapped, *, judge: b
         circulation,
         tuple(tasks),
         reductions,
-        elsewhere,
-        period,
-        with_corrections(phasors, reductions),
-    )
-
-
-def _joined(
-    network: Network,
-    sites: Sequence[Site],
-    period: tuple[date, date],
-    fits: Sequence[SiteFit],
-    elsewhere: Sequence[ReducedSite],
-) -> xr.Dataset:
-    return site_phasors(
-        fits,
-        models=network.model_names,
-        reference_year=network.settings.frame.reference_year,
-        reduced=elsewhere,
-        sites=sites,
-        period=period,
+        table,
+        with_corrections(table.of([reduction.fit for reduction in reductions]), reductions),
     )

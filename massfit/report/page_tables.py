@@ -127,6 +127,29 @@ def predictive_table(summary: Mapping[str, Any]) -> Table | None:
     return Table("Scatter observed and expected", head, rows) if rows else None
 
 
+_CALIBRATED = {
+    "region": "two-dimensional region", "in_phase": "in phase", "quadrature": "quadrature", "amplitude": "amplitude",
+    "peak_day": "peak day",
+}  # fmt: skip
+
+
+def calibration_table(summary: Mapping[str, Any]) -> Table | None:
+    """Tabulate how many known truths the regions of surrogates held."""
+    if "calibration" not in summary:
+        return None
+    rows = [
+        [
+            f"{_CALIBRATED[row['quantity']]}, {100 * row['level']:.0f} %",
+            str(row["inside"]),
+            f"{row['expected'][0]} to {row['expected'][1]}",
+            f"{row['share']:.2f}",
+            spoken_range(row["limits"], ".2f"),
+        ]
+        for row in summary["calibration"]["coverage"]
+    ]
+    return Table("Truths held", ("region", "truths held", "expected", "share", "its 95 % limits"), rows)
+
+
 def site_table(summary: Mapping[str, Any]) -> Table:
     """Tabulate place, coverage, phasor and standing of every site."""
     head = (

@@ -66,6 +66,20 @@ of what the model expects (the farthest site: over the root mean square of the o
 that scatter at least as much; below 0.01 or above 0.99 is called out. The scales were fitted to the same sites, so p
 keeps to the middle: a value that fits says little, one at the edge says much.</p>
 {% endif %}
+{% if tables.calibration %}
+<h3>Does it hold a known truth</h3>
+<p>{{ summary.calibration.sentence }}</p>
+{{ table('calibration') }}
+<p class="small">Surrogates have the days, drift, noise, models and errors of this network, and a known cycle. Mean
+error in standard deviations of the answer: in phase {{ '%+.2f' | format(summary.calibration.bias_sd[0]) }}, quadrature
+{{ '%+.2f' | format(summary.calibration.bias_sd[1]) }}
+{%- if summary.calibration.bias_error_sd[0] is not none %} (standard errors
+{{ '%.2f' | format(summary.calibration.bias_error_sd[0]) }} and
+{{ '%.2f' | format(summary.calibration.bias_error_sd[1]) }}){% endif %}.
+{% if summary.calibration.site_square is not none %}Squared error of a site's phasor over its variance:
+{{ '%.2f' | format(summary.calibration.site_square) }} on average; 1 is right, more is too sure.{% endif %}
+</p>
+{% endif %}
 <h3>The posterior</h3>
 {{ figure('corner') }}
 

@@ -48,6 +48,7 @@ def summary_text(summary: Mapping[str, Any]) -> str:
         _sites(summary),
         _trust(summary),
         _predictive(summary),
+        _calibration(summary),
         _warnings(summary),
     ]
     return "\n\n".join("\n".join(block) for block in blocks if block)
@@ -166,6 +167,10 @@ def _trust(summary: Mapping[str, Any]) -> list[str]:
 def _predictive(summary: Mapping[str, Any]) -> list[str]:
     check = summary["predictive_check"]
     return wrapped(" ".join(check["sentences"]), WIDTH, rest="  ") if check["agrees"] else []
+
+
+def _calibration(summary: Mapping[str, Any]) -> list[str]:
+    return wrapped(summary["calibration"]["sentence"], WIDTH, rest="  ") if "calibration" in summary else []
 
 
 def _warnings(summary: Mapping[str, Any]) -> list[str]:

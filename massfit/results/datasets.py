@@ -43,6 +43,8 @@ def result_datasets(estimate: Estimate) -> dict[str, xr.Dataset]:
     if estimate.reductions:  # there are no records where every site was reduced elsewhere
         title = "daily records, every series subtracted, and what remains"
         described["reduced_records.nc"] = reduced_records(estimate), title
+    if estimate.calibration is not None:
+        described["calibration.nc"] = estimate.calibration, "surrogates of the network with a known cycle"
     return {name: _described(dataset, title, estimate) for name, (dataset, title) in described.items()}
 
 

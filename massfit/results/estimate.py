@@ -66,6 +66,8 @@ class Estimate(Described):
         The content of `estimate.json`.
     provenance : mapping
         Versions, transform backend, thread counts and times of stages.
+    calibration : xarray.Dataset, optional
+        What surrogates of the network showed, where they were asked for.
     """
 
     network: Network
@@ -75,6 +77,7 @@ class Estimate(Described):
     posterior: Posterior
     summary: Mapping[str, Any]
     provenance: Mapping[str, Any]
+    calibration: xr.Dataset | None = None
 
     def describe(self) -> Description:
         """Answer, and what to know before it is quoted."""

@@ -70,3 +70,14 @@ def test_memory_is_the_integral_of_the_correlation():
     assert NoiseModel(np.array([0.05]), np.array([3.0]), WHITE).memory_days == pytest.approx(20.0)
     assert MODELS["smooth"].memory_days == pytest.approx(10.0 + 1 / 0.12)
     assert MODELS["white"].memory_days == 0.0
+
+
+def test_coloured_columns_have_the_covariance_and_whiten_undoes_them():
+    rng = np.random.default_rng(2)
+    days = np.sort(np.concatenate([rng.uniform(0, 60, 30), [7.0, 7.0]]))
+    instrument = np.arange(32) % 2
+    model = NoiseModel(np.array([0.05, 0.06]), np.array([6.0, -5.0]) * 900.0, np.array([8.0, 3.0]))
+    noise = NoiseCovariance(days, instrument, model)
+    root = noise.color(np.eye(32))
+    np.testing.assert_allclose(root @ root.T, noise.multiply(np.eye(32)), rtol=0, atol=1e-9 * 900)
+    np.testing.assert_allclose(noise.whiten(root), np.eye(32), atol=1e-9)
