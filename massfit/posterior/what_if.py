@@ -21,9 +21,9 @@ FACTORS = (("half", 0.5), ("double", 2.0))
 """By how much the scale of a prior is changed."""
 
 _SCALES = {
-    "model_common_hpa": "prior scale of the error the models share (s_common)",
-    "model_local_hpa": "prior scale of the models' error at a site (s_local)",
-    "site_scatter_hpa": "prior scale of the site scatter (s_site)",
+    "model_common_hpa": "prior of s_common (models, shared)",
+    "model_local_hpa": "prior of s_local (models, at a site)",
+    "site_scatter_hpa": "prior of s_site (site scatter)",
 }
 
 _WORDS = {
@@ -102,7 +102,7 @@ def _prior_choices(base: Variant) -> Iterator[Variant]:
     sd = base.atmosphere_sd_hpa
     for name, other in (
         ("air pressure without error", 0.0),
-        (f"double the error of the air pressure ({2 * sd:g} hPa)", 2.0 * sd),
+        (f"double the air-pressure error ({2 * sd:g} hPa)", 2.0 * sd),
     ):
         if other != sd:
             yield replace(base, kind="priors", name=name, atmosphere_sd_hpa=other)

@@ -6,15 +6,13 @@ from typing import Any
 
 import numpy as np
 import xarray as xr
-from contourpy import contour_generator
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
 from massfit.annual.cautions import QUIET_SD
 from massfit.constants import PASCAL_PER_HPA
 from massfit.fingerprint.ocean import OceanFunction
-from massfit.phasor import admittance_matrix, annual_basis, as_complex, days_since, unwrapped_peak_days
-from massfit.posterior.regions import density_regions
+from massfit.phasor import annual_basis, as_complex, days_since, unwrapped_peak_days
 from massfit.report.corner_figure import corner_figure
 from massfit.report.fingerprint_members import fingerprint_members
 from massfit.report.network_map import network_map
@@ -23,14 +21,17 @@ from massfit.report.record_panels import ROWS_OF_A_PAGE, RecordRow, record_panel
 from massfit.report.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM, house_style
 from massfit.results.finished import FinishedRun
 from massfit.results.posterior_groups import POSTERIOR
+from massfit.results.readings import (
+    Contour,
+    answer_contours,
+    answer_draws,
+    model_readings,
+    site_admittances,
+    site_readings,
+)
 
 SCALE_WORDS = {"s_site": "site scatter", "s_local": "models at a site", "s_common": "model spread"}
 """What the scales of the posterior are called in figures."""
-
-SMOOTHING_SD = 0.4
-"""Kernel of the regions that are drawn, in standard deviations: their edges are the draws' and not their noise."""
-
-Contour = tuple[float, Sequence[NDArray[np.float64]]]
 
 _COMPARED = "uniform over land"
 
@@ -51,7 +52,7 @@ def draw_figures(run: FinishedRun, ocean: OceanFunction) -> dict[str, Figure]:
         and so on. The same for a single column, but for the records, end in ``_column``.
     """
     figures: dict[str, Figure] = {}
-    contours = _contours(run)
+    contours = answer_contours(run)
     for ending, width in (("", PAGE_WIDTH_MM), ("_column", COLUMN_WIDTH_MM)):
         figures[f"phasor_plane{ending}"] = _plane(run, contours, width)
         figures[f"network_map{ending}"] = _map(run, ocean, width)
@@ -76,41 +77,15 @@ def png(figure: Figure) -> bytes:
 
 
 def _plane(run: FinishedRun, contours: Sequence[Contour], width_mm: float) -> Figure:
-    draws = run.datasets[POSTERIOR]["annual_phasor"].values.reshape(-1, 2) / PASCAL_PER_HPA
-    sites = run.summary["sites"]
-    inverse = np.linalg.inv(admittance_matrix(_admittances(sites)))
-    phasors = np.array([site["phasor_hpa"] for site in sites]) - _known_response(run)
-    covariances = np.array([site["phasor_covariance_hpa2"] for site in sites])
     return phasor_plane(
-        draws,
-        [site["id"] for site in sites],
-        np.einsum("sij,sj->si", inverse, phasors),
-        np.einsum("sij,sjk,slk->sil", inverse, covariances, inverse),
+        answer_draws(run),
+        [site["id"] for site in run.summary["sites"]],
+        *site_readings(run),
         reference_year=run.summary["reference_year"],
         contours=contours,
+        models=model_readings(run),
         width_mm=width_mm,
     )
-
-
-def _contours(run: FinishedRun) -> list[Contour]:
-    """Edges of the regions of the answer, the largest first, hPa."""
-    draws = run.datasets[POSTERIOR]["annual_phasor"].values.reshape(-1, 2) / PASCAL_PER_HPA
-    regions = density_regions(draws, bandwidth=SMOOTHING_SD)
-    generator = contour_generator(regions.in_phase, regions.quadrature, regions.density)
-    lines = {level: [np.asarray(line) for line in generator.lines(value)] for level, value in regions.levels.items()}
-    return sorted(lines.items(), reverse=True)
-
-
-def _known_response(run: FinishedRun) -> NDArray[np.float64]:
-    """G_s of every site, (n_site, 2) hPa; zero where air pressure on land was not given."""
-    ids, fingerprints = [site["id"] for site in run.summary["sites"]], run.datasets["fingerprints.nc"]
-    if "air_load_response" not in fingerprints:
-        return np.zeros((len(ids), 2))
-    return np.asarray(fingerprints["air_load_response"].sel(site=ids).values / PASCAL_PER_HPA)
-
-
-def _admittances(sites: Sequence[dict[str, list[float]]]) -> NDArray[np.complex128]:
-    return np.asarray(as_complex(np.array([site["admittance"] for site in sites])))
 
 
 def _map(run: FinishedRun, ocean: OceanFunction, width_mm: float) -> Figure:
@@ -122,7 +97,7 @@ def _map(run: FinishedRun, ocean: OceanFunction, width_mm: float) -> Figure:
         [site["id"] for site in sites],
         np.array([site["latitude"] for site in sites]),
         np.array([site["longitude"] for site in sites]),
-        _admittances(sites),
+        site_admittances(run),
         doubtful=[bool(site["warnings"]) for site in sites],
         width_mm=width_mm,
     )

@@ -28,7 +28,7 @@ from massfit.results.finished import FinishedRun
 PICTURES = {
     "phasor_plane": "The network's answer (blue: mean, 50 and 95 % regions, drawn from draws smoothed by 0.4 of their "
     "standard deviation) and what each site alone says of it (orange: the site's phasor divided by its fingerprint, "
-    "with the 50 % ellipse of its record error).",
+    "with the 50 % ellipse of its record error); triangles: where the answer would move with one ocean model alone.",
     "network_map": "The sites, coloured by the amplitude of the annual cycle at the site relative to the ocean mean.",
     "fingerprint": "How each site sees the cycle under each load member: amplitude relative to the ocean mean, and "
     "delay.",

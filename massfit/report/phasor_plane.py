@@ -1,7 +1,7 @@
 """The phasor plane: the network's answer and each site's own reading of it."""
 
 from calendar import month_abbr
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from datetime import date
 
 import numpy as np
@@ -38,6 +38,7 @@ def phasor_plane(
     *,
     reference_year: int,
     contours: Sequence[tuple[float, Sequence[NDArray[np.float64]]]] = (),
+    models: Mapping[str, NDArray[np.float64]] | None = None,
     width_mm: float = PAGE_WIDTH_MM,
 ) -> Figure:
     """Draw the posterior's regions and each site's estimate in the plane of (in phase, quadrature).
@@ -55,6 +56,8 @@ def phasor_plane(
         Year whose months are marked.
     contours : sequence of (level, lines)
         Highest-density regions: probability and boundary lines, each (k, 2), hPa.
+    models : mapping of str to (2,) array, optional
+        Where the answer would move with each ocean model alone, hPa.
     width_mm : float
         Width of the figure.
 
@@ -69,6 +72,7 @@ def phasor_plane(
         for axes in (whole, near):
             _sites(axes, site_phasors_hpa, site_covariances_hpa2)
             _answer(axes, draws_hpa, contours)
+            _models(axes, models or {})
             zero_lines(axes)
             axes.set_ylabel("quadrature / hPa")
             axes.set_xlabel("in phase / hPa")
@@ -77,7 +81,9 @@ def phasor_plane(
         _month_marks(whole, reach, reference_year)
         _far_sites(whole, site_ids, site_phasors_hpa, reach)
         _enlarge(near, draws_hpa)
-        missing = _site_labels(near, site_ids, site_phasors_hpa, draws_hpa.mean(axis=0))
+        names = [*site_ids, *(models or {})]
+        points = np.vstack([site_phasors_hpa, *(models or {}).values()])
+        missing = _site_labels(near, names, points, draws_hpa.mean(axis=0))
         near.set_title("The answer enlarged" + (f" ({missing} without a name)" if missing else ""))
         handles, labels = whole.get_legend_handles_labels()
         columns = 2 if width_mm > COLUMN_WIDTH_MM else 1
@@ -123,6 +129,15 @@ def _answer(
             axes.plot(line[:, 0], line[:, 1], color=ANSWER, linewidth=width, zorder=4)
     label = "network: mean, 50 and 95 % regions"
     axes.plot(*draws.mean(axis=0), marker="+", markersize=8, color=ANSWER, zorder=5, linestyle="none", label=label)
+
+
+def _models(axes: Axes, models: Mapping[str, NDArray[np.float64]]) -> None:
+    if models:
+        x, y = np.array(list(models.values())).T
+        axes.plot(
+            x, y, linestyle="none", marker="^", markersize=4.5, color="white", markeredgecolor="black",
+            markeredgewidth=0.8, zorder=6, label="with one ocean model alone",
+        )  # fmt: skip
 
 
 def _sites(axes: Axes, phasors: NDArray[np.float64], covariances: NDArray[np.float64]) -> None:

@@ -90,7 +90,7 @@ def _alternatives(summary: Mapping[str, Any]) -> list[str]:
 
 def _what_if(summary: Mapping[str, Any]) -> list[str]:
     """List every other choice, drawn anew, under the heading of its kind."""
-    lines = [f"{'If instead':<43}{'shift / sd':>10}{'width':>7}{'hPa':>8}{'peak day':>10}"]
+    lines = [f"{'If instead':<45}{'shift / sd':>11}{'width':>7}{'hPa':>7}{'peak day':>9}"]
     kind = None
     for row in summary["what_if"]:
         if row["kind"] != kind:
@@ -98,8 +98,8 @@ def _what_if(summary: Mapping[str, Any]) -> list[str]:
             kind = row["kind"]
         mark = "" if row["converged"] else "!"
         lines.append(
-            f"    {padded(row['name'], 39)}{row['shift_sd']:>10.2f}{row['sd_ratio']:>7.2f}"
-            f"{row['amplitude_hpa']:>8.3f}{row['peak_day']:>10.1f}{mark}"
+            f"    {padded(row['name'], 41)}{row['shift_sd']:>11.2f}{row['sd_ratio']:>7.2f}"
+            f"{row['amplitude_hpa']:>7.3f}{row['peak_day']:>9.1f}{mark}"
         )
     unsure = [] if all(row["converged"] for row in summary["what_if"]) else wrapped("! did not converge", WIDTH)
     return lines + wrapped(ALTERNATIVES_NOTE, WIDTH) + unsure

@@ -47,8 +47,8 @@ def test_rows_cover_every_kind_and_the_base_is_the_answer(asked: Estimate) -> No
     assert all(np.isfinite([row[key] for key in numbers]).all() for row in rows)
     named = {row["name"]: row for row in rows}
     # what is known of two sites and one model is mostly prior: a wider one widens
-    assert named["double the prior scale of the error the models share (s_common)"]["sd_ratio"] > 1.1
-    assert named["half the prior scale of the error the models share (s_common)"]["sd_ratio"] < 0.95
+    assert named["double the prior of s_common (models, shared)"]["sd_ratio"] > 1.1
+    assert named["half the prior of s_common (models, shared)"]["sd_ratio"] < 0.95
     # half a record says less than all of it; controls for a table of zeros
     halves = [row for row in rows if row["kind"] == "records"]
     assert len(halves) == 2

@@ -48,10 +48,10 @@ def test_every_choice_is_there_and_changes_one_thing(base: Variant) -> None:
     assert variants["truth at the models' centre (r = 0)"].settings.model_truth == "centred"
     assert variants["Student-t site scatter"].settings.site_scatter == "student-t"
     assert variants["neighbours share scatter (by group)"].settings.group_scatter is True
-    assert variants["half the prior scale of the error the models share (s_common)"].priors.model_common_hpa == 0.075
-    assert variants["double the prior scale of the site scatter (s_site)"].priors.site_scatter_hpa == 0.6
+    assert variants["half the prior of s_common (models, shared)"].priors.model_common_hpa == 0.075
+    assert variants["double the prior of s_site (site scatter)"].priors.site_scatter_hpa == 0.6
     assert variants["air pressure without error"].atmosphere_sd_hpa == 0.0
-    assert variants["double the error of the air pressure (0.08 hPa)"].atmosphere_sd_hpa == 0.08
+    assert variants["double the air-pressure error (0.08 hPa)"].atmosphere_sd_hpa == 0.08
     assert sum(name.startswith("without model") for name in variants) == 3
     assert variants["uniform ocean (F = 1)"].fingerprints["admittance"].values.tolist() == [[[1.0, 0.0]] * 6]
 

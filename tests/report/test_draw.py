@@ -8,9 +8,10 @@ from scipy.interpolate import RegularGridInterpolator
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.posterior.regions import DensityRegions, density_regions
 from massfit.report import draw
-from massfit.report.draw import SMOOTHING_SD, draw_figures
+from massfit.report.draw import draw_figures
 from massfit.results.estimate import Estimate
 from massfit.results.finished import FinishedRun, finished_run
+from massfit.results.readings import SMOOTHING_SD
 
 
 @pytest.fixture(scope="module")
