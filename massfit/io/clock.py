@@ -4,6 +4,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from massfit.io.deployment import DeploymentFile
+from massfit.records.interval import usual_interval_ns
 from massfit.records.record import Action
 
 SET_BACK = "the clock goes back"
@@ -93,20 +94,21 @@ def clock_notes(time: NDArray[np.datetime64], pressure: NDArray[np.float64]) -> 
     """
     if time.size < 3:
         return ()
-    step = np.diff(time).astype(np.int64)
-    if np.count_nonzero(step < 0) > step.size // 2:
+    if usual_interval_ns(time) < 0.0:
         return clock_notes(time[::-1], pressure[::-1])
-    return (*_turned_back(time, pressure, step), *_leap_steps(time, step))
+    return (*_turned_back(time, pressure), *_leap_steps(time))
 
 
-def _turned_back(time: NDArray[np.datetime64], pressure: NDArray[np.float64], step: NDArray[np.int64]) -> list[Action]:
+def _turned_back(time: NDArray[np.datetime64], pressure: NDArray[np.float64]) -> list[Action]:
     """Whole hours back, to stamps that were there already with other values: files put together repeat values."""
-    usual = float(np.median(step[step > 0])) if (step > 0).any() else 0.0
+    step = np.diff(time).astype(np.int64)
+    usual = usual_interval_ns(time)
     # of hourly stamps the turned one only stands twice, as a stray row does: the turn forward tells
-    forward = bool((np.abs(step - usual - _HOUR_NS) < 0.1 * usual).any())
-    back = np.flatnonzero(step <= 0 if forward else step < 0)
+    back = np.flatnonzero(step <= 0)
     if not 0 < back.size <= _MOST_TIMES:
         return []
+    if not (np.abs(step - usual - _HOUR_NS) < 0.1 * usual).any():
+        back = back[step[back] < 0]
     hours = np.round((usual - step[back]) / _HOUR_NS)
     whole = np.abs(usual - step[back] - hours * _HOUR_NS) < 0.1 * usual
     turned = [
@@ -131,9 +133,9 @@ def _other_values(time: NDArray[np.datetime64], pressure: NDArray[np.float64], p
     return bool(both.any() and (pressure[before] != pressure[after])[both].mean() > 0.5)
 
 
-def _leap_steps(time: NDArray[np.datetime64], step: NDArray[np.int64]) -> list[Action]:
+def _leap_steps(time: NDArray[np.datetime64]) -> list[Action]:
     """Leap seconds at which stamps that keep to a raster leave it by one second."""
-    usual = int(np.median(step))
+    usual = int(usual_interval_ns(time))
     if usual <= 2 * _SECOND_NS:
         return []
     notes = []

@@ -18,6 +18,35 @@ _BLANK, _END = ord(" "), ord("\n")
 
 
 @dataclass(frozen=True)
+class Fields:
+    """Where the fields of rows stand that were found to be alike.
+
+    Parameters
+    ----------
+    raw : (m,) array of uint8
+        Text of the rows.
+    starts, ends : (n, k) array of int
+        Bytes at which the fields begin and end; (k,) where every row has the same length and they count from its
+        beginning.
+    row_bytes : int
+        That length; 0 where rows differ.
+    """
+
+    raw: NDArray[np.uint8]
+    starts: NDArray[np.int64]
+    ends: NDArray[np.int64]
+    row_bytes: int = 0
+
+    def letters(self, column: int) -> NDArray[np.uint8] | None:
+        """Letters of a column, (n, width), where it has one width."""
+        if self.row_bytes:
+            return self.raw.reshape(-1, self.row_bytes)[:, self.starts[column] : self.ends[column]]
+        starts, ends = self.starts[:, column], self.ends[:, column]
+        width = int(ends[0] - starts[0])
+        return self.raw[starts[:, None] + np.arange(width)] if (ends - starts == width).all() else None
+
+
+@dataclass(frozen=True)
 class Block:
     """Rows of data that follow each other.
 
@@ -31,16 +60,19 @@ class Block:
         Fields of the rows that have another number of them.
     ragged : (m,) array of int
         The line numbers of those.
-    starts, ends : (n, k) array of int, optional
-        Bytes at which the fields begin and end, where all rows were found to be alike.
+    fields : Fields, optional
+        Where all rows were found to be alike.
     """
 
     text: bytes
     lines: NDArray[np.int64]
     counts: NDArray[np.int64]
     ragged: NDArray[np.int64]
-    starts: NDArray[np.int64] | None = None
-    ends: NDArray[np.int64] | None = None
+    fields: Fields | None = None
+
+    def letters(self, column: int) -> NDArray[np.uint8] | None:
+        """Letters of a column, (n, width), where all rows are alike and it has one width."""
+        return None if self.fields is None else self.fields.letters(column)
 
 
 _NONE = np.empty(0, dtype=np.int64)
@@ -83,9 +115,9 @@ def text_blocks(
             if even is None:
                 yield _uneven(body, first + skipped, width, delimiter, comment, source)
             else:
-                body, starts, ends = even
+                body, fields = even
                 lines = np.arange(first + skipped, first + count, dtype=np.int64)
-                yield Block(body, lines, _NONE, _NONE, starts, ends)
+                yield Block(body, lines, _NONE, _NONE, fields)
             first += count
 
 
@@ -120,10 +152,8 @@ def _without_head(text: bytes, header_lines: int, comment: str) -> tuple[int, by
     return skipped, text[at:]
 
 
-def _even(
-    text: bytes, width: int, delimiter: str | None, comment: str
-) -> tuple[bytes, NDArray[np.int64], NDArray[np.int64]] | None:
-    """Text without quotes, and where its fields begin and end; None unless all rows are plain and of one width."""
+def _even(text: bytes, width: int, delimiter: str | None, comment: str) -> tuple[bytes, Fields] | None:
+    """Text without quotes, and where its fields stand; None unless all rows are plain and of one width."""
     if not text or not text.isascii() or (comment and comment.encode() in text):
         return None
     if delimiter is not None and len(delimiter) != 1:
@@ -132,16 +162,34 @@ def _even(
         return None
     text = text.replace(b'"', b"") if b'"' in text else text
     raw = np.frombuffer(text, dtype=np.uint8)
-    line_ends = np.flatnonzero(raw == _END)
-    if np.diff(line_ends, prepend=-1).max() >= LONGEST_LINE:
+    fields = _of_one_length(raw, text.index(b"\n") + 1, width, delimiter)
+    if fields is None:
+        line_ends = np.flatnonzero(raw == _END)
+        if np.diff(line_ends, prepend=-1).max() >= LONGEST_LINE:
+            return None
+        fields = _by_blanks(raw, line_ends, width) if delimiter is None else _by_marks(raw, line_ends, width, delimiter)
+    return None if fields is None else (text, fields)
+
+
+def _of_one_length(raw: NDArray[np.uint8], length: int, width: int, delimiter: str | None) -> Fields | None:
+    """Fields of rows that all have the length of the first, and their delimiters where it has them."""
+    if raw.size % length or length >= LONGEST_LINE:
         return None
-    fields = _by_blanks(raw, line_ends, width) if delimiter is None else _by_marks(raw, line_ends, width, delimiter)
-    return None if fields is None else (text, *fields)
+    rows = raw.reshape(-1, length)
+    parting = raw <= _BLANK if delimiter is None else (raw == ord(delimiter)) | (raw == _END)
+    parting = parting.reshape(-1, length)
+    if not ((rows[:, -1] == _END).all() and (rows[:, :-1] != _END).all() and (parting == parting[0]).all()):
+        return None
+    if delimiter is None:
+        changes = np.flatnonzero(np.diff(np.concatenate([[True], parting[0]]).astype(np.int8)))
+        starts, ends = changes[0::2], changes[1::2]
+    else:
+        ends = np.flatnonzero(parting[0])
+        starts = np.concatenate([[0], ends[:-1] + 1])
+    return Fields(raw, starts, ends, length) if ends.size == width else None
 
 
-def _by_marks(
-    raw: NDArray[np.uint8], line_ends: NDArray[np.int64], width: int, delimiter: str
-) -> tuple[NDArray[np.int64], NDArray[np.int64]] | None:
+def _by_marks(raw: NDArray[np.uint8], line_ends: NDArray[np.int64], width: int, delimiter: str) -> Fields | None:
     marks = np.flatnonzero(raw == ord(delimiter))
     if width < 2 or marks.size != line_ends.size * (width - 1):
         return None
@@ -149,12 +197,11 @@ def _by_marks(
     starts = np.empty_like(ends)
     starts[:, 1:] = ends[:, :-1] + 1
     starts[0, 0], starts[1:, 0] = 0, line_ends[:-1] + 1
-    return (starts, ends) if (ends[:, 0] >= starts[:, 0]).all() and (ends[:, -2] < line_ends).all() else None
+    inside = (ends[:, 0] >= starts[:, 0]).all() and (ends[:, -2] < line_ends).all()
+    return Fields(raw, starts, ends) if inside else None
 
 
-def _by_blanks(
-    raw: NDArray[np.uint8], line_ends: NDArray[np.int64], width: int
-) -> tuple[NDArray[np.int64], NDArray[np.int64]] | None:
+def _by_blanks(raw: NDArray[np.uint8], line_ends: NDArray[np.int64], width: int) -> Fields | None:
     filled = np.zeros(raw.size + 1, dtype=np.int8)
     filled[1:] = raw > _BLANK
     changes = np.flatnonzero(np.diff(filled))
@@ -162,7 +209,7 @@ def _by_blanks(
         return None
     starts, ends = changes[0::2].reshape(-1, width), changes[1::2].reshape(-1, width)
     inside = (ends[:, -1] <= line_ends).all() and (starts[1:, 0] > line_ends[:-1]).all()
-    return (starts, ends) if inside else None
+    return Fields(raw, starts, ends) if inside else None
 
 
 def _uneven(text: bytes, first: int, width: int, delimiter: str | None, comment: str, source: str) -> Block:

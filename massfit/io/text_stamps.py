@@ -1,6 +1,7 @@
 """Stamps as text: the common fixed form read at once, and what others say of zones and of 60th seconds."""
 
 import re
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -13,7 +14,14 @@ from massfit.io.text_time import parsed_time
 from massfit.io.zones import require_utc, zone_hours, zone_of_stamp
 
 _ISO = re.compile(rb"\d{4}-\d\d-\d\d([T ]\d\d:\d\d(:\d\d(\.\d{1,9})?)?Z?)?")
-_DIGIT = ord("0")
+_DIGIT, _POINT = np.uint8(ord("0")), ord(".")
+_MOST_DIGITS = 15
+_PLACES = {"year": (0, 4), "month": (5, 7), "day": (8, 10), "hour": (11, 13), "minute": (14, 16), "second": (17, 19)}
+"""Where the parts of a date stand in a stamp of ISO 8601."""
+_BOUNDS = {
+    "year": (1900, 2200), "month": (1, 12), "day": (1, 31), "hour": (0, 23), "minute": (0, 59), "second": (0, 59),
+}  # fmt: skip
+_SECONDS = {"hour": 3600, "minute": 60, "second": 1}
 _SUFFIX = r"\s*[A-Za-z]{2,5}$"
 _OFFSET = r"[T ]\d\d:?\d\d.*?([+-]\d\d(?::?\d\d)?)$"
 _SIXTY = r"(:\d\d):60(?=$|\D)"
@@ -37,17 +45,13 @@ class Stamps:
     sixties: int = 0
 
 
-def fixed_iso(raw: NDArray[np.uint8], starts: NDArray[np.int64], length: int) -> NDArray[np.datetime64] | None:
+def fixed_iso(letters: NDArray[np.uint8]) -> NDArray[np.datetime64] | None:
     """Read ISO 8601 stamps that all have one form, "2016-01-01T00:30:00Z" or a shorter or finer one.
 
     Parameters
     ----------
-    raw : (m,) array of uint8
-        Text.
-    starts : (n,) array of int
-        Where the stamps begin.
-    length : int
-        Characters of each.
+    letters : (n, k) array of uint8
+        A stamp a row.
 
     Returns
     -------
@@ -56,55 +60,104 @@ def fixed_iso(raw: NDArray[np.uint8], starts: NDArray[np.int64], length: int) ->
 
     Examples
     --------
-    >>> text = np.frombuffer(b"2016-01-31T00:30Z 2016-02-01T12:00Z", dtype=np.uint8)
-    >>> fixed_iso(text, np.array([0, 18]), 17).astype("datetime64[m]").tolist()[1].isoformat()
+    >>> letters = np.frombuffer(b"2016-01-31T00:30Z2016-02-01T12:00Z", dtype=np.uint8).reshape(2, 17)
+    >>> fixed_iso(letters).astype("datetime64[m]").tolist()[1].isoformat()
     '2016-02-01T12:00:00'
     """
-    form = raw[starts[0] : starts[0] + length].tobytes() if starts.size else b""
+    form = letters[0].tobytes() if letters.size else b""
     if not _ISO.fullmatch(form):
         return None
-    fields = raw[starts[:, None] + np.arange(length)]
     digits = np.array([48 <= byte <= 57 for byte in form])
-    if not ((fields[:, ~digits] == np.frombuffer(form, np.uint8)[~digits]).all() and _all_digits(fields[:, digits])):
+    if not ((letters == letters[0])[:, ~digits].all() and _all_digits(letters[:, digits])):
         return None
-    number = _Numbers(fields, length)
-    year, month, day = number(0, 4), number(5, 7), number(8, 10)
-    hour, minute, second = number(11, 13), number(14, 16), number(17, 19)
-    if not (_within(year, 1900, 2200) and _within(month, 1, 12) and _within(day, 1, 31)):
+    parts = {part: _number(letters[:, a:b]) for part, (a, b) in _PLACES.items() if b <= len(form)}
+    time = _instants(parts)
+    decimals = len(form.rstrip(b"Z")) - 20
+    if decimals > 0 and time is not None:
+        size = np.timedelta64(10 ** (9 - decimals), "ns")
+        time = time + _number(letters[:, 20 : 20 + decimals])* size
+    return time
+
+
+def fixed_parts(columns: Mapping[str, NDArray[np.uint8]]) -> NDArray[np.datetime64] | None:
+    """Read dates whose parts stand in columns of digits, each of one width.
+
+    Parameters
+    ----------
+    columns : mapping of str to (n, k) array of uint8
+        Letters of each part of the date.
+
+    Returns
+    -------
+    (n,) array of datetime64[ns], or None
+        None where one of them has another form or is no date.
+    """
+    parts = {}
+    for part, letters in columns.items():
+        if part not in _PLACES or letters.shape[1] > 4 or not _all_digits(letters):
+            return None
+        parts[part] = _number(letters)
+    return _instants(parts)
+
+
+def fixed_decimals(letters: NDArray[np.uint8]) -> NDArray[np.float64] | None:
+    """Read decimal numbers without sign that all have the point at one place, or none.
+
+    A whole number below 2**53 divided by a power of ten below 10**22 is rounded correctly, so that they are the same
+    as any exact reader gives.
+
+    Parameters
+    ----------
+    letters : (n, k) array of uint8
+        A number a row.
+
+    Returns
+    -------
+    (n,) array of float64, or None
+        None where one of them has another form.
+
+    Examples
+    --------
+    >>> fixed_decimals(np.frombuffer(b"05.2510.75", dtype=np.uint8).reshape(2, 5)).tolist()
+    [5.25, 10.75]
+    """
+    point = np.flatnonzero(letters[0] == _POINT) if letters.size else np.empty(0, dtype=np.int64)
+    if point.size > 1 or not 0 < letters.shape[1] <= _MOST_DIGITS:
         return None
-    if not (_within(hour, 0, 23) and _within(minute, 0, 59) and _within(second, 0, 59)):
+    if not point.size:
+        return _number(letters).astype(np.float64) if _all_digits(letters) else None
+    whole, decimals = letters[:, : point[0]], letters[:, point[0] + 1 :]
+    if not ((letters[:, point[0]] == _POINT).all() and _all_digits(whole) and _all_digits(decimals)):
         return None
+    if whole.shape[1] + decimals.shape[1] == 0:
+        return None
+    power = 10 ** decimals.shape[1]
+    return np.asarray((_number(whole) * power + _number(decimals)) / power)
+
+
+def _instants(parts: Mapping[str, NDArray[np.int64]]) -> NDArray[np.datetime64] | None:
+    if any(values.min() < _BOUNDS[part][0] or values.max() > _BOUNDS[part][1] for part, values in parts.items()):
+        return None
+    year, month, day = (parts[part] for part in ("year", "month", "day"))
     months = ((year - 1970) * 12 + month - 1).astype("datetime64[M]")
     date = months.astype("datetime64[D]") + (day - 1)
     if not ((day <= 28) | (date.astype("datetime64[M]") == months)).all():
         return None
-    time = date.astype("datetime64[ns]").astype(np.int64) + (hour * 3600 + minute * 60 + second) * 1_000_000_000
-    decimals = len(form.rstrip(b"Z")) - 20
-    if decimals > 0:
-        time += number(20, 20 + decimals) * 10 ** (9 - decimals)
-    return time.astype("datetime64[ns]")
+    seconds = sum((parts[part] * size for part, size in _SECONDS.items() if part in parts), np.zeros(1, dtype=np.int64))
+    return np.asarray(date.astype("datetime64[s]") + seconds).astype("datetime64[ns]")
 
 
-class _Numbers:
-    """Whole numbers in columns of digits; zero beyond the end of the form."""
-
-    def __init__(self, fields: NDArray[np.uint8], length: int) -> None:
-        self.fields, self.length = fields, length
-
-    def __call__(self, start: int, stop: int) -> NDArray[np.int64]:
-        value = np.zeros(self.fields.shape[0], dtype=np.int64)
-        if stop <= self.length:
-            for place in range(start, stop):
-                value = value * 10 + (self.fields[:, place].astype(np.int64) - _DIGIT)
-        return value
+def _number(digits: NDArray[np.uint8]) -> NDArray[np.int64]:
+    value = np.zeros(digits.shape[0], dtype=np.int64)
+    for place in range(digits.shape[1]):
+        value *= 10
+        value += digits[:, place] - _DIGIT
+    return value
 
 
-def _all_digits(fields: NDArray[np.uint8]) -> bool:
-    return bool(((fields >= 48) & (fields <= 57)).all())
-
-
-def _within(values: NDArray[np.int64], low: int, high: int) -> bool:
-    return bool(values.min(initial=low) >= low and values.max(initial=high) <= high)
+def _all_digits(letters: NDArray[np.uint8]) -> bool:
+    # 48 to 57; a smaller one wraps round to a large number
+    return bool((letters - _DIGIT < 10).all())
 
 
 def stamps_of(texts: "pd.Series[str]", lines: NDArray[np.int64], entry: DeploymentFile, *, name: str) -> Stamps:

@@ -14,6 +14,7 @@ from massfit.records import stuck as stuck_rule
 from massfit.records.clean import find_spikes, usable_samples
 from massfit.records.disturbed import find_disturbed
 from massfit.records.hourly import HOUR_NS, Hourly, days_from_epoch, hourly_means, instants
+from massfit.records.interval import usual_interval_ns
 from massfit.records.level_changes import (
     between_levels,
     declared_changes,
@@ -130,7 +131,7 @@ def _first_instant(record: Record) -> np.datetime64:
 
 
 def _spacing_hours(time: NDArray[np.datetime64]) -> float:
-    return float(np.median(np.diff(time)) / np.timedelta64(HOUR_NS, "ns")) if time.size > 1 else np.inf
+    return usual_interval_ns(time) / HOUR_NS if time.size > 1 else np.inf
 
 
 def _settling_samples(
