@@ -1,8 +1,11 @@
 import numpy as np
+import pytest
 
 from massfit.contracts import FOOTPRINTS, require
+from massfit.earth.love import LoveNumbers
 from massfit.fingerprint.footprint import site_footprints
-from massfit.fingerprint.operator import SeaLevelOperator
+from massfit.fingerprint.ocean import OceanFunction
+from massfit.fingerprint.operator import SeaLevelOperator, prepare_operator
 from massfit.fingerprint.sea_level import solve_sea_level
 from massfit.site import Site
 
@@ -20,6 +23,20 @@ def test_adjoint_is_forward_at_full_degree(operator: SeaLevelOperator, rng: np.r
     sea = solve_sea_level(operator, load=load, water_vapour=vapour)
     forward = sea.at([site.latitude_deg for site in SITES], [site.longitude_deg for site in SITES])
     np.testing.assert_allclose(by_adjoint, forward, rtol=1e-10)
+
+
+@pytest.mark.parametrize("degree", [20, 45, 90])
+def test_adjoint_is_forward_on_any_grid(degree: int, love: LoveNumbers, rng: np.random.Generator) -> None:
+    # the vapour alone, the load alone, and both: each must do by itself
+    operator = prepare_operator(OceanFunction.builtin(), love, max_degree=degree)
+    prints = site_footprints(operator, SITES)
+    load = rng.normal(size=operator.cells.shape) * (1.0 + 1j) + 20.0
+    for mass, vapour in ((load, 0j), (0.0 * load, 6.5e14 - 1e14j), (load, 3e14j)):
+        by_adjoint = np.tensordot(prints.footprint.to_numpy(), mass * operator.cell_area_m2, 2)
+        by_adjoint = by_adjoint + prints.constant.to_numpy() * vapour
+        sea = solve_sea_level(operator, load=mass, water_vapour=vapour)
+        forward = sea.at([site.latitude_deg for site in SITES], [site.longitude_deg for site in SITES])
+        np.testing.assert_allclose(by_adjoint, forward, rtol=1e-10)
 
 
 def test_water_vapour_lowers_the_sea(coarse: SeaLevelOperator) -> None:

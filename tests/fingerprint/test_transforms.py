@@ -54,6 +54,32 @@ def test_points_and_grid_agree_with_pyshtools(rng: np.random.Generator) -> None:
         np.testing.assert_allclose(field[::7][:, [0, 40, 99]].ravel(), expected, atol=1e-11)
 
 
+def test_the_grid_agrees_with_matrices_of_legendre_functions(rng: np.random.Generator) -> None:
+    # a third road: associated Legendre functions row by row and a plain Fourier matrix, both ways
+    coefficients = random_coefficients(rng, GRID)
+    colatitude = np.radians(90.0 - GRID.latitude_deg)
+    longitude = np.radians(GRID.longitude_deg)
+    rows = np.zeros((3, colatitude.size, DEGREE + 1), dtype=complex)
+    back = np.zeros_like(coefficients)
+    waves = np.exp(1j * np.outer(np.arange(DEGREE + 1), longitude))
+    start = 0
+    matrices = []
+    for m in range(DEGREE + 1):
+        degrees = np.arange(m, DEGREE + 1)
+        legendre = np.stack([sph_harm_y(int(n), m, colatitude, 0.0).real for n in degrees])
+        own = coefficients[:, start : start + degrees.size]
+        rows[:, :, m] = (1.0 if m == 0 else 2.0) * own @ legendre
+        matrices.append((start, legendre))
+        start += degrees.size
+    fields = (rows @ waves).real
+    np.testing.assert_allclose(GRID.synthesise(coefficients), fields, rtol=0, atol=1e-11)
+    weighted = fields * GRID.solid_angle[:, None] @ waves.conj().T
+    for m, (first, legendre) in enumerate(matrices):
+        back[:, first : first + len(legendre)] = weighted[:, :, m] @ legendre.T
+    np.testing.assert_allclose(GRID.analyse(fields), back, rtol=0, atol=1e-11)
+    np.testing.assert_allclose(back, coefficients, rtol=0, atol=1e-11)
+
+
 def test_analysis_undoes_synthesis_at_full_degree(rng: np.random.Generator) -> None:
     grid = SphereGrid(180)
     coefficients = random_coefficients(rng, grid, 2)
