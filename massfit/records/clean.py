@@ -14,6 +14,8 @@ _WINDOW = 5
 """Samples of the running median: at most two neighbours can be called a spike."""
 _BLOCK = 96
 """Samples over which the running scale is taken: a day of 15-minute samples."""
+_ENOUGH = 500_000
+"""Samples from which the scale of a whole record is known to a few thousandths."""
 _THRESHOLD = 8.0
 """Robust standard deviations; a normal error passes it once in 1e15."""
 _SHARE = 0.01
@@ -61,14 +63,15 @@ def usable_samples(
     >>> pressure.tolist(), [action.what for action in actions]
     ([1.5, 3.0], ['samples put in order of time', 'repeated stamps averaged'])
     """
-    time = time.astype("datetime64[ns]")
+    time = time.astype("datetime64[ns]", copy=False)
     valid = np.isfinite(pressure) & ~np.isnat(time)
     actions = [Action("samples without a value left out", int(np.count_nonzero(~valid)))]
     for what, inside, detail in _choices(time, exclude, start, end):
         actions.append(Action(what, int(np.count_nonzero(valid & ~inside)), detail))
         valid &= inside
-    time, pressure = time[valid], pressure[valid]
-    disorder = int(np.count_nonzero(np.diff(time) < np.timedelta64(0, "ns")))
+    if not valid.all():
+        time, pressure = time[valid], pressure[valid]
+    disorder = int(np.count_nonzero(time[1:] < time[:-1]))
     if disorder:
         order = np.argsort(time, kind="stable")
         time, pressure = time[order], pressure[order]
@@ -81,9 +84,10 @@ def _without_repeats(
     time: NDArray[np.datetime64], pressure: NDArray[np.float64]
 ) -> tuple[NDArray[np.datetime64], NDArray[np.float64], tuple[Action, ...]]:
     """Leave one sample of each stamp: the one that is repeated, or the mean of those that differ."""
-    first = np.flatnonzero(np.diff(time, prepend=np.datetime64("NaT")) != np.timedelta64(0, "ns"))
-    if first.size == time.size:
+    new = time[1:] != time[:-1]
+    if new.all():
         return time, pressure, ()
+    first = np.flatnonzero(np.insert(new, 0, True))
     counts = np.diff(first, append=time.size)
     low, high = np.minimum.reduceat(pressure, first), np.maximum.reduceat(pressure, first)
     alike = (counts > 1) & (low == high)
@@ -151,8 +155,11 @@ def find_spikes(values: NDArray[np.float64]) -> NDArray[np.bool_]:
         return np.zeros(values.size, dtype=bool)
     apart = np.abs(values - median_filter(values, size=_WINDOW, mode="mirror"))
     ratio = apart / np.maximum(running_scale(apart), _SMALLEST_SCALE)
-    spared = max(1, int(_SHARE * values.size)) + 1
-    return np.asarray(ratio > max(_THRESHOLD, np.partition(ratio, -spared)[-spared]))
+    spikes = ratio > _THRESHOLD
+    most = max(1, int(_SHARE * values.size))
+    if np.count_nonzero(spikes) > most:
+        spikes &= ratio > np.partition(ratio[spikes], -most - 1)[-most - 1]
+    return np.asarray(spikes)
 
 
 def running_scale(apart: NDArray[np.float64]) -> NDArray[np.float64]:
@@ -171,7 +178,8 @@ def running_scale(apart: NDArray[np.float64]) -> NDArray[np.float64]:
     blocks = max(1, apart.size // _BLOCK)
     local = _median_above_zero(apart[: blocks * _BLOCK].reshape(blocks, -1))
     place = np.minimum(np.arange(apart.size) // _BLOCK, blocks - 1)
-    return np.asarray(_SD_PER_MEDIAN * np.maximum(local, _median_above_zero(apart[None]))[place])
+    whole = _median_above_zero(apart[None, :: max(1, apart.size // _ENOUGH)])
+    return np.asarray(_SD_PER_MEDIAN * np.maximum(local, whole)[place])
 
 
 def _median_above_zero(apart: NDArray[np.float64]) -> NDArray[np.float64]:

@@ -86,7 +86,8 @@ def reduce_to_daily(
     first = _first_instant(record)
     stuck = find_stuck(time, pressure)
     settling = _settling_samples(time, first, record.settling)
-    time, pressure = time[~(stuck | settling)], pressure[~(stuck | settling)]
+    if (stuck | settling).any():
+        time, pressure = time[~(stuck | settling)], pressure[~(stuck | settling)]
     declared = declared_changes(record)
     reduce = _as_it_is if _spacing_hours(time) >= _DAILY_ABOVE_HOURS else _averaged
     reduced = reduce(time, pressure, declared, tides, record.find_steps)
@@ -126,8 +127,9 @@ class _Reduced:
 
 def _first_instant(record: Record) -> np.datetime64:
     """First sample of the deployment, used or not: the origin of its drift."""
-    instants = record.time[np.isfinite(record.pressure) & ~np.isnat(record.time)].astype("datetime64[ns]")
-    return np.datetime64(instants.min()) if instants.size else np.datetime64("NaT", "ns")
+    valid = np.isfinite(record.pressure) & ~np.isnat(record.time)
+    times = (record.time if valid.all() else record.time[valid]).astype("datetime64[ns]", copy=False)
+    return np.datetime64(times.min()) if times.size else np.datetime64("NaT", "ns")
 
 
 def _spacing_hours(time: NDArray[np.datetime64]) -> float:
@@ -205,7 +207,8 @@ def _averaged(
     spacing = _spacing_hours(time)
     if spacing < _DIRECT_BELOW_HOURS:
         spikes = find_spikes(pressure)
-        time, pressure = time[~spikes], pressure[~spikes]
+        if spikes.any():
+            time, pressure = time[~spikes], pressure[~spikes]
         actions.append(_spike_action(spikes, "sample"))
     hours = hourly_means(time, pressure)
     inside = between_levels(hours.days, declared)

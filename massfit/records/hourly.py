@@ -83,13 +83,14 @@ def hourly_means(time: NDArray[np.datetime64], pressure: NDArray[np.float64]) ->
     >>> hourly_means(time, np.array([1.0, 3.0, 7.0])).pressure.tolist()
     [2.0, 7.0]
     """
-    since = (time - EPOCH).astype(np.int64)
-    hour = (since + _JITTER_NS) // HOUR_NS
-    first = np.flatnonzero(np.diff(hour, prepend=hour[:1] - 1))
-    counts = np.diff(first, append=hour.size)
-    within = (since - hour * HOUR_NS) / DAY_NS
+    if not time.size:
+        return Hourly(np.empty(0, np.int64), *(np.empty(0) for _ in range(3)))
+    since = time.astype("datetime64[ns]", copy=False).view(np.int64) - EPOCH.view(np.int64)
+    every = np.arange((since[0] + _JITTER_NS) // HOUR_NS, (since[-1] + _JITTER_NS) // HOUR_NS + 2)
+    edges = np.searchsorted(since, every * HOUR_NS - _JITTER_NS)
+    filled = np.diff(edges) > 0
+    hour, first, counts = every[:-1][filled], edges[:-1][filled], np.diff(edges)[filled]
+    within = (since - np.repeat(hour * HOUR_NS, counts)) / DAY_NS
     offset = np.add.reduceat(within, first) / counts
     spread = np.maximum(np.add.reduceat(within**2, first) / counts - offset**2, 0.0)
-    return Hourly(
-        hour[first], hour[first] / 24.0 + offset, spread, np.add.reduceat(pressure, first) / counts
-    )
+    return Hourly(hour, hour / 24.0 + offset, spread, np.add.reduceat(pressure, first) / counts)

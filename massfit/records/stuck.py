@@ -42,11 +42,22 @@ def find_stuck(time: NDArray[np.datetime64], pressure: NDArray[np.float64]) -> N
     >>> np.flatnonzero(find_stuck(hours, pressure)).tolist()
     [20, 21, 22, 23, 24, 25, 26, 27, 28]
     """
-    if pressure.size < _LEAST_SAMPLES:
-        return np.zeros(pressure.size, dtype=bool)
-    first = np.flatnonzero(np.diff(pressure, prepend=np.nan) != 0.0)
-    lengths = np.diff(first, append=pressure.size)
-    usual = float(np.quantile(lengths, _USUAL))
-    lasting = time[first + lengths - 1] - time[first] >= _LEAST_TIME
-    stuck = lasting & (lengths >= _LEAST_SAMPLES) & (lengths > _BEYOND_USUAL * usual)
-    return np.repeat(stuck, lengths)
+    stuck = np.zeros(pressure.size, dtype=bool)
+    edges = np.flatnonzero(np.diff(pressure[1:] == pressure[:-1], prepend=False, append=False))
+    first, last = edges[::2], edges[1::2]
+    if not first.size:
+        return stuck
+    lengths = last - first + 1
+    far_longer = lengths > _BEYOND_USUAL * _usual_length(lengths, pressure.size)
+    found = far_longer & (lengths >= _LEAST_SAMPLES) & (time[last] - time[first] >= _LEAST_TIME)
+    for start, stop in zip(first[found], last[found], strict=True):
+        stuck[start : stop + 1] = True
+    return stuck
+
+
+def _usual_length(lengths: NDArray[np.int64], samples: int) -> int:
+    """Length that 99 of 100 runs do not exceed; a sample that differs from both neighbours is a run of one."""
+    runs = samples - int((lengths - 1).sum())
+    singles = runs - lengths.size
+    rank = int(_USUAL * (runs - 1))
+    return 1 if rank < singles else int(np.partition(lengths, rank - singles)[rank - singles])
