@@ -262,7 +262,10 @@ def _tide_actions(fit: TideFit) -> list[Action]:
     if not fit.segments:
         return []
     detail = f"{len(fit.constants)} lines, no long-period ones, in segments: {fit.segments}"
-    merged = f"too short to part {', '.join(fit.merged)}; daily means suppress what is left"
+    merged = (
+        f"too short to part {', '.join(fit.merged)}; the largest of them are held to their neighbours in the ratio "
+        "of the equilibrium tide, and daily means suppress what is left"
+    )
     return [
         Action("short tides removed", fit.tide.size, detail),
         Action("tidal lines merged with larger neighbours", len(fit.merged), merged),

@@ -11,6 +11,7 @@ from scipy.sparse import csr_array
 
 from massfit.records.background import background_design
 from massfit.records.clean import find_spikes
+from massfit.records.inference import Companion, companions, expected_of
 from massfit.records.nodal import nodal_modulation
 from massfit.records.record import TidalConstant
 from massfit.records.tidal_lines import SHORT_TIDES, greenwich_argument, parted_lines
@@ -22,6 +23,8 @@ _ROUNDS = 4
 _NEAR_CYCLES_PER_DAY = 0.1
 """What the record holds so close to a line is taken for its noise: the tides of a species lie within twice that."""
 _LEAST_BINS = 8
+_LEAST_NOISE = 1.0
+"""Pa2 a sample: the digits of a recorder."""
 _RIDGE = 1.0e-6
 """Keeps splines without data at zero; samples count as 1."""
 
@@ -63,7 +66,9 @@ def fit_short_tides(
     The record is cut into segments of a year of data or somewhat more, so that
     the 18.6-year modulation is followed. In each the lines that its length parts are
     fitted together with a spline background, which takes up drift, weather
-    and the annual cycle; spikes against the fit are left out and the fit repeated.
+    and the annual cycle; spikes against the fit are left out and the fit repeated. Where a segment is too short to
+    part P1 from K1 or K2 from S2 the smaller is removed as well, held to the ratio of the equilibrium tide as far as
+    the noise of the record leaves it open. The constants are those of the fit without such lines.
 
     Parameters
     ----------
@@ -108,6 +113,9 @@ def fit_short_tides(
         background = background_design(days[part], np.asarray(breaks, dtype=float))
         coefficients, residual, spikes[part] = _robust_fit(background, tides, pressure[part])
         tide[part] = tides @ coefficients
+        inferred = companions(names, 0.5 * float(days[start] + days[stop - 1]))
+        if inferred:
+            tide[part], spikes[part] = _with_companions(days[part], pressure[part], spread[part], background, inferred)
         noise = _amplitude_variances(days[part], np.where(spikes[part], 0.0, residual), names)
         for name, cosine, sine, variance in zip(names, *coefficients.reshape(2, -1), noise, strict=True):
             phasors.setdefault(name, []).append(complex(cosine, sine))
@@ -154,7 +162,9 @@ def _amplitude_variances(
 
 
 def _tidal_design(
-    days: NDArray[np.float64], spread: NDArray[np.float64], names: Sequence[str]
+    days: NDArray[np.float64],
+    spread: NDArray[np.float64],
+    names: Sequence[str],
 ) -> NDArray[np.float64]:
     """Cosines of all lines, then sines, as means over each interval."""
     design = np.empty((2 * len(names), days.size))
@@ -166,14 +176,44 @@ def _tidal_design(
     return design.T
 
 
+def _with_companions(
+    days: NDArray[np.float64],
+    pressure: NDArray[np.float64],
+    spread: NDArray[np.float64],
+    background: csr_array,
+    inferred: Sequence[Companion],
+) -> tuple[NDArray[np.float64], NDArray[np.bool_]]:
+    """Tide and spikes with the lines that are not parted, each held to what its larger neighbour lets expect.
+
+    The more the noise near a line leaves open, the closer it is held. Noise and size of the larger line are those of
+    the fit before; the first begins with what a fit without the companions leaves.
+    """
+    parted = parted_lines(days[-1] - days[0])
+    names = [*parted, *(each.name for each in inferred)]
+    tides = _tidal_design(days, spread, names)
+    own = np.concatenate([np.arange(len(parted)), len(names) + np.arange(len(parted))])
+    lines = np.zeros(2 * len(names))
+    lines[own], residual, spikes = _robust_fit(background, tides[:, own], pressure)
+    for _ in range(_ROUNDS):
+        levels = 0.5 * days.size * _amplitude_variances(days, np.where(spikes, 0.0, residual), names)
+        penalty = expected_of(inferred, names, lines, np.maximum(levels, _LEAST_NOISE))
+        lines, residual, spikes = _robust_fit(background, tides, pressure, penalty)
+    return tides @ lines, spikes
+
+
 def _robust_fit(
-    background: csr_array, tides: NDArray[np.float64], pressure: NDArray[np.float64]
+    background: csr_array,
+    tides: NDArray[np.float64],
+    pressure: NDArray[np.float64],
+    penalty: NDArray[np.float64] | None = None,
 ) -> tuple[NDArray[np.float64], NDArray[np.float64], NDArray[np.bool_]]:
     """Coefficients of the tides, what the whole fit leaves, and the spikes against it."""
     centred = pressure - np.median(pressure)
     spikes = np.zeros(pressure.size, dtype=bool)
     whole, whole_right = _normal_equations(background, tides, centred)
     whole[np.diag_indices_from(whole)] += _RIDGE
+    if penalty is not None:
+        whole[-len(penalty) :, -len(penalty) :] += penalty
     for _ in range(_ROUNDS):
         spike, spike_right = _normal_equations(background[spikes], tides[spikes], centred[spikes])
         solution = cho_solve(cho_factor(whole - spike, check_finite=False), whole_right - spike_right)

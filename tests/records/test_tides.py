@@ -166,6 +166,24 @@ def test_tides_of_honolulu_by_a_general_tide_library(open_data: Path) -> None:
             assert abs(np.angle(np.exp(1j * turned))) < np.radians(1.5) + 1.0 / ours.amplitude
 
 
+def test_inference_removes_what_two_months_of_a_real_record_do_not_part(
+    open_data: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    days, height = honolulu(open_data)
+    whole = fit_short_tides(days, height).tide
+
+    def left() -> float:
+        """Standard deviation of what pieces of 60 days leave of the tide of the year, mm."""
+        pieces = [slice(start, start + 1440) for start in range(0, 8640, 1440)]
+        rest = [whole[piece] - fit_short_tides(days[piece], height[piece]).tide for piece in pieces]
+        return float(np.std(rest))
+
+    inferred = left()
+    monkeypatch.setattr("massfit.records.tides.companions", lambda _names, _days: ())
+    # 12 against 21 mm, in a harbour with weather at the tides' frequencies
+    assert inferred < 0.65 * left()
+
+
 def test_greenwich_lags_are_those_of_a_second_real_record_by_the_same_library(open_data: Path) -> None:
     utide = pytest.importorskip("utide")
     table = np.loadtxt(open_data / "deep_recorder_21401_201103.txt")
