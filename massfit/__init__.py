@@ -29,6 +29,7 @@ _HOMES = {
     "site_fingerprints": "massfit.fingerprint.admittance",
     "site_footprints": "massfit.fingerprint.footprint",
     "solve_sea_level": "massfit.fingerprint.sea_level",
+    "study_fingerprint": "massfit.pipeline.fingerprint_study",
 }
 
 __all__ = sorted(_HOMES)  # noqa: PLE0605 - the table above is the one list of public names

@@ -78,7 +78,7 @@ def fingerprint(network: Path, output: Path | None, finest: int, overwrite: bool
     and prints the table.
     """
     with refusing_politely(), shown_progress(quiet=quiet) as progress:
-        from massfit.pipeline.fingerprint_study import fingerprint_folder, fingerprint_to_folder
+        from massfit.pipeline.save_fingerprint import fingerprint_folder, fingerprint_to_folder
 
         folder, switches = fingerprint_folder(network, output), {"overwrite": overwrite, "outside": outside}
         threads = os.cpu_count() or 1

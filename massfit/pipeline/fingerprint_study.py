@@ -1,8 +1,6 @@
-"""The fingerprint of a network on one page: from places and loads to table, maps and footprints, without a record."""
+"""The fingerprint of a network on one page: from places and loads to maps and footprints, without a record."""
 
-import dataclasses
 from collections.abc import Iterator
-from pathlib import Path
 
 import xarray as xr
 
@@ -13,18 +11,11 @@ from massfit.fingerprint.maps import admittance_by_degree, admittance_maps, foot
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.fingerprint.operator import SeaLevelOperator
 from massfit.fingerprint.rotation import RotationalFeedback
-from massfit.io.fingerprint_folder import FINGERPRINT_TABLE, write_fingerprint
-from massfit.io.network_file import read_sites_and_loads
-from massfit.io.partial_folder import claimed
-from massfit.io.results_folder import check_output
 from massfit.network import Network
 from massfit.pipeline.air import network_air
 from massfit.pipeline.fingerprints import network_fingerprints, network_operator, network_rotation, network_vapour
 from massfit.pipeline.progress import Progress, ignore
 from massfit.pipeline.provenance import provenance
-from massfit.report.draw import png
-from massfit.report.fingerprint_figures import draw_fingerprint
-from massfit.report.fingerprint_page import fingerprint_page
 from massfit.results.assumptions import fingerprint_assumptions
 from massfit.results.fingerprint import FingerprintStudy, compared_degrees, fingerprint_dataset, unsettled_sites
 from massfit.results.finished import plain_settings
@@ -111,71 +102,6 @@ def study_fingerprint(
             "inputs": dict(network.inputs),
         },
     )
-
-
-def fingerprint_folder(network: Path, output: Path | None) -> Path:
-    """Where the fingerprint goes: as asked, or `fingerprint` beside the network file.
-
-    Parameters
-    ----------
-    network : Path
-        A network.toml or the folder that holds one.
-    output : Path or None
-
-    Returns
-    -------
-    Path
-    """
-    return output or (network if network.is_dir() else network.parent) / "fingerprint"
-
-
-def fingerprint_to_folder(
-    network: Path,
-    folder: Path,
-    *,
-    finest_degree: int = FINEST_DEGREE,
-    overwrite: bool = False,
-    outside: bool = False,
-    progress: Progress = ignore,
-    threads: int = 1,
-) -> FingerprintStudy:
-    """Read places and loads of a network, study its fingerprint and write the folder, whole or not at all.
-
-    Parameters
-    ----------
-    network : Path
-        A network.toml or the folder that holds one.
-    folder : Path
-    finest_degree : int
-    overwrite : bool
-        Replace what this command wrote before.
-    outside : bool
-        Allow paths outside the network's folder.
-    progress : callable
-    threads : int
-
-    Returns
-    -------
-    FingerprintStudy
-
-    Raises
-    ------
-    InputError
-        Every fault of the input or of the output folder; nothing was written.
-    """
-    check_output(folder, overwrite=overwrite, holds=FINGERPRINT_TABLE)
-    with claimed(folder) as partial:
-        check_output(folder, overwrite=overwrite, holds=FINGERPRINT_TABLE)
-        progress("reading", 0, 1)
-        inputs = read_sites_and_loads(network, outside=outside)
-        study = study_fingerprint(inputs, finest_degree=finest_degree, progress=progress, threads=threads)
-        made_by = {**study.provenance, "command": f"massfit fingerprint {network}"}
-        study = dataclasses.replace(study, provenance=made_by)
-        progress("report", 0, 1)
-        pictures = {name: png(figure) for name, figure in draw_fingerprint(study.dataset).items()}
-        write_fingerprint(partial, study, pictures=pictures, page=fingerprint_page(study, pictures))
-        progress("report", 1, 1)
-    return study
 
 
 def degree_ladder(own: int, finest: int) -> list[int]:

@@ -6,10 +6,12 @@ import numpy as np
 import xarray as xr
 from jinja2 import Environment, StrictUndefined
 
+from massfit.constants import PASCAL_PER_HPA
 from massfit.display import counted
+from massfit.phasor import as_complex
 from massfit.report.page_parts import MACROS, STYLE, as_data, made_with
 from massfit.report.page_tables import Table, input_table
-from massfit.results.fingerprint import FingerprintStudy, Row, degree_rows, site_rows
+from massfit.results.fingerprint import FingerprintStudy, degree_rows, site_rows
 
 PICTURES = {
     "ratio_map": "Amplitude of the annual cycle at each place over that of the ocean mean, mean over the load members. "
@@ -69,7 +71,8 @@ are for research.</p>
 {{ table('sites') }}
 <p class="small">Ratio: amplitude at the site over that of the ocean mean, of the mean over the load members; delay:
 days by which the site peaks later. Spreads: standard deviations over the members. Every member by itself is in
-fingerprints.csv.</p>
+fingerprints.csv. Air over land: amplitude of the pressure that its attraction and load cause at the site, while no
+water moves.</p>
 {% if tables.left_out %}{{ table('left_out') }}{% endif %}
 
 <h2 id="maps">The maps</h2>
@@ -132,7 +135,7 @@ def fingerprint_page(study: FingerprintStudy, pictures: Mapping[str, bytes]) -> 
         pages={stem: [name for name in wide if name.startswith(stem)] for stem in ("members", "footprints")},
         map_note=map_note(study.dataset),
         tables={
-            "sites": _site_table(site_rows(study.dataset)),
+            "sites": _site_table(study.dataset),
             "left_out": _left_out_table(study.left_out),
             "degrees": _degree_table(study.dataset),
             "inputs": input_table(study.provenance),
@@ -182,7 +185,7 @@ def map_note(dataset: xr.Dataset) -> str:
     worst = int(np.argmax(difference))
     return (
         f"Maps hold values at the centres of cells of one degree. Interpolated to the sites they miss the sites' own "
-        f"numbers by {np.median(difference):.1g} in the median and {difference[worst]:.1g} at most "
+        f"numbers by {np.median(difference):.5f} in the median and {difference[worst]:.5f} at most "
         f"({dataset['site'].values[worst]}): near coasts and loads the sea level bends within a cell. Numbers are "
         "those of the table. Over land nothing is drawn."
     )
@@ -196,8 +199,10 @@ def _stem(name: str) -> str:
     return next(stem for stem in PICTURES if name.startswith(stem))
 
 
-def _site_table(rows: list[Row]) -> Table:
-    head = ("site", "latitude", "longitude", "ratio", "spread", "delay / d", "spread / d", "ratio, same on all land")
+def _site_table(dataset: xr.Dataset) -> Table:
+    rows, air = site_rows(dataset), _air_response(dataset)
+    head = ("site", "latitude", "longitude", "ratio", "spread", "delay / d", "spread / d", "ratio, same on all land",
+            *(["air over land / hPa"] if air else []))  # fmt: skip
     uniform = {row.site: row for row in rows if row.kind == "reference" and row.member == "uniform over land"}
     cells = [
         [
@@ -209,11 +214,25 @@ def _site_table(rows: list[Row]) -> Table:
             f"{round(row.delay_days, 1) + 0.0:.1f}",
             _known(row.delay_spread_days, ".1f"),
             f"{uniform[row.site].amplitude_ratio:.3f}",
+            *([air[row.site]] if air else []),
         ]
         for row in rows
         if row.kind == "mean"
     ]
     return Table("The sites", head, cells)
+
+
+def _air_response(dataset: xr.Dataset) -> dict[str, str]:
+    """Amplitude of the response to the air over land by site; empty where the air is not known."""
+    if "air_load_response" not in dataset:
+        return {}
+    amplitude = np.abs(as_complex(dataset["air_load_response"].values)) / PASCAL_PER_HPA
+    return {str(site): f"{size:.3f}" for site, size in zip(dataset["site"].values, amplitude, strict=True)}
+
+
+def _signed(value: float, digits: int) -> str:
+    rounded = round(value, digits)
+    return f"{rounded:+.{digits}f}" if rounded else f"{0.0:.{digits}f}"
 
 
 def _known(value: float | None, form: str) -> str:
@@ -233,7 +252,7 @@ def _degree_table(dataset: xr.Dataset) -> Table:
     cells = []
     for first in range(0, len(rows), len(degrees)):
         own = rows[first : first + len(degrees)]
-        ratios = [f"{own[-1].amplitude_ratio:.4f}", *(f"{row.ratio_change:+.4f}" for row in own[:-1])]
-        delays = [f"{own[-1].delay_days:.2f}", *(f"{row.delay_change_days:+.2f}" for row in own[:-1])]
+        ratios = [f"{own[-1].amplitude_ratio:.4f}", *(_signed(row.ratio_change, 4) for row in own[:-1])]
+        delays = [f"{own[-1].delay_days:.3f}", *(_signed(row.delay_change_days, 3) for row in own[:-1])]
         cells.append([own[0].site, *ratios, *delays])
     return Table("Convergence with the degree", head, cells)

@@ -108,7 +108,8 @@ would hold besides, had the series been left on.</p>
 {{ figure('fingerprint') }}
 {{ table('fingerprint') }}
 <p class="small">Ratio: amplitude at the site over that of the ocean mean, of the mean over the load members; delay:
-days by which the site peaks later. Spread: standard deviation of the complex ratio over the members.</p>
+days by which the site peaks later. Spread: standard deviation of the complex ratio over the members.
+World maps and the lands each site hears: massfit fingerprint.</p>
 {% if tables.actions %}
 
 <h2 id="records">Everything done to each record</h2>

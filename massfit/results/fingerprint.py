@@ -37,7 +37,7 @@ _LONG_NAMES = {
     "map_spread": "standard deviation of the complex admittance over the members",
     "map_difference": "size of the map interpolated linearly to the site less the admittance of the site",
     "ocean_fraction": "area fraction of ocean",
-    "footprint": "sea level at the site for a mass of 1 kg at the place",
+    "footprint": "sea level at the site for a mass of 1 kg at the place, without rotational feedback",
     "footprint_ratio": "amplitude at the site over the ocean mean if all the water came from the place, smoothed",
     "constant": "sea level at the site for 1 kg of water vapour in the air",
 }

@@ -20,8 +20,9 @@ from massfit.io.fingerprint_folder import FINGERPRINT_TABLE
 from massfit.io.network_file import read_sites_and_loads
 from massfit.network import Network
 from massfit.phasor import as_complex, delay_days
-from massfit.pipeline.fingerprint_study import fingerprint_to_folder, study_fingerprint
+from massfit.pipeline.fingerprint_study import study_fingerprint
 from massfit.pipeline.fingerprints import network_operator
+from massfit.pipeline.save_fingerprint import fingerprint_to_folder
 from massfit.results.fingerprint import FingerprintStudy, compared_degrees, degree_rows, site_rows, unsettled_sites
 from massfit.settings import make_settings
 from massfit.site import Site
