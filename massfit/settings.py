@@ -184,6 +184,57 @@ class Priors:
 
 
 @dataclass(frozen=True, config=_STRICT)
+class Gravity:
+    """`[gravity]`: satellite gravity to compare with, and how its ocean mean is made.
+
+    Parameters
+    ----------
+    fields : tuple of str
+        One or more solutions, each a folder, archive or file of monthly fields.
+    degree_one, low_degree : str, optional
+        Tables of degree one, and of C20 and C30.
+    atmosphere, dealiasing : str, optional
+        Monthly fields of the atmosphere, and of atmosphere and ocean together, as they were taken off.
+    determinations : str, optional
+        CSV of other determinations to set beside.
+    max_degree : int
+        Highest degree used.
+    buffer_km : float
+        Ocean nearer to land is left out.
+    smoothing_km : float
+        Distance at which a Gaussian smoothing falls to one half; 0 for none.
+    c20, c30 : str
+        ``"replaced"`` by `low_degree` where that is given, or the field's ``"own"``.
+    degree_zero : str
+        Global water mass: less the mass of the ``"atmosphere"`` product, less the ``"water-vapour"`` of the
+        fingerprint, or ``"none"``. ``"best"`` takes the first of them that is at hand.
+    restore_dealiasing : bool
+        Whether the dealiasing product is added back.
+    alias_lines : bool
+        Whether alias lines of the tides are fitted where the series is long enough.
+    start, end : datetime.date, optional
+        First and last day; those of the network by default.
+    """
+
+    fields: Annotated[tuple[str, ...], Field(min_length=1, max_length=12)]
+    degree_one: str | None = None
+    low_degree: str | None = None
+    atmosphere: str | None = None
+    dealiasing: str | None = None
+    determinations: str | None = None
+    max_degree: Annotated[int, Field(ge=5, le=180)] = 60
+    buffer_km: Annotated[float, Field(ge=0, le=2000)] = 300.0
+    smoothing_km: Annotated[float, Field(ge=0, le=2000)] = 0.0
+    c20: Literal["replaced", "own"] = "replaced"
+    c30: Literal["replaced", "own"] = "replaced"
+    degree_zero: Literal["best", "atmosphere", "water-vapour", "none"] = "best"
+    restore_dealiasing: bool = False
+    alias_lines: bool = True
+    start: date | None = None
+    end: date | None = None
+
+
+@dataclass(frozen=True, config=_STRICT)
 class Settings:
     """Every choice of one network file; :func:`make_settings` makes it from plain mappings.
 
@@ -199,6 +250,8 @@ class Settings:
         `[posterior]`.
     priors : Priors
         `[priors]`.
+    gravity : Gravity, optional
+        `[gravity]`.
 
     Examples
     --------
@@ -213,6 +266,7 @@ class Settings:
     fingerprint: Fingerprint = Fingerprint()
     posterior: PosteriorSettings = PosteriorSettings()
     priors: Priors = Priors()
+    gravity: Gravity | None = None
 
 
 def make_settings(
@@ -222,6 +276,7 @@ def make_settings(
     fingerprint: Mapping[str, object] | None = None,
     posterior: Mapping[str, object] | None = None,
     priors: Mapping[str, object] | None = None,
+    gravity: Mapping[str, object] | None = None,
 ) -> Settings:
     """Make settings from the sections of a network file, each a mapping of its keys.
 
@@ -232,6 +287,8 @@ def make_settings(
         :class:`massfit.Network` as data, and need not be named.
     fingerprint, posterior, priors : mapping, optional
         Keys of :class:`Fingerprint`, :class:`PosteriorSettings` and :class:`Priors`; all have defaults.
+    gravity : mapping, optional
+        Keys of :class:`Gravity`; without it there is no satellite comparison.
 
     Returns
     -------
@@ -253,7 +310,7 @@ def make_settings(
     (2016, 7, 5.0)
     """
     given = {"frame": network, "corrections": corrections, "fingerprint": fingerprint}
-    given |= {"posterior": posterior, "priors": priors}
+    given |= {"posterior": posterior, "priors": priors, "gravity": gravity}
     document = {name: dict(section) for name, section in given.items() if section is not None}
     try:
         return TypeAdapter(Settings).validate_python(document)

@@ -13,6 +13,7 @@ LAYERS = [
     {"pipeline"},
     {"io", "report", "simulate"},
     {"results"},
+    {"gravity"},
     {"posterior"},
     {"annual"},
     {"corrections"},

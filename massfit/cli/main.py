@@ -145,6 +145,28 @@ def report(results: Path) -> None:
 
 
 @main.command()
+@click.argument("results", type=_FOLDER)
+@click.option("--network", type=_FOLDER, help="Network file with [gravity]  [default: beside RESULTS]")
+@click.option("--outside", is_flag=True, help="Allow paths outside the network's folder.")
+@click.option("--quiet", is_flag=True, help="Print nothing but errors.")
+def compare(results: Path, network: Path | None, outside: bool, quiet: bool) -> None:
+    """Set finished RESULTS beside satellite gravity.
+
+    Reads [gravity] of the network file, makes the satellites' ocean mean with the
+    network's own ocean, years, conventions and fingerprints, and adds the
+    comparison to RESULTS: comparison.nc, estimate.json and the page.
+    """
+    with refusing_politely(), shown_progress(quiet=quiet) as progress:
+        from massfit.pipeline.save import compare_to_folder
+
+        run = compare_to_folder(results, network, outside=outside, progress=progress)
+    from massfit.report.comparison_text import comparison_text
+
+    if not quiet:
+        click.echo(comparison_text(run.summary["comparison"]))
+
+
+@main.command()
 @click.argument("first", type=_FOLDER)
 @click.argument("second", type=_FOLDER)
 @click.option("--json", "as_json", is_flag=True, help="Print JSON.")

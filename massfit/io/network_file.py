@@ -175,6 +175,7 @@ def read_sites_and_loads(path: str | os.PathLike[str], *, outside: bool = False)
 
 def _settings(sections: Sections) -> Settings:
     own = {"frame" if name == "network" else name: value for name, value in sections.settings.items()}
+    own["gravity"] = sections.gravity
     return Settings(**{field.name: own[field.name] for field in fields(Settings)})
 
 

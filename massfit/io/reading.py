@@ -65,12 +65,15 @@ class Reading:
             self.faults.extend(error.faults)
             return None
 
-    def find(self, path: KeyPath, text: str) -> Path | None:
-        """Find the file that the key at `path` names, when it is there and may be opened."""
-        found = self._resolve(path, text)
+    def find(self, path: KeyPath, text: str, *, or_folder: bool = False) -> Path | None:
+        """Find the file (or folder) that the key at `path` names, when it is there and may be opened."""
+        found = self._resolve(path, text, or_folder)
         if found is not None:
-            with found.open("rb") as stream:
-                self.inputs[self.relative(text)] = hashlib.file_digest(stream, "sha256").hexdigest()
+            for each in sorted(found.iterdir()) if found.is_dir() else [found]:
+                if each.is_file():
+                    name = f"{text}/{each.name}" if found.is_dir() else text
+                    with each.open("rb") as stream:
+                        self.inputs[self.relative(name)] = hashlib.file_digest(stream, "sha256").hexdigest()
         return found
 
     def is_there(self, text: str) -> bool:
@@ -81,7 +84,7 @@ class Reading:
         """Give a path of the network file one spelling."""
         return Path(os.path.relpath(self.folder / text, self.folder)).as_posix()
 
-    def _resolve(self, path: KeyPath, text: str) -> Path | None:
+    def _resolve(self, path: KeyPath, text: str, or_folder: bool) -> Path | None:
         if _URL.match(text):
             self.fault(path, f'"{text}" is an address', "Must be a file", "Download it and give its path")
             return None
@@ -98,11 +101,11 @@ class Reading:
                 "Must lie inside it",
                 "Move the file, or allow paths outside (--outside; outside=True)",
             )
-        elif is_folder:
+        elif is_folder and not or_folder:
             self.fault(path, f'"{text}" is a folder', "Must be a file")
-        elif not is_file and found.exists():
+        elif not is_file and not is_folder and found.exists():
             self.fault(path, f'"{text}" is a pipe or a device', "Must be a file", "Give the file itself")
-        elif not is_file:
+        elif not is_file and not is_folder:
             self.fault(path, f'no file "{text}"', "Paths start at the network file's folder", self._suggest(text))
         else:
             return found

@@ -13,6 +13,7 @@ from massfit.io.deployment import DeploymentFile
 from massfit.io.locate import KeyPath
 from massfit.io.reading import Reading, did_you_mean, nearest
 from massfit.io.schema import ALREADY_REDUCED, SECTIONS, SETTINGS, CirculationEntry, NamedModelEntry, SiteEntry
+from massfit.settings import Gravity
 
 _T = TypeVar("_T")
 
@@ -80,6 +81,7 @@ class Sections:
     sites: tuple[SiteTable, ...]
     circulation: tuple[tuple[KeyPath, CirculationEntry], ...]
     named_models: tuple[tuple[KeyPath, NamedModelEntry], ...]
+    gravity: Gravity | None
 
 
 def parse_sections(reading: Reading, *, records: bool = True) -> Sections:
@@ -109,8 +111,7 @@ def parse_sections(reading: Reading, *, records: bool = True) -> Sections:
             _append(named_models, path, parse_table(reading, NamedModelEntry, table, path))
         else:
             _append(circulation, path, parse_table(reading, CirculationEntry, table, path))
-    _gravity(reading)
-    return Sections(settings, sites, tuple(circulation), tuple(named_models))
+    return Sections(settings, sites, tuple(circulation), tuple(named_models), _gravity(reading))
 
 
 def _append(entries: list[tuple[KeyPath, _T]], path: KeyPath, entry: _T | None) -> None:
@@ -208,18 +209,15 @@ def _instant(value: Any) -> Any:
     return datetime.combine(value, time()) if type(value) is date else value
 
 
-def _gravity(reading: Reading) -> None:
+def _gravity(reading: Reading) -> Gravity | None:
     table = reading.document.get("gravity")
     if table is None:
-        return
+        return None
     if not isinstance(table, dict):
         reading.fault(("gravity",), f"the value is {shown(table)}", "Must be one table, [gravity]")
-        return
-    for key, value in table.items():
-        if isinstance(value, dict | list):
-            allowed = "Must be text, a number, a date or a switch"
-            reading.fault(("gravity", key), f"the value is {shown(value)}", allowed)
-    reading.warnings.append("[gravity] is not used by this version: no satellite comparison is made.")
+        return None
+    one = isinstance(table.get("fields"), str)
+    return parse_table(reading, Gravity, table | {"fields": [table["fields"]]} if one else table, ("gravity",))
 
 
 def _note_errors(

@@ -3,11 +3,16 @@
 import dataclasses
 from pathlib import Path
 
+from massfit.errors import Fault, InputError, collect
 from massfit.fingerprint.ocean import OceanFunction
-from massfit.io.network_file import read_network
+from massfit.gravity.inputs import GravityInputs
+from massfit.io.gravity import read_gravity
+from massfit.io.network_file import read_network, read_sites_and_loads
 from massfit.io.partial_folder import PartialFolder, claimed
 from massfit.io.read_results import read_results
 from massfit.io.results_folder import check_output, redraw_results, write_results
+from massfit.network import Network
+from massfit.pipeline.compare import with_comparison
 from massfit.pipeline.estimate import estimate
 from massfit.pipeline.progress import Progress, StageTimes, ignore
 from massfit.report.draw import draw_figures, png
@@ -80,15 +85,34 @@ def estimate_to_folder(
     with claimed(folder) as partial:
         check_output(folder, overwrite=overwrite)
         times("reading", 0, 1)
-        inputs = read_network(network, outside=outside)
+        inputs, gravity = _read(network, outside)
         times("reading", 1, 1)
         result = estimate(
             inputs, progress=times, workers=workers, store=partial, what_if=what_if, surrogates=surrogates
         )
+        run = finished_run(result, command=f"massfit estimate {network}")
+        if gravity is not None:
+            times("satellite comparison", 0, 1)
+            run = with_comparison(run, inputs, gravity)
+            times("satellite comparison", 1, 1)
         times("report", 0, 1)
-        _save(result, partial, command=f"massfit estimate {network}", times=times)
+        _save(run, partial, times=times)
         times("report", 1, 1)
-    return result
+    return dataclasses.replace(result, summary=run.summary)
+
+
+def _read(network: Path, outside: bool) -> tuple[Network, GravityInputs | None]:
+    """Read all that a run needs before anything is computed, with the faults of all of it."""
+    faults: list[Fault] = []
+    inputs: list[Network] = []
+    gravity: list[GravityInputs | None] = []
+    with collect(faults):
+        inputs.append(read_network(network, outside=outside))
+    with collect(faults):
+        gravity.append(read_gravity(network, outside=outside))
+    if faults:
+        raise InputError(dict.fromkeys(faults))
+    return inputs[0], gravity[0]
 
 
 def save_results(result: Estimate, folder: Path, *, overwrite: bool = False) -> None:
@@ -109,7 +133,7 @@ def save_results(result: Estimate, folder: Path, *, overwrite: bool = False) -> 
     check_output(folder, overwrite=overwrite)
     with claimed(folder) as partial:
         check_output(folder, overwrite=overwrite)
-        _save(result, partial, command="massfit.estimate(network) in Python")
+        _save(finished_run(result, command="massfit.estimate(network) in Python"), partial)
 
 
 def report_to_folder(folder: Path) -> FinishedRun:
@@ -137,8 +161,51 @@ def report_to_folder(folder: Path) -> FinishedRun:
     return run
 
 
-def _save(result: Estimate, partial: PartialFolder, *, command: str, times: StageTimes | None = None) -> None:
-    run = finished_run(result, command=command)
+def compare_to_folder(
+    folder: Path, network: Path | None = None, *, outside: bool = False, progress: Progress = ignore
+) -> FinishedRun:
+    """Compare finished results with satellite gravity and add the comparison to their folder.
+
+    Parameters
+    ----------
+    folder : Path
+        The results folder.
+    network : Path, optional
+        The network file that has [gravity]; by default that in the folder the results stand in.
+    outside : bool
+        Allow paths outside the network's folder.
+    progress : callable
+
+    Returns
+    -------
+    FinishedRun
+        With the comparison, as the folder now holds it.
+
+    Raises
+    ------
+    InputError
+        It is no results folder, the network file has no [gravity], or a file it names has a fault; the results are
+        untouched then.
+    """
+    place = network or folder.absolute().parent
+    progress("reading", 0, 1)
+    read_results(folder)
+    gravity = read_gravity(place, outside=outside)
+    if gravity is None:
+        problem, action = "the network file has no [gravity]", "Add the table: docs/network_file.md lists its keys"
+        raise InputError(Fault(str(place), "gravity", problem, "", action))
+    inputs = read_sites_and_loads(place, outside=outside)
+    progress("reading", 1, 1)
+    with claimed(folder) as partial:
+        run = read_results(folder)
+        progress("satellite comparison", 0, 1)
+        run = with_comparison(run, inputs, gravity)
+        progress("satellite comparison", 1, 1)
+        _save(run, partial)
+    return run
+
+
+def _save(run: FinishedRun, partial: PartialFolder, *, times: StageTimes | None = None) -> None:
     pictures = _pictures(run)
     page = report_page(run, pictures)
     if times is not None:

@@ -79,7 +79,7 @@ def test_a_record_outside_the_window_is_dropped_with_a_warning(network_folder: P
     (network_folder / "records/a.csv").write_text("".join(rows[:100]))
     (network_folder / "records/a2.csv").write_text("".join(rows[100:]))
     text = (network_folder / "network.toml").read_text()
-    deployment = text[text.index("  [[site.deployment]]") : text.index("[[site]]\nid = \"B\"")]
+    deployment = text[text.index("  [[site.deployment]]") : text.index('[[site]]\nid = "B"')]
     change(deployment, deployment + deployment.replace("a.csv", "a2.csv"))
     change("reference_year = 2016", "reference_year = 2016\nstart = 2014-05-01")
     network = read_network(network_folder)
@@ -118,11 +118,22 @@ def test_a_model_with_its_own_mean(network_folder: Path, change: Change) -> None
     assert model.ocean_mean.name == "ocean mean of Invented model"
 
 
-def test_gravity_is_noted_as_unused(network_folder: Path, change: Change) -> None:
-    change("[fingerprint]", '[gravity]\nfields = "gravity"\nbuffer_km = 300\n\n[fingerprint]')
-    assert read_network(network_folder).warnings == (
-        "[gravity] is not used by this version: no satellite comparison is made.",
-    )
+def test_gravity_is_a_setting_and_its_files_are_read_elsewhere(network_folder: Path, change: Change) -> None:
+    change("[fingerprint]", '[gravity]\nfields = "gravity"\nbuffer_km = 250\n\n[fingerprint]')
+    settings = read_network(network_folder).settings.gravity
+    assert settings is not None
+    assert settings.fields == ("gravity",)
+    assert settings.buffer_km == 250.0
+
+
+def test_keys_of_gravity_are_checked(network_folder: Path, change: Change) -> None:
+    change("[fingerprint]", '[gravity]\nfield = "gravity"\nbuffer_km = -1\n\n[fingerprint]')
+    with pytest.raises(InputError) as error:
+        read_network(network_folder)
+    text = str(error.value)
+    assert 'gravity.field: unknown key "field"' in text
+    assert 'Did you mean "fields"?' in text
+    assert "gravity.buffer_km: the value is -1" in text
 
 
 def test_the_network_file_is_not_changed_by_reading(network_folder: Path) -> None:

@@ -1,0 +1,1 @@
+"""Satellite gravity: fields of coefficients, the ocean mean they see, and its annual cycle."""

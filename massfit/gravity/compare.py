@@ -1,0 +1,240 @@
+"""Network and satellites side by side: same quantity, same ocean, same years, same conventions."""
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.stats import chi2
+
+from massfit.constants import EARTH_DENSITY, STANDARD_GRAVITY
+from massfit.gravity.annual import ALIAS_DAYS
+from massfit.gravity.at_sites import SitePressure, geocentre_of, satellite_at_sites
+from massfit.gravity.choices import Choice, choice_table
+from massfit.gravity.comparison import Agreement, agreement
+from massfit.gravity.definitions import Definition, redefined
+from massfit.gravity.inputs import Determination, GravityInputs
+from massfit.gravity.satellite import Context, SatelliteMean, satellite_mean, unseen_degrees, vapour_degree_zero
+from massfit.phasor import admittance_matrix, as_complex, as_components
+from massfit.site import Site
+
+GEOCENTRE_ITRF2020 = {"X": (1.23, 0.16, -123.0), "Y": (3.48, 0.15, 153.0), "Z": (2.76, 0.33, -140.0)}
+"""Annual motion of the centre of figure in the centre of mass: amplitude and error, mm, and phase phi of
+A cos(2 pi t - phi), degrees, t in decimal years (Altamimi et al. 2023, ITRF2020). It holds the loads of air and of the
+ocean's circulation too."""
+
+
+@dataclass(frozen=True, eq=False)
+class NetworkAnswer:
+    """What the recorders say.
+
+    Parameters
+    ----------
+    phasor : complex
+        Of the whole-ocean mean, Pa.
+    covariance : (2, 2) array
+        Pa2.
+    sites : sequence of Site
+    site_phasors : (n_site,) array of complex
+        Mean over the ocean models, less the known response to air over land, Pa; NaN where there is none.
+    site_covariances : (n_site, 2, 2) array
+    admittance : (K, n_site) array of complex
+        F of each load member.
+    parts : mapping of str to (str, complex)
+        Of :func:`massfit.gravity.definitions.redefined`.
+    """
+
+    phasor: complex
+    covariance: NDArray[np.float64]
+    sites: Sequence[Site]
+    site_phasors: NDArray[np.complex128]
+    site_covariances: NDArray[np.float64]
+    admittance: NDArray[np.complex128]
+    parts: Mapping[str, tuple[str, complex]]
+
+
+@dataclass(frozen=True)
+class SiteComparison:
+    """Recorder and satellites at one site.
+
+    Parameters
+    ----------
+    site : str
+    recorder : complex
+        Pa.
+    satellite : complex
+        Brought to the point by the load members, Pa.
+    chi_square, probability : float
+        Of the difference, with 2 degrees of freedom.
+    """
+
+    site: str
+    recorder: complex
+    satellite: complex
+    chi_square: float
+    probability: float
+
+
+@dataclass(frozen=True, eq=False)
+class GravityComparison:
+    """Everything a comparison with satellite gravity makes.
+
+    Parameters
+    ----------
+    solutions : tuple of SatelliteMean
+    satellite : Determination
+        Mean over the solutions, with the spread between them.
+    network : Determination
+    agreement : Agreement
+        Network less satellites.
+    others : tuple of (Determination, Agreement)
+        The analyst's other determinations, and network less each.
+    choices : tuple of Choice
+        Of the first solution.
+    sites : tuple of SiteComparison
+    geocentre : mapping of str to complex
+        X, Y, Z of the centre of figure in the centre of mass that the water of the answer implies, m.
+    definitions : tuple of Definition
+    warnings : tuple of str
+    """
+
+    solutions: tuple[SatelliteMean, ...]
+    satellite: Determination
+    network: Determination
+    agreement: Agreement
+    others: tuple[tuple[Determination, Agreement], ...]
+    choices: tuple[Choice, ...]
+    sites: tuple[SiteComparison, ...]
+    geocentre: Mapping[str, complex]
+    definitions: tuple[Definition, ...]
+    warnings: tuple[str, ...]
+
+
+def compare_with_gravity(inputs: GravityInputs, answer: NetworkAnswer, context: Context) -> GravityComparison:
+    """Compare the recorders' answer with satellite gravity.
+
+    Parameters
+    ----------
+    inputs : GravityInputs
+    answer : NetworkAnswer
+    context : Context
+
+    Returns
+    -------
+    GravityComparison
+
+    Raises
+    ------
+    InputError
+        Fields that do not fit the settings, or too few months.
+    """
+    solutions = tuple(satellite_mean(inputs, solution, context) for solution in inputs.solutions)
+    satellite = together(solutions)
+    network = Determination("network", "sea-floor pressure recorders", answer.phasor, answer.covariance)
+    return GravityComparison(
+        solutions,
+        satellite,
+        network,
+        _agree(network, satellite),
+        tuple((each, _agree(network, each)) for each in inputs.determinations),
+        choice_table(inputs, inputs.solutions[0], context),
+        _sites(inputs, solutions[0], answer, context),
+        implied_geocentre(answer.phasor, context),
+        redefined(answer.phasor, answer.parts),
+        (*inputs.warnings, *_warnings(inputs, solutions, context)),
+    )
+
+
+def together(solutions: Sequence[SatelliteMean]) -> Determination:
+    """Put the solutions together: their mean, the mean of their covariances and the spread between them.
+
+    Parameters
+    ----------
+    solutions : sequence of SatelliteMean
+
+    Returns
+    -------
+    Determination
+        The covariances are averaged, not reduced by the count: the solutions share the satellites.
+    """
+    phasors = as_components(np.array([each.phasor for each in solutions]))
+    centre = phasors.mean(axis=0)
+    covariance = np.mean([each.covariance for each in solutions], axis=0)
+    count = len(solutions)
+    if count > 1:
+        departures = phasors - centre
+        covariance = covariance + departures.T @ departures / count * (count + 1.0) / (count - 1.0)
+    names = ", ".join(each.name for each in solutions)
+    return Determination("satellite gravity", names, complex(as_complex(centre)), covariance)
+
+
+def implied_geocentre(phasor: complex, context: Context) -> dict[str, complex]:
+    """Annual motion of the geocentre that the water of an answer implies, mean over the load members.
+
+    Parameters
+    ----------
+    phasor : complex
+        Of the whole-ocean mean, Pa.
+    context : Context
+
+    Returns
+    -------
+    dict of str to complex
+        X, Y, Z, m, in the phase convention of the phasor. The load of air is not in it.
+    """
+    total = context.predicted.total
+    degree_one = np.stack([total[:, 0, 1, 1], total[:, 1, 1, 1], total[:, 0, 1, 0]], axis=-1)
+    per_water = (degree_one / context.predicted.ocean_mean[:, None]).mean(axis=0)
+    layer = phasor / STANDARD_GRAVITY * per_water
+    motion = geocentre_of(layer, float(context.love.k[1]), EARTH_DENSITY)
+    return {axis: complex(value) for axis, value in zip("XYZ", motion, strict=True)}
+
+
+def _agree(first: Determination, second: Determination) -> Agreement:
+    return agreement(first.phasor, first.covariance, second.phasor, second.covariance)
+
+
+def _sites(
+    inputs: GravityInputs, solution: SatelliteMean, answer: NetworkAnswer, context: Context
+) -> tuple[SiteComparison, ...]:
+    if not answer.sites:
+        return ()
+    found = satellite_at_sites(
+        solution.monthly,
+        answer.sites,
+        context.predicted,
+        answer.admittance,
+        smoothing_km=inputs.settings.smoothing_km,
+        reference_year=context.reference_year,
+        alias_days=ALIAS_DAYS if inputs.settings.alias_lines else (),
+        added=vapour_degree_zero(inputs, context),
+        blind=unseen_degrees(inputs),
+    )
+    rows = zip(found, answer.site_phasors, answer.site_covariances, strict=True)
+    return tuple(_site(each, complex(phasor), covariance) for each, phasor, covariance in rows)
+
+
+def _site(satellite: SitePressure, recorder: complex, covariance: NDArray[np.float64]) -> SiteComparison:
+    turn = admittance_matrix(complex(satellite.factors.mean()))
+    both = covariance + turn @ satellite.covariance @ turn.T
+    step = as_components(recorder - satellite.phasor)
+    chi_square = float(step @ np.linalg.solve(both, step)) if np.all(np.isfinite([*step, *both.ravel()])) else np.nan
+    return SiteComparison(satellite.site, recorder, satellite.phasor, chi_square, float(chi2.sf(chi_square, df=2)))
+
+
+def _warnings(inputs: GravityInputs, solutions: Sequence[SatelliteMean], context: Context) -> list[str]:
+    found = []
+    if len(solutions) == 1:
+        found.append("One solution only: the disagreement between centres is not in the error of the satellites.")
+    if inputs.degree_one is None:
+        found.append(
+            "No table of degree 1: what the satellites cannot see, about a fifth, is filled by the load members."
+        )
+    if len(context.predicted.members) == 1:
+        found.append("One load member only: the error of the conversion to the whole ocean is not seen.")
+    if any(field.filtered for solution in inputs.solutions for field in solution.fields):
+        found.append(
+            "The fields were filtered by their makers, with a filter that is not at hand: the kernel of the load "
+            "members does not hold it, and the conversion to the whole ocean is not exact."
+        )
+    return found

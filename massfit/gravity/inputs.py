@@ -1,0 +1,75 @@
+"""What the analyst gives of satellite gravity, in memory."""
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from massfit.gravity.field import GravityField
+from massfit.gravity.tables import CoefficientTable
+from massfit.settings import Gravity
+
+
+@dataclass(frozen=True)
+class Determination:
+    """Another determination of the annual cycle of ocean mass, as the analyst found it.
+
+    Parameters
+    ----------
+    label, method : str
+    phasor : complex
+        Pa, in the network's phase convention.
+    covariance : (2, 2) array
+        Of (in phase, quadrature), Pa2.
+    """
+
+    label: str
+    method: str
+    phasor: complex
+    covariance: NDArray[np.float64]
+
+
+@dataclass(frozen=True)
+class Solution:
+    """The monthly fields of one centre.
+
+    Parameters
+    ----------
+    name : str
+    fields : tuple of GravityField
+    """
+
+    name: str
+    fields: tuple[GravityField, ...]
+
+
+@dataclass(frozen=True)
+class GravityInputs:
+    """Everything of `[gravity]`, read.
+
+    Parameters
+    ----------
+    settings : Gravity
+    solutions : tuple of Solution
+    degree_one, low_degree : CoefficientTable, optional
+    atmosphere, dealiasing : tuple of GravityField
+        Monthly products; empty where not given.
+    determinations : tuple of Determination
+    assimilating_models : tuple of str
+        Ocean models of the network that assimilated satellite gravity.
+    inputs : mapping of str to str
+        SHA-256 of every file read.
+    warnings : tuple of str
+    """
+
+    settings: Gravity
+    solutions: tuple[Solution, ...]
+    degree_one: CoefficientTable | None = None
+    low_degree: CoefficientTable | None = None
+    atmosphere: tuple[GravityField, ...] = ()
+    dealiasing: tuple[GravityField, ...] = ()
+    determinations: tuple[Determination, ...] = ()
+    assimilating_models: tuple[str, ...] = ()
+    inputs: Mapping[str, str] = field(default_factory=dict)
+    warnings: tuple[str, ...] = ()

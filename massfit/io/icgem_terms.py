@@ -1,0 +1,125 @@
+"""Rows of an ICGEM file that change with time, gathered into models about one epoch."""
+
+from itertools import pairwise
+from typing import NamedTuple
+
+import numpy as np
+from numpy.typing import NDArray
+
+from massfit.errors import Fault, InputError
+from massfit.gravity.field import GravityField, GravityModel, Periodic, Span
+
+_DAYS_A_YEAR = 365.25
+
+
+class Term(NamedTuple):
+    """One row: key, place, the two coefficients, the numbers after the errors, and its line."""
+
+    key: str
+    degree: int
+    order: int
+    cosine: float
+    sine: float
+    tail: tuple[float, ...]
+    line: int
+
+
+def models_of(field: GravityField, terms: list[Term]) -> tuple[GravityModel, ...]:
+    """Gather time-dependent rows into models.
+
+    Parameters
+    ----------
+    field : GravityField
+        The constant rows.
+    terms : list of Term
+        Rows ``gfct``, ``trnd`` (``dot``), ``acos`` and ``asin``. In format 1.0 an epoch follows each ``gfct`` and a
+        period (years) each periodic row; in 2.0 the start and the end of the stretch they hold for come first, and
+        the start is the epoch.
+
+    Returns
+    -------
+    tuple of GravityModel
+        One for every stretch between the dates that the rows name, in order of time; a single one without a
+        span in format 1.0.
+
+    Raises
+    ------
+    InputError
+        Dates that are none, or rows of a coefficient that has no ``gfct`` row.
+    """
+    epochs = _epochs(field, terms)
+    dates = sorted({date for start, end in epochs.values() for date in (start, end) if date is not None})
+    timed = any(end is not None for _, end in epochs.values())
+    stretches = list(pairwise(dates)) if timed else [(dates[0], None)]
+    return tuple(_model(field, terms, epochs, start, end) for start, end in stretches)
+
+
+_Stretch = tuple[np.datetime64, np.datetime64 | None]
+
+
+def _epochs(field: GravityField, terms: list[Term]) -> dict[int, _Stretch]:
+    """Epoch and end of each row, by its line; rows of format 1.0 take the epoch of their coefficient."""
+    faults: list[Fault] = []
+    found: dict[int, _Stretch] = {}
+    of_coefficient: dict[tuple[int, int], np.datetime64] = {}
+    for term in sorted(terms, key=lambda each: each.key != "gfct"):
+        second = len(term.tail) >= 2
+        dates = [_date(value) for value in (term.tail[:2] if second else term.tail[: int(term.key == "gfct")])]
+        if any(date is None for date in dates) or (second and dates[0] is not None and not dates[0] < dates[1]):  # type: ignore[operator]
+            problem = f"the dates are {', '.join(f'{value:.10g}' for value in term.tail[:2])}"
+            faults.append(
+                Fault(field.source, term.key, problem, "Must be yyyymmdd or yyyymmdd.hhmm, in order", "", term.line)
+            )
+        elif second:
+            found[term.line] = dates[0], dates[1]  # type: ignore[assignment]
+        elif term.key == "gfct":
+            of_coefficient[term.degree, term.order] = dates[0]  # type: ignore[assignment]
+            found[term.line] = dates[0], None  # type: ignore[assignment]
+        elif (term.degree, term.order) in of_coefficient:
+            found[term.line] = of_coefficient[term.degree, term.order], None
+        else:
+            problem = f"degree {term.degree} order {term.order} has no gfct row"
+            faults.append(Fault(field.source, term.key, problem, "Must have one, for its epoch", "", term.line))
+    if faults:
+        raise InputError(faults)
+    return found
+
+
+def _date(value: float) -> np.datetime64 | None:
+    text = f"{value:013.4f}"
+    try:
+        return np.datetime64(f"{text[:4]}-{text[4:6]}-{text[6:8]}T{text[9:11]}:{text[11:13]}", "s")
+    except ValueError:
+        return None
+
+
+def _model(
+    field: GravityField,
+    terms: list[Term],
+    epochs: dict[int, _Stretch],
+    start: np.datetime64,
+    end: np.datetime64 | None,
+) -> GravityModel:
+    coefficients, trend = field.coefficients.copy(), np.zeros_like(field.coefficients)
+    periodic: dict[float, NDArray[np.complex128]] = {}
+    for term in terms:
+        first, last = epochs[term.line]
+        if end is not None and last is not None and not (first <= start and end <= last):
+            continue
+        at = np.array([term.cosine, term.sine])
+        years = float((start - first) / np.timedelta64(1, "s")) / (86400 * _DAYS_A_YEAR)
+        if term.key == "gfct":
+            coefficients[:, term.degree, term.order] += at
+        elif term.key in ("trnd", "dot"):
+            trend[:, term.degree, term.order] += at
+            coefficients[:, term.degree, term.order] += at * years  # from the row's own epoch to the model's
+        else:
+            period = term.tail[-1]
+            # a cos + b sin is the real part of (a - i b) exp(i phase): turned from the row's epoch to the model's
+            turned = at * (1.0 if term.key == "acos" else -1j) * np.exp(2j * np.pi * years / period)
+            sum_ = periodic.setdefault(period, np.zeros(field.coefficients.shape, dtype=complex))
+            sum_[:, term.degree, term.order] += turned
+    span = None if end is None else Span(start, end)
+    there = GravityField(field.name, coefficients, field.conventions, span, field.sd, field.product, field.source)
+    pairs = tuple(Periodic(period, each.real, -each.imag) for period, each in sorted(periodic.items()))
+    return GravityModel(there, start, trend, pairs)

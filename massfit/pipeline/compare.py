@@ -1,0 +1,178 @@
+"""Compare a finished run with satellite gravity."""
+
+from collections.abc import Mapping, Sequence
+from datetime import date, timedelta
+from typing import Any
+
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from massfit.constants import PASCAL_PER_HPA, STANDARD_GRAVITY
+from massfit.earth.love import love_numbers
+from massfit.errors import Fault, InputError
+from massfit.fingerprint.ocean import OceanFunction
+from massfit.gravity.compare import GravityComparison, NetworkAnswer, compare_with_gravity
+from massfit.gravity.field import Span
+from massfit.gravity.inputs import GravityInputs
+from massfit.gravity.predicted import predicted_mass
+from massfit.gravity.satellite import Context
+from massfit.network import Network
+from massfit.phasor import as_complex
+from massfit.pipeline.fingerprints import network_operator, network_vapour
+from massfit.results.comparison import comparison_dataset, comparison_summary
+from massfit.results.finished import FinishedRun
+
+_PARTS = {
+    "ocean_mean_atmosphere": ("ocean-mean air pressure", "water of the ocean and the air above it"),
+    "long_period_tides": ("long-period tides", "water, with the long-period tides at the recorders left in"),
+    "pole_tide": ("pole tide", "water, with the pole tide at the recorders left in"),
+}
+"""Corrections that other determinations leave in: what they are called, and what the cycle is then of."""
+
+
+def compare_gravity(run: FinishedRun, network: Network, gravity: GravityInputs) -> GravityComparison:
+    """Set a network's answer beside satellite gravity: same quantity, ocean, years and conventions.
+
+    Parameters
+    ----------
+    run : FinishedRun
+        From `massfit.read_results`, or of a run just made.
+    network : Network
+        Its settings, sites and loads; the records are not needed.
+    gravity : GravityInputs
+        From `massfit.read_gravity`.
+
+    Returns
+    -------
+    GravityComparison
+
+    Raises
+    ------
+    InputError
+        Fields that do not fit the settings, an ocean model of the run that assimilated satellite gravity,
+        or too few months.
+    """
+    _refuse_assimilated(network, gravity)
+    settings, chosen = network.settings, gravity.settings
+    ocean = OceanFunction.builtin()
+    degree = max(settings.fingerprint.max_degree, chosen.max_degree)
+    operator = network_operator(network, ocean, max_degree=degree)
+    vapour = network_vapour(network)
+    context = Context(
+        ocean,
+        love_numbers(network.earth, max_degree=degree),
+        predicted_mass(operator, network.loads, water_vapour=vapour, max_degree=chosen.max_degree),
+        vapour,
+        comparison_window(run, gravity),
+        settings.frame.reference_year,
+    )
+    return compare_with_gravity(gravity, network_answer(run, network, vapour, ocean.area_m2), context)
+
+
+def with_comparison(run: FinishedRun, network: Network, gravity: GravityInputs) -> FinishedRun:
+    """Add a comparison with satellite gravity to a finished run.
+
+    Parameters
+    ----------
+    run, network, gravity
+        As for :func:`compare_gravity`.
+
+    Returns
+    -------
+    FinishedRun
+        With `comparison` in its summary, `comparison.nc` among its Datasets and the gravity files among its inputs.
+    """
+    found = compare_gravity(run, network, gravity)
+    area = float(run.summary["ocean_area_m2"])
+    summary = comparison_summary(found, reference_year=run.summary["reference_year"], ocean_area_m2=area)
+    return FinishedRun(
+        {**run.summary, "comparison": summary},
+        {**run.provenance, "inputs": {**run.provenance["inputs"], **gravity.inputs}},
+        {**run.datasets, "comparison.nc": comparison_dataset(found, run.summary)},
+    )
+
+
+def comparison_window(run: FinishedRun, gravity: GravityInputs) -> Span:
+    """Years of the comparison: those stated, else the period that the answer is the mean of.
+
+    Parameters
+    ----------
+    run : FinishedRun
+    gravity : GravityInputs
+
+    Returns
+    -------
+    Span
+    """
+    first, last = (date.fromisoformat(str(day)[:10]) for day in run.summary["period"])
+    start, end = gravity.settings.start or first, gravity.settings.end or last
+    if not start < end:
+        problem = f"the window runs from {start} to {end}"
+        raise InputError(Fault("[gravity]", "start", problem, "Must begin before it ends", "Correct start and end"))
+    return Span(np.datetime64(start, "s"), np.datetime64(end + timedelta(days=1), "s"))
+
+
+def network_answer(run: FinishedRun, network: Network, vapour: complex, ocean_area_m2: float) -> NetworkAnswer:
+    """Take from a run what is compared.
+
+    Parameters
+    ----------
+    run : FinishedRun
+    network : Network
+    vapour : complex
+        Annual phasor of the mass of water vapour in the air, kg.
+    ocean_area_m2 : float
+
+    Returns
+    -------
+    NetworkAnswer
+        Sites without a phasor are left out.
+    """
+    summary = run.summary
+    mean = complex(summary["in_phase_hpa"]["mean"], summary["quadrature_hpa"]["mean"])
+    rows = {site["id"]: site for site in summary["sites"]}
+    sites = [site for site in network.sites if site.id in rows]
+    fingerprints = run.datasets["fingerprints.nc"].sel(site=[site.id for site in sites])
+    phasors = PASCAL_PER_HPA * np.array([rows[site.id]["phasor_hpa"] for site in sites])
+    if "air_load_response" in fingerprints:
+        phasors = phasors - fingerprints["air_load_response"].values
+    return NetworkAnswer(
+        PASCAL_PER_HPA * mean,
+        PASCAL_PER_HPA**2 * np.array(summary["covariance_hpa2"]),
+        sites,
+        as_complex(phasors),
+        PASCAL_PER_HPA**2 * np.array([rows[site.id]["phasor_covariance_hpa2"] for site in sites]),
+        _admittance(fingerprints),
+        _parts(summary["sites"], vapour, ocean_area_m2),
+    )
+
+
+def _admittance(fingerprints: xr.Dataset) -> NDArray[np.complex128]:
+    return as_complex(fingerprints["admittance"].transpose("member", "site", "component").values)
+
+
+def _parts(sites: Sequence[Mapping[str, Any]], vapour: complex, ocean_area_m2: float) -> dict[str, tuple[str, complex]]:
+    """Phasors that other definitions leave in, Pa: means over the sites of what was taken off there."""
+    found = {}
+    for series, (name, text) in _PARTS.items():
+        values = [
+            complex(*correction["phasor_hpa"])
+            for site in sites
+            for correction in site.get("corrections", ())
+            if correction["series"] == series and correction["phasor_hpa"] is not None
+        ]
+        if values and any(values):
+            found[name] = text, PASCAL_PER_HPA * complex(np.mean(values))
+    if vapour:
+        text = "water that the ocean exchanges with the land alone, not with the vapour in the air"
+        found["its share of the vapour put back"] = text, STANDARD_GRAVITY * vapour / ocean_area_m2
+    return found
+
+
+def _refuse_assimilated(network: Network, gravity: GravityInputs) -> None:
+    own = [model.name for model in network.circulation if model.assimilates_satellite_gravity]
+    names = list(dict.fromkeys([*own, *gravity.assimilating_models]))
+    if names:
+        problem = f"{', '.join(names)} assimilated satellite gravity: the comparison would be with itself"
+        raise InputError(Fault(network.source, "circulation", problem, "Independent models only", "Leave it out"))

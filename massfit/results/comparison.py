@@ -1,0 +1,227 @@
+"""A comparison with satellite gravity as what `estimate.json` and `comparison.nc` hold."""
+
+from collections.abc import Mapping, Sequence
+from typing import Any
+
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from massfit.constants import PASCAL_PER_HPA, STANDARD_GRAVITY, TROPICAL_YEAR_DAYS
+from massfit.gravity.compare import GEOCENTRE_ITRF2020, GravityComparison
+from massfit.gravity.comparison import Agreement
+from massfit.gravity.definitions import in_units
+from massfit.gravity.inputs import Determination
+from massfit.phasor import COMPONENTS, as_components, peak_date, peak_days
+
+_MM = 1000.0
+
+
+def comparison_summary(found: GravityComparison, *, reference_year: int, ocean_area_m2: float) -> dict[str, Any]:
+    """Give the content of `comparison` in `estimate.json`.
+
+    Parameters
+    ----------
+    found : GravityComparison
+    reference_year : int
+    ocean_area_m2 : float
+
+    Returns
+    -------
+    dict
+    """
+    return {
+        "network": _determination(found.network, reference_year),
+        "satellite": _determination(found.satellite, reference_year),
+        "difference": _agreement(found.agreement, reference_year),
+        "solutions": [
+            {
+                "name": each.name,
+                **_phasor(each.phasor),
+                "covariance_hpa2": _hpa2(each.covariance),
+                "kernel": _phasor(each.kernel_phasor),
+                "kernel_covariance_hpa2": _hpa2(each.kernel_covariance),
+                "whole_ocean_factor": [abs(complex(each.factors.mean())), _spread(np.abs(each.factors))],
+                "land_leakage": abs(complex(each.leakage.mean())),
+                "months": each.fit.months,
+                "lines": list(each.fit.lines),
+                "red_share": each.fit.red_share,
+                "memory_days": each.fit.memory_days,
+                "actions": list(each.actions),
+                "left_out": list(each.monthly.left_out),
+            }
+            for each in found.solutions
+        ],
+        "others": [
+            {**_determination(other, reference_year), "difference": _agreement(apart, reference_year)}
+            for other, apart in found.others
+        ],
+        "choices": [
+            {
+                "name": each.name,
+                "kernel": None if each.kernel_phasor is None else _phasor(each.kernel_phasor),
+                "whole_ocean": None if each.phasor is None else _phasor(each.phasor),
+                "problem": each.problem,
+            }
+            for each in found.choices
+        ],
+        "sites": [
+            {
+                "id": each.site,
+                "recorder": _phasor(each.recorder) if np.isfinite(each.recorder) else None,
+                "satellite": _phasor(each.satellite),
+                "chi_square": _finite(each.chi_square),
+                "probability": _finite(each.probability),
+            }
+            for each in found.sites
+        ],
+        "geocentre_mm": {axis: _geocentre(axis, value) for axis, value in found.geocentre.items()},
+        "definitions": [
+            {"name": each.name, "quantity": each.quantity, **in_units(each.phasor, ocean_area_m2)}
+            for each in found.definitions
+        ],
+        "warnings": list(found.warnings),
+    }
+
+
+def comparison_dataset(found: GravityComparison, summary: Mapping[str, Any]) -> xr.Dataset:
+    """Give the content of `comparison.nc`.
+
+    Parameters
+    ----------
+    found : GravityComparison
+    summary : mapping
+        Of the run, for its network, conventions and reference year.
+
+    Returns
+    -------
+    xarray.Dataset
+        Determinations, choices and sites as phasors (Pa), the monthly series of every solution (kg m-2), end to end.
+    """
+    every = [found.network, found.satellite, *(other for other, _ in found.others)]
+    lengths = [each.series.size for each in found.solutions]
+    middles = [span.middle for each in found.solutions for span in each.monthly.spans]
+    pascal = {"units": "Pa"}
+    choices = [each for each in found.choices if each.phasor is not None]
+    return xr.Dataset(
+        {
+            "phasor": (("determination", "component"), _stack([each.phasor for each in every]), pascal),
+            "covariance": (
+                ("determination", "component", "component2"),
+                np.array([each.covariance for each in every]),
+                {"units": "Pa2"},
+            ),
+            "choice_phasor": (("choice", "component"), _stack([each.phasor for each in choices]), pascal),
+            "choice_kernel_phasor": (("choice", "component"), _stack([each.kernel_phasor for each in choices]), pascal),
+            "recorder_phasor": (("site", "component"), _stack([each.recorder for each in found.sites]), pascal),
+            "satellite_phasor": (("site", "component"), _stack([each.satellite for each in found.sites]), pascal),
+            "solution_phasor": (("solution", "component"), _stack([each.phasor for each in found.solutions]), pascal),
+            "kernel_phasor": (
+                ("solution", "component"),
+                _stack([each.kernel_phasor for each in found.solutions]),
+                pascal,
+            ),
+            "ocean_mean": (
+                ("obs",),
+                np.concatenate([each.series for each in found.solutions]),
+                {"units": "kg m-2", "long_name": "kernel mean of each month, less the mean of all"},
+            ),
+            "row_size": (("solution",), np.array(lengths, dtype=np.int32), {"units": "1", "sample_dimension": "obs"}),
+            "geocentre": (
+                ("axis", "component"),
+                _stack(list(found.geocentre.values())),
+                {"units": "m", "long_name": "centre of figure in the centre of mass that the water implies"},
+            ),
+        },
+        coords={
+            "determination": [each.label for each in every],
+            "choice": [each.name for each in choices],
+            "site": [each.site for each in found.sites],
+            "solution": [each.name for each in found.solutions],
+            "axis": list(found.geocentre),
+            "component": list(COMPONENTS),
+            "time": (("obs",), np.array(middles, dtype="datetime64[ns]"), {"long_name": "middle of the month, UTC"}),
+        },
+        attrs={
+            "Conventions": "CF-1.13, ACDD-1.3",
+            "title": f"{summary['network']}: comparison with satellite gravity",
+            "summary": " ".join(action for each in found.solutions for action in each.actions),
+            "phase_reference": f"1 January {summary['reference_year']} 00:00 UTC",
+            "comment": "; ".join(found.warnings),
+        },
+    )
+
+
+def _stack(phasors: Sequence[complex | None]) -> NDArray[np.float64]:
+    return as_components(np.array(phasors, dtype=complex)).reshape(-1, 2)
+
+
+def _hpa2(covariance: NDArray[np.float64]) -> list[list[float]]:
+    return [[float(value) for value in row] for row in covariance / PASCAL_PER_HPA**2]
+
+
+def _phasor(phasor: complex) -> dict[str, Any]:
+    return {
+        "in_phase_hpa": phasor.real / PASCAL_PER_HPA,
+        "quadrature_hpa": phasor.imag / PASCAL_PER_HPA,
+        "amplitude_hpa": abs(phasor) / PASCAL_PER_HPA,
+        "water_mm": _MM * abs(phasor) / STANDARD_GRAVITY / _MM,
+        "peak_day": float(peak_days(phasor)),
+    }
+
+
+def _determination(each: Determination, reference_year: int) -> dict[str, Any]:
+    along = as_components(each.phasor / abs(each.phasor))
+    across = np.array([-along[1], along[0]])
+    radial, turned = (float(np.sqrt(axis @ each.covariance @ axis)) for axis in (along, across))
+    return {
+        "label": each.label,
+        "method": each.method,
+        **_phasor(each.phasor),
+        "amplitude_sd_hpa": radial / PASCAL_PER_HPA,
+        "peak_day_sd": turned / abs(each.phasor) * TROPICAL_YEAR_DAYS / (2.0 * np.pi),
+        "peak_date": peak_date(float(peak_days(each.phasor)), reference_year),
+        "covariance_hpa2": _hpa2(each.covariance),
+    }
+
+
+def _agreement(apart: Agreement, reference_year: int) -> dict[str, Any]:
+    joint = None
+    if apart.joint_phasor is not None and apart.joint_covariance is not None:
+        joint = _determination(
+            Determination("joint", "weighted by the inverse covariances", apart.joint_phasor, apart.joint_covariance),
+            reference_year,
+        )
+    return {
+        "in_phase_hpa": apart.difference.real / PASCAL_PER_HPA,
+        "quadrature_hpa": apart.difference.imag / PASCAL_PER_HPA,
+        "covariance_hpa2": _hpa2(apart.covariance),
+        "chi_square": apart.chi_square,
+        "degrees_of_freedom": 2,
+        "probability": apart.probability,
+        "compatible": apart.compatible,
+        "amplitude_hpa": apart.amplitude_difference / PASCAL_PER_HPA,
+        "amplitude_sd_hpa": apart.amplitude_difference_sd / PASCAL_PER_HPA,
+        "days": apart.day_difference,
+        "days_sd": apart.day_difference_sd,
+        "joint": joint,
+    }
+
+
+def _geocentre(axis: str, value: complex) -> dict[str, float]:
+    amplitude, error, phase = GEOCENTRE_ITRF2020[axis]
+    return {
+        "amplitude": _MM * abs(value),
+        "peak_day": float(peak_days(value)),
+        "itrf2020_amplitude": amplitude,
+        "itrf2020_sd": error,
+        "itrf2020_peak_day": float(phase / 360.0 * TROPICAL_YEAR_DAYS % TROPICAL_YEAR_DAYS),
+    }
+
+
+def _spread(values: NDArray[np.float64]) -> float:
+    return float(np.std(values, ddof=1)) if values.size > 1 else 0.0
+
+
+def _finite(value: float) -> float | None:
+    return value if np.isfinite(value) else None
