@@ -12,6 +12,8 @@ from massfit.errors import Fault, InputError
 from massfit.fingerprint.grid import CellGrid
 from massfit.tables.ocean_fraction import REFERENCE, read_ocean_fraction
 
+_ROUNDING = 1e-12  # of averages that were made elsewhere
+
 
 @dataclass(frozen=True, eq=False, repr=False)
 class OceanFunction(Described):
@@ -53,7 +55,8 @@ class OceanFunction(Described):
         if self.fraction.shape != self.cells.shape:
             problem = f"fractions have the shape {self.fraction.shape}"
             raise InputError(Fault("ocean function", "fraction", problem, f"Must be {self.cells.shape}"))
-        if not (np.all(self.fraction >= 0.0) and np.all(self.fraction <= 1.0) and np.any(self.fraction > 0.0)):
+        inside = np.all((self.fraction >= -_ROUNDING) & (self.fraction <= 1.0 + _ROUNDING))
+        if not (inside and np.any(self.fraction > 0.0)):
             problem = f"fractions run from {np.min(self.fraction)} to {np.max(self.fraction)}"
             raise InputError(Fault("ocean function", "fraction", problem, "Must be within [0, 1], with some ocean"))
 

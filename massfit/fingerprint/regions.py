@@ -26,6 +26,8 @@ REGION_NAMES = tuple(region.name for region in REGIONS)
 MOST_MEMBERS = 100
 """Perturbed members that may be asked for; each has a posterior of its own."""
 
+_PLACE = "perturbed loads"
+_MOST_VALUES = 2**25  # of all perturbed members together: half a gigabyte
 _BLOCK_CELLS = 20_000  # looked at together: 35 weights each
 
 
@@ -49,12 +51,12 @@ def perturbed_loads(
     Returns
     -------
     tuple of LoadPattern
-        On the grids of their bases. Members do not change when more are made.
+        On the grids of their bases. But for rounding, members do not change when more are made.
 
     Raises
     ------
     InputError
-        No base, a count outside 1 to 100, or a spread below zero.
+        No base, a count outside 1 to 100, a spread below zero, or more than half a gigabyte of members.
 
     Examples
     --------
@@ -63,19 +65,35 @@ def perturbed_loads(
     >>> [member.name for member in made]
     ['perturbed 1 of nominal', 'perturbed 2 of nominal']
     """
-    if faults := _perturbation_faults(len(bases), count, amplitude_sd, delay_sd_days):
+    faults = _perturbation_faults(len(bases), count, amplitude_sd, delay_sd_days)
+    largest = max((base.values.size for base in bases), default=0)
+    if count * largest > _MOST_VALUES:
+        problem = f"{count} members of {largest} cells take {16e-9 * count * largest:.1f} GB"
+        action = "Ask for fewer, or give the loads on a coarser grid"
+        faults.append(Fault(_PLACE, "count", problem, f"Must be at most {16e-9 * _MOST_VALUES:.1f} GB", action))
+    if faults:
         raise InputError(faults)
-    members = []
-    for number in range(count):
-        base = bases[number % len(bases)]
-        rng = np.random.default_rng([seed, number])
-        factors = _factors(rng, 1, amplitude_sd, delay_sd_days)
-        values = np.empty(base.values.shape, dtype=complex)
-        for rows, shares in _shares(base.latitude_deg, base.longitude_deg):
-            values[rows] = base.values[rows] * np.tensordot(factors[0], shares, 1)
-        name = f"perturbed {number + 1} of {base.name}"
-        members.append(LoadPattern(name, base.latitude_deg, base.longitude_deg, values, base.reference))
-    return tuple(members)
+    factors = np.concatenate(
+        [_factors(np.random.default_rng([seed, number]), 1, amplitude_sd, delay_sd_days) for number in range(count)]
+    )
+    members = {
+        number: LoadPattern(
+            f"perturbed {number + 1} of {base.name}", base.latitude_deg, base.longitude_deg, values, base.reference
+        )
+        for first, base in enumerate(bases[:count])
+        for number, values in zip(
+            range(first, count, len(bases)), _perturbed(base, factors[first :: len(bases)]), strict=True
+        )
+    }
+    return tuple(members[number] for number in range(count))
+
+
+def _perturbed(base: LoadPattern, factors: NDArray[np.complex128]) -> NDArray[np.complex128]:
+    """Values of a pattern whose regions are multiplied, (n_member, n_lat, n_lon) for (n_member, n_region) factors."""
+    values = np.empty((len(factors), *base.values.shape), dtype=complex)
+    for rows, shares in _shares(base.latitude_deg, base.longitude_deg):
+        values[:, rows] = base.values[rows] * np.tensordot(factors, shares, 1)
+    return values
 
 
 def regional_responses(
@@ -202,9 +220,7 @@ def draw_admittances(
     return result
 
 
-def _factors(
-    rng: np.random.Generator, count: int, amplitude_sd: float, delay_sd_days: float
-) -> NDArray[np.complex128]:
+def _factors(rng: np.random.Generator, count: int, amplitude_sd: float, delay_sd_days: float) -> NDArray[np.complex128]:
     """Random factors of the phasors, (count, n_region): lengths of mean one, delays of mean zero."""
     size, turn = rng.standard_normal((2, count, len(REGION_NAMES)))
     size *= amplitude_sd
@@ -232,12 +248,12 @@ def _shares(
 
 
 def _perturbation_faults(bases: int, count: int, amplitude_sd: float, delay_sd_days: float) -> list[Fault]:
-    place, faults = "perturbed loads", []
+    faults = []
     if bases < 1:
-        faults.append(Fault(place, "bases", "there is no pattern to perturb", "At least one"))
+        faults.append(Fault(_PLACE, "bases", "there is no pattern to perturb", "At least one"))
     if not 1 <= count <= MOST_MEMBERS:
-        faults.append(Fault(place, "count", f"{count} members were asked", f"1 to {MOST_MEMBERS}"))
+        faults.append(Fault(_PLACE, "count", f"{count} members were asked", f"1 to {MOST_MEMBERS}"))
     for name, value in {"amplitude_sd": amplitude_sd, "delay_sd_days": delay_sd_days}.items():
         if not 0.0 <= value < np.inf:
-            faults.append(Fault(place, name, f"the value is {value}", "Finite, and not below 0"))
+            faults.append(Fault(_PLACE, name, f"the value is {value}", "Finite, and not below 0"))
     return faults

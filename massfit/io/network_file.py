@@ -273,13 +273,18 @@ def _perturbed(
         allowed = f"Must be a number of members from 1 to {MOST_MEMBERS}"
         reading.fault(path, f'the value is "{_PERTURBED}{count}"', allowed, f'Write "{_PERTURBED}16"')
         return None
-    return perturbed_loads(
-        bases,
-        int(count),
-        amplitude_sd=fingerprint.perturbed_amplitude_sd,
-        delay_sd_days=fingerprint.perturbed_delay_sd_days,
-        seed=fingerprint.perturbed_seed,
-    )
+    try:
+        return perturbed_loads(
+            bases,
+            int(count),
+            amplitude_sd=fingerprint.perturbed_amplitude_sd,
+            delay_sd_days=fingerprint.perturbed_delay_sd_days,
+            seed=fingerprint.perturbed_seed,
+        )
+    except InputError as error:
+        for fault in error.faults:
+            reading.fault(path, fault.problem, fault.allowed, fault.action)
+        return None
 
 
 def _earth(reading: Reading, fingerprint: Fingerprint | None) -> EarthProfile | None:
