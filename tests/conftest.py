@@ -146,6 +146,14 @@ def invented():
 
 
 @pytest.fixture(scope="session")
+def judged(invented):
+    """The sites of the invented network alone, each judged; tests do not change it."""
+    from massfit.pipeline.phasors import site_run
+
+    return site_run(invented)
+
+
+@pytest.fixture(scope="session")
 def run(invented):
     """The main job on the invented network; tests do not change it."""
     return massfit.estimate(invented)

@@ -92,6 +92,35 @@ def fingerprint(network: Path, output: Path | None, finest: int, overwrite: bool
 
 
 @main.command()
+@click.argument("network", type=_FOLDER)
+@click.option("--output", type=_FOLDER, help="Folder to be made  [default: phasors/ beside the network file]")
+@click.option("--overwrite", is_flag=True, help="Replace what a finished run left there.")
+@click.option("--outside", is_flag=True, help="Allow paths outside the network's folder.")
+@click.option("--quiet", is_flag=True, help="Print nothing but errors.")
+@click.option("--json", "as_json", is_flag=True, help="Print phasors.json instead of the table.")
+def phasors(network: Path, output: Path | None, overwrite: bool, outside: bool, quiet: bool, as_json: bool) -> None:
+    """Reduce and judge every site, without a network posterior.
+
+    NETWORK is a network.toml or the folder that holds one. Writes a folder with
+    a figure for each site, what each correction did, a table, NetCDF files and
+    phasors.html, and prints the table.
+    """
+    with refusing_politely(), shown_progress(quiet=quiet) as progress:
+        from massfit.pipeline.phasors import phasors_folder, phasors_to_folder
+
+        made, cores = phasors_folder(network, output), os.cpu_count() or 1
+        run = phasors_to_folder(
+            network, made, overwrite=overwrite, outside=outside, progress=progress, workers=cores
+        )
+    from massfit.report.site_text import site_text
+
+    if as_json:
+        click.echo(json.dumps(run.summary, indent=2))
+    elif not quiet:
+        click.echo(f"{site_text(run.summary)}\n\nResults in {made}: start with phasors.html")
+
+
+@main.command()
 @click.argument("folder", type=_FOLDER)
 @click.option("--seed", type=click.IntRange(min=0), default=1, show_default=True, help="Seed of the invention.")
 @click.option("--sites", type=click.IntRange(1, 60), default=18, show_default=True, help="Number of sites.")

@@ -35,6 +35,25 @@ class Line:
     multipliers: tuple[int, int, int, int, int]
     height_m: float
 
+    @property
+    def period_days(self) -> float:
+        """Mean period, days."""
+        century = np.diff(mean_longitudes(np.array(["2000-01-01T12", "2100-01-01T12"], dtype="datetime64[ns]")), axis=0)
+        return float(2.0 * np.pi * 36_525.0 / (century[0] @ np.array(self.multipliers)))
+
+    def nodal_share(self, lines: "tuple[Line, ...]") -> float:
+        """Part of the height by which the side lines one turn of the node away raise and lower it in 18.6 years.
+
+        Parameters
+        ----------
+        lines : tuple of Line
+            All lines that are summed.
+        """
+        beside = [(*self.multipliers[:3], self.multipliers[3] + turn, self.multipliers[4]) for turn in (-1, 1)]
+        # a side line is modulated by its main line as little as the node's own line is by a constant
+        larger = [line for line in lines if line.multipliers in beside and abs(line.height_m) < abs(self.height_m)]
+        return float(sum(abs(line.height_m / self.height_m) for line in larger)) if any(self.multipliers[:3]) else 0.0
+
 
 LINES = (
     Line("node", (0, 0, 0, 1, 0), 0.0279),
@@ -117,6 +136,39 @@ def zonal_height(time: NDArray[np.datetime64], *, lines: tuple[Line, ...] = LINE
     heights = np.array([line.height_m for line in lines])
     arguments = mean_longitudes(time) @ multipliers.T
     return np.asarray(GAMMA_2 * NORMALISATION * (np.cos(arguments) @ heights))
+
+
+def line_table(response: float, *, lines: tuple[Line, ...] = LINES) -> list[dict[str, object]]:
+    """Period and amplitude of every line at a site.
+
+    Parameters
+    ----------
+    response : float
+        Of the site per metre of :func:`zonal_height`, in any unit per metre.
+    lines : tuple of Line
+
+    Returns
+    -------
+    list of dict
+        `line`, `period_days`, `amplitude` in the unit of the response, and `nodal_share`, the part by which the
+        amplitude rises and falls with the node of the Moon's orbit.
+
+    Examples
+    --------
+    >>> table = line_table(-0.5e3)  # the classical height on the equator, mm
+    >>> [(row["line"], round(row["period_days"], 2), round(row["amplitude"], 1)) for row in table[4:7]]
+    [('Mm', 27.55, 5.3), ('MSf', 14.77, 0.9), ('Mf', 13.66, 10.1)]
+    """
+    scale = abs(response) * GAMMA_2 * NORMALISATION
+    return [
+        {
+            "line": line.name,
+            "period_days": line.period_days,
+            "amplitude": scale * abs(line.height_m),
+            "nodal_share": line.nodal_share(lines),
+        }
+        for line in lines
+    ]
 
 
 def zonal_function(latitude_deg: NDArray[np.float64] | float) -> NDArray[np.float64]:

@@ -122,6 +122,45 @@ def redraw_results(partial: PartialFolder, run: FinishedRun, *, pictures: Mappin
         write_run(aside, run.provenance, drawn | set(run.provenance["outputs"]))
 
 
+def write_folder(
+    partial: PartialFolder,
+    run: FinishedRun,
+    *,
+    summary_file: str,
+    page_file: str,
+    page: str,
+    pictures: Mapping[str, bytes],
+) -> None:
+    """Write the folder of a single stage aside and move it into place.
+
+    Parameters
+    ----------
+    partial : PartialFolder
+    run : FinishedRun
+        Its provenance is completed by the SHA-256 of every file, `outputs`.
+    summary_file : str
+        Where its summary goes.
+    page_file, page : str
+        Name and HTML of its page.
+    pictures : mapping of str to bytes
+        PNG images by name, for `figures/`.
+
+    Raises
+    ------
+    InputError
+        The folder cannot be written; what was there before is untouched.
+    """
+    with partial.whole() as aside:
+        _write_json(aside / summary_file, run.summary)
+        for name, rows in run.tables.items():
+            _write_rows(aside / name, rows)
+        for name, dataset in run.datasets.items():
+            write_dataset(aside / name, dataset)
+        write_drawn(aside, pictures, page, name=page_file)
+        write_run(aside, run.provenance, {path.relative_to(aside).as_posix() for path in aside.rglob("*.*")})
+    partial.clear()
+
+
 def write_drawn(aside: Path, pictures: Mapping[str, bytes], page: str, *, name: str = "report.html") -> None:
     """Write figures and page.
 

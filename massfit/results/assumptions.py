@@ -29,6 +29,32 @@ def stated_assumptions(network: Network) -> tuple[str, ...]:
     )
 
 
+def site_assumptions(network: Network) -> tuple[str, ...]:
+    """Say what the phasors of the sites of a network assume, one sentence each.
+
+    Parameters
+    ----------
+    network : Network
+
+    Returns
+    -------
+    tuple of str
+    """
+    frame = network.settings.frame
+    first = frame.start.isoformat() if frame.start else "the first record"
+    last = frame.end.isoformat() if frame.end else "the last record"
+    return (
+        f"Records are used from {first} to {last}; phases count from 1 January {frame.reference_year} 00:00 UTC. The "
+        "phasor of a site is what is left of its record: the cycle of ocean mass as the site sees it, the response to "
+        "the air over land, and the ocean dynamics that the models do not have.",
+        *_corrections(network)[:-1],
+        *_circulation(network),
+        *_reduced_elsewhere(network),
+        *_drift_and_noise(network),
+        "Results are for research.",
+    )
+
+
 def fingerprint_assumptions(network: Network) -> tuple[str, ...]:
     """Say what the fingerprint of this network assumes, one sentence each.
 

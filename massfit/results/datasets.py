@@ -1,7 +1,8 @@
 """A finished run as Datasets, ready for NetCDF files."""
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping, Sequence
 from datetime import UTC, datetime
+from typing import Any
 
 import numpy as np
 import xarray as xr
@@ -42,18 +43,21 @@ def result_datasets(estimate: Estimate) -> dict[str, xr.Dataset]:
     }
     if estimate.reductions:  # there are no records where every site was reduced elsewhere
         title = "daily records, every series subtracted, and what remains"
-        described["reduced_records.nc"] = reduced_records(estimate), title
+        described["reduced_records.nc"] = reduced_records(estimate.reductions), title
     if estimate.calibration is not None:
         described["calibration.nc"] = estimate.calibration, "surrogates of the network with a known cycle"
-    return {name: _described(dataset, title, estimate) for name, (dataset, title) in described.items()}
+    return {
+        name: with_description(dataset, title, estimate.summary, estimate.provenance)
+        for name, (dataset, title) in described.items()
+    }
 
 
-def reduced_records(estimate: Estimate) -> xr.Dataset:
+def reduced_records(reductions: Sequence[SiteReduction]) -> xr.Dataset:
     """Daily records of all deployments end to end, with every correction, drift and remainder.
 
     Parameters
     ----------
-    estimate : Estimate
+    reductions : sequence of SiteReduction
 
     Returns
     -------
@@ -61,9 +65,10 @@ def reduced_records(estimate: Estimate) -> xr.Dataset:
         A CF contiguous ragged array over `obs`; `row_size` counts the days of each deployment.
         ``pressure`` = the common corrections + the mean of the models present + ``drift`` + ``reduced``
         on the days that were used, up to a constant for each deployment; ``drift`` and
-        ``reduced`` are NaN on the others.
+        ``reduced`` are NaN on the others. Where the fits were judged, ``drift_sd`` is the standard deviation of
+        the drift.
     """
-    rows = [(reduction, index) for reduction in estimate.reductions for index in range(len(reduction.daily))]
+    rows = [(reduction, index) for reduction in reductions for index in range(len(reduction.daily))]
     daily = [reduction.daily[index] for reduction, index in rows]
 
     def joined(values: Callable[[SiteReduction, int], NDArray[np.float64]]) -> NDArray[np.float64]:
@@ -90,6 +95,8 @@ def reduced_records(estimate: Estimate) -> xr.Dataset:
         joined(lambda r, i: _fitted(r, i, "reduced")),
         _pascal("what remains; the annual cycle is in it"),
     )
+    if all(reduction.diagnostics is not None for reduction in reductions):
+        variables["drift_sd"] = ("obs",), joined(_drift_sd), _pascal("standard deviation of the fitted drift")
     return xr.Dataset(
         {
             **variables,
@@ -118,7 +125,7 @@ def reduced_records(estimate: Estimate) -> xr.Dataset:
             "site": (("deployment",), np.array([record.site for record in daily], dtype=object)),
             "latitude": _place(rows, "latitude_deg", "degrees_north"),
             "longitude": _place(rows, "longitude_deg", "degrees_east"),
-            "model": estimate.reductions[0].corrections["model"].values,
+            "model": reductions[0].corrections["model"].values,
         },
         attrs={"featureType": "timeSeries"},
     )
@@ -150,17 +157,43 @@ def _fitted(reduction: SiteReduction, index: int, name: str) -> NDArray[np.float
     return values
 
 
-def _described(dataset: xr.Dataset, title: str, estimate: Estimate) -> xr.Dataset:
-    """Add the attributes by which a stranger finds out what a file is."""
-    network = estimate.summary["network"]
+def _drift_sd(reduction: SiteReduction, index: int) -> NDArray[np.float64]:
+    """Interpolate the standard deviation of the drift of a deployment to its days; NaN beyond those of the fit."""
+    time = reduction.daily[index].time
+    for curve in () if reduction.diagnostics is None else reduction.diagnostics.drifts:
+        if curve.deployment == reduction.daily[index].deployment:
+            days, known = (each.astype("datetime64[s]").astype(float) for each in (time, curve.time))
+            return np.asarray(np.interp(days, known, curve.sd, left=np.nan, right=np.nan))
+    return np.full(len(time), np.nan)
+
+
+def with_description(
+    dataset: xr.Dataset, title: str, summary: Mapping[str, Any], provenance: Mapping[str, Any]
+) -> xr.Dataset:
+    """Add the attributes by which a stranger finds out what a file is.
+
+    Parameters
+    ----------
+    dataset : xarray.Dataset
+    title : str
+        What it holds.
+    summary : mapping
+        With `network`, `assumptions`, `reference_year`, `warnings` and, where there is a posterior, `convergence`.
+    provenance : mapping
+
+    Returns
+    -------
+    xarray.Dataset
+    """
+    converged = {"converged": int(summary["convergence"]["converged"])} if "convergence" in summary else {}
     attributes = {
         "Conventions": CONVENTIONS,
-        "title": f"{network}: {title}",
-        "summary": " ".join(estimate.summary["assumptions"]),
-        "source": f"massfit {estimate.provenance['massfit']}",
+        "title": f"{summary['network']}: {title}",
+        "summary": " ".join(summary["assumptions"]),
+        "source": f"massfit {provenance['massfit']}",
         "date_created": datetime.now(UTC).isoformat(timespec="seconds"),
-        "phase_reference": f"1 January {estimate.summary['reference_year']} 00:00 UTC",
-        "comment": "; ".join(estimate.summary["warnings"]),
-        "converged": int(estimate.summary["convergence"]["converged"]),
+        "phase_reference": f"1 January {summary['reference_year']} 00:00 UTC",
+        "comment": "; ".join(summary["warnings"]),
+        **converged,
     }
     return dataset.assign_attrs({**dataset.attrs, **attributes})

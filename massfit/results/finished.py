@@ -19,7 +19,7 @@ class FinishedRun:
     Parameters
     ----------
     summary : mapping
-        The content of `estimate.json`.
+        The content of `estimate.json` or `phasors.json`.
     provenance : mapping
         The content of `run.json`: command, settings, versions, inputs.
     datasets : mapping of str to xarray.Dataset
@@ -65,7 +65,6 @@ def plain_settings(settings: Settings) -> dict[str, Any]:
 
 
 def _plain(value: Any) -> Any:
-    """Turn settings into what JSON knows."""
     if isinstance(value, dict):
         return {key: _plain(item) for key, item in value.items()}
     if isinstance(value, tuple):
