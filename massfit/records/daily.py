@@ -9,10 +9,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from massfit.records import disturbed as disturbed_rule
+from massfit.records import gain as gain_rule
 from massfit.records import settling as settling_rule
 from massfit.records import stuck as stuck_rule
 from massfit.records.clean import find_spikes, usable_samples
 from massfit.records.disturbed import find_disturbed
+from massfit.records.gain import find_gain_change
 from massfit.records.hourly import HOUR_NS, Hourly, days_from_epoch, hourly_means, instants
 from massfit.records.interval import usual_interval_ns
 from massfit.records.level_changes import (
@@ -35,8 +37,13 @@ _DAILY_ABOVE_HOURS = 6.0
 _DIRECT_BELOW_HOURS = 0.5
 """Below this sampling a tide is a straight line over five samples, spikes show against the raw pressure, and an hour
 that stands apart holds an event that many samples saw."""
+_SAME_DAYS = 10.0
+"""A change of level so near a change of gain is the same event."""
 _DAY = np.timedelta64(1, "D")
 _ACROSS = "one step is fitted across each, whatever its shape"
+
+GAIN_CHANGE = "change of gain found"
+"""What is said of a record whose tide becomes larger or smaller one day."""
 
 TIDES_LEFT = "short tides not removed"
 """What is said of a record that is too coarse for its tides to be removed although that was asked for."""
@@ -220,6 +227,10 @@ def _averaged(
         found, action = find_level_changes(hours.days[sound], tide_free[sound], declared, coarse=False)
         actions.append(action)
         changes = in_order([*declared, *found])
+    seams: tuple[float, ...] = ()
+    if search and (gain := find_gain_change(hours.days[~fit.spikes], hours.pressure[~fit.spikes], fit.constants)):
+        changes, seams, action = _with_gain_change(changes, *gain)
+        actions.append(action)
     left_out = between_levels(hours.days, changes)
     disturbed = np.zeros(left_out.size, dtype=bool)
     quiet = flattened(hours.days[~left_out], tide_free[~left_out], level_breaks(changes))
@@ -228,7 +239,7 @@ def _averaged(
         disturbed &= ~fit.spikes
     if left_out.any() or disturbed.any() or len(changes) > len(declared):
         hours = hours.without(left_out | disturbed)
-        fit = _short_tides(hours, changes, tides)
+        fit = _short_tides(hours, changes, tides, seams)
     actions += [
         *_tide_actions(fit),
         Action("hours on ramps left out", int(on_ramps + np.count_nonzero(left_out)), _ACROSS),
@@ -243,6 +254,21 @@ def _averaged(
     return _Reduced(instants(days.day + 0.5), days.pressure, changes, fit.constants, actions)
 
 
+def _with_gain_change(
+    changes: tuple[LevelChange, ...], day: float, ratio: float
+) -> tuple[tuple[LevelChange, ...], tuple[float, ...], Action]:
+    """Begin a new level where the gain changes, unless one begins there anyway, and a new segment of the tides."""
+    near = [change for change in changes if abs(float(days_from_epoch(change.end)) - day) <= _SAME_DAYS]
+    if near:
+        day = float(days_from_epoch(near[0].end))
+    else:
+        (instant,) = instants(np.array([day]))
+        changes = in_order([*changes, LevelChange(instant, instant, found=True)])
+    (time,) = np.datetime_as_string(instants(np.array([day])), unit="h")
+    action = Action(GAIN_CHANGE, 1, f"{time}: the tide is {ratio:.3f} times what it was before; {gain_rule.RULE}")
+    return changes, (day,), action
+
+
 def _counted(what: str, which: NDArray[np.bool_], detail: str) -> Action:
     return Action(what, int(np.count_nonzero(which)), detail)
 
@@ -252,9 +278,12 @@ def _spike_action(spikes: NDArray[np.bool_], what: str) -> Action:
     return _counted(f"{what} spikes rejected", spikes, detail)
 
 
-def _short_tides(hours: Hourly, changes: tuple[LevelChange, ...], tides: str) -> TideFit:
+def _short_tides(
+    hours: Hourly, changes: tuple[LevelChange, ...], tides: str, seams: tuple[float, ...] = ()
+) -> TideFit:
     if tides == "remove":
-        return fit_short_tides(hours.days, hours.pressure, spread=hours.spread, breaks=level_breaks(changes))
+        breaks = level_breaks(changes)
+        return fit_short_tides(hours.days, hours.pressure, spread=hours.spread, breaks=breaks, seams=seams)
     return TideFit(np.zeros(hours.days.size), find_spikes(hours.pressure), (), (), 0)
 
 

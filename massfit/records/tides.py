@@ -60,6 +60,7 @@ def fit_short_tides(
     *,
     spread: NDArray[np.float64] | float = 0.0,
     breaks: Sequence[float] | NDArray[np.float64] = (),
+    seams: Sequence[float] = (),
 ) -> TideFit:
     """Fit the short tides of a record.
 
@@ -81,6 +82,8 @@ def fit_short_tides(
         interval attenuates a line of rate w by 1 - w^2 spread / 2.
     breaks : (k,) array
         Times at which a new level begins, days, increasing.
+    seams : (k,) sequence of float
+        Times at which the gain changes, so that a new segment begins, days, increasing.
 
     Returns
     -------
@@ -99,8 +102,7 @@ def fit_short_tides(
     ('M2', 300.0)
     """
     spread = np.broadcast_to(np.asarray(spread, dtype=float), days.shape)
-    count = max(1, days.size // _SEGMENT_HOURS)
-    edges = np.linspace(0, days.size, count + 1).astype(int)
+    edges = _segments(days, seams)
     tide, spikes = np.empty(days.size), np.zeros(days.size, dtype=bool)
     phasors: dict[str, list[complex]] = {}
     variances: dict[str, list[float]] = {}
@@ -123,7 +125,18 @@ def fit_short_tides(
     middle = 0.5 * float(days[0] + days[-1]) if days.size else 0.0
     constants = [_constant(name, phasors[name], variances[name], middle) for name in phasors]
     constants.sort(key=lambda constant: -constant.amplitude)
-    return TideFit(tide, spikes, tuple(constants), tuple(name for name in SHORT_TIDES if name in merged), count)
+    unparted = tuple(name for name in SHORT_TIDES if name in merged)
+    return TideFit(tide, spikes, tuple(constants), unparted, len(edges) - 1)
+
+
+def _segments(days: NDArray[np.float64], seams: Sequence[float]) -> NDArray[np.int64]:
+    """First sample of every segment, and the number of samples."""
+    stretches = pairwise(np.unique([0, *np.searchsorted(days, seams), days.size]).tolist()) if days.size else [(0, 0)]
+    parts = [
+        np.linspace(start, stop, max(1, (stop - start) // _SEGMENT_HOURS) + 1).astype(np.int64)
+        for start, stop in stretches
+    ]
+    return np.concatenate([parts[0], *(part[1:] for part in parts[1:])])
 
 
 def _constant(name: str, phasors: list[complex], variances: list[float], middle: float) -> TidalConstant:

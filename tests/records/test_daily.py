@@ -476,3 +476,24 @@ def test_a_change_of_level_left_in(open_data: Path) -> None:
     assert change == pytest.approx(2.30, abs=0.03)
     assert actions_of(daily).get("sample spikes rejected", 0) < 100
     assert np.isin(np.arange("2011-04-05", "2011-04-14", dtype="datetime64[D]"), day).all()
+
+
+def test_a_change_of_gain_is_found_and_does_not_leave_a_tide(open_data: Path) -> None:
+    table = np.loadtxt(open_data / "honolulu_hourly_sealevel_2010.asc")
+    time = stamps(table.shape[0])
+    pressure = PASCAL_PER_M * table[:, 1] / 1000.0
+    # a harbour with all its weather: nothing is found in it, nor in its quiet twin of one level
+    untouched = reduce_to_daily(record(time, pressure, find_steps=True))
+    assert "change of gain found" not in actions_of(untouched)
+    # the gain of a fortnight scatters by 4 % there and wanders by 8 % (by 1 % in the deep sea): a third is seen
+    swapped = np.where(time < START + 200 * DAY, pressure, 0.7 * pressure)
+    daily = reduce_to_daily(record(time, swapped, find_steps=True))
+    (action,) = [action for action in daily.actions if action.what == "change of gain found"]
+    assert float(action.detail.split("is ")[1].split()[0]) == pytest.approx(0.7, abs=0.06)
+    (change,) = daily.changes
+    assert abs(change.end - (START + 200 * DAY)) < 4 * DAY
+    # the tides of both sides are removed by their own size
+    level = [np.median(each.pressure[each.time < change.end]) for each in (daily, untouched)]
+    assert abs(level[0] - level[1]) < 5.0
+    restless = [np.median(np.abs(np.diff(each.pressure))) for each in (daily, untouched)]
+    assert restless[0] < 1.05 * restless[1]
