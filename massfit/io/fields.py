@@ -14,11 +14,14 @@ from massfit.errors import Fault, InputError
 from massfit.fingerprint.grid import CellGrid, regrid
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.fingerprint.pattern import LoadPattern
+from massfit.fingerprint.transforms import SphereGrid
 from massfit.io.load_checks import land_load
 from massfit.io.netcdf import as_text, damage_as_fault, open_netcdf
 from massfit.io.variables import canonical, decoded, load, pascal_of_field, read_pressure
 
 _LOAD_UNITS = ("kg m-2", "kg m^-2", "kg/m2", "kg/m^2", "kg m**-2")
+_GAUSSIAN = 0.01  # degrees: latitudes of Gaussian grids are often rounded to hundredths
+_MOST_GAUSSIAN = 4096  # rows
 _EVEN = 1e-3  # of a cell: coordinates stored as float32 are uneven by less
 
 
@@ -31,7 +34,7 @@ def read_loads(
     ----------
     path : pathlib.Path
         NetCDF with `load_in_phase` and `load_quadrature` over ([member,] lat, lon), or with a
-        monthly climatology `load` over ([member,] month, lat, lon); kg m-2. NaN is no load. The
+        monthly climatology `load` over ([member,] month, lat, lon), or over twelve times; kg m-2. NaN is no load. The
         attribute `load_area` of the file or the variable says whether values count for the whole
         "cell" (default) or its "land" part.
     reference_year : int
@@ -180,12 +183,38 @@ def _variable(dataset: xr.Dataset, name: str, dims: tuple[str, ...], source: str
         found = ", ".join(str(dim) for dim in dataset[name].dims)
         raise InputError(Fault(source, name, f"the dimensions are ({found})", allowed, "Drop the others"))
     data = _around(load(decoded(dataset, name, source=source), source=source).astype(np.float64))
-    require_global_grid(data["lat"].to_numpy(), data["lon"].to_numpy(), source=source)
+    gaussian = _gaussian_rows(data["lat"].to_numpy())
+    rows = data["lat"].to_numpy() if gaussian is None else _even_rows(data.sizes["lat"])
+    require_global_grid(rows, data["lon"].to_numpy(), source=source)
     if np.isinf(data.to_numpy()).any():
         raise InputError(
             Fault(source, name, "some values are infinite", "Must be finite, or NaN for no load", "Correct them")
         )
-    return data.transpose(..., *dims)
+    data = data.transpose(..., *dims)
+    return data if gaussian is None else _on_even_rows(data, gaussian, rows)
+
+
+def _gaussian_rows(latitude: NDArray[Any]) -> NDArray[np.float64] | None:
+    """Bounds of the rows of a Gaussian grid, from its quadrature weights; None where the rows are others."""
+    if latitude.ndim != 1 or not 8 <= latitude.size <= _MOST_GAUSSIAN or latitude.size % 2:
+        return None
+    grid = SphereGrid(latitude.size // 2 - 1)
+    for step in (1, -1):
+        if np.allclose(latitude, grid.latitude_deg[::step], rtol=0.0, atol=_GAUSSIAN):
+            return np.array(grid.cells.latitude_bounds_deg[::step], dtype=np.float64)
+    return None
+
+
+def _even_rows(count: int) -> NDArray[np.float64]:
+    return -90.0 + (np.arange(count) + 0.5) * (180.0 / count)
+
+
+def _on_even_rows(data: xr.DataArray, bounds: NDArray[np.float64], rows: NDArray[np.float64]) -> xr.DataArray:
+    """Average the rows of a Gaussian grid over as many even ones; masses stay, NaN counts as zero."""
+    even = CellGrid.from_centres(rows, data["lon"].to_numpy().astype(float))
+    source = CellGrid(bounds, even.longitude_bounds_deg)
+    values = regrid(np.nan_to_num(data.to_numpy()), source, even)
+    return xr.DataArray(values, dims=data.dims, coords={**data.drop_vars("lat").coords, "lat": rows})
 
 
 def _around(data: xr.DataArray) -> xr.DataArray:
@@ -207,7 +236,11 @@ def _joined(dataset: xr.Dataset, in_phase: str, quadrature: str, source: str) ->
 
 
 def _months(dataset: xr.Dataset, source: str) -> xr.DataArray:
-    data = _variable(dataset, "load", ("month", "lat", "lon"), source)
+    if "time" in dataset["load"].dims and "month" not in dataset["load"].dims:
+        timed = _variable(dataset, "load", ("time", "lat", "lon"), source)
+        data = timed.assign_coords(time=timed["time"].dt.month).rename(time="month")
+    else:
+        data = _variable(dataset, "load", ("month", "lat", "lon"), source)
     if data.sizes["month"] != 12:
         problem = f"there are {data.sizes['month']} months"
         raise InputError(

@@ -234,3 +234,40 @@ def test_millimetres_that_are_called_metres_are_refused(tmp_path: Path) -> None:
     message = "w.nc: w: the load reaches 8.49e\\+04 kg m-2, 84.9 m of water. Must be at most 5000. Check the units."
     with pytest.raises(InputError, match=message):
         read_loads(tmp_path / "w.nc", reference_year=2016, source="w.nc")
+
+
+# other grids and calendars
+
+
+@pytest.mark.parametrize("step", [1, -1])
+def test_a_gaussian_grid_keeps_its_mass(step: int, tmp_path: Path) -> None:
+    nodes, weights = np.polynomial.legendre.leggauss(64)
+    latitude, longitude = np.degrees(np.arcsin(nodes))[::step].round(2), np.arange(0.0, 360.0, 2.8125)
+    phasor_file(tmp_path / "w.nc", lat=latitude, lon=longitude, values=inland(latitude, longitude))
+    (pattern,) = read_loads(tmp_path / "w.nc", reference_year=2016, source="w.nc")
+    row_area = weights[::step] * 2.0 * np.pi / 128 * 6_371_000.0**2
+    mass = np.nansum(inland(latitude, longitude) * row_area[:, None])
+    cells = CellGrid.from_centres(pattern.latitude_deg, pattern.longitude_deg)
+    assert np.sum(pattern.values.real * cells.cell_area_m2) == pytest.approx(mass, rel=1e-9)
+    assert np.ptp(np.diff(pattern.latitude_deg)) < 1e-9
+    assert pattern.values[int(np.argmin(np.abs(pattern.latitude_deg - 50.0))), 30] == pytest.approx(1.0 + 1.0j)
+
+
+def test_a_climatology_may_be_over_twelve_times(tmp_path: Path) -> None:
+    means = monthly_means(2016, TRUTH, 0.0, 10.0)
+    data = means[:, None, None] * inland(LATITUDE, LONGITUDE)
+    time = np.array([f"2001-{month:02d}-15" for month in range(1, 13)], dtype="datetime64[ns]")
+    places = {"lat": LATITUDE, "lon": LONGITUDE}
+    for name, start in {"year": 0, "water_year": 9}.items():
+        turned = np.roll(np.arange(12), -start)
+        days = time[turned].astype("datetime64[D]") + np.where(turned < start, 365, 0)
+        dataset = xr.Dataset(
+            {"load": (("time", "lat", "lon"), data[turned], MASS)}, {"time": days.astype("datetime64[ns]"), **places}
+        )
+        dataset.to_netcdf(tmp_path / f"{name}.nc", engine="h5netcdf")
+        (pattern,) = read_loads(tmp_path / f"{name}.nc", reference_year=2016, source=name)
+        np.testing.assert_allclose(pattern.values, TRUTH * np.nan_to_num(inland(LATITUDE, LONGITUDE)), rtol=1e-6)
+    twice = xr.concat([dataset, dataset.assign_coords(time=dataset["time"] + np.timedelta64(365, "D"))], "time")
+    twice.to_netcdf(tmp_path / "two.nc", engine="h5netcdf")
+    with pytest.raises(InputError, match=r"there are 24 months\. Must be the twelve months of a climatology"):
+        read_loads(tmp_path / "two.nc", reference_year=2016, source="two.nc")
