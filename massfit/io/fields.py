@@ -201,12 +201,12 @@ def _gaussian_rows(latitude: NDArray[Any]) -> NDArray[np.float64] | None:
     grid = SphereGrid(latitude.size // 2 - 1)
     for step in (1, -1):
         if np.allclose(latitude, grid.latitude_deg[::step], rtol=0.0, atol=_GAUSSIAN):
-            return np.array(grid.cells.latitude_bounds_deg[::step], dtype=np.float64)
+            return grid.cells.latitude_bounds_deg[::step]
     return None
 
 
 def _even_rows(count: int) -> NDArray[np.float64]:
-    return -90.0 + (np.arange(count) + 0.5) * (180.0 / count)
+    return np.asarray((np.arange(count) + 0.5) * (180.0 / count) - 90.0, dtype=np.float64)
 
 
 def _on_even_rows(data: xr.DataArray, bounds: NDArray[np.float64], rows: NDArray[np.float64]) -> xr.DataArray:
