@@ -9,6 +9,7 @@ import xarray as xr
 from massfit.io.deployment import DeploymentFile
 from massfit.io.record_file import read_record
 from massfit.records.daily import reduce_to_daily
+from massfit.records.record import Record
 from massfit.records.tidal_lines import SHORT_TIDES
 
 pytestmark = pytest.mark.benchmark
@@ -40,3 +41,14 @@ def test_reading(benchmark, tmp_path: Path) -> None:
 def test_reducing(benchmark, tmp_path: Path) -> None:
     record = read_record(tmp_path, write_record(tmp_path), site="A", deployment="A/1")
     assert benchmark(reduce_to_daily, record).time.size == HOURS // 24
+
+
+def test_reducing_five_years_of_15_s(benchmark) -> None:
+    rng = np.random.default_rng(1)
+    time = np.datetime64("2014-01-01T00:00:07.5", "ms").astype("datetime64[ns]")
+    time = time + np.arange(5 * 8766 * 240) * np.timedelta64(15, "s")
+    pressure = 3000.0 * np.cos(2 * np.pi * SHORT_TIDES["M2"] * np.arange(time.size) / 5760.0)
+    pressure += rng.normal(scale=30.0, size=time.size)
+    dense = Record("A", "A/1", time, pressure, find_steps=True)
+    daily = benchmark.pedantic(reduce_to_daily, (dense,), rounds=3)
+    assert daily.time.size == 5 * 8766 // 24
