@@ -235,8 +235,10 @@ def _encoding(dataset: xr.Dataset) -> dict[Any, dict[str, Any]]:
     for name, variable in dataset.variables.items():
         if variable.ndim and variable.dtype.kind in "fiuM":
             encoding[name] = {"zlib": True, "complevel": 4, "shuffle": True, "fletcher32": True}
-            if variable.dtype.kind == "f" and name not in dataset.coords:
-                encoding[name]["_FillValue"] = np.nan
+            if variable.dtype.kind == "f":
+                # coordinates and bounds of cells have no missing values (CF 1.13, 2.5.1 and 7.1)
+                whole = name in dataset.coords or str(name).endswith("_bounds")
+                encoding[name]["_FillValue"] = None if whole else np.nan
     return encoding
 
 

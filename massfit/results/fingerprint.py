@@ -43,6 +43,19 @@ _LONG_NAMES = {
 }
 
 
+_POINT, _CELL = "lat: lon: point", "lat: lon: mean"
+
+_CELL_METHODS = {
+    "map_admittance": _POINT,
+    "map_amplitude_ratio": _POINT,
+    "map_delay": _POINT,
+    "map_spread": _POINT,
+    "ocean_fraction": _CELL,
+    "footprint": _CELL,
+    "footprint_ratio": _POINT,
+}
+
+
 @dataclass(frozen=True, repr=False)
 class FingerprintStudy(Described):
     """How every site, and every place, sees the annual cycle of ocean mass.
@@ -303,11 +316,15 @@ def _described(dataset: xr.Dataset, network: str, reference_year: int) -> xr.Dat
     described = dataset.assign_coords(
         lat=latitude.assign_attrs(standard_name="latitude", axis="Y", bounds="lat_bounds"),
         lon=longitude.assign_attrs(standard_name="longitude", axis="X", bounds="lon_bounds"),
-        lat_bounds=(("lat", "edge"), latitude.values[:, None] + half),
-        lon_bounds=(("lon", "edge"), longitude.values[:, None] + half),
         degree=dataset["degree"].assign_attrs(long_name="highest spherical-harmonic degree of the solve", units="1"),
     )
-    return described.assign_attrs(
+    for name, method in _CELL_METHODS.items():
+        if name in described:
+            described[name].attrs["cell_methods"] = method
+    return described.assign(
+        lat_bounds=(("lat", "edge"), latitude.values[:, None] + half),
+        lon_bounds=(("lon", "edge"), longitude.values[:, None] + half),
+    ).assign_attrs(
         Conventions=CONVENTIONS,
         title=f"{network}: fingerprints, maps and footprints of the annual cycle of ocean mass",
         summary="Complex site admittance under each load member, the same for every place, and the footprint of every "

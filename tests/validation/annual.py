@@ -3,8 +3,11 @@
 import json
 
 import numpy as np
+import xarray as xr
 
 from massfit.annual.evidence import linear_fit
+from massfit.io.fields import month_phasor
+from massfit.phasor import annual_basis, delay_days, phasor_from_peak
 from validation.registry import REFERENCE, Group, Row
 
 AREA = "Annual fit"
@@ -54,6 +57,27 @@ def exponentials() -> list[Row]:
                        1e-4 * squares, ".8f")]  # fmt: skip
 
 
+def monthly_means() -> list[Row]:
+    # the year in minutes: exact means of each calendar month of a cosine that peaks on day 100
+    truth = phasor_from_peak(1.0, 100.0)
+    start = np.datetime64("2015-01-01", "m")
+    minutes = np.arange(start, np.datetime64("2016-01-01", "m"), 10)
+    basis = annual_basis((minutes - start) / np.timedelta64(1, "D") + 5.0 / 1440.0)
+    values = basis @ [truth.real, truth.imag]
+    month = minutes.astype("datetime64[M]").astype(int) - int(start.astype("datetime64[M]").astype(int))
+    means = np.array([values[month == k].mean() for k in range(12)])
+    climatology = xr.DataArray(means, dims="month", coords={"month": np.arange(1, 13)})
+    found = complex(month_phasor(climatology, 2015).item())
+    middles = np.array([basis[month == k].mean(axis=0) for k in range(12)])
+    middles /= np.linalg.norm(middles, axis=1)[:, None]  # the wave in the middle of each month, unattenuated
+    naive = complex(*np.linalg.lstsq(middles, means, rcond=None)[0])
+    return [
+        Row("amplitude with the mean taken for the value of mid-month", 0.98862, abs(naive), 2e-4, ".5f"),
+        Row("amplitude of month_phasor", 1.0, abs(found), 1e-6, ".6f"),
+        Row("delay of month_phasor / days", 0.0, round(float(delay_days(found / truth)), 6) + 0.0, 1e-4, ".3f"),
+    ]
+
+
 GROUPS = (
     Group("The 12-month line of ENSO", "certified",
           "NIST Statistical Reference Datasets, ENSO; the design at the certified periods, priors off",
@@ -61,4 +85,7 @@ GROUPS = (
     Group("Exponentials beside a level", "certified",
           "NIST Statistical Reference Datasets, BoxBOD and MGH17; at the certified rates, priors off",
           "eleven certified digits, less what rounded rates cost", exponentials),
+    Group("Monthly means", "closed form",
+          "sin(x) / x with x = pi / 12: what a mean over a twelfth of the year leaves of it",
+          "months have 28 to 31 days, which moves the fifth digit; ours undoes each month by itself", monthly_means),
 )  # fmt: skip

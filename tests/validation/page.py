@@ -19,7 +19,7 @@ slow twins and invariants. `python docs/make_validation.py` writes this page and
 typed from memory say so.
 """
 
-SECONDS = 20
+SECONDS = 10
 
 
 def page(found: Sequence[tuple[Section, Sequence[tuple[Group, Sequence[Row]]]]] | None = None) -> str:
