@@ -316,7 +316,9 @@ def _unpacked(
     if high is not None:
         bad |= stored > high
     scale, offset = float(attributes.get("scale_factor", 1.0)), float(attributes.get("add_offset", 0.0))
-    unpacked = stored if (scale, offset) == (1.0, 0.0) else stored.astype(np.float64) * scale + offset
-    values = in_pascal(unpacked, entry, factor)
+    if (scale, offset) != (1.0, 0.0):
+        stored = stored * np.float64(scale)
+        stored += offset
+    values = in_pascal(stored, entry, factor)
     values[bad] = np.nan
     return values

@@ -87,12 +87,13 @@ def in_pascal(stored: NDArray[Any], entry: DeploymentFile, factor: float) -> NDA
     """
     # a code such as -999.9 is another number in single precision
     codes = np.asarray(entry.missing, dtype=stored.dtype if stored.dtype.kind == "f" else np.float64)
-    values = stored.astype(np.float64)
+    values = stored.astype(np.float64)  # the one copy of a record that may be long
     if codes.size:
         values[np.isin(stored, codes)] = np.nan
-    if (entry.scale_factor, entry.add_offset) != (1.0, 0.0):
-        values = values * entry.scale_factor + entry.add_offset
-    return values if factor == 1.0 else values * factor
+    for operation, number in ((np.multiply, entry.scale_factor), (np.add, entry.add_offset), (np.multiply, factor)):
+        if number != (0.0 if operation is np.add else 1.0):
+            operation(values, number, out=values)
+    return values
 
 
 def coarse(stored: NDArray[Any], factor: float) -> tuple[Action, ...]:

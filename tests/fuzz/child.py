@@ -19,8 +19,10 @@ from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
+import h5py
 import numpy as np
 import xarray as xr
+from scipy.io import savemat
 
 from massfit.errors import InputError
 from massfit.io.circulation_file import read_circulation
@@ -108,6 +110,12 @@ TEXTS = {
             "time_format": "days since 1950-01-01", "delimiter": ";", "stamp": "start",
         },
     ),
+    "flagged": (
+        "time,pressure,flag\n", "{day} 12:00:00 UTC,{value:.3f},1\n",
+        {
+            "units": "hPa", "delimiter": ",", "keep_flags": (1, 2), "clock_offset_end_s": 3.0, "utc_offset_hours": 0.0,
+        },
+    ),
     "format": (
         "# a\n",
         '"{slashed}" 12:30:00\t{value:.3f} x\n',
@@ -127,7 +135,7 @@ NASTY = [
 WORDS = [0, 1, 0x7F, 0xFF, 0x7FFF, 0x7FFFFFFF, 0x80000000, 0xFFFFFFFF, 2**28, 2**30, 2**62, 2**63 - 1, 2**64 - 1]
 
 
-KINDS = ("record", "stations", "model", "field", "series", "loads", "months", "land")
+KINDS = ("record", "stations", "contiguous", "indexed", "model", "field", "series", "loads", "months", "land")
 
 
 def time_and_wave(days: int) -> tuple[np.ndarray, np.ndarray]:
@@ -157,6 +165,22 @@ def write_base(folder: Path) -> None:
         clocks = {v: {"units": "hours since 2014-01-01"} for v in ("time", "bounds") if v in dataset.variables}
         dataset.to_netcdf(folder / f"{name}.nc", engine="h5netcdf", encoding=packed | clocks)
         dataset.to_netcdf(folder / f"{name}.3.nc", engine="scipy", encoding=clocks)
+    write_matlab(folder)
+
+
+def write_matlab(folder: Path) -> None:
+    """Files of MATLAB: version 5, plain and packed, and version 7.3, which is HDF5 behind a header."""
+    _, wave = time_and_wave(60)
+    days = 735_600.5 + np.arange(60.0)
+    variables = {"p": np.round(wave * 1e6).astype("i4"), "t": days, "qc": np.ones(60, "u1"), "note": "invented"}
+    savemat(folder / "plain.mat", variables)
+    savemat(folder / "packed.mat", variables, do_compression=True)
+    with h5py.File(folder / "hdf5.mat", "w", userblock_size=512) as file:
+        for name, kind in (("p", "int32"), ("t", "double"), ("qc", "uint8")):
+            data = file.create_dataset(name, data=np.atleast_2d(variables[name]), compression="gzip", fletcher32=True)
+            data.attrs["MATLAB_class"] = np.bytes_(kind)
+    with (folder / "hdf5.mat").open("r+b") as file:
+        file.write(b"MATLAB 7.3 MAT-file, invented".ljust(124) + b"\x00\x02IM")
 
 
 def base_datasets() -> dict[str, xr.Dataset]:
@@ -169,7 +193,18 @@ def base_datasets() -> dict[str, xr.Dataset]:
     places = {"lat": ("lat", latitude, {"units": "degrees_north"}), "lon": longitude}
     land = grid[0] * np.where(np.arange(12) > 6, np.nan, 1.0)
     load_dims, mass = ("member", "lat", "lon"), {"units": "kg m-2"}
+    flags = {"flag_values": np.array([1, 2, 3, 4, 9], "i1"), "flag_meanings": "pass not_evaluated suspect fail missing"}
+    ragged = xr.Dataset(
+        {
+            "p": ("obs", np.tile(wave, 2), {**pressure, "ancillary_variables": "p_qc"}),
+            "p_qc": ("obs", np.tile([1, 1, 2, 1, 3], 16).astype("i1"), flags),
+            "time": ("obs", np.tile(time, 2), {"standard_name": "time"}),
+            "name": ("station", np.array([b"north", b"south"]), {"cf_role": "timeseries_id"}),
+        }
+    )
     return {
+        "contiguous": ragged.assign(n=("station", np.array([40, 40], "i4"), {"sample_dimension": "obs"})),
+        "indexed": ragged.assign(k=("obs", np.tile([0, 1], 40).astype("i4"), {"instance_dimension": "station"})),
         "record": xr.Dataset({"p": ("time", wave, pressure)}, {"time": time}),
         "stations": xr.Dataset(
             {"p": (("station", "time"), np.stack([wave, wave]), packed), "bounds": (("time", "edge"), edges)},
@@ -208,7 +243,7 @@ def read_data(folder: Path, kind: str, name: str) -> object:
     path = folder / name
     if kind == "record":
         return read_record(folder, DeploymentFile(name), site="A", deployment="A/1")
-    if kind == "stations":
+    if kind in ("stations", "contiguous", "indexed"):
         return read_record(folder, DeploymentFile(name, station="south"), site="A", deployment="A/1")
     if kind in ("model", "field"):
         entry = CirculationEntry("M", name, "removed", "not-forced")
@@ -301,10 +336,22 @@ def netcdf_case(folder: Path, dice: random.Random) -> object:
     return read_data(folder, kind, "damaged.nc")
 
 
+def matlab_case(folder: Path, dice: random.Random) -> object:
+    original = folder / f"{dice.choice(['plain', 'packed', 'hdf5'])}.mat"
+    (folder / "damaged.mat").write_bytes(damaged_bytes(original.read_bytes(), dice))
+    return read_matlab_file(folder, "damaged.mat")
+
+
+def read_matlab_file(folder: Path, name: str) -> object:
+    entry = DeploymentFile(name, units="Pa", variable="p", time_variable="t", flag_variable="qc", scale_factor=-1e-4)
+    return read_record(folder, entry, site="A", deployment="A/1")
+
+
 CASES: dict[str, Callable[[Path, random.Random], object]] = {
     "network": network_case,
     "text": text_case,
     "netcdf": netcdf_case,
+    "matlab": matlab_case,
 }
 
 
@@ -344,6 +391,8 @@ def main() -> None:
         for check in KINDS:
             read_data(folder, check, f"{check}.nc")
             read_data(folder, check, f"{check}.3.nc")
+        for form in ("plain", "packed", "hdf5"):
+            read_matlab_file(folder, f"{form}.mat")
         read_network(folder)
         pages = int(Path("/proc/self/statm").read_text().split()[0])
         resource.setrlimit(resource.RLIMIT_AS, (pages * resource.getpagesize() + MEMORY,) * 2)

@@ -46,12 +46,14 @@ def check(kind: str, seeds: range) -> None:
     assert min(counts["ok"], counts["refused"]) > len(seeds) // 100
 
 
-@pytest.mark.parametrize(("kind", "count"), [("network", 3000), ("text", 7000), ("netcdf", 1000)])
+@pytest.mark.parametrize(("kind", "count"), [("network", 3000), ("text", 7000), ("netcdf", 1000), ("matlab", 500)])
 def test_only_input_errors(kind: str, count: int) -> None:
     check(kind, range(count))
 
 
 @pytest.mark.slow
-@pytest.mark.parametrize(("kind", "count"), [("network", 30_000), ("text", 70_000), ("netcdf", 10_000)])
+@pytest.mark.parametrize(
+    ("kind", "count"), [("network", 30_000), ("text", 70_000), ("netcdf", 10_000), ("matlab", 5000)]
+)
 def test_only_input_errors_ten_times_more(kind: str, count: int) -> None:
     check(kind, range(count, 2 * count))
