@@ -9,7 +9,7 @@ import xarray as xr
 
 from massfit.errors import Fault, InputError
 from massfit.io.fingerprint_folder import FINGERPRINT_TABLE
-from massfit.io.results_folder import BLANK, ESTIMATE_FILE, RUN_FILE, file_digest
+from massfit.io.results_folder import BLANK, ESTIMATE_FILE, PHASORS_FILE, RUN_FILE, file_digest
 from massfit.results.finished import FinishedRun
 
 _REDRAWN = (".html", ".png")
@@ -48,8 +48,9 @@ def _read_run(folder: Path) -> dict[str, Any]:
     try:
         content = json.loads(path.read_text(encoding="utf-8"))
         outputs = content["outputs"]
-        if FINGERPRINT_TABLE in outputs:
-            raise InputError(_another_command(folder))
+        for command, own in (("fingerprint", FINGERPRINT_TABLE), ("phasors", PHASORS_FILE)):
+            if own in outputs:
+                raise InputError(_another_command(folder, command))
         outputs[RUN_FILE], outputs[ESTIMATE_FILE]
         if not all(_inside(name) for name in outputs):
             raise ValueError("a name leads out of the folder")
@@ -61,8 +62,8 @@ def _read_run(folder: Path) -> dict[str, Any]:
     return dict(content)
 
 
-def _another_command(folder: Path) -> Fault:
-    problem = "it holds what massfit fingerprint wrote, without an answer"
+def _another_command(folder: Path, command: str) -> Fault:
+    problem = f"it holds what massfit {command} wrote, without an answer"
     return Fault(str(folder), "", problem, "", "Name the folder that massfit estimate wrote")
 
 

@@ -24,6 +24,9 @@ RUN_FILE = "run.json"
 
 ESTIMATE_FILE = "estimate.json"
 
+PHASORS_FILE = "phasors.json"
+"""By it a folder of `massfit phasors` is known."""
+
 _CSV_COLUMNS = (
     "id", "in_phase_hpa", "quadrature_hpa", "variance_in_phase_hpa2", "covariance_hpa2", "variance_quadrature_hpa2",
     "admittance_real", "admittance_imaginary", "standardised_residual", "outlier_probability", "warnings",

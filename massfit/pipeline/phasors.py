@@ -7,7 +7,7 @@ from typing import Any
 
 from massfit.io.network_file import read_network
 from massfit.io.partial_folder import claimed
-from massfit.io.results_folder import check_output, write_folder
+from massfit.io.results_folder import PHASORS_FILE, check_output, write_folder
 from massfit.network import Network
 from massfit.pipeline.context import sites_in_context
 from massfit.pipeline.parts import Store, kept
@@ -25,7 +25,7 @@ from massfit.results.site_entries import judgement, record_entry, site_entry, si
 from massfit.results.site_sheet import site_sheets
 from massfit.results.tidal_table import tidal_table
 
-SUMMARY_FILE, PAGE_FILE = "phasors.json", "phasors.html"
+PAGE_FILE = "phasors.html"
 
 
 def site_run(
@@ -171,9 +171,9 @@ def phasors_to_folder(
         Every fault of the input or of the output folder; nothing was written.
     """
     times = StageTimes(progress)
-    check_output(folder, overwrite=overwrite, holds=SUMMARY_FILE)
+    check_output(folder, overwrite=overwrite, holds=PHASORS_FILE)
     with claimed(folder) as aside, Workers(workers) as pool:
-        check_output(folder, overwrite=overwrite, holds=SUMMARY_FILE)
+        check_output(folder, overwrite=overwrite, holds=PHASORS_FILE)
         times("reading", 0, 1)
         inputs = read_network(network, outside=outside)
         times("reading", 1, 1)
@@ -187,7 +187,7 @@ def phasors_to_folder(
         write_folder(
             aside,
             run,
-            summary_file=SUMMARY_FILE,
+            summary_file=PHASORS_FILE,
             page_file=PAGE_FILE,
             page=page,
             pictures=pictures,

@@ -1,23 +1,21 @@
 """The figures of a finished run: picks what each shows and hands it to the drawing functions."""
 
 import io
-from collections.abc import Mapping, Sequence
-from typing import Any
+from collections.abc import Sequence
 
 import numpy as np
 import xarray as xr
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
-from massfit.annual.cautions import QUIET_SD
 from massfit.constants import PASCAL_PER_HPA
 from massfit.fingerprint.ocean import OceanFunction
-from massfit.phasor import annual_basis, as_complex, days_since, unwrapped_peak_days
+from massfit.phasor import as_complex, unwrapped_peak_days
 from massfit.report.corner_figure import corner_figure
 from massfit.report.fingerprint_members import fingerprint_members
 from massfit.report.network_map import network_map
 from massfit.report.phasor_plane import phasor_plane
-from massfit.report.record_panels import ROWS_OF_A_PAGE, RecordRow, record_panels
+from massfit.report.record_panels import ROWS_OF_A_PAGE, record_panels
 from massfit.report.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM, house_style
 from massfit.results.finished import FinishedRun
 from massfit.results.posterior_groups import POSTERIOR
@@ -29,6 +27,7 @@ from massfit.results.readings import (
     site_admittances,
     site_readings,
 )
+from massfit.results.record_rows import record_rows
 
 SCALE_WORDS = {"s_site": "site scatter", "s_local": "models at a site", "s_common": "model spread"}
 """What the scales of the posterior are called in figures."""
@@ -58,8 +57,7 @@ def draw_figures(run: FinishedRun, ocean: OceanFunction) -> dict[str, Figure]:
         figures[f"network_map{ending}"] = _map(run, ocean, width)
         figures[f"fingerprint{ending}"] = _members(run, width)
         figures[f"corner{ending}"] = _corner(run.datasets[POSTERIOR], width)
-    # there are none where every site was reduced elsewhere
-    rows = _record_rows(run) if "reduced_records.nc" in run.datasets else []
+    rows = record_rows(run)
     for page, first in enumerate(range(0, len(rows), ROWS_OF_A_PAGE), 1):
         name = "records" if page == 1 else f"records_{page}"
         figures[name] = record_panels(rows[first : first + ROWS_OF_A_PAGE])
@@ -137,61 +135,3 @@ def _corner(posterior: xr.Dataset, width_mm: float) -> Figure:
         }
     )
     return corner_figure(quantities, width_mm=width_mm)
-
-
-def _record_rows(run: FinishedRun) -> list[RecordRow]:
-    """One row a site that has records."""
-    records, year = run.datasets["reduced_records.nc"], run.summary["reference_year"]
-    ends = np.cumsum(records["row_size"].values)
-    parts: dict[str, list[xr.Dataset]] = {}
-    for index, (end, size) in enumerate(zip(ends, records["row_size"].values, strict=True)):
-        part = records.isel(deployment=index, obs=slice(end - size, end))
-        parts.setdefault(str(part["site"].values), []).append(part)
-    return [_record_row(site, parts[site["id"]], year) for site in run.summary["sites"] if site["id"] in parts]
-
-
-def _record_row(site: Mapping[str, Any], deployments: Sequence[xr.Dataset], reference_year: int) -> RecordRow:
-    used = [part.isel(obs=np.isfinite(part["reduced"].values)) for part in deployments]
-    time = np.concatenate([part["time"].values for part in used])
-    order = np.argsort(time, kind="stable")
-    annual = annual_basis(days_since(time, reference_year)) @ np.array(site["phasor_hpa"])
-    reduced = np.concatenate([part["reduced"].values for part in used])
-    days, first = np.unique(np.concatenate([part["time"].values for part in deployments]), return_index=True)
-    return RecordRow(
-        site=site["id"],
-        deployments=[_record_and_drift(part) for part in used if part.sizes["obs"]],
-        correction_time=days,
-        corrections={name: _about_zero(series[first]) for name, series in _subtracted(deployments).items()},
-        reduced_time=time[order],
-        reduced=reduced[order] / PASCAL_PER_HPA,
-        annual=annual[order],
-        note="not quiet" if site["reduced_sd_hpa"] * PASCAL_PER_HPA > QUIET_SD else "",
-    )
-
-
-def _record_and_drift(
-    used: xr.Dataset,
-) -> tuple[NDArray[np.datetime64], NDArray[np.float64], NDArray[np.float64]]:
-    """Time, daily pressure and drift of a deployment, both less their own mean, hPa."""
-    return used["time"].values, _about_zero(used["pressure"].values), _about_zero(used["drift"].values)
-
-
-def _subtracted(deployments: Sequence[xr.Dataset]) -> dict[str, NDArray[np.float64]]:
-    """Series that were taken off a site, its deployments end to end; those that are zero are left out."""
-    present = deployments[0]["model_present"].values == 1
-    series = {
-        "long-period tides": _joined(deployments, "long_period_tides"),
-        "ocean-mean air pressure": _joined(deployments, "ocean_mean_atmosphere"),
-        "pole tide": _joined(deployments, "pole_tide"),
-    }
-    if present.any():
-        series["circulation (model mean)"] = _joined(deployments, "circulation")[present].mean(axis=0)
-    return {name: values for name, values in series.items() if np.any(values)}
-
-
-def _joined(deployments: Sequence[xr.Dataset], name: str) -> NDArray[np.float64]:
-    return np.concatenate([part[name].values for part in deployments], axis=-1)
-
-
-def _about_zero(series: NDArray[np.float64]) -> NDArray[np.float64]:
-    return np.asarray((series - np.nanmean(series)) / PASCAL_PER_HPA)

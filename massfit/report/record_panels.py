@@ -1,7 +1,6 @@
 """One row a site: the daily record and its drift, what was taken off, and what remains."""
 
-from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass
+from collections.abc import Callable, Sequence
 
 import numpy as np
 from matplotlib.axes import Axes
@@ -17,59 +16,22 @@ from massfit.report.style import (
     LAND,
     PAGE_WIDTH_MM,
     REFERENCE,
+    SERIES_COLOURS,
     SITE,
     house_style,
     placed_axes,
     sheet,
 )
+from massfit.results.record_rows import RecordRow
 
 ROWS_OF_A_PAGE = 18
 """Sites in one picture."""
-
-# drawn in this order: the fast tides lie behind the rest
-CORRECTIONS = {
-    "long-period tides": "#C8C8C8",
-    "circulation (model mean)": "#0072B2",
-    "ocean-mean air pressure": "#E69F00",
-    "pole tide": "#000000",
-}
 
 _TITLES = ("daily record; drift dashed / hPa", "subtracted / hPa", "what remains; fitted cycle / hPa")
 _ROW_MM = 12.5
 _BAND = 0.86  # share of a row's height that its lines may fill
 
 Height = Callable[[NDArray[np.float64]], NDArray[np.float64]]
-
-
-@dataclass(frozen=True)
-class RecordRow:
-    """What one row of the figure shows.
-
-    Parameters
-    ----------
-    site : str
-    deployments : sequence of (time, pressure, drift)
-        Daily pressure and fitted drift with steps, each about its own mean, hPa; one entry a deployment.
-    correction_time : (n,) array of datetime64
-    corrections : mapping of str to (n,) array
-        Series that were subtracted, hPa, by the names of `CORRECTIONS`.
-    reduced_time : (m,) array of datetime64
-    reduced : (m,) array
-        Record less corrections, drift and steps, hPa.
-    annual : (m,) array
-        Fitted annual cycle on `reduced_time`, hPa.
-    note : str
-        Printed beside the name when the site carries a warning.
-    """
-
-    site: str
-    deployments: Sequence[tuple[NDArray[np.datetime64], NDArray[np.float64], NDArray[np.float64]]]
-    correction_time: NDArray[np.datetime64]
-    corrections: Mapping[str, NDArray[np.float64]]
-    reduced_time: NDArray[np.datetime64]
-    reduced: NDArray[np.float64]
-    annual: NDArray[np.float64]
-    note: str = ""
 
 
 def record_panels(rows: Sequence[RecordRow], *, width_mm: float = PAGE_WIDTH_MM) -> Figure:
@@ -108,7 +70,7 @@ def record_panels(rows: Sequence[RecordRow], *, width_mm: float = PAGE_WIDTH_MM)
         entries = {
             label: line for axes in panels for line, label in zip(*axes.get_legend_handles_labels(), strict=True)
         }
-        ordered = [label for label in CORRECTIONS if label in entries]
+        ordered = [label for label in SERIES_COLOURS if label in entries]
         figure.legend([entries[label] for label in ordered], ordered, loc="upper center", ncols=4, borderaxespad=0.2)
     return figure
 
@@ -122,7 +84,7 @@ def _draw_record(axes: Axes, row: RecordRow, place: int) -> None:
 
 def _draw_corrections(axes: Axes, row: RecordRow, place: int) -> None:
     height = _scaled(axes, list(row.corrections.values()), place)
-    for label, colour in CORRECTIONS.items():
+    for label, colour in SERIES_COLOURS.items():
         if label in row.corrections:
             axes.plot(row.correction_time, height(row.corrections[label]), color=colour, linewidth=0.5, label=label)
 

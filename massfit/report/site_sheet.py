@@ -22,18 +22,16 @@ from massfit.report.style import (
     LAND,
     PAGE_WIDTH_MM,
     REFERENCE,
+    SERIES_COLOURS,
     SITE,
     house_style,
     placed_axes,
     sheet,
     zero_lines,
 )
-from massfit.results.site_sheet import SERIES, SiteSheet
+from massfit.results.site_sheet import SiteSheet
 
 Floats = NDArray[np.float64]
-
-SERIES_COLOURS = dict(zip(SERIES, ("#C8C8C8", "#0072B2", "#E69F00", "#000000"), strict=True))
-"""Drawn in this order: the fast tides lie behind the rest."""
 
 DOTS_PER_INCH = 150
 _COLOURS = 96  # of the palette of a picture: lines, their edges, and a few shades

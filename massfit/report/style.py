@@ -15,6 +15,14 @@ SITE = "#E69F00"
 REFERENCE = "#4D4D4D"
 LAND = "#D9D9D9"
 
+SERIES_COLOURS = {
+    "long-period tides": "#C8C8C8",
+    "circulation (model mean)": "#0072B2",
+    "ocean-mean air pressure": "#E69F00",
+    "pole tide": "#000000",
+}
+"""Of the series that are subtracted, in the order in which they are drawn: the fast tides lie behind the rest."""
+
 PAGE_WIDTH_MM = 180.0
 """Width of a figure over the whole page."""
 

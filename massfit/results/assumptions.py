@@ -135,6 +135,9 @@ def _circulation(network: Network) -> list[str]:
             "phasors of the sites, and the spread between models is assumed from its prior, not seen."
         ]
     names = ", ".join(f"{model.name} (air pressure {model.air_pressure})" for model in network.circulation)
+    cut = [model.name for model in network.circulation if model.partial == "cut"]
+    if cut:
+        names += f"; records are cut to the days of {', '.join(cut)} where these cover less"
     seen = "" if count > 1 else " With one model their spread is assumed from its prior, not seen."
     return [f"Ocean circulation is removed with {count} model{'s' if count > 1 else ''}: {names}.{seen}"]
 

@@ -1,5 +1,6 @@
 """Circulation models at the sites."""
 
+import tracemalloc
 from functools import cache
 
 import numpy as np
@@ -244,6 +245,28 @@ def test_a_lazy_file_is_read_in_blocks(tmp_path, monkeypatch: pytest.MonkeyPatch
         lazy = circulation_at_sites(model(data["pressure"]), SITES, ocean=OCEAN)
         assert not data["pressure"].variable._in_memory  # the whole field was never loaded
     np.testing.assert_allclose(lazy.pressure, circulation_at_sites(model(gyre()), SITES, ocean=OCEAN).pressure)
+
+
+def test_a_big_field_never_stands_in_memory_as_a_whole(tmp_path, monkeypatch: pytest.MonkeyPatch) -> None:
+    # a daily field of two years, 25 MB as numbers; read in blocks of a fiftieth of it
+    time = np.arange("2015-01-01T12", "2017-01-01", 24, dtype="datetime64[h]").astype("datetime64[ns]")
+    rng = np.random.default_rng(2)
+    latitude, longitude = np.arange(-88.0, 90.0, 4.0), np.arange(2.0, 360.0, 4.0)
+    values = rng.normal(0.0, 100.0, (time.size, latitude.size, longitude.size))
+    coordinates = {"time": time, "lat": latitude, "lon": longitude}
+    field = xr.DataArray(values, dims=("time", "lat", "lon"), coords=coordinates, name="pressure")
+    field.to_netcdf(tmp_path / "big.nc", engine="h5netcdf", encoding={"pressure": {"chunksizes": (10, 45, 90)}})
+    size, block = values.nbytes, values.nbytes // 50
+    monkeypatch.setattr("massfit.corrections.grid_field._BLOCK_VALUES", block // 8)
+    weights = footprints()
+    with xr.open_dataset(tmp_path / "big.nc", engine="h5netcdf", cache=False) as data:
+        tracemalloc.start()
+        circulation_at_sites(model(data["pressure"]), SITES, ocean=OCEAN, footprints=weights)
+        peak = tracemalloc.get_traced_memory()[1]
+        tracemalloc.stop()
+    # the quarter-degree ocean and the footprints are regridded in any case: 1440 x 720 numbers and their partial sums
+    regridding = 3 * 8 * 1440 * 720
+    assert peak < regridding + 8 * block < size + regridding
 
 
 @pytest.mark.parametrize(("sd_pa", "refused"), [(500.0, False), (5e6, True)])

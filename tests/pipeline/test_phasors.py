@@ -118,3 +118,9 @@ def test_finished_phasors_are_not_replaced_unasked(folder: Path) -> None:
     again = CliRunner().invoke(main, ["phasors", str(folder)])
     assert again.exit_code == 2
     assert "holds finished results" in again.output
+
+
+def test_report_says_whose_results_these_are(folder: Path) -> None:
+    done = CliRunner().invoke(main, ["report", str(folder / "phasors")])
+    assert done.exit_code == 2
+    assert "it holds what massfit phasors wrote, without an answer" in done.output

@@ -6,6 +6,8 @@ import numpy as np
 import pytest
 
 from massfit.report.site_sheet import sheet_png, site_sheet
+from massfit.report.style import SERIES_COLOURS
+from massfit.results.daily_parts import SERIES
 from massfit.results.site_sheet import DeploymentCurve, SiteSheet, Spectrum
 
 RNG = np.random.default_rng(3)
@@ -112,6 +114,10 @@ def test_a_line_does_not_cross_a_gap() -> None:
     holed = DeploymentCurve("x/1", curve.time[kept], curve.pressure[kept], curve.drift[kept], curve.drift_sd[kept])
     line = site_sheet(replace(content, deployments=(holed,))).axes[0].lines[0]
     assert np.isnan(line.get_ydata()).sum() == 1
+
+
+def test_every_series_has_a_colour() -> None:
+    assert list(SERIES_COLOURS) == list(SERIES)
 
 
 def test_the_picture_is_small() -> None:

@@ -10,6 +10,13 @@ from massfit.network import Network
 from massfit.results.assumptions import stated_assumptions
 
 
+def test_a_cut_to_the_days_of_a_model_is_said(invented: Network) -> None:
+    first, *others = invented.circulation
+    cut = replace(invented, circulation=(replace(first, partial="cut"), *others))
+    assert f"records are cut to the days of {first.name} where these cover less" in " ".join(stated_assumptions(cut))
+    assert "records are cut" not in " ".join(stated_assumptions(invented))
+
+
 def test_the_source_of_the_ocean_mean_air_pressure_is_named(invented: Network) -> None:
     field = xr.DataArray(np.zeros((1, 1, 1)), dims=("time", "lat", "lon"))
     none = replace(invented, ocean_mean_atmosphere=None, air_pressure=None)
