@@ -5,11 +5,14 @@ from dataclasses import dataclass, replace
 from datetime import date
 from typing import Any
 
+import numpy as np
+
 from massfit.annual.cautions import QUIET_SD
 from massfit.constants import PASCAL_PER_HPA
 from massfit.corrections.circulation import CirculationAtSites
 from massfit.network import Network, ReducedSite
-from massfit.records.daily import TIDES_LEFT
+from massfit.records.daily import GAIN_CHANGE, TIDES_LEFT
+from massfit.records.record import DailyRecord
 from massfit.results.assumptions import stated_assumptions
 from massfit.results.correction_tables import correction_table
 from massfit.results.estimate import SiteReduction
@@ -188,6 +191,7 @@ def _recorded(reduction: SiteReduction) -> tuple[dict[str, Any], list[str]]:
         for daily in reduction.daily
         if any(action.what == TIDES_LEFT for action in daily.actions)
     ]
+    notes += [note for daily in reduction.daily for note in _found_notes(daily)]
     known = {
         "days": fit.days,
         **coverage(reduction.corrections["time"].values, reduction.used),
@@ -197,6 +201,20 @@ def _recorded(reduction: SiteReduction) -> tuple[dict[str, Any], list[str]]:
         "corrections": correction_table(reduction.phasors),
     }
     return known, [*notes, *fit.notes]
+
+
+def _found_notes(daily: DailyRecord) -> list[str]:
+    """Say what was found in a record that its analyst should confirm."""
+    notes = []
+    found = [change for change in daily.changes if change.found]
+    if found:
+        times = ", ".join(f"{change.kind} {np.datetime_as_string(change.start, unit='D')}" for change in found)
+        notes.append(
+            f"{daily.deployment}: changes of level that nobody declared were found and are fitted ({times}). Confirm "
+            'them with `steps` or `ramps`, or refuse them with steps = "none".'
+        )
+    gain = [action.detail for action in daily.actions if action.what == GAIN_CHANGE]
+    return [*notes, *(f"{daily.deployment}: the gain of the sensor seems to change. {detail}." for detail in gain)]
 
 
 def _distances_km(reduction: SiteReduction) -> dict[str, float]:

@@ -148,12 +148,19 @@ def _deployment(deployment: Mapping[str, Any]) -> list[str]:
     text = (
         f"{number}. {span}, every {every}, {deployment['samples']} samples{missing}; "
         f"{deployment['units'] or 'Pa'}, median {deployment['median_hpa']:.6g} hPa; drift {deployment['drift']}, "
-        f"steps {declared}; {deployment['file'] or 'in memory'}"
+        f"steps {declared}{_first_days(deployment)}; {deployment['file'] or 'in memory'}"
     )
     lines = _wrapped(text)
     for note in deployment["notes"]:
         lines += textwrap.wrap(note, WIDTH, initial_indent="     ", subsequent_indent="       ")
     return lines
+
+
+def _first_days(deployment: Mapping[str, Any]) -> str:
+    """Say which ramps are declared and what is done about settling, where that is not the usual."""
+    ramps, settling = deployment["ramps"], deployment["settling"]
+    days = settling if isinstance(settling, str) else f"{settling:g} days left out"
+    return (f", {len(ramps)} ramps declared" if ramps else "") + ("" if settling == "model" else f", settling: {days}")
 
 
 def _models(site: Mapping[str, Any]) -> list[str]:

@@ -201,7 +201,7 @@ def _drift_and_noise(network: Network) -> list[str]:
     priors = network.settings.priors
     scales = f"{min(priors.noise_time_scales_days):g} to {max(priors.noise_time_scales_days):g}"
     found = any(record.find_steps for record in network.records)
-    steps = "sharp changes of level are searched for, fitted and listed" if found else "only declared steps are fitted"
+    steps = "changes of level are searched for, fitted and listed" if found else "only declared changes are fitted"
     noise = f"weighed by evidence ({' / '.join(priors.noise_forms)}; time scales {scales} days)"
     return [
         f"Drift per deployment ({' / '.join(forms)}), annual and semi-annual cycle are fitted together under noise "

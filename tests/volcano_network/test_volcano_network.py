@@ -63,8 +63,16 @@ def test_the_reader_is_told_that_no_site_is_quiet(summary):
 
 
 @pytest.mark.parametrize(("site", "fall_m"), [(0, (0.90, 1.00)), (1, (2.30, 2.40))])
-def test_the_declared_fall_of_the_sea_floor_is_fitted(result, site, fall_m):
+def test_the_fall_of_the_sea_floor_is_fitted_whether_declared_or_found(result, site, fall_m):
     # 0.95 m at the first recorder, 2.3 to 2.4 m at the second, by the provenance of the open data
     ((_, step),) = result.reductions[site].fit.drifts[0].steps
     metres = step.mean / (1035.0 * STANDARD_GRAVITY)
     assert fall_m[0] - 2 * step.sd / 1e4 < metres < fall_m[1] + 2 * step.sd / 1e4
+
+
+def test_what_was_found_is_said_at_its_site(summary):
+    declared, found = (" ".join(site["warnings"]) for site in summary["sites"])
+    assert "nobody declared" not in declared
+    assert "changes of level that nobody declared were found and are fitted (ramp 2015-04-24)" in found
+    said = [action["what"] for action in summary["actions"]["MJ03F/1"]]
+    assert {"changes of level found", "samples on ramps left out", "days without a mean"} <= set(said)
