@@ -9,7 +9,7 @@ from massfit.fingerprint.ocean import OceanFunction
 from massfit.fingerprint.pattern import LoadPattern
 
 _OPEN_OCEAN = 0.999  # ocean fraction of a cell without land to speak of
-_STRAY = 0.01  # share of the load that another land mask may leave on the open ocean
+_STRAY = 0.05  # share of the load that another land mask, or snow on ice shelves, may leave on the open ocean
 _CLOSED_WITHIN = 0.05  # of the load on land: about 0.04 hPa of ocean mean, the error of the air-pressure correction
 _LARGEST = 5e3  # kg m-2: five metres of water once a year
 
@@ -17,7 +17,7 @@ _LARGEST = 5e3  # kg m-2: five metres of water once a year
 def land_load(pattern: LoadPattern, *, water_vapour: complex, source: str) -> LoadPattern:
     """Take the water on land out of a pattern that also covers the ocean.
 
-    Cells with any land keep all their load, and so does the little (1 %) that another mask leaves
+    Cells with any land keep all their load, and so does the little (5 %) that another mask leaves
     on the open ocean. A pattern with more than that on the ocean claims the whole water of the Earth. Its
     integral must then be minus that of the water vapour; its ocean is left out, because the sea-level equation
     finds it, and the ocean part of a coast cell is taken to hold what the open ocean holds on average.

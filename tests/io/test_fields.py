@@ -223,10 +223,10 @@ def test_a_budget_that_does_not_close_says_by_how_much(tmp_path: Path) -> None:
 
 def test_a_little_on_the_ocean_is_another_land_mask(tmp_path: Path) -> None:
     values = 2.0 * np.nan_to_num(inland(LATITUDE, LONGITUDE))
-    values[8, 20] = 0.05  # an island that only the file knows
+    values[8, 20] = 0.2  # an island that only the file knows
     phasor_file(tmp_path / "w.nc", values=values)
     (pattern,) = read_loads(tmp_path / "w.nc", reference_year=2016, source="w.nc")
-    assert pattern.values[8, 20] == 0.05 + 0.05j
+    assert pattern.values[8, 20] == 0.2 + 0.2j
 
 
 def test_millimetres_that_are_called_metres_are_refused(tmp_path: Path) -> None:
