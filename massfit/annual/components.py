@@ -20,10 +20,10 @@ from massfit.annual.chains import DriftSample, sample_drift
 from massfit.annual.design import Design
 from massfit.annual.evidence import (
     ANNUAL,
+    Reducer,
     annual_covariance,
     compress,
     fixed_variance,
-    reduce_columns,
     solve_choices,
 )
 from massfit.annual.families import log_score_prior
@@ -234,7 +234,8 @@ class _Solver:
     """Solves all drift-time choices of one set for one noise model; the sets take turns."""
 
     def __init__(self, design: Design, sample: DriftSample, columns: tuple[Floats, Floats]) -> None:
-        self.design, self.sample, self.columns = design, sample, columns
+        self.design, self.sample = design, sample
+        self._reducer = Reducer(design, *columns)
         self._turns = count()
 
     def solve(self, mode: FamilyMode, scores: Floats, white_ratio: Floats) -> _Batch:
@@ -242,7 +243,7 @@ class _Solver:
         model, grid = mode.family.model(scores, white_ratio), self.sample.grid
         row = next(self._turns) % len(self.sample.choices)
         choices = self.sample.choices[row]
-        reduction = reduce_columns(self.design.covariance(model), self.design, *self.columns, with_companions=True)
+        reduction = self._reducer(self.design.covariance(model))
         solutions = solve_choices(reduction, choices + grid.first_columns)
         return _Batch(
             form=mode.family.form,

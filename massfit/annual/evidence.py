@@ -139,53 +139,55 @@ def compress(exponentials: Floats, first_columns: NDArray[np.int64]) -> tuple[Fl
     return np.column_stack(bases), block_diag(*combinations)
 
 
-def reduce_columns(
-    noise: NoiseCovariance,
-    design: Design,
-    exponentials: Floats,
-    combination: Floats | None = None,
-    *,
-    with_companions: bool = False,
-) -> Reduction:
-    """Whiten all columns and eliminate the fixed ones.
+class Reducer:
+    """Columns of one site laid side by side, to be reduced under one noise model after another.
 
     Parameters
     ----------
-    noise : NoiseCovariance
     design : Design
     exponentials : (n, E) array
-        Exponentials of every drift time of every deployment, or what spans them.
+        Columns of every choice of every drift term, or what spans them.
     combination : (B, E) array, optional
         How they are made of the columns given.
-    with_companions : bool
-        Whether the companions are right-hand sides too; the search of the mode has no use for them.
-
-    Returns
-    -------
-    Reduction
+    data_only : bool
+        Whether contrasts and companions are left out; the search of the mode has no use for them.
     """
-    count, width = design.fixed.shape[1], exponentials.shape[1]
-    companions = [design.companions] if with_companions else []
-    stacked = np.column_stack([design.fixed, exponentials, design.data, design.contrasts, *companions])
-    white = noise.whiten(stacked)
-    sums = white.T @ white
-    normal = sums[:count, :count] + np.diag(design.precision)
-    covariance = np.asarray(np.linalg.inv(normal), float)
-    solved = covariance @ sums[:count, count:]
-    rest = sums[count:, count:] - sums[count:, :count] @ solved
-    leak, exponential, right = solved[:, :width], rest[:width, :width], rest[:width, width:]
-    if combination is not None:
-        leak, exponential, right = leak @ combination, combination.T @ exponential @ combination, combination.T @ right
-    log_evidence = -0.5 * (noise.log_determinant + np.linalg.slogdet(normal)[1] + rest[width, width])
-    return Reduction(
-        log_evidence=float(log_evidence),
-        mean=solved[:, width:],
-        covariance=covariance,
-        leak=leak,
-        exponential=exponential + np.eye(len(exponential)) / design.exponential_sd**2,
-        exponential_right=right,
-        log_exponential_sd=float(np.log(design.exponential_sd)),
-    )
+
+    def __init__(
+        self, design: Design, exponentials: Floats, combination: Floats | None = None, *, data_only: bool = False
+    ) -> None:
+        further = [] if data_only else [design.contrasts, design.companions]
+        self._design, self._combination, self._width = design, combination, exponentials.shape[1]
+        self._stacked = np.column_stack([design.fixed, exponentials, design.data, *further])
+
+    def __call__(self, noise: NoiseCovariance) -> Reduction:
+        """Whiten all columns and eliminate the fixed ones."""
+        design, combination, count, width = self._design, self._combination, self._design.fixed.shape[1], self._width
+        white = noise.whiten(self._stacked)
+        sums = white.T @ white
+        normal = sums[:count, :count] + np.diag(design.precision)
+        covariance = np.asarray(np.linalg.inv(normal), float)
+        solved = covariance @ sums[:count, count:]
+        rest = sums[count:, count:] - sums[count:, :count] @ solved
+        leak, exponential, right = solved[:, :width], rest[:width, :width], rest[:width, width:]
+        if combination is not None:
+            leak, right = leak @ combination, combination.T @ right
+            exponential = combination.T @ exponential @ combination
+        log_evidence = -0.5 * (noise.log_determinant + np.linalg.slogdet(normal)[1] + rest[width, width])
+        return Reduction(
+            log_evidence=float(log_evidence),
+            mean=solved[:, width:],
+            covariance=covariance,
+            leak=leak,
+            exponential=exponential + np.eye(len(exponential)) / design.exponential_sd**2,
+            exponential_right=right,
+            log_exponential_sd=float(np.log(design.exponential_sd)),
+        )
+
+
+def reduce_columns(noise: NoiseCovariance, design: Design, exponentials: Floats) -> Reduction:
+    """Whiten all columns of a site and eliminate the fixed ones; see `Reducer`."""
+    return Reducer(design, exponentials)(noise)
 
 
 @dataclass(frozen=True)

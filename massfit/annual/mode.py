@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from massfit.annual.design import Design
-from massfit.annual.evidence import reduce_columns, solve_choices
+from massfit.annual.evidence import Reducer, solve_choices
 from massfit.annual.families import NoiseFamily, log_score_prior
 from massfit.annual.grid import DriftGrid, refine_grid
 from massfit.annual.nodes import Nodes, exponential_nodes
@@ -30,8 +30,8 @@ MAX_NEWTON_STEPS = 20
 LONGEST_STEP = 1.5
 """Of a score in one Newton step."""
 
-DIFFERENCE_STEP = 0.1
-"""Step of the differences in score: wide enough to see past rounding and small kinks."""
+DIFFERENCE_STEP = 0.05
+"""Step of the differences in score: wide enough to see past rounding."""
 
 WHITE_RATIO_SD = 0.5
 """Prior standard deviation of the logarithm of a recorder's white noise over that of its site."""
@@ -148,7 +148,8 @@ def minimise(objective: Callable[[Floats], float], start: Floats) -> Minimum:
     """
     scores, value = start, objective(start)
     for _ in range(MAX_NEWTON_STEPS):
-        gradient, spread = _local_shape(objective, scores, value)
+        gradient, hessian = _local_shape(objective, scores, value)
+        spread = _inverse(hessian)
         step = -spread @ gradient
         if -gradient @ step < 2.0 * NEWTON_TOLERANCE:
             break
@@ -164,18 +165,23 @@ def minimise(objective: Callable[[Floats], float], start: Floats) -> Minimum:
 
 
 def _local_shape(objective: Callable[[Floats], float], scores: Floats, value: float) -> tuple[Floats, Floats]:
-    """Gradient and inverse Hessian by differences; directions of no curvature get a wide unit spread."""
+    """Gradient and Hessian by differences."""
     steps = DIFFERENCE_STEP * np.eye(len(scores))
     low, high = (np.array([objective(scores + sign * step) for step in steps]) for sign in (-1, 1))
-    hessian = np.diag(high + low - 2.0 * value)
+    gradient, hessian = (high - low) / (2.0 * DIFFERENCE_STEP), np.diag(high + low - 2.0 * value) / DIFFERENCE_STEP**2
     for i, j in combinations(range(len(scores)), 2):
         both = objective(scores + steps[i] + steps[j]) + objective(scores - steps[i] - steps[j])
-        hessian[i, j] = hessian[j, i] = 0.5 * (both + 2.0 * value - high[i] - low[i] - high[j] - low[j])
+        parts = both + 2.0 * value - high[i] - low[i] - high[j] - low[j]
+        hessian[i, j] = hessian[j, i] = 0.5 * parts / DIFFERENCE_STEP**2
+    return gradient, hessian
+
+
+def _inverse(hessian: Floats) -> Floats:
+    """Inverse of a Hessian; directions of no curvature get a wide unit spread."""
     if not np.isfinite(hessian).all():
         raise ConvergenceError("the fit of the noise of a site", float("nan"), NEWTON_TOLERANCE)
-    curvature, directions = np.linalg.eigh(hessian / DIFFERENCE_STEP**2)
-    spread = (directions / np.maximum(curvature, 1.0)) @ directions.T
-    return (high - low) / (2.0 * DIFFERENCE_STEP), np.asarray(spread)
+    curvature, directions = np.linalg.eigh(hessian)
+    return np.asarray((directions / np.maximum(curvature, 1.0)) @ directions.T)
 
 
 def _rough_sd(design: Design) -> float:
@@ -220,12 +226,11 @@ def _objective(design: Design, family: NoiseFamily, ratio: Floats, terms: Sequen
 
 
 def _log_evidence(design: Design, terms: Sequence[Nodes]) -> Callable[[NoiseModel], float]:
-    columns = design.drift_columns(terms)
+    reducer = Reducer(design, design.drift_columns(terms), data_only=True)
     choice = np.arange(len(terms))[None, :]
 
     def log_evidence(model: NoiseModel) -> float:
-        reduction = reduce_columns(design.covariance(model), design, columns)
-        return float(solve_choices(reduction, choice).log_evidence[0])
+        return float(solve_choices(reducer(design.covariance(model)), choice).log_evidence[0])
 
     return log_evidence
 
