@@ -12,8 +12,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from massfit.annual.design import Design
-from massfit.annual.evidence import Reduction, conditional_log_evidence, reduce_columns
+from massfit.annual.evidence import DriftBasis, Reduction, conditional_log_evidence
 from massfit.annual.grid import DriftGrid
 from massfit.annual.noise import NoiseCovariance
 
@@ -54,14 +53,14 @@ class DriftSample:
     log_ratio: Floats
 
 
-def sample_drift(noise: NoiseCovariance, design: Design, grid: DriftGrid, rng: np.random.Generator) -> DriftSample:
+def sample_drift(noise: NoiseCovariance, basis: DriftBasis, grid: DriftGrid, rng: np.random.Generator) -> DriftSample:
     """Choices of the drift terms: every node for one, a joint sample for more.
 
     Parameters
     ----------
     noise : NoiseCovariance
         At the joint mode.
-    design : Design
+    basis : DriftBasis
     grid : DriftGrid
         Refined in turn.
     rng : numpy.random.Generator
@@ -75,18 +74,19 @@ def sample_drift(noise: NoiseCovariance, design: Design, grid: DriftGrid, rng: n
         choices = np.arange(len(grid.nodes[0]) if grid.nodes else 1)[None, :, None][:, :, : len(grid.nodes)]
         log_ratio = np.log(grid.nodes[0].prior) if grid.nodes else np.zeros(1)
         return DriftSample(grid, choices, log_ratio[None, :])
+    whole = basis.reduce(noise)
     choices = np.column_stack([_draw(np.tile(mass, (CHAINS, 1)), rng) for mass in grid.mass])
     for _ in range(REFINEMENTS):
-        chains = _Chains(noise, design, grid, choices)
+        chains = _Chains(whole, basis, grid, choices)
         finer = replace(grid, mass=chains.run(REFINEMENT_SWEEPS, rng)).split()
         choices = _moved(chains.choices, grid, finer)
         if all(len(new) == len(old) for new, old in zip(finer.nodes, grid.nodes, strict=True)):
             break
         grid = finer
-    chains = _Chains(noise, design, grid, choices)
+    chains = _Chains(whole, basis, grid, choices)
     final = replace(grid, mass=chains.run(REFINEMENT_SWEEPS, rng)).pruned()
     choices, grid = _moved(chains.choices, grid, final), final
-    chains = _Chains(noise, design, grid, choices)
+    chains = _Chains(whole, basis, grid, choices)
     chains.run(BURN_IN, rng)
     kept, log_evidence = [], []
     for _ in range(KEPT_SWEEPS):
@@ -99,9 +99,9 @@ def sample_drift(noise: NoiseCovariance, design: Design, grid: DriftGrid, rng: n
 class _Chains:
     """Gibbs chains over the nodes of one grid."""
 
-    def __init__(self, noise: NoiseCovariance, design: Design, grid: DriftGrid, choices: Choices) -> None:
+    def __init__(self, whole: Reduction, basis: DriftBasis, grid: DriftGrid, choices: Choices) -> None:
         self.grid = grid
-        self.reduction: Reduction = reduce_columns(noise, design, design.drift_columns(grid.nodes))
+        self.reduction = whole.combined(basis.combination(grid.nodes))
         self.choices = choices.copy()
         self.log_evidence = np.zeros(len(choices))
 

@@ -17,12 +17,11 @@ from numpy.typing import NDArray
 from scipy.special import gammaincinv, gammaln, ndtri
 
 from massfit.annual.chains import DriftSample, sample_drift
-from massfit.annual.design import Design
 from massfit.annual.evidence import (
     ANNUAL,
+    DriftBasis,
     Reducer,
     annual_covariance,
-    compress,
     fixed_variance,
     solve_choices,
 )
@@ -34,12 +33,12 @@ from massfit.annual.noise import NoiseModel
 Floats = NDArray[np.float64]
 Choices = NDArray[np.int64]
 
-LEAST_NODES, NODES_PER_ROUND = 12, 36
-"""Noise models tried in a round: the first for every form, and the second shared by weight."""
+LEAST_NODES, NODES_PER_ROUND = 4, 28
+"""Noise models tried in a round: the first for every form, and the second times the root of its share of the weight."""
 
 LEAST_ROUNDS, MOST_ROUNDS = 2, 8
 
-EFFECTIVE_NODES = 50.0
+EFFECTIVE_NODES = 40.0
 """Rounds end when so many noise models count, shared by weight."""
 
 PROPOSAL_DEGREES = 5
@@ -104,12 +103,12 @@ class Components:
         return float(1.0 / np.sum(self.node_weight**2))
 
 
-def integrate(design: Design, mode: Mode, rng: np.random.Generator) -> Components:
+def integrate(basis: DriftBasis, mode: Mode, rng: np.random.Generator) -> Components:
     """Weighted components over forms of noise, their parameters and drift times.
 
     Parameters
     ----------
-    design : Design
+    basis : DriftBasis
     mode : Mode
     rng : numpy.random.Generator
 
@@ -117,9 +116,8 @@ def integrate(design: Design, mode: Mode, rng: np.random.Generator) -> Component
     -------
     Components
     """
-    sample = sample_drift(design.covariance(mode.noise), design, mode.grid, rng)
-    columns = compress(design.drift_columns(sample.grid.nodes), sample.grid.first_columns)
-    solver = _Solver(design, sample, columns)
+    sample = sample_drift(basis.design.covariance(mode.noise), basis, mode.grid, rng)
+    solver = _Solver(basis, sample)
     log_evidence = np.array([each.log_evidence for each in mode.families])
     share = np.exp(log_evidence - np.logaddexp.reduce(log_evidence))
     batches = [
@@ -134,7 +132,7 @@ def _explore(
     solver: "_Solver", mode: FamilyMode, white_ratio: Floats, share: float, rng: np.random.Generator
 ) -> "list[_Batch]":
     """Weighted noise models of one form; their weights sum to its evidence."""
-    size = LEAST_NODES + round(NODES_PER_ROUND * share)
+    size = LEAST_NODES + round(NODES_PER_ROUND * np.sqrt(share))
     start = _Proposal(mode.scores[None, :], np.ones(1), PROPOSAL_WIDENING * mode.spread)
     proposals, nodes, batches = [start], np.zeros((0, len(mode.scores))), []
     while True:
@@ -233,9 +231,10 @@ class _Batch:
 class _Solver:
     """Solves all drift-time choices of one set for one noise model; the sets take turns."""
 
-    def __init__(self, design: Design, sample: DriftSample, columns: tuple[Floats, Floats]) -> None:
-        self.design, self.sample = design, sample
-        self._reducer = Reducer(design, *columns)
+    def __init__(self, basis: DriftBasis, sample: DriftSample) -> None:
+        self.design, self.sample = basis.design, sample
+        self._reducer = Reducer(basis.design, basis.columns)
+        self._combination = basis.combination(sample.grid.nodes)
         self._turns = count()
 
     def solve(self, mode: FamilyMode, scores: Floats, white_ratio: Floats) -> _Batch:
@@ -243,7 +242,7 @@ class _Solver:
         model, grid = mode.family.model(scores, white_ratio), self.sample.grid
         row = next(self._turns) % len(self.sample.choices)
         choices = self.sample.choices[row]
-        reduction = self._reducer(self.design.covariance(model))
+        reduction = self._reducer(self.design.covariance(model)).combined(self._combination)
         solutions = solve_choices(reduction, choices + grid.first_columns)
         return _Batch(
             form=mode.family.form,

@@ -15,11 +15,11 @@ from massfit.annual.chains import sample_drift
 from massfit.annual.design import Design, DriftColumns, build_design, mean_circulation
 from massfit.annual.evidence import (
     ANNUAL,
+    DriftBasis,
     Reduction,
     Solutions,
     annual_covariance,
     linear_fit,
-    reduce_columns,
     solve_choices,
 )
 from massfit.annual.fit import SiteFit
@@ -204,10 +204,10 @@ def diagnose_site(
     design = build_design(records, reference_year=reference_year, priors=priors)
     model = fit.noise.typical
     noise = design.covariance(model)
-    grid = refine_grid(noise, design)
-    sample = sample_drift(noise, design, grid, rng)
-    columns = design.drift_columns(sample.grid.nodes)
-    reduction = reduce_columns(noise, design, columns)
+    basis = DriftBasis(design)
+    grid = refine_grid(noise, basis)
+    sample = sample_drift(noise, basis, grid, rng)
+    reduction = basis.reduce(noise).combined(basis.combination(sample.grid.nodes))
     choices = sample.choices.reshape(sample.log_ratio.size, -1)
     solutions = solve_choices(reduction, choices + sample.grid.first_columns)
     log_weight = solutions.log_evidence + sample.log_ratio.ravel()

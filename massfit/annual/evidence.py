@@ -7,19 +7,24 @@ columns are eliminated once for a noise model; what is left for a choice of drif
 times is a problem of one row and column per exponential.
 """
 
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy.linalg import block_diag
 
-from massfit.annual.design import Design
-from massfit.annual.noise import NoiseCovariance
+from massfit.annual.design import Design, DriftTerm
+from massfit.annual.nodes import Nodes, first_nodes
+from massfit.annual.noise import NoiseCovariance, NoiseModel
 
 Floats = NDArray[np.float64]
 
 ANNUAL = np.array([0, 1])
 """Fixed columns that hold the annual phasor."""
+
+SPANNING_NODES = 40
+"""Time constants of a form, log-spaced over its range, whose columns make the basis."""
 
 COMPRESSION = 1e-9
 """Singular values kept, relative to the largest: a drift of 30 hPa is kept to 1e-4 Pa over a thousand days."""
@@ -90,53 +95,100 @@ class Reduction:
     covariance : (f, f) array
         Of the fixed coefficients, Pa^2.
     leak : (f, E) array
-        Response of the fixed coefficients to each exponential.
-    exponential : (E, E) array
-        Normal matrix of the exponentials, prior included.
-    exponential_right : (E, 1 + M + C) array
+        Response of the fixed coefficients to each column of the drift terms.
+    normal : (E, E) array
+        Normal matrix of these columns, without the prior of their sizes.
+    right : (E, 1 + M + C) array
         Their right-hand sides.
-    log_exponential_sd : float
-        Logarithm of the prior standard deviation of an exponential's size.
+    precision : float
+        Prior precision of the sizes, Pa^-2.
     """
 
     log_evidence: float
     mean: Floats
     covariance: Floats
     leak: Floats
-    exponential: Floats
-    exponential_right: Floats
-    log_exponential_sd: float
+    normal: Floats
+    right: Floats
+    precision: float
+
+    def combined(self, combination: Floats) -> "Reduction":
+        """Reduction of columns that are made of those of this one: (E, G) coefficients."""
+        return replace(
+            self,
+            leak=self.leak @ combination,
+            normal=combination.T @ self.normal @ combination,
+            right=combination.T @ self.right,
+        )
 
 
-def compress(exponentials: Floats, first_columns: NDArray[np.int64]) -> tuple[Floats, Floats]:
-    """Few columns that span those of each deployment, by singular values.
-
-    Decays with neighbouring time constants are nearly the same: a grid of forty needs
-    about ten directions.
+class ChosenEvidence:
+    """Log evidence of one noise model after another at one choice of every drift term.
 
     Parameters
     ----------
-    exponentials : (n, E) array
-    first_columns : (D,) array of int
-        First column of each deployment.
-
-    Returns
-    -------
-    basis : (n, B) array
-    combination : (B, E) array
-        ``basis @ combination`` is `exponentials`.
+    design : Design
+    terms : (n, D) array
+        The column chosen for each term.
     """
-    if not len(first_columns):
-        return exponentials, np.zeros((0, 0))
-    bases, combinations = [], []
-    for block in np.split(exponentials, first_columns[1:], axis=1):
-        rows = block.any(axis=1)
-        left, values, right = np.linalg.svd(block[rows], full_matrices=False)
-        kept = int(np.sum(values > COMPRESSION * values.max(initial=0.0)))
-        bases.append(np.zeros((len(block), kept)))
-        bases[-1][rows] = left[:, :kept]
-        combinations.append(values[:kept, None] * right[:kept])
-    return np.column_stack(bases), block_diag(*combinations)
+
+    def __init__(self, design: Design, terms: Floats) -> None:
+        self._design = design
+        self._stacked = np.column_stack([design.fixed, terms, design.data])
+        self._precision = np.diag(np.append(design.precision, np.full(terms.shape[1], design.exponential_sd**-2)))
+        self._log_prior = terms.shape[1] * np.log(design.exponential_sd)
+
+    def __call__(self, model: NoiseModel) -> float:
+        """Log evidence."""
+        noise = self._design.covariance(model)
+        white = noise.whiten(self._stacked)
+        sums = white.T @ white
+        normal, right = sums[:-1, :-1] + self._precision, sums[:-1, -1]
+        misfit = sums[-1, -1] - right @ np.linalg.solve(normal, right)
+        determinants = noise.log_determinant + np.linalg.slogdet(normal)[1]
+        return float(-0.5 * (determinants + misfit) - self._log_prior)
+
+
+class DriftBasis:
+    """Few columns of every drift term that span those of all its time constants.
+
+    Decays with neighbouring time constants are nearly the same: a dozen directions hold them
+    all, and are whitened once for a noise model whatever the grid.
+
+    Parameters
+    ----------
+    design : Design
+    """
+
+    def __init__(self, design: Design) -> None:
+        self.design = design
+        self._spans = [_span(design, term) for term in design.terms]
+        padded = [np.zeros((len(design.days), 0))]
+        for rows, span in self._spans:
+            padded.append(np.zeros((len(design.days), span.shape[1])))
+            padded[-1][rows] = span
+        self.columns = np.column_stack(padded)
+
+    def combination(self, nodes: Sequence[Nodes]) -> Floats:
+        """How the columns of given choices are made of the basis: (B, sum G_d)."""
+        blocks = [
+            span.T @ self.design.term_columns(term, own, rows)
+            for term, own, (rows, span) in zip(self.design.terms, nodes, self._spans, strict=True)
+        ]
+        return np.asarray(block_diag(*blocks)) if blocks else np.zeros((0, 0))
+
+    def reduce(self, noise: NoiseCovariance) -> "Reduction":
+        """Whiten the data and the basis and eliminate the fixed columns; contrasts and companions are left out."""
+        return Reducer(self.design, self.columns, data_only=True)(noise)
+
+
+def _span(design: Design, term: DriftTerm) -> tuple[NDArray[np.int64], Floats]:
+    """Rows of a deployment, and orthonormal columns on them."""
+    drift = design.drifts[term.deployment]
+    rows = np.append(drift.rows, drift.calibration_rows)
+    columns = design.term_columns(term, first_nodes(term.forms, term.low, term.high, SPANNING_NODES), rows)
+    left, values, _ = np.linalg.svd(columns, full_matrices=False)
+    return rows, left[:, values > COMPRESSION * values[0]]
 
 
 class Reducer:
@@ -145,49 +197,41 @@ class Reducer:
     Parameters
     ----------
     design : Design
-    exponentials : (n, E) array
-        Columns of every choice of every drift term, or what spans them.
-    combination : (B, E) array, optional
-        How they are made of the columns given.
+    terms : (n, B) array
+        Columns of every choice of every drift term, or a basis of them.
     data_only : bool
-        Whether contrasts and companions are left out; the search of the mode has no use for them.
+        Whether contrasts and companions are left out.
     """
 
-    def __init__(
-        self, design: Design, exponentials: Floats, combination: Floats | None = None, *, data_only: bool = False
-    ) -> None:
+    def __init__(self, design: Design, terms: Floats, *, data_only: bool = False) -> None:
         further = [] if data_only else [design.contrasts, design.companions]
-        self._design, self._combination, self._width = design, combination, exponentials.shape[1]
-        self._stacked = np.column_stack([design.fixed, exponentials, design.data, *further])
+        self._design, self._width = design, terms.shape[1]
+        self._stacked = np.column_stack([design.fixed, terms, design.data, *further])
 
     def __call__(self, noise: NoiseCovariance) -> Reduction:
         """Whiten all columns and eliminate the fixed ones."""
-        design, combination, count, width = self._design, self._combination, self._design.fixed.shape[1], self._width
+        design, count, width = self._design, self._design.fixed.shape[1], self._width
         white = noise.whiten(self._stacked)
         sums = white.T @ white
         normal = sums[:count, :count] + np.diag(design.precision)
         covariance = np.asarray(np.linalg.inv(normal), float)
         solved = covariance @ sums[:count, count:]
         rest = sums[count:, count:] - sums[count:, :count] @ solved
-        leak, exponential, right = solved[:, :width], rest[:width, :width], rest[:width, width:]
-        if combination is not None:
-            leak, right = leak @ combination, combination.T @ right
-            exponential = combination.T @ exponential @ combination
         log_evidence = -0.5 * (noise.log_determinant + np.linalg.slogdet(normal)[1] + rest[width, width])
         return Reduction(
             log_evidence=float(log_evidence),
             mean=solved[:, width:],
             covariance=covariance,
-            leak=leak,
-            exponential=exponential + np.eye(len(exponential)) / design.exponential_sd**2,
-            exponential_right=right,
-            log_exponential_sd=float(np.log(design.exponential_sd)),
+            leak=solved[:, :width],
+            normal=rest[:width, :width],
+            right=rest[:width, width:],
+            precision=design.exponential_sd**-2,
         )
 
 
-def reduce_columns(noise: NoiseCovariance, design: Design, exponentials: Floats) -> Reduction:
+def reduce_columns(noise: NoiseCovariance, design: Design, terms: Floats) -> Reduction:
     """Whiten all columns of a site and eliminate the fixed ones; see `Reducer`."""
-    return Reducer(design, exponentials)(noise)
+    return Reducer(design, terms)(noise)
 
 
 @dataclass(frozen=True)
@@ -227,12 +271,12 @@ def solve_choices(reduction: Reduction, choices: NDArray[np.int64]) -> Solutions
     -------
     Solutions
     """
-    normal = reduction.exponential[choices[:, :, None], choices[:, None, :]]
-    right = reduction.exponential_right[choices]
+    normal = reduction.normal[choices[:, :, None], choices[:, None, :]] + reduction.precision * np.eye(choices.shape[1])
+    right = reduction.right[choices]
     covariance = np.asarray(np.linalg.inv(normal), float)
     size = covariance @ right
     gain = np.sum(right[..., 0] * size[..., 0], axis=1)
-    log_determinant = np.linalg.slogdet(normal)[1] + 2.0 * choices.shape[1] * reduction.log_exponential_sd
+    log_determinant = np.linalg.slogdet(normal)[1] - choices.shape[1] * np.log(reduction.precision)
     leak = reduction.leak.T[choices].swapaxes(1, 2)
     return Solutions(
         log_evidence=reduction.log_evidence + 0.5 * (gain - log_determinant),
@@ -264,16 +308,16 @@ def conditional_log_evidence(
     (C, G) array
     """
     others = np.delete(choices, place, axis=1)
-    normal = reduction.exponential[others[:, :, None], others[:, None, :]]
-    cross = reduction.exponential[others[:, :, None], columns]
-    right = reduction.exponential_right[:, 0]
+    normal = reduction.normal[others[:, :, None], others[:, None, :]] + reduction.precision * np.eye(others.shape[1])
+    cross = reduction.normal[others[:, :, None], columns]
+    right = reduction.right[:, 0]
     solved = np.linalg.inv(normal) @ cross
-    own = np.diag(reduction.exponential)[columns] - np.sum(cross * solved, axis=1)
+    own = reduction.precision + np.diag(reduction.normal)[columns] - np.sum(cross * solved, axis=1)
     # no less than the prior precision, which rounding can hide where two recorders agree to their resolution
-    own = np.maximum(own, np.exp(-2.0 * reduction.log_exponential_sd))
+    own = np.maximum(own, reduction.precision)
     own_right = right[columns] - np.sum(right[others][:, :, None] * solved, axis=1)
     alone = solve_choices(reduction, others).log_evidence
-    return np.asarray(alone[:, None] + 0.5 * (own_right**2 / own - np.log(own)) - reduction.log_exponential_sd)
+    return np.asarray(alone[:, None] + 0.5 * (own_right**2 / own - np.log(own / reduction.precision)))
 
 
 def annual_covariance(reduction: Reduction, solutions: Solutions) -> Floats:

@@ -19,6 +19,7 @@ from massfit.annual.design import (
     build_design,
     mean_circulation,
 )
+from massfit.annual.evidence import DriftBasis
 from massfit.annual.families import noise_families
 from massfit.annual.mode import Mode, joint_mode
 from massfit.annual.nodes import EXPONENTIAL, LINE, LOGARITHM, NOTHING, TIMED
@@ -236,8 +237,9 @@ def fit_site(
     """
     check_records(records, models, site)
     design = build_design(records, reference_year=reference_year, priors=priors)
-    mode = joint_mode(design, noise_families(priors))
-    components = integrate(design, mode, rng)
+    basis = DriftBasis(design)
+    mode = joint_mode(basis, noise_families(priors))
+    components = integrate(basis, mode, rng)
     operator = phasor_operator(design.covariance(mode.noise), design, mode.grid.mode)
     parts = merge_components(components)
     first = 1 + len(models)

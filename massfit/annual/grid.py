@@ -5,8 +5,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from massfit.annual.design import Design
-from massfit.annual.evidence import ANNUAL, Reduction, Solutions, annual_covariance, reduce_columns, solve_choices
+from massfit.annual.evidence import ANNUAL, DriftBasis, Reduction, Solutions, annual_covariance, solve_choices
 from massfit.annual.nodes import Nodes, first_nodes
 from massfit.annual.noise import NoiseCovariance
 
@@ -79,13 +78,13 @@ def grid_of(nodes: tuple[Nodes, ...], near: tuple[Nodes, ...]) -> DriftGrid:
     return DriftGrid(nodes, tuple(own.prior for own in nodes), np.array(best, np.int64))
 
 
-def refine_grid(noise: NoiseCovariance, design: Design, start: tuple[Nodes, ...] | None = None) -> DriftGrid:
+def refine_grid(noise: NoiseCovariance, basis: DriftBasis, start: tuple[Nodes, ...] | None = None) -> DriftGrid:
     """Refine the grids in turn until the annual phasor stands still.
 
     Parameters
     ----------
     noise : NoiseCovariance
-    design : Design
+    basis : DriftBasis
     start : tuple of Nodes, optional
         One node of each term to begin the search of the mode from.
 
@@ -94,22 +93,23 @@ def refine_grid(noise: NoiseCovariance, design: Design, start: tuple[Nodes, ...]
     DriftGrid
         Masses are those in turn, the other terms held at the joint mode.
     """
-    nodes = tuple(first_nodes(term.forms, term.low, term.high) for term in design.terms)
+    nodes = tuple(first_nodes(term.forms, term.low, term.high) for term in basis.design.terms)
     grid = grid_of(nodes, start if start is not None else tuple(own.take(np.array([len(own) // 2])) for own in nodes))
+    if not nodes:
+        return grid
+    reduction = basis.reduce(noise)
     previous: Floats | None = None
-    for _ in range(MAX_ROUNDS if nodes else 0):
-        grid, phasors, sigma = _weigh(noise, design, grid)
+    for _ in range(MAX_ROUNDS):
+        grid, phasors, sigma = _weigh(reduction, basis, grid)
         if grid.resolved and previous is not None and np.abs((phasors - previous) / sigma).max() < PHASOR_TOLERANCE:
-            break
+            return grid
         previous, grid = phasors, grid.split()
-    else:
-        grid = _weigh(noise, design, grid)[0] if nodes else grid
-    return grid
+    return _weigh(reduction, basis, grid)[0]
 
 
-def _weigh(noise: NoiseCovariance, design: Design, grid: DriftGrid) -> tuple[DriftGrid, Floats, Floats]:
+def _weigh(whole: Reduction, basis: DriftBasis, grid: DriftGrid) -> tuple[DriftGrid, Floats, Floats]:
     """Grid with mode and masses, the phasors (D, 2) with each grid in turn, and their sigmas."""
-    reduction = reduce_columns(noise, design, design.drift_columns(grid.nodes))
+    reduction = whole.combined(basis.combination(grid.nodes))
     best, settled = grid.best, False
     while not settled:
         grid = replace(grid, best=best)

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from massfit.annual.design import Design
-from massfit.annual.evidence import Reducer, solve_choices
+from massfit.annual.evidence import ChosenEvidence, DriftBasis
 from massfit.annual.families import NoiseFamily, log_score_prior
 from massfit.annual.grid import DriftGrid, refine_grid
 from massfit.annual.nodes import Nodes, exponential_nodes
@@ -87,7 +87,7 @@ class Mode:
         return best.family.model(best.scores, self.white_ratio)
 
 
-def joint_mode(design: Design, families: Sequence[NoiseFamily]) -> Mode:
+def joint_mode(basis: DriftBasis, families: Sequence[NoiseFamily]) -> Mode:
     """Find the mode by turns: noise at fixed drift terms, drift terms at fixed noise.
 
     The white noise of each deployment over that of the site is found once, at the mode, and
@@ -95,17 +95,18 @@ def joint_mode(design: Design, families: Sequence[NoiseFamily]) -> Mode:
 
     Parameters
     ----------
-    design : Design
+    basis : DriftBasis
     families : sequence of NoiseFamily
 
     Returns
     -------
     Mode
     """
+    design = basis.design
     leader = max(families, key=lambda family: family.size)
     scores, ratio = leader.start(_rough_sd(design)), np.ones(len(design.drifts))
-    grid = refine_grid(design.covariance(leader.model(scores, ratio)), design)
-    found, grid = _alternate(design, leader, ratio, scores, grid)
+    grid = refine_grid(design.covariance(leader.model(scores, ratio)), basis)
+    found, grid = _alternate(basis, leader, ratio, scores, grid)
     ratio = _white_ratio(design, leader, found.scores, grid.mode)
     modes = [
         _family_mode(
@@ -115,7 +116,7 @@ def joint_mode(design: Design, families: Sequence[NoiseFamily]) -> Mode:
     ]
     best = max(modes, key=lambda mode: mode.log_evidence)
     if best.family != leader:
-        grid = refine_grid(design.covariance(best.family.model(best.scores, ratio)), design, grid.mode)
+        grid = refine_grid(design.covariance(best.family.model(best.scores, ratio)), basis, grid.mode)
     kept = [mode for mode in modes if mode.log_evidence > best.log_evidence + np.log(NEGLIGIBLE_FORM)]
     return Mode(tuple(sorted(kept, key=lambda mode: -mode.log_evidence)), ratio, grid)
 
@@ -203,21 +204,21 @@ def _start(family: NoiseFamily, leader: NoiseFamily, found: Floats) -> Floats:
 
 
 def _alternate(
-    design: Design, family: NoiseFamily, ratio: Floats, scores: Floats, grid: DriftGrid
+    basis: DriftBasis, family: NoiseFamily, ratio: Floats, scores: Floats, grid: DriftGrid
 ) -> tuple[Minimum, DriftGrid]:
-    reached = np.inf
+    reached, design = np.inf, basis.design
     for _ in range(MAX_ALTERNATIONS):
         found = minimise(_objective(design, family, ratio, grid.mode), scores)
         if reached - found.value < MODE_TOLERANCE:
             break
         reached, scores = found.value, found.scores
-        grid = refine_grid(design.covariance(family.model(scores, ratio)), design, grid.mode)
+        grid = refine_grid(design.covariance(family.model(scores, ratio)), basis, grid.mode)
     return found, grid
 
 
 def _objective(design: Design, family: NoiseFamily, ratio: Floats, terms: Sequence[Nodes]) -> Callable[[Floats], float]:
     """Negative log posterior of the scores at fixed drift terms."""
-    evidence = _log_evidence(design, terms)
+    evidence = ChosenEvidence(design, design.drift_columns(terms))
 
     def negative_log_posterior(scores: Floats) -> float:
         return -evidence(family.model(scores, ratio)) - log_score_prior(scores)
@@ -225,22 +226,12 @@ def _objective(design: Design, family: NoiseFamily, ratio: Floats, terms: Sequen
     return negative_log_posterior
 
 
-def _log_evidence(design: Design, terms: Sequence[Nodes]) -> Callable[[NoiseModel], float]:
-    reducer = Reducer(design, design.drift_columns(terms), data_only=True)
-    choice = np.arange(len(terms))[None, :]
-
-    def log_evidence(model: NoiseModel) -> float:
-        return float(solve_choices(reducer(design.covariance(model)), choice).log_evidence[0])
-
-    return log_evidence
-
-
 def _white_ratio(design: Design, family: NoiseFamily, scores: Floats, terms: Sequence[Nodes]) -> Floats:
     """White noise of each deployment over that of the site, each in turn by Newton steps in the logarithm."""
     logs = np.zeros(len(design.drifts))
     if len(logs) < 2:
         return np.ones(1)
-    evidence = _log_evidence(design, terms)
+    evidence = ChosenEvidence(design, design.drift_columns(terms))
 
     def objective(values: Floats) -> float:
         penalty = 0.5 * np.sum(values**2) / WHITE_RATIO_SD**2

@@ -107,7 +107,7 @@ class Nodes:
         return _joined(parts)
 
 
-def first_nodes(forms: Sequence[int], low: float, high: float) -> Nodes:
+def first_nodes(forms: Sequence[int], low: float, high: float, count: int = FIRST_NODES) -> Nodes:
     """First grid of a term that may have several forms, equally likely before.
 
     Parameters
@@ -115,12 +115,14 @@ def first_nodes(forms: Sequence[int], low: float, high: float) -> Nodes:
     forms : sequence of int
     low, high : float
         Range of the time constant, days.
+    count : int
+        Time constants of each form that has one.
 
     Returns
     -------
     Nodes
     """
-    logs = np.linspace(np.log(low), np.log(high), FIRST_NODES)
+    logs = np.linspace(np.log(low), np.log(high), count)
     return _joined([_one_form(form, logs if form in TIMED else np.zeros(1), 1.0 / len(forms)) for form in forms])
 
 

@@ -8,16 +8,16 @@ from scipy import stats
 
 from massfit.annual.design import build_design
 from massfit.annual.evidence import (
-    Reducer,
+    ChosenEvidence,
+    DriftBasis,
     annual_covariance,
-    compress,
     conditional_log_evidence,
     fixed_variance,
     reduce_columns,
     solve_choices,
 )
 from massfit.annual.families import noise_families
-from massfit.annual.nodes import exponential_nodes
+from massfit.annual.nodes import exponential_nodes, first_nodes
 from massfit.settings import Priors
 
 PRIORS = Priors(noise_forms=("sum",))
@@ -103,18 +103,27 @@ def test_conditional_evidence_is_that_of_the_full_choice(reduction):
         np.testing.assert_allclose(conditional[row], full.log_evidence, rtol=1e-11)
 
 
-def test_compressed_exponentials_give_the_same_sums(design):
-    grids = (np.geomspace(3, 130, 40), np.geomspace(20, 60, 30))
-    exponentials = design.drift_columns([exponential_nodes(times) for times in grids])
-    basis, combination = compress(exponentials, np.array([0, 40]))
-    assert basis.shape[1] < 32
-    np.testing.assert_allclose(basis @ combination, exponentials, atol=1e-8)
-    noise = design.covariance(MODEL)
-    choices = np.array([[3, 45], [20, 69]])
-    full = solve_choices(reduce_columns(noise, design, exponentials), choices)
-    short = solve_choices(Reducer(design, basis, combination)(noise), choices)
+@pytest.mark.parametrize("drift", ["exponential+linear", "compare"])
+def test_basis_gives_the_sums_of_any_nodes(make_record, drift):
+    rng = np.random.default_rng(3)
+    lengths, starts = (130, 90), (0.5, 100.5)
+    records = [
+        make_record(rng, count=count, first=first, drift=drift, label=str(first))
+        for count, first in zip(lengths, starts, strict=True)
+    ]
+    design = build_design(records, reference_year=2016, priors=PRIORS)
+    noise, basis = design.covariance(MODEL), DriftBasis(design)
+    nodes = [first_nodes(term.forms, term.low, term.high, 23) for term in design.terms]
+    np.testing.assert_allclose(basis.columns @ basis.combination(nodes), design.drift_columns(nodes), atol=1e-8)
+    first = np.cumsum([0] + [len(own) for own in nodes])[:-1]
+    choices = np.array([first + 3 % np.array([len(own) for own in nodes]), first])
+    full = solve_choices(reduce_columns(noise, design, design.drift_columns(nodes)), choices)
+    short = solve_choices(basis.reduce(noise).combined(basis.combination(nodes)), choices)
     np.testing.assert_allclose(short.log_evidence, full.log_evidence, rtol=1e-9)
-    np.testing.assert_allclose(short.mean[:, :2], full.mean[:, :2], rtol=1e-6)
+    np.testing.assert_allclose(short.mean[:, :2, 0], full.mean[:, :2, 0], rtol=1e-6)
+    # and the evidence of one choice alone
+    chosen = ChosenEvidence(design, design.drift_columns(nodes)[:, choices[0]])
+    assert chosen(MODEL) == pytest.approx(full.log_evidence[0], rel=1e-11)
 
 
 def test_without_exponentials_there_is_one_choice(design):

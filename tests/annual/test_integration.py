@@ -13,7 +13,7 @@ from scipy import stats
 from massfit.annual.chains import sample_drift
 from massfit.annual.components import integrate
 from massfit.annual.design import build_design
-from massfit.annual.evidence import reduce_columns, solve_choices
+from massfit.annual.evidence import DriftBasis, reduce_columns, solve_choices
 from massfit.annual.families import noise_families
 from massfit.annual.fit import fit_site
 from massfit.annual.mode import joint_mode
@@ -117,7 +117,8 @@ def components(make_record, make_red):
     models = rng.normal(size=(3, 400)) * 5
     record = make_record(rng, count=400, size=700.0, ocean=make_red(rng, 400, 40.0, 20.0), circulation=models)
     design = build_design([record], reference_year=2016, priors=Priors())
-    return integrate(design, joint_mode(design, noise_families(Priors())), rng)
+    basis = DriftBasis(design)
+    return integrate(basis, joint_mode(basis, noise_families(Priors())), rng)
 
 
 def test_merging_keeps_mean_and_covariance(components):
@@ -170,9 +171,10 @@ def test_gibbs_sample_is_the_product_grid(make_record):
         make_record(rng, count=200, first=200.5, size=80.0, label="2"),
     ]
     design = build_design(records, reference_year=2016, priors=PRIORS)
-    mode = joint_mode(design, noise_families(PRIORS))
+    basis = DriftBasis(design)
+    mode = joint_mode(basis, noise_families(PRIORS))
     covariance = design.covariance(mode.noise)
-    sample = sample_drift(covariance, design, mode.grid, rng)
+    sample = sample_drift(covariance, basis, mode.grid, rng)
     reduction = reduce_columns(covariance, design, design.drift_columns(sample.grid.nodes))
     counts = [len(nodes) for nodes in sample.grid.nodes]
     choices = np.array(list(product(*map(range, counts))))

@@ -7,6 +7,7 @@ import numpy as np
 import pytest
 
 from massfit.annual.design import build_design
+from massfit.annual.evidence import DriftBasis
 from massfit.annual.families import noise_families
 from massfit.annual.fit import fit_site
 from massfit.annual.mode import joint_mode
@@ -40,7 +41,7 @@ def site(seed: int, days: int, deployments: int, models: int) -> list[ReducedRec
 def plug_in(records: list[ReducedRecord]) -> np.ndarray:
     """The phasor with noise and time constants at the mode of one form of noise, nothing integrated."""
     design = build_design(records, reference_year=2016, priors=Priors())
-    mode = joint_mode(design, noise_families(Priors(noise_forms=("exponential",))))
+    mode = joint_mode(DriftBasis(design), noise_families(Priors(noise_forms=("exponential",))))
     return phasor_operator(design.covariance(mode.noise), design, mode.grid.mode) @ design.data
 
 
