@@ -155,6 +155,8 @@ class Priors:
         Scales of the half-t priors (4 degrees of freedom) of the network scales, hPa.
     year_sd_hpa : float
         Year-to-year standard deviation of the cycle, hPa per component.
+    unmodelled_annual_hpa : float
+        Standard deviation of the circulation's annual cycle where no model is subtracted, hPa per component.
     drift_exponential_sd_hpa, drift_slope_sd_hpa_per_year : float
         Normal priors of the drift terms.
     drift_time_min_days : float
@@ -174,6 +176,7 @@ class Priors:
     model_common_hpa: PositiveFloat = 0.15
     group_scatter_hpa: PositiveFloat = 0.15
     year_sd_hpa: PositiveFloat = 0.05
+    unmodelled_annual_hpa: PositiveFloat = 1.0
     drift_exponential_sd_hpa: PositiveFloat = 30.0
     drift_slope_sd_hpa_per_year: PositiveFloat = 10.0
     drift_time_min_days: PositiveFloat = 3.0

@@ -16,7 +16,7 @@ from massfit.annual.fit import Estimate as NumberEstimate
 from massfit.annual.noise import NoiseModel
 from massfit.corrections.phasors import CorrectionPhasor
 from massfit.posterior.convergence import Convergence
-from massfit.posterior.quadrature import ScalePosterior
+from massfit.posterior.importance import ScalePosterior
 from massfit.records.record import Action, Calibrations, DailyRecord, LevelChange, TidalConstant
 from massfit.results.estimate import SiteReduction
 from massfit.site import Interval, Site

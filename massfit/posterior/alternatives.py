@@ -1,4 +1,4 @@
-"""What the answer would have been under another choice, by quadrature."""
+"""What the answer would have been under another choice, by the second route."""
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
@@ -12,30 +12,45 @@ from massfit.constants import PASCAL_PER_HPA
 from massfit.display import counted
 from massfit.phasor import as_complex
 from massfit.posterior.convergence import worse
-from massfit.posterior.network_model import pooled_moments, second_routes
+from massfit.posterior.importance import Proposal, ScalePosterior, fit_proposal, integrate_scales
+from massfit.posterior.network_model import Choices, member_spread, network_model, pooled_moments, scale_priors
 from massfit.posterior.observations import Observations
-from massfit.posterior.quadrature import ScalePosterior
-from massfit.settings import PosteriorSettings, Priors
+from massfit.posterior.regression import LinearModel
+from massfit.posterior.sharing import find_sharing
+
+_DRAWS = 1500
 
 
 @dataclass(frozen=True)
-class _Choice:
-    """Everything that a second route needs."""
+class _Case:
+    """Everything that a second route needs, at one admittance a site."""
 
     observations: Observations
     admittance: NDArray[np.complex128]
-    settings: PosteriorSettings
-    priors: Priors
-    atmosphere_sd_hpa: float
+    choices: Choices
+    mixed: tuple[str, ...]
 
-    def routes(self) -> list[ScalePosterior]:
-        return second_routes(
-            self.observations,
-            self.admittance,
-            settings=self.settings,
-            priors=self.priors,
-            atmosphere_sd_hpa=self.atmosphere_sd_hpa,
-        )
+    def route(self, start: Proposal | None = None) -> ScalePosterior:
+        """Give nodes of this case; the same random numbers for every one, so that differences are no chance."""
+        model, prior_scales = self._model()
+        start = start or self.proposal()
+        return integrate_scales(model, prior_scales, rng=self._rng(), draws=_DRAWS, start=start)
+
+    def proposal(self) -> Proposal:
+        """Where the nodes are drawn."""
+        return fit_proposal(*self._model(), rng=self._rng())
+
+    def _model(self) -> tuple[LinearModel, NDArray[np.float64]]:
+        model = network_model(self.observations, self.admittance[None], self.choices, mixed=self.mixed)
+        return model, scale_priors(self.choices.priors, model.scale_count)
+
+    def _rng(self) -> np.random.Generator:
+        return np.random.default_rng(self.choices.settings.seed)
+
+    def with_settings(self, **changes: object) -> "_Case":
+        """Give the case under other settings."""
+        settings = replace(self.choices.settings, **changes)  # type: ignore[arg-type]
+        return replace(self, choices=replace(self.choices, settings=settings))
 
 
 def alternative_answers(
@@ -44,9 +59,8 @@ def alternative_answers(
     base: Sequence[ScalePosterior],
     *,
     admittance: NDArray[np.complex128],
-    settings: PosteriorSettings,
-    priors: Priors,
-    atmosphere_sd_hpa: float,
+    choices: Choices,
+    mixed: tuple[str, ...] = (),
 ) -> list[dict[str, object]]:
     """Answers under other choices, beside the one given.
 
@@ -58,9 +72,9 @@ def alternative_answers(
     base : sequence of ScalePosterior
         Second route of the answer given, one a load member.
     admittance : (n_member, n_site) array of complex
-    settings : PosteriorSettings
-    priors : Priors
-    atmosphere_sd_hpa : float
+    choices : Choices
+    mixed : tuple of str
+        Sites that enter by their mixture.
 
     Returns
     -------
@@ -68,65 +82,87 @@ def alternative_answers(
         `name`; `shift_sd`, the shift of the mean in standard deviations of the answer
         given, and `sd_ratio`, each of the component that moves more; `in_phase_hpa` and
         `quadrature_hpa`, the mean.
+
+    Notes
+    -----
+    The shift is that at the mean admittance of the load members, the spread between the members that of the answer
+    given.
     """
-    choice = _Choice(observations, admittance, settings, priors, atmosphere_sd_hpa)
+    given = _Case(observations, admittance.mean(axis=0), choices, mixed)
+    start = given.proposal()
+    middle, spread = given.route(start), member_spread(base)
     mean, covariance = pooled_moments(base)
-    cases = [*_other_models(choice), *_members(base, fingerprints), *_uniform(choice, fingerprints)]
-    return [_beside(name, pooled_moments(routes), mean, covariance) for name, routes in cases]
+    cases = [
+        *((name, other.route(start if alike else None)) for name, other, alike in _other_models(given)),
+        *((name, other.route(start)) for name, other in _uniform(given, fingerprints)),
+    ]
+    rows = [
+        (name, mean + route.mean - middle.mean, route.covariance + spread, middle.covariance + spread)
+        for name, route in cases
+    ]
+    rows += [(name, route.mean, route.covariance, covariance) for name, route in _members(base, fingerprints)]
+    return [_beside(name, other, own, mean, reference) for name, other, own, reference in rows]
 
 
 def _beside(
     name: str,
-    other: tuple[NDArray[np.float64], NDArray[np.float64]],
+    other: NDArray[np.float64],
+    own: NDArray[np.float64],
     mean: NDArray[np.float64],
     covariance: NDArray[np.float64],
 ) -> dict[str, object]:
     sd = np.sqrt(np.diag(covariance))
-    ratio = np.sqrt(np.diag(other[1])) / sd
+    ratio = np.sqrt(np.diag(own)) / sd
     return {
         "name": name,
-        "shift_sd": worse((other[0] - mean) / sd),
+        "shift_sd": worse((other - mean) / sd),
         "sd_ratio": float(np.exp(worse(np.log(ratio)))),
-        "in_phase_hpa": float(other[0][0] / PASCAL_PER_HPA),
-        "quadrature_hpa": float(other[0][1] / PASCAL_PER_HPA),
+        "in_phase_hpa": float(other[0] / PASCAL_PER_HPA),
+        "quadrature_hpa": float(other[1] / PASCAL_PER_HPA),
     }
 
 
-def _other_models(choice: _Choice) -> Iterator[tuple[str, list[ScalePosterior]]]:
-    if choice.settings.model_truth == "centred":
-        other, name = replace(choice.settings, model_truth="exchangeable"), "truth exchangeable with the models (r = 1)"
+def _other_models(given: _Case) -> Iterator[tuple[str, _Case, bool]]:
+    """Names and cases, and whether the proposal of the answer given suits them."""
+    settings, observations = given.choices.settings, given.observations
+    if settings.model_truth == "centred":
+        yield "truth exchangeable with the models (r = 1)", given.with_settings(model_truth="exchangeable"), True
     else:
-        other, name = replace(choice.settings, model_truth="centred"), "truth at the models' centre (r = 0)"
-    yield name, replace(choice, settings=other).routes()
-    real = [model for model in choice.observations.models if model != NO_MODEL]
+        yield "truth at the models' centre (r = 0)", given.with_settings(model_truth="centred"), True
+    if settings.site_scatter == "normal":
+        yield "Student site scatter", given.with_settings(site_scatter="student-t"), False
+    else:
+        yield "normal site scatter", given.with_settings(site_scatter="normal"), False
+    if find_sharing(observations, settings.group_scatter).has_group:
+        yield "no scatter shared between sites", given.with_settings(group_scatter=False), False
+    real = [model for model in observations.models if model != NO_MODEL]
     for model in real if len(real) > 1 else []:
-        fewer, left = choice.observations.without_model(model)
+        fewer, left = observations.without_model(model)
         if left.any():
             # sites that say nothing without it: it is their only model, or only the mean over several is known
             lost = int((~left).sum())
-            yield (
-                f"without model {model}" + (f" and {counted(lost, 'site')}" if lost else ""),
-                replace(choice, observations=fewer, admittance=choice.admittance[:, left]).routes(),
-            )
+            name = f"without model {model}" + (f" and {counted(lost, 'site')}" if lost else "")
+            yield name, replace(given, observations=fewer, admittance=given.admittance[left]), False
     for word, factor in (("half", 0.5), ("double", 2.0)):
-        scaled = replace(choice.priors, model_common_hpa=factor * choice.priors.model_common_hpa)
-        yield f"{word} the prior scale of s_common", replace(choice, priors=scaled).routes()
+        priors = given.choices.priors
+        scaled = replace(priors, model_common_hpa=factor * priors.model_common_hpa)
+        yield f"{word} the prior scale of s_common", replace(given, choices=replace(given.choices, priors=scaled)), True
 
 
 def _members(
     base: Sequence[ScalePosterior], fingerprints: xr.Dataset
-) -> Iterator[tuple[str, list[ScalePosterior]]]:
+) -> Iterator[tuple[str, ScalePosterior]]:
     if len(base) > 1:
         names = fingerprints["member"].values if "member" in fingerprints.coords else range(1, len(base) + 1)
         for name, route in zip(names, base, strict=True):
-            yield f"load member {name} alone", [route]
+            yield f"load member {name} alone", route
 
 
-def _uniform(choice: _Choice, fingerprints: xr.Dataset) -> Iterator[tuple[str, list[ScalePosterior]]]:
-    yield "uniform ocean (F = 1)", replace(choice, admittance=np.ones_like(choice.admittance[:1])).routes()
+def _uniform(given: _Case, fingerprints: xr.Dataset) -> Iterator[tuple[str, _Case]]:
+    yield "uniform ocean (F = 1)", replace(given, admittance=np.ones_like(given.admittance))
     if "reference_admittance" in fingerprints:
         cases = fingerprints["reference_admittance"].assign_coords(site=fingerprints["site"].astype(str))
         for k, name in enumerate(cases["case"].values):
-            case = as_complex(cases[k].sel(site=list(choice.observations.sites)).values)
+            case = as_complex(cases[k].sel(site=list(given.observations.sites)).values)
             if not np.allclose(case, 1.0):
-                yield str(name), replace(choice, admittance=case[None]).routes()
+                yield str(name), replace(given, admittance=case)

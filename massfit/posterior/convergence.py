@@ -15,7 +15,8 @@ import numpy as np
 from arviz_stats.base import array_stats  # type: ignore[attr-defined]
 from numpy.typing import NDArray
 
-from massfit.posterior.quadrature import ScalePosterior
+from massfit.posterior.explore import EnsembleChains
+from massfit.posterior.importance import ScalePosterior, mixture_quantiles
 
 RHAT_MAX = 1.01
 ESS_MIN = 400.0
@@ -23,8 +24,12 @@ LENGTH_MIN = 50.0
 """Thresholds of Vehtari et al. (2021, Bayesian Analysis 16, 667-718); lengths in autocorrelation times as
 Foreman-Mackey et al. (2013, PASP 125, 306-312) advise."""
 
-SHIFT_MAX, RATIO_MAX = 0.1, 0.06
-"""Largest disagreement of the two routes: four Monte Carlo errors of the fewest draws that a run keeps."""
+ERRORS_MAX, RATIO_MAX = 4.0, 0.03
+"""Largest disagreement of the two routes: of their means in Monte Carlo errors, and of their widths."""
+
+LEAST_ERROR = 0.0025
+"""Error of the difference of the means, in standard deviations, that is always allowed for: weights that are normalised
+by their own sum have a bias of the order of one over their number."""
 
 
 @dataclass(frozen=True)
@@ -39,10 +44,13 @@ class Convergence:
     length_min : float
         Length of the run in autocorrelation times of the ensemble.
     second_route_mean_shift_sd : float
-        Mean of the draws less that of the quadrature, in standard deviations.
+        Mean by the first route less that by the second, in standard deviations; both by the exact conditional
+        moments at the scales that the route visited.
     second_route_sd_ratio : float
-        Half-width of the central 68.27 % of the draws over that of the quadrature: the
+        Half-width of the central 68.27 % by the first route over that by the second: the
         ratio of standard deviations that heavy tails cannot upset.
+    second_route_mean_shift_errors : float
+        The shift in its Monte Carlo standard errors.
     """
 
     rhat_max: float
@@ -51,6 +59,7 @@ class Convergence:
     length_min: float
     second_route_mean_shift_sd: float
     second_route_sd_ratio: float
+    second_route_mean_shift_errors: float
 
     @property
     def converged(self) -> bool:
@@ -71,9 +80,9 @@ class Convergence:
                 f"the run lasts {self.length_min:.0f} autocorrelation times; needed are {LENGTH_MIN:.0f}",
             ),
             (
-                abs(self.second_route_mean_shift_sd) <= SHIFT_MAX,
-                f"the means of the two routes differ by {self.second_route_mean_shift_sd:.3f} standard deviations; "
-                f"allowed is {SHIFT_MAX}",
+                abs(self.second_route_mean_shift_errors) <= ERRORS_MAX,
+                f"the means of the two routes differ by {self.second_route_mean_shift_sd:.3f} standard deviations, "
+                f"{self.second_route_mean_shift_errors:.1f} of the Monte Carlo errors; allowed are {ERRORS_MAX:.0f}",
             ),
             (
                 abs(np.log(self.second_route_sd_ratio)) <= RATIO_MAX,
@@ -100,63 +109,70 @@ def autocorrelation_steps(chains: NDArray[np.float64]) -> float:
     return float(np.mean(times, axis=0).max())
 
 
-def diagnose(
-    annual: NDArray[np.float64],
-    log_scales: NDArray[np.float64],
-    log_posterior: NDArray[np.float64],
-    length: float,
-    second_route: ScalePosterior,
-) -> Convergence:
+def diagnose(chains: EnsembleChains, member: int, second_route: ScalePosterior) -> Convergence:
     """Diagnostics of one member's draws.
 
     Parameters
     ----------
-    annual : (n_ensemble, n_step, n_walker, 2) array
-        Pa.
-    log_scales : (n_ensemble, n_step, n_walker, 3) array
-    log_posterior : (n_ensemble, n_step, n_walker) array
-    length : float
-        Autocorrelation times.
+    chains : EnsembleChains
+        All ensembles.
+    member : int
     second_route : ScalePosterior
 
     Returns
     -------
     Convergence
     """
-    everything = np.concatenate([annual, log_scales, log_posterior[..., None]], axis=-1)
-    quantities = np.moveaxis(everything, -1, 0)
-    shape = (*quantities.shape[:2], -1)
-    by_step = quantities.reshape(shape)
-    by_walker = np.swapaxes(quantities, 2, 3).reshape(shape)
-    shift, ratio = compare_routes(annual.reshape(-1, 2), second_route)
+    log_scales = chains.log_scales[:, member]
+    everything = np.concatenate(
+        [chains.annual[:, member], log_scales[:, chains.kept], chains.log_posterior[:, member, ..., None]], axis=-1
+    )
+    by_walker = _by_walker(everything)
+    shift, errors, ratio = compare_routes(chains.node_mean[:, member], chains.node_covariance[:, member], second_route)
     return Convergence(
-        float(np.max(array_stats.rhat(by_step))),  # type: ignore[no-untyped-call]
+        # laid out step by step
+        float(np.max(array_stats.rhat(np.moveaxis(everything, -1, 0).reshape(by_walker.shape)))),  # type: ignore[no-untyped-call]
         float(np.min(array_stats.ess(by_walker, method="bulk"))),  # type: ignore[no-untyped-call]
         float(np.min(array_stats.ess(by_walker, method="tail", prob=(0.05, 0.95)))),  # type: ignore[no-untyped-call]
-        length,
+        log_scales.shape[1] / autocorrelation_steps(log_scales),
         shift,
         ratio,
+        errors,
     )
 
 
-def compare_routes(draws: NDArray[np.float64], second_route: ScalePosterior) -> tuple[float, float]:
-    """Mean shift in standard deviations and ratio of widths, each of the worse component.
+def _by_walker(values: NDArray[np.float64]) -> NDArray[np.float64]:
+    """From (n_ensemble, n_step, n_walker, n) to (n, n_ensemble, n_walker * n_step), walker by walker."""
+    return np.moveaxis(values, (3, 0, 2, 1), (0, 1, 2, 3)).reshape(values.shape[3], values.shape[0], -1)
+
+
+def compare_routes(
+    node_mean: NDArray[np.float64], node_covariance: NDArray[np.float64], second_route: ScalePosterior
+) -> tuple[float, float, float]:
+    """Shift of the mean in standard deviations and in Monte Carlo errors, and ratio of widths, of the worse component.
 
     Parameters
     ----------
-    draws : (n, 2) array
-        Pa.
+    node_mean : (n_ensemble, n_step, n_walker, 2) array
+        Conditional mean at the scales visited, Pa.
+    node_covariance : (n_ensemble, n_step, n_walker, 2, 2) array
+        Pa2.
     second_route : ScalePosterior
 
     Returns
     -------
-    shift, ratio : float
+    shift, errors, ratio : float
     """
+    means, covariances = node_mean.reshape(-1, 2), node_covariance.reshape(-1, 2, 2)
+    sd = np.sqrt(np.diag(second_route.covariance))
+    effective = array_stats.ess(_by_walker(node_mean), method="mean")  # type: ignore[no-untyped-call]
+    square = means.var(axis=0) / effective + second_route.standard_error**2 + (LEAST_ERROR * sd) ** 2
+    shift = means.mean(axis=0) - second_route.mean
     tails = np.array([0.158655, 0.841345])
-    width = np.diff(np.quantile(draws, tails, axis=0), axis=0)[0]
+    weight = np.full(len(means), 1.0 / len(means))
+    width = np.diff(mixture_quantiles(tails, weight, means, covariances), axis=0)[0]
     reference = np.diff(second_route.quantiles(tails), axis=0)[0]
-    shift = (draws.mean(axis=0) - second_route.mean) / np.sqrt(np.diag(second_route.covariance))
-    return worse(shift), float(np.exp(worse(np.log(width / reference))))
+    return worse(shift / sd), worse(shift / np.sqrt(square)), float(np.exp(worse(np.log(width / reference))))
 
 
 def worse(values: NDArray[np.float64]) -> float:
@@ -173,4 +189,5 @@ def worst(members: list[Convergence]) -> Convergence:
         min(m.length_min for m in members),
         worse(np.array([m.second_route_mean_shift_sd for m in members])),
         float(np.exp(worse(np.log([m.second_route_sd_ratio for m in members])))),
+        worse(np.array([m.second_route_mean_shift_errors for m in members])),
     )

@@ -1,72 +1,100 @@
-"""From observations and choices to one regression, and one second route, a load member."""
+"""From observations and choices to the regression of all load members, and the moments pooled over them."""
 
-from collections.abc import Sequence
+from collections.abc import Collection, Sequence
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 from massfit.constants import PASCAL_PER_HPA
-from massfit.posterior.likelihood import LinearModel, linear_model, observation_rows
+from massfit.posterior.importance import DRAWS, ScalePosterior, integrate_scales
 from massfit.posterior.observations import Observations
-from massfit.posterior.quadrature import ScalePosterior, integrate_scales
+from massfit.posterior.regression import LinearModel, linear_model
+from massfit.posterior.rows import observation_rows
+from massfit.posterior.sharing import find_sharing
 from massfit.settings import PosteriorSettings, Priors
 
 
-def member_models(
+@dataclass(frozen=True)
+class Choices:
+    """What the analyst chose.
+
+    Parameters
+    ----------
+    settings : PosteriorSettings
+    priors : Priors
+    atmosphere_sd_hpa : float
+        Standard deviation of the common air-pressure correction, hPa per component.
+    """
+
+    settings: PosteriorSettings
+    priors: Priors
+    atmosphere_sd_hpa: float
+
+
+def network_model(
     observations: Observations,
     admittance: NDArray[np.complex128],
+    choices: Choices,
     *,
-    settings: PosteriorSettings,
-    priors: Priors,
-    atmosphere_sd_hpa: float,
-) -> list[LinearModel]:
-    """One regression a load member.
+    mixed: Collection[str] = (),
+) -> LinearModel:
+    """Build the regression of all load members.
 
     Parameters
     ----------
     observations : Observations
     admittance : (n_member, n_site) array of complex
-    settings : PosteriorSettings
-    priors : Priors
-    atmosphere_sd_hpa : float
-        Standard deviation of the common air-pressure correction, hPa.
+    choices : Choices
+    mixed : collection of str
+        Sites that enter by their mixture; the others by its mean and covariance.
 
     Returns
     -------
-    list of LinearModel
+    LinearModel
+
+    Raises
+    ------
+    InputError
+        A correlation length is asked for and the sites have no positions.
     """
-    rows = observation_rows(observations)
-    return [
-        linear_model(
-            rows,
-            member,
-            annual_sd=priors.annual_sd_hpa * PASCAL_PER_HPA,
-            atmosphere_sd=atmosphere_sd_hpa * PASCAL_PER_HPA,
-            truth=1.0 if settings.model_truth == "exchangeable" else 0.0,
-        )
-        for member in admittance
-    ]
+    settings, priors = choices.settings, choices.priors
+    return linear_model(
+        observation_rows(observations, mixed),
+        admittance,
+        find_sharing(observations, settings.group_scatter),
+        annual_sd=priors.annual_sd_hpa * PASCAL_PER_HPA,
+        atmosphere_sd=choices.atmosphere_sd_hpa * PASCAL_PER_HPA,
+        year_sd=priors.year_sd_hpa * PASCAL_PER_HPA,
+        unmodelled_sd=priors.unmodelled_annual_hpa * PASCAL_PER_HPA,
+        truth=1.0 if settings.model_truth == "exchangeable" else 0.0,
+        student=settings.site_scatter == "student-t",
+    )
 
 
-def scale_priors(priors: Priors) -> NDArray[np.float64]:
-    """Scales (3,) of the half-t priors of s_site, s_local and s_common, Pa."""
-    in_hpa = [priors.site_scatter_hpa, priors.model_local_hpa, priors.model_common_hpa]
-    return PASCAL_PER_HPA * np.array(in_hpa)
+def scale_priors(priors: Priors, scale_count: int) -> NDArray[np.float64]:
+    """Scales (scale_count,) of the half-t priors of s_site, s_local, s_common and s_group, Pa."""
+    in_hpa = [priors.site_scatter_hpa, priors.model_local_hpa, priors.model_common_hpa, priors.group_scatter_hpa]
+    return PASCAL_PER_HPA * np.array(in_hpa[:scale_count])
 
 
 def second_routes(
     observations: Observations,
     admittance: NDArray[np.complex128],
+    choices: Choices,
     *,
-    settings: PosteriorSettings,
-    priors: Priors,
-    atmosphere_sd_hpa: float,
+    mixed: Collection[str] = (),
+    draws: int = DRAWS,
 ) -> list[ScalePosterior]:
-    """Quadrature over the scales for every load member; parameters as in `member_models`."""
-    models = member_models(
-        observations, admittance, settings=settings, priors=priors, atmosphere_sd_hpa=atmosphere_sd_hpa
-    )
-    return [integrate_scales(model, scale_priors(priors)) for model in models]
+    """Importance-weighted nodes of every load member; parameters as in `network_model` and `integrate_scales`."""
+    model = network_model(observations, admittance, choices, mixed=mixed)
+    prior_scales = scale_priors(choices.priors, model.scale_count)
+    return [
+        integrate_scales(
+            model, prior_scales, member=k, rng=np.random.default_rng(choices.settings.seed), draws=draws
+        )
+        for k in range(model.member_count)
+    ]
 
 
 def inflation(member_count: int) -> float:

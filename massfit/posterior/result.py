@@ -10,8 +10,8 @@ from massfit.constants import PASCAL_PER_HPA
 from massfit.display import Described, Description, counted
 from massfit.phasor import COMPONENTS
 from massfit.posterior.convergence import Convergence
-from massfit.posterior.likelihood import SCALES
-from massfit.posterior.quadrature import ScalePosterior
+from massfit.posterior.importance import ScalePosterior
+from massfit.posterior.regression import SCALES
 from massfit.settings import PosteriorSettings, Priors
 
 
@@ -28,18 +28,24 @@ class Posterior(Described):
         Load member of each pooled draw.
     member_annual : (n_member, n_chain, n_member_draw, 2) array
         Pa, the members' own draws.
-    scales : (n_member, n_chain, n_member_draw, 3) array
-        Pa: s_site, s_local, s_common.
+    scales : (n_member, n_chain, n_member_draw, n_scale) array
+        Pa: s_site, s_local, s_common, and s_group where sites share scatter.
+    year_annual : (n_chain, n_draw, n_year, 2) array
+        Pa, the annual phasor of each year, drawn together with `annual`.
+    years : tuple of int
+        Empty where the model holds no year-to-year term.
     members, sites, models : tuple of str
         Names of the load members, the sites and the columns of ocean models.
     convergence : Convergence
         Worst over the members.
     member_convergence : tuple of Convergence
     second_route : tuple of ScalePosterior
-        Quadrature of each member.
+        Importance-weighted nodes of each member.
     settings : PosteriorSettings
     priors : Priors
     atmosphere_sd_hpa : float
+    mixed : tuple of str
+        Sites that entered by their mixture.
     warnings : tuple of str
         What a reader of the answer has to know.
     method : tuple of str
@@ -50,6 +56,8 @@ class Posterior(Described):
     member_of_draw: NDArray[np.int64]
     member_annual: NDArray[np.float64]
     scales: NDArray[np.float64]
+    year_annual: NDArray[np.float64]
+    years: tuple[int, ...]
     members: tuple[str, ...]
     sites: tuple[str, ...]
     models: tuple[str, ...]
@@ -59,6 +67,7 @@ class Posterior(Described):
     settings: PosteriorSettings
     priors: Priors
     atmosphere_sd_hpa: float
+    mixed: tuple[str, ...]
     warnings: tuple[str, ...]
     method: tuple[str, ...]
 
@@ -100,11 +109,15 @@ class Posterior(Described):
         xarray.Dataset
             `annual_phasor` (chain, draw, component) and `member_of_draw` (draw,) pooled;
             `member_annual_phasor` (member, chain, member_draw, component) and `scale`
-            (member, chain, member_draw, scale_name); all in Pa.
+            (member, chain, member_draw, scale_name); `year_phasor` (chain, draw, year, component) where the model
+            holds a year-to-year term; all in Pa.
         """
         per_member = ("member", "chain", "member_draw")
+        of_year = {"units": "Pa", "long_name": "annual phasor of ocean-mean water pressure of one year"}
+        years = {"year_phasor": (("chain", "draw", "year", "component"), self.year_annual, of_year)}
         return xr.Dataset(
             {
+                **(years if self.years else {}),
                 "annual_phasor": (
                     ("chain", "draw", "component"),
                     self.annual,
@@ -125,9 +138,10 @@ class Posterior(Described):
             coords={
                 "component": list(COMPONENTS),
                 "member": list(self.members),
-                "scale_name": list(SCALES),
+                "scale_name": list(SCALES[: self.scales.shape[-1]]),
                 "site": list(self.sites),
                 "model": list(self.models),
+                **({"year": list(self.years)} if self.years else {}),
             },
             attrs={
                 "seed": self.seed,

@@ -7,24 +7,26 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
-from massfit.annual.dataset import NO_MODEL
 from massfit.posterior.convergence import Convergence, diagnose, worst
-from massfit.posterior.explore import ENSEMBLES, MAX_STEPS, STEPS, WALKERS, ScaleExplorer
-from massfit.posterior.likelihood import LinearModel, annual_given_scales
-from massfit.posterior.network_model import inflation, member_models, scale_priors
-from massfit.posterior.observations import Observations, read_observations
-from massfit.posterior.quadrature import ScalePosterior, integrate_scales
+from massfit.posterior.explore import (
+    ENSEMBLES,
+    MAX_STEPS,
+    STEPS,
+    EnsembleChains,
+    EnsembleTask,
+    run_ensembles,
+)
+from massfit.posterior.importance import DRAWS, Proposal, ScalePosterior, fit_proposal, integrate_scales
+from massfit.posterior.mixtures import sites_by_mixture
+from massfit.posterior.network_model import Choices, inflation, network_model, scale_priors
+from massfit.posterior.notes import method_notes, network_warnings
+from massfit.posterior.observations import read_observations
+from massfit.posterior.regression import LinearModel
 from massfit.posterior.result import Posterior
 from massfit.settings import PosteriorSettings, Priors
 
-KEPT_STEPS = 25
-"""Equally spaced steps of each ensemble at which the phasor is drawn."""
-
-_METHOD = (
-    "normal site scatter, no group scatter, no year-to-year term",
-    f"scales by emcee, {ENSEMBLES} ensembles of {WALKERS} walkers a load member; network phasor drawn exactly",
-    "second route: quadrature over the scales",
-)
+SIDE_BY_SIDE = 2
+"""Ensembles that one process runs side by side."""
 
 
 def sample_posterior(
@@ -46,15 +48,13 @@ def sample_posterior(
     fingerprints : xarray.Dataset
         Per `massfit.contracts.FINGERPRINTS`; matched with the sites by id.
     settings : PosteriorSettings
-        Student scatter and group scatter are computed as normal and none; the
-        warnings of the result say so.
     priors : Priors
     atmosphere_sd_hpa : float
         Standard deviation of the error of the ocean-mean air pressure, hPa per component.
     progress : callable, optional
-        Called with the number of load members done and of all.
+        Called with the number of parts done and of all.
     mapped : callable, optional
-        Applies a function to each of a sequence, in order; one that shares the load members among
+        Applies a function to each of a sequence, in order; one that shares the parts among
         processes gives the same numbers.
 
     Returns
@@ -68,6 +68,7 @@ def sample_posterior(
 
     Notes
     -----
+    The numbers depend neither on the order of the sites and models nor on the number of processes.
     One posterior for every load member, pooled in equal numbers: the recorders do not
     choose among the members (a cut, Plummer 2015, Statistics and Computing 25, 37-43).
 
@@ -102,40 +103,50 @@ def sample_posterior(
     (True, True)
     """
     observations, admittance = read_observations(site_phasors, fingerprints)
-    models = member_models(
-        observations, admittance, settings=settings, priors=priors, atmosphere_sd_hpa=atmosphere_sd_hpa
-    )
+    choices = Choices(settings, priors, atmosphere_sd_hpa)
+    mixed = sites_by_mixture(observations, admittance, choices)
+    model = network_model(observations, admittance, choices, mixed=mixed)
+    middle = network_model(observations, admittance.mean(axis=0)[None], choices, mixed=mixed)
+    prior_scales = scale_priors(priors, model.scale_count)
+    proposal = fit_proposal(middle, prior_scales, rng=np.random.default_rng(settings.seed))
+    effort = 1
+    while True:
+        chains, routes = _both_routes(
+            _Run(model, prior_scales, proposal, settings.seed, effort), mapped, progress or _silent
+        )
+        diagnostics = [diagnose(chains, k, route) for k, route in enumerate(routes)]
+        if all(diagnostic.converged for diagnostic in diagnostics) or effort * STEPS >= MAX_STEPS:
+            break
+        effort *= 2
     members = _member_names(fingerprints)
-    streams = np.random.default_rng(settings.seed).spawn(len(models))
-    tasks = [_MemberTask(model, scale_priors(priors), rng) for model, rng in zip(models, streams, strict=True)]
-    draws, scales, diagnostics, seconds = [], [], [], []
-    for annual, scale, diagnostic, second in mapped(_sample_member, tasks):
-        draws.append(annual)
-        scales.append(scale)
-        diagnostics.append(diagnostic)
-        seconds.append(second)
-        if progress is not None:
-            progress(len(draws), len(tasks))
-    member_annual = np.stack(draws)
-    annual, member_of_draw = pool_members(member_annual)
     convergence = worst(diagnostics)
+    member_annual = _by_chain(chains.annual)
+    annual, member_of_draw = pool_members(member_annual)
+    away = _by_chain(chains.years)
     return Posterior(
-        annual,
-        member_of_draw,
-        member_annual,
-        np.stack(scales),
-        members,
-        observations.sites,
-        observations.models,
-        convergence,
-        tuple(diagnostics),
-        tuple(seconds),
-        settings,
-        priors,
-        atmosphere_sd_hpa,
-        (*_warnings(observations, members, settings, fingerprints), *_doubts(convergence)),
-        _METHOD,
+        annual=annual,
+        member_of_draw=member_of_draw,
+        member_annual=member_annual,
+        scales=np.exp(_by_chain(chains.log_scales[:, :, chains.kept])),
+        year_annual=annual[:, :, None] + np.moveaxis(away, 0, 1).reshape(*annual.shape[:2], *away.shape[3:]),
+        years=observations.years if away.shape[3] else (),
+        members=members,
+        sites=observations.sites,
+        models=observations.models,
+        convergence=convergence,
+        member_convergence=tuple(diagnostics),
+        second_route=tuple(routes),
+        settings=settings,
+        priors=priors,
+        atmosphere_sd_hpa=atmosphere_sd_hpa,
+        mixed=mixed,
+        warnings=(*network_warnings(observations, model, members, priors, fingerprints), *_doubts(convergence)),
+        method=method_notes(model, settings, mixed),
     )
+
+
+def _silent(done: int, total: int) -> None:
+    """Report nothing."""
 
 
 def _member_names(fingerprints: xr.Dataset) -> tuple[str, ...]:
@@ -144,38 +155,89 @@ def _member_names(fingerprints: xr.Dataset) -> tuple[str, ...]:
     return tuple(f"member {k + 1}" for k in range(fingerprints.sizes["member"]))
 
 
-class _MemberTask(NamedTuple):
+class NodesTask(NamedTuple):
+    """The second route of one load member; the task travels to a worker process whole.
+
+    Parameters
+    ----------
+    model : LinearModel
+    prior_scales : (n_scale,) array
+        Pa.
+    member : int
+    draws : int
+    start : Proposal
+    rng : numpy.random.Generator
+    """
+
     model: LinearModel
     prior_scales: NDArray[np.float64]
+    member: int
+    draws: int
+    start: Proposal
     rng: np.random.Generator
 
 
-def _sample_member(
-    task: _MemberTask,
-) -> tuple[NDArray[np.float64], NDArray[np.float64], Convergence, ScalePosterior]:
-    """Draws (chain, draw, 2) and scales (chain, draw, 3) of one member, extended until they converge."""
-    model, prior_scales, rng = task
-    second_route = integrate_scales(model, prior_scales)
-    explorer = ScaleExplorer(model, prior_scales, rng)
-    steps = STEPS
-    while True:
-        chains = explorer.run(steps)
-        kept = chains.thinned(KEPT_STEPS)
-        annual = _draw_annual(model, kept.log_scales, rng)
-        diagnostic = diagnose(annual, kept.log_scales, kept.log_posterior, chains.length, second_route)
-        if diagnostic.converged or steps >= MAX_STEPS:
-            break
-        steps *= 2
-    shape = (ENSEMBLES, -1)
-    return annual.reshape(*shape, 2), np.exp(kept.log_scales).reshape(*shape, 3), diagnostic, second_route
+class _Run(NamedTuple):
+    """One attempt at both routes; a later one makes twice the effort of the one before."""
+
+    model: LinearModel
+    prior_scales: NDArray[np.float64]
+    proposal: Proposal
+    seed: int
+    effort: int
+
+    def tasks(self) -> list[EnsembleTask | NodesTask]:
+        """Ensembles, then the nodes of every load member, each with random numbers of its own."""
+        count, members = ENSEMBLES // SIDE_BY_SIDE, self.model.member_count
+        streams = np.random.default_rng([self.seed, self.effort]).spawn(count + 1)
+        # the same random numbers for every load member: what differs between them is the load
+        state = streams[-1].integers(2**32)
+        return [
+            *(
+                EnsembleTask(self.model, self.prior_scales, SIDE_BY_SIDE, self.effort * STEPS, rng)
+                for rng in streams[:-1]
+            ),
+            *(
+                NodesTask(
+                    self.model, self.prior_scales, k, self.effort * DRAWS, self.proposal, np.random.default_rng(state)
+                )
+                for k in range(members)
+            ),
+        ]
 
 
-def _draw_annual(model: LinearModel, log_scales: NDArray[np.float64], rng: np.random.Generator) -> NDArray[np.float64]:
-    """One exact draw of the network phasor at each set of scales, (..., 2), Pa."""
-    mean, covariance = annual_given_scales(model, log_scales.reshape(-1, 3))
-    noise = rng.standard_normal(mean.shape)
-    draws = mean + np.einsum("nij,nj->ni", np.linalg.cholesky(covariance), noise)
-    return np.asarray(draws.reshape(*log_scales.shape[:-1], 2))
+def _sample_part(task: EnsembleTask | NodesTask) -> EnsembleChains | ScalePosterior:
+    if isinstance(task, EnsembleTask):
+        return run_ensembles(task)
+    return integrate_scales(
+        task.model, task.prior_scales, member=task.member, rng=task.rng, draws=task.draws, start=task.start
+    )
+
+
+def _both_routes(
+    run: _Run,
+    mapped: Callable[[Callable[[Any], Any], Sequence[Any]], Iterable[Any]],
+    progress: Callable[[int, int], None],
+) -> tuple[EnsembleChains, list[ScalePosterior]]:
+    """Chains of all ensembles, and the nodes of every load member."""
+    tasks, parts = run.tasks(), []
+    for part in mapped(_sample_part, tasks):
+        parts.append(part)
+        progress(len(parts), len(tasks))
+    count = len(tasks) - run.model.member_count
+    ensembles = [EnsembleChains(*part) for part in parts[:count]]
+    joined = {
+        name: np.concatenate([getattr(each, name) for each in ensembles])
+        for name in EnsembleChains._fields
+        if name != "kept"
+    }
+    return EnsembleChains(**joined, kept=ensembles[0].kept), parts[count:]
+
+
+def _by_chain(values: NDArray[np.float64]) -> NDArray[np.float64]:
+    """From (n_ensemble, n_member, n_step, n_walker, ...) to (n_member, n_ensemble, n_step * n_walker, ...)."""
+    ensembles, members, steps, walkers = values.shape[:4]
+    return np.swapaxes(values, 0, 1).reshape(members, ensembles, steps * walkers, *values.shape[4:])
 
 
 def pool_members(member_annual: NDArray[np.float64]) -> tuple[NDArray[np.float64], NDArray[np.int64]]:
@@ -197,54 +259,6 @@ def pool_members(member_annual: NDArray[np.float64]) -> tuple[NDArray[np.float64
     stretched = member_annual + (np.sqrt(inflation(count)) - 1.0) * shift[:, None, None]
     pooled = np.moveaxis(stretched, 0, 1).reshape(chains, count * draws, 2)
     return pooled, np.repeat(np.arange(count), draws)
-
-
-def _warnings(
-    observations: Observations, members: tuple[str, ...], settings: PosteriorSettings, fingerprints: xr.Dataset
-) -> list[str]:
-    real = [model for model in observations.models if model != NO_MODEL]
-    without = [
-        site
-        for site, there in zip(observations.sites, observations.present, strict=True)
-        if not any(here and model != NO_MODEL for model, here in zip(observations.models, there, strict=True))
-    ]
-    return [
-        text
-        for applies, text in (
-            (
-                settings.site_scatter == "student-t",
-                'site_scatter = "student-t" (the default) is computed as "normal" in this version: one bad site weighs '
-                "more than it should.",
-            ),
-            (
-                settings.group_scatter is not False,
-                "group_scatter (on by default) is not computed in this version: sites are taken as independent, which "
-                "is too sure where they are neighbours.",
-            ),
-            (
-                len(members) == 1,
-                "One load member: the uncertainty of the fingerprint is taken as zero. Give more "
-                "patterns in [fingerprint] loads.",
-            ),
-            (
-                len(real) < 2,
-                f"{'One ocean model' if real else 'No ocean model'}: the spread between models is assumed from its "
-                "prior, not seen. Give two or more.",
-            ),
-            (
-                len(real) > 1 and not observations.has_contrasts.any(),
-                "No site says how two ocean models differ: their local spread is assumed from its prior, not seen.",
-            ),
-            (len(observations.sites) == 1, "One site: its scatter is assumed from its prior, not seen."),
-            (bool(without), f"No ocean model was subtracted at: {', '.join(without)}."),
-            (
-                "air_load_response" not in fingerprints,
-                "The gravitational effect of the air over land was not taken off (no atmosphere load was given). "
-                "Give [corrections] atmosphere_load or air_pressure.",
-            ),
-        )
-        if applies
-    ]
 
 
 def _doubts(convergence: Convergence) -> list[str]:

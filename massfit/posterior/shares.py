@@ -5,10 +5,10 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from massfit.posterior.likelihood import LinearModel, estimator
+from massfit.posterior.importance import ScalePosterior
+from massfit.posterior.likelihood import estimator, units
 from massfit.posterior.network_model import member_spread
-from massfit.posterior.observations import Observations, record_covariance
-from massfit.posterior.quadrature import ScalePosterior
+from massfit.posterior.regression import LinearModel
 
 SOURCES = (
     "record",
@@ -23,17 +23,14 @@ SOURCES = (
 )
 
 
-def variance_terms(
-    models: Sequence[LinearModel], posteriors: Sequence[ScalePosterior], observations: Observations
-) -> dict[str, float]:
+def variance_terms(model: LinearModel, posteriors: Sequence[ScalePosterior]) -> dict[str, float]:
     """Variance of A, summed over both components, by its source.
 
     Parameters
     ----------
-    models : sequence of LinearModel
-        One a load member.
+    model : LinearModel
     posteriors : sequence of ScalePosterior
-    observations : Observations
+        One a load member.
 
     Returns
     -------
@@ -45,14 +42,13 @@ def variance_terms(
     -----
     Given the scales the estimate is linear in the data, and each source S adds
     tr(G S G') with G that linear map (propagation of error); the terms are averaged over
-    the posterior of the scales. `group` and `year` are zero: the model holds no such term.
+    the posterior of the scales. `model_spread` holds the circulation where no model was subtracted; `scales` is what
+    not knowing the scales, the stretches of Student scatter and the parts of mixtures adds.
     """
-    terms = [_member_terms(m, p, observations) for m, p in zip(models, posteriors, strict=True)]
+    terms = [_member_terms(model, posterior) for posterior in posteriors]
     mean = {name: float(np.mean([member[name] for member in terms])) for name in terms[0]}
     return {
         **mean,
-        "group": 0.0,
-        "year": 0.0,
         "fingerprint": float(np.trace(member_spread(posteriors))),
         "scales": float(np.mean([np.trace(p.scale_covariance) for p in posteriors])),
     }
@@ -64,49 +60,36 @@ def variance_shares(terms: dict[str, float]) -> dict[str, float]:
     return {name: terms[name] / total for name in SOURCES}
 
 
-def _member_terms(model: LinearModel, posterior: ScalePosterior, observations: Observations) -> dict[str, float]:
-    rows, log_scales, weight = model.rows, posterior.log_scales, posterior.weight
-    site, local, common = np.exp(2.0 * log_scales).T
-    linear = estimator(model, log_scales)
-    squares = (linear**2).sum(axis=1)  # over the two components, (n_node, n_row)
-    answer = linear @ model.design
-    lost = model.annual_sd * np.eye(2) - answer[:, :, :2]
-    record, noise = _row_covariances(model, observations)
+def _member_terms(model: LinearModel, posterior: ScalePosterior) -> dict[str, float]:
+    condition, weight, rows, columns = posterior.condition, posterior.weight, model.rows, model.columns
+    squares = np.exp(2.0 * condition.log_scales)
+    linear = estimator(model, condition)
+    of_columns = ((linear @ model.design[posterior.member]) * units(model, condition)[:, None]) ** 2
+    of_rows = (linear**2).sum(axis=1)  # over the two components, (n_node, n_row)
+    of_means, means = of_rows[:, : rows.mean_count], np.s_[: rows.mean_count]
+    lost = model.annual_sd * np.eye(2) - linear @ model.design[posterior.member][:, -2:]
+    own = condition.stretch[:, model.row_place] * model.own_scatter
 
     def average(term: NDArray[np.float64]) -> float:
         return float(weight @ term)
 
+    def column(*parts: slice) -> float:
+        return sum(average(of_columns[:, :, part].sum(axis=(1, 2))) for part in parts)
+
+    def propagated(covariance: NDArray[np.float64]) -> float:
+        """Add up the pairs of rows, with their covariances (n_pair, 2, 2)."""
+        pairs = linear.reshape(*linear.shape[:2], -1, 2)
+        return average(np.einsum("nipa,pab,nipb->n", pairs, covariance, pairs, optimize=True))
+
+    alone = model.sharing.alone[rows.site[means]]
+    group = squares[:, 3] * (of_means @ alone) if model.scale_count == 4 else np.zeros(len(weight))
     return {
-        "record": average(((linear @ record) * linear).sum(axis=(1, 2))),
-        "site_scatter": average(site * (squares @ rows.is_mean)),
-        "model_local": average(
-            ((linear @ noise) * linear).sum(axis=(1, 2)) + local * (squares @ rows.local_factor)
-        ),
-        "model_spread": average(common * (answer[:, :, 4:] ** 2).sum(axis=(1, 2))),
-        "atmosphere": average((answer[:, :, 2:4] ** 2).sum(axis=(1, 2))),
+        "record": propagated(rows.record),
+        "site_scatter": average(squares[:, 0] * (of_means * own).sum(axis=1)) + column(columns.place),
+        "group": average(group) + column(columns.group),
+        "model_local": propagated(rows.noise) + average(squares[:, 1] * (of_rows @ rows.local_factor)),
+        "model_spread": column(columns.common, columns.unmodelled),
+        "atmosphere": column(slice(0, 2)),
+        "year": column(columns.year),
         "prior": average((lost**2).sum(axis=(1, 2))),
     }
-
-
-def _row_covariances(
-    model: LinearModel, observations: Observations
-) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Covariances (n_row, n_row) that the record error and the models' weather give the rows, Pa2."""
-    rows = model.rows
-    counts = observations.model_count
-    record = np.stack(
-        [
-            record_covariance(covariance, noise, count)
-            for covariance, noise, count in zip(
-                observations.covariance, observations.model_noise, counts, strict=True
-            )
-        ]
-    )
-    same = rows.site[:, None] == rows.site
-    shared = same & rows.is_mean[:, None] & rows.is_mean
-    overlap = same * (rows.model_weight @ rows.model_weight.T)
-    turn = rows.direction
-    return (
-        shared * np.einsum("rc,rcd,qd->rq", turn, record[rows.site], turn),
-        overlap * np.einsum("rc,rcd,qd->rq", turn, observations.model_noise[rows.site], turn),
-    )

@@ -1,4 +1,4 @@
-"""How each site stands to the others, and what its single Gaussian leaves out."""
+"""How each site stands to the others, and which sites a single Gaussian does not describe."""
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
@@ -7,18 +7,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from massfit.posterior.convergence import worse
-from massfit.posterior.likelihood import (
-    LinearModel,
-    annual_given_scales,
-    joined,
-    linear_model,
-    log_likelihood,
-    observation_rows,
-    predict_site,
-    without_site,
-)
-from massfit.posterior.observations import Observations
-from massfit.posterior.quadrature import ScalePosterior
+from massfit.posterior.importance import ScalePosterior
+from massfit.posterior.likelihood import base_variance, collapse, units
+from massfit.posterior.regression import FREEDOM, Condition, LinearModel, without_site
+
+Floats = NDArray[np.float64]
 
 OUTLIER_SD = 150.0
 """Extra scatter of a site that is wrong, Pa per component."""
@@ -26,7 +19,7 @@ OUTLIER_SD = 150.0
 OUTLIER_PRIOR = 0.05
 """Probability, before its phasor is seen, that a site is wrong."""
 
-_MASS = 0.995  # posterior mass of the scales that the leave-one-out sums cover
+_NODES = 150  # of each load member, on which a site is predicted from the others
 
 
 @dataclass(frozen=True)
@@ -45,16 +38,17 @@ class SiteCheck:
 
 
 def leave_one_out(
-    models: Sequence[LinearModel], posteriors: Sequence[ScalePosterior], site_count: int
+    model: LinearModel, posteriors: Sequence[ScalePosterior], single: LinearModel | None = None
 ) -> list[SiteCheck]:
     """Compare every site with the prediction from the others.
 
     Parameters
     ----------
-    models : sequence of LinearModel
-        One a load member.
+    model : LinearModel
     posteriors : sequence of ScalePosterior
-    site_count : int
+        One a load member.
+    single : LinearModel, optional
+        The same network with one Gaussian for every site; needed where some enter by their mixture.
 
     Returns
     -------
@@ -62,31 +56,47 @@ def leave_one_out(
         One a site. The scales are those of the other sites: the nodes are weighed again
         by one over the density that the other sites give the site's own phasors.
     """
+    nodes = [posterior.equal_nodes(_NODES, seed=k)[0] for k, posterior in enumerate(posteriors)]
+    density = [collapse(model, condition).log_likelihood for condition in nodes]
     checks = []
-    for s in range(site_count):
-        predictions = [_predicted_residual(m, p, s) for m, p in zip(models, posteriors, strict=True)]
+    for s in range(len(model.sharing.place)):
+        others = without_site(model, s)
+        pairs = zip(nodes, density, strict=True)
+        predictions = [_predicted_residual(single or model, others, s, condition, own) for condition, own in pairs]
         residual, covariance = _pool(np.array([r for r, _ in predictions]), np.array([v for _, v in predictions]))
         checks.append(SiteCheck(_standardised(residual, covariance), _outlier_probability(residual, covariance)))
     return checks
 
 
 def _predicted_residual(
-    model: LinearModel, posterior: ScalePosterior, site: int
-) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Residual (2,) of the site's mean over models and its predicted covariance (2, 2)."""
-    order = np.argsort(posterior.weight)[::-1]
-    nodes = order[: np.searchsorted(np.cumsum(posterior.weight[order]), _MASS) + 1]
-    log_scales = posterior.log_scales[nodes]
-    others = without_site(model, site)
-    gain = log_likelihood(others, log_scales) - log_likelihood(model, log_scales)
-    weight = posterior.weight[nodes] * np.exp(gain - gain.max())
-    residual, covariance = predict_site(model, others, site, log_scales)
+    model: LinearModel, others: LinearModel, site: int, condition: Condition, density: Floats
+) -> tuple[Floats, Floats]:
+    """Residual (2,) of the site's mean over models and its predicted covariance (2, 2), on its own axes."""
+    rest = collapse(others, condition)
+    gain = rest.log_likelihood - density
+    weight = np.exp(gain - gain.max())
+    residual, covariance = _predict(model, rest.root, site, condition)
     return _pool(residual, covariance, weight / weight.sum())
 
 
-def _pool(
-    residuals: NDArray[np.float64], covariances: NDArray[np.float64], weight: NDArray[np.float64] | None = None
-) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+def _predict(model: LinearModel, root: Floats, site: int, condition: Condition) -> tuple[Floats, Floats]:
+    chosen = np.flatnonzero(model.rows.site[: model.rows.mean_count] == site)
+    if model.student:
+        # the variance of Student scatter: what the site's own stretch came to is not known from the others
+        stretch = condition.stretch.copy()
+        stretch[:, model.sharing.place[site]] = FREEDOM / (FREEDOM - 2.0)
+        own_condition = Condition(condition.log_scales, stretch, condition.part, condition.member)
+    else:
+        own_condition = condition
+    base, _, scatter = base_variance(model, own_condition)
+    design = model.design[condition.member[0]][chosen] * units(model, condition)[:, None]
+    turned = np.linalg.solve(root[:, :-1, :-1], np.swapaxes(design, 1, 2))
+    residual = model.rows.value[chosen] - np.einsum("np,npr->nr", root[:, -1, :-1], turned)
+    own = (base + scatter)[:, chosen]
+    return residual, np.swapaxes(turned, 1, 2) @ turned + own[:, :, None] * np.eye(2)
+
+
+def _pool(residuals: Floats, covariances: Floats, weight: Floats | None = None) -> tuple[Floats, Floats]:
     """Mean (2,) and covariance (2, 2) of a mixture."""
     masses = np.full(len(residuals), 1.0 / len(residuals)) if weight is None else weight
     mean = masses @ residuals
@@ -94,14 +104,14 @@ def _pool(
     return mean, np.einsum("n,nij->ij", masses, covariances) + (masses[:, None] * shift).T @ shift
 
 
-def _standardised(residual: NDArray[np.float64], covariance: NDArray[np.float64]) -> float:
+def _standardised(residual: Floats, covariance: Floats) -> float:
     return float(np.sqrt(residual @ np.linalg.solve(covariance, residual) / 2.0))
 
 
-def _outlier_probability(residual: NDArray[np.float64], covariance: NDArray[np.float64]) -> float:
+def _outlier_probability(residual: Floats, covariance: Floats) -> float:
     """Probability 0.05 N(r; 0, V + 1.5^2 I hPa2) / [that + 0.95 N(r; 0, V)]."""
 
-    def log_density(v: NDArray[np.float64]) -> float:
+    def log_density(v: Floats) -> float:
         return float(-0.5 * (np.linalg.slogdet(v)[1] + residual @ np.linalg.solve(v, residual)))
 
     odds = np.log(1.0 / OUTLIER_PRIOR - 1.0) + log_density(covariance)
@@ -125,53 +135,32 @@ class MixtureEffect:
     sd_ratio: float
 
 
-def mixture_effects(
-    observations: Observations, model: LinearModel, admittance: NDArray[np.complex128], log_scales: NDArray[np.float64]
-) -> list[MixtureEffect]:
-    """Replace each site's single Gaussian in turn by its mixture; the others and the scales stay.
+def mixture_effect(model: LinearModel, mixed: LinearModel, condition: Condition, site: int) -> MixtureEffect:
+    """Put one site's mixture in the place of its single Gaussian; the others and the scales stay.
 
     Parameters
     ----------
-    observations : Observations
     model : LinearModel
-        With the admittances given.
-    admittance : (n_site,) array of complex
-    log_scales : (3,) array
-        Scales at the posterior.
+        One Gaussian for every site.
+    mixed : LinearModel
+        The same, but this site by its mixture.
+    condition : Condition
+        One point: the scales and stretches at the posterior.
+    site : int
 
     Returns
     -------
-    list of MixtureEffect
+    MixtureEffect
     """
-    scales = log_scales[None]
-    mean, covariance = (moment[0] for moment in annual_given_scales(model, scales))
+    mean, covariance = (moment[0] for moment in collapse(model, condition).moments())
+    log_weight = mixed.rows.log_weight[site]
+    points = condition.take(np.zeros(len(log_weight), dtype=np.int64))
+    part = points.part.copy()
+    part[:, site] = np.arange(len(log_weight))
+    collapsed = collapse(mixed, replace(points, part=part))
+    log_mass = collapsed.log_likelihood + log_weight
+    mass = np.exp(log_mass - log_mass.max())
+    other_mean, other_covariance = _pool(*collapsed.moments(), mass / mass.sum())
     sd = np.sqrt(np.diag(covariance))
-    effects = []
-    for s in range(len(observations.sites)):
-        used = np.flatnonzero(observations.weight[s] > 0)
-        if len(used) == 1:
-            effects.append(MixtureEffect(0.0, 1.0))
-            continue
-        others = without_site(model, s)
-        variants = [joined(others, _site_at_part(observations, model, admittance, s, int(k))) for k in used]
-        log_weight = np.log(observations.weight[s, used]) + [log_likelihood(v, scales)[0] for v in variants]
-        moments = [annual_given_scales(v, scales) for v in variants]
-        weight = np.exp(log_weight - log_weight.max())
-        other_mean, other_covariance = _pool(
-            np.concatenate([m for m, _ in moments]), np.concatenate([c for _, c in moments]), weight / weight.sum()
-        )
-        ratio = np.sqrt(np.diag(other_covariance)) / sd
-        effects.append(MixtureEffect(worse((other_mean - mean) / sd), float(np.exp(worse(np.log(ratio))))))
-    return effects
-
-
-def _site_at_part(
-    observations: Observations, model: LinearModel, admittance: NDArray[np.complex128], site: int, part: int
-) -> LinearModel:
-    """Build the regression of one site at one part of its mixture."""
-    alone = np.arange(len(observations.sites)) == site
-    weight = (np.arange(observations.weight.shape[1]) == part).astype(float)[None]
-    rows = observation_rows(replace(observations.select(alone), weight=weight))
-    return linear_model(
-        rows, admittance[alone], annual_sd=model.annual_sd, atmosphere_sd=model.atmosphere_sd, truth=model.truth
-    )
+    ratio = np.sqrt(np.diag(other_covariance)) / sd
+    return MixtureEffect(worse((other_mean - mean) / sd), float(np.exp(worse(np.log(ratio)))))

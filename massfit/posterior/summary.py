@@ -11,15 +11,13 @@ from massfit.annual.dataset import NO_MODEL
 from massfit.constants import FRESH_WATER_DENSITY, KG_PER_GT, PASCAL_PER_HPA, STANDARD_GRAVITY
 from massfit.phasor import as_complex, as_components, peak_date, unwrapped_peak_days
 from massfit.posterior.alternatives import alternative_answers
-from massfit.posterior.network_model import member_models
+from massfit.posterior.network_model import Choices, network_model
 from massfit.posterior.observations import Observations, read_observations
 from massfit.posterior.regions import scalar_summary
 from massfit.posterior.result import Posterior
 from massfit.posterior.shares import variance_shares, variance_terms
-from massfit.posterior.sites import MixtureEffect, SiteCheck, leave_one_out, mixture_effects
-
-MIXTURE_LIMIT = 0.02
-"""Largest effect on the network mean (in standard deviations) and standard deviation of a site's single Gaussian."""
+from massfit.posterior.sites import SiteCheck, leave_one_out
+from massfit.posterior.years import yearly_cycles
 
 
 def summarise(
@@ -50,7 +48,7 @@ def summarise(
     dict
         `amplitude_hpa`, `peak_day`, `in_phase_hpa`, `quadrature_hpa`, `water_mm`,
         `sea_water_mm`, `mass_gt`, each with median, mean, sd, region50, region95
-        (equal-tailed); `peak_date`, `variance_share`, `alternatives`, `convergence`,
+        (equal-tailed); `peak_date`, `variance_share`, `years`, `alternatives`, `convergence`,
         `sites`, `covariance_hpa2`, `warnings`. A site's `phasor_hpa` is as observed: the
         response to the air over land is not taken off.
 
@@ -60,37 +58,31 @@ def summarise(
         Every fault of the two Datasets.
     """
     observations, admittance = read_observations(site_phasors, fingerprints)
-    models = member_models(
-        observations,
-        admittance,
-        settings=posterior.settings,
-        priors=posterior.priors,
-        atmosphere_sd_hpa=posterior.atmosphere_sd_hpa,
-    )
-    checks = leave_one_out(models, posterior.second_route, len(observations.sites))
-    effects = _mixture_effects(posterior, observations, admittance)
+    choices = Choices(posterior.settings, posterior.priors, posterior.atmosphere_sd_hpa)
+    model = network_model(observations, admittance, choices, mixed=posterior.mixed)
+    single = network_model(observations, admittance, choices) if posterior.mixed else None
+    checks = leave_one_out(model, posterior.second_route, single)
     names = [str(site) for site in site_phasors["site"].values]
     reduced_sd = dict(zip(names, site_phasors["reduced_sd"].values.astype(float).tolist(), strict=True))
     notes = [
-        _site_warnings(observations, s, reduced_sd[site], checks[s], effects[s])
-        for s, site in enumerate(observations.sites)
+        _site_warnings(observations, s, reduced_sd[site], checks[s]) for s, site in enumerate(observations.sites)
     ]
     return {
         **_answer(posterior.draws, reference_year, ocean_area_m2, sea_water_density),
         "covariance_hpa2": (np.cov(posterior.draws.T) / PASCAL_PER_HPA**2).tolist(),
-        "variance_share": variance_shares(variance_terms(models, posterior.second_route, observations)),
+        "variance_share": variance_shares(variance_terms(model, posterior.second_route)),
+        "years": yearly_cycles(posterior, observations),
         "alternatives": alternative_answers(
             observations,
             fingerprints,
             posterior.second_route,
             admittance=admittance,
-            settings=posterior.settings,
-            priors=posterior.priors,
-            atmosphere_sd_hpa=posterior.atmosphere_sd_hpa,
+            choices=choices,
+            mixed=posterior.mixed,
         ),
         "convergence": {**asdict(posterior.convergence), "converged": posterior.converged},
         "sites": _sites(observations, site_phasors, admittance, checks, notes),
-        "warnings": [*posterior.warnings, *_mixture_warnings(observations.sites, effects)],
+        "warnings": list(posterior.warnings),
     }
 
 
@@ -111,22 +103,6 @@ def _answer(
         "sea_water_mm": scalar_summary(height_mm / sea_water_density),
         "mass_gt": scalar_summary(amplitude * ocean_area_m2 / STANDARD_GRAVITY / KG_PER_GT),
     }
-
-
-def _mixture_effects(
-    posterior: Posterior, observations: Observations, admittance: NDArray[np.complex128]
-) -> list[MixtureEffect]:
-    """Effects of the single Gaussians at the mean log scales and the mean admittance of the members."""
-    mean_admittance = admittance.mean(axis=0)
-    model = member_models(
-        observations,
-        mean_admittance[None],
-        settings=posterior.settings,
-        priors=posterior.priors,
-        atmosphere_sd_hpa=posterior.atmosphere_sd_hpa,
-    )[0]
-    log_scales = np.mean([route.weight @ route.log_scales for route in posterior.second_route], axis=0)
-    return mixture_effects(observations, model, mean_admittance, log_scales)
 
 
 def _sites(
@@ -157,7 +133,7 @@ def _sites(
 
 
 def _site_warnings(
-    observations: Observations, s: int, reduced_sd: float, check: SiteCheck, effect: MixtureEffect
+    observations: Observations, s: int, reduced_sd: float, check: SiteCheck
 ) -> list[str]:
     present = [model for model, there in zip(observations.models, observations.present[s], strict=True) if there]
     own = [
@@ -169,27 +145,7 @@ def _site_warnings(
                 f"probability {check.outlier_probability:.2f} of being wrong. Look at its record and its levels; where "
                 "something is wrong with it, exclude it and say why.",
             ),
-            (_is_large(effect), _mixture_text(effect)),
         )
         if applies
     ]
     return [*site_cautions(reduced_sd, [model for model in present if model != NO_MODEL]), *own]
-
-
-def _is_large(effect: MixtureEffect) -> bool:
-    return max(abs(effect.shift_sd), abs(effect.sd_ratio - 1.0)) > MIXTURE_LIMIT
-
-
-def _mixture_text(effect: MixtureEffect) -> str:
-    return (
-        f"Its single Gaussian stands for a mixture that would move the network mean by {effect.shift_sd:+.3f} standard "
-        f"deviations and its standard deviation by {effect.sd_ratio - 1.0:+.1%} (allowed are {MIXTURE_LIMIT:.0%}). "
-        "Exclude the site and see whether the answer moves."
-    )
-
-
-def _mixture_warnings(sites: tuple[str, ...], effects: list[MixtureEffect]) -> list[str]:
-    named = [site for site, effect in zip(sites, effects, strict=True) if _is_large(effect)]
-    if not named:
-        return []
-    return [f"A single Gaussian does not describe the records of: {', '.join(named)}; see the sites' warnings."]

@@ -143,14 +143,14 @@ def test_parts_are_used_damaged_ones_are_not_and_none_is_left(
 ) -> None:
     parts = interrupted(network, tmp_path / "results", monkeypatch)
     files = sorted(parts.iterdir())
-    assert len(files) == 5  # three sites, two load members
+    assert len(files) == 7  # three sites, two times two ensembles, two load members
     for damage, path in enumerate(files[:3]):
         content = bytearray(path.read_bytes())
         content[(3, len(content) // 2, -1)[damage]] ^= 0x04
         path.write_bytes(content)
     files[3].write_bytes(files[4].read_bytes())  # sound, and of another part
     computed = []
-    for module, name in (("massfit.pipeline.sites", "reduce_site"), ("massfit.posterior.sample", "_sample_member")):
+    for module, name in (("massfit.pipeline.sites", "reduce_site"), ("massfit.posterior.sample", "_sample_part")):
         really = getattr(sys.modules[module], name)
 
         def counting(task: object, really=really) -> object:

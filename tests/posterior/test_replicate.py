@@ -21,7 +21,7 @@ def test_covariance_is_that_of_the_equation(invent, dense_twin) -> None:
     network = invent(3, sites=4, models=3, missing=0.3, bare_sites=1)
     count = 60_000
     for truth in (1.0, 0.0):
-        twin = dense_twin(network, truth=truth)
+        twin = dense_twin(network, truth=truth, unmodelled_sd=0.0)
         drawn = replicates(network, count=count, truth=truth)
         pairs = np.stack([drawn[:, s, m] for s, m in twin.pairs], axis=1).reshape(count, -1)
         assert np.isfinite(pairs).all()

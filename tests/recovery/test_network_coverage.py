@@ -5,9 +5,16 @@ from dataclasses import dataclass, replace
 import numpy as np
 import pytest
 
-from massfit.posterior.network_model import inflation, member_models, member_spread, scale_priors, second_routes
+from massfit.posterior.importance import integrate_scales
+from massfit.posterior.network_model import (
+    Choices,
+    inflation,
+    member_spread,
+    network_model,
+    scale_priors,
+    second_routes,
+)
 from massfit.posterior.observations import Observations
-from massfit.posterior.quadrature import integrate_scales
 from massfit.posterior.sites import leave_one_out
 from massfit.settings import PosteriorSettings, Priors
 
@@ -100,7 +107,7 @@ def squared_distance_rank(
     case: Case, settings: PosteriorSettings, priors: Priors, rng: np.random.Generator, draws: int = 2000
 ) -> float:
     """Share of the pooled posterior that lies nearer to its mean than the truth does."""
-    routes = second_routes(case.observations, case.admittance, settings=settings, priors=priors, atmosphere_sd_hpa=0.04)
+    routes = second_routes(case.observations, case.admittance, Choices(settings, priors, 0.04), draws=1000)
     centre = np.mean([route.mean for route in routes], axis=0)
     stretch = np.sqrt(inflation(len(routes)))
     pooled = []
@@ -158,11 +165,11 @@ def test_the_spread_between_members_is_the_error_of_one_more():
     # members that differ by 10 % per component at all sites alike move |A| = 0.85 hPa by 8.5 Pa per component; the
     # inflated spread of K of them expects (K + 1) / K of that variance, both components together
     rng = np.random.default_rng(5)
-    choices = {"settings": PLAIN, "priors": Priors(), "atmosphere_sd_hpa": 0.04}
+    choices = Choices(PLAIN, Priors(), 0.04)
     spreads, sizes = [], []
     for _ in range(6):
         case = draw_network(rng, scales_from_prior=False, common_spread=0.1)
-        spreads.append(np.trace(member_spread(second_routes(case.observations, case.admittance, **choices))))
+        spreads.append(np.trace(member_spread(second_routes(case.observations, case.admittance, choices))))
         sizes.append(np.sum(case.truth**2))
     expected = 2.0 * 0.1**2 * (MEMBERS + 1) / MEMBERS * np.mean(sizes)
     # each is about chi-square with 2 (K - 1) degrees of freedom; three standard errors
@@ -174,10 +181,10 @@ def test_sites_predicted_from_the_others_have_residuals_of_unit_size():
     squares = []
     for _ in range(8):
         case = draw_network(rng, scales_from_prior=False)
-        choices = {"settings": PLAIN, "priors": Priors(), "atmosphere_sd_hpa": 0.04}
-        models = member_models(case.observations, case.admittance[:1], **choices)
-        routes = [integrate_scales(models[0], scale_priors(Priors()))]
-        squares += [check.standardised_residual**2 for check in leave_one_out(models, routes, SITES)]
+        choices = Choices(PLAIN, Priors(), 0.04)
+        model = network_model(case.observations, case.admittance[:1], choices)
+        routes = [integrate_scales(model, scale_priors(Priors(), model.scale_count))]
+        squares += [check.standardised_residual**2 for check in leave_one_out(model, routes)]
     # half a chi-square with two degrees of freedom: mean 1, standard deviation 1; 160 of them, three standard errors
     assert abs(np.mean(squares) - 1.0) < 3.0 / np.sqrt(160)
 

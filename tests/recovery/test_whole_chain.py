@@ -21,7 +21,7 @@ from massfit.annual.fit import SiteFit, fit_site
 from massfit.annual.record import ReducedRecord
 from massfit.phasor import admittance_matrix, annual_basis, as_complex, days_since, unwrapped_peak_days
 from massfit.pipeline.estimate import estimate
-from massfit.posterior.network_model import second_routes
+from massfit.posterior.network_model import Choices, second_routes
 from massfit.posterior.observations import read_observations
 from massfit.posterior.regions import density_regions, scalar_summary
 from massfit.posterior.sample import pool_members
@@ -204,13 +204,8 @@ def quadrature_draws(result: Estimate, phasors: xr.Dataset, priors: Priors, rng:
     """Draws (n, 2) of the network posterior of other phasors or priors, by quadrature over the scales, Pa."""
     settings = result.network.settings
     observations, admittance = read_observations(phasors, result.fingerprints)
-    routes = second_routes(
-        observations,
-        admittance,
-        settings=settings.posterior,
-        priors=priors,
-        atmosphere_sd_hpa=settings.corrections.ocean_mean_atmosphere_sd_hpa,
-    )
+    sd = settings.corrections.ocean_mean_atmosphere_sd_hpa
+    routes = second_routes(observations, admittance, Choices(settings.posterior, priors, sd))
     drawn = []
     for route in routes:
         node = rng.choice(len(route.weight), size=DRAWS, p=route.weight)
