@@ -201,7 +201,7 @@ def _reduced(daily: DailyRecord, corrections: xr.Dataset, used: NDArray[np.bool_
         drift=daily.drift,
         steps=daily.steps,
         calibrations=daily.calibrations,
-        companions=companion_series(corrections, daily.pressure[kept], place),
+        companions=_rounded(companion_series(corrections, daily.pressure[kept], place)),
     )
 
 
