@@ -25,6 +25,8 @@ from massfit.report.world import (
 MAPS_OF_A_PAGE = 20
 """Most footprints in one figure."""
 
+_NAMES_IN_A_COLUMN = 24  # more would hide the map
+
 _COLOURS = "cividis"  # darker to lighter throughout: the same order in grey
 _BANDS = 15  # at most so many steps of colour
 _ROUND = np.outer(10.0 ** np.arange(-5, 5), [1.0, 2.0, 5.0]).ravel()
@@ -89,8 +91,10 @@ def world_map(
         colour = {"color": "white"} if at_sites is None else {"c": at_sites, "cmap": _COLOURS, "norm": scale}
         axes.scatter(east, site_latitude_deg, s=16, edgecolor="white", linewidth=1.6, zorder=4, **colour)
         axes.scatter(east, site_latitude_deg, s=16, edgecolor="black", linewidth=0.6, zorder=5, **colour)
-        missing = place_labels(axes, site_ids, np.column_stack([east, site_latitude_deg]), marker_radius=2.6)
-        _set_off(axes)
+        missing = len(site_ids)
+        if width_mm > COLUMN_WIDTH_MM or missing <= _NAMES_IN_A_COLUMN:
+            missing = place_labels(axes, site_ids, np.column_stack([east, site_latitude_deg]), marker_radius=2.6)
+            _set_off(axes)
         notes = [f"heavy line: {neutral:g}"] if neutral is not None and bands[0] < neutral < bands[-1] else []
         axes.set_title("; ".join([*notes, *([f"{missing} without a name"] if missing else [])]), fontsize=7.0)
         _colour_scale(figure, scale, label, inside, (12.0 + 0.1 * across, 8.5, 0.8 * across, 2.2))

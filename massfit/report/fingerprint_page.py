@@ -130,7 +130,7 @@ def fingerprint_page(study: FingerprintStudy, pictures: Mapping[str, bytes]) -> 
         warnings=study.warnings,
         assumptions=study.assumptions,
         images=as_data(pictures),
-        captions={name: PICTURES[_stem(name)] for name in wide},
+        captions={name: PICTURES[_stem(name)] + _besides(name, study.dataset) for name in wide},
         alternatives_text={name: f"{PICTURES[_stem(name)].split(':')[0]}; numbers are in the tables." for name in wide},
         pages={stem: [name for name in wide if name.startswith(stem)] for stem in ("members", "footprints")},
         map_note=map_note(study.dataset),
@@ -193,6 +193,12 @@ def map_note(dataset: xr.Dataset) -> str:
 
 def _peaks(delay: float) -> str:
     return f"peaks {abs(delay):.1f} days {'after' if delay >= 0.0 else 'before'} it"
+
+
+def _besides(name: str, dataset: xr.Dataset) -> str:
+    if _stem(name) != "footprints" or dataset.attrs.get("rotational_feedback", "none") == "none":
+        return ""
+    return " Without the rotational feedback, which the numbers of the site hold."
 
 
 def _stem(name: str) -> str:

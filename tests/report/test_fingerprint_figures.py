@@ -155,6 +155,12 @@ def test_pages_hold_every_site_and_all_text_stays_on_the_sheet(count: int) -> No
         assert -slack <= seen.y0 <= seen.y1 <= high + slack, name
 
 
+def test_a_narrow_map_of_many_sites_has_no_names() -> None:
+    axes = draw_fingerprint(settled(25))["delay_map_column"].axes[0]
+    assert not axes.texts
+    assert "25 without a name" in axes.get_title(loc="left")
+
+
 def test_a_single_member_has_no_map_of_its_spread() -> None:
     single = settled(2).isel(member=[0]).drop_vars(["map_spread", "amplitude_ratio_spread", "delay_spread"])
     figures = draw_fingerprint(single)
