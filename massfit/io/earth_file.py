@@ -13,6 +13,7 @@ from massfit.errors import Fault, InputError, collect, printable
 _NOTE = re.compile(r"#\s*(name|reference)\s*:\s*(.*?)\s*$")
 _MOST_BYTES = 2**20
 _LONGEST_NOTE = 200
+_LARGEST = 1e9  # of anything that an Earth profile holds, in any of its units
 
 # quantity: its columns with the factor to SI, and what the Earth has of it
 _COLUMNS = {
@@ -120,9 +121,9 @@ def _numbers(
             problem = f"the row holds {line[:60]!r}"
             faults.append(Fault(source, "", problem, "Must be numbers", "Correct it", number))
             continue
-        if not np.isfinite(values[-1]).all():
-            problem = "a value is missing or infinite"
-            faults.append(Fault(source, "", problem, "Must be finite numbers", "Fill the gap", number))
+        if not (np.abs(values[-1]) <= _LARGEST).all():  # NaN is not
+            problem = "a value is missing, infinite or too large"
+            faults.append(Fault(source, "", problem, f"Must be numbers up to {_LARGEST:g}", "Fill the gap", number))
     if not values and not faults:
         faults.append(Fault(source, "", "there is no row", "At least two", "Check the file"))
     if faults:

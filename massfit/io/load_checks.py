@@ -40,10 +40,12 @@ def land_load(pattern: LoadPattern, *, water_vapour: complex, source: str) -> Lo
     InputError
         More load in a cell than there can be, or a water budget that does not close.
     """
-    largest = float(np.abs(pattern.values).max())
-    if largest > _LARGEST:
+    with np.errstate(over="ignore", invalid="ignore"):
+        largest = float(np.abs(pattern.values).max())
+    if not largest <= _LARGEST:
         problem = f"the load reaches {largest:.3g} kg m-2, {largest / 1e3:.3g} m of water"
-        raise InputError(Fault(source, pattern.name, problem, f"Must be at most {_LARGEST:g}", "Check the units"))
+        allowed, action = f"Must be at most {_LARGEST:g}", "Check units and fill value"
+        raise InputError(Fault(source, pattern.name, problem, allowed, action))
     ocean = OceanFunction.builtin()
     cells = CellGrid.from_centres(pattern.latitude_deg, pattern.longitude_deg)
     fraction = regrid(ocean.fraction, ocean.cells, cells)

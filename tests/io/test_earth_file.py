@@ -105,7 +105,9 @@ def test_a_written_profile_is_read_back(tmp_path: Path) -> None:
         ("0,13.0,11.2,3.6,85\n", "", "e.csv:4: radius: the lowest radius is 600 km. Must be 0, the centre. "
          "Add the rows beneath."),
         ("2300,11.4,", "2300,,", "e.csv:9: the row holds '2300,,9.5,0,57822'. Must be numbers. Correct it."),
-        ("2300,11.4,", "2300,nan,", "e.csv:9: a value is missing or infinite. Must be finite numbers. Fill the gap."),
+        ("2300,11.4,", "2300,nan,", "e.csv:9: a value is missing, infinite or too large. Must be numbers up to 1e+09. "
+         "Fill the gap."),
+        ("2300,11.4,", "2300,1e308,", "e.csv:9: a value is missing, infinite or too large."),
         ("2300,11.4,", "2300,", "e.csv:9: the row has 4 values. Must be 5 as the header. Correct it."),
         ("6371,2.7,6.2,3.5", "6371,2.7,6.2,-3.5", "e.csv: vs_km_s: the values run from -3.5 to 7.27."),
         ("6371,2.7,6.2,3.5", "6371,2.7,4.0,3.5", "e.csv: bulk modulus: from 6340 to 6371 km the bulk modulus falls to"),

@@ -231,7 +231,7 @@ def test_a_little_on_the_ocean_is_another_land_mask(tmp_path: Path) -> None:
 
 def test_millimetres_that_are_called_metres_are_refused(tmp_path: Path) -> None:
     phasor_file(tmp_path / "w.nc", values=6e4 * inland(LATITUDE, LONGITUDE))
-    message = "w.nc: w: the load reaches 8.49e\\+04 kg m-2, 84.9 m of water. Must be at most 5000. Check the units."
+    message = "w.nc: w: the load reaches 8.49e\\+04 kg m-2, 84.9 m of water. Must be at most 5000. Check units and"
     with pytest.raises(InputError, match=message):
         read_loads(tmp_path / "w.nc", reference_year=2016, source="w.nc")
 
@@ -271,3 +271,18 @@ def test_a_climatology_may_be_over_twelve_times(tmp_path: Path) -> None:
     twice.to_netcdf(tmp_path / "two.nc", engine="h5netcdf")
     with pytest.raises(InputError, match=r"there are 24 months\. Must be the twelve months of a climatology"):
         read_loads(tmp_path / "two.nc", reference_year=2016, source="two.nc")
+
+
+@pytest.mark.parametrize("value", [-9999.0, 1e20, 9.96921e36, 1e308])
+def test_a_fill_value_that_is_not_declared_is_refused(value: float, tmp_path: Path) -> None:
+    values = np.where(np.isnan(inland(LATITUDE, LONGITUDE)), value, 2.0)
+    phasor_file(tmp_path / "w.nc", values=values)
+    with pytest.raises(InputError, match=r"the load reaches .* Check units and fill value"):
+        read_loads(tmp_path / "w.nc", reference_year=2016, source="w.nc")
+    months = np.repeat(values[None], 12, axis=0)
+    months[6] *= 0.5
+    places = {"month": np.arange(1, 13), "lat": LATITUDE, "lon": LONGITUDE}
+    dataset = xr.Dataset({"load": (("month", "lat", "lon"), months, MASS)}, places)
+    dataset.to_netcdf(tmp_path / "m.nc", engine="h5netcdf")
+    with pytest.raises(InputError, match=r"the load reaches|all the water of the Earth"):
+        read_loads(tmp_path / "m.nc", reference_year=2016, source="m.nc")
