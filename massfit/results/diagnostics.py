@@ -54,9 +54,11 @@ def with_diagnostics(phasors: xr.Dataset, reductions: Sequence[SiteReduction]) -
         With, over (site): `inflation`, `portmanteau`, `portmanteau_degrees`, `portmanteau_p`, `whitened_mean_square`;
         over (site, bin): `frequency`, `residual_density`, `expected_density`, `noise_density`, `bin_frequencies`;
         over (site, lag): `autocorrelation`; over (site, year): `year_days`, `year_phasor`,
-        `year_phasor_covariance`. NaN where a site has none.
+        `year_phasor_covariance`. NaN where a site has none; the same Dataset where no site has any.
     """
     known = {each.site.id: each.diagnostics for each in reductions if each.diagnostics is not None}
+    if not known:
+        return phasors
     own = [known.get(str(site)) for site in phasors["site"].values]
     added: dict[str, tuple[tuple[str, ...], Floats, dict[str, str]]] = {}
     for name, (of, units, text) in _SCALARS.items():

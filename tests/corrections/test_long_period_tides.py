@@ -10,6 +10,7 @@ import pytest
 from massfit.corrections.long_period_tides import (
     LINES,
     NORMALISATION,
+    line_table,
     mean_longitudes,
     zonal_function,
     zonal_height,
@@ -105,3 +106,40 @@ def test_the_nine_lines_are_nearly_all_of_the_zonal_tide() -> None:
 def test_zonal_function_has_no_mean_on_the_sphere() -> None:
     nodes, weights = np.polynomial.legendre.leggauss(8)
     assert float(weights @ zonal_function(np.degrees(np.arcsin(nodes)))) == pytest.approx(0.0, abs=1e-14)
+
+
+# days; Doodson (1921) and every table of tidal speeds since
+PERIODS = {
+    **{"node": 6798.4, "Sa": 365.26, "Ssa": 182.621, "MSm": 31.812, "Mm": 27.5546, "MSf": 14.7653, "Mf": 13.6608},
+    "Mtm": 9.1329,
+}
+
+
+def test_periods_are_the_published_ones() -> None:
+    table = {row["line"]: row["period_days"] for row in line_table(1.0)}
+    for name, period in PERIODS.items():
+        assert table[name] == pytest.approx(period, rel=2e-5), name
+
+
+def test_the_nodal_side_line_modulates_mf_as_published() -> None:
+    # node factor of Mf: 1.043 + 0.414 cos N (Schureman 1958, from memory); the 0.043 is a line we leave out
+    time = days("2000-01-01", "2019-01-01")
+    pair = tuple(line for line in LINES if line.name in {"Mf", "2s+N'"})
+    arguments = mean_longitudes(time)
+    turning = sum(line.height_m * np.exp(1j * (arguments @ np.array(line.multipliers, float))) for line in pair)
+    factor = np.abs(turning) / 0.0666
+    assert factor.max() == pytest.approx(1.043 + 0.414, abs=0.05)
+    assert factor.min() == pytest.approx(1.043 - 0.414, abs=0.05)
+    shares = {row["line"]: row["nodal_share"] for row in line_table(1.0)}
+    assert shares["Mf"] == pytest.approx(0.5 * (factor.max() - factor.min()), abs=1e-3)
+    assert [name for name, share in shares.items() if share] == ["Mf"]
+
+
+def test_amplitudes_of_the_lines_are_what_the_series_holds() -> None:
+    # a slow twin: least squares of every line in the series of a site over two turns of the node
+    time = days("1990-01-01", "2027-03-16")[::3]
+    response = -4321.0
+    arguments = mean_longitudes(time) @ np.array([line.multipliers for line in LINES], dtype=float).T
+    design = np.concatenate([np.cos(arguments), np.sin(arguments)], axis=1)
+    fitted = np.linalg.lstsq(design, response * zonal_height(time), rcond=None)[0].reshape(2, -1)
+    np.testing.assert_allclose([row["amplitude"] for row in line_table(response)], np.hypot(*fitted), rtol=1e-6)

@@ -124,3 +124,32 @@ def test_report_says_whose_results_these_are(folder: Path) -> None:
     done = CliRunner().invoke(main, ["report", str(folder / "phasors")])
     assert done.exit_code == 2
     assert "it holds what massfit phasors wrote, without an answer" in done.output
+
+
+REDUCED = """
+network = { name = "Elsewhere", reference_year = 2016 }
+corrections = { ocean_mean_atmosphere = "already-removed" }
+[[site]]
+id = "A3"
+latitude = -11.25
+longitude = 205.5
+phasor_hpa = [0.12, 0.81]
+phasor_covariance_hpa2 = [[0.01, 0.0], [0.0, 0.02]]
+years = [2014, 2018]
+subtracted = []
+"""
+
+
+def test_sites_reduced_elsewhere_are_listed_without_a_figure(tmp_path: Path) -> None:
+    (tmp_path / "network.toml").write_text(REDUCED)
+    done = CliRunner().invoke(main, ["phasors", str(tmp_path), "--quiet", "--json"])
+    assert done.exit_code == 0, done.output
+    summary = json.loads(done.stdout)
+    assert summary == json.loads((tmp_path / "phasors" / "phasors.json").read_text())
+    (site,) = summary["sites"]
+    assert site["phasor_hpa"] == pytest.approx([0.12, 0.81])
+    assert site["judged"] is None
+    assert any("No ocean model was subtracted" in text for text in site["warnings"])
+    assert not (tmp_path / "phasors" / "reduced_records.nc").exists()
+    assert not list((tmp_path / "phasors" / "figures").iterdir())
+    assert "This site was reduced elsewhere" in (tmp_path / "phasors" / "phasors.html").read_text()
