@@ -24,6 +24,9 @@ COMMON = ("long_period_tides", "pole_tide", "ocean_mean_atmosphere")
 
 CIRCULATION, MEAN = "circulation", "mean"
 
+CALIBRATIONS = "calibrations"
+"""Name of what in-situ readings at a known pressure did: they are data of the fit beside the record."""
+
 
 @dataclass(frozen=True)
 class CorrectionPhasor:
@@ -32,7 +35,7 @@ class CorrectionPhasor:
     Parameters
     ----------
     series : str
-        `RECORD`, a name of `COMMON`, `CIRCULATION`, or a name of `circulation.PARTS`.
+        `RECORD`, a name of `COMMON`, `CIRCULATION`, `CALIBRATIONS`, or a name of `circulation.PARTS`.
     model : str or None
         The circulation model; `MEAN` for the mean of those present at the site.
     phasor : (2,) array
@@ -51,7 +54,7 @@ class CorrectionPhasor:
     @property
     def summand(self) -> bool:
         """Whether the record is the site's phasor plus this and the other summands."""
-        return self.series in COMMON or (self.series, self.model) == (CIRCULATION, MEAN)
+        return self.series in (*COMMON, CALIBRATIONS) or (self.series, self.model) == (CIRCULATION, MEAN)
 
 
 def companion_names(corrections: xr.Dataset) -> list[tuple[str, str | None]]:
@@ -111,7 +114,11 @@ def companion_series(
 
 
 def correction_phasors(
-    corrections: xr.Dataset, companions: NDArray[np.float64], phasors: NDArray[np.float64]
+    corrections: xr.Dataset,
+    companions: NDArray[np.float64],
+    phasors: NDArray[np.float64],
+    *,
+    calibrated: bool = False,
 ) -> tuple[CorrectionPhasor, ...]:
     """Name the phasors of the companions, and add those of the single models.
 
@@ -122,6 +129,9 @@ def correction_phasors(
         By the operator of the fit, in the order of :func:`companion_names`, Pa.
     phasors : (n_model, 2) array
         Of the site, with each of the models present subtracted, Pa: they differ by what the models differ.
+    calibrated : bool
+        Whether the fit held in-situ calibrations. What they did is then the rest: less the phasor that the same
+        operator gives to the readings alone.
 
     Returns
     -------
@@ -133,6 +143,9 @@ def correction_phasors(
         for (name, model), value in zip(companion_names(corrections), companions, strict=True)
     ]
     models = [str(name) for name in corrections["model"].values[corrections["present"].values == 1]]
+    if calibrated:
+        taken = sum((each.phasor for each in found if each.summand), start=np.zeros(2))
+        found.insert(1, CorrectionPhasor(CALIBRATIONS, None, found[0].phasor - phasors.mean(axis=0) - taken))
     mean = next((each.phasor for each in found if each.series == CIRCULATION), None)
     if mean is None:
         return tuple(found)

@@ -32,8 +32,8 @@ _CSV_COLUMNS = (
     "admittance_real", "admittance_imaginary", "standardised_residual", "outlier_probability", "warnings",
 )  # fmt: skip
 
-_CSV_SERIES = ("record", "long_period_tides", "pole_tide", "ocean_mean_atmosphere", "circulation")
-"""Series whose phasors stand in the table too: the site's phasor and the last four make up the first."""
+_CSV_SERIES = ("record", "long_period_tides", "pole_tide", "ocean_mean_atmosphere", "circulation", "calibrations")
+"""Series whose phasors stand in the table too: the site's phasor and the others make up the first."""
 
 
 def check_output(folder: Path, *, overwrite: bool, holds: str = ESTIMATE_FILE) -> None:

@@ -172,7 +172,8 @@ def reduce_site(task: SiteTask) -> SiteReduction:
         site=task.site.id,
     )
     companions = np.zeros((0, 2)) if fit.companions is None else fit.companions
-    phasors = correction_phasors(corrections, companions, fit.single_gaussian()[0])
+    calibrated = any(record.calibrations is not None for record in records)
+    phasors = correction_phasors(corrections, companions, fit.single_gaussian()[0], calibrated=calibrated)
     judged = None
     if task.judge:
         judged = diagnose_site(records, fit, reference_year=year, rng=rng, priors=task.settings.priors)

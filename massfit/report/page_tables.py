@@ -49,6 +49,7 @@ _SERIES_WORDS = {
     "pole_tide": "pole tide",
     "ocean_mean_atmosphere": "ocean-mean air pressure",
     "circulation": "circulation",
+    "calibrations": "calibrations",
     "own_ocean_mean": "own ocean mean taken off",
     "self_attraction": "self-attraction added",
     "local_air_pressure": "local air pressure added",

@@ -12,7 +12,7 @@ from massfit.annual.dataset import NO_MODEL
 from massfit.annual.fit import DriftFit, Estimate
 from massfit.constants import ANNUAL_RATE, PASCAL_PER_HPA
 from massfit.corrections.long_period_tides import line_table
-from massfit.corrections.phasors import CIRCULATION, COMMON, RECORD
+from massfit.corrections.phasors import CALIBRATIONS, CIRCULATION, COMMON, RECORD
 from massfit.phasor import COMPONENTS, peak_days
 from massfit.results.estimate import SiteReduction
 from massfit.site import Site
@@ -209,7 +209,7 @@ def _row(site: Mapping[str, Any]) -> dict[str, str]:
         **{name: judged.get(name) for name in ("inflation", "portmanteau_p", "whitened_mean_square")},
         **{
             f"{name}_{part}_hpa": series.get(name, [0.0, 0.0])[place] if series else None
-            for name in (RECORD, *COMMON, CIRCULATION)
+            for name in (RECORD, *COMMON, CIRCULATION, CALIBRATIONS)
             for place, part in enumerate(COMPONENTS)
         },
     }

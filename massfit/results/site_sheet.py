@@ -234,7 +234,7 @@ def _walk(site: Mapping[str, Any]) -> list[tuple[str, Floats]]:
     rows = {row["series"]: np.array(row["phasor_hpa"]) for row in site["corrections"] if row["summand"]}
     record = next(np.array(row["phasor_hpa"]) for row in site["corrections"] if row["series"] == "record")
     walk, here = [("record", record)], record
-    for words, name in SERIES.items():
+    for words, name in {**SERIES, "calibrations": "calibrations"}.items():
         if name in rows:
             here = here - rows[name]
             walk.append((words.removesuffix(" (model mean)"), here))

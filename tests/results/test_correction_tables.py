@@ -2,9 +2,10 @@
 
 import numpy as np
 import pytest
+import xarray as xr
 
 from massfit.constants import PASCAL_PER_HPA
-from massfit.corrections.phasors import CorrectionPhasor
+from massfit.corrections.phasors import CorrectionPhasor, correction_phasors
 from massfit.phasor import annual_basis, days_since
 from massfit.results.correction_tables import correction_table, with_corrections
 from massfit.results.estimate import Estimate
@@ -80,3 +81,25 @@ def test_zeros_are_left_out_and_gaps_are_missing(run: Estimate) -> None:
 ])  # fmt: skip
 def test_summands(series: str, model: str | None, summand: bool) -> None:
     assert CorrectionPhasor(series, model, np.zeros(2)).summand is summand
+
+
+def test_calibrations_are_a_summand_of_their_own() -> None:
+    # the operator acts on record and readings: L(record) + L(readings) = phasor + L(tides) + L(models)
+    zero = np.zeros(3)
+    data = xr.Dataset(
+        {
+            **dict.fromkeys(("long_period_tides", "pole_tide", "ocean_mean_atmosphere"), ("time", zero)),
+            "circulation": (("model", "time"), np.zeros((1, 3))),
+            "present": ("model", [1]),
+        },
+        {"time": np.arange(3), "model": ["one"]},
+    )
+    companions = np.array([[90.0, 10.0], [5.0, 1.0], [2.0, 0.0], [-3.0, 4.0], [20.0, -6.0]])
+    found = correction_phasors(data, companions, np.array([[60.0, 5.0]]), calibrated=True)
+    row = next(each for each in found if each.series == "calibrations")
+    assert row.summand
+    np.testing.assert_allclose(row.phasor, [90.0 - 60.0 - 24.0, 10.0 - 5.0 + 1.0])
+    taken = np.sum([each.phasor for each in found if each.summand], axis=0)
+    np.testing.assert_allclose(np.array([60.0, 5.0]) + taken, companions[0])
+    # without any there is no such row
+    assert all(each.series != "calibrations" for each in correction_phasors(data, companions, np.array([[60.0, 5.0]])))
