@@ -267,6 +267,7 @@ def _deployment(record: Record) -> dict[str, Any]:
         "missing": int(np.count_nonzero(~valid)),
         "median_hpa": round(record.reference / 100.0, 3),
         "drift": record.drift,
+        "calibrations": 0 if record.calibrations is None else len(record.calibrations.time),
         "ramps": [[_shown(start), _shown(end)] for start, end in record.ramps],
         "settling": record.settling,
         "steps": [_shown(step) for step in record.steps] or ("find" if record.find_steps else "none"),

@@ -157,10 +157,11 @@ def _deployment(deployment: Mapping[str, Any]) -> list[str]:
 
 
 def _first_days(deployment: Mapping[str, Any]) -> str:
-    """Say which ramps are declared and what is done about settling, where that is not the usual."""
-    ramps, settling = deployment["ramps"], deployment["settling"]
+    """Say which ramps are declared, what is done about settling, and what calibrations there are, if not the usual."""
+    ramps, settling, readings = deployment["ramps"], deployment["settling"], deployment["calibrations"]
     days = settling if isinstance(settling, str) else f"{settling:g} days left out"
-    return (f", {len(ramps)} ramps declared" if ramps else "") + ("" if settling == "model" else f", settling: {days}")
+    words = [f", {len(ramps)} ramps declared"] * bool(ramps) + [f", settling: {days}"] * (settling != "model")
+    return "".join(words + [f", {readings} calibrations"] * bool(readings))
 
 
 def _models(site: Mapping[str, Any]) -> list[str]:

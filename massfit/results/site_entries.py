@@ -123,7 +123,9 @@ def _drift(drift: DriftFit) -> dict[str, Any]:
         "last_day": str(drift.time[-1])[:10],
         "days": len(drift.time),
         "slope_hpa_per_year": _number(drift.slope, PASCAL_PER_HPA),
+        "forms": dict(drift.form_weight),
         "exponential_hpa": _number(drift.exponential, PASCAL_PER_HPA),
+        "logarithm_hpa": _number(drift.logarithm, PASCAL_PER_HPA),
         "time_constant_days": _number(drift.time_constant_days),
         "steps": [[str(time)[:19], *(_number(size, PASCAL_PER_HPA) or ())] for time, size in drift.steps],
     }

@@ -291,6 +291,11 @@ def _drift_words(drift: Mapping[str, Any]) -> str:
         words.append("slope {:.2f} \u00b1 {:.2f} hPa/yr".format(*drift["slope_hpa_per_year"]))
     if drift["exponential_hpa"]:
         words.append("exponential {:.1f} \u00b1 {:.1f} hPa".format(*drift["exponential_hpa"]))
+    if drift["logarithm_hpa"]:
+        words.append("logarithm {:.1f} \u00b1 {:.1f} hPa".format(*drift["logarithm_hpa"]))
+    if drift["time_constant_days"]:
         words.append("T_d {:.0f} \u00b1 {:.0f} d".format(*drift["time_constant_days"]))
+    if len(drift["forms"]) > 1:
+        words.append("forms " + ", ".join(f"{form} {weight:.2f}" for form, weight in drift["forms"].items()))
     words += [f"step {size:+.2f} \u00b1 {sd:.2f} hPa on {time[:10]}" for time, size, sd in drift["steps"]]
     return ", ".join(words)

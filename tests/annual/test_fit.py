@@ -109,6 +109,19 @@ def test_two_recorders_at_one_place_do_not_average_the_ocean(make_record, make_r
     assert sd["apart"] < 0.85 * sd["one"]
 
 
+def test_each_recorder_has_white_noise_of_its_own(make_record, make_red):
+    rng = np.random.default_rng(22)
+    ocean = make_red(rng, 800, 30.0, 20.0)
+    quiet = make_record(rng, count=400, ocean=ocean[:400], white=5.0, label="quiet", drift="linear")
+    loud = make_record(rng, count=400, first=400.5, ocean=ocean[400:], white=25.0, label="loud", drift="linear")
+    # one that lies beside the loud one halves what that one cannot tell
+    beside = make_record(rng, count=400, first=400.5, ocean=ocean[400:], white=5.0, label="beside", drift="linear")
+    white = [each.mean for each in fit([quiet, loud, beside]).noise.white]
+    # 400 days tell a standard deviation within 4 % and the split of red and white noise within a tenth or so
+    np.testing.assert_allclose(white, [5.0, 25.0, 5.0], rtol=0.3)
+    assert sigmas(fit([loud, beside])) < 3.0
+
+
 def test_a_declared_step_is_fitted(make_record, make_red):
     rng = np.random.default_rng(5)
     ocean = make_red(rng, 900, 20.0, 20.0)
