@@ -101,6 +101,8 @@ def clock_notes(time: NDArray[np.datetime64], pressure: NDArray[np.float64]) -> 
 
 def _turned_back(time: NDArray[np.datetime64], pressure: NDArray[np.float64]) -> list[Action]:
     """Whole hours back, to stamps that were there already with other values: files put together repeat values."""
+    if (time[1:] > time[:-1]).all():
+        return []
     step = np.diff(time).astype(np.int64)
     usual = usual_interval_ns(time)
     # of hourly stamps the turned one only stands twice, as a stray row does: the turn forward tells

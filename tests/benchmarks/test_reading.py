@@ -4,7 +4,7 @@ Times are of the processor, within one run, so that a busy machine does not matt
 most. Memory is measured in processes of their own.
 """
 
-import resource
+import gc
 import subprocess
 import sys
 import tempfile
@@ -112,8 +112,8 @@ def two_months(tmp_path_factory: pytest.TempPathFactory) -> Path:
 
 @pytest.mark.parametrize("name", ENTRIES)
 def test_memory_of_two_months(two_months: Path, name: str) -> None:
-    # blocks in proportion to the record
-    assert memory_of(two_months, name, 150_000) < MOST_ARRAYS
+    # blocks in proportion to the record; the record itself is the least that is measured
+    assert 2.0 < memory_of(two_months, name, 150_000) < MOST_ARRAYS
 
 
 @pytest.mark.benchmark
@@ -122,7 +122,7 @@ def test_memory_of_five_years(long_record: Path, name: str, capsys: Any) -> None
     arrays = memory_of(long_record, name, 4_000_000)
     with capsys.disabled():
         print(f"\n{name}: {arrays:.1f} arrays of {8 * SAMPLES / 2**20:.0f} MiB")
-    assert arrays < MOST_ARRAYS
+    assert 2.0 < arrays < MOST_ARRAYS
 
 
 def main() -> None:
@@ -132,10 +132,16 @@ def main() -> None:
     with tempfile.TemporaryDirectory() as short:  # what is imported on the way is not the record's
         write(Path(short), 6000)
         read_record(Path(short), ENTRIES[name], site="A", deployment="A/1")
-    before = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss
+    gc.collect()
+    Path("/proc/self/clear_refs").write_text("5")  # the peak begins anew (proc(5))
+    before = kibibytes("VmRSS")
     record = read_record(folder, ENTRIES[name], site="A", deployment="A/1")
-    after = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss
-    print((after - before) * 1024 / record.time.nbytes)
+    print((kibibytes("VmHWM") - before) * 1024 / record.time.nbytes)
+
+
+def kibibytes(field: str) -> int:
+    (line,) = [line for line in Path("/proc/self/status").read_text().splitlines() if line.startswith(field)]
+    return int(line.split()[1])
 
 
 if __name__ == "__main__":

@@ -1,12 +1,14 @@
-"""Every fault of a record file has its own exact message, whether the file is text or NetCDF."""
+"""Every fault of a record file has its own exact message, whether the file is text, NetCDF or MATLAB."""
 
 from collections.abc import Callable
+from datetime import datetime
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 import pytest
 import xarray as xr
+from scipy.io import savemat
 
 from massfit.errors import InputError
 from massfit.io.deployment import DeploymentFile
@@ -126,6 +128,53 @@ TEXT: dict[str, tuple[str, dict[str, Any], list[str]]] = {
     "a line without end": (HEAD + ROWS + "1" * 200_000, ENTRY,
         ["a.txt:30: the line has 100000 characters or more. Must be rows of a few numbers. Check the "
          "file."]),
+    "a flag of no scheme": ("time,pressure,flag\n2014-01-01T12:00:00Z,3.0,0\n2014-01-02T12:00:00Z,3.0,1\n", ENTRY,
+        ["a.txt: flag: the flag 0 stands 1 times and nothing says whether such samples are good. Must be "
+         "a number of QARTOD: 1 pass, 2 not evaluated, 3 suspect, 4 fail, 9 missing. State `keep_flags`, or "
+         'flag_variable = "none" to use none.']),
+    "a flag that is a word": ("time,pressure,flag\n2014-01-01T12:00:00Z,3.0,good\n", ENTRY,
+        ["a.txt:2: flag: the value is 'good'. Must be a number, or empty. Correct it."]),
+    "a flag between two": ("time,pressure,flag\n2014-01-01T12:00:00Z,3.0,1.5\n", ENTRY,
+        ["a.txt:2: flag: the value is 1.5. Must be a whole number, or empty. Correct it."]),
+    "only flags that are left out": ("time,pressure,flag\n2014-01-01T12:00:00Z,3.0,4\n", ENTRY,
+        ["a.txt: flag: all 1 samples have flags that are left out. Must be a number of QARTOD: 1 pass, 2 "
+         "not evaluated, 3 suspect, 4 fail, 9 missing. State `keep_flags`, or flag_variable = \"none\" to "
+         "use none."]),
+    "a column of flags that is not there": (HEAD + ROWS, {**ENTRY, "flag_variable": "qc"},
+        ["a.txt: flag_variable: there is no column 'qc'. The columns are time, pressure. State "
+         "`flag_variable` or `columns`."]),
+    "a zone in the header": ("# time zone: HST\n" + HEAD + ROWS.replace("Z", ""), ENTRY,
+        ["a.txt:1: time: the file says that its times are in 'HST'. Must be UTC. State utc_offset_hours = "
+         "-10; 0 if they are UTC."]),
+    "a zone in the stamps": (HEAD + ROWS.replace("Z", " JST"), ENTRY,
+        ["a.txt:2: time: the file says that its times are in 'JST'. Must be UTC. State utc_offset_hours = "
+         "9; 0 if they are UTC."]),
+    "another zone than stated": (HEAD + ROWS.replace("Z", " CEST"), {**ENTRY, "utc_offset_hours": 1.0},
+        ["a.txt:2: time: the file says that its times are in 'CEST' and utc_offset_hours is 1. Must agree. "
+         "Correct it; 0 if they are UTC."]),
+    "an offset taken off twice": (HEAD + ROWS.replace("Z", "+02:00"), {**ENTRY, "utc_offset_hours": 2.0},
+        ["a.txt:2: time: the stamp '2014-01-01T12:00:00+02:00' has an offset and utc_offset_hours is 2. "
+         "Must be one of the two. Remove the key."]),
+    "a 61st second": (HEAD + ROWS.replace("05T12:00:00", "05T12:00:61"), ENTRY,
+        ["a.txt:6: time: the value is '2014-01-05T12:00:61Z'. Must be ISO 8601, UTC. Correct it or state "
+         "`time_format`."]),
+    "an interval without a start": ("pressure\n3.0\n", {"units": "hPa", "interval_s": 15.0},
+        ["a.txt: time_column: there is no column 'time'. The columns are pressure. State `time_column` or "
+         "`columns`."]),
+    "a start without an interval": ("pressure\n3.0\n", {"units": "hPa", "start_time": datetime(2014, 1, 1)},
+        ["a.txt: interval_s: the key is missing. start_time and interval_s go together. Add it."]),
+    "an interval of years": (
+        "pressure\n" + 90 * "3.0\n", {"units": "hPa", "start_time": datetime(2014, 1, 1), "interval_s": 1e8},
+        ["a.txt: interval_s: 90 samples every 1e+08 s end in the year 2299. Must end before 2200. Correct it."]),
+    "a factor of zero": (HEAD + ROWS, {**ENTRY, "scale_factor": 0.0},
+        ["a.txt: scale_factor: the value is 0. Must not be 0. Correct it."]),
+    "a unit in full": (HEAD + ROWS, {"units": "Pascal", "delimiter": ","},
+        ["a.txt: units: unknown unit 'Pascal'. Must be one of Pa, hPa, kPa, mbar, dbar, decibar, bar, psi, "
+         "psia, mm, cm, m. Did you mean 'Pa'?"]),
+    "noise": ("\x01\x02\x03" * 500, ENTRY,
+        ["a.txt: the file is neither NetCDF, MATLAB nor text (it starts with "
+         "b'\\x01\\x02\\x03\\x01\\x02\\x03\\x01\\x02'). Must be NetCDF, MATLAB or text. Check the path, or fetch it "
+         "again."]),
     "a pickle": ("\x80\x04\x95cbuiltins\nprint\n(S'a'\ntR.", ENTRY,
         ["a.txt: time_column: there is no column 'time'. The columns are \\x80\\x04\\x95cbuiltins. "
          "State `time_column` or `columns`."]),
@@ -177,6 +226,17 @@ def two_stations(*names: str) -> xr.Dataset:
     both = xr.concat([small().drop_vars("time"), small().drop_vars("time")], dim="station")
     both = both.assign_coords(time=small()["time"])
     return both.assign(name=("station", list(names), {"cf_role": "timeseries_id"})) if names else both
+
+
+def flagged(**flags: Any) -> xr.Dataset:
+    tied = attributes(small(), "p", ancillary_variables="q")
+    return tied.assign(q=("time", np.ones(40, dtype=np.int32), flags))
+
+
+def ragged(**counted: Any) -> xr.Dataset:
+    attrs = {"row_size": {"sample_dimension": "time"}, "index": {"instance_dimension": "station"}}
+    named = small().assign(name=("station", ["a", "b"], {"cf_role": "timeseries_id"}))
+    return named.assign({key: (*value, attrs[key]) for key, value in counted.items()})
 
 
 NETCDF: dict[str, tuple[Callable[[], xr.Dataset], dict[str, Any], list[str]]] = {
@@ -252,6 +312,27 @@ NETCDF: dict[str, tuple[Callable[[], xr.Dataset], dict[str, Any], list[str]]] = 
         ["a.txt: p: missing_value is 'none'. Must be a number. Correct the attribute."]),
     "range of three": (lambda: attributes(small(), "p", valid_range=[0.0, 1.0, 2.0]), {},
         ["a.txt: p: valid_range is [0.0, 1.0, 2.0]. Must be two numbers. Correct the attribute."]),
+    "zone in the attributes": (lambda: attributes(small(), "time", time_zone="UTC+05:30"), {},
+        ["a.txt: time: the file says that its times are in 'UTC+05:30'. Must be UTC. State utc_offset_hours "
+         "= 5.5; 0 if they are UTC."]),
+    "flags that are not there": (small, {"flag_variable": "p_qc"},
+        ["a.txt: flag_variable: 'p_qc' is not in the file. Must be numbers along ('time',): time. Correct it."]),
+    "flags that are bits": (lambda: flagged(flag_masks=[1, 2], flag_meanings="a b"), {},
+        ["a.txt: q: its flags are bits (flag_masks), of which a sample may have several. Read by default are "
+         'flag_values. State `keep_flags`, the numbers of good samples, or flag_variable = "none".']),
+    "flags with a word too few": (lambda: flagged(flag_values=[1, 2, 3], flag_meanings="pass fail"), {},
+        ["a.txt: q: there are 3 flag_values and 2 flag_meanings. Must be as many. Correct them, or state "
+         '`keep_flags` and drop one; flag_variable = "none" uses no flags.']),
+    "flags with a word that says nothing": (lambda: flagged(flag_values=[1, 2], flag_meanings="blue red"), {},
+        ["a.txt: q: the flag 1 (blue) stands 40 times and nothing says whether such samples are good. The file "
+         'says 1 blue, 2 red. State `keep_flags`, or flag_variable = "none" to use none.']),
+    "stations of more samples than there are": (lambda: ragged(row_size=("station", [25, 25])), {"station": "a"},
+        ["a.txt: row_size: the stations have 25, 25... samples, 50 in all. Must be none below 0, and 40 in all, "
+         "the length of 'time'. Fetch it again, or write one file a station."]),
+    "samples of no station": (lambda: ragged(index=("time", [0, 1, 2, 3] * 10)), {"station": "a"},
+        ["a.txt: index: 20 samples are of no station, the first of 2. Must be within [0, 1]. Fetch it again."]),
+    "time variable that is not there": (small, {"time_variable": "t"},
+        ["a.txt: time_variable: 't' is not in the file. Must be one of time. Correct or remove `time_variable`."]),
     "no samples": (lambda: small().isel(time=slice(0)), {},
         ["a.txt: pressure: none of the 0 samples is valid. Check `missing` and the file."]),
 }  # fmt: skip
@@ -265,4 +346,43 @@ def test_netcdf(name: str, engine: Any, tmp_path: Path) -> None:
     for variable in made.variables.values():
         variable.encoding["_FillValue"] = None
     made.to_netcdf(tmp_path / "a.txt", engine=engine)
+    assert message(tmp_path, **entry) == expected
+
+
+DAYS = 735_600.0 + np.arange(5.0)
+VALUES = np.arange(5.0)
+MATLAB: dict[str, tuple[dict[str, Any], dict[str, Any], list[str]]] = {
+    "no units": ({"p": VALUES, "t": DAYS}, {"time_variable": "t"},
+        ["a.txt: units: a MATLAB record does not say its unit. State `units`, for example units = \"dbar\"."]),
+    "no time": ({"p": VALUES}, {"units": "Pa"},
+        ["a.txt: time: nothing says what the times are. State `time_variable`, or `start_time` and `interval_s`; the "
+         "file has p."]),
+    "two pressures": ({"p": VALUES, "q": VALUES, "t": DAYS}, {"units": "Pa", "time_variable": "t"},
+        ["a.txt: variable: more than one variable can be the pressure: p, q. Must be one. State `variable`; the file "
+         "has p, q, t."]),
+    "no vector": ({"p": "text"}, {"units": "Pa", "time_variable": "t"},
+        ["a.txt: variable: no vector of numbers. Must be one. State `variable`; the file has no numbers.",
+         "a.txt: time_variable: there is no array of numbers 't' in the file. Its arrays of real numbers are none. "
+         "Correct `time_variable`."]),
+    "misspelt": ({"press": VALUES, "t": DAYS}, {"units": "Pa", "variable": "pres", "time_variable": "t"},
+        ["a.txt: variable: there is no array of numbers 'pres' in the file. Its arrays of real numbers are press, t. "
+         'Did you mean "press"?']),
+    "a matrix": ({"p": np.ones((5, 2)), "t": DAYS}, {"units": "Pa", "variable": "p", "time_variable": "t"},
+        ["a.txt: variable: 'p' has the shape (5, 2). Must be a vector. Write one series to a variable of its own."]),
+    "another length": ({"p": VALUES, "t": DAYS[:4]}, {"units": "Pa", "variable": "p", "time_variable": "t"},
+        ["a.txt: t: it has 4 values and 'p' has 5. Must agree."]),
+    "seconds as days": ({"p": VALUES, "t": 1e9 + VALUES}, {"units": "Pa", "variable": "p", "time_variable": "t"},
+        ["a.txt: t: element 1 is 1000000000 (and 4 more). Must be a number of datenum in the years 1900 to 2200. "
+         "Correct it or state `time_format`."]),
+    "a format of text": (
+        {"p": VALUES, "t": DAYS}, {"units": "Pa", "variable": "p", "time_variable": "t", "time_format": "%Y"},
+        ["a.txt: time_format: '%Y' is not a count of time. Must be 'datenum' or like 'seconds since 1970-01-01'. "
+         "Correct it."]),
+}  # fmt: skip
+
+
+@pytest.mark.parametrize("name", MATLAB)
+def test_matlab(name: str, tmp_path: Path) -> None:
+    variables, entry, expected = MATLAB[name]
+    savemat(tmp_path / "a.txt", variables, appendmat=False)
     assert message(tmp_path, **entry) == expected
