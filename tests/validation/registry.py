@@ -10,7 +10,7 @@ from dataclasses import dataclass
 from importlib import import_module
 from pathlib import Path
 
-SECTIONS = ("earth", "sea_level", "tides", "annual", "gravity", "air_and_units")
+SECTIONS = ("earth", "sea_level", "daily_means", "tides", "annual", "gravity", "air_and_units")
 """Modules of the sections, in the order of the page."""
 
 REFERENCE = Path(__file__).parents[1] / "reference"
