@@ -1,21 +1,15 @@
 """Read a network file and every file it names."""
 
 import os
-from collections.abc import Sequence
 from dataclasses import fields
 from typing import Any
 
-from massfit.earth.profile import EarthProfile
 from massfit.errors import Fault, InputError
-from massfit.fingerprint.admittance import water_vapour_phasor
-from massfit.fingerprint.loads import builtin_loads
-from massfit.fingerprint.pattern import LoadPattern
-from massfit.fingerprint.regions import MOST_MEMBERS, perturbed_loads
 from massfit.io.circulation_file import read_circulation
-from massfit.io.earth_file import read_earth_profile
-from massfit.io.fields import read_air_pressure, read_atmosphere_load, read_loads
+from massfit.io.fields import read_air_pressure, read_atmosphere_load
+from massfit.io.fingerprint_inputs import read_network_earth, read_network_loads
 from massfit.io.locate import KeyPath
-from massfit.io.network_checks import check_choices, check_coverage, check_length, check_unique
+from massfit.io.network_checks import check_choices, check_coverage, check_length
 from massfit.io.reading import Reading, open_reading
 from massfit.io.record_file import read_record
 from massfit.io.schema import CirculationEntry
@@ -23,10 +17,7 @@ from massfit.io.sections import Sections, SiteTable, parse_sections
 from massfit.io.series_file import read_series
 from massfit.network import CirculationModel, Network, ReducedSite, Series
 from massfit.records.record import Record
-from massfit.settings import PREM, Corrections, Fingerprint, Frame, Settings
-
-_BUILTIN = "builtin:"
-_PERTURBED = "perturbed:"
+from massfit.settings import Corrections, Settings
 
 
 def read_network(path: str | os.PathLike[str], *, outside: bool = False) -> Network:
@@ -108,8 +99,8 @@ def read_what_can_be(
     sites = {table.path: table.entry.site() for table in sections.sites if table.entry is not None}
     records = _records(reading, sections)
     corrections = sections.settings["corrections"]
-    loads = _loads(reading, sections)
-    earth = _earth(reading, sections.settings["fingerprint"])
+    loads = read_network_loads(reading, sections.settings["network"], sections.settings["fingerprint"])
+    earth = read_network_earth(reading, sections.settings["fingerprint"])
     circulation = _circulation(reading, sections, {site.id for site in sites.values()})
     air = _air(reading, corrections) if corrections is not None else {}
     faults = tuple(_in_order(reading))
@@ -155,8 +146,8 @@ def read_sites_and_loads(path: str | os.PathLike[str], *, outside: bool = False)
     sections = parse_sections(reading, records=False)
     check_choices(reading, sections)
     corrections = sections.settings["corrections"]
-    loads = _loads(reading, sections)
-    earth = _earth(reading, sections.settings["fingerprint"])
+    loads = read_network_loads(reading, sections.settings["network"], sections.settings["fingerprint"])
+    earth = read_network_earth(reading, sections.settings["fingerprint"])
     air = _air_over_land(reading, corrections) if corrections is not None else {}
     if reading.faults:
         raise InputError(_in_order(reading))
@@ -223,75 +214,6 @@ def _site_records(reading: Reading, table: SiteTable) -> list[Record] | None:
             records.append(reading.attempt(read_record, reading.folder, entry, site=site, deployment=label))
     complete = [record for record in records if record is not None]
     return complete if table.complete and len(complete) == len(records) else None
-
-
-def _loads(reading: Reading, sections: Sections) -> tuple[LoadPattern, ...]:
-    frame, fingerprint = sections.settings["network"], sections.settings["fingerprint"]
-    if frame is None or fingerprint is None or (vapour := _vapour(reading, fingerprint, frame)) is None:
-        return ()
-    named: list[tuple[KeyPath, LoadPattern]] = []
-    texts = dict.fromkeys(fingerprint.loads)
-    for text in sorted(texts, key=lambda text: text.startswith(_PERTURBED)):  # these are made from all others
-        path: KeyPath = ("fingerprint", "loads", fingerprint.loads.index(text))
-        patterns: tuple[LoadPattern, ...] | None = None
-        if text.startswith(_BUILTIN):
-            patterns = _builtin(reading, path, text.removeprefix(_BUILTIN))
-        elif text.startswith(_PERTURBED):
-            bases = [pattern for _, pattern in named] or builtin_loads(("nominal",))
-            patterns = _perturbed(reading, path, text.removeprefix(_PERTURBED), bases, fingerprint)
-        elif (file := reading.find(path, text)) is not None:
-            patterns = reading.attempt(
-                read_loads, file, reference_year=frame.reference_year, source=text, water_vapour=vapour
-            )
-        named += [(path, pattern) for pattern in patterns or ()]
-    check_unique(reading, [(path, pattern.name) for path, pattern in named])
-    return tuple(pattern for _, pattern in named)
-
-
-def _builtin(reading: Reading, path: KeyPath, name: str) -> tuple[LoadPattern, ...] | None:
-    try:
-        return builtin_loads((name,))
-    except InputError as error:
-        for fault in error.faults:
-            reading.fault(path, fault.problem, fault.allowed, fault.action)
-        return None
-
-
-def _vapour(reading: Reading, fingerprint: Fingerprint, frame: Frame) -> complex | None:
-    try:
-        return water_vapour_phasor(fingerprint.water_vapour_kg, fingerprint.water_vapour_peak, frame.reference_year)
-    except InputError as error:
-        for fault in error.faults:
-            reading.fault(("fingerprint", fault.name), fault.problem, fault.allowed, fault.action)
-        return None
-
-
-def _perturbed(
-    reading: Reading, path: KeyPath, count: str, bases: Sequence[LoadPattern], fingerprint: Fingerprint
-) -> tuple[LoadPattern, ...] | None:
-    if not (count.isascii() and count.isdigit() and 1 <= int(count[:9]) <= MOST_MEMBERS):
-        allowed = f"Must be a number of members from 1 to {MOST_MEMBERS}"
-        reading.fault(path, f'the value is "{_PERTURBED}{count}"', allowed, f'Write "{_PERTURBED}16"')
-        return None
-    try:
-        return perturbed_loads(
-            bases,
-            int(count),
-            amplitude_sd=fingerprint.perturbed_amplitude_sd,
-            delay_sd_days=fingerprint.perturbed_delay_sd_days,
-            seed=fingerprint.perturbed_seed,
-        )
-    except InputError as error:
-        for fault in error.faults:
-            reading.fault(path, fault.problem, fault.allowed, fault.action)
-        return None
-
-
-def _earth(reading: Reading, fingerprint: Fingerprint | None) -> EarthProfile | None:
-    if fingerprint is None or fingerprint.earth_model == PREM:
-        return None
-    file = reading.find(("fingerprint", "earth_model"), fingerprint.earth_model)
-    return None if file is None else reading.attempt(read_earth_profile, file, source=fingerprint.earth_model)
 
 
 def _circulation(reading: Reading, sections: Sections, sites: set[str]) -> tuple[CirculationModel, ...]:

@@ -275,6 +275,28 @@ FAULTS = {
          'N:41: fingerprint.loads[3]: the value is "perturbed:many". Must be a number of members from 1 to 100. '
          'Write "perturbed:16".'],
     ),
+    "perturbed loads asked for twice": (
+        LOADS,
+        'loads = ["fields/loads.nc", "perturbed:2", "perturbed:3"]',
+        ['N:41: fingerprint.loads[3]: "perturbed:3" stands beside "perturbed:2". Perturbed members are asked for once. '
+         "Add up the two numbers."],
+    ),
+    "misspelt kind of load": (
+        LOADS,
+        'loads = ["peturbed:2", "bultin:all"]',
+        ['N:41: fingerprint.loads[1]: there is no kind of load "peturbed:". Did you mean "perturbed:2"?',
+         'N:41: fingerprint.loads[2]: there is no kind of load "bultin:". Did you mean "builtin:all"?'],
+    ),
+    "Earth model in capitals": (
+        LOADS,
+        'earth_model = "PREM"',
+        ['N:41: fingerprint.earth_model: the value is "PREM". Must be "prem", or a file. Write "prem".'],
+    ),
+    "vapour on a day that does not exist": (
+        LOADS,
+        f'water_vapour_peak = "02-30"\n{LOADS}',
+        ["N:41: fingerprint.water_vapour_peak: there is no '02-30' in 2016. Must be a date MM-DD."],
+    ),
     "unknown built-in load": (
         LOADS,
         'loads = ["builtin:al"]',
