@@ -15,7 +15,7 @@ import emcee
 import numpy as np
 from numpy.typing import NDArray
 
-from massfit.posterior.latents import draw_latents, draw_site_scale
+from massfit.posterior.latents import draw_latents, draw_shared_scales, draw_site_scale
 from massfit.posterior.likelihood import Collapsed, collapse, log_latent_prior, log_scale_prior
 from massfit.posterior.regression import Condition, LinearModel
 
@@ -30,7 +30,7 @@ WALKERS = 40
 MEMBER_WALKERS = 8
 """Least number of walkers of a load member in an ensemble."""
 
-STEPS, MAX_STEPS = 400, 3200
+STEPS, MAX_STEPS = 500, 4000
 """Steps kept of each ensemble, a third as many before them being thrown away; and the cap of a run that is extended."""
 
 KEPT_DRAWS = 1000
@@ -262,7 +262,9 @@ class _Walk:
     def refresh(self) -> None:
         """Draw what the walkers carry anew."""
         if self._has_latents:
-            condition = draw_latents(self._model, self.condition, self._shared(), self._rng)
+            shared = self._shared()
+            condition = draw_latents(self._model, self.condition, shared, self._rng)
+            condition = draw_shared_scales(self._model, condition, shared, self._prior_scales, self._rng)
             self.condition = draw_site_scale(self._model, condition, self._prior_scales, self._rng)
             self._collapsed, self._density = self._evaluate(self.condition)
         self._noise = None

@@ -83,6 +83,47 @@ def _draw_stretches(
     return Condition(condition.log_scales, drawn, condition.part, condition.member)
 
 
+def draw_shared_scales(
+    model: LinearModel, condition: Condition, shared: Floats, prior_scales: Floats, rng: np.random.Generator
+) -> Condition:
+    """Move s_common and s_group with the models' errors and the shared scatter themselves held fixed.
+
+    Parameters
+    ----------
+    model : LinearModel
+    condition : Condition
+    shared : (n, n_column) array
+        Drawn at the condition, in prior standard deviations.
+    prior_scales : (n_scale,) array
+        Pa.
+    rng : numpy.random.Generator
+
+    Returns
+    -------
+    Condition
+    """
+    log_scales = condition.log_scales.copy()
+    of_scale = {2: model.columns.common, 3: model.columns.group}
+    for scale, columns in of_scale.items():
+        if scale < model.scale_count:
+            # given the effects, 1 / scale^2 is a gamma variable but for the prior
+            half_sum = 0.5 * np.exp(2.0 * log_scales[:, scale]) * (shared[:, columns] ** 2).sum(axis=1)
+            shape = 0.5 * (columns.stop - columns.start)
+            proposed = 0.5 * np.log(half_sum / rng.standard_gamma(shape, size=len(half_sum)))
+            _accept(log_scales, scale, proposed, prior_scales, rng)
+    return Condition(log_scales, condition.stretch, condition.part, condition.member)
+
+
+def _accept(
+    log_scales: Floats, scale: int, proposed: Floats, prior_scales: Floats, rng: np.random.Generator
+) -> None:
+    """Take proposals that hold everything but the prior of the scale (and a uniform one of its logarithm)."""
+    prior = prior_scales[scale : scale + 1]
+    here = log_scale_prior(log_scales[:, scale : scale + 1], prior)
+    ratio = log_scale_prior(proposed[:, None], prior) - here
+    log_scales[:, scale] = np.where(np.log(rng.random(len(ratio))) < ratio, proposed, log_scales[:, scale])
+
+
 def draw_site_scale(
     model: LinearModel, condition: Condition, prior_scales: Floats, rng: np.random.Generator
 ) -> Condition:
@@ -110,8 +151,6 @@ def draw_site_scale(
     rate = 0.5 * FREEDOM * np.exp(-log_square) * (1.0 / condition.stretch).sum(axis=1)
     shape = 0.5 * FREEDOM * model.place_count
     proposed = 0.5 * np.log(rng.standard_gamma(shape, size=len(rate)) / rate)
-    ratio = log_scale_prior(proposed[:, None], prior_scales[:1]) - log_scale_prior(log_scales[:, :1], prior_scales[:1])
-    accepted = np.log(rng.random(len(rate))) < ratio
-    log_scales[:, 0] = np.where(accepted, proposed, log_scales[:, 0])
+    _accept(log_scales, 0, proposed, prior_scales, rng)
     stretch = condition.stretch * np.exp(log_square - 2.0 * log_scales[:, 0])[:, None]
     return Condition(log_scales, stretch, condition.part, condition.member)

@@ -171,7 +171,8 @@ class LinearModel:
 
 def _products(values: Floats) -> Floats:
     """Products (..., n * n) of the last axis with itself."""
-    return np.asarray((values[..., :, None] * values[..., None, :]).reshape(*values.shape[:-1], -1))
+    size = values.shape[-1]
+    return np.asarray((values[..., :, None] * values[..., None, :]).reshape(*values.shape[:-1], size * size))
 
 
 def linear_model(

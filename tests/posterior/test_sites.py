@@ -71,6 +71,14 @@ def test_a_site_that_is_wrong_stands_out_and_the_others_do_not(invent, regressio
     assert all(c.outlier_probability < 0.5 for s, c in enumerate(wrong) if s != 4)
 
 
+def test_a_site_alone_is_predicted_by_the_prior(invent, regression):
+    network = invent(sites=1)
+    (found,) = check(network, regression, student=True)
+    # 0.85 hPa under a prior of 5 hPa
+    assert 0.0 < found.standardised_residual < 0.3
+    assert found.outlier_probability < 0.06
+
+
 def effect(network, regression, site):
     model, mixed = regression(network), regression(network, mixed=(f"site {site + 1}",))
     return mixture_effect(model, mixed, model.at(np.log([[5.0, 20.0, 12.0]])), site)
