@@ -13,13 +13,13 @@ from massfit.results.answer import spoken_date
 from massfit.results.finished import FinishedRun
 
 CAPTION = (
-    "Above: the daily record with the fitted drift, what was subtracted, what remains. Below, from the left: power of "
-    "the residuals (blue) against what the fitted noise lets expect there (black, with 95 % in grey; dotted: the noise "
-    "itself; dashed: one cycle a year); correlation of the whitened residuals (white ones stay within the grey 19 "
-    "times in 20); the phasor of each year alone (orange, 1 sigma, with noise and drift times at their most probable) "
-    "about that of the whole record (blue, 95 %, all that included); how "
-    "the phasor of the record (open circle) becomes that of the site (blue) as each series is taken off, in the "
-    "colours of the panel of what was subtracted."
+    "Above: the daily record with the fitted drift, what was subtracted (light blue: range of the circulation "
+    "models), what remains. Below, from the left: power of the residuals (blue) against what the fitted noise lets "
+    "expect there (black, with 95 % in grey; dotted: the noise itself; dashed: one cycle a year); correlation of the "
+    "whitened residuals (white ones stay within the grey 19 times in 20); the phasor of each year alone (orange, 1 "
+    "sigma, with noise and drift times at their most probable) about that of the whole record (blue, 95 %, all that "
+    "included); how the phasor of the record (open circle) becomes that of the site (blue) as each series is taken "
+    "off, in the colours of the panel of what was subtracted."
 )
 
 

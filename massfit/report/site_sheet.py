@@ -34,7 +34,7 @@ from massfit.results.site_sheet import SiteSheet
 Floats = NDArray[np.float64]
 
 DOTS_PER_INCH = 150
-_COLOURS = 96  # of the palette of a picture: lines, their edges, and a few shades
+_COLOURS = 72  # of the palette of a picture: lines, their edges, and a few shades
 _LEFT, _RIGHT = 14.0, 4.0
 _BANDS = ((38.0, "daily record; fitted drift dashed, its 95 % band / hPa"), (28.0, "subtracted / hPa"),
           (33.0, "what remains; fitted annual cycle / hPa"))  # fmt: skip
@@ -132,6 +132,10 @@ def _draw_record(axes: Axes, content: SiteSheet) -> None:
 
 
 def _draw_corrections(axes: Axes, content: SiteSheet) -> None:
+    if content.models is not None:
+        time, low, high = _with_gaps(content.correction_time, *content.models)
+        colour = SERIES_COLOURS["circulation (model mean)"]
+        axes.fill_between(time, low, high, color=colour, alpha=0.25, linewidth=0.0, zorder=0)
     for words, colour in SERIES_COLOURS.items():
         if words in content.corrections:
             time, values = _with_gaps(content.correction_time, content.corrections[words])
@@ -141,7 +145,8 @@ def _draw_corrections(axes: Axes, content: SiteSheet) -> None:
             loc="lower right", bbox_to_anchor=(1.0, 0.99), ncols=4, fontsize=6.5, handlelength=1.4, columnspacing=1.2,
             borderaxespad=0.0,
         )  # fmt: skip
-        _limits(axes, np.concatenate(list(content.corrections.values())))
+        models = [] if content.models is None else content.models
+        _limits(axes, np.concatenate([*content.corrections.values(), *models]))
     else:
         axes.text(0.5, 0.5, "nothing was subtracted", transform=axes.transAxes, ha="center", color=REFERENCE)
 

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from massfit.constants import JULIAN_YEAR_DAYS, PASCAL_PER_HPA
 from massfit.phasor import annual_basis, days_since
-from massfit.results.daily_parts import SERIES, deployments_by_site, subtracted_series
+from massfit.results.daily_parts import SERIES, about_zero, deployments_by_site, subtracted_series
 from massfit.results.finished import FinishedRun
 
 Floats = NDArray[np.float64]
@@ -76,6 +76,8 @@ class SiteSheet:
         Days within the deployments that have no daily value or were not used.
     corrections : mapping of str to (n,) array
         Series subtracted, about their means, hPa, by the words of `SERIES`.
+    models : (2, n) array or None
+        Lowest and highest of the circulation models on each day, about their own means, hPa; None with fewer than two.
     correction_time : (n,) array of datetime64
     reduced_time : (m,) array of datetime64
     reduced, annual : (m,) array
@@ -105,6 +107,7 @@ class SiteSheet:
     excluded: tuple[tuple[np.datetime64, np.datetime64], ...]
     missing: Times
     corrections: Mapping[str, Floats]
+    models: Floats | None
     correction_time: Times
     reduced_time: Times
     reduced: Floats
@@ -156,6 +159,7 @@ def _sheet(
         excluded=tuple((np.datetime64(start), np.datetime64(end)) for start, end, _ in site["exclude"]),
         missing=_missing(deployments),
         corrections={words: values[first] for words, values in subtracted_series(deployments).items()},
+        models=_model_range(deployments, first),
         correction_time=days,
         reduced_time=time[order],
         reduced=np.concatenate([part["reduced"].values for part in used])[order] / PASCAL_PER_HPA,
@@ -207,6 +211,15 @@ def _missing(deployments: Sequence[xr.Dataset]) -> Times:
         there = day[np.isfinite(part["reduced"].values)]
         found.append(np.setdiff1d(np.arange(day[0], day[-1] + 1), there))
     return np.unique(np.concatenate(found)) if found else np.array([], "datetime64[D]")
+
+
+def _model_range(deployments: Sequence[xr.Dataset], days: NDArray[np.intp]) -> Floats | None:
+    present = deployments[0]["model_present"].values == 1
+    if present.sum() < 2:
+        return None
+    models = np.concatenate([part["circulation"].values for part in deployments], axis=-1)[present][:, days]
+    about = np.array([about_zero(model) for model in models])
+    return np.array([about.min(axis=0), about.max(axis=0)])
 
 
 def _spectrum(own: xr.Dataset) -> Spectrum:
