@@ -145,7 +145,7 @@ def _draw_corrections(axes: Axes, content: SiteSheet) -> None:
             loc="lower right", bbox_to_anchor=(1.0, 0.99), ncols=4, fontsize=6.5, handlelength=1.4, columnspacing=1.2,
             borderaxespad=0.0,
         )  # fmt: skip
-        models = [] if content.models is None else content.models
+        models = () if content.models is None else tuple(content.models)
         _limits(axes, np.concatenate([*content.corrections.values(), *models]))
     else:
         axes.text(0.5, 0.5, "nothing was subtracted", transform=axes.transAxes, ha="center", color=REFERENCE)
