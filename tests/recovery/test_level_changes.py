@@ -73,34 +73,40 @@ def hours_of_noise(rng: np.random.Generator, family: str, n: int) -> np.ndarray:
     return noise[family]() + rng.normal(scale=white, size=n) + drift + cycle + rng.normal(scale=300.0) * days / 365.0
 
 
-def found(level: np.ndarray) -> tuple[LevelChange, ...]:
+def found(level: np.ndarray, *, daily: bool = False) -> tuple[LevelChange, ...]:
+    """Changes in hours, or in their daily means."""
+    if daily:
+        means = level[: level.size // 24 * 24].reshape(-1, 24).mean(axis=1)
+        return find_level_changes(np.arange(means.size) + 0.5, means, (), coarse=True)[0]
     return find_level_changes(np.arange(level.size) / 24.0, level, (), coarse=False)[0]
 
 
-def false_alarms(family: str, years: float) -> tuple[float, int]:
-    """Years looked at, and changes found where there are none."""
+def false_alarms(family: str, years: float) -> tuple[float, int, int]:
+    """Years looked at, and changes found where there are none, in hours and in days."""
     rng = np.random.default_rng([2011, FAMILIES.index(family)])
-    seen, wrong = 0.0, 0
+    seen, in_hours, in_days = 0.0, 0, 0
     while seen < years:
         length = rng.uniform(0.9, 5.0)
-        wrong += len(found(hours_of_noise(rng, family, int(length * 8766))))
+        level = hours_of_noise(rng, family, int(length * 8766))
+        in_hours += len(found(level))
+        in_days += len(found(level, daily=True))
         seen += length
-    return seen, wrong
+    return seen, in_hours, in_days
 
 
 @pytest.mark.parametrize("family", FAMILIES)
 def test_less_than_one_false_alarm_in_twenty_years(family: str) -> None:
-    years, wrong = false_alarms(family, 20.0)
-    assert wrong <= years / 20.0
+    years, in_hours, in_days = false_alarms(family, 20.0)
+    assert max(in_hours, in_days) <= years / 20.0
 
 
 @pytest.mark.slow
 def test_false_alarms_of_many_years() -> None:
-    print("\n| noise | record-years | false alarms |\n|---|---|---|")
+    print("\n| noise | record-years | false alarms, hours | false alarms, daily means |\n|---|---|---|---|")
     for family in FAMILIES:
-        years, wrong = false_alarms(family, 400.0)
-        print(f"| {family} | {years:.0f} | {wrong} |")
-        assert wrong < years / 20.0
+        years, in_hours, in_days = false_alarms(family, 400.0)
+        print(f"| {family} | {years:.0f} | {in_hours} | {in_days} |")
+        assert max(in_hours, in_days) < years / 20.0
 
 
 def detection(family: str, size: float, length_days: float, count: int) -> tuple[float, float, float]:
