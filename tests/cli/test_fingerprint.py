@@ -53,15 +53,19 @@ def test_a_place_alone_is_enough(folder: Path, done: Result) -> None:
     assert max(map(len, done.stdout.split("Results in")[0].splitlines())) <= 80
 
 
-def test_it_is_repeatable_and_overwrites_only_when_asked(folder: Path, done: Result) -> None:
+def test_it_is_replaced_only_when_asked(folder: Path, done: Result, monkeypatch: pytest.MonkeyPatch) -> None:
     assert done.exit_code == 0
-    before = (folder / "fingerprint/fingerprints.csv").read_bytes()
     refused = call("fingerprint", folder)
     assert refused.exit_code == 2
     assert "--overwrite" in refused.stderr
-    again = call("fingerprint", folder / "network.toml", "--finest", 45, "--overwrite", "--quiet")
+    asked = []
+    made = "massfit.pipeline.save_fingerprint.fingerprint_to_folder"
+    monkeypatch.setattr(made, lambda *given, **options: asked.append((given, options)))
+    again = call("fingerprint", folder / "network.toml", "--finest", 720, "--overwrite", "--outside", "--quiet")
     assert (again.exit_code, again.output) == (0, "")
-    assert (folder / "fingerprint/fingerprints.csv").read_bytes() == before
+    given, options = asked[0]
+    assert given == (folder / "network.toml", folder / "fingerprint")
+    assert (options["finest_degree"], options["overwrite"], options["outside"]) == (720, True, True)
 
 
 def test_an_estimate_is_never_replaced_by_a_fingerprint_nor_the_other_way(folder: Path, done: Result) -> None:
