@@ -7,11 +7,13 @@ from pathlib import Path
 
 from massfit.io.partial_folder import PartialFolder
 from massfit.io.results_folder import write_dataset, write_drawn, write_run
-from massfit.results.fingerprint import FingerprintStudy, Row, site_rows
+from massfit.results.fingerprint import DegreeRow, FingerprintStudy, Row, degree_rows, site_rows
 
 FINGERPRINT_TABLE = "fingerprints.csv"
 
 FINGERPRINT_PAGE = "fingerprint.html"
+
+CONVERGENCE_TABLE = "convergence.csv"
 
 _COLUMNS = (
     "site", "latitude", "longitude", "kind", "member", "amplitude_ratio", "delay_days", "amplitude_ratio_spread",
@@ -40,6 +42,7 @@ def write_fingerprint(
     """
     with partial.whole() as aside:
         _write_table(aside / FINGERPRINT_TABLE, site_rows(study.dataset))
+        _write_convergence(aside / CONVERGENCE_TABLE, degree_rows(study.dataset))
         write_dataset(aside / "fingerprints.nc", study.dataset)
         write_drawn(aside, pictures, page, name=FINGERPRINT_PAGE)
         write_run(aside, study.provenance, {path.relative_to(aside).as_posix() for path in aside.rglob("*.*")})
@@ -55,6 +58,16 @@ def _write_table(path: Path, rows: list[Row]) -> None:
         place = (f"{row.latitude_deg:.9g}", f"{row.longitude_deg:.9g}")
         written = ("" if number is None else f"{number:.6g}" for number in numbers)
         table.writerow([_no_formula(row.site), *place, row.kind, _no_formula(row.member), *written])
+    path.write_text(text.getvalue(), encoding="utf-8")
+
+
+def _write_convergence(path: Path, rows: list[DegreeRow]) -> None:
+    text = io.StringIO()
+    table = csv.writer(text, lineterminator="\n")
+    table.writerow(("site", "degree", "amplitude_ratio", "delay_days", "ratio_change", "delay_change_days"))
+    for row in rows:
+        numbers = (row.amplitude_ratio, row.delay_days, row.ratio_change, row.delay_change_days)
+        table.writerow([_no_formula(row.site), row.degree, *(f"{number:.6g}" for number in numbers)])
     path.write_text(text.getvalue(), encoding="utf-8")
 
 

@@ -16,7 +16,7 @@ from massfit.errors import InputError
 from massfit.fingerprint.admittance import site_fingerprints, water_vapour_phasor
 from massfit.fingerprint.loads import builtin_loads
 from massfit.fingerprint.ocean import OceanFunction
-from massfit.io.fingerprint_folder import FINGERPRINT_TABLE
+from massfit.io.fingerprint_folder import CONVERGENCE_TABLE, FINGERPRINT_TABLE
 from massfit.io.network_file import read_sites_and_loads
 from massfit.network import Network
 from massfit.phasor import as_complex, delay_days
@@ -210,6 +210,16 @@ def test_table_and_file_hold_the_same_numbers(folder: Path) -> None:
     assert {row["kind"] for row in table if row["amplitude_ratio_spread"]} == {"mean"}
 
 
+def test_the_table_of_the_degrees_holds_the_changes(folder: Path) -> None:
+    table = list(csv.DictReader((folder / "out" / CONVERGENCE_TABLE).read_text("utf-8").splitlines()))
+    assert {row["degree"] for row in table} == {"22", "30", "45"}
+    with xr.open_dataset(folder / "out/fingerprints.nc", engine="h5netcdf") as data:
+        values = {int(n): as_complex(data["admittance_by_degree"].sel(degree=n, site="A").values) for n in (30, 45)}
+    row = next(row for row in table if (row["site"], row["degree"]) == ("A", "30"))
+    assert float(row["ratio_change"]) == pytest.approx(abs(values[30]) - abs(values[45]), rel=1e-4)
+    assert float(row["delay_change_days"]) == pytest.approx(float(delay_days(values[30] / values[45])), rel=1e-4)
+
+
 def test_the_folder_is_whole_and_says_how_it_was_made(folder: Path) -> None:
     run = json.loads((folder / "out/run.json").read_text("utf-8"))
     files = {str(path.relative_to(folder / "out")) for path in (folder / "out").rglob("*") if path.is_file()}
@@ -264,3 +274,11 @@ def test_the_demo_is_settled_as_the_page_on_fingerprints_says() -> None:
     assert np.abs(change).max() < 0.05 * float(study.dataset["amplitude_ratio_spread"].median())
     assert study.warnings == ()
     assert float(study.dataset["map_difference"].median()) < 2e-4
+
+
+@pytest.mark.slow
+def test_the_example_of_the_page_on_fingerprints_runs(monkeypatch: pytest.MonkeyPatch) -> None:
+    root = Path(__file__).parents[2]
+    monkeypatch.chdir(root)
+    (code,) = re.findall(r"```python\n(.*?)```", (root / "docs/fingerprints.md").read_text("utf-8"), re.DOTALL)
+    exec(code, {})

@@ -157,9 +157,8 @@ def test_pages_hold_every_site_and_all_text_stays_on_the_sheet(count: int) -> No
 
 def test_a_narrow_map_of_many_sites_has_no_names() -> None:
     names, places = [f"Station {k}" for k in range(25)], (np.linspace(-50, 50, 25), np.linspace(0, 300, 25))
-    many = world_map(
-        NORTH, OCEAN, MAP_LATITUDE_DEG, MAP_LONGITUDE_DEG, names, *places, label="", bands=np.linspace(-90, 90, 9), width_mm=COLUMN_WIDTH_MM,
-    )  # fmt: skip
+    many = world_map(NORTH, OCEAN, MAP_LATITUDE_DEG, MAP_LONGITUDE_DEG, names, *places, label="",
+                     bands=np.linspace(-90, 90, 9), width_mm=COLUMN_WIDTH_MM)  # fmt: skip
     assert not many.axes[0].texts
     assert "25 without a name" in many.axes[0].get_title(loc="left")
 
