@@ -15,6 +15,12 @@ CONVENTIONS = "CF-1.13, ACDD-1.3"
 
 _ONE = "1"
 
+_PARTS = {
+    "own_ocean_mean": "part of circulation: less the model's own ocean mean",
+    "self_attraction": "part of circulation: answer of the ocean to the attraction and load of the model's pressure",
+    "local_air_pressure": "part of circulation: air pressure at the site less its mean over the ocean",
+}
+
 _GROUP_TITLES = {
     "posterior": "draws of the annual phasor of ocean mass and of the scales of the model",
     "sample_stats": "what each draw was made with",
@@ -85,6 +91,10 @@ def reduced_records(reductions: Sequence[SiteReduction]) -> xr.Dataset:
         joined(lambda r, i: _correction(r, i, "circulation")),
         _pascal("bottom pressure of the circulation model, subtracted"),
     )
+    for name, text in _PARTS.items():
+        if any(name in reduction.corrections for reduction in reductions):
+            part = joined(lambda r, i, name=name: _part(r, i, name))  # type: ignore[misc]
+            variables[name] = ("model", "obs"), part, _pascal(text)
     variables["drift"] = (
         ("obs",),
         joined(lambda r, i: _fitted(r, i, "drift")),
@@ -145,6 +155,13 @@ def _place(
 def _correction(reduction: SiteReduction, index: int, name: str) -> NDArray[np.float64]:
     place = np.searchsorted(reduction.corrections["time"].values, reduction.daily[index].time)
     return np.asarray(reduction.corrections[name].values[..., place])
+
+
+def _part(reduction: SiteReduction, index: int, name: str) -> NDArray[np.float64]:
+    """Find a part of the models' pressure on the days of a deployment; NaN where a model lacks it."""
+    if name in reduction.corrections:
+        return _correction(reduction, index, name)
+    return np.full((reduction.corrections.sizes["model"], len(reduction.daily[index].time)), np.nan)
 
 
 def _fitted(reduction: SiteReduction, index: int, name: str) -> NDArray[np.float64]:

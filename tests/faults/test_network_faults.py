@@ -230,6 +230,11 @@ FAULTS = {
          'Must be "not-forced", "forced-included" or "forced-excluded". '
          "State whether air pressure drives the model and its load is in the bottom pressure."],
     ),
+    "a model that is partly taken": (
+        'air_pressure = "not-forced"\n',
+        'air_pressure = "not-forced"\npartial = "trim"\n',
+        ['N:39: circulation[Invented model].partial: the value is "trim". Must be \'missing\' or \'cut\'.'],
+    ),
     "forcing without air pressure": (
         '"not-forced"',
         '"forced-excluded"',

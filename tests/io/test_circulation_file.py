@@ -12,6 +12,7 @@ from massfit.errors import InputError
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.io import netcdf, variables
 from massfit.io.circulation_file import read_circulation
+from massfit.io.network_text import circulation_table
 from massfit.io.schema import CirculationEntry
 from massfit.network import CirculationModel
 from massfit.site import Site
@@ -24,6 +25,16 @@ FIELD = np.random.default_rng(3).normal(size=(TIME.size, LATITUDE.size, LONGITUD
 def read(path: Path, variable: str | None = None) -> CirculationModel:
     entry = CirculationEntry("Invented", path.name, "removed", "not-forced", variable=variable)
     return read_circulation(path, entry, ocean_mean=None, sites=["A", "B"], source=path.name)
+
+
+def test_what_happens_to_a_model_that_covers_a_part_is_handed_on(tmp_path: Path) -> None:
+    field().to_netcdf(tmp_path / "m.nc", engine="h5netcdf")
+    assert read(tmp_path / "m.nc").partial == "missing"
+    entry = CirculationEntry("Invented", "m.nc", "removed", "not-forced", partial="cut")
+    model = read_circulation(tmp_path / "m.nc", entry, ocean_mean=None, sites=["A"], source="m.nc")
+    assert model.partial == "cut"
+    assert circulation_table(model, "m.nc", "removed")["partial"] == "cut"
+    assert "partial" not in circulation_table(read(tmp_path / "m.nc"), "m.nc", "removed")
 
 
 def field(**changes: object) -> xr.Dataset:

@@ -8,6 +8,7 @@ from massfit.constants import PASCAL_PER_HPA
 from massfit.corrections.phasors import CorrectionPhasor, correction_phasors
 from massfit.phasor import annual_basis, days_since
 from massfit.results.correction_tables import correction_table, with_corrections
+from massfit.results.datasets import reduced_records
 from massfit.results.estimate import Estimate
 
 
@@ -48,6 +49,18 @@ def test_every_series_of_a_run_is_listed(run: Estimate) -> None:
             if row["series"] == "circulation" and row["model"] in site["models"]
         ]
         np.testing.assert_allclose(np.mean(single, axis=0), mean[0], atol=1e-9)
+
+
+def test_the_parts_of_the_models_are_kept_as_series(run: Estimate) -> None:
+    records = reduced_records(run.reductions)
+    assert "local_air_pressure" not in records  # no model of this network asks for it
+    for name in ("self_attraction", "own_ocean_mean"):
+        assert records[name].dims == ("model", "obs")
+        has = np.isfinite(records[name]).any("obs")
+        labels = set(run.site_phasors["correction"].values)
+        assert {f"{name}: {model}" for model in records["model"].values[has]} == {
+            label for label in labels if label.startswith(name)
+        }
 
 
 def test_a_phasor_is_about_what_least_squares_finds_in_the_series(run: Estimate) -> None:
