@@ -47,7 +47,7 @@ def estimate(
         keep the parts of different versions of the program apart. Nothing is kept by default.
     what_if : bool
         Answer the network under every other choice too, sites fitted anew where it takes that: some ten times the
-        work. The rows are `summary["what_if"]`.
+        work. The rows are `summary["what_if"]`; `summary["moved_site"]` is how far a wrong site would pull.
     surrogates : int
         Number of surrogates of this network, with a known cycle, that are analysed like the records to see whether
         the regions hold it; each takes the time of a run. What was found is `calibration` and
@@ -103,7 +103,7 @@ def _estimate(
     )
     summary["predictive_check"] = predictive_check(posterior, phasors, fingerprints)
     if what_if:
-        summary["what_if"] = other_answers(
+        summary |= other_answers(
             stage.tasks, stage.table.of, phasors, fingerprints, posterior, progress=progress, mapped=mapped
         )
     calibration = None

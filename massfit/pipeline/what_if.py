@@ -14,6 +14,7 @@ from massfit.pipeline.parts import Mapped
 from massfit.pipeline.progress import Progress
 from massfit.pipeline.sites import SiteTask, reduce_site
 from massfit.posterior.result import Posterior
+from massfit.posterior.robustness import moved_site, surest_site
 from massfit.posterior.what_if import (
     Variant,
     answer_of,
@@ -52,7 +53,7 @@ def other_answers(
     *,
     progress: Progress,
     mapped: Mapped,
-) -> list[dict[str, Any]]:
+) -> dict[str, Any]:
     """Answer the network under every other choice.
 
     Parameters
@@ -71,8 +72,10 @@ def other_answers(
 
     Returns
     -------
-    list of dict
-        Rows of :func:`massfit.posterior.what_if.what_if_row`, in the order of their kinds.
+    dict
+        `what_if`, rows of :func:`massfit.posterior.what_if.what_if_row` in the order of their kinds; and `moved_site`,
+        of :func:`massfit.posterior.robustness.moved_site` for the site whose record is surest, where there are three
+        sites or more.
     """
     given = Variant(
         "", "", phasors, fingerprints, posterior.settings, posterior.priors, posterior.atmosphere_sd_hpa
@@ -92,7 +95,12 @@ def other_answers(
         rows.append(what_if_row(variants[done].kind, variants[done].name, answer, base))
         progress("what if", done + 1, len(variants))
     order = list(dict.fromkeys(["network model", "priors", "ocean models", *(row["kind"] for row in rows)]))
-    return sorted(rows, key=lambda row: order.index(row["kind"]))
+    found: dict[str, Any] = {"what_if": sorted(rows, key=lambda row: order.index(row["kind"]))}
+    if len(posterior.sites) > 2:
+        progress("a site moved", 0, 1)
+        found["moved_site"] = moved_site(given, surest_site(phasors), mapped=mapped)
+        progress("a site moved", 1, 1)
+    return found
 
 
 def other_treatments(tasks: Sequence[SiteTask]) -> list[Refit]:

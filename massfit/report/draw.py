@@ -13,6 +13,7 @@ from massfit.fingerprint.ocean import OceanFunction
 from massfit.phasor import as_complex, unwrapped_peak_days
 from massfit.report.corner_figure import corner_figure
 from massfit.report.fingerprint_members import fingerprint_members
+from massfit.report.moved_site_figure import moved_site_figure
 from massfit.report.network_map import network_map
 from massfit.report.phasor_plane import phasor_plane
 from massfit.report.record_panels import ROWS_OF_A_PAGE, record_panels
@@ -57,6 +58,8 @@ def draw_figures(run: FinishedRun, ocean: OceanFunction) -> dict[str, Figure]:
         figures[f"network_map{ending}"] = _map(run, ocean, width)
         figures[f"fingerprint{ending}"] = _members(run, width)
         figures[f"corner{ending}"] = _corner(run.datasets[POSTERIOR], width)
+        if "moved_site" in run.summary:
+            figures[f"moved_site{ending}"] = _moved_site(run, width)
     rows = record_rows(run)
     for page, first in enumerate(range(0, len(rows), ROWS_OF_A_PAGE), 1):
         name = "records" if page == 1 else f"records_{page}"
@@ -82,6 +85,17 @@ def _plane(run: FinishedRun, contours: Sequence[Contour], width_mm: float) -> Fi
         reference_year=run.summary["reference_year"],
         contours=contours,
         models=model_readings(run),
+        width_mm=width_mm,
+    )
+
+
+def _moved_site(run: FinishedRun, width_mm: float) -> Figure:
+    moved = run.summary["moved_site"]
+    return moved_site_figure(
+        moved["site"],
+        moved["offset_hpa"],
+        {scatter: moved[scatter]["shift_hpa"] for scatter in ("normal", "student-t")},
+        used=run.provenance["settings"]["posterior"]["site_scatter"],
         width_mm=width_mm,
     )
 

@@ -32,6 +32,8 @@ PICTURES = {
     "network_map": "The sites, coloured by the amplitude of the annual cycle at the site relative to the ocean mean.",
     "fingerprint": "How each site sees the cycle under each load member: amplitude relative to the ocean mean, and "
     "delay.",
+    "moved_site": "How far the answer moves as the site whose record is surest is moved off, in the direction of its "
+    "own cycle: under normal scatter it follows; under Student-t scatter a site that is far off loses its say.",
     "corner": "Posterior of the answer and of the scales of the model; contours enclose 50 and 95 %, dashed lines mark "
     "the median and the central 95 %.",
     "records": "Each site: daily record with fitted drift, deployments in turn blue and orange; the series subtracted "
@@ -105,6 +107,7 @@ def _alternative_texts(summary: Mapping[str, Any]) -> dict[str, str]:
         + (", ".join(flagged) or "none")
         + ".",
         "fingerprint": "Amplitude ratio and delay of each site under each load member; ranges are in the table below.",
+        "moved_site": "Shift of the answer against the offset of one site, under normal and Student-t site scatter.",
         "corner": "Posterior densities of amplitude and peak day, "
         + answer_sentence(summary).removeprefix("The annual cycle of ocean mass has an "),
         "records": "Daily records, corrections and remainders over time; what was done to each is in the tables below.",

@@ -57,6 +57,9 @@ are for research.</p>
 {{ table('alternatives') }}
 <p class="small">{{ alternatives_note }}</p>
 {% endif %}
+{% if 'moved_site' in images %}
+{{ figure('moved_site') }}
+{% endif %}
 <h3>Does the model fit the sites</h3>
 <p>{{ summary.predictive_check.sentences | join(' ') }}</p>
 {% if tables.predictive %}

@@ -68,6 +68,7 @@ def test_the_table_is_in_every_output(asked: Estimate, tmp_path: Path) -> None:
     assert all(line in text for line in ("  network model", "  records"))
     assert "! did not converge" in text.splitlines()
     assert max(map(len, text.splitlines())) <= 80
+    assert "moved_site" not in asked.summary  # of two sites neither is the wrong one
 
 
 def task(site: str, first: str, days: int, drift: str = "exponential+linear") -> SiteTask:

@@ -13,6 +13,7 @@ from massfit.report.corner_figure import corner_figure
 from massfit.report.draw import png
 from massfit.report.fingerprint_members import fingerprint_members
 from massfit.report.labels import place_labels
+from massfit.report.moved_site_figure import moved_site_figure
 from massfit.report.names import fitted
 from massfit.report.network_map import network_map
 from massfit.report.phasor_plane import phasor_plane
@@ -308,3 +309,19 @@ def test_a_date_at_the_very_end_stays_on_the_sheet() -> None:
     wave = np.sin(np.arange(731) / 58.0)
     figure = record_panels([RecordRow("A", [(time, wave, wave)], time, {}, time, wave, wave)])
     assert figure.get_tightbbox().x1 <= figure.get_size_inches()[0]
+
+
+@pytest.mark.parametrize("width_mm", [85.0, 180.0])
+def test_the_moved_site_is_drawn_with_the_line_of_the_answer_stronger(width_mm: float) -> None:
+    figure = moved_site_figure(
+        "A3", [0.0, 1.0, 5.0], {"normal": [0.0, 0.1, 0.4], "student-t": [0.0, 0.1, 0.02]}, used="student-t",
+        width_mm=width_mm,
+    )  # fmt: skip
+    (axes,) = figure.axes
+    normal, student = axes.get_lines()
+    assert student.get_linewidth() > normal.get_linewidth()
+    assert student.get_linestyle() != normal.get_linestyle()  # told apart without colour
+    assert [text.get_text() for text in axes.get_legend().get_texts()] == [
+        "normal site scatter", "Student-t site scatter (this answer)",
+    ]  # fmt: skip
+    assert axes.get_xlabel() == "A3 moved by / hPa"
