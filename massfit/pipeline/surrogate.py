@@ -21,9 +21,9 @@ from massfit.network import ReducedSite
 from massfit.phasor import admittance_matrix, annual_basis, days_since
 from massfit.pipeline.site_stage import PhasorTable
 from massfit.pipeline.sites import SiteTask
-from massfit.posterior.network_model import inflation
+from massfit.posterior.network_model import Choices, inflation
 from massfit.posterior.observations import Observations, read_observations
-from massfit.posterior.replicate import draw_errors, replicate_phasors
+from massfit.posterior.replicate import cycle_of_years, draw_errors, replicate_phasors
 from massfit.posterior.result import Posterior
 from massfit.results.estimate import SiteReduction
 from massfit.settings import PosteriorSettings, Priors
@@ -204,27 +204,24 @@ def make_surrogate(base: SurrogateBase, rng: np.random.Generator) -> Surrogate:
     annual = base.centre + CYCLE_SD_HPA * PASCAL_PER_HPA * rng.standard_normal(2)
     admittance = further_member(base.admittance, rng)
     chosen = int(rng.integers(len(base.scales["s_site"])))
-    errors = draw_errors(
-        seen,
-        {name: values[chosen : chosen + 1] for name, values in base.scales.items()},
-        atmosphere_sd=base.atmosphere_sd_hpa * PASCAL_PER_HPA,
-        truth=1.0 if base.settings.model_truth == "exchangeable" else 0.0,
-        student=base.settings.site_scatter == "student-t",
-        rng=rng,
-    )
+    scales = {name: values[chosen : chosen + 1] for name, values in base.scales.items()}
+    errors = draw_errors(seen, scales, Choices(base.settings, base.priors, base.atmosphere_sd_hpa), rng)
     # the models' weather is in the noise that was fitted to the record less their mean: its mean is taken off
     there = seen.present[None, :, :, None]
     weather = np.where(there, errors.weather, np.nan)
     weather = np.nan_to_num(weather - np.nanmean(weather, axis=2, keepdims=True))
     own = errors.model[0] + weather[0]
-    signal = np.einsum("sij,j->si", admittance_matrix(admittance), annual) + base.known + errors.site[0]
+    through = admittance_matrix(admittance)
+    signal = np.einsum("sij,j->si", through, annual) + base.known + errors.site[0]
     mean_error = np.nanmean(np.where(there[0], own, np.nan), axis=1)
-    at_sites = dict(zip(seen.sites, signal + mean_error, strict=True))
+    of_years = np.einsum("sij,sj->si", through, cycle_of_years(seen, errors)[0])
+    at_sites = dict(zip(seen.sites, signal + of_years + mean_error, strict=True))
     tasks = []
     for each in base.sites:
         s = seen.sites.index(each.task.site.id)
         by_model = dict(zip(seen.models, own[s], strict=True))
-        tasks.append(_site_surrogate(each, signal[s], by_model, rng))
+        years = dict(zip(seen.years, errors.years[0] @ through[s].T, strict=True))
+        tasks.append(_site_surrogate(each, signal[s], years, by_model, rng))
     phasors = replicate_phasors(seen, admittance[None], annual[None], errors, rng)[0] + base.known[:, None]
     elsewhere = tuple(
         _reduced_surrogate(each, seen, phasors[seen.sites.index(each.site)]) for each in base.table.elsewhere
@@ -239,12 +236,18 @@ def further_member(admittance: NDArray[np.complex128], rng: np.random.Generator)
     return np.asarray(admittance.mean(axis=0) + weights @ (admittance - admittance.mean(axis=0)))
 
 
-def _site_surrogate(base: SiteBase, signal: Floats, errors: Mapping[str, Floats], rng: np.random.Generator) -> SiteTask:
+def _site_surrogate(
+    base: SiteBase,
+    signal: Floats,
+    years: Mapping[int, Floats],
+    errors: Mapping[str, Floats],
+    rng: np.random.Generator,
+) -> SiteTask:
     task = base.task
     year = task.settings.frame.reference_year
     noise = _drawn_noise(base, year, rng)
     daily = tuple(
-        replace(record, pressure=record.pressure + _cycle(record.time, year, signal) + own)
+        replace(record, pressure=record.pressure + _cycle(record.time, year, signal, years) + own)
         for record, own in zip(task.daily, noise, strict=True)
     )
     # without a model the record itself holds the error of that column
@@ -258,8 +261,15 @@ def _site_surrogate(base: SiteBase, signal: Floats, errors: Mapping[str, Floats]
     return replace(task, daily=daily, circulation=circulation)
 
 
-def _cycle(time: NDArray[np.datetime64], year: int, phasor: Floats) -> Floats:
-    return np.asarray(annual_basis(days_since(time, year)) @ phasor)
+def _cycle(
+    time: NDArray[np.datetime64], year: int, phasor: Floats, years: Mapping[int, Floats] | None = None
+) -> Floats:
+    """Annual cycle of a phasor, and of how single calendar years differ from it."""
+    phasors = np.tile(phasor, (len(time), 1))
+    calendar = time.astype("datetime64[Y]").astype(int) + 1970
+    for number, own in (years or {}).items():
+        phasors[calendar == number] += own
+    return np.asarray((annual_basis(days_since(time, year)) * phasors).sum(axis=1))
 
 
 def _with_error(model: CirculationAtSites, year: int, error: Floats) -> CirculationAtSites:

@@ -13,10 +13,11 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
-from massfit.constants import PASCAL_PER_HPA
 from massfit.phasor import admittance_matrix
+from massfit.posterior.network_model import Choices
 from massfit.posterior.observations import Observations, read_observations
-from massfit.posterior.replicate import STUDENT_FREEDOM, draw_errors, replicate_phasors
+from massfit.posterior.regression import FREEDOM
+from massfit.posterior.replicate import draw_errors, replicate_phasors
 from massfit.posterior.result import Posterior
 
 Floats = NDArray[np.float64]
@@ -61,18 +62,12 @@ def predictive_check(posterior: Posterior, site_phasors: xr.Dataset, fingerprint
     observations, admittance = read_observations(site_phasors, fingerprints)
     member, annual, scales = _chosen_draws(posterior)
     rng = np.random.default_rng([posterior.seed, len(annual)])
-    student = posterior.settings.site_scatter == "student-t"
-    errors = draw_errors(
-        observations,
-        scales,
-        atmosphere_sd=posterior.atmosphere_sd_hpa * PASCAL_PER_HPA,
-        truth=1.0 if posterior.settings.model_truth == "exchangeable" else 0.0,
-        student=student,
-        rng=rng,
-    )
+    choices = Choices(posterior.settings, posterior.priors, posterior.atmosphere_sd_hpa)
+    errors = draw_errors(observations, scales, choices, rng)
     replicated = replicate_phasors(observations, admittance[member], annual, errors, rng)
     signal = np.einsum("nsij,nj->nsi", admittance_matrix(admittance[member]), annual)[:, :, None]
-    spread = _Spread(observations, scales, STUDENT_FREEDOM / (STUDENT_FREEDOM - 2.0) if student else 1.0)
+    student = posterior.settings.site_scatter == "student-t"
+    spread = _Spread(observations, scales, FREEDOM / (FREEDOM - 2.0) if student else 1.0)
     pair = (observations.phasor - signal, replicated - signal)
     checks = [_check(name, pair, measure) for name, measure in spread.measures().items()]
     squares = spread.site_squares(pair[0])

@@ -13,8 +13,10 @@ from massfit.constants import PASCAL_PER_HPA
 from massfit.display import counted
 from massfit.phasor import as_complex, unwrapped_peak_days
 from massfit.posterior.convergence import worse
+from massfit.posterior.observations import read_observations
 from massfit.posterior.result import Posterior
 from massfit.posterior.sample import sample_posterior
+from massfit.posterior.sharing import find_sharing
 from massfit.settings import PosteriorSettings, Priors
 
 FACTORS = (("half", 0.5), ("double", 2.0))
@@ -24,6 +26,9 @@ _SCALES = {
     "model_common_hpa": "prior of s_common (models, shared)",
     "model_local_hpa": "prior of s_local (models, at a site)",
     "site_scatter_hpa": "prior of s_site (site scatter)",
+    "group_scatter_hpa": "prior of s_group (shared scatter)",
+    "year_sd_hpa": "year-to-year sd of the cycle",
+    "unmodelled_annual_hpa": "sd of the unmodelled circulation",
 }
 
 _WORDS = {
@@ -82,10 +87,16 @@ def _model_choices(base: Variant) -> Iterator[Variant]:
     for name, changed in (_other(settings, key, words) for key, words in _WORDS.items()):
         yield replace(base, kind="network model", name=name, settings=changed)
     if settings.group_scatter is False:
-        name, changed = "neighbours share scatter (by group)", replace(settings, group_scatter=True)
+        name, other = "neighbours share scatter (by group)", True
     else:
-        name, changed = "neighbours independent", replace(settings, group_scatter=False)
-    yield replace(base, kind="network model", name=name, settings=changed)
+        name, other = "neighbours independent", False
+    if _shares_scatter(base, settings.group_scatter) or _shares_scatter(base, other):
+        yield replace(base, kind="network model", name=name, settings=replace(settings, group_scatter=other))
+
+
+def _shares_scatter(base: Variant, group_scatter: bool | float) -> bool:
+    observations, _ = read_observations(base.phasors, base.fingerprints)
+    return find_sharing(observations, group_scatter).has_group
 
 
 def _other(settings: PosteriorSettings, key: str, words: dict[str, str]) -> tuple[str, PosteriorSettings]:
@@ -95,8 +106,11 @@ def _other(settings: PosteriorSettings, key: str, words: dict[str, str]) -> tupl
 
 
 def _prior_choices(base: Variant) -> Iterator[Variant]:
+    skipped = set() if _shares_scatter(base, base.settings.group_scatter) else {"group_scatter_hpa"}
+    if NO_MODEL not in base.phasors["model"].values:
+        skipped.add("unmodelled_annual_hpa")
     for key, text in _SCALES.items():
-        for word, factor in FACTORS:
+        for word, factor in FACTORS if key not in skipped else ():
             priors = replace(base.priors, **{key: factor * getattr(base.priors, key)})
             yield replace(base, kind="priors", name=f"{word} the {text}", priors=priors)
     sd = base.atmosphere_sd_hpa

@@ -24,6 +24,7 @@ PLAIN = PosteriorSettings(site_scatter="normal", group_scatter=False)
 @pytest.fixture(scope="module")
 def base(invent) -> Variant:
     phasors, fingerprints = invent(3, sites=6, models=3, missing=0.3, members=2).datasets()
+    phasors = phasors.assign_coords(group=("site", ["north"] * 3 + ["south"] * 3))
     return Variant("", "", phasors, fingerprints, PLAIN, Priors(), 0.04)
 
 
@@ -54,6 +55,18 @@ def test_every_choice_is_there_and_changes_one_thing(base: Variant) -> None:
     assert variants["double the air-pressure error (0.08 hPa)"].atmosphere_sd_hpa == 0.08
     assert sum(name.startswith("without model") for name in variants) == 3
     assert variants["uniform ocean (F = 1)"].fingerprints["admittance"].values.tolist() == [[[1.0, 0.0]] * 6]
+
+
+def test_what_a_network_does_not_have_is_no_choice(base: Variant, invent) -> None:
+    names = set(by_name(base))
+    assert not {name for name in names if "s_group" in name or "unmodelled" in name}
+    grouped = by_name(replace(base, settings=replace(PLAIN, group_scatter=True)))
+    assert grouped["double the prior of s_group (shared scatter)"].priors.group_scatter_hpa == 0.3
+    alone = by_name(replace(base, phasors=base.phasors.drop_vars("group")))
+    assert not {name for name in alone if "neighbours" in name}
+    phasors, fingerprints = invent(3, sites=4, models=2, bare_sites=1).datasets()
+    bare = by_name(replace(base, phasors=phasors, fingerprints=fingerprints))
+    assert bare["half the sd of the unmodelled circulation"].priors.unmodelled_annual_hpa == 0.5
 
 
 def test_the_other_choice_of_every_default_is_its_opposite(base: Variant) -> None:
