@@ -153,7 +153,7 @@ FAULTS = {
         'drift = "linear"',
         'drift = "exponential"',
         ['N:28: site[B].deployment[1].drift: the value is "exponential". '
-         "Must be 'exponential+linear', 'linear' or 'none'."],
+         "Must be 'exponential+linear', 'logarithm+linear', 'linear', 'none' or 'compare'."],
     ),
     "step that is no time": (
         'drift = "linear"',
@@ -343,7 +343,7 @@ FAULTS = {
     "nested gravity": (
         "[fingerprint]",
         "[gravity]\nfields = { a = 1 }\n[fingerprint]",
-        ['N:41: gravity.fields: the value is {"a": 1}. Must be text, a number, a date or a switch.'],
+        ['N:41: gravity.fields: the value is {"a": 1}. Must be a list.'],
     ),
     "syntax error reported alone": (
         'name = "Two invented sites"\nreference_year = 2016',
