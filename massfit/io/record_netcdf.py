@@ -10,6 +10,7 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from massfit.errors import Fault, InputError, collect
+from massfit.io.cf_time import cf_instants
 from massfit.io.deployment import DeploymentFile
 from massfit.io.netcdf import as_text, damage_as_fault, open_netcdf
 from massfit.io.netcdf_flags import FlagNames, flag_names, flags_of
@@ -265,7 +266,7 @@ def _station_ids(identity: xr.DataArray | None) -> list[str]:
 
 def _stamps(dataset: xr.Dataset, time: xr.DataArray, entry: DeploymentFile) -> tuple[NDArray[np.datetime64], bool]:
     """UTC stamps, and whether they are known to be the middles of intervals."""
-    stamps = _decoded(time.values, time.attrs, entry)
+    stamps = cf_instants(time.values, time.attrs, source=entry.file)
     name = time.attrs.get("bounds")
     if name not in dataset.variables:
         return stamps, False
@@ -273,20 +274,8 @@ def _stamps(dataset: xr.Dataset, time: xr.DataArray, entry: DeploymentFile) -> t
     bounds = bounds.isel({dim: slice(None) for dim in bounds.dims})
     if bounds.shape != (*time.shape, 2):
         return stamps, False
-    edges = _decoded(bounds.values, {**time.attrs, **bounds.attrs}, entry)
+    edges = cf_instants(bounds.values, {**time.attrs, **bounds.attrs}, source=entry.file)
     return edges[:, 0] + (edges[:, 1] - edges[:, 0]) // 2, True
-
-
-def _decoded(values: NDArray[Any], attributes: dict[str, Any], entry: DeploymentFile) -> NDArray[np.datetime64]:
-    kept = {key: attributes[key] for key in ("units", "calendar", "_FillValue", "missing_value") if key in attributes}
-    dims = [f"axis_{axis}" for axis in range(values.ndim)]
-    try:
-        decoded = xr.decode_cf(xr.Dataset({"stamps": (dims, values, kept)}))["stamps"].values
-    except (ValueError, ImportError, OverflowError) as error:
-        problem = f"the times in {str(attributes['units'])!r} cannot be decoded"
-        allowed = "Must be like 'seconds since 1970-01-01', in the years 1678 to 2262"
-        raise InputError(Fault(entry.file, "time", problem, allowed, "Correct the units of the time")) from error
-    return np.asarray(decoded, dtype="datetime64[ns]")
 
 
 def _require_numbers(variable: xr.DataArray, entry: DeploymentFile) -> None:
