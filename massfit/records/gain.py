@@ -23,6 +23,8 @@ _THRESHOLD = 8.0
 """Robust standard deviations of the change of gain."""
 _SMALLEST = 0.02
 """Weather at the frequencies of the tides and what the modulation by the node leaves out are smaller."""
+_REST_SHARE = 0.5
+"""Before and after the gain changes by less than this share: a tide that is larger in summer does not rest so."""
 _SD_PER_MEDIAN = 1.4826
 
 RULE = "told by the tide: what is slow before and after is not on one scale either; leave one side out if it matters"
@@ -72,13 +74,16 @@ def find_gain_change(
     change = means[_SIDE:] - means[:-_SIDE]
     scatter = _SD_PER_MEDIAN * float(np.median(np.abs(np.diff(gain)))) * np.sqrt(1.0 / _SIDE)
     place = int(np.argmax(np.abs(change)))
-    if abs(change[place]) <= max(_THRESHOLD * scatter, _SMALLEST * float(np.median(np.abs(gain)))):
+    beside = change[[each for each in (place - _SIDE, place + _SIDE) if 0 <= each < change.size]]
+    least = max(_THRESHOLD * scatter, _SMALLEST * float(np.median(np.abs(gain))))
+    if abs(change[place]) <= least or np.any(np.abs(beside) > _REST_SHARE * abs(change[place])):
         return None
     middle = days[0] + full[place + _SIDE] * _BLOCK_DAYS
     near = np.abs(days - middle) <= 2.0 * _BLOCK_DAYS
     day = _best_split(days[near], tide[near], seen[near])
-    before, after = ((tide[side] @ seen[side]) / (tide[side] @ tide[side]) for side in (days < day, days >= day))
-    return day, float(after / before)
+    sides = days < day, days >= day
+    before, after = ((tide[side] @ seen[side]) / (tide[side] @ tide[side]) for side in sides)
+    return (day, float(after / before)) if abs(after - before) > least else None
 
 
 def _reference(days: NDArray[np.float64], constants: Sequence[TidalConstant]) -> NDArray[np.float64]:

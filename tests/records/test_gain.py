@@ -38,7 +38,7 @@ def test_nothing_is_found_through_years_of_the_turning_node(rng: np.random.Gener
     assert searched(days, tide(days) + rng.normal(scale=60.0, size=days.size)) is None
 
 
-@pytest.mark.parametrize("shape", ["step", "drift", "restless", "gap"])
+@pytest.mark.parametrize("shape", ["step", "drift", "restless", "gap", "season", "S1"])
 def test_what_is_no_change_of_gain(rng: np.random.Generator, shape: str) -> None:
     pressure = tide(DAYS) + rng.normal(scale=60.0, size=DAYS.size)
     days = DAYS
@@ -46,6 +46,10 @@ def test_what_is_no_change_of_gain(rng: np.random.Generator, shape: str) -> None
         pressure += 9000.0 * (DAYS > 5400.2)
     elif shape == "drift":
         pressure += 5000.0 * np.exp(-(DAYS - DAYS[0]) / 20.0)
+    elif shape == "season":
+        pressure *= 1.0 + 0.05 * np.cos(2 * np.pi * DAYS / 365.2422)
+    elif shape == "S1":
+        pressure += 150.0 * np.cos(2 * np.pi * DAYS)
     elif shape == "restless":
         pressure += rng.normal(scale=600.0, size=DAYS.size) * (DAYS > 5450)
     else:
