@@ -128,7 +128,10 @@ def phasors(network: Path, output: Path | None, overwrite: bool, outside: bool, 
 @click.option("--models", type=click.IntRange(0, 12), default=3, show_default=True, help="Number of ocean models.")
 @click.option("--noise", type=click.FloatRange(0.0, 20.0), default=1.0, show_default=True, help="Scale of the noise.")
 @click.option("--sampling", type=click.Choice(["hourly", "daily"]), default="hourly", show_default=True)
-def simulate(folder: Path, seed: int, sites: int, years: float, models: int, noise: float, sampling: str) -> None:
+@click.option("--satellites", type=click.IntRange(0, 4), default=2, show_default=True, help="Gravity centres.")
+def simulate(
+    folder: Path, seed: int, sites: int, years: float, models: int, noise: float, sampling: str, satellites: int
+) -> None:
     """Invent a network with known truth and write it to FOLDER.
 
     FOLDER must not exist or be empty. The truth is in truth.json; the rest is
@@ -137,7 +140,9 @@ def simulate(folder: Path, seed: int, sites: int, years: float, models: int, noi
     with refusing_politely():
         from massfit.pipeline.invent import simulate_to_folder
 
-        simulate_to_folder(folder, seed, sites=sites, years=years, models=models, noise=noise, sampling=sampling)
+        simulate_to_folder(
+            folder, seed, sites=sites, years=years, models=models, noise=noise, sampling=sampling, satellites=satellites
+        )
     click.echo(f"Wrote an invented network to {folder}. Next: massfit estimate {folder}")
 
 

@@ -22,7 +22,7 @@ from massfit.io.sections import parse_sections
 from massfit.phasor import phasor_from_peak
 from massfit.settings import Gravity
 
-_COLUMNS = ("label", "method", "amplitude_hpa", "amplitude_sd_hpa", "peak_day", "peak_day_sd")
+DETERMINATION_COLUMNS = ("label", "method", "amplitude_hpa", "amplitude_sd_hpa", "peak_day", "peak_day_sd")
 _MOST_BYTES = 2**20
 
 
@@ -160,9 +160,11 @@ def read_determinations(path: Path, *, source: str) -> tuple[Determination, ...]
     lines = [(number, line) for number, line in enumerate(text.splitlines(), 1)]
     rows = [(number, line) for number, line in lines if line.strip() and not line.startswith("#")]
     header = next(csv.reader(StringIO(rows[0][1])), []) if rows else []
-    if tuple(word.strip() for word in header) != _COLUMNS:
+    if tuple(word.strip() for word in header) != DETERMINATION_COLUMNS:
         problem = f"the header is {','.join(header)!r}"
-        raise InputError(Fault(source, "", problem, f"Must be {','.join(_COLUMNS)}", "Name the columns", 1))
+        raise InputError(
+            Fault(source, "", problem, f"Must be {','.join(DETERMINATION_COLUMNS)}", "Name the columns", 1)
+        )
     faults: list[Fault] = []
     found = [
         each for number, line in rows[1:]
@@ -174,11 +176,13 @@ def read_determinations(path: Path, *, source: str) -> tuple[Determination, ...]
 
 
 def _determination(words: Sequence[str], source: str, line: int, faults: list[Fault]) -> Determination | None:
-    if len(words) != len(_COLUMNS):
+    if len(words) != len(DETERMINATION_COLUMNS):
         problem = f"the row has {len(words)} columns"
-        faults.append(Fault(source, "row", problem, f"Must be {len(_COLUMNS)}", "Mend the row", line))
+        faults.append(Fault(source, "row", problem, f"Must be {len(DETERMINATION_COLUMNS)}", "Mend the row", line))
         return None
-    limits = dict(zip(_COLUMNS[2:], ((0.0, 20.0), (0.0, 20.0), (-366.0, 732.0), (0.0, 183.0)), strict=True))
+    limits = dict(
+        zip(DETERMINATION_COLUMNS[2:], ((0.0, 20.0), (0.0, 20.0), (-366.0, 732.0), (0.0, 183.0)), strict=True)
+    )
     numbers = []
     for (name, (low, high)), word in zip(limits.items(), words[2:], strict=True):
         try:

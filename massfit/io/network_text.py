@@ -49,6 +49,16 @@ _COMMENTS: dict[str, dict[str, str]] = {
         "perturbed_delay_sd_days": "and of its timing",
         "earth_model": '"prem", or the CSV file of an Earth profile',
     },
+    "[gravity]": {
+        "fields": "monthly fields of one centre or more: folder, archive or file",
+        "degree_one": "table of degree 1",
+        "low_degree": "table of C20 and C30",
+        "determinations": "other determinations, to be set beside",
+        "buffer_km": "ocean nearer to land is left out",
+        "smoothing_km": "a Gaussian falls to one half there; 0 for none",
+        "c20": '"replaced" by low_degree, or the fields\' "own"',
+        "degree_zero": '"atmosphere", "water-vapour" or "none"; "best" is the first at hand',
+    },
     "[posterior]": {
         "site_scatter": '"student-t" or "normal"',
         "group_scatter": "true, false, or a correlation length in km",
@@ -94,6 +104,7 @@ def network_text(
         _table("[fingerprint]", _values(settings.fingerprint)),
         _table("[posterior]", _values(settings.posterior)),
         *([_table("[priors]", priors)] if priors else []),
+        *([_table("[gravity]", _values(settings.gravity))] if settings.gravity is not None else []),
     ]
     elsewhere = {each.site: _reduced_table(each) for each in reduced}
     for site, deployments in sites:

@@ -11,6 +11,7 @@ from typing import Any
 
 from massfit.errors import Fault, InputError
 from massfit.fingerprint.pattern import LoadPattern
+from massfit.gravity.inputs import GravityInputs
 from massfit.io.earth_file import write_earth_profile
 from massfit.io.network_text import calibration_file, circulation_table, deployment_table, network_text
 from massfit.io.write_fields import (
@@ -24,6 +25,7 @@ from massfit.io.write_fields import (
     write_record,
     write_series,
 )
+from massfit.io.write_gravity import write_gravity
 from massfit.network import Network
 from massfit.records.record import Record
 from massfit.settings import PREM, Settings
@@ -50,7 +52,12 @@ def check_empty(folder: Path) -> None:
 
 
 def write_network(
-    network: Network, folder: Path, *, truth: Mapping[str, Any] | None = None, readme: str | None = None
+    network: Network,
+    folder: Path,
+    *,
+    truth: Mapping[str, Any] | None = None,
+    readme: str | None = None,
+    gravity: GravityInputs | None = None,
 ) -> None:
     """Write network.toml and every file it names.
 
@@ -68,6 +75,8 @@ def write_network(
         Written to truth.json.
     readme : str, optional
         Written to README.md.
+    gravity : GravityInputs, optional
+        Written under the names of its own settings, which must be those of the network.
 
     Raises
     ------
@@ -84,6 +93,8 @@ def write_network(
         sites = _write_records(network, partial)
         text = network_text(settings, sites, models, network.reduced, network.models_elsewhere)
         (partial / "network.toml").write_text(text, encoding="utf-8")
+        if gravity is not None:
+            write_gravity(gravity, partial)
         if truth is not None:
             (partial / "truth.json").write_text(json.dumps(truth, indent=2) + "\n", encoding="utf-8")
         if readme is not None:

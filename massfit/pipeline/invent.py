@@ -29,4 +29,4 @@ def simulate_to_folder(folder: Path, seed: int, **options: Any) -> None:
     chosen = SimulationOptions(**options)
     invented = simulate_network(chosen, seed=seed)
     story = tell_story(invented, chosen, folder=folder.name)
-    write_network(invented.network, folder, truth=invented.truth, readme=story)
+    write_network(invented.network, folder, truth=invented.truth, readme=story, gravity=invented.gravity)

@@ -17,7 +17,9 @@ from massfit.report.moved_site_figure import moved_site_figure
 from massfit.report.network_map import network_map
 from massfit.report.phasor_plane import phasor_plane
 from massfit.report.record_panels import ROWS_OF_A_PAGE, record_panels
+from massfit.report.satellite_figure import satellite_figure
 from massfit.report.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM, house_style
+from massfit.results.comparison_rows import placed_determinations, satellite_months
 from massfit.results.finished import FinishedRun
 from massfit.results.posterior_groups import POSTERIOR
 from massfit.results.readings import (
@@ -60,6 +62,10 @@ def draw_figures(run: FinishedRun, ocean: OceanFunction) -> dict[str, Figure]:
         figures[f"corner{ending}"] = _corner(run.datasets[POSTERIOR], width)
         if "moved_site" in run.summary:
             figures[f"moved_site{ending}"] = _moved_site(run, width)
+        if "comparison.nc" in run.datasets:
+            figures[f"satellite{ending}"] = satellite_figure(
+                placed_determinations(run), satellite_months(run), width_mm=width
+            )
     rows = record_rows(run)
     for page, first in enumerate(range(0, len(rows), ROWS_OF_A_PAGE), 1):
         name = "records" if page == 1 else f"records_{page}"

@@ -5,6 +5,7 @@ from typing import Any
 
 from jinja2 import Environment, StrictUndefined
 
+from massfit.report.comparison_text import verdict
 from massfit.report.page_parts import as_data, made_with
 from massfit.report.page_tables import (
     Table,
@@ -21,6 +22,7 @@ from massfit.report.page_tables import (
     site_table,
 )
 from massfit.report.page_template import TEMPLATE
+from massfit.report.satellite_tables import satellite_tables
 from massfit.report.text import ALTERNATIVES_NOTE, trust_sentence, warning_lines
 from massfit.results.answer import answer_sentence
 from massfit.results.finished import FinishedRun
@@ -39,6 +41,8 @@ PICTURES = {
     "records": "Each site: daily record with fitted drift, deployments in turn blue and orange; the series subtracted "
     "from it; what remains, with the fitted annual cycle. Every row has its own scale; one day in 250, the most "
     "extreme, is out of sight.",
+    "satellite": "Network, satellites and other determinations of the water of the whole ocean, with 95 % ellipses; "
+    "the satellites' ocean mean of each month as the kernel sees it, less its mean, and the annual cycle fitted to it.",
 }
 """Name of each figure and what it shows. Further pages of records end in ``_2`` and so on."""
 
@@ -69,6 +73,7 @@ def report_page(run: FinishedRun, pictures: Mapping[str, bytes]) -> str:
         record_pictures=[name for name in pictures if _stem(name) == "records"],
         warnings=warning_lines(summary),
         trust=trust_sentence(summary),
+        satellite_verdict=verdict(summary["comparison"]) if "comparison" in summary else "",
         alternatives_note=f"{ALTERNATIVES_NOTE[0].upper()}{ALTERNATIVES_NOTE[1:]}.",
         tables=_tables(run),
         made_with=made_with(provenance),
@@ -93,6 +98,7 @@ def _tables(run: FinishedRun) -> dict[str, Table | None]:
         "fingerprint": fingerprint_table(summary, run.datasets["fingerprints.nc"]),
         "actions": actions_table(summary, run.datasets.get("reduced_records.nc")),
         "inputs": input_table(run.provenance),
+        **satellite_tables(summary),
     }
 
 
@@ -110,5 +116,7 @@ def _alternative_texts(summary: Mapping[str, Any]) -> dict[str, str]:
         "moved_site": "Shift of the answer against the offset of one site, under normal and Student-t site scatter.",
         "corner": "Posterior densities of amplitude and peak day, "
         + answer_sentence(summary).removeprefix("The annual cycle of ocean mass has an "),
+        "satellite": "Determinations in the plane of in phase and quadrature, and the monthly ocean mean of the "
+        "satellites; the numbers are in the tables below.",
         "records": "Daily records, corrections and remainders over time; what was done to each is in the tables below.",
     }

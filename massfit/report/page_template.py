@@ -37,6 +37,7 @@ are for research.</p>
 {% if tables.corrections or record_pictures %}<li><a href="#corrections">The corrections</a></li>{% endif %}
 <li><a href="#fingerprint">The fingerprint</a></li>
 {% if tables.actions %}<li><a href="#records">The records</a></li>{% endif %}
+{% if tables.determinations %}<li><a href="#satellites">Satellite gravity</a></li>{% endif %}
 <li><a href="#provenance">Where it comes from</a></li>
 </ul></nav>
 {% if warnings %}
@@ -117,6 +118,35 @@ World maps and the lands each site hears: massfit fingerprint.</p>
 
 <h2 id="records">Everything done to each record</h2>
 {{ table('actions') }}
+{% endif %}
+
+{% if tables.determinations %}
+
+<h2 id="satellites">Beside satellite gravity</h2>
+<p>{{ satellite_verdict }}</p>
+{% if summary.comparison.warnings %}
+<ul>{% for text in summary.comparison.warnings %}<li>{{ text }}</li>{% endfor %}</ul>
+{% endif %}
+{{ figure('satellite') }}
+{{ table('determinations') }}
+<p class="small">Water of the whole ocean, years of the comparison, phases of this run. p: probability of a difference
+at least as large, chi-square with 2 degrees of freedom.</p>
+<h3>What each choice does</h3>
+{{ table('choices') }}
+{% if tables.satellite_sites %}
+<h3>At the recorders</h3>
+{{ table('satellite_sites') }}
+<p class="small">Satellites: field smoothed by 500 km at least, brought to the point by the load members. Recorder: mean
+over the ocean models, less the response to air over land.</p>
+{% endif %}
+<h3>The geocentre</h3>
+{{ table('geocentre') }}
+<p class="small">Centre of figure seen from the centre of mass. The reference frame holds the loads of air and of the
+ocean's circulation too; this water alone need not agree with it, least in Y.</p>
+<h3>In other definitions</h3>
+{{ table('definitions') }}
+<h3>What was done</h3>
+{{ table('satellite_actions') }}
 {% endif %}
 
 <h2 id="provenance">Where it comes from, and how to repeat it</h2>

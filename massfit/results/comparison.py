@@ -121,6 +121,11 @@ def comparison_dataset(found: GravityComparison, summary: Mapping[str, Any]) -> 
                 _stack([each.kernel_phasor for each in found.solutions]),
                 pascal,
             ),
+            "fitted_phasor": (
+                ("solution", "component"),
+                _stack([each.fit.phasor for each in found.solutions]),
+                {"units": "kg m-2", "long_name": "annual phasor of the series, degree 0 of the vapour not in it"},
+            ),
             "ocean_mean": (
                 ("obs",),
                 np.concatenate([each.series for each in found.solutions]),

@@ -8,6 +8,8 @@ _SITES = (
 _MODELS = ("Corvane", "Pellagor", "Sundrell", "Wexmarsh", "Yarrowdeep", "Zellotide")
 _LOADS = ("Amber", "Basalt", "Chalk", "Dolomite", "Ember", "Flint", "Gravel")
 
+_CENTRES = ("Halvorne", "Mirrowby", "Skelldane", "Tarnwick")
+
 
 def site_names(count: int) -> tuple[str, ...]:
     """Site ids, unique.
@@ -28,6 +30,11 @@ def model_names(count: int) -> tuple[str, ...]:
 def load_names(count: int) -> tuple[str, ...]:
     """Names of load members, unique."""
     return _names(_LOADS, count)
+
+
+def centre_names(count: int) -> tuple[str, ...]:
+    """Names of centres that analyse satellite gravity, unique."""
+    return _names(_CENTRES, count)
 
 
 def _names(pool: tuple[str, ...], count: int) -> tuple[str, ...]:

@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from massfit.corrections.long_period_tides import zonal_height
 from massfit.corrections.pole_tide import observed_wobble
 from massfit.fingerprint.ocean import OceanFunction
+from massfit.gravity.inputs import GravityInputs
 from massfit.network import Network
 from massfit.phasor import peak_days
 from massfit.records.record import Record
@@ -30,6 +31,7 @@ from massfit.simulate.models import common_errors, draw_models
 from massfit.simulate.noise import flicker, ornstein_uhlenbeck
 from massfit.simulate.options import SimulationOptions
 from massfit.simulate.places import draw_sites
+from massfit.simulate.satellites import draw_satellites, satellite_truth
 from massfit.simulate.sea_level import Responses, true_responses
 from massfit.simulate.tides import short_tides
 from massfit.simulate.world import World, draw_world
@@ -43,7 +45,9 @@ _EDDY_SEASON_SD = 80.0  # Pa per component
 _DEPTH_TO_PRESSURE = 10_080.0  # Pa a metre, mean over a deep water column
 
 # one stream of random numbers a subject: more models do not move the sites; new subjects go last
-_SUBJECTS = ("sites", "world", "members", "air", "circulation", "models", "recorders", "noise", "tides", "roles")
+_SUBJECTS = (
+    "sites", "world", "members", "air", "circulation", "models", "recorders", "noise", "tides", "roles", "satellites",
+)  # fmt: skip
 _INCIDENTS = ("overlap", "step", "short", "disturbed", "missing", "text")
 
 
@@ -57,10 +61,13 @@ class SimulatedNetwork:
         All that an analyst would be given.
     truth : mapping
         Plain numbers, text and lists: what the analyst would like to know.
+    gravity : GravityInputs, optional
+        Satellite gravity of the same world.
     """
 
     network: Network
     truth: Mapping[str, Any]
+    gravity: GravityInputs | None = None
 
 
 def simulate_network(options: SimulationOptions | None = None, *, seed: int) -> SimulatedNetwork:
@@ -115,8 +122,9 @@ def simulate_network(options: SimulationOptions | None = None, *, seed: int) -> 
     recorders = [draw_deployments(rng["recorders"], clock.n_days, role) for role in roles]
     records = _records(rng, options, sites, roles, recorders, pressure, clock)
     air, air_error = air_as_given(rng["air"], world, clock)
+    gravity = draw_satellites(rng["satellites"], world, clock, options.satellites) if options.satellites else None
     network = Network(
-        settings=settings(options, clock),
+        settings=replace(settings(options, clock), gravity=None if gravity is None else gravity.settings),
         sites=tuple(
             replace(site, exclude=exclusions(laid, clock)) for site, laid in zip(sites, recorders, strict=True)
         ),
@@ -134,7 +142,9 @@ def simulate_network(options: SimulationOptions | None = None, *, seed: int) -> 
         },
         "sites": _site_truth(sites, roles, responses, unmodelled, recorders),
     }
-    return SimulatedNetwork(network, truth)
+    if gravity is not None:
+        truth |= {"satellites": satellite_truth(gravity)}
+    return SimulatedNetwork(network, truth, gravity)
 
 
 def _roles(rng: np.random.Generator, options: SimulationOptions) -> list[str]:

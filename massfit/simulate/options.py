@@ -34,6 +34,8 @@ class SimulationOptions:
     incidents : bool
         Gaps, spikes, an overlapping pair, a declared step, a short record and a model that
         misses a site.
+    satellites : int
+        Number of centres that give monthly fields of satellite gravity; 0 for none.
 
     Examples
     --------
@@ -51,3 +53,4 @@ class SimulationOptions:
     first_year: Annotated[int, Field(ge=1980, le=2100)] = 2014
     bad_site: bool = True
     incidents: bool = True
+    satellites: Annotated[int, Field(ge=0, le=4)] = 0

@@ -13,13 +13,14 @@ from numpy.typing import NDArray
 from massfit.constants import STANDARD_GRAVITY
 from massfit.corrections.long_period_tides import zonal_function
 from massfit.corrections.pole_tide import pole_tide_height
-from massfit.earth.love import love_numbers
+from massfit.earth.love import LoveNumbers, love_numbers
 from massfit.fingerprint.footprint import site_footprints
 from massfit.fingerprint.grid import CellGrid, regrid
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.fingerprint.operator import SeaLevelOperator, prepare_operator
 from massfit.fingerprint.pattern import LoadPattern
 from massfit.fingerprint.sea_level import SeaLevel, solve_sea_level
+from massfit.fingerprint.transforms import as_cilm
 from massfit.simulate.dynamics import Bumps
 from massfit.simulate.world import World
 from massfit.site import Site
@@ -93,6 +94,30 @@ def true_responses(sites: Sequence[Site], world: World, bumps: Bumps) -> Respons
         wobble=np.asarray(pressure_per_metre * wobble.at(latitude, longitude)),
         bumps=bumps.at(latitude, longitude) + self_attraction(sites, bumps),
     )
+
+
+def true_mass(world: World, max_degree: int) -> tuple[NDArray[np.complex128], LoveNumbers]:
+    """Annual phasor of the water on land and in the ocean as coefficients of surface mass.
+
+    Parameters
+    ----------
+    world : World
+    max_degree : int
+        Of the coefficients; the solve is that of the sites.
+
+    Returns
+    -------
+    mass : (2, N + 1, N + 1) array of complex
+        4-pi-normalised, kg m-2.
+    love : LoveNumbers
+    """
+    operator = true_operator(TRUTH_DEGREE)
+    load = _on_grid(operator, world.load)
+    sea = solve_sea_level(operator, load=load, water_vapour=world.water_vapour)
+    total = load + operator.sea_water_density * operator.ocean * sea.height
+    parts = operator.grid.analyse(np.stack([total.real, total.imag]))
+    real, imaginary = (as_cilm(part, TRUTH_DEGREE)[:, : max_degree + 1, : max_degree + 1] for part in parts)
+    return np.asarray(real + 1j * imaginary), love_numbers(max_degree=max_degree)
 
 
 def self_attraction(sites: Sequence[Site], bumps: Bumps) -> NDArray[np.float64]:

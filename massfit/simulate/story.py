@@ -28,7 +28,7 @@ rises and falls through the year, when it peaks, and how sure you are.
 | `fields/ocean_mean_atmosphere.csv` | mean air pressure over the ocean; its annual cycle is a little wrong |
 | `fields/atmosphere_load.nc` | annual cycle of air pressure on land |
 | `fields/loads.nc` | {n_loads} plausible annual patterns of water and snow on land; none is the true one |
-{model_rows}| `truth.json` | what really happened: not for the analyst |
+{model_rows}{gravity_rows}| `truth.json` | what really happened: not for the analyst |
 
 ## What to do
 
@@ -41,8 +41,8 @@ massfit estimate {folder}
 - Every recorder drifts by tens of hPa after it reaches the bottom, far more than the annual cycle.
 - The models catch most of the ocean's weather, err at the annual line, and share a part of that error.
 - The noise is red and of no form that the analysis assumes. The load was solved to a higher degree than yours.
-- The uncertainty should hold the truth, not hug it: of twenty networks like this one, the truth of one is expected to
-  lie outside its 95 % region.
+{satellites}- The uncertainty should hold the truth, not hug it: of twenty networks like this one, the truth of one is
+  expected to lie outside its 95 % region.
 
 When you have your answer, compare it with `amplitude_hpa` and `peak_day` in `truth.json` (days after 1 January
 00:00 UTC of the reference year).
@@ -54,6 +54,11 @@ When you have your answer, compare it with `amplitude_hpa` and `peak_day` in `tr
 ```
 
 The same command gives the same network again (another processor may round single values differently).
+"""
+
+_SATELLITES = """\
+- The satellites see the same water, at the coast the land's too; each year differs a little from the mean of all, and
+  between two pairs of satellites months are missing.
 """
 
 _ROLES = {
@@ -92,6 +97,8 @@ def tell_story(simulated: SimulatedNetwork, options: SimulationOptions, *, folde
         knowledge="\n".join(f"- {line}" for line in _knowledge(simulated, hourly=hourly)),
         sampling="hourly, with short tides" if hourly else "daily means, short tides removed",
         model_rows="".join(_model_rows(simulated)),
+        gravity_rows="".join(_gravity_rows(simulated)),
+        satellites="" if simulated.gravity is None else _SATELLITES,
         folder=folder,
         command=command_line(options, seed=simulated.truth["seed"], folder=folder),
     )
@@ -103,11 +110,12 @@ def command_line(options: SimulationOptions, *, seed: int, folder: str) -> str:
     Examples
     --------
     >>> command_line(SimulationOptions(years=4), seed=7, folder="here")
-    'massfit simulate here --seed 7 --sites 18 --years 4 --models 3 --noise 1 --sampling hourly'
+    'massfit simulate here --seed 7 --sites 18 --years 4 --models 3 --noise 1 --sampling hourly --satellites 0'
     """
     return (
         f"massfit simulate {folder} --seed {seed} --sites {options.sites} --years {options.years:g} "
-        f"--models {options.models} --noise {options.noise:g} --sampling {options.sampling}"
+        f"--models {options.models} --noise {options.noise:g} --sampling {options.sampling} "
+        f"--satellites {options.satellites}"
     )
 
 
@@ -122,6 +130,22 @@ def _knowledge(simulated: SimulatedNetwork, *, hourly: bool) -> list[str]:
             model = models[0].name if models else ""
             lines += [text.format(site=site["id"], model=model) for site in sites if site["role"] == role]
     return lines
+
+
+def _gravity_rows(simulated: SimulatedNetwork) -> list[str]:
+    gravity = simulated.gravity
+    if gravity is None:
+        return []
+    chosen, months = gravity.settings, len(gravity.solutions[0].fields)
+    rows = [
+        f"| `{file}` | {months} monthly gravity fields of the centre {solution.name}, no degree 0 and 1, a poor C20 |\n"
+        for file, solution in zip(chosen.fields, gravity.solutions, strict=True)
+    ]
+    return [
+        *rows,
+        f"| `{chosen.degree_one}`, `{chosen.low_degree}` | degree 1 of the water; C20 and C30 to replace |\n",
+        f"| `{chosen.determinations}` | what others found, to be set beside |\n",
+    ]
 
 
 def _model_rows(simulated: SimulatedNetwork) -> list[str]:

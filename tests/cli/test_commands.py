@@ -90,7 +90,7 @@ def test_run_json_names_every_input_by_its_digest(
 ) -> None:
     assert finished.returncode == 0
     inputs = json.loads((invented_folder / "results" / "run.json").read_text("utf-8"))["inputs"]
-    folders = ("records", "fields")
+    folders = ("records", "fields", "gravity")
     files = {str(path.relative_to(invented_folder)) for name in folders for path in (invented_folder / name).iterdir()}
     assert set(inputs) == {"network.toml", *files}
     assert all(len(digest) == 64 for digest in inputs.values())

@@ -1,0 +1,101 @@
+"""The satellite comparison through the commands, on an invented network."""
+
+import json
+from pathlib import Path
+
+import numpy as np
+import pytest
+import xarray as xr
+from click.testing import CliRunner
+
+from massfit.cli.main import main
+from massfit.io.read_results import read_results
+from massfit.pipeline.invent import simulate_to_folder
+
+
+@pytest.fixture(scope="module")
+def network(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    folder = tmp_path_factory.mktemp("compare") / "network"
+    options = {"sites": 3, "years": 3, "models": 2, "load_members": 3, "sampling": "daily", "satellites": 2}
+    simulate_to_folder(folder, 3, incidents=False, bad_site=False, **options)
+    return folder
+
+
+@pytest.fixture(scope="module")
+def results(network: Path) -> Path:
+    found = CliRunner().invoke(main, ["estimate", str(network), "--quiet"])
+    assert found.exit_code == 0, found.output
+    return network / "results"
+
+
+def test_estimate_compares_when_the_network_file_has_gravity(network: Path, results: Path) -> None:
+    run = read_results(results)
+    comparison = run.summary["comparison"]
+    truth = json.loads((network / "truth.json").read_text())
+    expected = np.array([truth["in_phase_hpa"], truth["quadrature_hpa"]])
+    found = comparison["satellite"]
+    step = np.array([found["in_phase_hpa"], found["quadrature_hpa"]]) - expected
+    # 99.9 % of a chi-square with 2 degrees of freedom; and the error is that of a measurement
+    assert step @ np.linalg.solve(np.array(found["covariance_hpa2"]), step) < 13.8
+    assert found["amplitude_sd_hpa"] < 0.4
+    assert comparison["network"]["amplitude_hpa"] == pytest.approx(
+        np.hypot(run.summary["in_phase_hpa"]["mean"], run.summary["quadrature_hpa"]["mean"])
+    )
+    assert len(comparison["others"]) == 2
+    assert {site["id"] for site in comparison["sites"]} == {site["id"] for site in run.summary["sites"]}
+    assert set(run.provenance["inputs"]) >= {"gravity/halvorne.tar.xz", "gravity/c20_c30.txt", "network.toml"}
+    page = (results / "report.html").read_text(encoding="utf-8")
+    assert "Beside satellite gravity" in page
+    assert "What each choice does" in page
+    assert (results / "figures" / "satellite.png").stat().st_size > 10_000
+    with xr.open_dataset(results / "comparison.nc", engine="h5netcdf") as data:
+        assert data.attrs["phase_reference"] == f"1 January {run.summary['reference_year']} 00:00 UTC"
+        assert list(data["determination"].values[:2]) == ["network", "satellite gravity"]
+        assert data.sizes["obs"] == 2 * 25
+
+
+def test_compare_gives_what_estimate_gave(results: Path) -> None:
+    before = json.loads((results / "estimate.json").read_text())
+    found = CliRunner().invoke(main, ["compare", str(results)])
+    assert found.exit_code == 0, found.output
+    assert "\nNetwork and satellites " in found.output
+    assert "What each choice does" in found.output
+    assert json.loads((results / "estimate.json").read_text()) == before
+    read_results(results)  # checksums hold
+    assert CliRunner().invoke(main, ["report", str(results)]).exit_code == 0
+
+
+def test_compare_without_gravity_is_refused_and_the_results_are_left_alone(results: Path, tmp_path: Path) -> None:
+    (tmp_path / "network.toml").write_text('network = { name = "x", reference_year = 2016 }\n')
+    before = (results / "estimate.json").read_bytes()
+    found = CliRunner().invoke(main, ["compare", str(results), "--network", str(tmp_path)])
+    assert found.exit_code == 2
+    assert "the network file has no [gravity]" in found.output
+    assert (results / "estimate.json").read_bytes() == before
+
+
+def test_a_model_that_assimilated_satellite_gravity_is_refused(results: Path, network: Path) -> None:
+    file = network / "network.toml"
+    text = file.read_text()
+    try:
+        file.write_text(
+            text.replace("assimilates_satellite_gravity = false", "assimilates_satellite_gravity = true", 1)
+        )
+        found = CliRunner().invoke(main, ["compare", str(results)])
+    finally:
+        file.write_text(text)
+    assert found.exit_code == 2
+    assert "assimilated satellite gravity: the comparison would be with itself" in found.output
+
+
+def test_faults_of_gravity_and_of_records_are_told_together(network: Path, tmp_path: Path) -> None:
+    text = (network / "network.toml").read_text()
+    text = text.replace("gravity/degree_one.txt", "gravity/nothing.txt").replace("records/", "recs/")
+    (tmp_path / "network.toml").write_text(text)
+    for name in ("records", "fields", "gravity"):
+        (tmp_path / name).symlink_to(network / name)
+    found = CliRunner().invoke(main, ["estimate", str(tmp_path), "--outside"])
+    assert found.exit_code == 2
+    assert 'no file "gravity/nothing.txt"' in found.output
+    assert 'no file "recs/' in found.output
+    assert not (tmp_path / "results").exists()
