@@ -1,16 +1,18 @@
 """Long-period tides and the pole tide."""
 
 from functools import cache
+from pathlib import Path
 
+import astropy_iers_data
 import erfa
 import numpy as np
 from numpy.typing import NDArray
 
 from massfit.constants import EARTH_DENSITY
-from massfit.corrections.long_period_tides import LINES, mean_longitudes, zonal_function, zonal_height
+from massfit.corrections.long_period_tides import LINES, line_table, mean_longitudes, zonal_function, zonal_height
 from massfit.corrections.pole_tide import EQUATORIAL_RADIUS, GAMMA_2, observed_wobble, pole_tide_height, wobble_of
 from massfit.fingerprint.sea_level import solve_sea_level
-from massfit.tables.polar_motion import RADIAN_PER_ARCSECOND
+from massfit.tables.polar_motion import RADIAN_PER_ARCSECOND, parse_final, parse_rapid
 from validation.registry import Group, Row, published, vanishing
 from validation.sea_level import operator
 
@@ -28,6 +30,36 @@ def line_heights() -> list[Row]:
         largest = float(np.abs(zonal_height(days, lines=(line,)) * zonal_function(0.0)).max())
         rows.append(Row(f"{line.name} / mm", float(entry["equator_mm"]), 1000.0 * largest, 0.05, ".1f"))
     return rows
+
+
+PERIODS = {
+    **{"node": 6798.4, "Sa": 365.26, "Ssa": 182.621, "MSm": 31.812, "Mm": 27.5546, "MSf": 14.7653, "Mf": 13.6608},
+    "Mtm": 9.1329,
+}
+
+
+def periods() -> list[Row]:
+    found = {str(row["line"]): row["period_days"] for row in line_table(1.0)}
+    return [Row(f"{name} / d", value, float(found[name]), 2e-5 * value, ".3f") for name, value in PERIODS.items()]
+
+
+def nodal_factor() -> list[Row]:
+    days = np.arange("2000-01-01", "2019-01-01", dtype="datetime64[D]").astype("datetime64[ns]")
+    pair = [line for line in LINES if line.name in {"Mf", "2s+N'"}]
+    angles = mean_longitudes(days) @ np.array([line.multipliers for line in pair], dtype=float).T
+    factor = np.abs(np.exp(1j * angles) @ np.array([line.height_m for line in pair])) / 0.0666
+    largest, least = float(factor.max()), float(factor.min())
+    return [Row("largest", 1.457, largest, 0.05, ".2f"), Row("least", 0.629, least, 0.05, ".2f")]
+
+
+def polar_motion_series() -> list[Row]:
+    final = parse_final(Path(astropy_iers_data.IERS_B_FILE).read_text(encoding="ascii"))
+    rapid, predicted = parse_rapid(Path(astropy_iers_data.IERS_A_FILE).read_text(encoding="ascii"))
+    rapid = rapid[~predicted]
+    _, own, other = np.intersect1d(final[:, 0], rapid[:, 0], return_indices=True)
+    since = final[own, 0] > 51544.0  # 1 January 2000
+    apart = (final[own] - rapid[other])[since, 1:3]
+    return [vanishing("final less rapid series since 2000, rms / mas", 1e3 * float(np.sqrt(np.mean(apart**2))), 0.2)]
 
 
 def arguments() -> list[Row]:
@@ -90,6 +122,14 @@ GROUPS = (
           "one decimal of a millimetre is written; classical heights, before the ocean's own attraction", line_heights),
     Group("Arguments", "other library", "ERFA, the fundamental arguments of the IERS Conventions (2010), eq. 5.43",
           "rounding of angles of many turns", arguments),
+    Group("Periods of the lines", "published", "Doodson (1921), Proc. R. Soc. A 100, 305-329, and every table since",
+          "2e-5 of themselves: five digits are printed", periods),
+    Group("Node factor of Mf", "published",
+          "1.043 + 0.414 cos N: Schureman (1958), from memory",
+          "0.05: the line of twice the node (0.26 of 6.66 cm) is left out here", nodal_factor),
+    Group("Two series of polar motion", "other program",
+          "the final series C04 and the rapid series of Bulletin A, of different centres",
+          "both state errors below 0.1 mas", polar_motion_series),
     Group("Ocean pole tide", "published",
           "IERS Conventions (2010), eq. 6.24, the self-consistent model of Desai (2002)",
           "1 % of the largest coefficient: degree 90, our own coasts; the classical tide misses by 17 %",
