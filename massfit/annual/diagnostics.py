@@ -277,7 +277,9 @@ def _whiteness(residual: _Residual) -> Whiteness:
     count, fitted = len(white), residual.columns.shape[1]
     lags = min(LAGS, count // 4)
     away = white - white.mean()
-    correlation = np.array([away[lag:] @ away[:-lag] for lag in range(1, lags + 1)]) / (away @ away)
+    # a record that is fitted exactly leaves nothing, which is as white as can be
+    power = max(float(away @ away), np.finfo(float).tiny)
+    correlation = np.array([away[lag:] @ away[:-lag] for lag in range(1, lags + 1)]) / power
     statistic = float(count * (count + 2.0) * np.sum(correlation**2 / (count - np.arange(1, lags + 1))))
     # each number of the noise that was estimated takes one degree of freedom
     degrees = max(lags - 1 - len(residual.model.rates), 1)

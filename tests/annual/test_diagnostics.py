@@ -125,3 +125,10 @@ def test_inflation_is_that_of_generalised_least_squares(make_record):
     alone = sigma(design.fixed[:, [0, 1, 4]], np.zeros(3))
     assert judged.inflation == pytest.approx(sigma(design.fixed, design.precision) / alone, rel=1e-9)
     assert judged.inflation > 1.2
+
+
+def test_a_record_that_is_fitted_exactly_leaves_white_residuals(make_record):
+    silent = make_record(np.random.default_rng(6), count=300, white=0.0, semi=(0.0, 0.0), phasor=(0.0, 0.0), slope=0.0)
+    judged = judge([silent], WHITE)[1]
+    assert judged.whiteness.p_value == pytest.approx(1.0)
+    assert not judged.whiteness.autocorrelation.any()
