@@ -156,17 +156,17 @@ def fingerprint_sentence(dataset: xr.Dataset) -> str:
     -------
     str
     """
-    ratio, delay = dataset["amplitude_ratio"].values, dataset["delay"].values
+    ratio, delay = np.sort(dataset["amplitude_ratio"].values), np.sort(dataset["delay"].values)
+    one = len(ratio) == 1
+    seen = f"{dataset['site'].item()} sees" if one else f"The {len(ratio)} sites see"
+    times = list(dict.fromkeys(f"{value:.3f}" for value in ratio[[0, -1]]))
+    days = list(dict.fromkeys(_days(value) for value in delay[[0, -1]]))
+    peaks = f"from {days[0]} to {days[1]}" if len(days) > 1 else days[0]
     members = counted(dataset.sizes["member"], "load member")
-    if len(ratio) == 1:
-        site = dataset["site"].item()
-        seen = f"{site} sees {ratio[0]:.3f} times the amplitude of the ocean mean and {_peaks(delay[0])}"
-    else:
-        seen = (
-            f"The {len(ratio)} sites see {ratio.min():.3f} to {ratio.max():.3f} times the amplitude of the ocean mean; "
-            f"the first {_peaks(delay.min())}, the last {_peaks(delay.max())}"
-        )
-    return f"{seen}: the mean over {members}."
+    return (
+        f"{seen} {' to '.join(times)} times the amplitude of the ocean mean and peak{'s' * one} {peaks} it: "
+        f"the mean over {members}."
+    )
 
 
 def map_note(dataset: xr.Dataset) -> str:
@@ -191,8 +191,8 @@ def map_note(dataset: xr.Dataset) -> str:
     )
 
 
-def _peaks(delay: float) -> str:
-    return f"peaks {abs(delay):.1f} days {'after' if delay >= 0.0 else 'before'} it"
+def _days(delay: float) -> str:
+    return f"{abs(delay):.1f} days {'before' if delay < -0.05 else 'after'}"
 
 
 def _besides(name: str, dataset: xr.Dataset) -> str:

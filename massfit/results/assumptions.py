@@ -66,7 +66,10 @@ def fingerprint_assumptions(network: Network) -> tuple[str, ...]:
     -------
     tuple of str
     """
-    members = "; ".join(f"{load.name} ({load.reference})" if load.reference else load.name for load in network.loads)
+    named: dict[str, list[str]] = {}
+    for load in network.loads:
+        named.setdefault(load.reference, []).append(load.name)
+    members = "; ".join(", ".join(names) + (f" ({source})" if source else "") for source, names in named.items())
     given = network.atmosphere_load is not None or network.air_pressure is not None
     air = "its own self-attraction is given apart, as the response to air over land" if given else "none was given"
     return (

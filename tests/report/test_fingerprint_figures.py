@@ -12,6 +12,7 @@ from massfit.report.draw import png
 from massfit.report.fingerprint_degrees import degree_panels
 from massfit.report.fingerprint_figures import draw_fingerprint
 from massfit.report.fingerprint_maps import even_bands, footprint_panels, signed_bands, world_map
+from massfit.report.fingerprint_page import fingerprint_sentence
 from massfit.report.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM
 
 NORTH, EAST = np.meshgrid(MAP_LATITUDE_DEG, MAP_LONGITUDE_DEG, indexing="ij")
@@ -174,3 +175,18 @@ def test_hostile_names_are_drawn_as_they_stand() -> None:
     figure = drawn()
     assert "Line $x$" in " ".join(text.get_text() for text in figure.axes[0].texts)
     assert len(png(figure)) > 10_000
+
+
+@pytest.mark.parametrize(
+    ("ratio", "delay", "sentence"),
+    [
+        ([1.1], [-0.04], "Station 00 sees 1.100 times the amplitude of the ocean mean and peaks 0.0 days after it"),
+        ([0.625, 0.6252], [16.0, 16.01], "2 sites see 0.625 times the amplitude of the ocean mean and peak 16.0 days"),
+        ([1.2, 0.8], [3.2, -2.6], "see 0.800 to 1.200 times the amplitude of the ocean mean and peak from 2.6 days "
+                                  "before to 3.2 days after it: the mean over 3 load members."),
+    ],
+)  # fmt: skip
+def test_the_sentence_of_the_page(ratio: list[float], delay: list[float], sentence: str) -> None:
+    study = settled(len(ratio))
+    study = study.assign(amplitude_ratio=("site", ratio), delay=("site", delay))
+    assert sentence in fingerprint_sentence(study)
