@@ -121,7 +121,7 @@ def noise_families(priors: Priors) -> tuple[NoiseFamily, ...]:
     """Forms of noise that the settings compare."""
     scales = np.array(priors.noise_time_scales_days)
     red, white = priors.red_noise_hpa * PASCAL_PER_HPA, priors.white_noise_hpa * PASCAL_PER_HPA
-    return tuple(NoiseFamily(form, scales, red, white) for form in priors.noise_forms)
+    return tuple(NoiseFamily(form, scales, red, white) for form in dict.fromkeys(priors.noise_forms))
 
 
 def half_t(scores: Floats, scale: float) -> Floats:

@@ -115,7 +115,7 @@ def joint_mode(basis: DriftBasis, families: Sequence[NoiseFamily]) -> Mode:
         for family in families
     ]
     best = max(modes, key=lambda mode: mode.log_evidence)
-    if best.family != leader:
+    if best.family is not leader:
         grid = refine_grid(design.covariance(best.family.model(best.scores, ratio)), basis, grid.mode)
     kept = [mode for mode in modes if mode.log_evidence > best.log_evidence + np.log(NEGLIGIBLE_FORM)]
     return Mode(tuple(sorted(kept, key=lambda mode: -mode.log_evidence)), ratio, grid)
@@ -195,7 +195,7 @@ def _rough_sd(design: Design) -> float:
 
 def _start(family: NoiseFamily, leader: NoiseFamily, found: Floats) -> Floats:
     """Scores with the amplitudes of the mode of another form."""
-    if family == leader:
+    if family is leader:
         return found
     scores = np.zeros(family.size)
     scores[: family.size - 1 if family.form == "sum" else min(1, family.size - 1)] = found[0]

@@ -65,7 +65,9 @@ def test_white_noise_of_each_deployment_follows_its_ratio():
 
 
 def test_settings_name_the_forms():
-    found = noise_families(Priors(noise_forms=("sum", "white"), noise_time_scales_days=(5.0,), white_noise_hpa=0.1))
+    # named twice, a form counts once
+    priors = Priors(noise_forms=("sum", "white", "sum"), noise_time_scales_days=(5.0,), white_noise_hpa=0.1)
+    found = noise_families(priors)
     assert [each.form for each in found] == ["sum", "white"]
     assert [each.size for each in found] == [2, 1]
     assert found[0].white_scale == 10.0
