@@ -10,9 +10,23 @@ from massfit.posterior.regression import Condition, LinearModel
 
 Floats = NDArray[np.float64]
 
-_GRID = np.linspace(np.log(0.1), np.log(3e4), 26)
-"""Log stretch at which the density is taken; it is a straight line between two of these. The prior leaves 4e-8 below
-and 4e-9 above."""
+
+
+def stretch_grid(place_count: int) -> Floats:
+    """Log stretches at which the density is taken; it is a straight line between two of these.
+
+    The prior leaves 4e-8 below and 4e-9 above. The weights correct the lines, at a cost that grows with the number of
+    places and the fourth power of the step.
+
+    Parameters
+    ----------
+    place_count : int
+
+    Returns
+    -------
+    (n_grid,) array
+    """
+    return np.linspace(np.log(0.1), np.log(3e4), 1 + int(np.ceil(25.0 * max(1.0, place_count / 20.0) ** 0.25)))
 
 
 @dataclass(frozen=True)
@@ -114,12 +128,13 @@ def propose_latents(
             part[:, s] = (rng.random((len(part), 1)) > np.cumsum(probability, axis=1)[:, :-1]).sum(axis=1)
             total += np.log(np.take_along_axis(probability, part[:, s : s + 1], axis=1)[:, 0])
     if model.student:
+        grid = stretch_grid(model.place_count)
         density = np.take_along_axis(table, part[:, :, None, None], axis=2)[:, :, 0]
-        of_place = np.empty((len(part), model.place_count, len(_GRID)))
+        of_place = np.empty((len(part), model.place_count, len(grid)))
         of_place[:, model.sharing.place] = density
         for column, place in enumerate(model.columns.shared_place):
-            of_place[:, place] = _place_density(condition, prediction, column)
-        log_stretch, log_density = _draw_on_grid(of_place, rng)
+            of_place[:, place] = _place_density(condition, prediction, column, grid)
+        log_stretch, log_density = _draw_on_grid(of_place, grid, rng)
         stretch = np.exp(log_stretch)
         total += log_density.sum(axis=1)
     return Condition(condition.log_scales, stretch, part, condition.member), total
@@ -129,7 +144,7 @@ def _part_table(model: LinearModel, condition: Condition, prediction: Prediction
     """Density (n, n_site, n_part, n_grid) of every part and stretch, up to a factor a site."""
     base, contrast, _ = base_variance(model, condition)
     count = base.shape[1]
-    grid = np.exp(_GRID) if model.student else np.ones(1)
+    grid = np.exp(stretch_grid(model.place_count)) if model.student else np.ones(1)
     own = np.exp(2.0 * condition.log_scales[:, :1]) * model.own_scatter
     variance = (base + prediction.variance[:count])[:, :, None] + own[:, :, None] * grid
     square = prediction.residual**2
@@ -147,21 +162,21 @@ def _part_table(model: LinearModel, condition: Condition, prediction: Prediction
         for pair in np.flatnonzero(np.isin(site[pairs:], np.flatnonzero(model.rows.log_weight[:, 1] > -np.inf))):
             table[:, site[pairs + pair], part[pairs + pair]] += together[:, pair, None]
     if model.student:
-        table += log_stretch_prior(_GRID)
+        table += log_stretch_prior(np.log(grid))
     return np.asarray(np.exp(table - table.max(axis=(2, 3), keepdims=True)))
 
 
-def _place_density(condition: Condition, prediction: Prediction, column: int) -> Floats:
+def _place_density(condition: Condition, prediction: Prediction, column: int, grid: Floats) -> Floats:
     """Density (n, n_grid) of the stretch of a place with several sites."""
     effect, own = prediction.place_effect[column], prediction.place_variance[column]
-    variance = own + np.exp(2.0 * condition.log_scales[:, :1] + _GRID)[:, :, None]
-    log_density = -0.5 * (np.log(variance) + effect**2 / variance).sum(axis=2) + log_stretch_prior(_GRID)
+    variance = own + np.exp(2.0 * condition.log_scales[:, :1] + grid)[:, :, None]
+    log_density = -0.5 * (np.log(variance) + effect**2 / variance).sum(axis=2) + log_stretch_prior(grid)
     return np.asarray(np.exp(log_density - log_density.max(axis=1, keepdims=True)))
 
 
-def _draw_on_grid(density: Floats, rng: np.random.Generator) -> tuple[Floats, Floats]:
+def _draw_on_grid(density: Floats, grid: Floats, rng: np.random.Generator) -> tuple[Floats, Floats]:
     """Draw from densities (..., n_grid) that are straight lines between the nodes; their logs at the draws."""
-    step = _GRID[1] - _GRID[0]
+    step = grid[1] - grid[0]
     mass = 0.5 * (density[..., :-1] + density[..., 1:])
     cumulative = np.cumsum(mass, axis=-1)
     whole = cumulative[..., -1:]
@@ -170,4 +185,4 @@ def _draw_on_grid(density: Floats, rng: np.random.Generator) -> tuple[Floats, Fl
     share = rng.random(left.shape)
     place = share * (left + right) / (left + np.sqrt(left**2 + share * (right**2 - left**2)) + 1e-300)
     height = left + (right - left) * place
-    return _GRID[cell[..., 0]] + step * place, np.log(height / (step * whole[..., 0]) + 1e-300)
+    return grid[cell[..., 0]] + step * place, np.log(height / (step * whole[..., 0]) + 1e-300)
