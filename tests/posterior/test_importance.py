@@ -147,7 +147,7 @@ def test_the_nodes_hold_exact_conditionals(invent, regression):
 def test_weights_correct_a_poor_proposal(invent, regression):
     model = regression(invent(sites=12, placed=True), group_scatter=True)
     good = fit_proposal(model, PRIOR, rng=np.random.default_rng(1))
-    poor = Proposal(good.centre + 0.7, 1.8 * good.root, good.prediction)
+    poor = Proposal(good.centre + 0.4, 1.5 * good.root, good.prediction)
     fine, coarse = (
         route_of(model, start=start, draws=6_000, rng=np.random.default_rng(2)) for start in (good, poor)
     )
