@@ -198,9 +198,31 @@ def _recorded(reduction: SiteReduction) -> tuple[dict[str, Any], list[str]]:
         "reduced_sd_hpa": fit.reduced_sd / PASCAL_PER_HPA,
         "models": list(fit.models),
         "model_distance_km": _distances_km(reduction),
+        "level_changes": _level_changes(reduction),
         "corrections": correction_table(reduction.phasors),
     }
     return known, [*notes, *fit.notes]
+
+
+def _level_changes(reduction: SiteReduction) -> list[dict[str, Any]]:
+    """Every change of level within a deployment, with the size of the fit; null where the fit does not know it."""
+    sizes = {(fit.deployment, time): size for fit in reduction.fit.drifts for time, size in fit.steps}
+    rows = []
+    for daily in reduction.daily:
+        for change in daily.changes:
+            size = sizes.get((daily.deployment, change.end))
+            rows.append(
+                {
+                    "deployment": daily.deployment,
+                    "kind": change.kind,
+                    "start": str(change.start.astype("datetime64[s]")),
+                    "end": str(change.end.astype("datetime64[s]")),
+                    "found": change.found,
+                    "size_hpa": None if size is None else size.mean / PASCAL_PER_HPA,
+                    "size_sd_hpa": None if size is None else size.sd / PASCAL_PER_HPA,
+                }
+            )
+    return rows
 
 
 def _found_notes(daily: DailyRecord) -> list[str]:

@@ -76,3 +76,14 @@ def test_what_was_found_is_said_at_its_site(summary):
     assert "changes of level that nobody declared were found and are fitted (ramp 2015-04-24)" in found
     said = [action["what"] for action in summary["actions"]["MJ03F/1"]]
     assert {"changes of level found", "samples on ramps left out", "days without a mean"} <= set(said)
+
+
+def test_the_changes_of_level_stand_with_their_fitted_sizes(summary):
+    (declared,), (found,) = (site["level_changes"] for site in summary["sites"])
+    assert (declared["kind"], declared["found"]) == ("ramp", False)
+    assert (found["kind"], found["found"]) == ("ramp", True)
+    assert (found["start"], found["end"]) == ("2015-04-24T00:00:00", "2015-04-26T00:00:00")
+    # hPa: 0.95 and 2.3 to 2.4 m of water of 1035 kg m-3, within two standard deviations
+    for change, metres in ((declared, 0.95), (found, 2.35)):
+        expected = 1035.0 * STANDARD_GRAVITY * metres / 100.0
+        assert change["size_hpa"] == pytest.approx(expected, abs=0.05 * expected + 2.0 * change["size_sd_hpa"])
