@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 from massfit.display import Described, Description
 from massfit.earth.profile import EarthProfile
 from massfit.errors import Fault, InputError
+from massfit.fingerprint.ocean import land_fault
 from massfit.fingerprint.pattern import LoadPattern
 from massfit.records.record import Record
 from massfit.settings import PREM, Settings
@@ -288,8 +289,8 @@ def check_network(network: Network) -> None:
     Raises
     ------
     InputError
-        Names that stand twice, data of a site that is not there or has both records and a phasor, arrays that
-        do not match, a phasor made elsewhere that is not well formed, nothing said about the ocean-mean
+        Names that stand twice, a site on land, data of a site that is not there or has both records and a phasor,
+        arrays that do not match, a phasor made elsewhere that is not well formed, nothing said about the ocean-mean
         air pressure, an Earth model that is named and not given, or a pole tide that is both taken off and fed
         back.
 
@@ -320,6 +321,8 @@ def check_network(network: Network) -> None:
     faults += [fault for each in network.reduced for fault in reduced_faults(each, models)]
     faults += _atmosphere_faults(network, source)
     faults += _earth_faults(network, source)
+    places = [land_fault(source, site.id, site.latitude_deg, site.longitude_deg) for site in network.sites]
+    faults += [fault for fault in places if fault is not None]
     if network.settings.fingerprint.rotational_feedback and (
         network.settings.corrections.pole_tide == "observed" or network.reduced
     ):

@@ -80,3 +80,10 @@ def test_an_earth_that_is_named_must_be_given(invented: Network) -> None:
     assert problems(with_choices(invented, earth_model="mine.csv")) == [
         ("fingerprint.earth_model", "the value is 'mine.csv', and no Earth profile is given")
     ]
+
+
+def test_a_site_on_land_is_told_where_the_sea_is(invented: Network) -> None:
+    first, *others = invented.sites
+    inland = replace(first, latitude_deg=47.0, longitude_deg=8.0)
+    with pytest.raises(InputError, match=r"the site at 47, 8 is on land\. .* ocean is at 44\.375, 8\.875, 300 km"):
+        check_network(replace(invented, sites=(inland, *others)))

@@ -143,6 +143,46 @@ class OceanFunction(Described):
         return float(latitude[row[best]]), float(longitude[column[best]]), float(distance) / 1000.0
 
 
+_NO_OCEAN = 0.005  # ocean fraction of a quarter-degree cell below which a site is on land
+
+
+def land_fault(
+    source: str, name: str, latitude_deg: float, longitude_deg: float, *, search: bool = True
+) -> Fault | None:
+    """Fault of a site on land by the built-in ocean function, with the nearest ocean and its distance.
+
+    Parameters
+    ----------
+    source, name : str
+        Of the fault.
+    latitude_deg, longitude_deg : float
+        Degrees north and east, either convention.
+    search : bool
+        Whether to look for the nearest ocean, which takes its time.
+
+    Returns
+    -------
+    Fault or None
+
+    Examples
+    --------
+    >>> print(land_fault("network", "A", 47.0, 8.0))
+    network: A: the site at 47, 8 is on land. Must be in the ocean. The nearest ocean is at 44.375, 8.875,
+        300 km away; check sign and order.
+    """
+    ocean = _builtin()
+    if ocean.fraction_at(latitude_deg, longitude_deg) > _NO_OCEAN:
+        return None
+    action = "Check sign and order"
+    if search:
+        latitude, longitude, distance_km = ocean.nearest_ocean(latitude_deg, longitude_deg)
+        longitude = longitude % 360.0 if longitude_deg > 180.0 else longitude
+        place = f"{latitude:.3f}, {longitude:.3f}, {distance_km:.0f} km away"
+        action = f"The nearest ocean is at {place}; check sign and order"
+    problem = f"the site at {latitude_deg:g}, {longitude_deg:g} is on land"
+    return Fault(source, name, problem, "Must be in the ocean", action)
+
+
 @cache
 def _builtin() -> OceanFunction:
     fraction = read_ocean_fraction()

@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from massfit.constants import JULIAN_YEAR_DAYS
-from massfit.fingerprint.ocean import OceanFunction
+from massfit.fingerprint.ocean import land_fault
 from massfit.io.deployment import DeploymentFile
 from massfit.io.locate import KeyPath
 from massfit.io.reading import Reading, did_you_mean, nearest
@@ -18,7 +18,6 @@ from massfit.records.record import Record
 from massfit.settings import Corrections, Fingerprint, Frame
 from massfit.site import LEAST_NETWORK_DAYS, LEAST_SITE_DAYS, Site
 
-_NO_OCEAN = 0.005  # ocean fraction of a quarter-degree cell below which a site is on land
 _MOST_SEARCHES = 50  # faults after which no nearest ocean is looked up, which takes its time
 _SHORT_YEARS = 1.5  # below it the drift and the annual cycle of one record hardly part
 _DAY = np.timedelta64(1, "D")
@@ -192,17 +191,10 @@ def _check_fingerprint(
 
 
 def _check_place(reading: Reading, path: KeyPath, entry: SiteEntry) -> None:
-    ocean = OceanFunction.builtin()
-    if ocean.fraction_at(entry.latitude, entry.longitude) > _NO_OCEAN:
-        return
-    action = "Check sign and order"
-    if len(reading.faults) < _MOST_SEARCHES:
-        latitude, longitude, distance_km = ocean.nearest_ocean(entry.latitude, entry.longitude)
-        longitude = longitude % 360.0 if entry.longitude > 180.0 else longitude
-        place = f"{latitude:.3f}, {longitude:.3f}, {distance_km:.0f} km away"
-        action = f"The nearest ocean is at {place}; check sign and order"
-    problem = f"the site at {entry.latitude:g}, {entry.longitude:g} is on land"
-    reading.fault((*path, "latitude"), problem, "Must be in the ocean", action)
+    search = len(reading.faults) < _MOST_SEARCHES
+    fault = land_fault(reading.source, entry.id, entry.latitude, entry.longitude, search=search)
+    if fault is not None:
+        reading.fault((*path, "latitude"), fault.problem, fault.allowed, fault.action)
 
 
 def _check_exclusions(reading: Reading, path: KeyPath, entry: SiteEntry) -> None:
