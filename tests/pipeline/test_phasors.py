@@ -12,6 +12,7 @@ from click.testing import CliRunner
 
 from massfit.cli.main import main
 from massfit.contracts import SITE_PHASORS, require
+from massfit.pipeline.phasors import phasors_to_folder
 from massfit.results.estimate import Estimate
 from massfit.results.finished import FinishedRun
 
@@ -70,7 +71,9 @@ def folder(tmp_path_factory: pytest.TempPathFactory) -> Path:
         main, ["simulate", str(place), "--sites", "1", "--years", "1.5", "--models", "0", "--sampling", "daily"]
     )
     assert made.exit_code == 0, made.output
-    done = runner.invoke(main, ["phasors", str(place)], env={"MASSFIT_TEST": "1"})
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr("os.cpu_count", lambda: 1)  # other processes would only take time to start
+        done = runner.invoke(main, ["phasors", str(place)])
     assert done.exit_code == 0, done.output
     (place / "printed.txt").write_text(done.stdout)
     return place
@@ -140,7 +143,8 @@ subtracted = []
 """
 
 
-def test_sites_reduced_elsewhere_are_listed_without_a_figure(tmp_path: Path) -> None:
+def test_sites_reduced_elsewhere_are_listed_without_a_figure(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("os.cpu_count", lambda: 1)
     (tmp_path / "network.toml").write_text(REDUCED)
     done = CliRunner().invoke(main, ["phasors", str(tmp_path), "--quiet", "--json"])
     assert done.exit_code == 0, done.output
@@ -153,3 +157,28 @@ def test_sites_reduced_elsewhere_are_listed_without_a_figure(tmp_path: Path) -> 
     assert not (tmp_path / "phasors" / "reduced_records.nc").exists()
     assert not list((tmp_path / "phasors" / "figures").iterdir())
     assert "This site was reduced elsewhere" in (tmp_path / "phasors" / "phasors.html").read_text()
+
+
+def test_an_interrupted_run_goes_on_from_the_sites_that_are_finished(
+    folder: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def interrupted(*_: object) -> None:
+        raise KeyboardInterrupt
+
+    def forbidden(*_: object, **__: object) -> None:
+        raise AssertionError("the site is fitted again")
+
+    place = tmp_path / "again"
+    with monkeypatch.context() as patch:
+        patch.setattr("massfit.pipeline.phasors.site_sheets", interrupted)
+        with pytest.raises(KeyboardInterrupt):
+            phasors_to_folder(folder, place)
+    assert not place.exists()
+    monkeypatch.setattr("massfit.pipeline.sites.fit_site", forbidden)
+    phasors_to_folder(folder, place)
+    for name in ("phasors.json", "sites.csv", "figures"):
+        first, second = folder / "phasors" / name, place / name
+        if first.is_dir():
+            (picture,) = first.iterdir()
+            first, second = picture, second / picture.name
+        assert second.read_bytes() == first.read_bytes(), name
