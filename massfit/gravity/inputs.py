@@ -73,3 +73,28 @@ class GravityInputs:
     assimilating_models: tuple[str, ...] = ()
     inputs: Mapping[str, str] = field(default_factory=dict)
     warnings: tuple[str, ...] = ()
+
+
+def gravity_sentence(inputs: GravityInputs) -> str:
+    """Say what a comparison would use, in one sentence.
+
+    Parameters
+    ----------
+    inputs : GravityInputs
+
+    Returns
+    -------
+    str
+    """
+    chosen = inputs.settings
+    solutions = ", ".join(
+        f"{each.name} ({len(each.fields)} months, {min(spans)} to {max(spans)})"
+        for each in inputs.solutions
+        if (spans := [str(field.span.middle)[:7] for field in each.fields if field.span is not None])
+    )
+    tables = [text for text in (chosen.degree_one, chosen.low_degree) if text is not None]
+    beside = f", {', '.join(tables)}" if tables else ", no table of degree 1, C20 or C30"
+    return (
+        f"Satellite gravity is compared: {solutions}{beside}; degrees to {chosen.max_degree}, ocean at least "
+        f"{chosen.buffer_km:g} km from land."
+    )

@@ -10,6 +10,8 @@ from massfit.errors import Fault, InputError
 from massfit.gravity.field import GravityField, GravityModel, Periodic, Span
 
 _DAYS_A_YEAR = 365.25
+_PERIODS = (0.01, 100.0)  # years
+_MOST_DATES = 200
 
 
 class Term(NamedTuple):
@@ -48,7 +50,11 @@ def models_of(field: GravityField, terms: list[Term]) -> tuple[GravityModel, ...
         Dates that are none, or rows of a coefficient that has no ``gfct`` row.
     """
     epochs = _epochs(field, terms)
+    _check_periods(field, terms)
     dates = sorted({date for start, end in epochs.values() for date in (start, end) if date is not None})
+    if len(dates) > _MOST_DATES:
+        problem = f"the rows name {len(dates)} dates"
+        raise InputError(Fault(field.source, "gfct", problem, f"Must be at most {_MOST_DATES}", "Divide the model"))
     timed = any(end is not None for _, end in epochs.values())
     stretches = list(pairwise(dates)) if timed else [(dates[0], None)]
     return tuple(_model(field, terms, epochs, start, end) for start, end in stretches)
@@ -83,6 +89,24 @@ def _epochs(field: GravityField, terms: list[Term]) -> dict[int, _Stretch]:
     if faults:
         raise InputError(faults)
     return found
+
+
+def _check_periods(field: GravityField, terms: list[Term]) -> None:
+    low, high = _PERIODS
+    faults = [
+        Fault(
+            field.source,
+            term.key,
+            f"the period is {term.tail[-1]:g} years",
+            f"Must be {low:g} to {high:g}",
+            "",
+            term.line,
+        )
+        for term in terms
+        if term.key in ("acos", "asin") and not low <= term.tail[-1] <= high
+    ]
+    if faults:
+        raise InputError(faults[:20])
 
 
 def _date(value: float) -> np.datetime64 | None:

@@ -15,6 +15,8 @@ from massfit.corrections.series import daily_values_at
 from massfit.corrections.site import site_corrections
 from massfit.errors import Fault, InputError, collect
 from massfit.fingerprint.ocean import OceanFunction
+from massfit.gravity.inputs import gravity_sentence
+from massfit.io.gravity import read_gravity
 from massfit.io.network_file import read_what_can_be
 from massfit.network import Network, ReducedSite, Series
 from massfit.pipeline.air import network_air
@@ -74,8 +76,20 @@ def check_network(path: Path, *, outside: bool = False) -> Check:
         network, faults = None, error.faults
     if network is None:
         return Check({"source": str(path), "sites": [], "faults": _plain(faults)}, faults)
+    satellites, told = _satellites(path, outside)
+    faults = tuple(dict.fromkeys((*faults, *told)))
     whole = look_at(network)
+    whole.found["assumptions"].extend(satellites)
     return _in_part(whole, faults) if faults else whole
+
+
+def _satellites(path: Path, outside: bool) -> tuple[list[str], tuple[Fault, ...]]:
+    """Say what the comparison with satellite gravity would use."""
+    try:
+        gravity = read_gravity(path, outside=outside)
+    except InputError as error:
+        return [], error.faults
+    return [] if gravity is None else [gravity_sentence(gravity)], ()
 
 
 def _in_part(check: Check, faults: tuple[Fault, ...]) -> Check:

@@ -182,6 +182,11 @@ BAD = {
         HEAD + ROWS.replace("gfc  2 0 -4.8417D-04  0.0  1.0E-12 0.0", "gfct 2 0 -4.8417D-04 0.0 1.0E-12 0.0 20311399"),
         "a.gfc:15: gfct: the dates are 20311399. Must be yyyymmdd or yyyymmdd.hhmm, in order.",
     ),
+    "no period": (
+        HEAD + ROWS.replace("gfc  2 0 -4.8417D-04  0.0  1.0E-12 0.0", "gfct 2 0 -4.8417D-04 0.0 1.0E-12 0.0 20310101")
+        + "acos 2 0 1e-11 0.0 0.0 0.0 0.0\n",
+        "a.gfc:18: acos: the period is 0 years. Must be 0.01 to 100.",
+    ),
     "empty": ("", "a.gfc: header: there is no line that begins with end_of_head. An ICGEM file ends its header so. "
               "Check that the file is whole and of this format."),
 }  # fmt: skip
@@ -372,3 +377,62 @@ def test_the_faults_of_all_files_are_told(tmp_path: Path) -> None:
     with pytest.raises(InputError) as error:
         read_gravity_files(tmp_path, source="fields")
     assert [fault.source for fault in error.value.faults] == ["fields/a_203101.gfc"] * 2 + ["fields/b_203102.gfc"]
+
+
+# damaged at random
+
+SOUND = (
+    (HEAD + ROWS).encode(),
+    (HEAD.replace("formal", "no") + TIMED).encode(),
+    (HEAD.replace("formal", "no").replace("norm ", "format icgem2.0\nnorm ")
+     + "gfct 2 0 1e-10 0.0 20100101.0000 20120101.0000\nacos 2 0 2e-11 0.0 20100101.0000 20150101.0000 1.0\n"
+     + "gfct 2 0 3e-10 0.0 20120101.0000 20150101.0000\ngfc 2 1 0.0 0.0\ngfc 2 2 0.0 0.0\n").encode(),
+)  # fmt: skip
+
+
+def damaged(data: bytes, rng: np.random.Generator) -> bytes:
+    """Cut, swap, repeat, overwrite or insert: a few times."""
+    out = bytearray(data)
+    for _ in range(rng.integers(1, 4)):
+        at = int(rng.integers(0, max(1, len(out))))
+        length = int(rng.integers(1, 30))
+        match rng.integers(0, 6):
+            case 0:
+                del out[at : at + length]
+            case 1:
+                out[at:at] = rng.bytes(length)
+            case 2:
+                out[at : at + 1] = bytes([rng.integers(0, 256)])
+            case 3:
+                out[at:at] = out[at : at + length]
+            case 4:
+                out = out[:at]
+            case _:
+                word = [b"nan", b"1e400", b"-1", b"gfct", b"99999999999", b"2.0", b"\n", b"end_of_head\n", b"1D-300"]
+                out[at:at] = word[rng.integers(0, len(word))]
+    return bytes(out)
+
+
+def outcomes(count: int, seed: int) -> tuple[int, int]:
+    """How many damaged files are read, and how many refused; anything else is raised."""
+    read_in, refused = 0, 0
+    for number in range(count):
+        rng = np.random.default_rng([seed, number])
+        data = damaged(SOUND[number % len(SOUND)], rng)
+        try:
+            parse_icgem(data, name=NAME, source="a.gfc")
+            read_in += 1
+        except InputError:
+            refused += 1
+    return read_in, refused
+
+
+def test_ten_thousand_damaged_files_meet_only_our_own_error() -> None:
+    read_in, refused = outcomes(10_000, seed=1)
+    assert read_in > 500  # comments and blanks may be damaged
+    assert refused > 5_000
+
+
+@pytest.mark.slow
+def test_a_hundred_thousand_damaged_files_meet_only_our_own_error() -> None:
+    outcomes(100_000, seed=2)

@@ -99,3 +99,16 @@ def test_faults_of_gravity_and_of_records_are_told_together(network: Path, tmp_p
     assert 'no file "gravity/nothing.txt"' in found.output
     assert 'no file "recs/' in found.output
     assert not (tmp_path / "results").exists()
+
+
+def test_check_shows_what_would_be_compared(network: Path, tmp_path: Path) -> None:
+    found = CliRunner().invoke(main, ["check", str(network)])
+    assert found.exit_code == 0, found.output
+    assert "Satellite gravity is compared: halvorne (25 months, 2014-01 to" in " ".join(found.output.split())
+    text = (network / "network.toml").read_text().replace("gravity/degree_one.txt", "gravity/nothing.txt")
+    (tmp_path / "network.toml").write_text(text)
+    for name in ("records", "fields", "gravity"):
+        (tmp_path / name).symlink_to(network / name)
+    found = CliRunner().invoke(main, ["check", str(tmp_path), "--outside"])
+    assert found.exit_code == 2
+    assert 'no file "gravity/nothing.txt"' in found.output
