@@ -19,8 +19,12 @@ from massfit.records.record import Action
 NO_FLAGS = "none"
 """What `flag_variable` says where flags are not to be used."""
 QARTOD = {1: "pass", 2: "not evaluated", 3: "suspect", 4: "fail", 9: "missing"}
-_BAD = {"bad", "fail", "failed", "missing", "suspect", "questionable", "invalid", "doubtful", "erroneous", "rejected"}
-_GOOD = {"good", "pass", "passed", "ok", "valid", "evaluated", "unevaluated", "unknown", "unchecked", "qc", "nominal"}
+_BAD = {
+    "bad", "fail", "failed", "missing", "suspect", "questionable", "invalid", "doubtful", "erroneous", "rejected",
+    "wrong", "incorrect", "spike", "outlier", "unusable", "unreliable", "saturated", "absent",
+}  # fmt: skip
+_GOOD = {"good", "pass", "passed", "ok", "valid", "nominal", "correct", "acceptable", "accepted", "reliable", "usable"}
+_UNJUDGED = {"evaluated", "unevaluated", "unknown", "unchecked", "checked", "tested", "assessed", "qc"}
 _STATE = 'State `keep_flags`, or flag_variable = "none" to use none'
 
 
@@ -94,7 +98,9 @@ def _kept(flags: Flags, numbers: list[int], entry: DeploymentFile) -> tuple[int,
 
 def _is_good(meaning: str) -> bool | None:
     words = set(re.split(r"[^a-z]+", meaning.casefold()))
-    if words & _BAD:
+    if words & _UNJUDGED and words & {"not", "no", "unevaluated", "unknown", "unchecked"}:
+        return True
+    if words & _BAD or (words & _GOOD and "not" in words):
         return False
     return True if words & _GOOD else None
 

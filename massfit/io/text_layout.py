@@ -9,7 +9,7 @@ from massfit.errors import Fault, InputError
 from massfit.io.deployment import DeploymentFile
 from massfit.io.flags import NO_FLAGS
 from massfit.io.text_time import DATE_PARTS, needed_parts
-from massfit.io.zones import require_utc, zone_of_text
+from massfit.io.zones import require_utc, zones_of_header
 
 LONGEST_LINE = 100_000
 """Characters; a file without ends of lines must not fill the memory."""
@@ -72,7 +72,7 @@ def text_layout(file: TextIO, entry: DeploymentFile) -> TextLayout:
     layout, first_row = _columns(file, entry)
     file.seek(0)
     above = zip(range(1, max(first_row, layout.header_line + 1)), file, strict=False)
-    require_utc([(zone, number) for number, line in above if (zone := zone_of_text(line))], entry)
+    require_utc(zones_of_header(above), entry)
     return layout
 
 

@@ -1,6 +1,7 @@
 """Columns of a block of rows: at once where every row has one plain form, else by a general parser."""
 
 from csv import QUOTE_NONE
+from dataclasses import replace
 from functools import cached_property
 from io import BytesIO
 
@@ -14,6 +15,8 @@ from massfit.io.text_blocks import Block
 from massfit.io.text_layout import KIND, TextLayout
 from massfit.io.text_stamps import Stamps, fixed_decimals, fixed_iso, fixed_parts, stamps_of
 from massfit.io.text_time import joined_date, line_fault
+
+_OF_FLAGS = 'Correct it, call a column of letters `kind` and state `keep_kinds`, or flag_variable = "none"'
 
 
 class Rows:
@@ -42,11 +45,14 @@ class Rows:
 
     def whole_numbers(self, name: str) -> NDArray[np.float64]:
         """Whole numbers of a column, (n,) float64, or empty ones."""
-        values = self.numbers(name)
+        allowed, action = "Must be a whole number, or empty", _OF_FLAGS
+        try:
+            values = self.numbers(name)
+        except InputError as error:
+            raise InputError([replace(fault, allowed=allowed, action=action) for fault in error.faults]) from error
         good = np.isnan(values) | (values == np.floor(values))
         if not good.all():
-            allowed = "Must be a whole number, or empty"
-            raise InputError(line_fault(self.entry.file, name, values, good, self.lines, allowed))
+            raise InputError(line_fault(self.entry.file, name, values, good, self.lines, allowed, action))
         return values
 
     def stamps(self) -> Stamps:

@@ -13,6 +13,7 @@ _HOURS = {
     "nzdt": 13,
 }  # fmt: skip
 """Abbreviations that mean one zone (common practice; those that mean several are not here)."""
+_UTC_FIRST = re.compile(r"(utc|gmt|zulu|universal|greenwich|coordinateduniversal)")
 _OFFSET = re.compile(r"(?:utc|gmt)?\s*([+-])\s*(\d{1,2})(?::?(\d{2}))?", re.IGNORECASE)
 _ZONE = rf"((?:utc|gmt)\s*[+-]\s*\d{{1,2}}(?::?\d{{2}})?|[+-]\d{{1,2}}:?\d{{2}}|{'|'.join(sorted(_HOURS))}|utc|gmt)"
 _SAID = re.compile(
@@ -56,7 +57,7 @@ def zone_hours(zone: str) -> float | None:
     (0.0, -10.0, 5.5, None)
     """
     name = re.sub(r"\s+", "", zone).casefold()
-    if name in _UTC:
+    if name in _UTC or (_UTC_FIRST.match(name) and not any(letter.isdigit() for letter in name)):
         return 0.0
     if name in _HOURS:
         return float(_HOURS[name])
@@ -64,6 +65,22 @@ def zone_hours(zone: str) -> float | None:
     if match is None:
         return None
     return float(f"{match[1]}1") * (int(match[2]) + int(match[3] or 0) / 60.0)
+
+
+def zones_of_header(lines: Iterable[tuple[int, str]]) -> list[tuple[str, int | None]]:
+    """Zones that the lines above the data give to the times, each with its line.
+
+    "Local time" alone may be that of the deployment, where the header speaks of UTC too.
+
+    Parameters
+    ----------
+    lines : iterable of (int, str)
+        Line numbers and lines.
+    """
+    lines = list(lines)
+    utc = any(re.search(r"\b(utc|gmt)\b", line, re.IGNORECASE) for _, line in lines)
+    found = [(zone_of_text(line), number) for number, line in lines]
+    return [(zone, number) for zone, number in found if zone and not (utc and zone.casefold().startswith("local"))]
 
 
 def require_utc(zones: Iterable[tuple[str, int | None]], entry: DeploymentFile) -> None:

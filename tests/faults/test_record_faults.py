@@ -133,9 +133,11 @@ TEXT: dict[str, tuple[str, dict[str, Any], list[str]]] = {
          "a number of QARTOD: 1 pass, 2 not evaluated, 3 suspect, 4 fail, 9 missing. State `keep_flags`, or "
          'flag_variable = "none" to use none.']),
     "a flag that is a word": ("time,pressure,flag\n2014-01-01T12:00:00Z,3.0,good\n", ENTRY,
-        ["a.txt:2: flag: the value is 'good'. Must be a number, or empty. Correct it."]),
+        ["a.txt:2: flag: the value is 'good'. Must be a whole number, or empty. Correct it, call a column "
+         'of letters `kind` and state `keep_kinds`, or flag_variable = "none".']),
     "a flag between two": ("time,pressure,flag\n2014-01-01T12:00:00Z,3.0,1.5\n", ENTRY,
-        ["a.txt:2: flag: the value is 1.5. Must be a whole number, or empty. Correct it."]),
+        ["a.txt:2: flag: the value is 1.5. Must be a whole number, or empty. Correct it, call a column "
+         'of letters `kind` and state `keep_kinds`, or flag_variable = "none".']),
     "only flags that are left out": ("time,pressure,flag\n2014-01-01T12:00:00Z,3.0,4\n", ENTRY,
         ["a.txt: flag: all 1 samples have flags that are left out. Must be a number of QARTOD: 1 pass, 2 "
          "not evaluated, 3 suspect, 4 fail, 9 missing. State `keep_flags`, or flag_variable = \"none\" to "

@@ -1,3 +1,5 @@
+import tomllib
+from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
@@ -7,7 +9,10 @@ import xarray as xr
 
 from massfit.errors import InputError
 from massfit.io.deployment import DeploymentFile
+from massfit.io.flags import _is_good
 from massfit.io.record_file import read_record
+from massfit.io.starter_file import begin_network
+from massfit.pipeline.check import check_network
 from massfit.records.record import Record
 
 HOURS = 40
@@ -94,6 +99,19 @@ def test_the_words_of_a_file_are_believed_before_its_numbers(tmp_path: Path) -> 
     assert read(tmp_path, dataset({"p_qc": (values, scheme)}), keep_flags=(0, 2, 8)).time.size == HOURS - 10
 
 
+@pytest.mark.parametrize(
+    ("meaning", "good"),
+    [
+        ("good_data", True), ("NOT_EVALUATED", True), ("no_qc_performed", True), ("probably_good", True),
+        ("unknown", True), ("not evaluated/not available/unknown", True), ("passed_all_tests", True), ("bad_data", False), ("Fail", False),
+        ("not_good", False), ("probably_bad_data", False), ("suspect_or_high_interest", False), ("failed_qc", False),
+        ("interpolated", None), ("value_changed", None), ("estimated", None),
+    ],
+)  # fmt: skip
+def test_what_the_words_of_a_file_say(meaning: str, good: bool | None) -> None:
+    assert _is_good(meaning) is good
+
+
 def test_a_number_that_is_no_flag_of_qartod_is_asked_about(tmp_path: Path) -> None:
     with pytest.raises(InputError) as caught:
         read_text(tmp_path, "time,pressure,flag\n", ["0"] * HOURS)
@@ -158,3 +176,35 @@ def test_bits_are_not_taken_for_numbers(tmp_path: Path) -> None:
     with pytest.raises(InputError, match="its flags are bits"):
         read(tmp_path, dataset({"p_qc": (np.zeros(HOURS, np.int8), bits)}))
     assert read(tmp_path, dataset({"p_qc": (np.zeros(HOURS, np.int8), bits)}), keep_flags=(0,)).time.size == HOURS
+
+
+def test_check_lists_the_flags_that_were_left_out(network_folder: Path, change: Callable[[str, str], None]) -> None:
+    path = network_folder / "records/a.csv"
+    rows = path.read_text().splitlines()
+    path.write_text("".join(f"{row},{4 if k % 40 == 0 else 1}\n" for k, row in enumerate(rows)))
+    change('columns = ["date", "pressure"]', 'columns = ["date", "pressure", "flag"]')
+    (site, _) = check_network(network_folder).found["sites"]
+    (note,) = site["deployments"][0]["notes"]
+    assert note == f"samples with flag 4 (fail) left out: {len(rows[::40])}, flag; kept: 1, 2"
+
+
+def test_a_network_begun_from_a_ragged_file_has_its_stations_and_says_their_flags(tmp_path: Path) -> None:
+    ragged = xr.Dataset(
+        {
+            "p": ("obs", np.tile(np.arange(HOURS) / 8.0, 2), dataset({}).p.attrs),
+            "p_qc": ("obs", np.append(FLAGS, FLAGS), QARTOD),
+            "time": ("obs", np.tile(TIME, 2), {"standard_name": "time"}),
+            "k": ("obs", np.repeat([0, 1], HOURS), {"instance_dimension": "station"}),
+            "id": ("station", np.array([b"a", b"b"]), {"cf_role": "timeseries_id"}),
+        }
+    )
+    for variable in ragged.variables.values():
+        variable.encoding["_FillValue"] = None
+    ragged.to_netcdf(tmp_path / "a.nc", engine="h5netcdf")
+    text = begin_network(tmp_path).text
+    assert [site["id"] for site in tomllib.loads(text)["site"]] == ["a", "b"]
+    assert text.count("# samples with flag 4 (FAIL) left out: 3 (p_qc; kept: 1, 2)") == 2
+    ragged["p_qc"].attrs["flag_meanings"] = "green blue red black none"
+    ragged.to_netcdf(tmp_path / "a.nc", engine="h5netcdf")
+    text = begin_network(tmp_path).text
+    assert text.count('keep_flags = ""  # fill in: a list of the flags of good samples: p_qc: the flag 1 (green)') == 2
