@@ -103,7 +103,8 @@ def test_the_words_of_a_file_are_believed_before_its_numbers(tmp_path: Path) -> 
     ("meaning", "good"),
     [
         ("good_data", True), ("NOT_EVALUATED", True), ("no_qc_performed", True), ("probably_good", True),
-        ("unknown", True), ("not evaluated/not available/unknown", True), ("passed_all_tests", True), ("bad_data", False), ("Fail", False),
+        ("unknown", True),
+        ("not evaluated/not available/unknown", True), ("passed_all_tests", True), ("bad_data", False), ("Fail", False),
         ("not_good", False), ("probably_bad_data", False), ("suspect_or_high_interest", False), ("failed_qc", False),
         ("interpolated", None), ("value_changed", None), ("estimated", None),
     ],
