@@ -20,6 +20,7 @@ from massfit.report.page_tables import (
     quantities_table,
     shares_table,
     site_table,
+    years_table,
 )
 from massfit.report.page_template import TEMPLATE
 from massfit.report.satellite_tables import satellite_tables
@@ -89,6 +90,7 @@ def _tables(run: FinishedRun) -> dict[str, Table | None]:
     return {
         "quantities": quantities_table(summary),
         "shares": shares_table(summary),
+        "years": years_table(summary),
         "alternatives": alternatives_table(summary),
         "predictive": predictive_table(summary),
         "calibration": calibration_table(summary),

@@ -118,6 +118,23 @@ def _alternative(row: Mapping[str, Any], year: int) -> list[str]:
     ]
 
 
+def years_table(summary: Mapping[str, Any]) -> Table | None:
+    """Tabulate the cycle of every year."""
+    rows = [
+        [
+            str(year["year"]),
+            f"{100 * year['period_share']:.0f} %",
+            f"{year['amplitude_hpa']['median']:.3f}",
+            spoken_range(year["amplitude_hpa"]["region95"], ".3f"),
+            spoken_date(year["peak_day"]["median"], summary["reference_year"]),
+            f"{100 * year['seen']:.0f} %",
+        ]
+        for year in summary.get("years", [])  # results of before it was told have none
+    ]
+    head = ("year", "of the period", "amplitude / hPa", "95 % region", "peak", "known from the records")
+    return Table("Cycle of each year", head, rows) if rows else None
+
+
 def predictive_table(summary: Mapping[str, Any]) -> Table | None:
     """Tabulate the scatter observed beside what the fitted model expects."""
     rows = [

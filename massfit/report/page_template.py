@@ -53,6 +53,13 @@ are for research.</p>
 <p>{{ trust }}</p>
 <h3>Where the uncertainty comes from</h3>
 {{ table('shares') }}
+{% if tables.years %}
+<h3>Year by year</h3>
+{{ table('years') }}
+<p class="small">The answer is the mean of these cycles over the period. How much the cycle changes from year to year is
+assumed (0.05 hPa per component, or as set); the last column is how much of a year's own difference from the mean the
+records tell. Where it is near 0 % the year only follows the mean.</p>
+{% endif %}
 {% if tables.alternatives %}
 <h3>What if</h3>
 {{ table('alternatives') }}
