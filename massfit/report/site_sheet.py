@@ -279,7 +279,7 @@ def _draw_walk(axes: Axes, content: SiteSheet) -> None:
 
 def _walk_colour(words: str) -> str:
     long = next((name for name in SERIES_COLOURS if name.startswith(words)), words)
-    colour = SERIES_COLOURS.get(long, "black")
+    colour = SERIES_COLOURS.get(long, "#D55E00")
     return "#8C8C8C" if colour == "#C8C8C8" else colour
 
 
