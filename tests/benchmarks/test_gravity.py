@@ -1,7 +1,7 @@
 """200 monthly fields of degree 96: from the text to the annual phasor, against merely reading the text.
 
-Times are of the processor, within one run. The bare reading turns every number of the file into a float, row by row. Wanted:
-1.5 times at most.
+Times are of the processor, within one run. The bare reading turns every number of the file into a float, row by row.
+Wanted: 1.5 times at most.
 """
 
 import time
