@@ -1,6 +1,7 @@
 """Compare a finished run with satellite gravity."""
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from datetime import date, timedelta
 from typing import Any
 
@@ -86,10 +87,11 @@ def with_comparison(run: FinishedRun, network: Network, gravity: GravityInputs) 
     found = compare_gravity(run, network, gravity)
     area = float(run.summary["ocean_area_m2"])
     summary = comparison_summary(found, reference_year=run.summary["reference_year"], ocean_area_m2=area)
-    return FinishedRun(
-        {**run.summary, "comparison": summary},
-        {**run.provenance, "inputs": {**run.provenance["inputs"], **gravity.inputs}},
-        {**run.datasets, "comparison.nc": comparison_dataset(found, run.summary)},
+    return replace(
+        run,
+        summary={**run.summary, "comparison": summary},
+        provenance={**run.provenance, "inputs": {**run.provenance["inputs"], **gravity.inputs}},
+        datasets={**run.datasets, "comparison.nc": comparison_dataset(found, run.summary)},
     )
 
 

@@ -2,6 +2,7 @@
 
 import json
 from pathlib import Path
+from types import SimpleNamespace
 
 import numpy as np
 import pytest
@@ -10,7 +11,9 @@ from click.testing import CliRunner
 
 from massfit.cli.main import main
 from massfit.io.read_results import read_results
+from massfit.pipeline import compare
 from massfit.pipeline.invent import simulate_to_folder
+from massfit.results.finished import FinishedRun
 
 
 @pytest.fixture(scope="module")
@@ -112,3 +115,14 @@ def test_check_shows_what_would_be_compared(network: Path, tmp_path: Path) -> No
     found = CliRunner().invoke(main, ["check", str(tmp_path), "--outside"])
     assert found.exit_code == 2
     assert 'no file "gravity/nothing.txt"' in found.output
+
+
+def test_a_comparison_keeps_the_tables_of_the_run(monkeypatch: pytest.MonkeyPatch) -> None:
+    for name in ("compare_gravity", "comparison_summary", "comparison_dataset"):
+        monkeypatch.setattr(compare, name, lambda *_, **__: {})
+    summary = {"ocean_area_m2": 3.6e14, "reference_year": 2016}
+    tables = {"tides.csv": [{"line": "M2"}]}
+    run = FinishedRun(summary, {"inputs": {"network.toml": "1"}}, {}, tables)
+    found = compare.with_comparison(run, None, SimpleNamespace(inputs={"gravity": "2"}))
+    assert found.tables == tables
+    assert set(found.provenance["inputs"]) == {"network.toml", "gravity"}
