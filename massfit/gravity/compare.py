@@ -10,6 +10,7 @@ from scipy.stats import chi2
 from massfit.constants import EARTH_DENSITY, STANDARD_GRAVITY
 from massfit.gravity.annual import ALIAS_DAYS
 from massfit.gravity.at_sites import SitePressure, geocentre_of, satellite_at_sites
+from massfit.gravity.bridge import BridgePart, bridged, largest_gap
 from massfit.gravity.choices import Choice, choice_table
 from massfit.gravity.comparison import Agreement, agreement
 from massfit.gravity.definitions import Definition, redefined
@@ -42,6 +43,9 @@ class NetworkAnswer:
         F of each load member.
     parts : mapping of str to (str, complex)
         Of :func:`massfit.gravity.definitions.redefined`.
+    year_draws : (n, n_year, 2) array, optional
+        Draws of the phasor of each year, Pa.
+    years : tuple of int
     """
 
     phasor: complex
@@ -51,6 +55,8 @@ class NetworkAnswer:
     site_covariances: NDArray[np.float64]
     admittance: NDArray[np.complex128]
     parts: Mapping[str, tuple[str, complex]]
+    year_draws: NDArray[np.float64] | None = None
+    years: tuple[int, ...] = ()
 
 
 @dataclass(frozen=True)
@@ -95,6 +101,9 @@ class GravityComparison:
     geocentre : mapping of str to complex
         X, Y, Z of the centre of figure in the centre of mass that the water of the answer implies, m.
     definitions : tuple of Definition
+    bridge : tuple of BridgePart
+        The network's own cycle before, in and after the longest gap of the first solution; empty where there is none or
+        the years are not told apart.
     warnings : tuple of str
     """
 
@@ -107,6 +116,7 @@ class GravityComparison:
     sites: tuple[SiteComparison, ...]
     geocentre: Mapping[str, complex]
     definitions: tuple[Definition, ...]
+    bridge: tuple[BridgePart, ...]
     warnings: tuple[str, ...]
 
 
@@ -141,6 +151,7 @@ def compare_with_gravity(inputs: GravityInputs, answer: NetworkAnswer, context: 
         _sites(inputs, solutions[0], answer, context),
         implied_geocentre(answer.phasor, context),
         redefined(answer.phasor, answer.parts),
+        _bridge(solutions[0], answer, context),
         (*inputs.warnings, *_warnings(inputs, solutions, context)),
     )
 
@@ -188,6 +199,13 @@ def implied_geocentre(phasor: complex, context: Context) -> dict[str, complex]:
     layer = phasor / STANDARD_GRAVITY * per_water
     motion = geocentre_of(layer, float(context.love.k[1]), EARTH_DENSITY)
     return {axis: complex(value) for axis, value in zip("XYZ", motion, strict=True)}
+
+
+def _bridge(solution: SatelliteMean, answer: NetworkAnswer, context: Context) -> tuple[BridgePart, ...]:
+    gap = largest_gap(solution.monthly.spans)
+    if gap is None or answer.year_draws is None or context.window is None:
+        return ()
+    return bridged(answer.year_draws, answer.years, context.window, gap)
 
 
 def _agree(first: Determination, second: Determination) -> Agreement:

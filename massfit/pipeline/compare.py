@@ -23,6 +23,7 @@ from massfit.phasor import as_complex
 from massfit.pipeline.fingerprints import network_operator, network_vapour
 from massfit.results.comparison import comparison_dataset, comparison_summary
 from massfit.results.finished import FinishedRun
+from massfit.results.posterior_groups import POSTERIOR
 
 _PARTS = {
     "ocean_mean_atmosphere": ("ocean-mean air pressure", "water of the ocean and the air above it"),
@@ -147,11 +148,20 @@ def network_answer(run: FinishedRun, network: Network, vapour: complex, ocean_ar
         PASCAL_PER_HPA**2 * np.array([rows[site.id]["phasor_covariance_hpa2"] for site in sites]),
         _admittance(fingerprints),
         _parts(summary["sites"], vapour, ocean_area_m2),
+        *_yearly(run.datasets[POSTERIOR]),
     )
 
 
 def _admittance(fingerprints: xr.Dataset) -> NDArray[np.complex128]:
     return as_complex(fingerprints["admittance"].transpose("member", "site", "component").values)
+
+
+def _yearly(posterior: xr.Dataset) -> tuple[NDArray[np.float64] | None, tuple[int, ...]]:
+    """Draws of the phasor of each year, and the years; nothing where the model tells none apart."""
+    if "year_phasor" not in posterior:
+        return None, ()
+    draws = posterior["year_phasor"].transpose("chain", "draw", "year", "component").values
+    return draws.reshape(-1, *draws.shape[2:]), tuple(int(year) for year in posterior["year"].values)
 
 
 def _parts(sites: Sequence[Mapping[str, Any]], vapour: complex, ocean_area_m2: float) -> dict[str, tuple[str, complex]]:

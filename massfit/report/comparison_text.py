@@ -58,6 +58,11 @@ def comparison_text(comparison: Mapping[str, Any]) -> str:
         for each in comparison["others"]
     ]
     lines = [verdict(comparison), "", "Water of the whole ocean", *both, *others]
+    if comparison["bridge"]:
+        lines += ["", "The network across the satellites' gap"]
+        lines += [
+            f"  {each['label']:<14} {each['start']} to {each['end']}: {stated(each)}" for each in comparison["bridge"]
+        ]
     for solution in comparison["solutions"]:
         lines += ["", f"Solution {solution['name']}", *(f"  {action}" for action in solution["actions"])]
     width = max(len(row["name"]) for row in comparison["choices"])

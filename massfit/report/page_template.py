@@ -152,6 +152,11 @@ over the ocean models, less the response to air over land.</p>
 ocean's circulation too; this water alone need not agree with it, least in Y.</p>
 <h3>In other definitions</h3>
 {{ table('definitions') }}
+{% if tables.bridge %}
+<h3>Across the satellites' gap</h3>
+{{ table('bridge') }}
+<p class="small">The network's own cycle, each calendar year by its days in the part.</p>
+{% endif %}
 <h3>What was done</h3>
 {{ table('satellite_actions') }}
 {% endif %}

@@ -20,7 +20,7 @@ def satellite_tables(summary: Mapping[str, Any]) -> dict[str, Table | None]:
     dict of str to Table or None
         None for each where there is no comparison.
     """
-    names = ("determinations", "choices", "satellite_sites", "geocentre", "definitions", "satellite_actions")
+    names = ("determinations", "choices", "satellite_sites", "geocentre", "definitions", "bridge", "satellite_actions")
     comparison = summary.get("comparison")
     if comparison is None:
         return dict.fromkeys(names)
@@ -30,6 +30,7 @@ def satellite_tables(summary: Mapping[str, Any]) -> dict[str, Table | None]:
         _sites(comparison) if comparison["sites"] else None,
         _geocentre(comparison),
         _definitions(comparison),
+        _bridge(comparison) if comparison["bridge"] else None,
         _actions(comparison),
     )
     return dict(zip(names, made, strict=True))
@@ -98,6 +99,11 @@ def _definitions(comparison: Mapping[str, Any]) -> Table:
         for each in comparison["definitions"]
     ]  # fmt: skip
     return Table("The network's cycle in other definitions", head, rows, wordy=True)
+
+
+def _bridge(comparison: Mapping[str, Any]) -> Table:
+    rows = [[each["label"], f"{each['start']} to {each['end']}", stated(each)] for each in comparison["bridge"]]
+    return Table("The network across the satellites' gap", ("", "days", "amplitude and peak"), rows)
 
 
 def _actions(comparison: Mapping[str, Any]) -> Table:

@@ -80,6 +80,14 @@ def comparison_summary(found: GravityComparison, *, reference_year: int, ocean_a
             {"name": each.name, "quantity": each.quantity, **in_units(each.phasor, ocean_area_m2)}
             for each in found.definitions
         ],
+        "bridge": [
+            {
+                "start": str(each.span.start)[:10],
+                "end": str(each.span.end - np.timedelta64(1, "D"))[:10],
+                **_determination(Determination(each.name, "network", each.phasor, each.covariance), reference_year),
+            }
+            for each in found.bridge
+        ],
         "warnings": list(found.warnings),
     }
 
