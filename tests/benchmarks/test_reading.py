@@ -110,6 +110,7 @@ def two_months(tmp_path_factory: pytest.TempPathFactory) -> Path:
     return folder
 
 
+@pytest.mark.skipif(not Path("/proc/self/clear_refs").exists(), reason="the system does not tell the peak of a process")
 @pytest.mark.parametrize("name", ENTRIES)
 def test_memory_of_two_months(two_months: Path, name: str) -> None:
     # blocks in proportion to the record; the record itself is the least that is measured
