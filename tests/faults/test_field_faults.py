@@ -125,7 +125,7 @@ FIELDS: dict[str, tuple[str, Callable[[], xr.Dataset], list[str]]] = {
         ["a.nc: p: no units are stated. Must be a pressure such as Pa or hPa. Add them."]),
     "model in an unknown unit": ("model", lambda: sites("A", units="Pascal"),
         ["a.nc: p: unknown unit 'Pascal'. Must be one of Pa, hPa, kPa, mbar, dbar, decibar, bar, "
-         "psi, psia, mm, cm, m. Did you mean 'psia'?"]),
+         "psi, psia, mm, cm, m. Did you mean 'Pa'?"]),
     "model in metres": ("model", lambda: sites("A", units="m"),
         ["a.nc: p: the unit 'm' is a height, not a pressure. Must be a pressure such as Pa or hPa. "
          "Convert the values."]),
