@@ -36,9 +36,8 @@ def moved_site_figure(
     matplotlib.figure.Figure
     """
     with house_style():
-        frame = min(width_mm - 18.0, 110.0)
-        figure = sheet(width_mm, 62.0)
-        axes = placed_axes(figure, 14.0, 11.0, frame, 45.0)
+        figure = sheet(width_mm, 58.0)
+        axes = placed_axes(figure, 14.0, 10.0, width_mm - 18.0, 45.0)
         for scatter, shift in shift_hpa.items():
             strong = scatter == used
             axes.plot(

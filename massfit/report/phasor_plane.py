@@ -86,7 +86,7 @@ def phasor_plane(
         missing = _site_labels(near, names, points, draws_hpa.mean(axis=0))
         near.set_title("The answer enlarged" + (f" ({missing} without a name)" if missing else ""))
         handles, labels = whole.get_legend_handles_labels()
-        columns = 2 if width_mm > COLUMN_WIDTH_MM else 1
+        columns = 3 if width_mm > COLUMN_WIDTH_MM else 1
         figure.legend(handles, labels, loc="lower center", ncols=columns, borderaxespad=0.3)
     return figure
 
@@ -97,8 +97,8 @@ def _panels(width_mm: float) -> tuple[Figure, Axes, Axes]:
         figure = sheet(width_mm, side + 22.0)
         return figure, placed_axes(figure, 14, 16, side, side), placed_axes(figure, 30 + side, 16, side, side)
     side = width_mm - 18.0
-    figure = sheet(width_mm, 2.0 * side + 44.0)
-    return figure, placed_axes(figure, 15, 37 + side, side, side), placed_axes(figure, 15, 20, side, side)
+    figure = sheet(width_mm, 2.0 * side + 48.0)
+    return figure, placed_axes(figure, 15, 41 + side, side, side), placed_axes(figure, 15, 24, side, side)
 
 
 def _reach(points: NDArray[np.float64], share: float) -> float:
