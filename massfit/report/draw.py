@@ -32,7 +32,12 @@ from massfit.results.readings import (
 )
 from massfit.results.record_rows import record_rows
 
-SCALE_WORDS = {"s_site": "site scatter", "s_local": "models at a site", "s_common": "model spread"}
+SCALE_WORDS = {
+    "s_site": "site scatter",
+    "s_local": "models, local",
+    "s_common": "models, shared",
+    "s_group": "shared scatter",
+}
 """What the scales of the posterior are called in figures."""
 
 _COMPARED = "uniform over land"

@@ -330,7 +330,7 @@ def test_a_thousand_networks(name: str, capsys: pytest.CaptureFixture[str]) -> N
     count = 1000
     found = study(count, KINDS[name], seed=21)
     with capsys.disabled():
-        for first in (300, 500, count):
+        for first in (300, 500, 750, count):
             print(report(name, found.first(first)), flush=True)
     limits = {level: binomial_limits(count, level) for level in (0.5, 0.95)}
     inside = all(low <= found.covered(level) <= high for level, (low, high) in limits.items())
