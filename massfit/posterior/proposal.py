@@ -10,6 +10,8 @@ from massfit.posterior.regression import Condition, LinearModel
 
 Floats = NDArray[np.float64]
 
+_DEFENSIVE = 0.2
+"""Share of the parts that is drawn by their weights alone."""
 
 
 def stretch_grid(place_count: int) -> Floats:
@@ -81,6 +83,9 @@ def predict_rows(
     base, contrast, scatter = base_variance(model, condition)
     own = 1.0 / (1.0 / np.concatenate([base + scatter, contrast], axis=1)).mean(axis=0)
     prior_variance = (unit.mean(axis=0) ** 2 * model.design[condition.member[0]] ** 2).sum(axis=1)
+    # which part's rows a site used differs from draw to draw: nothing is taken out there
+    several = (model.rows.log_weight > -np.inf).sum(axis=1) > 1
+    own = np.where(several[model.rows.site], np.inf, own)
     centre, variance = _cavity(signal.mean(axis=0), signal.var(axis=0), model.rows.value, own, prior_variance)
     effect = shared[:, model.columns.place]
     prior = (unit[:, model.columns.place] ** 2).mean(axis=0)
@@ -124,7 +129,9 @@ def propose_latents(
     if model.rows.has_parts:
         for s in np.flatnonzero((model.rows.log_weight > -np.inf).sum(axis=1) > 1):
             mass = table[:, s].sum(axis=-1)
-            probability = mass / mass.sum(axis=1, keepdims=True)
+            # a share by the weights alone: no part is ever out of reach (defensive mixture, Hesterberg 1995)
+            prior = np.exp(model.rows.log_weight[s])
+            probability = (1.0 - _DEFENSIVE) * mass / mass.sum(axis=1, keepdims=True) + _DEFENSIVE * prior / prior.sum()
             part[:, s] = (rng.random((len(part), 1)) > np.cumsum(probability, axis=1)[:, :-1]).sum(axis=1)
             total += np.log(np.take_along_axis(probability, part[:, s : s + 1], axis=1)[:, 0])
     if model.student:

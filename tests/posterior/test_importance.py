@@ -217,8 +217,38 @@ def test_parts_are_drawn_in_proportion_to_their_density(invent, regression, two_
     prediction = predict_rows(model, one, collapse(model, one), np.random.default_rng(1), draws=500)
     drawn, log_density = propose_latents(model, condition, prediction, np.random.default_rng(2))
     first = drawn.part[:, 2] == 0
+    assert 0.02 < first.mean() < 0.98
     for chosen, share in ((first, first.mean()), (~first, (~first).mean())):
         np.testing.assert_allclose(np.exp(log_density[chosen]), share, atol=4 * 0.5 / np.sqrt(20_000))
+
+
+def test_many_parts_of_a_mixture_are_all_within_reach(invent, regression):
+    """Sixteen narrow parts, far apart: against every part summed on a grid of the scales."""
+    network = invent(sites=4)
+    seen, rng = network.observations, np.random.default_rng(8)
+    phasor, covariance = np.repeat(seen.part_phasor, 16, axis=1), np.repeat(seen.part_covariance, 16, axis=1)
+    phasor[2] += 100.0 * rng.standard_normal((16, 1, 2))
+    covariance[2] *= 0.05
+    weight = np.tile(np.eye(16)[0], (4, 1))
+    weight[2] = rng.dirichlet(np.full(16, 3.0))
+    observations = replace(seen, weight=weight, part_phasor=phasor, part_covariance=covariance)
+    model = regression(replace(network, observations=observations), mixed=("site 3",))
+    axes = [np.linspace(-3.0, 5.5, 24), np.linspace(-3.0, 4.5, 22), np.linspace(-3.0, 5.5, 24)]
+    log_scales = np.stack(np.meshgrid(*axes, indexing="ij"), axis=-1).reshape(-1, 3)
+    mass, means = [], []
+    for part in range(16):
+        condition = model.at(log_scales)
+        condition.part[:, 2] = part
+        collapsed = collapse(model, condition)
+        mass.append(collapsed.log_likelihood + model.rows.log_weight[2, part] + log_scale_prior(log_scales, PRIOR[:3]))
+        means.append(collapsed.moments()[0])
+    share = np.exp(np.array(mass) - logsumexp(mass))
+    route = integrate_scales(model, PRIOR[:3], draws=8000)
+    error = np.abs(route.mean - np.einsum("kn,knc->c", share, np.array(means)))
+    assert np.all(error < 4.0 * route.standard_error + 0.01 * np.sqrt(np.diag(route.covariance)))
+    drawn = np.bincount(route.part[:, 2], weights=route.weight, minlength=16)
+    np.testing.assert_allclose(drawn, share.sum(axis=1), atol=0.03)
+    assert route.effective_nodes > 1000
 
 
 def test_quantiles_are_those_of_the_mixture(invent, regression):
