@@ -39,8 +39,8 @@ def find_disturbed(level: NDArray[np.float64]) -> NDArray[np.bool_]:
 
     Examples
     --------
-    >>> level = np.zeros(200)
-    >>> level[90:95] = 4000.0
+    >>> level = 30.0 * np.sin(np.arange(200.0) ** 2)
+    >>> level[90:95] += 4000.0
     >>> np.flatnonzero(find_disturbed(level)).tolist()
     [90, 91, 92, 93, 94]
     """

@@ -94,9 +94,10 @@ def find_ramps(day: NDArray[np.int64], level: NDArray[np.float64]) -> FoundRamps
     Examples
     --------
     >>> day = np.arange(200)
-    >>> found = find_ramps(day, 3.0 * np.sin(day * 2.0) + 5000.0 * np.clip((day - 99) / 5.0, 0, 1))
+    >>> noise = 5.0 * np.random.default_rng(1).standard_normal(200)
+    >>> found = find_ramps(day, noise + 5000.0 * np.clip((day - 99) / 5.0, 0, 1))
     >>> found.first.tolist(), found.last.tolist(), found.sizes.round(-1).tolist()
-    ([100], [103], [5000.0])
+    ([100], [105], [5000.0])
     """
     none = FoundRamps(np.empty(0, np.int64), np.empty(0, np.int64), np.empty(0), np.empty(0, bool), np.inf)
     if day.size < 2 * _LASTING_DAYS:

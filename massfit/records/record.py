@@ -173,7 +173,7 @@ class TidalConstant:
     Examples
     --------
     >>> constant = TidalConstant("M2", 1.9322736, 3000.0, 1.2, 15.0)
-    >>> round(np.degrees(constant.lag_sd), 2)
+    >>> round(float(np.degrees(constant.lag_sd)), 2)
     0.29
     """
 

@@ -27,6 +27,7 @@ def in_use(place: Path) -> Path:
 def finished(place: Path) -> Path:
     place.mkdir()
     a_file(place / "run.json")
+    a_file(place / "estimate.json")
     return place
 
 

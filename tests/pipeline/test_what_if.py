@@ -4,6 +4,7 @@ import csv
 import json
 from dataclasses import replace
 from pathlib import Path
+from typing import Literal
 
 import numpy as np
 import pytest
@@ -25,7 +26,7 @@ from massfit.site import Site
 @pytest.fixture(scope="module")
 def tiny() -> Network:
     options = SimulationOptions(
-        sites=2, years=1.5, models=1, load_members=2, sampling="daily", incidents=False, bad_site=False
+        sites=2, years=1.5, models=1, load_members=1, sampling="daily", incidents=False, bad_site=False
     )
     return simulate_network(options, seed=5).network
 
@@ -36,6 +37,10 @@ def asked(tiny: Network) -> Estimate:
         # runs too short to converge: nothing here looks at the distribution of the draws
         patch.setattr("massfit.posterior.sample.STEPS", 60)
         patch.setattr("massfit.posterior.sample.MAX_STEPS", 60)
+        # one choice of each kind
+        patch.setattr("massfit.pipeline.what_if.NoiseForm", Literal["white"])
+        patch.setattr("massfit.pipeline.what_if.DriftForm", Literal["linear"])
+        patch.setattr("massfit.posterior.what_if._SCALES", {"model_common_hpa": "prior of s_common (models, shared)"})
         return estimate(tiny, what_if=True)
 
 
