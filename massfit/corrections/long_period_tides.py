@@ -157,7 +157,7 @@ def line_table(response: float, *, lines: tuple[Line, ...] = LINES) -> list[dict
     --------
     >>> table = line_table(-0.5e3)  # the classical height on the equator, mm
     >>> [(row["line"], round(row["period_days"], 2), round(row["amplitude"], 1)) for row in table[4:7]]
-    [('Mm', 27.55, 5.3), ('MSf', 14.77, 0.9), ('Mf', 13.66, 10.1)]
+    [('Mm', 27.55, 7.7), ('MSf', 14.77, 1.3), ('Mf', 13.66, 14.6)]
     """
     scale = abs(response) * GAMMA_2 * NORMALISATION
     return [

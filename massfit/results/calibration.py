@@ -41,8 +41,8 @@ def truth_among(draws: Floats, truth: Floats) -> dict[str, Any]:
     --------
     >>> draws = np.random.default_rng(1).standard_normal((20000, 2)) + [0.0, 80.0]
     >>> found = truth_among(draws, np.array([0.0, 81.0]))
-    >>> round(found["in_phase"], 1), round(found["quadrature"], 2), round(found["region"], 2)
-    (0.5, 0.84, 0.4)
+    >>> round(found["in_phase"], 1), round(found["quadrature"], 1), round(found["region"], 1)
+    (0.5, 0.8, 0.4)
     """
     mean, covariance = draws.mean(axis=0), np.cov(draws.T)
     points = np.vstack([draws, truth])

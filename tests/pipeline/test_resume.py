@@ -198,7 +198,8 @@ def test_old_results_stay_until_new_ones_are_whole(
 ) -> None:
     place = tmp_path / "results"
     place.mkdir()
-    (place / "run.json").write_text("of an older run")
+    for name in ("run.json", "estimate.json"):
+        (place / name).write_text("of an older run")
     with pytest.raises(InputError, match="finished results"):
         estimate_to_folder(network, place)
     assert [path.name for path in tmp_path.iterdir()] == ["results"]
@@ -210,7 +211,7 @@ def test_old_results_stay_until_new_ones_are_whole(
     monkeypatch.setattr("massfit.io.results_folder.write_dataset", stop)
     with pytest.raises(KeyboardInterrupt):
         estimate_to_folder(network, place, overwrite=True)
-    assert [path.name for path in place.iterdir()] == ["run.json"]
+    assert {path.name for path in place.iterdir()} == {"run.json", "estimate.json"}
 
 
 # through the command line, with processes
