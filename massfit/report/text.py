@@ -4,6 +4,7 @@ from collections.abc import Mapping
 from typing import Any
 
 from massfit.phasor import delay_days, peak_days
+from massfit.report.comparison_text import verdict
 from massfit.report.names import fitted, padded, wrapped
 from massfit.results.answer import date_range, spoken_date, spoken_range
 
@@ -49,6 +50,7 @@ def summary_text(summary: Mapping[str, Any]) -> str:
         _trust(summary),
         _predictive(summary),
         _calibration(summary),
+        _satellites(summary),
         _warnings(summary),
     ]
     return "\n\n".join("\n".join(block) for block in blocks if block)
@@ -171,6 +173,10 @@ def _predictive(summary: Mapping[str, Any]) -> list[str]:
 
 def _calibration(summary: Mapping[str, Any]) -> list[str]:
     return wrapped(summary["calibration"]["sentence"], WIDTH, rest="  ") if "calibration" in summary else []
+
+
+def _satellites(summary: Mapping[str, Any]) -> list[str]:
+    return wrapped(verdict(summary["comparison"]), WIDTH, rest="  ") if "comparison" in summary else []
 
 
 def _warnings(summary: Mapping[str, Any]) -> list[str]:

@@ -218,7 +218,16 @@ def _posterior(settings: Settings) -> list[str]:
         if settings.posterior.model_truth == "exchangeable"
         else "The truth is taken as the centre of the ocean models (r = 0)"
     )
+    chosen = settings.posterior
+    scatter = "Student's with 4 degrees of freedom" if chosen.site_scatter == "student-t" else "normal"
+    if chosen.group_scatter is True:
+        shared = "sites of one group share a part of it"
+    elif chosen.group_scatter is False:
+        shared = "independent between sites"
+    else:
+        shared = f"correlated over {chosen.group_scatter:g} km"
     return [
-        f"{truth}. Site scatter is normal and independent between sites; the cycle is taken as the same in every year.",
+        f"{truth}. Site scatter is {scatter}, {shared}; the cycle of a year differs from the mean of the period by "
+        f"{settings.priors.year_sd_hpa:g} hPa (1 sd, in phase and in quadrature).",
         "Results are for research.",
     ]

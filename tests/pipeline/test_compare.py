@@ -26,8 +26,9 @@ def network(tmp_path_factory: pytest.TempPathFactory) -> Path:
 
 @pytest.fixture(scope="module")
 def results(network: Path) -> Path:
-    found = CliRunner().invoke(main, ["estimate", str(network), "--quiet"])
+    found = CliRunner().invoke(main, ["estimate", str(network)])
     assert found.exit_code == 0, found.output
+    assert "Network and satellites" in found.output
     return network / "results"
 
 
