@@ -142,6 +142,60 @@ def phasor_from_peak(amplitude: float, peak_day: float) -> complex:
     return complex(amplitude * np.exp(2j * np.pi * peak_day / TROPICAL_YEAR_DAYS))
 
 
+def polar_sd(phasor: complex, covariance: NDArray[np.float64]) -> tuple[float, float]:
+    """Give the standard deviations of amplitude and peak day, to first order.
+
+    Parameters
+    ----------
+    phasor : complex
+    covariance : (2, 2) array
+        Of (in phase, quadrature).
+
+    Returns
+    -------
+    amplitude_sd : float
+        In the unit of the phasor.
+    day_sd : float
+        Days.
+
+    Examples
+    --------
+    >>> amplitude_sd, day_sd = polar_sd(1.0j, np.diag([0.04, 0.01]))
+    >>> round(amplitude_sd, 3), round(day_sd, 2)
+    (0.1, 11.63)
+    """
+    along = as_components(phasor / abs(phasor))
+    across = np.array([-along[1], along[0]])
+    radial, turned = along @ covariance @ along, across @ covariance @ across
+    return float(np.sqrt(radial)), float(np.sqrt(turned) / abs(phasor) / ANNUAL_RATE)
+
+
+def polar_covariance(phasor: complex, amplitude_sd: float, day_sd: float) -> NDArray[np.float64]:
+    """Give the covariance of the components from independent errors of amplitude and peak day, to first order.
+
+    Parameters
+    ----------
+    phasor : complex
+    amplitude_sd : float
+        In the unit of the phasor.
+    day_sd : float
+        Days.
+
+    Returns
+    -------
+    (2, 2) array
+
+    Examples
+    --------
+    >>> covariance = polar_covariance(0.6 - 0.8j, 0.1, 5.0)
+    >>> [round(value, 3) for value in polar_sd(0.6 - 0.8j, covariance)]
+    [0.1, 5.0]
+    """
+    along = as_components(phasor / abs(phasor))
+    axes = np.array([[along[0], -along[1]], [along[1], along[0]]])
+    return np.asarray(axes @ np.diag([amplitude_sd**2, (abs(phasor) * day_sd * ANNUAL_RATE) ** 2]) @ axes.T)
+
+
 def peak_date(peak_day: float, reference_year: int) -> str:
     """ISO date of a peak day in the reference year.
 

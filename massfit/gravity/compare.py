@@ -17,6 +17,7 @@ from massfit.gravity.definitions import Definition, redefined
 from massfit.gravity.inputs import Determination, GravityInputs
 from massfit.gravity.satellite import Context, SatelliteMean, satellite_mean, unseen_degrees, vapour_degree_zero
 from massfit.phasor import admittance_matrix, as_complex, as_components
+from massfit.posterior.network_model import inflation
 from massfit.site import Site
 
 GEOCENTRE_ITRF2020 = {"X": (1.23, 0.16, -123.0), "Y": (3.48, 0.15, 153.0), "Z": (2.76, 0.33, -140.0)}
@@ -174,7 +175,7 @@ def together(solutions: Sequence[SatelliteMean]) -> Determination:
     count = len(solutions)
     if count > 1:
         departures = phasors - centre
-        covariance = covariance + departures.T @ departures / count * (count + 1.0) / (count - 1.0)
+        covariance = covariance + departures.T @ departures / count * inflation(count)
     names = ", ".join(each.name for each in solutions)
     return Determination("satellite gravity", names, complex(as_complex(centre)), covariance)
 

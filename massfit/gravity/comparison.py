@@ -7,7 +7,7 @@ from numpy.typing import NDArray
 from scipy.stats import chi2
 
 from massfit.constants import TROPICAL_YEAR_DAYS
-from massfit.phasor import as_complex, as_components, peak_days
+from massfit.phasor import as_complex, as_components, peak_days, polar_sd
 
 COMPATIBLE_ABOVE = 0.05
 """Two determinations are put together where a difference as large has at least this probability."""
@@ -80,7 +80,7 @@ def agreement(
     chi_square = float(step @ np.linalg.solve(covariance, step))
     probability = float(chi2.sf(chi_square, df=2))
     sizes, days = np.abs([first, second]), peak_days(np.array([first, second]))
-    sds = np.array([_polar_sd(first, first_covariance), _polar_sd(second, second_covariance)])
+    sds = np.array([polar_sd(first, first_covariance), polar_sd(second, second_covariance)])
     joint, joint_covariance = None, None
     if probability >= COMPATIBLE_ABOVE:
         weights = np.linalg.inv(first_covariance), np.linalg.inv(second_covariance)
@@ -93,11 +93,3 @@ def agreement(
         float((days[0] - days[1] + half) % TROPICAL_YEAR_DAYS - half), float(np.hypot(*sds[:, 1])),
         joint, joint_covariance,
     )  # fmt: skip
-
-
-def _polar_sd(phasor: complex, covariance: NDArray[np.float64]) -> tuple[float, float]:
-    """Sd of amplitude and peak day, to first order."""
-    along = as_components(phasor / abs(phasor))
-    across = np.array([-along[1], along[0]])
-    radial, angular = along @ covariance @ along, across @ covariance @ across
-    return float(np.sqrt(radial)), float(np.sqrt(angular) / abs(phasor) * TROPICAL_YEAR_DAYS / (2.0 * np.pi))

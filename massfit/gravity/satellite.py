@@ -18,6 +18,7 @@ from massfit.gravity.monthly import Addition, MonthlyMass, Replacement, monthly_
 from massfit.gravity.predicted import PredictedMass, land_leakage, whole_ocean_factors
 from massfit.gravity.tables import Name
 from massfit.phasor import admittance_matrix, as_complex, as_components
+from massfit.posterior.network_model import inflation
 
 _DEGREE_ONE = (("C", 1, 0), ("C", 1, 1), ("S", 1, 1))
 _C20, _C30 = ("C", 2, 0), ("C", 3, 0)
@@ -235,7 +236,7 @@ def _converted(
     if count > 1:
         departures = each - each.mean(axis=0)
         # from the spread of K members about their mean to the error of that mean for one more member
-        spread = departures.T @ departures / count * (count + 1.0) / (count - 1.0)
+        spread = departures.T @ departures / count * inflation(count)
     return complex(as_complex(each.mean(axis=0))), within + spread
 
 

@@ -9,7 +9,7 @@ from typing import Any
 
 import numpy as np
 
-from massfit.constants import PASCAL_PER_HPA, TROPICAL_YEAR_DAYS
+from massfit.constants import PASCAL_PER_HPA
 from massfit.errors import Fault, InputError
 from massfit.gravity.field import GravityField
 from massfit.gravity.inputs import Determination, GravityInputs, Solution
@@ -19,7 +19,7 @@ from massfit.io.gravity_files import read_gravity_files
 from massfit.io.locate import KeyPath
 from massfit.io.reading import Reading, open_reading
 from massfit.io.sections import parse_sections
-from massfit.phasor import phasor_from_peak
+from massfit.phasor import phasor_from_peak, polar_covariance
 from massfit.settings import Gravity
 
 DETERMINATION_COLUMNS = ("label", "method", "amplitude_hpa", "amplitude_sd_hpa", "peak_day", "peak_day_sd")
@@ -198,7 +198,5 @@ def _determination(words: Sequence[str], source: str, line: int, faults: list[Fa
         return None
     amplitude, amplitude_sd, day, day_sd = numbers
     phasor = phasor_from_peak(PASCAL_PER_HPA * amplitude, day)
-    unit = phasor / abs(phasor)
-    axes = np.array([[unit.real, -unit.imag], [unit.imag, unit.real]])  # along the phasor, and later in the year
-    sds = PASCAL_PER_HPA * np.array([amplitude_sd, amplitude * day_sd * 2.0 * np.pi / TROPICAL_YEAR_DAYS])
-    return Determination(words[0].strip(), words[1].strip(), phasor, axes @ np.diag(sds**2) @ axes.T)
+    covariance = polar_covariance(phasor, PASCAL_PER_HPA * amplitude_sd, day_sd)
+    return Determination(words[0].strip(), words[1].strip(), phasor, covariance)

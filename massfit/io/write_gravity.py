@@ -7,12 +7,12 @@ from pathlib import Path
 
 import numpy as np
 
-from massfit.constants import PASCAL_PER_HPA, TROPICAL_YEAR_DAYS
+from massfit.constants import PASCAL_PER_HPA
 from massfit.gravity.field import GravityField
 from massfit.gravity.inputs import Determination, GravityInputs
 from massfit.gravity.tables import CoefficientTable
 from massfit.io.gravity import DETERMINATION_COLUMNS
-from massfit.phasor import as_components, peak_days
+from massfit.phasor import peak_days, polar_sd
 
 _MJD_EPOCH = np.datetime64("1858-11-17T00:00:00", "s")
 
@@ -115,10 +115,12 @@ def determinations_text(determinations: tuple[Determination, ...]) -> str:
     writer = csv.writer(out, lineterminator="\n")
     writer.writerow(DETERMINATION_COLUMNS)
     for each in determinations:
-        along = as_components(each.phasor / abs(each.phasor))
-        across = np.array([-along[1], along[0]])
-        radial, turned = (float(np.sqrt(axis @ each.covariance @ axis)) for axis in (along, across))
-        days = turned / abs(each.phasor) * TROPICAL_YEAR_DAYS / (2.0 * np.pi)
-        cells = (abs(each.phasor) / PASCAL_PER_HPA, radial / PASCAL_PER_HPA, float(peak_days(each.phasor)), days)
+        amplitude_sd, day_sd = polar_sd(each.phasor, each.covariance)
+        cells = (
+            abs(each.phasor) / PASCAL_PER_HPA,
+            amplitude_sd / PASCAL_PER_HPA,
+            float(peak_days(each.phasor)),
+            day_sd,
+        )
         writer.writerow([each.label, each.method, *(f"{value:.4f}" for value in cells)])
     return out.getvalue()

@@ -12,7 +12,7 @@ from massfit.gravity.compare import GEOCENTRE_ITRF2020, GravityComparison
 from massfit.gravity.comparison import Agreement
 from massfit.gravity.definitions import in_units
 from massfit.gravity.inputs import Determination
-from massfit.phasor import COMPONENTS, as_components, peak_date, peak_days
+from massfit.phasor import COMPONENTS, as_components, peak_date, peak_days, polar_sd
 
 _MM = 1000.0
 
@@ -184,15 +184,13 @@ def _phasor(phasor: complex) -> dict[str, Any]:
 
 
 def _determination(each: Determination, reference_year: int) -> dict[str, Any]:
-    along = as_components(each.phasor / abs(each.phasor))
-    across = np.array([-along[1], along[0]])
-    radial, turned = (float(np.sqrt(axis @ each.covariance @ axis)) for axis in (along, across))
+    amplitude_sd, day_sd = polar_sd(each.phasor, each.covariance)
     return {
         "label": each.label,
         "method": each.method,
         **_phasor(each.phasor),
-        "amplitude_sd_hpa": radial / PASCAL_PER_HPA,
-        "peak_day_sd": turned / abs(each.phasor) * TROPICAL_YEAR_DAYS / (2.0 * np.pi),
+        "amplitude_sd_hpa": amplitude_sd / PASCAL_PER_HPA,
+        "peak_day_sd": day_sd,
         "peak_date": peak_date(float(peak_days(each.phasor)), reference_year),
         "covariance_hpa2": _hpa2(each.covariance),
     }

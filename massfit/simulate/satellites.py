@@ -10,7 +10,7 @@ from massfit.constants import ANNUAL_RATE, EARTH_DENSITY, PASCAL_PER_HPA
 from massfit.gravity.field import Conventions, GravityField, Span
 from massfit.gravity.inputs import Determination, GravityInputs, Solution
 from massfit.gravity.tables import CoefficientTable, Name, TableRow
-from massfit.phasor import phasor_from_peak
+from massfit.phasor import peak_days, phasor_from_peak, polar_covariance
 from massfit.settings import Gravity
 from massfit.simulate.clock import Clock
 from massfit.simulate.names import centre_names
@@ -182,11 +182,9 @@ def _others(rng: np.random.Generator, annual: complex) -> tuple[Determination, .
         ("Land water budget", "invented storage on land, with its sign turned", 0.10, 12.0),
     ):
         amplitude = abs(annual) / PASCAL_PER_HPA + sd_hpa * rng.standard_normal()
-        day = float(np.degrees(np.angle(annual)) / 360.0 * 365.2422 % 365.2422) + sd_days * rng.standard_normal()
+        day = float(peak_days(annual)) + sd_days * rng.standard_normal()
         amplitude, day = float(np.round(amplitude, 2)), float(np.round(day, 1))
         phasor = phasor_from_peak(PASCAL_PER_HPA * amplitude, day)
-        unit = phasor / abs(phasor)
-        axes = np.array([[unit.real, -unit.imag], [unit.imag, unit.real]])
-        sds = PASCAL_PER_HPA * np.array([sd_hpa, amplitude * sd_days * ANNUAL_RATE])
-        found.append(Determination(label, method, phasor, axes @ np.diag(sds**2) @ axes.T))
+        covariance = polar_covariance(phasor, PASCAL_PER_HPA * sd_hpa, sd_days)
+        found.append(Determination(label, method, phasor, covariance))
     return tuple(found)
