@@ -47,9 +47,10 @@ def estimate(
     a summary.
     """
     with refusing_politely(), shown_progress(quiet=quiet) as progress:
-        from massfit.pipeline.save import estimate_to_folder, results_folder
+        from massfit.pipeline.folders import output_folder
+        from massfit.pipeline.save import estimate_to_folder
 
-        folder = results_folder(network, output)
+        folder = output_folder(network, output, "results")
         result = estimate_to_folder(
             network, folder, overwrite=overwrite, outside=outside, what_if=what_if,
             surrogates=calibrate or 0, progress=progress, workers=os.cpu_count() or 1,
@@ -78,9 +79,10 @@ def fingerprint(network: Path, output: Path | None, finest: int, overwrite: bool
     and prints the table.
     """
     with refusing_politely(), shown_progress(quiet=quiet) as progress:
-        from massfit.pipeline.save_fingerprint import fingerprint_folder, fingerprint_to_folder
+        from massfit.pipeline.folders import output_folder
+        from massfit.pipeline.save_fingerprint import fingerprint_to_folder
 
-        folder, switches = fingerprint_folder(network, output), {"overwrite": overwrite, "outside": outside}
+        folder, switches = output_folder(network, output, "fingerprint"), {"overwrite": overwrite, "outside": outside}
         threads = os.cpu_count() or 1
         study = fingerprint_to_folder(
             network, folder, finest_degree=finest, progress=progress, threads=threads, **switches
@@ -106,9 +108,10 @@ def phasors(network: Path, output: Path | None, overwrite: bool, outside: bool, 
     phasors.html, and prints the table.
     """
     with refusing_politely(), shown_progress(quiet=quiet) as progress:
-        from massfit.pipeline.phasors import phasors_folder, phasors_to_folder
+        from massfit.pipeline.folders import output_folder
+        from massfit.pipeline.phasors import phasors_to_folder
 
-        made, cores = phasors_folder(network, output), os.cpu_count() or 1
+        made, cores = output_folder(network, output, "phasors"), os.cpu_count() or 1
         run = phasors_to_folder(
             network, made, overwrite=overwrite, outside=outside, progress=progress, workers=cores
         )

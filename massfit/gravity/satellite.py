@@ -251,6 +251,7 @@ def _kernel_actions(kernel: OceanKernel, fit: MonthlyAnnual, constant: complex) 
         f"annual cycle fitted to {fit.months} months beside {', '.join(fit.lines)}; each averaged over its own span",
     ]
     if constant:
-        size = 1000.0 * abs(constant) / 1000.0
+        # kg m-2 are mm of fresh water
+        size = abs(constant)
         actions.append(f"degree 0: less the water vapour of the fingerprint, {size:.2f} mm of water on the whole Earth")
     return actions

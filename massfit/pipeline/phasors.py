@@ -119,22 +119,6 @@ def _summary(network: Network, stage: SiteStage) -> dict[str, Any]:
     }
 
 
-def phasors_folder(network: Path, output: Path | None) -> Path:
-    """Where the phasors go: as asked, or `phasors` beside the network file.
-
-    Parameters
-    ----------
-    network : Path
-        A network.toml or the folder that holds one.
-    output : Path or None
-
-    Returns
-    -------
-    Path
-    """
-    return output or (network if network.is_dir() else network.parent) / "phasors"
-
-
 def phasors_to_folder(
     network: Path,
     folder: Path,

@@ -21,22 +21,6 @@ from massfit.results.estimate import Estimate
 from massfit.results.finished import FinishedRun, finished_run
 
 
-def results_folder(network: Path, output: Path | None) -> Path:
-    """Where the results go: as asked, or `results` beside the network file.
-
-    Parameters
-    ----------
-    network : Path
-        A network.toml or the folder that holds one.
-    output : Path or None
-
-    Returns
-    -------
-    Path
-    """
-    return output or (network if network.is_dir() else network.parent) / "results"
-
-
 def estimate_to_folder(
     network: Path,
     folder: Path,

@@ -15,22 +15,6 @@ from massfit.report.fingerprint_page import fingerprint_page
 from massfit.results.fingerprint import FingerprintStudy
 
 
-def fingerprint_folder(network: Path, output: Path | None) -> Path:
-    """Where the fingerprint goes: as asked, or `fingerprint` beside the network file.
-
-    Parameters
-    ----------
-    network : Path
-        A network.toml or the folder that holds one.
-    output : Path or None
-
-    Returns
-    -------
-    Path
-    """
-    return output or (network if network.is_dir() else network.parent) / "fingerprint"
-
-
 def fingerprint_to_folder(
     network: Path,
     folder: Path,

@@ -8,10 +8,10 @@ import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.collections import PatchCollection
 from matplotlib.figure import Figure
-from matplotlib.patches import Ellipse
 from numpy.typing import NDArray
 
 from massfit.phasor import as_components, phasor_from_peak
+from massfit.report.ellipse import normal_ellipse
 from massfit.report.labels import LONGEST_NAME, place_labels
 from massfit.report.names import fitted
 from massfit.report.style import (
@@ -141,12 +141,7 @@ def _models(axes: Axes, models: Mapping[str, NDArray[np.float64]]) -> None:
 
 
 def _sites(axes: Axes, phasors: NDArray[np.float64], covariances: NDArray[np.float64]) -> None:
-    ellipses = []
-    for phasor, covariance in zip(phasors, covariances, strict=True):
-        values, vectors = np.linalg.eigh(covariance)
-        width, height = 2.0 * RADIUS_50 * np.sqrt(np.maximum(values[::-1], 0.0))
-        angle = np.degrees(np.arctan2(vectors[1, 1], vectors[0, 1]))
-        ellipses.append(Ellipse((phasor[0], phasor[1]), width, height, angle=angle))
+    ellipses = [normal_ellipse(*pair, RADIUS_50) for pair in zip(phasors, covariances, strict=True)]
     # many sites are drawn paler, so that the answer stays the strongest mark
     alpha = float(np.clip(12.0 / max(len(ellipses), 1), 0.25, 0.8))
     axes.add_collection(PatchCollection(ellipses, facecolor="none", edgecolor=SITE, linewidth=0.6, alpha=alpha))

@@ -6,8 +6,8 @@ import matplotlib.dates as mdates
 import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
-from matplotlib.patches import Ellipse
 
+from massfit.report.ellipse import normal_ellipse
 from massfit.report.names import fitted
 from massfit.report.style import (
     ANSWER,
@@ -73,13 +73,9 @@ def _plane(axes: Axes, placed: Sequence[Placed]) -> None:
         mark = _MARKS.get(each.role) or _OTHERS[others % len(_OTHERS)]
         others += each.role == "other"
         colour = colours[each.role]
-        values, vectors = np.linalg.eigh(each.covariance_hpa2)
-        size = 2.0 * RADIUS_95 * np.sqrt(np.maximum(values[::-1], 0.0))
-        angle = np.degrees(np.arctan2(vectors[1, 1], vectors[0, 1]))
         style = "-" if each.role in ("network", "satellite") else "--"
-        axes.add_patch(
-            Ellipse(tuple(each.phasor_hpa), *size, angle=angle, facecolor="none", edgecolor=colour, linestyle=style)
-        )
+        look = {"facecolor": "none", "edgecolor": colour, "linestyle": style}
+        axes.add_patch(normal_ellipse(each.phasor_hpa, each.covariance_hpa2, RADIUS_95, **look))
         axes.plot(
             *each.phasor_hpa, linestyle="none", marker=mark, markersize=8 if mark == "+" else 4.5, color=colour,
             label=fitted(each.label, 60),

@@ -10,11 +10,11 @@ from matplotlib.axes import Axes
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.dates import AutoDateLocator, ConciseDateFormatter, date2num
 from matplotlib.figure import Figure
-from matplotlib.patches import Ellipse
 from matplotlib.ticker import FuncFormatter, MaxNLocator, NullLocator
 from numpy.typing import NDArray
 from PIL import Image
 
+from massfit.report.ellipse import normal_ellipse
 from massfit.report.labels import place_labels
 from massfit.report.names import fitted
 from massfit.report.style import (
@@ -245,11 +245,15 @@ def _draw_whiteness(axes: Axes, content: SiteSheet) -> None:
 
 
 def _draw_years(axes: Axes, content: SiteSheet) -> None:
-    axes.add_patch(_ellipse(content.phasor, content.covariance, _ELLIPSE_95, facecolor=ANSWER, alpha=0.25))
+    axes.add_patch(
+        normal_ellipse(content.phasor, content.covariance, _ELLIPSE_95, facecolor=ANSWER, alpha=0.25, zorder=2)
+    )
     axes.plot(*content.phasor, "o", color=ANSWER, markersize=4.0, zorder=4)
     points = [content.phasor]
     for _, phasor, covariance in content.years:
-        axes.add_patch(_ellipse(phasor, covariance, 1.0, facecolor="none", edgecolor=SITE, linewidth=0.6))
+        axes.add_patch(
+            normal_ellipse(phasor, covariance, 1.0, facecolor="none", edgecolor=SITE, linewidth=0.6, zorder=2)
+        )
         axes.plot(*phasor, "s", color=SITE, markersize=2.5, zorder=3)
         points.append(phasor)
     reach = [_ELLIPSE_95 * np.sqrt(np.diag(content.covariance))]
@@ -292,13 +296,6 @@ def _square_limits(axes: Axes, points: Floats, reach: Floats) -> None:
     middle = 0.5 * (low + high)
     axes.set_xlim(middle[0] - 0.5 * scale * shape[0], middle[0] + 0.5 * scale * shape[0])
     axes.set_ylim(middle[1] - 0.5 * scale * shape[1], middle[1] + 0.5 * scale * shape[1])
-
-
-def _ellipse(centre: Floats, covariance: Floats, sigmas: float, **look: Any) -> Ellipse:
-    values, vectors = np.linalg.eigh(covariance)
-    size = 2.0 * sigmas * np.sqrt(np.maximum(values, 0.0))
-    angle = float(np.degrees(np.arctan2(vectors[1, 0], vectors[0, 0])))
-    return Ellipse((centre[0], centre[1]), size[0], size[1], angle=angle, zorder=2, **look)
 
 
 def _wrapped_facts(content: SiteSheet, *, columns: int) -> list[tuple[str, str]]:

@@ -178,7 +178,7 @@ def _phasor(phasor: complex) -> dict[str, Any]:
         "in_phase_hpa": phasor.real / PASCAL_PER_HPA,
         "quadrature_hpa": phasor.imag / PASCAL_PER_HPA,
         "amplitude_hpa": abs(phasor) / PASCAL_PER_HPA,
-        "water_mm": _MM * abs(phasor) / STANDARD_GRAVITY / _MM,
+        "water_mm": abs(phasor) / STANDARD_GRAVITY,  # kg m-2 are mm of fresh water
         "peak_day": float(peak_days(phasor)),
     }
 
