@@ -22,7 +22,7 @@ _HOMES = {
     "love_numbers": "massfit.earth.love",
     "make_settings": "massfit.settings",
     "prepare_operator": "massfit.fingerprint.operator",
-    "read_network": "massfit.io.network_file",
+    "read_network": "massfit.io.network.network_file",
     "regional_responses": "massfit.fingerprint.regions",
     "sample_posterior": "massfit.posterior.sample",
     "simulate_network": "massfit.simulate.network",

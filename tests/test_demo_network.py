@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 import xarray as xr
 
-from massfit.io.network_file import read_network
+from massfit.io.network.network_file import read_network
 from massfit.network import Network
 from massfit.pipeline.estimate import estimate
 from massfit.results.estimate import Estimate

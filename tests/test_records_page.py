@@ -8,8 +8,8 @@ import numpy as np
 import pytest
 from pydantic import TypeAdapter
 
-from massfit.io.deployment import DeploymentFile
-from massfit.io.record_file import read_record
+from massfit.io.records.deployment import DeploymentFile
+from massfit.io.records.record_file import read_record
 from massfit.records.record import Record
 
 PAGE = (Path(__file__).parents[1] / "docs/records.md").read_text()

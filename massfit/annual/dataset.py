@@ -133,9 +133,7 @@ def _year_shares(
     first, last = period or (date(min(of_sites), 1, 1), date(max(of_sites), 12, 31))
     years = sorted(of_sites | set(range(first.year, last.year + 1)))
     end = last + timedelta(days=1)
-    days = [
-        max((min(end, date(year + 1, 1, 1)) - max(first, date(year, 1, 1))).days, 0) for year in years
-    ]
+    days = [max((min(end, date(year + 1, 1, 1)) - max(first, date(year, 1, 1))).days, 0) for year in years]
     table = np.array([[share.get(year, 0.0) for year in years] for share in shares])
     return years, table, np.array(days) / sum(days)
 

@@ -311,9 +311,7 @@ def _year_phasors(residual: _Residual, reference_year: int) -> tuple[YearPhasor,
     return tuple(found)
 
 
-def _inflation(
-    design: Design, model: NoiseModel, reduction: Reduction, solutions: Solutions, weight: Floats
-) -> float:
+def _inflation(design: Design, model: NoiseModel, reduction: Reduction, solutions: Solutions, weight: Floats) -> float:
     levels = [drift.offset for drift in design.drifts]
     white = design.covariance(model).whiten(design.fixed[:, [*ANNUAL, *levels]])
     alone = np.linalg.inv(white.T @ white)[:2, :2]

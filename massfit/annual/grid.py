@@ -55,9 +55,7 @@ class DriftGrid:
     @property
     def resolved(self) -> bool:
         """Whether no node with a time constant holds much of its mass."""
-        return all(
-            (mass[nodes.timed] < LARGEST_MASS).all() for nodes, mass in zip(self.nodes, self.mass, strict=True)
-        )
+        return all((mass[nodes.timed] < LARGEST_MASS).all() for nodes, mass in zip(self.nodes, self.mass, strict=True))
 
     def split(self) -> "DriftGrid":
         """Grid with every heavy interval halved; its masses are still to be found."""

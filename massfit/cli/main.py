@@ -55,7 +55,7 @@ def estimate(
             network, folder, overwrite=overwrite, outside=outside, what_if=what_if,
             surrogates=calibrate or 0, progress=progress, workers=os.cpu_count() or 1,
         )  # fmt: skip
-    from massfit.report.text import summary_text
+    from massfit.report.words.run_text import summary_text
 
     if as_json:
         click.echo(json.dumps(result.summary, indent=2))
@@ -87,7 +87,7 @@ def fingerprint(network: Path, output: Path | None, finest: int, overwrite: bool
         study = fingerprint_to_folder(
             network, folder, finest_degree=finest, progress=progress, threads=threads, **switches
         )
-    from massfit.report.fingerprint_text import fingerprint_text
+    from massfit.report.words.fingerprint_text import fingerprint_text
 
     if not quiet:
         click.echo(f"{fingerprint_text(study)}\n\nResults in {folder}: start with fingerprint.html")
@@ -112,10 +112,8 @@ def phasors(network: Path, output: Path | None, overwrite: bool, outside: bool, 
         from massfit.pipeline.phasors import phasors_to_folder
 
         made, cores = output_folder(network, output, "phasors"), os.cpu_count() or 1
-        run = phasors_to_folder(
-            network, made, overwrite=overwrite, outside=outside, progress=progress, workers=cores
-        )
-    from massfit.report.site_text import site_text
+        run = phasors_to_folder(network, made, overwrite=overwrite, outside=outside, progress=progress, workers=cores)
+    from massfit.report.words.site_text import site_text
 
     if as_json:
         click.echo(json.dumps(run.summary, indent=2))
@@ -197,7 +195,7 @@ def compare(results: Path, network: Path | None, outside: bool, quiet: bool) -> 
         from massfit.pipeline.save import compare_to_folder
 
         run = compare_to_folder(results, network, outside=outside, progress=progress)
-    from massfit.report.comparison_text import comparison_text
+    from massfit.report.words.comparison_text import comparison_text
 
     if not quiet:
         click.echo(comparison_text(run.summary["comparison"]))
@@ -216,7 +214,7 @@ def contrast(first: Path, second: Path, as_json: bool) -> None:
         from massfit.pipeline.contrast import contrast_folders
 
         differences = contrast_folders(first, second)
-    from massfit.report.contrast_text import contrast_text
+    from massfit.report.words.contrast_text import contrast_text
 
     text = json.dumps(differences, indent=2) if as_json else contrast_text(differences, str(first), str(second))
     click.echo(text)
@@ -236,7 +234,7 @@ def check(network: Path, outside: bool, as_json: bool) -> None:
     """
     with refusing_politely():
         from massfit.pipeline.check import check_network, refuse
-        from massfit.report.check_text import check_text, in_json
+        from massfit.report.words.check_text import check_text, in_json
 
         looked_at = check_network(network, outside=outside)
         plain = "utf" not in (sys.stdout.encoding or "").casefold()

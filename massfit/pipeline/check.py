@@ -16,8 +16,8 @@ from massfit.corrections.site import site_corrections
 from massfit.errors import Fault, InputError, collect
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.gravity.inputs import gravity_sentence
-from massfit.io.gravity import read_gravity
-from massfit.io.network_file import read_what_can_be
+from massfit.io.gravity.read_gravity import read_gravity
+from massfit.io.network.network_file import read_what_can_be
 from massfit.network import Network, ReducedSite, Series
 from massfit.pipeline.air import network_air
 from massfit.records.clean import usable_samples

@@ -4,7 +4,7 @@ from pathlib import Path
 from typing import Any
 
 from massfit.errors import Fault, InputError, collect
-from massfit.io.read_results import read_results
+from massfit.io.results.read_results import read_results
 from massfit.results.contrast import contrast
 
 

@@ -70,9 +70,7 @@ def network_rotation(network: Network, operator: SeaLevelOperator) -> Rotational
 def network_vapour(network: Network) -> complex:
     """Annual phasor of the mass of water vapour in the air, kg, in the network's phase convention."""
     chosen = network.settings.fingerprint
-    return water_vapour_phasor(
-        chosen.water_vapour_kg, chosen.water_vapour_peak, network.settings.frame.reference_year
-    )
+    return water_vapour_phasor(chosen.water_vapour_kg, chosen.water_vapour_peak, network.settings.frame.reference_year)
 
 
 def network_fingerprints(

@@ -3,7 +3,7 @@
 from pathlib import Path
 from typing import Any
 
-from massfit.io.write_network import check_empty, write_network
+from massfit.io.network.write_network import check_empty, write_network
 from massfit.simulate.network import simulate_network
 from massfit.simulate.options import SimulationOptions
 from massfit.simulate.story import tell_story

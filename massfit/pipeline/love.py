@@ -6,9 +6,9 @@ from pathlib import Path
 from massfit.earth.love import DegreeOneFrame, LoveNumbers, half_space_limits, love_numbers
 from massfit.earth.profile import prem
 from massfit.errors import Fault, InputError
-from massfit.io.earth_file import read_earth_profile
-from massfit.io.love_file import check_new_file, write_love_numbers
-from massfit.io.results_folder import file_digest
+from massfit.io.fields.earth_file import read_earth_profile
+from massfit.io.fields.love_file import check_new_file, write_love_numbers
+from massfit.io.results.results_folder import file_digest
 from massfit.pipeline.digest import digest
 
 _FRAMES = {
@@ -28,7 +28,7 @@ def love_numbers_to_file(
     path : pathlib.Path
         CSV with the columns degree, h, l, k below comment lines.
     earth : pathlib.Path, optional
-        CSV of an Earth profile, as :func:`massfit.io.earth_file.read_earth_profile` reads it; PREM by default.
+        CSV of an Earth profile, as :func:`massfit.io.fields.earth_file.read_earth_profile` reads it; PREM by default.
     max_degree : int
         From 1.
     frame : str

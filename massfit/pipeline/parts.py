@@ -48,9 +48,7 @@ def kept(mapped: Mapped, store: Store | None) -> Mapped:
     return mapped if store is None else lambda function, parts: _kept(mapped, store, function, parts)
 
 
-def _kept(
-    mapped: Mapped, store: Store, function: Callable[[Part], Result], parts: Sequence[Part]
-) -> Iterator[Result]:
+def _kept(mapped: Mapped, store: Store, function: Callable[[Part], Result], parts: Sequence[Part]) -> Iterator[Result]:
     # digests first: a part may hold a random generator, which moves on when it is used
     keys = [digest((function, part)) for part in parts]
     found = [store.get(key) for key in keys]

@@ -5,9 +5,9 @@ from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
-from massfit.io.network_file import read_network
-from massfit.io.partial_folder import claimed
-from massfit.io.results_folder import PHASORS_FILE, check_output, write_folder
+from massfit.io.network.network_file import read_network
+from massfit.io.results.partial_folder import claimed
+from massfit.io.results.results_folder import PHASORS_FILE, check_output, write_folder
 from massfit.network import Network
 from massfit.pipeline.context import sites_in_context
 from massfit.pipeline.parts import Store, kept
@@ -15,8 +15,8 @@ from massfit.pipeline.progress import Progress, StageTimes, ignore
 from massfit.pipeline.provenance import provenance
 from massfit.pipeline.site_stage import SiteStage, site_stage
 from massfit.pipeline.workers import Workers
-from massfit.report.site_page import picture_name, site_page
-from massfit.report.site_sheet import sheet_png
+from massfit.report.figures.site_sheet import sheet_png
+from massfit.report.pages.site_page import picture_name, site_page
 from massfit.results.assumptions import site_assumptions
 from massfit.results.datasets import reduced_records, with_description
 from massfit.results.diagnostics import with_diagnostics

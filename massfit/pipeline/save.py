@@ -6,17 +6,17 @@ from pathlib import Path
 from massfit.errors import Fault, InputError, collect
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.gravity.inputs import GravityInputs
-from massfit.io.gravity import read_gravity
-from massfit.io.network_file import read_network, read_sites_and_loads
-from massfit.io.partial_folder import PartialFolder, claimed
-from massfit.io.read_results import read_results
-from massfit.io.results_folder import check_output, redraw_results, write_results
+from massfit.io.gravity.read_gravity import read_gravity
+from massfit.io.network.network_file import read_network, read_sites_and_loads
+from massfit.io.results.partial_folder import PartialFolder, claimed
+from massfit.io.results.read_results import read_results
+from massfit.io.results.results_folder import check_output, redraw_results, write_results
 from massfit.network import Network
 from massfit.pipeline.compare import with_comparison
 from massfit.pipeline.estimate import estimate
 from massfit.pipeline.progress import Progress, StageTimes, ignore
-from massfit.report.draw import draw_figures, png
-from massfit.report.page import report_page
+from massfit.report.figures.draw import draw_figures, png
+from massfit.report.pages.run_page import report_page
 from massfit.results.estimate import Estimate
 from massfit.results.finished import FinishedRun, finished_run
 

@@ -3,15 +3,15 @@
 import dataclasses
 from pathlib import Path
 
-from massfit.io.fingerprint_folder import FINGERPRINT_TABLE, write_fingerprint
-from massfit.io.network_file import read_sites_and_loads
-from massfit.io.partial_folder import claimed
-from massfit.io.results_folder import check_output
+from massfit.io.network.network_file import read_sites_and_loads
+from massfit.io.results.fingerprint_folder import FINGERPRINT_TABLE, write_fingerprint
+from massfit.io.results.partial_folder import claimed
+from massfit.io.results.results_folder import check_output
 from massfit.pipeline.fingerprint_study import FINEST_DEGREE, study_fingerprint
 from massfit.pipeline.progress import Progress, ignore
-from massfit.report.draw import png
-from massfit.report.fingerprint_figures import draw_fingerprint
-from massfit.report.fingerprint_page import fingerprint_page
+from massfit.report.figures.draw import png
+from massfit.report.figures.fingerprint_figures import draw_fingerprint
+from massfit.report.pages.fingerprint_page import fingerprint_page
 from massfit.results.fingerprint import FingerprintStudy
 
 

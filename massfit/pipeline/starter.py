@@ -2,7 +2,7 @@
 
 from pathlib import Path
 
-from massfit.io.starter_file import Starter, write_starter
+from massfit.io.guess.starter_file import Starter, write_starter
 
 
 def begin_network_file(folder: Path) -> Starter:
@@ -14,7 +14,7 @@ def begin_network_file(folder: Path) -> Starter:
 
     Returns
     -------
-    massfit.io.starter_file.Starter
+    massfit.io.guess.starter_file.Starter
         What was written, and how many marks it has.
 
     Raises

@@ -77,9 +77,7 @@ def other_answers(
         of :func:`massfit.posterior.robustness.moved_site` for the site whose record is surest, where there are three
         sites or more.
     """
-    given = Variant(
-        "", "", phasors, fingerprints, posterior.settings, posterior.priors, posterior.atmosphere_sd_hpa
-    )
+    given = Variant("", "", phasors, fingerprints, posterior.settings, posterior.priors, posterior.atmosphere_sd_hpa)
     refits = other_treatments(tasks)
     fits = _fits(refits, progress, mapped)
     variants = network_variants(given)

@@ -149,9 +149,7 @@ def _other_models(given: _Case) -> Iterator[tuple[str, _Case, bool]]:
         yield f"{word} the prior scale of s_common", replace(given, choices=replace(given.choices, priors=scaled)), True
 
 
-def _members(
-    base: Sequence[ScalePosterior], fingerprints: xr.Dataset
-) -> Iterator[tuple[str, ScalePosterior]]:
+def _members(base: Sequence[ScalePosterior], fingerprints: xr.Dataset) -> Iterator[tuple[str, ScalePosterior]]:
     if len(base) > 1:
         names = fingerprints["member"].values if "member" in fingerprints.coords else range(1, len(base) + 1)
         for name, route in zip(names, base, strict=True):

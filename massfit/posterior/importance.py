@@ -228,9 +228,7 @@ def integrate_scales(
     )
 
 
-def fit_proposal(
-    model: LinearModel, prior_scales: Floats, *, member: int = 0, rng: np.random.Generator
-) -> Proposal:
+def fit_proposal(model: LinearModel, prior_scales: Floats, *, member: int = 0, rng: np.random.Generator) -> Proposal:
     """Fit a proposal to the posterior of one load member in rounds.
 
     Parameters

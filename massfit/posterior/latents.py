@@ -114,9 +114,7 @@ def draw_shared_scales(
     return Condition(log_scales, condition.stretch, condition.part, condition.member)
 
 
-def _accept(
-    log_scales: Floats, scale: int, proposed: Floats, prior_scales: Floats, rng: np.random.Generator
-) -> None:
+def _accept(log_scales: Floats, scale: int, proposed: Floats, prior_scales: Floats, rng: np.random.Generator) -> None:
     """Take proposals that hold everything but the prior of the scale (and a uniform one of its logarithm)."""
     prior = prior_scales[scale : scale + 1]
     here = log_scale_prior(log_scales[:, scale : scale + 1], prior)

@@ -90,9 +90,7 @@ def second_routes(
     model = network_model(observations, admittance, choices, mixed=mixed)
     prior_scales = scale_priors(choices.priors, model.scale_count)
     return [
-        integrate_scales(
-            model, prior_scales, member=k, rng=np.random.default_rng(choices.settings.seed), draws=draws
-        )
+        integrate_scales(model, prior_scales, member=k, rng=np.random.default_rng(choices.settings.seed), draws=draws)
         for k in range(model.member_count)
     ]
 

@@ -321,4 +321,3 @@ def record_covariance(
     values, vectors = np.linalg.eigh(share)
     floored = (vectors * np.maximum(values, RECORD_FLOOR)[..., None, :]) @ np.swapaxes(vectors, -1, -2)
     return np.asarray(root @ floored @ np.swapaxes(root, -1, -2))
-

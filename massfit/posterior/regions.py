@@ -32,7 +32,10 @@ class DensityRegions:
 
 
 def density_regions(
-    draws: NDArray[np.float64], probabilities: tuple[float, ...] = PROBABILITIES, *, grid_size: int = 128,
+    draws: NDArray[np.float64],
+    probabilities: tuple[float, ...] = PROBABILITIES,
+    *,
+    grid_size: int = 128,
     bandwidth: float | None = None,
 ) -> DensityRegions:
     """Two-dimensional highest-density regions of draws.

@@ -64,9 +64,7 @@ def summarise(
     checks = leave_one_out(model, posterior.second_route, single)
     names = [str(site) for site in site_phasors["site"].values]
     reduced_sd = dict(zip(names, site_phasors["reduced_sd"].values.astype(float).tolist(), strict=True))
-    notes = [
-        _site_warnings(observations, s, reduced_sd[site], checks[s]) for s, site in enumerate(observations.sites)
-    ]
+    notes = [_site_warnings(observations, s, reduced_sd[site], checks[s]) for s, site in enumerate(observations.sites)]
     return {
         **_answer(posterior.draws, reference_year, ocean_area_m2, sea_water_density),
         "covariance_hpa2": (np.cov(posterior.draws.T) / PASCAL_PER_HPA**2).tolist(),
@@ -132,9 +130,7 @@ def _sites(
     ]
 
 
-def _site_warnings(
-    observations: Observations, s: int, reduced_sd: float, check: SiteCheck
-) -> list[str]:
+def _site_warnings(observations: Observations, s: int, reduced_sd: float, check: SiteCheck) -> list[str]:
     present = [model for model, there in zip(observations.models, observations.present[s], strict=True) if there]
     own = [
         text

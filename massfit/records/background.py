@@ -53,6 +53,4 @@ def background_design(days: NDArray[np.float64], breaks: NDArray[np.float64]) ->
 def _weights(x: NDArray[np.float64]) -> NDArray[np.float64]:
     """Values of the four splines that overlap a cell, at the fraction x of it."""
     y = 1.0 - x
-    return np.stack(
-        [y**3 / 6, (4 - 6 * x**2 + 3 * x**3) / 6, (4 - 6 * y**2 + 3 * y**3) / 6, x**3 / 6], axis=-1
-    )
+    return np.stack([y**3 / 6, (4 - 6 * x**2 + 3 * x**3) / 6, (4 - 6 * y**2 + 3 * y**3) / 6, x**3 / 6], axis=-1)

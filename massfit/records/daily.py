@@ -143,9 +143,7 @@ def _spacing_hours(time: NDArray[np.datetime64]) -> float:
     return usual_interval_ns(time) / HOUR_NS if time.size > 1 else np.inf
 
 
-def _settling_samples(
-    time: NDArray[np.datetime64], start: np.datetime64, settling: Settling
-) -> NDArray[np.bool_]:
+def _settling_samples(time: NDArray[np.datetime64], start: np.datetime64, settling: Settling) -> NDArray[np.bool_]:
     """Mark the samples of the first days, where the analyst said how many."""
     if isinstance(settling, str):
         return np.zeros(time.size, dtype=bool)
@@ -278,9 +276,7 @@ def _spike_action(spikes: NDArray[np.bool_], what: str) -> Action:
     return _counted(f"{what} spikes rejected", spikes, detail)
 
 
-def _short_tides(
-    hours: Hourly, changes: tuple[LevelChange, ...], tides: str, seams: tuple[float, ...] = ()
-) -> TideFit:
+def _short_tides(hours: Hourly, changes: tuple[LevelChange, ...], tides: str, seams: tuple[float, ...] = ()) -> TideFit:
     if tides == "remove":
         breaks = level_breaks(changes)
         return fit_short_tides(hours.days, hours.pressure, spread=hours.spread, breaks=breaks, seams=seams)

@@ -96,9 +96,7 @@ def _reference(days: NDArray[np.float64], constants: Sequence[TidalConstant]) ->
     return height
 
 
-def _modulation(
-    constant: TidalConstant, days: NDArray[np.float64]
-) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+def _modulation(constant: TidalConstant, days: NDArray[np.float64]) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
     """Size and turn against those in the middle of the record, which the constant holds."""
     at = np.array([days[0], 0.5 * (days[0] + days[-1]), days[-1]])
     factor, turn = np.array([nodal_modulation(constant.name, float(day)) or (1.0, 0.0) for day in at]).T

@@ -12,9 +12,7 @@ _RAYLEIGH = 0.95
 _CENTURY_DAYS = 36_525.0
 # degrees per day of s, h, p, N' and p1: the linear terms of the mean longitudes of Moon, Sun, lunar
 # perigee, negative node and solar perigee (Meeus 1998, Astronomical Algorithms, chapters 22, 25 and 47)
-_MEAN_RATES = (
-    np.array([481_267.881_234_21, 36_000.769_83, 4_069.013_728_7, 1_934.136_289_1, 1.719_54]) / _CENTURY_DAYS
-)
+_MEAN_RATES = np.array([481_267.881_234_21, 36_000.769_83, 4_069.013_728_7, 1_934.136_289_1, 1.719_54]) / _CENTURY_DAYS
 # tau, the lunar hour angle of the mean Moon, turns with the Earth less s plus h
 _ARGUMENT_RATES = np.concatenate([[360.0 - _MEAN_RATES[0] + _MEAN_RATES[1]], _MEAN_RATES])
 # the same mean longitudes in degrees at 1 January 2000 12:00 (ibid.; N' is counted backwards)

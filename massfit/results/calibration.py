@@ -130,9 +130,7 @@ def calibration_summary(calibration: xr.Dataset) -> dict[str, Any]:
     """
     count = calibration.sizes["surrogate"]
     ranks = calibration["rank"]
-    coverage = [
-        _coverage(name, level, ranks.sel(quantity=name).values) for name in QUANTITIES for level in LEVELS
-    ]
+    coverage = [_coverage(name, level, ranks.sel(quantity=name).values) for name in QUANTITIES for level in LEVELS]
     sd = np.sqrt(np.diagonal(calibration["covariance"].values, axis1=1, axis2=2))
     errors = (calibration["mean"].values - calibration["truth"].values) / sd
     squares = calibration["site_square"].values

@@ -85,9 +85,7 @@ def model_readings(run: FinishedRun) -> dict[str, Floats]:
     centre = answer_draws(run).mean(axis=0)
     there = np.isfinite(away[..., 0]).any(axis=0)
     return {
-        str(name): centre + np.nanmean(away[:, m], axis=0)
-        for m, name in enumerate(phasors["model"].values)
-        if there[m]
+        str(name): centre + np.nanmean(away[:, m], axis=0) for m, name in enumerate(phasors["model"].values) if there[m]
     }
 
 

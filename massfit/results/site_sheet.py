@@ -16,6 +16,7 @@ from massfit.results.finished import FinishedRun
 Floats = NDArray[np.float64]
 Times = NDArray[np.datetime64]
 
+
 @dataclass(frozen=True)
 class DeploymentCurve:
     """Daily record of one deployment and its drift.

@@ -202,8 +202,7 @@ def test_overlap_of_a_year_helps_the_exponential_and_not_the_linear_part(make_re
     rng = np.random.default_rng(8)
     first = make_record(rng, count=730)
     apart, overlapping = (
-        trend_and_exponential([first, make_record(rng, count=730, first=start, label="2")])
-        for start in (730.5, 365.5)
+        trend_and_exponential([first, make_record(rng, count=730, first=start, label="2")]) for start in (730.5, 365.5)
     )
     trend, exponential = overlapping / apart
     assert exponential < 0.75

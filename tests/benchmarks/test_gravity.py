@@ -17,8 +17,8 @@ from massfit.gravity.annual import fit_monthly
 from massfit.gravity.field import Conventions, GravityField, Span
 from massfit.gravity.kernel import ocean_kernel
 from massfit.gravity.monthly import monthly_mass
-from massfit.io.gravity_files import read_gravity_files
-from massfit.io.write_gravity import icgem_text
+from massfit.io.gravity.gravity_files import read_gravity_files
+from massfit.io.gravity.write_gravity import icgem_text
 
 pytestmark = pytest.mark.benchmark
 MONTHS, DEGREE = 200, 96

@@ -18,9 +18,9 @@ import pandas as pd
 import pytest
 import xarray as xr
 
-from massfit.io import text_blocks
-from massfit.io.deployment import DeploymentFile
-from massfit.io.record_file import read_record
+from massfit.io.records import text_blocks
+from massfit.io.records.deployment import DeploymentFile
+from massfit.io.records.record_file import read_record
 from massfit.records.daily import reduce_to_daily
 
 PARTS = ("year", "month", "day", "hour", "minute", "second", "kind", "pressure")

@@ -6,8 +6,8 @@ import numpy as np
 import pytest
 import xarray as xr
 
-from massfit.io.deployment import DeploymentFile
-from massfit.io.record_file import read_record
+from massfit.io.records.deployment import DeploymentFile
+from massfit.io.records.record_file import read_record
 from massfit.records.daily import reduce_to_daily
 from massfit.records.record import Record
 from massfit.records.tidal_lines import SHORT_TIDES

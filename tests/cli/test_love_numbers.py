@@ -11,7 +11,7 @@ from click.testing import CliRunner, Result
 from massfit.cli.main import main
 from massfit.earth.love import love_numbers
 from massfit.earth.profile import prem
-from massfit.io.earth_file import write_earth_profile
+from massfit.io.fields.earth_file import write_earth_profile
 
 
 def call(*words: object) -> Result:
@@ -61,9 +61,7 @@ def test_a_profile_of_ones_own(tmp_path: Path) -> None:
     ],
     ids=["exists", "folder", "no folder", "no profile", "no header", "degree"],
 )
-def test_what_is_refused(
-    words: tuple[str, ...], message: str, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
-) -> None:
+def test_what_is_refused(words: tuple[str, ...], message: str, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.chdir(tmp_path)
     Path("there.csv").write_text("x\n")
     done = call(*words)

@@ -6,7 +6,7 @@ from pathlib import Path
 import pytest
 
 from massfit.errors import Fault, InputError
-from massfit.io.network_file import read_network
+from massfit.io.network.network_file import read_network
 
 VALUES = ["1", "-1.5", "true", '"x"', '""', "[]", "[1]", "{}", "[{}]", "2016-03-01", "07:30:00", "nan", '"a\\u0000b"']
 PAIR = re.compile(r"^ *(\w+) = (.*)$", re.MULTILINE)

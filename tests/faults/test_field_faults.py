@@ -9,10 +9,10 @@ import pytest
 import xarray as xr
 
 from massfit.errors import InputError
-from massfit.io.circulation_file import read_circulation
-from massfit.io.fields import read_air_pressure, read_atmosphere_load, read_loads
-from massfit.io.schema import CirculationEntry
-from massfit.io.series_file import read_series
+from massfit.io.fields.circulation_file import read_circulation
+from massfit.io.fields.field_file import read_air_pressure, read_atmosphere_load, read_loads
+from massfit.io.network.schema import CirculationEntry
+from massfit.io.records.series_file import read_series
 
 UNITS = "# units: hPa\n"
 HEAD = UNITS + "time,value\n"

@@ -14,7 +14,7 @@ from click.testing import CliRunner, Result
 
 from massfit.cli.main import main
 from massfit.errors import InputError, printable
-from massfit.io.network_file import read_network
+from massfit.io.network.network_file import read_network
 
 Change = Callable[[str, str], None]
 RECORD, MODEL = '"records/a.csv"', '"fields/model.nc"'

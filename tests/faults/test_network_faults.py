@@ -6,7 +6,7 @@ from pathlib import Path
 import pytest
 
 from massfit.errors import InputError
-from massfit.io.network_file import read_network
+from massfit.io.network.network_file import read_network
 
 Change = Callable[[str, str], None]
 

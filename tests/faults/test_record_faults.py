@@ -11,8 +11,8 @@ import xarray as xr
 from scipy.io import savemat
 
 from massfit.errors import InputError
-from massfit.io.deployment import DeploymentFile
-from massfit.io.record_file import read_record
+from massfit.io.records.deployment import DeploymentFile
+from massfit.io.records.record_file import read_record
 from massfit.records.clean import usable_samples
 
 ROWS = "".join(f"2014-01-{day:02d}T12:00:00Z,{day / 8}\n" for day in range(1, 29))

@@ -25,13 +25,13 @@ import xarray as xr
 from scipy.io import savemat
 
 from massfit.errors import InputError
-from massfit.io.circulation_file import read_circulation
-from massfit.io.deployment import DeploymentFile
-from massfit.io.fields import read_atmosphere_load, read_loads
-from massfit.io.network_file import read_network
-from massfit.io.record_file import read_record
-from massfit.io.schema import CirculationEntry
-from massfit.io.series_file import read_series
+from massfit.io.fields.circulation_file import read_circulation
+from massfit.io.fields.field_file import read_atmosphere_load, read_loads
+from massfit.io.network.network_file import read_network
+from massfit.io.network.schema import CirculationEntry
+from massfit.io.records.deployment import DeploymentFile
+from massfit.io.records.record_file import read_record
+from massfit.io.records.series_file import read_series
 
 SECONDS = 10
 MEMORY = 2 * 2**30  # bytes of address space beyond what the imports take

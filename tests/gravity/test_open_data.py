@@ -15,8 +15,8 @@ from massfit.gravity.field import GravityField, Span
 from massfit.gravity.inputs import GravityInputs, Solution
 from massfit.gravity.predicted import predicted_mass
 from massfit.gravity.satellite import Context, satellite_mean
-from massfit.io.coefficient_table import read_coefficient_table
-from massfit.io.gravity_files import read_gravity_files
+from massfit.io.gravity.coefficient_table import read_coefficient_table
+from massfit.io.gravity.gravity_files import read_gravity_files
 from massfit.settings import Gravity
 
 OPEN_DATA = os.environ.get("MASSFIT_OPEN_DATA")

@@ -11,7 +11,7 @@ from click.testing import CliRunner
 
 from massfit.annual.noise import NoiseModel
 from massfit.cli.main import main
-from massfit.io.write_network import write_network
+from massfit.io.network.write_network import write_network
 from massfit.pipeline.calibrate import judged
 from massfit.pipeline.fingerprints import network_fingerprints
 from massfit.pipeline.progress import ignore

@@ -83,9 +83,7 @@ def test_every_fault_of_reading_is_found_at_once(network_folder: Path, change: C
     assert caught.value.faults == check.faults
 
 
-def test_what_can_be_read_is_shown_beside_the_faults(
-    network_folder: Path, change: Callable[[str, str], None]
-) -> None:
+def test_what_can_be_read_is_shown_beside_the_faults(network_folder: Path, change: Callable[[str, str], None]) -> None:
     whole = check_network(network_folder).found["sites"]
     change('drift = "linear"', 'drift = "cubic"')
     change('air_pressure = "not-forced"', 'air_pressure = "forced-excluded"')

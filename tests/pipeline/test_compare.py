@@ -10,7 +10,7 @@ import xarray as xr
 from click.testing import CliRunner
 
 from massfit.cli.main import main
-from massfit.io.read_results import read_results
+from massfit.io.results.read_results import read_results
 from massfit.pipeline import compare
 from massfit.pipeline.invent import simulate_to_folder
 from massfit.results.finished import FinishedRun

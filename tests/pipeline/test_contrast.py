@@ -12,10 +12,10 @@ import pytest
 from click.testing import CliRunner
 
 from massfit.cli.main import main
-from massfit.io.partial_folder import claimed
-from massfit.io.results_folder import write_results
+from massfit.io.results.partial_folder import claimed
+from massfit.io.results.results_folder import write_results
 from massfit.phasor import as_components, delay_days
-from massfit.report.contrast_text import contrast_text
+from massfit.report.words.contrast_text import contrast_text
 from massfit.results.contrast import contrast
 from massfit.results.estimate import Estimate
 from massfit.results.finished import FinishedRun, finished_run

@@ -16,8 +16,8 @@ from massfit.errors import InputError
 from massfit.fingerprint.admittance import site_fingerprints, water_vapour_phasor
 from massfit.fingerprint.loads import builtin_loads
 from massfit.fingerprint.ocean import OceanFunction
-from massfit.io.fingerprint_folder import CONVERGENCE_TABLE, FINGERPRINT_TABLE
-from massfit.io.network_file import read_sites_and_loads
+from massfit.io.network.network_file import read_sites_and_loads
+from massfit.io.results.fingerprint_folder import CONVERGENCE_TABLE, FINGERPRINT_TABLE
 from massfit.network import Network
 from massfit.phasor import as_complex, delay_days
 from massfit.pipeline.fingerprint_study import study_fingerprint
@@ -250,7 +250,7 @@ def test_results_of_another_command_are_left_alone(folder: Path, network_folder:
 
 
 def test_a_name_like_a_formula_stays_text_in_a_spreadsheet(study: FingerprintStudy, tmp_path: Path) -> None:
-    from massfit.io.fingerprint_folder import _write_table
+    from massfit.io.results.fingerprint_folder import _write_table
 
     rows = [replace(row, site="=1+1", member="@SUM") for row in site_rows(study.dataset)]
     _write_table(tmp_path / "table.csv", rows)

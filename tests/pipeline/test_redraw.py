@@ -8,8 +8,8 @@ from click.testing import CliRunner
 
 from massfit.cli.main import main
 from massfit.errors import InputError
-from massfit.io.read_results import read_results
-from massfit.io.results_folder import file_digest
+from massfit.io.results.read_results import read_results
+from massfit.io.results.results_folder import file_digest
 from massfit.pipeline.save import report_to_folder, save_results
 from massfit.results.estimate import Estimate
 

@@ -14,8 +14,8 @@ from massfit.network import Network, ReducedSite
 from massfit.pipeline.estimate import estimate
 from massfit.posterior.importance import ScalePosterior
 from massfit.posterior.sample import sample_posterior
-from massfit.report.draw import draw_figures
-from massfit.report.page import report_page
+from massfit.report.figures.draw import draw_figures
+from massfit.report.pages.run_page import report_page
 from massfit.results.estimate import Estimate
 from massfit.results.finished import finished_run
 

@@ -16,8 +16,8 @@ import xarray as xr
 
 import massfit
 from massfit.errors import InputError
-from massfit.io.partial_folder import claimed
-from massfit.io.read_results import read_results
+from massfit.io.results.partial_folder import claimed
+from massfit.io.results.read_results import read_results
 from massfit.pipeline.invent import simulate_to_folder
 from massfit.pipeline.save import estimate_to_folder
 from massfit.pipeline.workers import Workers
@@ -208,7 +208,7 @@ def test_old_results_stay_until_new_ones_are_whole(
         raise KeyboardInterrupt
 
     monkeypatch.setattr("massfit.pipeline.save.estimate", lambda *_, **__: run)
-    monkeypatch.setattr("massfit.io.results_folder.write_dataset", stop)
+    monkeypatch.setattr("massfit.io.results.results_folder.write_dataset", stop)
     with pytest.raises(KeyboardInterrupt):
         estimate_to_folder(network, place, overwrite=True)
     assert {path.name for path in place.iterdir()} == {"run.json", "estimate.json"}

@@ -12,9 +12,9 @@ import pytest
 import xarray as xr
 
 from massfit.errors import InputError
-from massfit.io import results_folder
-from massfit.io.partial_folder import claimed
-from massfit.io.results_folder import write_results
+from massfit.io.results import results_folder
+from massfit.io.results.partial_folder import claimed
+from massfit.io.results.results_folder import write_results
 from massfit.pipeline import save
 from massfit.pipeline.save import save_results
 from massfit.results.estimate import Estimate

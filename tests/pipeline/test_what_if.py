@@ -15,7 +15,7 @@ from massfit.pipeline.save import save_results
 from massfit.pipeline.sites import SiteTask
 from massfit.pipeline.what_if import other_treatments
 from massfit.records.record import DailyRecord
-from massfit.report.text import summary_text
+from massfit.report.words.run_text import summary_text
 from massfit.results.estimate import Estimate
 from massfit.settings import make_settings
 from massfit.simulate.network import simulate_network

@@ -148,9 +148,7 @@ def test_a_poor_proposal_is_fitted_anew_and_the_answer_stays(invent, regression)
     model = regression(invent(sites=12, placed=True), group_scatter=True)
     good = fit_proposal(model, PRIOR, rng=np.random.default_rng(1))
     poor = Proposal(good.centre + 1.5, 1.8 * good.root, good.prediction)
-    fine, coarse = (
-        route_of(model, start=start, draws=6_000, rng=np.random.default_rng(2)) for start in (good, poor)
-    )
+    fine, coarse = (route_of(model, start=start, draws=6_000, rng=np.random.default_rng(2)) for start in (good, poor))
     sd = np.sqrt(np.diag(fine.covariance))
     # too few of its nodes count: more are drawn, from a proposal fitted anew
     assert len(coarse.weight) > 6_000 >= len(fine.weight)

@@ -86,9 +86,7 @@ def test_a_mixture_hands_on_its_moments(invent):
     seen = invent(sites=1, models=2).observations
     parts = np.array([[[0.0, 0.0], [10.0, 0.0]], [[4.0, 2.0], [14.0, 2.0]]])
     covariance = np.array([[[9.0, 1.0], [1.0, 4.0]], [[1.0, 0.0], [0.0, 1.0]]])
-    mixture = replace(
-        seen, weight=np.array([[0.25, 0.75]]), part_phasor=parts[None], part_covariance=covariance[None]
-    )
+    mixture = replace(seen, weight=np.array([[0.25, 0.75]]), part_phasor=parts[None], part_covariance=covariance[None])
     # second moments of a mixture by hand: shifts of 3 and 1 of the four units between the parts
     step = np.array([4.0, 2.0])
     expected = 0.25 * covariance[0] + 0.75 * covariance[1] + 0.25 * 0.75 * np.outer(step, step)

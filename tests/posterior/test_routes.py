@@ -189,6 +189,7 @@ def test_nested_sampling_agrees_on_evidence_and_moments(invent, regression, stud
     model = regression(network, student=student, atmosphere_sd=1e-6)
     tiny = np.array([30.0, 1e-6, 1e-6])
     route = integrate_scales(model, tiny, draws=10_000)
+
     def transform(unit):
         annual = stats.norm.ppf(unit[:2], scale=500.0)
         scale = 30.0 * stats.t.ppf(0.5 + 0.5 * unit[2], 4)

@@ -62,9 +62,7 @@ def test_leaving_out_agrees_with_the_dense_prediction_after_a_direct_refit(inven
 @pytest.mark.parametrize("student", [False, True], ids=["normal", "student"])
 def test_a_site_that_is_wrong_stands_out_and_the_others_do_not(invent, regression, student):
     network = invent(sites=12)
-    clean, wrong = (
-        check(each, regression, student=student) for each in (network, moved(network, 4, [250.0, -100.0]))
-    )
+    clean, wrong = (check(each, regression, student=student) for each in (network, moved(network, 4, [250.0, -100.0])))
     assert wrong[4].outlier_probability > 0.9
     assert wrong[4].standardised_residual > 3.0
     assert max(c.outlier_probability for c in clean) < 0.5

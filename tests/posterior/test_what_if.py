@@ -39,9 +39,7 @@ def test_every_choice_is_there_and_changes_one_thing(base: Variant) -> None:
     changed = {}
     for name, variant in variants.items():
         parts = [
-            key
-            for key in ("settings", "priors", "atmosphere_sd_hpa")
-            if getattr(variant, key) != getattr(base, key)
+            key for key in ("settings", "priors", "atmosphere_sd_hpa") if getattr(variant, key) != getattr(base, key)
         ]
         parts += [key for key in ("phasors", "fingerprints") if getattr(variant, key) is not getattr(base, key)]
         changed[name] = parts

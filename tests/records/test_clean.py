@@ -29,9 +29,7 @@ def test_missing_values_and_stamps_are_counted() -> None:
 
 def test_window_is_inclusive_and_exclusion_has_both_ends() -> None:
     gap = Interval(np.datetime64("2016-01-04T05:00"), np.datetime64("2016-01-04T07:00"), "ship overhead")
-    time, _, actions = usable_samples(
-        HOURS, np.zeros(240), exclude=[gap], start=date(2016, 1, 3), end=date(2016, 1, 4)
-    )
+    time, _, actions = usable_samples(HOURS, np.zeros(240), exclude=[gap], start=date(2016, 1, 3), end=date(2016, 1, 4))
     assert time[0] == np.datetime64("2016-01-03T00:00")
     assert time[-1] == np.datetime64("2016-01-04T23:00")
     assert time.size == 48 - 3

@@ -3,7 +3,7 @@ from pathlib import Path
 
 import pytest
 
-from massfit.io.write_network import write_network
+from massfit.io.network.write_network import write_network
 from massfit.simulate.network import simulate_network
 from massfit.simulate.options import SimulationOptions
 from massfit.simulate.story import command_line, tell_story

@@ -28,8 +28,6 @@ def units() -> list[Row]:
     ]
 
 
-
-
 GROUPS = (
     Group("Ocean-mean air pressure left in", "closed form after a published size",
           "0.63 hPa, highest in northern summer (15 July taken): Dorandeu & Le Traon (1999), J. Atmos. Oceanic "

@@ -6,7 +6,7 @@ import numpy as np
 import xarray as xr
 
 from massfit.annual.evidence import linear_fit
-from massfit.io.fields import month_phasor
+from massfit.io.fields.field_file import month_phasor
 from massfit.phasor import annual_basis, delay_days, phasor_from_peak
 from validation.registry import REFERENCE, Group, Row
 

@@ -9,10 +9,10 @@ from typing import Any
 import pytest
 
 from massfit.constants import STANDARD_GRAVITY
-from massfit.io.network_file import read_network
+from massfit.io.network.network_file import read_network
 from massfit.pipeline.estimate import estimate
 from massfit.pipeline.save import save_results
-from massfit.report.text import summary_text
+from massfit.report.words.run_text import summary_text
 from massfit.results.estimate import Estimate
 
 HERE = Path(__file__).parent

@@ -1,0 +1,1 @@
+"""Gridded fields, load files and Earth profiles."""

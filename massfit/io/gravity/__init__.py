@@ -1,0 +1,1 @@
+"""Files of the satellites' gravity fields and their tables."""

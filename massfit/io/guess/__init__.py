@@ -1,0 +1,1 @@
+"""What a folder of unknown files seems to hold."""

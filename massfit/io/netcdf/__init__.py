@@ -1,0 +1,1 @@
+"""NetCDF and HDF5 files, opened behind a guard."""

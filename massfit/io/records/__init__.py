@@ -1,0 +1,1 @@
+"""Record files of every kind to samples."""

@@ -1,0 +1,1 @@
+"""Folders of results: written in parts, read back whole."""

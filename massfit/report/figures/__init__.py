@@ -1,0 +1,1 @@
+"""Figures: arrays or Datasets in, a matplotlib figure out."""

@@ -1,0 +1,124 @@
+"""The one-page report: self-contained, no scripts, no network."""
+
+from collections.abc import Mapping
+from typing import Any
+
+from jinja2 import Environment, StrictUndefined
+
+from massfit.report.pages.page_parts import as_data, made_with
+from massfit.report.pages.page_tables import (
+    Table,
+    actions_table,
+    alternatives_table,
+    calibration_table,
+    corrections_table,
+    fingerprint_table,
+    input_table,
+    left_out_table,
+    predictive_table,
+    quantities_table,
+    shares_table,
+    site_table,
+    years_table,
+)
+from massfit.report.pages.page_template import TEMPLATE
+from massfit.report.pages.satellite_tables import satellite_tables
+from massfit.report.words.comparison_text import verdict
+from massfit.report.words.run_text import ALTERNATIVES_NOTE, trust_sentence, warning_lines
+from massfit.results.answer import answer_sentence
+from massfit.results.finished import FinishedRun
+
+PICTURES = {
+    "phasor_plane": "The network's answer (blue: mean, 50 and 95 % regions, drawn from draws smoothed by 0.4 of their "
+    "standard deviation) and what each site alone says of it (orange: the site's phasor divided by its fingerprint, "
+    "with the 50 % ellipse of its record error); triangles: where the answer would move with one ocean model alone.",
+    "network_map": "The sites, coloured by the amplitude of the annual cycle at the site relative to the ocean mean.",
+    "fingerprint": "How each site sees the cycle under each load member: amplitude relative to the ocean mean, and "
+    "delay.",
+    "moved_site": "How far the answer moves as the site whose record is surest is moved off, in the direction of its "
+    "own cycle: under normal scatter it follows; under Student-t scatter a site that is far off loses its say.",
+    "corner": "Posterior of the answer and of the scales of the model; contours enclose 50 and 95 %, dashed lines mark "
+    "the median and the central 95 %.",
+    "records": "Each site: daily record with fitted drift, deployments in turn blue and orange; the series subtracted "
+    "from it; what remains, with the fitted annual cycle. Every row has its own scale; one day in 250, the most "
+    "extreme, is out of sight.",
+    "satellite": "Network, satellites and other determinations of the water of the whole ocean, with 95 % ellipses; "
+    "the satellites' ocean mean of each month as the kernel sees it, less its mean, and the annual cycle fitted to it.",
+}
+"""Name of each figure and what it shows. Further pages of records end in ``_2`` and so on."""
+
+
+def report_page(run: FinishedRun, pictures: Mapping[str, bytes]) -> str:
+    """Fill the report.
+
+    Parameters
+    ----------
+    run : FinishedRun
+    pictures : mapping of str to bytes
+        PNG images under the names of `PICTURES`; one that ends in ``_column`` is shown on narrow screens instead.
+
+    Returns
+    -------
+    str
+        HTML with everything inside it. A section whose stage was not run is absent.
+    """
+    summary, provenance = run.summary, run.provenance
+    template = Environment(autoescape=True, undefined=StrictUndefined, trim_blocks=True).from_string(TEMPLATE)
+    return template.render(
+        summary=summary,
+        version=provenance["massfit"],
+        sentence=answer_sentence(summary),
+        images=as_data(pictures),
+        captions={name: PICTURES[_stem(name)] for name in pictures if not name.endswith("_column")},
+        alternatives_text=_alternative_texts(summary),
+        record_pictures=[name for name in pictures if _stem(name) == "records"],
+        warnings=warning_lines(summary),
+        trust=trust_sentence(summary),
+        satellite_verdict=verdict(summary["comparison"]) if "comparison" in summary else "",
+        alternatives_note=f"{ALTERNATIVES_NOTE[0].upper()}{ALTERNATIVES_NOTE[1:]}.",
+        tables=_tables(run),
+        made_with=made_with(provenance),
+    )
+
+
+def _stem(name: str) -> str:
+    return "records" if name.startswith("records") else name.removesuffix("_column")
+
+
+def _tables(run: FinishedRun) -> dict[str, Table | None]:
+    summary = run.summary
+    return {
+        "quantities": quantities_table(summary),
+        "shares": shares_table(summary),
+        "years": years_table(summary),
+        "alternatives": alternatives_table(summary),
+        "predictive": predictive_table(summary),
+        "calibration": calibration_table(summary),
+        "sites": site_table(summary),
+        "left_out": left_out_table(summary),
+        "corrections": corrections_table(summary),
+        "fingerprint": fingerprint_table(summary, run.datasets["fingerprints.nc"]),
+        "actions": actions_table(summary, run.datasets.get("reduced_records.nc")),
+        "inputs": input_table(run.provenance),
+        **satellite_tables(summary),
+    }
+
+
+def _alternative_texts(summary: Mapping[str, Any]) -> dict[str, str]:
+    """Say in words what each picture shows; the caption beside it says how to read it."""
+    count = len(summary["sites"])
+    flagged = [site["id"] for site in summary["sites"] if site["warnings"]]
+    return {
+        "phasor_plane": f"Plane of in phase and quadrature with {count} sites about the answer. "
+        + answer_sentence(summary),
+        "network_map": f"World map of {count} sites; positions and ratios are in the table below. With a warning: "
+        + (", ".join(flagged) or "none")
+        + ".",
+        "fingerprint": "Amplitude ratio and delay of each site under each load member; ranges are in the table below.",
+        "moved_site": "Shift of the answer against the offset of one site, under normal and Student-t site scatter.",
+        "corner": "Posterior densities of amplitude and peak day, "
+        + answer_sentence(summary).removeprefix("The annual cycle of ocean mass has an "),
+        "satellite": "Determinations in the plane of in phase and quadrature, and the monthly ocean mean of the "
+        "satellites; the numbers are in the tables below.",
+        "records": "Daily records, corrections and remainders over time; what was done to each is in the tables below.",
+    }

@@ -1,0 +1,1 @@
+"""What is printed: plain text for a terminal."""
