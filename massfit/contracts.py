@@ -163,6 +163,41 @@ SITE_PHASORS = Contract(
 )
 
 
+QUIETNESS_MAP = Contract(
+    "quietness map",
+    # what `massfit screen` makes of the bottom pressure of ocean models: how still the sea floor is in every cell.
+    # `lat` and `lon` are centres of cells in degrees, both ascending, `lon` from [0, 360); NaN where no model has
+    # water. The variables without a model axis are of the ensemble: root mean squares over the models
+    {
+        # less ocean mean, trend, annual and semi-annual cycle
+        "sd": Variable(("lat", "lon"), "Pa"),
+        "annual_mean_sd": Variable(("lat", "lon"), "Pa"),
+        # of one component of the annual phasor that a record of so many years would show of the dynamics, as the
+        # models have it; and times `inflation`, which is what to plan with. Coordinate `record_years`
+        "annual_sd": Variable(("record_years", "lat", "lon"), "Pa"),
+        "expected_annual_sd": Variable(("record_years", "lat", "lon"), "Pa"),
+        "inflation": Variable(("lat", "lon"), "1"),
+        # one-sided spectral density at the annual line, and the power by which it falls with frequency there
+        "annual_density": Variable(("lat", "lon"), "Pa2 yr"),
+        "slope": Variable(("lat", "lon"), "1"),
+        # annual phasor of the dynamics, mean over the models
+        "dynamic_phasor": Variable(("lat", "lon", "component"), "Pa"),
+        "models": Variable(("lat", "lon"), "1"),
+    },
+    attributes=("reference_year", "inflation_factor", "quiet_sd_pa"),
+    optional={
+        # standard deviation over the models of one component of their annual phasors; not there for a single model
+        "disagreement": Variable(("lat", "lon"), "Pa"),
+        "model_sd": Variable(("model", "lat", "lon"), "Pa"),
+        "model_annual_mean_sd": Variable(("model", "lat", "lon"), "Pa"),
+        "model_annual_sd": Variable(("model", "record_years", "lat", "lon"), "Pa"),
+        "model_phasor": Variable(("model", "lat", "lon", "component"), "Pa"),
+        # share of the times at which the model has a value
+        "model_coverage": Variable(("model", "lat", "lon"), "1"),
+    },
+)
+
+
 def require(dataset: xr.Dataset, contract: Contract) -> None:
     """Check a Dataset against its contract.
 

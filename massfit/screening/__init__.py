@@ -1,0 +1,1 @@
+"""Quietness of the sea floor from the bottom pressure of ocean models."""
