@@ -15,7 +15,8 @@ from massfit.network import Network
 from massfit.pipeline.compare import with_comparison
 from massfit.pipeline.estimate import estimate
 from massfit.pipeline.progress import Progress, StageTimes, ignore
-from massfit.report.figures.draw import draw_figures, png
+from massfit.report.figures.draw import draw_figures
+from massfit.report.figures.render import png
 from massfit.report.pages.run_page import report_page
 from massfit.results.estimate import Estimate
 from massfit.results.finished import FinishedRun, finished_run

@@ -9,8 +9,8 @@ from massfit.io.results.partial_folder import claimed
 from massfit.io.results.results_folder import check_output
 from massfit.pipeline.fingerprint_study import FINEST_DEGREE, study_fingerprint
 from massfit.pipeline.progress import Progress, ignore
-from massfit.report.figures.draw import png
 from massfit.report.figures.fingerprint_figures import draw_fingerprint
+from massfit.report.figures.render import png
 from massfit.report.pages.fingerprint_page import fingerprint_page
 from massfit.results.fingerprint import FingerprintStudy
 

@@ -197,6 +197,26 @@ def fingerprint_dataset(
     return _described(joined, network, reference_year)
 
 
+def map_agreement(dataset: xr.Dataset) -> tuple[float, float, str]:
+    """Say how far the map, interpolated to the sites, is from the sites' own admittances.
+
+    Parameters
+    ----------
+    dataset : xarray.Dataset
+        contracts.FINGERPRINT_STUDY.
+
+    Returns
+    -------
+    middle, largest : float
+        Median and largest distance.
+    worst : str
+        Site of the largest.
+    """
+    distance = dataset["map_difference"].values
+    farthest = int(np.argmax(distance))
+    return float(np.median(distance)), float(distance[farthest]), str(dataset["site"].values[farthest])
+
+
 def site_rows(dataset: xr.Dataset) -> list[Row]:
     """Every number of the table, site by site: the mean, the members, the reference cases.
 

@@ -1,21 +1,19 @@
 """One site at a glance: record, corrections, remainder, spectrum, whiteness, years, and what each correction did."""
 
-import io
 import textwrap
 from collections.abc import Sequence
 from typing import Any
 
 import numpy as np
 from matplotlib.axes import Axes
-from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.dates import AutoDateLocator, ConciseDateFormatter, date2num
 from matplotlib.figure import Figure
 from matplotlib.ticker import FuncFormatter, MaxNLocator, NullLocator
 from numpy.typing import NDArray
-from PIL import Image
 
 from massfit.report.figures.ellipse import normal_ellipse
 from massfit.report.figures.labels import place_labels
+from massfit.report.figures.render import png
 from massfit.report.figures.style import (
     ANSWER,
     LAND,
@@ -34,7 +32,7 @@ from massfit.results.site_sheet import SiteSheet
 Floats = NDArray[np.float64]
 
 DOTS_PER_INCH = 150
-_COLOURS = 72  # of the palette of a picture: lines, their edges, and a few shades
+
 _LEFT, _RIGHT = 14.0, 4.0
 _BANDS = ((38.0, "daily record; fitted drift dashed, its 95 % band / hPa"), (28.0, "subtracted / hPa"),
           (33.0, "what remains; fitted annual cycle / hPa"))  # fmt: skip
@@ -54,14 +52,7 @@ def sheet_png(content: SiteSheet) -> bytes:
     -------
     bytes
     """
-    figure = site_sheet(content)
-    figure.set_dpi(DOTS_PER_INCH)
-    canvas, packed = FigureCanvasAgg(figure), io.BytesIO()
-    with house_style():
-        canvas.draw()  # type: ignore[no-untyped-call]
-    drawn = Image.frombuffer("RGBA", canvas.get_width_height(), bytes(canvas.buffer_rgba()))  # type: ignore[no-untyped-call]
-    drawn.convert("RGB").quantize(_COLOURS, dither=Image.Dither.NONE).save(packed, format="png")
-    return packed.getvalue()
+    return png(site_sheet(content), dots_per_inch=DOTS_PER_INCH, colours=72)  # lines, their edges, and a few shades
 
 
 def site_sheet(content: SiteSheet, *, width_mm: float = PAGE_WIDTH_MM) -> Figure:

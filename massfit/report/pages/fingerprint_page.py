@@ -1,17 +1,17 @@
-"""The page of a fingerprint study: self-contained, no scripts, no network."""
+"""The page of a fingerprint study: self-contained, no network."""
 
 from collections.abc import Mapping
 
 import numpy as np
 import xarray as xr
-from jinja2 import Environment, StrictUndefined
 
 from massfit.constants import PASCAL_PER_HPA
 from massfit.display import counted
 from massfit.phasor import as_complex
-from massfit.report.pages.page_parts import MACROS, STYLE, as_data, made_with
+from massfit.report.pages.frame import filled
+from massfit.report.pages.page_parts import as_data, made_with
 from massfit.report.pages.page_tables import Table, input_table
-from massfit.results.fingerprint import FingerprintStudy, degree_rows, site_rows
+from massfit.results.fingerprint import FingerprintStudy, degree_rows, map_agreement, site_rows
 
 PICTURES = {
     "ratio_map": "Amplitude of the annual cycle at each place over that of the ocean mean, mean over the load members. "
@@ -29,83 +29,6 @@ PICTURES = {
 }
 """Name of each figure and what it shows. Further pages end in ``_2`` and so on."""
 
-_TEMPLATE = (
-    MACROS
-    + """<!DOCTYPE html>
-<html lang="en">
-<head>
-<meta charset="utf-8">
-<meta http-equiv="Content-Security-Policy"
- content="default-src 'none'; img-src data:; style-src 'unsafe-inline'">
-<meta name="viewport" content="width=device-width, initial-scale=1">
-<title>{{ network }}: fingerprint</title>
-<style>"""
-    + STYLE
-    + """</style>
-</head>
-<body>
-<header>
-<h1>{{ network }}</h1>
-<p class="small">Fingerprint of the annual cycle of ocean mass: how each site sees it. massfit {{ version }}. Results
-are for research.</p>
-</header>
-<main>
-<p class="answer">{{ sentence }}</p>
-<nav aria-label="Contents"><ul>
-{% if warnings %}<li><a href="#beware">Beware</a></li>{% endif %}
-<li><a href="#sites">The sites</a></li>
-<li><a href="#maps">The maps</a></li>
-<li><a href="#members">The members</a></li>
-<li><a href="#footprints">The footprints</a></li>
-<li><a href="#degrees">Does it settle</a></li>
-<li><a href="#assumed">What was assumed</a></li>
-<li><a href="#provenance">Where it comes from</a></li>
-</ul></nav>
-{% if warnings %}
-
-<h2 id="beware">Beware</h2>
-<ul>{% for text in warnings %}<li>{{ text }}</li>{% endfor %}</ul>
-{% endif %}
-
-<h2 id="sites">The sites</h2>
-{{ table('sites') }}
-<p class="small">Ratio: amplitude at the site over that of the ocean mean, of the mean over the load members; delay:
-days by which the site peaks later. Spreads: standard deviations over the members. Every member by itself is in
-fingerprints.csv. Air over land: amplitude of the pressure that its attraction and load cause at the site, while no
-water moves.</p>
-{% if tables.left_out %}{{ table('left_out') }}{% endif %}
-
-<h2 id="maps">The maps</h2>
-{{ figure('ratio_map') }}
-{{ figure('delay_map') }}
-{% if 'spread_map' in captions %}{{ figure('spread_map') }}{% endif %}
-<p class="small">{{ map_note }}</p>
-
-<h2 id="members">The members</h2>
-{% for name in pages.members %}{{ figure(name) }}{% endfor %}
-
-<h2 id="footprints">The footprints</h2>
-{% for name in pages.footprints %}{{ figure(name) }}{% endfor %}
-
-<h2 id="degrees">Does it settle</h2>
-{{ figure('degrees') }}
-{{ table('degrees') }}
-<p class="small">Ratio and delay of the mean over the members at the finest degree, and what every other degree
-changes them by.</p>
-
-<h2 id="assumed">What was assumed</h2>
-<ul>{% for text in assumptions %}<li>{{ text }}</li>{% endfor %}</ul>
-
-<h2 id="provenance">Where it comes from, and how to repeat it</h2>
-<dl>{% for name, value in made_with %}<dt>{{ name }}</dt><dd>{{ value }}</dd>{% endfor %}</dl>
-<p class="small">Every setting is in run.json beside this page, every number in fingerprints.nc.</p>
-{% if tables.inputs %}{{ table('inputs') }}{% endif %}
-</main>
-</body>
-</html>
-"""
-)
-
 
 def fingerprint_page(study: FingerprintStudy, pictures: Mapping[str, bytes]) -> str:
     """Fill the page.
@@ -122,8 +45,8 @@ def fingerprint_page(study: FingerprintStudy, pictures: Mapping[str, bytes]) -> 
         HTML with everything inside it.
     """
     wide = [name for name in pictures if not name.endswith("_column")]
-    template = Environment(autoescape=True, undefined=StrictUndefined, trim_blocks=True).from_string(_TEMPLATE)
-    return template.render(
+    return filled(
+        "fingerprint.html",
         network=study.network,
         version=study.provenance["massfit"],
         sentence=fingerprint_sentence(study.dataset),
@@ -181,13 +104,11 @@ def map_note(dataset: xr.Dataset) -> str:
     -------
     str
     """
-    difference = dataset["map_difference"].values
-    worst = int(np.argmax(difference))
+    middle, largest, worst = map_agreement(dataset)
     return (
         f"Maps hold values at the centres of cells of one degree. Interpolated to the sites they miss the sites' own "
-        f"numbers by {np.median(difference):.5f} in the median and {difference[worst]:.5f} at most "
-        f"({dataset['site'].values[worst]}): near coasts and loads the sea level bends within a cell. Numbers are "
-        "those of the table. Over land nothing is drawn."
+        f"numbers by {middle:.5f} in the median and {largest:.5f} at most ({worst}): near coasts and loads the sea "
+        "level bends within a cell. Numbers are those of the table. Over land nothing is drawn."
     )
 
 

@@ -1,10 +1,9 @@
-"""The one-page report: self-contained, no scripts, no network."""
+"""The one-page report: self-contained, no network."""
 
 from collections.abc import Mapping
 from typing import Any
 
-from jinja2 import Environment, StrictUndefined
-
+from massfit.report.pages.frame import filled
 from massfit.report.pages.page_parts import as_data, made_with
 from massfit.report.pages.page_tables import (
     Table,
@@ -21,7 +20,6 @@ from massfit.report.pages.page_tables import (
     site_table,
     years_table,
 )
-from massfit.report.pages.page_template import TEMPLATE
 from massfit.report.pages.satellite_tables import satellite_tables
 from massfit.report.words.comparison_text import verdict
 from massfit.report.words.run_text import ALTERNATIVES_NOTE, trust_sentence, warning_lines
@@ -63,8 +61,8 @@ def report_page(run: FinishedRun, pictures: Mapping[str, bytes]) -> str:
         HTML with everything inside it. A section whose stage was not run is absent.
     """
     summary, provenance = run.summary, run.provenance
-    template = Environment(autoescape=True, undefined=StrictUndefined, trim_blocks=True).from_string(TEMPLATE)
-    return template.render(
+    return filled(
+        "run.html",
         summary=summary,
         version=provenance["massfit"],
         sentence=answer_sentence(summary),

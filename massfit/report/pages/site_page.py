@@ -1,13 +1,12 @@
-"""The page of `massfit phasors`: every site on its own, self-contained, no scripts, no network."""
+"""The page of `massfit phasors`: every site on its own, self-contained, no network."""
 
 import re
 from collections.abc import Mapping, Sequence
 from typing import Any
 
-from jinja2 import Environment, StrictUndefined
-
 from massfit.phasor import peak_days
-from massfit.report.pages.page_parts import MACROS, STYLE, as_data, made_with
+from massfit.report.pages.frame import filled
+from massfit.report.pages.page_parts import as_data, made_with
 from massfit.report.pages.page_tables import Table, actions_table, corrections_table, input_table, left_out_table
 from massfit.results.answer import spoken_date
 from massfit.results.finished import FinishedRun
@@ -53,8 +52,8 @@ def site_page(run: FinishedRun, pictures: Mapping[str, bytes]) -> str:
     summary = run.summary
     drawn = [site["id"] for site in summary["sites"] if site.get("drift")]
     names = dict(zip(drawn, pictures, strict=True))
-    template = Environment(autoescape=True, undefined=StrictUndefined, trim_blocks=True).from_string(_TEMPLATE)
-    return template.render(
+    return filled(
+        "sites.html",
         summary=summary,
         version=run.provenance["massfit"],
         sites=[(site, names.get(site["id"])) for site in summary["sites"]],
@@ -162,85 +161,3 @@ def _period(days: float) -> str:
 
 def _share(share: float) -> str:
     return f"{100.0 * share:.0f} %" if share else ""
-
-
-_TEMPLATE = (
-    MACROS
-    + """<!DOCTYPE html>
-<html lang="en">
-<head>
-<meta charset="utf-8">
-<meta http-equiv="Content-Security-Policy"
- content="default-src 'none'; img-src data:; style-src 'unsafe-inline'">
-<meta name="viewport" content="width=device-width, initial-scale=1">
-<title>{{ summary.network }}: the sites</title>
-<style>"""
-    + STYLE
-    + """</style>
-</head>
-<body>
-<header>
-<h1>{{ summary.network }}: the sites</h1>
-<p class="small">Annual phasor of each site of the network, and what it was made of; no network answer. massfit
-{{ version }}. Results are for research.</p>
-</header>
-<main>
-{{ table('sites') }}
-<p class="small">Days: those that the fit used; coverage: their share of the days from the first to the last. Amplitude
-and peak: mean over the models, with their standard deviations to first order. Record sd: of what remains of the daily
-record. Widened by drift: sigma of the phasor over that with level and annual cycle alone. Whitened mean square: 1 where
-the fitted noise is that of the record. * has a warning.</p>
-<nav aria-label="Contents"><ul>
-{% if summary.warnings %}<li><a href="#beware">Beware</a></li>{% endif %}
-<li><a href="#assumed">What was assumed</a></li>
-{% if tables.corrections %}<li><a href="#corrections">The corrections</a></li>{% endif %}
-{% for site, name in sites %}<li><a href="#site{{ loop.index }}">{{ site.id }}</a></li>{% endfor %}
-{% if tables.actions %}<li><a href="#records">The records</a></li>{% endif %}
-<li><a href="#provenance">Where it comes from</a></li>
-</ul></nav>
-{% if summary.warnings %}
-
-<h2 id="beware">Beware</h2>
-<ul>{% for text in summary.warnings %}<li>{{ text }}</li>{% endfor %}</ul>
-{% endif %}
-
-<h2 id="assumed">What was assumed</h2>
-<ul>{% for text in summary.assumptions %}<li>{{ text }}</li>{% endfor %}</ul>
-{% if tables.left_out %}{{ table('left_out') }}{% endif %}
-{% if tables.corrections %}
-
-<h2 id="corrections">The corrections and what each did</h2>
-<p>Annual cycle, in phase and quadrature, hPa, of the daily record and of every series that was taken off it, by the
-linear operator of the site's own fit. The phasor of the site, the tides, the air pressure and the mean of the models
-add up to the record. A series that is zero throughout is not listed.</p>
-{{ table('corrections') }}
-{% if tables.lines %}
-<h3>Long-period tides</h3>
-{{ table('lines') }}
-{% endif %}
-{% endif %}
-
-<h2 id="figures">How to read the figures</h2>
-<p>{{ caption }}</p>
-{% for site, name in sites %}
-
-<h2 id="site{{ loop.index }}">{{ site.id }}</h2>
-<p>{{ spoken[site.id][0] | upper }}{{ spoken[site.id][1:] }}</p>
-{% if site.warnings %}<ul>{% for text in site.warnings %}<li>{{ text }}</li>{% endfor %}</ul>{% endif %}
-{% if name %}{{ figure(name) }}{% else %}<p>This site was reduced elsewhere: there is no record to show.</p>{% endif %}
-{% endfor %}
-{% if tables.actions %}
-
-<h2 id="records">Everything done to each record</h2>
-{{ table('actions') }}
-{% endif %}
-
-<h2 id="provenance">Where it comes from, and how to repeat it</h2>
-<dl>{% for name, value in made_with %}<dt>{{ name }}</dt><dd>{{ value }}</dd>{% endfor %}</dl>
-<p class="small">Every setting is in run.json beside this page.</p>
-{% if tables.inputs %}{{ table('inputs') }}{% endif %}
-</main>
-</body>
-</html>
-"""
-)

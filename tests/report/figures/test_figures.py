@@ -10,13 +10,13 @@ from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 
 from massfit.report.figures.corner import corner_figure
-from massfit.report.figures.draw import png
 from massfit.report.figures.fingerprint_members import fingerprint_members
 from massfit.report.figures.labels import place_labels
 from massfit.report.figures.moved_site import moved_site_figure
 from massfit.report.figures.network_map import network_map
 from massfit.report.figures.phasor_plane import phasor_plane
 from massfit.report.figures.record_panels import RecordRow, record_panels
+from massfit.report.figures.render import png
 from massfit.report.figures.style import placed_axes, sheet
 from massfit.report.words.names import fitted
 

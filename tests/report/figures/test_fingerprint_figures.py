@@ -8,10 +8,10 @@ from matplotlib.figure import Figure
 
 from massfit.fingerprint.maps import MAP_LATITUDE_DEG, MAP_LONGITUDE_DEG
 from massfit.phasor import as_components, delay_days
-from massfit.report.figures.draw import png
 from massfit.report.figures.fingerprint_degrees import degree_panels
 from massfit.report.figures.fingerprint_figures import draw_fingerprint
 from massfit.report.figures.fingerprint_maps import even_bands, footprint_panels, signed_bands, world_map
+from massfit.report.figures.render import png
 from massfit.report.figures.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM
 from massfit.report.pages.fingerprint_page import fingerprint_sentence
 
