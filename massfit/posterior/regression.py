@@ -106,8 +106,10 @@ class LinearModel:
     columns : Columns
     design : (n_member, n_row, n_column) array
         Pa per prior standard deviation, and per scale where the standard deviation is one.
-    annual_sd, year_sd : float
-        Prior standard deviations of A and of the cycle of a year, Pa.
+    annual_sd, year_sd, atmosphere_sd : float
+        Prior standard deviations of A, of the cycle of a year, and of the air-pressure correction, Pa.
+    truth : float
+        r: variance of the truth about the models' centre in units of s_common^2.
     student : bool
         Whether the site scatter is Student's.
     """
@@ -118,6 +120,8 @@ class LinearModel:
     design: Floats
     annual_sd: float
     year_sd: float
+    atmosphere_sd: float
+    truth: float
     student: bool
 
     @property
@@ -231,7 +235,8 @@ def linear_model(
     ]
     ends = tuple(np.cumsum([block.shape[-1] for block in blocks]).tolist())
     design = np.concatenate([np.broadcast_to(b, (len(admittance), *b.shape[-2:])) for b in blocks], axis=2)
-    return LinearModel(rows, sharing, Columns(ends, shared_place), design, annual_sd, year_sd, student)
+    columns = Columns(ends, shared_place)
+    return LinearModel(rows, sharing, columns, design, annual_sd, year_sd, atmosphere_sd, truth, student)
 
 
 def without_site(model: LinearModel, site: int) -> LinearModel:

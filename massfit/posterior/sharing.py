@@ -80,8 +80,8 @@ def find_sharing(observations: Observations, group_scatter: bool | float) -> Sha
     return Sharing(place, group, alone, *_year_loadings(observations), _unmodelled(observations))
 
 
-def distances_km(position: Floats) -> Floats:
-    """Great-circle distances (n, n), km, between positions (n, 2) in radians.
+def distances_km(position: Floats, others: Floats | None = None) -> Floats:
+    """Great-circle distances (n, m), km, between positions (n, 2) and others (m, 2), in radians; themselves by default.
 
     Examples
     --------
@@ -89,10 +89,10 @@ def distances_km(position: Floats) -> Floats:
     >>> round(float(quarter / (6371.0 * np.pi / 2)), 6)
     1.0
     """
-    latitude, longitude = position.T
-    east, north = longitude[:, None] - longitude, latitude[:, None] - latitude
+    (latitude, longitude), (latitude2, longitude2) = position.T, (position if others is None else others).T
+    east, north = longitude[:, None] - longitude2, latitude[:, None] - latitude2
     # the haversine form keeps its digits for sites that lie close together
-    square = np.sin(north / 2) ** 2 + np.cos(latitude[:, None]) * np.cos(latitude) * np.sin(east / 2) ** 2
+    square = np.sin(north / 2) ** 2 + np.cos(latitude[:, None]) * np.cos(latitude2) * np.sin(east / 2) ** 2
     return np.asarray(2.0 * EARTH_RADIUS_KM * np.arcsin(np.sqrt(np.clip(square, 0.0, 1.0))))
 
 
