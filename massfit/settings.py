@@ -193,7 +193,7 @@ class Gravity:
     Parameters
     ----------
     fields : tuple of str
-        One or more solutions, each a folder, archive or file of monthly fields.
+        One or more solutions, each a folder, archive or file of monthly fields, or a model with annual terms.
     degree_one, low_degree : str, optional
         Tables of degree one, and of C20 and C30.
     atmosphere, dealiasing : str, optional
@@ -206,6 +206,12 @@ class Gravity:
         Ocean nearer to land is left out.
     smoothing_km : float
         Distance at which a Gaussian smoothing falls to one half; 0 for none.
+    site_smoothing_km : float
+        The same for the pressure at the recorders, where it is longer than `smoothing_km`: without it the striped
+        errors of monthly solutions hide the cycle at a point (common practice: 300 to 500 km).
+    model_sd_hpa : float, optional
+        Standard deviation of each component of the ocean mean of a model with annual terms, in place of what its
+        file states; a model for which neither is there is shown and not weighed.
     c20, c30 : str
         ``"replaced"`` by `low_degree` where that is given, or the field's ``"own"``.
     degree_zero : str
@@ -228,6 +234,8 @@ class Gravity:
     max_degree: Annotated[int, Field(ge=5, le=180)] = 60
     buffer_km: Annotated[float, Field(ge=0, le=2000)] = 300.0
     smoothing_km: Annotated[float, Field(ge=0, le=2000)] = 0.0
+    site_smoothing_km: Annotated[float, Field(ge=0, le=2000)] = 500.0
+    model_sd_hpa: Annotated[float, Field(gt=0, le=20)] | None = None
     c20: Literal["replaced", "own"] = "replaced"
     c30: Literal["replaced", "own"] = "replaced"
     degree_zero: Literal["best", "atmosphere", "water-vapour", "none"] = "best"

@@ -6,6 +6,7 @@ from typing import Any
 
 from massfit.errors import InputError
 from massfit.gravity.inputs import GravityInputs, Solution
+from massfit.gravity.model import used_degree
 from massfit.gravity.satellite import Context, replaced_names, satellite_mean
 
 
@@ -80,11 +81,11 @@ def _flipped(
         if chosen.smoothing_km
         else ("smoothed, half at 300 km", with_(smoothing_km=300.0), context)
     )
-    if chosen.max_degree > 40:
+    if used_degree(solution, chosen.max_degree) > 40:
         yield "degrees to 40", with_(max_degree=40), context
     name = "no alias lines" if chosen.alias_lines else "with alias lines"
     yield name, with_(alias_lines=not chosen.alias_lines), context
-    if context.window is not None:
+    if context.window is not None and not solution.models:
         yield "all months there are", inputs, replace(context, window=None)
     if inputs.dealiasing:
         name = "dealiasing product not restored" if chosen.restore_dealiasing else "dealiasing product restored"

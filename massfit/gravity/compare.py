@@ -12,9 +12,10 @@ from massfit.gravity.annual import ALIAS_DAYS
 from massfit.gravity.at_sites import SitePressure, geocentre_of, satellite_at_sites
 from massfit.gravity.bridge import BridgePart, bridged, largest_gap
 from massfit.gravity.choices import Choice, choice_table
-from massfit.gravity.comparison import Agreement, agreement
+from massfit.gravity.comparison import Agreement, agreement, shared_covariance
 from massfit.gravity.definitions import Definition, redefined
-from massfit.gravity.inputs import Determination, GravityInputs
+from massfit.gravity.field import GravityField
+from massfit.gravity.inputs import Determination, GravityInputs, Solution
 from massfit.gravity.satellite import Context, SatelliteMean, satellite_mean, unseen_degrees, vapour_degree_zero
 from massfit.phasor import admittance_matrix, as_complex, as_components
 from massfit.posterior.network_model import inflation
@@ -47,6 +48,9 @@ class NetworkAnswer:
     year_draws : (n, n_year, 2) array, optional
         Draws of the phasor of each year, Pa.
     years : tuple of int
+    by_member : (K,) array of complex, optional
+        The phasor under each load member, Pa; without it errors of the load members count as independent of those
+        on the side of the satellites.
     """
 
     phasor: complex
@@ -58,6 +62,7 @@ class NetworkAnswer:
     parts: Mapping[str, tuple[str, complex]]
     year_draws: NDArray[np.float64] | None = None
     years: tuple[int, ...] = ()
+    by_member: NDArray[np.complex128] | None = None
 
 
 @dataclass(frozen=True)
@@ -95,7 +100,7 @@ class GravityComparison:
     agreement : Agreement
         Network less satellites.
     others : tuple of (Determination, Agreement)
-        The analyst's other determinations, and network less each.
+        Models that state no error beside solutions that do, the analyst's other determinations, and network less each.
     choices : tuple of Choice
         Of the first solution.
     sites : tuple of SiteComparison
@@ -146,8 +151,8 @@ def compare_with_gravity(inputs: GravityInputs, answer: NetworkAnswer, context: 
         solutions,
         satellite,
         network,
-        _agree(network, satellite),
-        tuple((each, _agree(network, each)) for each in inputs.determinations),
+        _agree(network, satellite, _shared(answer, solutions)),
+        tuple((each, _agree(network, each)) for each in (*_unweighed(solutions), *inputs.determinations)),
         choice_table(inputs, inputs.solutions[0], context),
         _sites(inputs, solutions[0], answer, context),
         implied_geocentre(answer.phasor, context),
@@ -167,17 +172,41 @@ def together(solutions: Sequence[SatelliteMean]) -> Determination:
     Returns
     -------
     Determination
-        The covariances are averaged, not reduced by the count: the solutions share the satellites.
+        The covariances are averaged, not reduced by the count: the solutions share the satellites. Models that state no
+        error are in it only where there is nothing else.
     """
-    phasors = as_components(np.array([each.phasor for each in solutions]))
+    weighed = weighed_solutions(solutions)
+    phasors = as_components(np.array([each.phasor for each in weighed]))
     centre = phasors.mean(axis=0)
-    covariance = np.mean([each.covariance for each in solutions], axis=0)
-    count = len(solutions)
+    covariance = np.mean([each.covariance for each in weighed], axis=0)
+    count = len(weighed)
     if count > 1:
         departures = phasors - centre
         covariance = covariance + departures.T @ departures / count * inflation(count)
-    names = ", ".join(each.name for each in solutions)
-    return Determination("satellite gravity", names, complex(as_complex(centre)), covariance)
+    names = ", ".join(each.name for each in weighed)
+    stated = all(each.error_stated for each in weighed)
+    return Determination("satellite gravity", names, complex(as_complex(centre)), covariance, stated)
+
+
+def weighed_solutions(solutions: Sequence[SatelliteMean]) -> tuple[SatelliteMean, ...]:
+    """Solutions that state an error; all where none does."""
+    return tuple(each for each in solutions if each.error_stated) or tuple(solutions)
+
+
+def _unweighed(solutions: Sequence[SatelliteMean]) -> list[Determination]:
+    weighed = weighed_solutions(solutions)
+    method = "annual terms of a model, whose file states no error"
+    return [
+        Determination(each.name, method, each.phasor, each.covariance, False)
+        for each in solutions if each not in weighed
+    ]  # fmt: skip
+
+
+def _shared(answer: NetworkAnswer, solutions: Sequence[SatelliteMean]) -> NDArray[np.float64] | None:
+    if answer.by_member is None:
+        return None
+    satellites = np.mean([each.by_member for each in weighed_solutions(solutions)], axis=0)
+    return shared_covariance(answer.by_member, satellites)
 
 
 def implied_geocentre(phasor: complex, context: Context) -> dict[str, complex]:
@@ -209,8 +238,9 @@ def _bridge(solution: SatelliteMean, answer: NetworkAnswer, context: Context) ->
     return bridged(answer.year_draws, answer.years, context.window, gap)
 
 
-def _agree(first: Determination, second: Determination) -> Agreement:
-    return agreement(first.phasor, first.covariance, second.phasor, second.covariance)
+def _agree(first: Determination, second: Determination, shared: NDArray[np.float64] | None = None) -> Agreement:
+    stated = first.error_stated and second.error_stated
+    return agreement(first.phasor, first.covariance, second.phasor, second.covariance, shared=shared, weighed=stated)
 
 
 def _sites(
@@ -243,7 +273,16 @@ def _site(satellite: SitePressure, recorder: complex, covariance: NDArray[np.flo
 
 def _warnings(inputs: GravityInputs, solutions: Sequence[SatelliteMean], context: Context) -> list[str]:
     found = []
-    if len(solutions) == 1:
+    weighed = weighed_solutions(solutions)
+    found += [
+        f"{each.name}: its file states no errors, so that it is shown and not weighed. model_sd_hpa may state one."
+        for each in solutions if not each.error_stated
+    ]  # fmt: skip
+    found += [
+        f"{each.name}: its error is from the formal errors of its file, which are mostly too small: agreement asks for "
+        "more than it may." for each in solutions if each.error_from == "formal"
+    ]  # fmt: skip
+    if len(weighed) == 1:
         found.append("One solution only: the disagreement between centres is not in the error of the satellites.")
     if inputs.degree_one is None:
         found.append(
@@ -251,9 +290,13 @@ def _warnings(inputs: GravityInputs, solutions: Sequence[SatelliteMean], context
         )
     if len(context.predicted.members) == 1:
         found.append("One load member only: the error of the conversion to the whole ocean is not seen.")
-    if any(field.filtered for solution in inputs.solutions for field in solution.fields):
+    if any(field.filtered for solution in inputs.solutions for field in _files(solution)):
         found.append(
             "The fields were filtered by their makers, with a filter that is not at hand: the kernel of the load "
             "members does not hold it, and the conversion to the whole ocean is not exact."
         )
     return found
+
+
+def _files(solution: Solution) -> tuple[GravityField, ...]:
+    return (*solution.fields, *(model.field for model in solution.models))

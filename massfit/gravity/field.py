@@ -141,13 +141,17 @@ class Periodic:
     ----------
     period_years : float
         In years of 365.25 days.
-    cosine, sine : (2, N + 1, N + 1) array
-        Amplitudes of cos and sin of 2 pi (t - epoch) / period.
+    cosine, sine : (2, M + 1, M + 1) array
+        Amplitudes of cos and sin of 2 pi (t - epoch) / period; M is the highest degree that changes.
+    cosine_sd, sine_sd : (2, M + 1, M + 1) array, optional
+        Their standard deviations as the file gives them.
     """
 
     period_years: float
     cosine: NDArray[np.float64]
     sine: NDArray[np.float64]
+    cosine_sd: NDArray[np.float64] | None = None
+    sine_sd: NDArray[np.float64] | None = None
 
 
 @dataclass(frozen=True, eq=False)
@@ -159,8 +163,8 @@ class GravityModel:
     field : GravityField
         The field at the epoch; its span says when the model holds, None for always.
     epoch : numpy.datetime64
-    trend : (2, N + 1, N + 1) array
-        Per year of 365.25 days.
+    trend : (2, M + 1, M + 1) array
+        Per year of 365.25 days; M is the highest degree that changes.
     periodic : tuple of Periodic
     """
 

@@ -2,11 +2,12 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
 
-from massfit.constants import EARTH_RADIUS, STANDARD_GRAVITY
+from massfit.constants import EARTH_RADIUS, PASCAL_PER_HPA, STANDARD_GRAVITY
 from massfit.earth.love import LoveNumbers
 from massfit.errors import Fault, InputError
 from massfit.fingerprint.ocean import OceanFunction
@@ -14,6 +15,8 @@ from massfit.gravity.annual import ALIAS_DAYS, MonthlyAnnual, fit_monthly
 from massfit.gravity.field import Span
 from massfit.gravity.inputs import GravityInputs, Solution
 from massfit.gravity.kernel import OceanKernel, ocean_kernel
+from massfit.gravity.mass import mass_per_coefficient
+from massfit.gravity.model import formal_covariance, solution_fields, used_degree
 from massfit.gravity.monthly import Addition, MonthlyMass, Replacement, monthly_mass
 from massfit.gravity.predicted import PredictedMass, land_leakage, whole_ocean_factors
 from massfit.gravity.tables import Name
@@ -22,6 +25,13 @@ from massfit.posterior.network_model import inflation
 
 _DEGREE_ONE = (("C", 1, 0), ("C", 1, 1), ("S", 1, 1))
 _C20, _C30 = ("C", 2, 0), ("C", 3, 0)
+
+ErrorSource = Literal["residuals", "formal", "settings", "nothing"]
+_ERROR_WORDS = {
+    "formal": "error of the model: the formal errors of its annual terms, as if independent, which is mostly too small",
+    "settings": "error of the model: model_sd_hpa of the settings",
+    "nothing": "error of the model: its file states none, so that it is not weighed; model_sd_hpa may state it",
+}
 
 
 @dataclass(frozen=True)
@@ -74,6 +84,11 @@ class SatelliteMean:
     monthly : MonthlyMass
     actions : tuple of str
         What was done, in order.
+    kind : str
+        "months", or "model" where annual terms of a file stand in for them.
+    error_from : str
+        Where the error of the kernel phasor is from: "residuals", "formal" errors of the file, "settings", or
+        "nothing", where the covariance lacks it.
     """
 
     name: str
@@ -87,6 +102,18 @@ class SatelliteMean:
     series: NDArray[np.float64]
     monthly: MonthlyMass
     actions: tuple[str, ...]
+    kind: Literal["months", "model"] = "months"
+    error_from: ErrorSource = "residuals"
+
+    @property
+    def error_stated(self) -> bool:
+        """Whether the covariance holds the error of the measurement."""
+        return self.error_from != "nothing"
+
+    @property
+    def by_member(self) -> NDArray[np.complex128]:
+        """Whole-ocean phasor as each load member converts it, (K,), Pa."""
+        return np.asarray(self.kernel_phasor * self.factors)
 
 
 def satellite_mean(inputs: GravityInputs, solution: Solution, context: Context) -> SatelliteMean:
@@ -110,7 +137,7 @@ def satellite_mean(inputs: GravityInputs, solution: Solution, context: Context) 
     chosen = inputs.settings
     monthly = assembled(inputs, solution, context)
     kernel = ocean_kernel(
-        context.ocean, max_degree=chosen.max_degree, buffer_km=chosen.buffer_km, smoothing_km=chosen.smoothing_km
+        context.ocean, max_degree=monthly.max_degree, buffer_km=chosen.buffer_km, smoothing_km=chosen.smoothing_km
     )
     seen, unseen = visible(inputs, kernel)
     series = seen.mean(monthly.mass)
@@ -122,25 +149,29 @@ def satellite_mean(inputs: GravityInputs, solution: Solution, context: Context) 
     )
     constant = vapour_degree_zero(inputs, context)
     observed = STANDARD_GRAVITY * (fit.phasor + constant)
-    covariance = STANDARD_GRAVITY**2 * fit.covariance
+    own, error_from = _own_error(inputs, solution, context, seen)
+    covariance = STANDARD_GRAVITY**2 * fit.covariance + own
     factors = whole_ocean_factors(context.predicted, seen)
     whole, spread = _converted(observed, covariance, factors)
-    actions = (*monthly.actions, *unseen, *_kernel_actions(kernel, fit, constant))
+    actions = (*monthly.actions, *unseen, *_kernel_actions(kernel, fit, constant, error_from))
     return SatelliteMean(
         solution.name, observed, covariance, whole, spread, factors,
         land_leakage(context.predicted, kernel), fit, series, monthly, actions,
+        "model" if solution.models else "months", error_from,
     )  # fmt: skip
 
 
 def assembled(inputs: GravityInputs, solution: Solution, context: Context) -> MonthlyMass:
     """Make the surface mass of each month as the settings ask."""
     chosen = inputs.settings
+    top = used_degree(solution, chosen.max_degree)
+    fields = solution_fields(solution, context.window, top)
     replacements, notes = _replacements(inputs, solution, context)
     added = []
     if chosen.restore_dealiasing:
         _need(inputs.dealiasing, "dealiasing", "restore_dealiasing")
         # over the whole ocean the circulation has no mean: what the product has is the air's
-        whole = ocean_kernel(context.ocean, max_degree=chosen.max_degree)
+        whole = ocean_kernel(context.ocean, max_degree=top)
         name = "the dealiasing product put back, less its mean over the whole ocean"
         added.append(Addition(name, inputs.dealiasing, centred=whole))
     if degree_zero(inputs) == "atmosphere":
@@ -148,10 +179,9 @@ def assembled(inputs: GravityInputs, solution: Solution, context: Context) -> Mo
         name = "degree 0 from the mass of the atmosphere, with its sign turned"
         added.append(Addition(name, inputs.atmosphere, factor=-1.0, degrees=(0,)))
     made = monthly_mass(
-        solution.fields, context.love, max_degree=chosen.max_degree, replacements=replacements, added=added,
-        window=context.window,
+        fields, context.love, max_degree=top, replacements=replacements, added=added, window=context.window,
     )  # fmt: skip
-    return replace(made, actions=(*made.actions, *notes))
+    return replace(made, actions=(*_model_actions(solution, len(fields), top), *made.actions, *notes))
 
 
 def degree_zero(inputs: GravityInputs) -> str:
@@ -196,7 +226,8 @@ def replaced_names(inputs: GravityInputs, solution: Solution, context: Context) 
 
 def _spans(solution: Solution, context: Context) -> list[Span]:
     window = context.window
-    spans = [field.span for field in solution.fields if field.span is not None]
+    fields = solution_fields(solution, window, 0)
+    spans = [field.span for field in fields if field.span is not None]
     return [span for span in spans if window is None or window.start <= span.middle < window.end]
 
 
@@ -240,7 +271,39 @@ def _converted(
     return complex(as_complex(each.mean(axis=0))), within + spread
 
 
-def _kernel_actions(kernel: OceanKernel, fit: MonthlyAnnual, constant: complex) -> list[str]:
+def _own_error(
+    inputs: GravityInputs, solution: Solution, context: Context, seen: OceanKernel
+) -> tuple[NDArray[np.float64], ErrorSource]:
+    """Error of the kernel phasor that the residuals of a fit do not hold, Pa2: none of months, a model's own."""
+    if not solution.models:
+        return np.zeros((2, 2)), "residuals"
+    stated = inputs.settings.model_sd_hpa
+    if stated is not None:
+        return (PASCAL_PER_HPA * stated) ** 2 * np.eye(2), "settings"
+    assert context.window is not None  # solution_fields has refused a model without
+    radius = solution.models[0].field.conventions.radius_m
+    layer = mass_per_coefficient(context.love, seen.max_degree, radius_m=radius)
+    replaced = replaced_names(inputs, solution, context) + (_DEGREE_ONE if inputs.degree_one is not None else ())
+    formal = formal_covariance(
+        solution, context.window, seen.weights * layer[None, :, None],
+        replaced=replaced, reference_year=context.reference_year,
+    )  # fmt: skip
+    return (np.zeros((2, 2)), "nothing") if formal is None else (STANDARD_GRAVITY**2 * formal, "formal")
+
+
+def _model_actions(solution: Solution, count: int, top: int) -> list[str]:
+    if not solution.models:
+        return []
+    timed = any(each.field.span is not None for each in solution.models)
+    return [
+        f"annual terms of a model, to degree {top}, written out as {count} months; its trend, steps and other periods "
+        "are left out",
+        f"{len(solution.models)} stretches of time, each with its own terms" if timed
+        else "the file states no time that it holds for: taken to hold for the whole comparison",
+    ]  # fmt: skip
+
+
+def _kernel_actions(kernel: OceanKernel, fit: MonthlyAnnual, constant: complex, error_from: ErrorSource) -> list[str]:
     actions = [
         f"averaged over {kernel.area_m2:.4e} m2 of ocean at least {kernel.buffer_km:g} km from land"
         if kernel.buffer_km
@@ -250,6 +313,8 @@ def _kernel_actions(kernel: OceanKernel, fit: MonthlyAnnual, constant: complex) 
         else "not smoothed",
         f"annual cycle fitted to {fit.months} months beside {', '.join(fit.lines)}; each averaged over its own span",
     ]
+    if error_from != "residuals":
+        actions.append(_ERROR_WORDS[error_from])
     if constant:
         # kg m-2 are mm of fresh water
         size = abs(constant)

@@ -56,6 +56,7 @@ def compare_gravity(run: FinishedRun, network: Network, gravity: GravityInputs) 
         or too few months.
     """
     _refuse_assimilated(network, gravity)
+    _refuse_other_members(run, network)
     settings, chosen = network.settings, gravity.settings
     ocean = OceanFunction.builtin()
     degree = max(settings.fingerprint.max_degree, chosen.max_degree)
@@ -149,7 +150,15 @@ def network_answer(run: FinishedRun, network: Network, vapour: complex, ocean_ar
         _admittance(fingerprints),
         _parts(summary["sites"], vapour, ocean_area_m2),
         *_yearly(run.datasets[POSTERIOR]),
+        _by_member(run),
     )
+
+
+def _by_member(run: FinishedRun) -> NDArray[np.complex128]:
+    """Mean of the draws that were made under each load member, Pa."""
+    member = run.datasets["posterior.nc/sample_stats"]["load_member"].values
+    draws = as_complex(run.datasets[POSTERIOR]["member_annual_phasor"].transpose("chain", "draw", "component").values)
+    return np.array([draws[member == each].mean() for each in np.unique(member)])
 
 
 def _admittance(fingerprints: xr.Dataset) -> NDArray[np.complex128]:
@@ -188,3 +197,13 @@ def _refuse_assimilated(network: Network, gravity: GravityInputs) -> None:
     if names:
         problem = f"{', '.join(names)} assimilated satellite gravity: the comparison would be with itself"
         raise InputError(Fault(network.source, "circulation", problem, "Independent models only", "Leave it out"))
+
+
+def _refuse_other_members(run: FinishedRun, network: Network) -> None:
+    made = [str(name) for name in run.datasets["fingerprints.nc"]["member"].values]
+    now = [load.name for load in network.loads]
+    if made != now:
+        problem = (
+            f"the results were made with the load members {', '.join(made)}, and the network file has {', '.join(now)}"
+        )
+        raise InputError(Fault(network.source, "loads", problem, "Must be the same", "Run massfit estimate anew"))

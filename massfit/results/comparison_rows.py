@@ -20,12 +20,15 @@ class Placed:
     covariance_hpa2 : (2, 2) array
     role : str
         "network", "satellite", "joint" or "other".
+    error_stated : bool
+        False for one that is drawn without a region.
     """
 
     label: str
     phasor_hpa: NDArray[np.float64]
     covariance_hpa2: NDArray[np.float64]
     role: str
+    error_stated: bool = True
 
 
 @dataclass(frozen=True, eq=False)
@@ -37,7 +40,7 @@ class Months:
     name : str
     time : (n,) array of datetime64
     water_mm : (n,) array
-        Kernel means.
+        Kernel means; none of a model, which has no months.
     fine_time : (k,) array of datetime64
     annual_mm : (k,) array
         The fitted annual cycle at these.
@@ -73,6 +76,7 @@ def placed_determinations(run: FinishedRun) -> list[Placed]:
             np.array([each["in_phase_hpa"], each["quadrature_hpa"]]),
             np.array(each["covariance_hpa2"]),
             role,
+            each["amplitude_sd_hpa"] is not None,
         )
         for each, role in found
     ]
@@ -91,11 +95,13 @@ def satellite_months(run: FinishedRun) -> list[Months]:
     list of Months
     """
     data, year = run.datasets["comparison.nc"], run.summary["reference_year"]
+    kinds = [solution.get("kind", "months") for solution in run.summary["comparison"]["solutions"]]
     ends = np.cumsum(data["row_size"].values)
     months = []
     for index, (end, size) in enumerate(zip(ends, data["row_size"].values, strict=True)):
         time, series = data["time"].values[end - size : end], data["ocean_mean"].values[end - size : end]
         fine = np.arange(time[0], time[-1], np.timedelta64(10, "D"))
         annual = annual_basis(days_since(fine, year)) @ data["fitted_phasor"].values[index]
-        months.append(Months(str(data["solution"].values[index]), time, series, fine, annual))
+        shown = slice(None) if kinds[index] == "months" else slice(0)
+        months.append(Months(str(data["solution"].values[index]), time[shown], series[shown], fine, annual))
     return months

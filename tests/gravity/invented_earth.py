@@ -40,6 +40,7 @@ class InventedEarth:
     dealiasing: tuple[GravityField, ...]
     degree_one: CoefficientTable
     geocentre_one: np.ndarray
+    water: np.ndarray  # annual phasor of the water's coefficients, degrees 0 and 1 included
 
 
 def make_earth(truth: str = "nominal", years: int = 5, drop_months: tuple[int, ...] = ()) -> InventedEarth:
@@ -92,7 +93,7 @@ def make_earth(truth: str = "nominal", years: int = 5, drop_months: tuple[int, .
         ocean, love, operator, loads, vapour, answer, spans, observed, monthly(air, "atmosphere"),
         monthly(operator.ocean * (air + current), "dealiasing"),
         CoefficientTable(tuple(rows), source="invented degree one"),
-        np.array([one[0, 1, 1], one[1, 1, 1], one[0, 1, 0]]),
+        np.array([one[0, 1, 1], one[1, 1, 1], one[0, 1, 0]]), one,
     )  # fmt: skip
 
 

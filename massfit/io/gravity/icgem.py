@@ -255,7 +255,8 @@ def _careful_rows(
         elif key == "gfc":
             values[:, degree, order] = numbers[: 2 + frame.sigmas]
         else:
-            terms.append(Term(key, degree, order, numbers[0], numbers[1], tuple(numbers[2 + frame.sigmas :]), number))
+            sd, tail = numbers[2 : 2 + min(frame.sigmas, 2)], numbers[2 + frame.sigmas :]
+            terms.append(Term(key, degree, order, tuple(numbers[:2]), tuple(sd), tuple(tail), number))
     faults += _gaps({(d, m) for key, d, m, *_ in seen if key in ("gfc", "gfct")}, frame, source)  # type: ignore[misc]
     if faults:
         raise InputError(_shortened(faults, source))

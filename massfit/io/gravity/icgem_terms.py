@@ -1,5 +1,6 @@
 """Rows of an ICGEM file that change with time, gathered into models about one epoch."""
 
+from dataclasses import replace
 from itertools import pairwise
 from typing import NamedTuple
 
@@ -15,13 +16,13 @@ _MOST_DATES = 200
 
 
 class Term(NamedTuple):
-    """One row: key, place, the two coefficients, the numbers after the errors, and its line."""
+    """One row: key, place, the two coefficients and their errors, the numbers after these, and its line."""
 
     key: str
     degree: int
     order: int
-    cosine: float
-    sine: float
+    value: tuple[float, ...]
+    sd: tuple[float, ...]
     tail: tuple[float, ...]
     line: int
 
@@ -124,26 +125,39 @@ def _model(
     start: np.datetime64,
     end: np.datetime64 | None,
 ) -> GravityModel:
-    coefficients, trend = field.coefficients.copy(), np.zeros_like(field.coefficients)
+    size = max(term.degree for term in terms) + 1
+    coefficients, trend = field.coefficients.copy(), np.zeros((2, size, size))
     periodic: dict[float, NDArray[np.complex128]] = {}
+    variance: dict[float, NDArray[np.float64]] = {}
     for term in terms:
         first, last = epochs[term.line]
         if end is not None and last is not None and not (first <= start and end <= last):
             continue
-        at = np.array([term.cosine, term.sine])
+        at, place = np.array(term.value), (slice(None), term.degree, term.order)
         years = float((start - first) / np.timedelta64(1, "s")) / (86400 * _DAYS_A_YEAR)
         if term.key == "gfct":
-            coefficients[:, term.degree, term.order] += at
+            coefficients[place] += at
         elif term.key in ("trnd", "dot"):
-            trend[:, term.degree, term.order] += at
-            coefficients[:, term.degree, term.order] += at * years  # from the row's own epoch to the model's
+            trend[place] += at
+            coefficients[place] += at * years  # from the row's own epoch to the model's
         else:
-            period = term.tail[-1]
+            period, cosine = term.tail[-1], term.key == "acos"
             # a cos + b sin is the real part of (a - i b) exp(i phase): turned from the row's epoch to the model's
-            turned = at * (1.0 if term.key == "acos" else -1j) * np.exp(2j * np.pi * years / period)
-            sum_ = periodic.setdefault(period, np.zeros(field.coefficients.shape, dtype=complex))
-            sum_[:, term.degree, term.order] += turned
+            turn = np.exp(2j * np.pi * years / period)
+            sum_ = periodic.setdefault(period, np.zeros((2, size, size), dtype=complex))
+            sum_[place] += at * (1.0 if cosine else -1j) * turn
+            if term.sd:
+                along, across = turn.real**2, turn.imag**2
+                shares = np.array([along, across] if cosine else [across, along])
+                squares = variance.setdefault(period, np.zeros((2, 2, size, size)))
+                squares[:, :, term.degree, term.order] += shares[:, None] * np.square(term.sd)
     span = None if end is None else Span(start, end)
-    there = GravityField(field.name, coefficients, field.conventions, span, field.sd, field.product, field.source)
-    pairs = tuple(Periodic(period, each.real, -each.imag) for period, each in sorted(periodic.items()))
+    there = replace(field, coefficients=coefficients, span=span)
+    pairs = tuple(_periodic(period, each, variance.get(period)) for period, each in sorted(periodic.items()))
     return GravityModel(there, start, trend, pairs)
+
+
+def _periodic(period: float, value: NDArray[np.complex128], variance: NDArray[np.float64] | None) -> Periodic:
+    """Cosine and sine with their errors; the correlation that a turn leaves between the two is not kept."""
+    sds = (None, None) if variance is None else np.sqrt(variance)
+    return Periodic(period, value.real, -value.imag, sds[0], sds[1])

@@ -13,9 +13,10 @@ from massfit.constants import PASCAL_PER_HPA
 from massfit.errors import Fault, InputError
 from massfit.gravity.field import GravityField
 from massfit.gravity.inputs import Determination, GravityInputs, Solution
+from massfit.gravity.model import annual_degree
 from massfit.gravity.tables import CoefficientTable
 from massfit.io.gravity.coefficient_table import read_coefficient_table
-from massfit.io.gravity.gravity_files import read_gravity_files
+from massfit.io.gravity.gravity_files import Found, read_gravity_files
 from massfit.io.network.locate import KeyPath
 from massfit.io.network.reading import Reading, open_reading
 from massfit.io.network.sections import parse_sections
@@ -62,10 +63,9 @@ def read_gravity(path: str | os.PathLike[str], *, outside: bool = False) -> Grav
 
 def _inputs(reading: Reading, settings: Gravity, assimilating: tuple[str, ...]) -> GravityInputs:
     solutions = [
-        Solution(_solution_name(text), fields)
-        for place, text in enumerate(settings.fields)
-        if (fields := _fields(reading, ("gravity", "fields", place), text)) is not None
-    ]
+        solution for place, text in enumerate(settings.fields)
+        if (solution := _solution(reading, ("gravity", "fields", place), text)) is not None
+    ]  # fmt: skip
     names = [solution.name for solution in solutions]
     for place, name in enumerate(names):
         if name in names[:place]:
@@ -94,9 +94,31 @@ def _solution_name(text: str) -> str:
     return name or text
 
 
-def _fields(reading: Reading, place: KeyPath, text: str) -> tuple[GravityField, ...] | None:
+def _found(reading: Reading, place: KeyPath, text: str) -> tuple[Found, ...] | None:
     file = reading.find(place, text, or_folder=True)
-    found = None if file is None else reading.attempt(read_gravity_files, file, source=text)
+    return None if file is None else reading.attempt(read_gravity_files, file, source=text)
+
+
+def _solution(reading: Reading, place: KeyPath, text: str) -> Solution | None:
+    """Months, or one model; never both, since the months would be counted twice."""
+    found = _found(reading, place, text)
+    if found is None:
+        return None
+    months = tuple(each for each in found if isinstance(each, GravityField))
+    models = [each for each in found if not isinstance(each, GravityField)]
+    if models and (months or len(models) > 1):
+        problem = f"{len(models)} of its {len(found)} files hold terms that change with time"
+        allowed = "Must be fields of single months, or one model"
+        reading.fault(place, problem, allowed, "Give each model as a solution of its own")
+        return None
+    if models and not annual_degree(models[0]):
+        reading.fault(place, "the model has no annual term", "Must have some (acos, asin)", "Give another model")
+        return None
+    return Solution(_solution_name(text), months, models[0] if models else ())
+
+
+def _fields(reading: Reading, place: KeyPath, text: str) -> tuple[GravityField, ...] | None:
+    found = _found(reading, place, text)
     if found is None:
         return None
     months = tuple(each for each in found if isinstance(each, GravityField))

@@ -75,12 +75,13 @@ def _plane(axes: Axes, placed: Sequence[Placed]) -> None:
         colour = colours[each.role]
         style = "-" if each.role in ("network", "satellite") else "--"
         look = {"facecolor": "none", "edgecolor": colour, "linestyle": style}
-        axes.add_patch(normal_ellipse(each.phasor_hpa, each.covariance_hpa2, RADIUS_95, **look))
+        if each.error_stated:
+            axes.add_patch(normal_ellipse(each.phasor_hpa, each.covariance_hpa2, RADIUS_95, **look))
         axes.plot(
             *each.phasor_hpa, linestyle="none", marker=mark, markersize=8 if mark == "+" else 4.5, color=colour,
             label=fitted(each.label, 60),
         )  # fmt: skip
-        half = RADIUS_95 * np.sqrt(np.diag(each.covariance_hpa2))
+        half = RADIUS_95 * np.sqrt(np.diag(each.covariance_hpa2)) * each.error_stated
         reach = np.vstack([reach, each.phasor_hpa - half, each.phasor_hpa + half])
     low, high = reach.min(axis=0), reach.max(axis=0)
     middle, half_side = 0.5 * (low + high), 0.56 * float((high - low).max())
@@ -95,13 +96,14 @@ def _plane(axes: Axes, placed: Sequence[Placed]) -> None:
 
 def _series(axes: Axes, months: Sequence[Months]) -> None:
     colours = (_SATELLITE, SITE, ANSWER, REFERENCE)
-    span = max((float(np.ptp(each.water_mm)) for each in months), default=1.0)
+    span = max((float(np.ptp([*each.water_mm, *each.annual_mm])) for each in months), default=1.0)
     for index, each in enumerate(months):
         colour, shift = colours[index % len(colours)], -1.15 * span * index
         axes.plot(each.time, each.water_mm + shift, linestyle="none", marker=".", markersize=3.0, color=colour)
         axes.plot(each.fine_time, each.annual_mm + shift, color=colour, linewidth=0.8)
+        top = max([*each.water_mm, *each.annual_mm]) + shift
         axes.annotate(
-            fitted(each.name, 40), (0.01, float(each.water_mm.max()) + shift), xycoords=("axes fraction", "data"),
+            fitted(each.name, 40), (0.01, top), xycoords=("axes fraction", "data"),
             xytext=(0, 3), textcoords="offset points", color=colour, fontsize=6.5,
         )  # fmt: skip
     if len(months) > 1:

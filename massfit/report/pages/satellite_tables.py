@@ -40,12 +40,12 @@ def _determinations(comparison: Mapping[str, Any]) -> Table:
     rows = [
         [each["label"], stated(each), "", each["method"]] for each in (comparison["network"], comparison["satellite"])
     ]
-    rows[1][2] = f"{comparison['difference']['probability']:.2g}"
+    rows[1][2] = _probability(comparison["difference"])
     if comparison["difference"]["joint"] is not None:
         joint = comparison["difference"]["joint"]
         rows.append([joint["label"], stated(joint), "", joint["method"]])
     rows += [
-        [each["label"], stated(each), f"{each['difference']['probability']:.2g}", each["method"]]
+        [each["label"], stated(each), _probability(each["difference"]), each["method"]]
         for each in comparison["others"]
     ]
     return Table("Determinations", ("", "amplitude and peak", "p beside the network", "from"), rows, wordy=True)
@@ -71,8 +71,8 @@ def _sites(comparison: Mapping[str, Any]) -> Table:
         own = each["recorder"]
         recorder = (f"{own['amplitude_hpa']:.2f}", f"{own['peak_day']:.0f}") if own else ("", "")
         other = each["satellite"]
-        probability = "" if each["probability"] is None else f"{each['probability']:.2g}"
-        rows.append([each["id"], *recorder, f"{other['amplitude_hpa']:.2f}", f"{other['peak_day']:.0f}", probability])
+        cells = f"{other['amplitude_hpa']:.2f}", f"{other['peak_day']:.0f}"
+        rows.append([each["id"], *recorder, *cells, _probability(each)])
     return Table("Satellite pressure at each recorder", head, rows)
 
 
@@ -109,6 +109,10 @@ def _bridge(comparison: Mapping[str, Any]) -> Table:
 def _actions(comparison: Mapping[str, Any]) -> Table:
     rows = [[each["name"], text] for each in comparison["solutions"] for text in (*each["actions"], *_left_out(each))]
     return Table("What was done to the monthly fields", ("solution", "action"), rows, wordy=True)
+
+
+def _probability(difference: Mapping[str, Any]) -> str:
+    return "" if difference["probability"] is None else f"{difference['probability']:.2g}"
 
 
 def _left_out(solution: Mapping[str, Any]) -> list[str]:

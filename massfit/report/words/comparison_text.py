@@ -17,6 +17,12 @@ def verdict(comparison: Mapping[str, Any]) -> str:
     str
     """
     apart = comparison["difference"]
+    if apart["probability"] is None:
+        return (
+            f"Network less satellites: {apart['amplitude_hpa']:+.2f} hPa in amplitude and {apart['days']:+.0f} days. "
+            f"The files of {comparison['satellite']['method']} state no errors: nothing says whether that is much; "
+            "model_sd_hpa of [gravity] may state one."
+        )
     size = (
         f"they differ by {apart['amplitude_hpa']:+.2f} ± {apart['amplitude_sd_hpa']:.2f} hPa in amplitude and "
         f"{apart['days']:+.0f} ± {apart['days_sd']:.0f} days (network less satellites); chi-square "
@@ -34,6 +40,8 @@ def verdict(comparison: Mapping[str, Any]) -> str:
 
 def stated(each: Mapping[str, Any]) -> str:
     """Say what one determination found."""
+    if each["amplitude_sd_hpa"] is None:
+        return f"{each['amplitude_hpa']:.2f} hPa, {each['peak_date']}, no error stated"
     return (
         f"{each['amplitude_hpa']:.2f} ± {each['amplitude_sd_hpa']:.2f} hPa, {each['peak_date']} "
         f"± {each['peak_day_sd']:.0f} days"
@@ -53,10 +61,7 @@ def comparison_text(comparison: Mapping[str, Any]) -> str:
     str
     """
     both = [f"  {comparison[name]['label']:<20} {stated(comparison[name])}" for name in ("network", "satellite")]
-    others = [
-        f"  {each['label']:<20} {stated(each)}; network less this: probability {each['difference']['probability']:.2g}"
-        for each in comparison["others"]
-    ]
+    others = [f"  {each['label']:<20} {stated(each)}{_probability(each)}" for each in comparison["others"]]
     lines = [verdict(comparison), "", "Water of the whole ocean", *both, *others]
     if comparison["bridge"]:
         lines += ["", "The network across the satellites' gap"]
@@ -70,6 +75,11 @@ def comparison_text(comparison: Mapping[str, Any]) -> str:
     lines += ["", head, *(f"  {row['name']:<{width}}  {_choice(row)}" for row in comparison["choices"])]
     lines += ["", *(f"warning: {text}" for text in comparison["warnings"])]
     return "\n".join(lines).rstrip()
+
+
+def _probability(other: Mapping[str, Any]) -> str:
+    value = other["difference"]["probability"]
+    return "" if value is None else f"; network less this: probability {value:.2g}"
 
 
 def _choice(row: Mapping[str, Any]) -> str:

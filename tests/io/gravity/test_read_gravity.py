@@ -157,6 +157,53 @@ def test_one_solution_given_twice(folder: Path, edit: Edit) -> None:
     assert told(folder) == ['gravity.fields[2]: two solutions are called "halvorne". Must differ. Rename one.']
 
 
+MODEL = """begin_of_head
+product_type gravity_field
+modelname invented
+radius 6.3781363E+06
+earth_gravity_constant 3.9860044150E+14
+max_degree 2
+errors formal
+tide_system zero_tide
+end_of_head
+gfct 2 0 -4.8417e-04 0.0 1e-12 0.0 20100101
+acos 2 0 3e-11 0.0 2e-12 0.0 1.0
+asin 2 0 4e-11 0.0 1e-12 0.0 1.0
+gfc 2 1 0.0 0.0 1e-12 1e-12
+gfc 2 2 2.4e-06 -1.4e-06 1e-12 1e-12
+"""
+
+
+def test_a_model_with_annual_terms(folder: Path, edit: Edit) -> None:
+    (folder / "invented.gfc").write_text(MODEL)
+    edit('"gravity/halvorne.tar.xz"', '"invented.gfc"')
+    found = read_gravity(folder, outside=True)
+    assert found is not None
+    model = found.solutions[0]
+    assert (model.name, model.fields, len(model.models)) == ("invented", (), 1)
+    (annual,) = model.models[0].periodic
+    assert (annual.cosine[0, 2, 0], annual.sine[0, 2, 0]) == (3e-11, 4e-11)
+    assert annual.cosine_sd is not None
+    assert annual.sine_sd is not None
+    assert (annual.cosine_sd[0, 2, 0], annual.sine_sd[0, 2, 0]) == (2e-12, 1e-12)
+    assert found.solutions[1].models == ()
+
+
+def test_a_model_among_months_and_one_without_annual_terms(folder: Path, edit: Edit) -> None:
+    (folder / "mixed").mkdir()
+    (folder / "mixed" / "model.gfc").write_text(MODEL)
+    rows = [line for line in MODEL.splitlines() if line[:4] not in ("acos", "asin")]
+    (folder / "mixed" / "month_2031-02.gfc").write_text("\n".join(rows).replace("gfct", "gfc").replace(" 20100101", ""))
+    (folder / "steady.gfc").write_text("\n".join(rows) + "\ntrnd 2 0 1e-11 0.0 1e-12 0.0\n")
+    edit('"gravity/halvorne.tar.xz"', '"mixed"')
+    edit('"gravity/mirrowby.tar.xz"', '"steady.gfc"')
+    assert told(folder) == [
+        "gravity.fields[1]: 1 of its 2 files hold terms that change with time. Must be fields of single months, or one "
+        "model. Give each model as a solution of its own.",
+        "gravity.fields[2]: the model has no annual term. Must have some (acos, asin). Give another model.",
+    ]
+
+
 HEAD = "label,method,amplitude_hpa,amplitude_sd_hpa,peak_day,peak_day_sd\n"
 
 
