@@ -129,7 +129,7 @@ def _site_pairs(
     known = count if observations.has_contrasts[s] else 1
     weights = np.zeros((known, len(observations.models)))
     weights[0, present] = 1.0 / count
-    weights[1:, present] = _contrasts(count)[: known - 1]
+    weights[1:, present] = contrast_weights(count)[: known - 1]
     noise = observations.model_noise[s]
     record = record_covariance(covariance, noise, count)
     pairs = []
@@ -143,8 +143,23 @@ def _site_pairs(
     return pairs
 
 
-def _contrasts(count: int) -> Floats:
-    """Orthonormal rows (count - 1, count) that sum to zero (Helmert's)."""
+def contrast_weights(count: int) -> Floats:
+    """Orthonormal rows (count - 1, count) that sum to zero (Helmert's).
+
+    Parameters
+    ----------
+    count : int
+
+    Returns
+    -------
+    (count - 1, count) array
+
+    Examples
+    --------
+    >>> rows = contrast_weights(3)
+    >>> bool(np.allclose(rows @ rows.T, np.eye(2)) and np.allclose(rows.sum(axis=1), 0.0))
+    True
+    """
     rows = np.zeros((count - 1, count))
     for k in range(1, count):
         rows[k - 1, :k] = 1.0

@@ -75,7 +75,7 @@ def find_sharing(observations: Observations, group_scatter: bool | float) -> Sha
     if observations.position is None and not isinstance(group_scatter, bool):
         problem = f"a correlation length of {group_scatter:g} km is asked for, and the sites have no positions"
         raise InputError(Fault("site phasors", "latitude", problem, "Must be there", "Add latitude and longitude"))
-    place = _places(observations)
+    place = places_of(observations)
     group, alone = _group_scatter(observations, place, group_scatter)
     return Sharing(place, group, alone, *_year_loadings(observations), _unmodelled(observations))
 
@@ -96,7 +96,18 @@ def distances_km(position: Floats, others: Floats | None = None) -> Floats:
     return np.asarray(2.0 * EARTH_RADIUS_KM * np.arcsin(np.sqrt(np.clip(square, 0.0, 1.0))))
 
 
-def _places(observations: Observations) -> NDArray[np.int64]:
+def places_of(observations: Observations) -> NDArray[np.int64]:
+    """Place of each site, counted from 0 in the order of the sites.
+
+    Parameters
+    ----------
+    observations : Observations
+
+    Returns
+    -------
+    (n_site,) array of int
+        Sites nearer to each other than `SAME_PLACE_KM`, and chains of such, are one place.
+    """
     if observations.position is None:
         return np.arange(len(observations.sites))
     near = distances_km(observations.position) < SAME_PLACE_KM

@@ -1,0 +1,359 @@
+"""Any subset of a network's sites on fixed nodes over the scales, by sums of what each site adds.
+
+Given the scales every row of the regression adds its own information, w d d' with d its design and w one over its
+variance, and its own constant; the information of a subset is the sum over its sites. The variances depend on s_site
+and s_local alone (and s_group, where a site is the only one of its group); s_common and s_group stand in the prior of
+columns. So for every pair of s_site and s_local the sums are one product of the table of the sites with the subsets,
+the columns whose prior is fixed are eliminated once, and the other two scales follow on what is left. The algebra is
+that of :mod:`massfit.posterior.likelihood`, in other coordinates of the same columns: the years by their singular
+vectors, the models' common errors by their mean, which takes the air-pressure correction along, and their contrasts.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from massfit.posterior.likelihood import base_variance
+from massfit.posterior.regression import Columns, LinearModel
+from massfit.posterior.rows import contrast_weights
+from massfit.posterior.scale_rule import ScaleRule, scale_rule
+
+Floats = NDArray[np.float64]
+Kept = NDArray[np.bool_]
+
+_FLAT = 0.5  # largest sum of scale^2 / variance at the first knot: below, no density of data depends on the scale
+
+_BLOCK = 256  # subsets and knots of s_group at a time: their matrices stay in the cache of the processor
+
+
+@dataclass(frozen=True)
+class NodeTable:
+    """What the sites add to the information of any subset, row by row, in the coordinates of the elimination.
+
+    Parameters
+    ----------
+    model : LinearModel
+        Normal scatter, one Gaussian a site.
+    rules : tuple of ScaleRule
+        One a scale of the model.
+    design : (n_member, n_row, n_column + 1) array
+        Columns in the order fixed, group, common, A; the value of the row stands last.
+    fixed, group, common : int
+        How many columns of each kind.
+    from_place : int
+        First of the fixed columns that are the scatter of a place with several sites.
+    """
+
+    model: LinearModel
+    rules: tuple[ScaleRule, ...]
+    design: Floats
+    fixed: int
+    group: int
+    common: int
+    from_place: int
+
+
+def node_table(model: LinearModel, prior_scales: Floats) -> NodeTable:
+    """Prepare a network for its subsets.
+
+    Parameters
+    ----------
+    model : LinearModel
+        The scatter is taken as normal; every site enters by one Gaussian.
+    prior_scales : (n_scale,) array
+        Scales of the half-t priors, Pa.
+
+    Returns
+    -------
+    NodeTable
+
+    Raises
+    ------
+    ValueError
+        A site enters by its mixture.
+    """
+    if model.rows.has_parts:
+        raise ValueError("the table holds one Gaussian a site")
+    columns, rows, members = model.columns, model.rows, model.member_count
+    models = rows.model_weight.shape[1]
+    turned = rows.model_weight @ np.vstack([np.full(models, models**-0.5), contrast_weights(models)]).T
+    common = (turned[:, :, None] * rows.direction[:, None, :]).reshape(len(turned), -1)
+    kept = [_years(model), *(model.design[:, :, part] for part in (columns.unmodelled, columns.place))]
+    fixed = np.concatenate(kept, axis=2)
+    group = model.design[:, :, columns.group]
+    ends = [np.broadcast_to(each, (members, *each.shape)) for each in (common, rows.value[:, None])]
+    design = np.concatenate([fixed, group, ends[0], model.design[:, :, -2:], ends[1]], axis=2)
+    places = columns.place.stop - columns.place.start
+    return NodeTable(
+        model,
+        _rules(model, prior_scales),
+        design,
+        fixed.shape[2],
+        group.shape[2],
+        common.shape[1],
+        fixed.shape[2] - places,
+    )
+
+
+def _years(model: LinearModel) -> Floats:
+    """Columns of the years that the sites tell apart: their loadings' singular vectors, nothing lost."""
+    columns: Columns = model.columns
+    whole = model.design[:, :, columns.year]
+    if not whole.shape[2]:
+        return whole
+    _, size, turn = np.linalg.svd(model.sharing.year, full_matrices=False)
+    axes = turn[size > 1e-9 * max(size.max(), 1e-300)]
+    by_year = whole.reshape(*whole.shape[:2], -1, 2)
+    return np.asarray(np.einsum("krya,ny->krna", by_year, axes).reshape(*whole.shape[:2], -1))
+
+
+def _rules(model: LinearModel, prior_scales: Floats) -> tuple[ScaleRule, ...]:
+    """Rules of the scales: from where the rows' densities become flat, as fine as the sharpest posterior asks for."""
+    rows, columns = model.rows, model.columns
+    variance = np.maximum(rows.variance, 1e-4 * np.median(rows.value**2))
+    means, contrasts = (1.0 / part for part in np.split(variance, [rows.mean_count]))
+    own = np.sqrt(_FLAT / np.array([means.sum(), means.sum() + contrasts.sum()]))
+    lowest = np.clip([*own, 0.0, 0.0][: len(prior_scales)], 0.05 * prior_scales, 0.3 * prior_scales)
+    effects = [len(means), len(contrasts), columns.common.stop - columns.common.start]
+    effects.append(columns.group.stop - columns.group.start)
+    return tuple(
+        scale_rule(float(prior), float(low), count, narrow=i < 2)
+        for i, (prior, low, count) in enumerate(zip(prior_scales, lowest, effects, strict=False))
+    )
+
+
+@dataclass(frozen=True)
+class SubsetMoments:
+    """Posterior of A for each of n subsets, the scales integrated out.
+
+    Parameters
+    ----------
+    mean : (n, 2) array
+        Pa.
+    covariance : (n, 2, 2) array
+        Pa2.
+    log_evidence : (n,) array
+        Logarithm of the density of the subset's phasors.
+    log_scales : (n, n_scale) array
+        Posterior means of the logarithms of the scales in Pa.
+    """
+
+    mean: Floats
+    covariance: Floats
+    log_evidence: Floats
+    log_scales: Floats
+
+    @property
+    def sd(self) -> Floats:
+        """(n, 2), Pa."""
+        return np.sqrt(np.diagonal(self.covariance, axis1=1, axis2=2))
+
+    @property
+    def width(self) -> Floats:
+        """(n,), Pa: root of the mean variance of the two components."""
+        return np.asarray(np.sqrt(0.5 * np.trace(self.covariance, axis1=1, axis2=2)))
+
+
+def subset_moments(table: NodeTable, kept: Kept, *, member: int = 0) -> SubsetMoments:
+    """Posterior of every subset, the scales integrated out anew for each.
+
+    Parameters
+    ----------
+    table : NodeTable
+    kept : (n, n_site) array of bool
+        Sites of each subset, in the order of the network.
+    member : int
+        Load member.
+
+    Returns
+    -------
+    SubsetMoments
+    """
+    kept = np.asarray(kept, dtype=bool)
+    size = _BLOCK if len(table.rules) == 3 else max(1, _BLOCK // len(table.rules[3].knot))
+    blocks = [
+        _integrate(table, node_values(table, kept[start : start + size], member=member))
+        for start in range(0, len(kept), size)
+    ]
+    return SubsetMoments(*(np.concatenate(each) for each in zip(*blocks, strict=True)))
+
+
+@dataclass(frozen=True)
+class NodeValues:
+    """Subsets on the knots of the scales.
+
+    Parameters
+    ----------
+    log_likelihood : (n_site_knot, n_local_knot, n_common_knot[, n_group_knot], n) array
+        Log density of the subset's phasors, everything but the scales integrated out.
+    mean : (2, ...) array
+        Pa.
+    covariance : (3, ...) array
+        Pa2: variance in phase, covariance, variance in quadrature.
+    """
+
+    log_likelihood: Floats
+    mean: Floats
+    covariance: Floats
+
+
+def node_values(table: NodeTable, kept: Kept, *, member: int = 0) -> NodeValues:
+    """Solve every subset on every knot.
+
+    Parameters
+    ----------
+    table : NodeTable
+    kept : (n, n_site) array of bool
+    member : int
+        Load member.
+
+    Returns
+    -------
+    NodeValues
+    """
+    knots = [rule.knot for rule in table.rules]
+    shape = (*(len(knot) for knot in knots), len(kept))
+    values = NodeValues(np.empty(shape), np.empty((2, *shape)), np.empty((3, *shape)))
+    tower = _Tower(table, member, np.ascontiguousarray(kept.T, dtype=float))
+    for i, site in enumerate(knots[0]):
+        for j, local in enumerate(knots[1]):
+            density, mean, covariance = tower.solved(site, local)
+            values.log_likelihood[i, j] = density.reshape(shape[2:])
+            values.mean[:, i, j] = mean.reshape(2, *shape[2:])
+            values.covariance[:, i, j] = covariance.reshape(3, *shape[2:])
+    return values
+
+
+class _Tower:
+    """Eliminates the columns kind by kind; what is left of the earlier ones serves all scales of the later."""
+
+    def __init__(self, table: NodeTable, member: int, subsets: Floats) -> None:
+        self._table, self._subsets = table, subsets
+        design = table.design[member]
+        self._upper = np.triu_indices(design.shape[1])
+        self._products = design[:, self._upper[0]] * design[:, self._upper[1]]
+        self._of_site = (np.arange(len(subsets))[:, None] == table.model.rows.site).astype(float)
+        self._common = table.rules[2].knot
+        self._group = table.rules[3].knot if len(table.rules) == 4 else np.zeros(0)
+
+    def solved(self, site: float, local: float) -> tuple[Floats, Floats, Floats]:
+        """Log likelihood, mean and covariance (..., n_common_knot, n_group_knot or 1, n) at s_site and s_local."""
+        table = self._table
+        # the group scatter of a site that is the only one of its group stands in the variance of its rows
+        inside = self._group if table.model.sharing.alone.any() else self._group[:1]
+        terms = [self._sums(site, local, group) for group in (inside if len(inside) else [0.0])]
+        upper, density = (np.stack(each, axis=-2) for each in zip(*terms, strict=True))
+        prior = np.ones((table.fixed, 1, 1))
+        prior[table.from_place :] = np.exp(-2.0 * site)
+        upper, density = _eliminate(upper, prior, density)
+        if len(self._group):
+            upper = np.repeat(upper, len(self._group) // upper.shape[2], axis=2)
+            prior = np.tile(np.exp(-2.0 * self._group)[:, None], (table.group, 1, 1))
+            upper, density = _eliminate(upper, prior, density)
+        upper = np.repeat(upper[:, :, None], len(self._common), axis=2)
+        return self._phasor(*_eliminate(upper, self._common_prior()[:, :, None, None], density))
+
+    def _sums(self, site: float, local: float, group: float) -> tuple[Floats, Floats]:
+        """Information (n_column + 1, n_column + 1, n) of the subsets and log density (n,) of their rows' variances."""
+        model = self._table.model
+        log_scales = np.array([[site, local, 0.0, group]])[:, : model.scale_count]
+        base, contrast, scatter = base_variance(model, model.at(log_scales))
+        variance = np.concatenate([base + scatter, contrast], axis=1)[0]
+        size = self._table.design.shape[2]
+        upper = np.zeros((size, size, self._subsets.shape[1]))
+        upper[self._upper] = ((self._of_site / variance) @ self._products).T @ self._subsets
+        return upper, -0.5 * (self._of_site @ np.log(2.0 * np.pi * variance)) @ self._subsets
+
+    def _common_prior(self) -> Floats:
+        """Precision (n_column, n_knot) of the models' mean error, with the air-pressure correction, and contrasts."""
+        table, squares = self._table, np.exp(2.0 * self._common)
+        models = table.common // 2
+        prior = np.tile(1.0 / squares, (table.common, 1))
+        prior[:2] = 1.0 / ((1.0 + models * table.model.truth) * squares + models * table.model.atmosphere_sd**2)
+        return prior
+
+    def _phasor(self, upper: Floats, density: Floats) -> tuple[Floats, Floats, Floats]:
+        """Solve for the two columns that are left, of unit prior."""
+        (a, b, first), (c, second), square = upper[0], upper[1, 1:], upper[2, 2]
+        a, c = a + 1.0, c + 1.0
+        determinant = a * c - b**2
+        mean = np.stack([c * first - b * second, a * second - b * first]) / determinant
+        misfit = square - mean[0] * first - mean[1] * second
+        sd = self._table.model.annual_sd
+        covariance = sd**2 * np.stack([c, -b, a]) / determinant
+        return density - 0.5 * (misfit + np.log(determinant)), sd * mean, covariance
+
+
+def _eliminate(upper: Floats, prior: Floats, density: Floats) -> tuple[Floats, Floats]:
+    """Integrate the leading columns out.
+
+    Parameters
+    ----------
+    upper : (n, n, ...) array
+        Upper triangles of information, bordered by the data; used up.
+    prior : (n_out, ...) array
+        Precision of the columns beforehand.
+    density : (...) array
+        Log density so far.
+
+    Returns
+    -------
+    upper : (n - n_out, n - n_out, ...) array
+    density : (...) array
+    """
+    for k, own in enumerate(prior):
+        pivot = upper[k, k] + own
+        for i in range(k + 1, len(upper)):
+            upper[i, i:] -= (upper[k, i] / pivot) * upper[k, i:]
+        density = density - 0.5 * np.log(pivot / own)
+    return upper[len(prior) :, len(prior) :], density
+
+
+def _integrate(table: NodeTable, values: NodeValues) -> tuple[Floats, Floats, Floats, Floats]:
+    """Mean, covariance, evidence and mean log scales of subsets, from what they are on the knots."""
+    weight, log_evidence = knot_weights(table.rules, values.log_likelihood)
+    axes = tuple(range(len(table.rules)))
+    mean = (weight * values.mean).sum(axis=tuple(a + 1 for a in axes))
+    a, b = values.mean
+    square = (weight * (values.covariance + np.stack([a * a, a * b, b * b]))).sum(axis=tuple(a + 1 for a in axes))
+    covariance = square - np.stack([mean[0] ** 2, mean[0] * mean[1], mean[1] ** 2])
+    knots = [weight.sum(axis=tuple(b for b in axes if b != a)).T @ rule.knot for a, rule in enumerate(table.rules)]
+    return mean.T, covariance[[0, 1, 1, 2]].T.reshape(-1, 2, 2), log_evidence, np.stack(knots, axis=1)
+
+
+def knot_weights(rules: tuple[ScaleRule, ...], log_likelihood: Floats) -> tuple[Floats, Floats]:
+    """Posterior weights of the knots: the integral over all cells, read back through the splines.
+
+    Parameters
+    ----------
+    rules : tuple of ScaleRule
+    log_likelihood : (n_knot, ..., n) array
+
+    Returns
+    -------
+    weight : (n_knot, ..., n) array
+        Sum 1 over the knots; some are a little negative, as weights of a spline are.
+    log_evidence : (n,) array
+    """
+    cells = log_likelihood
+    for axis, rule in enumerate(rules):
+        cells = _along(rule.spline, cells, axis)
+    axes = tuple(range(len(rules)))
+    top = cells.max(axis=axes)
+    mass = np.exp(cells - top)
+    for axis, rule in enumerate(rules):
+        mass *= rule.mass.reshape(-1, *(1,) * (mass.ndim - axis - 1))
+    total = mass.sum(axis=axes)
+    for axis, rule in enumerate(rules):
+        mass = _along(rule.spline.T, mass, axis)
+    return mass / total, top + np.log(total)
+
+
+def _along(matrix: Floats, values: Floats, axis: int) -> Floats:
+    """Product of a matrix with one axis of an array."""
+    if matrix.shape[0] == matrix.shape[1]:  # the knots are the cells
+        return values
+    before, after = values.shape[:axis], values.shape[axis + 1 :]
+    product = matrix @ values.reshape(*before, values.shape[axis], -1)
+    return np.asarray(product.reshape(*before, len(matrix), *after))
