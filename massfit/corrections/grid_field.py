@@ -44,8 +44,8 @@ class GridField:
     @property
     def cells(self) -> CellGrid:
         """Cells whose bounds lie half-way between the centres."""
-        latitude = np.clip(_half_way(self.latitude_deg), -90.0, 90.0)
-        return CellGrid(latitude, _half_way(self.longitude_deg))
+        latitude = np.clip(half_way(self.latitude_deg), -90.0, 90.0)
+        return CellGrid(latitude, half_way(self.longitude_deg))
 
     def blocks(self) -> Iterator[tuple[slice, NDArray[np.float64]]]:
         """Yield the times of a block and its values, (k, n_lat * n_lon)."""
@@ -202,7 +202,8 @@ def _bracket(centres: NDArray[np.float64], value: float, turn: float | None) -> 
     return int(order[left]), int(order[left + 1]), weight
 
 
-def _half_way(centres: NDArray[np.float64]) -> NDArray[np.float64]:
+def half_way(centres: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Bounds of cells half-way between their centres, (n + 1,); the outer ones as far out as the next are in."""
     middle = 0.5 * (centres[1:] + centres[:-1])
     first, last = 2.0 * centres[0] - middle[0], 2.0 * centres[-1] - middle[-1]
     return np.concatenate([[first], middle, [last]])
