@@ -10,11 +10,11 @@ import pytest
 import massfit
 
 NAMES = [
-    "CirculationModel", "InputError", "LoadPattern", "Network", "OceanFunction", "Record", "ReducedRecord",
-    "ReducedSite", "Series", "Settings", "SimulationOptions", "Site", "builtin_loads", "draw_admittances", "estimate",
-    "fit_site", "love_numbers", "make_settings", "prepare_operator", "read_network", "regional_responses",
-    "sample_posterior", "simulate_network", "site_fingerprints", "site_footprints", "solve_sea_level",
-    "study_fingerprint",
+    "CirculationModel", "InputError", "LoadPattern", "ModelField", "Network", "OceanFunction", "Record",
+    "ReducedRecord", "ReducedSite", "Series", "Settings", "SimulationOptions", "Site", "builtin_loads",
+    "draw_admittances", "estimate", "fit_site", "love_numbers", "make_settings", "prepare_operator", "read_network",
+    "regional_responses", "sample_posterior", "screen_sea_floor", "simulate_network", "site_fingerprints",
+    "site_footprints", "solve_sea_level", "study_fingerprint",
 ]  # fmt: skip
 
 
