@@ -79,6 +79,31 @@ def fit_monthly(
     InputError
         Values that are not finite, or a series too short for an annual cycle.
     """
+    return fit_columns(spans, values[:, None], reference_year=reference_year, alias_days=alias_days)[0]
+
+
+def fit_columns(
+    spans: Sequence[Span], values: Floats, *, reference_year: int, alias_days: Sequence[float] = ALIAS_DAYS
+) -> tuple[MonthlyAnnual, ...]:
+    """Fit several series over the same months, each as :func:`fit_monthly` does.
+
+    Parameters
+    ----------
+    spans : sequence of Span
+    values : (n, s) array
+    reference_year : int
+    alias_days : sequence of float
+
+    Returns
+    -------
+    tuple of MonthlyAnnual
+        One a column.
+
+    Raises
+    ------
+    InputError
+        As :func:`fit_monthly`.
+    """
     if not np.all(np.isfinite(values)):
         raise InputError(Fault("monthly series", "values", "some values are not finite", "Must be finite"))
     start, end = _days(spans, reference_year)
@@ -88,24 +113,30 @@ def fit_monthly(
         if all(length * abs(1 / period - 1 / line) >= 1.0 for line in (TROPICAL_YEAR_DAYS, TROPICAL_YEAR_DAYS / 2))
     ]  # fmt: skip
     design = _design(start, end, lines)
-    if values.size < design.shape[1] + 4 or length < 1.5 * TROPICAL_YEAR_DAYS:
-        problem = f"{values.size} months over {length / JULIAN_YEAR_DAYS:.1f} years"
+    if len(values) < design.shape[1] + 4 or length < 1.5 * TROPICAL_YEAR_DAYS:
+        problem = f"{len(values)} months over {length / JULIAN_YEAR_DAYS:.1f} years"
         raise InputError(Fault("monthly series", "months", problem, "At least 12 months over 1.5 years"))
     fits = [_fit(design, values, 0.5 * (start + end), share, memory) for share, memory in _noise_grid()]
-    log_evidence = np.array([fit[0] for fit in fits])
+    names = ("level", "trend", "semi-annual", *(f"{period:g} d" for period in lines))
+    log_evidence, phasor, covariance, residual = (np.stack(part, axis=1) for part in zip(*fits, strict=True))
+    return tuple(
+        _averaged(*column, names, len(values))
+        for column in zip(log_evidence, phasor, covariance, residual, strict=True)
+    )
+
+
+def _averaged(
+    log_evidence: Floats, phasors: Floats, covariances: Floats, residual: Floats, names: tuple[str, ...], months: int
+) -> MonthlyAnnual:
+    """Average one series over the noise models, (k,) of each."""
     weight = np.exp(log_evidence - log_evidence.max())
     weight /= weight.sum()
-    mean = np.array([fit[1] for fit in fits])
-    centre = weight @ mean
-    spread = (mean - centre).T @ ((mean - centre) * weight[:, None])
-    covariance = np.einsum("k,kij->ij", weight, np.array([fit[2] for fit in fits])) + spread
-    grid = np.array(_noise_grid())
-    names = ["level", "trend", "semi-annual", *(f"{period:g} d" for period in lines)]
-    best = fits[int(np.argmax(weight))]
-    share, memory = weight @ grid
-    return MonthlyAnnual(
-        complex(centre[0], centre[1]), covariance, tuple(names), values.size, best[3], float(share), float(memory)
-    )
+    centre = weight @ phasors
+    spread = (phasors - centre).T @ ((phasors - centre) * weight[:, None])
+    covariance = np.einsum("k,kij->ij", weight, covariances) + spread
+    share, memory = weight @ np.array(_noise_grid())
+    best = float(residual[int(np.argmax(weight))])
+    return MonthlyAnnual(complex(*centre), covariance, names, months, best, float(share), float(memory))
 
 
 def alias_leakage(spans: Sequence[Span], period_days: float) -> float:
@@ -186,8 +217,8 @@ def _noise_grid() -> list[tuple[float, float]]:
 
 def _fit(
     design: Floats, values: Floats, days: Floats, share: float, memory: float
-) -> tuple[float, Floats, Floats, float]:
-    """Log evidence, annual phasor, its covariance and the residual sd at one noise."""
+) -> tuple[Floats, Floats, Floats, Floats]:
+    """Log evidence (s,), annual phasor (s, 2), its covariance and the residual sd of every column at one noise."""
     correlation = share * np.exp(-np.abs(days[:, None] - days[None, :]) / memory)
     np.fill_diagonal(correlation, 1.0)
     factor = cho_factor(correlation, lower=True)
@@ -195,13 +226,14 @@ def _fit(
     normal = design.T @ whitened
     solution = np.linalg.solve(normal, whitened.T @ values)
     residual = values - design @ solution
-    misfit = float(residual @ cho_solve(factor, residual))
-    free = values.size - design.shape[1]
+    misfit = np.einsum("ts,ts->s", residual, cho_solve(factor, residual))
+    free = len(values) - design.shape[1]
     inverse = np.linalg.inv(normal)[:2, :2]
     log_evidence = -0.5 * (
         2.0 * float(np.log(np.diag(factor[0])).sum())
         + float(np.linalg.slogdet(normal)[1])
-        + free * np.log(max(misfit, np.finfo(float).tiny))
+        + free * np.log(np.maximum(misfit, np.finfo(float).tiny))
     )
     # Student-t with `free` degrees of freedom
-    return log_evidence, solution[:2], inverse * misfit / (free - 2), float(np.std(residual))
+    covariance = misfit[:, None, None] / (free - 2) * inverse
+    return log_evidence, solution[:2].T, covariance, np.std(residual, axis=0)

@@ -8,15 +8,11 @@ from numpy.typing import NDArray
 
 from massfit.constants import EARTH_RADIUS, STANDARD_GRAVITY
 from massfit.fingerprint.transforms import SphereGrid, as_cilm
-from massfit.gravity.annual import fit_monthly
+from massfit.gravity.annual import fit_columns
 from massfit.gravity.kernel import gaussian_weights
 from massfit.gravity.monthly import MonthlyMass
 from massfit.gravity.predicted import PredictedMass
 from massfit.site import Site
-
-LEAST_SMOOTHING_KM = 500.0
-"""A point is given at least this smoothing: without it the striped errors of monthly solutions hide everything
-(common practice)."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -38,11 +34,6 @@ class SitePressure:
     seen: complex
     covariance: NDArray[np.float64]
     factors: NDArray[np.complex128]
-
-    @property
-    def phasor(self) -> complex:
-        """Pressure at the point, mean over the load members, Pa."""
-        return complex(self.seen * self.factors.mean())
 
 
 def satellite_at_sites(
@@ -67,7 +58,7 @@ def satellite_at_sites(
     admittance : (K, n_site) array of complex
         F of each member at each site.
     smoothing_km : float
-        Of the Gaussian; at least `LEAST_SMOOTHING_KM` is used.
+        Of the Gaussian: striped errors of monthly solutions hide a point that is not smoothed.
     reference_year : int
     alias_days : sequence of float
     added : complex
@@ -79,7 +70,7 @@ def satellite_at_sites(
     -------
     tuple of SitePressure
     """
-    harmonics = smoothed_harmonics(sites, monthly.max_degree, max(smoothing_km, LEAST_SMOOTHING_KM))
+    harmonics = smoothed_harmonics(sites, monthly.max_degree, smoothing_km)
     series = np.einsum("scnm,tcnm->ts", harmonics, monthly.mass)
     seen_by_members = harmonics.copy()
     seen_by_members[:, :, list(blind)] = 0.0
@@ -87,9 +78,7 @@ def satellite_at_sites(
         "scnm,kcnm->ks", seen_by_members, predicted.total[..., : monthly.max_degree + 1, : monthly.max_degree + 1]
     )
     factors = admittance * predicted.ocean_mean[:, None] / smoothed
-    fits = [
-        fit_monthly(monthly.spans, column, reference_year=reference_year, alias_days=alias_days) for column in series.T
-    ]
+    fits = fit_columns(monthly.spans, series, reference_year=reference_year, alias_days=alias_days)
     return tuple(
         SitePressure(site.id, STANDARD_GRAVITY * (fit.phasor + added), STANDARD_GRAVITY**2 * fit.covariance, factor)
         for site, fit, factor in zip(sites, fits, factors.T, strict=True)

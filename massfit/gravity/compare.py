@@ -5,19 +5,18 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.stats import chi2
 
 from massfit.constants import EARTH_DENSITY, STANDARD_GRAVITY
-from massfit.gravity.annual import ALIAS_DAYS
-from massfit.gravity.at_sites import SitePressure, geocentre_of, satellite_at_sites
+from massfit.gravity.at_sites import geocentre_of
 from massfit.gravity.bridge import BridgePart, bridged, largest_gap
 from massfit.gravity.choices import Choice, choice_table
 from massfit.gravity.comparison import Agreement, agreement, shared_covariance
 from massfit.gravity.definitions import Definition, redefined
 from massfit.gravity.field import GravityField
 from massfit.gravity.inputs import Determination, GravityInputs, Solution
-from massfit.gravity.satellite import Context, SatelliteMean, satellite_mean, unseen_degrees, vapour_degree_zero
-from massfit.phasor import admittance_matrix, as_complex, as_components
+from massfit.gravity.satellite import Context, SatelliteMean, satellite_mean
+from massfit.gravity.site_comparison import SiteComparison, compare_sites
+from massfit.phasor import as_complex, as_components
 from massfit.posterior.network_model import inflation
 from massfit.site import Site
 
@@ -41,6 +40,7 @@ class NetworkAnswer:
     site_phasors : (n_site,) array of complex
         Mean over the ocean models, less the known response to air over land, Pa; NaN where there is none.
     site_covariances : (n_site, 2, 2) array
+        Of the record, and of the circulation that no model has.
     admittance : (K, n_site) array of complex
         F of each load member.
     parts : mapping of str to (str, complex)
@@ -63,28 +63,6 @@ class NetworkAnswer:
     year_draws: NDArray[np.float64] | None = None
     years: tuple[int, ...] = ()
     by_member: NDArray[np.complex128] | None = None
-
-
-@dataclass(frozen=True)
-class SiteComparison:
-    """Recorder and satellites at one site.
-
-    Parameters
-    ----------
-    site : str
-    recorder : complex
-        Pa.
-    satellite : complex
-        Brought to the point by the load members, Pa.
-    chi_square, probability : float
-        Of the difference, with 2 degrees of freedom.
-    """
-
-    site: str
-    recorder: complex
-    satellite: complex
-    chi_square: float
-    probability: float
 
 
 @dataclass(frozen=True, eq=False)
@@ -154,7 +132,15 @@ def compare_with_gravity(inputs: GravityInputs, answer: NetworkAnswer, context: 
         _agree(network, satellite, _shared(answer, solutions)),
         tuple((each, _agree(network, each)) for each in (*_unweighed(solutions), *inputs.determinations)),
         choice_table(inputs, inputs.solutions[0], context),
-        _sites(inputs, solutions[0], answer, context),
+        compare_sites(
+            inputs,
+            weighed_solutions(solutions),
+            answer.sites,
+            answer.site_phasors,
+            answer.site_covariances,
+            answer.admittance,
+            context,
+        ),
         implied_geocentre(answer.phasor, context),
         redefined(answer.phasor, answer.parts),
         _bridge(solutions[0], answer, context),
@@ -241,34 +227,6 @@ def _bridge(solution: SatelliteMean, answer: NetworkAnswer, context: Context) ->
 def _agree(first: Determination, second: Determination, shared: NDArray[np.float64] | None = None) -> Agreement:
     stated = first.error_stated and second.error_stated
     return agreement(first.phasor, first.covariance, second.phasor, second.covariance, shared=shared, weighed=stated)
-
-
-def _sites(
-    inputs: GravityInputs, solution: SatelliteMean, answer: NetworkAnswer, context: Context
-) -> tuple[SiteComparison, ...]:
-    if not answer.sites:
-        return ()
-    found = satellite_at_sites(
-        solution.monthly,
-        answer.sites,
-        context.predicted,
-        answer.admittance,
-        smoothing_km=inputs.settings.smoothing_km,
-        reference_year=context.reference_year,
-        alias_days=ALIAS_DAYS if inputs.settings.alias_lines else (),
-        added=vapour_degree_zero(inputs, context),
-        blind=unseen_degrees(inputs),
-    )
-    rows = zip(found, answer.site_phasors, answer.site_covariances, strict=True)
-    return tuple(_site(each, complex(phasor), covariance) for each, phasor, covariance in rows)
-
-
-def _site(satellite: SitePressure, recorder: complex, covariance: NDArray[np.float64]) -> SiteComparison:
-    turn = admittance_matrix(complex(satellite.factors.mean()))
-    both = covariance + turn @ satellite.covariance @ turn.T
-    step = as_components(recorder - satellite.phasor)
-    chi_square = float(step @ np.linalg.solve(both, step)) if np.all(np.isfinite([*step, *both.ravel()])) else np.nan
-    return SiteComparison(satellite.site, recorder, satellite.phasor, chi_square, float(chi2.sf(chi_square, df=2)))
 
 
 def _warnings(inputs: GravityInputs, solutions: Sequence[SatelliteMean], context: Context) -> list[str]:

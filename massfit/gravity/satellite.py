@@ -152,7 +152,7 @@ def satellite_mean(inputs: GravityInputs, solution: Solution, context: Context) 
     own, error_from = _own_error(inputs, solution, context, seen)
     covariance = STANDARD_GRAVITY**2 * fit.covariance + own
     factors = whole_ocean_factors(context.predicted, seen)
-    whole, spread = _converted(observed, covariance, factors)
+    whole, spread = converted(observed, covariance, factors)
     actions = (*monthly.actions, *unseen, *_kernel_actions(kernel, fit, constant, error_from))
     return SatelliteMean(
         solution.name, observed, covariance, whole, spread, factors,
@@ -224,6 +224,11 @@ def replaced_names(inputs: GravityInputs, solution: Solution, context: Context) 
     return tuple(names)
 
 
+def degree_one_names(inputs: GravityInputs) -> tuple[Name, ...]:
+    """Coefficients that the table of degree 1 gives."""
+    return () if inputs.degree_one is None else _DEGREE_ONE
+
+
 def _spans(solution: Solution, context: Context) -> list[Span]:
     window = context.window
     fields = solution_fields(solution, window, 0)
@@ -255,10 +260,22 @@ def _need(product: Sequence[object], key: str, asked: str) -> None:
         )
 
 
-def _converted(
+def converted(
     observed: complex, covariance: NDArray[np.float64], factors: NDArray[np.complex128]
 ) -> tuple[complex, NDArray[np.float64]]:
-    """Whole-ocean phasor: mean over the members, with the error of the series and the spread between them."""
+    """Convert a phasor by the factor of each member: their mean, with its own error and the spread between them.
+
+    Parameters
+    ----------
+    observed : complex
+    covariance : (2, 2) array
+    factors : (K,) array of complex
+
+    Returns
+    -------
+    phasor : complex
+    covariance : (2, 2) array
+    """
     each = as_components(observed * factors)
     turns = admittance_matrix(factors)
     within = np.mean(turns @ covariance @ np.swapaxes(turns, -1, -2), axis=0)
@@ -283,7 +300,7 @@ def _own_error(
     assert context.window is not None  # solution_fields has refused a model without
     radius = solution.models[0].field.conventions.radius_m
     layer = mass_per_coefficient(context.love, seen.max_degree, radius_m=radius)
-    replaced = replaced_names(inputs, solution, context) + (_DEGREE_ONE if inputs.degree_one is not None else ())
+    replaced = (*replaced_names(inputs, solution, context), *degree_one_names(inputs))
     formal = formal_covariance(
         solution, context.window, seen.weights * layer[None, :, None],
         replaced=replaced, reference_year=context.reference_year,

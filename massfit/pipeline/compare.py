@@ -21,6 +21,7 @@ from massfit.gravity.satellite import Context
 from massfit.network import Network
 from massfit.phasor import as_complex
 from massfit.pipeline.fingerprints import network_operator, network_vapour
+from massfit.posterior.regression import FREEDOM, SCALES
 from massfit.results.comparison import comparison_dataset, comparison_summary
 from massfit.results.finished import FinishedRun
 from massfit.results.posterior_groups import POSTERIOR
@@ -146,7 +147,8 @@ def network_answer(run: FinishedRun, network: Network, vapour: complex, ocean_ar
         PASCAL_PER_HPA**2 * np.array(summary["covariance_hpa2"]),
         sites,
         as_complex(phasors),
-        PASCAL_PER_HPA**2 * np.array([rows[site.id]["phasor_covariance_hpa2"] for site in sites]),
+        PASCAL_PER_HPA**2 * np.array([rows[site.id]["phasor_covariance_hpa2"] for site in sites])
+        + site_scatter(run, network, [len(rows[site.id]["models"]) for site in sites])[:, None, None] * np.eye(2),
         _admittance(fingerprints),
         _parts(summary["sites"], vapour, ocean_area_m2),
         *_yearly(run.datasets[POSTERIOR]),
@@ -159,6 +161,36 @@ def _by_member(run: FinishedRun) -> NDArray[np.complex128]:
     member = run.datasets["posterior.nc/sample_stats"]["load_member"].values
     draws = as_complex(run.datasets[POSTERIOR]["member_annual_phasor"].transpose("chain", "draw", "component").values)
     return np.array([draws[member == each].mean() for each in np.unique(member)])
+
+
+def site_scatter(run: FinishedRun, network: Network, models: Sequence[int]) -> NDArray[np.float64]:
+    """Variance of what parts a recorder from the water at its site beside the error of its record.
+
+    Parameters
+    ----------
+    run : FinishedRun
+    network : Network
+    models : sequence of int
+        Number of circulation models at each site.
+
+    Returns
+    -------
+    (n_site,) array
+        Of each component, Pa2: scatter of sites and groups, disagreement of the models and their common error, all
+        as the posterior has them; the prior of the circulation where none was subtracted; and the ocean-mean air.
+    """
+    posterior, settings = run.datasets[POSTERIOR], network.settings
+    squares = {name: float(np.mean(posterior[name].values ** 2)) for name in SCALES if name in posterior}
+    own = FREEDOM / (FREEDOM - 2.0) if settings.posterior.site_scatter == "student-t" else 1.0
+    truth = 1.0 if settings.posterior.model_truth == "exchangeable" else 0.0
+    air = (PASCAL_PER_HPA * settings.corrections.ocean_mean_atmosphere_sd_hpa) ** 2
+    always = own * squares.get("s_site", 0.0) + squares.get("s_group", 0.0) + air
+    circulation = [
+        (squares.get("s_local", 0.0) + squares.get("s_common", 0.0)) / count + truth * squares.get("s_common", 0.0)
+        if count else (PASCAL_PER_HPA * settings.priors.unmodelled_annual_hpa) ** 2
+        for count in models
+    ]  # fmt: skip
+    return always + np.array(circulation)
 
 
 def _admittance(fingerprints: xr.Dataset) -> NDArray[np.complex128]:

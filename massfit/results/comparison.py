@@ -70,8 +70,8 @@ def comparison_summary(found: GravityComparison, *, reference_year: int, ocean_a
         "sites": [
             {
                 "id": each.site,
-                "recorder": _phasor(each.recorder) if np.isfinite(each.recorder) else None,
-                "satellite": _phasor(each.satellite),
+                "recorder": _with_errors(each.recorder, each.recorder_covariance),
+                "satellite": _with_errors(each.satellite, each.satellite_covariance),
                 "chi_square": _finite(each.chi_square),
                 "probability": _finite(each.probability),
             }
@@ -111,7 +111,8 @@ def comparison_dataset(found: GravityComparison, summary: Mapping[str, Any]) -> 
     every = [found.network, found.satellite, *(other for other, _ in found.others)]
     lengths = [each.series.size for each in found.solutions]
     middles = [span.middle for each in found.solutions for span in each.monthly.spans]
-    pascal = {"units": "Pa"}
+    pascal, pascal2 = {"units": "Pa"}, {"units": "Pa2"}
+    at_sites = ("site", "component", "component2")
     choices = [each for each in found.choices if each.phasor is not None]
     return xr.Dataset(
         {
@@ -119,12 +120,22 @@ def comparison_dataset(found: GravityComparison, summary: Mapping[str, Any]) -> 
             "covariance": (
                 ("determination", "component", "component2"),
                 np.array([each.covariance for each in every]),
-                {"units": "Pa2"},
+                pascal2,
             ),
             "choice_phasor": (("choice", "component"), _stack([each.phasor for each in choices]), pascal),
             "choice_kernel_phasor": (("choice", "component"), _stack([each.kernel_phasor for each in choices]), pascal),
             "recorder_phasor": (("site", "component"), _stack([each.recorder for each in found.sites]), pascal),
             "satellite_phasor": (("site", "component"), _stack([each.satellite for each in found.sites]), pascal),
+            "recorder_covariance": (
+                at_sites,
+                _covariances([each.recorder_covariance for each in found.sites]),
+                pascal2,
+            ),
+            "satellite_covariance": (
+                at_sites,
+                _covariances([each.satellite_covariance for each in found.sites]),
+                pascal2,
+            ),
             "solution_phasor": (("solution", "component"), _stack([each.phasor for each in found.solutions]), pascal),
             "kernel_phasor": (
                 ("solution", "component"),
@@ -171,6 +182,10 @@ def _stack(phasors: Sequence[complex | None]) -> NDArray[np.float64]:
     return as_components(np.array(phasors, dtype=complex)).reshape(-1, 2)
 
 
+def _covariances(covariances: Sequence[NDArray[np.float64]]) -> NDArray[np.float64]:
+    return np.array(covariances).reshape(-1, 2, 2)
+
+
 def _hpa2(covariance: NDArray[np.float64]) -> list[list[float]]:
     return [[float(value) for value in row] for row in covariance / PASCAL_PER_HPA**2]
 
@@ -183,6 +198,15 @@ def _phasor(phasor: complex) -> dict[str, Any]:
         "water_mm": abs(phasor) / STANDARD_GRAVITY,  # kg m-2 are mm of fresh water
         "peak_day": float(peak_days(phasor)),
     }
+
+
+def _with_errors(phasor: complex, covariance: NDArray[np.float64]) -> dict[str, Any] | None:
+    """Phasor with the errors of amplitude and day, null where they are not known; nothing without a phasor."""
+    if not np.isfinite(phasor):
+        return None
+    amplitude_sd, day_sd = polar_sd(phasor, covariance)
+    errors = {"amplitude_sd_hpa": _finite(amplitude_sd / PASCAL_PER_HPA), "peak_day_sd": _finite(day_sd)}
+    return {**_phasor(phasor), **errors}
 
 
 def _determination(each: Determination, reference_year: int) -> dict[str, Any]:

@@ -1,6 +1,8 @@
 """What the figure of the satellite comparison is drawn from."""
 
+from collections.abc import Mapping
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -51,6 +53,73 @@ class Months:
     water_mm: NDArray[np.float64]
     fine_time: NDArray[np.datetime64]
     annual_mm: NDArray[np.float64]
+
+
+@dataclass(frozen=True)
+class Reading:
+    """One phasor as amplitude and day; an error that is not known is NaN.
+
+    Parameters
+    ----------
+    amplitude_hpa, amplitude_sd_hpa : float
+    peak_day, peak_day_sd : float
+    """
+
+    amplitude_hpa: float
+    amplitude_sd_hpa: float
+    peak_day: float
+    peak_day_sd: float
+
+
+@dataclass(frozen=True)
+class SiteBeside:
+    """Recorder and satellites at one site as they are drawn.
+
+    Parameters
+    ----------
+    site : str
+    recorder : Reading or None
+    satellite : Reading
+    probability : float
+        NaN where there is none.
+    """
+
+    site: str
+    recorder: Reading | None
+    satellite: Reading
+    probability: float
+
+
+def sites_beside(run: FinishedRun) -> list[SiteBeside]:
+    """Every recorder beside the satellites.
+
+    Parameters
+    ----------
+    run : FinishedRun
+        With a comparison.
+
+    Returns
+    -------
+    list of SiteBeside
+        In the order of the run.
+    """
+    return [
+        SiteBeside(
+            each["id"], None if each["recorder"] is None else _reading(each["recorder"]), _reading(each["satellite"]),
+            _number(each["probability"]),
+        )
+        for each in run.summary["comparison"]["sites"]
+    ]  # fmt: skip
+
+
+def _reading(phasor: Mapping[str, Any]) -> Reading:
+    errors = (_number(phasor.get(name)) for name in ("amplitude_sd_hpa", "peak_day_sd"))
+    amplitude_sd, day_sd = errors
+    return Reading(phasor["amplitude_hpa"], amplitude_sd, phasor["peak_day"], day_sd)
+
+
+def _number(value: float | None) -> float:
+    return np.nan if value is None else float(value)
 
 
 def placed_determinations(run: FinishedRun) -> list[Placed]:

@@ -16,9 +16,10 @@ from massfit.report.figures.moved_site import moved_site_figure
 from massfit.report.figures.network_map import network_map
 from massfit.report.figures.phasor_plane import phasor_plane
 from massfit.report.figures.record_panels import ROWS_OF_A_PAGE, record_panels
+from massfit.report.figures.satellite_sites import satellite_sites_figure
 from massfit.report.figures.satellites import satellite_figure
 from massfit.report.figures.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM
-from massfit.results.comparison_rows import placed_determinations, satellite_months
+from massfit.results.comparison_rows import placed_determinations, satellite_months, sites_beside
 from massfit.results.finished import FinishedRun
 from massfit.results.posterior_groups import POSTERIOR
 from massfit.results.readings import (
@@ -70,6 +71,8 @@ def draw_figures(run: FinishedRun, ocean: OceanFunction) -> dict[str, Figure]:
             figures[f"satellite{ending}"] = satellite_figure(
                 placed_determinations(run), satellite_months(run), width_mm=width
             )
+            if beside := sites_beside(run):
+                figures[f"satellite_sites{ending}"] = satellite_sites_figure(beside, width_mm=width)
     rows = record_rows(run)
     for page, first in enumerate(range(0, len(rows), ROWS_OF_A_PAGE), 1):
         name = "records" if page == 1 else f"records_{page}"

@@ -13,6 +13,7 @@ from massfit.report.figures.style import (
     COLUMN_WIDTH_MM,
     PAGE_WIDTH_MM,
     REFERENCE,
+    SATELLITE,
     SITE,
     house_style,
     placed_axes,
@@ -25,7 +26,6 @@ from massfit.results.comparison_rows import Months, Placed
 # radius of the 95 % ellipse of a two-dimensional normal, sqrt(-2 ln(1 - p))
 RADIUS_95 = 2.44775
 
-_SATELLITE = "#009E73"  # Okabe & Ito (2008)
 _MARKS = {"network": "o", "satellite": "s", "joint": "+"}
 _OTHERS = "D^vPX<>*"
 
@@ -66,7 +66,7 @@ def satellite_figure(placed: Sequence[Placed], months: Sequence[Months], *, widt
 
 def _plane(axes: Axes, placed: Sequence[Placed]) -> None:
     zero_lines(axes)
-    colours = {"network": ANSWER, "satellite": _SATELLITE, "joint": "black", "other": REFERENCE}
+    colours = {"network": ANSWER, "satellite": SATELLITE, "joint": "black", "other": REFERENCE}
     reach = np.zeros((0, 2))
     others = 0
     for each in placed:
@@ -95,7 +95,7 @@ def _plane(axes: Axes, placed: Sequence[Placed]) -> None:
 
 
 def _series(axes: Axes, months: Sequence[Months]) -> None:
-    colours = (_SATELLITE, SITE, ANSWER, REFERENCE)
+    colours = (SATELLITE, SITE, ANSWER, REFERENCE)
     span = max((float(np.ptp([*each.water_mm, *each.annual_mm])) for each in months), default=1.0)
     for index, each in enumerate(months):
         colour, shift = colours[index % len(colours)], -1.15 * span * index

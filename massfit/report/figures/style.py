@@ -12,6 +12,7 @@ from matplotlib.figure import Figure
 # colours of Okabe & Ito (2008), by role
 ANSWER = "#0072B2"
 SITE = "#E69F00"
+SATELLITE = "#009E73"
 REFERENCE = "#4D4D4D"
 LAND = "#D9D9D9"
 

@@ -42,6 +42,9 @@ PICTURES = {
     "extreme, is out of sight.",
     "satellite": "Network, satellites and other determinations of the water of the whole ocean, with 95 % ellipses; "
     "the satellites' ocean mean of each month as the kernel sees it, less its mean, and the annual cycle fitted to it.",
+    "satellite_sites": "Satellite pressure at each recorder (squares) beside the recorder's own phasor (dots), with "
+    "one standard deviation; bars may lead out of the frame. p: probability of a difference at least as large; names in "
+    "bold have less than 0.05.",
 }
 """Name of each figure and what it shows. Further pages of records end in ``_2`` and so on."""
 
@@ -118,5 +121,7 @@ def _alternative_texts(summary: Mapping[str, Any]) -> dict[str, str]:
         + answer_sentence(summary).removeprefix("The annual cycle of ocean mass has an "),
         "satellite": "Determinations in the plane of in phase and quadrature, and the monthly ocean mean of the "
         "satellites; the numbers are in the tables below.",
+        "satellite_sites": "Amplitude and peak day of recorder and satellites at every site; the numbers are in the "
+        "table below.",
         "records": "Daily records, corrections and remainders over time; what was done to each is in the tables below.",
     }
