@@ -46,6 +46,8 @@ def test_estimate_compares_when_the_network_file_has_gravity(network: Path, resu
         np.hypot(run.summary["in_phase_hpa"]["mean"], run.summary["quadrature_hpa"]["mean"])
     )
     assert len(comparison["others"]) == 2
+    assert all(site["recorder"]["amplitude_sd_hpa"] > 0.0 for site in comparison["sites"])
+    assert (results / "figures" / "satellite_sites_column.png").is_file()
     assert {site["id"] for site in comparison["sites"]} == {site["id"] for site in run.summary["sites"]}
     assert set(run.provenance["inputs"]) >= {"gravity/halvorne.tar.xz", "gravity/c20_c30.txt", "network.toml"}
     page = (results / "report.html").read_text(encoding="utf-8")
@@ -116,6 +118,19 @@ def test_check_shows_what_would_be_compared(network: Path, tmp_path: Path) -> No
     found = CliRunner().invoke(main, ["check", str(tmp_path), "--outside"])
     assert found.exit_code == 2
     assert 'no file "gravity/nothing.txt"' in found.output
+
+
+def test_the_scatter_of_recorders_is_that_of_the_posterior() -> None:
+    draws = {name: (("chain", "draw"), [[scale, -scale]]) for name, scale in (("s_site", 10.0), ("s_local", 6.0))}
+    draws |= {"s_common": (("chain", "draw"), [[4.0, 4.0]])}
+    run = FinishedRun({}, {}, {"posterior.nc/posterior": xr.Dataset(draws)})
+    corrections = SimpleNamespace(ocean_mean_atmosphere_sd_hpa=0.03)
+    choices = SimpleNamespace(site_scatter="student-t", model_truth="exchangeable")
+    priors = SimpleNamespace(unmodelled_annual_hpa=1.0)
+    network = SimpleNamespace(settings=SimpleNamespace(posterior=choices, corrections=corrections, priors=priors))
+    found = compare.site_scatter(run, network, [2, 0])  # type: ignore[arg-type]
+    # Student scatter of 4 degrees of freedom has twice the variance of its scale; two models halve their own errors
+    assert found == pytest.approx([2 * 100 + 9 + (36 + 16) / 2 + 16, 2 * 100 + 9 + 100**2])
 
 
 def test_a_comparison_keeps_the_tables_of_the_run(monkeypatch: pytest.MonkeyPatch) -> None:

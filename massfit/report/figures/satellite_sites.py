@@ -1,10 +1,12 @@
 """Every recorder beside satellite gravity: amplitude and peak day, one line a site."""
 
 from collections.abc import Sequence
+from typing import Any
 
 import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
+from matplotlib.lines import Line2D
 
 from massfit.constants import TROPICAL_YEAR_DAYS
 from massfit.report.figures.style import (
@@ -24,6 +26,12 @@ from massfit.results.comparison_rows import Reading, SiteBeside
 UNLIKELY = 0.05
 """A site whose difference has a lower probability is marked."""
 
+_LOOKS: dict[str, dict[str, Any]] = {
+    "recorder": {"color": SITE, "marker": "o", "markersize": 3.4},
+    "satellites": {"color": SATELLITE, "marker": "s", "markersize": 3.4, "markerfacecolor": "white"},
+}
+"""Told apart in grey too."""
+
 _ROW_MM = 4.2
 _APART = 0.16  # of a row: the two readings of a site stand one above the other
 
@@ -42,7 +50,7 @@ def satellite_sites_figure(rows: Sequence[SiteBeside], *, width_mm: float = PAGE
         Amplitude on the left, peak day on the right, the probability of the difference beside it.
     """
     wide = width_mm > COLUMN_WIDTH_MM
-    names, right, gap = (32.0, 13.0, 5.0) if wide else (20.0, 9.5, 3.0)
+    names, right, gap = (32.0, 13.0, 5.0) if wide else (20.0, 11.5, 3.0)
     side = 0.5 * (width_mm - names - right - gap)
     up, below, above = _ROW_MM * max(len(rows), 3), 16.0, 6.0
     with house_style():
@@ -58,8 +66,8 @@ def satellite_sites_figure(rows: Sequence[SiteBeside], *, width_mm: float = PAGE
         _names(amplitude, day, rows, 18 if wide else 11)
         amplitude.set_xlabel("amplitude / hPa")
         day.set_xlabel("peak / day")
-        handles, labels = amplitude.get_legend_handles_labels()
-        figure.legend(handles, labels, loc="lower center", ncols=2, borderaxespad=0.3)
+        handles = [Line2D([], [], label=label, **look) for label, look in _LOOKS.items()]
+        figure.legend(handles=handles, loc="lower center", ncols=2, borderaxespad=0.3)
     return figure
 
 
@@ -70,21 +78,14 @@ def _frame(axes: Axes, count: int) -> None:
 
 
 def _pair(amplitude: Axes, day: Axes, line: int, row: SiteBeside, middle: float) -> None:
-    for reading, shift, colour, mark, label in (
-        (row.recorder, -_APART, SITE, "o", "recorder"),
-        (row.satellite, _APART, SATELLITE, "s", "satellites"),
-    ):
+    for reading, shift, look in zip((row.recorder, row.satellite), (-_APART, _APART), _LOOKS.values(), strict=True):
         if reading is None:
             continue
-        filled = colour if mark == "o" else "white"  # told apart in grey too
         for axes, value, error in (
             (amplitude, reading.amplitude_hpa, reading.amplitude_sd_hpa),
             (day, _near(reading.peak_day, middle), reading.peak_day_sd),
         ):
-            axes.errorbar(
-                value, line + shift, xerr=None if np.isnan(error) else error, label=label if line == 0 else None,
-                color=colour, marker=mark, markersize=3.4, markerfacecolor=filled, elinewidth=0.9,
-            )  # fmt: skip
+            axes.errorbar(value, line + shift, xerr=None if np.isnan(error) else error, elinewidth=0.9, **look)
 
 
 def _near(day: float, middle: float) -> float:

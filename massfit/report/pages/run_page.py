@@ -43,8 +43,8 @@ PICTURES = {
     "satellite": "Network, satellites and other determinations of the water of the whole ocean, with 95 % ellipses; "
     "the satellites' ocean mean of each month as the kernel sees it, less its mean, and the annual cycle fitted to it.",
     "satellite_sites": "Satellite pressure at each recorder (squares) beside the recorder's own phasor (dots), with "
-    "one standard deviation; bars may lead out of the frame. p: probability of a difference at least as large; names in "
-    "bold have less than 0.05.",
+    "one standard deviation; bars may lead out of the frame. p: probability of a difference at least as large; names "
+    "in bold have less than 0.05.",
 }
 """Name of each figure and what it shows. Further pages of records end in ``_2`` and so on."""
 

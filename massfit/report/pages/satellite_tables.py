@@ -69,11 +69,16 @@ def _sites(comparison: Mapping[str, Any]) -> Table:
     rows = []
     for each in comparison["sites"]:
         own = each["recorder"]
-        recorder = (f"{own['amplitude_hpa']:.2f}", f"{own['peak_day']:.0f}") if own else ("", "")
-        other = each["satellite"]
-        cells = f"{other['amplitude_hpa']:.2f}", f"{other['peak_day']:.0f}"
-        rows.append([each["id"], *recorder, *cells, _probability(each)])
+        recorder = _with_error(own) if own else ("", "")
+        rows.append([each["id"], *recorder, *_with_error(each["satellite"]), _probability(each)])
     return Table("Satellite pressure at each recorder", head, rows)
+
+
+def _with_error(reading: Mapping[str, Any]) -> tuple[str, str]:
+    amplitude, day = f"{reading['amplitude_hpa']:.2f}", f"{reading['peak_day']:.0f}"
+    if reading.get("amplitude_sd_hpa") is None:
+        return amplitude, day
+    return f"{amplitude} ± {reading['amplitude_sd_hpa']:.2f}", f"{day} ± {reading['peak_day_sd']:.0f}"
 
 
 def _geocentre(comparison: Mapping[str, Any]) -> Table:

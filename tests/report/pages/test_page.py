@@ -14,6 +14,7 @@ from massfit.report.words.run_text import SHARE_WORDS
 from massfit.results.estimate import Estimate
 from massfit.results.finished import FinishedRun, finished_run
 
+SATELLITE = {"satellite", "satellite_sites"}
 PNG = dict.fromkeys((*PICTURES, "records_2", "phasor_plane_column"), b"\x89PNG")
 SECTIONS = ("beware", "assumed", "holds", "network", "corrections", "fingerprint", "records", "provenance")
 
@@ -56,14 +57,14 @@ def tags(page: str) -> list[tuple[str, dict[str, str | None]]]:
 def test_it_is_well_formed_and_every_picture_has_words(page: str) -> None:
     assert page.lstrip().startswith("<!DOCTYPE html>")
     pictures = [attributes for tag, attributes in tags(page) if tag == "img"]
-    drawn = PICTURES.keys() - {"satellite"}  # the run has none
+    drawn = PICTURES.keys() - SATELLITE  # the run has none
     assert len(pictures) == len(drawn) + 1  # the second page of records
     for attributes in pictures:
         assert len(str(attributes["alt"])) > 40
         assert str(attributes["src"]).startswith("data:image/png;base64,")
     (narrow,) = [attributes for tag, attributes in tags(page) if tag == "source"]
     assert narrow["media"] == "screen and (max-width: 640px)"
-    for caption in (text for name, text in PICTURES.items() if name != "satellite"):
+    for caption in (text for name, text in PICTURES.items() if name not in SATELLITE):
         assert caption.replace("'", "&#39;") in page
 
 
