@@ -10,7 +10,7 @@ import massfit
 # from the top of the house down; the arrows may only point to a later line
 LAYERS = [
     {"cli"},
-    {"pipeline"},
+    {"pipeline", "figures"},
     {"io", "report", "simulate"},
     {"results"},
     {"gravity", "siting"},

@@ -153,7 +153,7 @@ def run_ensembles(task: EnsembleTask) -> EnsembleChains:
     EnsembleChains
     """
     model, steps = task.model, task.steps
-    walkers = max(MEMBER_WALKERS, 2 * int(np.ceil(0.5 * WALKERS / model.member_count)))
+    walkers = walkers_of_member(model.member_count)
     kept = np.unique(np.linspace(0, steps - 1, min(steps, KEPT_DRAWS // walkers + 1)).round().astype(int))
     warm_up = steps // 3
     walk = _Walk(task, walkers)
@@ -168,6 +168,17 @@ def run_ensembles(task: EnsembleTask) -> EnsembleChains:
     log_scales, mean, covariance = (_arranged(column, layout) for column in zip(*chain, strict=True))
     density, annual, years = (_arranged(column, layout) for column in zip(*draws, strict=True))
     return EnsembleChains(log_scales, mean, covariance, kept, density, annual, years)
+
+
+def walkers_of_member(member_count: int) -> int:
+    """Count the walkers of one load member in an ensemble.
+
+    Examples
+    --------
+    >>> walkers_of_member(1), walkers_of_member(7)
+    (40, 8)
+    """
+    return max(MEMBER_WALKERS, 2 * int(np.ceil(0.5 * WALKERS / member_count)))
 
 
 def _arranged(values: Sequence[Floats], layout: tuple[int, int, int, int]) -> Floats:

@@ -10,6 +10,7 @@ from massfit.constants import PASCAL_PER_HPA
 from massfit.display import Described, Description, counted
 from massfit.phasor import COMPONENTS
 from massfit.posterior.convergence import Convergence
+from massfit.posterior.explore import walkers_of_member
 from massfit.posterior.importance import ScalePosterior
 from massfit.posterior.regression import SCALES
 from massfit.settings import PosteriorSettings, Priors
@@ -145,6 +146,8 @@ class Posterior(Described):
             },
             attrs={
                 "seed": self.seed,
+                "load_members": len(self.members),
+                "walkers": walkers_of_member(len(self.members)),
                 "converged": int(self.converged),
                 "rhat_max": self.convergence.rhat_max,
                 "ess_bulk_min": self.convergence.ess_bulk_min,

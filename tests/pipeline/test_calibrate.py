@@ -149,4 +149,4 @@ def test_the_command_writes_what_it_found_everywhere(tmp_path: Path, monkeypatch
     assert said["sentence"] in (results / "report.html").read_text()
 
 
-PICTURES = ("phasor_plane", "network_map", "fingerprint", "corner")
+PICTURES = ("phasor_plane", "network_map", "fingerprint", "corner", "convergence", "coverage")

@@ -21,7 +21,7 @@ from massfit.results.estimate import Estimate
 from massfit.results.finished import finished_run
 
 DATASETS = ("posterior.nc", "site_phasors.nc", "fingerprints.nc", "reduced_records.nc")
-BOTH_WIDTHS = ("phasor_plane", "network_map", "fingerprint", "corner")
+BOTH_WIDTHS = ("phasor_plane", "network_map", "fingerprint", "corner", "convergence", "coverage")
 PICTURES = ("records.png", *(f"{name}{width}.png" for name in BOTH_WIDTHS for width in ("", "_column")))
 
 

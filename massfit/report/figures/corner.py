@@ -26,6 +26,13 @@ def corner_figure(quantities: Mapping[str, NDArray[np.float64]], *, width_mm: fl
     -------
     matplotlib.figure.Figure
         Contours enclose 50 and 95 %.
+
+    Examples
+    --------
+    >>> draws = np.random.default_rng(1).normal(size=(2, 2000))
+    >>> figure = corner_figure({"amplitude / hPa": 0.85 + 0.05 * draws[0], "peak / day": 275.0 + 4.0 * draws[1]})
+    >>> len(figure.axes)
+    4
     """
     labels = list(quantities)
     draws = np.column_stack([quantities[label] for label in labels])

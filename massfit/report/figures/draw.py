@@ -10,7 +10,9 @@ from numpy.typing import NDArray
 from massfit.constants import PASCAL_PER_HPA
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.phasor import as_complex, unwrapped_peak_days
+from massfit.report.figures.convergence import convergence_figure
 from massfit.report.figures.corner import corner_figure
+from massfit.report.figures.coverage_calendar import coverage_calendar
 from massfit.report.figures.fingerprint_members import fingerprint_members
 from massfit.report.figures.moved_site import moved_site_figure
 from massfit.report.figures.network_map import network_map
@@ -19,7 +21,9 @@ from massfit.report.figures.record_panels import ROWS_OF_A_PAGE, record_panels
 from massfit.report.figures.satellite_sites import satellite_sites_figure
 from massfit.report.figures.satellites import satellite_figure
 from massfit.report.figures.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM
+from massfit.results.chains import chain_diagnostics
 from massfit.results.comparison_rows import placed_determinations, satellite_months, sites_beside
+from massfit.results.coverage import monthly_coverage
 from massfit.results.finished import FinishedRun
 from massfit.results.posterior_groups import POSTERIOR
 from massfit.results.readings import (
@@ -59,12 +63,16 @@ def draw_figures(run: FinishedRun, ocean: OceanFunction) -> dict[str, Figure]:
         and so on. The same for a single column, but for the records, end in ``_column``.
     """
     figures: dict[str, Figure] = {}
-    contours = answer_contours(run)
+    contours, coverage = answer_contours(run), monthly_coverage(run)
+    chains = chain_diagnostics(run.datasets[POSTERIOR])
     for ending, width in (("", PAGE_WIDTH_MM), ("_column", COLUMN_WIDTH_MM)):
         figures[f"phasor_plane{ending}"] = _plane(run, contours, width)
         figures[f"network_map{ending}"] = _map(run, ocean, width)
         figures[f"fingerprint{ending}"] = _members(run, width)
         figures[f"corner{ending}"] = _corner(run.datasets[POSTERIOR], width)
+        figures[f"convergence{ending}"] = convergence_figure(chains, words=SCALE_WORDS, width_mm=width)
+        if coverage.sizes["site"]:
+            figures[f"coverage{ending}"] = coverage_calendar(coverage, width_mm=width)
         if "moved_site" in run.summary:
             figures[f"moved_site{ending}"] = _moved_site(run, width)
         if "comparison.nc" in run.datasets:

@@ -61,9 +61,9 @@ def world_map(
     Parameters
     ----------
     values, ocean_fraction : (n_lat, n_lon) array
-        Cells that are less than half ocean are land.
+        Cells that are less than half ocean are land; values may be masked.
     latitude_deg, longitude_deg : (n_lat,), (n_lon,) array
-        Centres of the cells.
+        Centres of the cells, over the whole Earth.
     site_ids : sequence of str
     site_latitude_deg, site_longitude_deg : (n_site,) array
         Degrees; longitude in either convention.
@@ -81,9 +81,20 @@ def world_map(
     Returns
     -------
     matplotlib.figure.Figure
+
+    Examples
+    --------
+    >>> latitude, longitude = np.arange(-87.5, 90.0, 5.0), np.arange(2.5, 360.0, 5.0)
+    >>> ratio = 1.0 + 0.1 * np.outer(np.cos(np.radians(latitude)), np.sin(np.radians(longitude)))
+    >>> place = np.array([-11.0]), np.array([205.5])
+    >>> bands = np.linspace(0.9, 1.1, 11)
+    >>> figure = world_map(ratio, np.ones((36, 72)), latitude, longitude, ["A"], *place, label="ratio", bands=bands)
+    >>> figure.axes[1].get_xlabel()
+    'ratio'
     """
     ocean = ocean_fraction >= 0.5
-    inside = values[ocean] if at_sites is None else np.concatenate([values[ocean], at_sites])
+    known = np.ma.compressed(np.ma.masked_invalid(values[ocean]))
+    inside = known if at_sites is None else np.concatenate([known, at_sites])
     scale = BoundaryNorm(bands, 256, extend="both")
     south, north = latitude_range(site_latitude_deg)
     across = width_mm - 15.0
@@ -141,6 +152,16 @@ def footprint_panels(
     Returns
     -------
     matplotlib.figure.Figure
+
+    Examples
+    --------
+    >>> latitude, longitude = np.arange(-85.0, 90.0, 10.0), np.arange(5.0, 360.0, 10.0)
+    >>> ocean = np.broadcast_to(np.cos(np.radians(longitude)) > 0, (18, 36)).astype(float)
+    >>> place = np.array([-11.0]), np.array([205.5])
+    >>> bands = np.linspace(0.0, 2.0, 9)
+    >>> figure = footprint_panels(np.ones((1, 18, 36)), ocean, latitude, longitude, ["A"], *place, bands=bands)
+    >>> figure.axes[0].get_title(loc="left")
+    'A'
     """
     across = (4 if width_mm > COLUMN_WIDTH_MM else 2) if len(site_ids) > 1 else 1
     down = -(-len(site_ids) // across)
@@ -273,6 +294,7 @@ def _colour_scale(
         ScalarMappable(scale, _COLOURS), cax=placed_axes(figure, *place), orientation="horizontal", label=label,
         extend=extend,
     )  # fmt: skip
-    every = max(1, -(-len(scale.boundaries) // 12))
+    labels = min(12, int(place[2] / 9.0))  # 9 mm hold the longest
+    every = max(1, -(-len(scale.boundaries) // labels))
     bar.set_ticks(list(scale.boundaries[::every]), labels=[f"{round(edge, 6):g}" for edge in scale.boundaries[::every]])
     bar.ax.tick_params(color=REFERENCE)

@@ -51,6 +51,13 @@ def fingerprint_members(
     -------
     matplotlib.figure.Figure
         Ratio on the left, delay on the right, one line a site.
+
+    Examples
+    --------
+    >>> admittance = np.array([[1.10 + 0.01j, 0.92 - 0.03j], [1.14, 0.90]])
+    >>> figure = fingerprint_members(("North", "South"), ("wet", "dry"), admittance)
+    >>> len(figure.axes)
+    2
     """
     names = 32.0 if width_mm > COLUMN_WIDTH_MM else 22.0
     side = 0.5 * (width_mm - names - 7.0)

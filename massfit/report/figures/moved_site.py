@@ -34,6 +34,13 @@ def moved_site_figure(
     Returns
     -------
     matplotlib.figure.Figure
+
+    Examples
+    --------
+    >>> shifts = {"normal": [0.0, 0.1, 0.2], "student-t": [0.0, 0.06, 0.05]}
+    >>> figure = moved_site_figure("North", [0.0, 1.0, 2.0], shifts, used="student-t")
+    >>> figure.axes[0].get_ylabel()
+    'shift of the answer / hPa'
     """
     with house_style():
         figure = sheet(width_mm, 58.0)

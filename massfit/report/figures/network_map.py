@@ -47,6 +47,15 @@ def network_map(
     Returns
     -------
     matplotlib.figure.Figure
+
+    Examples
+    --------
+    >>> ocean = np.ones((18, 36))
+    >>> latitude, longitude = np.arange(-85.0, 90.0, 10.0), np.arange(5.0, 360.0, 10.0)
+    >>> place = np.array([-11.0, 8.0]), np.array([205.5, 184.0])
+    >>> figure = network_map(ocean, latitude, longitude, ("North", "South"), *place, np.array([1.1, 0.95 + 0.02j]))
+    >>> figure.axes[0].get_title(loc="left")
+    'The network'
     """
     doubt = np.asarray(doubtful if len(doubtful) else np.zeros(len(site_ids)), dtype=bool)
     east = on_the_map(np.asarray(longitude_deg, dtype=float))

@@ -65,6 +65,14 @@ def phasor_plane(
     -------
     matplotlib.figure.Figure
         The whole plane, and the region of the answer enlarged: side by side, or one above the other in a column.
+
+    Examples
+    --------
+    >>> draws = np.random.default_rng(1).normal([0.1, -0.85], 0.05, (500, 2))
+    >>> sites, covariances = np.array([[0.2, -0.8], [0.0, -0.95]]), np.stack(2 * [0.01 * np.eye(2)])
+    >>> figure = phasor_plane(draws, ("North", "South"), sites, covariances, reference_year=2016)
+    >>> [axes.get_title(loc="left") for axes in figure.axes]
+    ['Network and sites', 'The answer enlarged']
     """
     with house_style():
         figure, whole, near = _panels(width_mm)

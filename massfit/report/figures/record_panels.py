@@ -48,6 +48,16 @@ def record_panels(rows: Sequence[RecordRow], *, width_mm: float = PAGE_WIDTH_MM)
     matplotlib.figure.Figure
         Three columns: daily record with drift; corrections; reduced record with the fitted cycle. Each row of a
         column has its own scale.
+
+    Examples
+    --------
+    >>> time = np.datetime64("2016-01-01T12", "ns") + np.arange(400) * np.timedelta64(1, "D")
+    >>> cycle = 0.9 * np.cos(2 * np.pi * (np.arange(400) - 275) / 365.2422)
+    >>> drift = 9.0 * np.exp(-np.arange(400) / 60.0)
+    >>> tides = {"long-period tides": 0.3 * np.cos(2 * np.pi * np.arange(400) / 13.66)}
+    >>> figure = record_panels([RecordRow("North", [(time, cycle + drift, drift)], time, tides, time, cycle, cycle)])
+    >>> len(figure.axes)
+    3
     """
     drawn = (_draw_record, _draw_corrections, _draw_reduced)
     first = 0 if width_mm > COLUMN_WIDTH_MM else 2

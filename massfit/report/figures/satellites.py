@@ -43,6 +43,18 @@ def satellite_figure(placed: Sequence[Placed], months: Sequence[Months], *, widt
     -------
     matplotlib.figure.Figure
         Side by side, or one above the other in a column.
+
+    Examples
+    --------
+    >>> placed = [
+    ...     Placed("network", np.array([0.1, -0.9]), 0.02 * np.eye(2), "network"),
+    ...     Placed("satellites", np.array([0.0, -0.85]), 0.01 * np.eye(2), "satellite"),
+    ... ]
+    >>> time = np.arange("2014-01", "2016-01", dtype="datetime64[M]").astype("datetime64[ns]")
+    >>> cycle = 8.7 * np.sin(2 * np.pi * np.arange(24) / 12)
+    >>> figure = satellite_figure(placed, [Months("one solution", time, cycle, time, cycle)])
+    >>> len(figure.axes)
+    2
     """
     with house_style():
         wide = width_mm > COLUMN_WIDTH_MM

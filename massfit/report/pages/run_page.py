@@ -37,6 +37,10 @@ PICTURES = {
     "own cycle: under normal scatter it follows; under Student-t scatter a site that is far off loses its say.",
     "corner": "Posterior of the answer and of the scales of the model; contours enclose 50 and 95 %, dashed lines mark "
     "the median and the central 95 %.",
+    "convergence": "How the sampler moved: each kept step of the independent chains, how soon a walker forgets where "
+    "it was, R-hat and the effective number of draws of every quantity; the grey is beyond the limits.",
+    "coverage": "Days of each month that the fit of each site used; a month without a cell has no data. Above, how "
+    "many sites were at work.",
     "records": "Each site: daily record with fitted drift, deployments in turn blue and orange; the series subtracted "
     "from it; what remains, with the fitted annual cycle. Every row has its own scale; one day in 250, the most "
     "extreme, is out of sight.",
@@ -119,6 +123,8 @@ def _alternative_texts(summary: Mapping[str, Any]) -> dict[str, str]:
         "moved_site": "Shift of the answer against the offset of one site, under normal and Student-t site scatter.",
         "corner": "Posterior densities of amplitude and peak day, "
         + answer_sentence(summary).removeprefix("The annual cycle of ocean mass has an "),
+        "convergence": f"Traces, autocorrelation, R-hat and effective draws of the sampler. {trust_sentence(summary)}",
+        "coverage": f"Calendar of the months of {count} sites; days and coverage of each are in the table below.",
         "satellite": "Determinations in the plane of in phase and quadrature, and the monthly ocean mean of the "
         "satellites; the numbers are in the tables below.",
         "satellite_sites": "Amplitude and peak day of recorder and satellites at every site; the numbers are in the "

@@ -5,6 +5,7 @@ import pytest
 from contourpy import contour_generator
 from scipy.interpolate import RegularGridInterpolator
 
+from massfit.figures import result_figures
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.posterior.regions import DensityRegions, density_regions
 from massfit.report.figures import draw
@@ -53,8 +54,8 @@ def test_regions_that_are_drawn_hold_their_probability_and_are_not_ragged(level:
 
 
 def test_every_figure_comes_at_both_widths_but_the_records(finished: FinishedRun) -> None:
-    figures = draw_figures(finished, OceanFunction.builtin())
-    names = {"phasor_plane", "network_map", "fingerprint", "corner"}
+    figures = result_figures(finished)
+    names = {"phasor_plane", "network_map", "fingerprint", "corner", "convergence", "coverage"}
     assert set(figures) == names | {f"{name}_column" for name in names} | {"records"}
     for name, figure in figures.items():
         millimetres = 85.0 if name.endswith("_column") else 180.0
