@@ -233,8 +233,10 @@ class _Solver:
 
     def __init__(self, basis: DriftBasis, sample: DriftSample) -> None:
         self.design, self.sample = basis.design, sample
-        self._reducer = Reducer(basis.design, basis.columns)
-        self._combination = basis.combination(sample.grid.nodes)
+        # the nodes that are left need fewer columns than the whole range of time constants
+        narrow = DriftBasis(basis.design, sample.grid.nodes)
+        self._reducer = Reducer(basis.design, narrow.columns)
+        self._combination = narrow.combination(sample.grid.nodes)
         self._turns = count()
 
     def solve(self, mode: FamilyMode, scores: Floats, white_ratio: Floats) -> _Batch:

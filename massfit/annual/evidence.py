@@ -158,11 +158,15 @@ class DriftBasis:
     Parameters
     ----------
     design : Design
+    nodes : sequence of Nodes, optional
+        Choices of each term to be spanned; those of the whole range by default.
     """
 
-    def __init__(self, design: Design) -> None:
+    def __init__(self, design: Design, nodes: Sequence[Nodes] | None = None) -> None:
+        if nodes is None:
+            nodes = [first_nodes(term.forms, term.low, term.high, SPANNING_NODES) for term in design.terms]
         self.design = design
-        self._spans = [_span(design, term) for term in design.terms]
+        self._spans = [_span(design, term, own) for term, own in zip(design.terms, nodes, strict=True)]
         padded = [np.zeros((len(design.days), 0))]
         for rows, span in self._spans:
             padded.append(np.zeros((len(design.days), span.shape[1])))
@@ -182,11 +186,11 @@ class DriftBasis:
         return Reducer(self.design, self.columns, data_only=True)(noise)
 
 
-def _span(design: Design, term: DriftTerm) -> tuple[NDArray[np.int64], Floats]:
+def _span(design: Design, term: DriftTerm, nodes: Nodes) -> tuple[NDArray[np.int64], Floats]:
     """Rows of a deployment, and orthonormal columns on them."""
     drift = design.drifts[term.deployment]
     rows = np.append(drift.rows, drift.calibration_rows)
-    columns = design.term_columns(term, first_nodes(term.forms, term.low, term.high, SPANNING_NODES), rows)
+    columns = design.term_columns(term, nodes, rows)
     left, values, _ = np.linalg.svd(columns, full_matrices=False)
     return rows, left[:, values > COMPRESSION * values[0]]
 
@@ -309,15 +313,17 @@ def conditional_log_evidence(
     """
     others = np.delete(choices, place, axis=1)
     normal = reduction.normal[others[:, :, None], others[:, None, :]] + reduction.precision * np.eye(others.shape[1])
-    cross = reduction.normal[others[:, :, None], columns]
-    right = reduction.right[:, 0]
-    solved = np.linalg.inv(normal) @ cross
-    own = reduction.precision + np.diag(reduction.normal)[columns] - np.sum(cross * solved, axis=1)
+    inverse, right = np.linalg.inv(normal), reduction.right[:, 0]
+    cross, right_others = reduction.normal[:, columns][others], right[others]
+    weights = (inverse @ right_others[:, :, None])[:, :, 0]
+    log_determinant = np.linalg.slogdet(normal)[1] - others.shape[1] * np.log(reduction.precision)
+    alone = 0.5 * (np.einsum("cd,cd->c", right_others, weights) - log_determinant)
+    own = reduction.precision + np.diag(reduction.normal)[columns] - np.einsum("cdg,cdg->cg", cross, inverse @ cross)
     # no less than the prior precision, which rounding can hide where two recorders agree to their resolution
     own = np.maximum(own, reduction.precision)
-    own_right = right[columns] - np.sum(right[others][:, :, None] * solved, axis=1)
-    alone = solve_choices(reduction, others).log_evidence
-    return np.asarray(alone[:, None] + 0.5 * (own_right**2 / own - np.log(own / reduction.precision)))
+    own_right = right[columns] - (weights[:, None, :] @ cross)[:, 0]
+    gain = own_right**2 / own - np.log(own / reduction.precision)
+    return np.asarray(reduction.log_evidence + alone[:, None] + 0.5 * gain)
 
 
 def annual_covariance(reduction: Reduction, solutions: Solutions) -> Floats:

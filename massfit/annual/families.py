@@ -35,6 +35,11 @@ SMOOTH_MEMORY = 2.146193
 """Lag at which (1 + x) exp(-x) is 1/e."""
 
 
+WHITE_SHARES, LEADING_SHARE = (0.5, 0.1, 0.01, 0.9), 0.9
+"""Shares of the white noise in a variance, and of one term of a sum in what is left, from the best of which the search
+for a mode begins."""
+
+
 @dataclass(frozen=True)
 class NoiseFamily:
     """One form of noise; its scores are those of the red noise, then that of the white noise.
@@ -87,15 +92,20 @@ class NoiseFamily:
         rates, variances = self._red(scores[:-1])
         return NoiseModel(rates, variances, float(half_t(scores[-1], self.white_scale)) * white_ratio)
 
-    def start(self, sd: float) -> Floats:
-        """Scores at which red and white noise have equal shares of a variance, the rest at its median."""
-        scores = np.zeros(self.size)
-        terms = len(self.time_scales) + 1 if self.form == "sum" else 2
-        share = np.hypot(sd / np.sqrt(terms if self.size > 1 else 1), RESOLUTION)
-        red = terms - 1 if self.size > 1 else 0
-        scores[:red] = half_t_score(share, self.red_scale)
-        scores[-1] = half_t_score(share, self.white_scale)
-        return scores
+    def starts(self, sd: float) -> list[Floats]:
+        """Scores at which white and red noise share a variance in several ways, each term of a sum leading in turn."""
+        count = {"white": 0, "sum": self.size - 1}.get(self.form, 1)
+        if not count:
+            return [half_t_score(np.array([np.hypot(sd, RESOLUTION)]), self.white_scale)]
+        starts = []
+        for white in WHITE_SHARES:
+            for lead in range(count):
+                scores, red = np.zeros(self.size), np.full(count, (1.0 - LEADING_SHARE) / max(count - 1, 1))
+                red[lead] = LEADING_SHARE if count > 1 else 1.0
+                scores[:count] = half_t_score(np.hypot(sd * np.sqrt((1.0 - white) * red), RESOLUTION), self.red_scale)
+                scores[-1] = half_t_score(np.hypot(sd * np.sqrt(white), RESOLUTION), self.white_scale)
+                starts.append(scores)
+        return starts
 
     def _red(self, scores: Floats) -> tuple[Floats, Floats]:
         if self.form == "white":

@@ -53,6 +53,11 @@ class DriftGrid:
         return tuple(nodes.take(np.array([node])) for nodes, node in zip(self.nodes, self.best, strict=True))
 
     @property
+    def size(self) -> int:
+        """Nodes of all terms together."""
+        return sum(len(nodes) for nodes in self.nodes)
+
+    @property
     def resolved(self) -> bool:
         """Whether no node with a time constant holds much of its mass."""
         return all((mass[nodes.timed] < LARGEST_MASS).all() for nodes, mass in zip(self.nodes, self.mass, strict=True))
@@ -76,33 +81,36 @@ def grid_of(nodes: tuple[Nodes, ...], near: tuple[Nodes, ...]) -> DriftGrid:
     return DriftGrid(nodes, tuple(own.prior for own in nodes), np.array(best, np.int64))
 
 
-def refine_grid(noise: NoiseCovariance, basis: DriftBasis, start: tuple[Nodes, ...] | None = None) -> DriftGrid:
+def refine_grid(noise: NoiseCovariance, basis: DriftBasis, start: DriftGrid | None = None) -> DriftGrid:
     """Refine the grids in turn until the annual phasor stands still.
 
     Parameters
     ----------
     noise : NoiseCovariance
     basis : DriftBasis
-    start : tuple of Nodes, optional
-        One node of each term to begin the search of the mode from.
+    start : DriftGrid, optional
+        Grid to begin with, found with other noise.
 
     Returns
     -------
     DriftGrid
         Masses are those in turn, the other terms held at the joint mode.
     """
-    nodes = tuple(first_nodes(term.forms, term.low, term.high) for term in basis.design.terms)
-    grid = grid_of(nodes, start if start is not None else tuple(own.take(np.array([len(own) // 2])) for own in nodes))
-    if not nodes:
-        return grid
+    if start is None:
+        nodes = tuple(first_nodes(term.forms, term.low, term.high) for term in basis.design.terms)
+        start = grid_of(nodes, tuple(own.take(np.array([len(own) // 2])) for own in nodes))
+    if not start.nodes:
+        return start
     reduction = basis.reduce(noise)
-    previous: Floats | None = None
+    grid, phasors, _ = _weigh(reduction, basis, start)
     for _ in range(MAX_ROUNDS):
-        grid, phasors, sigma = _weigh(reduction, basis, grid)
-        if grid.resolved and previous is not None and np.abs((phasors - previous) / sigma).max() < PHASOR_TOLERANCE:
+        finer, previous = grid.split(), phasors
+        if finer.size == grid.size:
             return grid
-        previous, grid = phasors, grid.split()
-    return _weigh(reduction, basis, grid)[0]
+        grid, phasors, sigma = _weigh(reduction, basis, finer)
+        if grid.resolved and np.abs((phasors - previous) / sigma).max() < PHASOR_TOLERANCE:
+            return grid
+    return grid
 
 
 def _weigh(whole: Reduction, basis: DriftBasis, grid: DriftGrid) -> tuple[DriftGrid, Floats, Floats]:

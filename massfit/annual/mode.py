@@ -9,21 +9,22 @@ from numpy.typing import NDArray
 
 from massfit.annual.design import Design
 from massfit.annual.evidence import ChosenEvidence, DriftBasis
-from massfit.annual.families import NoiseFamily, log_score_prior
+from massfit.annual.families import NoiseFamily, half_t_score, log_score_prior
 from massfit.annual.grid import DriftGrid, refine_grid
 from massfit.annual.nodes import Nodes, exponential_nodes
-from massfit.annual.noise import NoiseModel
+from massfit.annual.noise import RESOLUTION, NoiseModel
 from massfit.errors import ConvergenceError
 
 Floats = NDArray[np.float64]
 
-MODE_TOLERANCE = 0.02
-"""The alternation ends when the log posterior gains less than this in a round."""
+MODE_TOLERANCE = 0.1
+"""The alternation ends when the log posterior gains less than this from drift terms found anew."""
 
 MAX_ALTERNATIONS = 8
 
-NEWTON_TOLERANCE = 0.01
-"""Gain of the log posterior that a further Newton step promises at which they end: a proposal needs no more."""
+NEWTON_TOLERANCE = 0.1
+"""Gain of the log posterior that a Newton step promises at which it is the last: what remains after it is of the order
+of its square, and a proposal needs no more."""
 
 MAX_NEWTON_STEPS = 20
 
@@ -37,6 +38,9 @@ WHITE_RATIO_SD = 0.5
 """Prior standard deviation of the logarithm of a recorder's white noise over that of its site."""
 
 RATIO_STEP, RATIO_SWEEPS = 0.2, 2
+
+STARTING_PLACES = (-1.0, 0.0, 1.0)
+"""Scores of the time scale or the exponent from which the search for a form of noise begins at best."""
 
 NEGLIGIBLE_FORM = 3e-3
 """Forms of noise of less weight than this part of the best, by Laplace's approximation, are left out."""
@@ -103,20 +107,17 @@ def joint_mode(basis: DriftBasis, families: Sequence[NoiseFamily]) -> Mode:
     Mode
     """
     design = basis.design
-    leader = max(families, key=lambda family: family.size)
-    scores, ratio = leader.start(_rough_sd(design)), np.ones(len(design.drifts))
-    grid = refine_grid(design.covariance(leader.model(scores, ratio)), basis)
-    found, grid = _alternate(basis, leader, ratio, scores, grid)
+    leader, ratio = max(families, key=lambda family: family.size), np.ones(len(design.drifts))
+    found, grid = _alternate(basis, leader, ratio)
     ratio = _white_ratio(design, leader, found.scores, grid.mode)
-    modes = [
-        _family_mode(
-            family, minimise(_objective(design, family, ratio, grid.mode), _start(family, leader, found.scores))
-        )
-        for family in families
-    ]
+    modes = []
+    for family in families:
+        objective = _objective(design, family, ratio, grid.mode)
+        start = min(_starts(family, leader, found.scores), key=objective)
+        modes.append(_family_mode(family, minimise(objective, start)))
     best = max(modes, key=lambda mode: mode.log_evidence)
     if best.family is not leader:
-        grid = refine_grid(design.covariance(best.family.model(best.scores, ratio)), basis, grid.mode)
+        grid = refine_grid(design.covariance(best.family.model(best.scores, ratio)), basis, grid)
     kept = [mode for mode in modes if mode.log_evidence > best.log_evidence + np.log(NEGLIGIBLE_FORM)]
     return Mode(tuple(sorted(kept, key=lambda mode: -mode.log_evidence)), ratio, grid)
 
@@ -143,38 +144,58 @@ def minimise(objective: Callable[[Floats], float], start: Floats) -> Minimum:
 
     Examples
     --------
-    >>> found = minimise(lambda x: float(2 * (x[0] - 1) ** 2 + x[1] ** 2 / 2), np.zeros(2))
+    >>> found = minimise(lambda x: float(2 * (x[0] - 1) ** 2 + (x[1] - 2) ** 2 / 2), np.zeros(2))
     >>> found.scores.round(6), found.spread.diagonal().round(6)
-    (array([1., 0.]), array([0.25, 1.  ]))
+    (array([1., 2.]), array([0.25, 1.  ]))
     """
     scores, value = start, objective(start)
     for _ in range(MAX_NEWTON_STEPS):
-        gradient, hessian = _local_shape(objective, scores, value)
-        spread = _inverse(hessian)
-        step = -spread @ gradient
-        if -gradient @ step < 2.0 * NEWTON_TOLERANCE:
-            break
-        step *= min(1.0, LONGEST_STEP / np.abs(step).max())
+        shape = _local_shape(objective, scores, value)
+        step = -_inverse(shape.hessian) @ shape.gradient
+        last = bool(-shape.gradient @ step < 2.0 * NEWTON_TOLERANCE)
+        step *= min(1.0, LONGEST_STEP / max(np.abs(step).max(), LONGEST_STEP))
         trial = objective(scores + step)
-        while not trial < value and np.abs(step).max() > 1e-3:
+        while not (last or trial < value) and np.abs(step).max() > 1e-3:
             step = 0.4 * step
             trial = objective(scores + step)
-        if not trial < value:
+        last = last or not trial < value
+        if trial < value:
+            scores, value = scores + step, trial
+        if last:
             break
-        scores, value = scores + step, trial
-    return Minimum(scores, value, spread)
+    return Minimum(scores, value, _inverse(_centred_hessian(objective, shape)))
 
 
-def _local_shape(objective: Callable[[Floats], float], scores: Floats, value: float) -> tuple[Floats, Floats]:
-    """Gradient and Hessian by differences."""
+@dataclass(frozen=True)
+class _Shape:
+    """Value, gradient and Hessian at some scores by differences, central but for the mixed second derivatives."""
+
+    scores: Floats
+    value: float
+    gradient: Floats
+    hessian: Floats
+
+
+def _local_shape(objective: Callable[[Floats], float], scores: Floats, value: float) -> _Shape:
     steps = DIFFERENCE_STEP * np.eye(len(scores))
     low, high = (np.array([objective(scores + sign * step) for step in steps]) for sign in (-1, 1))
     gradient, hessian = (high - low) / (2.0 * DIFFERENCE_STEP), np.diag(high + low - 2.0 * value) / DIFFERENCE_STEP**2
     for i, j in combinations(range(len(scores)), 2):
-        both = objective(scores + steps[i] + steps[j]) + objective(scores - steps[i] - steps[j])
-        parts = both + 2.0 * value - high[i] - low[i] - high[j] - low[j]
-        hessian[i, j] = hessian[j, i] = 0.5 * parts / DIFFERENCE_STEP**2
-    return gradient, hessian
+        both = objective(scores + steps[i] + steps[j])
+        hessian[i, j] = hessian[j, i] = (both + value - high[i] - high[j]) / DIFFERENCE_STEP**2
+    return _Shape(scores, value, gradient, hessian)
+
+
+def _centred_hessian(objective: Callable[[Floats], float], shape: _Shape) -> Floats:
+    """Hessian whose mixed derivatives are central too: a proposal wants its shape, a step does not."""
+    steps, hessian = DIFFERENCE_STEP * np.eye(len(shape.scores)), shape.hessian.copy()
+    # the values where one score is lower, from the first two differences
+    low = shape.value - DIFFERENCE_STEP * shape.gradient + 0.5 * DIFFERENCE_STEP**2 * np.diag(hessian)
+    for i, j in combinations(range(len(steps)), 2):
+        both = objective(shape.scores - steps[i] - steps[j])
+        other = (both + shape.value - low[i] - low[j]) / DIFFERENCE_STEP**2
+        hessian[i, j] = hessian[j, i] = 0.5 * (hessian[i, j] + other)
+    return hessian
 
 
 def _inverse(hessian: Floats) -> Floats:
@@ -193,26 +214,33 @@ def _rough_sd(design: Design) -> float:
     return float(left[design.observed].std())
 
 
-def _start(family: NoiseFamily, leader: NoiseFamily, found: Floats) -> Floats:
-    """Scores with the amplitudes of the mode of another form."""
+def _starts(family: NoiseFamily, leader: NoiseFamily, found: Floats) -> list[Floats]:
+    """Scores from which the mode of a form may be near, by the mode of the leading form."""
     if family is leader:
-        return found
-    scores = np.zeros(family.size)
-    scores[: family.size - 1 if family.form == "sum" else min(1, family.size - 1)] = found[0]
-    scores[-1] = found[-1]
-    return scores
+        return [found]
+    noise = leader.model(found, np.ones(1))
+    if family.form in ("white", "sum"):
+        return family.starts(float(np.hypot(noise.red_sd, noise.white[0])))
+    lag = float(np.sqrt(family.time_scales.min() * family.time_scales.max()))
+    starts = []
+    for place in STARTING_PLACES:
+        own = family.model(np.array([0.0, place, 0.0]), np.ones(1))
+        # whatever their spectra, both change as much over such a time
+        sd = own.red_sd * np.sqrt(noise.change(lag) / own.change(lag))
+        starts.append(np.array([half_t_score(np.hypot(sd, RESOLUTION), family.red_scale), place, found[-1]]))
+    return starts
 
 
-def _alternate(
-    basis: DriftBasis, family: NoiseFamily, ratio: Floats, scores: Floats, grid: DriftGrid
-) -> tuple[Minimum, DriftGrid]:
-    reached, design = np.inf, basis.design
+def _alternate(basis: DriftBasis, family: NoiseFamily, ratio: Floats) -> tuple[Minimum, DriftGrid]:
+    design, starts = basis.design, family.starts(_rough_sd(basis.design))
+    grid = refine_grid(design.covariance(family.model(starts[0], ratio)), basis)
     for _ in range(MAX_ALTERNATIONS):
-        found = minimise(_objective(design, family, ratio, grid.mode), scores)
-        if reached - found.value < MODE_TOLERANCE:
+        objective = _objective(design, family, ratio, grid.mode)
+        found = minimise(objective, min(starts, key=objective))
+        starts = [found.scores]
+        grid = refine_grid(design.covariance(family.model(found.scores, ratio)), basis, grid)
+        if found.value - _objective(design, family, ratio, grid.mode)(found.scores) < MODE_TOLERANCE:
             break
-        reached, scores = found.value, found.scores
-        grid = refine_grid(design.covariance(family.model(scores, ratio)), basis, grid.mode)
     return found, grid
 
 

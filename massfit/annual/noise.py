@@ -58,6 +58,10 @@ class NoiseModel:
         total = self.variances.sum()
         return float(np.sum(self.variances / self.rates) / total) if total > 0.0 else 0.0
 
+    def change(self, days: float) -> float:
+        """Mean squared change of the red noise over a time, Pa^2."""
+        return float(2.0 * np.sum(self.variances * -np.expm1(-self.rates * days)))
+
     def spectrum(self, cycles_per_day: Floats) -> Floats:
         """One-sided power density of daily means of red and mean white noise: (F,), Pa^2 day.
 

@@ -70,6 +70,7 @@ def model_noise(design: Design, priors: Priors, operator: Floats) -> Floats:
         return np.zeros((2, 2))
     centred = (days - days.mean()) / JULIAN_YEAR_DAYS
     columns = np.column_stack([np.ones_like(days), centred, annual_basis(days), annual_basis(days, harmonic=2)])
+    stacked, count = np.column_stack([columns, contrasts]), columns.shape[1]
 
     (family,) = noise_families(replace(priors, noise_forms=("sum",)))
 
@@ -78,11 +79,13 @@ def model_noise(design: Design, priors: Priors, operator: Floats) -> Floats:
 
     def negative_log_posterior(scores: Floats) -> float:
         covariance = covariance_at(scores)
-        fit = linear_fit(covariance.whiten(columns), covariance.whiten(contrasts), np.zeros(columns.shape[1]))
+        white = covariance.whiten(stacked)
+        fit = linear_fit(white[:, :count], white[:, count:], np.zeros(count))
         determinants = (models - 1) * (covariance.log_determinant + fit.log_determinant)
         return float(0.5 * (determinants + fit.misfit.sum()) - log_score_prior(scores))
 
-    scores = minimise(negative_log_posterior, family.start(float(contrasts.std()))).scores
+    start = min(family.starts(float(contrasts.std())), key=negative_log_posterior)
+    scores = minimise(negative_log_posterior, start).scores
     merged = np.zeros((2, len(days)))
     for row, weights in zip(merged, operator[:, design.observed], strict=True):
         np.add.at(row, place, weights)

@@ -115,6 +115,11 @@ def test_basis_gives_the_sums_of_any_nodes(make_record, drift):
     noise, basis = design.covariance(MODEL), DriftBasis(design)
     nodes = [first_nodes(term.forms, term.low, term.high, 23) for term in design.terms]
     np.testing.assert_allclose(basis.columns @ basis.combination(nodes), design.drift_columns(nodes), atol=1e-8)
+    # made for a few nodes it is smaller, and holds them as well
+    few = [own.take(np.arange(0, len(own), 5)) for own in nodes]
+    narrow = DriftBasis(design, few)
+    assert narrow.columns.shape[1] < basis.columns.shape[1]
+    np.testing.assert_allclose(narrow.columns @ narrow.combination(few), design.drift_columns(few), atol=1e-8)
     first = np.cumsum([0] + [len(own) for own in nodes])[:-1]
     choices = np.array([first + 3 % np.array([len(own) for own in nodes]), first])
     full = solve_choices(reduce_columns(noise, design, design.drift_columns(nodes)), choices)

@@ -71,3 +71,12 @@ def test_settings_name_the_forms():
     assert [each.form for each in found] == ["sum", "white"]
     assert [each.size for each in found] == [2, 1]
     assert found[0].white_scale == 10.0
+
+
+@pytest.mark.parametrize("form", ["white", "exponential", "smooth", "power-law", "sum"])
+def test_searches_start_with_the_variance_given(form):
+    starts = [family(form).model(scores, ONE) for scores in family(form).starts(30.0)]
+    np.testing.assert_allclose([np.hypot(start.red_sd, start.white[0]) for start in starts], 30.0, rtol=1e-4)
+    # from nearly all of it red to nearly all of it white
+    shares = [start.white[0] ** 2 / 900.0 for start in starts]
+    assert form == "white" or (min(shares) < 0.02 and max(shares) > 0.85)

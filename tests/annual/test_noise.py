@@ -72,6 +72,14 @@ def test_memory_is_the_integral_of_the_correlation():
     assert MODELS["white"].memory_days == 0.0
 
 
+@pytest.mark.parametrize("form", MODELS)
+def test_change_is_what_the_covariance_loses(form):
+    # closed form: the mean square of x(t + lag) - x(t) is twice the variance less the covariance
+    covariance = dense(np.array([0.0, 17.0]), np.array([0, 0]), MODELS[form])
+    white = WHITE[0] ** 2 + RESOLUTION**2 + WHITE_FLOOR**2 * MODELS[form].variances.sum()
+    assert MODELS[form].change(17.0) == pytest.approx(2 * (covariance[0, 0] - white - covariance[0, 1]), abs=1e-12)
+
+
 def test_coloured_columns_have_the_covariance_and_whiten_undoes_them():
     rng = np.random.default_rng(2)
     days = np.sort(np.concatenate([rng.uniform(0, 60, 30), [7.0, 7.0]]))
