@@ -156,6 +156,11 @@ SITE_PHASORS = Contract(
         # where the sites are; the coordinate `group` (site) holds their labels, empty where there is none
         "latitude": Variable(("site",), "degrees_north"),
         "longitude": Variable(("site",), "degrees_east"),
+        # noise at the mode of the fit: sum of variance exp(-rate |t|), and white noise of a daily mean; NaN beyond the
+        # terms of a site, and where it was reduced elsewhere
+        "noise_rate": Variable(("site", "noise_term"), "d-1"),
+        "noise_variance": Variable(("site", "noise_term"), "Pa2"),
+        "noise_white": Variable(("site",), "Pa"),
         # what each series of a site holds at the annual line by the operator of its fit; NaN where it has none
         "correction_phasor": Variable(("site", "correction", "component"), "Pa"),
         "summand": Variable(("correction",), "1"),

@@ -9,6 +9,7 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from massfit.annual.fit import SiteFit
+from massfit.annual.noise import NoiseModel
 from massfit.contracts import SITE_PHASORS
 from massfit.errors import Fault, InputError
 from massfit.network import ReducedSite, reduced_faults
@@ -35,6 +36,7 @@ class _Row(NamedTuple):
     effective_sample_size: float
     mean_only: bool
     year_share: Mapping[int, float]
+    noise: NoiseModel | None
 
 
 def site_phasors(
@@ -106,6 +108,7 @@ def site_phasors(
         values["latitude"] = np.array([site.latitude_deg for site in placed])
         values["longitude"] = np.array([site.longitude_deg for site in placed])
         groups = {"group": (("site",), np.array([site.group or "" for site in placed], dtype=object))}
+    values |= _noise([row.noise for row in rows])
     declared = {**SITE_PHASORS.variables, **SITE_PHASORS.optional}
     if any(row.mean_only for row in rows):
         values["mean_only"] = np.array([row.mean_only for row in rows], np.int8)
@@ -123,6 +126,43 @@ def site_phasors(
         },
         attrs={"reference_year": reference_year},
     )
+
+
+def _noise(models: Sequence[NoiseModel | None]) -> dict[str, Floats]:
+    """Noise of every site at the mode of its fit, NaN where it was reduced elsewhere; nothing where all were."""
+    terms = [0 if model is None else len(model.rates) for model in models]
+    if all(model is None for model in models):
+        return {}
+    rate, variance = np.full((2, len(models), max(terms)), np.nan)
+    white = np.full(len(models), np.nan)
+    for place, (model, count) in enumerate(zip(models, terms, strict=True)):
+        if model is not None:
+            rate[place, :count], variance[place, :count] = model.rates, model.variances
+            white[place] = np.sqrt(np.mean(model.white**2))
+    return {"noise_rate": rate, "noise_variance": variance, "noise_white": white}
+
+
+def site_noise(phasors: xr.Dataset, site: str) -> NoiseModel | None:
+    """Noise of a site at the mode of its fit.
+
+    Parameters
+    ----------
+    phasors : xarray.Dataset
+        contracts.SITE_PHASORS.
+    site : str
+
+    Returns
+    -------
+    NoiseModel or None
+        With one white noise for all its recorders; None where the site was reduced elsewhere, or nothing is known.
+    """
+    if "noise_white" not in phasors:
+        return None
+    own = phasors[["noise_rate", "noise_variance", "noise_white"]].sel(site=site)
+    white = own["noise_white"].values.astype(float)
+    rate, variance = (own[name].values.astype(float) for name in ("noise_rate", "noise_variance"))
+    there = np.isfinite(rate)
+    return None if np.isnan(white) else NoiseModel(rate[there], variance[there], white.reshape(1))
 
 
 def _year_shares(
@@ -156,6 +196,7 @@ def _fit_row(fit: SiteFit) -> _Row:
         effective_sample_size=fit.effective_sample_size,
         mean_only=False,
         year_share=fit.year_share,
+        noise=fit.noise.typical,
     )
 
 
@@ -172,6 +213,7 @@ def _reduced_row(site: ReducedSite) -> _Row:
         effective_sample_size=np.nan,
         mean_only=site.mean_only,
         year_share=_uniform_years(site.years),
+        noise=None,
     )
 
 

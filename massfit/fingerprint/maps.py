@@ -164,7 +164,9 @@ def admittance_by_degree(
 
 
 def value_on_map(
-    values: NDArray[np.complex128], latitude_deg: Sequence[float], longitude_deg: Sequence[float]
+    values: NDArray[np.complex128],
+    latitude_deg: Sequence[float] | NDArray[np.float64],
+    longitude_deg: Sequence[float] | NDArray[np.float64],
 ) -> NDArray[np.complex128]:
     """Interpolate a map of one degree linearly between the centres of its cells, across the date line and the poles.
 

@@ -133,6 +133,12 @@ def reduced_records(reductions: Sequence[SiteReduction]) -> xr.Dataset:
                 {"cf_role": "timeseries_id"},
             ),
             "site": (("deployment",), np.array([record.site for record in daily], dtype=object)),
+            "deployment_start": (
+                ("deployment",),
+                np.array([record.start for record in daily], dtype="datetime64[ns]"),
+                {"long_name": "start of the deployment, origin of its drift, UTC"},
+            ),
+            "drift_form": (("deployment",), np.array([record.drift for record in daily], dtype=object)),
             "latitude": _place(rows, "latitude_deg", "degrees_north"),
             "longitude": _place(rows, "longitude_deg", "degrees_east"),
             "model": reductions[0].corrections["model"].values,

@@ -61,6 +61,11 @@ class CandidateRows:
     def __len__(self) -> int:
         return len(self.record)
 
+    def take(self, chosen: NDArray[np.int64]) -> "CandidateRows":
+        """Candidates of the indices given."""
+        own = {name: getattr(self, name)[chosen] for name in _BY_CANDIDATE}
+        return replace(self, admittance=self.admittance[:, chosen], **own)
+
 
 _BY_CANDIDATE = ("record", "unrest", "group", "alone", "unmodelled", "unmodelled_alone", "twin")
 
