@@ -4,15 +4,15 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from siting.planned_networks import block, draw_phasors, invented_observations, with_candidate
+from siting.planned_networks import invented_observations, with_candidate
 
 from massfit.posterior.likelihood import collapse, units
-from massfit.posterior.network_model import Choices, inflation, network_model, pooled_moments, second_routes
+from massfit.posterior.network_model import Choices, inflation, network_model
 from massfit.posterior.regression import Condition
 from massfit.settings import PosteriorSettings, Priors
 from massfit.siting.candidate_gain import _stretches, covariance_with
 from massfit.siting.candidates import candidate_rows
-from massfit.siting.network_error import NetworkError, at_nodes, network_error
+from massfit.siting.network_error import NetworkError, at_nodes
 
 RECORD = np.array([[130.0, 20.0], [20.0, 90.0]])
 PLACE = np.array([0.1, 3.0])
