@@ -19,6 +19,7 @@ from massfit.report.figures.network_map import network_map
 from massfit.report.figures.phasor_plane import phasor_plane
 from massfit.report.figures.record_panels import record_panels
 from massfit.report.figures.render import png
+from massfit.report.figures.satellite_sites import satellite_sites_figure
 from massfit.report.figures.satellites import satellite_figure
 from massfit.report.figures.site_sheet import site_sheet
 from massfit.report.figures.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM
@@ -41,6 +42,7 @@ __all__ = [
     "record_panels",
     "result_figures",
     "satellite_figure",
+    "satellite_sites_figure",
     "site_sheet",
     "world_map",
 ]  # fmt: skip

@@ -12,9 +12,10 @@ import massfit
 NAMES = [
     "CirculationModel", "InputError", "LoadPattern", "ModelField", "Network", "OceanFunction", "Record",
     "ReducedRecord", "ReducedSite", "Series", "Settings", "SimulationOptions", "Site", "builtin_loads",
-    "draw_admittances", "estimate", "fit_site", "love_numbers", "make_settings", "prepare_operator", "read_network",
-    "regional_responses", "sample_posterior", "screen_sea_floor", "simulate_network", "site_fingerprints",
-    "site_footprints", "solve_sea_level", "study_fingerprint",
+    "compare_gravity", "draw_admittances", "estimate", "fit_site", "love_numbers", "make_settings",
+    "prepare_operator", "read_gravity", "read_network", "regional_responses", "sample_posterior",
+    "screen_sea_floor", "simulate_network", "site_fingerprints", "site_footprints", "solve_sea_level",
+    "study_fingerprint",
 ]  # fmt: skip
 
 

@@ -182,9 +182,10 @@ def report(results: Path) -> None:
 @main.command()
 @click.argument("results", type=_FOLDER)
 @click.option("--network", type=_FOLDER, help="Network file with [gravity]  [default: beside RESULTS]")
+@click.option("--gravity", type=_FOLDER, help="Folder, archive or file of satellite gravity, for those of [gravity].")
 @click.option("--outside", is_flag=True, help="Allow paths outside the network's folder.")
 @click.option("--quiet", is_flag=True, help="Print nothing but errors.")
-def compare(results: Path, network: Path | None, outside: bool, quiet: bool) -> None:
+def compare(results: Path, network: Path | None, gravity: Path | None, outside: bool, quiet: bool) -> None:
     """Set finished RESULTS beside satellite gravity.
 
     Reads [gravity] of the network file, makes the satellites' ocean mean with the
@@ -194,7 +195,7 @@ def compare(results: Path, network: Path | None, outside: bool, quiet: bool) -> 
     with refusing_politely(), shown_progress(quiet=quiet) as progress:
         from massfit.pipeline.save import compare_to_folder
 
-        run = compare_to_folder(results, network, outside=outside, progress=progress)
+        run = compare_to_folder(results, network, gravity, outside=outside, progress=progress)
     from massfit.report.words.comparison_text import comparison_text
 
     if not quiet:

@@ -23,7 +23,8 @@ from massfit.phasor import as_complex
 from massfit.pipeline.fingerprints import network_operator, network_vapour
 from massfit.posterior.regression import FREEDOM, SCALES
 from massfit.results.comparison import comparison_dataset, comparison_summary
-from massfit.results.finished import FinishedRun
+from massfit.results.estimate import Estimate
+from massfit.results.finished import FinishedRun, finished_run
 from massfit.results.posterior_groups import POSTERIOR
 
 _PARTS = {
@@ -34,13 +35,13 @@ _PARTS = {
 """Corrections that other determinations leave in: what they are called, and what the cycle is then of."""
 
 
-def compare_gravity(run: FinishedRun, network: Network, gravity: GravityInputs) -> GravityComparison:
+def compare_gravity(run: FinishedRun | Estimate, network: Network, gravity: GravityInputs) -> GravityComparison:
     """Set a network's answer beside satellite gravity: same quantity, ocean, years and conventions.
 
     Parameters
     ----------
-    run : FinishedRun
-        From `massfit.read_results`, or of a run just made.
+    run : FinishedRun or Estimate
+        From `massfit.estimate`, or read from a results folder.
     network : Network
         Its settings, sites and loads; the records are not needed.
     gravity : GravityInputs
@@ -55,7 +56,23 @@ def compare_gravity(run: FinishedRun, network: Network, gravity: GravityInputs) 
     InputError
         Fields that do not fit the settings, an ocean model of the run that assimilated satellite gravity,
         or too few months.
+
+    Examples
+    --------
+    >>> from massfit.pipeline.estimate import estimate
+    >>> from massfit.simulate.network import simulate_network
+    >>> from massfit.simulate.options import SimulationOptions
+    >>> options = SimulationOptions(
+    ...     sites=1, years=2, models=1, load_members=2, sampling="daily", incidents=False, bad_site=False, satellites=1
+    ... )
+    >>> invented = simulate_network(options, seed=5)
+    >>> found = compare_gravity(estimate(invented.network), invented.network, invented.gravity)
+    >>> truth = invented.truth["amplitude_hpa"]
+    >>> abs(abs(found.satellite.phasor) / 100.0 - truth) < 0.3, found.agreement.compatible
+    (True, True)
     """
+    if isinstance(run, Estimate):
+        run = finished_run(run, command="massfit.estimate(network) in Python")
     _refuse_assimilated(network, gravity)
     _refuse_other_members(run, network)
     settings, chosen = network.settings, gravity.settings

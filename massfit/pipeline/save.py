@@ -6,6 +6,7 @@ from pathlib import Path
 from massfit.errors import Fault, InputError, collect
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.gravity.inputs import GravityInputs
+from massfit.io.gravity.gravity_folder import read_gravity_folder
 from massfit.io.gravity.read_gravity import read_gravity
 from massfit.io.network.network_file import read_network, read_sites_and_loads
 from massfit.io.results.partial_folder import PartialFolder, claimed
@@ -147,7 +148,12 @@ def report_to_folder(folder: Path) -> FinishedRun:
 
 
 def compare_to_folder(
-    folder: Path, network: Path | None = None, *, outside: bool = False, progress: Progress = ignore
+    folder: Path,
+    network: Path | None = None,
+    gravity: Path | None = None,
+    *,
+    outside: bool = False,
+    progress: Progress = ignore,
 ) -> FinishedRun:
     """Compare finished results with satellite gravity and add the comparison to their folder.
 
@@ -157,6 +163,8 @@ def compare_to_folder(
         The results folder.
     network : Path, optional
         The network file that has [gravity]; by default that in the folder the results stand in.
+    gravity : Path, optional
+        Folder, archive or file of satellite gravity, in place of the files that [gravity] names.
     outside : bool
         Allow paths outside the network's folder.
     progress : callable
@@ -175,19 +183,27 @@ def compare_to_folder(
     place = network or folder.absolute().parent
     progress("reading", 0, 1)
     read_results(folder)
-    gravity = read_gravity(place, outside=outside)
-    if gravity is None:
-        problem, action = "the network file has no [gravity]", "Add the table: docs/network_file.md lists its keys"
-        raise InputError(Fault(str(place), "gravity", problem, "", action))
+    satellites = _satellites(place, gravity, outside)
     inputs = read_sites_and_loads(place, outside=outside)
     progress("reading", 1, 1)
     with claimed(folder) as partial:
         run = read_results(folder)
         progress("satellite comparison", 0, 1)
-        run = with_comparison(run, inputs, gravity)
+        run = with_comparison(run, inputs, satellites)
         progress("satellite comparison", 1, 1)
         _save(run, partial)
     return run
+
+
+def _satellites(network: Path, gravity: Path | None, outside: bool) -> GravityInputs:
+    if gravity is not None:
+        return read_gravity_folder(gravity, network=network, outside=outside)
+    found = read_gravity(network, outside=outside)
+    if found is None:
+        problem = "the network file has no [gravity]"
+        action = "Add the table (docs/network_file.md lists its keys), or name the files with --gravity"
+        raise InputError(Fault(str(network), "gravity", problem, "", action))
+    return found
 
 
 def _save(run: FinishedRun, partial: PartialFolder, *, times: StageTimes | None = None) -> None:

@@ -1,6 +1,10 @@
 """The satellite comparison through the commands, on an invented network."""
 
+import gzip
 import json
+import shutil
+import tarfile
+import zipfile
 from pathlib import Path
 from types import SimpleNamespace
 
@@ -69,6 +73,36 @@ def test_compare_gives_what_estimate_gave(results: Path) -> None:
     assert json.loads((results / "estimate.json").read_text()) == before
     read_results(results)  # checksums hold
     assert CliRunner().invoke(main, ["report", str(results)]).exit_code == 0
+
+
+def test_another_folder_of_gravity_is_compared_under_the_switches_of_the_network(
+    network: Path, results: Path, tmp_path: Path
+) -> None:
+    copy, place = tmp_path / "results", tmp_path / "sent to me"
+    shutil.copytree(results, copy)
+    place.mkdir()
+    with (
+        tarfile.open(network / "gravity" / "mirrowby.tar.xz") as archive,
+        zipfile.ZipFile(place / "Second Centre.zip", "w") as packed,
+    ):
+        for member in archive:
+            stream = archive.extractfile(member)
+            assert stream is not None
+            packed.writestr(f"inside/{member.name}.gz", gzip.compress(stream.read()))
+    shutil.copy(network / "gravity" / "degree_one.txt", place / "one.txt")
+    (place / "notes.md").write_text("see you")
+    found = CliRunner().invoke(main, ["compare", str(copy), "--network", str(network), "--gravity", str(place)])
+    assert found.exit_code == 0, found.output
+    comparison = json.loads((copy / "estimate.json").read_text())["comparison"]
+    assert [each["name"] for each in comparison["solutions"]] == ["Second Centre"]
+    assert "notes.md is none of fields, tables and determinations, and is not used" in comparison["warnings"]
+    assert comparison["others"] == []
+    assert "C20 of the fields is kept" in comparison["solutions"][0]["actions"]
+    inputs = json.loads((copy / "run.json").read_text())["inputs"]
+    assert f"{place.as_posix()}/Second Centre.zip" in inputs
+    damaged = CliRunner().invoke(main, ["compare", str(copy), "--network", str(network), "--gravity", "no/where"])
+    assert damaged.exit_code == 2
+    assert 'no file "where"' in damaged.output
 
 
 def test_compare_without_gravity_is_refused_and_the_results_are_left_alone(results: Path, tmp_path: Path) -> None:

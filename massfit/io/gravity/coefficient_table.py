@@ -14,6 +14,8 @@ from massfit.gravity.tables import CoefficientTable, TableRow
 
 _NUMBER = re.compile(r"[+-]?(\d+\.?\d*|\.\d+)([EeDd][+-]?\d+)?\Z")
 _MOST_BYTES = 2**24
+NO_LAYOUT = "of no known layout"
+"""What a file is told that is no such table."""
 _MJD_EPOCH = np.datetime64("1858-11-17T00:00:00", "s")
 _FLATTENING = (-4.85e-4, -4.83e-4)
 """What a normalised C20 of the Earth lies in, whatever the tide system."""
@@ -55,7 +57,7 @@ def read_coefficient_table(path: Path, *, source: str) -> CoefficientTable:
     rows, header = _rows(text)
     layout = _layout([words for _, words in rows])
     if layout is None:
-        problem = f"{len(rows)} rows of numbers, of no known layout"
+        problem = f"{len(rows)} rows of numbers, {NO_LAYOUT}"
         allowed = "Must be a table of degree one, of C20, or of C20 and C30 as the centres print them"
         raise InputError(Fault(source, "", problem, allowed, "Check the file"))
     notes: list[str] = []

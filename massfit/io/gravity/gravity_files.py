@@ -4,6 +4,7 @@ import bz2
 import gzip
 import io
 import lzma
+import re
 import tarfile
 import zipfile
 import zlib
@@ -79,7 +80,7 @@ def read_gravity_files(path: Path, *, source: str) -> tuple[Found, ...]:
 def _files(path: Path, source: str) -> Iterator[tuple[str, bytes]]:
     """Name and content of each gravity file."""
     if path.is_dir():
-        for count, each in enumerate(sorted(each for each in path.iterdir() if _is_field(each.name))):
+        for count, each in enumerate(sorted(each for each in path.iterdir() if is_field(each.name))):
             _limit(count, source)
             yield each.name, _opened(each)
     elif tarfile.is_tarfile(path):
@@ -90,8 +91,22 @@ def _files(path: Path, source: str) -> Iterator[tuple[str, bytes]]:
         yield path.name, _opened(path)
 
 
-def _is_field(name: str) -> bool:
+def is_field(name: str) -> bool:
+    """Say whether a name is that of a gravity field, plain or compressed."""
     return name.lower().removesuffix(".gz").removesuffix(".bz2").removesuffix(".xz").endswith(".gfc")
+
+
+def is_archive(path: Path) -> bool:
+    """Say whether a file is a tar or zip archive."""
+    return tarfile.is_tarfile(path) or zipfile.is_zipfile(path)
+
+
+def holds_model(path: Path) -> bool:
+    """Say whether a file has terms that change with time; one that cannot be opened is left to the reader."""
+    try:
+        return re.search(rb"^gfct\s", _opened(path), re.MULTILINE) is not None
+    except _DAMAGE:
+        return False
 
 
 def _opened(path: Path) -> bytes:
@@ -103,7 +118,7 @@ def _tar_members(path: Path, source: str) -> Iterator[tuple[str, bytes]]:
     count = 0
     with tarfile.open(path) as archive:
         for member in archive:
-            if member.isfile() and _is_field(member.name):
+            if member.isfile() and is_field(member.name):
                 _limit(count, source)
                 stream = archive.extractfile(member)
                 if stream is not None:
@@ -113,7 +128,7 @@ def _tar_members(path: Path, source: str) -> Iterator[tuple[str, bytes]]:
 
 def _zip_members(path: Path, source: str) -> Iterator[tuple[str, bytes]]:
     with zipfile.ZipFile(path) as archive:
-        members = [each for each in archive.infolist() if not each.is_dir() and _is_field(each.filename)]
+        members = [each for each in archive.infolist() if not each.is_dir() and is_field(each.filename)]
         for count, member in enumerate(members):
             _limit(count, source)
             with archive.open(member) as stream:

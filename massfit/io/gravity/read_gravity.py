@@ -28,7 +28,7 @@ _MOST_BYTES = 2**20
 
 
 def read_gravity(path: str | os.PathLike[str], *, outside: bool = False) -> GravityInputs | None:
-    """Read what a network file says of satellite gravity.
+    r"""Read what a network file says of satellite gravity.
 
     Parameters
     ----------
@@ -46,22 +46,78 @@ def read_gravity(path: str | os.PathLike[str], *, outside: bool = False) -> Grav
     ------
     InputError
         With every fault of the table and of the files it names.
+
+    Examples
+    --------
+    >>> from tempfile import TemporaryDirectory
+    >>> head = "product_type gravity_field\nearth_gravity_constant 3.986004415e14\nradius 6378136.3\nmax_degree 2\n"
+    >>> rows = "gfct 2 0 -4.8417e-04 0 20100101\nacos 2 0 3e-11 0 1.0\ngfc 2 1 0 0\ngfc 2 2 2.4e-06 -1.4e-06\n"
+    >>> with TemporaryDirectory() as name:
+    ...     model, network = Path(name, "invented.gfc"), Path(name, "network.toml")
+    ...     _ = model.write_text(f"{head}errors no\nend_of_head\n{rows}")
+    ...     _ = network.write_text('[gravity]\nfields = "invented.gfc"\nbuffer_km = 200')
+    ...     found = read_gravity(network)
+    >>> found.settings.buffer_km, found.solutions[0].name, len(found.solutions[0].models)
+    (200.0, 'invented', 1)
     """
     reading = open_reading(path, outside=outside)
+    settings, assimilating = _gravity_of(reading)
+    return None if settings is None else gravity_inputs(reading, settings, assimilating)
+
+
+def gravity_settings(path: str | os.PathLike[str], *, outside: bool = False) -> tuple[Gravity | None, tuple[str, ...]]:
+    """Read what a network file says of the processing of satellite gravity, and open none of the files it names.
+
+    Parameters
+    ----------
+    path : path
+        A network.toml, or the folder that holds one.
+    outside : bool
+
+    Returns
+    -------
+    settings : Gravity or None
+        None where the file has no [gravity].
+    assimilating : tuple of str
+        Ocean models of the network that assimilated satellite gravity.
+
+    Raises
+    ------
+    InputError
+        With every fault of the table.
+    """
+    return _gravity_of(open_reading(path, outside=outside))
+
+
+def _gravity_of(reading: Reading) -> tuple[Gravity | None, tuple[str, ...]]:
     sections = parse_sections(reading, records=False)
-    settings = sections.gravity
-    if settings is None and "gravity" not in reading.document:
-        return None
     reading.inputs.clear()
     reading.faults[:] = [fault for fault in reading.faults if fault.name.startswith("gravity")]
-    assimilating = tuple(entry.name for _, entry in sections.circulation if entry.assimilates_satellite_gravity)
-    inputs = None if settings is None else _inputs(reading, settings, assimilating)
-    if reading.faults or inputs is None:
+    if reading.faults:
         raise InputError(reading.faults)
-    return inputs
+    assimilating = tuple(entry.name for _, entry in sections.circulation if entry.assimilates_satellite_gravity)
+    return sections.gravity, assimilating
 
 
-def _inputs(reading: Reading, settings: Gravity, assimilating: tuple[str, ...]) -> GravityInputs:
+def gravity_inputs(reading: Reading, settings: Gravity, assimilating: tuple[str, ...]) -> GravityInputs:
+    """Read every file that the settings name.
+
+    Parameters
+    ----------
+    reading : Reading
+        Paths start at its folder.
+    settings : Gravity
+    assimilating : tuple of str
+
+    Returns
+    -------
+    GravityInputs
+
+    Raises
+    ------
+    InputError
+        With the faults of all files.
+    """
     solutions = [
         solution for place, text in enumerate(settings.fields)
         if (solution := _solution(reading, ("gravity", "fields", place), text)) is not None
@@ -72,7 +128,7 @@ def _inputs(reading: Reading, settings: Gravity, assimilating: tuple[str, ...]) 
             reading.fault(
                 ("gravity", "fields", place), f'two solutions are called "{name}"', "Must differ", "Rename one"
             )
-    return GravityInputs(
+    found = GravityInputs(
         settings,
         tuple(solutions),
         degree_one=_table(reading, "degree_one", settings.degree_one),
@@ -84,11 +140,14 @@ def _inputs(reading: Reading, settings: Gravity, assimilating: tuple[str, ...]) 
         inputs=reading.inputs,
         warnings=tuple(reading.warnings),
     )
+    if reading.faults:
+        raise InputError(reading.faults)
+    return found
 
 
-def _solution_name(text: str) -> str:
+def _solution_name(folder: Path, text: str) -> str:
     """Name a solution after its folder or file, without the endings of archives."""
-    name = Path(text).name
+    name = (folder / text).resolve().name if text == "." else Path(text).name
     while Path(name).suffix.lower() in (".gz", ".xz", ".bz2", ".tar", ".tgz", ".zip", ".gfc"):
         name = Path(name).stem
     return name or text
@@ -114,7 +173,7 @@ def _solution(reading: Reading, place: KeyPath, text: str) -> Solution | None:
     if models and not annual_degree(models[0]):
         reading.fault(place, "the model has no annual term", "Must have some (acos, asin)", "Give another model")
         return None
-    return Solution(_solution_name(text), months, models[0] if models else ())
+    return Solution(_solution_name(reading.folder, text), months, models[0] if models else ())
 
 
 def _fields(reading: Reading, place: KeyPath, text: str) -> tuple[GravityField, ...] | None:

@@ -48,6 +48,15 @@ def satellite_sites_figure(rows: Sequence[SiteBeside], *, width_mm: float = PAGE
     -------
     matplotlib.figure.Figure
         Amplitude on the left, peak day on the right, the probability of the difference beside it.
+
+    Examples
+    --------
+    >>> from massfit.results.comparison_rows import Reading
+    >>> own, other = Reading(0.92, 0.15, 281.0, 9.0), Reading(0.80, 0.25, 274.0, 18.0)
+    >>> rows = [SiteBeside("Aldessa", own, other, 0.7), SiteBeside("Brimoor", None, other, np.nan)]
+    >>> figure = satellite_sites_figure(rows)
+    >>> [axes.get_xlabel() for axes in figure.axes]
+    ['amplitude / hPa', 'peak / day']
     """
     wide = width_mm > COLUMN_WIDTH_MM
     names, right, gap = (32.0, 13.0, 5.0) if wide else (20.0, 11.5, 3.0)
