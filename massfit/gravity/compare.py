@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 
 from massfit.constants import EARTH_DENSITY, STANDARD_GRAVITY
 from massfit.gravity.at_sites import geocentre_of
-from massfit.gravity.bridge import BridgePart, bridged, largest_gap
+from massfit.gravity.bridge import BridgePart, BridgeStep, bridge_step, bridged, largest_gap
 from massfit.gravity.choices import Choice, choice_table
 from massfit.gravity.comparison import Agreement, agreement, shared_covariance
 from massfit.gravity.definitions import Definition, redefined
@@ -48,6 +48,8 @@ class NetworkAnswer:
     year_draws : (n, n_year, 2) array, optional
         Draws of the phasor of each year, Pa.
     years : tuple of int
+    year_sd : float
+        Standard deviation of a year's phasor about the mean that the model assumes, Pa.
     by_member : (K,) array of complex, optional
         The phasor under each load member, Pa; without it errors of the load members count as independent of those
         on the side of the satellites.
@@ -62,6 +64,7 @@ class NetworkAnswer:
     parts: Mapping[str, tuple[str, complex]]
     year_draws: NDArray[np.float64] | None = None
     years: tuple[int, ...] = ()
+    year_sd: float = 0.0
     by_member: NDArray[np.complex128] | None = None
 
 
@@ -88,6 +91,8 @@ class GravityComparison:
     bridge : tuple of BridgePart
         The network's own cycle before, in and after the longest gap of the first solution; empty where there is none or
         the years are not told apart.
+    step : BridgeStep or None
+        Its cycle in the gap less that of the other months.
     warnings : tuple of str
     """
 
@@ -101,6 +106,7 @@ class GravityComparison:
     geocentre: Mapping[str, complex]
     definitions: tuple[Definition, ...]
     bridge: tuple[BridgePart, ...]
+    step: BridgeStep | None
     warnings: tuple[str, ...]
 
 
@@ -143,7 +149,7 @@ def compare_with_gravity(inputs: GravityInputs, answer: NetworkAnswer, context: 
         ),
         implied_geocentre(answer.phasor, context),
         redefined(answer.phasor, answer.parts),
-        _bridge(solutions[0], answer, context),
+        *_bridge(solutions[0], answer, context),
         (*inputs.warnings, *_warnings(inputs, solutions, context)),
     )
 
@@ -217,11 +223,14 @@ def implied_geocentre(phasor: complex, context: Context) -> dict[str, complex]:
     return {axis: complex(value) for axis, value in zip("XYZ", motion, strict=True)}
 
 
-def _bridge(solution: SatelliteMean, answer: NetworkAnswer, context: Context) -> tuple[BridgePart, ...]:
+def _bridge(
+    solution: SatelliteMean, answer: NetworkAnswer, context: Context
+) -> tuple[tuple[BridgePart, ...], BridgeStep | None]:
     gap = largest_gap(solution.monthly.spans)
     if gap is None or answer.year_draws is None or context.window is None:
-        return ()
-    return bridged(answer.year_draws, answer.years, context.window, gap)
+        return (), None
+    given = answer.year_draws, answer.years, context.window, gap
+    return bridged(*given), bridge_step(*given, year_sd=answer.year_sd)
 
 
 def _agree(first: Determination, second: Determination, shared: NDArray[np.float64] | None = None) -> Agreement:

@@ -169,6 +169,7 @@ def network_answer(run: FinishedRun, network: Network, vapour: complex, ocean_ar
         _admittance(fingerprints),
         _parts(summary["sites"], vapour, ocean_area_m2),
         *_yearly(run.datasets[POSTERIOR]),
+        PASCAL_PER_HPA * network.settings.priors.year_sd_hpa,
         _by_member(run),
     )
 

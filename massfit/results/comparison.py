@@ -8,6 +8,7 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from massfit.constants import PASCAL_PER_HPA, STANDARD_GRAVITY, TROPICAL_YEAR_DAYS
+from massfit.gravity.bridge import BridgeStep
 from massfit.gravity.compare import GEOCENTRE_ITRF2020, GravityComparison
 from massfit.gravity.comparison import Agreement
 from massfit.gravity.definitions import in_units
@@ -90,6 +91,7 @@ def comparison_summary(found: GravityComparison, *, reference_year: int, ocean_a
             }
             for each in found.bridge
         ],
+        "bridge_step": None if found.step is None else _step(found.step),
         "warnings": list(found.warnings),
     }
 
@@ -242,6 +244,16 @@ def _agreement(apart: Agreement, reference_year: int) -> dict[str, Any]:
         "days": apart.day_difference,
         "days_sd": _finite(apart.day_difference_sd),
         "joint": joint,
+    }
+
+
+def _step(step: BridgeStep) -> dict[str, Any]:
+    return {
+        "in_phase_hpa": step.phasor.real / PASCAL_PER_HPA,
+        "quadrature_hpa": step.phasor.imag / PASCAL_PER_HPA,
+        "covariance_hpa2": _hpa2(step.covariance),
+        "assumed_sd_hpa": step.assumed_sd / PASCAL_PER_HPA,
+        "learned": step.learned,
     }
 
 

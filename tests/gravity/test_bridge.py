@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from massfit.gravity.bridge import bridged, largest_gap
+from massfit.gravity.bridge import bridge_step, bridged, largest_gap
 from massfit.gravity.field import Span
 
 
@@ -35,6 +35,22 @@ def test_years_count_by_their_days() -> None:
     assert after.covariance[0, 0] == pytest.approx(0.01, rel=0.3)
     expected = 0.01 * ((184 / 284) ** 2 + (100 / 284) ** 2)
     assert inside.covariance[1, 1] == pytest.approx(expected, rel=0.3)
+
+
+def test_what_the_records_say_of_the_gap() -> None:
+    rng = np.random.default_rng(6)
+    years, window, gap = (2015, 2016, 2017), span("2015-01-01", "2018-01-01"), span("2016-01-01", "2017-01-01")
+    sure = np.array([10.0, 25.0, 10.0])[:, None] + 0.3 * rng.standard_normal((4000, 3, 2))
+    found = bridge_step(sure, years, window, gap, year_sd=5.0)
+    assert found is not None
+    assert found.phasor == pytest.approx(15.0 * (1 + 1j), abs=0.05)
+    # a year less the mean of two others: 1 + 1/4 + 1/4, days of leap years aside
+    assert found.assumed_sd == pytest.approx(5.0 * np.sqrt(1.5), rel=1e-3)
+    assert found.learned == pytest.approx(1.0 - (0.3 / 5.0) ** 2, abs=2e-3)
+    nothing = bridge_step(5.0 * rng.standard_normal((4000, 3, 2)), years, window, gap, year_sd=5.0)
+    assert nothing is not None
+    assert nothing.learned == pytest.approx(0.0, abs=0.05)
+    assert bridge_step(sure, years, window, span("2019-01-01", "2020-01-01"), year_sd=5.0) is None
 
 
 def test_parts_outside_the_window_are_left_out() -> None:

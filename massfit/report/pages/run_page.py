@@ -21,7 +21,7 @@ from massfit.report.pages.page_tables import (
     years_table,
 )
 from massfit.report.pages.satellite_tables import satellite_tables
-from massfit.report.words.comparison_text import verdict
+from massfit.report.words.comparison_text import bridge_sentences, verdict
 from massfit.report.words.run_text import ALTERNATIVES_NOTE, trust_sentence, warning_lines
 from massfit.results.answer import answer_sentence
 from massfit.results.finished import FinishedRun
@@ -80,6 +80,7 @@ def report_page(run: FinishedRun, pictures: Mapping[str, bytes]) -> str:
         warnings=warning_lines(summary),
         trust=trust_sentence(summary),
         satellite_verdict=verdict(summary["comparison"]) if "comparison" in summary else "",
+        bridge_words=" ".join(bridge_sentences(summary["comparison"])) if "comparison" in summary else "",
         alternatives_note=f"{ALTERNATIVES_NOTE[0].upper()}{ALTERNATIVES_NOTE[1:]}.",
         tables=_tables(run),
         made_with=made_with(provenance),

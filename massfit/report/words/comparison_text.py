@@ -3,6 +3,9 @@
 from collections.abc import Mapping
 from typing import Any
 
+LITTLE_LEARNED = 0.5
+"""Below this part of the variance a likeness of years is called assumed."""
+
 
 def verdict(comparison: Mapping[str, Any]) -> str:
     """Say in one sentence whether network and satellites agree.
@@ -48,6 +51,25 @@ def stated(each: Mapping[str, Any]) -> str:
     )
 
 
+def bridge_sentences(comparison: Mapping[str, Any]) -> list[str]:
+    """Say whether the network sees a change across the gap, and how much of that is the records' own."""
+    step = comparison.get("bridge_step")
+    if step is None:
+        return []
+    sds = [step["covariance_hpa2"][place][place] ** 0.5 for place in (0, 1)]
+    size = (
+        f"In the gap less before and after it: {step['in_phase_hpa']:+.3f} ± {sds[0]:.3f} hPa in phase, "
+        f"{step['quadrature_hpa']:+.3f} ± {sds[1]:.3f} hPa in quadrature."
+    )
+    assumed = (
+        f"Before it sees a record the model expects ± {step['assumed_sd_hpa']:.3f} hPa (year_sd_hpa); the records take "
+        f"{100 * step['learned']:.0f} % of that variance away"
+    )
+    if step["learned"] < LITTLE_LEARNED:
+        return [size, f"{assumed}: that the parts are alike is mostly assumed, not seen."]
+    return [size, f"{assumed}."]
+
+
 def comparison_text(comparison: Mapping[str, Any]) -> str:
     """Lay a comparison out for a terminal.
 
@@ -68,6 +90,7 @@ def comparison_text(comparison: Mapping[str, Any]) -> str:
         lines += [
             f"  {each['label']:<14} {each['start']} to {each['end']}: {stated(each)}" for each in comparison["bridge"]
         ]
+        lines += [f"  {text}" for text in bridge_sentences(comparison)]
     for solution in comparison["solutions"]:
         lines += ["", f"Solution {solution['name']}", *(f"  {action}" for action in solution["actions"])]
     width = max(len(row["name"]) for row in comparison["choices"])
