@@ -181,6 +181,17 @@ class DriftBasis:
         ]
         return np.asarray(block_diag(*blocks)) if blocks else np.zeros((0, 0))
 
+    def of_term(self, place: int, nodes: Nodes) -> Floats:
+        """How the columns of choices of one term are made of the basis: (B, G)."""
+        widths = [span.shape[1] for _, span in self._spans]
+        rows, span = self._spans[place]
+        first = sum(widths[:place])
+        combination = np.zeros((sum(widths), len(nodes)))
+        combination[first : first + widths[place]] = span.T @ self.design.term_columns(
+            self.design.terms[place], nodes, rows
+        )
+        return combination
+
     def reduce(self, noise: NoiseCovariance) -> "Reduction":
         """Whiten the data and the basis and eliminate the fixed columns; contrasts and companions are left out."""
         return Reducer(self.design, self.columns, data_only=True)(noise)

@@ -7,7 +7,7 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
-from massfit.errors import Fault, InputError
+from massfit.errors import Fault, InputError, collect
 from massfit.fingerprint.admittance import site_fingerprints
 from massfit.fingerprint.maps import admittance_maps
 from massfit.fingerprint.ocean import OceanFunction
@@ -32,7 +32,7 @@ from massfit.siting.gain_map import (
     unknown_depth,
 )
 from massfit.siting.length_dataset import length_dataset
-from massfit.siting.network_error import network_error
+from massfit.siting.network_error import NetworkError, network_error
 from massfit.siting.planned_noise import PlannedNoise, map_record_covariance, record_covariance, typical_noise
 
 Floats = NDArray[np.float64]
@@ -68,83 +68,34 @@ class PlanOptions:
     depth: Callable[[Floats, Floats], Floats] = unknown_depth
 
 
-def plan_sites(
-    run: FinishedRun,
-    network: Network,
-    options: PlanOptions = PlanOptions(),
-    *,
-    progress: Progress = ignore,
-) -> dict[str, xr.Dataset]:
-    """Say where the next recorder would help most and how long it must stay.
+@dataclass(frozen=True)
+class NetworkNow:
+    """The network of a finished run, as its posterior had it.
 
     Parameters
     ----------
-    run : FinishedRun
-        A finished estimate.
-    network : Network
-        Its network file: settings, sites and loads; records are not needed.
-    options : PlanOptions
-    progress : callable
-
-    Returns
-    -------
-    dict of str to xarray.Dataset
-        `candidate_map`, `best_places`, `record_length`, and `asked_places` where any were asked about.
-
-    Raises
-    ------
-    InputError
-        The network file has other load members than the run, sites without positions, or a candidate on land.
-    """
-    observations, admittance, choices = run_observations(run)
-    check_candidates(options.candidates, source=options.source)
-    _require_same_loads(run, network)
-    priors = choices.priors
-    progress("candidates", 0, 3)
-    mixed = sites_by_mixture(observations, admittance, choices)
-    model = network_model(observations, admittance, choices, mixed=mixed)
-    error = network_error(model, second_routes(observations, admittance, choices, mixed=mixed))
-    noise = typical_noise(run.datasets["site_phasors.nc"], priors)
-    if options.noise_sd is not None:
-        noise = noise.scaled(options.noise_sd)
-    plan = Plan(error, observations, choices, options.years, _records(options, noise, priors), options.depth)
-    progress("candidates", 1, 3)
-    operator = network_operator(network, OceanFunction.builtin())
-    vapour, rotation = network_vapour(network), network_rotation(network, operator)
-    maps = admittance_maps(operator, network.loads, water_vapour=vapour, rotation=rotation)
-    progress("candidates", 2, 3)
-    cells = candidate_map(plan, maps)
-    found = {"candidate_map": cells, "best_places": best_places(plan, cells, maps)}
-    if options.candidates:
-        sites = [Site(each.name, each.latitude_deg, each.longitude_deg) for each in options.candidates]
-        prints = site_fingerprints(operator, sites, network.loads, water_vapour=vapour, rotation=rotation)
-
-        def record_of(daily_sd: float) -> Floats:
-            return record_covariance(noise.scaled(daily_sd).model, options.years, priors)
-
-        found["asked_places"] = asked_places(
-            plan, options.candidates, as_complex(prints["admittance"].values), record_of
-        )
-    phasors = run.datasets["site_phasors.nc"]
-    best = found["best_places"].isel(place=0)
-    there = admittance_at(maps, best["latitude"].item(), best["longitude"].item())
-    found["record_length"] = length_dataset(plan, noise, best, there, phasors, target_sd=options.target_sd)
-    progress("candidates", 3, 3)
-    return {name: data.assign_attrs(noise_source=noise.source) for name, data in found.items()}
-
-
-def run_observations(run: FinishedRun) -> tuple[Observations, NDArray[np.complex128], Choices]:
-    """Observations, admittances and choices of a finished run, as its posterior had them.
-
-    Parameters
-    ----------
-    run : FinishedRun
-
-    Returns
-    -------
     observations : Observations
     admittance : (n_member, n_site) array of complex
     choices : Choices
+    error : NetworkError
+    """
+
+    observations: Observations
+    admittance: NDArray[np.complex128]
+    choices: Choices
+    error: NetworkError
+
+
+def network_now(run: FinishedRun) -> NetworkNow:
+    """Prepare the network of a finished run for changes.
+
+    Parameters
+    ----------
+    run : FinishedRun
+
+    Returns
+    -------
+    NetworkNow
 
     Raises
     ------
@@ -161,7 +112,81 @@ def run_observations(run: FinishedRun) -> tuple[Observations, NDArray[np.complex
         Priors(**chosen["priors"]),
         float(chosen["corrections"]["ocean_mean_atmosphere_sd_hpa"]),
     )
-    return observations, admittance, choices
+    mixed = sites_by_mixture(observations, admittance, choices)
+    model = network_model(observations, admittance, choices, mixed=mixed)
+    routes = second_routes(observations, admittance, choices, mixed=mixed)
+    return NetworkNow(observations, admittance, choices, network_error(model, routes))
+
+
+def plan_sites(
+    run: FinishedRun, now: NetworkNow, network: Network, options: PlanOptions, *, progress: Progress = ignore
+) -> dict[str, xr.Dataset]:
+    """Say where the next recorder would help most and how long it must stay.
+
+    Parameters
+    ----------
+    run : FinishedRun
+        A finished estimate.
+    now : NetworkNow
+        Of this run.
+    network : Network
+        Its network file: settings, sites and loads; records are not needed.
+    options : PlanOptions
+    progress : callable
+
+    Returns
+    -------
+    dict of str to xarray.Dataset
+        `candidate_map`, `best_places`, `record_length`, and `asked_places` where any were asked about.
+
+    Raises
+    ------
+    InputError
+        The network file has other load members than the run, or a candidate on land.
+    """
+    _check(run, network, options)
+    progress("candidates", 0, 2)
+    phasors, priors = run.datasets["site_phasors.nc"], now.choices.priors
+    noise = typical_noise(phasors, priors)
+    if options.noise_sd is not None:
+        noise = noise.scaled(options.noise_sd)
+    records = _records(options, noise, priors)
+    plan = Plan(now.error, now.observations, now.choices, options.years, records, options.depth)
+    operator = network_operator(network, OceanFunction.builtin())
+    vapour, rotation = network_vapour(network), network_rotation(network, operator)
+    maps = admittance_maps(operator, network.loads, water_vapour=vapour, rotation=rotation)
+    progress("candidates", 1, 2)
+    cells = candidate_map(plan, maps)
+    found = {"candidate_map": cells, "best_places": best_places(plan, cells, maps)}
+    if options.candidates:
+        sites = [Site(each.name, each.latitude_deg, each.longitude_deg) for each in options.candidates]
+        prints = site_fingerprints(operator, sites, network.loads, water_vapour=vapour, rotation=rotation)
+
+        def record_of(daily_sd: float) -> Floats:
+            return record_covariance(noise.scaled(daily_sd).model, options.years, priors)
+
+        there = as_complex(prints["admittance"].values)
+        found["asked_places"] = asked_places(plan, options.candidates, there, record_of)
+    if found["best_places"].sizes["place"]:
+        best = found["best_places"].isel(place=0)
+        at_best = admittance_at(maps, best["latitude"].item(), best["longitude"].item())
+        found["record_length"] = length_dataset(plan, noise, best, at_best, phasors, target_sd=options.target_sd)
+    progress("candidates", 2, 2)
+    return {name: data.assign_attrs(noise_source=noise.source) for name, data in found.items()}
+
+
+def _check(run: FinishedRun, network: Network, options: PlanOptions) -> None:
+    faults: list[Fault] = []
+    with collect(faults):
+        check_candidates(options.candidates, source=options.source)
+    had = [str(name) for name in run.datasets["fingerprints.nc"]["member"].values]
+    now = [load.name for load in network.loads]
+    if had != now:
+        problem = f"the load members are {', '.join(now)}; those of the results are {', '.join(had)}"
+        action = "Give the network file that the results were made with"
+        faults.append(Fault(network.source or "network", "fingerprint.loads", problem, "Must be the same", action))
+    if faults:
+        raise InputError(faults)
 
 
 def _records(
@@ -176,12 +201,3 @@ def _records(
         return np.broadcast_to(everywhere, (count, 2, 2)), np.full(count, np.nan)
 
     return at
-
-
-def _require_same_loads(run: FinishedRun, network: Network) -> None:
-    had = [str(name) for name in run.datasets["fingerprints.nc"]["member"].values]
-    now = [load.name for load in network.loads]
-    if had != now:
-        problem = f"the load members are {', '.join(now)}; those of the results are {', '.join(had)}"
-        action = "Give the network file that the results were made with"
-        raise InputError(Fault(network.source or "network", "fingerprint.loads", problem, "Must be the same", action))

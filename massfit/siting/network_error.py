@@ -30,8 +30,9 @@ class SiteRows:
     ----------
     design : (n, 2, n_column) array
         In units of the columns' scales.
-    variance, scatter : (n, 2) array
-        Pa2, of everything that is not in the columns, and what of it is the scatter of the place.
+    variance, scatter, record : (n, 2) array
+        Pa2, of everything that is not in the columns; what of it is the scatter of the place, and what the record with
+        the models' own weather.
     axes : (n, 2, 2) array
         Unit vectors in (in phase, quadrature).
     value : (n, 2) array
@@ -41,6 +42,7 @@ class SiteRows:
     design: Floats
     variance: Floats
     scatter: Floats
+    record: Floats
     axes: Floats
     value: Floats
 
@@ -117,7 +119,12 @@ class NetworkError:
         base, _, scatter = base_variance(self.model, condition)
         every = np.arange(len(condition))[:, None]
         return SiteRows(
-            design, (base + scatter)[every, chosen], scatter[every, chosen], rows.direction[chosen], rows.value[chosen]
+            design,
+            (base + scatter)[every, chosen],
+            scatter[every, chosen],
+            rows.variance[chosen],
+            rows.direction[chosen],
+            rows.value[chosen],
         )
 
 

@@ -25,8 +25,9 @@ Floats = NDArray[np.float64]
 DAY = np.timedelta64(1, "D")
 
 _SHARES = np.array([1.0, 3.0, 5.0]) / 6.0  # middles of three equal parts of the prior
-_PRIOR_NODES = 41
-_NEAR = np.linspace(-5.0, 5.0, 31)  # in widths of the posterior of a logarithm
+_PRIOR_NODES = 33
+_STEP = 0.02  # of the logarithm of a time constant, for differences
+_NEAR = np.linspace(-5.0, 5.0, 25)  # in widths of the posterior of a logarithm
 
 
 def planned_recorder(
@@ -143,28 +144,15 @@ def _at_share(sums: _Sums, basis: DriftBasis, share: float) -> Floats:
 
     The time constants are summed over in turn, the others held at the truth.
     """
-    truth = np.array([np.log(term.low) + share * np.log(term.high / term.low) for term in basis.design.terms])
-    columns = _columns(basis, truth[:, None])
+    terms = basis.design.terms
+    truth = np.array([np.log(term.low) + share * np.log(term.high / term.low) for term in terms])
+    columns = [basis.of_term(place, _nodes(term, truth[[place]])) for place, term in enumerate(terms)]
     known = sums.without(np.column_stack(columns)).covariance
     total = known.copy()
-    for place, own in enumerate(columns):
-        others = np.column_stack([np.zeros((len(own), 0)), *(c for i, c in enumerate(columns) if i != place)])
-        fewer = sums.without(others)
-        total += np.mean([_summed_over_time(fewer, basis, place, truth, size) for size in _sizes(sums)], axis=0) - known
+    for place in range(len(terms)):
+        others = [np.zeros((len(columns[0]), 0)), *(own for i, own in enumerate(columns) if i != place)]
+        total += _summed_over_time(sums.without(np.column_stack(others)), basis, place, float(truth[place])) - known
     return total
-
-
-def _sizes(sums: _Sums) -> Floats:
-    """Sizes of a decay, Pa, at the middles of equal parts of its prior."""
-    return np.asarray(ndtri(0.5 * (1.0 + _SHARES)) / np.sqrt(sums.precision))
-
-
-def _columns(basis: DriftBasis, log_times: Sequence[Floats] | Floats) -> list[Floats]:
-    """Columns (B, G) of every term at its own time constants, made of the basis."""
-    terms = basis.design.terms
-    nodes = [_nodes(term, logs) for term, logs in zip(terms, log_times, strict=True)]
-    ends = np.cumsum([len(own) for own in nodes])
-    return np.split(basis.combination(nodes), ends[:-1], axis=1)
 
 
 def _nodes(term: DriftTerm, log_time: Floats) -> Nodes:
@@ -172,35 +160,32 @@ def _nodes(term: DriftTerm, log_time: Floats) -> Nodes:
     return Nodes(np.full(len(log_time), form), np.asarray(log_time), np.full(len(log_time), 1.0 / len(log_time)))
 
 
-def _summed_over_time(sums: _Sums, basis: DriftBasis, place: int, truth: Floats, size: float) -> Floats:
-    """Covariance of the posterior over one time constant for data that are one decay, without noise."""
+def _summed_over_time(sums: _Sums, basis: DriftBasis, place: int, truth: float) -> Floats:
+    """Covariance of the posterior over one time constant for data that are one decay without noise, mean over sizes."""
     term = basis.design.terms[place]
     low, high = np.log(term.low), np.log(term.high)
-    near = truth[place] + _NEAR * _width(sums, basis, place, truth, size)
-    grid = np.unique(np.concatenate([np.linspace(low, high, _PRIOR_NODES), near]).clip(low, high))
-    halves = 0.5 * np.diff(grid)
-    logs = [grid if i == place else truth[[i]] for i in range(len(truth))]
-    columns = _columns(basis, logs)[place]
-    data = size * _columns(basis, truth[:, None])[place][:, 0]
-    weight = sums.normal @ columns
+    below, true, above = basis.of_term(place, _nodes(term, np.array([truth - _STEP, truth, truth + _STEP]))).T
+    sizes = ndtri(0.5 * (1.0 + _SHARES)) / np.sqrt(sums.precision)
+    near = truth + np.outer(_widths(sums, true, (above - below) / (2.0 * _STEP), sizes, high - low), _NEAR)
+    grid = np.unique(np.concatenate([np.linspace(low, high, _PRIOR_NODES), near.ravel()]).clip(low, high))
+    columns = basis.of_term(place, _nodes(term, grid))
+    weight, response = sums.normal @ columns, sums.leak @ columns
     variance = 1.0 / (sums.precision + np.sum(columns * weight, axis=0))
-    right = data @ weight
-    log_mass = 0.5 * (right**2 * variance + np.log(variance)) + np.log(np.append(halves, 0.0) + np.append(0.0, halves))
-    mass = np.exp(log_mass - log_mass.max())
-    mass /= mass.sum()
-    response = sums.leak @ columns
-    phasor = (sums.leak @ data)[:, None] - response * (right * variance)
-    away = phasor - (phasor @ mass)[:, None]
-    within = sums.covariance + (response * variance * mass) @ response.T
-    return np.asarray(within + (away * mass) @ away.T)
+    halves = 0.5 * np.diff(grid)
+    log_prior = np.log(np.append(halves, 0.0) + np.append(0.0, halves)) + 0.5 * np.log(variance)
+    right = np.outer(sizes, true @ weight)
+    log_mass = log_prior + 0.5 * right**2 * variance
+    mass = np.exp(log_mass - log_mass.max(axis=1, keepdims=True))
+    mass /= mass.sum(axis=1, keepdims=True)
+    # (2, size, node)
+    phasor = np.multiply.outer(sums.leak @ true, sizes)[:, :, None] - response[:, None] * (right * variance)
+    away = phasor - np.sum(phasor * mass, axis=2, keepdims=True)
+    between = np.einsum("iqg,qg,jqg->ij", away, mass, away) / len(sizes)
+    return np.asarray(sums.covariance + (response * variance * mass.mean(axis=0)) @ response.T + between)
 
 
-def _width(sums: _Sums, basis: DriftBasis, place: int, truth: Floats, size: float) -> float:
-    """Give the standard deviation of the logarithm of a time constant, to first order."""
-    logs = [truth[[i]] + (0.02 * np.arange(-1, 2) if i == place else 0.0) for i in range(len(truth))]
-    low, here, high = _columns(basis, logs)[place].T
-    slope = (high - low) / 0.04
-    term = basis.design.terms[place]
-    information = slope @ sums.normal @ slope
-    information -= (slope @ sums.normal @ here) ** 2 / (sums.precision + here @ sums.normal @ here)
-    return float(1.0 / np.sqrt(size**2 * information + 12.0 / np.log(term.high / term.low) ** 2))
+def _widths(sums: _Sums, true: Floats, slope: Floats, sizes: Floats, log_range: float) -> Floats:
+    """Give the standard deviation of the logarithm of a time constant for every size, to first order."""
+    of_true, of_slope = sums.normal @ true, sums.normal @ slope
+    information = slope @ of_slope - (slope @ of_true) ** 2 / (sums.precision + true @ of_true)
+    return np.asarray(1.0 / np.sqrt(sizes**2 * information + 12.0 / log_range**2))

@@ -45,8 +45,7 @@ def _determinations(comparison: Mapping[str, Any]) -> Table:
         joint = comparison["difference"]["joint"]
         rows.append([joint["label"], stated(joint), "", joint["method"]])
     rows += [
-        [each["label"], stated(each), _probability(each["difference"]), each["method"]]
-        for each in comparison["others"]
+        [each["label"], stated(each), _probability(each["difference"]), each["method"]] for each in comparison["others"]
     ]
     return Table("Determinations", ("", "amplitude and peak", "p beside the network", "from"), rows, wordy=True)
 
