@@ -2,6 +2,7 @@
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
+from functools import cached_property
 
 import numpy as np
 import xarray as xr
@@ -30,19 +31,21 @@ class _Case:
     choices: Choices
     mixed: tuple[str, ...]
 
-    def route(self, start: Proposal | None = None) -> ScalePosterior:
+    def route(self, start: Proposal) -> ScalePosterior:
         """Give nodes of this case; the same random numbers for every one, so that differences are no chance."""
-        model, prior_scales = self._model()
-        start = start or self.proposal()
-        return integrate_scales(model, prior_scales, rng=self._rng(), draws=_DRAWS, start=start)
+        return integrate_scales(self._model, self._prior_scales, rng=self._rng(), draws=_DRAWS, start=start)
 
-    def proposal(self) -> Proposal:
+    def proposal(self, like: Proposal | None = None) -> Proposal:
         """Where the nodes are drawn."""
-        return fit_proposal(*self._model(), rng=self._rng())
+        return fit_proposal(self._model, self._prior_scales, rng=self._rng(), like=like)
 
-    def _model(self) -> tuple[LinearModel, NDArray[np.float64]]:
-        model = network_model(self.observations, self.admittance[None], self.choices, mixed=self.mixed)
-        return model, scale_priors(self.choices.priors, model.scale_count)
+    @cached_property
+    def _model(self) -> LinearModel:
+        return network_model(self.observations, self.admittance[None], self.choices, mixed=self.mixed)
+
+    @property
+    def _prior_scales(self) -> NDArray[np.float64]:
+        return scale_priors(self.choices.priors, self._model.scale_count)
 
     def _rng(self) -> np.random.Generator:
         return np.random.default_rng(self.choices.settings.seed)
@@ -92,8 +95,9 @@ def alternative_answers(
     start = given.proposal()
     middle, spread = given.route(start), member_spread(base)
     mean, covariance = pooled_moments(base)
+    others = _other_models(given)
     cases = [
-        *((name, other.route(start if alike else None)) for name, other, alike in _other_models(given)),
+        *((name, other.route(start if alike else other.proposal(like=start))) for name, other, alike in others),
         *((name, other.route(start)) for name, other in _uniform(given, fingerprints)),
     ]
     rows = [

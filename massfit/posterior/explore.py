@@ -2,13 +2,13 @@
 
 Everything linear is integrated out exactly. Where the site scatter is Student's, every walker carries the stretches
 of the places, which are drawn exactly (Gibbs) after every step of emcee, and where a site enters by its mixture, the
-part in use: given these, a step moves the scales alone. Half of the walkers are proposed from the other half as in
-Goodman & Weare (2010, Communications in Applied Mathematics and Computational Science 5, 65-80), whatever each walker
-carries.
+part in use: given these, a step moves the scales alone. In the first part of a run, which is thrown away, half of the
+walkers are proposed from the other half as in Goodman & Weare (2010, Communications in Applied Mathematics and
+Computational Science 5, 65-80), whatever each walker carries; what they visited last is what later proposals are
+fitted to.
 """
 
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass
 from typing import NamedTuple
 
 import emcee
@@ -17,6 +17,7 @@ from numpy.typing import NDArray
 
 from massfit.posterior.latents import draw_latents, draw_shared_scales, draw_site_scale
 from massfit.posterior.likelihood import Collapsed, collapse, log_latent_prior, log_scale_prior
+from massfit.posterior.moves import ComplementMove, LearntMove, ScaleAxes, side_by_side
 from massfit.posterior.regression import Condition, LinearModel
 
 Floats = NDArray[np.float64]
@@ -24,72 +25,17 @@ Floats = NDArray[np.float64]
 ENSEMBLES = 4
 """Independent ensembles of walkers; these are the chains of every diagnostic."""
 
-WALKERS = 40
+WALKERS = 20
 """Least number of walkers of an ensemble, over all load members."""
 
-MEMBER_WALKERS = 8
+MEMBER_WALKERS = 4
 """Least number of walkers of a load member in an ensemble."""
 
-STEPS, MAX_STEPS = 500, 4000
+STEPS, MAX_STEPS = 250, 4000
 """Steps kept of each ensemble, a third as many before them being thrown away; and the cap of a run that is extended."""
 
 KEPT_DRAWS = 1000
 """About as many draws of the phasor are kept of each member and ensemble, equally spaced."""
-
-_FREEDOM = 5.0  # of the Student proposal: heavier tails than the target's
-
-
-class ComplementMove(emcee.moves.RedBlueMove):  # type: ignore[misc]
-    """Propose from a Student distribution fitted to the other half of the ensemble; one walker in ten by a difference.
-
-    The proposal does not depend on the walkers it moves, so the acceptance ratio of
-    Hastings (1970, Biometrika 57, 97-109) holds with the two proposal densities; the
-    difference of two of the others (ter Braak 2006, Statistics and Computing 16, 239-249) is symmetric. The last
-    coordinate is the number of the walker and stays; ensembles that run side by side take turns along it, and know
-    nothing of each other.
-
-    Parameters
-    ----------
-    ensembles : int
-        Ensembles that run side by side.
-    """
-
-    def __init__(self, ensembles: int) -> None:
-        super().__init__(randomize_split=False)
-        self._ensembles = ensembles
-
-    def get_proposal(
-        self, sample: Floats, complement: list[Floats], random: np.random.RandomState
-    ) -> tuple[Floats, Floats]:
-        """Proposals for one half of the walkers, with the log ratio of their densities."""
-        moved, ratio = sample.copy(), np.empty(len(sample))
-        others = complement[0]
-        for ensemble in range(self._ensembles):
-            own = np.asarray(_ensemble_of(sample, self._ensembles) == ensemble)
-            rest = np.asarray(_ensemble_of(others, self._ensembles) == ensemble)
-            moved[own, :-1], ratio[own] = _propose(sample[own, :-1], others[rest, :-1], random)
-        return moved, ratio
-
-
-def _ensemble_of(coordinates: Floats, ensembles: int) -> NDArray[np.int64]:
-    """Ensemble of each walker: pairs of one walker of each half take turns."""
-    return np.asarray(coordinates[:, -1].astype(np.int64) // 2 % ensembles)
-
-
-def _propose(here: Floats, others: Floats, random: np.random.RandomState) -> tuple[Floats, Floats]:
-    count, size = here.shape
-    centre = others.mean(axis=0)
-    shift = others - centre
-    root = np.linalg.cholesky(shift.T @ shift / len(others) + 1e-12 * np.eye(size))
-    stretch = np.sqrt(_FREEDOM / random.chisquare(_FREEDOM, size=(count, 1)))
-    proposal = centre + (stretch * random.standard_normal((count, size))) @ root.T
-    both = np.linalg.solve(root, (np.concatenate([here, proposal]) - centre).T)
-    density = -0.5 * (_FREEDOM + size) * np.log1p((both**2).sum(axis=0) / _FREEDOM)
-    by_difference = np.asarray(random.random_sample(count)) < 0.1
-    first, second = random.randint(len(others), size=(2, count))
-    step = 2.38 / np.sqrt(2.0 * size) * (others[first] - others[second])
-    moved = np.where(by_difference[:, None], here + step, proposal)
-    return moved, np.where(by_difference, 0.0, density[:count] - density[count:])
 
 
 class EnsembleTask(NamedTuple):
@@ -155,15 +101,14 @@ def run_ensembles(task: EnsembleTask) -> EnsembleChains:
     model, steps = task.model, task.steps
     walkers = walkers_of_member(model.member_count)
     kept = np.unique(np.linspace(0, steps - 1, min(steps, KEPT_DRAWS // walkers + 1)).round().astype(int))
-    warm_up = steps // 3
     walk = _Walk(task, walkers)
+    visited = [walk.coordinates for _ in walk.steps(steps // 3, ComplementMove(task.ensembles))]
+    learnt = side_by_side(visited[len(visited) // 2 :], task.ensembles)
     chain, draws = [], []
-    for step, _ in enumerate(walk.steps(warm_up + steps)):
-        if step >= warm_up:
-            chain.append((walk.condition.log_scales, *walk.moments()))
-            if step - warm_up in kept:
-                draws.append(walk.draw())
-        walk.refresh()
+    for step, _ in enumerate(walk.steps(steps, LearntMove(learnt))):
+        chain.append((walk.condition.log_scales, *walk.moments()))
+        if step in kept:
+            draws.append(walk.draw())
     layout = (model.member_count, walkers // 2, task.ensembles, 2)
     log_scales, mean, covariance = (_arranged(column, layout) for column in zip(*chain, strict=True))
     density, annual, years = (_arranged(column, layout) for column in zip(*draws, strict=True))
@@ -176,7 +121,7 @@ def walkers_of_member(member_count: int) -> int:
     Examples
     --------
     >>> walkers_of_member(1), walkers_of_member(7)
-    (40, 8)
+    (20, 4)
     """
     return max(MEMBER_WALKERS, 2 * int(np.ceil(0.5 * WALKERS / member_count)))
 
@@ -196,7 +141,6 @@ class _Walk:
     def __init__(self, task: EnsembleTask, walkers: int) -> None:
         model, prior_scales, rng = task.model, task.prior_scales, task.rng
         self._model, self._prior_scales, self._rng = model, prior_scales, rng
-        self._ensembles = task.ensembles
         self._axes = ScaleAxes(model.rows.has_contrasts)
         self._has_latents = model.student or model.rows.has_parts
         walkers *= task.ensembles
@@ -216,7 +160,7 @@ class _Walk:
         return collapsed, density
 
     def _log_posterior(self, coordinates: Floats) -> Floats:
-        """Log density given what each walker carries, whose number is the last coordinate."""
+        """Log density of the coordinates given what each walker carries, whose number is the last of them."""
         walker = coordinates[:, -1].astype(int)
         log_scales = self._axes.log_scales(coordinates[:, :-1])
         ratio = log_scales - np.log(self._prior_scales)
@@ -226,31 +170,38 @@ class _Walk:
         condition = Condition(np.where(inside[:, None], log_scales, own.log_scales), own.stretch, own.part, own.member)
         collapsed, density = self._evaluate(condition)
         self._proposed[walker] = collapsed.root
-        return np.where(inside, density, -np.inf)
+        return np.where(inside, density + self._axes.log_jacobian(condition.log_scales), -np.inf)
 
-    def steps(self, count: int) -> Iterator[None]:
-        """Take steps of emcee; between them the walkers may be refreshed."""
-        number = np.arange(len(self.condition), dtype=float)[:, None]
-        coordinates = np.hstack([self._axes.coordinates(self.condition.log_scales), number])
-        sampler = emcee.EnsembleSampler(
-            *coordinates.shape, self._log_posterior, moves=ComplementMove(self._ensembles), vectorize=True
-        )
+    @property
+    def coordinates(self) -> Floats:
+        """(n, n_scale + 1), with the number of the walker."""
+        number = np.arange(len(self.condition), dtype=float)
+        return np.column_stack([self._axes.coordinates(self.condition.log_scales), number])
+
+    def steps(self, count: int, move: emcee.moves.Move) -> Iterator[None]:
+        """Take steps of emcee; what the walkers carry is drawn anew after each."""
+        before = self.coordinates
+        sampler = emcee.EnsembleSampler(*before.shape, self._log_posterior, moves=move, vectorize=True)
         # emcee ignores a seed given as a number: its generator is set through the state
         random_state = np.random.RandomState(self._rng.integers(2**32)).get_state()
-        start = emcee.State(coordinates, log_prob=self._density, random_state=random_state)
-        iterations = sampler.sample(start, iterations=count, store=False, skip_initial_state_check=True)
-        before = coordinates.copy()
-        for state in iterations:
+        start = emcee.State(before.copy(), log_prob=self._coordinate_density(), random_state=random_state)
+        for state in sampler.sample(start, iterations=count, store=False, skip_initial_state_check=True):
             moved = (state.coords != before).any(axis=1)
             root = np.where(moved[:, None, None], self._proposed, self._collapsed.root)
-            log_scales = self._axes.log_scales(state.coords[:, :-1])
+            log_scales = np.where(
+                moved[:, None], self._axes.log_scales(state.coords[:, :-1]), self.condition.log_scales
+            )
             self.condition = Condition(log_scales, self.condition.stretch, self.condition.part, self.condition.member)
-            self._density = state.log_prob.copy()
+            self._density = state.log_prob - self._axes.log_jacobian(log_scales)
             self._collapsed = Collapsed(root, self._density, self._model.annual_sd)
             yield
-            state.coords[:, :-1] = self._axes.coordinates(self.condition.log_scales)
-            state.log_prob[:] = self._density
-            before = state.coords.copy()
+            self._refresh()
+            before = self.coordinates
+            state.coords[:] = before
+            state.log_prob[:] = self._coordinate_density()
+
+    def _coordinate_density(self) -> Floats:
+        return self._density + self._axes.log_jacobian(self.condition.log_scales)
 
     def _shared(self) -> Floats:
         """One draw of what the sites share, in prior standard deviations, at the present state."""
@@ -270,7 +221,7 @@ class _Walk:
         density = self._density + log_latent_prior(model, self.condition)
         return density, model.annual_sd * shared[:, -2:], away
 
-    def refresh(self) -> None:
+    def _refresh(self) -> None:
         """Draw what the walkers carry anew."""
         if self._has_latents:
             shared = self._shared()
@@ -279,34 +230,3 @@ class _Walk:
             self.condition = draw_site_scale(self._model, condition, self._prior_scales, self._rng)
             self._collapsed, self._density = self._evaluate(self.condition)
         self._noise = None
-
-
-@dataclass(frozen=True)
-class ScaleAxes:
-    """Coordinates in which the scales are explored.
-
-    Parameters
-    ----------
-    has_contrasts : bool
-        Whether some site carries more than one model. With contrasts the coordinates are the
-        log scales. Without, the data see hardly more than s_site^2 + s_local^2, and the first two coordinates
-        are half the logarithm of that sum and the logarithm of s_local^2 / s_site^2; the Jacobian is constant.
-    """
-
-    has_contrasts: bool
-
-    def log_scales(self, coordinates: Floats) -> Floats:
-        """From coordinates (..., n_scale) to log scales."""
-        if self.has_contrasts:
-            return np.array(coordinates)
-        total, ratio = coordinates[..., 0], coordinates[..., 1]
-        site = total - 0.5 * np.logaddexp(0.0, ratio)
-        return np.concatenate([np.stack([site, site + 0.5 * ratio], axis=-1), coordinates[..., 2:]], axis=-1)
-
-    def coordinates(self, log_scales: Floats) -> Floats:
-        """From log scales (..., n_scale) to coordinates."""
-        if self.has_contrasts:
-            return np.array(log_scales)
-        site, local = log_scales[..., 0], log_scales[..., 1]
-        total = 0.5 * np.logaddexp(2.0 * site, 2.0 * local)
-        return np.concatenate([np.stack([total, 2.0 * (local - site)], axis=-1), log_scales[..., 2:]], axis=-1)

@@ -210,7 +210,7 @@ def integrate_scales(
     for more in (1, 2, 4):
         sample = _sample(model, prior_scales, member, proposal, more * draws, rng)
         weight = _normalised(sample.log_weight)
-        if 1.0 / (weight**2).sum() >= min(ENOUGH, 0.1 * draws):
+        if 1.0 / (weight**2).sum() >= min(ENOUGH, 0.2 * draws):
             break
         proposal = _refitted(model, sample, rng)
     mean, covariance = sample.collapsed.moments()
@@ -228,7 +228,14 @@ def integrate_scales(
     )
 
 
-def fit_proposal(model: LinearModel, prior_scales: Floats, *, member: int = 0, rng: np.random.Generator) -> Proposal:
+def fit_proposal(
+    model: LinearModel,
+    prior_scales: Floats,
+    *,
+    member: int = 0,
+    rng: np.random.Generator,
+    like: Proposal | None = None,
+) -> Proposal:
     """Fit a proposal to the posterior of one load member in rounds.
 
     Parameters
@@ -238,17 +245,25 @@ def fit_proposal(model: LinearModel, prior_scales: Floats, *, member: int = 0, r
         Pa.
     member : int
     rng : numpy.random.Generator
+    like : Proposal, optional
+        Of a network whose scales should be much like those of this one: the first round is skipped. Its s_group is
+        left out where this one has none.
 
     Returns
     -------
     Proposal
     """
-    at_prior = model.at(np.log(prior_scales)[None], member)
-    prediction = predict_rows(model, at_prior, collapse(model, at_prior), rng, draws=200)
-    # the prior itself: half-t scales, wide enough to begin with
-    centre = np.log(prior_scales) + np.log(np.abs(rng.standard_t(4.0, size=(4 * _KERNELS, len(prior_scales)))) + 1e-3)
-    proposal = Proposal(centre, 0.5 * np.eye(len(prior_scales)), prediction)
-    for count in ROUNDS:
+    size = len(prior_scales)
+    start = np.log(prior_scales) if like is None else like.centre.mean(axis=0)[:size]
+    at_start = model.at(start[None], member)
+    prediction = predict_rows(model, at_start, collapse(model, at_start), rng, draws=200)
+    if like is None:
+        # the prior itself: half-t scales, wide enough to begin with
+        centre = start + np.log(np.abs(rng.standard_t(4.0, size=(4 * _KERNELS, size))) + 1e-3)
+        proposal = Proposal(centre, 0.5 * np.eye(size), prediction)
+    else:
+        proposal = Proposal(like.centre[:, :size], like.root[:size, :size], prediction)
+    for count in ROUNDS if like is None else ROUNDS[1:]:
         sample = _sample(model, prior_scales, member, proposal, count, rng)
         proposal = _refitted(model, sample, rng)
     return proposal

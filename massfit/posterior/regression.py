@@ -1,5 +1,6 @@
 """The network model as a regression with independent rows: what stands in its columns, for every load member."""
 
+from collections.abc import Sequence
 from dataclasses import dataclass, fields, replace
 from functools import cached_property
 
@@ -11,6 +12,8 @@ from massfit.posterior.rows import Rows
 from massfit.posterior.sharing import Sharing
 
 Floats = NDArray[np.float64]
+
+_OF_PAIRS = ("record", "noise")  # of Rows: one entry a pair of rows
 
 SCALES = ("s_site", "s_local", "s_common", "s_group")
 """Names of the scales, in the order of every scale axis; the last only where sites share scatter."""
@@ -241,10 +244,30 @@ def linear_model(
 
 def without_site(model: LinearModel, site: int) -> LinearModel:
     """Leave out the rows of one site, by its index; the others keep theirs."""
-    return _with_rows(model, model.rows.site != site)
+    return _of_rows([(model, model.rows.site != site)], model.rows.log_weight)
 
 
-def _with_rows(model: LinearModel, kept: NDArray[np.bool_]) -> LinearModel:
-    pairs = {"record": kept[::2], "noise": kept[::2], "log_weight": slice(None)}
-    rows = Rows(**{f.name: getattr(model.rows, f.name)[pairs.get(f.name, kept)] for f in fields(Rows)})
-    return replace(model, rows=rows, design=model.design[:, kept])
+def with_parts(model: LinearModel, mixed: LinearModel, site: int) -> LinearModel:
+    """Let one site, by its index, enter by the mixture by which it enters `mixed`; the others as in `model`."""
+    chosen = [
+        (each, ((np.arange(len(each.rows.site)) < each.rows.mean_count) == means) & ((each.rows.site == site) == own))
+        for means in (True, False)
+        for each, own in ((model, False), (mixed, True))
+    ]
+    log_weight = np.full_like(mixed.rows.log_weight, -np.inf)
+    log_weight[:, : model.rows.log_weight.shape[1]] = model.rows.log_weight
+    log_weight[site] = mixed.rows.log_weight[site]
+    return _of_rows(chosen, log_weight)
+
+
+def _of_rows(chosen: Sequence[tuple[LinearModel, NDArray[np.bool_]]], log_weight: Floats) -> LinearModel:
+    """Join rows of models that differ in their rows alone, in the order given; the two of a pair are both chosen."""
+    joined = {
+        field.name: np.concatenate(
+            [getattr(each.rows, field.name)[kept[::2] if field.name in _OF_PAIRS else kept] for each, kept in chosen]
+        )
+        for field in fields(Rows)
+        if field.name != "log_weight"
+    }
+    design = np.concatenate([each.design[:, kept] for each, kept in chosen], axis=1)
+    return replace(chosen[0][0], rows=Rows(**joined, log_weight=log_weight), design=design)

@@ -132,15 +132,20 @@ def _site_pairs(
     weights[1:, present] = contrast_weights(count)[: known - 1]
     noise = observations.model_noise[s]
     record = record_covariance(covariance, noise, count)
+    zero = np.zeros((2, 2))
+    mean, contrast = _on_own_axes(record, noise / count), _on_own_axes(zero, noise)
     pairs = []
     for row, weight in enumerate(weights):
-        own_record, own_noise = (record, noise / count) if row == 0 else (np.zeros((2, 2)), noise)
-        values, axes = np.linalg.eigh(own_record + own_noise)
-        direction = axes.T
+        direction, variance, own_record, own_noise = mean if row == 0 else contrast
         value = direction @ (weight @ np.nan_to_num(phasor))
-        turned = (direction @ own_record @ axes, direction @ own_noise @ axes)
-        pairs.append((direction, weight, value, np.maximum(values, 0.0), *turned))
+        pairs.append((direction, weight, value, variance, own_record, own_noise))
     return pairs
+
+
+def _on_own_axes(record: Floats, noise: Floats) -> tuple[Floats, Floats, Floats, Floats]:
+    """Directions of the axes of the sum of two covariances, its variances along them, and the two on them."""
+    values, axes = np.linalg.eigh(record + noise)
+    return axes.T, np.maximum(values, 0.0), axes.T @ record @ axes, axes.T @ noise @ axes
 
 
 def contrast_weights(count: int) -> Floats:

@@ -20,13 +20,10 @@ from massfit.posterior.importance import DRAWS, Proposal, ScalePosterior, fit_pr
 from massfit.posterior.mixtures import sites_by_mixture
 from massfit.posterior.network_model import Choices, inflation, network_model, scale_priors
 from massfit.posterior.notes import method_notes, network_warnings
-from massfit.posterior.observations import read_observations
+from massfit.posterior.observations import Observations, read_observations
 from massfit.posterior.regression import LinearModel
 from massfit.posterior.result import Posterior
 from massfit.settings import PosteriorSettings, Priors
-
-SIDE_BY_SIDE = 2
-"""Ensembles that one process runs side by side."""
 
 
 def sample_posterior(
@@ -104,11 +101,9 @@ def sample_posterior(
     """
     observations, admittance = read_observations(site_phasors, fingerprints)
     choices = Choices(settings, priors, atmosphere_sd_hpa)
-    mixed = sites_by_mixture(observations, admittance, choices)
+    mixed, proposal = _mixed_and_proposal(observations, admittance, choices)
     model = network_model(observations, admittance, choices, mixed=mixed)
-    middle = network_model(observations, admittance.mean(axis=0)[None], choices, mixed=mixed)
     prior_scales = scale_priors(priors, model.scale_count)
-    proposal = fit_proposal(middle, prior_scales, rng=np.random.default_rng(settings.seed))
     effort = 1
     while True:
         chains, routes = _both_routes(
@@ -143,6 +138,22 @@ def sample_posterior(
         warnings=(*network_warnings(observations, model, members, priors, fingerprints), *_doubts(convergence)),
         method=method_notes(model, settings, mixed),
     )
+
+
+def _mixed_and_proposal(
+    observations: Observations, admittance: NDArray[np.complex128], choices: Choices
+) -> tuple[tuple[str, ...], Proposal]:
+    """Sites that enter by their mixture, and where the nodes are drawn, both at the mean of the load members."""
+    mean = admittance.mean(axis=0)[None]
+
+    def fitted(mixed: tuple[str, ...]) -> Proposal:
+        middle = network_model(observations, mean, choices, mixed=mixed)
+        rng = np.random.default_rng(choices.settings.seed)
+        return fit_proposal(middle, scale_priors(choices.priors, middle.scale_count), rng=rng)
+
+    proposal = fitted(())
+    mixed = sites_by_mixture(observations, admittance, choices, start=proposal)
+    return mixed, fitted(mixed) if mixed else proposal
 
 
 def _silent(done: int, total: int) -> None:
@@ -187,21 +198,17 @@ class _Run(NamedTuple):
     effort: int
 
     def tasks(self) -> list[EnsembleTask | NodesTask]:
-        """Ensembles, then the nodes of every load member, each with random numbers of its own."""
-        count, members = ENSEMBLES // SIDE_BY_SIDE, self.model.member_count
-        streams = np.random.default_rng([self.seed, self.effort]).spawn(count + 1)
+        """All ensembles, then the nodes of every load member."""
+        of_ensembles, of_nodes = np.random.default_rng([self.seed, self.effort]).spawn(2)
         # the same random numbers for every load member: what differs between them is the load
-        state = streams[-1].integers(2**32)
+        state = of_nodes.integers(2**32)
         return [
-            *(
-                EnsembleTask(self.model, self.prior_scales, SIDE_BY_SIDE, self.effort * STEPS, rng)
-                for rng in streams[:-1]
-            ),
+            EnsembleTask(self.model, self.prior_scales, ENSEMBLES, self.effort * STEPS, of_ensembles),
             *(
                 NodesTask(
                     self.model, self.prior_scales, k, self.effort * DRAWS, self.proposal, np.random.default_rng(state)
                 )
-                for k in range(members)
+                for k in range(self.model.member_count)
             ),
         ]
 
@@ -224,14 +231,7 @@ def _both_routes(
     for part in mapped(_sample_part, tasks):
         parts.append(part)
         progress(len(parts), len(tasks))
-    count = len(tasks) - run.model.member_count
-    ensembles = [EnsembleChains(*part) for part in parts[:count]]
-    joined = {
-        name: np.concatenate([getattr(each, name) for each in ensembles])
-        for name in EnsembleChains._fields
-        if name != "kept"
-    }
-    return EnsembleChains(**joined, kept=ensembles[0].kept), parts[count:]
+    return EnsembleChains(*parts[0]), parts[1:]
 
 
 def _by_chain(values: NDArray[np.float64]) -> NDArray[np.float64]:

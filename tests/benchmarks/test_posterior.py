@@ -7,7 +7,7 @@ import emcee
 import numpy as np
 import pytest
 
-from massfit.posterior.explore import EnsembleTask, run_ensembles
+from massfit.posterior.explore import ENSEMBLES, STEPS, EnsembleTask, run_ensembles
 from massfit.posterior.importance import integrate_scales
 from massfit.posterior.network_model import Choices, network_model, scale_priors
 from massfit.posterior.observations import Observations
@@ -77,7 +77,7 @@ def test_effective_draws_a_second_against_a_plain_sampler() -> None:
     model = network_model(observations, admittance, Choices(PLAIN, Priors(), 0.04))
     prior = scale_priors(Priors(), 3)
     start = time.process_time()
-    chains = run_ensembles(EnsembleTask(model, prior, 2, 500, np.random.default_rng(1)))
+    chains = run_ensembles(EnsembleTask(model, prior, ENSEMBLES, STEPS, np.random.default_rng(1)))
     spent = time.process_time() - start
     length = [emcee.autocorr.integrated_time(each[0], tol=0).max() for each in chains.node_mean]
     # the phasor is drawn exactly given the scales: its draws are at least as good as its conditional means
@@ -115,8 +115,8 @@ def test_the_cost_grows_no_faster_than_the_sites(scatter: str) -> None:
         observations, admittance = invented(sites)
         model = network_model(observations, admittance, Choices(settings, Priors(), 0.04))
         prior = scale_priors(Priors(), 3)
-        run_ensembles(EnsembleTask(model, prior, 2, 3, np.random.default_rng(1)))
-        task = EnsembleTask(model, prior, 2, 30, np.random.default_rng(1))
+        run_ensembles(EnsembleTask(model, prior, ENSEMBLES, 3, np.random.default_rng(1)))
+        task = EnsembleTask(model, prior, ENSEMBLES, 30, np.random.default_rng(1))
         costs[sites] = seconds(lambda task=task: run_ensembles(task))
     print(scatter, {sites: f"{cost / 40 * 1e3:.1f} ms a step" for sites, cost in costs.items()})
     assert costs[1000] / costs[100] < 1.5 * 10.0
