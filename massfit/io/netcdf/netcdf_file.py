@@ -34,7 +34,9 @@ def is_netcdf(path: Path) -> bool:
     return start == _HDF5_MAGIC or start[:3] == b"CDF"
 
 
-def open_netcdf(path: Path, *, source: str = "", decode: bool = True) -> xr.Dataset:
+def open_netcdf(
+    path: Path, *, source: str = "", decode: bool = True, examined: bool = False, mapped: bool = False
+) -> xr.Dataset:
     """Open a NetCDF file lazily.
 
     Parameters
@@ -44,6 +46,10 @@ def open_netcdf(path: Path, *, source: str = "", decode: bool = True) -> xr.Data
         Name of the file in an error; the path when empty.
     decode : bool
         Whether fill values, packing and times are decoded.
+    examined : bool
+        Whether the file was opened before and found whole: it is not examined again.
+    mapped : bool
+        Whether a file of the classic format stays on disk; its values are else read at once.
 
     Returns
     -------
@@ -61,15 +67,15 @@ def open_netcdf(path: Path, *, source: str = "", decode: bool = True) -> xr.Data
     with path.open("rb") as file:
         magic = file.read(8)
     allowed, action = "Must be NetCDF-3 or NetCDF-4", "Fetch it again"
-    if magic[:3] == b"CDF":
+    if magic[:3] == b"CDF" and not examined:
         require_complete(path, source=source)
-    elif magic != _HDF5_MAGIC:
+    elif magic[:3] != b"CDF" and magic != _HDF5_MAGIC:
         problem = f"the file cannot be read as NetCDF (it starts with {magic!r})"
         raise InputError(Fault(source, "", problem, allowed, action))
-    elif problem := examined_problem(path):
+    elif not examined and magic == _HDF5_MAGIC and (problem := examined_problem(path)):
         problem = f"the file cannot be read as NetCDF ({problem})"
         raise InputError(Fault(source, "", problem, allowed, action))
-    engine, options = ("scipy", {"mmap": False}) if magic[:3] == b"CDF" else ("h5netcdf", {})
+    engine, options = ("scipy", {"mmap": mapped}) if magic[:3] == b"CDF" else ("h5netcdf", {})
     with damage_as_fault(source):
         return xr.open_dataset(path, engine=engine, mask_and_scale=decode, decode_times=decode, backend_kwargs=options)
 
