@@ -4,7 +4,7 @@ import json
 import os
 import sys
 from pathlib import Path
-from typing import Literal
+from typing import Any, Literal
 
 import click
 
@@ -200,6 +200,41 @@ def compare(results: Path, network: Path | None, gravity: Path | None, outside: 
 
     if not quiet:
         click.echo(comparison_text(run.summary["comparison"]))
+
+
+@main.command()
+@click.argument("fields", nargs=-1, required=True, metavar="FIELDS...")
+@click.option("--output", type=_FOLDER, default="screening", show_default=True, help="Folder to be made.")
+@click.option("--ocean-mean", multiple=True, metavar="CHOICE", help="subtract or removed, or NAME=CHOICE. No default.")
+@click.option("--variable", help="Variable of bottom pressure, where several could be meant.")
+@click.option("--network", type=_FOLDER, help="Network file or results, to place its sites on the map.")
+@click.option("--years", "record_years", type=click.FloatRange(1.0, 30.0), multiple=True, help="Length of a record.")
+@click.option("--inflation", "inflation_factor", type=click.FloatRange(1.0, 10.0), default=1.5, show_default=True,
+              help="On quiet places of models.")  # fmt: skip
+@click.option("--quiet-sd", "quiet_sd_hpa", type=click.FloatRange(0.01, 100.0), default=1.0, show_default=True,
+              help="Up to which a place is quiet, hPa.")  # fmt: skip
+@click.option("--memory", "memory_gb", type=click.FloatRange(0.05, 4096.0), default=1.5, show_default=True,
+              help="Of a process, GB.")  # fmt: skip
+@click.option("--workers", type=click.IntRange(1, 1024), help="Share among N processes (needs Dask).")
+@click.option("--scheduler", metavar="ADDRESS", help="Share on a Dask cluster that is there.")
+@click.option("--overwrite", is_flag=True, help="Replace an earlier screening.")
+@click.option("--quiet", is_flag=True, help="Print nothing but errors.")
+def screen(fields: tuple[str, ...], output: Path, quiet: bool, **options: Any) -> None:
+    """Map where the sea floor is quiet, from ocean models.
+
+    FIELDS are one model each: PATH or NAME=PATH of a NetCDF file, a Zarr store, a
+    folder of files or a pattern in quotes, with bottom pressure over time,
+    latitude and longitude. Writes screening.nc, maps, a table of the sites and
+    screening.html, and prints how quiet the sea floor is.
+    """
+    with refusing_politely(), shown_progress(quiet=quiet) as progress:
+        from massfit.pipeline.save_screen import screen_to_folder
+
+        run = screen_to_folder(fields, output, progress=progress, **options)
+    from massfit.report.words.screening_text import screening_text
+
+    if not quiet:
+        click.echo(f"{screening_text(run.summary)}\n\nResults in {output}: start with screening.html")
 
 
 @main.command()

@@ -28,15 +28,32 @@ def provenance(network: Network, *, processes: int) -> dict[str, Any]:
     -------
     dict
     """
-    versions = {name: metadata.version(name) for name in _LIBRARIES}
+    made = made_by(processes=processes)
+    return {
+        **made,
+        "transform_backend": TRANSFORM_BACKEND,
+        "polar_motion": f"astropy-iers-data {made['versions']['astropy-iers-data']}",
+        "seed": network.settings.posterior.seed,
+    }
+
+
+def made_by(*, processes: int) -> dict[str, Any]:
+    """Versions, processes and threads of whatever is computed.
+
+    Parameters
+    ----------
+    processes : int
+        That shared the work.
+
+    Returns
+    -------
+    dict
+    """
     return {
         "massfit": metadata.version("massfit"),
         "python": platform.python_version(),
         "machine": f"{platform.system()} {platform.machine()}",
-        "versions": versions,
-        "transform_backend": TRANSFORM_BACKEND,
-        "polar_motion": f"astropy-iers-data {versions['astropy-iers-data']}",
-        "seed": network.settings.posterior.seed,
+        "versions": {name: metadata.version(name) for name in _LIBRARIES},
         "processes": processes,
         "threads": [
             {"library": pool["internal_api"], "version": str(pool["version"]), "threads": pool["num_threads"]}

@@ -7,7 +7,7 @@ from typing import TypeVar
 import numpy as np
 import xarray as xr
 
-from massfit.constants import PASCAL_PER_HPA
+from massfit.constants import PASCAL_PER_HPA, TROPICAL_YEAR_DAYS
 from massfit.contracts import QUIETNESS_MAP, require
 from massfit.corrections.atmosphere import annual_phasor
 from massfit.corrections.circulation import OCEAN_MEAN_LIMIT_HPA, WHOLE_OCEAN_SHARE
@@ -119,8 +119,31 @@ def screen_sea_floor(
         models, [job.grid for job in jobs], record_years=record_years, reference_year=jobs[0].design.reference_year,
         inflation_factor=inflation_factor, quiet_sd=quiet_sd_hpa * PASCAL_PER_HPA,
     )  # fmt: skip
+    found = found.assign_coords(_facts(jobs))
     require(found, QUIETNESS_MAP)
     return found
+
+
+def _facts(jobs: list[_Job]) -> dict[str, tuple[str, list[object], dict[str, str]]]:
+    """Say of each model what it gave."""
+    facts: dict[str, tuple[list[object], str]] = {
+        "first_time": ([job.axis.time[0] for job in jobs], "first time of the model, UTC"),
+        "last_time": ([job.axis.time[-1] for job in jobs], "last time of the model, UTC"),
+        "step": ([job.axis.step_days for job in jobs], "length of an interval"),
+        "years": ([job.axis.span_days / TROPICAL_YEAR_DAYS for job in jobs], "length of the model"),
+        "lines": ([len(job.design.lines) for job in jobs], "lines beside the annual one that tell of its noise"),
+        "ocean_mean": ([job.field.ocean_mean for job in jobs], "what was done about the ocean mean"),
+        "readings": ([_readings(job) for job in jobs], "how often what is stored was read"),
+    }
+    units = {"step": {"units": "d"}, "years": {"units": "yr"}}
+    return {
+        name: ("model", values, {"long_name": text, **units.get(name, {})}) for name, (values, text) in facts.items()
+    }
+
+
+def _readings(job: _Job) -> int:
+    twice = job.field.ocean_mean == "subtract" and len(job.plan.bands) > 1
+    return job.plan.readings * (2 if twice else 1)
 
 
 def _jobs(fields: Sequence[ModelField], reference_year: int | None, memory_gb: float) -> list[_Job]:

@@ -125,7 +125,7 @@ def _solve(
     total, count = sums.total[:, cell], sums.count[cell]
     gram = products[:, :FITTED]
     # (n or 1, 6, 6) on (n, 6, 1): cells last outside
-    solved = np.asarray(np.linalg.solve(gram, total[:FITTED].T[..., None])[..., 0].T, dtype=float)
+    solved = np.asarray((np.linalg.inv(gram) @ total[:FITTED].T[..., None])[..., 0].T, dtype=float)
     left = sums.squares[cell] - np.einsum("fc,fc->c", solved, total[:FITTED])
     numbers.sd[cell] = np.sqrt(np.maximum(left, 0.0) / (count - FITTED))
     numbers.phasor[:, cell] = solved[ANNUAL] / attenuation

@@ -11,6 +11,7 @@ from massfit.errors import Fault, InputError
 from massfit.io.results.fingerprint_folder import FINGERPRINT_TABLE
 from massfit.io.results.results_folder import BLANK, ESTIMATE_FILE, PHASORS_FILE, RUN_FILE, file_digest
 from massfit.results.finished import FinishedRun
+from massfit.results.screening import SCREENING_FILE
 
 _REDRAWN = (".html", ".png")
 
@@ -48,7 +49,7 @@ def _read_run(folder: Path) -> dict[str, Any]:
     try:
         content = json.loads(path.read_text(encoding="utf-8"))
         outputs = content["outputs"]
-        for command, own in (("fingerprint", FINGERPRINT_TABLE), ("phasors", PHASORS_FILE)):
+        for command, own in (("fingerprint", FINGERPRINT_TABLE), ("phasors", PHASORS_FILE), ("screen", SCREENING_FILE)):
             if own in outputs:
                 raise InputError(_another_command(folder, command))
         outputs[RUN_FILE], outputs[ESTIMATE_FILE]

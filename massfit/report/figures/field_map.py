@@ -26,6 +26,8 @@ def field_map(
     at_sites: NDArray[np.float64] | None = None,
     neutral: float | None = None,
     signed: bool = False,
+    bands: NDArray[np.float64] | None = None,
+    contoured: bool = True,
     width_mm: float = PAGE_WIDTH_MM,
 ) -> Figure:
     """Draw a field over the ocean, land in grey, and sites in the colour of their own value where it is given.
@@ -46,6 +48,10 @@ def field_map(
         Value whose contour is drawn heavier.
     signed : bool
         Colours with edges at zero and at 1, 2 and 5 times powers of ten, for a field that is mostly small.
+    bands : (n_edge,) array, optional
+        Edges of the colours, ascending; round and equal steps over the middle of the values by default.
+    contoured : bool
+        Lines between the bands; for a field that is smooth from cell to cell.
     width_mm : float
         Width of the figure.
 
@@ -76,11 +82,12 @@ def field_map(
         raise InputError(Fault("field", "values", "no value on the ocean is finite", "", "Give the field of an ocean"))
     weight = np.broadcast_to(np.cos(np.radians(latitude))[:, None], values.shape)[shown]
     places = np.array(list((sites or {}).values()), dtype=float).reshape(-1, 2)
-    bands = (signed_bands if signed else even_bands)(values[shown], weight, keep=at_sites)
+    if bands is None:
+        bands = (signed_bands if signed else even_bands)(values[shown], weight, keep=at_sites)
     return world_map(
         np.ma.masked_invalid(np.where(shown, values, np.nan)), fraction, latitude, longitude, list(sites or {}),
         places[:, 0], places[:, 1], label=label or _named(field), bands=bands, at_sites=at_sites, neutral=neutral,
-        width_mm=width_mm,
+        contoured=contoured, width_mm=width_mm,
     )  # fmt: skip
 
 

@@ -54,6 +54,7 @@ def world_map(
     bands: NDArray[np.float64],
     at_sites: NDArray[np.float64] | None = None,
     neutral: float | None = None,
+    contoured: bool = True,
     width_mm: float = PAGE_WIDTH_MM,
 ) -> Figure:
     """Draw a field over the ocean in bands of colour, with contours, and the sites in the colour of their own value.
@@ -75,6 +76,8 @@ def world_map(
         Value of each site by itself; its marker has that colour.
     neutral : float, optional
         Value whose contour is drawn heavier.
+    contoured : bool
+        Lines between the bands; for a field that is smooth from cell to cell.
     width_mm : float
         Width of the figure.
 
@@ -105,7 +108,8 @@ def world_map(
         field = picture(np.ma.array(values, mask=~ocean), latitude_deg, longitude_deg)
         draw_picture(axes, field, cmap=_COLOURS, norm=scale)
         draw_land(axes, ocean_fraction, latitude_deg, longitude_deg)
-        _contours(axes, field, latitude_deg, longitude_deg, bands, neutral)
+        if contoured:
+            _contours(axes, field, latitude_deg, longitude_deg, bands, neutral)
         frame_map(axes, south, north, every_deg=60 if width_mm > COLUMN_WIDTH_MM else 90)
         east = on_the_map(np.asarray(site_longitude_deg, dtype=float))
         colour = {"color": "white"} if at_sites is None else {"c": at_sites, "cmap": _COLOURS, "norm": scale}

@@ -36,7 +36,7 @@ def made_with(provenance: Mapping[str, Any]) -> list[tuple[str, str]]:
     facts = {
         "command": provenance["command"],
         "massfit": provenance["massfit"],
-        "seed": provenance["seed"],
+        "seed": provenance.get("seed"),
         "Python": provenance.get("python"),
         "machine": provenance.get("machine"),
         "processes": provenance.get("processes"),
