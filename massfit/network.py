@@ -71,6 +71,8 @@ class CirculationModel:
     partial : str
         What happens at a site of which the model covers a part of the days only: "missing", the model is left out
         there, or "cut", the record is cut to the days that it covers.
+    reference : str
+        Whose model it is and how it is cited; empty where it is not stated.
 
     Examples
     --------
@@ -87,6 +89,7 @@ class CirculationModel:
     air_pressure: str
     assimilates_satellite_gravity: bool = False
     partial: str = "missing"
+    reference: str = ""
 
 
 @dataclass(frozen=True)

@@ -36,12 +36,15 @@ class Frame:
         Phases count from 1 January 00:00 UTC of this year.
     start, end : datetime.date, optional
         First and last day used, inclusive; the records are cut to them.
+    references : tuple of str
+        How data that have no `reference` of their own (air pressure, satellites, others) are cited.
     """
 
     name: Annotated[str, Field(min_length=1)]
     reference_year: Annotated[int, Field(ge=1900, le=2200)]
     start: date | None = None
     end: date | None = None
+    references: Annotated[tuple[str, ...], Field(max_length=50)] = ()
 
 
 @dataclass(frozen=True, config=_STRICT)

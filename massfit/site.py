@@ -47,6 +47,8 @@ class Site:
         Intervals not used.
     excluded_because : str, optional
         When given the whole site is left out, for this reason.
+    reference : str
+        Whose records these are and how they are cited; empty where it is not stated.
 
     Examples
     --------
@@ -63,3 +65,4 @@ class Site:
     group: str | None = None
     exclude: tuple[Interval, ...] = ()
     excluded_because: str | None = None
+    reference: str = ""

@@ -181,6 +181,26 @@ def report(results: Path) -> None:
 
 @main.command()
 @click.argument("results", type=_FOLDER)
+@click.option("--bibtex", is_flag=True, help="Print BibTeX instead of text.")
+def cite(results: Path, *, bibtex: bool) -> None:
+    """Say what to cite: the methods and data behind RESULTS, and no others.
+
+    Your own data are named as the network file states them (`reference` of a
+    site or ocean model, `references` of the network).
+    """
+    with refusing_politely():
+        from massfit.io.results.read_results import read_results
+        from massfit.report.words.citation_text import citation_bibtex, citation_text
+        from massfit.results.citations import citations
+
+        run = read_results(results)
+        cited, version = citations(run), run.provenance["massfit"]
+    text = citation_text(cited, network=run.summary["network"], version=version)
+    click.echo(citation_bibtex(cited, version=version) if bibtex else text)
+
+
+@main.command()
+@click.argument("results", type=_FOLDER)
 @click.option("--network", type=_FOLDER, help="Network file with [gravity]  [default: beside RESULTS]")
 @click.option("--gravity", type=_FOLDER, help="Folder, archive or file of satellite gravity, for those of [gravity].")
 @click.option("--outside", is_flag=True, help="Allow paths outside the network's folder.")

@@ -8,6 +8,7 @@ from threadpoolctl import threadpool_info
 
 from massfit.fingerprint.transforms import TRANSFORM_BACKEND
 from massfit.network import Network
+from massfit.results.stated_data import series_of_means, stated_data
 
 _LIBRARIES = (
     "numpy", "scipy", "xarray", "h5netcdf", "pyshtools", "ducc0", "celerite2", "emcee", "arviz-stats",
@@ -27,6 +28,7 @@ def provenance(network: Network, *, processes: int) -> dict[str, Any]:
     Returns
     -------
     dict
+        Besides, under `data`, what the network states of its data.
     """
     made = made_by(processes=processes)
     return {
@@ -55,6 +57,8 @@ def made_by(*, processes: int) -> dict[str, Any]:
         "machine": f"{platform.system()} {platform.machine()}",
         "versions": {name: metadata.version(name) for name in _LIBRARIES},
         "processes": processes,
+        "data": stated_data(network),
+        "series_of_means": series_of_means(network),
         "threads": [
             {"library": pool["internal_api"], "version": str(pool["version"]), "threads": pool["num_threads"]}
             for pool in threadpool_info()

@@ -150,6 +150,7 @@ def circulation_table(model: CirculationModel, file: str, ocean_mean: str) -> Ma
         Files, relative to the network file; `ocean_mean` may be "removed".
     """
     partial = {"partial": model.partial} if model.partial != "missing" else {}
+    reference = {"reference": model.reference} if model.reference else {}
     return {
         "name": model.name,
         "file": file,
@@ -157,6 +158,7 @@ def circulation_table(model: CirculationModel, file: str, ocean_mean: str) -> Ma
         "air_pressure": model.air_pressure,
         "assimilates_satellite_gravity": model.assimilates_satellite_gravity,
         **partial,
+        **reference,
     }
 
 
@@ -168,12 +170,13 @@ class _Raw(str):
 
 def _values(section: Any) -> dict[str, Any]:
     values = {field.name: getattr(section, field.name) for field in fields(section)}
-    return {key: value for key, value in values.items() if value is not None}
+    return {key: value for key, value in values.items() if value not in (None, ())}
 
 
 def _site_table(site: Site) -> dict[str, Any]:
     table: dict[str, Any] = {"id": site.id, "latitude": site.latitude_deg, "longitude": site.longitude_deg}
     table |= {key: getattr(site, key) for key in ("depth_m", "group") if getattr(site, key) is not None}
+    table |= {"reference": site.reference} if site.reference else {}
     if site.excluded_because is not None:
         return table | {"exclude": site.excluded_because}
     return table | ({"exclude": [_Raw(_interval(each)) for each in site.exclude]} if site.exclude else {})

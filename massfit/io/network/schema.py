@@ -70,6 +70,8 @@ class SiteEntry:
         First and last year of the record.
     subtracted : tuple of str, optional
         The models, where `phasor_hpa` does not name them.
+    reference : str
+        Whose records these are and how they are cited.
     """
 
     id: Text
@@ -83,6 +85,7 @@ class SiteEntry:
     model_noise_hpa2: Matrix = ((0.0, 0.0), (0.0, 0.0))
     years: tuple[Year, Year] | None = None
     subtracted: tuple[Text, ...] | None = None
+    reference: str = ""
 
     def site(self) -> Site:
         """Make the site as the rest of the package knows it."""
@@ -95,6 +98,7 @@ class SiteEntry:
             self.group,
             exclude=() if whole else tuple(entry.interval() for entry in self.exclude),  # type: ignore[union-attr]
             excluded_because=str(self.exclude) if whole else None,
+            reference=self.reference,
         )
 
     def reduced(self) -> ReducedSite | None:
@@ -138,6 +142,8 @@ class CirculationEntry:
         Whether the model has seen what it will be compared with.
     partial : str
         Where the model covers a part of a record only: "missing" leaves it out there, "cut" cuts the record.
+    reference : str
+        Whose model it is and how it is cited.
     """
 
     name: Text
@@ -147,6 +153,7 @@ class CirculationEntry:
     variable: str | None = None
     assimilates_satellite_gravity: bool = False
     partial: Literal["missing", "cut"] = "missing"
+    reference: str = ""
 
 
 @dataclass(frozen=True, config=_STRICT)

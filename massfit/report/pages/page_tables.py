@@ -9,6 +9,7 @@ import xarray as xr
 from massfit.phasor import delay_days, peak_days
 from massfit.report.words.run_text import SHARE_WORDS
 from massfit.results.answer import spoken_date, spoken_range
+from massfit.results.citations import Citation, spoken
 from massfit.results.site_facts import member_table
 
 
@@ -267,6 +268,12 @@ def actions_table(summary: Mapping[str, Any], records: xr.Dataset | None) -> Tab
         done = "; ".join(f"{action['what']}: {action['count']}{detail}" for action, detail in said)
         rows.append([deployment, str(days[deployment]), done])
     return Table("What was done to each record", ("deployment", "daily means", "what was done"), rows, wordy=True)
+
+
+def citations_table(cited: Sequence[Citation]) -> Table:
+    """Tabulate what a result rests on."""
+    rows = [[each.what, each.text if each.source is None else spoken(each.source)] for each in cited]
+    return Table("Methods and data to cite", ("used for", "cite"), rows, wordy=True)
 
 
 def input_table(provenance: Mapping[str, Any]) -> Table | None:

@@ -10,6 +10,7 @@ from massfit.report.pages.page_tables import (
     actions_table,
     alternatives_table,
     calibration_table,
+    citations_table,
     corrections_table,
     fingerprint_table,
     input_table,
@@ -24,6 +25,7 @@ from massfit.report.pages.satellite_tables import satellite_tables
 from massfit.report.words.comparison_text import bridge_sentences, verdict
 from massfit.report.words.run_text import ALTERNATIVES_NOTE, trust_sentence, warning_lines
 from massfit.results.answer import answer_sentence
+from massfit.results.citations import citations
 from massfit.results.finished import FinishedRun
 
 PICTURES = {
@@ -105,6 +107,7 @@ def _tables(run: FinishedRun) -> dict[str, Table | None]:
         "corrections": corrections_table(summary),
         "fingerprint": fingerprint_table(summary, run.datasets["fingerprints.nc"]),
         "actions": actions_table(summary, run.datasets.get("reduced_records.nc")),
+        "citations": citations_table(citations(run)),
         "inputs": input_table(run.provenance),
         **satellite_tables(summary),
     }
