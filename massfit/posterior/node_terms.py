@@ -9,7 +9,8 @@ that of :mod:`massfit.posterior.likelihood`, in other coordinates of the same co
 vectors, the models' common errors by their mean, which takes the air-pressure correction along, and their contrasts.
 """
 
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, fields
 
 import numpy as np
 from numpy.typing import NDArray
@@ -24,7 +25,8 @@ Kept = NDArray[np.bool_]
 
 _FLAT = 0.5  # largest sum of scale^2 / variance at the first knot: below, no density of data depends on the scale
 
-_BLOCK = 256  # subsets and knots of s_group at a time: their matrices stay in the cache of the processor
+BLOCK = 64
+"""Subsets at a time: their matrices stay in the cache of the processor."""
 
 
 @dataclass(frozen=True)
@@ -36,13 +38,15 @@ class NodeTable:
     model : LinearModel
         Normal scatter, one Gaussian a site.
     rules : tuple of ScaleRule
-        One a scale of the model.
+        Of s_site, s_local, s_common and s_group; the last has one knot where the model has no such scale.
     design : (n_member, n_row, n_column + 1) array
         Columns in the order fixed, group, common, A; the value of the row stands last.
     fixed, group, common : int
         How many columns of each kind.
     from_place : int
         First of the fixed columns that are the scatter of a place with several sites.
+    extra : (n_place,) array
+        Pa2, variance of each place's scatter beyond s_site^2.
     """
 
     model: LinearModel
@@ -52,9 +56,10 @@ class NodeTable:
     group: int
     common: int
     from_place: int
+    extra: Floats
 
 
-def node_table(model: LinearModel, prior_scales: Floats) -> NodeTable:
+def node_table(model: LinearModel, prior_scales: Floats, *, extra: Floats | None = None) -> NodeTable:
     """Prepare a network for its subsets.
 
     Parameters
@@ -63,6 +68,8 @@ def node_table(model: LinearModel, prior_scales: Floats) -> NodeTable:
         The scatter is taken as normal; every site enters by one Gaussian.
     prior_scales : (n_scale,) array
         Scales of the half-t priors, Pa.
+    extra : (n_place,) array, optional
+        Pa2, variance of each place's scatter beyond s_site^2; none by default.
 
     Returns
     -------
@@ -93,6 +100,7 @@ def node_table(model: LinearModel, prior_scales: Floats) -> NodeTable:
         group.shape[2],
         common.shape[1],
         fixed.shape[2] - places,
+        np.zeros(model.place_count) if extra is None else extra,
     )
 
 
@@ -114,13 +122,15 @@ def _rules(model: LinearModel, prior_scales: Floats) -> tuple[ScaleRule, ...]:
     variance = np.maximum(rows.variance, 1e-4 * np.median(rows.value**2))
     means, contrasts = (1.0 / part for part in np.split(variance, [rows.mean_count]))
     own = np.sqrt(_FLAT / np.array([means.sum(), means.sum() + contrasts.sum()]))
-    lowest = np.clip([*own, 0.0, 0.0][: len(prior_scales)], 0.05 * prior_scales, 0.3 * prior_scales)
+    lowest = np.clip([*own, 0.0, 0.0][: len(prior_scales)], 0.1 * prior_scales, 0.3 * prior_scales)
     effects = [len(means), len(contrasts), columns.common.stop - columns.common.start]
     effects.append(columns.group.stop - columns.group.start)
-    return tuple(
+    rules = [
         scale_rule(float(prior), float(low), count, narrow=i < 2)
         for i, (prior, low, count) in enumerate(zip(prior_scales, lowest, effects, strict=False))
-    )
+    ]
+    nothing = ScaleRule(np.zeros(1), np.ones((1, 1)), np.ones(1))
+    return tuple([*rules, nothing][:4])
 
 
 @dataclass(frozen=True)
@@ -144,6 +154,10 @@ class SubsetMoments:
     log_evidence: Floats
     log_scales: Floats
 
+    def take(self, chosen: NDArray[np.int64]) -> "SubsetMoments":
+        """Subsets of the indices given."""
+        return SubsetMoments(*(getattr(self, f.name)[chosen] for f in fields(self)))
+
     @property
     def sd(self) -> Floats:
         """(n, 2), Pa."""
@@ -153,6 +167,11 @@ class SubsetMoments:
     def width(self) -> Floats:
         """(n,), Pa: root of the mean variance of the two components."""
         return np.asarray(np.sqrt(0.5 * np.trace(self.covariance, axis1=1, axis2=2)))
+
+
+def join_moments(blocks: Sequence[SubsetMoments]) -> SubsetMoments:
+    """Put the subsets of several blocks one after the other."""
+    return SubsetMoments(*(np.concatenate([getattr(block, f.name) for block in blocks]) for f in fields(SubsetMoments)))
 
 
 def subset_moments(table: NodeTable, kept: Kept, *, member: int = 0) -> SubsetMoments:
@@ -171,21 +190,20 @@ def subset_moments(table: NodeTable, kept: Kept, *, member: int = 0) -> SubsetMo
     SubsetMoments
     """
     kept = np.asarray(kept, dtype=bool)
-    size = _BLOCK if len(table.rules) == 3 else max(1, _BLOCK // len(table.rules[3].knot))
     blocks = [
-        _integrate(table, node_values(table, kept[start : start + size], member=member))
-        for start in range(0, len(kept), size)
+        integrate_nodes(table, node_values(table, kept[start : start + BLOCK], member=member))
+        for start in range(0, len(kept), BLOCK)
     ]
-    return SubsetMoments(*(np.concatenate(each) for each in zip(*blocks, strict=True)))
+    return join_moments(blocks)
 
 
 @dataclass(frozen=True)
 class NodeValues:
-    """Subsets on the knots of the scales.
+    """n subsets on the knots of the scales.
 
     Parameters
     ----------
-    log_likelihood : (n_site_knot, n_local_knot, n_common_knot[, n_group_knot], n) array
+    log_likelihood : (n_site_knot, n_local_knot, n_common_knot, n_group_knot, n) array
         Log density of the subset's phasors, everything but the scales integrated out.
     mean : (2, ...) array
         Pa.
@@ -199,7 +217,7 @@ class NodeValues:
 
 
 def node_values(table: NodeTable, kept: Kept, *, member: int = 0) -> NodeValues:
-    """Solve every subset on every knot.
+    """Solve every subset on every node.
 
     Parameters
     ----------
@@ -212,16 +230,12 @@ def node_values(table: NodeTable, kept: Kept, *, member: int = 0) -> NodeValues:
     -------
     NodeValues
     """
-    knots = [rule.knot for rule in table.rules]
-    shape = (*(len(knot) for knot in knots), len(kept))
+    shape = (*(len(rule.knot) for rule in table.rules), len(kept))
     values = NodeValues(np.empty(shape), np.empty((2, *shape)), np.empty((3, *shape)))
     tower = _Tower(table, member, np.ascontiguousarray(kept.T, dtype=float))
-    for i, site in enumerate(knots[0]):
-        for j, local in enumerate(knots[1]):
-            density, mean, covariance = tower.solved(site, local)
-            values.log_likelihood[i, j] = density.reshape(shape[2:])
-            values.mean[:, i, j] = mean.reshape(2, *shape[2:])
-            values.covariance[:, i, j] = covariance.reshape(3, *shape[2:])
+    for i, site in enumerate(table.rules[0].knot):
+        for j, local in enumerate(table.rules[1].knot):
+            values.log_likelihood[i, j], values.mean[:, i, j], values.covariance[:, i, j] = tower.solved(site, local)
     return values
 
 
@@ -234,44 +248,35 @@ class _Tower:
         self._upper = np.triu_indices(design.shape[1])
         self._products = design[:, self._upper[0]] * design[:, self._upper[1]]
         self._of_site = (np.arange(len(subsets))[:, None] == table.model.rows.site).astype(float)
-        self._common = table.rules[2].knot
-        self._group = table.rules[3].knot if len(table.rules) == 4 else np.zeros(0)
 
     def solved(self, site: float, local: float) -> tuple[Floats, Floats, Floats]:
-        """Log likelihood, mean and covariance (..., n_common_knot, n_group_knot or 1, n) at s_site and s_local."""
+        """Log likelihood, mean and covariance (..., n_common_knot, n_group_knot, n) at logarithms of the others."""
         table = self._table
+        commons, groups = (rule.knot for rule in table.rules[2:])
         # the group scatter of a site that is the only one of its group stands in the variance of its rows
-        inside = self._group if table.model.sharing.alone.any() else self._group[:1]
-        terms = [self._sums(site, local, group) for group in (inside if len(inside) else [0.0])]
+        inside = groups if table.model.sharing.alone.any() else groups[:1]
+        terms = [self._sums(site, local, group) for group in inside]
         upper, density = (np.stack(each, axis=-2) for each in zip(*terms, strict=True))
         prior = np.ones((table.fixed, 1, 1))
-        prior[table.from_place :] = np.exp(-2.0 * site)
+        prior[table.from_place :, 0, 0] = 1.0 / (np.exp(2.0 * site) + _extra(table))
         upper, density = _eliminate(upper, prior, density)
-        if len(self._group):
-            upper = np.repeat(upper, len(self._group) // upper.shape[2], axis=2)
-            prior = np.tile(np.exp(-2.0 * self._group)[:, None], (table.group, 1, 1))
-            upper, density = _eliminate(upper, prior, density)
-        upper = np.repeat(upper[:, :, None], len(self._common), axis=2)
-        return self._phasor(*_eliminate(upper, self._common_prior()[:, :, None, None], density))
+        upper = np.repeat(upper, len(groups) // upper.shape[2], axis=2)
+        prior = np.broadcast_to(np.exp(-2.0 * groups)[:, None], (table.group, len(groups), 1))
+        upper, density = _eliminate(upper, prior, density)
+        upper = np.repeat(upper[:, :, None], len(commons), axis=2)
+        return self._phasor(*_eliminate(upper, _common_prior(table, commons)[:, :, None, None], density))
 
     def _sums(self, site: float, local: float, group: float) -> tuple[Floats, Floats]:
         """Information (n_column + 1, n_column + 1, n) of the subsets and log density (n,) of their rows' variances."""
         model = self._table.model
         log_scales = np.array([[site, local, 0.0, group]])[:, : model.scale_count]
         base, contrast, scatter = base_variance(model, model.at(log_scales))
+        scatter += self._table.extra[model.row_place] * model.own_scatter
         variance = np.concatenate([base + scatter, contrast], axis=1)[0]
         size = self._table.design.shape[2]
         upper = np.zeros((size, size, self._subsets.shape[1]))
         upper[self._upper] = ((self._of_site / variance) @ self._products).T @ self._subsets
         return upper, -0.5 * (self._of_site @ np.log(2.0 * np.pi * variance)) @ self._subsets
-
-    def _common_prior(self) -> Floats:
-        """Precision (n_column, n_knot) of the models' mean error, with the air-pressure correction, and contrasts."""
-        table, squares = self._table, np.exp(2.0 * self._common)
-        models = table.common // 2
-        prior = np.tile(1.0 / squares, (table.common, 1))
-        prior[:2] = 1.0 / ((1.0 + models * table.model.truth) * squares + models * table.model.atmosphere_sd**2)
-        return prior
 
     def _phasor(self, upper: Floats, density: Floats) -> tuple[Floats, Floats, Floats]:
         """Solve for the two columns that are left, of unit prior."""
@@ -283,6 +288,40 @@ class _Tower:
         sd = self._table.model.annual_sd
         covariance = sd**2 * np.stack([c, -b, a]) / determinant
         return density - 0.5 * (misfit + np.log(determinant)), sd * mean, covariance
+
+
+def _common_prior(table: NodeTable, log_common: Floats) -> Floats:
+    """Precision (n_column, n) of the models' mean error, with the air-pressure correction, and of their contrasts."""
+    squares, models = np.exp(2.0 * log_common), table.common // 2
+    prior = np.tile(1.0 / squares, (table.common, 1))
+    prior[:2] = 1.0 / ((1.0 + models * table.model.truth) * squares + models * table.model.atmosphere_sd**2)
+    return prior
+
+
+def _extra(table: NodeTable) -> Floats:
+    """Variance beyond s_site^2 of the columns of places with several sites, two each."""
+    return np.repeat(table.extra[table.model.columns.shared_place], 2)
+
+
+def prior_precision(table: NodeTable, log_scales: Floats) -> Floats:
+    """Prior precision of every column.
+
+    Parameters
+    ----------
+    table : NodeTable
+    log_scales : (n, n_scale) array
+
+    Returns
+    -------
+    (n, n_column) array
+    """
+    prior = np.ones((len(log_scales), table.design.shape[2] - 1))
+    prior[:, table.from_place : table.fixed] = 1.0 / (np.exp(2.0 * log_scales[:, :1]) + _extra(table))
+    ends = np.cumsum([table.fixed, table.group, table.common])
+    if table.group:
+        prior[:, ends[0] : ends[1]] = np.exp(-2.0 * log_scales[:, 3:4])
+    prior[:, ends[1] : ends[2]] = _common_prior(table, log_scales[:, 2]).T
+    return prior
 
 
 def _eliminate(upper: Floats, prior: Floats, density: Floats) -> tuple[Floats, Floats]:
@@ -310,50 +349,59 @@ def _eliminate(upper: Floats, prior: Floats, density: Floats) -> tuple[Floats, F
     return upper[len(prior) :, len(prior) :], density
 
 
-def _integrate(table: NodeTable, values: NodeValues) -> tuple[Floats, Floats, Floats, Floats]:
-    """Mean, covariance, evidence and mean log scales of subsets, from what they are on the knots."""
-    weight, log_evidence = knot_weights(table.rules, values.log_likelihood)
-    axes = tuple(range(len(table.rules)))
-    mean = (weight * values.mean).sum(axis=tuple(a + 1 for a in axes))
-    a, b = values.mean
-    square = (weight * (values.covariance + np.stack([a * a, a * b, b * b]))).sum(axis=tuple(a + 1 for a in axes))
-    covariance = square - np.stack([mean[0] ** 2, mean[0] * mean[1], mean[1] ** 2])
-    knots = [weight.sum(axis=tuple(b for b in axes if b != a)).T @ rule.knot for a, rule in enumerate(table.rules)]
-    return mean.T, covariance[[0, 1, 1, 2]].T.reshape(-1, 2, 2), log_evidence, np.stack(knots, axis=1)
-
-
-def knot_weights(rules: tuple[ScaleRule, ...], log_likelihood: Floats) -> tuple[Floats, Floats]:
-    """Posterior weights of the knots: the integral over all cells, read back through the splines.
+def integrate_nodes(table: NodeTable, values: NodeValues) -> SubsetMoments:
+    """Integrate the scales out of subsets.
 
     Parameters
     ----------
-    rules : tuple of ScaleRule
-    log_likelihood : (n_knot, ..., n) array
+    table : NodeTable
+    values : NodeValues
 
     Returns
     -------
-    weight : (n_knot, ..., n) array
+    SubsetMoments
+    """
+    weight, log_evidence = node_weights(table, values.log_likelihood)
+    a, b = values.mean
+    square = values.covariance + np.stack([a * a, a * b, b * b])
+    mean, square = (np.einsum("slcgn,aslcgn->an", weight, each, optimize=True) for each in (values.mean, square))
+    covariance = square - np.stack([mean[0] ** 2, mean[0] * mean[1], mean[1] ** 2])
+    scales = [np.einsum(f"slcgn,{axis}->n", weight, rule.knot) for axis, rule in zip("slcg", table.rules, strict=True)]
+    log_scales = np.stack(scales[: table.model.scale_count], axis=1)
+    return SubsetMoments(mean.T, covariance[[0, 1, 1, 2]].T.reshape(-1, 2, 2), log_evidence, log_scales)
+
+
+def node_weights(table: NodeTable, log_likelihood: Floats) -> tuple[Floats, Floats]:
+    """Posterior weights of the nodes: the integral over all cells, read back through the splines.
+
+    Parameters
+    ----------
+    table : NodeTable
+    log_likelihood : (n_site_knot, n_local_knot, n_common_knot, n_group_knot, n) array
+
+    Returns
+    -------
+    weight : (n_site_knot, n_local_knot, n_common_knot, n_group_knot, n) array
         Sum 1 over the knots; some are a little negative, as weights of a spline are.
     log_evidence : (n,) array
     """
-    cells = log_likelihood
-    for axis, rule in enumerate(rules):
-        cells = _along(rule.spline, cells, axis)
-    axes = tuple(range(len(rules)))
-    top = cells.max(axis=axes)
-    mass = np.exp(cells - top)
-    for axis, rule in enumerate(rules):
-        mass *= rule.mass.reshape(-1, *(1,) * (mass.ndim - axis - 1))
-    total = mass.sum(axis=axes)
-    for axis, rule in enumerate(rules):
-        mass = _along(rule.spline.T, mass, axis)
-    return mass / total, top + np.log(total)
+    site, local, *others = table.rules
+    # s_local first, at each knot of the others: what is left is smooth in s_site
+    inner, given_local = _over_cells(local, np.moveaxis(log_likelihood, 1, 0))
+    outer, given_site = _over_cells(site, inner)
+    top = outer.max(axis=(0, 1))
+    mass = np.exp(outer - top) * others[0].mass[:, None, None] * others[1].mass[:, None]
+    total = mass.sum(axis=(0, 1))
+    weight = (given_site * (mass / total))[:, None] * np.moveaxis(given_local, 0, 1)
+    return weight, top + np.log(total)
 
 
-def _along(matrix: Floats, values: Floats, axis: int) -> Floats:
-    """Product of a matrix with one axis of an array."""
-    if matrix.shape[0] == matrix.shape[1]:  # the knots are the cells
-        return values
-    before, after = values.shape[:axis], values.shape[axis + 1 :]
-    product = matrix @ values.reshape(*before, values.shape[axis], -1)
-    return np.asarray(product.reshape(*before, len(matrix), *after))
+def _over_cells(rule: ScaleRule, log_density: Floats) -> tuple[Floats, Floats]:
+    """Integrate the first axis (n_knot, ...) out: log of the integral (...), and weights (n_knot, ...), sum 1."""
+    shape = log_density.shape
+    cells = rule.spline @ log_density.reshape(shape[0], -1)
+    top = cells.max(axis=0)
+    mass = np.exp(cells - top) * rule.mass[:, None]
+    total = mass.sum(axis=0)
+    weight = (rule.spline.T @ mass) / total
+    return (top + np.log(total)).reshape(shape[1:]), weight.reshape(shape)

@@ -79,7 +79,7 @@ def scale_rule(prior_scale: float, lowest: float, effects: int, *, narrow: bool 
         # the error of a cubic spline grows with the fourth power of the spacing and with the number of data
         spacing, cell = 0.6 * min(1.0, 40.0 / max(effects, 1)) ** 0.25, min(0.3, 1.3 * sharpest)
     else:
-        spacing, cell = min(0.5, max(0.4, 2.2 * sharpest)), 0.02
+        spacing, cell = min(0.5, max(0.35, 1.8 * sharpest)), 0.02
     knot = np.linspace(low, high, 1 + int(np.ceil((high - low) / spacing)))
     edges = [knot[:1]]
     for left, right in pairwise(knot):

@@ -1,17 +1,64 @@
-"""The network answer for any subset of its sites, all load members pooled, the scales integrated anew for each."""
+"""The network answer for any subset of its sites, all load members pooled, the scales integrated anew for each.
+
+The scales are integrated with the mean fingerprint of the members; how far each member's answer lies from that of the
+mean is computed at the posterior mean of the scales, where it hardly depends on them. Normal scatter is integrated by
+quadrature (:mod:`massfit.posterior.node_terms`). Student scatter and mixtures go by expectation propagation on the same
+nodes (:mod:`massfit.posterior.robust_terms`), and by importance-weighted nodes of their own
+(:mod:`massfit.posterior.importance`) for the few sites whose posterior may have two humps.
+"""
 
 from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
+from massfit.posterior.importance import integrate_scales
 from massfit.posterior.network_model import Choices, inflation, network_model, scale_priors
-from massfit.posterior.node_terms import NodeTable, SubsetMoments, node_table, subset_moments
+from massfit.posterior.node_terms import (
+    BLOCK,
+    NodeTable,
+    NodeValues,
+    SubsetMoments,
+    integrate_nodes,
+    join_moments,
+    node_table,
+    node_values,
+)
 from massfit.posterior.observations import Observations
+from massfit.posterior.regression import LinearModel
+from massfit.posterior.robust_terms import Factors, Points, subset_factors
 from massfit.posterior.sharing import places_of
 
 Floats = NDArray[np.float64]
 Kept = NDArray[np.bool_]
+
+FEW_SITES = 5
+"""Sites up to which a subset with Student scatter or mixtures is integrated by nodes of its own."""
+
+_FEW_DRAWS = 1000  # nodes of each such subset
+_GROUP_LEVELS = 4  # of s_group, at which the effect of Student scatter is computed
+
+
+@dataclass(frozen=True)
+class PreparedNetwork:
+    """A network with or without s_group, ready for its subsets.
+
+    Parameters
+    ----------
+    table : NodeTable
+        Of the mean of the load members.
+    factors : Factors
+        Of the same.
+    member_design : (n_member, n_factor, 2, n_column) array
+        Design of the factors for every load member.
+    plain : bool
+        Whether all is normal: no Student scatter and no mixture.
+    """
+
+    table: NodeTable
+    factors: Factors
+    member_design: Floats
+    plain: bool
 
 
 @dataclass(frozen=True)
@@ -20,24 +67,33 @@ class SubsetTables:
 
     Parameters
     ----------
-    alone : NodeTable
+    alone : PreparedNetwork
         For subsets of which no two places share scatter: there is no s_group then.
-    sharing : NodeTable, optional
+    sharing : PreparedNetwork, optional
         For the others; absent where no subset shares any.
     place : (n_site,) array of int
     label : (n_site,) array of int
         Group of each site, -1 for none; one group for all where scatter falls with distance.
+    observations : Observations
+    admittance : (n_member, n_site) array of complex
+    choices : Choices
+    mixed : tuple of str
+        What the tables were made from.
     """
 
-    alone: NodeTable
-    sharing: NodeTable | None
+    alone: PreparedNetwork
+    sharing: PreparedNetwork | None
     place: NDArray[np.int64]
     label: NDArray[np.int64]
+    observations: Observations
+    admittance: NDArray[np.complex128]
+    choices: Choices
+    mixed: tuple[str, ...]
 
     @property
-    def member_count(self) -> int:
-        """Number of load members."""
-        return len(self.alone.design)
+    def site_count(self) -> int:
+        """Number of sites."""
+        return len(self.place)
 
     def shares(self, kept: Kept) -> Kept:
         """Whether two places of one group are in the subset, (n,) from (n, n_site)."""
@@ -48,14 +104,19 @@ class SubsetTables:
         return found
 
 
-def subset_tables(observations: Observations, admittance: NDArray[np.complex128], choices: Choices) -> SubsetTables:
-    """Prepare a network for its subsets; the scatter is taken as normal, and every site enters by one Gaussian.
+def subset_tables(
+    observations: Observations, admittance: NDArray[np.complex128], choices: Choices, *, mixed: tuple[str, ...] = ()
+) -> SubsetTables:
+    """Prepare a network for its subsets.
 
     Parameters
     ----------
     observations : Observations
     admittance : (n_member, n_site) array of complex
     choices : Choices
+        Student or normal scatter, as they say.
+    mixed : tuple of str
+        Sites that enter by their mixture; the others by its mean and covariance.
 
     Returns
     -------
@@ -66,16 +127,44 @@ def subset_tables(observations: Observations, admittance: NDArray[np.complex128]
     InputError
         A correlation length is asked for and the sites have no positions.
     """
-    own = replace(choices.settings, group_scatter=False)
-    model = network_model(observations, admittance, choices)
-    bare = network_model(observations, admittance, replace(choices, settings=own)) if model.sharing.has_group else model
-    tables = [node_table(each, scale_priors(choices.priors, each.scale_count)) for each in (bare, model)]
+    own = replace(choices, settings=replace(choices.settings, group_scatter=False))
+    alone = _prepared(observations, admittance, own, mixed)
+    shared = network_model(observations, admittance[:1], choices).sharing.has_group
     return SubsetTables(
-        tables[0],
-        tables[1] if model.sharing.has_group else None,
+        alone,
+        _prepared(observations, admittance, choices, mixed) if shared else None,
         places_of(observations),
         _labels(observations, choices.settings.group_scatter),
+        observations,
+        admittance,
+        choices,
+        mixed,
     )
+
+
+def _prepared(
+    observations: Observations, admittance: NDArray[np.complex128], choices: Choices, mixed: tuple[str, ...]
+) -> PreparedNetwork:
+    mean = admittance.mean(axis=0)[None]
+    extra = _extra(network_model(observations, mean, choices, mixed=mixed), choices)
+    tables = []
+    for own in (mean, *admittance[:, None]):
+        model = network_model(observations, own, choices)
+        tables.append(node_table(model, scale_priors(choices.priors, model.scale_count), extra=extra))
+    factors = [subset_factors(table, observations, mixed) for table in tables]
+    designs = np.array([each.design for each in factors[1:]])
+    return PreparedNetwork(tables[0], factors[0], designs, not (mixed or tables[0].model.student))
+
+
+def _extra(model: LinearModel, choices: Choices) -> Floats:
+    """Variance (n_place,) of each place's scatter beyond s_site^2, Pa2, as the whole network sees it."""
+    if not model.student:
+        return np.zeros(model.place_count)
+    rng = np.random.default_rng(choices.settings.seed)
+    route = integrate_scales(model, scale_priors(choices.priors, model.scale_count), rng=rng, draws=_FEW_DRAWS)
+    square = np.exp(2.0 * route.log_scales[:, :1])
+    whole, usual = 1.0 / (route.weight @ (1.0 / (square * route.stretch))), 1.0 / (route.weight @ (1.0 / square))
+    return np.maximum(whole - usual, 0.0)
 
 
 def _labels(observations: Observations, group_scatter: bool | float) -> NDArray[np.int64]:
@@ -104,7 +193,8 @@ def subset_posteriors(tables: SubsetTables, kept: Kept) -> SubsetMoments:
 
     Notes
     -----
-    Equals the answer of a network that never had the other sites, under normal site scatter.
+    Equals the answer of a network that never had the other sites: exactly under normal scatter but for the quadrature,
+    to the error of expectation propagation otherwise (:mod:`massfit.posterior.robust_terms`).
 
     Examples
     --------
@@ -121,27 +211,73 @@ def subset_posteriors(tables: SubsetTables, kept: Kept) -> SubsetMoments:
     kept = np.asarray(kept, dtype=bool)
     shares = tables.shares(kept) if tables.sharing is not None else np.zeros(len(kept), dtype=bool)
     found = [
-        (np.flatnonzero(chosen), _pooled(table, kept[chosen]))
+        (np.flatnonzero(chosen), _pooled(tables, table, kept[chosen]))
         for chosen, table in ((~shares, tables.alone), (shares, tables.sharing))
         if table is not None and chosen.any()
     ]
-    order = np.argsort(np.concatenate([index for index, _ in found]))
+    joined = join_moments([moments for _, moments in found])
+    return joined.take(np.argsort(np.concatenate([index for index, _ in found])))
+
+
+def _pooled(tables: SubsetTables, network: PreparedNetwork, kept: Kept) -> SubsetMoments:
+    blocks = np.split(kept, range(BLOCK, len(kept), BLOCK))
+    return join_moments([_with_members(network, block, _middle(tables, network, block)) for block in blocks])
+
+
+def _middle(tables: SubsetTables, network: PreparedNetwork, kept: Kept) -> SubsetMoments:
+    """Answer a block of subsets with the mean fingerprint."""
+    values = node_values(network.table, kept)
+    found = integrate_nodes(network.table, values)
+    if network.plain:
+        return found
+    found = integrate_nodes(network.table, _robust(network, kept.astype(float), values, found.log_scales))
+    count = kept.sum(axis=1)
+    few = np.flatnonzero((count > 0) & (count <= FEW_SITES))
+    exact = [_own_nodes(tables, kept[i], found.log_scales.shape[1]) for i in few]
+    order = np.arange(len(kept))
+    order[few] = len(kept) + np.arange(len(few))
+    return join_moments([found, *exact]).take(order)
+
+
+def _own_nodes(tables: SubsetTables, kept: Kept, scale_count: int) -> SubsetMoments:
+    """Answer one subset by importance-weighted nodes of its own."""
+    seen, mean = tables.observations.select(kept), tables.admittance.mean(axis=0)[None, kept]
+    mixed = [site for site in seen.sites if site in tables.mixed]
+    model = network_model(seen, mean, tables.choices, mixed=mixed)
+    prior_scales = scale_priors(tables.choices.priors, model.scale_count)
+    rng = np.random.default_rng(tables.choices.settings.seed)
+    route = integrate_scales(model, prior_scales, rng=rng, draws=_FEW_DRAWS)
+    log_scales = (route.weight @ route.log_scales)[None, :scale_count]
+    return SubsetMoments(route.mean[None], route.covariance[None], np.array([route.log_evidence]), log_scales)
+
+
+def _with_members(network: PreparedNetwork, kept: Kept, found: SubsetMoments) -> SubsetMoments:
+    """Add how far the load members lie apart, at the posterior mean of the scales."""
+    points = Points(network.table, network.factors, kept.astype(float), found.log_scales)
+    fitted = points.normal_factors() if network.plain else points.fitted_factors()
+    shift = points.member_means(network.member_design, *fitted) - points.answers(*fitted, normal=True).mean
+    away = shift - shift.mean(axis=0)
+    spread = inflation(len(shift)) * np.einsum("kni,knj->nij", away, away) / len(shift)
     return SubsetMoments(
-        *(
-            np.concatenate([getattr(moments, name) for _, moments in found])[order]
-            for name in ("mean", "covariance", "log_evidence", "log_scales")
-        )
+        found.mean + shift.mean(axis=0), found.covariance + spread, found.log_evidence, found.log_scales[:, :3]
     )
 
 
-def _pooled(table: NodeTable, kept: Kept) -> SubsetMoments:
-    members = [subset_moments(table, kept, member=k) for k in range(len(table.design))]
-    means = np.array([each.mean for each in members])
-    shift = means - means.mean(axis=0)
-    spread = inflation(len(members)) * np.einsum("kni,knj->nij", shift, shift) / len(members)
-    return SubsetMoments(
-        means.mean(axis=0),
-        np.mean([each.covariance for each in members], axis=0) + spread,
-        np.mean([each.log_evidence for each in members], axis=0),
-        np.mean([each.log_scales[:, :3] for each in members], axis=0),
-    )
+def _robust(network: PreparedNetwork, inside: Floats, values: NodeValues, log_scales: Floats) -> NodeValues:
+    """Add to the nodes what Student scatter and mixtures change, by s_site and s_group."""
+    site, _, _, group = (rule.knot for rule in network.table.rules)
+    levels = group[np.unique(np.linspace(0, len(group) - 1, _GROUP_LEVELS).round().astype(int))]
+    at = np.tile(log_scales, (len(site), len(levels), 1, 1))
+    at[..., 0] = site[:, None, None]
+    if len(group) > 1:
+        at[..., 3] = levels[:, None]
+    count = len(site) * len(levels)
+    points = Points(network.table, network.factors, np.tile(inside, (count, 1)), at.reshape(-1, at.shape[3]))
+    normal = points.answers(*points.normal_factors(), normal=True)
+    robust = points.answers(*points.fitted_factors(), normal=False)
+    upper = (robust.covariance - normal.covariance)[:, [0, 0, 1], [0, 1, 1]]
+    rows = np.column_stack([robust.log_evidence - normal.log_evidence, robust.mean - normal.mean, upper])
+    # straight lines along the logarithm of s_group
+    lines = np.array([np.interp(group, levels, row) for row in np.eye(len(levels))])
+    change = np.einsum("slnq,lg->qsgn", rows.reshape(len(site), len(levels), len(inside), 6), lines)[:, :, None, None]
+    return NodeValues(values.log_likelihood + change[0], values.mean + change[1:3], values.covariance + change[3:])

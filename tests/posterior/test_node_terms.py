@@ -6,7 +6,7 @@ import pytest
 from massfit.posterior.importance import integrate_scales
 from massfit.posterior.likelihood import collapse
 from massfit.posterior.network_model import Choices, network_model, pooled_moments, scale_priors
-from massfit.posterior.node_terms import knot_weights, node_table, node_values
+from massfit.posterior.node_terms import node_table, node_values, node_weights
 from massfit.posterior.subsets import subset_posteriors, subset_tables
 from massfit.settings import PosteriorSettings, Priors
 
@@ -74,10 +74,10 @@ def test_the_knots_hold_the_exact_density_and_moments(invent, dense_twin):
     table = node_table(model, scale_priors(choices.priors, model.scale_count))
     values = node_values(table, np.ones((1, 6), dtype=bool))
     twin = dense_twin(network, group_scatter=True)
-    knots = np.stack(np.meshgrid(*(rule.knot for rule in table.rules), indexing="ij"), axis=-1).reshape(-1, 4)
-    chosen = np.flatnonzero(knots.max(axis=1) < np.log(300.0))[::97]
-    mean, covariance = twin.moments(knots[chosen])
-    np.testing.assert_allclose(values.log_likelihood.ravel()[chosen], twin.log_likelihood(knots[chosen]), atol=1e-6)
+    nodes = np.stack(np.meshgrid(*(rule.knot for rule in table.rules), indexing="ij"), axis=-1).reshape(-1, 4)
+    chosen = np.flatnonzero(nodes.max(axis=1) < np.log(300.0))[::97]
+    mean, covariance = twin.moments(nodes[chosen])
+    np.testing.assert_allclose(values.log_likelihood.ravel()[chosen], twin.log_likelihood(nodes[chosen]), atol=1e-6)
     np.testing.assert_allclose(values.mean.reshape(2, -1).T[chosen], mean, atol=1e-6 * 500)
     upper = covariance[:, [0, 0, 1], [0, 1, 1]]
     np.testing.assert_allclose(values.covariance.reshape(3, -1).T[chosen], upper, atol=1e-6 * 500**2)
@@ -92,13 +92,13 @@ def test_without_any_site_there_is_the_prior(invent):
     assert nothing.log_evidence[0] == pytest.approx(0.0, abs=1e-9)
 
 
-def test_the_weights_of_the_knots_sum_to_one(invent):
-    network = invent(sites=5)
+def test_the_weights_of_the_nodes_sum_to_one(invent):
+    network = invent(sites=5, placed=True)
     choices = Choices(SETTINGS, Priors(), 0.04)
     model = network_model(network.observations, network.admittance, choices)
-    table = node_table(model, scale_priors(choices.priors, 3))
-    weight, _ = knot_weights(table.rules, node_values(table, some_subsets(5)).log_likelihood)
-    np.testing.assert_allclose(weight.sum(axis=(0, 1, 2)), 1.0, rtol=1e-12)
+    table = node_table(model, scale_priors(choices.priors, 4))
+    weight, _ = node_weights(table, node_values(table, some_subsets(5)).log_likelihood)
+    np.testing.assert_allclose(weight.sum(axis=(0, 1, 2, 3)), 1.0, rtol=1e-12)
 
 
 def test_a_mixture_is_refused(invent, two_parts):
