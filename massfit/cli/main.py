@@ -258,6 +258,39 @@ def screen(fields: tuple[str, ...], output: Path, quiet: bool, **options: Any) -
 
 
 @main.command()
+@click.argument("results", type=_FOLDER)
+@click.option("--network", type=_FOLDER, help="Network file of the results  [default: beside RESULTS]")
+@click.option("--years", type=click.FloatRange(0.5, 10.0), default=2.0, show_default=True, help="Planned record.")
+@click.option("--noise", type=click.FloatRange(0.01, 100.0), metavar="HPA", help="Daily noise of the next recorder.")
+@click.option("--quietness", type=_FOLDER, metavar="FILE", help="screening.nc of massfit screen.")
+@click.option("--depths", type=_FOLDER, metavar="FILE", help="NetCDF of depths of the sea floor.")
+@click.option("--candidates", type=_FOLDER, metavar="FILE", help="CSV: name,latitude,longitude[,depth_m,noise_hpa].")
+@click.option("--target-width", type=click.FloatRange(0.001, 10.0), metavar="HPA", help="Error to be reached.")
+@click.option("--outside", is_flag=True, help="Allow paths outside the network's folder.")
+@click.option("--quiet", is_flag=True, help="Print nothing but errors.")
+def siting(
+    results: Path, network: Path | None, years: float, noise: float | None, quietness: Path | None,
+    depths: Path | None, candidates: Path | None, target_width: float | None, *, outside: bool, quiet: bool,
+) -> None:  # fmt: skip
+    """Say where the next recorder belongs and how long it must stay.
+
+    Maps what one recorder more would do to the error of finished RESULTS, lists
+    the best places and those asked about, years of record that are needed, and
+    what becomes of the answer as recorders fail or are redeployed. Adds
+    siting.nc, figures and a section of the page to RESULTS, and prints tables.
+    """
+    with refusing_politely(), shown_progress(quiet=quiet) as progress:
+        from massfit.pipeline.siting import SitingFiles, siting_to_folder
+
+        files = SitingFiles(years, noise, target_width, candidates, quietness, depths)
+        run = siting_to_folder(results, network, files, outside=outside, progress=progress)
+    from massfit.report.words.siting_plan_text import siting_plan_text
+
+    if not quiet:
+        click.echo(f"{siting_plan_text(run.datasets)}\n\nResults in {results}: siting.nc, report.html")
+
+
+@main.command()
 @click.argument("first", type=_FOLDER)
 @click.argument("second", type=_FOLDER)
 @click.option("--json", "as_json", is_flag=True, help="Print JSON.")

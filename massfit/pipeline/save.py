@@ -82,7 +82,7 @@ def estimate_to_folder(
             run = with_comparison(run, inputs, gravity)
             times("satellite comparison", 1, 1)
         times("report", 0, 1)
-        _save(run, partial, times=times)
+        save_run(run, partial, times=times)
         times("report", 1, 1)
     return dataclasses.replace(result, summary=run.summary)
 
@@ -119,7 +119,7 @@ def save_results(result: Estimate, folder: Path, *, overwrite: bool = False) -> 
     check_output(folder, overwrite=overwrite)
     with claimed(folder) as partial:
         check_output(folder, overwrite=overwrite)
-        _save(finished_run(result, command="massfit.estimate(network) in Python"), partial)
+        save_run(finished_run(result, command="massfit.estimate(network) in Python"), partial)
 
 
 def report_to_folder(folder: Path) -> FinishedRun:
@@ -191,7 +191,7 @@ def compare_to_folder(
         progress("satellite comparison", 0, 1)
         run = with_comparison(run, inputs, satellites)
         progress("satellite comparison", 1, 1)
-        _save(run, partial)
+        save_run(run, partial)
     return run
 
 
@@ -206,7 +206,17 @@ def _satellites(network: Path, gravity: Path | None, outside: bool) -> GravityIn
     return found
 
 
-def _save(run: FinishedRun, partial: PartialFolder, *, times: StageTimes | None = None) -> None:
+def save_run(run: FinishedRun, partial: PartialFolder, *, times: StageTimes | None = None) -> None:
+    """Draw a run and write its results folder.
+
+    Parameters
+    ----------
+    run : FinishedRun
+    partial : PartialFolder
+        Of the results folder.
+    times : StageTimes, optional
+        What each stage has taken so far.
+    """
     pictures = _pictures(run)
     page = report_page(run, pictures)
     if times is not None:

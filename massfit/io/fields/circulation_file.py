@@ -47,7 +47,12 @@ def read_circulation(
     data = read_pressure(path, _SHAPES, source=source, variable=entry.variable)
     data = _by_site(data, sites, source) if "site" in data.dims else _by_cell(data, source)
     return CirculationModel(
-        entry.name, data, ocean_mean, entry.air_pressure, entry.assimilates_satellite_gravity, entry.partial,
+        entry.name,
+        data,
+        ocean_mean,
+        entry.air_pressure,
+        entry.assimilates_satellite_gravity,
+        entry.partial,
         entry.reference,
     )
 
