@@ -33,6 +33,8 @@ def provenance(network: Network, *, processes: int) -> dict[str, Any]:
     made = made_by(processes=processes)
     return {
         **made,
+        "data": stated_data(network),
+        "series_of_means": series_of_means(network),
         "transform_backend": TRANSFORM_BACKEND,
         "polar_motion": f"astropy-iers-data {made['versions']['astropy-iers-data']}",
         "seed": network.settings.posterior.seed,
@@ -57,8 +59,6 @@ def made_by(*, processes: int) -> dict[str, Any]:
         "machine": f"{platform.system()} {platform.machine()}",
         "versions": {name: metadata.version(name) for name in _LIBRARIES},
         "processes": processes,
-        "data": stated_data(network),
-        "series_of_means": series_of_means(network),
         "threads": [
             {"library": pool["internal_api"], "version": str(pool["version"]), "threads": pool["num_threads"]}
             for pool in threadpool_info()
