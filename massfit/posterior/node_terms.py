@@ -9,8 +9,7 @@ that of :mod:`massfit.posterior.likelihood`, in other coordinates of the same co
 vectors, the models' common errors by their mean, which takes the air-pressure correction along, and their contrasts.
 """
 
-from collections.abc import Sequence
-from dataclasses import dataclass, fields
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
@@ -24,9 +23,6 @@ Floats = NDArray[np.float64]
 Kept = NDArray[np.bool_]
 
 _FLAT = 0.5  # largest sum of scale^2 / variance at the first knot: below, no density of data depends on the scale
-
-BLOCK = 64
-"""Subsets at a time: their matrices stay in the cache of the processor."""
 
 
 @dataclass(frozen=True)
@@ -131,70 +127,6 @@ def _rules(model: LinearModel, prior_scales: Floats) -> tuple[ScaleRule, ...]:
     ]
     nothing = ScaleRule(np.zeros(1), np.ones((1, 1)), np.ones(1))
     return tuple([*rules, nothing][:4])
-
-
-@dataclass(frozen=True)
-class SubsetMoments:
-    """Posterior of A for each of n subsets, the scales integrated out.
-
-    Parameters
-    ----------
-    mean : (n, 2) array
-        Pa.
-    covariance : (n, 2, 2) array
-        Pa2.
-    log_evidence : (n,) array
-        Logarithm of the density of the subset's phasors.
-    log_scales : (n, n_scale) array
-        Posterior means of the logarithms of the scales in Pa.
-    """
-
-    mean: Floats
-    covariance: Floats
-    log_evidence: Floats
-    log_scales: Floats
-
-    def take(self, chosen: NDArray[np.int64]) -> "SubsetMoments":
-        """Subsets of the indices given."""
-        return SubsetMoments(*(getattr(self, f.name)[chosen] for f in fields(self)))
-
-    @property
-    def sd(self) -> Floats:
-        """(n, 2), Pa."""
-        return np.sqrt(np.diagonal(self.covariance, axis1=1, axis2=2))
-
-    @property
-    def width(self) -> Floats:
-        """(n,), Pa: root of the mean variance of the two components."""
-        return np.asarray(np.sqrt(0.5 * np.trace(self.covariance, axis1=1, axis2=2)))
-
-
-def join_moments(blocks: Sequence[SubsetMoments]) -> SubsetMoments:
-    """Put the subsets of several blocks one after the other."""
-    return SubsetMoments(*(np.concatenate([getattr(block, f.name) for block in blocks]) for f in fields(SubsetMoments)))
-
-
-def subset_moments(table: NodeTable, kept: Kept, *, member: int = 0) -> SubsetMoments:
-    """Posterior of every subset, the scales integrated out anew for each.
-
-    Parameters
-    ----------
-    table : NodeTable
-    kept : (n, n_site) array of bool
-        Sites of each subset, in the order of the network.
-    member : int
-        Load member.
-
-    Returns
-    -------
-    SubsetMoments
-    """
-    kept = np.asarray(kept, dtype=bool)
-    blocks = [
-        integrate_nodes(table, node_values(table, kept[start : start + BLOCK], member=member))
-        for start in range(0, len(kept), BLOCK)
-    ]
-    return join_moments(blocks)
 
 
 @dataclass(frozen=True)
@@ -347,61 +279,3 @@ def _eliminate(upper: Floats, prior: Floats, density: Floats) -> tuple[Floats, F
             upper[i, i:] -= (upper[k, i] / pivot) * upper[k, i:]
         density = density - 0.5 * np.log(pivot / own)
     return upper[len(prior) :, len(prior) :], density
-
-
-def integrate_nodes(table: NodeTable, values: NodeValues) -> SubsetMoments:
-    """Integrate the scales out of subsets.
-
-    Parameters
-    ----------
-    table : NodeTable
-    values : NodeValues
-
-    Returns
-    -------
-    SubsetMoments
-    """
-    weight, log_evidence = node_weights(table, values.log_likelihood)
-    a, b = values.mean
-    square = values.covariance + np.stack([a * a, a * b, b * b])
-    mean, square = (np.einsum("slcgn,aslcgn->an", weight, each, optimize=True) for each in (values.mean, square))
-    covariance = square - np.stack([mean[0] ** 2, mean[0] * mean[1], mean[1] ** 2])
-    scales = [np.einsum(f"slcgn,{axis}->n", weight, rule.knot) for axis, rule in zip("slcg", table.rules, strict=True)]
-    log_scales = np.stack(scales[: table.model.scale_count], axis=1)
-    return SubsetMoments(mean.T, covariance[[0, 1, 1, 2]].T.reshape(-1, 2, 2), log_evidence, log_scales)
-
-
-def node_weights(table: NodeTable, log_likelihood: Floats) -> tuple[Floats, Floats]:
-    """Posterior weights of the nodes: the integral over all cells, read back through the splines.
-
-    Parameters
-    ----------
-    table : NodeTable
-    log_likelihood : (n_site_knot, n_local_knot, n_common_knot, n_group_knot, n) array
-
-    Returns
-    -------
-    weight : (n_site_knot, n_local_knot, n_common_knot, n_group_knot, n) array
-        Sum 1 over the knots; some are a little negative, as weights of a spline are.
-    log_evidence : (n,) array
-    """
-    site, local, *others = table.rules
-    # s_local first, at each knot of the others: what is left is smooth in s_site
-    inner, given_local = _over_cells(local, np.moveaxis(log_likelihood, 1, 0))
-    outer, given_site = _over_cells(site, inner)
-    top = outer.max(axis=(0, 1))
-    mass = np.exp(outer - top) * others[0].mass[:, None, None] * others[1].mass[:, None]
-    total = mass.sum(axis=(0, 1))
-    weight = (given_site * (mass / total))[:, None] * np.moveaxis(given_local, 0, 1)
-    return weight, top + np.log(total)
-
-
-def _over_cells(rule: ScaleRule, log_density: Floats) -> tuple[Floats, Floats]:
-    """Integrate the first axis (n_knot, ...) out: log of the integral (...), and weights (n_knot, ...), sum 1."""
-    shape = log_density.shape
-    cells = rule.spline @ log_density.reshape(shape[0], -1)
-    top = cells.max(axis=0)
-    mass = np.exp(cells - top) * rule.mass[:, None]
-    total = mass.sum(axis=0)
-    weight = (rule.spline.T @ mass) / total
-    return (top + np.log(total)).reshape(shape[1:]), weight.reshape(shape)

@@ -14,16 +14,8 @@ from numpy.typing import NDArray
 
 from massfit.posterior.importance import integrate_scales
 from massfit.posterior.network_model import Choices, inflation, network_model, scale_priors
-from massfit.posterior.node_terms import (
-    BLOCK,
-    NodeTable,
-    NodeValues,
-    SubsetMoments,
-    integrate_nodes,
-    join_moments,
-    node_table,
-    node_values,
-)
+from massfit.posterior.node_integral import BLOCK, SubsetMoments, integrate_nodes, join_moments
+from massfit.posterior.node_terms import NodeTable, NodeValues, node_table, node_values
 from massfit.posterior.observations import Observations
 from massfit.posterior.regression import LinearModel
 from massfit.posterior.robust_terms import Factors, Points, subset_factors

@@ -6,7 +6,8 @@ import pytest
 from massfit.posterior.importance import integrate_scales
 from massfit.posterior.likelihood import collapse
 from massfit.posterior.network_model import Choices, network_model, pooled_moments, scale_priors
-from massfit.posterior.node_terms import node_table, node_values, node_weights
+from massfit.posterior.node_integral import node_weights
+from massfit.posterior.node_terms import node_table, node_values
 from massfit.posterior.subsets import subset_posteriors, subset_tables
 from massfit.settings import PosteriorSettings, Priors
 
