@@ -1,13 +1,23 @@
 """From satellite gravity to mass."""
 
+import itertools
+
 import numpy as np
+from gravity.invented_earth import make_earth
 from scipy.special import eval_legendre
 
-from massfit.constants import ANNUAL_RATE, EARTH_RADIUS, TROPICAL_YEAR_DAYS
+from massfit.constants import ANNUAL_RATE, EARTH_RADIUS, PASCAL_PER_HPA, TROPICAL_YEAR_DAYS
 from massfit.earth.love import love_numbers
-from massfit.gravity.annual import average_over
+from massfit.gravity.annual import alias_leakage, average_over
+from massfit.gravity.compare import GEOCENTRE_ITRF2020, implied_geocentre
+from massfit.gravity.field import Span
+from massfit.gravity.inputs import GravityInputs, Solution
 from massfit.gravity.kernel import gaussian_weights
 from massfit.gravity.mass import mass_per_coefficient
+from massfit.gravity.predicted import predicted_mass
+from massfit.gravity.satellite import Context, satellite_mean
+from massfit.phasor import peak_days
+from massfit.settings import Gravity
 from validation.registry import Group, Row, vanishing
 
 AREA = "Satellite gravity"
@@ -51,6 +61,71 @@ def calendar() -> list[Row]:
     return [Row("annual line in a mean over a month", 0.98862, abs(mean), 5e-6, ".5f")]
 
 
+def invented_earth() -> list[Row]:
+    earth = make_earth(drop_months=(7, 8, *range(30, 41)))
+    members = [each for each in earth.loads if each.name != "nominal"]  # the truth is none of them
+    predicted = predicted_mass(earth.operator, members, water_vapour=earth.vapour, max_degree=40)
+    context = Context(earth.ocean, earth.love, predicted, earth.vapour, None, 2015)
+    true_hpa, true_day = abs(earth.answer) / PASCAL_PER_HPA, float(peak_days(earth.answer))
+    rows = []
+    for buffer_km in (0.0, 300.0):
+        settings = Gravity(fields=("invented",), max_degree=40, buffer_km=buffer_km)
+        given = GravityInputs(
+            settings, (Solution("invented", earth.fields),), degree_one=earth.degree_one, atmosphere=earth.atmosphere
+        )
+        found = satellite_mean(given, given.solutions[0], context).phasor
+        name = f"{buffer_km:g} km from land"
+        rows.append(Row(f"hPa, {name}", true_hpa, abs(found) / PASCAL_PER_HPA, 0.01 * true_hpa))
+        # one per cent of the amplitude across the phasor
+        rows.append(Row(f"peak day, {name}", true_day, float(peak_days(found)), 0.01 * 365.2422 / (2 * np.pi), ".2f"))
+    return rows
+
+
+def geocentre() -> list[Row]:
+    earth = make_earth()
+    loads = [each for each in earth.loads if each.name == "nominal"]
+    predicted = predicted_mass(earth.operator, loads, water_vapour=earth.vapour, max_degree=2)
+    context = Context(earth.ocean, earth.love, predicted, earth.vapour, None, 2015)
+    found = implied_geocentre(earth.answer, context)
+    rows = []
+    for axis, (amplitude, _, phase) in GEOCENTRE_ITRF2020.items():
+        water, frame = 1000.0 * found[axis], amplitude * np.exp(1j * np.radians(phase))
+        days = [float(peak_days(each)) for each in (water, frame)]
+        name = f"{axis}: {abs(water):.2f} mm, day {days[0]:.0f}, against {amplitude:.2f} mm, day {days[1]:.0f}"
+        rows.append(Row(name, 0.0, float(abs(water - frame) / abs(water + frame)), 1.0, ".2f"))
+    return rows
+
+
+def leakage() -> list[Row]:
+    rows = []
+    for years, day in ((2, 161.0), (5, 161.0), (15, 161.0), (5, 322.1)):
+        edges = np.arange(np.datetime64("2003-01", "M"), np.datetime64("2003-01", "M") + 12 * years + 1)
+        spans = [
+            Span(start, end) for start, end in itertools.pairwise(edges.astype("datetime64[s]"))
+        ]  # fmt: skip
+        name = f"of {day:g} d in {years} years"
+        rows.append(Row(name, _worst(spans, day), alias_leakage(spans, day), 2e-4))
+    return rows
+
+
+def _worst(spans: list[Span], period: float) -> float:
+    """Days summed, least squares, every phase tried."""
+    origin = spans[0].start
+    days = [
+        (np.arange(s.start, s.end, np.timedelta64(86400, "s")) - origin) / np.timedelta64(86400, "s") for s in spans
+    ]
+
+    def monthly(rate: float, shift: float) -> np.ndarray:
+        return np.array([np.cos(rate * (each + 0.5) - shift).mean() for each in days])
+
+    year = 2 * np.pi / TROPICAL_YEAR_DAYS
+    columns = [monthly(rate, shift) for rate in (year, 2 * year) for shift in (0.0, np.pi / 2)]
+    design = np.column_stack([*columns, np.ones(len(days)), np.arange(len(days))])
+    lines = np.column_stack([monthly(2 * np.pi / period, shift) for shift in np.radians(np.arange(0.0, 180.0, 2.0))])
+    fitted = np.linalg.lstsq(design, lines, rcond=None)[0][:2]
+    return float(np.hypot(*fitted).max())
+
+
 GROUPS = (
     Group("Degree 1", "closed form", "a rho_e (2n + 1) / (3 (1 + k'_n)), Wahr et al. (1998), eq. 14, with 5517 kg m⁻³",
           "three decimals are written", degree_one),
@@ -59,4 +134,15 @@ GROUPS = (
     Group("Gaussian smoothing", "slow twin", "Jekeli (1981): the kernel against Legendre polynomials by quadrature",
           "rounding of sums of exponentials", smoothing),
     Group("Means over months", "closed form", "sin(x) / x with x = pi / 12", "five decimals are written", calendar),
+    Group("Leakage of a line that is not fitted", "slow twin",
+          "largest share of a line that lands in the annual cycle of calendar months: days summed, every phase tried",
+          "phases 2 degrees apart", leakage),
+    Group("An invented Earth that keeps its mass", "known truth",
+          "water, air and circulation written as months with gaps, and a product of the atmosphere; the load members "
+          "do not hold the truth", "1 % of the amplitude", invented_earth),
+    Group("Geocentre", "published",
+          "annual motion of the centre of figure in the centre of mass: nominal water alone against ITRF2020 (Altamimi "
+          "et al. 2023), as their distance over that with the sign turned",
+          "1 where the two are unrelated, more where a sign is wrong. No closer: ITRF2020 holds the loads of air and "
+          "circulation too, a good part of Y", geocentre),
 )  # fmt: skip

@@ -5,13 +5,16 @@ order they come. To add a check, write a function that returns rows and put it i
 """
 
 import csv
+import os
 from collections.abc import Callable
 from dataclasses import dataclass
 from importlib import import_module
 from pathlib import Path
 
-SECTIONS = ("earth", "sea_level", "daily_means", "tides", "annual", "gravity", "air_and_units")
-"""Modules of the sections, in the order of the page."""
+SECTIONS = ("earth", "sea_level", "daily_means", "tides", "annual", "gravity", "air_and_units", "real_gravity")
+"""Modules of the sections, in the order of the page; one that defines `NEEDS_OPEN_DATA` is computed where those are."""
+
+OPEN_DATA = os.environ.get("MASSFIT_OPEN_DATA")
 
 REFERENCE = Path(__file__).parents[1] / "reference"
 
@@ -53,12 +56,17 @@ class Section:
     name: str
     title: str
     groups: tuple[Group, ...]
+    needs_open_data: bool = False
 
 
 def sections() -> list[Section]:
-    """Every section of the page."""
+    """Every section of the page that can be computed."""
     modules = [(name, import_module(f"validation.{name}")) for name in SECTIONS]
-    return [Section(name, module.AREA, tuple(module.GROUPS)) for name, module in modules]
+    every = [
+        Section(name, module.AREA, tuple(module.GROUPS), getattr(module, "NEEDS_OPEN_DATA", False))
+        for name, module in modules
+    ]
+    return [section for section in every if OPEN_DATA or not section.needs_open_data]
 
 
 def vanishing(quantity: str, difference: float, tolerance: float) -> Row:

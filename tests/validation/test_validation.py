@@ -6,8 +6,8 @@ from pathlib import Path
 
 import numpy as np
 
-from validation.page import compute, page
-from validation.registry import Group, Row, Section, sections, vanishing
+from validation.page import compute, page, split_off
+from validation.registry import OPEN_DATA, Group, Row, Section, sections, vanishing
 
 PAGE = Path(__file__).parents[2] / "docs" / "validation.md"
 NUMBER = re.compile(r"[-+]?\d+(?:\.\d+)?(?:e[-+]\d+)?")
@@ -34,7 +34,9 @@ def test_every_number_is_within_what_is_allowed_and_the_page_shows_it() -> None:
     found = compute()
     failed = [row for _, groups in found for _, rows in groups for row in rows if not row.passed]
     assert failed == []
-    assert differing(PAGE.read_text("utf-8").splitlines(), page(found).splitlines()) == []
+    written = PAGE.read_text("utf-8")
+    written = written if OPEN_DATA else split_off(written)[0]
+    assert differing(written.rstrip().splitlines(), page(found).rstrip().splitlines()) == []
 
 
 def test_a_wrong_expected_value_is_marked_as_failed() -> None:

@@ -3,6 +3,9 @@
 from collections.abc import Mapping
 from typing import Any
 
+NOTICED = 2.45
+"""Standard deviations at which a difference along one direction has a probability of 0.05: sqrt(-2 ln 0.05)."""
+
 LITTLE_LEARNED = 0.5
 """Below this part of the variance a likeness of years is called assumed."""
 
@@ -38,7 +41,9 @@ def verdict(comparison: Mapping[str, Any]) -> str:
         f"Together: {joint['amplitude_hpa']:.2f} ± {joint['amplitude_sd_hpa']:.2f} hPa, peak {joint['peak_date']} "
         f"± {joint['peak_day_sd']:.0f} days."
     )
-    return f"Network and satellites agree within their errors: {size}. {together}"
+    least = NOTICED * apart["amplitude_sd_hpa"]
+    unseen = f"At these errors a difference of amplitude below about {least:.2f} hPa would pass for none."
+    return f"Network and satellites agree within their errors: {size}. {unseen} {together}"
 
 
 def stated(each: Mapping[str, Any]) -> str:
@@ -94,8 +99,10 @@ def comparison_text(comparison: Mapping[str, Any]) -> str:
     for solution in comparison["solutions"]:
         lines += ["", f"Solution {solution['name']}", *(f"  {action}" for action in solution["actions"])]
     width = max(len(row["name"]) for row in comparison["choices"])
-    head = f"{'What each choice does':<{width + 2}}  {'as the kernel sees it':<21}  whole ocean"
-    lines += ["", head, *(f"  {row['name']:<{width}}  {_choice(row)}" for row in comparison["choices"])]
+    name = comparison["solutions"][0]["name"]
+    head = f"{'':<{width + 2}}  {'as the kernel sees it':<21}  whole ocean"
+    lines += ["", f"What each choice does to {name}", head]
+    lines += [f"  {row['name']:<{width}}  {_choice(row)}" for row in comparison["choices"]]
     lines += ["", *(f"warning: {text}" for text in comparison["warnings"])]
     return "\n".join(lines).rstrip()
 
