@@ -34,18 +34,22 @@ def main() -> None:
 @click.option("--outside", is_flag=True, help="Allow paths outside the network's folder.")
 @click.option("--what-if", is_flag=True, help="Also answer under every other choice (minutes).")
 @click.option("--calibrate", type=click.IntRange(1, 10_000), metavar="N", help="Also analyse N surrogates (try 20).")
+@click.option("--scenario", type=_FOLDER, metavar="FILE", help="Answer a scenario of the page from finished results.")
 @click.option("--quiet", is_flag=True, help="Print nothing but errors.")
 @click.option("--json", "as_json", is_flag=True, help="Print estimate.json instead of the summary.")
 def estimate(
     network: Path, output: Path | None, *, overwrite: bool, outside: bool, what_if: bool, calibrate: int | None,
-    quiet: bool, as_json: bool,
+    scenario: Path | None, quiet: bool, as_json: bool,
 ) -> None:  # fmt: skip
     """Do the main job: from raw records to the network posterior.
 
     NETWORK is a network.toml or the folder that holds one. Writes a results
     folder with estimate.json, NetCDF files, figures and report.html, and prints
-    a summary.
+    a summary. With --scenario nothing is computed anew or written: NETWORK may
+    be a results folder.
     """
+    if scenario is not None:
+        return _answer_scenario(network, output, scenario, as_json)
     with refusing_politely(), shown_progress(quiet=quiet) as progress:
         from massfit.pipeline.folders import output_folder
         from massfit.pipeline.save import estimate_to_folder
@@ -62,6 +66,16 @@ def estimate(
     elif not quiet:
         click.echo(f"{summary_text(result.summary)}\n\nResults in {folder}: start with report.html")
     sys.exit(0 if result.summary["convergence"]["converged"] else NOT_TRUSTWORTHY)
+
+
+def _answer_scenario(place: Path, output: Path | None, scenario: Path, as_json: bool) -> None:
+    with refusing_politely():
+        from massfit.pipeline.scenario import answer_scenario_file
+
+        answer = answer_scenario_file(place, output, scenario)
+    from massfit.report.words.scenario_text import scenario_text
+
+    click.echo(json.dumps(answer, indent=2) if as_json else scenario_text(answer))
 
 
 @main.command()

@@ -27,7 +27,7 @@ def filled(template: str, *, scripts: tuple[str, ...] = ("page.js",), **content:
     str
         HTML with everything inside it, which may load nothing and run no other script than its own.
     """
-    style, script = _part("page.css"), "\n".join(_part(name) for name in scripts)
+    style, script = part("page.css"), "\n".join(part(name) for name in scripts)
     return _TEMPLATES.get_template(template).render(
         **{"figure_data": {}, **content},
         style=style,
@@ -37,8 +37,17 @@ def filled(template: str, *, scripts: tuple[str, ...] = ("page.js",), **content:
     )
 
 
-def _part(name: str) -> str:
-    """Text of a file of the folder templates, as it stands there."""
+def part(name: str) -> str:
+    """Read a file of the folder templates as it stands there.
+
+    Parameters
+    ----------
+    name : str
+
+    Returns
+    -------
+    str
+    """
     return _LOADER.get_source(_TEMPLATES, name)[0]
 
 

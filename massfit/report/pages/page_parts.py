@@ -1,6 +1,7 @@
 """What every page holds: pictures, and what it was made with."""
 
 import base64
+import json
 from collections.abc import Mapping
 from typing import Any
 
@@ -18,6 +19,26 @@ def as_data(pictures: Mapping[str, bytes]) -> dict[str, str]:
     dict of str to str
     """
     return {name: "data:image/png;base64," + base64.b64encode(data).decode() for name, data in pictures.items()}
+
+
+def as_json(content: Any) -> str:
+    r"""Write data for a script of the page; no name in it can end the element it stands in.
+
+    Parameters
+    ----------
+    content
+        What JSON knows.
+
+    Returns
+    -------
+    str
+
+    Examples
+    --------
+    >>> as_json({"site": "</script>"})
+    '{"site":"\\u003c/script>"}'
+    """
+    return json.dumps(content, allow_nan=False, separators=(",", ":")).replace("<", "\\u003c")
 
 
 def made_with(provenance: Mapping[str, Any]) -> list[tuple[str, str]]:

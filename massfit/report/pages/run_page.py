@@ -4,7 +4,7 @@ from collections.abc import Mapping
 from typing import Any
 
 from massfit.report.pages.frame import filled
-from massfit.report.pages.page_parts import as_data, made_with
+from massfit.report.pages.page_parts import as_data, as_json, made_with
 from massfit.report.pages.page_tables import (
     Table,
     actions_table,
@@ -23,8 +23,10 @@ from massfit.report.pages.page_tables import (
 )
 from massfit.report.pages.satellite_tables import satellite_tables
 from massfit.report.words.comparison_text import bridge_sentences, verdict
-from massfit.report.words.run_text import ALTERNATIVES_NOTE, trust_sentence, warning_lines
+from massfit.report.words.run_text import ALTERNATIVES_NOTE, SHARE_WORDS, trust_sentence, warning_lines
+from massfit.report.words.scenario_text import bench_note
 from massfit.results.answer import answer_sentence
+from massfit.results.bench import bench_data
 from massfit.results.citations import citations
 from massfit.results.finished import FinishedRun
 
@@ -72,6 +74,7 @@ def report_page(run: FinishedRun, pictures: Mapping[str, bytes]) -> str:
     summary, provenance = run.summary, run.provenance
     return filled(
         "run.html",
+        scripts=("page.js", "bench_model.js", "bench_answer.js", "bench_view.js"),
         summary=summary,
         version=provenance["massfit"],
         sentence=answer_sentence(summary),
@@ -86,7 +89,21 @@ def report_page(run: FinishedRun, pictures: Mapping[str, bytes]) -> str:
         alternatives_note=f"{ALTERNATIVES_NOTE[0].upper()}{ALTERNATIVES_NOTE[1:]}.",
         tables=_tables(run),
         made_with=made_with(provenance),
+        **_bench(run),
     )
+
+
+def _bench(run: FinishedRun) -> dict[str, Any]:
+    """Collect what the bench shows and carries; nothing where the network is too large for a browser."""
+    bench = bench_data(run)
+    if bench is None:
+        return {"bench": None}
+    return {
+        "bench": bench,
+        "bench_kind": bench_note(run.summary["amplitude_hpa"]["median"], bench["site_scatter"]),
+        "bench_json": as_json(bench),
+        "share_words_json": as_json(SHARE_WORDS),
+    }
 
 
 def _stem(name: str) -> str:

@@ -16,7 +16,9 @@ from massfit.results.finished import FinishedRun, finished_run
 
 SATELLITE = {"satellite", "satellite_sites"}
 PNG = dict.fromkeys((*PICTURES, "records_2", "phasor_plane_column"), b"\x89PNG")
-SECTIONS = ("beware", "assumed", "holds", "network", "corrections", "fingerprint", "records", "cite", "provenance")
+SECTIONS = (
+    "beware", "assumed", "holds", "bench", "network", "corrections", "fingerprint", "records", "cite", "provenance",
+)  # fmt: skip
 
 
 @pytest.fixture(scope="module")
@@ -39,7 +41,7 @@ class Tags(HTMLParser):
 
     def handle_starttag(self, tag: str, attrs: list[tuple[str, str | None]]) -> None:
         self.found.append((tag, dict(attrs)))
-        if tag not in {"meta", "img", "source"}:
+        if tag not in {"meta", "img", "source", "input"}:
             self.open.append(tag)
 
     def handle_endtag(self, tag: str) -> None:
@@ -89,7 +91,8 @@ def test_sections_come_in_the_order_a_reader_asks(page: str) -> None:
     headings = [attributes["id"] for tag, attributes in tags(page) if tag == "h2"]
     assert headings == [name for name in SECTIONS if name in headings]
     assert set(SECTIONS) - set(headings) <= {"beware"}
-    assert [str(a["href"])[1:] for tag, a in tags(page) if tag == "a"] == headings
+    links = [a for tag, a in tags(page) if tag == "a" and "data-show" not in a]
+    assert [str(a["href"])[1:] for a in links] == headings
 
 
 def test_tables_that_scroll_can_be_reached_by_keyboard(page: str) -> None:
@@ -110,7 +113,7 @@ def test_sections_of_what_was_not_done_are_absent(finished: FinishedRun) -> None
     pictures = {name: picture for name, picture in PNG.items() if not name.startswith("records")}
     bare = report_page(replace(finished, summary=summary, datasets=datasets), pictures)
     assert [a["id"] for tag, a in tags(bare) if tag == "h2"] == [
-        "assumed", "holds", "network", "fingerprint", "cite", "provenance",
+        "assumed", "holds", "bench", "network", "fingerprint", "cite", "provenance",
     ]  # fmt: skip
     assert "What if" not in bare
     assert "unknown" in bare
@@ -157,13 +160,14 @@ def test_markup_in_a_name_stays_text(finished: FinishedRun, page: str) -> None:
     entries = [{**first, "id": evil}, *others]
     summary = {**finished.summary, "network": f"<b>{evil}", "sites": entries, "warnings": [evil]}
     provenance = {**finished.provenance, "command": f"massfit estimate '{evil}'"}
-    prints = finished.datasets["fingerprints.nc"]
-    names = [evil if name == first["id"] else name for name in prints["site"].values.tolist()]
-    datasets = {**finished.datasets, "fingerprints.nc": prints.assign_coords(site=names)}
+    datasets = dict(finished.datasets)
+    for file in ("fingerprints.nc", "site_phasors.nc"):
+        names = [evil if name == first["id"] else name for name in datasets[file]["site"].values.tolist()]
+        datasets[file] = datasets[file].assign_coords(site=names)
     clean, page = page, report_page(replace(finished, summary=summary, provenance=provenance, datasets=datasets), PNG)
     assert "<script>alert" not in page
-    # title, heading, warning, command; site, correction and fingerprint tables; and the words for the map
-    assert page.count("&lt;script&gt;") == 7 + bool(entries[0]["warnings"])
+    # title, heading, warning, command; site, correction and fingerprint tables; the bench; and the words for the map
+    assert page.count("&lt;script&gt;") == 8 + bool(entries[0]["warnings"])
     assert "b" not in {tag for tag, _ in tags(page)}
     assert page.count("<script") == clean.count("<script")
 

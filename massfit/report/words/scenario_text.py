@@ -1,0 +1,86 @@
+"""The answer of a scenario: plain text that fits 80 columns."""
+
+from collections.abc import Mapping
+from typing import Any
+
+from massfit.report.words.names import wrapped
+from massfit.report.words.run_text import SHARE_WORDS, WIDTH
+from massfit.results.answer import date_range, spoken_date, spoken_range
+
+
+def scenario_text(answer: Mapping[str, Any]) -> str:
+    """Write the answer of a scenario beside that of the whole network.
+
+    Parameters
+    ----------
+    answer : mapping
+        From `massfit.pipeline.scenario.answer_scenario_file`.
+
+    Returns
+    -------
+    str
+        Lines of at most 80 columns.
+    """
+    whole, year = answer["everything"], answer["reference_year"]
+    rows = [
+        ("", "all", "scenario"),
+        *(_row(name, whole, answer, spell) for name, spell in _spellings(year)),
+        *(
+            (SHARE_WORDS.get(name, name), f"{100 * whole['variance_share'][name]:.1f} %", f"{100 * share:.1f} %")
+            for name, share in answer["variance_share"].items()
+        ),
+    ]
+    note = (
+        "Normal site scatter, each site by the mean and covariance of its mixture: set the two columns beside each "
+        "other, not beside an answer with Student-t scatter. A question to the network, not a new estimate."
+    )
+    table = [f"{label:<24}{first:>26}{second:>26}".rstrip() for label, first, second in rows]
+    return "\n".join([f"Scenario: {answer['sites']} of {whole['sites']} sites", "", *table, "", *wrapped(note, WIDTH)])
+
+
+def bench_note(answer_hpa: float, site_scatter: str) -> str:
+    """Say how the numbers of the bench differ by kind from the answer of the run.
+
+    Parameters
+    ----------
+    answer_hpa : float
+        Median amplitude of the run.
+    site_scatter : str
+        Of the run.
+
+    Returns
+    -------
+    str
+    """
+    if site_scatter == "normal":
+        return (
+            "Each site enters by the mean and the covariance of its mixture; otherwise the numbers are of the same "
+            "kind as the answer above."
+        )
+    return (
+        f"The answer above, {answer_hpa:.2f} hPa, has Student-t site scatter, which gives a site that lies far off "
+        "less say. The bench has normal scatter, and each site enters by the mean and the covariance of its mixture: "
+        "its own numbers with all ticked are the ones to hold a scenario against."
+    )
+
+
+def _row(label: str, whole: Mapping[str, Any], answer: Mapping[str, Any], spell: Any) -> tuple[str, str, str]:
+    return label, spell(whole), spell(answer)
+
+
+def _spellings(year: int) -> list[tuple[str, Any]]:
+    return [
+        ("amplitude / hPa", lambda a: f"{a['amplitude_hpa']['median']:.3f}"),
+        ("  95 %", lambda a: spoken_range(a["amplitude_hpa"]["region95"], ".3f")),
+        ("peak", lambda a: spoken_date(a["peak_day"]["median"], year)),
+        ("  95 %", lambda a: _short(date_range(a["peak_day"]["region95"], year))),
+        ("in phase / hPa", lambda a: "{mean:.4f} ± {sd:.4f}".format(**a["in_phase_hpa"])),
+        ("quadrature / hPa", lambda a: "{mean:.4f} ± {sd:.4f}".format(**a["quadrature_hpa"])),
+    ]
+
+
+def _short(dates: str) -> str:
+    """Months by three letters, so that a range fits its column."""
+    return " ".join(
+        word[:3] if word.isalpha() and word not in {"to"} and len(word) > 4 else word for word in dates.split()
+    )
