@@ -11,19 +11,10 @@ from numpy.typing import NDArray
 from scipy.signal import lombscargle
 from scipy.stats import chi2
 
-from massfit.annual.chains import sample_drift
 from massfit.annual.design import Design, DriftColumns, build_design, mean_circulation
-from massfit.annual.evidence import (
-    ANNUAL,
-    DriftBasis,
-    Reduction,
-    Solutions,
-    annual_covariance,
-    linear_fit,
-    solve_choices,
-)
+from massfit.annual.drift_draws import DriftPosterior, drift_posterior
+from massfit.annual.evidence import ANNUAL, annual_covariance, linear_fit
 from massfit.annual.fit import SiteFit
-from massfit.annual.grid import DriftGrid, refine_grid
 from massfit.annual.nodes import Nodes
 from massfit.annual.noise import NoiseModel
 from massfit.annual.operator import calendar_years
@@ -203,24 +194,16 @@ def diagnose_site(
     """
     design = build_design(records, reference_year=reference_year, priors=priors)
     model = fit.noise.typical
-    noise = design.covariance(model)
-    basis = DriftBasis(design)
-    grid = refine_grid(noise, basis)
-    sample = sample_drift(noise, basis, grid, rng)
-    reduction = basis.reduce(noise).combined(basis.combination(sample.grid.nodes))
-    choices = sample.choices.reshape(sample.log_ratio.size, -1)
-    solutions = solve_choices(reduction, choices + sample.grid.first_columns)
-    log_weight = solutions.log_evidence + sample.log_ratio.ravel()
-    weight = np.exp(log_weight - log_weight.max())
-    drawn = rng.choice(len(weight), BAND_CHOICES, p=weight / weight.sum())
-    residual = _Residual(design, model, grid.mode)
+    found = drift_posterior(design, model, rng)
+    drawn = rng.choice(len(found.weight), BAND_CHOICES, p=found.weight)
+    residual = _Residual(design, model, found.mode)
     return SiteDiagnostics(
         spectrum=_spectrum(residual),
         whiteness=_whiteness(residual),
         years=_year_phasors(residual, reference_year),
-        inflation=_inflation(design, model, reduction, solutions, weight / weight.sum()),
+        inflation=_inflation(design, model, found),
         drifts=tuple(
-            _drift_curve(record, design, drift, reduction, solutions, drawn, sample.grid, choices)
+            _drift_curve(record, design, drift, found, drawn)
             for record, drift in zip(records, design.drifts, strict=True)
         ),
     )
@@ -311,13 +294,14 @@ def _year_phasors(residual: _Residual, reference_year: int) -> tuple[YearPhasor,
     return tuple(found)
 
 
-def _inflation(design: Design, model: NoiseModel, reduction: Reduction, solutions: Solutions, weight: Floats) -> float:
+def _inflation(design: Design, model: NoiseModel, found: DriftPosterior) -> float:
     levels = [drift.offset for drift in design.drifts]
     white = design.covariance(model).whiten(design.fixed[:, [*ANNUAL, *levels]])
     alone = np.linalg.inv(white.T @ white)[:2, :2]
-    annual = solutions.mean[:, ANNUAL, 0]
+    weight, annual = found.weight, found.solutions.mean[:, ANNUAL, 0]
     away = annual - weight @ annual
-    total = np.einsum("k,kij->ij", weight, annual_covariance(reduction, solutions)) + (weight[:, None] * away).T @ away
+    total = np.einsum("k,kij->ij", weight, annual_covariance(found.reduction, found.solutions))
+    total += (weight[:, None] * away).T @ away
     return float(np.sqrt(np.trace(total) / np.trace(alone)))
 
 
@@ -325,25 +309,23 @@ def _drift_curve(
     record: ReducedRecord,
     design: Design,
     drift: DriftColumns,
-    reduction: Reduction,
-    solutions: Solutions,
+    found: DriftPosterior,
     drawn: NDArray[np.int64],
-    grid: DriftGrid,
-    choices: NDArray[np.int64],
 ) -> DriftCurve:
+    reduction, solutions = found.reduction, found.solutions
     count = len(drift.rows)
     even, early = np.linspace(0, count - 1, BAND_POINTS // 2), np.geomspace(1, count, BAND_POINTS // 2) - 1
     rows = drift.rows[np.unique(np.append(even, early).astype(int))]
     fixed = design.fixed[np.ix_(rows, drift.fixed)]
     own = fixed @ reduction.covariance[np.ix_(drift.fixed, drift.fixed)]
     constant = np.sum(own * fixed, axis=1)
-    columns = {place: design.term_columns(design.terms[place], grid.nodes[place], rows) for place in drift.terms}
+    columns = {place: design.term_columns(design.terms[place], found.grid.nodes[place], rows) for place in drift.terms}
     means, variances = [], []
     for choice in drawn:
         # curve = fixed terms without exponentials + (own exponential less what fixed terms give up) times sizes
         gain = -fixed @ solutions.leak[choice][list(drift.fixed)]
         for place in drift.terms:
-            gain[:, place] += columns[place][:, choices[choice, place]]
+            gain[:, place] += columns[place][:, found.choices[choice, place]]
         means.append(fixed @ reduction.mean[list(drift.fixed), 0] + gain @ solutions.size[choice, :, 0])
         variances.append(constant + np.sum((gain @ solutions.size_covariance[choice]) * gain, axis=1))
     mean = np.mean(means, axis=0)

@@ -1,6 +1,6 @@
 """Surrogates of a network: its own days, drift, noise, models and errors, with another cycle in them.
 
-A surrogate record is what was subtracted from the record, the fitted drift, noise drawn from the fitted noise model,
+A surrogate record is what was subtracted from the record, a draw of its drift, noise drawn from the fitted noise model,
 and the annual cycle of the surrogate: that of the ocean mass through the site's fingerprint, the response to the air
 over land, the air-pressure error and the site scatter. The models keep their weather; their errors at the annual
 line are taken off and drawn anew.
@@ -14,7 +14,9 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from massfit.annual.dataset import NO_MODEL
+from massfit.annual.drift_draws import DrawnDrift, draw_drift
 from massfit.annual.noise import NoiseCovariance, NoiseModel
+from massfit.annual.record import ReducedRecord
 from massfit.constants import PASCAL_PER_HPA, TROPICAL_YEAR_DAYS
 from massfit.corrections.circulation import CirculationAtSites
 from massfit.network import ReducedSite
@@ -25,6 +27,7 @@ from massfit.posterior.network_model import Choices, inflation
 from massfit.posterior.observations import Observations, read_observations
 from massfit.posterior.replicate import cycle_of_years, draw_errors, replicate_phasors
 from massfit.posterior.result import Posterior
+from massfit.records.record import Calibrations
 from massfit.results.estimate import SiteReduction
 from massfit.settings import PosteriorSettings, Priors
 
@@ -41,13 +44,16 @@ class SiteBase:
     Parameters
     ----------
     task : SiteTask
-        Its daily means hold the corrections, the mean of the models and the drift.
+        Its daily means hold the corrections and the mean of the models.
+    records : tuple of ReducedRecord
+        The same days as observed, less both: what the drift is drawn from.
     noise : NoiseModel
     errors : mapping of str to (2,) array
         Annual phasor by which each model present differs from their mean, with the sign of an error, Pa.
     """
 
     task: SiteTask
+    records: tuple[ReducedRecord, ...]
     noise: NoiseModel
     errors: Mapping[str, Floats]
 
@@ -157,7 +163,7 @@ def surrogate_base(
 
 
 def site_base(task: SiteTask, reduction: SiteReduction) -> SiteBase:
-    """Strip a site of its cycle and its noise.
+    """Strip a site of its cycle, its drift and its noise.
 
     Parameters
     ----------
@@ -173,14 +179,27 @@ def site_base(task: SiteTask, reduction: SiteReduction) -> SiteBase:
     known = table["long_period_tides"] + table["pole_tide"] + table["ocean_mean_atmosphere"]
     if fit.models:
         known = known + table["circulation"].sel(model=list(fit.models)).mean("model")
-    daily = []
+    daily, observed = [], []
     for drift in fit.drifts:
         (record,) = (each for each in reduction.daily if each.deployment == drift.deployment)
         place = np.searchsorted(table["time"].values, drift.time)
-        daily.append(replace(record, time=drift.time, pressure=known.values[place] + drift.drift))
+        daily.append(replace(record, time=drift.time, pressure=known.values[place]))
+        observed.append(
+            ReducedRecord(
+                drift.deployment,
+                drift.time,
+                drift.reduced + drift.drift,
+                np.empty((0, len(drift.time))),
+                record.start,
+                record.drift,
+                record.steps,
+                calibrations=record.calibrations,
+            )
+        )
     phasor = fit.single_gaussian()[0]
     return SiteBase(
         replace(task, daily=tuple(daily), judge=False),
+        tuple(observed),
         fit.noise.typical,
         dict(zip(fit.models, phasor - phasor.mean(axis=0), strict=False)),
     )
@@ -246,9 +265,14 @@ def _site_surrogate(
     task = base.task
     year = task.settings.frame.reference_year
     noise = _drawn_noise(base, year, rng)
+    drifts = draw_drift(base.records, base.noise, reference_year=year, rng=rng, priors=task.settings.priors)
     daily = tuple(
-        replace(record, pressure=record.pressure + _cycle(record.time, year, signal, years) + own)
-        for record, own in zip(task.daily, noise, strict=True)
+        replace(
+            record,
+            pressure=record.pressure + _cycle(record.time, year, signal, years) + drift.days[0] + own,
+            calibrations=_drawn_readings(record.calibrations, drift, rng),
+        )
+        for record, drift, own in zip(task.daily, drifts, noise, strict=True)
     )
     # without a model the record itself holds the error of that column
     bare = errors.get(NO_MODEL) if not base.errors else None
@@ -291,6 +315,16 @@ def _drawn_noise(base: SiteBase, year: int, rng: np.random.Generator) -> list[Fl
     noise = np.empty(len(order))
     noise[order] = covariance.color(rng.standard_normal((len(order), 1)))[:, 0]
     return np.split(noise, np.cumsum([len(each) for each in days])[:-1])
+
+
+def _drawn_readings(
+    calibrations: Calibrations | None, drift: DrawnDrift, rng: np.random.Generator
+) -> Calibrations | None:
+    """Draw readings at a known pressure, with the drift drawn and errors of their own."""
+    if calibrations is None:
+        return None
+    errors = calibrations.sd * rng.standard_normal(len(calibrations.sd))
+    return replace(calibrations, pressure=drift.calibrations[0] + errors)
 
 
 def _reduced_surrogate(reduced: ReducedSite, seen: Observations, phasors: Floats) -> ReducedSite:

@@ -14,7 +14,7 @@ from massfit.pipeline.parts import Mapped
 from massfit.pipeline.progress import Progress
 from massfit.pipeline.sites import SiteTask, reduce_site
 from massfit.posterior.result import Posterior
-from massfit.posterior.robustness import moved_site, surest_site
+from massfit.posterior.robustness import moved_site, weightiest_site
 from massfit.posterior.what_if import (
     Variant,
     answer_of,
@@ -74,8 +74,8 @@ def other_answers(
     -------
     dict
         `what_if`, rows of :func:`massfit.posterior.what_if.what_if_row` in the order of their kinds; and `moved_site`,
-        of :func:`massfit.posterior.robustness.moved_site` for the site whose record is surest, where there are three
-        sites or more.
+        of :func:`massfit.posterior.robustness.moved_site` for the site that makes the largest share of the answer,
+        where there are three sites or more.
     """
     given = Variant("", "", phasors, fingerprints, posterior.settings, posterior.priors, posterior.atmosphere_sd_hpa)
     refits = other_treatments(tasks)
@@ -96,7 +96,7 @@ def other_answers(
     found: dict[str, Any] = {"what_if": sorted(rows, key=lambda row: order.index(row["kind"]))}
     if len(posterior.sites) > 2:
         progress("a site moved", 0, 1)
-        found["moved_site"] = moved_site(given, surest_site(phasors), mapped=mapped)
+        found["moved_site"] = moved_site(given, weightiest_site(given, posterior), mapped=mapped)
         progress("a site moved", 1, 1)
     return found
 

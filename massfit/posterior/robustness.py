@@ -5,10 +5,13 @@ from dataclasses import replace
 from typing import Any
 
 import numpy as np
-import xarray as xr
 
 from massfit.constants import PASCAL_PER_HPA
 from massfit.phasor import admittance_matrix, as_complex
+from massfit.posterior.network_model import Choices, network_model
+from massfit.posterior.observations import read_observations
+from massfit.posterior.result import Posterior
+from massfit.posterior.shares import site_shares
 from massfit.posterior.what_if import Variant, variant_answer
 
 OFFSETS_HPA = (0.0, 0.5, 1.0, 1.5, 2.0, 3.0, 5.0)
@@ -17,20 +20,24 @@ OFFSETS_HPA = (0.0, 0.5, 1.0, 1.5, 2.0, 3.0, 5.0)
 SCATTERS = ("normal", "student-t")
 
 
-def surest_site(phasors: xr.Dataset) -> str:
-    """Name of the site whose record is surest: the least trace of its covariance.
+def weightiest_site(given: Variant, posterior: Posterior) -> str:
+    """Name the site that makes the largest share of the answer.
 
     Parameters
     ----------
-    phasors : xarray.Dataset
-        contracts.SITE_PHASORS.
+    given : massfit.posterior.what_if.Variant
+        What the answer was drawn from.
+    posterior : Posterior
+        The answer.
 
     Returns
     -------
     str
     """
-    trace = np.einsum("sk,skii->s", phasors["weight"].values, phasors["covariance"].values)
-    return str(phasors["site"].values[int(np.argmin(trace))])
+    observations, admittance = read_observations(given.phasors, given.fingerprints)
+    choices = Choices(given.settings, given.priors, given.atmosphere_sd_hpa)
+    model = network_model(observations, admittance, choices, mixed=posterior.mixed)
+    return observations.sites[int(np.argmax(site_shares(model, posterior.second_route)))]
 
 
 def moved_site(

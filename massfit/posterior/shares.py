@@ -60,6 +60,30 @@ def variance_shares(terms: dict[str, float]) -> dict[str, float]:
     return {name: terms[name] / total for name in SOURCES}
 
 
+def site_shares(model: LinearModel, posteriors: Sequence[ScalePosterior]) -> NDArray[np.float64]:
+    """Share (n_site,) of the answer that each site makes, in the order of the observations.
+
+    Parameters
+    ----------
+    model : LinearModel
+    posteriors : sequence of ScalePosterior
+        One a load member.
+
+    Returns
+    -------
+    (n_site,) array
+        Half the trace of what a cycle of ocean mass that one site alone saw would add to the estimate, averaged over
+        the posterior of the scales. Sums to 1; a site may have a share below zero where it serves to tell the others'
+        common errors.
+    """
+    shares = np.zeros(len(model.sharing.place))
+    for posterior in posteriors:
+        linear = np.einsum("n,nir->ir", posterior.weight, estimator(model, posterior.condition))
+        of_rows = np.einsum("ir,ri->r", linear, model.design[posterior.member][:, -2:])
+        shares += np.bincount(model.rows.site, of_rows, len(shares))
+    return np.asarray(shares / shares.sum())
+
+
 def _member_terms(model: LinearModel, posterior: ScalePosterior) -> dict[str, float]:
     condition, weight, rows, columns = posterior.condition, posterior.weight, model.rows, model.columns
     squares = np.exp(2.0 * condition.log_scales)

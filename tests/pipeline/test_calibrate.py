@@ -9,6 +9,7 @@ import pytest
 import xarray as xr
 from click.testing import CliRunner
 
+from massfit.annual.drift_draws import DrawnDrift, draw_drift
 from massfit.annual.noise import NoiseModel
 from massfit.cli.main import main
 from massfit.io.network.write_network import write_network
@@ -17,9 +18,8 @@ from massfit.pipeline.fingerprints import network_fingerprints
 from massfit.pipeline.progress import ignore
 from massfit.pipeline.site_stage import SiteStage, site_stage
 from massfit.pipeline.sites import SiteTask, reduce_site
-from massfit.pipeline.surrogate import SurrogateBase, further_member, make_surrogate, site_base, surrogate_base
+from massfit.pipeline.surrogate import SurrogateBase, _site_surrogate, further_member, make_surrogate, surrogate_base
 from massfit.posterior.sample import sample_posterior
-from massfit.results.estimate import SiteReduction
 from massfit.simulate.network import simulate_network
 from massfit.simulate.options import SimulationOptions
 
@@ -46,18 +46,18 @@ def base(stage: SiteStage) -> SurrogateBase:
     return surrogate_base(stage.tasks, stage.reductions, stage.table, stage.phasors, fingerprints, posterior)
 
 
-def without_drift(reduction: SiteReduction) -> SiteReduction:
-    drifts = tuple(replace(drift, drift=0.0 * drift.drift) for drift in reduction.fit.drifts)
-    return replace(reduction, fit=replace(reduction.fit, drifts=drifts))
+def no_drift(records, _, **__):
+    return tuple(DrawnDrift(np.zeros((1, len(record.time))), np.zeros((1, 0))) for record in records)
 
 
-def test_without_noise_the_fit_gives_back_every_phasor_put_in(stage: SiteStage, base: SurrogateBase) -> None:
-    # without drift too: the mean of the exponentials that a noisy record allows is none that a quiet one has
-    sites = [site_base(*pair) for pair in zip(stage.tasks, map(without_drift, stage.reductions), strict=True)]
+def test_without_noise_the_fit_gives_back_every_phasor_put_in(
+    base: SurrogateBase, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr("massfit.pipeline.surrogate.draw_drift", no_drift)
     still = NoiseModel(np.zeros(0), np.zeros(0), np.zeros(1))
     # every year the same: how much each weighs in a site depends on its noise
     steady = replace(base.priors, year_sd_hpa=1e-6)
-    quiet = replace(base, sites=tuple(replace(site, noise=still) for site in sites), priors=steady)
+    quiet = replace(base, sites=tuple(replace(site, noise=still) for site in base.sites), priors=steady)
     surrogate = make_surrogate(quiet, np.random.default_rng(1))
     for fit in fitted(surrogate.tasks):
         mean, _ = fit.single_gaussian()
@@ -66,6 +66,29 @@ def test_without_noise_the_fit_gives_back_every_phasor_put_in(stage: SiteStage, 
     moved = make_surrogate(replace(quiet, centre=np.add(quiet.centre, [50.0, 0.0])), np.random.default_rng(1))
     shift = [moved.at_sites[site] - surrogate.at_sites[site] for site in surrogate.at_sites]
     assert all(abs(each[0] - 50.0) < 15.0 for each in shift)  # 50 times an admittance near one
+
+
+def test_the_drift_of_surrogates_spreads_as_far_as_the_record_leaves_it_open(
+    base: SurrogateBase, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Without cycle and noise a surrogate's daily means are what was subtracted, and its drift."""
+    monkeypatch.setattr("massfit.pipeline.surrogate._cycle", lambda time, *_: np.zeros(len(time)))
+    monkeypatch.setattr("massfit.pipeline.surrogate._drawn_noise", lambda own, *_: [0.0 for _ in own.task.daily])
+    site = base.sites[0]
+    year, (record, *_) = site.task.settings.frame.reference_year, site.task.daily
+    choices = {"reference_year": year, "rng": np.random.default_rng(1), "priors": site.task.settings.priors}
+    expected = draw_drift(site.records, site.noise, count=1000, **choices)[0].days
+    drifts = []
+    for number in range(40):
+        surrogate = _site_surrogate(site, np.zeros(2), {}, site.errors, np.random.default_rng(number))
+        drifts.append(surrogate.daily[0].pressure - record.pressure)
+    days = np.linspace(0, len(record.time) - 1, 6).astype(int)
+    mean, sd = expected[:, days].mean(axis=0), expected[:, days].std(axis=0)
+    found = np.array(drifts)[:, days]
+    assert sd.min() > 1.0  # Pa: the drift is not known to a millimetre of water
+    # forty draws: 0.16 standard deviations for a mean, 0.11 for their logarithm; four of each
+    np.testing.assert_allclose((found.mean(axis=0) - mean) / sd, 0.0, atol=4 * 0.16)
+    np.testing.assert_allclose(np.log(found.std(axis=0) / sd), 0.0, atol=4 * 0.11)
 
 
 def test_surrogates_differ_by_their_stream_alone(base: SurrogateBase) -> None:

@@ -1,9 +1,12 @@
 """One wrong site pulls the answer along under normal scatter, and loses its say under Student scatter."""
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
-from massfit.posterior.robustness import moved_site, surest_site
+from massfit.posterior.robustness import moved_site, weightiest_site
+from massfit.posterior.sample import sample_posterior
 from massfit.posterior.what_if import Variant
 from massfit.settings import PosteriorSettings, Priors
 
@@ -30,7 +33,13 @@ def test_a_far_site_loses_its_say_under_student_scatter_only(given: Variant, mon
     assert found["normal"]["sd_hpa"][1] > 1.5 * found["student-t"]["sd_hpa"][1]
 
 
-def test_the_surest_site_has_the_smallest_covariance(given: Variant) -> None:
-    phasors = given.phasors.copy(deep=True)
-    phasors["covariance"].values[7] *= 0.01
-    assert surest_site(phasors) == "site 8"
+def test_the_weightiest_site_is_the_one_that_the_answer_leans_on(given: Variant, monkeypatch) -> None:
+    monkeypatch.setattr("massfit.posterior.sample.STEPS", 40)
+    monkeypatch.setattr("massfit.posterior.sample.MAX_STEPS", 40)
+    phasors, prints = given.phasors.copy(deep=True), given.fingerprints.copy(deep=True)
+    phasors["covariance"].values[7] *= 0.01  # the surest record, which sees little of the cycle
+    phasors["covariance"].values[4] *= 0.05
+    prints["admittance"].values[:, 7] *= 0.3
+    one = replace(given, phasors=phasors, fingerprints=prints)
+    posterior = sample_posterior(phasors, prints, settings=one.settings, priors=one.priors)
+    assert weightiest_site(one, posterior) == "site 5"

@@ -4,8 +4,9 @@ import numpy as np
 import pytest
 
 from massfit.posterior.importance import ScalePosterior, integrate_scales
+from massfit.posterior.likelihood import collapse
 from massfit.posterior.network_model import pooled_moments
-from massfit.posterior.shares import SOURCES, variance_shares, variance_terms
+from massfit.posterior.shares import SOURCES, site_shares, variance_shares, variance_terms
 
 PRIOR = np.array([30.0, 30.0, 15.0, 15.0])
 
@@ -65,3 +66,24 @@ def test_each_term_is_that_of_the_dense_propagation(invent, dense_twin, regressi
     }
     for name, value in expected.items():
         assert terms[name] == pytest.approx(value, rel=1e-6), name
+
+
+@pytest.mark.parametrize("student", [False, True], ids=["normal", "student"])
+def test_shares_of_the_sites_are_what_one_more_pascal_at_each_would_move(invent, regression, student):
+    """Sum to one; equal sites share equally; each is the difference of two posterior means."""
+    network = invent(missing=0.3, placed=True, members=2)
+    model = regression(network, member=slice(None), student=student, group_scatter=True)
+    routes = [integrate_scales(model, PRIOR, member=k, draws=300) for k in range(2)]
+    shares = site_shares(model, routes)
+    assert shares.sum() == pytest.approx(1.0, abs=1e-12)
+    moved = np.zeros(8)
+    for route in routes:
+        before, _ = collapse(model, route.condition).moments()
+        for s in range(8):
+            for axis in range(2):
+                # what a cycle of 1 Pa along an axis, seen by this site alone, would add to its rows
+                added = np.where(model.rows.site == s, model.design[route.member][:, -2 + axis] / 500.0, 0.0)
+                other = replace(model, rows=replace(model.rows, value=model.rows.value + added))
+                after, _ = collapse(other, route.condition).moments()
+                moved[s] += route.weight @ (after - before)[:, axis] / 4.0
+    np.testing.assert_allclose(shares, moved / moved.sum(), rtol=1e-6, atol=1e-9)

@@ -37,8 +37,9 @@ PICTURES = {
     "network_map": "The sites, coloured by the amplitude of the annual cycle at the site relative to the ocean mean.",
     "fingerprint": "How each site sees the cycle under each load member: amplitude relative to the ocean mean, and "
     "delay.",
-    "moved_site": "How far the answer moves as the site whose record is surest is moved off, in the direction of its "
-    "own cycle: under normal scatter it follows; under Student-t scatter a site that is far off loses its say.",
+    "moved_site": "How far the answer moves as the site that makes the largest share of it is moved off, in the "
+    "direction of its own cycle: under normal scatter it follows; under Student-t scatter a site that is far off "
+    "loses its say.",
     "corner": "Posterior of the answer and of the scales of the model; contours enclose 50 and 95 %, dashed lines mark "
     "the median and the central 95 %.",
     "convergence": "How the sampler moved: each kept step of the independent chains, how soon a walker forgets where "
