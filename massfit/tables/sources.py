@@ -9,7 +9,7 @@ from types import MappingProxyType
 
 _ENTRY = re.compile(r"@(\w+)\{([\w-]+),\n((?:  \w+ = \{.*\},?\n)+)\}\n")
 _FIELD = re.compile(r"  (\w+) = \{(.*)\},?\n")
-_ACCENTS = {"'e": "é", '"o': "ö", '"u': "ü", "'c": "ć", "v{c}": "č"}
+_ACCENTS = {"'e": "é", '"a': "ä", '"o': "ö", '"u': "ü", "'c": "ć", "v{c}": "č"}
 
 
 @dataclass(frozen=True)
