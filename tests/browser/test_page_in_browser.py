@@ -6,6 +6,7 @@ import io
 from dataclasses import replace
 from pathlib import Path
 
+import numpy as np
 import pytest
 
 from massfit.fingerprint.ocean import OceanFunction
@@ -68,14 +69,14 @@ def test_a_table_sorts_both_ways_and_back(browser, page: Path) -> None:
         return [...table.tBodies[0].rows].map((row) => row.cells[arguments[0]].textContent.trim())"""
     press = """const head = document.querySelector('table[data-name=sites]').tHead.rows[0].cells[arguments[0]];
         head.querySelector('button').click(); return head.getAttribute('aria-sort')"""
-    before = browser.run(column, 1)
+    before = browser.run(column, 2)
     numbers = sorted(before, key=float)
-    assert browser.run(press, 1) == "ascending"
-    assert browser.run(column, 1) == numbers
-    assert browser.run(press, 1) == "descending"
-    assert browser.run(column, 1) == numbers[::-1]
-    assert browser.run(press, 1) is None
-    assert browser.run(column, 1) == before
+    assert browser.run(press, 2) == "ascending"
+    assert browser.run(column, 2) == numbers
+    assert browser.run(press, 2) == "descending"
+    assert browser.run(column, 2) == numbers[::-1]
+    assert browser.run(press, 2) is None
+    assert browser.run(column, 2) == before
     assert before != numbers, "the order of the sites says nothing about sorting"
 
 
@@ -113,6 +114,26 @@ def test_a_figure_is_saved_as_it_was_drawn(browser, page: Path, pictures: dict[s
     browser.open(page)
     press(browser, "figure[data-name=network_map]", "Figure as PNG")
     assert browser.saved("network_map.png") == pictures["network_map"]
+
+
+def test_the_data_of_a_figure_are_saved_as_a_table(browser, page: Path, finished: FinishedRun) -> None:
+    browser.open(page)
+    press(browser, "figure[data-name=records]", "Its data as CSV")
+    rows = list(csv.DictReader(io.StringIO(browser.saved("records.csv").decode())))
+    assert {row["site"] for row in rows} == {site["id"] for site in finished.summary["sites"]}
+    reduced = finished.datasets["reduced_records.nc"]["reduced"].values / 100.0
+    known = reduced[np.isfinite(reduced)]
+    assert len(rows) == len(known)
+    assert sum(float(row["reduced_hpa"]) for row in rows) == pytest.approx(known.sum(), abs=0.01 * len(rows))
+
+
+def test_a_drawn_column_is_neither_sorted_nor_saved(browser, page: Path) -> None:
+    browser.open(page)
+    heads = browser.run("""return [...document.querySelector('table[data-name=sites]').tHead.rows[0].cells].map(
+        (cell) => [cell.textContent, cell.querySelector('button') !== null])""")
+    assert [text for text, sorts in heads if not sorts] == ["reduced record, \u00b14 hPa"]
+    lines = browser.run("return document.querySelectorAll('table[data-name=sites] svg.spark path[d]').length")
+    assert lines == 2 * 3
 
 
 def test_it_can_be_dark_or_light(browser, page: Path) -> None:

@@ -1,8 +1,11 @@
 """What every page holds: pictures, and what it was made with."""
 
 import base64
+import csv
+import gzip
+import io
 import json
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from typing import Any
 
 
@@ -19,6 +22,40 @@ def as_data(pictures: Mapping[str, bytes]) -> dict[str, str]:
     dict of str to str
     """
     return {name: "data:image/png;base64," + base64.b64encode(data).decode() for name, data in pictures.items()}
+
+
+def as_packed_csv(head: Sequence[str], rows: Iterable[Sequence[object]]) -> str:
+    """Write rows as CSV, packed so that a page can carry it.
+
+    Parameters
+    ----------
+    head : sequence of str
+    rows : iterable of sequence
+        Text, numbers and None; text that a spreadsheet would take for a formula gets an apostrophe before it.
+
+    Returns
+    -------
+    str
+        Gzip (RFC 1952) in Base64; the same for the same rows.
+
+    Examples
+    --------
+    >>> packed = as_packed_csv(("site", "hPa"), [("=A1", 0.25), ("B", None)])
+    >>> gzip.decompress(base64.b64decode(packed)).decode().splitlines()
+    ['site,hPa', "'=A1,0.25", 'B,']
+    """
+    text = io.StringIO()
+    table = csv.writer(text, lineterminator="\n")
+    table.writerow(head)
+    for row in rows:
+        table.writerow([_csv_cell(cell) for cell in row])
+    return base64.b64encode(gzip.compress(text.getvalue().encode(), mtime=0)).decode()
+
+
+def _csv_cell(cell: object) -> object:
+    if isinstance(cell, float):
+        return f"{cell:.6g}"
+    return f"'{cell}" if isinstance(cell, str) and cell.startswith(("=", "+", "-", "@", "\t", "\r")) else cell
 
 
 def as_json(content: Any) -> str:

@@ -3,8 +3,9 @@
 from collections.abc import Mapping
 from typing import Any
 
+from massfit.report.figures.record_panels import ROWS_OF_A_PAGE
 from massfit.report.pages.frame import filled
-from massfit.report.pages.page_parts import as_data, as_json, made_with
+from massfit.report.pages.page_parts import as_data, as_json, as_packed_csv, made_with
 from massfit.report.pages.page_tables import (
     Table,
     actions_table,
@@ -22,12 +23,14 @@ from massfit.report.pages.page_tables import (
     years_table,
 )
 from massfit.report.pages.satellite_tables import satellite_tables
+from massfit.report.pages.sparklines import with_sparklines
 from massfit.report.words.comparison_text import bridge_sentences, verdict
 from massfit.report.words.run_text import ALTERNATIVES_NOTE, SHARE_WORDS, trust_sentence, warning_lines
 from massfit.report.words.scenario_text import bench_note
 from massfit.results.answer import answer_sentence
 from massfit.results.bench import bench_data
 from massfit.results.citations import citations
+from massfit.results.figure_data import figure_tables, weekly_means
 from massfit.results.finished import FinishedRun
 
 PICTURES = {
@@ -88,6 +91,7 @@ def report_page(run: FinishedRun, pictures: Mapping[str, bytes]) -> str:
         satellite_verdict=verdict(summary["comparison"]) if "comparison" in summary else "",
         bridge_words=" ".join(bridge_sentences(summary["comparison"])) if "comparison" in summary else "",
         alternatives_note=f"{ALTERNATIVES_NOTE[0].upper()}{ALTERNATIVES_NOTE[1:]}.",
+        figure_data=_figure_data(run, pictures),
         tables=_tables(run),
         made_with=made_with(provenance),
         **_bench(run),
@@ -101,10 +105,15 @@ def _bench(run: FinishedRun) -> dict[str, Any]:
         return {"bench": None}
     return {
         "bench": bench,
-        "bench_kind": bench_note(run.summary["amplitude_hpa"]["median"], bench["site_scatter"]),
+        "bench_kind": bench_note(run.summary, bench["site_scatter"]),
         "bench_json": as_json(bench),
         "share_words_json": as_json(SHARE_WORDS),
     }
+
+
+def _figure_data(run: FinishedRun, pictures: Mapping[str, bytes]) -> dict[str, str]:
+    tables = figure_tables(run, rows_of_a_page=ROWS_OF_A_PAGE)
+    return {name: as_packed_csv(table.head, table.rows) for name, table in tables.items() if name in pictures}
 
 
 def _stem(name: str) -> str:
@@ -120,7 +129,7 @@ def _tables(run: FinishedRun) -> dict[str, Table | None]:
         "alternatives": alternatives_table(summary),
         "predictive": predictive_table(summary),
         "calibration": calibration_table(summary),
-        "sites": site_table(summary),
+        "sites": with_sparklines(site_table(summary), summary["sites"], *weekly_means(run)),
         "left_out": left_out_table(summary),
         "corrections": corrections_table(summary),
         "fingerprint": fingerprint_table(summary, run.datasets["fingerprints.nc"]),

@@ -38,13 +38,13 @@ def scenario_text(answer: Mapping[str, Any]) -> str:
     return "\n".join([f"Scenario: {answer['sites']} of {whole['sites']} sites", "", *table, "", *wrapped(note, WIDTH)])
 
 
-def bench_note(answer_hpa: float, site_scatter: str) -> str:
+def bench_note(summary: Mapping[str, Any], site_scatter: str) -> str:
     """Say how the numbers of the bench differ by kind from the answer of the run.
 
     Parameters
     ----------
-    answer_hpa : float
-        Median amplitude of the run.
+    summary : mapping
+        The content of `estimate.json`.
     site_scatter : str
         Of the run.
 
@@ -58,10 +58,20 @@ def bench_note(answer_hpa: float, site_scatter: str) -> str:
             "kind as the answer above."
         )
     return (
-        f"The answer above, {answer_hpa:.2f} hPa, has Student-t site scatter, which gives a site that lies far off "
-        "less say. The bench has normal scatter, and each site enters by the mean and the covariance of its mixture: "
-        "its own numbers with all ticked are the ones to hold a scenario against."
+        f"The answer above, {summary['amplitude_hpa']['median']:.2f} hPa, has Student-t site scatter, which gives a "
+        f"site that lies far off less say. The bench has normal scatter{_moved(summary)}, and each site enters by the "
+        "mean and the covariance of its mixture: its own numbers with all ticked are the ones to hold a scenario "
+        "against."
     )
+
+
+def _moved(summary: Mapping[str, Any]) -> str:
+    """Say what normal scatter changes of this answer, where the run has found it."""
+    for row in summary.get("alternatives", []):
+        if row["name"] == "normal site scatter":
+            size = f"{abs(row['shift_sd']):.2f} standard deviations and its width by a factor of {row['sd_ratio']:.2f}"
+            return f" (for the whole network that moves the answer by {size})"
+    return ""
 
 
 def _row(label: str, whole: Mapping[str, Any], answer: Mapping[str, Any], spell: Any) -> tuple[str, str, str]:

@@ -17,7 +17,7 @@ from massfit.results.finished import FinishedRun, finished_run
 SATELLITE = {"satellite", "satellite_sites"}
 PNG = dict.fromkeys((*PICTURES, "records_2", "phasor_plane_column"), b"\x89PNG")
 SECTIONS = (
-    "beware", "assumed", "holds", "bench", "network", "corrections", "fingerprint", "records", "cite", "provenance",
+    "beware", "assumed", "holds", "bench", "network", "corrections", "records", "fingerprint", "provenance", "cite",
 )  # fmt: skip
 
 
@@ -113,7 +113,7 @@ def test_sections_of_what_was_not_done_are_absent(finished: FinishedRun) -> None
     pictures = {name: picture for name, picture in PNG.items() if not name.startswith("records")}
     bare = report_page(replace(finished, summary=summary, datasets=datasets), pictures)
     assert [a["id"] for tag, a in tags(bare) if tag == "h2"] == [
-        "assumed", "holds", "bench", "network", "fingerprint", "cite", "provenance",
+        "assumed", "holds", "bench", "network", "fingerprint", "provenance", "cite",
     ]  # fmt: skip
     assert "What if" not in bare
     assert "unknown" in bare

@@ -50,10 +50,12 @@
     });
   };
 
+  const drawn = (table, column) => table.tBodies[0].querySelector(`td:nth-child(${column + 1}) svg`) !== null;
+
   const makeSortable = (table) => {
     const next = { null: "ascending", ascending: "descending", descending: "" };
     [...table.tHead.rows[0].cells].forEach((cell, column) => {
-      if (!cell.textContent.trim()) return;
+      if (!cell.textContent.trim() || drawn(table, column)) return;
       const sort = button("", () => sortRows(table, column, next[cell.getAttribute("aria-sort")]));
       sort.className = "sort";
       sort.title = "Sort";
@@ -69,8 +71,11 @@
     return /[",\n]/.test(safe) ? `"${safe.replace(/"/g, '""')}"` : safe;
   };
 
-  const tableCsv = (table) =>
-    [...table.rows].map((row) => [...row.cells].map((cell) => csvCell(cell.textContent.trim())).join(",")).join("\n") + "\n";
+  const tableCsv = (table) => {
+    const worded = [...table.tHead.rows[0].cells].map((_, column) => !drawn(table, column));
+    const line = (row) => [...row.cells].filter((_, column) => worded[column]).map((cell) => csvCell(cell.textContent.trim()));
+    return [...table.rows].map((row) => `${line(row).join(",")}\n`).join("");
+  };
 
   const unpacked = async (text) => {
     const bytes = Uint8Array.from(atob(text.trim()), (letter) => letter.charCodeAt(0));
