@@ -26,7 +26,7 @@ class FinishedRun:
         By file name: site_phasors.nc, fingerprints.nc, reduced_records.nc; with the group behind it where the file has
         groups: posterior.nc/posterior.
     tables : mapping of str to list of dict
-        By file name, for people and spreadsheets only: they are not read back.
+        By file name, for people and spreadsheets only: read back as text, to be kept when something joins the run.
     """
 
     summary: Mapping[str, Any]

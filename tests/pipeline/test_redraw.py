@@ -1,5 +1,6 @@
 """Page and figures are drawn anew from the results folder alone; a file that was changed is named."""
 
+import dataclasses
 import shutil
 from pathlib import Path
 
@@ -8,9 +9,10 @@ from click.testing import CliRunner
 
 from massfit.cli.main import main
 from massfit.errors import InputError
+from massfit.io.results.partial_folder import claimed
 from massfit.io.results.read_results import read_results
 from massfit.io.results.results_folder import file_digest
-from massfit.pipeline.save import report_to_folder, save_results
+from massfit.pipeline.save import report_to_folder, save_results, save_run
 from massfit.results.estimate import Estimate
 
 
@@ -51,6 +53,16 @@ def test_everything_is_drawn_as_it_was_from_the_folder_alone(folder: Path) -> No
     assert after.pop("my notes.txt") == b"laid beside"
     assert after == before
     assert [path.name for path in folder.parent.iterdir()] == ["results"]
+
+
+def test_tables_are_kept_to_the_byte_when_something_joins_the_run(folder: Path) -> None:
+    text = "line,amplitude_hpa,note\nM2,25.1234,\"a, b\"\nK1,1e-05,\n"
+    rows = [{"line": "M2", "amplitude_hpa": 25.1234, "note": "a, b"}, {"line": "K1", "amplitude_hpa": 1e-5, "note": None}]
+    with claimed(folder) as partial:
+        save_run(dataclasses.replace(read_results(folder), tables={"tides.csv": rows}), partial)
+    with claimed(folder) as partial:
+        save_run(read_results(folder), partial)
+    assert (folder / "tides.csv").read_text() == text
 
 
 def test_any_flipped_byte_is_reported_with_the_name_of_its_file(folder: Path) -> None:

@@ -1,5 +1,6 @@
 """Read a results folder, refusing one that was changed since it was made."""
 
+import csv
 import hashlib
 import json
 from pathlib import Path, PurePosixPath
@@ -14,6 +15,7 @@ from massfit.results.finished import FinishedRun
 from massfit.results.screening import SCREENING_FILE
 
 _REDRAWN = (".html", ".png")
+_FROM_SUMMARY = {"sites.csv", "what_if.csv"}  # written from estimate.json each time
 
 
 def read_results(folder: Path) -> FinishedRun:
@@ -41,7 +43,8 @@ def read_results(folder: Path) -> FinishedRun:
     summary = json.loads((folder / "estimate.json").read_text(encoding="utf-8"))
     files = {name: _read_groups(folder / name) for name in outputs if name.endswith(".nc")}
     datasets = {name + group: dataset for name, groups in files.items() for group, dataset in groups.items()}
-    return FinishedRun(summary, provenance, datasets)
+    tables = {name: _read_rows(folder / name) for name in outputs if name.endswith(".csv") and name not in _FROM_SUMMARY}
+    return FinishedRun(summary, provenance, datasets, tables)
 
 
 def _read_run(folder: Path) -> dict[str, Any]:
@@ -102,3 +105,9 @@ def _read_groups(path: Path) -> dict[str, xr.Dataset]:
         if not tree.children:
             return {"": tree.to_dataset().load()}
         return {f"/{name}": node.to_dataset(inherit=False).load() for name, node in tree.children.items()}
+
+
+def _read_rows(path: Path) -> list[dict[str, str]]:
+    """Rows as they are spelled, so that they are written again as they were."""
+    with path.open(encoding="utf-8", newline="") as text:
+        return list(csv.DictReader(text))
