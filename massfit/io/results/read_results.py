@@ -43,7 +43,8 @@ def read_results(folder: Path) -> FinishedRun:
     summary = json.loads((folder / "estimate.json").read_text(encoding="utf-8"))
     files = {name: _read_groups(folder / name) for name in outputs if name.endswith(".nc")}
     datasets = {name + group: dataset for name, groups in files.items() for group, dataset in groups.items()}
-    tables = {name: _read_rows(folder / name) for name in outputs if name.endswith(".csv") and name not in _FROM_SUMMARY}
+    apart = [name for name in outputs if name.endswith(".csv") and name not in _FROM_SUMMARY]
+    tables = {name: _read_rows(folder / name) for name in apart}
     return FinishedRun(summary, provenance, datasets, tables)
 
 
