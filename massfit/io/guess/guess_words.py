@@ -30,6 +30,12 @@ _FOLDED_UNITS = SPOKEN_UNITS | {unit.casefold(): unit for unit in PRESSURE_UNITS
 _PROSE_UNIT = re.compile(r"\b(?:in|units?)\b\s*(?:are|is|of|[:=])?\s*[\[(]?([A-Za-z0-9]+)", re.IGNORECASE)
 _NUMBER = r"([-+]?\d+(?:\.\d+)?)"
 _DEGREES = rf"[^\d+-]{{0,12}}{_NUMBER}(?:[ °]+(\d+(?:\.\d+)?)')?[ °]*"
+_BY_SIDE = re.compile(
+    r"(\d+(?:\.\d+)?)\s*(?:°|deg(?:rees)?)?\s*(?:(\d+(?:\.\d+)?)\s*['′]\s*)?([NS])\b[\s,;/]*"  # noqa: RUF001 - a prime
+    r"(\d+(?:\.\d+)?)\s*(?:°|deg(?:rees)?)?\s*(?:(\d+(?:\.\d+)?)\s*['′]\s*)?([EW])\b"  # noqa: RUF001
+)
+"""A position written by its sides alone, "30.6 N 153.57 E"."""
+
 _PLACE = {
     "latitude": re.compile(rf"\blat(?:itude)?\b{_DEGREES}([NS])?\b", re.IGNORECASE),
     "longitude": re.compile(rf"\blon(?:g|gitude)?\b{_DEGREES}([EW])?\b", re.IGNORECASE),
@@ -140,6 +146,9 @@ def place_of_prose(lines: Sequence[str]) -> dict[str, tuple[float | str, str]]:
     >>> found = place_of_prose(["Station: Q7", "Lat: 12 30' S  Lon = 200.5"])
     >>> found["latitude"][0], found["longitude"][0], found["id"][0]
     (-12.5, 200.5, 'Q7')
+    >>> found = place_of_prose(["Position: 30.6 N 153.57 W"])
+    >>> found["latitude"][0], found["longitude"][0]
+    (30.6, -153.57)
     """
     found: dict[str, tuple[float | str, str]] = {}
     for line in lines:
@@ -147,6 +156,10 @@ def place_of_prose(lines: Sequence[str]) -> dict[str, tuple[float | str, str]]:
             match = pattern.search(line)
             if match and key not in found:
                 found[key] = (_degrees(*match.groups()), line.strip())
+        sides = _BY_SIDE.search(line)
+        if sides and "latitude" not in found and "longitude" not in found:
+            found["latitude"] = (_degrees(*sides.groups()[:3]), line.strip())
+            found["longitude"] = (_degrees(*sides.groups()[3:]), line.strip())
         station = _STATION.search(line)
         if station and "id" not in found:
             found["id"] = (station[1], line.strip())

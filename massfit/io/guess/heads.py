@@ -11,6 +11,7 @@ HEAD_LINES = 20_000
 _TAIL_BYTES = 8_192
 _LONGEST_LINE = 10_000
 _MOST_FILES = 2_000
+_SERIES_HEAD = 30  # lines in which the header of a series is looked for
 
 
 @dataclass(frozen=True)
@@ -69,6 +70,25 @@ def _skipped(path: Path, folder: Path) -> str:
     if path.suffix.casefold() not in (*NETCDF_SUFFIXES, MATLAB_SUFFIX, *TEXT_SUFFIXES):
         return f"records end with {', '.join((*NETCDF_SUFFIXES[:1], MATLAB_SUFFIX, *TEXT_SUFFIXES))}"
     return "the file is empty" if path.stat().st_size == 0 else ""
+
+
+def is_series(path: Path) -> bool:
+    """Whether a file has the form of an ocean-mean series: comments, and the header ``time,value``.
+
+    Parameters
+    ----------
+    path : pathlib.Path
+
+    Returns
+    -------
+    bool
+    """
+    if path.suffix.casefold() not in TEXT_SUFFIXES:
+        return False
+    with path.open("rb") as file:
+        lines = [file.readline(_LONGEST_LINE) for _ in range(_SERIES_HEAD)]
+    head = next((line for line in lines if line.strip() and not line.lstrip().startswith(b"#")), b"")
+    return head.strip().removeprefix(b"\xef\xbb\xbf").lower() == b"time,value"
 
 
 def text_lines(path: Path) -> list[str]:

@@ -14,13 +14,17 @@ from massfit.io.guess.guess_matlab import guess_matlab_records
 from massfit.io.guess.guess_netcdf import NO_RECORD, guess_netcdf_records
 from massfit.io.guess.guess_sites import SiteGuess, guess_sites
 from massfit.io.guess.guess_text_record import guess_text_records
-from massfit.io.guess.heads import files_of
+from massfit.io.guess.heads import files_of, is_series
 from massfit.io.netcdf.content import format_of
 from massfit.io.network.network_text import toml_value
 from massfit.records.interval import spoken_interval
 
 FILE = "network.toml"
 _GUESSERS = {"NetCDF": guess_netcdf_records, "MATLAB": guess_matlab_records, "text": guess_text_records}
+_SERIES = (
+    "it has the form of a series (time,value): the ocean-mean air pressure, or the own mean of a model; name it where "
+    "it belongs"
+)
 _NONE = {
     "NetCDF": NO_RECORD,
     "MATLAB": "a file without a vector of numbers",
@@ -126,9 +130,13 @@ def begin_network(folder: Path) -> Starter:
     """
     records: list[RecordGuess] = []
     aside: list[tuple[str, str]] = []
+    series: list[str] = []
     for found in files_of(folder):
         if found.skipped:
             aside.append((found.name, found.skipped))
+            continue
+        if is_series(found.path):
+            series.append(found.name)
             continue
         try:
             form = format_of(found.path, source=found.name)
@@ -140,7 +148,8 @@ def begin_network(folder: Path) -> Starter:
         if not own:
             aside.append((found.name, f"it is {_NONE[form]}"))
     sites = guess_sites(records)
-    parts = [_HEAD, _network(folder, records), _corrections(records), _REST, *map(_site, sites), _aside(aside)]
+    aside += [(name, _SERIES) for name in series]
+    parts = [_HEAD, _network(folder, records), _corrections(records, series), _REST, *map(_site, sites), _aside(aside)]
     text = "\n".join(part for part in parts if part)
     marks = Counter(mark for mark in ("# guess:", "# fill in:") for line in text.splitlines() if f"  {mark}" in line)
     count = len(records)
@@ -177,10 +186,11 @@ def _network(folder: Path, records: Sequence[RecordGuess]) -> str:
     return _table("[network]", keys)
 
 
-def _corrections(records: Sequence[RecordGuess]) -> str:
+def _corrections(records: Sequence[RecordGuess], series: Sequence[str]) -> str:
     steps = sorted({record.sampling_s for record in records if record.sampling_s})
     wanted = 'mean air pressure over the ocean, a file of time,value; or "already-removed" from the records'
-    keys = {"ocean_mean_atmosphere": fill_in(wanted)}
+    perhaps = f"; perhaps {' or '.join(series)}" if series else ""
+    keys = {"ocean_mean_atmosphere": fill_in(wanted + perhaps)}
     shown = ", ".join(dict.fromkeys(map(spoken_interval, steps)))
     if steps and steps[0] >= _COARSE_S:
         evidence = f"samples are {shown} apart, too coarse to show tides"

@@ -168,3 +168,36 @@ def test_real_records_in_split_dates(open_data: Path, tmp_path: Path) -> None:
     assert record["columns"] == ["year", "month", "day", "hour", "minute", "second", "kind", "pressure"]
     # from the agency's description of the layout: 1 is the 15-minute sampling, 9999 is missing
     assert (record["keep_kinds"], record["missing"], record["units"]) == (["1"], [9999], "m")
+
+
+def test_an_ocean_mean_series_is_no_site(tmp_path: Path) -> None:
+    daily_text(tmp_path / "K7.csv")
+    rows = [f"{np.datetime64('2014-03-01') + k}T12:00:00Z,{0.1 * k:.2f}" for k in range(400)]
+    (tmp_path / "air.csv").write_text("\n".join(["# units: hPa", "time,value", *rows]) + "\n")
+    made = begin_network(tmp_path)
+    assert made.sites == 1
+    assert "; perhaps air.csv" in next(line for line in made.text.splitlines() if "ocean_mean_atmosphere" in line)
+    assert "#   air.csv: it has the form of a series (time,value)" in made.text
+    # the control: a record whose columns are called otherwise is a record still
+    (tmp_path / "air.csv").write_text("\n".join(["time,pressure_hPa", *rows]) + "\n")
+    assert begin_network(tmp_path).sites == 2
+
+
+@pytest.mark.parametrize(
+    ("line", "place"),
+    [
+        ("Position: 30.6000 N 153.5700 E, depth 4310 m", (30.6, 153.57)),
+        ("laid at 12° 30' S, 9.5° W", (-12.5, -9.5)),
+        ("moored 45.5N/129W", (45.5, -129.0)),
+    ],
+)
+def test_a_position_by_its_sides_alone_is_understood(tmp_path: Path, line: str, place: tuple[float, float]) -> None:
+    daily_text(tmp_path / "K7.csv", header=f"# {line}\ndate,press_dbar")
+    text = begin_network(tmp_path).text
+    assert (f"latitude = {place[0]:g}" in text, f"longitude = {place[1]:g}" in text) == (True, True), text
+
+
+@pytest.mark.parametrize("line", ["sensor N 12 E", "12 samples N of 40", "see page 3 S 12"])
+def test_other_letters_are_no_position(tmp_path: Path, line: str) -> None:
+    daily_text(tmp_path / "K7.csv", header=f"# {line}\ndate,press_dbar")
+    assert 'latitude = ""' in begin_network(tmp_path).text
