@@ -6,6 +6,7 @@ m = 0, then of m = 1, and so on. :func:`as_cilm` turns them into the real
 4-pi-normalised C_nm and S_nm of geodesy.
 """
 
+import os
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
@@ -16,6 +17,9 @@ from numpy.typing import ArrayLike, NDArray
 from scipy.fft import next_fast_len
 
 from massfit.fingerprint.grid import CellGrid
+from massfit.fingerprint.threads import heed_thread_counts
+
+heed_thread_counts(os.environ)  # before the first transform, which reads them once
 
 TRANSFORM_BACKEND = f"ducc0 {ducc0.__version__}"
 """The library that transforms, for the record of a run."""

@@ -5,9 +5,9 @@ from datetime import date
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.ndimage import median_filter
 
 from massfit.records.record import Action
+from massfit.records.stretches import stretches
 from massfit.site import Interval
 
 _WINDOW = 5
@@ -153,33 +153,58 @@ def find_spikes(values: NDArray[np.float64]) -> NDArray[np.bool_]:
     """
     if values.size < _WINDOW:
         return np.zeros(values.size, dtype=bool)
-    apart = np.abs(values - median_filter(values, size=_WINDOW, mode="mirror"))
-    ratio = apart / np.maximum(running_scale(apart), _SMALLEST_SCALE)
-    spikes = ratio > _THRESHOLD
+    apart = _from_median_of_five(values)
+    spikes = np.zeros(values.size, dtype=bool)
+    # the scale of a block is never below that of the whole, so that few samples need to know their block's
+    least = max(_SD_PER_MEDIAN * _whole_scale(apart), _SMALLEST_SCALE)
+    place = np.flatnonzero(apart > (1.0 - 1e-9) * _THRESHOLD * least)
+    ratio = apart[place] / np.maximum(running_scale(apart, place), _SMALLEST_SCALE)
+    found = ratio > _THRESHOLD
     most = max(1, int(_SHARE * values.size))
-    if np.count_nonzero(spikes) > most:
-        spikes &= ratio > np.partition(ratio[spikes], -most - 1)[-most - 1]
-    return np.asarray(spikes)
+    if np.count_nonzero(found) > most:
+        found &= ratio > np.partition(ratio[found], -most - 1)[-most - 1]
+    spikes[place[found]] = True
+    return spikes
 
 
-def running_scale(apart: NDArray[np.float64]) -> NDArray[np.float64]:
+def _from_median_of_five(values: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Distance of each of five values or more from the median of the five around it, mirrored at the ends."""
+    apart = np.empty(values.size)
+    mirrored = np.concatenate([values[2:0:-1], values, values[-2:-4:-1]])
+    for part in stretches(values.size):
+        one, two, here, four, five = (mirrored[part.start + shift : part.stop + shift] for shift in range(_WINDOW))
+        # the least of the lower and the greatest of the upper values of two pairs are not the median: three are left
+        low = np.maximum(np.minimum(one, two), np.minimum(four, five))
+        high = np.minimum(np.maximum(one, two), np.maximum(four, five))
+        middle = np.maximum(np.minimum(low, high), np.minimum(np.maximum(low, high), here))
+        np.abs(here - middle, out=apart[part])
+    return apart
+
+
+def running_scale(apart: NDArray[np.float64], at: NDArray[np.int64] | None = None) -> NDArray[np.float64]:
     """Robust scale of each block of 96 samples, never below that of the whole record.
 
     Parameters
     ----------
     apart : (n,) array
         Magnitudes of deviations, zeros of coarse counting among them.
+    at : (m,) array of int, optional
+        Samples whose scale is wanted; all by default.
 
     Returns
     -------
-    (n,) array
+    (m,) array
         Standard deviation of normal deviations of the same median.
     """
     blocks = max(1, apart.size // _BLOCK)
-    local = _median_above_zero(apart[: blocks * _BLOCK].reshape(blocks, -1))
-    place = np.minimum(np.arange(apart.size) // _BLOCK, blocks - 1)
-    whole = _median_above_zero(apart[None, :: max(1, apart.size // _ENOUGH)])
-    return np.asarray(_SD_PER_MEDIAN * np.maximum(local, whole)[place])
+    own = np.minimum((np.arange(apart.size) if at is None else at) // _BLOCK, blocks - 1)
+    wanted, place = np.unique(own, return_inverse=True)
+    local = _median_above_zero(apart[: blocks * _BLOCK].reshape(blocks, -1)[wanted])
+    return np.asarray(_SD_PER_MEDIAN * np.maximum(local, _whole_scale(apart))[place])
+
+
+def _whole_scale(apart: NDArray[np.float64]) -> float:
+    return float(_median_above_zero(apart[None, :: max(1, apart.size // _ENOUGH)])[0])
 
 
 def _median_above_zero(apart: NDArray[np.float64]) -> NDArray[np.float64]:

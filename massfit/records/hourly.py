@@ -1,10 +1,13 @@
 """Means over the hours of a record, whatever its sampling."""
 
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
+
+from massfit.records.stretches import stretches
 
 HOUR_NS = 3_600_000_000_000
 DAY_NS = 24 * HOUR_NS
@@ -90,7 +93,14 @@ def hourly_means(time: NDArray[np.datetime64], pressure: NDArray[np.float64]) ->
     edges = np.searchsorted(since, every * HOUR_NS - _JITTER_NS)
     filled = np.diff(edges) > 0
     hour, first, counts = every[:-1][filled], edges[:-1][filled], np.diff(edges)[filled]
-    within = (since - np.repeat(hour * HOUR_NS, counts)) / DAY_NS
-    offset = np.add.reduceat(within, first) / counts
-    spread = np.maximum(np.add.reduceat(within**2, first) / counts - offset**2, 0.0)
-    return Hourly(hour, hour / 24.0 + offset, spread, np.add.reduceat(pressure, first) / counts)
+    ends = np.append(first, time.size)
+    offset, square, mean = (np.empty(hour.size) for _ in range(3))
+    # whole hours, as many as a stretch begins
+    seams = np.unique([*(np.searchsorted(first, part.start) for part in stretches(time.size)), hour.size])
+    for begin, end in pairwise(seams.tolist()):
+        hours, samples, starts = slice(begin, end), slice(ends[begin], ends[end]), first[begin:end] - first[begin]
+        within = (since[samples] - np.repeat(hour[hours] * HOUR_NS, counts[hours])) / DAY_NS
+        offset[hours] = np.add.reduceat(within, starts) / counts[hours]
+        square[hours] = np.add.reduceat(within**2, starts) / counts[hours]
+        mean[hours] = np.add.reduceat(pressure[samples], starts) / counts[hours]
+    return Hourly(hour, hour / 24.0 + offset, np.maximum(square - offset**2, 0.0), mean)

@@ -2,6 +2,7 @@ from datetime import date
 
 import numpy as np
 import pytest
+from scipy.ndimage import median_filter
 
 from massfit.records.clean import find_spikes, usable_samples
 from massfit.site import Interval
@@ -89,6 +90,34 @@ def test_a_coarse_counting_step_is_no_spike() -> None:
     # counts of 100 Pa (1 cm of water): most neighbours are equal
     values = 100.0 * np.round(np.sin(np.arange(5000) / 200.0) * 3)
     assert not find_spikes(values).any()
+
+
+@pytest.mark.parametrize("size", [5, 6, 13, 95, 96, 97, 1000])
+@pytest.mark.parametrize("error", ["normal", "cauchy", "counts"])
+def test_spikes_are_those_of_plain_filters(
+    size: int, error: str, rng: np.random.Generator, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    # slow twin: a general median filter, the scale of every block, nothing skipped and no stretches
+    values = {"normal": rng.normal, "cauchy": rng.standard_cauchy, "counts": rng.normal}[error](size=size) * 20.0
+    if error == "counts":
+        values = np.round(values, -1)
+    values[:: max(size // 7, 3)] += 400.0
+    apart = np.abs(values - median_filter(values, size=5, mode="mirror"))
+    blocks = np.minimum(np.arange(size) // 96, max(1, size // 96) - 1)
+
+    def scale(some: np.ndarray) -> float:
+        above = np.sort(some[some > 0.0])
+        return 1.4826 * float(above[above.size // 2]) if above.size else 0.0
+
+    whole_blocks = apart[: size - size % 96 if size >= 96 else size]  # the last one counts for what is left over
+    of_blocks = np.array([scale(part) for part in np.split(whole_blocks, max(1, size // 96))])
+    ratio = apart / np.maximum(np.maximum(of_blocks[blocks], scale(apart)), 1.0)
+    expected = ratio > 8.0
+    most = max(1, size // 100)
+    if np.count_nonzero(expected) > most:
+        expected &= ratio > np.sort(ratio)[-most - 1]
+    monkeypatch.setattr("massfit.records.stretches.AT_ONCE", 7)
+    np.testing.assert_array_equal(find_spikes(values), expected)
 
 
 def test_short_stretches_are_left_alone() -> None:

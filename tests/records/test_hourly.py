@@ -31,3 +31,15 @@ def test_hours_before_the_epoch() -> None:
     hours = hourly_means(np.array(["1999-12-31T22:15", "1999-12-31T23:59"], "datetime64[ns]"), np.array([1.0, 2.0]))
     assert hours.hour.tolist() == [-2, -1]
     assert hours.days[0] == pytest.approx(float(days_from_epoch(np.datetime64("1999-12-31T22:15", "ns"))))
+
+
+def test_hours_do_not_depend_on_the_stretches(rng: np.random.Generator, monkeypatch: pytest.MonkeyPatch) -> None:
+    # irregular sampling with gaps, hours of many samples among them
+    seconds = np.sort(rng.integers(0, 300 * 3600, 4000)[rng.random(4000) < 0.7])
+    seconds = seconds[(seconds < 50 * 3600) | (seconds > 90 * 3600)]
+    time, pressure = EPOCH + seconds.astype("timedelta64[s]"), rng.normal(size=seconds.size)
+    at_once = hourly_means(time, pressure)
+    for stretch in (1, 10, 997):
+        monkeypatch.setattr("massfit.records.stretches.AT_ONCE", stretch)
+        for whole, parted in zip(vars(at_once).values(), vars(hourly_means(time, pressure)).values(), strict=True):
+            np.testing.assert_array_equal(parted, whole)

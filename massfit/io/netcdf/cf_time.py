@@ -8,13 +8,12 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from massfit.errors import Fault, InputError
+from massfit.records.stretches import stretches
 
 _ATTRIBUTES = ("units", "calendar", "_FillValue", "missing_value")
 _LAST_NS = 9.2e18
 """Nanoseconds from 1970 that 64 bits hold, 292 years."""
 _NOT_A_TIME = np.datetime64("NaT", "ns").astype(np.int64)
-_AT_ONCE = 100_000
-"""Counts whose temporaries stay in the cache."""
 
 
 def cf_instants(values: NDArray[Any], attributes: Mapping[str, Any], *, source: str) -> NDArray[np.datetime64]:
@@ -57,6 +56,11 @@ def cf_instants(values: NDArray[Any], attributes: Mapping[str, Any], *, source: 
         raise InputError(Fault(source, "time", problem, allowed, "Correct the units of the time")) from error
 
 
+def native(numbers: NDArray[Any]) -> NDArray[Any]:
+    """Give numbers the byte order of the machine: those of the classic format are the other way round on most."""
+    return numbers.astype(numbers.dtype.newbyteorder("="), copy=False)
+
+
 def _decoded(values: NDArray[Any], attributes: dict[str, Any]) -> NDArray[np.datetime64]:
     dims = [f"axis_{axis}" for axis in range(values.ndim)]
     decoded = xr.decode_cf(xr.Dataset({"stamps": (dims, values, attributes)}))["stamps"].values
@@ -74,9 +78,8 @@ def _by_arithmetic(values: NDArray[Any], attributes: dict[str, Any]) -> NDArray[
         return None
     fills = [np.asarray(attributes[key], dtype=values.dtype) for key in _ATTRIBUTES[2:] if key in attributes]
     counts, instants = values.ravel(), np.empty(values.size, dtype=np.int64)
-    for first in range(0, values.size, _AT_ONCE):
-        here = slice(first, first + _AT_ONCE)
-        block = _block(counts[here], fills, unit, origin)
+    for here in stretches(values.size):
+        block = _block(native(counts[here]), fills, unit, origin)
         if block is None:
             return None
         instants[here] = block
@@ -86,15 +89,16 @@ def _by_arithmetic(values: NDArray[Any], attributes: dict[str, Any]) -> NDArray[
 def _block(counts: NDArray[Any], fills: list[NDArray[Any]], unit: int, origin: int) -> NDArray[np.int64] | None:
     missing = ~np.isfinite(counts) if counts.dtype.kind == "f" else np.zeros(counts.shape, dtype=bool)
     for fill in fills:
-        missing |= np.isin(counts, fill)
+        for number in fill.ravel():
+            missing |= counts == number
     if missing.any():
         counts = np.where(missing, counts.dtype.type(0), counts)
     low, high = (float(edge) * unit + origin for edge in (counts.min(initial=0), counts.max(initial=0)))
     if not -_LAST_NS < low <= high < _LAST_NS:
         return None
-    whole = np.floor(counts)
+    whole = counts if counts.dtype.kind in "iu" else np.floor(counts)
     instants: NDArray[np.int64] = np.asarray(whole.astype(np.int64) * unit + origin)
-    if counts.dtype.kind == "f":
+    if whole is not counts and (whole != counts).any():
         instants += np.rint((counts - whole) * np.float64(unit)).astype(np.int64)
     instants[missing] = _NOT_A_TIME
     return instants

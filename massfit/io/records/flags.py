@@ -15,6 +15,7 @@ from massfit.errors import Fault, InputError
 from massfit.io.records.deployment import DeploymentFile
 from massfit.io.records.samples import Flags, Samples
 from massfit.records.record import Action
+from massfit.records.stretches import stretches
 
 NO_FLAGS = "none"
 """What `flag_variable` says where flags are not to be used."""
@@ -61,7 +62,7 @@ def without_flagged(samples: Samples, entry: DeploymentFile) -> Samples:
     used = np.ones(samples.time.size, dtype=bool)
     actions: list[Action] = []
     for flags in samples.flags:
-        numbers = np.unique(flags.values[np.isfinite(flags.values)]).astype(int).tolist()
+        numbers = _numbers(flags.values)
         kept = _kept(flags, numbers, entry)
         detail = f"{flags.name}; kept: {', '.join(map(str, kept)) or 'none'}"
         for number in numbers:
@@ -81,6 +82,13 @@ def without_flagged(samples: Samples, entry: DeploymentFile) -> Samples:
         actions=(*samples.actions, *(action for action in actions if action.count)),
         flags=(),
     )
+
+
+def _numbers(values: NDArray[np.float64]) -> list[int]:
+    """List the flags that occur, in order."""
+    found = [np.unique(values[part]) for part in stretches(values.size)]
+    numbers = np.unique(np.concatenate([np.zeros(0), *found]))
+    return [int(number) for number in numbers[np.isfinite(numbers)]]
 
 
 def _kept(flags: Flags, numbers: list[int], entry: DeploymentFile) -> tuple[int, ...]:

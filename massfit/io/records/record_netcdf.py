@@ -10,7 +10,7 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from massfit.errors import Fault, InputError, collect
-from massfit.io.netcdf.cf_time import cf_instants
+from massfit.io.netcdf.cf_time import cf_instants, native
 from massfit.io.netcdf.netcdf_file import as_text, damage_as_fault, open_netcdf
 from massfit.io.records.deployment import DeploymentFile
 from massfit.io.records.netcdf_flags import FlagNames, flag_names, flags_of
@@ -18,6 +18,7 @@ from massfit.io.records.samples import Samples, coarse, in_pascal
 from massfit.io.records.units import PRESSURE_UNITS, pascal_per_unit
 from massfit.io.records.zones import require_utc, zone_of_text
 from massfit.records.record import Action
+from massfit.records.stretches import stretches
 
 # CF standard names, the most exact one first
 _STANDARD_NAMES = (
@@ -294,10 +295,19 @@ def _unpacked(
     stored: NDArray[Any], attributes: dict[str, Any], entry: DeploymentFile, factor: float
 ) -> NDArray[np.float64]:
     """Packed numbers as Pa, with NaN for everything the attributes call invalid."""
+    flat, values = stored.ravel(), np.empty(stored.size)
+    for part in stretches(flat.size):
+        values[part] = _unpacked_part(native(flat[part]), attributes, entry, factor)
+    return values.reshape(stored.shape)
+
+
+def _unpacked_part(
+    stored: NDArray[Any], attributes: dict[str, Any], entry: DeploymentFile, factor: float
+) -> NDArray[np.float64]:
     bad = ~(np.abs(stored) < _UNWRITTEN) if stored.dtype.kind == "f" else np.zeros(stored.shape, dtype=bool)
     for key in ("_FillValue", "missing_value"):
-        if key in attributes:
-            bad |= np.isin(stored, np.asarray(attributes[key], dtype=stored.dtype))
+        for number in np.asarray(attributes.get(key, ()), dtype=stored.dtype).ravel():
+            bad |= stored == number
     low, high = attributes.get("valid_range", (None, None))
     low, high = attributes.get("valid_min", low), attributes.get("valid_max", high)
     if low is not None:

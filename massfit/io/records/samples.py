@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 from massfit.io.records.deployment import DeploymentFile
 from massfit.records.record import Action
+from massfit.records.stretches import stretches
 
 COARSE = "resolution is limited"
 """What is said of single-precision numbers that are too large for it."""
@@ -105,12 +106,16 @@ def coarse(stored: NDArray[Any], factor: float) -> tuple[Action, ...]:
     factor : float
         Pa in one of them.
     """
-    if stored.dtype != np.float32 or not np.isfinite(stored).any():
+    if stored.dtype != np.float32:
         return ()
-    # the largest magnitude that is a pressure and no fill value
-    valid = stored[np.abs(stored) < 1.0e9]
-    step = float(np.spacing(np.abs(valid).max(initial=0.0).astype(np.float32))) * abs(factor)
-    if step <= _COARSE_PA:
+    count, largest, flat = 0, np.float32(0.0), stored.ravel()
+    for part in stretches(flat.size):
+        size = np.abs(flat[part])
+        valid = size < 1.0e9  # a pressure, and no fill value
+        count += int(np.count_nonzero(valid))
+        largest = max(largest, size.max(initial=0.0, where=valid))
+    step = float(np.spacing(largest)) * abs(factor)
+    if not count or step <= _COARSE_PA:
         return ()
     detail = f"single-precision numbers of this size resolve {step:.1f} Pa only"
-    return (Action(COARSE, int(valid.size), detail),)
+    return (Action(COARSE, count, detail),)

@@ -47,6 +47,21 @@ def test_instants_are_those_of_the_general_decoder(units: str, kind: str, monkey
     assert apart <= (1_000 if kind[0] == "f" else 0)
 
 
+def test_whole_counts_are_kept_to_the_nanosecond() -> None:
+    # a double holds ns since 1970 to 256 only
+    stamps = np.array(["2016-02-29T12:34:56.123456789", "2016-03-01T00:00:00.000000001"], dtype="datetime64[ns]")
+    found = cf_instants(stamps.astype(np.int64), {"units": "nanoseconds since 1970-01-01"}, source="a.nc")
+    np.testing.assert_array_equal(found, stamps)
+
+
+def test_either_byte_order_is_read() -> None:
+    values = np.linspace(0.0, 1e9, 50)
+    attributes = {"units": "seconds since 1990-01-01", "_FillValue": -1.0}
+    expected = cf_instants(values, attributes, source="a.nc")
+    for order in "<>":
+        np.testing.assert_array_equal(cf_instants(values.astype(f"{order}f8"), attributes, source="a.nc"), expected)
+
+
 def test_missing_counts_are_no_instants() -> None:
     values = np.array([1.0, np.nan, -999.0, 4.0])
     attributes = {"units": "days since 2016-01-01", "_FillValue": -999.0}
