@@ -144,9 +144,11 @@ def phasors(network: Path, output: Path | None, overwrite: bool, outside: bool, 
 @click.option("--noise", type=click.FloatRange(0.0, 20.0), default=1.0, show_default=True, help="Scale of the noise.")
 @click.option("--sampling", type=click.Choice(["hourly", "daily"]), default="hourly", show_default=True)
 @click.option("--satellites", type=click.IntRange(0, 4), default=2, show_default=True, help="Gravity centres.")
+@click.option("--sea-floor", is_flag=True, help="Also fields of ocean models for massfit screen.")
 def simulate(
-    folder: Path, seed: int, sites: int, years: float, models: int, noise: float, sampling: str, satellites: int
-) -> None:
+    folder: Path, seed: int, sites: int, years: float, models: int, noise: float, sampling: str, satellites: int,
+    sea_floor: bool,
+) -> None:  # fmt: skip
     """Invent a network with known truth and write it to FOLDER.
 
     FOLDER must not exist or be empty. The truth is in truth.json; the rest is
@@ -156,8 +158,9 @@ def simulate(
         from massfit.pipeline.invent import simulate_to_folder
 
         simulate_to_folder(
-            folder, seed, sites=sites, years=years, models=models, noise=noise, sampling=sampling, satellites=satellites
-        )
+            folder, seed, sites=sites, years=years, models=models, noise=noise, sampling=sampling,
+            satellites=satellites, sea_floor=sea_floor,
+        )  # fmt: skip
     click.echo(f"Wrote an invented network to {folder}. Next: massfit estimate {folder}")
 
 

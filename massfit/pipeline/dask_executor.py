@@ -52,6 +52,10 @@ class DaskExecutor:
             for future in waiting:
                 future.cancel()
 
+    def everywhere(self, function: Callable[[], Result]) -> list[Result]:
+        """Call a function once in every worker, for example to ask for its memory."""
+        return list(self._client.run(function).values())
+
 
 def _fetched(future: Any) -> Any:
     from distributed.scheduler import KilledWorker
@@ -91,7 +95,13 @@ def dask_executor(*, workers: int | None, scheduler: str | None, memory_gb: floa
         action = "Give --workers for a cluster on this machine, or --scheduler for one that is there"
         raise InputError(Fault("workers", "", problem, "Must be one of them", action))
     _require_dask()
-    with _own_cluster(workers, memory_gb) if workers is not None else _client_of(str(scheduler)) as client:
+    import dask
+
+    # parts bring the masks and areas of their cells with them, on purpose: a worker that is lost takes nothing along
+    with (
+        dask.config.set({"distributed.admin.large-graph-warning-threshold": "10GB"}),
+        _own_cluster(workers, memory_gb) if workers is not None else _client_of(str(scheduler)) as client,
+    ):
         yield DaskExecutor(client)
 
 
@@ -111,7 +121,7 @@ def _own_cluster(workers: int, memory_gb: float) -> Iterator[Any]:
     with (
         TemporaryDirectory(prefix="massfit-") as scratch,
         LocalCluster(
-            n_workers=workers, threads_per_worker=1, processes=True, host="127.0.0.1", dashboard_address=None,
+            n_workers=workers, threads_per_worker=1, processes=True, host="127.0.0.1", dashboard_address=":0",
             memory_limit=f"{memory_gb}GB", local_directory=scratch, silence_logs=logging.ERROR,
         ) as cluster,
         Client(cluster) as client,
