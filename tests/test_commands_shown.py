@@ -72,6 +72,7 @@ def test_the_only_pages_with_commands_that_nothing_runs_are_these() -> None:
     run_elsewhere = {
         "docs/first_evening.md",  # tests/test_first_evening.py
         "docs/theory/earth.md",  # tests/cli/test_love_numbers.py
+        "docs/theory/screening.md",  # tests/test_screening_page.py
         "docs/theory/recovery.md",  # the slow tests that it names
         "docs/fingerprints.md", "docs/site_figures.md", "docs/terminal.md",  # one command each, of the how-to pages too
         "README.md", "demo_network/README.md",  # tests/test_demo_network.py

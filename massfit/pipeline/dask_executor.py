@@ -52,6 +52,11 @@ class DaskExecutor:
             for future in waiting:
                 future.cancel()
 
+    @property
+    def address(self) -> str:
+        """Where the scheduler listens."""
+        return str(self._client.scheduler_info(n_workers=0)["address"])
+
     def everywhere(self, function: Callable[[], Result]) -> list[Result]:
         """Call a function once in every worker, for example to ask for its memory."""
         return list(self._client.run(function).values())
@@ -124,7 +129,7 @@ def _own_cluster(workers: int, memory_gb: float) -> Iterator[Any]:
             n_workers=workers, threads_per_worker=1, processes=True, host="127.0.0.1", dashboard_address=":0",
             memory_limit=f"{memory_gb}GB", local_directory=scratch, silence_logs=logging.ERROR,
         ) as cluster,
-        Client(cluster) as client,
+        Client(cluster, set_as_default=False) as client,
     ):  # fmt: skip
         yield client
 
@@ -134,7 +139,7 @@ def _client_of(address: str) -> Iterator[Any]:
     from distributed import Client
 
     try:
-        client = Client(address, timeout=_ANSWER_WITHIN_S)
+        client = Client(address, timeout=_ANSWER_WITHIN_S, set_as_default=False)
     except (OSError, ValueError, TypeError) as error:
         problem = f"no Dask scheduler answers there within {_ANSWER_WITHIN_S} s"
         allowed = "Must be an address such as tcp://10.0.0.5:8786"

@@ -89,7 +89,7 @@ def _eddies(rng: np.random.Generator, shape: tuple[int, int, int]) -> NDArray[np
     """Smooth shapes of unit variance that forget themselves within weeks."""
     keep = float(np.exp(-_STEP_DAYS / _MEMORY_DAYS))
     smooth = gaussian_filter(rng.normal(size=shape), (0.0, _EDDY_CELLS, _EDDY_CELLS), mode=_AROUND)
-    smooth /= smooth.std()
+    smooth /= smooth.std(axis=0)
     for later in range(1, shape[0]):
         smooth[later] = keep * smooth[later - 1] + np.sqrt(1.0 - keep**2) * smooth[later]
     return np.asarray(smooth)

@@ -13,6 +13,7 @@ import xarray as xr
 from screening.invented_ocean import eddying_ocean
 
 from massfit.errors import InputError
+from massfit.pipeline.dask_executor import DaskExecutor
 from massfit.pipeline.executor import Embedded, Executor, local_processes, make_executor
 from massfit.pipeline.screen import screen_sea_floor
 from massfit.screening.field import ModelField
@@ -87,6 +88,16 @@ def test_a_fault_of_the_input_comes_back_as_it_is(cluster: Executor) -> None:
         screen_sea_floor([ModelField("north", pressure, "removed")], executor=cluster)
 
 
+def test_a_scheduler_that_is_there_is_used_and_left_running(cluster: Executor) -> None:
+    assert isinstance(cluster, DaskExecutor)
+    field = ModelField("north", eddying_ocean(spacing=15.0), "subtract")
+    with make_executor(scheduler=cluster.address) as guest:
+        assert guest.count == 2
+        shared = screen_sea_floor([field], executor=guest)
+    xr.testing.assert_identical(shared, screen_sea_floor([field]))
+    assert list(cluster.results(slow_square, [2])) == [4]
+
+
 def test_processes_without_dask_give_the_same() -> None:
     with local_processes(1) as executor:
         assert list(executor.results(abs, [-3, 2, -1])) == [3, 2, 1]
@@ -99,6 +110,7 @@ for name in ("dask", "distributed", "zarr"):
     sys.modules[name] = None
 from screening.invented_ocean import eddying_ocean
 from massfit.errors import InputError
+from massfit.pipeline.dask_executor import DaskExecutor
 from massfit.pipeline.executor import make_executor
 from massfit.pipeline.screen import screen_sea_floor
 from massfit.screening.field import ModelField
