@@ -82,6 +82,7 @@ def test_five_gigabytes_are_screened_by_two_processes_below_two_gigabytes_each(t
     rows = slice(400, 404)
     values = kept.source.read(slice(0, DAYS), rows)
     mean = ocean_mean_of(kept.source)
+    path.unlink()
     days = days_since(time, 2011)
     waves = [wave(k * ANNUAL_RATE * days) for k in (1, 2) for wave in (np.cos, np.sin)]
     design = np.column_stack([np.ones_like(days), days, *waves])
