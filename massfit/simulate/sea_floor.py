@@ -21,7 +21,7 @@ _SHELF_PA, _SOUTH_PA, _QUIET_PA = 200.0, 250.0, 40.0
 
 
 def invented_sea_floor(
-    seed: int, *, first_year: int = 2008, years: int = 8, spacing_deg: float = 4.0
+    seed: int, *, first_year: int = 2008, years: int = 6, spacing_deg: float = 5.0
 ) -> dict[str, xr.DataArray]:
     """Invent the bottom pressure of two ocean models that share their season in part and no eddy.
 
