@@ -20,6 +20,7 @@ from massfit.report.figures.phasor_plane import phasor_plane
 from massfit.report.figures.record_panels import ROWS_OF_A_PAGE, record_panels
 from massfit.report.figures.satellite_sites import satellite_sites_figure
 from massfit.report.figures.satellites import satellite_figure
+from massfit.report.figures.siting_figures import siting_figures
 from massfit.report.figures.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM
 from massfit.results.chains import chain_diagnostics
 from massfit.results.comparison_rows import placed_determinations, satellite_months, sites_beside
@@ -81,6 +82,7 @@ def draw_figures(run: FinishedRun, ocean: OceanFunction) -> dict[str, Figure]:
             )
             if beside := sites_beside(run):
                 figures[f"satellite_sites{ending}"] = satellite_sites_figure(beside, width_mm=width)
+        figures |= {f"{name}{ending}": figure for name, figure in siting_figures(run.datasets, width_mm=width).items()}
     rows = record_rows(run)
     for page, first in enumerate(range(0, len(rows), ROWS_OF_A_PAGE), 1):
         name = "records" if page == 1 else f"records_{page}"

@@ -23,10 +23,12 @@ from massfit.report.pages.page_tables import (
     years_table,
 )
 from massfit.report.pages.satellite_tables import satellite_tables
+from massfit.report.pages.siting_tables import siting_tables
 from massfit.report.pages.sparklines import with_sparklines
 from massfit.report.words.comparison_text import bridge_sentences, verdict
 from massfit.report.words.run_text import ALTERNATIVES_NOTE, SHARE_WORDS, trust_sentence, warning_lines
 from massfit.report.words.scenario_text import bench_note
+from massfit.report.words.siting_plan_text import siting_words
 from massfit.results.answer import answer_sentence
 from massfit.results.bench import bench_data
 from massfit.results.citations import citations
@@ -52,6 +54,14 @@ PICTURES = {
     "records": "Each site: daily record with fitted drift, deployments in turn blue and orange; the series subtracted "
     "from it; what remains, with the fitted annual cycle. Every row has its own scale; one day in 250, the most "
     "extreme, is out of sight.",
+    "siting_candidate_map": "By how much one recorder more would bring the error of the answer down, for a record of "
+    "the length planned: dots are the sites of the network, numbered diamonds the best places of the open sea, far "
+    "apart. Pale cells are not listed: near the coast or the loads.",
+    "siting_record_length": "Error of a component of the phasor against the years of record: of a record by itself, "
+    "and of the answer with one recorder more at the best place.",
+    "siting_service": "By how many per cent the error of the answer is larger than if every recorder runs on, against "
+    "the month, from the last day of the records, in which a recorder ends or is replaced by one with a drift of its "
+    "own; the cross is for a recorder that is lost with its record.",
     "satellite": "Network, satellites and other determinations of the water of the whole ocean, with 95 % ellipses; "
     "the satellites' ocean mean of each month as the kernel sees it, less its mean, and the annual cycle fitted to it.",
     "satellite_sites": "Satellite pressure at each recorder (squares) beside the recorder's own phasor (dots), with "
@@ -90,6 +100,7 @@ def report_page(run: FinishedRun, pictures: Mapping[str, bytes]) -> str:
         trust=trust_sentence(summary),
         satellite_verdict=verdict(summary["comparison"]) if "comparison" in summary else "",
         bridge_words=" ".join(bridge_sentences(summary["comparison"])) if "comparison" in summary else "",
+        siting_words=siting_words(run.datasets),
         alternatives_note=f"{ALTERNATIVES_NOTE[0].upper()}{ALTERNATIVES_NOTE[1:]}.",
         figure_data=_figure_data(run, pictures),
         tables=_tables(run),
@@ -137,6 +148,7 @@ def _tables(run: FinishedRun) -> dict[str, Table | None]:
         "citations": citations_table(citations(run)),
         "inputs": input_table(run.provenance),
         **satellite_tables(summary),
+        **siting_tables(run.datasets),
     }
 
 
@@ -156,6 +168,10 @@ def _alternative_texts(summary: Mapping[str, Any]) -> dict[str, str]:
         + answer_sentence(summary).removeprefix("The annual cycle of ocean mass has an "),
         "convergence": f"Traces, autocorrelation, R-hat and effective draws of the sampler. {trust_sentence(summary)}",
         "coverage": f"Calendar of the months of {count} sites; days and coverage of each are in the table below.",
+        "siting_candidate_map": "World map of what one recorder more would do; the best places are in the table below.",
+        "siting_record_length": "Errors against the years of record, falling steeply up to a year and a quarter.",
+        "siting_service": "Error of the answer against the month of service for the sites that matter most; the "
+        "numbers are in the table below.",
         "satellite": "Determinations in the plane of in phase and quadrature, and the monthly ocean mean of the "
         "satellites; the numbers are in the tables below.",
         "satellite_sites": "Amplitude and peak day of recorder and satellites at every site; the numbers are in the "

@@ -50,6 +50,39 @@ def siting_plan_text(datasets: Mapping[str, xr.Dataset]) -> str:
     return "\n\n".join(parts)
 
 
+def siting_words(datasets: Mapping[str, xr.Dataset]) -> dict[str, str]:
+    """Say on the page what was found; empty where nothing was looked for.
+
+    Parameters
+    ----------
+    datasets : mapping of str to xarray.Dataset
+
+    Returns
+    -------
+    dict of str to str
+        `gain`, `note`, `contrast`, `length`, `service`.
+    """
+    found = {name: datasets.get(f"siting.nc/{name}") for name in ("best_places", "record_length", "service")}
+    best, length, service = found.values()
+    return {
+        "gain": "" if best is None else f"{gain_sentence(best)} Noise of the record: {best.attrs['noise_source']}.",
+        "note": GAIN_NOTE,
+        "contrast": RATIO_NOTE.removeprefix("lies near the load: "),
+        "length": "" if length is None else " ".join([length_sentence(length), *target_sentences(length)]),
+        "service": "" if service is None else service_sentence(service),
+    }
+
+
+def length_sentence(data: xr.Dataset) -> str:
+    """Say what the second year of a record is worth."""
+    lengths = [float(length) for length in data["record_years"].values]
+    one, two = (float(data["record_sd"].values[lengths.index(length)]) for length in (1.0, 2.0))
+    return (
+        f"The error of the planned record is {hpa(one)} hPa after one year, which goes to the drift, and "
+        f"{hpa(two)} hPa after two."
+    )
+
+
 def _within_page(line: str) -> list[str]:
     """Break a sentence at 80 columns; tables fit."""
     return textwrap.wrap(line, 80, initial_indent="", subsequent_indent="  ") if len(line) > 80 else [line]
