@@ -16,9 +16,11 @@ _HOURS = {
 _UTC_FIRST = re.compile(r"(utc|gmt|zulu|universal|greenwich|coordinateduniversal)")
 _OFFSET = re.compile(r"(?:utc|gmt)?\s*([+-])\s*(\d{1,2})(?::?(\d{2}))?", re.IGNORECASE)
 _ZONE = rf"((?:utc|gmt)\s*[+-]\s*\d{{1,2}}(?::?\d{{2}})?|[+-]\d{{1,2}}:?\d{{2}}|{'|'.join(sorted(_HOURS))}|utc|gmt)"
+_CAPITALS = rf"((?:UTC|GMT)\s*[+-]\s*\d{{1,2}}(?::?\d{{2}})?|{'|'.join(sorted(_HOURS)).upper()})"
 _SAID = re.compile(
     rf"\btime ?zone\b\W*{_ZONE}\b|\btimes?\b[^.;,]{{0,25}}?\bin {_ZONE}\b|\btime\w*\s*[\[(]\s*{_ZONE}\s*[\])]"
-    r"|\b(local (?:standard |civil )?time)\b",
+    r"|\b(local (?:standard |civil )?time)\b"
+    rf"|(?:\b|_)(?:time|date)s?[\s_:=]+(?:are |is )?(?-i:{_CAPITALS})\b",  # "time est." may be an estimate
     re.IGNORECASE,
 )
 _SUFFIX = re.compile(r"[\d.]\s*([A-Za-z]{2,5})$")
@@ -31,6 +33,8 @@ def zone_of_text(line: str) -> str:
     --------
     >>> zone_of_text("# Time zone: HST"), zone_of_text("date time (UTC-10) pressure"), zone_of_text("by Est Ltd")
     ('HST', 'UTC-10', '')
+    >>> zone_of_text("# operator sheet; times HST"), zone_of_text("date_time_JST;p"), zone_of_text("mean time est. 5 s")
+    ('HST', 'JST', '')
     """
     match = _SAID.search(line)
     return "" if match is None else next(group for group in match.groups() if group)
