@@ -16,7 +16,11 @@ myst_heading_anchors = 3
 autodoc_typehints = "none"
 exclude_patterns = ["_build", "examples", "gallery/sg_execution_times.rst", "sg_execution_times.rst"]
 html_theme = "alabaster"
-html_theme_options = {"description": "The annual cycle of global ocean mass from sea-floor pressure"}
+html_theme_options = {
+    "description": "The annual cycle of global ocean mass from sea-floor pressure",
+    "page_width": "1240px",
+    "body_max_width": "1000px",
+}
 sphinx_gallery_conf = {
     "examples_dirs": "examples",
     "gallery_dirs": "gallery",

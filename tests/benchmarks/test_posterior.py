@@ -72,7 +72,7 @@ def site_loop(observations: Observations, admittance: np.ndarray) -> Callable[[n
     return log_posterior
 
 
-def test_effective_draws_a_second_against_a_plain_sampler() -> None:
+def test_effective_draws_a_second_against_a_plain_sampler(measured) -> None:
     observations, admittance = invented(20)
     model = network_model(observations, admittance, Choices(PLAIN, Priors(), 0.04))
     prior = scale_priors(Priors(), 3)
@@ -99,16 +99,15 @@ def test_effective_draws_a_second_against_a_plain_sampler() -> None:
     start = time.process_time()
     route = integrate_scales(model, prior)
     nodes = route.effective_nodes / (time.process_time() - start)
-    print(
-        f"effective draws of the phasor a second: collapsed {collapsed:.0f}, plain sampler with a loop over the sites "
-        f"{plainly:.1f} (ratio {collapsed / plainly:.0f}), second route {nodes:.0f}"
-    )
+    beside = "a plain sampler with a loop over the sites"
+    measured("effective draws a second, linear parts integrated out", beside, collapsed / plainly, -500.0)
+    measured("effective draws a second, second route", beside, nodes / plainly, None)
     # a short plain chain flatters itself: its autocorrelation time grows with its length
     assert collapsed / plainly > 500.0
 
 
 @pytest.mark.parametrize("scatter", ["normal", "student-t"])
-def test_the_cost_grows_no_faster_than_the_sites(scatter: str) -> None:
+def test_the_cost_grows_no_faster_than_the_sites(scatter: str, measured) -> None:
     settings = PosteriorSettings(site_scatter=scatter, group_scatter=False)
     costs = {}
     for sites in (20, 100, 1000):
@@ -118,5 +117,5 @@ def test_the_cost_grows_no_faster_than_the_sites(scatter: str) -> None:
         run_ensembles(EnsembleTask(model, prior, ENSEMBLES, 3, np.random.default_rng(1)))
         task = EnsembleTask(model, prior, ENSEMBLES, 30, np.random.default_rng(1))
         costs[sites] = seconds(lambda task=task: run_ensembles(task))
-    print(scatter, {sites: f"{cost / 40 * 1e3:.1f} ms a step" for sites, cost in costs.items()})
+    measured(f"a step for 1000 sites, {scatter} scatter", "a step for 100 sites", costs[1000] / costs[100], 15.0)
     assert costs[1000] / costs[100] < 1.5 * 10.0

@@ -83,7 +83,7 @@ def long_record(tmp_path_factory: pytest.TempPathFactory) -> Path:
 @pytest.mark.parametrize(
     ("name", "most"), [("iso.csv", 2.0), ("parts.txt", 2.0), ("record.nc", 2.0), ("plain.nc", 6.0)]
 )
-def test_reading_and_reducing_against_merely_parsing(long_record: Path, name: str, most: float, capsys: Any) -> None:
+def test_reading_and_reducing_against_merely_parsing(long_record: Path, name: str, most: float, measured) -> None:
     rounds = range(5 if name.endswith(".nc") else 2)  # what takes a second is measured well by the quickest
     bare = min(processor_seconds(lambda: parsed(long_record, name)) for _ in rounds)
     record = read_record(long_record, ENTRIES[name], site="A", deployment="A/1")
@@ -91,9 +91,9 @@ def test_reading_and_reducing_against_merely_parsing(long_record: Path, name: st
         processor_seconds(lambda: read_record(long_record, ENTRIES[name], site="A", deployment="A/1")) for _ in rounds
     )
     whole = read + min(processor_seconds(lambda: reduce_to_daily(record)) for _ in rounds)
-    with capsys.disabled():
-        took = f"parser {bare:.1f} s, read {read:.1f} s, read and reduced {whole:.1f} s"
-        print(f"\n{name}: {took}: {whole / bare:.2f} times the parser")
+    parser = "a general parser"
+    measured(f"five years of 15 s samples read ({name})", parser, read / bare, None)
+    measured(f"the same read and reduced to daily means ({name})", parser, whole / bare, most)
     assert whole < most * bare
 
 
@@ -123,10 +123,10 @@ def test_memory_of_two_months(two_months: Path, name: str) -> None:
 
 @pytest.mark.benchmark
 @pytest.mark.parametrize("name", ENTRIES)
-def test_memory_of_five_years(long_record: Path, name: str, capsys: Any) -> None:
+def test_memory_of_five_years(long_record: Path, name: str, measured) -> None:
     arrays = memory_of(long_record, name, 4_000_000)
-    with capsys.disabled():
-        print(f"\n{name}: {arrays:.1f} arrays of {8 * SAMPLES / 2**20:.0f} MiB")
+    beside = "an array of one number a sample"
+    measured(f"memory to read five years of 15 s samples ({name})", beside, arrays, MOST_ARRAYS)
     assert 2.0 < arrays < MOST_ARRAYS
 
 

@@ -49,17 +49,18 @@ def test_plug_in(benchmark) -> None:
     benchmark(plug_in, site(1, 1461, 4, 3))
 
 
-def test_integrated(benchmark) -> None:
+def test_integrated(benchmark, measured) -> None:
     records = site(1, 1461, 4, 3)
     fit = partial(fit_site, records, models=["a", "b", "c"], reference_year=2016)
     benchmark(lambda: fit(rng=np.random.default_rng(1)))
     start = time.process_time()
     plug_in(records)
-    benchmark.extra_info["ratio to a plug-in fit"] = benchmark.stats.stats.min / (time.process_time() - start)
+    ratio = benchmark.stats.stats.min / (time.process_time() - start)
+    measured("fit of a site, drift and noise integrated over", "a fit at the most likely noise alone", ratio, None)
     assert benchmark.stats.stats.min < 0.4
 
 
-def test_two_hundred_sites_use_both_cores() -> None:
+def test_two_hundred_sites_use_both_cores(measured) -> None:
     sites = [site(seed, 500, 1, 0) for seed in range(200)]
     fit = partial(fit_site, models=[], reference_year=2016, rng=np.random.default_rng(1))
     seconds = {}
@@ -70,5 +71,5 @@ def test_two_hundred_sites_use_both_cores() -> None:
             start = time.perf_counter()
             assert len(list(workers.results(fit, sites))) == 200
             seconds[count] = time.perf_counter() - start
-    print(f"200 sites: {seconds[1]:.1f} s on one core, {seconds[2]:.1f} s on two")
+    measured("200 sites fitted on two cores", "on one", seconds[2] / seconds[1], 0.67)
     assert seconds[2] < 0.67 * seconds[1]

@@ -15,7 +15,7 @@ ROOT = Path(massfit.__file__).parent
 SURNAME = r"(?:\b(?:ter|de|Le) )?\b[A-ZÀ-Þ][\w'-]+"
 NAMED = re.compile(rf"({SURNAME})(?:(?:, {SURNAME})* & {SURNAME}|\s+et\s+al\.)?,?\s+\(?((?:19|20)\d\d)\b")
 WORDS = {"From", *calendar.month_name}
-NO_WORKS = {("CGPM", "1901"), ("CODATA", "2018"), ("ITRF", "2020")}
+NO_WORKS = {("CGPM", "1901"), ("CODATA", "2018"), ("ITRF", "2020"), ("RFC", "1952")}
 """Named by body and year alone, as a constant or a frame is."""
 WITHOUT_TITLE = {("Liu", "2025")}
 """Known here by author and year only."""
