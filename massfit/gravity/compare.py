@@ -11,10 +11,10 @@ from massfit.gravity.at_sites import geocentre_of
 from massfit.gravity.bridge import BridgePart, BridgeStep, bridge_step, bridged, largest_gap
 from massfit.gravity.choices import Choice, choice_table
 from massfit.gravity.comparison import Agreement, agreement, shared_covariance
-from massfit.gravity.definitions import Definition, redefined
+from massfit.gravity.definitions import Definition, Part, redefined
 from massfit.gravity.field import GravityField
 from massfit.gravity.inputs import Determination, GravityInputs, Solution
-from massfit.gravity.satellite import Context, SatelliteMean, satellite_mean
+from massfit.gravity.satellite import Context, SatelliteMean, converted, satellite_mean
 from massfit.gravity.site_comparison import SiteComparison, compare_sites
 from massfit.phasor import as_complex, as_components
 from massfit.posterior.network_model import inflation
@@ -43,7 +43,7 @@ class NetworkAnswer:
         Of the record, and of the circulation that no model has.
     admittance : (K, n_site) array of complex
         F of each load member.
-    parts : mapping of str to (str, complex)
+    parts : mapping of str to Part
         Of :func:`massfit.gravity.definitions.redefined`.
     year_draws : (n, n_year, 2) array, optional
         Draws of the phasor of each year, Pa.
@@ -61,7 +61,7 @@ class NetworkAnswer:
     site_phasors: NDArray[np.complex128]
     site_covariances: NDArray[np.float64]
     admittance: NDArray[np.complex128]
-    parts: Mapping[str, tuple[str, complex]]
+    parts: Mapping[str, Part]
     year_draws: NDArray[np.float64] | None = None
     years: tuple[int, ...] = ()
     year_sd: float = 0.0
@@ -85,9 +85,11 @@ class GravityComparison:
     choices : tuple of Choice
         Of the first solution.
     sites : tuple of SiteComparison
-    geocentre : mapping of str to complex
-        X, Y, Z of the centre of figure in the centre of mass that the water of the answer implies, m.
+    geocentre : mapping of str to (complex, (2, 2) array)
+        X, Y, Z of the centre of figure in the centre of mass that the water of the answer implies, m, and their
+        covariances, m2.
     definitions : tuple of Definition
+        Of the network, the satellites and the analyst's other determinations.
     bridge : tuple of BridgePart
         The network's own cycle before, in and after the longest gap of the first solution; empty where there is none or
         the years are not told apart.
@@ -103,7 +105,7 @@ class GravityComparison:
     others: tuple[tuple[Determination, Agreement], ...]
     choices: tuple[Choice, ...]
     sites: tuple[SiteComparison, ...]
-    geocentre: Mapping[str, complex]
+    geocentre: Mapping[str, tuple[complex, NDArray[np.float64]]]
     definitions: tuple[Definition, ...]
     bridge: tuple[BridgePart, ...]
     step: BridgeStep | None
@@ -147,8 +149,8 @@ def compare_with_gravity(inputs: GravityInputs, answer: NetworkAnswer, context: 
             answer.admittance,
             context,
         ),
-        implied_geocentre(answer.phasor, context),
-        redefined(answer.phasor, answer.parts),
+        implied_geocentre(answer.phasor, answer.covariance, context),
+        _definitions(network, satellite, inputs.determinations, answer.parts),
         *_bridge(solutions[0], answer, context),
         (*inputs.warnings, *_warnings(inputs, solutions, context)),
     )
@@ -201,26 +203,41 @@ def _shared(answer: NetworkAnswer, solutions: Sequence[SatelliteMean]) -> NDArra
     return shared_covariance(answer.by_member, satellites)
 
 
-def implied_geocentre(phasor: complex, context: Context) -> dict[str, complex]:
+def implied_geocentre(
+    phasor: complex, covariance: NDArray[np.float64], context: Context
+) -> dict[str, tuple[complex, NDArray[np.float64]]]:
     """Annual motion of the geocentre that the water of an answer implies, mean over the load members.
 
     Parameters
     ----------
     phasor : complex
         Of the whole-ocean mean, Pa.
+    covariance : (2, 2) array
+        Pa2.
     context : Context
 
     Returns
     -------
-    dict of str to complex
-        X, Y, Z, m, in the phase convention of the phasor. The load of air is not in it.
+    dict of str to (complex, (2, 2) array)
+        X, Y, Z, m, in the phase convention of the phasor, with the error of the answer and the spread of the
+        members, m2. The load of air is not in it.
     """
     total = context.predicted.total
     degree_one = np.stack([total[:, 0, 1, 1], total[:, 1, 1, 1], total[:, 0, 1, 0]], axis=-1)
-    per_water = (degree_one / context.predicted.ocean_mean[:, None]).mean(axis=0)
-    layer = phasor / STANDARD_GRAVITY * per_water
-    motion = geocentre_of(layer, float(context.love.k[1]), EARTH_DENSITY)
-    return {axis: complex(value) for axis, value in zip("XYZ", motion, strict=True)}
+    per_water = degree_one / context.predicted.ocean_mean[:, None] / STANDARD_GRAVITY
+    motion = geocentre_of(per_water, float(context.love.k[1]), EARTH_DENSITY)
+    return {axis: converted(phasor, covariance, factors) for axis, factors in zip("XYZ", motion.T, strict=True)}
+
+
+def _definitions(
+    network: Determination, satellite: Determination, others: Sequence[Determination], parts: Mapping[str, Part]
+) -> tuple[Definition, ...]:
+    every = [(network, True), (satellite, False), *((other, False) for other in others)]
+    return tuple(
+        definition
+        for each, recorders in every
+        for definition in redefined(each.label, each.phasor, parts, recorders=recorders)
+    )
 
 
 def _bridge(

@@ -19,11 +19,33 @@ _MM = 1000.0
 
 
 @dataclass(frozen=True)
+class Part:
+    """What other definitions leave in.
+
+    Parameters
+    ----------
+    quantity : str
+        What a cycle is of with the part in it.
+    phasor : complex
+        Of the part, Pa.
+    at_recorders : bool
+        Whether it is the mean over the recorders of something that has no mean over the ocean, such as a tide: then
+        only the recorders' own answer can hold it.
+    """
+
+    quantity: str
+    phasor: complex
+    at_recorders: bool = False
+
+
+@dataclass(frozen=True)
 class Definition:
     """One way to state a cycle.
 
     Parameters
     ----------
+    determination : str
+        Whose cycle.
     name : str
     quantity : str
         What the phasor is of.
@@ -31,20 +53,27 @@ class Definition:
         Pa.
     """
 
+    determination: str
     name: str
     quantity: str
     phasor: complex
 
 
-def redefined(phasor: complex, parts: Mapping[str, tuple[str, complex]]) -> tuple[Definition, ...]:
-    """Re-express a cycle with each part put in or taken out.
+def redefined(
+    determination: str, phasor: complex, parts: Mapping[str, Part], *, recorders: bool
+) -> tuple[Definition, ...]:
+    """Re-express a cycle with each part put in.
 
     Parameters
     ----------
+    determination : str
+        Label.
     phasor : complex
         Ocean-mean pressure of the ocean's water, Pa.
-    parts : mapping of str to (str, complex)
-        Under a name: what the quantity is with the part in it, and the part's phasor, Pa.
+    parts : mapping of str to Part
+        Under the name of each.
+    recorders : bool
+        Whether the cycle is that of the recorders.
 
     Returns
     -------
@@ -53,12 +82,18 @@ def redefined(phasor: complex, parts: Mapping[str, tuple[str, complex]]) -> tupl
 
     Examples
     --------
-    >>> found = redefined(85.0 + 0j, {"air": ("water and the air above", -63.0 + 0j)})
+    >>> parts = {"air": Part("water and the air above", -63.0), "Sa": Part("water and Sa", 3.0, at_recorders=True)}
+    >>> found = redefined("satellites", 85.0 + 0j, parts, recorders=False)
     >>> [(each.name, each.phasor.real) for each in found]
     [('as it is', 85.0), ('with air', 22.0)]
     """
-    first = Definition("as it is", "water of the whole ocean", phasor)
-    return (first, *(Definition(f"with {name}", text, phasor + part) for name, (text, part) in parts.items()))
+    first = Definition(determination, "as it is", "water of the whole ocean", phasor)
+    put_in = [
+        Definition(determination, f"with {name}", part.quantity, phasor + part.phasor)
+        for name, part in parts.items()
+        if recorders or not part.at_recorders
+    ]
+    return (first, *put_in)
 
 
 def in_units(phasor: complex, ocean_area_m2: float) -> dict[str, float]:

@@ -153,7 +153,12 @@ def satellite_mean(inputs: GravityInputs, solution: Solution, context: Context) 
     covariance = STANDARD_GRAVITY**2 * fit.covariance + own
     factors = whole_ocean_factors(context.predicted, seen)
     whole, spread = converted(observed, covariance, factors)
-    actions = (*monthly.actions, *unseen, *_kernel_actions(kernel, fit, constant, error_from))
+    actions = (
+        *monthly.actions,
+        *unseen,
+        *_circulation_action(inputs),
+        *_kernel_actions(kernel, fit, constant, error_from),
+    )
     return SatelliteMean(
         solution.name, observed, covariance, whole, spread, factors,
         land_leakage(context.predicted, kernel), fit, series, monthly, actions,
@@ -306,6 +311,15 @@ def _own_error(
         replaced=replaced, reference_year=context.reference_year,
     )  # fmt: skip
     return (np.zeros((2, 2)), "nothing") if formal is None else (STANDARD_GRAVITY**2 * formal, "formal")
+
+
+def _circulation_action(inputs: GravityInputs) -> list[str]:
+    """Say what a buffer leaves of the circulation that the makers of the fields took off."""
+    chosen = inputs.settings
+    if chosen.restore_dealiasing or not chosen.buffer_km:
+        return []
+    known = "its effect is among the choices" if inputs.dealiasing else "without a dealiasing product it is not known"
+    return [f"the circulation that was taken off the fields has no mean over the whole ocean only: {known}"]
 
 
 def _model_actions(solution: Solution, count: int, top: int) -> list[str]:

@@ -9,11 +9,12 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
-from massfit.constants import PASCAL_PER_HPA, STANDARD_GRAVITY
+from massfit.constants import EARTH_RADIUS, PASCAL_PER_HPA, STANDARD_GRAVITY
 from massfit.earth.love import love_numbers
 from massfit.errors import Fault, InputError
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.gravity.compare import GravityComparison, NetworkAnswer, compare_with_gravity
+from massfit.gravity.definitions import Part
 from massfit.gravity.field import Span
 from massfit.gravity.inputs import GravityInputs
 from massfit.gravity.predicted import predicted_mass
@@ -29,7 +30,7 @@ from massfit.results.posterior_groups import POSTERIOR
 
 _PARTS = {
     "ocean_mean_atmosphere": ("ocean-mean air pressure", "water of the ocean and the air above it"),
-    "long_period_tides": ("long-period tides", "water, with the long-period tides at the recorders left in"),
+    "long_period_tides": ("Sa", "water, with the annual tide Sa at the recorders left in"),
     "pole_tide": ("pole tide", "water, with the pole tide at the recorders left in"),
 }
 """Corrections that other determinations leave in: what they are called, and what the cycle is then of."""
@@ -223,9 +224,9 @@ def _yearly(posterior: xr.Dataset) -> tuple[NDArray[np.float64] | None, tuple[in
     return draws.reshape(-1, *draws.shape[2:]), tuple(int(year) for year in posterior["year"].values)
 
 
-def _parts(sites: Sequence[Mapping[str, Any]], vapour: complex, ocean_area_m2: float) -> dict[str, tuple[str, complex]]:
+def _parts(sites: Sequence[Mapping[str, Any]], vapour: complex, ocean_area_m2: float) -> dict[str, Part]:
     """Phasors that other definitions leave in, Pa: means over the sites of what was taken off there."""
-    found = {}
+    found: dict[str, Part] = {}
     for series, (name, text) in _PARTS.items():
         values = [
             complex(*correction["phasor_hpa"])
@@ -234,10 +235,12 @@ def _parts(sites: Sequence[Mapping[str, Any]], vapour: complex, ocean_area_m2: f
             if correction["series"] == series and correction["phasor_hpa"] is not None
         ]
         if values and any(values):
-            found[name] = text, PASCAL_PER_HPA * complex(np.mean(values))
+            found[name] = Part(text, PASCAL_PER_HPA * complex(np.mean(values)), series != "ocean_mean_atmosphere")
     if vapour:
         text = "water that the ocean exchanges with the land alone, not with the vapour in the air"
-        found["its share of the vapour put back"] = text, STANDARD_GRAVITY * vapour / ocean_area_m2
+        found["the vapour put back into the ocean"] = Part(text, STANDARD_GRAVITY * vapour / ocean_area_m2)
+        text = "water, less its mean over the whole Earth (degree 0), which the vapour in the air takes along"
+        found["degree 0 left out"] = Part(text, STANDARD_GRAVITY * vapour / (4.0 * np.pi * EARTH_RADIUS**2))
     return found
 
 

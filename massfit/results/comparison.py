@@ -78,9 +78,14 @@ def comparison_summary(found: GravityComparison, *, reference_year: int, ocean_a
             }
             for each in found.sites
         ],
-        "geocentre_mm": {axis: _geocentre(axis, value) for axis, value in found.geocentre.items()},
+        "geocentre_mm": {axis: _geocentre(axis, *motion) for axis, motion in found.geocentre.items()},
         "definitions": [
-            {"name": each.name, "quantity": each.quantity, **in_units(each.phasor, ocean_area_m2)}
+            {
+                "determination": each.determination,
+                "name": each.name,
+                "quantity": each.quantity,
+                **in_units(each.phasor, ocean_area_m2),
+            }
             for each in found.definitions
         ],
         "bridge": [
@@ -157,7 +162,7 @@ def comparison_dataset(found: GravityComparison, summary: Mapping[str, Any]) -> 
             "row_size": (("solution",), np.array(lengths, dtype=np.int32), {"units": "1", "sample_dimension": "obs"}),
             "geocentre": (
                 ("axis", "component"),
-                _stack(list(found.geocentre.values())),
+                _stack([phasor for phasor, _ in found.geocentre.values()]),
                 {"units": "m", "long_name": "centre of figure in the centre of mass that the water implies"},
             ),
         },
@@ -228,7 +233,7 @@ def _agreement(apart: Agreement, reference_year: int) -> dict[str, Any]:
     joint = None
     if apart.joint_phasor is not None and apart.joint_covariance is not None:
         joint = _determination(
-            Determination("joint", "weighted by the inverse covariances", apart.joint_phasor, apart.joint_covariance),
+            Determination("joint", "generalised least squares of the two", apart.joint_phasor, apart.joint_covariance),
             reference_year,
         )
     return {
@@ -257,11 +262,14 @@ def _step(step: BridgeStep) -> dict[str, Any]:
     }
 
 
-def _geocentre(axis: str, value: complex) -> dict[str, float]:
+def _geocentre(axis: str, value: complex, covariance: NDArray[np.float64]) -> dict[str, float]:
     amplitude, error, phase = GEOCENTRE_ITRF2020[axis]
+    amplitude_sd, day_sd = polar_sd(value, covariance)
     return {
         "amplitude": _MM * abs(value),
+        "amplitude_sd": _MM * amplitude_sd,
         "peak_day": float(peak_days(value)),
+        "peak_day_sd": day_sd,
         "itrf2020_amplitude": amplitude,
         "itrf2020_sd": error,
         "itrf2020_peak_day": float(phase / 360.0 * TROPICAL_YEAR_DAYS % TROPICAL_YEAR_DAYS),

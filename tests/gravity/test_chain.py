@@ -11,11 +11,14 @@ import pytest
 
 from massfit.errors import InputError
 from massfit.gravity.compare import NetworkAnswer, compare_with_gravity, implied_geocentre
+from massfit.gravity.definitions import Part
 from massfit.gravity.inputs import GravityInputs, Solution
 from massfit.gravity.predicted import predicted_mass
 from massfit.gravity.satellite import Context, satellite_mean
 from massfit.settings import Gravity
 from massfit.site import Site
+
+PARTS = {"air": Part("water and air", -60.0 + 0j), "Sa": Part("water and tide", 2.0 + 0j, at_recorders=True)}
 
 
 def _load() -> ModuleType:
@@ -108,7 +111,7 @@ def test_every_recorder_sees_its_own_fingerprint(earth: Any, context: Context) -
     truth = earth.answer * admittance(["nominal"])[0]
     answer = NetworkAnswer(
         earth.answer, 25.0 * np.eye(2), sites, truth, np.repeat(16.0 * np.eye(2)[None], 3, 0),
-        admittance(list(context.predicted.members)), {"air": ("water and air", -60.0 + 0j)},
+        admittance(list(context.predicted.members)), PARTS,
     )  # fmt: skip
     found = compare_with_gravity(inputs(earth, smoothing_km=500.0), answer, context)
     for each, expected in zip(found.sites, truth, strict=True):
@@ -122,16 +125,22 @@ def test_every_recorder_sees_its_own_fingerprint(earth: Any, context: Context) -
     off = next(choice for choice in found.choices if choice.name == "degree 1 missing from the fields only")
     assert off.phasor is not None
     assert abs(off.phasor) < 0.9 * abs(earth.answer)
-    assert [each.name for each in found.definitions] == ["as it is", "with air"]
+    assert [(each.determination, each.name) for each in found.definitions] == [
+        ("network", "as it is"), ("network", "with air"), ("network", "with Sa"),
+        ("satellite gravity", "as it is"), ("satellite gravity", "with air"),
+    ]  # fmt: skip
 
 
 def test_the_geocentre_is_that_of_the_water(earth: Any) -> None:
     loads = [each for each in earth.loads if each.name == "nominal"]
     predicted = predicted_mass(earth.operator, loads, water_vapour=earth.vapour, max_degree=2)
-    found = implied_geocentre(earth.answer, Context(earth.ocean, earth.love, predicted, earth.vapour, None, 2015))
+    context = Context(earth.ocean, earth.love, predicted, earth.vapour, None, 2015)
+    found = implied_geocentre(earth.answer, 4.0 * np.eye(2), context)
     # centre of mass from degree 1 of the potential itself: sqrt(3) a C, seen the other way round
     expected = -np.sqrt(3.0) * 6378136.3 * earth.geocentre_one
-    np.testing.assert_allclose([found[axis] for axis in "XYZ"], expected, rtol=1e-10)
+    np.testing.assert_allclose([found[axis][0] for axis in "XYZ"], expected, rtol=1e-10)
+    # one member only: the error of the answer, 2 Pa, in the same proportion
+    assert np.sqrt(found["Z"][1][0, 0]) == pytest.approx(2.0 * abs(expected[2] / earth.answer))
 
 
 def test_products_that_are_asked_for_must_be_there(earth: Any, context: Context) -> None:

@@ -86,10 +86,10 @@ def geocentre() -> list[Row]:
     loads = [each for each in earth.loads if each.name == "nominal"]
     predicted = predicted_mass(earth.operator, loads, water_vapour=earth.vapour, max_degree=2)
     context = Context(earth.ocean, earth.love, predicted, earth.vapour, None, 2015)
-    found = implied_geocentre(earth.answer, context)
+    found = implied_geocentre(earth.answer, np.zeros((2, 2)), context)
     rows = []
     for axis, (amplitude, _, phase) in GEOCENTRE_ITRF2020.items():
-        water, frame = 1000.0 * found[axis], amplitude * np.exp(1j * np.radians(phase))
+        water, frame = 1000.0 * found[axis][0], amplitude * np.exp(1j * np.radians(phase))
         days = [float(peak_days(each)) for each in (water, frame)]
         name = f"{axis}: {abs(water):.2f} mm, day {days[0]:.0f}, against {amplitude:.2f} mm, day {days[1]:.0f}"
         rows.append(Row(name, 0.0, float(abs(water - frame) / abs(water + frame)), 1.0, ".2f"))

@@ -84,7 +84,8 @@ def _geocentre(comparison: Mapping[str, Any]) -> Table:
     head = ("axis", "this water / mm", "day", "ITRF2020 / mm", "day")
     rows = [
         [
-            axis, f"{each['amplitude']:.2f}", f"{each['peak_day']:.0f}",
+            axis, f"{each['amplitude']:.2f} ± {each['amplitude_sd']:.2f}",
+            f"{each['peak_day']:.0f} ± {each['peak_day_sd']:.0f}",
             f"{each['itrf2020_amplitude']:.2f} ± {each['itrf2020_sd']:.2f}", f"{each['itrf2020_peak_day']:.0f}",
         ]
         for axis, each in comparison["geocentre_mm"].items()
@@ -93,16 +94,17 @@ def _geocentre(comparison: Mapping[str, Any]) -> Table:
 
 
 def _definitions(comparison: Mapping[str, Any]) -> Table:
-    head = ("", "hPa", "day", "mm fresh", "mm sea", "mm fresh, peak to trough", "Gt", "Gt, 3.6184e14 m2", "of")
-    rows = [
-        [
-            each["name"], f"{each['amplitude_hpa']:.3f}", f"{each['peak_day']:.1f}", f"{each['water_mm']:.2f}",
+    head = ("cycle", "", "hPa", "day", "mm fresh", "mm sea", "mm fresh, peak to trough", "Gt", "Gt, 3.6184e14 m2", "of")
+    rows = []
+    for each in comparison["definitions"]:
+        whose = each["determination"] if each["name"] == "as it is" else ""
+        sizes = (
+            f"{each['amplitude_hpa']:.3f}", f"{each['peak_day']:.1f}", f"{each['water_mm']:.2f}",
             f"{each['sea_water_mm']:.2f}", f"{each['water_peak_to_trough_mm']:.2f}", f"{each['mass_gt']:.0f}",
-            f"{each['mass_textbook_area_gt']:.0f}", each["quantity"],
-        ]
-        for each in comparison["definitions"]
-    ]  # fmt: skip
-    return Table("The network's cycle in other definitions", head, rows, wordy=True)
+            f"{each['mass_textbook_area_gt']:.0f}",
+        )  # fmt: skip
+        rows.append([whose, each["name"], *sizes, each["quantity"]])
+    return Table("Each cycle in other definitions", head, rows, wordy=True)
 
 
 def _bridge(comparison: Mapping[str, Any]) -> Table:

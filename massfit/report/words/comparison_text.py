@@ -63,8 +63,8 @@ def bridge_sentences(comparison: Mapping[str, Any]) -> list[str]:
         return []
     sds = [step["covariance_hpa2"][place][place] ** 0.5 for place in (0, 1)]
     size = (
-        f"In the gap less before and after it: {step['in_phase_hpa']:+.3f} ± {sds[0]:.3f} hPa in phase, "
-        f"{step['quadrature_hpa']:+.3f} ± {sds[1]:.3f} hPa in quadrature."
+        f"In the gap less before and after it: {step['in_phase_hpa']:+z.3f} ± {sds[0]:.3f} hPa in phase, "
+        f"{step['quadrature_hpa']:+z.3f} ± {sds[1]:.3f} hPa in quadrature."
     )
     assumed = (
         f"Before it sees a record the model expects ± {step['assumed_sd_hpa']:.3f} hPa (year_sd_hpa); the records take "
