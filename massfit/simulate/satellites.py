@@ -23,7 +23,9 @@ GAP_MONTHS = 11
 """Months between the first and the second pair of satellites; only periods of three years and more have them."""
 
 _ALIAS_DAYS = 161.0
-_NOISE = 2.5e-12  # of a coefficient of low degree and one month
+_NOISE = 2.5e-12  # of a coefficient and one month: the scatter of real months about degree 14
+_NOISE_DEGREE = 40.0  # where it has doubled
+_CENTRE_ERROR = 3e-12  # annual, of a coefficient of degree 2 to 6
 _C20, _C30 = ("C", 2, 0), ("C", 3, 0)
 _DEGREE_ONE: tuple[Name, ...] = (("C", 1, 0), ("C", 1, 1), ("S", 1, 1))
 
@@ -142,11 +144,11 @@ def _fields(
     n = np.arange(TOP_DEGREE + 1)
     shape = (2, TOP_DEGREE + 1, TOP_DEGREE + 1)
     # annual errors of low degree, the centre's own
-    size = np.where((n >= 2) & (n <= 6), 8e-12, 0.0)[None, :, None]
+    size = np.where((n >= 2) & (n <= 6), _CENTRE_ERROR, 0.0)[None, :, None]
     own = size * np.tril(rng.standard_normal(shape) + 1j * rng.standard_normal(shape))
     fields = []
     for month, span, phase in zip(water, spans, wave, strict=True):
-        noise = _NOISE * (1.0 + (n / 20.0) ** 2)[None, :, None] * np.tril(rng.standard_normal(shape))
+        noise = _NOISE * (1.0 + (n / _NOISE_DEGREE) ** 2)[None, :, None] * np.tril(rng.standard_normal(shape))
         noise[0, 2, 0] += (
             1.2e-10 * rng.standard_normal() + 1.5e-10 * _mean_of(2 * np.pi / _ALIAS_DAYS, span, clock).real
         )
