@@ -82,8 +82,10 @@ class GravityComparison:
         Network less satellites.
     others : tuple of (Determination, Agreement)
         Models that state no error beside solutions that do, the analyst's other determinations, and network less each.
+    choices_of : str
+        The first solution that is weighed.
     choices : tuple of Choice
-        Of the first solution.
+        Of its processing.
     sites : tuple of SiteComparison
     geocentre : mapping of str to (complex, (2, 2) array)
         X, Y, Z of the centre of figure in the centre of mass that the water of the answer implies, m, and their
@@ -103,6 +105,7 @@ class GravityComparison:
     network: Determination
     agreement: Agreement
     others: tuple[tuple[Determination, Agreement], ...]
+    choices_of: str
     choices: tuple[Choice, ...]
     sites: tuple[SiteComparison, ...]
     geocentre: Mapping[str, tuple[complex, NDArray[np.float64]]]
@@ -139,7 +142,7 @@ def compare_with_gravity(inputs: GravityInputs, answer: NetworkAnswer, context: 
         network,
         _agree(network, satellite, _shared(answer, solutions)),
         tuple((each, _agree(network, each)) for each in (*_unweighed(solutions), *inputs.determinations)),
-        choice_table(inputs, inputs.solutions[0], context),
+        *_choices(inputs, weighed_solutions(solutions)[0].name, context),
         compare_sites(
             inputs,
             weighed_solutions(solutions),
@@ -185,6 +188,11 @@ def together(solutions: Sequence[SatelliteMean]) -> Determination:
 def weighed_solutions(solutions: Sequence[SatelliteMean]) -> tuple[SatelliteMean, ...]:
     """Solutions that state an error; all where none does."""
     return tuple(each for each in solutions if each.error_stated) or tuple(solutions)
+
+
+def _choices(inputs: GravityInputs, name: str, context: Context) -> tuple[str, tuple[Choice, ...]]:
+    solution = next(each for each in inputs.solutions if each.name == name)
+    return name, choice_table(inputs, solution, context)
 
 
 def _unweighed(solutions: Sequence[SatelliteMean]) -> list[Determination]:
@@ -263,8 +271,8 @@ def _warnings(inputs: GravityInputs, solutions: Sequence[SatelliteMean], context
         for each in solutions if not each.error_stated
     ]  # fmt: skip
     found += [
-        f"{each.name}: its error is from the formal errors of its file, which are mostly too small: agreement asks for "
-        "more than it may." for each in solutions if each.error_from == "formal"
+        f"{each.name}: its error is from the formal errors of its file, which are mostly too small: network and "
+        "satellites may look further apart than they are." for each in solutions if each.error_from == "formal"
     ]  # fmt: skip
     if len(weighed) == 1:
         found.append("One solution only: the disagreement between centres is not in the error of the satellites.")

@@ -16,7 +16,7 @@ from massfit.gravity.field import Span
 from massfit.gravity.inputs import GravityInputs, Solution
 from massfit.gravity.kernel import OceanKernel, ocean_kernel
 from massfit.gravity.mass import mass_per_coefficient
-from massfit.gravity.model import formal_covariance, solution_fields, used_degree
+from massfit.gravity.model import calendar_months, formal_covariance, solution_fields, used_degree
 from massfit.gravity.monthly import Addition, MonthlyMass, Replacement, monthly_mass
 from massfit.gravity.predicted import PredictedMass, land_leakage, whole_ocean_factors
 from massfit.gravity.tables import Name
@@ -186,7 +186,7 @@ def assembled(inputs: GravityInputs, solution: Solution, context: Context) -> Mo
     made = monthly_mass(
         fields, context.love, max_degree=top, replacements=replacements, added=added, window=context.window,
     )  # fmt: skip
-    return replace(made, actions=(*_model_actions(solution, len(fields), top), *made.actions, *notes))
+    return replace(made, actions=(*_model_actions(solution, len(fields), top, context.window), *made.actions, *notes))
 
 
 def degree_zero(inputs: GravityInputs) -> str:
@@ -322,13 +322,14 @@ def _circulation_action(inputs: GravityInputs) -> list[str]:
     return [f"the circulation that was taken off the fields has no mean over the whole ocean only: {known}"]
 
 
-def _model_actions(solution: Solution, count: int, top: int) -> list[str]:
-    if not solution.models:
+def _model_actions(solution: Solution, count: int, top: int, window: Span | None) -> list[str]:
+    if not solution.models or window is None:
         return []
     timed = any(each.field.span is not None for each in solution.models)
+    wanted = len(calendar_months(window))
     return [
-        f"annual terms of a model, to degree {top}, written out as {count} months; its trend, steps and other periods "
-        "are left out",
+        f"annual terms of a model, to degree {top}, written out as {count} of {wanted} months; its trend, steps and "
+        "other periods are left out",
         f"{len(solution.models)} stretches of time, each with its own terms" if timed
         else "the file states no time that it holds for: taken to hold for the whole comparison",
     ]  # fmt: skip

@@ -59,6 +59,7 @@ def comparison_summary(found: GravityComparison, *, reference_year: int, ocean_a
             {**_determination(other, reference_year), "difference": _agreement(apart, reference_year)}
             for other, apart in found.others
         ],
+        "choices_of": found.choices_of,
         "choices": [
             {
                 "name": each.name,

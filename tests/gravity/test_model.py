@@ -161,7 +161,7 @@ def test_one_coefficient_by_hand(earth: Any, context: Context) -> None:
     expected = STANDARD_GRAVITY * kernel.weights[0, 5, 2] * layer * phasor[0, 5, 2]
     assert found.kernel_phasor == pytest.approx(expected, rel=2e-5)
     assert found.monthly.max_degree == 5  # the prediction ends where the model does
-    assert found.monthly.actions[0].startswith("annual terms of a model, to degree 5, written out as 60 months")
+    assert found.monthly.actions[0].startswith("annual terms of a model, to degree 5, written out as 60 of 60 months")
 
 
 def test_stretches_count_by_their_months(earth: Any, context: Context) -> None:

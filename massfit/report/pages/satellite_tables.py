@@ -60,7 +60,7 @@ def _choices(comparison: Mapping[str, Any]) -> Table:
             for text in ((f"{row[key]['water_mm']:.2f}", f"{row[key]['peak_day']:.1f}") if row[key] else ("", ""))
         ]
         rows.append([row["name"] + (f" (not possible: {row['problem']})" if row["problem"] else ""), *cells])
-    return Table(f"What each choice does to the answer of {comparison['solutions'][0]['name']}", head, rows)
+    return Table(f"What each choice does to the answer of {comparison['choices_of']}", head, rows)
 
 
 def _sites(comparison: Mapping[str, Any]) -> Table:

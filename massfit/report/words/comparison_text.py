@@ -99,7 +99,7 @@ def comparison_text(comparison: Mapping[str, Any]) -> str:
     for solution in comparison["solutions"]:
         lines += ["", f"Solution {solution['name']}", *(f"  {action}" for action in solution["actions"])]
     width = max(len(row["name"]) for row in comparison["choices"])
-    name = comparison["solutions"][0]["name"]
+    name = comparison["choices_of"]
     head = f"{'':<{width + 2}}  {'as the kernel sees it':<21}  whole ocean"
     lines += ["", f"What each choice does to {name}", head]
     lines += [f"  {row['name']:<{width}}  {_choice(row)}" for row in comparison["choices"]]
