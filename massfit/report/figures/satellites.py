@@ -91,7 +91,7 @@ def _plane(axes: Axes, placed: Sequence[Placed]) -> None:
             axes.add_patch(normal_ellipse(each.phasor_hpa, each.covariance_hpa2, RADIUS_95, **look))
         axes.plot(
             *each.phasor_hpa, linestyle="none", marker=mark, markersize=8 if mark == "+" else 4.5, color=colour,
-            label=fitted(each.label, 60),
+            label=fitted(each.label, 60) + ("" if each.error_stated else ", no error stated"),
         )  # fmt: skip
         half = RADIUS_95 * np.sqrt(np.diag(each.covariance_hpa2)) * each.error_stated
         reach = np.vstack([reach, each.phasor_hpa - half, each.phasor_hpa + half])

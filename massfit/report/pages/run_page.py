@@ -63,7 +63,8 @@ PICTURES = {
     "the month, from the last day of the records, in which a recorder ends or is replaced by one with a drift of its "
     "own; the cross is for a recorder that is lost with its record.",
     "satellite": "Network, satellites and other determinations of the water of the whole ocean, with 95 % ellipses; "
-    "the satellites' ocean mean of each month as the kernel sees it, less its mean, and the annual cycle fitted to it.",
+    "the satellites' ocean mean of each month as the kernel sees it, less its mean, and the annual cycle fitted to it; "
+    "of a model with annual terms, these alone.",
     "satellite_sites": "Satellite pressure at each recorder (squares) beside the recorder's own phasor (dots), with "
     "one standard deviation; bars may lead out of the frame. p: probability of a difference at least as large; names "
     "in bold have less than 0.05.",
