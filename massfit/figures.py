@@ -7,6 +7,7 @@ Colours are those of Okabe & Ito (2008) and cividis: no figure sets red against 
 from matplotlib.figure import Figure
 
 from massfit.fingerprint.ocean import OceanFunction
+from massfit.report.figures.candidate_map import candidate_map
 from massfit.report.figures.convergence import convergence_figure
 from massfit.report.figures.corner import corner_figure
 from massfit.report.figures.coverage_calendar import coverage_calendar
@@ -17,10 +18,12 @@ from massfit.report.figures.fingerprint_members import fingerprint_members
 from massfit.report.figures.moved_site import moved_site_figure
 from massfit.report.figures.network_map import network_map
 from massfit.report.figures.phasor_plane import phasor_plane
+from massfit.report.figures.record_length import record_length_figure
 from massfit.report.figures.record_panels import record_panels
 from massfit.report.figures.render import png
 from massfit.report.figures.satellite_sites import satellite_sites_figure
 from massfit.report.figures.satellites import satellite_figure
+from massfit.report.figures.service_plan import service_plan_figure
 from massfit.report.figures.site_sheet import site_sheet
 from massfit.report.figures.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM
 from massfit.results.estimate import Estimate
@@ -29,6 +32,7 @@ from massfit.results.finished import FinishedRun, finished_run
 __all__ = [
     "COLUMN_WIDTH_MM",
     "PAGE_WIDTH_MM",
+    "candidate_map",
     "convergence_figure",
     "corner_figure",
     "coverage_calendar",
@@ -39,10 +43,12 @@ __all__ = [
     "network_map",
     "phasor_plane",
     "png",
+    "record_length_figure",
     "record_panels",
     "result_figures",
     "satellite_figure",
     "satellite_sites_figure",
+    "service_plan_figure",
     "site_sheet",
     "world_map",
 ]  # fmt: skip

@@ -3,6 +3,7 @@
 import numpy as np
 import pytest
 import xarray as xr
+from arviz_stats.base import array_stats
 
 from massfit.results.chains import chain_diagnostics
 from massfit.results.estimate import Estimate
@@ -24,14 +25,16 @@ def autoregression(rng: np.random.Generator, memory: float, shape: tuple[int, ..
 
 
 def test_the_numbers_of_the_run_are_found_again_in_its_file(run: Estimate) -> None:
-    # the run judged the arrays before they were dealt out to a file; the log posterior is not in the file
+    # the run judged the arrays before they were dealt out to a file, and the log posterior, which is not in the file
     groups = posterior_groups(run.posterior, run.site_phasors, run.fingerprints)
     found, own = chain_diagnostics(groups["posterior"]), run.posterior.convergence
-    assert float(found["rhat"].max()) <= own.rhat_max + 1e-12
+    arrays = [run.posterior.member_annual[..., 0], run.posterior.member_annual[..., 1]]
+    arrays += list(np.moveaxis(np.log(run.posterior.scales), -1, 0))
+    rhat = [max(float(array_stats.rhat(member)) for member in values) for values in arrays]
+    assert found["rhat"].values == pytest.approx(rhat, rel=1e-12)
+    assert max(rhat) <= own.rhat_max + 1e-12
     assert float(found["ess_bulk"].min()) >= own.ess_bulk_min - 1e-6
     assert float(found["ess_tail"].min()) >= own.ess_tail_min - 1e-6
-    near = [float(found["rhat"].max()) - 1.0, float(found["ess_bulk"].min()), float(found["ess_tail"].min())]
-    assert near == pytest.approx([own.rhat_max - 1.0, own.ess_bulk_min, own.ess_tail_min], rel=0.5)
 
 
 def test_walkers_and_members_are_told_apart() -> None:
