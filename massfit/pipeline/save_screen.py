@@ -1,5 +1,6 @@
 """Screen the fields of ocean models and write the folder, whole or not at all."""
 
+import shlex
 from collections.abc import Sequence
 from datetime import UTC, datetime
 from pathlib import Path
@@ -88,7 +89,7 @@ def screen_to_folder(
             )  # fmt: skip
             processes = executor.count
         provenance = {
-            "command": f"massfit screen {' '.join(named)}",
+            "command": _command(named, ocean_mean, network, record_years),
             **made_by(processes=processes),
             "settings": {
                 "ocean_mean": list(ocean_mean), "variable": variable, "record_years": list(record_years),
@@ -106,6 +107,16 @@ def screen_to_folder(
         times("page", 1, 1)
         write_folder(partial, run, summary_file=SCREENING_FILE, page_file=PAGE_FILE, page=page, pictures=pictures)
     return run
+
+
+def _command(
+    named: Sequence[str], ocean_mean: Sequence[str], network: Path | None, record_years: Sequence[float]
+) -> str:
+    """Spell the command; what else was chosen stands among the settings."""
+    words = [*named, *(word for choice in ocean_mean for word in ("--ocean-mean", choice))]
+    words += ["--network", str(network)] if network is not None else []
+    words += [word for years in record_years for word in ("--years", f"{years:g}")]
+    return f"massfit screen {shlex.join(words)}"
 
 
 def field_inputs(fields: Sequence[ModelField]) -> dict[str, str]:

@@ -133,12 +133,17 @@ def _facts(jobs: list[_Job]) -> dict[str, tuple[str, list[object], dict[str, str
         "years": ([job.axis.span_days / TROPICAL_YEAR_DAYS for job in jobs], "length of the model"),
         "lines": ([len(job.design.lines) for job in jobs], "lines beside the annual one that tell of its noise"),
         "ocean_mean": ([job.field.ocean_mean for job in jobs], "what was done about the ocean mean"),
+        "ocean_share": ([_ocean_share(job) for job in jobs], "share of the area of the ocean that the model covers"),
         "readings": ([_readings(job) for job in jobs], "how often what is stored was read"),
     }
     units = {"step": {"units": "d"}, "years": {"units": "yr"}}
     return {
         name: ("model", values, {"long_name": text, **units.get(name, {})}) for name, (values, text) in facts.items()
     }
+
+
+def _ocean_share(job: _Job) -> float:
+    return float(job.weights[job.look.wet, 1].sum() / OceanFunction.builtin().area_m2)
 
 
 def _readings(job: _Job) -> int:

@@ -8,6 +8,7 @@ import numpy as np
 import xarray as xr
 
 from massfit.constants import PASCAL_PER_HPA
+from massfit.corrections.circulation import WHOLE_OCEAN_SHARE
 from massfit.display import counted
 from massfit.results.datasets import with_description
 from massfit.results.finished import FinishedRun
@@ -96,6 +97,7 @@ def _models(quietness: xr.Dataset) -> list[dict[str, Any]]:
             "step_days": round(float(model["step"]), 4),
             "years": round(float(model["years"]), 3),
             "ocean_mean": str(model["ocean_mean"].item()),
+            "ocean_share": round(float(model["ocean_share"]), 4),
             "readings": int(model["readings"]),
             "cells": int(np.isfinite(model["model_sd"].values).sum()),
             "line_sd_share": round(_line_share(int(model["lines"])), 3),
@@ -184,12 +186,8 @@ def _assumptions(quietness: xr.Dataset) -> list[str]:
 
 def _warnings(quietness: xr.Dataset) -> list[str]:
     models = _models(quietness)
-    found = [
-        f"{model['name']} is {model['years']:.1f} years long: a standard deviation at the annual line is uncertain by "
-        f"{100 * model['line_sd_share']:.0f} % in a single cell."
-        for model in models
-        if model["years"] < FEW_YEARS
-    ]
+    found = [_few_years(models)] if any(model["years"] < FEW_YEARS for model in models) else []
+    found += [_part_of_ocean(model) for model in models if model["ocean_share"] < WHOLE_OCEAN_SHARE]
     if len(models) == 1:
         found.append("One model: how far models disagree is not known.")
     spans = {(model["first_day"], model["last_day"]) for model in models}
@@ -202,6 +200,25 @@ def _warnings(quietness: xr.Dataset) -> list[str]:
         if model["readings"] > 1
     ]
     return found
+
+
+def _few_years(models: Sequence[Mapping[str, Any]]) -> str:
+    own = [
+        f"{model['name']} is {model['years']:.1f} years long ({100 * model['line_sd_share']:.0f} %)"
+        for model in models
+        if model["years"] < FEW_YEARS
+    ]
+    return f"{', '.join(own)}: so far is a standard deviation at the annual line uncertain in a single cell."
+
+
+def _part_of_ocean(model: Mapping[str, Any]) -> str:
+    share = f"{model['name']} covers {100 * model['ocean_share']:.0f} % of the ocean"
+    if model["ocean_mean"] == "removed":
+        return f"{share}: whether its ocean mean is removed was not checked."
+    return (
+        f"{share}: the mean that was subtracted is of that part, and takes dynamics with it. Subtract that of the "
+        "whole ocean before, and state --ocean-mean removed."
+    )
 
 
 def _beyond(sites: Sequence[Site]) -> list[str]:

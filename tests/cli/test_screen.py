@@ -64,7 +64,7 @@ def test_it_prints_how_quiet_the_sea_floor_is(home: Path, done: Result) -> None:
     shown = done.stdout.split("Results in")[0]
     assert max(map(len, shown.splitlines())) <= 80
     assert "massfit: north and second" in shown
-    assert "! north is 4.0 years long: a standard deviation at the annual line is uncertain" in shown
+    assert "! north is 4.0 years long (22 %), second is 4.0 years long (22 %): so far is a" in shown
     assert "! 1 site with no cell of the map near enough (300 km): C." in shown
     for stage in ("reading", "screening north", "screening second", "page"):
         assert stage in done.stderr
@@ -105,6 +105,18 @@ def test_it_is_no_answer_and_is_replaced_only_when_asked(home: Path, done: Resul
     refused = call("screen", home / "north.nc", "--ocean-mean", "subtract", "--output", home / "made")
     assert refused.exit_code == 2
     assert "--overwrite" in refused.stderr
+
+
+def test_a_part_of_the_ocean_is_told(home: Path) -> None:
+    with xr.open_dataset(home / "north.nc", engine="h5netcdf") as data:
+        data.isel(lat=slice(8, 18), lon=slice(28, 40)).to_netcdf(home / "part.nc", engine="h5netcdf")
+    done = call("screen", home / "part.nc", "--ocean-mean", "subtract", "--output", home / "part", "--years", 2)
+    assert done.exit_code == 0, done.output
+    text = " ".join(done.stdout.split())
+    assert "! part covers 14 % of the ocean: the mean that was subtracted is of that part, and takes dynamics" in text
+    assert json.loads((home / "part/run.json").read_text("utf-8"))["command"] == (
+        f"massfit screen {home / 'part.nc'} --ocean-mean subtract --years 2"
+    )
 
 
 def test_every_fault_is_told_and_nothing_is_written(home: Path) -> None:
