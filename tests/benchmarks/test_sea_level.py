@@ -33,9 +33,7 @@ def seconds(work: Callable[[], object]) -> float:
 
 
 @pytest.mark.parametrize("factor", [1.0, 1.0 + 0.5j], ids=["real", "phasor"])
-def test_one_solve_beside_its_bare_transforms(
-    benchmark, operator: SeaLevelOperator, factor: complex, measured
-) -> None:
+def test_one_solve_beside_its_bare_transforms(benchmark, operator: SeaLevelOperator, factor: complex, measured) -> None:
     # the limit that it is measured against: one analysis of the load, and a synthesis and an analysis for each
     # time the operator is applied, which is once a step and once before; a phasor is two real fields
     load = (1.0 - operator.ocean) * factor

@@ -56,7 +56,7 @@ def test_everything_is_drawn_as_it_was_from_the_folder_alone(folder: Path) -> No
 
 
 def test_tables_are_kept_to_the_byte_when_something_joins_the_run(folder: Path) -> None:
-    text = "line,amplitude_hpa,note\nM2,25.1234,\"a, b\"\nK1,1e-05,\n"
+    text = 'line,amplitude_hpa,note\nM2,25.1234,"a, b"\nK1,1e-05,\n'
     rows = [{"line": "M2", "amplitude_hpa": 25.1234, "note": "a, b"}, {"line": "K1", "amplitude_hpa": 1e-5}]
     with claimed(folder) as partial:
         save_run(dataclasses.replace(read_results(folder), tables={"tides.csv": rows}), partial)

@@ -7,9 +7,11 @@ from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.figure import Figure
 
 from massfit.report.figures.candidate_map import candidate_map
+from massfit.report.figures.influence import influence_figure
 from massfit.report.figures.record_length import record_length_figure
 from massfit.report.figures.service_plan import service_plan_figure
 from massfit.report.figures.style import house_style
+from massfit.report.figures.subset_sizes import keep_path_figure, order_sweep, subset_fan
 
 WIDTHS = (180.0, 85.0)
 LAT, LON = np.arange(-89.0, 90.0, 2.0), np.arange(1.0, 360.0, 2.0)
@@ -21,7 +23,8 @@ def texts_inside(figure: Figure) -> None:
         FigureCanvasAgg(figure).draw()
     frame = figure.bbox
     for axes in figure.axes:
-        for text in [axes._left_title, axes.xaxis.label, axes.yaxis.label, *axes.texts]:
+        written = [axes._left_title, axes.xaxis.label, axes.yaxis.label, *axes.texts, *axes.get_yticklabels()]
+        for text in written:
             if text.get_text() and text.get_visible():
                 box = text.get_window_extent()
                 assert box.x0 >= frame.x0 - 1, text.get_text()
@@ -94,3 +97,40 @@ def test_a_panel_for_each_site_that_matters_most(width: float, sites: int) -> No
     assert figure.axes[0].get_title(loc="left") == f"Site {int(np.nanargmax(lost)) if sites > 1 else 0}"
     several = [text.get_text() for text in figure.texts if "matter most" in text.get_text()]
     assert bool(several) == (sites > shown)
+
+
+@pytest.mark.parametrize("width", WIDTHS)
+@pytest.mark.parametrize("sites", [1, 4, 18, 200])
+def test_influence_puts_the_site_that_carries_most_on_top(width: float, sites: int) -> None:
+    rng = np.random.default_rng(sites)
+    information, shift = rng.exponential(0.1, (sites, 2)), rng.normal(0, 0.2, (sites, 2))
+    names = [f"A long name {i}" for i in range(sites)]
+    wrong = np.where(np.arange(sites) == information.sum(axis=1).argmax(), 0.9, 0.0)
+    figure = influence_figure(names, information, shift, wrong, width_mm=width)
+    texts_inside(figure)
+    left, right = figure.axes
+    labels = left.get_yticklabels()
+    assert labels[0].get_text() == names[information.sum(axis=1).argmax()]
+    assert labels[0].get_fontweight() == "bold"
+    assert len(labels) == min(sites, 30)
+    assert [len(line.get_xdata()) for line in right.lines[:2]] == [min(sites, 30)] * 2
+
+
+@pytest.mark.parametrize("width", WIDTHS)
+@pytest.mark.parametrize("sites", [3, 18, 200])
+def test_fewer_sites_are_drawn_as_fan_order_and_path(width: float, sites: int) -> None:
+    rng, count = np.random.default_rng(sites), np.arange(1, sites + 1)
+    size = np.repeat(count, 6)
+    mean = np.array([0.1, 0.8]) + rng.normal(0, 0.1, (len(size), 2)) / np.sqrt(size)[:, None]
+    whole = np.array([0.1, 0.8])
+    fan = subset_fan(size, mean, 0.3 / np.sqrt(size), whole_hpa=whole, whole_width_hpa=0.05, width_mm=width)
+    answers, sd = np.tile(whole, (sites, 1)), 0.3 / np.sqrt(count)
+    order = order_sweep(answers, sd, answers, 0.5 * sd, ordered_by="error of the record / hPa", width_mm=width)
+    path = keep_path_figure({"A": sd, "D": 1.1 * sd}, np.where(count == 2, np.nan, 2 * sd), width_mm=width)
+    for figure in (fan, order, path):
+        texts_inside(figure)
+    # the median of the widths of one size is that width
+    median = next(line for line in fan.axes[2].lines if line.get_label() == "median")
+    np.testing.assert_allclose(median.get_ydata(), 0.3 / np.sqrt(count))
+    assert [line.get_label() for line in order.axes[2].lines][1].startswith("the agreeable first: too sure")
+    np.testing.assert_array_equal(path.axes[0].lines[1].get_ydata(), sd)
