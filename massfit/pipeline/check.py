@@ -21,7 +21,7 @@ from massfit.io.network.network_file import read_what_can_be
 from massfit.network import Network, ReducedSite, Series
 from massfit.pipeline.air import network_air
 from massfit.records.clean import usable_samples
-from massfit.records.interval import spoken_interval
+from massfit.records.interval import distinct_stamps, spoken_interval, usual_interval_ns
 from massfit.records.record import Record
 from massfit.results.assumptions import stated_assumptions
 from massfit.site import LEAST_SITE_DAYS, Site
@@ -211,8 +211,8 @@ def _tides_left(network: Network, records: Sequence[Record]) -> list[str]:
 
 
 def _spacing(time: NDArray[np.datetime64]) -> np.timedelta64:
-    stamps = np.unique(time[~np.isnat(time)])
-    return np.timedelta64(np.median(np.diff(stamps))) if stamps.size > 1 else np.timedelta64(0, "ns")
+    stamps = distinct_stamps(time)
+    return np.timedelta64(round(usual_interval_ns(stamps)) if stamps.size > 1 else 0, "ns")
 
 
 def _reduced(reduced: ReducedSite) -> dict[str, Any]:
@@ -269,7 +269,8 @@ def _months(days: NDArray[np.datetime64], records: Sequence[Record]) -> dict[str
 
 def _deployment(record: Record) -> dict[str, Any]:
     valid = np.isfinite(record.pressure) & ~np.isnat(record.time)
-    time, spacing = np.unique(record.time[valid]), _spacing(record.time[valid])
+    time = distinct_stamps(record.time[valid])
+    spacing = _spacing(time)
     return {
         "label": record.deployment,
         "file": record.source,

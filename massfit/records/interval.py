@@ -8,6 +8,33 @@ _RUNS, _RUN = 200, 1000
 for five years of 15 s samples otherwise. Whole stretches, since intervals may come in a rhythm."""
 
 
+def distinct_stamps(time: NDArray[np.datetime64]) -> NDArray[np.datetime64]:
+    """Stamps in order, each once; those that are missing are left out.
+
+    Nearly all records are in order, and then nothing is sorted.
+
+    Parameters
+    ----------
+    time : (n,) array of datetime64[ns]
+        Any order.
+
+    Returns
+    -------
+    (m,) array of datetime64[ns]
+
+    Examples
+    --------
+    >>> distinct_stamps(np.array(["2016-01-02", "NaT", "2016-01-01", "2016-01-02"], dtype="datetime64[D]")).tolist()
+    [datetime.date(2016, 1, 1), datetime.date(2016, 1, 2)]
+    """
+    known = ~np.isnat(time)
+    stamps = time if known.all() else time[known]
+    if (stamps[1:] > stamps[:-1]).all():
+        return stamps
+    stamps = np.sort(stamps)
+    return stamps[np.insert(stamps[1:] > stamps[:-1], 0, True)]
+
+
 def usual_interval_ns(time: NDArray[np.datetime64]) -> float:
     """Median interval between samples.
 

@@ -1,7 +1,7 @@
 """Five years of 15 s samples, 10.5 million: reading and reducing them against the same parser merely reading the file.
 
-Times are of the processor, within one run, so that a busy machine does not matter. Wanted: twice the parser at most, but
-where that merely copies numbers to memory (plain.nc). Memory is measured in processes of their own.
+Times are of the processor, within one run, so that a busy machine does not matter. Wanted: twice the parser at most,
+but where that merely copies numbers to memory (plain.nc). Memory is measured in processes of their own.
 """
 
 import gc

@@ -1,7 +1,8 @@
 import numpy as np
+import pytest
 
 from massfit.records import interval
-from massfit.records.interval import usual_interval_ns
+from massfit.records.interval import distinct_stamps, usual_interval_ns
 
 
 def test_the_usual_interval_of_a_long_record_is_that_of_stretches_of_it(monkeypatch) -> None:
@@ -16,3 +17,14 @@ def test_the_usual_interval_of_a_long_record_is_that_of_stretches_of_it(monkeypa
     monkeypatch.setattr(interval, "_RUN", 100)
     assert usual_interval_ns(time) == whole
     assert usual_interval_ns(time[::-1]) == -whole
+
+
+@pytest.mark.parametrize("order", ["rising", "falling", "shuffled"])
+def test_distinct_stamps_are_those_of_a_general_routine(order: str, rng: np.random.Generator) -> None:
+    hours = np.repeat(np.arange(300), rng.integers(0, 3, 300))
+    time = np.datetime64("2016-01-01", "ns") + hours * np.timedelta64(1, "h")
+    time[rng.integers(0, time.size, 5)] = np.datetime64("NaT")
+    time = {"rising": time, "falling": time[::-1], "shuffled": rng.permutation(time)}[order]
+    given = time.copy()
+    np.testing.assert_array_equal(distinct_stamps(time), np.unique(time[~np.isnat(time)]))
+    np.testing.assert_array_equal(time, given)

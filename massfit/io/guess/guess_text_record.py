@@ -20,6 +20,7 @@ from massfit.io.records.record_text import read_text_record
 from massfit.io.records.samples import Samples
 from massfit.io.records.text_layout import FLAG
 from massfit.io.records.units import PRESSURE_UNITS
+from massfit.records.interval import distinct_stamps, usual_interval_ns
 
 _HEIGHTS = ("mm", "cm", "m")
 _NINES = re.compile(r"-?9{2,}(\.9+|\.0*)?")
@@ -266,10 +267,10 @@ def span_and_sampling(time: NDArray[np.datetime64]) -> tuple[tuple[np.datetime64
     time : (n,) array of datetime64[ns]
         Any order.
     """
-    stamps = np.unique(time[~np.isnat(time)])
+    stamps = distinct_stamps(time)
     if stamps.size < 2:
         return None, None
-    return (stamps[0], stamps[-1]), float(np.median(np.diff(stamps)) / np.timedelta64(1, "s"))
+    return (stamps[0], stamps[-1]), usual_interval_ns(stamps) / 1e9
 
 
 def stamp_guess(time: NDArray[np.datetime64], sampling_s: float | None) -> Guess:
