@@ -103,6 +103,7 @@ class _Tally:
         self._part = part
         self._wet, self._first = part.look.wet, part.look.pressure
         self._wet_weights = part.weights * self._wet[:, None]
+        self._counted_from = bool(self._first.any())
         self._least_area = part.weights[:, 0].min()
         self._first_mean = self._first @ self._wet_weights
         cells, columns = self._wet.size, part.design.columns
@@ -122,7 +123,8 @@ class _Tally:
         """Take in a block, (n_when, n_cell); it is used up."""
         finite = np.isfinite(values)
         odd = np.flatnonzero((finite != self._wet).any(axis=0))
-        values -= self._first
+        if self._counted_from:
+            values -= self._first
         np.copyto(values, 0.0, where=~finite)
         mean, known = self._ocean_mean(values, finite, odd)
         mean = mean if mean is not None else self._given(when)

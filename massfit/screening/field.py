@@ -13,6 +13,7 @@ from massfit.errors import Fault, InputError
 
 OceanMeanChoice = Literal["subtract", "removed"]
 
+_LARGEST_ANOMALY_PA = 1e4
 _MONTHS = 12  # of the first year that are looked at: ice comes and goes
 
 OCEAN_MEAN_CHOICES = ("subtract", "removed")
@@ -156,7 +157,7 @@ class FirstLook:
     wet : (n_cell,) array of bool
         Cells that have water.
     pressure : (n_cell,) array
-        Their mean pressure, from which the sums are counted, Pa; 0 where there is none.
+        Pressure from which the sums are counted, Pa: their mean, or 0 where the field holds anomalies.
     """
 
     wet: NDArray[np.bool_]
@@ -184,7 +185,10 @@ def first_look(source: BlockSource) -> FirstLook:
         finite = np.isfinite(values)
         count[rows] += finite.sum(axis=0)
         total[rows] += np.where(finite, values, 0.0).sum(axis=0)
-    return FirstLook(count.ravel() > 0, (total / np.maximum(count, 1)).ravel())
+    pressure = (total / np.maximum(count, 1)).ravel()
+    # sums of anomalies lose no digits that matter; those of whole pressures would
+    whole = np.abs(pressure).max() > _LARGEST_ANOMALY_PA
+    return FirstLook(count.ravel() > 0, pressure if whole else np.zeros_like(pressure))
 
 
 def _month(source: BlockSource) -> int:

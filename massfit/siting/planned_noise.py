@@ -137,10 +137,10 @@ def map_record_covariance(
     factor = with_drift[0, 0] / without[0, 0]
 
     def at(latitude_deg: Floats, longitude_deg: Floats) -> tuple[Floats, Floats]:
-        cell = _cells(quietness, latitude_deg, longitude_deg)
-        variance = factor * sd[cell] ** 2 + instrument[0, 0]
+        cell, inside = _cells(quietness, latitude_deg, longitude_deg)
+        variance = np.where(inside, factor * sd[cell] ** 2 + instrument[0, 0], np.nan)
         apart = quietness["disagreement"].values if "disagreement" in quietness else np.full(sd.shape, np.nan)
-        return variance[:, None, None] * np.eye(2), np.asarray(apart[cell], dtype=float)
+        return variance[:, None, None] * np.eye(2), np.where(inside, apart[cell].astype(float), np.nan)
 
     return at
 
@@ -162,9 +162,10 @@ def _at_length(lengths: Floats, sds: Floats, years: float) -> Floats:
 
 def _cells(
     quietness: xr.Dataset, latitude_deg: Floats, longitude_deg: Floats
-) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
-    """Find the cell whose centre is nearest in latitude and in longitude."""
+) -> tuple[tuple[NDArray[np.intp], NDArray[np.intp]], NDArray[np.bool_]]:
+    """Find the cell whose centre is nearest in latitude and in longitude, and whether the place is in the map."""
     lat, lon = quietness["lat"].values.astype(float), quietness["lon"].values.astype(float)
-    row = np.abs(np.asarray(latitude_deg)[:, None] - lat).argmin(axis=1)
+    north = np.abs(np.asarray(latitude_deg)[:, None] - lat)
     east = np.abs((np.asarray(longitude_deg)[:, None] - lon + 180.0) % 360.0 - 180.0)
-    return row, east.argmin(axis=1)
+    inside = [away.min(axis=1) <= 0.51 * np.diff(axis).max() for away, axis in ((north, lat), (east, lon))]
+    return (north.argmin(axis=1), east.argmin(axis=1)), inside[0] & inside[1]
