@@ -21,7 +21,9 @@ from massfit.report.figures.style import (
 
 _CHAINS = ((ANSWER, "-"), (SITE, "-"), ("black", "-"), ("#56B4E9", "-"))  # Okabe & Ito (2008)
 _LINES = ("-", "--", ":", "-.", (0, (5, 1, 1, 1, 1, 1)), (0, (1, 3)))
-_ROW_MM, _GAP_MM = 15.0, 3.5
+_ROW_MM, _GAP_MM = 12.0, 3.5
+_POINTS = 60
+"""Most points of a trace; neighbouring steps are averaged where there are more: chains that differ are seen still."""
 _LOW_MM = 36.0
 
 
@@ -43,7 +45,7 @@ def convergence_figure(
     -------
     matplotlib.figure.Figure
         Above, a row for each quantity and a line for each chain; below, the autocorrelation of the walkers, R-hat, and
-        the effective draws, the last two with their thresholds.
+        the effective draws, the last two with their thresholds. In a column the traces are left out.
 
     Examples
     --------
@@ -58,11 +60,12 @@ def convergence_figure(
     names = [str(name) for name in chains["quantity"].values]
     spoken = [(words or {}).get(name, name) for name in names]
     wide = width_mm > COLUMN_WIDTH_MM
-    above = len(names) * (_ROW_MM + _GAP_MM)
-    below = _LOW_MM + 18.0 if wide else 3.0 * (_LOW_MM + 13.0) + 7.0
+    above = len(names) * (_ROW_MM + _GAP_MM) if wide else 0.0
+    below = _LOW_MM + 18.0 if wide else 3.0 * (_LOW_MM + 13.0) - 6.0
     with house_style():
         figure = sheet(width_mm, above + below + 10.0)
-        _traces(figure, chains, spoken, below, width_mm)
+        if wide:
+            _traces(figure, chains, spoken, below, width_mm)
         for axes, draw in zip(_lower(figure, wide, width_mm), (_forgetting, _rhat, _effective), strict=True):
             draw(axes, chains, spoken)
     return figure
@@ -72,17 +75,18 @@ def _traces(figure: Figure, chains: xr.Dataset, spoken: Sequence[str], below: fl
     for row, (name, values) in enumerate(zip(reversed(spoken), chains["trace"].values[::-1], strict=True)):
         bottom = below + 7.0 + row * (_ROW_MM + _GAP_MM)
         axes = placed_axes(figure, 14.0, bottom, width_mm - 18.0, _ROW_MM)
-        steps = np.arange(1, values.shape[-1] + 1)
+        count, steps = values.shape[-1], np.arange(1, values.shape[-1] + 1)
+        blocks = np.array_split(np.arange(count), min(count, _POINTS))
         for number, chain in enumerate(values):
             colour, line = _CHAINS[number % len(_CHAINS)]
-            axes.plot(steps, chain, color=colour, linestyle=line, linewidth=0.6, alpha=0.85)
-        axes.set(xlim=(1, max(steps[-1], 2)))
+            points = [[part[block].mean() for block in blocks] for part in (steps, chain)]
+            axes.plot(*points, color=colour, linestyle=line, linewidth=0.6)
+        axes.set(xlim=(1, max(count, 2)))
         axes.set_title(f"{name} / hPa", fontsize=7.0, pad=1.5)
         axes.locator_params(axis="y", nbins=3)
         axes.tick_params(labelbottom=row == 0)
         if row == 0:
-            beyond = "median over the walkers, " if width_mm > COLUMN_WIDTH_MM else ""
-            axes.set_xlabel(f"kept step; {beyond}a line for each chain")
+            axes.set_xlabel("kept step; median over the walkers, a line for each chain")
 
 
 def _lower(figure: Figure, wide: bool, width_mm: float) -> list[Axes]:

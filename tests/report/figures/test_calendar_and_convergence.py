@@ -80,9 +80,14 @@ def test_an_empty_calendar_is_drawn() -> None:
 def test_the_convergence_shows_every_chain_and_both_limits(quantities: int, width_mm: float) -> None:
     content = chains(quantities)
     figure = convergence_figure(content, words={"s_0": "site scatter"}, width_mm=width_mm)
-    traces, (memory, rhat, effective) = figure.axes[:quantities], figure.axes[quantities:]
-    assert [len(axes.lines) for axes in traces] == [4] * quantities
-    assert traces[-1].lines[0].get_ydata() == pytest.approx(content["trace"].values[0, 0])
+    *traces, memory, rhat, effective = figure.axes
+    assert [len(axes.lines) for axes in traces] == ([4] * quantities if width_mm > 100.0 else [])
+    for axes, wanted in zip(reversed(traces), content["trace"].values, strict=False):
+        # a hundred steps are drawn as sixty means: forty of two steps, then twenty of one
+        drawn = np.array([line.get_ydata() for line in axes.lines])
+        assert drawn.shape == (4, 60)
+        assert drawn[:, 0] == pytest.approx(wanted[:, :2].mean(axis=1))
+        assert drawn[:, 40:] == pytest.approx(wanted[:, 80:])
     assert [text.get_text() for text in rhat.get_yticklabels()][:2] == ["in phase", "quadrature"]
     assert rhat.lines[0].get_xdata() == pytest.approx(content["rhat"].values)
     assert effective.lines[1].get_xdata() == pytest.approx(content["ess_tail"].values)
