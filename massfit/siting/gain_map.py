@@ -19,8 +19,8 @@ from massfit.siting.network_error import NetworkError
 
 Floats = NDArray[np.float64]
 
-CELL_DEG = 2.0
-"""Size of the cells of the map."""
+CELL_DEG, COARSE_DEG = 2, 4
+"""Size of the cells of the map; the second where every cell shares scatter with the sites in its own way."""
 
 LISTED, APART_KM = 10, 1500.0
 """Best places listed, and the least distance between them: less than half the width of an ocean basin."""
@@ -213,10 +213,11 @@ def candidate_map(plan: Plan, maps: xr.Dataset) -> xr.Dataset:
         The variables of :func:`places_dataset` over (lat, lon), NaN on land and where no error of a record is known;
         `ocean_fraction`, and `listable`, 1 in the open sea where the fingerprint is near that of the ocean mean.
     """
-    lat = np.arange(-90.0 + CELL_DEG / 2.0, 90.0, CELL_DEG)
-    lon = np.arange(CELL_DEG / 2.0, 360.0, CELL_DEG)
+    by_label = isinstance(plan.choices.settings.group_scatter, bool)
+    cell = CELL_DEG if by_label else COARSE_DEG
+    lat, lon = np.arange(-90.0 + cell / 2.0, 90.0, cell), np.arange(cell / 2.0, 360.0, cell)
     north, east = (grid.ravel() for grid in np.meshgrid(lat, lon, indexing="ij"))
-    fraction = _means_of_four(maps["ocean_fraction"].values)
+    fraction = _means(maps["ocean_fraction"].values, cell)
     wet = np.flatnonzero(fraction.ravel() >= 0.5)
     places = places_dataset(plan, north[wet], east[wet], admittance_at(maps, north[wet], east[wet]))
     open_sea = _open_sea(fraction)
@@ -256,10 +257,10 @@ def admittance_at(
     return np.array([value_on_map(field, north, east) for field in as_complex(maps["map_admittance"].values)])
 
 
-def _means_of_four(values: Floats) -> Floats:
-    """From cells of one degree to those of two."""
+def _means(values: Floats, cell: int) -> Floats:
+    """From cells of one degree to larger ones."""
     rows, columns = values.shape
-    return np.asarray(values.reshape(rows // 2, 2, columns // 2, 2).mean(axis=(1, 3)))
+    return np.asarray(values.reshape(rows // cell, cell, columns // cell, cell).mean(axis=(1, 3)))
 
 
 def _open_sea(fraction: Floats) -> NDArray[np.bool_]:
