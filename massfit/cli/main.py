@@ -186,14 +186,15 @@ def starter(folder: Path) -> None:
 def report(results: Path) -> None:
     """Draw page and figures anew from the files in RESULTS alone.
 
-    Every file is first held against its checksum in run.json; one that was
-    changed is named, and nothing is written.
+    RESULTS is a folder of massfit estimate or massfit phasors. Every file is
+    first held against its checksum in run.json; one that was changed is named,
+    and nothing is written.
     """
     with refusing_politely():
-        from massfit.pipeline.save import report_to_folder
+        from massfit.pipeline.redraw import redraw
 
-        report_to_folder(results)
-    click.echo(f"Drew {results / 'report.html'} and the figures anew.")
+        page = redraw(results, workers=os.cpu_count() or 1)
+    click.echo(f"Drew {page} and the figures anew.")
 
 
 @main.command()

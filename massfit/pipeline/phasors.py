@@ -7,7 +7,8 @@ from typing import Any
 
 from massfit.io.network.network_file import read_network
 from massfit.io.results.partial_folder import claimed
-from massfit.io.results.results_folder import PHASORS_FILE, check_output, write_folder
+from massfit.io.results.read_results import read_site_run
+from massfit.io.results.results_folder import PHASORS_FILE, check_output, redraw_results, write_folder
 from massfit.network import Network
 from massfit.pipeline.context import sites_in_context
 from massfit.pipeline.parts import Store, kept
@@ -177,6 +178,34 @@ def phasors_to_folder(
             pictures=pictures,
         )
     return run
+
+
+def redraw_phasors(folder: Path, *, workers: int = 1) -> Path:
+    """Draw figures and page of what `massfit phasors` wrote anew, from its folder alone.
+
+    Parameters
+    ----------
+    folder : Path
+        Each of its files must be as it was made.
+    workers : int
+        Processes that share the figures.
+
+    Returns
+    -------
+    Path
+        The page.
+
+    Raises
+    ------
+    InputError
+        A file was changed, or the folder cannot be written.
+    """
+    read_site_run(folder)
+    with claimed(folder) as aside, Workers(workers) as pool:
+        run = read_site_run(folder)
+        pictures = _pictures(run, StageTimes(ignore), pool)
+        redraw_results(aside, run, pictures=pictures, page=site_page(run, pictures), page_file=PAGE_FILE)
+    return folder / PAGE_FILE
 
 
 def _pictures(run: FinishedRun, times: StageTimes, pool: Workers) -> dict[str, bytes]:

@@ -180,7 +180,11 @@ def test_choices_are_taken_and_nonsense_is_not(browser, results: Path, python) -
     for number in range(3):
         browser.run(PRESS, "sites", number)
     browser.run(put, "model_common_hpa", "0.4")
-    assert "Nothing is left" in browser.run(BENCH + "return bench.querySelector('[data-show=trouble]').textContent")
+    said = BENCH + "return bench.querySelector('[data-show=sentence]').textContent"
+    assert "Nothing is left" in browser.run(said)
+    assert browser.run(BENCH + "return bench.querySelectorAll('tbody tr').length") == 0
+    browser.run(BENCH + "bench.querySelector('[data-do=reset]').click(); bench.querySelector('[data-do=none]').click()")
+    assert "Nothing is left" in browser.run(said)
 
 
 def test_a_link_keeps_a_scenario(browser, results: Path, run: Estimate, python) -> None:

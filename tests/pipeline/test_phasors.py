@@ -2,6 +2,7 @@
 
 import csv
 import json
+import shutil
 from pathlib import Path
 
 import h5py
@@ -117,14 +118,31 @@ def test_a_site_without_a_model_is_said_to_hold_the_circulation(folder: Path) ->
     assert "start with phasors.html" in printed
 
 
+def test_page_and_figures_are_drawn_anew_byte_for_byte(folder: Path, tmp_path: Path) -> None:
+    results = tmp_path / "phasors"
+    shutil.copytree(folder / "phasors", results)
+    made = {path.relative_to(results): path.read_bytes() for path in results.rglob("*") if path.is_file()}
+    (results / "phasors.html").unlink()
+    next((results / "figures").iterdir()).unlink()
+    done = CliRunner().invoke(main, ["report", str(results)])
+    assert done.exit_code == 0, done.output
+    assert "phasors.html and the figures anew" in done.output.replace("\n", "")
+    assert {path.relative_to(results): path.read_bytes() for path in results.rglob("*") if path.is_file()} == made
+    with (results / "site_phasors.nc").open("ab") as file:
+        file.write(b"x")
+    refused = CliRunner().invoke(main, ["report", str(results)])
+    assert refused.exit_code == 2
+    assert "the file was changed" in refused.output
+
+
 def test_finished_phasors_are_not_replaced_unasked(folder: Path) -> None:
     again = CliRunner().invoke(main, ["phasors", str(folder)])
     assert again.exit_code == 2
     assert "holds finished results" in again.output
 
 
-def test_report_says_whose_results_these_are(folder: Path) -> None:
-    done = CliRunner().invoke(main, ["report", str(folder / "phasors")])
+def test_a_command_that_needs_an_answer_says_whose_results_these_are(folder: Path) -> None:
+    done = CliRunner().invoke(main, ["contrast", str(folder / "phasors"), str(folder / "phasors")])
     assert done.exit_code == 2
     assert "it holds what massfit phasors wrote, without an answer" in done.output
 

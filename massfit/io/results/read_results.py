@@ -35,12 +35,42 @@ def read_results(folder: Path) -> FinishedRun:
         It is no results folder; or one fault for every file that is missing or whose SHA-256 is not that of
         run.json. A missing figure or page is none: `massfit report` draws them anew.
     """
-    provenance = _read_run(folder)
+    return _read_verified(folder, _read_run(folder), ESTIMATE_FILE)
+
+
+def read_site_run(folder: Path) -> FinishedRun:
+    """Read what `massfit phasors` left in its folder.
+
+    Parameters
+    ----------
+    folder : Path
+
+    Returns
+    -------
+    FinishedRun
+
+    Raises
+    ------
+    InputError
+        As for `read_results`.
+    """
+    return _read_verified(folder, _read_run(folder, holds=PHASORS_FILE), PHASORS_FILE)
+
+
+def is_site_run(folder: Path) -> bool:
+    """Whether a folder is one that `massfit phasors` wrote, as far as its run.json says."""
+    try:
+        return PHASORS_FILE in json.loads((folder / RUN_FILE).read_text(encoding="utf-8"))["outputs"]
+    except (OSError, ValueError, LookupError, TypeError):
+        return False  # whoever reads it says what is wrong
+
+
+def _read_verified(folder: Path, provenance: dict[str, Any], summary_file: str) -> FinishedRun:
     outputs = provenance["outputs"]
     faults = [fault for name in outputs for fault in _faults(folder, name, outputs[name])]
     if faults:
         raise InputError(faults)
-    summary = json.loads((folder / "estimate.json").read_text(encoding="utf-8"))
+    summary = json.loads((folder / summary_file).read_text(encoding="utf-8"))
     files = {name: _read_groups(folder / name) for name in outputs if name.endswith(".nc")}
     datasets = {name + group: dataset for name, groups in files.items() for group, dataset in groups.items()}
     apart = [name for name in outputs if name.endswith(".csv") and name not in _FROM_SUMMARY]
@@ -48,15 +78,15 @@ def read_results(folder: Path) -> FinishedRun:
     return FinishedRun(summary, provenance, datasets, tables)
 
 
-def _read_run(folder: Path) -> dict[str, Any]:
+def _read_run(folder: Path, *, holds: str = ESTIMATE_FILE) -> dict[str, Any]:
     path = folder / RUN_FILE
     try:
         content = json.loads(path.read_text(encoding="utf-8"))
         outputs = content["outputs"]
         for command, own in (("fingerprint", FINGERPRINT_TABLE), ("phasors", PHASORS_FILE), ("screen", SCREENING_FILE)):
-            if own in outputs:
+            if own in outputs and own != holds:
                 raise InputError(_another_command(folder, command))
-        outputs[RUN_FILE], outputs[ESTIMATE_FILE]
+        outputs[RUN_FILE], outputs[holds]
         if not all(_inside(name) for name in outputs):
             raise ValueError("a name leads out of the folder")
     except OSError as error:

@@ -101,7 +101,14 @@ def write_results(partial: PartialFolder, run: FinishedRun, *, pictures: Mapping
     partial.clear()
 
 
-def redraw_results(partial: PartialFolder, run: FinishedRun, *, pictures: Mapping[str, bytes], page: str) -> None:
+def redraw_results(
+    partial: PartialFolder,
+    run: FinishedRun,
+    *,
+    pictures: Mapping[str, bytes],
+    page: str,
+    page_file: str = "report.html",
+) -> None:
     """Replace the figures and the page of finished results; every other file is kept as it is.
 
     Parameters
@@ -110,7 +117,8 @@ def redraw_results(partial: PartialFolder, run: FinishedRun, *, pictures: Mappin
     run : FinishedRun
         As read from the results folder.
     pictures : mapping of str to bytes
-    page : str
+    page, page_file : str
+        HTML, and where it goes.
 
     Raises
     ------
@@ -119,8 +127,8 @@ def redraw_results(partial: PartialFolder, run: FinishedRun, *, pictures: Mappin
     """
     with partial.whole() as aside:
         shutil.copytree(partial.results, aside, symlinks=True, dirs_exist_ok=True)
-        write_drawn(aside, pictures, page)
-        drawn = {"report.html", *(f"figures/{name}.png" for name in pictures)}
+        write_drawn(aside, pictures, page, name=page_file)
+        drawn = {page_file, *(f"figures/{name}.png" for name in pictures)}
         # a file that someone laid beside the results is none of ours
         write_run(aside, run.provenance, drawn | set(run.provenance["outputs"]))
 

@@ -125,8 +125,9 @@
       const [a, b] = each.integrated.mean.map((value) => value / 100);
       parts.push(drawn("path", { d: `M${x(a) - 5} ${y(b)}h10M${x(a)} ${y(b) - 5}v10`, class: `${name} centre` }));
     }
-    parts.push(drawn("path", { d: `M${left + 8} ${top + 14}h18`, class: "now" }), drawn("text", { x: left + 31, y: top + 18 }, "scenario"));
-    parts.push(drawn("path", { d: `M${left + 8} ${top + 30}h18`, class: "base" }), drawn("text", { x: left + 31, y: top + 34 }, "all ticked"));
+    const below = top + side + 52;
+    parts.push(drawn("path", { d: `M${left} ${below - 4}h22`, class: "now" }), drawn("text", { x: left + 28, y: below }, "scenario"));
+    parts.push(drawn("path", { d: `M${left + 110} ${below - 4}h22`, class: "base" }), drawn("text", { x: left + 138, y: below }, "all ticked"));
     show("plane").replaceChildren(...parts);
     show("plane").setAttribute("aria-label", `The answer in the plane of in phase and quadrature: ${show("sentence").textContent}`);
   };
@@ -143,12 +144,15 @@
     const started = performance.now();
     const now = answer(scenario);
     if (now === null) {
-      show("trouble").textContent = "Nothing is left to answer from: tick a site, a model and a load member.";
+      ++turn;
+      show("sentence").textContent = "Nothing is left to answer from: tick a site, a model and a load member.";
+      for (const name of ["numbers", "shares"]) show(name).tBodies[0].replaceChildren();
+      show("plane").replaceChildren();
       return;
     }
     const kept = now.integrated.model.kept.length;
     show("sentence").textContent =
-      `${hpa(now.amplitude.median)} hPa (95 %: ${span(now.amplitude.region95)}), peak on ${date(now.day.median)} ` +
+      `Scenario: amplitude ${hpa(now.amplitude.median)} hPa (95 %: ${span(now.amplitude.region95)}), peak on ${date(now.day.median)} ` +
       `(95 %: ${dates(now.day.region95)}), from ${kept} of ${data.sites.length} sites.`;
     fill(show("numbers"), numberRows(base, now));
     drawPlane(base, now);
@@ -196,6 +200,10 @@
   section.querySelector("form").addEventListener("change", () => { begun = true; update(); });
   section.querySelector("form").addEventListener("submit", (event) => event.preventDefault());
   section.querySelector("[data-do=reset]").addEventListener("click", () => { apply(whole()); update(); });
+  section.querySelector("[data-do=none]").addEventListener("click", () => {
+    for (const input of inputs("sites")) input.checked = false;
+    update();
+  });
   section.querySelector("[data-do=save]").addEventListener("click", () => {
     const link = document.createElement("a");
     link.href = URL.createObjectURL(new Blob([`${JSON.stringify(scenarioNow(), null, 2)}\n`], { type: "application/json" }));
