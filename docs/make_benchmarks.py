@@ -16,7 +16,8 @@ HEAD = """\
 
 What massfit costs, beside something that has to be done anyway or would be done otherwise, measured in one run of
 `python docs/make_benchmarks.py`, which writes this page from `tests/benchmarks` (`pytest -m benchmark`). They are
-ratios, since seconds are the machine's: here {machine}. Times are of the processor unless two cores are compared.
+ratios of processor times, since seconds are the machine's: here {machine}. What only a quiet machine can tell (seconds,
+two cores against one) the benchmarks check and this page does not show. Memory is the peak beyond that of the imports.
 
 | what | beside | ratio | wanted |
 |---|---|---|---|

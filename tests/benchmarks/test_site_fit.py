@@ -60,7 +60,7 @@ def test_integrated(benchmark, measured) -> None:
     assert benchmark.stats.stats.min < 0.4
 
 
-def test_two_hundred_sites_use_both_cores(measured) -> None:
+def test_two_hundred_sites_use_both_cores() -> None:
     sites = [site(seed, 500, 1, 0) for seed in range(200)]
     fit = partial(fit_site, models=[], reference_year=2016, rng=np.random.default_rng(1))
     seconds = {}
@@ -71,5 +71,5 @@ def test_two_hundred_sites_use_both_cores(measured) -> None:
             start = time.perf_counter()
             assert len(list(workers.results(fit, sites))) == 200
             seconds[count] = time.perf_counter() - start
-    measured("200 sites fitted on two cores", "on one", seconds[2] / seconds[1], 0.67)
+    print(f"200 sites: {seconds[1]:.1f} s on one core, {seconds[2]:.1f} s on two")
     assert seconds[2] < 0.67 * seconds[1]
