@@ -100,6 +100,7 @@ def _estimate(
         reference_year=settings.frame.reference_year,
         ocean_area_m2=float(fingerprints.attrs["ocean_area_m2"]),
         sea_water_density=settings.fingerprint.sea_water_density,
+        mapped=mapped,
     )
     summary["predictive_check"] = predictive_check(posterior, phasors, fingerprints)
     if what_if:

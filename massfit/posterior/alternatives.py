@@ -1,8 +1,9 @@
 """What the answer would have been under another choice, by the second route."""
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property
+from typing import Any, NamedTuple
 
 import numpy as np
 import xarray as xr
@@ -19,12 +20,21 @@ from massfit.posterior.observations import Observations
 from massfit.posterior.regression import LinearModel
 from massfit.posterior.sharing import find_sharing
 
-_DRAWS = 1500
+_DRAWS = 1000
 
 
 @dataclass(frozen=True)
-class _Case:
-    """Everything that a second route needs, at one admittance a site."""
+class Case:
+    """Everything that a second route needs, at one admittance a site.
+
+    Parameters
+    ----------
+    observations : Observations
+    admittance : (n_site,) array of complex
+    choices : Choices
+    mixed : tuple of str
+        Sites that enter by their mixture.
+    """
 
     observations: Observations
     admittance: NDArray[np.complex128]
@@ -50,7 +60,7 @@ class _Case:
     def _rng(self) -> np.random.Generator:
         return np.random.default_rng(self.choices.settings.seed)
 
-    def with_settings(self, **changes: object) -> "_Case":
+    def with_settings(self, **changes: object) -> "Case":
         """Give the case under other settings."""
         settings = replace(self.choices.settings, **changes)  # type: ignore[arg-type]
         return replace(self, choices=replace(self.choices, settings=settings))
@@ -64,6 +74,7 @@ def alternative_answers(
     admittance: NDArray[np.complex128],
     choices: Choices,
     mixed: tuple[str, ...] = (),
+    mapped: Callable[[Callable[[Any], Any], Sequence[Any]], Iterable[Any]] = map,
 ) -> list[dict[str, object]]:
     """Answers under other choices, beside the one given.
 
@@ -78,6 +89,8 @@ def alternative_answers(
     choices : Choices
     mixed : tuple of str
         Sites that enter by their mixture.
+    mapped : callable, optional
+        Applies a function to each of a sequence, in order.
 
     Returns
     -------
@@ -91,21 +104,41 @@ def alternative_answers(
     The shift is that at the mean admittance of the load members, the spread between the members that of the answer
     given.
     """
-    given = _Case(observations, admittance.mean(axis=0), choices, mixed)
-    start = given.proposal()
-    middle, spread = given.route(start), member_spread(base)
+    given = Case(observations, admittance.mean(axis=0), choices, mixed)
+    start, spread = given.proposal(), member_spread(base)
     mean, covariance = pooled_moments(base)
-    others = _other_models(given)
-    cases = [
-        *((name, other.route(start if alike else other.proposal(like=start))) for name, other, alike in others),
-        *((name, other.route(start)) for name, other in _uniform(given, fingerprints)),
-    ]
+    cases = [("", given, True), *_other_models(given), *_uniform(given, fingerprints)]
+    moments = list(mapped(_moments, [AlternativeTask(case, start, alike) for _, case, alike in cases]))
+    (middle, *own_middle), others = moments[0], zip(cases[1:], moments[1:], strict=True)
     rows = [
-        (name, mean + route.mean - middle.mean, route.covariance + spread, middle.covariance + spread)
-        for name, route in cases
+        (name, mean + own_mean - middle, own + spread, np.array(own_middle) + spread)
+        for (name, _, _), (own_mean, *own) in others
     ]
     rows += [(name, route.mean, route.covariance, covariance) for name, route in _members(base, fingerprints)]
     return [_beside(name, other, own, mean, reference) for name, other, own, reference in rows]
+
+
+class AlternativeTask(NamedTuple):
+    """A case to be answered; the task travels to a worker process whole.
+
+    Parameters
+    ----------
+    case : Case
+    start : Proposal
+        That of the answer given.
+    alike : bool
+        Whether it suits this case as it is.
+    """
+
+    case: Case
+    start: Proposal
+    alike: bool
+
+
+def _moments(task: AlternativeTask) -> NDArray[np.float64]:
+    """Mean (first row) and covariance (the others) of the answer of a case."""
+    route = task.case.route(task.start if task.alike else task.case.proposal(like=task.start))
+    return np.vstack([route.mean, route.covariance])
 
 
 def _beside(
@@ -126,7 +159,7 @@ def _beside(
     }
 
 
-def _other_models(given: _Case) -> Iterator[tuple[str, _Case, bool]]:
+def _other_models(given: Case) -> Iterator[tuple[str, Case, bool]]:
     """Names and cases, and whether the proposal of the answer given suits them."""
     settings, observations = given.choices.settings, given.observations
     if settings.model_truth == "centred":
@@ -160,11 +193,11 @@ def _members(base: Sequence[ScalePosterior], fingerprints: xr.Dataset) -> Iterat
             yield f"load member {name} alone", route
 
 
-def _uniform(given: _Case, fingerprints: xr.Dataset) -> Iterator[tuple[str, _Case]]:
-    yield "uniform ocean (F = 1)", replace(given, admittance=np.ones_like(given.admittance))
+def _uniform(given: Case, fingerprints: xr.Dataset) -> Iterator[tuple[str, Case, bool]]:
+    yield "uniform ocean (F = 1)", replace(given, admittance=np.ones_like(given.admittance)), True
     if "reference_admittance" in fingerprints:
         cases = fingerprints["reference_admittance"].assign_coords(site=fingerprints["site"].astype(str))
         for k, name in enumerate(cases["case"].values):
             case = as_complex(cases[k].sel(site=list(given.observations.sites)).values)
             if not np.allclose(case, 1.0):
-                yield str(name), replace(given, admittance=case)
+                yield str(name), replace(given, admittance=case), True

@@ -1,6 +1,7 @@
 """Which source of error the variance of the network phasor comes from."""
 
-from collections.abc import Sequence
+from collections.abc import Callable, Iterable, Sequence
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -23,7 +24,12 @@ SOURCES = (
 )
 
 
-def variance_terms(model: LinearModel, posteriors: Sequence[ScalePosterior]) -> dict[str, float]:
+def variance_terms(
+    model: LinearModel,
+    posteriors: Sequence[ScalePosterior],
+    *,
+    mapped: Callable[[Callable[[Any], Any], Sequence[Any]], Iterable[Any]] = map,
+) -> dict[str, float]:
     """Variance of A, summed over both components, by its source.
 
     Parameters
@@ -31,6 +37,8 @@ def variance_terms(model: LinearModel, posteriors: Sequence[ScalePosterior]) -> 
     model : LinearModel
     posteriors : sequence of ScalePosterior
         One a load member.
+    mapped : callable, optional
+        Applies a function to each of a sequence, in order.
 
     Returns
     -------
@@ -45,7 +53,7 @@ def variance_terms(model: LinearModel, posteriors: Sequence[ScalePosterior]) -> 
     the posterior of the scales. `model_spread` holds the circulation where no model was subtracted; `scales` is what
     not knowing the scales, the stretches of Student scatter and the parts of mixtures adds.
     """
-    terms = [_member_terms(model, posterior) for posterior in posteriors]
+    terms = list(mapped(_member_terms, [VarianceTask(model, posterior) for posterior in posteriors]))
     mean = {name: float(np.mean([member[name] for member in terms])) for name in terms[0]}
     return {
         **mean,
@@ -84,7 +92,21 @@ def site_shares(model: LinearModel, posteriors: Sequence[ScalePosterior]) -> NDA
     return np.asarray(shares / shares.sum())
 
 
-def _member_terms(model: LinearModel, posterior: ScalePosterior) -> dict[str, float]:
+class VarianceTask(NamedTuple):
+    """One load member; the task travels to a worker process whole.
+
+    Parameters
+    ----------
+    model : LinearModel
+    posterior : ScalePosterior
+    """
+
+    model: LinearModel
+    posterior: ScalePosterior
+
+
+def _member_terms(task: VarianceTask) -> dict[str, float]:
+    model, posterior = task
     condition, weight, rows, columns = posterior.condition, posterior.weight, model.rows, model.columns
     squares = np.exp(2.0 * condition.log_scales)
     linear = estimator(model, condition)

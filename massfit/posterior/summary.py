@@ -1,6 +1,8 @@
 """The answer in the numbers that are printed: amplitude, peak day, mass, and what they rest on."""
 
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import asdict
+from typing import Any
 
 import numpy as np
 import xarray as xr
@@ -28,6 +30,7 @@ def summarise(
     reference_year: int,
     ocean_area_m2: float,
     sea_water_density: float,
+    mapped: Callable[[Callable[[Any], Any], Sequence[Any]], Iterable[Any]] = map,
 ) -> dict[str, object]:
     """Summarise a posterior as plain numbers, ready for JSON.
 
@@ -42,6 +45,8 @@ def summarise(
         m2, turns pressure into mass.
     sea_water_density : float
         kg m-3, of the sea-water height.
+    mapped : callable, optional
+        Applies a function to each of a sequence, in order.
 
     Returns
     -------
@@ -68,7 +73,7 @@ def summarise(
     return {
         **_answer(posterior.draws, reference_year, ocean_area_m2, sea_water_density),
         "covariance_hpa2": (np.cov(posterior.draws.T) / PASCAL_PER_HPA**2).tolist(),
-        "variance_share": variance_shares(variance_terms(model, posterior.second_route)),
+        "variance_share": variance_shares(variance_terms(model, posterior.second_route, mapped=mapped)),
         "years": yearly_cycles(posterior, observations),
         "alternatives": alternative_answers(
             observations,
@@ -77,6 +82,7 @@ def summarise(
             admittance=admittance,
             choices=choices,
             mixed=posterior.mixed,
+            mapped=mapped,
         ),
         "convergence": {**asdict(posterior.convergence), "converged": posterior.converged},
         "sites": _sites(observations, site_phasors, admittance, checks, notes),

@@ -1,4 +1,7 @@
+import hashlib
+import pickle
 from dataclasses import replace
+from multiprocessing import get_context
 
 import emcee
 import numpy as np
@@ -6,7 +9,7 @@ import pytest
 from scipy import stats
 
 from massfit.errors import InputError
-from massfit.posterior import convergence
+from massfit.posterior import convergence, sample
 from massfit.posterior.importance import integrate_scales
 from massfit.posterior.sample import pool_members, sample_posterior
 from massfit.settings import PosteriorSettings, Priors
@@ -155,6 +158,57 @@ def test_the_order_of_sites_and_models_changes_no_bit(invent, scatter):
     again = sample_posterior(*turned, settings=settings, priors=Priors())
     np.testing.assert_array_equal(again.annual, first.annual)
     np.testing.assert_array_equal(again.second_route[1].node_mean, first.second_route[1].node_mean)
+
+
+def of_every_kind(invent, two_parts, seed):
+    """A random network: missing pairs, groups or distances, a place of two sites, years, a site by its mixture."""
+    rng = np.random.default_rng([seed, 8])
+    network = invent(seed, sites=int(rng.integers(5, 12)), models=3, members=2, missing=0.3, placed=True)
+    site = int(rng.integers(len(network.observations.sites)))
+    network = two_parts(network, site, 80.0 * np.array([1.0, -0.5]), weight=0.3, narrow=0.2)
+    group_scatter = [True, 900.0][seed % 2]
+    return network.datasets(), PosteriorSettings(seed=seed, site_scatter="student-t", group_scatter=group_scatter)
+
+
+def bits(posterior):
+    """Everything that is drawn, as bytes."""
+    route = posterior.second_route[-1]
+    drawn = (posterior.annual, posterior.scales, posterior.year_annual, route.node_mean, route.stretch, route.part)
+    return [np.ascontiguousarray(each).tobytes() for each in drawn]
+
+
+@pytest.mark.usefixtures("short_runs")
+@pytest.mark.parametrize("seed", [0, 1, *(pytest.param(seed, marks=pytest.mark.slow) for seed in range(2, 12))])
+def test_no_order_changes_a_bit_in_networks_of_every_kind(invent, two_parts, seed):
+    (phasors, fingerprints), settings = of_every_kind(invent, two_parts, seed)
+    rng = np.random.default_rng(seed)
+    first = sample_posterior(phasors, fingerprints, settings=settings, priors=Priors())
+    assert first.mixed
+    turned = phasors.isel(site=rng.permutation(phasors.sizes["site"]), model=rng.permutation(3))
+    again = sample_posterior(
+        turned,
+        fingerprints.isel(site=rng.permutation(phasors.sizes["site"])),
+        settings=settings,
+        priors=Priors(),
+        # the parts travel to other processes and may be computed last first
+        mapped=lambda function, parts: [function(pickle.loads(pickle.dumps(part))) for part in parts[::-1]][::-1],
+    )
+    assert again.mixed == first.mixed
+    assert bits(again) == bits(first)
+
+
+@pytest.mark.usefixtures("short_runs")
+def test_another_process_gives_the_same_bits(invent, two_parts):
+    data, settings = of_every_kind(invent, two_parts, 1)
+    mine = hashlib.sha256(b"".join(bits(sample_posterior(*data, settings=settings, priors=Priors())))).hexdigest()
+    context = get_context("spawn")
+    with context.Pool(1) as pool:
+        assert pool.apply(elsewhere, (data, settings)) == mine
+
+
+def elsewhere(data, settings):
+    sample.STEPS = sample.MAX_STEPS = 40
+    return hashlib.sha256(b"".join(bits(sample_posterior(*data, settings=settings, priors=Priors())))).hexdigest()
 
 
 def test_the_dataset_holds_everything(posterior):
