@@ -136,6 +136,12 @@ def test_the_posterior_opens_as_a_tree_of_the_groups_that_arviz_reads(folder: Pa
     from arviz_stats.base import array_stats
 
     assert array_stats.rhat(posterior["annual_phasor"].values[..., 1]) < 1.02
+    # what a summary by ArviZ shows (0.23.4 was opened on a file of the demo): numbers for every variable
+    for name in ("annual_phasor", "s_site", "s_local", "s_common"):
+        values = posterior[name].values.reshape(*posterior[name].shape[:2], -1)
+        for k in range(values.shape[-1]):
+            assert array_stats.ess(values[..., k], method="bulk") > 100.0
+            assert np.isfinite(array_stats.hdi(values[..., k], 0.94)).all()
     assert set(tree["observed_data"].data_vars) == {"phasor", "reduced_sd", "days"}
     assert {"covariance", "weight", "admittance"} <= set(tree["constant_data"].data_vars)
     assert tree.attrs["Conventions"] == "CF-1.13, ACDD-1.3"
