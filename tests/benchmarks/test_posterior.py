@@ -134,6 +134,7 @@ def test_the_cost_grows_no_faster_than_the_sites(scatter: str, measured) -> None
         run_ensembles(EnsembleTask(model, prior, ENSEMBLES, 3, np.random.default_rng(1)))
         task = EnsembleTask(model, prior, ENSEMBLES, 30, np.random.default_rng(1))
         costs[sites] = seconds(lambda task=task: run_ensembles(task))
+    print(scatter, {sites: f"{cost / 40 * 1e3:.1f} ms a step" for sites, cost in costs.items()})
     measured(f"a step for 1000 sites, {scatter} scatter", "a step for 100 sites", costs[1000] / costs[100], 15.0)
     assert costs[1000] / costs[100] < 1.5 * 10.0
 
