@@ -19,6 +19,7 @@ def commands() -> list[list[str]]:
     return [shlex.split(line)[1:] for line in lines]
 
 
+@pytest.mark.slow  # tests/cli/test_screen.py runs such commands on smaller fields
 def test_the_commands_of_the_screening_page_run(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.chdir(tmp_path)
     monkeypatch.setattr("massfit.pipeline.save_screen.draw_screening", lambda *_: {})  # drawn in tests/cli

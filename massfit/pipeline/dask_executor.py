@@ -8,6 +8,7 @@ from importlib import metadata
 from tempfile import TemporaryDirectory
 from typing import Any, TypeVar
 
+from massfit.display import counted
 from massfit.errors import Fault, InputError
 
 Part = TypeVar("Part")
@@ -68,7 +69,7 @@ def _fetched(future: Any) -> Any:
     try:
         return future.result()
     except KilledWorker as error:
-        problem = f"one part of the work ended {error.allowed_failures + 1} workers, one after the other"
+        problem = f"one part of the work ended {counted(error.allowed_failures + 1, 'worker')}, one after the other"
         action = "Most likely their memory is too small: give less with --memory, or use fewer workers"
         raise InputError(Fault("workers", "", problem, "", action)) from error
     finally:

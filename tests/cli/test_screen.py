@@ -107,7 +107,8 @@ def test_it_is_no_answer_and_is_replaced_only_when_asked(home: Path, done: Resul
     assert "--overwrite" in refused.stderr
 
 
-def test_a_part_of_the_ocean_is_told(home: Path) -> None:
+def test_a_part_of_the_ocean_is_told(home: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("massfit.pipeline.save_screen.draw_screening", lambda *_: {})
     with xr.open_dataset(home / "north.nc", engine="h5netcdf") as data:
         data.isel(lat=slice(8, 18), lon=slice(28, 40)).to_netcdf(home / "part.nc", engine="h5netcdf")
     done = call("screen", home / "part.nc", "--ocean-mean", "subtract", "--output", home / "part", "--years", 2)

@@ -39,6 +39,10 @@ def ends_its_worker(number: int) -> int:
     return number
 
 
+def forgive_nothing(dask_scheduler: Any) -> None:
+    dask_scheduler.allowed_failures = 0
+
+
 class Murderous:
     """Kills a worker when the first result is there, with others under way."""
 
@@ -96,6 +100,17 @@ def test_a_scheduler_that_is_there_is_used_and_left_running(cluster: Executor) -
         shared = screen_sea_floor([field], executor=guest)
     xr.testing.assert_identical(shared, screen_sea_floor([field]))
     assert list(cluster.results(slow_square, [2])) == [4]
+
+
+def test_a_part_that_ends_its_workers_is_given_up(cluster: Executor) -> None:
+    assert isinstance(cluster, DaskExecutor)
+    cluster._client.run_on_scheduler(forgive_nothing)  # as it is, four workers would have to start anew
+    with pytest.raises(InputError) as caught:
+        list(cluster.results(ends_its_worker, [0]))
+    assert str(caught.value) == (
+        "workers: one part of the work ended 1 worker, one after the other. "
+        "Most likely their memory is too small: give less with --memory, or use fewer workers."
+    )
 
 
 def test_processes_without_dask_give_the_same() -> None:
