@@ -54,6 +54,13 @@ PICTURES = {
     "records": "Each site: daily record with fitted drift, deployments in turn blue and orange; the series subtracted "
     "from it; what remains, with the fitted annual cycle. Every row has its own scale; one day in 250, the most "
     "extreme, is out of sight.",
+    "siting_influence": "What each site carries: the part of the answer's precision that is lost without it, and how "
+    "far the answer then moves, the scales integrated anew.",
+    "siting_sizes": "Answer and error of a component for random subsets of the sites, against the number kept.",
+    "siting_order": "The answer as more and more sites are kept, those of the smallest value first, with one standard "
+    "deviation; dashed, as a warning, those first that agree with the others: that error is too small.",
+    "siting_path": "Error of a component of the answer with the best subset of every size by two criteria, chosen by "
+    "what the sites would tell and not by what they read, beside random subsets.",
     "siting_candidate_map": "By how much one recorder more would bring the error of the answer down, for a record of "
     "the length planned: dots are the sites of the network, numbered diamonds the best places of the open sea, far "
     "apart. Pale cells are not listed: near the coast or the loads.",
@@ -169,6 +176,10 @@ def _alternative_texts(summary: Mapping[str, Any]) -> dict[str, str]:
         + answer_sentence(summary).removeprefix("The annual cycle of ocean mass has an "),
         "convergence": f"Traces, autocorrelation, R-hat and effective draws of the sampler. {trust_sentence(summary)}",
         "coverage": f"Calendar of the months of {count} sites; days and coverage of each are in the table below.",
+        "siting_influence": "Precision lost and shift of the answer without each site, the one that carries most on top.",
+        "siting_sizes": "Spread of the answer over random subsets, narrowing towards that of all sites.",
+        "siting_order": "Answer and error against the number of sites kept, in an allowed and in a forbidden order.",
+        "siting_path": "Error against the number of sites kept, for best and for random subsets.",
         "siting_candidate_map": "World map of what one recorder more would do; the best places are in the table below.",
         "siting_record_length": "Errors against the years of record, falling steeply up to a year and a quarter.",
         "siting_service": "Error of the answer against the month of service for the sites that matter most; the "

@@ -14,7 +14,7 @@ from massfit.report.words.run_text import SHARE_WORDS
 from massfit.results.estimate import Estimate
 from massfit.results.finished import FinishedRun, finished_run
 
-NOT_RUN = {"satellite", "satellite_sites", "siting_candidate_map", "siting_record_length", "siting_service"}
+NOT_RUN = {name for name in PICTURES if name.startswith(("satellite", "siting"))}
 PNG = dict.fromkeys((*PICTURES, "records_2", "phasor_plane_column"), b"\x89PNG")
 SECTIONS = (
     "beware", "assumed", "holds", "bench", "network", "corrections", "records", "fingerprint", "provenance", "cite",
