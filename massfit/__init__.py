@@ -24,6 +24,7 @@ _HOMES = {
     "love_numbers": "massfit.earth.love",
     "make_settings": "massfit.settings",
     "prepare_operator": "massfit.fingerprint.operator",
+    "rank_sites": "massfit.pipeline.rank_sites",
     "read_gravity": "massfit.io.gravity.read_gravity",
     "read_network": "massfit.io.network.network_file",
     "regional_responses": "massfit.fingerprint.regions",

@@ -13,7 +13,7 @@ NAMES = [
     "CirculationModel", "InputError", "LoadPattern", "ModelField", "Network", "OceanFunction", "Record",
     "ReducedRecord", "ReducedSite", "Series", "Settings", "SimulationOptions", "Site", "builtin_loads",
     "compare_gravity", "draw_admittances", "estimate", "fit_site", "love_numbers", "make_settings",
-    "prepare_operator", "read_gravity", "read_network", "regional_responses", "sample_posterior",
+    "prepare_operator", "rank_sites", "read_gravity", "read_network", "regional_responses", "sample_posterior",
     "screen_sea_floor", "simulate_network", "site_fingerprints", "site_footprints", "solve_sea_level",
     "study_fingerprint",
 ]  # fmt: skip

@@ -284,28 +284,34 @@ def screen(fields: tuple[str, ...], output: Path, quiet: bool, **options: Any) -
 @click.option("--depths", type=_FOLDER, metavar="FILE", help="NetCDF of depths of the sea floor.")
 @click.option("--candidates", type=_FOLDER, metavar="FILE", help="CSV: name,latitude,longitude[,depth_m,noise_hpa].")
 @click.option("--target-width", type=click.FloatRange(0.001, 10.0), metavar="HPA", help="Error to be reached.")
+@click.option("--by", type=_FOLDER, metavar="FILE", help="CSV: site,value; keep sites of small values first.")
+@click.option("--subsets", type=click.IntRange(1, 100_000), default=20, show_default=True, help="Subsets of each size.")
 @click.option("--outside", is_flag=True, help="Allow paths outside the network's folder.")
 @click.option("--quiet", is_flag=True, help="Print nothing but errors.")
 def siting(
     results: Path, network: Path | None, years: float, noise: float | None, quietness: Path | None,
-    depths: Path | None, candidates: Path | None, target_width: float | None, *, outside: bool, quiet: bool,
+    depths: Path | None, candidates: Path | None, target_width: float | None, by: Path | None, subsets: int, *,
+    outside: bool, quiet: bool,
 ) -> None:  # fmt: skip
-    """Say where the next recorder belongs and how long it must stay.
+    """Say which sites carry the answer and where the next recorder belongs.
 
-    Maps what one recorder more would do to the error of finished RESULTS, lists
-    the best places and those asked about, years of record that are needed, and
-    what becomes of the answer as recorders fail or are redeployed. Adds
-    siting.nc, figures and a section of the page to RESULTS, and prints tables.
+    Leaves sites out of finished RESULTS, says how few would do and which to
+    keep, maps what one recorder more would do, lists the best places and those
+    asked about, years of record that are needed, and what becomes of the answer
+    as recorders fail or are redeployed. Adds siting.nc, figures and a section
+    of the page to RESULTS, and prints tables.
     """
     with refusing_politely(), shown_progress(quiet=quiet) as progress:
         from massfit.pipeline.siting import SitingFiles, siting_to_folder
 
-        files = SitingFiles(years, noise, target_width, candidates, quietness, depths)
+        files = SitingFiles(years, noise, target_width, candidates, quietness, depths, by, subsets)
         run = siting_to_folder(results, network, files, outside=outside, progress=progress)
     from massfit.report.words.siting_plan_text import siting_plan_text
+    from massfit.report.words.siting_text import siting_text
 
     if not quiet:
-        click.echo(f"{siting_plan_text(run.datasets)}\n\nResults in {results}: siting.nc, report.html")
+        tables = f"{siting_text(run.summary['siting'])}\n\n{siting_plan_text(run.datasets)}"
+        click.echo(f"{tables}\n\nResults in {results}: siting.nc, report.html")
 
 
 @main.command()

@@ -7,12 +7,14 @@ import xarray as xr
 
 from massfit.constants import PASCAL_PER_HPA
 from massfit.errors import Fault, InputError, collect
+from massfit.io.fields.site_column import read_site_column
 from massfit.io.fields.siting_files import read_candidates, read_depths, read_quietness
 from massfit.io.network.network_file import read_sites_and_loads
 from massfit.io.results.partial_folder import claimed
 from massfit.io.results.read_results import read_results
 from massfit.network import Network
 from massfit.pipeline.progress import Progress, ignore
+from massfit.pipeline.rank_sites import SUBSETS, rank_sites, with_ranking
 from massfit.pipeline.save import save_run
 from massfit.pipeline.site_plan import PlanOptions, network_now, plan_sites
 from massfit.pipeline.site_service import plan_service
@@ -42,6 +44,10 @@ class SitingFiles:
     noise_hpa, target_hpa : float, optional
         Standard deviation of the daily means of the planned recorder; error of a component to be reached.
     candidates, quietness, depths : pathlib.Path, optional
+    by : pathlib.Path, optional
+        CSV ``site,value``: sites of small values are kept first.
+    subsets : int
+        Random subsets of each size.
     """
 
     years: float = 2.0
@@ -50,6 +56,8 @@ class SitingFiles:
     candidates: Path | None = None
     quietness: Path | None = None
     depths: Path | None = None
+    by: Path | None = None
+    subsets: int = SUBSETS
 
     def read(self) -> PlanOptions:
         """Read the files, with the faults of all of them."""
@@ -79,7 +87,7 @@ def siting_to_folder(
     outside: bool = False,
     progress: Progress = ignore,
 ) -> FinishedRun:
-    """Say of finished results where and how long to measure next, and add that to their folder.
+    """Say which sites carry finished results, where and how long to measure next, and add that to their folder.
 
     Parameters
     ----------
@@ -105,10 +113,20 @@ def siting_to_folder(
     progress("reading", 0, 1)
     _require_converged(read_results(folder), folder)
     options = files.read()
+    column = read_site_column(files.by) if files.by else None
     inputs = read_sites_and_loads(network or folder.absolute().parent, outside=outside)
     progress("reading", 1, 1)
     with claimed(folder) as partial:
-        run = with_siting(read_results(folder), inputs, options, progress=progress)
+        run = read_results(folder)
+        ranking = rank_sites(
+            run,
+            subsets=files.subsets,
+            by=column,
+            by_name=str(files.by.name) if files.by else "",
+            target_width_hpa=files.target_hpa,
+            progress=progress,
+        )
+        run = with_siting(with_ranking(run, ranking), inputs, options, progress=progress)
         save_run(run, partial)
     return run
 

@@ -11,7 +11,7 @@ from massfit.posterior.importance import DRAWS, ScalePosterior, integrate_scales
 from massfit.posterior.observations import Observations
 from massfit.posterior.regression import LinearModel, linear_model
 from massfit.posterior.rows import observation_rows
-from massfit.posterior.sharing import find_sharing
+from massfit.posterior.sharing import Sharing, find_sharing
 from massfit.settings import PosteriorSettings, Priors
 
 
@@ -38,6 +38,7 @@ def network_model(
     choices: Choices,
     *,
     mixed: Collection[str] = (),
+    sharing: Sharing | None = None,
 ) -> LinearModel:
     """Build the regression of all load members.
 
@@ -48,6 +49,8 @@ def network_model(
     choices : Choices
     mixed : collection of str
         Sites that enter by their mixture; the others by its mean and covariance.
+    sharing : Sharing, optional
+        What the sites share; found from the observations by default.
 
     Returns
     -------
@@ -62,7 +65,7 @@ def network_model(
     return linear_model(
         observation_rows(observations, mixed),
         admittance,
-        find_sharing(observations, settings.group_scatter),
+        find_sharing(observations, settings.group_scatter) if sharing is None else sharing,
         annual_sd=priors.annual_sd_hpa * PASCAL_PER_HPA,
         atmosphere_sd=choices.atmosphere_sd_hpa * PASCAL_PER_HPA,
         year_sd=priors.year_sd_hpa * PASCAL_PER_HPA,

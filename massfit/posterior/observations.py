@@ -102,16 +102,19 @@ class Observations:
 
     def select(self, keep: NDArray[np.bool_]) -> "Observations":
         """Observations of the sites where `keep` (n_site,) is true."""
-        chosen = np.flatnonzero(keep)
+        return self.take(np.flatnonzero(keep))
+
+    def take(self, chosen: NDArray[np.int64]) -> "Observations":
+        """Observations of the sites of these indices; one may be taken more than once."""
         return replace(
             self,
             sites=tuple(self.sites[s] for s in chosen),
-            weight=self.weight[keep],
-            part_phasor=self.part_phasor[keep],
-            part_covariance=self.part_covariance[keep],
-            model_noise=self.model_noise[keep],
-            year_share=self.year_share[keep] if self.years else self.year_share,
-            position=None if self.position is None else self.position[keep],
+            weight=self.weight[chosen],
+            part_phasor=self.part_phasor[chosen],
+            part_covariance=self.part_covariance[chosen],
+            model_noise=self.model_noise[chosen],
+            year_share=self.year_share[chosen] if self.years else self.year_share,
+            position=None if self.position is None else self.position[chosen],
             group=tuple(self.group[s] for s in chosen) if self.group else (),
         )
 

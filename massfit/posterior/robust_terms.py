@@ -26,6 +26,7 @@ ROUNDS = 30
 _STEP = 0.8  # of the way to each new factor: whole steps can swing
 _LEAST_WEIGHT = 1e-4  # parts of a mixture below are left out
 _SETTLED = 1e-3  # of the largest precision
+_SWINGING = 0.03  # of the largest precision, from which a point has not settled
 _LEAST = 1e-6  # least precision of a factor, in units of that of the site without scatter
 
 
@@ -205,16 +206,29 @@ class Points:
         precision = self._kept / spread
         return precision, precision * value
 
-    def fitted_factors(self) -> tuple[Floats, Floats]:
-        """Precision and shift (n, n_factor, 2) of factors that agree with the true ones beside all others."""
+    def only_kept(self, precision: Floats, shift: Floats) -> tuple[Floats, Floats]:
+        """Factors of another subset, of those that are kept here."""
+        return self._kept * precision, self._kept * shift
+
+    def leverage(self, precision: Floats) -> Floats:
+        """Share (n, n_factor, 2) of each site in each component of A: its weight times its response to A."""
+        covariance = self._solved(precision, np.zeros_like(precision))[0]
+        design = self._factors.design
+        gain = np.einsum("nap,fxp->nfax", covariance[:, -2:], design) * precision[:, :, None]
+        return np.asarray(np.einsum("nfax,fxa->nfa", gain, design[:, :, -2:]))
+
+    def fitted_factors(self) -> tuple[Floats, Floats, NDArray[np.bool_]]:
+        """Precision and shift (n, n_factor, 2) that agree with the true factors, and where (n,) they settled."""
         precision, shift = self.normal_factors()
-        for _ in range(ROUNDS):
+        step = _STEP
+        for k in range(ROUNDS):
             new_precision, new_shift = self._renewed(precision, shift)
-            step = _STEP * (new_precision - precision)
-            precision, shift = precision + step, shift + _STEP * (new_shift - shift)
-            if np.abs(step).max() < _SETTLED * precision.max():
+            change = np.abs(new_precision - precision).max(axis=(1, 2)) / (precision.max(axis=(1, 2)) + 1e-300)
+            precision, shift = precision + step * (new_precision - precision), shift + step * (new_shift - shift)
+            if change.max() < _SETTLED:
                 break
-        return precision, shift
+            step = _STEP if k < ROUNDS // 3 else 0.9 * step  # ever smaller steps where whole ones swing
+        return precision, shift, change < _SWINGING
 
     def member_means(self, designs: Floats, precision: Floats, shift: Floats) -> Floats:
         """Mean (n_member, n, 2) of A with the factors given and other designs (n_member, n_factor, 2, n_column)."""

@@ -3,8 +3,7 @@
 The scales are integrated with the mean fingerprint of the members; how far each member's answer lies from that of the
 mean is computed at the posterior mean of the scales, where it hardly depends on them. Normal scatter is integrated by
 quadrature (:mod:`massfit.posterior.node_terms`). Student scatter and mixtures go by expectation propagation on the same
-nodes (:mod:`massfit.posterior.robust_terms`), and by importance-weighted nodes of their own
-(:mod:`massfit.posterior.importance`) for the few sites whose posterior may have two humps.
+nodes (:mod:`massfit.posterior.robust_terms`).
 """
 
 from dataclasses import dataclass, replace
@@ -19,15 +18,12 @@ from massfit.posterior.node_terms import NodeTable, NodeValues, node_table, node
 from massfit.posterior.observations import Observations
 from massfit.posterior.regression import LinearModel
 from massfit.posterior.robust_terms import Factors, Points, subset_factors
-from massfit.posterior.sharing import places_of
+from massfit.posterior.sharing import Sharing, places_of
 
 Floats = NDArray[np.float64]
 Kept = NDArray[np.bool_]
 
-FEW_SITES = 5
-"""Sites up to which a subset with Student scatter or mixtures is integrated by nodes of its own."""
-
-_FEW_DRAWS = 1000  # nodes of each such subset
+_WHOLE_DRAWS = 1000  # nodes on which the whole network tells which places are far off
 _GROUP_LEVELS = 4  # of s_group, at which the effect of Student scatter is computed
 
 
@@ -137,15 +133,88 @@ def subset_tables(
 def _prepared(
     observations: Observations, admittance: NDArray[np.complex128], choices: Choices, mixed: tuple[str, ...]
 ) -> PreparedNetwork:
-    mean = admittance.mean(axis=0)[None]
-    extra = _extra(network_model(observations, mean, choices, mixed=mixed), choices)
+    model = network_model(observations, admittance.mean(axis=0)[None], choices, mixed=mixed)
+    return _with_tables(observations, admittance, choices, mixed, model.sharing, _extra(model, choices))
+
+
+def _with_tables(
+    observations: Observations,
+    admittance: NDArray[np.complex128],
+    choices: Choices,
+    mixed: tuple[str, ...],
+    sharing: Sharing,
+    extra: Floats,
+) -> PreparedNetwork:
     tables = []
-    for own in (mean, *admittance[:, None]):
-        model = network_model(observations, own, choices)
+    for own in (admittance.mean(axis=0)[None], *admittance[:, None]):
+        model = network_model(observations, own, choices, sharing=sharing)
         tables.append(node_table(model, scale_priors(choices.priors, model.scale_count), extra=extra))
     factors = [subset_factors(table, observations, mixed) for table in tables]
     designs = np.array([each.design for each in factors[1:]])
     return PreparedNetwork(tables[0], factors[0], designs, not (mixed or tables[0].model.student))
+
+
+def full_scales(network: PreparedNetwork) -> Floats:
+    """Posterior means (n_scale,) of the logarithms of the scales, s_group included, with all sites."""
+    everything = np.ones((1, len(network.table.model.sharing.place)), dtype=bool)
+    return np.asarray(_middle(network, everything).log_scales[0])
+
+
+def moved_tables(tables: SubsetTables, site: NDArray[np.int64], offset: Floats) -> SubsetTables:
+    """Add copies of sites whose phasors are moved off; a subset takes a site or one of its copies, not both.
+
+    Parameters
+    ----------
+    tables : SubsetTables
+    site : (n,) array of int
+        Site that each copy is of.
+    offset : (n, 2) array
+        Pa, added to its phasors of all models.
+
+    Returns
+    -------
+    SubsetTables
+        The copies follow the sites.
+    """
+    seen, count = tables.observations, tables.site_count
+    chosen = np.concatenate([np.arange(count), site])
+    names = (*seen.sites, *(f"{seen.sites[s]} moved {i + 1}" for i, s in enumerate(site)))
+    phasor = seen.part_phasor[chosen]
+    phasor[count:] += offset[:, None, None]
+    own = [seen.sites[s] for s in chosen]
+    mean_only = frozenset(name for name, s in zip(names, own, strict=True) if s in seen.mean_only)
+    moved = replace(seen.take(chosen), sites=names, part_phasor=phasor, mean_only=mean_only)
+    # a copy has a place of its own, unless several sites lie at that of its site
+    several = np.bincount(tables.place)[tables.place[site]] > 1
+    new_place = np.where(several, tables.place[site], tables.place.max() + 1 + np.arange(len(site)))
+    place = np.concatenate([tables.place, new_place])
+    made = replace(
+        tables,
+        place=place,
+        label=tables.label[chosen],
+        observations=moved,
+        admittance=tables.admittance[:, chosen],
+        mixed=tuple(name for name, s in zip(names, own, strict=True) if s in tables.mixed),
+    )
+    # a site that is moved far off is compared with normal scatter that reaches there
+    far = 0.5 * (offset**2).sum(axis=1)
+    return replace(
+        made,
+        alone=_moved(made, tables.alone, chosen, far),
+        sharing=None if tables.sharing is None else _moved(made, tables.sharing, chosen, far),
+    )
+
+
+def _moved(made: SubsetTables, network: PreparedNetwork, chosen: NDArray[np.int64], far: Floats) -> PreparedNetwork:
+    """Prepare a network with copies of its sites; what these share with others is known."""
+    own, extra = network.table.model.sharing, network.table.extra
+    sharing = Sharing(
+        made.place, own.group[chosen], own.alone[chosen], own.year[chosen], own.period_share, own.unmodelled[chosen]
+    )
+    beyond = np.zeros(len(far)) if network.plain else extra[own.place[chosen[len(own.place) :]]] + far
+    return _with_tables(
+        made.observations, made.admittance, made.choices, made.mixed, sharing, np.concatenate([extra, beyond])
+    )
 
 
 def _extra(model: LinearModel, choices: Choices) -> Floats:
@@ -153,7 +222,7 @@ def _extra(model: LinearModel, choices: Choices) -> Floats:
     if not model.student:
         return np.zeros(model.place_count)
     rng = np.random.default_rng(choices.settings.seed)
-    route = integrate_scales(model, scale_priors(choices.priors, model.scale_count), rng=rng, draws=_FEW_DRAWS)
+    route = integrate_scales(model, scale_priors(choices.priors, model.scale_count), rng=rng, draws=_WHOLE_DRAWS)
     square = np.exp(2.0 * route.log_scales[:, :1])
     whole, usual = 1.0 / (route.weight @ (1.0 / (square * route.stretch))), 1.0 / (route.weight @ (1.0 / square))
     return np.maximum(whole - usual, 0.0)
@@ -203,7 +272,7 @@ def subset_posteriors(tables: SubsetTables, kept: Kept) -> SubsetMoments:
     kept = np.asarray(kept, dtype=bool)
     shares = tables.shares(kept) if tables.sharing is not None else np.zeros(len(kept), dtype=bool)
     found = [
-        (np.flatnonzero(chosen), _pooled(tables, table, kept[chosen]))
+        (np.flatnonzero(chosen), _pooled(table, kept[chosen]))
         for chosen, table in ((~shares, tables.alone), (shares, tables.sharing))
         if table is not None and chosen.any()
     ]
@@ -211,42 +280,24 @@ def subset_posteriors(tables: SubsetTables, kept: Kept) -> SubsetMoments:
     return joined.take(np.argsort(np.concatenate([index for index, _ in found])))
 
 
-def _pooled(tables: SubsetTables, network: PreparedNetwork, kept: Kept) -> SubsetMoments:
+def _pooled(network: PreparedNetwork, kept: Kept) -> SubsetMoments:
     blocks = np.split(kept, range(BLOCK, len(kept), BLOCK))
-    return join_moments([_with_members(network, block, _middle(tables, network, block)) for block in blocks])
+    return join_moments([_with_members(network, block, _middle(network, block)) for block in blocks])
 
 
-def _middle(tables: SubsetTables, network: PreparedNetwork, kept: Kept) -> SubsetMoments:
+def _middle(network: PreparedNetwork, kept: Kept) -> SubsetMoments:
     """Answer a block of subsets with the mean fingerprint."""
     values = node_values(network.table, kept)
     found = integrate_nodes(network.table, values)
     if network.plain:
         return found
-    found = integrate_nodes(network.table, _robust(network, kept.astype(float), values, found.log_scales))
-    count = kept.sum(axis=1)
-    few = np.flatnonzero((count > 0) & (count <= FEW_SITES))
-    exact = [_own_nodes(tables, kept[i], found.log_scales.shape[1]) for i in few]
-    order = np.arange(len(kept))
-    order[few] = len(kept) + np.arange(len(few))
-    return join_moments([found, *exact]).take(order)
-
-
-def _own_nodes(tables: SubsetTables, kept: Kept, scale_count: int) -> SubsetMoments:
-    """Answer one subset by importance-weighted nodes of its own."""
-    seen, mean = tables.observations.select(kept), tables.admittance.mean(axis=0)[None, kept]
-    mixed = [site for site in seen.sites if site in tables.mixed]
-    model = network_model(seen, mean, tables.choices, mixed=mixed)
-    prior_scales = scale_priors(tables.choices.priors, model.scale_count)
-    rng = np.random.default_rng(tables.choices.settings.seed)
-    route = integrate_scales(model, prior_scales, rng=rng, draws=_FEW_DRAWS)
-    log_scales = (route.weight @ route.log_scales)[None, :scale_count]
-    return SubsetMoments(route.mean[None], route.covariance[None], np.array([route.log_evidence]), log_scales)
+    return integrate_nodes(network.table, _robust(network, kept.astype(float), values, found.log_scales))
 
 
 def _with_members(network: PreparedNetwork, kept: Kept, found: SubsetMoments) -> SubsetMoments:
     """Add how far the load members lie apart, at the posterior mean of the scales."""
     points = Points(network.table, network.factors, kept.astype(float), found.log_scales)
-    fitted = points.normal_factors() if network.plain else points.fitted_factors()
+    fitted = points.normal_factors() if network.plain else points.fitted_factors()[:2]
     shift = points.member_means(network.member_design, *fitted) - points.answers(*fitted, normal=True).mean
     away = shift - shift.mean(axis=0)
     spread = inflation(len(shift)) * np.einsum("kni,knj->nij", away, away) / len(shift)
@@ -258,7 +309,7 @@ def _with_members(network: PreparedNetwork, kept: Kept, found: SubsetMoments) ->
 def _robust(network: PreparedNetwork, inside: Floats, values: NodeValues, log_scales: Floats) -> NodeValues:
     """Add to the nodes what Student scatter and mixtures change, by s_site and s_group."""
     site, _, _, group = (rule.knot for rule in network.table.rules)
-    levels = group[np.unique(np.linspace(0, len(group) - 1, _GROUP_LEVELS).round().astype(int))]
+    levels = group[np.unique(np.linspace(0, 0.7 * (len(group) - 1), _GROUP_LEVELS).round().astype(int))]
     at = np.tile(log_scales, (len(site), len(levels), 1, 1))
     at[..., 0] = site[:, None, None]
     if len(group) > 1:
@@ -266,10 +317,22 @@ def _robust(network: PreparedNetwork, inside: Floats, values: NodeValues, log_sc
     count = len(site) * len(levels)
     points = Points(network.table, network.factors, np.tile(inside, (count, 1)), at.reshape(-1, at.shape[3]))
     normal = points.answers(*points.normal_factors(), normal=True)
-    robust = points.answers(*points.fitted_factors(), normal=False)
+    precision, shift, settled = points.fitted_factors()
+    robust = points.answers(precision, shift, normal=False)
     upper = (robust.covariance - normal.covariance)[:, [0, 0, 1], [0, 1, 1]]
     rows = np.column_stack([robust.log_evidence - normal.log_evidence, robust.mean - normal.mean, upper])
-    # straight lines along the logarithm of s_group
+    rows = _settled(rows.reshape(len(site), len(levels), len(inside), 6), settled)
+    # straight lines along the logarithm of s_group, level beyond
     lines = np.array([np.interp(group, levels, row) for row in np.eye(len(levels))])
-    change = np.einsum("slnq,lg->qsgn", rows.reshape(len(site), len(levels), len(inside), 6), lines)[:, :, None, None]
+    change = np.einsum("slnq,lg->qsgn", rows, lines)[:, :, None, None]
     return NodeValues(values.log_likelihood + change[0], values.mean + change[1:3], values.covariance + change[3:])
+
+
+def _settled(rows: Floats, settled: NDArray[np.bool_]) -> Floats:
+    """Take (n_site_knot, n_level, n, 6) from the level, or the knot, before where the factors did not settle."""
+    there = settled.reshape(rows.shape[:3])
+    for i in range(rows.shape[0]):
+        for k in range(rows.shape[1]):
+            before = rows[i, k - 1] if k else rows[i - 1, k] if i else np.zeros_like(rows[i, k])
+            rows[i, k] = np.where(there[i, k][:, None], rows[i, k], before)
+    return rows
