@@ -37,11 +37,9 @@ def test_one_of_a_redundant_pair_is_missed_least(network):
     assert set(others[:2]) == set(PAIR)
 
 
-def test_weights_are_those_of_the_regression(network):
-    """Leverage by the linear map of the likelihood, information by the regression without the site."""
-    tables, _, scatter = network
-    if scatter != "normal":
-        pytest.skip("the stretches of Student scatter are not those of the regression")
+def test_weights_are_those_of_the_regression():
+    """Leverage by the linear map of the likelihood; its sum by what the prior leaves."""
+    tables = tables_of(*planted(), "normal")
     scales = full_scales(tables.alone)
     information, leverage = site_weights(tables.alone, scales)
     model = tables.alone.table.model
