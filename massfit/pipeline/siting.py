@@ -117,7 +117,7 @@ def siting_to_folder(
     inputs = read_sites_and_loads(network or folder.absolute().parent, outside=outside)
     progress("reading", 1, 1)
     with claimed(folder) as partial:
-        run = read_results(folder)
+        run = with_siting(read_results(folder), inputs, options, progress=progress)
         ranking = rank_sites(
             run,
             subsets=files.subsets,
@@ -126,7 +126,7 @@ def siting_to_folder(
             target_width_hpa=files.target_hpa,
             progress=progress,
         )
-        run = with_siting(with_ranking(run, ranking), inputs, options, progress=progress)
+        run = with_ranking(run, ranking)
         save_run(run, partial)
     return run
 

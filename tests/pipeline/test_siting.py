@@ -39,7 +39,19 @@ def printed(network: Path) -> str:
         f"Beside,{site['latitude']},{site['longitude']},4000,\nFar,-40,250,,0.5\nLoud,-40,250,,20\n"
     )
     done = CliRunner().invoke(
-        main, ["siting", str(network / "results"), "--candidates", str(file), "--target-width", "0.2", "--years", "1.5"]
+        main,
+        [
+            "siting",
+            str(network / "results"),
+            "--candidates",
+            str(file),
+            "--target-width",
+            "0.2",
+            "--years",
+            "1.5",
+            "--subsets",
+            "2",
+        ],
     )
     assert done.exit_code == 0, done.output
     return done.output
@@ -63,7 +75,8 @@ def test_the_folder_holds_datasets_figures_and_page(network: Path) -> None:
     results = network / "results"
     run = read_results(results)
     names = {name.partition("/")[2] for name in run.datasets if name.startswith("siting.nc")}
-    assert names == {"candidate_map", "best_places", "asked_places", "record_length", "service"}
+    assert names == {"candidate_map", "best_places", "asked_places", "record_length", "service", "ranking"}
+    assert len(run.summary["siting"]["without_sites"]) == len(run.summary["sites"])
     for name in ("candidate_map", "record_length", "service"):
         assert (results / f"figures/siting_{name}.png").exists()
     page = (results / "report.html").read_text()
