@@ -176,7 +176,7 @@ def _alternative_texts(summary: Mapping[str, Any]) -> dict[str, str]:
         + answer_sentence(summary).removeprefix("The annual cycle of ocean mass has an "),
         "convergence": f"Traces, autocorrelation, R-hat and effective draws of the sampler. {trust_sentence(summary)}",
         "coverage": f"Calendar of the months of {count} sites; days and coverage of each are in the table below.",
-        "siting_influence": "Precision lost and shift of the answer without each site, the one that carries most on top.",
+        "siting_influence": "Precision lost, and shift of the answer, without each site; what carries most is on top.",
         "siting_sizes": "Spread of the answer over random subsets, narrowing towards that of all sites.",
         "siting_order": "Answer and error against the number of sites kept, in an allowed and in a forbidden order.",
         "siting_path": "Error against the number of sites kept, for best and for random subsets.",
