@@ -142,7 +142,7 @@ def phasors(network: Path, output: Path | None, overwrite: bool, outside: bool, 
 @click.option("--years", type=click.FloatRange(1.0, 12.0), default=4.0, show_default=True, help="Length, years.")
 @click.option("--models", type=click.IntRange(0, 12), default=3, show_default=True, help="Number of ocean models.")
 @click.option("--noise", type=click.FloatRange(0.0, 20.0), default=1.0, show_default=True, help="Scale of the noise.")
-@click.option("--sampling", type=click.Choice(["hourly", "daily"]), default="hourly", show_default=True)
+@click.option("--sampling", type=click.Choice(["hourly", "15s", "daily"]), default="hourly", show_default=True)
 @click.option("--satellites", type=click.IntRange(0, 4), default=2, show_default=True, help="Gravity centres.")
 @click.option("--sea-floor", is_flag=True, help="Also fields of ocean models for massfit screen.")
 def simulate(

@@ -35,7 +35,7 @@ def settings(options: SimulationOptions, clock: Clock) -> Settings:
             ocean_mean_atmosphere="fields/ocean_mean_atmosphere.csv",
             ocean_mean_atmosphere_sd_hpa=_AIR_ERROR_SD / 100.0,
             atmosphere_load="fields/atmosphere_load.nc",
-            tides="remove" if options.sampling == "hourly" else "already-removed",
+            tides="already-removed" if options.sampling == "daily" else "remove",
         ),
         fingerprint=Fingerprint(loads=("fields/loads.nc",)),
     )

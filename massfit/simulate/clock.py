@@ -19,7 +19,7 @@ class Clock:
         First day, UTC.
     n_days : int
     samples_per_day : int
-        24 or 1.
+        24 or 1; of recorders 5760 too.
     reference_year : int
         Origin of phases.
     """
@@ -51,6 +51,11 @@ class Clock:
         """Clock of the same period with one value a day."""
         return replace(self, samples_per_day=1)
 
+    @property
+    def by_quarter_minute(self) -> "Clock":
+        """Clock of the same period with a value every 15 s."""
+        return replace(self, samples_per_day=5760)
+
     def daily(self, values: NDArray[np.float64]) -> NDArray[np.float64]:
         """Daily means of values whose last axis is this clock."""
         by_day = values.reshape(*values.shape[:-1], self.n_days, self.samples_per_day)
@@ -68,6 +73,6 @@ def make_clock(options: SimulationOptions) -> Clock:
     return Clock(
         first_day=np.datetime64(f"{options.first_year:04d}-01-01", "D"),
         n_days=round(365.25 * options.years),
-        samples_per_day=24 if options.sampling == "hourly" else 1,
+        samples_per_day=1 if options.sampling == "daily" else 24,
         reference_year=options.first_year + int(options.years // 2),
     )

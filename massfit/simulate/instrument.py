@@ -14,6 +14,7 @@ from massfit.simulate.options import SimulationOptions
 from massfit.site import Interval
 
 _WHITE_DAILY_SD = 8.0  # Pa on a daily mean
+_OF_A_SAMPLE = 1.0  # noise of one sample over that of a daily mean
 _SPIKE_EVERY_DAYS = 60.0
 _LOST_EVERY_DAYS = 40.0
 _LIFTED, _SWAYING = 9000.0, 1500.0  # Pa: mean and standard deviation while off the bottom
@@ -178,7 +179,7 @@ def observe(
     time = clock.time[part]
     days = (np.arange(part.start, part.stop) + 0.5) / per_day
     pressure = sea_floor_pressure[part] + deployment.offset + deployment.drift(days)
-    pressure += options.noise * deployment.white_sd * np.sqrt(per_day) * rng.standard_normal(time.size)
+    pressure += options.noise * deployment.white_sd * _white(rng, time.size, per_day)
     steps: tuple[np.datetime64, ...] = ()
     if deployment.step_day is not None:
         pressure[days > deployment.step_day] += deployment.step
@@ -193,6 +194,20 @@ def observe(
         keep = _outside_gaps(rng, days)
         time, pressure = time[keep], pressure[keep]
     return replace(blank, time=time, pressure=pressure, steps=steps)
+
+
+def _white(rng: np.random.Generator, count: int, per_day: int) -> NDArray[np.float64]:
+    """Noise of samples whose daily mean has a standard deviation of one.
+
+    Samples within an hour share most of theirs: electronics and temperature change slowly, and 5760 independent errors
+    a day would have to be large to leave as much in its mean (common practice).
+    """
+    held = max(per_day // 24, 1)
+    hours = np.sqrt(per_day / held) * rng.standard_normal(-(-count // held))
+    if held == 1:
+        return np.asarray(hours)
+    smooth = np.interp(np.arange(count), held * (np.arange(hours.size) + 0.5), hours)
+    return np.asarray(smooth + _OF_A_SAMPLE * rng.standard_normal(count))
 
 
 def _spoil(rng: np.random.Generator, pressure: NDArray[np.float64], days: NDArray[np.float64]) -> None:

@@ -15,6 +15,7 @@ from massfit.gravity.inputs import GravityInputs
 from massfit.network import Network
 from massfit.phasor import peak_days
 from massfit.records.record import Record
+from massfit.records.stretches import stretches
 from massfit.simulate.analyst import air_as_given, members, rounded, settings
 from massfit.simulate.clock import Clock, make_clock
 from massfit.simulate.dynamics import (
@@ -33,7 +34,7 @@ from massfit.simulate.options import SimulationOptions
 from massfit.simulate.places import draw_sites
 from massfit.simulate.satellites import draw_satellites, satellite_truth
 from massfit.simulate.sea_level import Responses, true_responses
-from massfit.simulate.tides import short_tides
+from massfit.simulate.tides import draw_tides, tide_at
 from massfit.simulate.world import World, draw_world
 from massfit.site import Site
 
@@ -192,12 +193,30 @@ def _records(
     """Observe all sites."""
     records: list[Record] = []
     for site, role, deployments, row in zip(sites, roles, recorders, pressure, strict=True):
-        at_site = row + short_tides(rng["tides"], clock.time) if options.sampling == "hourly" else row
+        samples, at_site = _at_samples(rng["tides"], options, row, clock)
         for number, deployment in enumerate(deployments, 1):
             last_as_text = role == "text" and number == len(deployments)
             blank = _blank_record(site, number, "txt" if last_as_text else "nc")
-            records.append(observe(rng["recorders"], deployment, clock, at_site, blank=blank, options=options))
+            records.append(observe(rng["recorders"], deployment, samples, at_site, blank=blank, options=options))
     return tuple(records)
+
+
+def _at_samples(
+    rng: np.random.Generator, options: SimulationOptions, row: NDArray[np.float64], clock: Clock
+) -> tuple[Clock, NDArray[np.float64]]:
+    """Clock of the recorders of a site, and the pressure on it, Pa."""
+    if options.sampling == "daily":
+        return clock, row
+    tides = draw_tides(rng)
+    if options.sampling == "hourly":
+        return clock, row + tide_at(tides, clock.time)
+    fine = clock.by_quarter_minute
+    time, hours = fine.time, clock.time.astype(np.int64)
+    pressure = np.empty(time.size)
+    # all but the tides is slow, and straight from hour to hour
+    for part in stretches(time.size):
+        pressure[part] = np.interp(time[part].astype(np.int64), hours, row) + tide_at(tides, time[part])
+    return fine, pressure
 
 
 def _blank_record(site: Site, number: int, suffix: str) -> Record:

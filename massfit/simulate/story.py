@@ -89,13 +89,14 @@ def tell_story(simulated: SimulatedNetwork, options: SimulationOptions, *, folde
         Markdown, without any number that a run would give.
     """
     network = simulated.network
-    hourly = options.sampling == "hourly"
+    raw = options.sampling != "daily"
+    every = "every 15 s" if options.sampling == "15s" else "hourly"
     return _TEXT.format(
         name=network.settings.frame.name,
         n_sites=len(network.sites),
         n_loads=len(network.loads),
-        knowledge="\n".join(f"- {line}" for line in _knowledge(simulated, hourly=hourly)),
-        sampling="hourly, with short tides" if hourly else "daily means, short tides removed",
+        knowledge="\n".join(f"- {line}" for line in _knowledge(simulated, raw=raw)),
+        sampling=f"{every}, with short tides" if raw else "daily means, short tides removed",
         model_rows="".join(_model_rows(simulated)),
         gravity_rows="".join(_gravity_rows(simulated)),
         satellites="" if simulated.gravity is None else _SATELLITES,
@@ -119,10 +120,10 @@ def command_line(options: SimulationOptions, *, seed: int, folder: str) -> str:
     )
 
 
-def _knowledge(simulated: SimulatedNetwork, *, hourly: bool) -> list[str]:
+def _knowledge(simulated: SimulatedNetwork, *, raw: bool) -> list[str]:
     frame, models = simulated.network.settings.frame, simulated.network.circulation
     lines = [f"The records run from {frame.start} to {frame.end}; the cycle is asked as the mean over that time."]
-    if hourly:
+    if raw:
         lines.append("The records are raw: tides, spikes and lost samples are in them.")
     sites: list[Mapping[str, Any]] = simulated.truth["sites"]
     for role, text in _ROLES.items():

@@ -4,6 +4,7 @@ Lines by Doodson numbers with the mean rates of Meeus (1991, ch. 22 and 47), and
 nodal factors of Pugh (1987, table 4.3). Amplitudes are drawn; they are nobody's tide.
 """
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -26,6 +27,24 @@ class Line:
     ratio: float
     amplitude_nodal: tuple[float, float] = (1.0, 0.0)
     phase_nodal_deg: float = 0.0
+
+
+@dataclass(frozen=True)
+class DrawnLine:
+    """A short tide of one site.
+
+    Parameters
+    ----------
+    line : Line
+    amplitude : float
+        Metres, of 18.6 years.
+    lag : float
+        Radians.
+    """
+
+    line: Line
+    amplitude: float
+    lag: float
 
 
 _LUNAR = (1.0, -0.037)
@@ -68,20 +87,47 @@ def short_tides(rng: np.random.Generator, time: NDArray[np.datetime64]) -> NDArr
     >>> float(np.ptp(short_tides(np.random.default_rng(3), time))) > 1000.0
     True
     """
+    return tide_at(draw_tides(rng), time)
+
+
+def draw_tides(rng: np.random.Generator) -> tuple[DrawnLine, ...]:
+    """Draw the short tides of one site."""
+    leaders = {name: median * np.exp(spread * rng.standard_normal()) for name, (median, spread) in _LEADERS.items()}
+    # the response of a real ocean varies smoothly from line to line; 10 % is common practice
+    return tuple(
+        DrawnLine(
+            line,
+            amplitude=leaders[line.leader] * line.ratio * np.exp(0.1 * rng.standard_normal()),
+            lag=rng.uniform(0.0, 2.0 * np.pi),
+        )
+        for line in LINES
+    )
+
+
+def tide_at(lines: Sequence[DrawnLine], time: NDArray[np.datetime64]) -> NDArray[np.float64]:
+    """Diurnal and shorter tides that were drawn, with their nodal modulation.
+
+    Parameters
+    ----------
+    lines : sequence of DrawnLine
+    time : (n,) array of datetime64
+        UTC.
+
+    Returns
+    -------
+    (n,) array
+        Pa.
+    """
     elapsed = np.asarray(time, dtype="datetime64[ns]") - np.datetime64("2000-01-01T12:00", "ns")
     days = elapsed.astype(np.int64) / 86_400e9
     moon, sun, perigee, node = np.deg2rad(_EPOCH[:, None] + _RATE[:, None] * days)
     # Doodson's lunar time: the Moon's hour angle at Greenwich, counted from midnight
     lunar_time = 2.0 * np.pi * (days + 0.5) + sun - moon
     arguments = np.stack([lunar_time, moon, sun, perigee])
-    leaders = {name: median * np.exp(spread * rng.standard_normal()) for name, (median, spread) in _LEADERS.items()}
     height = np.zeros(days.size)
-    for line in LINES:
-        # the response of a real ocean varies smoothly from line to line; 10 % is common practice
-        amplitude = leaders[line.leader] * line.ratio * np.exp(0.1 * rng.standard_normal())
-        lag = rng.uniform(0.0, 2.0 * np.pi)
-        size, swing = line.amplitude_nodal
-        turn = np.deg2rad(line.phase_nodal_deg) * np.sin(node)
-        angle = np.asarray(line.multiples) @ arguments + turn - lag
-        height += amplitude * (size + swing * np.cos(node)) * np.cos(angle)
+    for drawn in lines:
+        size, swing = drawn.line.amplitude_nodal
+        turn = np.deg2rad(drawn.line.phase_nodal_deg) * np.sin(node)
+        angle = np.asarray(drawn.line.multiples) @ arguments + turn - drawn.lag
+        height += drawn.amplitude * (size + swing * np.cos(node)) * np.cos(angle)
     return height * SEA_WATER_DENSITY * STANDARD_GRAVITY

@@ -5,7 +5,7 @@ import pytest
 
 from massfit.records.record import Record
 from massfit.simulate.clock import Clock, make_clock
-from massfit.simulate.instrument import Deployment, draw_deployments, exclusions, observe
+from massfit.simulate.instrument import Deployment, _white, draw_deployments, exclusions, observe
 from massfit.simulate.options import SimulationOptions
 
 QUIET = SimulationOptions(noise=0.0, incidents=False)
@@ -87,3 +87,12 @@ def test_white_noise_is_stated_for_a_daily_mean(hourly: Clock) -> None:
     record = observed(hourly, recorder(), SimulationOptions(incidents=False))
     daily = record.pressure.reshape(-1, 24).mean(axis=1)
     assert daily.std() == pytest.approx(8.0, rel=5 / np.sqrt(2 * daily.size))  # five standard errors
+
+
+@pytest.mark.parametrize("per_day", [1, 24, 5760])
+def test_noise_of_a_daily_mean_does_not_depend_on_the_sampling(per_day: int) -> None:
+    days = 200
+    noise = _white(np.random.default_rng(5), days * per_day, per_day)
+    assert noise.reshape(days, per_day).mean(axis=1).std() == pytest.approx(1.0, abs=0.2)  # 5 % (1 sd)
+    # from sample to sample it is far from what independent errors would need: 76 for 15 s
+    assert np.diff(noise).std() < 9.0

@@ -1,4 +1,5 @@
 import json
+from dataclasses import replace
 from functools import cache
 
 import numpy as np
@@ -12,6 +13,7 @@ from massfit.errors import InputError
 from massfit.fingerprint.footprint import site_footprints
 from massfit.fingerprint.ocean import OceanFunction
 from massfit.phasor import annual_basis, days_since, phasor_from_peak
+from massfit.records.daily import reduce_to_daily
 from massfit.simulate.network import SimulatedNetwork, simulate_network
 from massfit.simulate.options import SimulationOptions
 from massfit.simulate.sea_level import true_operator
@@ -159,6 +161,25 @@ def test_switches() -> None:
 def test_a_period_without_observed_polar_motion_is_refused() -> None:
     with pytest.raises(InputError, match="polar motion"):
         simulate_network(SimulationOptions(sites=1, years=1, sampling="daily", first_year=2090), seed=1)
+
+
+def test_samples_every_15_s_are_those_of_the_same_sea() -> None:
+    # invariant: sea, tides, drift and the slow noise of a seed do not depend on how often they are sampled; the daily
+    # means of the two differ by how noise runs from hour to hour, half a pascal, and by that of the single samples
+    options = SimulationOptions(sites=1, years=1, models=0, incidents=False, bad_site=False)
+    hourly, fine = (
+        simulate_network(replace(options, sampling=sampling), seed=3).network for sampling in ("hourly", "15s")
+    )
+    assert fine.settings.corrections.tides == "remove"
+    assert np.unique(np.diff(fine.records[0].time)) == np.timedelta64(15, "s")
+    one, two = (reduce_to_daily(network.records[0]) for network in (hourly, fine))
+    np.testing.assert_array_equal(one.time, two.time)
+    apart = one.pressure - two.pressure
+    assert 0.1 < np.std(apart) < 1.0
+    assert abs(np.mean(apart)) < 0.1
+    # the tides of the two are one: M2 within 1 mm
+    sizes = [next(tide.amplitude for tide in record.tides if tide.name == "M2") for record in (one, two)]
+    assert sizes[0] == pytest.approx(sizes[1], abs=10.0)
 
 
 @pytest.mark.parametrize("wrong", [{"sites": 0}, {"years": 0.5}, {"noise": -1.0}, {"sampling": "weekly"}])
