@@ -15,7 +15,13 @@ from massfit.posterior.mixture_answer import amplitude_and_day, pooled_mixture
 from massfit.posterior.network_model import Choices, member_spread, pooled_moments, scale_priors
 from massfit.posterior.observations import Observations, read_observations
 from massfit.posterior.regression import LinearModel
-from massfit.posterior.scenario import TRUTHS, Scenario, answer_scenario, as_gaussian
+from massfit.posterior.scenario import (
+    TRUTHS,
+    Scenario,
+    answer_scenario,
+    answer_with_student_scatter,
+    as_gaussian,
+)
 from massfit.posterior.shares import variance_shares, variance_terms
 from massfit.posterior.sharing import find_sharing
 from massfit.results.finished import FinishedRun
@@ -170,9 +176,50 @@ def scenario_summary(run: FinishedRun, scenario: Scenario) -> dict[str, Any]:
     model, posteriors = answer_scenario(
         network.observations, network.admittance, network.members, network.choices, scenario
     )
-    mean, covariance = (
-        value / PASCAL_PER_HPA**power for value, power in zip(pooled_moments(posteriors), (1, 2), strict=True)
+    return {
+        **_answer(posteriors, run.summary["reference_year"]),
+        "variance_share": variance_shares(_terms(model, posteriors)),
+        "sites": len(np.unique(model.rows.site)),
+        "site_scatter": "normal",
+    }
+
+
+def student_summary(run: FinishedRun, scenario: Scenario) -> dict[str, Any] | None:
+    """Answer a scenario with Student-t scatter and mixtures, where the run had these.
+
+    Parameters
+    ----------
+    run : FinishedRun
+    scenario : Scenario
+
+    Returns
+    -------
+    dict or None
+        As `scenario_summary`, without shares; besides `standard_error_hpa`, how far chance moves either mean.
+
+    Raises
+    ------
+    InputError
+        As for `scenario_summary`.
+    """
+    network = _network(run)
+    if network.choices.settings.site_scatter == "normal":
+        return None
+    posteriors = answer_with_student_scatter(
+        network.observations, network.admittance, network.members, network.choices, scenario
     )
+    # the members share their random numbers
+    error = np.mean([posterior.standard_error for posterior in posteriors], axis=0) / PASCAL_PER_HPA
+    return {
+        **_answer(posteriors, run.summary["reference_year"]),
+        "standard_error_hpa": error.tolist(),
+        "site_scatter": "student-t",
+    }
+
+
+def _answer(posteriors: Sequence[ScalePosterior], year: int) -> dict[str, Any]:
+    pooled = zip(pooled_moments(posteriors), (1, 2), strict=True)
+    mean, covariance = (value / PASCAL_PER_HPA**power for value, power in pooled)
     amplitude, day = amplitude_and_day(pooled_mixture(posteriors))
     return {
         **{
@@ -182,10 +229,7 @@ def scenario_summary(run: FinishedRun, scenario: Scenario) -> dict[str, Any]:
         "covariance_hpa2": covariance.tolist(),
         "amplitude_hpa": {key: (np.asarray(value) / PASCAL_PER_HPA).tolist() for key, value in amplitude.items()},
         "peak_day": day,
-        "peak_date": peak_date(float(np.asarray(day["median"])), run.summary["reference_year"]),
-        "variance_share": variance_shares(_terms(model, posteriors)),
-        "sites": len(np.unique(model.rows.site)),
-        "site_scatter": "normal",
+        "peak_date": peak_date(float(np.asarray(day["median"])), year),
     }
 
 

@@ -121,7 +121,7 @@ def python(results: Path, tmp_path_factory: pytest.TempPathFactory) -> Callable[
 
     def answer(scenario: dict) -> dict:
         file.write_text(json.dumps(scenario), encoding="utf-8")
-        return answer_scenario_file(results, None, file)
+        return answer_scenario_file(results, None, file, student=False)
 
     return answer
 

@@ -44,7 +44,8 @@ def test_the_text_fits_and_says_of_what_kind_it_is(network: Path, scenario: Path
     done = call("estimate", network, "--scenario", scenario)
     assert done.exit_code == 0
     assert all(len(line) <= 80 for line in done.output.splitlines())
-    assert "Scenario: 2 of 3 sites" in done.output
+    assert "Scenario: 2 of 3 sites, normal site scatter" in done.output
+    assert "With Student-t scatter and mixtures, as the run had them: scenario" in " ".join(done.output.split())
     assert "not a new estimate" in done.output
     assert sorted(path.name for path in (network / "results").iterdir()) == before
 
@@ -56,6 +57,17 @@ def test_everything_is_the_run_itself_under_normal_scatter(network: Path, run: E
     for name in ("in_phase_hpa", "quadrature_hpa"):
         assert abs(answer[name]["mean"] - run.summary[name]["mean"]) < 0.2 * run.summary[name]["sd"]
         assert answer[name]["sd"] == pytest.approx(run.summary[name]["sd"], rel=0.25)
+
+
+def test_with_student_scatter_the_whole_is_the_answer_of_the_run(network: Path, run: Estimate, tmp_path: Path) -> None:
+    """The run's draws come from its sampler, these numbers from weighted nodes: within a twentieth of the width."""
+    (tmp_path / "whole.json").write_text("{}", encoding="utf-8")
+    answer = json.loads(call("estimate", network, "--scenario", tmp_path / "whole.json", "--json").output)["student_t"]
+    for name in ("in_phase_hpa", "quadrature_hpa"):
+        assert abs(answer[name]["mean"] - run.summary[name]["mean"]) < 0.05 * run.summary[name]["sd"]
+        assert answer[name]["sd"] == pytest.approx(run.summary[name]["sd"], rel=0.05)
+    assert answer["amplitude_hpa"]["region95"] == pytest.approx(run.summary["amplitude_hpa"]["region95"], abs=0.03)
+    assert max(answer["standard_error_hpa"]) < 0.02
 
 
 def test_wrong_input_is_told_without_a_traceback(network: Path, scenario: Path, tmp_path: Path) -> None:

@@ -30,12 +30,27 @@ def scenario_text(answer: Mapping[str, Any]) -> str:
             for name, share in answer["variance_share"].items()
         ),
     ]
-    note = (
-        "Normal site scatter, each site by the mean and covariance of its mixture: set the two columns beside each "
-        "other, not beside an answer with Student-t scatter. A question to the network, not a new estimate."
-    )
     table = [f"{label:<24}{first:>26}{second:>26}".rstrip() for label, first, second in rows]
-    return "\n".join([f"Scenario: {answer['sites']} of {whole['sites']} sites", "", *table, "", *wrapped(note, WIDTH)])
+    head = f"Scenario: {answer['sites']} of {whole['sites']} sites, normal site scatter"
+    return "\n".join([head, "", *table, "", *wrapped(_kind(answer, year), WIDTH)])
+
+
+def _kind(answer: Mapping[str, Any], year: int) -> str:
+    """Say of what kind the table is, and what Student-t scatter gives where the run had it."""
+    note = "Each site enters by the mean and covariance of its mixture. A question to the network, not a new estimate."
+    if answer["student_t"] is None:
+        return note
+    scenario, of_run = (_spoken(each, year) for each in (answer["student_t"], answer["run"]))
+    return (
+        f"With Student-t scatter and mixtures, as the run had them: scenario {scenario}; run {of_run}. "
+        f"{note} Set its columns beside each other, not beside the run."
+    )
+
+
+def _spoken(answer: Mapping[str, Any], year: int) -> str:
+    amplitude, day = answer["amplitude_hpa"], answer["peak_day"]
+    region = spoken_range(amplitude["region95"], ".3f")
+    return f"{amplitude['median']:.3f} hPa (95 %: {region}), peak {spoken_date(day['median'], year)}"
 
 
 def bench_note(summary: Mapping[str, Any], site_scatter: str) -> str:
