@@ -108,9 +108,8 @@ def test_the_page_runs_as_it_stands(page: Path, desk: Path, tmp_path: Path) -> N
     # some two minutes in all on a quiet machine
     folder = tmp_path / "desk"
     shutil.copytree(desk, folder)
-    if "demo_network/results" in page.read_text("utf-8") and "estimate demo_network" not in page.read_text("utf-8"):
-        _run("massfit estimate demo_network --quiet", folder)
-    if "--overwrite" in page.read_text("utf-8"):
+    text = page.read_text("utf-8")
+    if "--overwrite" in text or ("demo_network/results" in text and not re.search("estimate demo_network(?!/)", text)):
         _run("massfit estimate demo_network --quiet", folder)
     for block in blocks(page):
         if not any(option in block for option in ELSEWHERE):

@@ -180,6 +180,7 @@ _RULES: tuple[tuple[str, str, str, Used], ...] = (
     (_ANSWER, "the second route: kernels", "scott1992", _always),
     (_ANSWER, "convergence", "vehtari2021", _always),
     (_ANSWER, "regions that are drawn", "hyndman1996", _always),
+    (_ANSWER, "what if, on the page", "trefethen2014", _always),
     (_ANSWER, "the predictive check", "gelman1996", _always),
     (_ANSWER, "coverage of surrogates", "clopper1934", lambda run: "calibration" in run.summary),
     (_SPACE, "water from gravity", "wahr1998", _SATELLITES),
