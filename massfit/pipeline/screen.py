@@ -6,6 +6,7 @@ from typing import TypeVar
 
 import numpy as np
 import xarray as xr
+from threadpoolctl import threadpool_limits
 
 from massfit.constants import PASCAL_PER_HPA, TROPICAL_YEAR_DAYS
 from massfit.contracts import QUIETNESS_MAP, require
@@ -24,7 +25,7 @@ from massfit.screening.finish import LEAST_COVERAGE, CellNumbers, cell_numbers, 
 from massfit.screening.grid import ScreenGrid, cell_weights, require_land_mask, same_grid, screen_grid
 from massfit.screening.line_noise import attenuation, line_noise
 from massfit.screening.plan import DEFAULT_MEMORY_GB, Plan, make_plan
-from massfit.screening.sums import Floats, add_sums
+from massfit.screening.sums import Floats, Sums, add_sums
 from massfit.screening.times import TimeAxis, time_axis
 
 Result = TypeVar("Result")
@@ -111,7 +112,7 @@ def screen_sea_floor(
     models: dict[str, CellNumbers] = {}
     faults: list[Fault] = []
     for job in jobs:
-        with collect(faults):
+        with collect(faults), threadpool_limits(1):
             models[job.field.name] = _screen(job, record_years, executor, progress)
     if faults:
         raise InputError(faults)
@@ -122,6 +123,36 @@ def screen_sea_floor(
     found = found.assign_coords(_facts(jobs))
     require(found, QUIETNESS_MAP)
     return found
+
+
+def sums_alone(part: Part) -> Sums:
+    """Sum up a part with one thread: several may round otherwise, and the result must not depend on who works.
+
+    Parameters
+    ----------
+    part : Part
+
+    Returns
+    -------
+    Sums
+    """
+    with threadpool_limits(1):
+        return part_sums(part)
+
+
+def means_alone(part: Part) -> tuple[Floats, Floats]:
+    """Sum up what the ocean mean needs, with one thread.
+
+    Parameters
+    ----------
+    part : Part
+
+    Returns
+    -------
+    above, below : (n, 2) array
+    """
+    with threadpool_limits(1):
+        return mean_sums(part)
 
 
 def _facts(jobs: list[_Job]) -> dict[str, tuple[str, list[object], dict[str, str]]]:
@@ -188,7 +219,7 @@ def _screen(job: _Job, record_years: Sequence[float], executor: Executor, progre
     tables = line_noise(job.design, days, job.axis.step_days, record_years)
     found, means = [], []
     parts = [_part(job, band, span, ahead) for band in job.plan.bands for span in job.plan.spans]
-    sums_of_parts = _followed(executor.results(part_sums, parts), f"screening {job.field.name}", len(parts), progress)
+    sums_of_parts = _followed(executor.results(sums_alone, parts), f"screening {job.field.name}", len(parts), progress)
     n_lon = job.source.longitude_deg.size
     for band in job.plan.bands:
         sums = next(sums_of_parts)
@@ -226,7 +257,7 @@ def _mean_ahead(job: _Job, executor: Executor, progress: Progress) -> Floats:
     """Ocean mean at every time, Pa, by a pass of its own; NaN where there is no value."""
     bands = [[_part(job, band, span, None) for span in job.plan.spans] for band in job.plan.bands]
     parts = [part for band in bands for part in band]
-    made = _followed(executor.results(mean_sums, parts), f"ocean mean of {job.field.name}", len(parts), progress)
+    made = _followed(executor.results(means_alone, parts), f"ocean mean of {job.field.name}", len(parts), progress)
     above, below = np.zeros((2, job.axis.time.size, 2))
     for band in bands:
         for part in band:
