@@ -107,7 +107,9 @@ def _always(_: _Run) -> bool:
 
 _EARTH, _SEA = "The Earth under a load", "The sea-level equation and the loads"
 _TIDES, _RECORD = "Tides, rotation and air", "Records, drift and noise"
-_ANSWER, _SPACE, _CODE = "The network posterior", "Satellite gravity", "Libraries"
+_ANSWER, _SITES = "The network posterior", "The ranking of the sites"
+_SPACE, _CODE = "Satellite gravity", "Libraries"
+_RANKED: Used = lambda run: "siting" in run.summary  # noqa: E731
 _PREM_USED: Used = lambda run: run.chosen("fingerprint", "earth_model") == PREM  # noqa: E731
 _RECORDS: Used = lambda run: run.records  # noqa: E731
 _SHORT: Used = lambda run: run.tides  # noqa: E731
@@ -183,6 +185,10 @@ _RULES: tuple[tuple[str, str, str, Used], ...] = (
     (_ANSWER, "what if, on the page", "trefethen2014", _always),
     (_ANSWER, "the predictive check", "gelman1996", _always),
     (_ANSWER, "coverage of surrogates", "clopper1934", lambda run: "calibration" in run.summary),
+    (_SITES, "designs of subsets", "atkinson2007", _RANKED),
+    (_SITES, "exchange of sites", "fedorov1972", _RANKED),
+    (_SITES, "subsets under Student scatter", "minka2001", _RANKED),
+    (_SITES, "subsets under Student scatter", "jylanki2011", _RANKED),
     (_SPACE, "water from gravity", "wahr1998", _SATELLITES),
     (_SPACE, "smoothing", "jekeli1981", _SATELLITES),
     (_SPACE, "degree one", "swenson2008", _SATELLITES),

@@ -39,7 +39,7 @@ def everything(run: FinishedRun) -> list[FinishedRun]:
     """Runs that between them make every choice."""
     acted = {"A/1": [{"what": "samples with flag 4 (bad) left out", "count": 3, "detail": ""}]}
     sites = [{**site, "level_changes": [{"day": "2015-01-01"}]} for site in run.summary["sites"]]
-    other = {"actions": acted, "sites": sites, "calibration": {}, "comparison": SATELLITES}
+    other = {"actions": acted, "sites": sites, "calibration": {}, "comparison": SATELLITES, "siting": {}}
     first = dataclasses.replace(run, summary={**run.summary, **other})
     second = changed(
         run, fingerprint__loads=["builtin:all"], fingerprint__rotational_feedback=True, posterior__group_scatter=800.0,
