@@ -6,14 +6,13 @@ from dataclasses import dataclass, fields
 import numpy as np
 from numpy.typing import NDArray
 
-from massfit.posterior.node_terms import NodeTable, NodeValues, node_values
+from massfit.posterior.node_terms import NodeTable, NodeValues
 from massfit.posterior.scale_rule import ScaleRule
 
 Floats = NDArray[np.float64]
-Kept = NDArray[np.bool_]
 
-BLOCK = 64
-"""Subsets at a time: their matrices stay in the cache of the processor."""
+BLOCK = 256
+"""Subsets and knots of s_group at a time: their matrices stay in the cache of the processor."""
 
 
 @dataclass(frozen=True)
@@ -57,29 +56,6 @@ def join_moments(blocks: Sequence[SubsetMoments]) -> SubsetMoments:
     return SubsetMoments(*(np.concatenate([getattr(block, f.name) for block in blocks]) for f in fields(SubsetMoments)))
 
 
-def subset_moments(table: NodeTable, kept: Kept, *, member: int = 0) -> SubsetMoments:
-    """Posterior of every subset, the scales integrated out anew for each.
-
-    Parameters
-    ----------
-    table : NodeTable
-    kept : (n, n_site) array of bool
-        Sites of each subset, in the order of the network.
-    member : int
-        Load member.
-
-    Returns
-    -------
-    SubsetMoments
-    """
-    kept = np.asarray(kept, dtype=bool)
-    blocks = [
-        integrate_nodes(table, node_values(table, kept[start : start + BLOCK], member=member))
-        for start in range(0, len(kept), BLOCK)
-    ]
-    return join_moments(blocks)
-
-
 def integrate_nodes(table: NodeTable, values: NodeValues) -> SubsetMoments:
     """Integrate the scales out of subsets.
 
@@ -118,12 +94,12 @@ def node_weights(table: NodeTable, log_likelihood: Floats) -> tuple[Floats, Floa
     """
     site, local, *others = table.rules
     # s_local first, at each knot of the others: what is left is smooth in s_site
-    inner, given_local = _over_cells(local, np.moveaxis(log_likelihood, 1, 0))
-    outer, given_site = _over_cells(site, inner)
+    by_site = [_over_cells(local, each) for each in log_likelihood]
+    outer, given_site = _over_cells(site, np.array([each for each, _ in by_site]))
     top = outer.max(axis=(0, 1))
     mass = np.exp(outer - top) * others[0].mass[:, None, None] * others[1].mass[:, None]
     total = mass.sum(axis=(0, 1))
-    weight = (given_site * (mass / total))[:, None] * np.moveaxis(given_local, 0, 1)
+    weight = (given_site * (mass / total))[:, None] * np.array([each for _, each in by_site])
     return weight, top + np.log(total)
 
 

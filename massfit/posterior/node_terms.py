@@ -172,22 +172,32 @@ def node_values(table: NodeTable, kept: Kept, *, member: int = 0) -> NodeValues:
 
 
 class _Tower:
-    """Eliminates the columns kind by kind; what is left of the earlier ones serves all scales of the later."""
+    """Eliminates the columns kind by kind; what is left of the earlier ones serves all scales of the later.
+
+    Where every site has every model, the means over the models do not see the contrasts of the models' errors: these
+    are integrated out by themselves, once for every s_local.
+    """
 
     def __init__(self, table: NodeTable, member: int, subsets: Floats) -> None:
         self._table, self._subsets = table, subsets
-        design = table.design[member]
-        self._upper = np.triu_indices(design.shape[1])
-        self._products = design[:, self._upper[0]] * design[:, self._upper[1]]
-        self._of_site = (np.arange(len(subsets))[:, None] == table.model.rows.site).astype(float)
+        rows, design = table.model.rows, table.design[member]
+        self._of_site = (np.arange(len(subsets))[:, None] == rows.site).astype(float)
+        first = table.fixed + table.group
+        contrasts = np.arange(first + 2, first + table.common)
+        self._apart = bool(np.abs(design[: rows.mean_count, contrasts]).max(initial=0.0) < 1e-12)
+        inner = contrasts if self._apart else contrasts[:0]
+        self._main = _Products(design, np.setdiff1d(np.arange(design.shape[1]), inner))
+        self._contrasts = _Products(design, np.append(inner, design.shape[1] - 1))
+        self._known: dict[float, Floats] = {}
 
     def solved(self, site: float, local: float) -> tuple[Floats, Floats, Floats]:
         """Log likelihood, mean and covariance (..., n_common_knot, n_group_knot, n) at logarithms of the others."""
-        table = self._table
+        table, means = self._table, self._table.model.rows.mean_count
         commons, groups = (rule.knot for rule in table.rules[2:])
         # the group scatter of a site that is the only one of its group stands in the variance of its rows
         inside = groups if table.model.sharing.alone.any() else groups[:1]
-        terms = [self._sums(site, local, group) for group in inside]
+        rows = slice(means if self._apart else None)
+        terms = [self._main.sums(self._of_site, self._variance(site, local, g), self._subsets, rows) for g in inside]
         upper, density = (np.stack(each, axis=-2) for each in zip(*terms, strict=True))
         prior = np.ones((table.fixed, 1, 1))
         prior[table.from_place :, 0, 0] = 1.0 / (np.exp(2.0 * site) + _extra(table))
@@ -196,19 +206,30 @@ class _Tower:
         prior = np.broadcast_to(np.exp(-2.0 * groups)[:, None], (table.group, len(groups), 1))
         upper, density = _eliminate(upper, prior, density)
         upper = np.repeat(upper[:, :, None], len(commons), axis=2)
-        return self._phasor(*_eliminate(upper, _common_prior(table, commons)[:, :, None, None], density))
+        prior = _common_prior(table, commons)[: 2 if self._apart else None, :, None, None]
+        density, mean, covariance = self._phasor(*_eliminate(upper, prior, density))
+        return (density + self._apart_density(local) if self._apart else density), mean, covariance
 
-    def _sums(self, site: float, local: float, group: float) -> tuple[Floats, Floats]:
-        """Information (n_column + 1, n_column + 1, n) of the subsets and log density (n,) of their rows' variances."""
+    def _variance(self, site: float, local: float, group: float) -> Floats:
+        """Variances (n_row,) of the rows."""
         model = self._table.model
         log_scales = np.array([[site, local, 0.0, group]])[:, : model.scale_count]
         base, contrast, scatter = base_variance(model, model.at(log_scales))
         scatter += self._table.extra[model.row_place] * model.own_scatter
-        variance = np.concatenate([base + scatter, contrast], axis=1)[0]
-        size = self._table.design.shape[2]
-        upper = np.zeros((size, size, self._subsets.shape[1]))
-        upper[self._upper] = ((self._of_site / variance) @ self._products).T @ self._subsets
-        return upper, -0.5 * (self._of_site @ np.log(2.0 * np.pi * variance)) @ self._subsets
+        return np.asarray(np.concatenate([base + scatter, contrast], axis=1)[0])
+
+    def _apart_density(self, local: float) -> Floats:
+        """Log density (n_common_knot, 1, n) of the contrasts, the models' errors integrated out."""
+        if local not in self._known:
+            table = self._table
+            rows = slice(table.model.rows.mean_count, None)
+            variance = self._variance(0.0, local, 0.0)
+            upper, density = self._contrasts.sums(self._of_site, variance, self._subsets, rows)
+            prior = _common_prior(table, table.rules[2].knot)[2:, :, None]
+            upper = np.repeat(upper[:, :, None], prior.shape[1], axis=2)
+            upper, density = _eliminate(upper, prior, density)
+            self._known[local] = (density - 0.5 * upper[0, 0])[:, None]
+        return self._known[local]
 
     def _phasor(self, upper: Floats, density: Floats) -> tuple[Floats, Floats, Floats]:
         """Solve for the two columns that are left, of unit prior."""
@@ -220,6 +241,23 @@ class _Tower:
         sd = self._table.model.annual_sd
         covariance = sd**2 * np.stack([c, -b, a]) / determinant
         return density - 0.5 * (misfit + np.log(determinant)), sd * mean, covariance
+
+
+class _Products:
+    """Products of the columns of every row, in pairs, for sums over the sites of subsets."""
+
+    def __init__(self, design: Floats, columns: NDArray[np.int64]) -> None:
+        self._upper = np.triu_indices(len(columns))
+        chosen = design[:, columns]
+        self._values = chosen[:, self._upper[0]] * chosen[:, self._upper[1]]
+        self._size = len(columns)
+
+    def sums(self, of_site: Floats, variance: Floats, subsets: Floats, rows: slice) -> tuple[Floats, Floats]:
+        """Information (n_column, n_column, n) of the subsets, and log density (n,) of their rows' variances."""
+        own, spread = of_site[:, rows], variance[rows]
+        upper = np.zeros((self._size, self._size, subsets.shape[1]))
+        upper[self._upper] = ((own / spread) @ self._values[rows]).T @ subsets
+        return upper, -0.5 * (own @ np.log(2.0 * np.pi * spread)) @ subsets
 
 
 def _common_prior(table: NodeTable, log_common: Floats) -> Floats:
