@@ -16,7 +16,7 @@ def png(figure: Figure, *, dots_per_inch: float | None = None, colours: int = 12
     ----------
     figure : matplotlib.figure.Figure
     dots_per_inch : float, optional
-        By default 200, and 300 where the figure is to be a column wide.
+        By default 200, and 240 where the figure is to be a column wide.
     colours : int
         Of the palette.
 
@@ -25,7 +25,7 @@ def png(figure: Figure, *, dots_per_inch: float | None = None, colours: int = 12
     bytes
     """
     narrow = figure.get_size_inches()[0] * 25.4 < 0.5 * (COLUMN_WIDTH_MM + PAGE_WIDTH_MM)
-    figure.set_dpi(dots_per_inch or (300.0 if narrow else 200.0))
+    figure.set_dpi(dots_per_inch or (240.0 if narrow else 200.0))
     canvas, packed = FigureCanvasAgg(figure), io.BytesIO()
     with house_style():
         canvas.draw()  # type: ignore[no-untyped-call]
