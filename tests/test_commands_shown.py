@@ -20,6 +20,8 @@ PAGES = sorted(
     [*(ROOT / "docs").rglob("*.md"), ROOT / "README.md", ROOT / "DEVELOPERS.md", ROOT / "demo_network/README.md"]
 )
 BLOCK = re.compile(r"```(?:bash|console|sh)\n(.*?)```", re.DOTALL)
+SCRIPT = re.compile(r"```bash\n(.*?)```", re.DOTALL)
+TESTS = re.compile(r"\btests/[\w/]+\.py\b")
 INLINE = re.compile(r"(?<!`)`(massfit [a-z][^`]*)`(?!`)")
 WORDS = re.compile(r"(?:^|[\s/])massfit ((?:[a-z-]+)(?: [^;&|<>\n]*)?)")
 HOW_TO = [ROOT / "docs/first_run.md", *sorted((ROOT / "docs/how_to").glob("*.md"))]
@@ -56,6 +58,12 @@ def test_every_command_that_is_shown_exists() -> None:
     commands = sorted(set(shown()))
     assert len(commands) > 60
     assert [(page, words) for page, words in commands if wrong(words)] == []
+
+
+def test_every_test_that_a_page_names_is_there() -> None:
+    named = sorted({(page.name, path) for page in PAGES for path in TESTS.findall(page.read_text("utf-8"))})
+    assert len(named) > 30
+    assert [(page, path) for page, path in named if not (ROOT / path).exists()] == []
 
 
 @pytest.mark.parametrize("words", ["estimat demo", "estimate demo --fast", "cite results --bibtext", "--versio"])
@@ -111,7 +119,7 @@ def test_the_page_runs_as_it_stands(page: Path, desk: Path, tmp_path: Path) -> N
     text = page.read_text("utf-8")
     if "--overwrite" in text or ("demo_network/results" in text and not re.search("estimate demo_network(?!/)", text)):
         _run("massfit estimate demo_network --quiet", folder)
-    for block in blocks(page):
+    for block in SCRIPT.findall(text):
         if not any(option in block for option in ELSEWHERE):
             _run(block, folder)
 
