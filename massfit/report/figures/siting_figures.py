@@ -31,7 +31,13 @@ def siting_figures(datasets: Mapping[str, xr.Dataset], *, width_mm: float) -> di
     dict of str to matplotlib.figure.Figure
     """
     drawn = {"candidate_map": _map, "record_length": _length, "service": _service}
-    return {f"siting_{name}": draw(datasets, width_mm) for name, draw in drawn.items() if f"{_GROUP}{name}" in datasets}
+    planned = [(name, draw) for name, draw in drawn.items() if f"{_GROUP}{name}" in datasets]
+    figures = {f"siting_{name}": draw(datasets, width_mm) for name, draw in planned}
+    if f"{_GROUP}ranking" not in datasets:
+        return figures
+    ranking = datasets[f"{_GROUP}ranking"]
+    ranked = {"influence": _influence, "sizes": _sizes, "order": _order, "path": _path}
+    return {**{f"siting_{name}": draw(ranking, width_mm) for name, draw in ranked.items()}, **figures}
 
 
 def _map(datasets: Mapping[str, xr.Dataset], width_mm: float) -> Figure:

@@ -3,6 +3,7 @@
 import matplotlib.pyplot as plt
 import numpy as np
 import pytest
+import xarray as xr
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.figure import Figure
 
@@ -10,6 +11,7 @@ from massfit.report.figures.candidate_map import candidate_map
 from massfit.report.figures.influence import influence_figure
 from massfit.report.figures.record_length import record_length_figure
 from massfit.report.figures.service_plan import service_plan_figure
+from massfit.report.figures.siting_figures import siting_figures
 from massfit.report.figures.style import house_style
 from massfit.report.figures.subset_sizes import keep_path_figure, order_sweep, subset_fan
 
@@ -134,3 +136,27 @@ def test_fewer_sites_are_drawn_as_fan_order_and_path(width: float, sites: int) -
     np.testing.assert_allclose(median.get_ydata(), 0.3 / np.sqrt(count))
     assert [line.get_label() for line in order.axes[2].lines][1].startswith("the agreeable first: too sure")
     np.testing.assert_array_equal(path.axes[0].lines[1].get_ydata(), sd)
+
+
+def test_a_ranking_is_drawn_from_its_dataset() -> None:
+    """As `massfit.results.siting` writes it: three sites, their subsets, orders and paths."""
+    sites, subsets = 3, np.array([[1, 0, 0], [1, 1, 0], [0, 1, 1], [1, 1, 1]])
+    pair, rows = np.full((sites, 2), 20.0), ("kept_count", "component")
+    ranking = xr.Dataset(
+        {
+            "information_share": (("site", "component"), np.full((sites, 2), 0.2)),
+            "without_site_shift_sd": (("site", "component"), np.zeros((sites, 2))),
+            "outlier_probability": (("site",), np.zeros(sites)),
+            "subset_has_site": (("subset", "site"), subsets),
+            "subset_mean": (("subset", "component"), np.full((4, 2), 50.0)),
+            "subset_sd": (("subset", "component"), np.full((4, 2), 30.0)),
+            "path_sd": (("criterion", *rows), np.full((2, sites, 2), 25.0)),
+            **{f"{name}_{part}": (rows, pair) for name in ("ordered", "agreeable") for part in ("mean", "sd")},
+        },
+        coords={"site": list("ABC"), "kept_count": [1, 2, 3], "criterion": ["A", "D"]},
+        attrs={"ordered_by": "error of the record / hPa"},
+    )
+    figures = siting_figures({"siting.nc/ranking": ranking}, width_mm=180.0)
+    assert list(figures) == ["siting_influence", "siting_sizes", "siting_order", "siting_path"]
+    np.testing.assert_allclose(figures["siting_path"].axes[0].lines[1].get_ydata(), 0.25)
+    assert siting_figures({}, width_mm=180.0) == {}
