@@ -56,6 +56,7 @@ def test_agreeable_sites_claim_a_width_that_they_do_not_have():
 def test_agreeable_sites_hold_the_truth_too_seldom_and_others_do_not():
     """Control: as many sites that were taken without a look at them hold it as often as they say."""
     held, claimed, error = chosen_by(True, 200, 6)
+    print(f"agreeable: {held:.2f} hold the truth, {claimed:.1f} Pa claimed, error {error:.1f} Pa")
     assert held < 0.92
     assert claimed < 0.9 * error
     held, claimed, error = chosen_by(False, 200, 6)
