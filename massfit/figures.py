@@ -15,6 +15,7 @@ from massfit.report.figures.draw import draw_figures
 from massfit.report.figures.field_map import field_map
 from massfit.report.figures.fingerprint_maps import footprint_panels, world_map
 from massfit.report.figures.fingerprint_members import fingerprint_members
+from massfit.report.figures.influence import influence_figure
 from massfit.report.figures.moved_site import moved_site_figure
 from massfit.report.figures.network_map import network_map
 from massfit.report.figures.phasor_plane import phasor_plane
@@ -26,6 +27,7 @@ from massfit.report.figures.satellites import satellite_figure
 from massfit.report.figures.service_plan import service_plan_figure
 from massfit.report.figures.site_sheet import site_sheet
 from massfit.report.figures.style import COLUMN_WIDTH_MM, PAGE_WIDTH_MM
+from massfit.report.figures.subset_sizes import keep_path_figure, order_sweep, subset_fan
 from massfit.results.estimate import Estimate
 from massfit.results.finished import FinishedRun, finished_run
 
@@ -39,8 +41,11 @@ __all__ = [
     "field_map",
     "fingerprint_members",
     "footprint_panels",
+    "influence_figure",
+    "keep_path_figure",
     "moved_site_figure",
     "network_map",
+    "order_sweep",
     "phasor_plane",
     "png",
     "record_length_figure",
@@ -50,6 +55,7 @@ __all__ = [
     "satellite_sites_figure",
     "service_plan_figure",
     "site_sheet",
+    "subset_fan",
     "world_map",
 ]  # fmt: skip
 
