@@ -318,8 +318,11 @@ def _circulation_action(inputs: GravityInputs) -> list[str]:
     chosen = inputs.settings
     if chosen.restore_dealiasing or not chosen.buffer_km:
         return []
-    known = "its effect is among the choices" if inputs.dealiasing else "without a dealiasing product it is not known"
-    return [f"the circulation that was taken off the fields has no mean over the whole ocean only: {known}"]
+    left = "among the choices" if inputs.dealiasing else "not known without a dealiasing product"
+    return [
+        "the circulation that was taken off the fields averages to nothing over the whole ocean, not beyond a buffer: "
+        f"what that leaves is {left}"
+    ]
 
 
 def _model_actions(solution: Solution, count: int, top: int, window: Span | None) -> list[str]:

@@ -238,7 +238,7 @@ def _parts(sites: Sequence[Mapping[str, Any]], vapour: complex, ocean_area_m2: f
             found[name] = Part(text, PASCAL_PER_HPA * complex(np.mean(values)), series != "ocean_mean_atmosphere")
     if vapour:
         text = "water that the ocean exchanges with the land alone, not with the vapour in the air"
-        found["the vapour put back into the ocean"] = Part(text, STANDARD_GRAVITY * vapour / ocean_area_m2)
+        found["the vapour put back"] = Part(text, STANDARD_GRAVITY * vapour / ocean_area_m2)
         text = "water, less its mean over the whole Earth (degree 0), which the vapour in the air takes along"
         found["degree 0 left out"] = Part(text, STANDARD_GRAVITY * vapour / (4.0 * np.pi * EARTH_RADIUS**2))
     return found

@@ -22,7 +22,7 @@ from massfit.report.pages.page_tables import (
     site_table,
     years_table,
 )
-from massfit.report.pages.satellite_tables import satellite_tables
+from massfit.report.pages.satellite_tables import definition_words, satellite_tables
 from massfit.report.pages.siting_tables import siting_tables
 from massfit.report.pages.sparklines import with_sparklines
 from massfit.report.words.comparison_text import bridge_sentences, verdict
@@ -107,6 +107,7 @@ def report_page(run: FinishedRun, pictures: Mapping[str, bytes]) -> str:
         warnings=warning_lines(summary),
         trust=trust_sentence(summary),
         satellite_verdict=verdict(summary["comparison"]) if "comparison" in summary else "",
+        definition_words=definition_words(summary["comparison"]) if "comparison" in summary else "",
         bridge_words=" ".join(bridge_sentences(summary["comparison"])) if "comparison" in summary else "",
         siting_words=siting_words(run.datasets),
         alternatives_note=f"{ALTERNATIVES_NOTE[0].upper()}{ALTERNATIVES_NOTE[1:]}.",

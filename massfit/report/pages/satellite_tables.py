@@ -94,17 +94,23 @@ def _geocentre(comparison: Mapping[str, Any]) -> Table:
 
 
 def _definitions(comparison: Mapping[str, Any]) -> Table:
-    head = ("cycle", "", "hPa", "day", "mm fresh", "mm sea", "mm fresh, peak to trough", "Gt", "Gt, 3.6184e14 m2", "of")
+    head = ("cycle", "hPa", "day", "mm fresh", "mm sea", "mm fresh, peak to trough", "Gt", "Gt, 3.6184e14 m2")
     rows = []
     for each in comparison["definitions"]:
-        whose = each["determination"] if each["name"] == "as it is" else ""
+        whose = each["determination"] if each["name"] == "as it is" else f"\N{NO-BREAK SPACE}… {each['name']}"
         sizes = (
             f"{each['amplitude_hpa']:.3f}", f"{each['peak_day']:.1f}", f"{each['water_mm']:.2f}",
             f"{each['sea_water_mm']:.2f}", f"{each['water_peak_to_trough_mm']:.2f}", f"{each['mass_gt']:.0f}",
             f"{each['mass_textbook_area_gt']:.0f}",
         )  # fmt: skip
-        rows.append([whose, each["name"], *sizes, each["quantity"]])
-    return Table("Each cycle in other definitions", head, rows, wordy=True)
+        rows.append([whose, *sizes])
+    return Table("Each cycle in other definitions", head, rows)
+
+
+def definition_words(comparison: Mapping[str, Any]) -> str:
+    """Say once what a cycle is of in each definition."""
+    quantities = {each["name"]: each["quantity"] for each in comparison["definitions"]}
+    return "; ".join(f"{name}: {quantity}" for name, quantity in quantities.items())
 
 
 def _bridge(comparison: Mapping[str, Any]) -> Table:
