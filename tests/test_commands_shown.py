@@ -113,7 +113,7 @@ def desk(tmp_path_factory: pytest.TempPathFactory) -> Path:
 @pytest.mark.slow
 @pytest.mark.parametrize("page", HOW_TO, ids=lambda page: page.stem)
 def test_the_page_runs_as_it_stands(page: Path, desk: Path, tmp_path: Path) -> None:
-    # some two minutes in all on a quiet machine
+    # every choice and twenty surrogates are among them: a quarter of an hour on a quiet machine
     folder = tmp_path / "desk"
     shutil.copytree(desk, folder)
     text = page.read_text("utf-8")
