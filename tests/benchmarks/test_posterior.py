@@ -141,13 +141,12 @@ def test_the_cost_grows_no_faster_than_the_sites(scatter: str, measured) -> None
 
 def test_the_whole_stage_of_the_demo(measured) -> None:
     """Both routes, summary, alternatives and predictive check, beside the site fits of the same run."""
-    begun: dict[str, float] = {}
-    run = massfit.estimate(
-        massfit.read_network(DEMO),
-        progress=lambda stage, *_: begun.setdefault(stage, time.monotonic()) and None,
-        workers=2,
+    spans: dict[str, list[float]] = {}
+    massfit.estimate(
+        massfit.read_network(DEMO), progress=lambda stage, *_: spans.setdefault(stage, []).append(time.process_time())
     )
-    spent, fits = time.monotonic() - begun["network posterior"], run.provenance["elapsed_s"]["site phasors"]
-    print(f"network posterior of the demo {spent:.1f} s, its site fits {fits:.1f} s, two processes")
+    spent = time.process_time() - spans["network posterior"][0]
+    fits = spans["site phasors"][-1] - spans["site phasors"][0]
+    print(f"network posterior of the demo {spent:.1f} s of one processor, its site fits {fits:.1f} s")
     measured("the whole posterior stage of the demo", "its site fits", spent / fits, 1.0)
     assert spent < fits
