@@ -286,12 +286,14 @@ def screen(fields: tuple[str, ...], output: Path, quiet: bool, **options: Any) -
 @click.option("--target-width", type=click.FloatRange(0.001, 10.0), metavar="HPA", help="Error to be reached.")
 @click.option("--by", type=_FOLDER, metavar="FILE", help="CSV: site,value; keep sites of small values first.")
 @click.option("--subsets", type=click.IntRange(1, 100_000), default=20, show_default=True, help="Subsets of each size.")
+@click.option("--workers", type=click.IntRange(1, 1024), help="Share the subsets among N processes (needs Dask).")
+@click.option("--scheduler", metavar="ADDRESS", help="Share the subsets on a Dask cluster that is there.")
 @click.option("--outside", is_flag=True, help="Allow paths outside the network's folder.")
 @click.option("--quiet", is_flag=True, help="Print nothing but errors.")
 def siting(
     results: Path, network: Path | None, years: float, noise: float | None, quietness: Path | None,
     depths: Path | None, candidates: Path | None, target_width: float | None, by: Path | None, subsets: int, *,
-    outside: bool, quiet: bool,
+    quiet: bool, **options: Any,
 ) -> None:  # fmt: skip
     """Say which sites carry the answer and where the next recorder belongs.
 
@@ -305,7 +307,7 @@ def siting(
         from massfit.pipeline.siting import SitingFiles, siting_to_folder
 
         files = SitingFiles(years, noise, target_width, candidates, quietness, depths, by, subsets)
-        run = siting_to_folder(results, network, files, outside=outside, progress=progress)
+        run = siting_to_folder(results, network, files, progress=progress, **options)
     from massfit.report.words.siting_plan_text import siting_plan_text
     from massfit.report.words.siting_text import siting_text
 

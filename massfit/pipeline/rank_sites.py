@@ -2,18 +2,22 @@
 
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
+from functools import partial
 from typing import Any
 
 import numpy as np
 import xarray as xr
+from numpy.typing import NDArray
 
 from massfit.constants import PASCAL_PER_HPA
 from massfit.errors import Fault, InputError
+from massfit.pipeline.executor import Embedded, Executor
 from massfit.pipeline.progress import Progress, ignore
 from massfit.posterior.mixtures import sites_by_mixture
 from massfit.posterior.network_model import Choices
+from massfit.posterior.node_integral import SubsetMoments, join_moments
 from massfit.posterior.observations import read_observations
-from massfit.posterior.subsets import subset_tables
+from massfit.posterior.subsets import SubsetTables, subset_posteriors, subset_tables
 from massfit.results.datasets import with_description
 from massfit.results.estimate import Estimate
 from massfit.results.finished import FinishedRun, finished_run
@@ -27,6 +31,9 @@ RANKING = "siting.nc/ranking"
 
 LEAST_SITES = 3
 """Sites below which there is nothing to choose among."""
+
+PART = 512
+"""Subsets that are answered in one piece: the same however many processes share them, and so is every bit."""
 
 SUBSETS = 20
 """Random subsets of each size by default."""
@@ -56,6 +63,7 @@ def rank_sites(
     by_name: str = "value",
     target_width_hpa: float | None = None,
     with_pull: bool = True,
+    executor: Executor | None = None,
     progress: Progress = ignore,
 ) -> SiteRanking:
     """Say which sites carry the answer, which would break it, and how few would do.
@@ -75,6 +83,8 @@ def rank_sites(
         Width that a smaller network is to keep; 10 % more than that of all sites by default.
     with_pull : bool
         Whether to find what each site would have to read to move the answer by one standard deviation.
+    executor : Executor, optional
+        Who answers the random subsets, from :func:`massfit.pipeline.executor.make_executor`; by default this process.
     progress : callable
 
     Returns
@@ -117,6 +127,7 @@ def rank_sites(
         per_size=subsets,
         rng=np.random.default_rng(choices.settings.seed),
         with_pull=with_pull,
+        answer=partial(shared_answer, executor or Embedded()),
         progress=lambda step, total: progress("site selection", step, total),
     )
     sites = done.summary["sites"]
@@ -128,6 +139,12 @@ def rank_sites(
         reference_year=int(done.summary["reference_year"]),
     )
     return SiteRanking(summary, siting_dataset(ranking, sites, by_name))
+
+
+def shared_answer(executor: Executor, tables: SubsetTables, kept: NDArray[np.bool_]) -> SubsetMoments:
+    """Answer subsets (n, n_site) piece by piece, wherever the executor has them done."""
+    parts = np.split(kept, range(PART, len(kept), PART))
+    return join_moments(list(executor.results(partial(subset_posteriors, tables), parts)))
 
 
 def with_ranking(run: FinishedRun, ranking: SiteRanking) -> FinishedRun:

@@ -13,6 +13,7 @@ from massfit.io.network.network_file import read_sites_and_loads
 from massfit.io.results.partial_folder import claimed
 from massfit.io.results.read_results import read_results
 from massfit.network import Network
+from massfit.pipeline.executor import make_executor
 from massfit.pipeline.progress import Progress, ignore
 from massfit.pipeline.rank_sites import SUBSETS, rank_sites, with_ranking
 from massfit.pipeline.save import save_run
@@ -85,6 +86,8 @@ def siting_to_folder(
     files: SitingFiles = SitingFiles(),
     *,
     outside: bool = False,
+    workers: int | None = None,
+    scheduler: str | None = None,
     progress: Progress = ignore,
 ) -> FinishedRun:
     """Say which sites carry finished results, where and how long to measure next, and add that to their folder.
@@ -98,6 +101,9 @@ def siting_to_folder(
     files : SitingFiles
     outside : bool
         Allow paths outside the network's folder.
+    workers, scheduler : optional
+        Who shares the random subsets, as :func:`massfit.pipeline.executor.make_executor` takes them; this process
+        otherwise.
     progress : callable
 
     Returns
@@ -116,7 +122,7 @@ def siting_to_folder(
     column = read_site_column(files.by) if files.by else None
     inputs = read_sites_and_loads(network or folder.absolute().parent, outside=outside)
     progress("reading", 1, 1)
-    with claimed(folder) as partial:
+    with make_executor(workers=workers, scheduler=scheduler) as executor, claimed(folder) as partial:
         run = with_siting(read_results(folder), inputs, options, progress=progress)
         ranking = rank_sites(
             run,
@@ -124,6 +130,7 @@ def siting_to_folder(
             by=column,
             by_name=str(files.by.name) if files.by else "",
             target_width_hpa=files.target_hpa,
+            executor=executor,
             progress=progress,
         )
         run = with_ranking(run, ranking)

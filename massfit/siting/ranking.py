@@ -10,7 +10,7 @@ from massfit.posterior.node_integral import SubsetMoments
 from massfit.posterior.subsets import SubsetTables, full_scales, subset_posteriors
 from massfit.siting.influence import LeftOut, Pull, leave_out, site_pull, site_weights
 from massfit.siting.keep_path import CRITERIA, best_subsets, planned_cost
-from massfit.siting.subset_sizes import SubsetSizes, answer_sizes
+from massfit.siting.subset_sizes import Answer, SubsetSizes, answer_sizes
 from massfit.siting.threshold import Sweep, sweep
 
 Floats = NDArray[np.float64]
@@ -83,6 +83,7 @@ def rank_network(
     per_size: int,
     rng: np.random.Generator,
     with_pull: bool = True,
+    answer: Answer = subset_posteriors,
     progress: Callable[[int, int], None] | None = None,
 ) -> Ranking:
     """Ask every question about the sites of a network.
@@ -99,6 +100,8 @@ def rank_network(
     rng : numpy.random.Generator
     with_pull : bool
         Whether to find how far each site could pull: half of the work.
+    answer : callable
+        Who answers the random subsets.
     progress : callable, optional
         Called with the number of steps done and of all.
 
@@ -132,7 +135,7 @@ def rank_network(
     done(2)
     sweeps = sweep(tables, by), sweep(tables, residual)
     done(3)
-    sizes = answer_sizes(tables, per_size, rng)
+    sizes = answer_sizes(tables, per_size, rng, answer)
     done(5)
     pull = site_pull(tables, whole, progress=lambda k, _: done(5 + k)) if with_pull else None
     return Ranking(seen.sites, whole, single, names, grouped, information, leverage, pull, sizes, *sweeps, tuple(paths))

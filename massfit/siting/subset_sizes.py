@@ -1,5 +1,6 @@
 """What the answer would be with fewer sites: random subsets of every size, and the smallest network that will do."""
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from itertools import combinations
 from math import comb
@@ -11,6 +12,8 @@ from massfit.posterior.node_integral import SubsetMoments
 from massfit.posterior.subsets import SubsetTables, subset_posteriors
 
 Kept = NDArray[np.bool_]
+Answer = Callable[[SubsetTables, Kept], SubsetMoments]
+"""Answers subsets, as :func:`massfit.posterior.subsets.subset_posteriors` does, here or elsewhere."""
 
 
 @dataclass(frozen=True)
@@ -79,7 +82,9 @@ def random_subsets(site_count: int, per_size: int, rng: np.random.Generator) -> 
     return np.array(kept)
 
 
-def answer_sizes(tables: SubsetTables, per_size: int, rng: np.random.Generator) -> SubsetSizes:
+def answer_sizes(
+    tables: SubsetTables, per_size: int, rng: np.random.Generator, answer: Answer = subset_posteriors
+) -> SubsetSizes:
     """Answer random subsets of every size, the scales integrated anew for each.
 
     Parameters
@@ -88,10 +93,12 @@ def answer_sizes(tables: SubsetTables, per_size: int, rng: np.random.Generator) 
     per_size : int
         Largest number of subsets of a size.
     rng : numpy.random.Generator
+    answer : callable
+        Who answers them.
 
     Returns
     -------
     SubsetSizes
     """
     kept = random_subsets(tables.site_count, per_size, rng)
-    return SubsetSizes(kept, subset_posteriors(tables, kept))
+    return SubsetSizes(kept, answer(tables, kept))

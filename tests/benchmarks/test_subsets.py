@@ -5,6 +5,8 @@ import time
 import numpy as np
 import pytest
 
+from massfit.pipeline.executor import local_processes
+from massfit.pipeline.rank_sites import shared_answer
 from massfit.posterior.importance import integrate_scales
 from massfit.posterior.network_model import Choices, network_model, scale_priors
 from massfit.posterior.observations import Observations
@@ -45,6 +47,22 @@ def seconds_each(scatter: str, count: int) -> tuple[float, float]:
         for member in range(len(admittance)):
             integrate_scales(model, scale_priors(choices.priors, model.scale_count), member=member)
     return fast, (time.process_time() - start) / 3
+
+
+def test_a_hundred_thousand_subsets_on_two_cores() -> None:
+    observations, admittance = invented()
+    tables = subset_tables(
+        observations, admittance, Choices(PosteriorSettings(site_scatter="normal", group_scatter=False), Priors(), 0.04)
+    )
+    kept = np.random.default_rng(3).random((100_000, 20)) < 0.6
+    with local_processes(2) as two:
+        list(two.results(abs, [-1, -2]))  # both have started
+        start = time.perf_counter()
+        moments = shared_answer(two, tables, kept)
+        seconds = time.perf_counter() - start
+    print(f"100,000 subsets in {seconds:.1f} s")
+    assert np.isfinite(moments.width).all()
+    assert seconds < 15.0
 
 
 @pytest.mark.parametrize(("scatter", "least"), [("normal", 100.0), ("student-t", 50.0)])

@@ -5,10 +5,12 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+import xarray as xr
 
 import massfit
 from massfit.errors import InputError
 from massfit.io.fields.site_column import read_site_column
+from massfit.pipeline.executor import local_processes
 from massfit.pipeline.rank_sites import RANKING, SiteRanking, rank_sites, with_ranking
 from massfit.report.words.siting_text import siting_text, smallest_sentence
 from massfit.results.finished import FinishedRun, finished_run
@@ -35,6 +37,14 @@ def test_every_site_is_left_out_and_ordered(run: FinishedRun, ranking: SiteRanki
     assert siting["ordered_by"] == "quiet.csv"
     assert [row["sites"] for row in siting["sizes"]] == [1, 2, 3, 4]
     assert smallest_sentence(siting) == "No subset keeps a width of 0.001 hPa."
+
+
+def test_processes_give_the_same_to_the_last_bit(run: FinishedRun, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("massfit.pipeline.rank_sites.PART", 4)
+    with local_processes(2) as two:
+        shared = rank_sites(run, subsets=3, with_pull=False, executor=two)
+    assert shared.dataset.sizes["subset"] > 8, "several parts"
+    xr.testing.assert_identical(shared.dataset, rank_sites(run, subsets=3, with_pull=False).dataset)
 
 
 def test_the_table_fits_a_terminal(ranking: SiteRanking) -> None:
