@@ -30,7 +30,7 @@ def test_every_fault_is_told() -> None:
         )
     assert {str(fault) for fault in caught.value.faults} == {
         "settings: network.reference_year: the key is missing. Add it.",
-        "settings: network.reference_yaer: unknown key. Known keys are name, reference_year, start, end. "
+        "settings: network.reference_yaer: unknown key. Known keys are name, reference_year, start, end, references. "
         "Correct or remove it.",
         "settings: corrections.tides: the value is 'no'. Must be 'remove' or 'already-removed'.",
         "settings: fingerprint.max_degree: the value is 5. Must be greater than or equal to 20.",

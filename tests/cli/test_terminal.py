@@ -68,4 +68,4 @@ def test_completion_offers_commands_and_options() -> None:
 
     assert {"estimate", "simulate"} <= set(offered("massfit ", 1))
     assert {"--output", "--overwrite", "--json"} <= set(offered("massfit estimate -", 2))
-    assert offered("massfit simulate --sampling ", 3) == ["hourly", "daily"]
+    assert offered("massfit simulate --sampling ", 3) == ["hourly", "15s", "daily"]

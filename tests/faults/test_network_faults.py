@@ -15,7 +15,7 @@ LOADS = 'loads = ["fields/loads.nc"]'
 YEAR = "reference_year = 2016"
 KNOWN = (
     "Known keys are id, latitude, longitude, depth_m, group, exclude, "
-    "phasor_hpa, phasor_covariance_hpa2, model_noise_hpa2, years, subtracted, deployment."
+    "phasor_hpa, phasor_covariance_hpa2, model_noise_hpa2, years, subtracted, reference, deployment."
 )
 OUTSIDE = "Must lie inside it. Move the file, or allow paths outside (--outside; outside=True)."
 WINDOW = 'Must be some. Widen the window, or leave the site out with exclude = "reason".'

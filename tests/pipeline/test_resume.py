@@ -8,6 +8,7 @@ import signal
 import subprocess
 import sys
 import time
+from collections import Counter
 from pathlib import Path
 
 import numpy as np
@@ -141,24 +142,29 @@ def interrupted(network: Path, folder: Path, monkeypatch: pytest.MonkeyPatch) ->
 def test_parts_are_used_damaged_ones_are_not_and_none_is_left(
     network: Path, undisturbed: tuple[Path, float], tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
+    computed: list[str] = []
+    functions = ("pipeline.sites", "reduce_site"), ("posterior.sample", "_sample_part")
+    functions += ("posterior.alternatives", "_moments"), ("posterior.shares", "_member_terms")
+    for module, name in ((f"massfit.{room}", name) for room, name in functions):
+        really = getattr(sys.modules[module], name)
+
+        def counting(task: object, really=really, name=name) -> object:
+            computed.append(name)
+            return really(task)
+
+        counting.__module__, counting.__qualname__ = module, name  # a part knows its function by name
+        monkeypatch.setattr(f"{module}.{name}", counting)
     parts = interrupted(network, tmp_path / "results", monkeypatch)
     files = sorted(parts.iterdir())
-    assert len(files) == 7  # three sites, two times two ensembles, two load members
+    # three sites; the ensembles together and the nodes of two load members; terms of these; seven other choices
+    assert Counter(computed) == {"reduce_site": 3, "_sample_part": 3, "_member_terms": 2, "_moments": 7}
+    assert len(files) == len(computed)
+    computed.clear()
     for damage, path in enumerate(files[:3]):
         content = bytearray(path.read_bytes())
         content[(3, len(content) // 2, -1)[damage]] ^= 0x04
         path.write_bytes(content)
     files[3].write_bytes(files[4].read_bytes())  # sound, and of another part
-    computed = []
-    for module, name in (("massfit.pipeline.sites", "reduce_site"), ("massfit.posterior.sample", "_sample_part")):
-        really = getattr(sys.modules[module], name)
-
-        def counting(task: object, really=really) -> object:
-            computed.append(task)
-            return really(task)
-
-        counting.__module__, counting.__qualname__ = module, name  # a part knows its function by name
-        monkeypatch.setattr(f"{module}.{name}", counting)
     estimate_to_folder(network, tmp_path / "results")
     assert len(computed) == 4
     assert_same_numbers(tmp_path / "results", undisturbed[0])
