@@ -71,7 +71,7 @@ def integrate_nodes(table: NodeTable, values: NodeValues) -> SubsetMoments:
     weight, log_evidence = node_weights(table, values.log_likelihood)
     a, b = values.mean
     square = values.covariance + np.stack([a * a, a * b, b * b])
-    mean, square = (np.einsum("slcgn,aslcgn->an", weight, each, optimize=True) for each in (values.mean, square))
+    mean, square = (np.einsum("slcgn,aslcgn->an", weight, each) for each in (values.mean, square))
     covariance = square - np.stack([mean[0] ** 2, mean[0] * mean[1], mean[1] ** 2])
     scales = [np.einsum(f"slcgn,{axis}->n", weight, rule.knot) for axis, rule in zip("slcg", table.rules, strict=True)]
     log_scales = np.stack(scales[: table.model.scale_count], axis=1)

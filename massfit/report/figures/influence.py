@@ -85,7 +85,8 @@ def influence_figure(
         _mark_doubtful(left, np.asarray(outlier_probability)[shown])
         handles, names = right.get_legend_handles_labels()
         figure.legend(handles, names, loc="lower center", ncols=2, bbox_to_anchor=(0.6, 0.0))
-        left.set_title(_title(len(shown), len(site_ids), narrow=narrow), fontsize=7.0)
+        bold = bool(np.any(np.asarray(outlier_probability)[shown] > _DOUBTFUL))
+        left.set_title(_title(len(shown), len(site_ids), bold=bold, narrow=narrow), fontsize=7.0)
     return figure
 
 
@@ -101,8 +102,8 @@ def _mark_doubtful(axes: Axes, probability: Floats) -> None:
             label.set_fontweight("bold")
 
 
-def _title(shown: int, total: int, *, narrow: bool) -> str:
+def _title(shown: int, total: int, *, bold: bool, narrow: bool) -> str:
     some = [f"{shown} of {total} sites" if narrow else f"the {shown} of {total} sites that carry most"]
     some = some if shown < total else []
-    bold = ["bold: probably wrong" if narrow else "bold: more probably wrong than not"]
-    return "; ".join(some + bold).capitalize()
+    words = ["bold: probably wrong" if narrow else "bold: more probably wrong than not"] if bold else []
+    return "; ".join(some + words).capitalize()

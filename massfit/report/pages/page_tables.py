@@ -82,8 +82,13 @@ def alternatives_table(summary: Mapping[str, Any]) -> Table | None:
     if "what_if" in summary:
         return _what_if_table(summary)
     head = ("instead", "shift / sd", "width ratio", "amplitude / hPa", "peak")
-    rows = [_alternative(row, summary["reference_year"]) for row in summary["alternatives"]]
-    return Table("Other choices", head, rows) if rows else None
+    rows = [_alternative(row, summary["reference_year"]) for row in (_as_done(summary), *summary["alternatives"])]
+    return Table("Other choices", head, rows) if len(rows) > 1 else None
+
+
+def _as_done(summary: Mapping[str, Any]) -> dict[str, Any]:
+    phasor = {name: summary[name]["mean"] for name in ("in_phase_hpa", "quadrature_hpa")}
+    return {"name": "as it was done", "shift_sd": 0.0, "sd_ratio": 1.0, **phasor}
 
 
 def _what_if_table(summary: Mapping[str, Any]) -> Table:

@@ -54,13 +54,15 @@ PICTURES = {
     "records": "Each site: daily record with fitted drift, deployments in turn blue and orange; the series subtracted "
     "from it; what remains, with the fitted annual cycle. Every row has its own scale; one day in 250, the most "
     "extreme, is out of sight.",
-    "siting_influence": "What each site carries: the part of the answer's precision that is lost without it, and how "
-    "far the answer then moves, the scales integrated anew.",
+    "siting_influence": "What each site carries. Bars: the part of the answer's precision that is lost without it, the "
+    "scales held; dots: how far the answer then moves, the scales integrated anew.",
     "siting_sizes": "Answer and error of a component for random subsets of the sites, against the number kept.",
     "siting_order": "The answer as more and more sites are kept, those of the smallest value first, with one standard "
-    "deviation; dashed, as a warning, those first that agree with the others: that error is too small.",
+    "deviation; dashed, as a warning, those first that agree with the others: beyond a few sites that error "
+    "is too small.",
     "siting_path": "Error of a component of the answer with the best subset of every size by two criteria, chosen by "
-    "what the sites would tell and not by what they read, beside random subsets.",
+    "what the sites would tell and not by what they read, beside random subsets. A: least mean variance; D: least "
+    "area of the ellipse. The choice holds the scales; the error drawn integrates them anew, and so may rise.",
     "siting_candidate_map": "By how much one recorder more would bring the error of the answer down, for a record of "
     "the length planned: dots are the sites of the network, numbered diamonds the best places of the open sea, far "
     "apart. Pale cells are not listed: near the coast or the loads.",
@@ -157,7 +159,7 @@ def _tables(run: FinishedRun) -> dict[str, Table | None]:
         "citations": citations_table(citations(run)),
         "inputs": input_table(run.provenance),
         **satellite_tables(summary),
-        **siting_tables(run.datasets),
+        **siting_tables(run.summary, run.datasets),
     }
 
 

@@ -1,6 +1,7 @@
 """Tables of where and how long to measure next."""
 
 from collections.abc import Mapping
+from typing import Any
 
 import xarray as xr
 
@@ -10,11 +11,13 @@ from massfit.report.words.siting_plan_text import place_rows, service_rows
 _NAMES = ("best_places", "asked_places", "service")
 
 
-def siting_tables(datasets: Mapping[str, xr.Dataset]) -> dict[str, Table | None]:
-    """Tabulate candidates and service, where they are there.
+def siting_tables(summary: Mapping[str, Any], datasets: Mapping[str, xr.Dataset]) -> dict[str, Table | None]:
+    """Tabulate groups left out, candidates and service, where they are there.
 
     Parameters
     ----------
+    summary : mapping
+        `estimate.json` of a finished run.
     datasets : mapping of str to xarray.Dataset
         Of a finished run.
 
@@ -24,10 +27,21 @@ def siting_tables(datasets: Mapping[str, xr.Dataset]) -> dict[str, Table | None]
     """
     found = {name: datasets.get(f"siting.nc/{name}") for name in _NAMES}
     return {
+        "without_groups": _groups(summary.get("siting")),
         "best_places": _places("Best places for one recorder more", found["best_places"]),
         "asked_places": _places("Places asked about", found["asked_places"]),
         "service": _service(found["service"]),
     }
+
+
+def _groups(siting: Mapping[str, Any] | None) -> Table | None:
+    if siting is None or not siting["without_groups"]:
+        return None
+    rows = sorted(siting["without_groups"], key=lambda row: -abs(row["shift_sd"]))
+    head = ("without group", "sites left", "shift / sd", "width ratio")
+    whole = siting["whole"]["width_hpa"]
+    cells = [[r["name"], str(r["sites"]), f"{r['shift_sd']:.2f}", f"{r['width_hpa'] / whole:.3f}"] for r in rows]
+    return Table("Without a group", head, cells)
 
 
 def _places(title: str, data: xr.Dataset | None) -> Table | None:
