@@ -106,7 +106,7 @@ def _site(name: str, records: Sequence[RecordGuess]) -> SiteGuess:
         place["id"] = Guess(name, f"from the column {records[0].keys['variable'].value}")
     for key, wanted in (("latitude", "degrees north"), ("longitude", "degrees east, either convention")):
         found = next((record.place[key] for record in ordered if key in record.place), None)
-        place[key] = found or fill_in(f"{wanted}; no file says where it is")
+        place[key] = found or fill_in(f"{wanted}; no file says where it is in a way that was understood")
     depth = next((record.place["depth_m"] for record in ordered if "depth_m" in record.place), None)
     return SiteGuess(place | ({"depth_m": depth} if depth else {}), tuple(ordered))
 

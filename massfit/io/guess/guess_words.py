@@ -3,6 +3,7 @@
 import re
 from collections.abc import Sequence
 
+from massfit.io.guess.guess_position import angles_by_side, named_angle
 from massfit.io.records.units import PRESSURE_UNITS, SPOKEN_UNITS
 
 _WORDS = {
@@ -29,18 +30,7 @@ _QUANTITY = _PRESSURE | {"sea", "floor", "water", "absolute", "abs", "anomaly", 
 _FOLDED_UNITS = SPOKEN_UNITS | {unit.casefold(): unit for unit in PRESSURE_UNITS} | {"decibar": "dbar"}
 _PROSE_UNIT = re.compile(r"\b(?:in|units?)\b\s*(?:are|is|of|[:=])?\s*[\[(]?([A-Za-z0-9]+)", re.IGNORECASE)
 _NUMBER = r"([-+]?\d+(?:\.\d+)?)"
-_DEGREES = rf"[^\d+-]{{0,12}}{_NUMBER}(?:[ °]+(\d+(?:\.\d+)?)')?[ °]*"
-_BY_SIDE = re.compile(
-    r"(\d+(?:\.\d+)?)\s*(?:°|deg(?:rees)?)?\s*(?:(\d+(?:\.\d+)?)\s*['′]\s*)?([NS])\b[\s,;/]*"  # noqa: RUF001 - a prime
-    r"(\d+(?:\.\d+)?)\s*(?:°|deg(?:rees)?)?\s*(?:(\d+(?:\.\d+)?)\s*['′]\s*)?([EW])\b"  # noqa: RUF001
-)
-"""A position written by its sides alone, "30.6 N 153.57 E"."""
-
-_PLACE = {
-    "latitude": re.compile(rf"\blat(?:itude)?\b{_DEGREES}([NS])?\b", re.IGNORECASE),
-    "longitude": re.compile(rf"\blon(?:g|gitude)?\b{_DEGREES}([EW])?\b", re.IGNORECASE),
-    "depth_m": re.compile(rf"\bdepth\b[^\d+-]{{0,12}}{_NUMBER}\s*m(?:et(?:er|re)s?)?\b", re.IGNORECASE),
-}
+_DEPTH = re.compile(rf"\bdepth\b[^\d+-]{{0,12}}{_NUMBER}\s*m(?:et(?:er|re)s?)?\b", re.IGNORECASE)
 _STATION = re.compile(r"\b(?:station|site|mooring)(?:[ _](?:id|name))?\s*[:=]\s*([A-Za-z0-9_.+-]+)", re.IGNORECASE)
 
 
@@ -152,21 +142,17 @@ def place_of_prose(lines: Sequence[str]) -> dict[str, tuple[float | str, str]]:
     """
     found: dict[str, tuple[float | str, str]] = {}
     for line in lines:
-        for key, pattern in _PLACE.items():
-            match = pattern.search(line)
-            if match and key not in found:
-                found[key] = (_degrees(*match.groups()), line.strip())
-        sides = _BY_SIDE.search(line)
+        for key in ("latitude", "longitude"):
+            angle = named_angle(line, key)
+            if angle is not None:
+                found.setdefault(key, (angle, line.strip()))
+        sides = angles_by_side(line)
         if sides and "latitude" not in found and "longitude" not in found:
-            found["latitude"] = (_degrees(*sides.groups()[:3]), line.strip())
-            found["longitude"] = (_degrees(*sides.groups()[3:]), line.strip())
+            found["latitude"], found["longitude"] = ((angle, line.strip()) for angle in sides)
+        depth = _DEPTH.search(line)
+        if depth:
+            found.setdefault("depth_m", (float(depth[1]), line.strip()))
         station = _STATION.search(line)
         if station and "id" not in found:
             found["id"] = (station[1], line.strip())
     return found
-
-
-def _degrees(whole: str, minutes: str | None = None, side: str | None = None) -> float:
-    value = abs(float(whole)) + float(minutes or 0.0) / 60.0
-    negative = whole.startswith("-") or (side or "").upper() in ("S", "W")
-    return -value if negative else value
