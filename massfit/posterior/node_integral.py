@@ -11,7 +11,7 @@ from massfit.posterior.scale_rule import ScaleRule
 
 Floats = NDArray[np.float64]
 
-BLOCK = 256
+BLOCK = 512
 """Subsets and knots of s_group at a time: their matrices stay in the cache of the processor."""
 
 

@@ -281,7 +281,7 @@ def subset_posteriors(tables: SubsetTables, kept: Kept) -> SubsetMoments:
 
 
 def _pooled(network: PreparedNetwork, kept: Kept) -> SubsetMoments:
-    size = max(1, (BLOCK if network.plain else BLOCK // 4) // len(network.table.rules[3].knot))
+    size = max(1, (BLOCK if network.plain else BLOCK // 8) // len(network.table.rules[3].knot))
     blocks = np.split(kept, range(size, len(kept), size))
     return join_moments([_with_members(network, block, _middle(network, block)) for block in blocks])
 
