@@ -60,6 +60,6 @@ def test_what_the_network_file_states_is_kept(change, network_folder: Path) -> N
 
 
 def test_the_citation_file_names_this_version() -> None:
-    lines = (ROOT / "CITATION.cff").read_text("utf-8").splitlines()
+    lines = (ROOT / "docs" / "CITATION.cff").read_text("utf-8").splitlines()
     assert f"version: {massfit.__version__}" in lines
     assert "license: MIT" in lines

@@ -1,6 +1,5 @@
 """Files of a siting study: candidates, a map of quietness, and depths of the sea floor."""
 
-import csv
 from collections.abc import Callable, Iterator
 from pathlib import Path
 
@@ -12,6 +11,7 @@ from massfit.constants import PASCAL_PER_HPA
 from massfit.contracts import QUIETNESS_MAP, require
 from massfit.errors import Fault, InputError
 from massfit.fingerprint.ocean import OceanFunction
+from massfit.io.fields.csv_rows import csv_rows
 from massfit.io.netcdf.netcdf_file import damage_as_fault, open_netcdf
 from massfit.io.netcdf.variables import canonical
 from massfit.siting.gain_map import Candidate
@@ -48,21 +48,15 @@ def read_candidates(path: Path) -> tuple[Candidate, ...]:
         Every fault of the file, with lines.
     """
     source = str(path)
-    try:
-        lines = path.read_text(encoding="utf-8-sig").splitlines()
-    except (OSError, UnicodeDecodeError) as error:
-        why = error.strerror if isinstance(error, OSError) else "it is not text in UTF-8"
-        raise InputError(Fault(source, "", f"the file cannot be read: {why}", "", "Check the path")) from error
-    rows = [(number, line) for number, line in enumerate(lines, 1) if line.strip() and not line.startswith("#")]
+    rows = csv_rows(path)
     if len(rows) < 2:
         raise InputError(Fault(source, "", "the file holds no candidate", "A header and a line for each place"))
-    header = [name.strip() for name in next(csv.reader([rows[0][1]]))]
+    header = rows[0][2]
     faults = list(_header_faults(source, rows[0][0], header))
     if faults:
         raise InputError(faults)
     found = []
-    for number, line in rows[1:]:
-        values = [value.strip() for value in next(csv.reader([line]))]
+    for number, _, values in rows[1:]:
         if len(values) != len(header):
             problem = f"{len(values)} values for {len(header)} columns"
             faults.append(Fault(source, "", problem, "One value a column", line=number))
