@@ -31,7 +31,7 @@ class Browser:
         """Run a script until it returns something true."""
         from selenium.webdriver.support.ui import WebDriverWait
 
-        return WebDriverWait(self.driver, 20, 0.02).until(lambda driver: driver.execute_script(script, *arguments))
+        return WebDriverWait(self.driver, 60, 0.02).until(lambda driver: driver.execute_script(script, *arguments))
 
     def complaints(self) -> list[str]:
         """What the console holds of errors and warnings since the page was opened."""
