@@ -273,3 +273,33 @@ def _path(ranking: Ranking, p: int) -> dict[str, Any]:
             for k in range(len(path.value))
         ],
     }
+
+
+def component_widths_hpa(ranking: xr.Dataset, name: str) -> Floats:
+    """Root mean square over the two components of standard deviations.
+
+    Parameters
+    ----------
+    ranking : xarray.Dataset
+        From :func:`siting_dataset`.
+    name : str
+        Variable (..., component), Pa.
+
+    Returns
+    -------
+    (...) array
+        hPa.
+    """
+    return np.asarray(np.sqrt((ranking[name].values ** 2).mean(axis=-1)) / PASCAL_PER_HPA)
+
+
+def subset_counts(ranking: xr.Dataset) -> NDArray[np.int64]:
+    """Sites (n_subset,) in each random subset."""
+    return np.asarray(ranking["subset_has_site"].values.sum(axis=1), dtype=np.int64)
+
+
+def median_widths_hpa(ranking: xr.Dataset) -> Floats:
+    """Median width (n_site,) of the random subsets of every size, hPa; NaN for a size without any."""
+    widths, size = component_widths_hpa(ranking, "subset_sd"), subset_counts(ranking)
+    counts = ranking["kept_count"].values
+    return np.array([np.median(widths[size == k]) if (size == k).any() else np.nan for k in counts])

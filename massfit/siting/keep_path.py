@@ -8,7 +8,6 @@ Fedorov 1972, Theory of Optimal Experiments).
 
 from collections.abc import Callable
 from dataclasses import replace
-from itertools import combinations
 
 import numpy as np
 from numpy.typing import NDArray
@@ -135,25 +134,3 @@ def _exchanged(cost: Cost, kept: Kept, value: float) -> tuple[Kept, float]:
         if found.min() >= value - 1e-9 * abs(value):
             return kept, value
         kept, value = others[found.argmin()], float(found.min())
-
-
-def exhaustive_subsets(cost: Cost, site_count: int) -> tuple[Kept, Floats]:
-    """Find the best subset of every size among all; for a dozen sites or so.
-
-    Parameters
-    ----------
-    cost : callable
-    site_count : int
-
-    Returns
-    -------
-    kept : (site_count, site_count) array of bool
-    value : (site_count,) array
-    """
-    best, values = [], []
-    for size in range(1, site_count + 1):
-        all_kept = np.array([np.isin(np.arange(site_count), own) for own in combinations(range(site_count), size)])
-        found = cost(all_kept)
-        best.append(all_kept[found.argmin()])
-        values.append(found.min())
-    return np.array(best), np.array(values)

@@ -13,6 +13,7 @@ from massfit.report.figures.influence import influence_figure
 from massfit.report.figures.record_length import record_length_figure
 from massfit.report.figures.service_plan import service_plan_figure
 from massfit.report.figures.subset_sizes import keep_path_figure, order_sweep, subset_fan
+from massfit.results.siting import component_widths_hpa, median_widths_hpa, subset_counts
 
 _GROUP = "siting.nc/"
 
@@ -98,23 +99,14 @@ def _influence(ranking: xr.Dataset, width_mm: float) -> Figure:
     )
 
 
-def _width_hpa(ranking: xr.Dataset, name: str) -> NDArray[np.float64]:
-    """Root mean square over the components of standard deviations, hPa."""
-    return np.asarray(np.sqrt((ranking[name].values ** 2).mean(axis=-1)) / PASCAL_PER_HPA)
-
-
-def _subset_size(ranking: xr.Dataset) -> NDArray[np.int64]:
-    return np.asarray(ranking["subset_has_site"].values.sum(axis=1), dtype=np.int64)
-
-
 def _sizes(ranking: xr.Dataset, width_mm: float) -> Figure:
     # the last of every order are all sites
     return subset_fan(
-        _subset_size(ranking),
+        subset_counts(ranking),
         ranking["subset_mean"].values / PASCAL_PER_HPA,
-        _width_hpa(ranking, "subset_sd"),
+        component_widths_hpa(ranking, "subset_sd"),
         whole_hpa=ranking["ordered_mean"].values[-1] / PASCAL_PER_HPA,
-        whole_width_hpa=float(_width_hpa(ranking, "ordered_sd")[-1]),
+        whole_width_hpa=float(component_widths_hpa(ranking, "ordered_sd")[-1]),
         width_mm=width_mm,
     )
 
@@ -122,18 +114,15 @@ def _sizes(ranking: xr.Dataset, width_mm: float) -> Figure:
 def _order(ranking: xr.Dataset, width_mm: float) -> Figure:
     return order_sweep(
         ranking["ordered_mean"].values / PASCAL_PER_HPA,
-        _width_hpa(ranking, "ordered_sd"),
+        component_widths_hpa(ranking, "ordered_sd"),
         ranking["agreeable_mean"].values / PASCAL_PER_HPA,
-        _width_hpa(ranking, "agreeable_sd"),
+        component_widths_hpa(ranking, "agreeable_sd"),
         ordered_by=str(ranking.attrs["ordered_by"]),
         width_mm=width_mm,
     )
 
 
 def _path(ranking: xr.Dataset, width_mm: float) -> Figure:
-    width, size = _width_hpa(ranking, "path_sd"), _subset_size(ranking)
-    of_subsets = _width_hpa(ranking, "subset_sd")
-    counts = ranking["kept_count"].values
-    middle = [np.median(of_subsets[size == k]) if (size == k).any() else np.nan for k in counts]
     names = [str(name) for name in ranking["criterion"].values]
-    return keep_path_figure(dict(zip(names, width, strict=True)), np.array(middle), width_mm=width_mm)
+    widths = dict(zip(names, component_widths_hpa(ranking, "path_sd"), strict=True))
+    return keep_path_figure(widths, median_widths_hpa(ranking), width_mm=width_mm)
